@@ -1,0 +1,470 @@
+package solar
+
+import (
+	"math"
+
+	"groundtally/scoring/sun"
+	"groundtally/scoring/units"
+)
+
+// MountKind is a way to carry panels.
+type MountKind uint8
+
+// The kinds of mount. FixedTilt: rows at a fixed tilt near the ground. SingleAxis: rows that turn about a
+// horizontal axis (parallel to the ground on slopes). VerticalRows: upright rows active on both sides.
+// Elevated: fixed tilt high over a crop.
+const (
+	FixedTilt MountKind = iota
+	SingleAxis
+	VerticalRows
+	Elevated
+)
+
+func (k MountKind) String() string {
+	return [...]string{"fixed tilt", "single axis", "vertical rows", "elevated"}[k]
+}
+
+// Mount is how the panels stand.
+type Mount struct {
+	Kind           MountKind
+	TiltDeg        float64 // FixedTilt, Elevated: 0 to 90
+	AzimuthDeg     float64 // where the front faces; for VerticalRows 90 is the usual east
+	AxisAzimuthDeg float64 // SingleAxis: direction of the axis, 180 for north to south
+	MaxAngleDeg    float64 // SingleAxis: largest rotation, 0 to 90
+	Backtrack      bool    // SingleAxis: turn back so that rows do not shade each other
+	GCR            float64 // collector width over horizontal pitch, 0 for a single row to 1
+	Rows           int     // number of rows, whose first has a free front; 0 for very many
+	WidthM         float64 // collector width; needed with bifacial panels that are not vertical
+	ClearanceM     float64 // lower edge over ground, for trackers of the flat panel; needed as WidthM
+	SlopeDeg       float64 // of the ground, 0 to 45
+	AspectDeg      float64 // where the ground falls to
+}
+
+// Plant is what stands on the site.
+type Plant struct {
+	Mount    Mount
+	Module   Module
+	Inverter Inverter
+	Losses   Losses
+	WindMS   float64 // at the panels
+	Sky      SkyModel
+}
+
+// EquatorAzimuthDeg gives the bearing of the equator: 180 in the north, 0 in the south.
+func EquatorAzimuthDeg(latDeg float64) float64 {
+	if latDeg < 0 {
+		return 0
+	}
+	return 180
+}
+
+func (p *Plant) check() error {
+	m, mod, l := &p.Mount, &p.Module, &p.Losses
+	err := firstError(
+		within("Mount.Kind", float64(m.Kind), 0, float64(Elevated)),
+		within("Mount.GCR", m.GCR, 0, 1),
+		within("Mount.Rows", float64(m.Rows), 0, 1e9),
+		within("Mount.SlopeDeg", m.SlopeDeg, 0, 45),
+		within("Mount.AspectDeg", m.AspectDeg, -360, 360),
+		within("Mount.WidthM", m.WidthM, 0, 100),
+		within("Mount.ClearanceM", m.ClearanceM, 0, 100),
+		within("Module.GammaPerK", mod.GammaPerK, -0.02, 0.01),
+		within("Module.Glass.Ar", mod.Glass.Ar, 0.05, 0.5),
+		within("Module.U0WPerM2K", mod.U0WPerM2K, 5, 100),
+		within("Module.U1WsPerM3K", mod.U1WsPerM3K, 0, 50),
+		within("Module.Bifaciality", mod.Bifaciality, 0, 1),
+		within("Module.RearStructure", mod.RearStructure, 0, 0.5),
+		within("Module.RearMismatch", mod.RearMismatch, 0, 0.5),
+		within("Module.ShadeBlocks", float64(mod.ShadeBlocks), 0, 1000),
+		within("Inverter.DCACRatio", p.Inverter.DCACRatio, 0.2, 5),
+		within("Inverter.K0", p.Inverter.K0, 0, 0.5),
+		within("Inverter.K1", p.Inverter.K1, 0, 0.5),
+		within("Inverter.K2", p.Inverter.K2, 0, 0.5),
+		within("Losses.SoilingFrac", l.SoilingFrac, 0, 1),
+		within("Losses.LIDFrac", l.LIDFrac, 0, 1),
+		within("Losses.NameplateFrac", l.NameplateFrac, -0.2, 1),
+		within("Losses.MismatchFrac", l.MismatchFrac, 0, 1),
+		within("Losses.DCWiringFrac", l.DCWiringFrac, 0, 1),
+		within("Losses.ACWiringFrac", l.ACWiringFrac, 0, 1),
+		within("Losses.TransformerFrac", l.TransformerFrac, 0, 1),
+		within("Losses.AuxiliaryFrac", l.AuxiliaryFrac, 0, 1),
+		within("Losses.CurtailmentFrac", l.CurtailmentFrac, 0, 1),
+		within("Losses.AvailabilityFrac", l.AvailabilityFrac, 0, 1),
+		within("WindMS", p.WindMS, 0, 60),
+		within("Sky", float64(p.Sky), 0, float64(Perez)),
+	)
+	if err != nil {
+		return err
+	}
+	switch m.Kind {
+	case SingleAxis:
+		err = firstError(within("Mount.AxisAzimuthDeg", m.AxisAzimuthDeg, -360, 360), within("Mount.MaxAngleDeg", m.MaxAngleDeg, 0, 90))
+	case VerticalRows:
+		err = within("Mount.AzimuthDeg", m.AzimuthDeg, -360, 360)
+		if err == nil && mod.Bifaciality == 0 {
+			err = &InputError{"Module.Bifaciality", 0, "over 0: vertical rows need panels active on both sides"}
+		}
+	default:
+		err = firstError(within("Mount.AzimuthDeg", m.AzimuthDeg, -360, 360), within("Mount.TiltDeg", m.TiltDeg, 0, 90))
+	}
+	if err == nil && mod.Bifaciality > 0 && m.Kind != VerticalRows {
+		switch {
+		case m.WidthM == 0:
+			err = &InputError{"Mount.WidthM", 0, "over 0 when the panels are bifacial"}
+		case m.ClearanceM == 0:
+			err = &InputError{"Mount.ClearanceM", 0, "over 0 when the panels are bifacial"}
+		}
+	}
+	return err
+}
+
+// YearInput is a place and a plant.
+type YearInput struct {
+	Climate ClimateInput
+	Plant   Plant
+}
+
+// YearResult is the first year of a plant. Energies are at the plant's alternating-current terminals.
+type YearResult struct {
+	SpecificYieldKWhPerKWp float64     // first year
+	MonthKWhPerKWp         [12]float64 // adds up to SpecificYieldKWhPerKWp
+	PlaneKWhPerM2          float64     // light on the front, without neighbouring rows
+	PlaneMonthKWhPerM2     [12]float64
+	PerformanceRatio       float64 // base: front-side light; bifacial plants may exceed 1
+	CapacityFactorDC       float64 // base: panel rating
+	Chain                  []Step
+	GHIKWhPerM2            [12]float64 // light on the open ground
+	GroundKWhPerM2         [12]float64 // mean light on the ground between and under the rows
+	DiffuseShare           float64     // of the light on the open ground
+	Notes                  []MonthNote
+}
+
+// CropLight gives the mean light on the ground between and under the rows as a share of that on open
+// ground, over the months of growth. ok is false when there is no light in them.
+func (r *YearResult) CropLight(growing [12]bool) (share float64, ok bool) {
+	ground, open := 0.0, 0.0
+	for m, in := range growing {
+		if in {
+			ground += r.GroundKWhPerM2[m]
+			open += r.GHIKWhPerM2[m]
+		}
+	}
+	if open <= 0 {
+		return 0, false
+	}
+	return ground / open, true
+}
+
+// AllYear marks all months as months of growth.
+func AllYear() (g [12]bool) {
+	for i := range g {
+		g[i] = true
+	}
+	return g
+}
+
+// Year computes the first year of a plant at a place. For several plants at one place make the Climate
+// once and call its Yield.
+func Year(in YearInput) (YearResult, error) {
+	if err := in.Plant.check(); err != nil {
+		return YearResult{}, err
+	}
+	c, err := NewClimate(in.Climate)
+	if err != nil {
+		return YearResult{}, err
+	}
+	return c.Yield(in.Plant)
+}
+
+// The quantities summed over the moments of a month, in kWh/kWp, in the order of the chain.
+const (
+	sumPlane = iota
+	sumShaded
+	sumElectrical
+	sumDiffuse
+	sumIncidence
+	sumRear
+	sumSoiled
+	sumWarm
+	sumInverted
+	sumClipped
+	sums
+)
+
+// face is what one side of a row sees at a moment, apart from the strength of the light.
+type face struct {
+	cosIncidence, ratio float64
+	glass               float64 // beam through the glass
+	sky, ground         float64 // shares of view among rows
+	glassSky, glassGnd  float64
+}
+
+// Yield computes the first year of a plant in this climate.
+//
+// At each moment and for each day type: light on the open plane (beam, sky by the plant's SkyModel,
+// ground); beam and light around the sun less ShadedShare, then less ShadePowerLoss; sky and ground as
+// seen among rows (ViewOfRows); glass (Martin and Ruiz); light on the rear times bifaciality; soiling;
+// FaimanCellC from the light on both sides; power; constant losses; inverter; its limit. The chain of the
+// result has these as steps.
+//
+// The light of the ground is the mean over the ground among the rows, shade counted. Near-ground rows
+// that are not vertical get its part on the rear times min(1, clearance/(0.5 width)), because the ground
+// under them is darker than the mean; this is a simplification of this program. Of Rows the share
+// (Rows-1)/Rows stands behind another.
+func (c *Climate) Yield(p Plant) (YearResult, error) {
+	if err := p.check(); err != nil {
+		return YearResult{}, err
+	}
+	m := p.Mount
+	rowShare := 1.0
+	if m.Rows > 0 {
+		rowShare = float64(m.Rows-1) / float64(m.Rows)
+	}
+	if m.GCR == 0 {
+		rowShare = 0
+	}
+	phi := p.Module.Bifaciality * (1 - p.Module.RearStructure - p.Module.RearMismatch)
+	rearGround := 1.0
+	if m.Kind != VerticalRows && p.Module.Bifaciality > 0 {
+		rearGround = min(1, m.ClearanceM/float64(0.5*m.WidthM))
+	}
+	soil := 1 - p.Losses.SoilingFrac
+	dc := (1 - p.Losses.LIDFrac) * (1 - p.Losses.NameplateFrac) * (1 - p.Losses.MismatchFrac) * (1 - p.Losses.DCWiringFrac)
+	rated := 1 / p.Inverter.DCACRatio
+	cooling := p.Module.U0WPerM2K + float64(p.Module.U1WsPerM3K*p.WindMS)
+
+	axis, rotation := m.AzimuthDeg-90, m.TiltDeg
+	switch m.Kind {
+	case SingleAxis:
+		axis = m.AxisAzimuthDeg
+	case VerticalRows:
+		rotation = 90
+	}
+	frame := NewFrame(axis, m.SlopeDeg, m.AspectDeg)
+	var acc [12][sums]float64
+	var ground [12]float64
+	var n sun.Vec
+	var cosTilt float64
+	var front, rear face
+	var view RowView
+	aim := func(rotationDeg float64) {
+		n = frame.Normal(rotationDeg)
+		cosTilt = clamp(n.Z, -1, 1)
+		cr := math.Abs(cosd(rotationDeg))
+		view = ViewOfRows(cr, m.GCR)
+		openSky, openGnd := (1+cosTilt)/2, (1-cosTilt)/2
+		// What rows take away is reckoned on flat ground and applied to the view of the true tilt.
+		skyLeft, gndLeft := left(view.FrontSky, (1+cr)/2), left(view.FrontGround, (1-cr)/2)
+		tilt := math.Acos(cosTilt) / radPerDeg
+		front.sky = float64(openSky * mix(skyLeft, 1, rowShare))
+		front.ground = float64(openGnd * mix(gndLeft, 1, rowShare))
+		front.glassSky, front.glassGnd = p.Module.Glass.Sky(tilt), p.Module.Glass.Ground(tilt)
+		if phi > 0 {
+			rear.sky = float64(openGnd * mix(gndLeft, 1, rowShare))
+			rear.ground = float64(openSky*mix(skyLeft, 1, rowShare)) * rearGround
+			rear.glassSky, rear.glassGnd = p.Module.Glass.Sky(180-tilt), p.Module.Glass.Ground(180-tilt)
+		}
+	}
+	if m.Kind != SingleAxis {
+		aim(rotation)
+	}
+	reach := func(s sun.Vec) float64 {
+		t, r := frame.SunAngleDeg(s), rotation
+		if m.Kind == SingleAxis {
+			r = TrackerAngleDeg(t, frame.CrossTiltDeg, m.GCR, m.MaxAngleDeg, false)
+		}
+		return shadeReach(t, r, frame.CrossTiltDeg, m.GCR)
+	}
+	for i := range c.moments {
+		mo := &c.moments[i]
+		sunAngle := frame.SunAngleDeg(mo.s)
+		if m.Kind == SingleAxis {
+			rotation = TrackerAngleDeg(sunAngle, frame.CrossTiltDeg, m.GCR, m.MaxAngleDeg, m.Backtrack)
+			aim(rotation)
+		}
+		cosi := mo.s.Dot(n)
+		if !SunOverGround(sunAngle, frame.CrossTiltDeg) {
+			cosi = 0
+		}
+		front.cosIncidence, rear.cosIncidence = max(0, cosi), max(0, -cosi)
+		front.ratio, rear.ratio = BeamRatio(cosi, mo.s.Z), BeamRatio(-cosi, mo.s.Z)
+		front.glass = p.Module.Glass.Beam(cosi)
+		shaded, power := 0.0, 0.0
+		switch {
+		case rowShare == 0:
+		case m.Kind == SingleAxis && m.Backtrack:
+			shaded = ShadedShare(sunAngle, rotation, frame.CrossTiltDeg, m.GCR)
+			power = ShadePowerLoss(shaded, p.Module.ShadeBlocks)
+		default:
+			shaded, power = meanShade(reach(mo.from), reach(mo.to), p.Module.ShadeBlocks)
+		}
+		shaded, power = float64(shaded*rowShare), float64(power*rowShare)
+		if phi > 0 {
+			rear.glass = p.Module.Glass.Beam(-cosi)
+		}
+		groundShade := GroundShadeShare(sunAngle, rotation, frame.CrossTiltDeg, m.GCR)
+		albedo := c.in.Albedo[mo.month]
+		sum := &acc[mo.month]
+		for j := range mo.types {
+			l := &mo.types[j]
+			if l.ghi <= 0 {
+				continue
+			}
+			// around is the share of diffuse light that comes from around the sun, horizon that near the
+			// horizon on the front; the rest comes from the whole dome.
+			around, horizon := 0.0, 0.0
+			switch p.Sky {
+			case HayDavies:
+				around = min(1, l.dni/mo.gon)
+			case Perez:
+				s := perezState(Light{l.ghi, l.dhi, l.dni, mo.gon, mo.s.Z}, mo.airMass, mo.zenith)
+				around = s.F1
+				horizon = float64(l.dhi * s.F2 * math.Sqrt(max(0, 1-float64(cosTilt*cosTilt))))
+			}
+			dome := float64(l.dhi * (1 - around))
+			ring := float64(l.dhi * around)
+			beam := float64(l.dni*front.cosIncidence) + float64(ring*front.ratio)
+			// A dark horizon dims no more than the dome gives.
+			openDome := max(0, float64(dome*(1+cosTilt)/2)+horizon)
+			openGnd := float64(albedo * l.ghi * (1 - cosTilt) / 2)
+			plane := beam + openDome + openGnd
+			cut := float64(beam * (1 - shaded))
+			live := float64(beam * (1 - power))
+			onGround := float64(l.dni*mo.s.Z*(1-groundShade)) + float64(l.dhi*view.GroundSky)
+			// A row behind another sees no bright horizon; a dark one is kept.
+			behind := min(0, horizon)
+			skyIn := max(0, float64(dome*front.sky)+mix(behind, horizon, rowShare))
+			gndIn := float64(albedo * mix(onGround, l.ghi, rowShare) * front.ground)
+			among := live + skyIn + gndIn
+			through := float64(live*front.glass) + float64(skyIn*front.glassSky) + float64(gndIn*front.glassGnd)
+			both, heat := through, cut+skyIn+gndIn
+			if phi > 0 {
+				rb := float64((float64(l.dni*rear.cosIncidence) + float64(ring*rear.ratio)) * (1 - power))
+				rs := float64(dome * rear.sky)
+				rg := float64(albedo * mix(onGround, l.ghi, rowShare) * rear.ground)
+				both += float64(phi * (float64(rb*rear.glass) + float64(rs*rear.glassSky) + float64(rg*rear.glassGnd)))
+				heat += float64(phi * (rb + rs + rg))
+			}
+			clean := float64(both * soil)
+			cell := mo.airC + heat/cooling
+			var kw float64
+			if p.Module.LowLight {
+				kw = float64(clean/testIrradianceWPerM2) * HuldEfficiency(clean, cell)
+			} else {
+				kw = DCKWPerKWp(clean, cell, p.Module.GammaPerK)
+			}
+			in := float64(kw * dc)
+			ac := float64(in * p.Inverter.Efficiency(in/rated))
+			out := min(ac, rated)
+			w := mo.weight
+			sum[sumPlane] += float64(w * plane)
+			sum[sumShaded] += float64(w * (cut + openDome + openGnd))
+			sum[sumElectrical] += float64(w * (live + openDome + openGnd))
+			sum[sumDiffuse] += float64(w * among)
+			sum[sumIncidence] += float64(w * through)
+			sum[sumRear] += float64(w * both)
+			sum[sumSoiled] += float64(w * clean)
+			sum[sumWarm] += float64(w * kw * units.WPerKW)
+			sum[sumInverted] += float64(w * ac * units.WPerKW)
+			sum[sumClipped] += float64(w * out * units.WPerKW)
+			ground[mo.month] += float64(w * onGround)
+		}
+	}
+	return c.result(&p, &acc, ground), nil
+}
+
+// left gives the share of an open view that rows leave; all of it when nothing is seen anyway.
+func left(among, open float64) float64 {
+	if open < 1e-9 {
+		return 1
+	}
+	return among / open
+}
+
+// mix gives the value among rows for a share of rows and the open value for the rest.
+func mix(among, open, share float64) float64 {
+	return float64(share*among) + float64((1-share)*open)
+}
+
+func (c *Climate) result(p *Plant, acc *[12][sums]float64, ground [12]float64) YearResult {
+	var total, snowed [sums]float64
+	for m := range acc {
+		for k, v := range acc[m] {
+			total[k] += v
+			snowed[k] += float64(v * (1 - c.in.SnowLossFrac[m]))
+		}
+	}
+	l := &p.Losses
+	ch := chain{at: total[sumPlane], steps: make([]Step, 0, 19)}
+	ch.to(StepRowShade, total[sumShaded])
+	ch.to(StepShadePower, total[sumElectrical])
+	ch.to(StepRowDiffuse, total[sumDiffuse])
+	ch.to(StepIncidence, total[sumIncidence])
+	ch.to(StepRear, total[sumRear])
+	ch.to(StepSoiling, total[sumSoiled])
+	ch.to(StepSnow, snowed[sumSoiled])
+	ch.to(StepTemperature, snowed[sumWarm])
+	ch.lose(StepLID, l.LIDFrac)
+	ch.lose(StepNameplate, l.NameplateFrac)
+	ch.lose(StepMismatch, l.MismatchFrac)
+	ch.lose(StepDCWiring, l.DCWiringFrac)
+	ch.to(StepInverter, snowed[sumInverted])
+	ch.to(StepClipping, snowed[sumClipped])
+	ch.lose(StepACWiring, l.ACWiringFrac)
+	ch.lose(StepTransformer, l.TransformerFrac)
+	ch.lose(StepAuxiliary, l.AuxiliaryFrac)
+	ch.lose(StepCurtailment, l.CurtailmentFrac)
+	ch.lose(StepAvailable, l.AvailabilityFrac)
+
+	r := YearResult{
+		SpecificYieldKWhPerKWp: ch.at,
+		PlaneKWhPerM2:          total[sumPlane],
+		CapacityFactorDC:       ch.at / units.HoursPerYear,
+		Chain:                  ch.steps,
+		GHIKWhPerM2:            c.ghi,
+		GroundKWhPerM2:         ground,
+		Notes:                  c.Notes(),
+	}
+	after := (1 - l.ACWiringFrac) * (1 - l.TransformerFrac) * (1 - l.AuxiliaryFrac) * (1 - l.CurtailmentFrac) * (1 - l.AvailabilityFrac)
+	ghi, dhi := 0.0, 0.0
+	for m := range acc {
+		r.PlaneMonthKWhPerM2[m] = acc[m][sumPlane]
+		r.MonthKWhPerKWp[m] = float64(acc[m][sumClipped] * (1 - c.in.SnowLossFrac[m]) * after)
+		ghi += c.ghi[m]
+		dhi += c.dhi[m]
+	}
+	if r.PlaneKWhPerM2 > 0 {
+		r.PerformanceRatio = ch.at / r.PlaneKWhPerM2
+	}
+	if ghi > 0 {
+		r.DiffuseShare = dhi / ghi
+	}
+	return r
+}
+
+// TiltPoint is the yield at one tilt.
+type TiltPoint struct{ TiltDeg, YieldKWhPerKWp float64 }
+
+// TiltCurve computes the plant's yield at tilts from 0 to maxDeg in steps of stepDeg and gives all of
+// them with the position of the best, the flattest of equals. The plant must be FixedTilt or Elevated;
+// its own TiltDeg is not used.
+func (c *Climate) TiltCurve(p Plant, stepDeg, maxDeg float64) (curve []TiltPoint, best int, err error) {
+	if p.Mount.Kind != FixedTilt && p.Mount.Kind != Elevated {
+		return nil, 0, &InputError{"Mount.Kind", float64(p.Mount.Kind), "fixed tilt or elevated for a curve of tilts"}
+	}
+	if err := firstError(within("stepDeg", stepDeg, 0.1, 90), within("maxDeg", maxDeg, 0, 90)); err != nil {
+		return nil, 0, err
+	}
+	for i := 0; float64(float64(i)*stepDeg) <= maxDeg; i++ {
+		p.Mount.TiltDeg = float64(float64(i) * stepDeg)
+		r, err := c.Yield(p)
+		if err != nil {
+			return nil, 0, err
+		}
+		curve = append(curve, TiltPoint{p.Mount.TiltDeg, r.SpecificYieldKWhPerKWp})
+		if r.SpecificYieldKWhPerKWp > curve[best].YieldKWhPerKWp {
+			best = i
+		}
+	}
+	return curve, best, nil
+}
