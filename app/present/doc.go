@@ -1,0 +1,2 @@
+// Package present turns values, notices and codes into words for people.
+package present

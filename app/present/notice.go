@@ -1,0 +1,95 @@
+package present
+
+import (
+	"fmt"
+	"sort"
+	"strings"
+
+	"groundtally/geo"
+)
+
+// sentences gives each notice code its text. Names in braces are arguments.
+var sentences = map[string]string{
+	"repaired":               "the outline crossed itself or was not closed properly. It was repaired; its area went from {area_before_ha} ha to {area_after_ha} ha.",
+	"not_repairable":         "the outline encloses nothing that can be used. The feature was left out; redraw it or take it out of the file.",
+	"duplicate":              "it has exactly the outline of {of}. It was left out.",
+	"same_identifier":        "the identifier stands twice. This one is called {now} here; correct the file if they are one parcel.",
+	"missing_value":          "the value is missing. What depends on it is unknown for this feature.",
+	"no_geometry":            "the feature has no place on the map. It was left out.",
+	"wrong_geometry":         "it is a {kind}, and the role takes {wanted}. It was left out.",
+	"layer_apart":            "the layer ({west} to {east} E, {south} to {north} N) does not meet the other layers. Check its coordinate system.",
+	"not_a_candidate":        "the setting {setting} is not set, so the plant option was not fitted.",
+	"inventory_default":      "computed with the program's default inventory, not with figures for the machines on offer.",
+	"memory_parameter":       "a parameter rests on a value that was not checked against its source (default, unverified).",
+	"spare_unknown":          "the spare capacity of the line or substation is not known; it is assumed that it can take the power. Ask the network operator.",
+	"route_straight":         "the route is the straight distance times a detour factor; no routed length yet.",
+	"tracks_rule":            "the length of new track follows a rule of thumb; the true place of tracks is not known.",
+	"may_never":              "in some trials the payback never comes.",
+	"median_differs":         "the median of the trials differs from the central value by more than 2 %.",
+	"nearest_resource":       "wind statistics are taken from the nearest resource point.",
+	"rayleigh":               "an even spread of directions and a Rayleigh distribution are assumed from one typed mean speed.",
+	"terrain_missing":        "no ground heights: slope rules are not applied and sea level is assumed.",
+	"horizon_flat":           "the horizon is taken as flat and the ground as level.",
+	"layer_not_complete":     "the layer is not declared complete for the place, so nothing found does not mean that nothing is there.",
+	"soil_counted_twice":     "soil carbon counts in more than one weighed consequence.",
+	"slope_rule_not_applied": "the slope rule was not applied because there are no ground heights.",
+	"export_limited":         "the connection takes less than the plant can give; energy is cut off.",
+	"curtailment_bound":      "the energy cut off is a bound from a distribution, not from an hourly file.",
+	"voltage_unknown":        "a power line or substation has no voltage and was not used for a connection.",
+	"changed_outside":        "the layer was changed by another program after it was added.",
+	"soil_counted_in_two":    "soil carbon counted in 2 criteria.",
+	"shape_share":            "the smallest width or smallest patch took land after the rules.",
+	"third_ordinate":         "heights in the coordinates were not used.",
+	"closed_ring":            "a ring was not closed; it was closed.",
+	"nested_value":           "a nested value was kept as text.",
+	"mixed_column":           "the column holds values of several kinds and was read as text.",
+}
+
+// Notice writes a notice as: where, what, what the program did or what the user can do.
+func Notice(n geo.Notice) string {
+	var where []string
+	if n.Layer != "" {
+		where = append(where, n.Layer)
+	} else if n.File != "" {
+		where = append(where, n.File)
+	}
+	if n.Feature != "" {
+		where = append(where, "feature "+n.Feature)
+	}
+	if n.Field != "" {
+		where = append(where, "field "+n.Field)
+	}
+	if n.Line > 0 {
+		where = append(where, fmt.Sprintf("line %d", n.Line))
+	}
+	if n.At != nil {
+		where = append(where, fmt.Sprintf("near %.5f E, %.5f N", n.At.Lon, n.At.Lat))
+	}
+	text := Sentence(n.Code, n.Args)
+	if len(where) == 0 {
+		return text
+	}
+	return strings.Join(where, ", ") + ": " + text
+}
+
+// Sentence writes the text of a code with its arguments. A code without a text is shown as it is,
+// with its arguments, so that nothing is hidden.
+func Sentence(code string, args map[string]string) string {
+	s, ok := sentences[code]
+	if !ok {
+		keys := make([]string, 0, len(args))
+		for k := range args {
+			keys = append(keys, k)
+		}
+		sort.Strings(keys)
+		parts := []string{strings.ReplaceAll(code, "_", " ")}
+		for _, k := range keys {
+			parts = append(parts, k+" "+args[k])
+		}
+		return strings.Join(parts, "; ")
+	}
+	for k, v := range args {
+		s = strings.ReplaceAll(s, "{"+k+"}", v)
+	}
+	return s
+}

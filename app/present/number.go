@@ -1,0 +1,102 @@
+package present
+
+import (
+	"math"
+	"strconv"
+	"strings"
+
+	"groundtally/scoring"
+)
+
+// Figure writes a number with as many digits as its range bears: the last digit shown is worth about
+// a tenth of the distance from low to high. Without a range three significant digits are shown.
+func Figure(central, low, high float64) string {
+	if central == 0 {
+		return "0"
+	}
+	digits := 2 - int(math.Floor(math.Log10(math.Abs(central))))
+	if w := high - low; w > 0 {
+		digits = 1 - int(math.Floor(math.Log10(w)))
+		if top := 3 - int(math.Floor(math.Log10(math.Abs(central)))); digits > top {
+			digits = top
+		}
+	}
+	return group(roundTo(central, digits), max(digits, 0))
+}
+
+func roundTo(x float64, digits int) float64 {
+	p := math.Pow(10, float64(digits))
+	if digits < 0 {
+		p = math.Pow(10, float64(-digits))
+		return math.Round(x/p) * p
+	}
+	return math.Round(x*p) / p
+}
+
+// group writes thousands apart with a narrow comma-free blank, so that 12 345 reads the same in every
+// country.
+func group(x float64, decimals int) string {
+	s := strconv.FormatFloat(x, 'f', decimals, 64)
+	if s == "-0" {
+		s = "0"
+	}
+	sign := ""
+	if strings.HasPrefix(s, "-") {
+		sign, s = "-", s[1:]
+	}
+	whole, frac, dot := strings.Cut(s, ".")
+	var b strings.Builder
+	for i, r := range whole {
+		if i > 0 && (len(whole)-i)%3 == 0 && len(whole) > 4 {
+			b.WriteByte(' ')
+		}
+		b.WriteRune(r)
+	}
+	if dot {
+		b.WriteByte('.')
+		b.WriteString(frac)
+	}
+	return sign + b.String()
+}
+
+// Unit writes a unit for people; a pure number has none.
+func Unit(u string) string {
+	if u == "1" {
+		return ""
+	}
+	return u
+}
+
+// Cell writes a consequence in a few characters: its central value, or the state in its place.
+func Cell(c scoring.Consequence) string {
+	switch c.State {
+	case scoring.Number:
+		return Figure(c.Central, c.Low, c.High)
+	case scoring.Class:
+		return c.Why
+	}
+	return c.State.String()
+}
+
+// Span writes low to high with the meaning of the range; empty when no range is stated.
+func Span(c scoring.Consequence) string {
+	if c.State != scoring.Number || c.Range == scoring.NoRange || c.Range == "" {
+		return ""
+	}
+	return Figure(c.Low, c.Low, c.High) + " to " + Figure(c.High, c.Low, c.High) + " (" + RangeWords(c.Range) + ")"
+}
+
+// RangeWords says what a range means.
+func RangeWords(r scoring.Range) string {
+	switch r {
+	case scoring.P10P90:
+		return "P10 to P90 of the trials"
+	case scoring.Bounds:
+		return "bounds"
+	case scoring.Corners:
+		return "all inputs low to all inputs high"
+	case scoring.LayerTolerance:
+		return "position tolerance of the layers"
+	}
+	return "no uncertainty stated"
+}
