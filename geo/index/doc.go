@@ -1,0 +1,2 @@
+// Package index finds the boxes that meet a box.
+package index

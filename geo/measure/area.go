@@ -1,0 +1,121 @@
+package measure
+
+import (
+	"math"
+
+	"groundtally/geo"
+)
+
+// SignedRingAreaM2 gives the area of a closed ring in m², positive when the ring runs counter-clockwise.
+//
+//	A = ½ Σ (xᵢ·yᵢ₊₁ − xᵢ₊₁·yᵢ)
+//
+// with coordinates taken from the ring's first position, which keeps digits when the ring lies far from
+// the origin. A ring that is not closed is closed by the sum; fewer than three positions give 0.
+// Source: the shoelace formula (Meister 1769).
+func SignedRingAreaM2(ring []geo.XY) float64 {
+	if len(ring) < 3 {
+		return 0
+	}
+	o := ring[0]
+	sum := 0.0
+	for i := 1; i+1 < len(ring); i++ {
+		p, q := ring[i].Sub(o), ring[i+1].Sub(o)
+		sum += float64(p.X*q.Y) - float64(q.X*p.Y)
+	}
+	return sum / 2
+}
+
+// AreaM2 gives the area of a polygon geometry in m²: outer rings less their holes, whatever way the
+// rings run. Points and lines have the area 0. The parts are taken as not overlapping.
+func AreaM2(g geo.XYGeometry) float64 {
+	if g.Kind != geo.Polygons {
+		return 0
+	}
+	sum := 0.0
+	for _, part := range g.Parts {
+		for i, ring := range part {
+			a := math.Abs(SignedRingAreaM2(ring))
+			if i > 0 {
+				a = -a
+			}
+			sum += a
+		}
+	}
+	return sum
+}
+
+// LengthM gives the length of lines, or the length of all rings of polygons, in metres; 0 for points.
+func LengthM(g geo.XYGeometry) float64 {
+	if g.Kind != geo.Lines && g.Kind != geo.Polygons {
+		return 0
+	}
+	sum := 0.0
+	for _, part := range g.Parts {
+		for _, ring := range part {
+			for i := 1; i < len(ring); i++ {
+				sum += ring[i].Dist(ring[i-1])
+			}
+		}
+	}
+	return sum
+}
+
+// Centroid gives the centre of mass: of the area for polygons, of the length for lines, of the positions
+// for points. Polygons without area fall back to their rings' length, lines without length to their
+// positions. It reports false for a geometry without positions. The centroid of a bent polygon may lie
+// outside it: see InteriorPoint.
+//
+//	x̄ = Σ (xᵢ + xᵢ₊₁)(xᵢ·yᵢ₊₁ − xᵢ₊₁·yᵢ) / 6A, likewise ȳ
+func Centroid(g geo.XYGeometry) (geo.XY, bool) {
+	e := geo.ExtentOf(g)
+	if e.Empty() {
+		return geo.XY{}, false
+	}
+	o := e.Centre()
+	if g.Kind == geo.Polygons {
+		var sx, sy, sa float64
+		for _, part := range g.Parts {
+			for i, ring := range part {
+				var rx, ry, ra float64
+				for k := 0; k+1 < len(ring); k++ {
+					p, q := ring[k].Sub(o), ring[k+1].Sub(o)
+					c := float64(p.X*q.Y) - float64(q.X*p.Y)
+					ra += c
+					rx += float64((p.X + q.X) * c)
+					ry += float64((p.Y + q.Y) * c)
+				}
+				sign := 1.0
+				if (ra < 0) != (i > 0) {
+					sign = -1
+				}
+				sa += sign * ra
+				sx += sign * rx
+				sy += sign * ry
+			}
+		}
+		if sa > 0 {
+			return geo.XY{X: o.X + sx/(3*sa), Y: o.Y + sy/(3*sa)}, true
+		}
+	}
+	if g.Kind == geo.Polygons || g.Kind == geo.Lines {
+		var sx, sy, sl float64
+		for _, part := range g.Parts {
+			for _, ring := range part {
+				for k := 0; k+1 < len(ring); k++ {
+					p, q := ring[k].Sub(o), ring[k+1].Sub(o)
+					l := p.Dist(q)
+					sl += l
+					sx += float64((p.X + q.X) / 2 * l)
+					sy += float64((p.Y + q.Y) / 2 * l)
+				}
+			}
+		}
+		if sl > 0 {
+			return geo.XY{X: o.X + sx/sl, Y: o.Y + sy/sl}, true
+		}
+	}
+	var sx, sy, n float64
+	g.Each(func(p geo.XY) { sx += p.X - o.X; sy += p.Y - o.Y; n++ })
+	return geo.XY{X: o.X + sx/n, Y: o.Y + sy/n}, true
+}

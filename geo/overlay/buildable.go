@@ -1,0 +1,447 @@
+package overlay
+
+import (
+	"cmp"
+	"fmt"
+	"math"
+	"slices"
+
+	"github.com/twpayne/go-geos"
+
+	"groundtally/geo"
+	"groundtally/geo/index"
+	"groundtally/geo/measure"
+)
+
+// Rule takes land from a site.
+type Rule struct {
+	Name string // not empty, different from the other rules' names
+	// Features take the land within SetbackM of them; with no setback only polygons take anything.
+	// Features far from the site are passed over.
+	Features []geo.XYGeometry
+	SetbackM float64 // 0 or more
+	// Boundary makes the rule take the strip of SetbackM inside the site's own edge; Features must be
+	// empty.
+	Boundary bool
+	// Checked says that polygon features are known to be valid, as those of a Layer are, so that they
+	// are not checked again.
+	Checked bool
+}
+
+// BuildableInput is a site with its rules.
+type BuildableInput struct {
+	Site  geo.XYGeometry
+	Rules []Rule
+	// SmallestWidthM drops what is narrower; 0 keeps everything.
+	SmallestWidthM float64
+	// SmallestPatchM2 drops connected patches that are smaller, after the width; 0 keeps everything.
+	SmallestPatchM2 float64
+	// KeepTaken asks for the land that each rule takes, for the map.
+	KeepTaken bool
+}
+
+// RuleTaken says what one rule takes from the site.
+type RuleTaken struct {
+	Name     string
+	AloneM2  float64 // taken by this rule only
+	SharedM2 float64 // taken by this rule while others take it too
+	TakesAll bool    // the rule alone leaves nothing of the site
+	Taken    geo.XYGeometry
+}
+
+// BuildableResult accounts for every square metre of the site:
+//
+//	GrossM2 = BuildableM2 + Σ Rules.AloneM2 + TakenSharedM2 + ShapeM2
+//
+// to 1e-6 of GrossM2. It does not depend on the order of rules or of their features.
+type BuildableResult struct {
+	Buildable     geo.XYGeometry
+	GrossM2       float64
+	BuildableM2   float64
+	TakenSharedM2 float64     // taken by two or more rules, counted once
+	ShapeM2       float64     // left by the rules but too narrow or too small
+	Rules         []RuleTaken // in the order of the input
+	Repaired      int         // site or feature parts that had to be made valid
+	Retried       int         // operations that failed at first and were done on a coarser grid
+}
+
+// closeShare is how near the account must close, relative to the gross area.
+const closeShare = 1e-6
+
+// allShare: a rule that leaves less than this share takes all.
+const allShare = 1e-9
+
+// Buildable finds what the rules leave of a site and what each took.
+//
+// With S the site, Rᵢ the region that rule i takes in or out of S:
+//
+//	gross       = area S
+//	left        = S − ∪Rᵢ
+//	aloneᵢ      = area(S − ∪_{j≠i} Rⱼ) − area left,  sharedᵢ = area(Rᵢ ∩ S) − aloneᵢ
+//	takenShared = area(∪Rᵢ ∩ S) − Σ aloneᵢ
+//	buildable   = the patches of width(left) of at least the smallest size
+//	shape       = area left − area buildable
+//
+// where width(L) is L ∩ ((L eroded by w/2) dilated by w/2 with square corners), w the smallest width: a
+// strip narrower than w goes, a part wide enough keeps its own outline, corners sharper than 60 degrees
+// lose their tip. A part exactly w wide stays. What is left and what is taken are computed apart; when they
+// do not add up to gross within 1e-6, or a part is out of its bounds, the site is computed again on a grid of
+// 1 micrometre, then 1 mm, then 1 cm, then refused with ErrNotComputed.
+func (e *Engine) Buildable(in BuildableInput) (out BuildableResult, err error) {
+	if err := in.check(); err != nil {
+		return out, fmt.Errorf("buildable area: %w", err)
+	}
+	err = e.do("buildable area", func() {
+		before := e.retries
+		for e.grid = 0; e.grid < len(gridsM); e.grid++ {
+			var off float64
+			out, off = e.buildable(in)
+			if math.Abs(off) <= closeShare*out.GrossM2 {
+				out.Retried = e.retries - before
+				return
+			}
+			e.retries++
+		}
+		fail("%w: the areas do not add up", ErrNotComputed)
+	})
+	if err != nil {
+		return BuildableResult{}, err
+	}
+	return out, nil
+}
+
+func (in BuildableInput) check() error {
+	bad := func(v float64) bool { return v < 0 || math.IsNaN(v) || math.IsInf(v, 0) }
+	if in.Site.Kind != geo.Polygons || in.Site.Empty() {
+		return fmt.Errorf("the site is a %v, want polygons", in.Site.Kind)
+	}
+	if bad(in.SmallestWidthM) || bad(in.SmallestPatchM2) {
+		return fmt.Errorf("smallest width %v m, smallest patch %v m2: want 0 or more", in.SmallestWidthM, in.SmallestPatchM2)
+	}
+	names := make(map[string]bool, len(in.Rules))
+	for _, r := range in.Rules {
+		switch {
+		case r.Name == "" || names[r.Name]:
+			return fmt.Errorf("rule name %q is empty or stands twice", r.Name)
+		case bad(r.SetbackM):
+			return fmt.Errorf("rule %q: the setback %v m must be 0 or more", r.Name, r.SetbackM)
+		case r.Boundary && len(r.Features) > 0:
+			return fmt.Errorf("rule %q keeps distance from the site's edge, so it takes no features", r.Name)
+		}
+		names[r.Name] = true
+	}
+	return nil
+}
+
+// buildable computes the result with the area by which the account fails to close.
+func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64) {
+	out = BuildableResult{Rules: make([]RuleTaken, len(in.Rules))}
+	site := e.raw(in.Site)
+	if !site.IsValid() {
+		site = e.makeValid(site)
+		out.Repaired++
+	}
+	out.GrossM2 = site.Area()
+	if !(out.GrossM2 > 0) {
+		fail("the site has no area")
+	}
+	box := geo.ExtentOf(in.Site)
+
+	// By name, so that rounding does not depend on the order of the input.
+	order := make([]int, len(in.Rules))
+	for i := range order {
+		order[i] = i
+	}
+	slices.SortFunc(order, func(a, b int) int { return cmp.Compare(in.Rules[a].Name, in.Rules[b].Name) })
+
+	var active []int // rules that take anything, in that order
+	var regions []*geos.Geom
+	all := 0
+	for _, i := range order {
+		t := &out.Rules[i]
+		t.Name, t.Taken = in.Rules[i].Name, geo.XYGeometry{Kind: geo.Polygons}
+		region, whole := e.region(in.Rules[i], site, box, &out.Repaired)
+		if region == nil {
+			continue
+		}
+		own := site
+		if !whole {
+			own = e.overlay(intersection, region, site)
+		}
+		area := own.Area()
+		if area <= 0 {
+			continue
+		}
+		if whole || out.GrossM2-area <= allShare*out.GrossM2 {
+			t.TakesAll, own, area = true, site, out.GrossM2
+			all++
+		}
+		t.SharedM2 = area // until the part taken alone is known
+		if in.KeepTaken {
+			t.Taken = e.give(own, geo.Polygons)
+		}
+		active = append(active, i)
+		regions = append(regions, region)
+	}
+	left, takenM2 := e.alone(site, regions, active, all, &out)
+	leftM2 := left.Area()
+	off = out.GrossM2 - leftM2 - takenM2
+	sumAlone := 0.0
+	for _, i := range active {
+		r := &out.Rules[i]
+		// Out of bounds by more than rounding, these fail the account.
+		off = worse(off, math.Min(0, r.AloneM2))
+		off = worse(off, math.Min(0, r.SharedM2-r.AloneM2))
+		r.AloneM2 = math.Max(0, r.AloneM2)
+		r.SharedM2 = math.Max(0, r.SharedM2-r.AloneM2)
+		sumAlone += r.AloneM2
+	}
+	off = worse(off, math.Min(0, takenM2-sumAlone))
+	out.TakenSharedM2 = math.Max(0, takenM2-sumAlone)
+
+	kept := left
+	if w := in.SmallestWidthM; w > 0 && !left.IsEmpty() {
+		kept = e.wideEnough(left, w)
+	}
+	out.Buildable = e.give(kept, geo.Polygons)
+	if in.SmallestPatchM2 > 0 {
+		out.Buildable.Parts = slices.DeleteFunc(out.Buildable.Parts, func(part [][]geo.XY) bool {
+			return partArea(part) < in.SmallestPatchM2
+		})
+	}
+	for _, part := range out.Buildable.Parts {
+		out.BuildableM2 += partArea(part)
+	}
+	out.ShapeM2 = math.Max(0, leftM2-out.BuildableM2)
+	if in.SmallestWidthM == 0 && in.SmallestPatchM2 == 0 {
+		out.ShapeM2 = 0
+	}
+	off = worse(off, out.GrossM2-out.BuildableM2-sumAlone-out.TakenSharedM2-out.ShapeM2)
+	return out, off
+}
+
+func worse(a, b float64) float64 {
+	if math.Abs(b) > math.Abs(a) {
+		return b
+	}
+	return a
+}
+
+// alone finds the land left, the area taken by all rules together, what each takes alone. One or more
+// rules that take all leave nothing: two of them share everything.
+func (e *Engine) alone(site *geos.Geom, regions []*geos.Geom, active []int, all int, out *BuildableResult) (left *geos.Geom, takenM2 float64) {
+	n := len(regions)
+	if n == 0 {
+		return site, 0
+	}
+	if all > 1 {
+		return e.own(e.ctx.NewEmptyPolygon(), "empty"), out.GrossM2
+	}
+	if n == 1 {
+		r := &out.Rules[active[0]]
+		r.AloneM2 = r.SharedM2 // which is still all that the rule takes
+		if r.TakesAll {
+			return e.own(e.ctx.NewEmptyPolygon(), "empty"), r.AloneM2
+		}
+		return e.overlayFrom(max(e.grid, finest), difference, site, regions[0]), r.AloneM2
+	}
+	// after[k] is the union of regions[k:]; left loses one region after the other.
+	after := make([]*geos.Geom, n)
+	after[n-1] = regions[n-1]
+	for k := n - 2; k >= 0; k-- {
+		after[k] = e.overlay(union, regions[k], after[k+1])
+	}
+	left = site
+	lifted := make([]float64, n) // area left if the rule were lifted
+	for k, i := range active {
+		if all == 0 || out.Rules[i].TakesAll {
+			without := left
+			if k+1 < n {
+				without = e.overlay(difference, left, after[k+1])
+			}
+			lifted[k] = without.Area()
+		}
+		// The last difference is done on a grid, where gaps, spikes without area collapse that rounding
+		// left between regions side by side.
+		level := e.grid
+		if k == n-1 {
+			level = max(level, finest)
+		}
+		left = e.overlayFrom(level, difference, left, regions[k])
+	}
+	if all == 1 {
+		left = e.own(e.ctx.NewEmptyPolygon(), "empty")
+	}
+	leftM2 := left.Area()
+	for k, i := range active {
+		if all == 0 || out.Rules[i].TakesAll {
+			out.Rules[i].AloneM2 = lifted[k] - leftM2
+		}
+	}
+	if all == 1 {
+		return left, out.GrossM2
+	}
+	return left, e.overlay(intersection, after[0], site).Area()
+}
+
+// region gives what a rule takes in the neighbourhood of the site, nil for nothing; whole says that it
+// covers the site. Regions reach beyond the site, so that their edges do not run along the site's.
+func (e *Engine) region(r Rule, site *geos.Geom, box geo.Extent, repaired *int) (region *geos.Geom, whole bool) {
+	if r.Boundary {
+		if r.SetbackM == 0 {
+			return nil, false
+		}
+		x := box.Grow(2)
+		around := e.own(e.ctx.NewGeomFromBounds(x.MinX, x.MinY, x.MaxX, x.MaxY), "box")
+		inner := e.setback(site, -r.SetbackM)
+		if inner.IsEmpty() {
+			return around, true
+		}
+		return e.overlay(difference, around, inner), false
+	}
+	reach := box.Grow(r.SetbackM*arcFactor + 1)
+	var members []*geos.Geom
+	for _, p := range pieces(r, reach) {
+		g := e.raw(p.g)
+		if p.g.Kind == geo.Polygons && !r.Checked && !g.IsValid() {
+			g = e.makeValid(g)
+			*repaired++
+		}
+		if !within(p.x, reach) {
+			cut := e.clip(g, reach)
+			g.Destroy()
+			g = cut
+		}
+		if r.SetbackM > 0 {
+			wide := e.setback(g, r.SetbackM)
+			g.Destroy()
+			g = wide
+		}
+		if g.IsEmpty() {
+			continue
+		}
+		x := p.x.Grow(r.SetbackM * arcFactor)
+		if within(box, x) && e.covers(g, site) {
+			return g, true
+		}
+		if !within(x, box.Grow(1)) {
+			cut := e.clip(g, box.Grow(1))
+			g.Destroy()
+			if g = cut; g.IsEmpty() {
+				continue
+			}
+		}
+		members = append(members, g)
+	}
+	if len(members) == 0 {
+		return nil, false
+	}
+	return e.join(members), false
+}
+
+// piece is one part of a feature with its extent.
+type piece struct {
+	g geo.XYGeometry
+	x geo.Extent
+}
+
+// pieces gives the parts of the rule's features that can reach the site, in an order that does not depend
+// on that of the features. Positions that are not finite end the job even when they lie far away.
+func pieces(r Rule, reach geo.Extent) []piece {
+	var out []piece
+	for i, f := range r.Features {
+		if f.Kind != geo.Polygons && r.SetbackM == 0 {
+			continue
+		}
+		for _, part := range f.Parts {
+			x := geo.EmptyExtent()
+			for _, ring := range part {
+				for _, p := range ring {
+					if !p.Finite() {
+						fail("rule %q, feature %d: a position is not finite: %v", r.Name, i+1, p)
+					}
+					x = x.Add(p)
+				}
+			}
+			if !x.Empty() && x.Meets(reach) {
+				out = append(out, piece{geo.XYGeometry{Kind: f.Kind, Parts: [][][]geo.XY{part}}, x})
+			}
+		}
+	}
+	slices.SortFunc(out, func(a, b piece) int {
+		return cmp.Or(
+			cmp.Compare(a.x.MinX, b.x.MinX), cmp.Compare(a.x.MinY, b.x.MinY),
+			cmp.Compare(a.x.MaxX, b.x.MaxX), cmp.Compare(a.x.MaxY, b.x.MaxY),
+			cmp.Compare(a.g.Kind, b.g.Kind), compareParts(a.g.Parts[0], b.g.Parts[0]))
+	})
+	return out
+}
+
+func within(x, y geo.Extent) bool {
+	return x.MinX >= y.MinX && x.MinY >= y.MinY && x.MaxX <= y.MaxX && x.MaxY <= y.MaxY
+}
+
+// widthSlackM keeps parts that are exactly as wide as asked in spite of rounding.
+const widthSlackM = 1e-3
+
+// wideEnough gives the part of g that is at least w metres wide with its own outline.
+func (e *Engine) wideEnough(g *geos.Geom, w float64) *geos.Geom {
+	core := e.widen(g, -math.Max(w-widthSlackM, w/2)/2, askedSegments)
+	if core.IsEmpty() {
+		return core
+	}
+	// A mitre limit of 2 squares corners down to 60 degrees.
+	back := e.own(core.BufferWithStyle(w/2+widthSlackM, askedSegments, geos.BufCapStyleRound, geos.BufJoinStyleMitre, 2), "buffer")
+	return e.overlay(intersection, g, back)
+}
+
+func partArea(part [][]geo.XY) float64 {
+	return measure.AreaM2(geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}})
+}
+
+// Layer is a rule's features widened by its setback once for many sites. It is read-only, so workers may
+// share it.
+type Layer struct {
+	regions []geo.XYGeometry
+	tree    *index.Tree
+}
+
+// NewLayer repairs the features where needed, widens each by setbackM metres, packs them in an index.
+// Without a setback, points and lines take no land and are left out.
+func (e *Engine) NewLayer(features []geo.XYGeometry, setbackM float64) (l *Layer, err error) {
+	l = &Layer{}
+	for i, f := range features {
+		err := e.do(fmt.Sprintf("feature %d", i+1), func() {
+			if setbackM < 0 || math.IsNaN(setbackM) || math.IsInf(setbackM, 0) {
+				fail("the setback %v m must be 0 or more", setbackM)
+			}
+			if f.Empty() || (f.Kind != geo.Polygons && setbackM == 0) {
+				return
+			}
+			g := e.raw(f)
+			if f.Kind == geo.Polygons && !g.IsValid() {
+				g = e.makeValid(g)
+			}
+			if r := e.give(e.setback(g, setbackM), geo.Polygons); !r.Empty() {
+				l.regions = append(l.regions, r)
+			}
+		})
+		if err != nil {
+			return nil, err
+		}
+	}
+	l.tree = index.Of(l.regions, 0)
+	return l, nil
+}
+
+// Len gives the number of regions.
+func (l *Layer) Len() int { return len(l.regions) }
+
+// Rule gives the rule with the regions that meet the extent of a site.
+func (l *Layer) Rule(name string, site geo.Extent) Rule {
+	r := Rule{Name: name, Checked: true}
+	for _, i := range l.tree.Search(site, nil) {
+		r.Features = append(r.Features, l.regions[i])
+	}
+	return r
+}

@@ -1,0 +1,2 @@
+// Package terrain answers questions about a grid of heights.
+package terrain

@@ -1,0 +1,157 @@
+package terrain
+
+import (
+	"fmt"
+	"math"
+
+	"groundtally/geo"
+	"groundtally/geo/measure"
+)
+
+// Summary describes the terrain of polygons, every cell weighed by the area of it that they hold.
+type Summary struct {
+	AreaM2 float64 // of the polygons, as summed
+
+	MeanM, MinM, MaxM float64 // heights of the cells met
+	HeightShare       float64 // share of the area with a height; below 1 the figures stand for that share
+	HasHeight         bool    // whether any height is known
+
+	MeanSlopeDeg float64
+	SteepShare   float64 // share steeper than the limit, of the area with a slope
+	SlopeShare   float64 // share of the area with a slope
+	HasSlope     bool
+}
+
+// linesPerCell is how many level lines measure the share of a cell inside a polygon; within a line the
+// lengths are exact.
+const linesPerCell = 8
+
+// Over summarises the terrain of polygons whose parts do not overlap. A cell is steep when its slope is
+// above limitDeg. Areas come from level lines, at least 8 to a cell row, at least 32 to a polygon: true to
+// about a thousandth. Polygons that reach beyond the grid lower HeightShare, SlopeShare.
+func (g *Grid) Over(polygons geo.XYGeometry, limitDeg float64) (Summary, error) {
+	var s Summary
+	if polygons.Kind != geo.Polygons || polygons.Empty() {
+		return s, fmt.Errorf("terrain over a %v: want polygons", polygons.Kind)
+	}
+	if math.IsNaN(limitDeg) || limitDeg < 0 || limitDeg > 90 {
+		return s, fmt.Errorf("slope limit %v degrees: want 0 to 90", limitDeg)
+	}
+	finite := true
+	polygons.Each(func(p geo.XY) { finite = finite && p.Finite() })
+	if !finite {
+		return s, fmt.Errorf("terrain over polygons with a position that is not finite")
+	}
+	slicer := measure.NewSlicer(polygons)
+	x := slicer.Extent()
+	lines := math.Max(32, math.Ceil((x.MaxY-x.MinY)/g.CellM*linesPerCell))
+	if lines > 1e7 {
+		return s, fmt.Errorf("terrain over polygons %.0f m high with cells of %v m: too large", x.MaxY-x.MinY, g.CellM)
+	}
+	h := (x.MaxY - x.MinY) / lines
+	left := g.Origin.X - g.CellM/2
+	var buf []measure.Span
+	var known, sloped, steep, sumZ, sumSlope float64
+	s.MinM, s.MaxM = math.Inf(1), math.Inf(-1)
+	for k := range int(lines) {
+		y := x.MinY + float64((float64(k)+0.5)*h)
+		buf = slicer.At(y, buf[:0])
+		_, row := g.cell(geo.XY{X: g.Origin.X, Y: y})
+		for _, sp := range buf {
+			s.AreaM2 += (sp.Hi - sp.Lo) * h
+			if row < 0 || row >= g.NY {
+				continue
+			}
+			from := max(0, int(math.Floor((sp.Lo-left)/g.CellM)))
+			for c := from; c < g.NX; c++ {
+				west := left + float64(float64(c)*g.CellM)
+				if west >= sp.Hi {
+					break
+				}
+				w := (math.Min(sp.Hi, west+g.CellM) - math.Max(sp.Lo, west)) * h
+				if w <= 0 {
+					continue
+				}
+				if z, ok := g.Height(c, row); ok {
+					known += w
+					sumZ += float64(w * z)
+					s.MinM, s.MaxM = math.Min(s.MinM, z), math.Max(s.MaxM, z)
+				}
+				if a, ok := g.SlopeDeg(c, row); ok {
+					sloped += w
+					sumSlope += float64(w * a)
+					if a > limitDeg {
+						steep += w
+					}
+				}
+			}
+		}
+	}
+	if s.AreaM2 <= 0 {
+		return Summary{}, fmt.Errorf("terrain over polygons without area")
+	}
+	if s.HasHeight = known > 0; s.HasHeight {
+		s.MeanM, s.HeightShare = sumZ/known, math.Min(1, known/s.AreaM2)
+	} else {
+		s.MinM, s.MaxM = 0, 0
+	}
+	if s.HasSlope = sloped > 0; s.HasSlope {
+		s.MeanSlopeDeg, s.SteepShare, s.SlopeShare = sumSlope/sloped, steep/sloped, math.Min(1, sloped/s.AreaM2)
+	}
+	return s, nil
+}
+
+// Steep gives the cells within the extent whose slope is above limitDeg as polygons for a rule that takes
+// land: cells side by side are merged to rows, equal rows above each other to blocks. Blocks may share
+// edges; the overlay joins them. Cells without a slope are left out.
+func (g *Grid) Steep(within geo.Extent, limitDeg float64) (geo.XYGeometry, error) {
+	out := geo.XYGeometry{Kind: geo.Polygons}
+	if math.IsNaN(limitDeg) || limitDeg < 0 || limitDeg > 90 {
+		return out, fmt.Errorf("slope limit %v degrees: want 0 to 90", limitDeg)
+	}
+	e := g.Extent()
+	if within.Empty() || !within.Meets(e) {
+		return out, nil
+	}
+	c0, r0 := g.cell(geo.XY{X: math.Max(within.MinX, e.MinX), Y: math.Max(within.MinY, e.MinY)})
+	c1, r1 := g.cell(geo.XY{X: math.Min(within.MaxX, e.MaxX), Y: math.Min(within.MaxY, e.MaxY)})
+	c1, r1 = min(c1, g.NX-1), min(r1, g.NY-1)
+
+	type run struct{ c0, c1, r0 int } // columns c0 to c1, begun in row r0
+	var open []run                    // blocks that the last row could continue, by rising c0
+	end := func(b run, r int) {
+		sw, ne := g.Centre(b.c0, b.r0), g.Centre(b.c1, r)
+		d := g.CellM / 2
+		w, s, o, n := sw.X-d, sw.Y-d, ne.X+d, ne.Y+d
+		out.Parts = append(out.Parts, [][]geo.XY{{{X: w, Y: s}, {X: o, Y: s}, {X: o, Y: n}, {X: w, Y: n}, {X: w, Y: s}}})
+	}
+	for r := r0; r <= r1; r++ {
+		var row []run
+		for c := c0; c <= c1; c++ {
+			if a, ok := g.SlopeDeg(c, r); !ok || a <= limitDeg {
+				continue
+			}
+			if n := len(row); n > 0 && row[n-1].c1 == c-1 {
+				row[n-1].c1 = c
+				continue
+			}
+			row = append(row, run{c, c, r})
+		}
+		i := 0
+		for _, b := range open {
+			for i < len(row) && row[i].c0 < b.c0 {
+				i++
+			}
+			if i < len(row) && row[i].c0 == b.c0 && row[i].c1 == b.c1 {
+				row[i].r0 = b.r0
+				continue
+			}
+			end(b, r-1)
+		}
+		open = row
+	}
+	for _, b := range open {
+		end(b, r1)
+	}
+	return out, nil
+}
