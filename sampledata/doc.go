@@ -1,0 +1,2 @@
+// Package sampledata holds the files of the sample district, the Isle of Marram.
+package sampledata

@@ -1,0 +1,2 @@
+// Package manifest describes the files of a sample district.
+package manifest
