@@ -1,0 +1,734 @@
+package run
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"slices"
+	"sort"
+	"strings"
+
+	"groundtally/app/study"
+	"groundtally/assets/citedtable"
+	"groundtally/geo"
+	"groundtally/geo/overlay"
+	"groundtally/scoring"
+	"groundtally/scoring/params"
+	"groundtally/scoring/reckon"
+	"groundtally/scoring/units"
+)
+
+// candidateEdition is raised when the digits of connection, facts or consequences change.
+const candidateEdition = 1
+
+// reckoner evaluates the graph for candidates with one set of factors and draws.
+type reckoner struct {
+	p       *Params
+	snap    *study.Snapshot
+	seed    uint64
+	trials  int
+	central []scoring.Value // factors and settings; facts are filled in per candidate
+	drawn   []reckon.Drawn
+	user    map[string]bool // factors that the user changed
+	keys    []KeyInfo
+	want    []int // slots of the keys that the graph gives
+	wantKey []int // their place in keys
+	demand  fact
+}
+
+func (w *world) newReckoner() (*reckoner, error) {
+	k := &reckoner{p: w.p, snap: w.snap, user: map[string]bool{}, keys: w.p.Keys()}
+	seed, ok := w.snap.Number("run.seed")
+	if !ok || seed < 0 || seed != math.Floor(seed) || seed > 1<<53 {
+		return nil, fmt.Errorf("run.seed must be a whole number from 0")
+	}
+	k.seed = uint64(seed)
+	n, ok := w.snap.Number("run.trials")
+	if !ok || n < 10 || n > 100000 || n != math.Floor(n) {
+		return nil, fmt.Errorf("run.trials must be a whole number from 10 to 100000")
+	}
+	k.trials = int(n)
+	g := w.p.Graph
+	k.central = make([]scoring.Value, g.Size())
+	needed := map[int]bool{}
+	for _, key := range k.keys {
+		for _, s := range w.p.reaches[key.Key] {
+			needed[s] = true
+		}
+	}
+	for slot, l := range g.Leaves() {
+		if l.Kind != scoring.FactorLeaf {
+			continue
+		}
+		f, changed, err := k.factor(l.Name)
+		if err != nil {
+			return nil, err
+		}
+		k.user[l.Name] = changed
+		k.central[slot] = scoring.Num(f.Central)
+		if f.Dist == params.Fixed || f.Low == f.High || !needed[slot] {
+			continue
+		}
+		d := reckon.Drawn{Slot: slot, Values: make([]float64, k.trials)}
+		for t := range d.Values {
+			d.Values[t] = f.Draw(k.seed, t)
+		}
+		k.drawn = append(k.drawn, d)
+	}
+	for _, s := range settingLeaves {
+		slot, _ := g.Slot(s.leaf)
+		x, ok := w.snap.Number(s.setting)
+		switch {
+		case ok:
+			k.central[slot] = scoring.Num(x)
+		case s.leaf == "agreed_limit_kw":
+			k.central[slot] = scoring.Num(math.MaxFloat64) // no limit agreed
+		default:
+			k.central[slot] = scoring.NotSetKey(s.setting)
+		}
+	}
+	if x, source, ok := w.demand(); ok {
+		slot, _ := g.Slot("demand_mwh_per_yr")
+		k.central[slot] = scoring.Num(x)
+		k.demand = fact{scoring.Num(x), source}
+	} else if slot, _ := g.Slot("demand_mwh_per_yr"); !k.central[slot].OK() {
+		k.central[slot] = scoring.UnknownBecause("no_layer:demand")
+	}
+	if w.snap.Text("energy.human_power") != "on" {
+		slot, _ := g.Slot("human_power_w")
+		k.central[slot] = scoring.NotSetKey("energy.human_power")
+		k.drawn = slices.DeleteFunc(k.drawn, func(d reckon.Drawn) bool { return d.Slot == slot })
+	}
+	for i, key := range k.keys {
+		if slot, ok := g.Slot(key.Key); ok {
+			k.want = append(k.want, slot)
+			k.wantKey = append(k.wantKey, i)
+		}
+	}
+	return k, nil
+}
+
+// factor gives a factor with the user's values in place of the shipped ones.
+func (k *reckoner) factor(id string) (params.Factor, bool, error) {
+	return UserFactor(k.p, k.snap, id)
+}
+
+// UserFactor gives a factor with the user's values in place of the shipped ones; changed tells whether
+// there are any. Settings are inventory.<row>.low, .central and .high.
+func UserFactor(p *Params, snap *study.Snapshot, id string) (f params.Factor, changed bool, err error) {
+	f, ok := p.Factors[id]
+	if !ok {
+		return f, false, fmt.Errorf("no factor %q", id)
+	}
+	if id == croplandUse {
+		zone := strings.ReplaceAll(snap.Text("climate.zone"), " ", "_")
+		v, err := p.Soil.Lookup("land_use", "2019", zone, "cropland")
+		if err != nil {
+			return f, false, fmt.Errorf("climate.zone: %w", err)
+		}
+		f.Low, f.Central, f.High, f.Source, f.Provenance = v.Value, v.Value, v.Value, v.Source, v.Provenance
+	}
+	name := strings.ReplaceAll(id, ".", "-")
+	for _, s := range []struct {
+		level string
+		to    *float64
+	}{{"low", &f.Low}, {"central", &f.Central}, {"high", &f.High}} {
+		if x, in := snap.Number("inventory." + name + "." + s.level); in {
+			*s.to, changed = x, true
+			if v, _, _ := snap.Lookup("inventory." + name + "." + s.level); v.Source != "" {
+				f.Source = v.Source
+			}
+		}
+	}
+	if changed {
+		f.Low, f.High = math.Min(f.Low, f.Central), math.Max(f.High, f.Central)
+		if f.Low <= 0 && f.Dist == params.Lognormal {
+			f.Dist = params.Triangular
+		}
+		f.Provenance = ""
+	}
+	return f, changed, f.Validate()
+}
+
+// demand gives the yearly use from the demand table, else the typed one.
+func (w *world) demand() (mwh float64, source string, ok bool) {
+	t, there := w.tables["demand"]
+	if !there {
+		return 0, "", false
+	}
+	rec := w.snap.LayersOf("demand")[0]
+	if c := t.ColumnIndex(rec.Match["load"]); rec.Match["load"] != "" && c >= 0 {
+		sum, n := 0.0, 0
+		for _, f := range t.Features {
+			if x, ok := f.Values[c].Float(); ok {
+				if y, err := units.Convert(x, unitOr(rec.Units[rec.Match["load"]], "kW"), "kW"); err == nil {
+					sum += y
+					n++
+				}
+			}
+		}
+		if n == 0 {
+			return 0, "", false
+		}
+		return sum / float64(n) * units.HoursPerYear / units.KWhPerMWh, rec.Name, true
+	}
+	if c := t.ColumnIndex(rec.Match["energy"]); rec.Match["energy"] != "" && c >= 0 {
+		sum := 0.0
+		for _, f := range t.Features {
+			if x, ok := f.Values[c].Float(); ok {
+				sum += x
+			}
+		}
+		return sum, rec.Name, sum > 0
+	}
+	return 0, "", false
+}
+
+// key writes what connection, facts and consequences of any candidate depend on besides its fit.
+func (k *reckoner) key(w *world) string {
+	h := newKey("candidate", candidateEdition)
+	for _, l := range w.snap.Layers {
+		if l.Role == "parcels" || l.Role == "wind_resource" || l.Role == "place_names" || l.Role == "backdrop" {
+			continue
+		}
+		h.text(l.Role)
+		h.text(l.Digest)
+		h.text(fmt.Sprint(l.Complete))
+		for _, f := range sortedNames(l.Match) {
+			h.text(f)
+			h.text(l.Match[f])
+			h.text(l.Units[l.Match[f]])
+		}
+	}
+	h.int(k.trials)
+	h.int(int(k.seed))
+	for _, key := range w.snap.Keys() {
+		for _, prefix := range []string{"climate.", "land.", "grid.", "energy.", "inventory.", "wind.", "solar."} {
+			if strings.HasPrefix(key, prefix) {
+				if s, _, in := w.snap.Lookup(key); in {
+					h.text(key)
+					h.text(s.Value)
+				}
+			}
+		}
+	}
+	for _, family := range sortedNames(w.p.Dates) {
+		h.text(family)
+		h.text(w.p.Dates[family])
+	}
+	return h.sum()
+}
+
+func sortedNames[V any](m map[string]V) []string {
+	out := make([]string, 0, len(m))
+	for n := range m {
+		out = append(out, n)
+	}
+	sort.Strings(out)
+	return out
+}
+
+// candidate connects, measures and reckons one fitted site.
+func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fitter, assets []asset, o option, s site, grounds map[string]groundResult, sets map[string]*ruleset, r fitResult) (*Candidate, error) {
+	c := &Candidate{Site: s.id, Parcels: s.parcels, Plant: o.id, Technology: o.technology, Status: r.Status, Reason: r.Reason, Notices: []string{}, Incomplete: []string{}}
+	main := windPart
+	if !o.wind {
+		main = solarPart
+	}
+	g := grounds[main]
+	seen := map[string]bool{}
+	for _, part := range o.parts() {
+		for _, n := range append(slices.Clone(sets[part].incomplete), legalNotSet(w.snap, o)...) {
+			if !seen[n] {
+				seen[n] = true
+				c.Incomplete = append(c.Incomplete, n)
+			}
+		}
+		c.Notices = append(c.Notices, sets[part].notApplied...)
+	}
+	c.Taken, c.TakenSharedHa, c.ShapeHa = g.Taken, g.TakenSharedM2/units.M2PerHa, g.ShapeM2/units.M2PerHa
+	f := facts{}
+	f.num("gross_area_ha", g.GrossM2/units.M2PerHa, "parcels")
+	f.num("buildable_area_ha", g.BuildableM2/units.M2PerHa, "parcels, rules")
+	f.num("largest_patch_ha", g.LargestM2/units.M2PerHa, "parcels, rules")
+	if r.Status != Fitted {
+		c.Notices = append(c.Notices, r.Notices...)
+		for _, key := range k.keys {
+			if v, ok := f[key.Key]; ok {
+				c.Consequences = append(c.Consequences, scoring.Consequence{Key: key.Key, Account: key.Account, Unit: key.Unit, Low: v.v.X, Central: v.v.X, High: v.v.X, Median: v.v.X, Range: scoring.NoRange, Quality: "measured"})
+			}
+		}
+		if r.Status == NoRoom {
+			c.Miss = miss(g, sets[main])
+		}
+		return c, nil
+	}
+
+	noted := map[string]bool{}
+	if err := w.measureFacts(e, around, o, r, f, noted); err != nil {
+		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+	}
+	fitFacts(o, r, f)
+	track := w.trackKm(r, f["road_m"].v)
+	f.num("track_km", track, "rule of thumb: shortest tree × detour")
+	l, err := w.connect(fr, o, s, r, assets)
+	if err != nil {
+		return nil, err
+	}
+	linkFacts(l, f)
+	c.Connection = l.conn
+	c.Chain = r.Chain
+	for _, n := range r.Notices {
+		noted[n] = true
+	}
+	for _, n := range sortedNames(noted) {
+		c.Notices = append(c.Notices, n)
+	}
+
+	v := slices.Clone(k.central)
+	for _, name := range k.p.facts {
+		slot, _ := k.p.Graph.Slot(name)
+		got, ok := f[name]
+		if !ok {
+			return nil, fmt.Errorf("site %s, option %s: nobody gave the fact %q", s.id, o.id, name)
+		}
+		v[slot] = got.v
+	}
+	drawn := slices.Clone(k.drawn)
+	drawn = append(drawn, k.siteDraws(s.id, r)...)
+	k.p.Graph.Central(v)
+	spreads, err := k.p.Graph.Trials(v, drawn, k.want)
+	if err != nil {
+		return nil, err
+	}
+	k.fill(c, v, spreads, k.leafNotices(r, l))
+	for _, name := range k.p.facts {
+		c.Leaves = append(c.Leaves, Leaf{Name: name, State: f[name].v.State, X: f[name].v.X, Why: f[name].v.Why, Source: f[name].source})
+	}
+	if c.Fit, err = w.fitView(r, track); err != nil {
+		return nil, err
+	}
+	return c, nil
+}
+
+// legalNotSet lists the legal limits that apply to an option and are not set.
+func legalNotSet(snap *study.Snapshot, o option) []string {
+	if !o.wind {
+		return nil
+	}
+	var out []string
+	for _, d := range snap.Catalog().Definitions {
+		if d.Legal && strings.HasPrefix(d.Key, "limit.") {
+			if s, _, in := snap.Lookup(d.Key); in && s.Value == study.NotSetText {
+				out = append(out, d.Key)
+			}
+		}
+	}
+	return out
+}
+
+func miss(g groundResult, rs *ruleset) *Nearest {
+	m := &Nearest{LargestPatchHa: g.LargestM2 / units.M2PerHa, BuildableHa: g.BuildableM2 / units.M2PerHa, NeedsPatchHa: rs.patchM2 / units.M2PerHa}
+	for _, t := range g.Taken {
+		if a := t.AloneHa + t.SharedHa; a > m.TakesHa {
+			m.LargestTaker, m.TakesHa = t.Rule, a
+		}
+	}
+	return m
+}
+
+// fitFacts gives the facts that follow from the fit.
+func fitFacts(o option, r fitResult, f facts) {
+	const fitted = "fit"
+	energy := func(y yieldValue) scoring.Value {
+		if y.Why != "" {
+			return scoring.UnknownBecause(y.Why)
+		}
+		return scoring.Num(y.MWh)
+	}
+	n := float64(len(r.Turbines))
+	f.num("wind_kw", r.WindKW, fitted)
+	f.num("solar_kw", r.SolarKW, fitted)
+	f.num("solar_ac_kw", r.SolarACKW, fitted)
+	f.num("ac_kw", r.WindKW+r.SolarACKW, fitted)
+	for name, technology := range map[string]string{"tracking_kw": "solar_tracking", "vertical_kw": "solar_vertical", "elevated_kw": "solar_agri"} {
+		x := 0.0
+		if o.technology == technology {
+			x = r.SolarKW
+		}
+		f.num(name, x, fitted)
+	}
+	f.num("turbines", n, fitted)
+	f.num("turbine_count", n, fitted)
+	f.num("fence_ha", r.FenceHa, fitted)
+	f.num("footprint_total_ha", r.TotalHa, fitted)
+	f.set("wind_p50_mwh", energy(r.WindMWh), "wind yield")
+	f.set("solar_p50_mwh", energy(r.SolarMWh), "solar yield")
+	f.num("wind_yield_sigma", r.WindSigma, "root sum of squares")
+	f.num("solar_yield_sigma", r.SolarSigma, "root sum of squares")
+	f.num("wind_yield_error", 1, "even odds")
+	f.num("solar_yield_error", 1, "even odds")
+	f.set("wind_load_factor", loadFactor(r.WindMWh, r.WindKW), fitted)
+	f.set("solar_load_factor", loadFactor(r.SolarMWh, r.SolarACKW), fitted)
+	if n > 0 {
+		f.set("wake_loss_frac", knownIf(r.WakeLoss, r.WindMWh.Why), "wind yield")
+	} else {
+		f.set("turbine_count", scoring.NoneBecause("no rotor"), fitted)
+		f.set("wake_loss_frac", scoring.NoneBecause("no rotor"), fitted)
+	}
+	if r.SolarKW > 0 {
+		f.set("performance_ratio_frac", knownIf(r.PR, r.SolarMWh.Why), "solar yield")
+		f.set("crop_light_frac", knownIf(r.CropLight, r.SolarMWh.Why), "solar yield")
+	} else {
+		f.set("performance_ratio_frac", scoring.NoneBecause("no panels"), fitted)
+		f.set("crop_light_frac", scoring.NoneBecause("no panels over the crop"), fitted)
+	}
+}
+
+func knownIf(x float64, why string) scoring.Value {
+	if why != "" {
+		return scoring.UnknownBecause(why)
+	}
+	return scoring.Num(x)
+}
+
+func loadFactor(y yieldValue, kw float64) scoring.Value {
+	switch {
+	case y.Why != "":
+		return scoring.UnknownBecause(y.Why)
+	case kw == 0:
+		return scoring.Num(0)
+	}
+	return scoring.Num(y.MWh * units.KWhPerMWh / (kw * units.HoursPerYear))
+}
+
+// linkFacts gives the facts that follow from the connection.
+func linkFacts(l link, f facts) {
+	names := []string{"connection_straight_km", "connection_route_km", "connection_route_loss_frac", "connection_route_rise_frac", "circuits_lv", "circuits_mv", "circuits_hv", "transformer_kva", "switchgear_count"}
+	if !l.ok {
+		for _, n := range append(names, "connection_spare_kw", "curtailed_share") {
+			f.set(n, scoring.UnknownBecause(l.why), "")
+		}
+		return
+	}
+	src := l.conn.Asset
+	f.num("connection_straight_km", l.conn.StraightKm, src)
+	f.num("connection_route_km", l.best.RouteKm.Central, src)
+	f.num("connection_route_loss_frac", l.best.LossFrac.Central, "conductor "+l.conn.Conductor)
+	f.num("connection_route_rise_frac", l.best.RiseFrac, "conductor "+l.conn.Conductor)
+	f.num("circuits_lv", l.circ[0], src)
+	f.num("circuits_mv", l.circ[1], src)
+	f.num("circuits_hv", l.circ[2], src)
+	f.num("transformer_kva", l.kva, src)
+	f.num("switchgear_count", l.gear, src)
+	if l.asset.spare.Known {
+		told := src
+		if l.asset.toldBy != "" {
+			told = strings.TrimSpace(src + ", told by " + l.asset.toldBy + " " + l.asset.toldOn)
+		}
+		f.num("connection_spare_kw", l.asset.spare.Value, told)
+	} else {
+		f.set("connection_spare_kw", scoring.UnknownBecause("spare_unknown"), src)
+	}
+	if l.shareK {
+		f.num("curtailed_share", l.share, src)
+	} else {
+		f.set("curtailed_share", scoring.UnknownBecause("spare_unknown"), src)
+	}
+}
+
+// siteDraws draws the yield errors of a site: normal around 1, cut at zero. Options of one technology on
+// one site share their draw, because they share the wind or the sun.
+func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
+	var out []reckon.Drawn
+	for _, d := range []struct {
+		leaf  string
+		sigma float64
+		on    bool
+	}{{"wind_yield_error", r.WindSigma, r.WindKW > 0}, {"solar_yield_error", r.SolarSigma, r.SolarKW > 0}} {
+		if !d.on || d.sigma == 0 {
+			continue
+		}
+		slot, _ := k.p.Graph.Slot(d.leaf)
+		v := make([]float64, k.trials)
+		for t := range v {
+			z := math.Sqrt2 * math.Erfinv(2*params.DrawSite(k.seed, site, d.leaf, t)-1)
+			v[t] = math.Max(0, 1+float64(d.sigma*z))
+		}
+		out = append(out, reckon.Drawn{Slot: slot, Values: v})
+	}
+	return out
+}
+
+// leafNotices gives the notices that a leaf brings to every consequence that depends on it.
+func (k *reckoner) leafNotices(r fitResult, l link) map[int][]string {
+	out := map[int][]string{}
+	put := func(leaf string, codes ...string) {
+		if slot, ok := k.p.Graph.Slot(leaf); ok {
+			out[slot] = append(out[slot], codes...)
+		}
+	}
+	for slot, leaf := range k.p.Graph.Leaves() {
+		if leaf.Kind != scoring.FactorLeaf || k.user[leaf.Name] {
+			continue
+		}
+		if strings.HasSuffix(leaf.Name, ".mj") || strings.HasSuffix(leaf.Name, ".kgco2e") {
+			out[slot] = append(out[slot], "inventory_default")
+		}
+		if k.p.Factors[leaf.Name].Provenance == citedtable.Memory {
+			out[slot] = append(out[slot], "memory_parameter")
+		}
+	}
+	put("track_km", "tracks_rule")
+	put("detour_ratio", "route_straight")
+	if l.ok && !l.asset.spare.Known {
+		put("curtailed_share", "spare_unknown")
+		put("connection_spare_kw", "spare_unknown")
+	}
+	if l.shareK && l.share > 0 {
+		put("curtailed_share", "export_limited", "curtailment_bound")
+	}
+	for _, n := range r.Notices {
+		if n == "horizon_flat" {
+			put("solar_p50_mwh", n)
+		} else {
+			put("wind_p50_mwh", n)
+		}
+	}
+	return out
+}
+
+// fill turns values and spreads into consequences, every key in its place.
+func (k *reckoner) fill(c *Candidate, v []scoring.Value, spreads []reckon.Spread, notices map[int][]string) {
+	spread := make([]int, len(k.keys))
+	for i := range spread {
+		spread[i] = -1
+	}
+	for i, at := range k.wantKey {
+		spread[at] = i
+	}
+	for i, key := range k.keys {
+		q := scoring.Consequence{Key: key.Key, Account: key.Account, Unit: key.Unit}
+		if spread[i] < 0 {
+			q.State = scoring.NotAssessed
+			if reason, ok := noneFor(key, c.Technology); ok {
+				q.State, q.Why = scoring.None, reason
+			}
+			c.Consequences = append(c.Consequences, q)
+			continue
+		}
+		val := v[k.want[spread[i]]]
+		q.State, q.Why = val.State, val.Why
+		codes := map[string]bool{}
+		reach := k.p.reaches[key.Key]
+		for _, slot := range reach {
+			for _, n := range notices[slot] {
+				codes[n] = true
+			}
+		}
+		if reason, ok := noneFor(key, c.Technology); ok && val.State != scoring.Number {
+			q.State, q.Why = scoring.None, reason
+		}
+		if q.State == scoring.Number {
+			q.Central, q.Low, q.High, q.Median, q.Range = val.X, val.X, val.X, val.X, scoring.NoRange
+			if s := spreads[spread[i]]; s.Moves && s.Numbers > 0 {
+				q.Low, q.High, q.Median, q.Range = s.Low, s.High, s.Median, scoring.P10P90
+				if s.Nevers > 0 {
+					codes["may_never"] = true
+				}
+				if q.Central != 0 && math.Abs(q.Median/q.Central-1) > 0.02 {
+					codes["median_differs"] = true
+				}
+			}
+		}
+		q.Quality = quality(codes, reach, k.p)
+		q.Notices = sortedNames(codes)
+		c.Consequences = append(c.Consequences, q)
+	}
+}
+
+func quality(codes map[string]bool, reach []int, p *Params) string {
+	switch {
+	case codes["inventory_default"]:
+		return "default inventory"
+	case codes["memory_parameter"]:
+		return "default, unverified"
+	case len(reach) == 1 && p.Graph.Leaves()[reach[0]].Kind == scoring.FactLeaf:
+		return "measured"
+	}
+	return "computed"
+}
+
+// noneFor gives the reason why a key does not arise for a technology.
+func noneFor(key KeyInfo, technology string) (string, bool) {
+	hasWind, hasSun := technology == "wind" || technology == "wind_solar", technology != "wind"
+	reason := strings.TrimPrefix(key.NotApplicable, "none: ")
+	if i := strings.IndexAny(reason, ";("); i > 0 {
+		reason = strings.TrimSpace(reason[:i])
+	}
+	switch {
+	case key.Technologies == "wind" && !hasWind, key.Technologies == "solar" && !hasSun:
+		if !strings.HasPrefix(key.NotApplicable, "none: ") {
+			return "not used for this technology", true
+		}
+		return reason, true
+	}
+	return "", false
+}
+
+func (w *world) fitView(r fitResult, trackKm float64) (*Fit, error) {
+	f := &Fit{Mode: r.Mode, RatedKW: r.WindKW + r.SolarKW, WindKW: r.WindKW, SolarKW: r.SolarKW, ACKW: r.WindKW + r.SolarACKW, FencedHa: r.FenceHa, SpacingHa: r.SpacingHa, TrackKm: trackKm}
+	for _, p := range r.Turbines {
+		ll, err := w.frame.Inverse(p)
+		if err != nil {
+			return nil, err
+		}
+		f.Turbines = append(f.Turbines, roundLL(ll))
+	}
+	panels, err := w.frame.Unproject(r.Fence)
+	if err != nil {
+		return nil, err
+	}
+	f.Panels = geo.Map(panels, roundLL)
+	return f, nil
+}
+
+// roundLL rounds to seven decimals, about a centimetre, as RFC 7946 suggests for exchange.
+func roundLL(p geo.LonLat) geo.LonLat {
+	const d = 1e7
+	return geo.LonLat{Lon: math.Round(p.Lon*d) / d, Lat: math.Round(p.Lat*d) / d}
+}
+
+// candidates computes the step for every site and option, by option and then site.
+func (r *runner) candidates(ctx context.Context, fitKeys map[string][]string, fitData map[string][]byte) ([]Candidate, error) {
+	w := r.w
+	k, err := w.newReckoner()
+	if err != nil {
+		return nil, err
+	}
+	fr, err := w.newFitter()
+	if err != nil {
+		return nil, err
+	}
+	assets := w.assets()
+	common := k.key(w)
+	type job struct {
+		o   option
+		s   int
+		key string
+	}
+	var list []job
+	var all []string
+	for _, o := range w.options {
+		for i := range w.sites {
+			h := newKey("candidate", candidateEdition)
+			h.text(common)
+			h.text(fitKeys[o.id][i])
+			for _, part := range o.parts() {
+				for _, n := range r.sets[o.id+"/"+part].incomplete {
+					h.text(n)
+				}
+			}
+			for _, n := range legalNotSet(w.snap, o) {
+				h.text(n)
+			}
+			h.text(w.sites[i].id)
+			for _, p := range w.sites[i].parcels {
+				h.text(p)
+			}
+			list = append(list, job{o, i, h.sum()})
+			all = append(all, list[len(list)-1].key)
+		}
+	}
+	have, err := r.cached(ctx, "candidate", all)
+	if err != nil {
+		return nil, err
+	}
+	bySite := map[int][]int{} // what is to be computed, grouped so that the options of a site share work
+	for i, j := range list {
+		if _, ok := have[j.key]; !ok {
+			bySite[j.s] = append(bySite[j.s], i)
+		}
+	}
+	sites := make([]int, 0, len(bySite))
+	for s := range bySite {
+		sites = append(sites, s)
+	}
+	sort.Ints(sites)
+	out := make([]Candidate, len(list))
+	fresh := make([][]byte, len(list))
+	err = forEach(ctx, r.cores, len(sites), openEngine, closeEngine, func(e *overlay.Engine, n int) error {
+		around := w.newPieces(w.sites[sites[n]])
+		for _, i := range bySite[sites[n]] {
+			j := list[i]
+			grounds := map[string]groundResult{}
+			sets := map[string]*ruleset{}
+			for _, part := range j.o.parts() {
+				name := j.o.id + "/" + part
+				g, err := r.groundOf(name, j.s)
+				if err != nil {
+					return err
+				}
+				grounds[part], sets[part] = *g, r.sets[name]
+			}
+			fitted, err := r.fitOf(fitKeys[j.o.id][j.s], fitData)
+			if err != nil {
+				return err
+			}
+			c, err := k.candidate(e, w, around, fr, assets, j.o, w.sites[j.s], grounds, sets, *fitted)
+			if err != nil {
+				return err
+			}
+			out[i] = *c
+			if fresh[i], err = pack(c); err != nil {
+				return err
+			}
+		}
+		return nil
+	}, r.report("candidate", len(sites)))
+	if err != nil {
+		return nil, err
+	}
+	todo := 0
+	for i := range list {
+		if fresh[i] != nil {
+			todo++
+			r.add(study.Result{Step: "candidate", Digest: list[i].key, Data: fresh[i]})
+		}
+	}
+	err = forEach(ctx, r.cores, len(list), func() (struct{}, error) { return struct{}{}, nil }, func(struct{}) {}, func(_ struct{}, i int) error {
+		if fresh[i] != nil {
+			return nil
+		}
+		return unpack(have[list[i].key], &out[i])
+	}, nil)
+	if err != nil {
+		return nil, err
+	}
+	r.keep("candidate", all)
+	r.count("candidate", todo, len(list)-todo)
+	for i := range out {
+		out[i].Gates = w.gates(w.sites[list[i].s])
+		out[i].OverLimit = overLimit(w.snap, &out[i])
+	}
+	return out, nil
+}
+
+// overLimit lists the keys whose central value breaks a limit that the user entered.
+func overLimit(snap *study.Snapshot, c *Candidate) []string {
+	var out []string
+	for _, q := range c.Consequences {
+		x, ok := snap.Number("limit." + q.Key)
+		if !ok || q.State != scoring.Number {
+			continue
+		}
+		crit, known := snap.Catalog().Criterion(strings.TrimSuffix(q.Key, "_per_gwh"))
+		if !known {
+			continue
+		}
+		if crit.Better == "more" && q.Central < x || crit.Better != "more" && q.Central > x {
+			out = append(out, q.Key)
+		}
+	}
+	return out
+}

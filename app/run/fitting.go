@@ -1,0 +1,739 @@
+package run
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"sort"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/geo/fit"
+	"groundtally/geo/measure"
+	"groundtally/geo/overlay"
+	"groundtally/scoring/solar"
+	"groundtally/scoring/units"
+	"groundtally/scoring/wind"
+)
+
+// fitEdition is raised when the digits of the step change.
+const fitEdition = 1
+
+// fitResult is the plant fitted on a site.
+type fitResult struct {
+	Status, Reason string
+	Mode           string
+	Turbines       []geo.XY
+	Fence          geo.XYGeometry // ground inside the fence
+	WindKW         float64
+	SolarKW        float64
+	SolarACKW      float64
+	FenceHa        float64
+	SpacingHa      float64 // union of the spacing ellipses inside the site
+	TotalHa        float64 // union of spacing ellipses and fence
+	WindMWh        yieldValue
+	SolarMWh       yieldValue
+	WakeLoss       float64
+	PR             float64
+	CropLight      float64
+	WindSigma      float64
+	SolarSigma     float64
+	Chain          []ChainStep
+	Notices        []string
+	NeedsPatchHa   float64
+	ResourceM      float64 // distance to the resource point
+}
+
+// yieldValue is an energy or the reason why it is missing.
+type yieldValue struct {
+	MWh float64
+	Why string // empty when known
+}
+
+// fitter holds what all fits share.
+type fitter struct {
+	w      *world
+	wind   []windPoint
+	sun    *sunlight
+	sunKey string
+	yields map[string]solar.YearResult // by option and rounded latitude
+}
+
+// latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
+// changes the yield by less than 1e-4.
+const latStep = 0.01
+
+func (w *world) newFitter() (*fitter, error) {
+	f := &fitter{w: w, yields: map[string]solar.YearResult{}}
+	var err error
+	if f.wind, err = w.windPoints(); err != nil {
+		return nil, err
+	}
+	if f.sun, err = w.sunlight(); err != nil {
+		return nil, err
+	}
+	if f.sun == nil {
+		return f, nil
+	}
+	lats := map[float64]bool{}
+	for _, s := range w.sites {
+		lat, err := f.siteLat(s)
+		if err != nil {
+			return nil, err
+		}
+		lats[lat] = true
+	}
+	sorted := make([]float64, 0, len(lats))
+	for l := range lats {
+		sorted = append(sorted, l)
+	}
+	sort.Float64s(sorted)
+	lon := w.frame.Centre().Lon
+	for _, lat := range sorted {
+		c, err := solar.NewClimate(solar.ClimateInput{LatDeg: lat, LonDeg: lon, GHIKWhPerM2: f.sun.ghi, DHIKWhPerM2: f.sun.dhi, TempC: f.sun.temp, Albedo: f.sun.albedo})
+		if err != nil {
+			return nil, fmt.Errorf("sunlight of %s: %w", f.sun.source, err)
+		}
+		for _, o := range w.options {
+			if !o.solar {
+				continue
+			}
+			p, err := w.solarPlant(o, lat)
+			if err != nil {
+				return nil, err
+			}
+			y, err := c.Yield(p)
+			if err != nil {
+				return nil, fmt.Errorf("plant option %q: %w", o.id, err)
+			}
+			f.yields[yieldKey(o, lat)] = y
+		}
+	}
+	return f, nil
+}
+
+func yieldKey(o option, lat float64) string { return fmt.Sprintf("%s at %.2f", o.id, lat) }
+
+func (f *fitter) siteLat(s site) (float64, error) {
+	c := s.box.Centre()
+	ll, err := f.w.frame.Inverse(c)
+	if err != nil {
+		return 0, err
+	}
+	return math.Round(ll.Lat/latStep) * latStep, nil
+}
+
+// key writes what the fit of a site depends on besides its ground.
+func (f *fitter) key(o option, s site, ground []string) string {
+	k := newKey("fit", fitEdition)
+	for _, g := range ground {
+		k.text(g)
+	}
+	k.text(o.id)
+	names := make([]string, 0, len(o.settings))
+	for n := range o.settings {
+		if n != "title" {
+			names = append(names, n)
+		}
+	}
+	sort.Strings(names)
+	for _, n := range names {
+		k.text(n)
+		k.text(o.settings[n])
+	}
+	if o.wind {
+		for _, n := range []string{"wind.shear_alpha"} {
+			v, _, _ := f.w.snap.Lookup(n)
+			k.text(v.Value)
+		}
+		if p, d, ok := nearestWind(f.wind, s.box.Centre()); ok {
+			k.num(d)
+			k.num(p.heightM)
+			for _, sec := range p.sectors {
+				k.num(sec.FrequencyFrac)
+				k.num(sec.Weibull.AMPerS)
+				k.num(sec.Weibull.K)
+			}
+		}
+		if f.w.terrain != nil {
+			k.text(f.w.terrain.rec.Digest)
+		}
+	}
+	if o.solar && f.sun != nil {
+		for i := range 12 {
+			k.num(f.sun.ghi[i])
+			k.num(f.sun.temp[i])
+			k.num(f.sun.albedo[i])
+			if f.sun.dhi != nil {
+				k.num(f.sun.dhi[i])
+			}
+		}
+		if lat, err := f.siteLat(s); err == nil {
+			k.num(lat)
+		}
+	}
+	if o.fit == "spare_capacity" {
+		for _, role := range []string{"grid_lines", "substations"} {
+			for _, l := range f.w.byRole[role] {
+				k.text(l.rec.Digest)
+			}
+		}
+		f.w.gridSettingsKey(k)
+	}
+	return k.sum()
+}
+
+// compute fits an option on a site.
+func (f *fitter) compute(e *overlay.Engine, o option, s site, ground map[string]groundResult) (fitResult, error) {
+	r := fitResult{Mode: o.fit, Fence: geo.XYGeometry{Kind: geo.Polygons}}
+	limit := math.Inf(1) // power that may be fitted
+	if o.fit == "spare_capacity" {
+		spare, known, why := f.w.spareFor(s)
+		if !known {
+			r.Status, r.Reason = NotComputed, why
+			return r, nil
+		}
+		limit = spare
+	}
+	if o.fit == "power" {
+		x, ok := o.num("fit_power_kw")
+		if !ok {
+			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+".fit_power_kw"
+			return r, nil
+		}
+		limit = x
+	}
+	target := math.Inf(1)
+	if o.fit == "yearly_energy" {
+		x, ok := o.num("fit_energy_mwh_per_yr")
+		if !ok {
+			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+".fit_energy_mwh_per_yr"
+			return r, nil
+		}
+		target = x
+	}
+	if o.wind {
+		if err := f.fitWind(e, o, s, ground[windPart], limit, target, &r); err != nil || r.Status == NotComputed {
+			return r, err
+		}
+	}
+	if o.solar {
+		if err := f.fitSolar(e, o, s, ground[solarPart], limit-r.WindKW, target-r.WindMWh.MWh, &r); err != nil || r.Status == NotComputed {
+			return r, err
+		}
+	}
+	switch {
+	case o.wind && o.solar && (len(r.Turbines) == 0 || r.SolarKW == 0):
+		r.Status = NoRoom // a plant of both needs both
+	case len(r.Turbines) == 0 && r.SolarKW == 0:
+		r.Status = NoRoom
+	default:
+		r.Status = Fitted
+		if err := f.totals(e, o, s, &r); err != nil {
+			return r, err
+		}
+	}
+	return r, nil
+}
+
+// fitWind places turbines.
+func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, limitKW, targetMWh float64, r *fitResult) error {
+	hub, okH := o.num("hub_height_m")
+	d, okD := o.num("rotor_diameter_m")
+	rated, okR := o.num("rated_kw")
+	for name, ok := range map[string]bool{"hub_height_m": okH, "rotor_diameter_m": okD, "rated_kw": okR} {
+		if !ok {
+			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+"."+name
+			return nil
+		}
+	}
+	machine, err := f.turbine(o, rated, d)
+	if err != nil {
+		return err
+	}
+	if g.BuildableM2 <= 0 {
+		return nil
+	}
+	most := math.MaxInt32 // no limit but the room
+	if o.fit == "machines" {
+		n, ok := o.num("fit_machines")
+		if !ok {
+			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+".fit_machines"
+			return nil
+		}
+		most = int(n)
+	} else if n, ok := o.num("fit_machines"); ok {
+		most = int(n)
+	}
+	if !math.IsInf(limitKW, 1) {
+		most = min(most, int(math.Floor(limitKW/rated+1e-9)))
+	}
+	if most <= 0 {
+		return nil
+	}
+	p, dist, known := nearestWind(f.wind, s.box.Centre())
+	r.ResourceM = dist
+	along, _ := o.num("spacing_along_d")
+	across, _ := o.num("spacing_across_d")
+	el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
+	var in wind.FarmInput
+	if known {
+		from, even := prevailingDeg(p.sectors)
+		if even {
+			el = fit.Spacing{AlongM: 4 * d, AcrossM: 4 * d}
+		}
+		if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
+			return err
+		}
+		if in, err = f.farm(o, machine, hub, p, s); err != nil {
+			return err
+		}
+	}
+	var gain fit.Gain
+	if known {
+		ev, err := wind.NewEvaluator(in)
+		if err != nil {
+			return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+		}
+		gain = judge{ev: ev, toTrue: f.turn(s)}
+	}
+	layout, err := fit.Machines(fit.Input{Buildable: g.Area, Spacing: el, Max: capped(most), Gain: gain})
+	if err != nil {
+		return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+	}
+	at := layout.At
+	if len(at) == 0 {
+		return nil
+	}
+	energy := func(at []geo.XY) (wind.FarmResult, error) {
+		in.At = f.positions(s, at)
+		return wind.FarmYear(in)
+	}
+	var res wind.FarmResult
+	if known {
+		if res, err = energy(at); err != nil {
+			return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+		}
+		if !math.IsInf(targetMWh, 1) {
+			for n := 1; n <= len(at); n++ {
+				if res, err = energy(at[:n]); err != nil {
+					return err
+				}
+				if res.NetMWhPerYr >= targetMWh || n == len(at) {
+					at = at[:n]
+					break
+				}
+			}
+		}
+	}
+	r.Turbines = at
+	r.WindKW = rated * float64(len(at))
+	if !known {
+		r.WindMWh.Why = "no_layer:wind_resource"
+		return nil
+	}
+	r.WindMWh.MWh, r.WakeLoss = res.NetMWhPerYr, res.WakeLossFrac
+	for _, st := range res.Chain {
+		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "MWh/yr", Before: st.BeforeMWh, Share: st.Share, After: st.AfterMWh})
+	}
+	for _, n := range res.Notices {
+		r.Notices = append(r.Notices, string(n))
+	}
+	r.Notices = append(r.Notices, "nearest_resource")
+	if p.typed {
+		r.Notices = append(r.Notices, "rayleigh")
+	}
+	r.WindSigma, err = f.windSigma(res.SpeedSensitivity)
+	return err
+}
+
+// windSigma joins the screening uncertainty without a mast with the variation of one year.
+func (f *fitter) windSigma(sensitivity float64) (float64, error) {
+	model, err := f.w.p.Wind.Get("sigma_no_mast_frac")
+	if err != nil {
+		return 0, err
+	}
+	year, err := f.w.p.Wind.Get("interannual_speed_sigma_frac")
+	if err != nil {
+		return 0, err
+	}
+	return wind.SigmaOverYears(model.Central, year.Central*sensitivity, 1)
+}
+
+// turbine finds the machine of an option: a reference curve by name, else the generic curve for its
+// power and rotor.
+func (f *fitter) turbine(o option, ratedKW, rotorM float64) (wind.Turbine, error) {
+	id := o.settings["turbine"]
+	if id != "" && id != study.NotSetText {
+		t, err := wind.FindTurbine(f.w.p.Turbines, id)
+		if err != nil {
+			return t, fmt.Errorf("plant option %q: %w", o.id, err)
+		}
+		if math.Abs(t.RatedKW-ratedKW) > 0.02*t.RatedKW || math.Abs(t.RotorDiameterM-rotorM) > 0.02*t.RotorDiameterM {
+			return t, fmt.Errorf("plant option %q: the curve %s is for %g kW and a rotor of %g m, the option says %g kW and %g m; take a curve that fits or set plant.%s.turbine to \"not set\" for the generic curve",
+				o.id, id, t.RatedKW, t.RotorDiameterM, ratedKW, rotorM, o.id)
+		}
+		return t, nil
+	}
+	g, err := f.w.p.Wind.Generic(ratedKW, rotorM)
+	if err != nil {
+		return wind.Turbine{}, err
+	}
+	c, err := g.Curve()
+	if err != nil {
+		return wind.Turbine{}, fmt.Errorf("plant option %q: %w", o.id, err)
+	}
+	return wind.Turbine{ID: "generic", Name: "generic curve", RatedKW: ratedKW, RotorDiameterM: rotorM, CutInMPerS: g.CutInMPerS, CutOutMPerS: g.CutOutMPerS, Curve: c, Source: "Saint-Drenan et al. 2020, Renewable Energy"}, nil
+}
+
+func (f *fitter) farm(o option, machine wind.Turbine, hubM float64, p windPoint, s site) (wind.FarmInput, error) {
+	alpha, ok := f.w.snap.Number("wind.shear_alpha")
+	if !ok {
+		return wind.FarmInput{}, errors.New("wind.shear_alpha is not set")
+	}
+	height, known, err := f.w.heightM(s.box.Centre())
+	if err != nil {
+		return wind.FarmInput{}, err
+	}
+	if !known {
+		height = 0
+	}
+	set, err := f.w.p.Wind.Settings()
+	if err != nil {
+		return wind.FarmInput{}, err
+	}
+	losses, err := f.w.p.Wind.Losses(machine.RatedKW)
+	if err != nil {
+		return wind.FarmInput{}, err
+	}
+	return wind.FarmInput{
+		Site:    wind.Site{Rose: p.sectors, RefHeightM: p.heightM, ShearAlpha: alpha, ElevationM: height},
+		Turbine: machine, HubHeightM: hubM, Settings: set, Losses: losses,
+	}, nil
+}
+
+// turn gives the way from the frame to true east and north around the middle of a site.
+func (f *fitter) turn(s site) func(geo.XY) wind.Position {
+	c := s.box.Centre()
+	conv, err := f.w.frame.ConvergenceDeg(c)
+	if err != nil {
+		conv = 0 // the centre of a projected site always has a convergence
+	}
+	sin, cos := math.Sincos(conv * math.Pi / 180)
+	return func(p geo.XY) wind.Position {
+		x, y := p.X-c.X, p.Y-c.Y
+		return wind.Position{X: float64(x*cos) + float64(y*sin), Y: float64(y*cos) - float64(x*sin)}
+	}
+}
+
+func (f *fitter) positions(s site, at []geo.XY) []wind.Position {
+	to := f.turn(s)
+	out := make([]wind.Position, len(at))
+	for i, p := range at {
+		out[i] = to(p)
+	}
+	return out
+}
+
+// judge passes the layout search the energy of a layout.
+type judge struct {
+	ev     *wind.Evaluator
+	toTrue func(geo.XY) wind.Position
+}
+
+func (j judge) all(at []geo.XY) []wind.Position {
+	out := make([]wind.Position, len(at))
+	for i, p := range at {
+		out[i] = j.toTrue(p)
+	}
+	return out
+}
+
+func (j judge) Total(at []geo.XY) float64 { return j.ev.Total(j.all(at)) }
+
+func (j judge) Add(at []geo.XY, p geo.XY) float64 { return j.ev.Add(j.all(at), j.toTrue(p)) }
+
+func (j judge) Move(at []geo.XY, i int, p geo.XY) float64 {
+	return j.ev.Move(j.all(at), i, j.toTrue(p))
+}
+
+// fitSolar lays panels: the largest patches first, the last one cut by a line from south to north so
+// that no more ground is fenced than the power needs.
+func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, limitKW, targetMWh float64, r *fitResult) error {
+	if o.fit == "machines" && !o.wind {
+		r.Status, r.Reason = NotComputed, "fit_machines_needs_wind"
+		return nil
+	}
+	if g.BuildableM2 <= 0 {
+		return nil
+	}
+	eff, _ := o.num("module_efficiency")
+	gcr, _ := o.num("gcr")
+	share, _ := o.num("usable_share")
+	ratio, _ := o.num("dc_ac_ratio")
+	kwPerHa := solar.CapacityMWpPerHa(eff, gcr, share) * units.KWPerMW
+	if !(kwPerHa > 0) || !(ratio > 0) {
+		return fmt.Errorf("plant option %q: module_efficiency, gcr, usable_share and dc_ac_ratio must be above zero", o.id)
+	}
+	area := g.Area
+	if len(r.Turbines) > 0 {
+		clear, _ := o.num("tower_clear_m")
+		discs := make([]geo.XYGeometry, len(r.Turbines))
+		for i, p := range r.Turbines {
+			var err error
+			if discs[i], err = disc(p, clear); err != nil {
+				return err
+			}
+		}
+		all, err := e.Union(discs...)
+		if err != nil {
+			return err
+		}
+		if area, err = e.Difference(area, all); err != nil {
+			return err
+		}
+	}
+	if x, ok := o.num("fit_power_kw"); ok && o.fit != "power" {
+		limitKW = math.Min(limitKW, x)
+	}
+	var specific float64 // kWh per kW
+	if f.sun == nil {
+		r.SolarMWh.Why = "no_layer:solar_resource"
+	} else {
+		lat, err := f.siteLat(s)
+		if err != nil {
+			return err
+		}
+		y := f.yields[yieldKey(o, lat)]
+		specific, r.PR = y.SpecificYieldKWhPerKWp, y.PerformanceRatio
+		var ground, open float64
+		for i := range 12 {
+			ground += y.GroundKWhPerM2[i]
+			open += y.GHIKWhPerM2[i]
+		}
+		r.CropLight = ground / open
+		if !math.IsInf(targetMWh, 1) {
+			limitKW = math.Min(limitKW, targetMWh*units.KWhPerMWh/specific)
+		}
+	}
+	if limitKW <= 0 {
+		return nil
+	}
+	fence, ha, err := firstHectares(e, area, limitKW/kwPerHa)
+	if err != nil {
+		return fmt.Errorf("site %s: %w", s.id, err)
+	}
+	if ha <= 0 {
+		return nil
+	}
+	r.Fence, r.FenceHa = fence, ha
+	r.SolarKW = ha * kwPerHa
+	r.SolarACKW = r.SolarKW / ratio
+	if f.sun == nil {
+		return nil
+	}
+	lat, err := f.siteLat(s)
+	if err != nil {
+		return err
+	}
+	y := f.yields[yieldKey(o, lat)]
+	r.SolarMWh.MWh = specific * r.SolarKW / units.KWhPerMWh
+	for _, st := range y.Chain {
+		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "kWh/kWp", Before: st.BeforeKWhPerKWp, Share: -st.Share, After: st.AfterKWhPerKWp})
+	}
+	sig, err := f.w.p.Solar.Sigmas(solar.FromMap)
+	if err != nil {
+		return err
+	}
+	r.SolarSigma = sig.Total(1)
+	r.Notices = append(r.Notices, "horizon_flat")
+	return nil
+}
+
+// firstHectares takes the largest patches first until the area is reached.
+func firstHectares(e *overlay.Engine, g geo.XYGeometry, wantHa float64) (geo.XYGeometry, float64, error) {
+	type patch struct {
+		part [][]geo.XY
+		m2   float64
+	}
+	patches := make([]patch, len(g.Parts))
+	for i, part := range g.Parts {
+		patches[i] = patch{part, measure.AreaM2(geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}})}
+	}
+	sort.SliceStable(patches, func(i, j int) bool { return patches[i].m2 > patches[j].m2 })
+	out := geo.XYGeometry{Kind: geo.Polygons}
+	left := wantHa * units.M2PerHa
+	taken := 0.0
+	for _, p := range patches {
+		if left <= 0 {
+			break
+		}
+		one := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{p.part}}
+		if p.m2 <= left {
+			out.Parts = append(out.Parts, p.part)
+			taken += p.m2
+			left -= p.m2
+			continue
+		}
+		box := geo.ExtentOf(one)
+		lo, hi := box.MinY, box.MaxY
+		// Bisection to a hundredth of a millimetre; the lower side never fences more than is wanted.
+		for hi-lo > 1e-5 {
+			mid := (lo + hi) / 2
+			cut, err := e.Clip(one, geo.Extent{MinX: box.MinX - 1, MinY: box.MinY - 1, MaxX: box.MaxX + 1, MaxY: mid})
+			if err != nil {
+				return out, 0, err
+			}
+			if measure.AreaM2(cut) <= left {
+				lo = mid
+			} else {
+				hi = mid
+			}
+		}
+		// An exact overlay for the fence itself: clipping to a box may leave rings that touch themselves.
+		cut, err := e.Intersection(one, rectangle(geo.Extent{MinX: box.MinX - 1, MinY: box.MinY - 1, MaxX: box.MaxX + 1, MaxY: lo}))
+		if err != nil {
+			return out, 0, err
+		}
+		out.Parts = append(out.Parts, cut.Parts...)
+		taken += measure.AreaM2(cut)
+		left = 0
+	}
+	return out, taken / units.M2PerHa, nil
+}
+
+// capped turns "no limit" into the layout search's own word for it.
+func capped(most int) int {
+	if most == math.MaxInt32 {
+		return 0
+	}
+	return most
+}
+
+// disc gives a circle as a polygon of the same area.
+func disc(centre geo.XY, radiusM float64) (geo.XYGeometry, error) {
+	return fit.Spacing{AlongM: radiusM, AcrossM: radiusM}.Ellipse(centre, 1)
+}
+
+func rectangle(x geo.Extent) geo.XYGeometry {
+	return geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{{{{X: x.MinX, Y: x.MinY}, {X: x.MaxX, Y: x.MinY}, {X: x.MaxX, Y: x.MaxY}, {X: x.MinX, Y: x.MaxY}, {X: x.MinX, Y: x.MinY}}}}}
+}
+
+// totals finds the ground of the plant: the union of spacing ellipses inside the site, and the fence.
+func (f *fitter) totals(e *overlay.Engine, o option, s site, r *fitResult) error {
+	var all []geo.XYGeometry
+	if len(r.Turbines) > 0 {
+		d, _ := o.num("rotor_diameter_m")
+		along, _ := o.num("spacing_along_d")
+		across, _ := o.num("spacing_across_d")
+		el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
+		if p, _, ok := nearestWind(f.wind, s.box.Centre()); ok {
+			from, even := prevailingDeg(p.sectors)
+			if even {
+				el = fit.Spacing{AlongM: 4 * d, AcrossM: 4 * d}
+			}
+			var err error
+			if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
+				return err
+			}
+		}
+		var ellipses []geo.XYGeometry
+		for _, p := range r.Turbines {
+			// Half the spacing on each side, so that ellipses of neighbours at the rule's distance touch.
+			one, err := el.Ellipse(p, 0.5)
+			if err != nil {
+				return err
+			}
+			ellipses = append(ellipses, one)
+		}
+		u, err := e.Union(ellipses...)
+		if err != nil {
+			return err
+		}
+		if u, err = e.Intersection(u, s.geom); err != nil {
+			return fmt.Errorf("site %s: %w", s.id, err)
+		}
+		r.SpacingHa = measure.AreaM2(u) / units.M2PerHa
+		all = append(all, u)
+	}
+	if !r.Fence.Empty() {
+		all = append(all, r.Fence)
+	}
+	u, err := e.Union(all...)
+	if err != nil {
+		return err
+	}
+	r.TotalHa = measure.AreaM2(u) / units.M2PerHa
+	return nil
+}
+
+// fits computes the step for every site and option; data and keys are by option, then site.
+func (r *runner) fits(ctx context.Context) (map[string][]string, map[string][]byte, error) {
+	f, err := r.w.newFitter()
+	if err != nil {
+		return nil, nil, err
+	}
+	type job struct {
+		o   option
+		s   int
+		key string
+	}
+	keys := map[string][]string{}
+	var list []job
+	var all []string
+	for _, o := range r.w.options {
+		ks := make([]string, len(r.w.sites))
+		for i, s := range r.w.sites {
+			var g []string
+			for _, part := range o.parts() {
+				g = append(g, r.groundKeys[o.id+"/"+part][i])
+			}
+			ks[i] = f.key(o, s, g)
+			list = append(list, job{o, i, ks[i]})
+			all = append(all, ks[i])
+		}
+		keys[o.id] = ks
+	}
+	have, err := r.cached(ctx, "fit", all)
+	if err != nil {
+		return nil, nil, err
+	}
+	var todo []job
+	for _, j := range list {
+		if _, ok := have[j.key]; !ok {
+			todo = append(todo, j)
+		}
+	}
+	fresh := make([][]byte, len(todo))
+	live := make([]*fitResult, len(todo))
+	err = forEach(ctx, r.cores, len(todo), openEngine, closeEngine, func(e *overlay.Engine, i int) error {
+		j := todo[i]
+		g := map[string]groundResult{}
+		for _, part := range j.o.parts() {
+			one, err := r.groundOf(j.o.id+"/"+part, j.s)
+			if err != nil {
+				return err
+			}
+			g[part] = *one
+		}
+		res, err := f.compute(e, j.o, r.w.sites[j.s], g)
+		if err != nil {
+			return err
+		}
+		live[i] = &res
+		fresh[i], err = pack(res)
+		return err
+	}, r.report("fit", len(todo)))
+	if err != nil {
+		return nil, nil, err
+	}
+	r.fitLive = map[string]*fitResult{}
+	for i, j := range todo {
+		r.fitLive[j.key] = live[i]
+		r.add(study.Result{Step: "fit", Digest: j.key, Data: fresh[i]})
+	}
+	r.keep("fit", all)
+	r.count("fit", len(todo), len(list)-len(todo))
+	return keys, have, nil
+}

@@ -1,0 +1,347 @@
+package run
+
+import (
+	"context"
+	"fmt"
+	"sort"
+	"strings"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/geo/overlay"
+	"groundtally/scoring/units"
+)
+
+// groundEdition is raised when the digits of the step change.
+const groundEdition = 1
+
+// rule is one thing that takes land, for one part of an option.
+type rule struct {
+	name     string // "setback:dwellings", "exclude:water", "setback:boundary", "slope"
+	distM    float64
+	boundary bool
+	sources  []ruleSource
+}
+
+type ruleSource struct {
+	layer    *layer
+	keep     []bool // features that count
+	prepared *overlay.Layer
+}
+
+// ruleset is what a part of an option keeps to. Options with the same rules share it.
+type ruleset struct {
+	rules      []rule
+	widthM     float64
+	patchM2    float64
+	incomplete []string // legal rules that are not set
+	notApplied []string // codes of rules that could not be applied
+	slopeDeg   float64
+}
+
+// notLived is the class of dwellings that are none: barns and workplaces.
+const notLived = "not lived in"
+
+// rulesFor collects the rules of a part of an option.
+func (w *world) rulesFor(o option, part string) (*ruleset, error) {
+	rs := &ruleset{}
+	tip, rotor := 0.0, 0.0
+	if part == windPart {
+		hub, ok1 := o.num("hub_height_m")
+		d, ok2 := o.num("rotor_diameter_m")
+		if !ok1 || !ok2 {
+			return nil, fmt.Errorf("plant option %q needs hub_height_m and rotor_diameter_m", o.id)
+		}
+		tip, rotor = hub+d/2, d
+	}
+	distance := func(role string) (float64, bool, bool) { // metres, in force, not set
+		best, in, unset := 0.0, false, false
+		for _, u := range []struct {
+			suffix string
+			factor float64
+		}{{"_m", 1}, {"_tip", tip}, {"_rotor", rotor}} {
+			x, key, ok := w.cascadeNumber("rule.setback."+role+".", o, part, u.suffix)
+			if ok {
+				in = true
+				best = max(best, x*u.factor)
+			} else if key != "" {
+				unset = true
+			}
+		}
+		return best, in, unset && !in
+	}
+	for _, role := range w.snap.Catalog().Roles {
+		ls := w.byRole[role.Name]
+		if role.Name == "parcels" || role.Name == "district" {
+			continue
+		}
+		if d, in, unset := distance(role.Name); unset {
+			rs.incomplete = append(rs.incomplete, "setback:"+role.Name)
+		} else if in && len(ls) > 0 && d > 0 {
+			r := rule{name: "setback:" + role.Name, distM: d}
+			for _, l := range ls {
+				r.sources = append(r.sources, ruleSource{layer: l, keep: w.counted(l, role.Name, "", part)})
+			}
+			rs.rules = append(rs.rules, r)
+		}
+		if len(ls) > 0 && w.snap.Yes("rule.exclude."+role.Name) {
+			r := rule{name: "exclude:" + role.Name}
+			classes := w.snap.Text("rule.exclude." + role.Name + ".class")
+			for _, l := range ls {
+				r.sources = append(r.sources, ruleSource{layer: l, keep: w.counted(l, role.Name, classes, part)})
+			}
+			rs.rules = append(rs.rules, r)
+		}
+	}
+	if d, in, _ := distance("boundary"); in && d > 0 {
+		rs.rules = append(rs.rules, rule{name: "setback:boundary", distM: d, boundary: true})
+	}
+	if x, _, ok := w.cascadeNumber("rule.slope_max.", o, part, "_deg"); ok {
+		if w.terrain == nil {
+			rs.notApplied = append(rs.notApplied, "slope_rule_not_applied")
+		} else {
+			rs.slopeDeg = x
+		}
+	}
+	rs.widthM, _, _ = w.cascadeNumber("rule.smallest_width.", o, part, "_m")
+	if x, _, ok := w.cascadeNumber("rule.smallest_patch.", o, part, "_ha"); ok {
+		rs.patchM2 = x * units.M2PerHa
+	}
+	return rs, nil
+}
+
+// counted marks the features of a layer that a rule looks at.
+func (w *world) counted(l *layer, role, classes, part string) []bool {
+	keep := make([]bool, len(l.xy))
+	var want map[string]bool
+	if classes != "" {
+		want = map[string]bool{}
+		for _, c := range strings.Split(classes, "|") {
+			want[strings.TrimSpace(c)] = true
+		}
+	}
+	for i := range keep {
+		class := l.text(i, "class")
+		if class == "" {
+			class = l.text(i, "kind")
+		}
+		switch {
+		case role == "dwellings" && class == notLived:
+		case want != nil && !want[class]:
+		case role == "exclusion" && !appliesTo(l.text(i, "applies_to"), part):
+		default:
+			keep[i] = true
+		}
+	}
+	return keep
+}
+
+func appliesTo(text, part string) bool { return text == "" || text == "all" || text == part }
+
+// prepare widens the features of every rule once for all sites.
+func (rs *ruleset) prepare(e *overlay.Engine) error {
+	for i := range rs.rules {
+		r := &rs.rules[i]
+		for j := range r.sources {
+			s := &r.sources[j]
+			var fs []geo.XYGeometry
+			for k, g := range s.layer.xy {
+				if s.keep[k] && (r.distM > 0 || g.Kind == geo.Polygons) {
+					fs = append(fs, g)
+				}
+			}
+			l, err := e.NewLayer(fs, r.distM)
+			if err != nil {
+				return fmt.Errorf("rule %s, layer %q: %w", r.name, s.layer.rec.Name, err)
+			}
+			s.prepared = l
+		}
+	}
+	return nil
+}
+
+// key writes what the ground of a site depends on: the site, each rule that has features within its
+// reach with those features, and the shape steps. A rule without features near by does not take part,
+// so that changing it leaves far sites valid.
+func (rs *ruleset) key(w *world, s site) string {
+	k := newKey("ground", groundEdition)
+	k.geometry(s.geom)
+	k.num(rs.widthM)
+	k.num(rs.patchM2)
+	if rs.slopeDeg > 0 {
+		k.num(rs.slopeDeg)
+		k.text(w.terrain.rec.Digest)
+	}
+	var buf []int
+	for _, r := range rs.rules {
+		if r.boundary {
+			k.text(r.name)
+			k.num(r.distM)
+			continue
+		}
+		near := false
+		for _, src := range r.sources {
+			buf = src.layer.tree.Search(s.box.Grow(r.distM+1), buf[:0])
+			for _, i := range buf {
+				if !src.keep[i] {
+					continue
+				}
+				if !near {
+					k.text(r.name)
+					k.num(r.distM)
+					near = true
+				}
+				k.h.Write(src.layer.hash[i][:])
+			}
+		}
+	}
+	return k.sum()
+}
+
+// groundResult is what is left of a site for a part of an option.
+type groundResult struct {
+	GrossM2       float64
+	BuildableM2   float64
+	LargestM2     float64
+	Taken         []Taken
+	TakenSharedM2 float64
+	ShapeM2       float64
+	Area          geo.XYGeometry
+	Repaired      int
+}
+
+func (rs *ruleset) compute(e *overlay.Engine, w *world, s site) (groundResult, error) {
+	in := overlay.BuildableInput{Site: s.geom, SmallestWidthM: rs.widthM, SmallestPatchM2: rs.patchM2}
+	for _, r := range rs.rules {
+		or := overlay.Rule{Name: r.name, SetbackM: r.distM, Boundary: r.boundary}
+		if !r.boundary {
+			or = overlay.Rule{Name: r.name, Checked: true}
+			for _, src := range r.sources {
+				or.Features = append(or.Features, src.prepared.Rule(r.name, s.box).Features...)
+			}
+			if len(or.Features) == 0 {
+				continue
+			}
+		}
+		in.Rules = append(in.Rules, or)
+	}
+	if rs.slopeDeg > 0 {
+		steep, err := w.steep(s.box, rs.slopeDeg)
+		if err != nil {
+			return groundResult{}, err
+		}
+		if !steep.Empty() {
+			in.Rules = append(in.Rules, overlay.Rule{Name: "slope", Features: []geo.XYGeometry{steep}})
+		}
+	}
+	out, err := e.Buildable(in)
+	if err != nil {
+		return groundResult{}, fmt.Errorf("site %s: %w", s.id, err)
+	}
+	g := groundResult{GrossM2: out.GrossM2, BuildableM2: out.BuildableM2, TakenSharedM2: out.TakenSharedM2, ShapeM2: out.ShapeM2, Area: out.Buildable, Repaired: out.Repaired}
+	for _, r := range out.Rules {
+		if r.AloneM2 > 0 || r.SharedM2 > 0 {
+			g.Taken = append(g.Taken, Taken{Rule: r.Name, AloneHa: r.AloneM2 / units.M2PerHa, SharedHa: r.SharedM2 / units.M2PerHa, TakesAll: r.TakesAll})
+		}
+	}
+	for _, part := range out.Buildable.Parts {
+		a, err := e.AreaM2(geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}})
+		if err != nil {
+			return groundResult{}, err
+		}
+		g.LargestM2 = max(g.LargestM2, a)
+	}
+	return g, nil
+}
+
+// ground computes the step for every site under every distinct ruleset that the options need.
+// It answers with, per option and part, the digest of each site's result.
+func (r *runner) ground(ctx context.Context) error {
+	w := r.w
+	type job struct {
+		rs  *ruleset
+		s   int
+		key string
+	}
+	jobs := map[string]job{}
+	r.sets = map[string]*ruleset{}
+	r.groundKeys = map[string][]string{}
+	for _, o := range w.options {
+		for _, part := range o.parts() {
+			rs, err := w.rulesFor(o, part)
+			if err != nil {
+				return err
+			}
+			name := o.id + "/" + part
+			r.sets[name] = rs
+			keys := make([]string, len(w.sites))
+			for i, s := range w.sites {
+				keys[i] = rs.key(w, s)
+				if _, there := jobs[keys[i]]; !there {
+					jobs[keys[i]] = job{rs: rs, s: i, key: keys[i]}
+				}
+			}
+			r.groundKeys[name] = keys
+		}
+	}
+	list := make([]job, 0, len(jobs))
+	keys := make([]string, 0, len(jobs))
+	for _, j := range jobs {
+		list = append(list, j)
+	}
+	sort.Slice(list, func(a, b int) bool {
+		if list[a].s != list[b].s {
+			return list[a].s < list[b].s
+		}
+		return list[a].key < list[b].key
+	})
+	for _, j := range list {
+		keys = append(keys, j.key)
+	}
+	have, err := r.cached(ctx, "ground", keys)
+	if err != nil {
+		return err
+	}
+	var todo []job
+	for _, j := range list {
+		if _, ok := have[j.key]; !ok {
+			todo = append(todo, j)
+		}
+	}
+	if len(todo) > 0 {
+		e := overlay.New()
+		prepared := map[*ruleset]bool{}
+		for _, j := range todo {
+			if !prepared[j.rs] {
+				prepared[j.rs] = true
+				if err := j.rs.prepare(e); err != nil {
+					return err
+				}
+			}
+		}
+		closeEngine(e)
+	}
+	fresh := make([][]byte, len(todo))
+	live := make([]*groundResult, len(todo))
+	err = forEach(ctx, r.cores, len(todo), openEngine, closeEngine, func(e *overlay.Engine, i int) error {
+		g, err := todo[i].rs.compute(e, w, w.sites[todo[i].s])
+		if err != nil {
+			return err
+		}
+		live[i] = &g
+		fresh[i], err = pack(g)
+		return err
+	}, r.report("ground", len(todo)))
+	if err != nil {
+		return err
+	}
+	r.groundLive = map[string]*groundResult{}
+	for i, j := range todo {
+		r.groundLive[j.key] = live[i]
+		r.add(study.Result{Step: "ground", Digest: j.key, Data: fresh[i]})
+	}
+	r.keep("ground", keys)
+	r.count("ground", len(todo), len(list)-len(todo))
+	r.groundData = have
+	return nil
+}

@@ -1,0 +1,389 @@
+package run
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/scoring"
+	"groundtally/scoring/criteria"
+	"groundtally/scoring/weigh"
+)
+
+// NoSite is the site of the do-nothing row.
+const NoSite = "none"
+
+// Part is one key's part of a score.
+type Part struct {
+	Weight    float64  `json:"weight"`
+	Value     *float64 `json:"value"` // null when unknown
+	Share     float64  `json:"share"`
+	ShareLow  float64  `json:"share_low"`
+	ShareHigh float64  `json:"share_high"`
+	Outside   bool     `json:"outside_anchors,omitempty"`
+}
+
+// Row is a candidate in the order of a voice.
+type Row struct {
+	Place        int                `json:"place"`
+	Tier         int                `json:"tier"`
+	Site         string             `json:"site"`
+	Plant        string             `json:"plant"`
+	Score        float64            `json:"score"`
+	ScoreLow     float64            `json:"score_low"`
+	ScoreHigh    float64            `json:"score_high"`
+	RankBest     int                `json:"rank_best"`
+	RankWorst    int                `json:"rank_worst"`
+	CanBeFirst   string             `json:"can_be_first"`
+	Parts        map[string]Part    `json:"parts"`
+	Accounts     map[string]float64 `json:"accounts"`
+	OverLimit    []string           `json:"over_limit"`
+	Unknown      []string           `json:"unknown"`
+	Incomplete   []string           `json:"incomplete"`
+	FirstIn100   float64            `json:"first_in_100"`
+	DominatedBy  []string           `json:"dominated_by"`
+	DominanceAll bool               `json:"dominance_known"`
+	Alerts       []string           `json:"alerts,omitempty"`
+	Gates        map[string]Gate    `json:"gates"`
+}
+
+// TippingSide is where first place changes hands.
+type TippingSide struct {
+	At       float64 `json:"at"`
+	NewFirst string  `json:"new_first"`
+}
+
+// TippingRow says between which weights of a key the first place stays.
+type TippingRow struct {
+	Key    string       `json:"key"`
+	Weight float64      `json:"weight"`
+	Below  *TippingSide `json:"below"`
+	Above  *TippingSide `json:"above"`
+}
+
+// VoiceOrder is the order under one voice.
+type VoiceOrder struct {
+	Voice    string       `json:"voice"`
+	Title    string       `json:"title"`
+	Order    []Row        `json:"order"`
+	Tipping  []TippingRow `json:"tipping"`
+	HeldBack []string     `json:"held_back"` // by a gate
+	Mixes    int          `json:"mixes"`
+	Notices  []geo.Notice `json:"notices"`
+}
+
+// AnchorError says that a weighed key has no anchors yet.
+type AnchorError struct{ Voice, Key string }
+
+func (e *AnchorError) Error() string {
+	return fmt.Sprintf("voice %q weighs %s, whose value scale has no fixed ends; set them first:\n  gtally set STUDY.gpkg anchor.%s.worst NUMBER\n  gtally set STUDY.gpkg anchor.%s.best NUMBER", e.Voice, e.Key, e.Key, e.Key)
+}
+
+// scale is the value scale of one weighed key.
+type scale struct {
+	key    string
+	info   KeyInfo
+	better criteria.Better
+	raw    float64
+	curve  weigh.Linear
+}
+
+// scales collects what a voice weighs.
+func scales(snap *study.Snapshot, p *Params, voice string) ([]scale, []geo.Notice, error) {
+	var out []scale
+	var notices []geo.Notice
+	families := map[string]string{}
+	for _, k := range p.Keys() {
+		raw, ok := snap.Number("voice." + voice + ".weight." + k.Key)
+		if !ok || raw == 0 {
+			continue
+		}
+		if raw < 0 {
+			return nil, nil, fmt.Errorf("voice %q: the weight of %s is below zero", voice, k.Key)
+		}
+		c, known := snap.Catalog().Criterion(k.Key)
+		if !known {
+			if c, known = snap.Catalog().Criterion(strings.TrimSuffix(k.Key, criteria.BurdenSuffix)); !known {
+				continue
+			}
+			c.Worst, c.Best = criteria.Anchor{Ask: true}, criteria.Anchor{X: 0}
+		}
+		if c.Better == criteria.Neither {
+			return nil, nil, fmt.Errorf("voice %q: %s is not scored: neither more nor less of it is better", voice, k.Key)
+		}
+		worst, okW := snap.Number("anchor." + k.Key + ".worst")
+		if !okW && !c.Worst.Ask {
+			worst, okW = c.Worst.X, true
+		}
+		best, okB := snap.Number("anchor." + k.Key + ".best")
+		if !okB && !c.Best.Ask {
+			best, okB = c.Best.X, true
+		}
+		if !okW || !okB {
+			return nil, nil, &AnchorError{Voice: voice, Key: k.Key}
+		}
+		curve, err := weigh.NewLinear(worst, best)
+		if err != nil {
+			return nil, nil, fmt.Errorf("value scale of %s: %w", k.Key, err)
+		}
+		for _, f := range c.Families {
+			if other, twice := families[f]; twice {
+				notices = append(notices, geo.Notice{Code: "family_twice", Severity: geo.Warning, Field: k.Key, Args: map[string]string{"family": f, "other": other}})
+			}
+			families[f] = k.Key
+		}
+		out = append(out, scale{key: k.Key, info: k, better: c.Better, raw: raw, curve: curve})
+	}
+	if len(out) == 0 {
+		return nil, nil, fmt.Errorf("voice %q weighs nothing; set voice.%s.weight.KEY", voice, voice)
+	}
+	return out, notices, nil
+}
+
+// part turns a consequence into a value.
+func (s scale) part(c scoring.Consequence, over bool) (weigh.Part, error) {
+	switch c.State {
+	case scoring.Number:
+		p, err := weigh.PartOf(s.curve, math.Min(c.Low, c.High), math.Max(c.Low, c.High))
+		p.OverLimit = over
+		return p, err
+	case scoring.None:
+		return weigh.Part{Known: true, Low: 1, Mid: 1, High: 1}, nil
+	case scoring.Never:
+		return weigh.Part{Known: true, OverLimit: over}, nil
+	}
+	return weigh.Part{}, nil
+}
+
+// trial gives the value of one drawn consequence.
+func (s scale) trial(v scoring.Value) (float64, error) {
+	switch v.State {
+	case scoring.Number:
+		x, _, err := s.curve.Value(v.X)
+		return x, err
+	case scoring.None:
+		return 1, nil
+	case scoring.Never:
+		return 0, nil
+	}
+	return 0.5, nil // not used for an unknown part
+}
+
+// order weighs the fitted candidates under one voice.
+func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, draw *draws, voice string, cs []Candidate) (VoiceOrder, error) {
+	out := VoiceOrder{Voice: voice, Title: snap.Text("voice." + voice + ".title"), Order: []Row{}, Tipping: []TippingRow{}, HeldBack: []string{}}
+	sc, notices, err := scales(snap, p, voice)
+	if err != nil {
+		return out, err
+	}
+	out.Notices = notices
+	mixes, _ := snap.Number("weigh.mixes")
+	spread, _ := snap.Number("weigh.spread")
+	in := weigh.Input{Seed: k.seed, Mixes: int(mixes), MixSpread: spread}
+	for _, s := range sc {
+		in.Keys = append(in.Keys, weigh.Key{Name: s.key, Account: string(s.info.Account), RawWeight: s.raw})
+	}
+	var at []int // candidate of each item; -1 for doing nothing
+	byID := map[string]int{}
+	gate := snap.Text("gate.owner_consent")
+	for i := range cs {
+		c := &cs[i]
+		if c.Status != Fitted {
+			continue
+		}
+		if held(gate, c.Gates["owner_consent"].State) {
+			out.HeldBack = append(out.HeldBack, c.ID())
+			continue
+		}
+		item := weigh.Item{ID: c.ID()}
+		for _, s := range sc {
+			q, _ := c.Consequence(s.key)
+			part, err := s.part(q, slices.Contains(c.OverLimit, s.key))
+			if err != nil {
+				return out, fmt.Errorf("candidate %s, %s: %w", c.ID(), s.key, err)
+			}
+			item.Values = append(item.Values, part)
+		}
+		byID[item.ID] = len(in.Items)
+		in.Items = append(in.Items, item)
+		at = append(at, i)
+	}
+	nothing := weigh.Item{ID: NoSite}
+	for _, s := range sc {
+		// Doing nothing spares every burden and brings no gain.
+		if s.better == criteria.Less {
+			nothing.Values = append(nothing.Values, weigh.Part{Known: true, Low: 1, Mid: 1, High: 1})
+		} else {
+			nothing.Values = append(nothing.Values, weigh.Part{Known: true})
+		}
+	}
+	in.Items = append(in.Items, nothing)
+	at = append(at, -1)
+
+	contenders, err := weigh.Contenders(in)
+	if err != nil {
+		return out, err
+	}
+	column := make([]int, len(sc)) // of each key in the drawn samples; -1 outside the graph
+	for i, s := range sc {
+		column[i] = slices.Index(draw.keys, s.key)
+	}
+	n := min(in.Mixes, k.trials)
+	var items, which []int
+	for _, item := range contenders {
+		if at[item] >= 0 {
+			items, which = append(items, item), append(which, at[item])
+		}
+	}
+	if err := draw.ready(ctx, k, cs, which, n); err != nil {
+		return out, err
+	}
+	if len(items) > 0 {
+		in.Trials = &weigh.Trials{Count: n, Items: items, Row: func(trial, item int, row []float64) error {
+			for i, s := range sc {
+				v := scoring.UnknownBecause("not_assessed")
+				if column[i] >= 0 {
+					v = draw.samples[at[item]][trial][column[i]]
+				}
+				x, err := s.trial(v)
+				if err != nil {
+					return err
+				}
+				row[i] = x
+			}
+			return nil
+		}}
+	}
+	res, err := weigh.Order(in)
+	if err != nil {
+		return out, fmt.Errorf("voice %q: %w", voice, err)
+	}
+	out.Mixes = res.Mixes
+	for _, l := range res.Lines {
+		r := Row{Place: l.Place, Tier: l.Tier, Site: NoSite, Score: l.Score, ScoreLow: l.ScoreLow, ScoreHigh: l.ScoreHigh, RankBest: l.RankBest, RankWorst: l.RankWorst,
+			CanBeFirst: canBeFirst(l.CanBeFirst), Parts: map[string]Part{}, Accounts: map[string]float64{}, OverLimit: orEmpty(l.OverLimit), Unknown: orEmpty(l.Unknown), Incomplete: []string{},
+			FirstIn100: res.FirstInHundred(l), DominatedBy: []string{}, DominanceAll: l.DominanceKnown, Alerts: l.Alerts, Gates: map[string]Gate{}}
+		for _, s := range res.Parts(l) {
+			part := Part{Weight: s.Weight, Share: s.Share, ShareLow: s.ShareLow, ShareHigh: s.ShareHigh, Outside: s.OutsideAnchor}
+			if s.Known {
+				v := s.Value
+				part.Value = &v
+			}
+			r.Parts[s.Key] = part
+		}
+		for _, a := range res.Accounts(l) {
+			r.Accounts[a.Account] = a.Share
+		}
+		for _, d := range l.DominatedBy {
+			r.DominatedBy = append(r.DominatedBy, d.ID)
+		}
+		if i := at[l.Item]; i >= 0 {
+			c := &cs[i]
+			r.Site, r.Plant, r.Incomplete, r.Gates = c.Site, c.Plant, orEmpty(c.Incomplete), c.Gates
+			r.OverLimit = orEmpty(c.OverLimit) // every limit, weighed or not
+		}
+		out.Order = append(out.Order, r)
+	}
+	for _, t := range res.Tipping {
+		row := TippingRow{Key: t.Key, Weight: t.Weight}
+		if t.Below != nil {
+			row.Below = &TippingSide{At: t.Below.At, NewFirst: t.Below.NewFirst}
+		}
+		if t.Above != nil {
+			row.Above = &TippingSide{At: t.Above.At, NewFirst: t.Above.NewFirst}
+		}
+		out.Tipping = append(out.Tipping, row)
+	}
+	return out, nil
+}
+
+func canBeFirst(s weigh.Status) string {
+	switch s {
+	case weigh.Yes:
+		return "yes"
+	case weigh.No:
+		return "no"
+	}
+	return "unknown"
+}
+
+func held(gate, state string) bool {
+	switch gate {
+	case "not_no":
+		return state == "no"
+	case "yes":
+		return state != "yes"
+	}
+	return false
+}
+
+// draws are the trials of all weighed keys, made for a candidate when a voice first needs it.
+type draws struct {
+	keys    []string
+	slots   []int
+	cores   int
+	samples [][][]scoring.Value // by candidate, trial, key
+}
+
+func newDraws(snap *study.Snapshot, p *Params, cores, candidates int) *draws {
+	d := &draws{cores: cores, samples: make([][][]scoring.Value, candidates)}
+	for _, k := range p.Keys() {
+		slot, ok := p.Graph.Slot(k.Key)
+		if !ok {
+			continue
+		}
+		for _, v := range snap.Voices() {
+			if x, set := snap.Number("voice." + v + ".weight." + k.Key); set && x > 0 {
+				d.keys, d.slots = append(d.keys, k.Key), append(d.slots, slot)
+				break
+			}
+		}
+	}
+	return d
+}
+
+func (d *draws) ready(ctx context.Context, k *reckoner, cs []Candidate, which []int, n int) error {
+	none := func() (struct{}, error) { return struct{}{}, nil }
+	return forEach(ctx, d.cores, len(which), none, func(struct{}) {}, func(_ struct{}, i int) error {
+		c := which[i]
+		if len(d.samples[c]) < n {
+			drawn := append(slices.Clone(k.drawn), k.siteDraws(cs[c].Site, sigmas(&cs[c]))...)
+			d.samples[c] = k.p.Graph.Samples(k.vector(&cs[c]), drawn, d.slots, n)
+		}
+		return nil
+	}, nil)
+}
+
+// vector rebuilds the central values of a candidate.
+func (k *reckoner) vector(c *Candidate) []scoring.Value {
+	v := slices.Clone(k.central)
+	for _, l := range c.Leaves {
+		if slot, ok := k.p.Graph.Slot(l.Name); ok {
+			v[slot] = scoring.Value{State: l.State, X: l.X, Why: l.Why}
+		}
+	}
+	k.p.Graph.Central(v)
+	return v
+}
+
+// sigmas brings back what siteDraws reads of a fit.
+func sigmas(c *Candidate) fitResult {
+	var r fitResult
+	for _, l := range c.Leaves {
+		switch l.Name {
+		case "wind_yield_sigma":
+			r.WindSigma = l.X
+		case "solar_yield_sigma":
+			r.SolarSigma = l.X
+		case "wind_kw":
+			r.WindKW = l.X
+		case "solar_kw":
+			r.SolarKW = l.X
+		}
+	}
+	return r
+}

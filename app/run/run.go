@@ -1,0 +1,196 @@
+package run
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"runtime"
+	"sort"
+
+	"groundtally/app/study"
+)
+
+// Engine computes studies.
+type Engine struct {
+	Params   *Params
+	Cache    Cache // nil computes everything
+	Cores    int   // 0 takes all
+	Progress Progress
+	Load     Loader
+}
+
+// Editions are the formula editions of the steps; raised when their digits change.
+func Editions() map[string]int {
+	return map[string]int{"ground": groundEdition, "fit": fitEdition, "candidate": candidateEdition, "order": orderEdition}
+}
+
+const orderEdition = 1
+
+// Code is the check code of results: what went in, what came out, and both together.
+type Code struct {
+	Inputs  string `json:"inputs"`
+	Results string `json:"results"`
+	Check   string `json:"check"`
+}
+
+// Compute carries a snapshot through all steps. Steps whose inputs did not change since they were
+// stored are not computed again.
+func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, error) {
+	w, err := newWorld(ctx, snap, e.Params, e.Load)
+	if err != nil {
+		return nil, err
+	}
+	cores := e.Cores
+	if cores <= 0 {
+		cores = runtime.NumCPU()
+	}
+	r := &runner{w: w, cores: cores, cache: e.Cache, progress: e.Progress}
+	if err := r.ground(ctx); err != nil {
+		return nil, err
+	}
+	keys, data, err := r.fits(ctx)
+	if err != nil {
+		return nil, err
+	}
+	cs, err := r.candidates(ctx, keys, data)
+	if err != nil {
+		return nil, err
+	}
+	if err := r.save(ctx); err != nil {
+		return nil, err
+	}
+	out := &Results{Candidates: cs, Steps: r.counts, Notices: w.notices}
+	k, err := w.newReckoner()
+	if err != nil {
+		return nil, err
+	}
+	draw := newDraws(snap, e.Params, cores, len(cs))
+	for _, voice := range snap.Voices() {
+		o, err := order(ctx, snap, e.Params, k, draw, voice, cs)
+		if err != nil {
+			return nil, err
+		}
+		out.Voices = append(out.Voices, o)
+	}
+	out.Steps = append(out.Steps, StepCount{Step: "order", Computed: len(out.Voices)})
+	if err := out.code(snap, e.Params); err != nil {
+		return nil, err
+	}
+	return out, nil
+}
+
+// code fills in the check code. The canonical form of the inputs is JSON with sorted keys: settings in
+// force by key (value, unit), layers by name (role, digest, match, units, completeness), groups, the
+// frame's centre, parameter and formula editions. The canonical form of the results is JSON of the
+// candidates by option and site and of the orders by voice. All are hashed with SHA-256.
+func (r *Results) code(snap *study.Snapshot, p *Params) error {
+	type setting struct{ Key, Value, Unit string }
+	type layer struct {
+		Name, Role, Digest string
+		Match, Units       map[string]string
+		Complete           bool
+	}
+	in := struct {
+		Settings []setting
+		Layers   []layer
+		Groups   []study.Group
+		Frame    any
+		Params   map[string]string
+		Factors  string
+		Editions map[string]int
+	}{Groups: snap.Groups, Frame: snap.Frame, Params: p.Dates, Factors: p.digest(), Editions: Editions()}
+	for _, key := range snap.Keys() {
+		if s, _, ok := snap.Lookup(key); ok {
+			in.Settings = append(in.Settings, setting{key, s.Value, s.Unit})
+		}
+	}
+	for _, l := range snap.Layers {
+		in.Layers = append(in.Layers, layer{l.Name, l.Role, l.Digest, l.Match, l.Units, l.Complete})
+	}
+	b, err := json.Marshal(in)
+	if err != nil {
+		return fmt.Errorf("check code: %w", err)
+	}
+	res, err := r.canonical()
+	if err != nil {
+		return fmt.Errorf("check code: %w", err)
+	}
+	r.Code.Inputs, r.Code.Results = sha(b), sha(res)
+	r.Code.Check = sha([]byte(r.Code.Inputs + r.Code.Results))
+	return nil
+}
+
+func sha(b []byte) string {
+	h := sha256.Sum256(b)
+	return hex.EncodeToString(h[:])
+}
+
+// digest gives the digest of the shipped factors and turbine curves.
+func (p *Params) digest() string {
+	k := newKey("params", 1)
+	for _, id := range sortedNames(p.Factors) {
+		f := p.Factors[id]
+		k.text(id)
+		k.num(f.Low)
+		k.num(f.Central)
+		k.num(f.High)
+		k.text(string(f.Dist))
+		k.text(f.Group)
+	}
+	for _, t := range p.Turbines {
+		k.text(t.ID)
+		for _, c := range t.Curve.Points() {
+			k.num(c.SpeedMPerS)
+			k.num(c.PowerKW)
+			k.num(c.Ct)
+		}
+	}
+	for _, d := range p.Solar.All() {
+		k.text(d.Name)
+		k.num(d.Central)
+	}
+	return k.sum()
+}
+
+// Find gives a candidate by site and option.
+func (r *Results) Find(site, plant string) (*Candidate, error) {
+	for i := range r.Candidates {
+		if c := &r.Candidates[i]; c.Site == site && c.Plant == plant {
+			return c, nil
+		}
+	}
+	return nil, fmt.Errorf("candidate %s with %s: %w", site, plant, study.ErrNotThere)
+}
+
+// Difference is one way in which two results differ.
+type Difference struct {
+	Where    string
+	Old, New string
+}
+
+// ErrStopped says that a computation was stopped by the user.
+var ErrStopped = errors.New("stopped")
+
+// Compare says how two results agree: "identical" (same digest), "agrees" (every value within 1e-6
+// relative, same states, same tiers), or the first difference in words.
+func Compare(a, b *Results) (verdict string, first *Difference) {
+	if a.Code.Results == b.Code.Results {
+		return "identical", nil
+	}
+	if d := differ(a, b); d != nil {
+		return "", d
+	}
+	return "agrees", nil
+}
+
+func sortCandidates(cs []Candidate) []*Candidate {
+	out := make([]*Candidate, len(cs))
+	for i := range cs {
+		out[i] = &cs[i]
+	}
+	sort.Slice(out, func(i, j int) bool { return out[i].ID() < out[j].ID() })
+	return out
+}

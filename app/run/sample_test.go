@@ -1,0 +1,105 @@
+package run
+
+import (
+	"context"
+	"sync"
+	"testing"
+	"time"
+
+	"groundtally/app/files"
+	"groundtally/app/study"
+	"groundtally/app/study/studytest"
+	"groundtally/assets"
+	"groundtally/geo"
+	"groundtally/geo/crs"
+	"groundtally/geo/overlay"
+	"groundtally/sampledata"
+)
+
+// testTools are the geometry services of an import, as the programs wire them.
+type testTools struct{ e *overlay.Engine }
+
+func (t testTools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
+	tr, err := crs.NewTransform(code)
+	if err != nil {
+		return nil, "", err
+	}
+	return func(p geo.LonLat) (geo.LonLat, error) { return tr.Forward(p.Lon, p.Lat) }, tr.Code(), nil
+}
+
+func (t testTools) Frame(c geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error), func(geo.XYGeometry) (geo.LonLatGeometry, error), error) {
+	f, err := crs.NewFrame(c)
+	return f.Project, f.Unproject, err
+}
+
+func (t testTools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
+	out, rep, err := t.e.Repair(g)
+	return out, rep.Changed, rep.BeforeM2, rep.AfterM2, err
+}
+
+var loaded = sync.OnceValues(func() (*Params, error) {
+	cat, err := study.LoadCatalog(assets.FS())
+	if err != nil {
+		return nil, err
+	}
+	catalog = cat
+	return LoadParams(assets.FS(), cat)
+})
+
+var catalog *study.Catalog
+
+func shipped(t testing.TB) *Params {
+	t.Helper()
+	p, err := loaded()
+	if err != nil {
+		t.Fatal(err)
+	}
+	return p
+}
+
+// sampleStudy is the Isle of Marram in memory.
+func sampleStudy(t testing.TB) *study.Study {
+	t.Helper()
+	shipped(t)
+	s, err := study.Open(context.Background(), studytest.New(), catalog, study.Options{Clock: func() time.Time { return time.Unix(0, 0) }})
+	if err != nil {
+		t.Fatal(err)
+	}
+	e := overlay.New()
+	defer e.Close()
+	if err := s.LoadSample(context.Background(), sampledata.FS(), files.ImportFS, testTools{e}, func(study.LayerRecord) {}); err != nil {
+		t.Fatal(err)
+	}
+	return s
+}
+
+func compute(t testing.TB, s *study.Study, cache Cache, cores int) *Results {
+	t.Helper()
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	e := &Engine{Params: shipped(t), Cache: cache, Cores: cores, Load: StoreLoader(s.Store())}
+	r, err := e.Compute(context.Background(), snap)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return r
+}
+
+func TestSampleComputes(t *testing.T) {
+	s := sampleStudy(t)
+	r := compute(t, s, nil, 2)
+	fitted := map[string]int{}
+	for _, c := range r.Candidates {
+		if c.Status == Fitted {
+			fitted[c.Plant]++
+		}
+	}
+	t.Log(fitted, r.Steps)
+	for _, o := range []string{"solar_fixed", "solar_tracking", "solar_vertical", "solar_agri", "wind", "wind_large", "wind_solar"} {
+		if fitted[o] == 0 {
+			t.Errorf("option %s fits nowhere", o)
+		}
+	}
+}

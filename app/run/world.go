@@ -1,0 +1,407 @@
+package run
+
+import (
+	"bytes"
+	"context"
+	"crypto/sha256"
+	"errors"
+	"fmt"
+	"math"
+	"sort"
+	"strings"
+	"sync"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/geo/crs"
+	"groundtally/geo/formats/asciigrid"
+	"groundtally/geo/index"
+	"groundtally/geo/overlay"
+	"groundtally/geo/terrain"
+	"groundtally/scoring/units"
+)
+
+// layer is a layer of the study in the local frame, with an index over its features.
+type layer struct {
+	rec  study.LayerRecord
+	src  *geo.Layer
+	xy   []geo.XYGeometry
+	hash [][sha256.Size]byte // per feature: geometry and matched values
+	tree *index.Tree
+}
+
+// text gives a field of a feature by the role's field name; empty when missing.
+func (l *layer) text(i int, field string) string {
+	c := l.src.ColumnIndex(l.rec.Match[field])
+	if l.rec.Match[field] == "" || c < 0 {
+		return ""
+	}
+	return strings.TrimSpace(l.src.Features[i].Values[c].String())
+}
+
+// number gives a numeric field in the unit of the role.
+func (l *layer) number(i int, field, unit string) (float64, bool) {
+	col := l.rec.Match[field]
+	c := l.src.ColumnIndex(col)
+	if col == "" || c < 0 {
+		return 0, false
+	}
+	x, ok := l.src.Features[i].Values[c].Float()
+	if !ok {
+		return 0, false
+	}
+	if u := l.rec.Units[col]; u != "" {
+		y, err := units.Convert(x, u, unit)
+		if err != nil {
+			return 0, false
+		}
+		x = y
+	}
+	return x, true
+}
+
+// site is one or more parcels considered together.
+type site struct {
+	id      string
+	parcels []string
+	geom    geo.XYGeometry
+	box     geo.Extent
+	rows    []parcelRow
+}
+
+type parcelRow struct{ layer, feature int }
+
+// world is a snapshot made ready for computing: everything in the local frame, indexed.
+type world struct {
+	snap    *study.Snapshot
+	p       *Params
+	frame   crs.Frame
+	layers  []*layer // those with geometry, in the snapshot's order
+	tables  map[string]*geo.Layer
+	byRole  map[string][]*layer
+	sites   []site
+	options []option
+	terrain *heights
+	notices []geo.Notice
+}
+
+// heights is the terrain in the local frame, read when it is first needed.
+type heights struct {
+	rec  study.LayerRecord
+	once sync.Once
+	load func() (*terrain.Grid, error)
+	grid *terrain.Grid
+	err  error
+}
+
+func (h *heights) get() (*terrain.Grid, error) {
+	h.once.Do(func() { h.grid, h.err = h.load() })
+	return h.grid, h.err
+}
+
+// ErrNoParcels says that there is nothing to compare yet.
+var ErrNoParcels = errors.New("the study has no parcels yet; add them with gtally add STUDY.gpkg FILE --as parcels")
+
+// ErrNoPlants says that there is no plant option yet.
+var ErrNoPlants = errors.New("the study has no plant option yet; make one with gtally set STUDY.gpkg plant.wind.technology wind (for one)")
+
+// Loader reads the content of a layer version.
+type Loader func(ctx context.Context, digest string) (study.Version, error)
+
+func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader) (*world, error) {
+	w := &world{snap: snap, p: p, byRole: map[string][]*layer{}, tables: map[string]*geo.Layer{}}
+	if len(snap.LayersOf("parcels")) == 0 || snap.Frame == nil {
+		return nil, ErrNoParcels
+	}
+	var err error
+	if w.frame, err = crs.NewFrame(*snap.Frame); err != nil {
+		return nil, err
+	}
+	for _, rec := range snap.Layers {
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		if rec.Kind == "raster" {
+			if rec.Role == "terrain" && w.terrain == nil {
+				w.terrain = &heights{rec: rec, load: func() (*terrain.Grid, error) {
+					g, err := w.readTerrain(ctx, rec, load)
+					if err != nil {
+						return nil, fmt.Errorf("read layer %q: %w", rec.Name, err)
+					}
+					return g, nil
+				}}
+			}
+			continue
+		}
+		v, err := load(ctx, rec.Digest)
+		if err != nil {
+			return nil, fmt.Errorf("read layer %q: %w", rec.Name, err)
+		}
+		switch {
+		case rec.Kind == "table":
+			w.tables[rec.Role] = v.Layer
+		default:
+			l := &layer{rec: rec, src: v.Layer, xy: make([]geo.XYGeometry, len(v.Layer.Features)), hash: make([][sha256.Size]byte, len(v.Layer.Features))}
+			for i, f := range v.Layer.Features {
+				if l.xy[i], err = w.frame.Project(f.Geometry); err != nil {
+					return nil, fmt.Errorf("layer %q, feature %s: %w", rec.Name, f.ID, err)
+				}
+				k := newKey("feature", 1)
+				k.text(f.ID)
+				k.geometry(l.xy[i])
+				for _, val := range f.Values {
+					k.int(int(val.Kind))
+					k.text(val.String())
+				}
+				copy(l.hash[i][:], k.h.Sum(nil))
+			}
+			l.tree = index.Of(l.xy, 0)
+			w.layers = append(w.layers, l)
+			w.byRole[rec.Role] = append(w.byRole[rec.Role], l)
+		}
+	}
+	w.makeSites()
+	if err := w.makeOptions(); err != nil {
+		return nil, err
+	}
+	if w.terrain == nil {
+		w.notices = append(w.notices, geo.Notice{Code: "terrain_missing", Severity: geo.Info})
+	}
+	return w, nil
+}
+
+// terrainMarginM is how far around the parcels heights are kept.
+const terrainMarginM = 200
+
+// readTerrain brings the heights around the parcels into the local frame, at the cells of the file.
+func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loader) (*terrain.Grid, error) {
+	v, err := load(ctx, rec.Digest)
+	if err != nil {
+		return nil, err
+	}
+	decoded, err := asciigrid.Decode(ctx, bytes.NewReader(v.Blob), asciigrid.Options{})
+	if err != nil {
+		return nil, err
+	}
+	raw := decoded.Grid
+	t, err := crs.NewTransform(rec.CRS)
+	if err != nil {
+		return nil, err
+	}
+	own, err := w.ownGrid(raw)
+	if err != nil {
+		return nil, err
+	}
+	box := geo.EmptyExtent()
+	for _, s := range w.sites {
+		box = box.Union(s.box)
+	}
+	box = box.Grow(terrainMarginM)
+	cell := raw.CellX
+	if math.Abs(cell) < 1 { // degrees
+		cell *= metresPerDegree
+	}
+	nx, ny := int((box.MaxX-box.MinX)/cell)+1, int((box.MaxY-box.MinY)/cell)+1
+	var bad error
+	g, err := terrain.Fill(geo.XY{X: box.MinX, Y: box.MinY}, cell, nx, ny, func(p geo.XY) (float64, bool) {
+		ll, err := w.frame.Inverse(p)
+		if err != nil {
+			bad = err
+			return 0, false
+		}
+		x, y, err := t.Inverse(ll)
+		if err != nil {
+			bad = err
+			return 0, false
+		}
+		return own.Sample(geo.XY{X: x, Y: y})
+	})
+	if err == nil {
+		err = bad
+	}
+	return g, err
+}
+
+// metresPerDegree sizes the cells of a grid in degrees; only their fineness depends on it.
+const metresPerDegree = 111_200
+
+// ownGrid turns a grid of a file, north row first, into one in the file's own coordinates.
+func (w *world) ownGrid(raw *asciigrid.Grid) (*terrain.Grid, error) {
+	if raw.CellX != raw.CellY {
+		return nil, fmt.Errorf("cells of %g by %g: only square cells are read", raw.CellX, raw.CellY)
+	}
+	h := make([]float32, len(raw.Values))
+	for r := range raw.NRows {
+		copy(h[r*raw.NCols:(r+1)*raw.NCols], raw.Values[(raw.NRows-1-r)*raw.NCols:(raw.NRows-r)*raw.NCols])
+	}
+	return terrain.New(geo.XY{X: raw.XLL + raw.CellX/2, Y: raw.YLL + raw.CellY/2}, raw.CellX, raw.NCols, raw.NRows, h, float32(raw.NoData))
+}
+
+// heightM gives the ground height at a place; ok is false outside the terrain or without one.
+func (w *world) heightM(p geo.XY) (m float64, ok bool, err error) {
+	if w.terrain == nil {
+		return 0, false, nil
+	}
+	g, err := w.terrain.get()
+	if err != nil {
+		return 0, false, err
+	}
+	m, ok = g.Sample(p)
+	return m, ok, nil
+}
+
+// steep gives the ground steeper than a limit within an extent.
+func (w *world) steep(box geo.Extent, limitDeg float64) (geo.XYGeometry, error) {
+	g, err := w.terrain.get()
+	if err != nil {
+		return geo.XYGeometry{}, err
+	}
+	return g.Steep(box, limitDeg)
+}
+
+// makeSites puts parcels together by the study's groups; every other parcel is a site of its own.
+func (w *world) makeSites() {
+	group := map[string]string{}
+	for _, g := range w.snap.Groups {
+		for _, p := range g.Parcels {
+			group[p] = g.Site
+		}
+	}
+	at := map[string]int{}
+	for li, l := range w.byRole["parcels"] {
+		for fi, f := range l.src.Features {
+			id := f.ID
+			if g, ok := group[f.ID]; ok {
+				id = g
+			}
+			i, ok := at[id]
+			if !ok {
+				i = len(w.sites)
+				at[id] = i
+				w.sites = append(w.sites, site{id: id, geom: geo.XYGeometry{Kind: geo.Polygons}})
+			}
+			s := &w.sites[i]
+			s.parcels = append(s.parcels, f.ID)
+			s.rows = append(s.rows, parcelRow{li, fi})
+			s.geom.Parts = append(s.geom.Parts, l.xy[fi].Parts...)
+		}
+	}
+	sort.Slice(w.sites, func(i, j int) bool { return w.sites[i].id < w.sites[j].id })
+	for i := range w.sites {
+		w.sites[i].box = geo.ExtentOf(w.sites[i].geom)
+	}
+}
+
+// gates gives the gates of a site: the owners' consent, the least of its parcels'.
+func (w *world) gates(s site) map[string]Gate {
+	order := []string{"no", "unknown", "not asked", "asked", "conditional", "yes"}
+	worst := len(order) - 1
+	for _, r := range s.rows {
+		state := w.byRole["parcels"][r.layer].text(r.feature, "owner_consent")
+		at := 1
+		for i, o := range order {
+			if strings.EqualFold(o, state) {
+				at = i
+			}
+		}
+		worst = min(worst, at)
+	}
+	return map[string]Gate{"owner_consent": {State: order[worst]}}
+}
+
+// option is a plant option with its parts: wind, solar, or both.
+type option struct {
+	id, technology, fit string
+	wind, solar         bool
+	settings            map[string]string // effective plant.<id>.* values
+}
+
+// part names of an option.
+const (
+	windPart  = "wind"
+	solarPart = "solar"
+)
+
+func (o option) parts() []string {
+	var out []string
+	if o.wind {
+		out = append(out, windPart)
+	}
+	if o.solar {
+		out = append(out, solarPart)
+	}
+	return out
+}
+
+func (o option) num(name string) (float64, bool) {
+	v := o.settings[name]
+	if v == "" || v == study.NotSetText {
+		return 0, false
+	}
+	var x float64
+	if _, err := fmt.Sscan(v, &x); err != nil {
+		return 0, false
+	}
+	return x, true
+}
+
+func (w *world) makeOptions() error {
+	ids := w.snap.Plants()
+	if len(ids) == 0 {
+		return ErrNoPlants
+	}
+	for _, id := range ids {
+		o := option{id: id, settings: map[string]string{}}
+		for _, d := range w.snap.Catalog().Definitions {
+			name, ok := strings.CutPrefix(d.Key, "plant.<plant>.")
+			if !ok {
+				continue
+			}
+			if s, _, in := w.snap.Lookup("plant." + id + "." + name); in {
+				o.settings[name] = s.Value
+			}
+		}
+		o.technology, o.fit = o.settings["technology"], o.settings["fit"]
+		if o.technology == "" || o.technology == study.NotSetText {
+			return fmt.Errorf("plant option %q has no technology; set plant.%s.technology", id, id)
+		}
+		o.wind = o.technology == "wind" || o.technology == "wind_solar"
+		o.solar = o.technology != "wind"
+		w.options = append(w.options, o)
+	}
+	return nil
+}
+
+// cascade finds a setting by the most special name there is: prefix.<option>suffix, then the
+// technology's, then wind or solar. A user's setting of a general name stands before a default of a
+// special one.
+func (w *world) cascade(prefix string, o option, part, suffix string) (key string, s study.Setting, ok bool) {
+	names := []string{o.id, o.technology, part}
+	for _, n := range names {
+		if s, byUser, in := w.snap.Lookup(prefix + n + suffix); in && byUser {
+			return prefix + n + suffix, s, true
+		}
+	}
+	for _, n := range names {
+		if s, _, in := w.snap.Lookup(prefix + n + suffix); in {
+			return prefix + n + suffix, s, true
+		}
+	}
+	return "", study.Setting{}, false
+}
+
+func (w *world) cascadeNumber(prefix string, o option, part, suffix string) (x float64, key string, ok bool) {
+	key, s, ok := w.cascade(prefix, o, part, suffix)
+	if !ok || s.Value == study.NotSetText {
+		return 0, key, false
+	}
+	if _, err := fmt.Sscan(s.Value, &x); err != nil {
+		return 0, key, false
+	}
+	return x, key, true
+}
+
+// engines gives each worker a geometry engine of its own.
+func openEngine() (*overlay.Engine, error) { return overlay.New(), nil }
+
+func closeEngine(e *overlay.Engine) { _ = e.Close() } // only frees memory

@@ -1,0 +1,264 @@
+package run
+
+import (
+	"fmt"
+	"math"
+	"sort"
+	"strconv"
+
+	"groundtally/geo"
+	"groundtally/scoring/solar"
+	"groundtally/scoring/units"
+	"groundtally/scoring/wind"
+)
+
+// windPoint is the wind of one resource point.
+type windPoint struct {
+	at      geo.XY
+	id      string
+	heightM float64
+	sectors []wind.Sector
+	typed   bool // one mean speed, even spread of directions, Rayleigh
+}
+
+// windPoints reads the resource layers, else the typed mean speed.
+func (w *world) windPoints() ([]windPoint, error) {
+	var out []windPoint
+	for _, l := range w.byRole["wind_resource"] {
+		type row struct {
+			from, share float64
+			w           wind.Weibull
+		}
+		rows := map[geo.XY][]row{}
+		height := map[geo.XY]float64{}
+		var order []geo.XY
+		for i, g := range l.xy {
+			if g.Kind != geo.Points || g.Empty() {
+				continue
+			}
+			p := g.Parts[0][0][0]
+			h, ok := l.number(i, "height", "m")
+			if !ok {
+				return nil, fmt.Errorf("layer %q, feature %s has no height", l.rec.Name, l.src.Features[i].ID)
+			}
+			a, okA := l.number(i, "weibull_a", "m/s")
+			k, okK := l.number(i, "weibull_k", "1")
+			wb := wind.Weibull{AMPerS: a, K: k}
+			if !okA || !okK {
+				mean, ok := l.number(i, "mean_speed", "m/s")
+				if !ok {
+					return nil, fmt.Errorf("layer %q, feature %s has neither Weibull numbers nor a mean speed", l.rec.Name, l.src.Features[i].ID)
+				}
+				var err error
+				if wb, err = wind.Rayleigh(mean); err != nil {
+					return nil, fmt.Errorf("layer %q, feature %s: %w", l.rec.Name, l.src.Features[i].ID, err)
+				}
+			}
+			share, ok := l.number(i, "sector_share", "1")
+			if !ok {
+				share = 1
+			}
+			from, _ := l.number(i, "sector_from", "deg")
+			if _, seen := rows[p]; !seen {
+				order = append(order, p)
+			}
+			rows[p] = append(rows[p], row{from: from, share: share, w: wb})
+			height[p] = h
+		}
+		for _, p := range order {
+			rs := rows[p]
+			sort.SliceStable(rs, func(i, j int) bool { return rs[i].from < rs[j].from })
+			pt := windPoint{at: p, heightM: height[p], id: fmt.Sprintf("%s at %.0f, %.0f", l.rec.Name, p.X, p.Y)}
+			if len(rs) == 1 {
+				pt.sectors = evenSectors(rs[0].w)
+				pt.typed = true
+			} else {
+				for _, r := range rs {
+					pt.sectors = append(pt.sectors, wind.Sector{FrequencyFrac: r.share, Weibull: r.w})
+				}
+			}
+			out = append(out, pt)
+		}
+	}
+	if len(out) > 0 {
+		return out, nil
+	}
+	if mean, ok := w.snap.Number("wind.typed_mean_speed_m_per_s"); ok {
+		h, ok := w.snap.Number("wind.typed_height_m")
+		if !ok {
+			return nil, fmt.Errorf("the typed mean speed needs wind.typed_height_m")
+		}
+		wb, err := wind.Rayleigh(mean)
+		if err != nil {
+			return nil, fmt.Errorf("wind.typed_mean_speed_m_per_s: %w", err)
+		}
+		return []windPoint{{id: "typed mean speed", heightM: h, sectors: evenSectors(wb), typed: true}}, nil
+	}
+	return nil, nil
+}
+
+func evenSectors(w wind.Weibull) []wind.Sector {
+	const n = 12
+	out := make([]wind.Sector, n)
+	for i := range out {
+		out[i] = wind.Sector{FrequencyFrac: 1.0 / n, Weibull: w}
+	}
+	return out
+}
+
+// nearestWind gives the resource point nearest to a place; equal distances go to the first.
+func nearestWind(points []windPoint, p geo.XY) (windPoint, float64, bool) {
+	best, at := math.Inf(1), -1
+	for i, q := range points {
+		if d := p.Dist(q.at); d < best {
+			best, at = d, i
+		}
+	}
+	if at < 0 {
+		return windPoint{}, 0, false
+	}
+	return points[at], best, true
+}
+
+// prevailingDeg gives the direction from which most energy comes, as the sum of sector vectors weighted
+// by frequency × mean cube; even when no 30 degree sector has 15 % of the time.
+func prevailingDeg(sectors []wind.Sector) (deg float64, even bool) {
+	n := len(sectors)
+	x, y, most := 0.0, 0.0, 0.0
+	for i, s := range sectors {
+		a := units.DegreesPerCircle * float64(i) / float64(n) * math.Pi / 180
+		e := s.FrequencyFrac * s.Weibull.Moment(3)
+		x += float64(e * math.Sin(a))
+		y += float64(e * math.Cos(a))
+		most = math.Max(most, s.FrequencyFrac)
+	}
+	deg = math.Atan2(x, y) * 180 / math.Pi
+	if deg < 0 {
+		deg += units.DegreesPerCircle
+	}
+	return deg, most < 0.15
+}
+
+// sunlight is the monthly climatology of the study.
+type sunlight struct {
+	ghi, temp, albedo [12]float64
+	dhi               *[12]float64
+	source            string
+}
+
+// sunlight reads the monthly table, else the typed values; nil when there is neither.
+func (w *world) sunlight() (*sunlight, error) {
+	if t, ok := w.tables["solar_resource"]; ok {
+		var rec = w.snap.LayersOf("solar_resource")[0]
+		col := func(field string) int { return t.ColumnIndex(rec.Match[field]) }
+		month, ghi, dhi, temp, albedo := col("month"), col("ghi"), col("dhi"), col("temperature"), col("albedo")
+		if month < 0 || ghi < 0 {
+			return nil, fmt.Errorf("layer %q needs the fields month and ghi", rec.Name)
+		}
+		s := &sunlight{source: rec.Name, albedo: solar.EveryMonth(0.2), temp: solar.EveryMonth(math.NaN())}
+		var d [12]float64
+		seen := [12]bool{}
+		hasDHI := dhi >= 0
+		for _, f := range t.Features {
+			m, ok := f.Values[month].Float()
+			i := int(m) - 1
+			if !ok || i < 0 || i > 11 || seen[i] {
+				return nil, fmt.Errorf("layer %q, row %s: month %q is not one of 1 to 12, or stands twice", rec.Name, f.ID, f.Values[month].String())
+			}
+			seen[i] = true
+			g, ok := f.Values[ghi].Float()
+			if !ok {
+				return nil, fmt.Errorf("layer %q, month %d: no sunlight", rec.Name, i+1)
+			}
+			if g, err := units.Convert(g, unitOr(rec.Units[rec.Match["ghi"]], "kWh/(m2 month)"), "kWh/(m2 month)"); err != nil {
+				return nil, fmt.Errorf("layer %q: %w", rec.Name, err)
+			} else {
+				s.ghi[i] = g
+			}
+			if hasDHI {
+				if d[i], ok = f.Values[dhi].Float(); !ok {
+					hasDHI = false
+				}
+			}
+			if temp >= 0 {
+				if x, ok := f.Values[temp].Float(); ok {
+					s.temp[i] = x
+				}
+			}
+			if albedo >= 0 {
+				if x, ok := f.Values[albedo].Float(); ok {
+					s.albedo[i] = x
+				}
+			}
+		}
+		for i := range 12 {
+			if !seen[i] {
+				return nil, fmt.Errorf("layer %q has no month %d", rec.Name, i+1)
+			}
+			if math.IsNaN(s.temp[i]) {
+				return nil, fmt.Errorf("layer %q, month %d: no temperature; the cells' loss by heat needs it", rec.Name, i+1)
+			}
+		}
+		if hasDHI {
+			s.dhi = &d
+		}
+		return s, nil
+	}
+	s := &sunlight{source: "typed monthly values", albedo: solar.EveryMonth(0.2)}
+	for i := range 12 {
+		n := strconv.Itoa(i + 1)
+		g, ok := w.snap.Number("solar.typed_ghi_" + n + "_kwh_per_m2")
+		if !ok {
+			if i == 0 {
+				return nil, nil
+			}
+			return nil, fmt.Errorf("typed sunlight: month %d is missing", i+1)
+		}
+		t, ok := w.snap.Number("solar.typed_temperature_" + n + "_degc")
+		if !ok {
+			return nil, fmt.Errorf("typed sunlight: the temperature of month %d is missing", i+1)
+		}
+		s.ghi[i], s.temp[i] = g, t
+	}
+	return s, nil
+}
+
+func unitOr(u, fallback string) string {
+	if u == "" {
+		return fallback
+	}
+	return u
+}
+
+// mount makes the solar plant of an option.
+func (w *world) solarPlant(o option, latDeg float64) (solar.Plant, error) {
+	get := func(name string, fallback float64) float64 {
+		if x, ok := o.num(name); ok {
+			return x
+		}
+		return fallback
+	}
+	equator := solar.EquatorAzimuthDeg(latDeg)
+	m := solar.Mount{TiltDeg: get("tilt_deg", 30), AzimuthDeg: get("azimuth_deg", equator), GCR: get("gcr", 0.45), WidthM: get("collector_width_m", 4), ClearanceM: get("clearance_m", 0.8)}
+	switch o.technology {
+	case "solar_tracking":
+		m.Kind, m.AxisAzimuthDeg, m.MaxAngleDeg, m.Backtrack = solar.SingleAxis, 180, get("rotation_max_deg", 55), true
+	case "solar_vertical":
+		m.Kind = solar.VerticalRows
+		m.AzimuthDeg = get("azimuth_deg", 90)
+	case "solar_agri":
+		m.Kind = solar.Elevated
+	}
+	p := w.p.Solar.Plant(m)
+	if b := get("bifaciality", 0); b > 0 || m.Kind == solar.VerticalRows {
+		mod := w.p.Solar.Module(true)
+		if b > 0 {
+			mod.Bifaciality = b
+		}
+		p.Module = mod
+	}
+	p.Inverter.DCACRatio = get("dc_ac_ratio", 1.2)
+	// What the distribution of the study takes off is reckoned at the connection.
+	p.Losses.CurtailmentFrac = 0
+	return p, nil
+}

@@ -1,0 +1,314 @@
+package study
+
+import (
+	"encoding/csv"
+	"fmt"
+	"io/fs"
+	"sort"
+	"strconv"
+	"strings"
+
+	"groundtally/assets/citedtable"
+	"groundtally/scoring/criteria"
+)
+
+// Catalog is what the program ships of words and defaults: definitions of settings, roles, keys.
+type Catalog struct {
+	Definitions []Definition
+	Roles       []Role
+	Criteria    []criteria.Criterion
+	exact       map[string]int
+	patterns    []int // most literal first
+}
+
+// Definition describes a setting or, when its key holds names in angle brackets, a family of them.
+type Definition struct {
+	Key        string
+	Kind       string   // number, text, choice, yesno
+	Choices    []string // for choice
+	Default    string   // "" means not in force, "not set" that the user must enter it
+	Unit       string
+	Legal      bool // a legal or policy value
+	What       string
+	Source     string
+	Provenance citedtable.Provenance
+}
+
+// NotSetText stands in place of a value that the user must enter.
+const NotSetText = "not set"
+
+// Role is what a layer means in a study.
+type Role struct {
+	Name      string
+	Title     string
+	Geometry  []string // point, line, polygon, raster, table
+	Fields    []RoleField
+	Purpose   string
+	Holder    string
+	WithoutIt string
+	Effect    string
+	Notes     string
+}
+
+// RoleField is one attribute that a role knows.
+type RoleField struct {
+	Name     string
+	Unit     string
+	Required bool
+	Personal bool
+}
+
+// LoadCatalog reads words/keys.csv, words/roles.csv and params/settings.csv.
+func LoadCatalog(fsys fs.FS) (*Catalog, error) {
+	c := &Catalog{exact: map[string]int{}}
+	var err error
+	if c.Criteria, err = criteria.Parse(fsys, "words/keys.csv"); err != nil {
+		return nil, err
+	}
+	if c.Roles, err = parseRoles(fsys, "words/roles.csv"); err != nil {
+		return nil, err
+	}
+	t, err := citedtable.ParseFS(fsys, "params/settings.csv")
+	if err != nil {
+		return nil, err
+	}
+	for _, r := range t.Rows {
+		d := Definition{Key: r.Text("key"), Kind: r.Text("kind"), Default: r.Text("value"), Unit: r.Text("unit"), Legal: r.Text("legal") == "yes",
+			What: r.Text("what"), Source: r.Source, Provenance: r.Provenance}
+		if list, ok := strings.CutPrefix(d.Kind, "choice("); ok {
+			d.Kind, d.Choices = "choice", strings.Split(strings.TrimSuffix(list, ")"), "|")
+		}
+		i := len(c.Definitions)
+		if strings.Contains(d.Key, "<") {
+			c.patterns = append(c.patterns, i)
+		} else {
+			if _, dup := c.exact[d.Key]; dup {
+				return nil, fmt.Errorf("settings table: key %q stands twice", d.Key)
+			}
+			c.exact[d.Key] = i
+		}
+		c.Definitions = append(c.Definitions, d)
+	}
+	sort.SliceStable(c.patterns, func(i, j int) bool {
+		return literal(c.Definitions[c.patterns[i]].Key) > literal(c.Definitions[c.patterns[j]].Key)
+	})
+	return c, nil
+}
+
+func literal(key string) int {
+	n, in := 0, false
+	for _, r := range key {
+		switch {
+		case r == '<':
+			in = true
+		case r == '>':
+			in = false
+		case !in:
+			n++
+		}
+	}
+	return n
+}
+
+// Definition finds what defines a key; ok is false for a key that no setting has.
+func (c *Catalog) Definition(key string) (Definition, bool) {
+	if i, ok := c.exact[key]; ok {
+		return c.Definitions[i], true
+	}
+	for _, i := range c.patterns {
+		if matches(c.Definitions[i].Key, key) {
+			return c.Definitions[i], true
+		}
+	}
+	return Definition{}, false
+}
+
+// matches reports whether key fits a pattern in which each <name> stands for a run of letters,
+// digits, dashes, blanks and underscores.
+func matches(pattern, key string) bool {
+	open := strings.IndexByte(pattern, '<')
+	if open < 0 {
+		return pattern == key
+	}
+	if !strings.HasPrefix(key, pattern[:open]) {
+		return false
+	}
+	end := strings.IndexByte(pattern, '>')
+	rest, key := pattern[end+1:], key[open:]
+	for n := 1; n <= len(key); n++ {
+		if key[n-1] == '.' {
+			return false
+		}
+		if matches(rest, key[n:]) {
+			return true
+		}
+	}
+	return false
+}
+
+// Nearest gives the defined key that is most like the given one, for an error that helps.
+func (c *Catalog) Nearest(key string) string {
+	best, dist := "", 1<<30
+	for _, d := range c.Definitions {
+		if n := editDistance(d.Key, key); n < dist {
+			best, dist = d.Key, n
+		}
+	}
+	return best
+}
+
+func editDistance(a, b string) int {
+	prev := make([]int, len(b)+1)
+	for j := range prev {
+		prev[j] = j
+	}
+	for i := range len(a) {
+		cur := make([]int, len(b)+1)
+		cur[0] = i + 1
+		for j := range len(b) {
+			cost := 1
+			if a[i] == b[j] {
+				cost = 0
+			}
+			cur[j+1] = min(prev[j]+cost, prev[j+1]+1, cur[j]+1)
+		}
+		prev = cur
+	}
+	return prev[len(b)]
+}
+
+// CheckValue reports whether a text is a possible value of the setting and gives its canonical form.
+func (d Definition) CheckValue(text string) (string, error) {
+	text = strings.TrimSpace(text)
+	if text == NotSetText {
+		return text, nil
+	}
+	switch d.Kind {
+	case "number":
+		f, err := strconv.ParseFloat(text, 64)
+		if err != nil || f != f || f > 1e300 || f < -1e300 {
+			return "", fmt.Errorf("%q is not a number; %s is given in %s", text, d.Key, orPlain(d.Unit))
+		}
+		return strconv.FormatFloat(f, 'g', -1, 64), nil
+	case "choice":
+		for _, c := range d.Choices {
+			if c == text {
+				return text, nil
+			}
+		}
+		return "", fmt.Errorf("%q is not one of: %s", text, strings.Join(d.Choices, ", "))
+	case "yesno":
+		switch strings.ToLower(text) {
+		case "true", "yes":
+			return "true", nil
+		case "false", "no":
+			return "false", nil
+		}
+		return "", fmt.Errorf("%q is neither yes nor no", text)
+	}
+	return text, nil
+}
+
+func orPlain(unit string) string {
+	if unit == "" || unit == "1" {
+		return "plain numbers"
+	}
+	return unit
+}
+
+// Role finds a role by name; "grid lines" and "grid_lines" are the same.
+func (c *Catalog) Role(name string) (Role, bool) {
+	name = strings.ReplaceAll(strings.ToLower(strings.TrimSpace(name)), " ", "_")
+	for _, r := range c.Roles {
+		if r.Name == name {
+			return r, true
+		}
+	}
+	return Role{}, false
+}
+
+// Criterion finds a key.
+func (c *Catalog) Criterion(key string) (criteria.Criterion, bool) {
+	for _, k := range c.Criteria {
+		if k.Key == key {
+			return k, true
+		}
+	}
+	return criteria.Criterion{}, false
+}
+
+func parseRoles(fsys fs.FS, name string) ([]Role, error) {
+	f, err := fsys.Open(name)
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
+	rows, err := csv.NewReader(f).ReadAll()
+	if err != nil {
+		return nil, fmt.Errorf("vocabulary %s: %w", name, err)
+	}
+	var out []Role
+	for i, r := range rows {
+		if i == 0 {
+			continue
+		}
+		if len(r) != 9 {
+			return nil, fmt.Errorf("vocabulary %s, row %d: %d cells, want 9", name, i+1, len(r))
+		}
+		role := Role{Name: r[0], Title: r[1], Geometry: strings.Split(r[2], "|"), Purpose: r[4], Holder: r[5], WithoutIt: r[6], Effect: r[7], Notes: r[8]}
+		for _, part := range strings.Split(r[3], ";") {
+			bits := strings.Split(part, ":")
+			if len(bits) < 3 {
+				return nil, fmt.Errorf("vocabulary %s, role %s: field %q is not name:unit:required|optional", name, r[0], part)
+			}
+			unit := strings.Join(bits[1:len(bits)-1], ":")
+			field := RoleField{Name: bits[0], Required: bits[len(bits)-1] == "required"}
+			if strings.Contains(unit, "(personal)") {
+				field.Personal, unit = true, strings.TrimSpace(strings.ReplaceAll(unit, "(personal)", ""))
+			}
+			field.Unit = unit
+			role.Fields = append(role.Fields, field)
+		}
+		out = append(out, role)
+	}
+	return out, nil
+}
+
+// Field finds a field of the role.
+func (r Role) Field(name string) (RoleField, bool) {
+	for _, f := range r.Fields {
+		if f.Name == name {
+			return f, true
+		}
+	}
+	return RoleField{}, false
+}
+
+// Accepts reports whether the role takes a geometry of this kind ("point", "line", "polygon",
+// "raster", "table").
+func (r Role) Accepts(kind string) bool {
+	for _, g := range r.Geometry {
+		if g == kind {
+			return true
+		}
+	}
+	return false
+}
+
+// Physical reports whether a field's unit is one that must be asked for when the file does not give
+// it: anything that is a measure and not text, a date, a choice or a plain number.
+func (f RoleField) Physical() bool {
+	switch f.Unit {
+	case "", "1", "text", "date", "text or code", "grade or points", "month", "UTC or stated zone":
+		return false
+	}
+	return !strings.Contains(f.Unit, "/") || strings.ContainsAny(f.Unit, "0123456789") || isRatioUnit(f.Unit)
+}
+
+func isRatioUnit(u string) bool {
+	switch u {
+	case "m/s", "t C/ha", "t/ha", "d/yr", "MWh/yr", "W/m2", "kg/m3", "kWh/(m2 month)", "t/(ha yr)":
+		return true
+	}
+	return false
+}

@@ -1,0 +1,600 @@
+package study
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"sort"
+	"strconv"
+	"strings"
+
+	"groundtally/geo"
+	"groundtally/scoring/units"
+)
+
+// LayerRecord says what a layer of the study is and how it came in. The content is a Version.
+type LayerRecord struct {
+	Name     string            `json:"name"`
+	Role     string            `json:"role"`
+	Digest   string            `json:"digest"`
+	Media    string            `json:"media,omitempty"` // for a raster kept whole
+	Count    int               `json:"count"`
+	Kind     string            `json:"kind"` // point, line, polygon, table, raster
+	File     string            `json:"file"` // base name of the file it came from
+	CRS      string            `json:"crs"`  // as delivered
+	Pipeline string            `json:"pipeline,omitempty"`
+	Swapped  bool              `json:"swapped,omitempty"`
+	Edition  string            `json:"edition,omitempty"`
+	Holder   string            `json:"holder,omitempty"`
+	Complete bool              `json:"complete"` // covers the whole place, so that "nothing there" is known
+	Match    map[string]string `json:"match,omitempty"`
+	Units    map[string]string `json:"units,omitempty"` // by column
+	Personal []string          `json:"personal,omitempty"`
+	Ledger   Ledger            `json:"ledger"`
+	Notices  []geo.Notice      `json:"notices,omitempty"`
+	Extent   [4]float64        `json:"extent"` // west, south, east, north in degrees
+}
+
+// Ledger counts what became of the features of a file.
+type Ledger struct {
+	Read     int `json:"read"`
+	Repaired int `json:"repaired"`
+	LeftOut  int `json:"left_out"`
+}
+
+// Import is one file, read but not yet given a meaning, with the user's answers.
+type Import struct {
+	File    string // path as given, for messages
+	Base    string // file name, kept in the study
+	Layer   *geo.Layer
+	Blob    []byte // for a raster; Layer is nil then
+	Media   string
+	CRS     string // found in the file, empty if it does not say
+	Notices []geo.Notice
+	Ledger  Ledger
+
+	Role            string
+	Name            string
+	CRSOption       string
+	Match           map[string]string // field to column
+	Units           map[string]string // column to unit
+	Personal        []string
+	SwapAxes        bool
+	Replace         string
+	AcceptProposals bool
+	Complete        bool
+	Edition, Holder string
+	Reason          string
+}
+
+// Tools are the geometry services that an import needs.
+type Tools interface {
+	// ToLonLat gives the way from a coordinate system to longitude and latitude on WGS 84.
+	ToLonLat(crs string) (transform func(geo.LonLat) (geo.LonLat, error), pipeline string, err error)
+	// Frame gives the local metric frame around a centre.
+	Frame(centre geo.LonLat) (forward func(geo.LonLatGeometry) (geo.XYGeometry, error), inverse func(geo.XYGeometry) (geo.LonLatGeometry, error), err error)
+	// Repair makes a polygon geometry valid; changed is false when it was valid already.
+	Repair(g geo.XYGeometry) (repaired geo.XYGeometry, changed bool, areaBeforeM2, areaAfterM2 float64, err error)
+}
+
+// Question is something that only the user can answer, with the exact option that answers it.
+type Question struct {
+	Text   string `json:"text"`
+	Option string `json:"option"`
+}
+
+// QuestionError says that an import waits for answers. Nothing was changed.
+type QuestionError struct {
+	File      string
+	Questions []Question
+}
+
+func (e *QuestionError) Error() string {
+	var b strings.Builder
+	fmt.Fprintf(&b, "%s: nothing was added; please answer:", e.File)
+	for _, q := range e.Questions {
+		fmt.Fprintf(&b, "\n  %s\n    %s", q.Text, q.Option)
+	}
+	return b.String()
+}
+
+// FileError says what is wrong with a file, where, and what the user can do.
+type FileError struct {
+	File, Where, What, Cure string
+}
+
+func (e *FileError) Error() string {
+	s := e.File
+	if e.Where != "" {
+		s += ", " + e.Where
+	}
+	s += ": " + e.What
+	if e.Cure != "" {
+		s += ". " + e.Cure
+	}
+	return s
+}
+
+// synonyms are column names, in several languages, that are proposed for a field and never taken
+// without the user's word.
+var synonyms = map[string][]string{
+	"parcel_id":            {"id", "parcel", "parcelle", "flurstueck", "flurstück", "cadastral_id", "@id", "osm_id", "fid", "nationalcadastralreference"},
+	"class":                {"highway", "type", "kind", "fclass", "klasse", "building", "code", "landuse", "natural"},
+	"voltage":              {"voltage_kv", "kv", "spannung", "tension", "volt"},
+	"reason":               {"grund", "motif", "type", "kind", "name"},
+	"kind":                 {"type", "class", "art", "landuse", "natural", "waterway", "amenity"},
+	"zone":                 {"class", "type", "schutzzone"},
+	"soil_class":           {"soil", "boden", "class", "type"},
+	"depth":                {"depth_m", "tiefe", "profondeur"},
+	"height":               {"height_m", "hoehe", "hauteur"},
+	"month":                {"monat", "mois"},
+	"ghi":                  {"ghi_kwh_per_m2", "globalstrahlung", "radiation"},
+	"load":                 {"load_kw", "last", "charge", "demand_kw"},
+	"time":                 {"timestamp", "datetime", "zeit", "date"},
+	"technology":           {"type", "source", "energietraeger"},
+	"rated_power":          {"power_kw", "capacity_kw", "leistung"},
+	"limit_value":          {"limit", "height", "max_height"},
+	"limit_kind":           {"datum", "reference"},
+	"name":                 {"title", "label", "bezeichnung", "nom"},
+	"quality":              {"grade", "points", "bodenzahl"},
+	"attribution":          {"source", "copyright"},
+	"spare_capacity":       {"spare_kw", "free_capacity", "headroom_kw"},
+	"organic_carbon_stock": {"soc", "carbon_t_ha", "soc_t_ha"},
+}
+
+// AddLayer gives a read file its role and puts it into the study as one journal entry. It answers
+// with a *QuestionError when something only the user knows is missing, and with a *FileError when
+// the file cannot serve.
+func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerRecord, error) {
+	role, ok := s.cat.Role(in.Role)
+	if !ok {
+		names := make([]string, len(s.cat.Roles))
+		for i, r := range s.cat.Roles {
+			names[i] = r.Name
+		}
+		return LayerRecord{}, &QuestionError{File: in.File, Questions: []Question{{Text: fmt.Sprintf("%q is no role; the roles are: %s", in.Role, strings.Join(names, ", ")), Option: "--as ROLE"}}}
+	}
+	snap, err := s.Snapshot()
+	if err != nil {
+		return LayerRecord{}, err
+	}
+	rec := LayerRecord{Name: in.Name, Role: role.Name, File: in.Base, Swapped: in.SwapAxes, Edition: in.Edition, Holder: in.Holder, Complete: in.Complete, Match: map[string]string{}, Units: map[string]string{}, Ledger: in.Ledger, Notices: in.Notices}
+	if rec.Name == "" {
+		rec.Name = strings.TrimSuffix(in.Base, ext(in.Base))
+	}
+	for _, l := range snap.Layers {
+		if l.Name == rec.Name && in.Replace != rec.Name {
+			return LayerRecord{}, &QuestionError{File: in.File, Questions: []Question{{Text: fmt.Sprintf("a layer %q is there already", rec.Name), Option: fmt.Sprintf("--replace %q, or --name with another name", rec.Name)}}}
+		}
+	}
+	if in.Replace != "" && in.Replace != rec.Name {
+		rec.Name = in.Replace
+	}
+	var changes []Change
+	var version Version
+	if in.Layer == nil {
+		if !role.Accepts("raster") {
+			return LayerRecord{}, &FileError{File: in.File, What: fmt.Sprintf("a grid of values cannot serve as %s", role.Name), Cure: "The role takes " + strings.Join(role.Geometry, " or ")}
+		}
+		rec.CRS = first(in.CRSOption, in.CRS)
+		if rec.CRS == "" {
+			return LayerRecord{}, &QuestionError{File: in.File, Questions: []Question{{Text: "the file does not say in which coordinate system its corners are", Option: "--crs EPSG:32626 (for one)"}}}
+		}
+		if _, rec.Pipeline, err = tools.ToLonLat(rec.CRS); err != nil {
+			return LayerRecord{}, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+		}
+		version = Version{Digest: BlobDigest(in.Media, in.Blob), Blob: in.Blob, Media: in.Media}
+		rec.Kind, rec.Media, rec.Count = "raster", in.Media, 1
+	} else {
+		layer, frame, err := s.prepare(&rec, in, role, snap, tools)
+		if err != nil {
+			return LayerRecord{}, err
+		}
+		version = Version{Digest: LayerDigest(layer), Layer: layer}
+		if frame != nil {
+			changes = append(changes, Change{Kind: MetaRecord, Key: FrameKey, New: Canonical(*frame)})
+		}
+	}
+	rec.Digest = version.Digest
+	changes = append(changes, Change{Kind: LayerRecKind, Key: rec.Name, New: Canonical(rec)})
+	reason := in.Reason
+	if reason == "" {
+		reason = fmt.Sprintf("%s as %s", in.Base, role.Name)
+	}
+	_, err = s.Edit(ctx, "add", reason, changes, []Version{version})
+	return rec, err
+}
+
+// RemoveLayer takes a layer out; its content stays for undo.
+func (s *Study) RemoveLayer(ctx context.Context, name, reason string) error {
+	snap, err := s.Snapshot()
+	if err != nil {
+		return err
+	}
+	for _, l := range snap.Layers {
+		if l.Name == name {
+			_, err := s.Edit(ctx, "remove", reason, []Change{{Kind: LayerRecKind, Key: name}}, nil)
+			return err
+		}
+	}
+	return fmt.Errorf("layer %q: %w", name, ErrNotThere)
+}
+
+func first(texts ...string) string {
+	for _, t := range texts {
+		if t != "" {
+			return t
+		}
+	}
+	return ""
+}
+
+func ext(name string) string {
+	if i := strings.LastIndexByte(name, '.'); i >= 0 {
+		return name[i:]
+	}
+	return ""
+}
+
+// prepare brings the coordinates to WGS 84, matches fields, checks and repairs the features. It
+// returns the frame centre when this import fixes it.
+func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, tools Tools) (*geo.Layer, *geo.LonLat, error) {
+	if len(in.Layer.Features) == 0 {
+		return nil, nil, &FileError{File: in.File, What: "the layer holds no feature", Cure: "Check that the export was not filtered to nothing"}
+	}
+	var questions []Question
+	rec.Personal = personal(in, role)
+	questions = append(questions, matchFields(rec, in, role)...)
+
+	layer := &geo.Layer{Name: rec.Name, Columns: append([]geo.Column(nil), in.Layer.Columns...), Features: append([]geo.Feature(nil), in.Layer.Features...)}
+	for i := range layer.Columns {
+		layer.Columns[i].Unit = rec.Units[layer.Columns[i].Name]
+		for _, p := range rec.Personal {
+			if layer.Columns[i].Name == p {
+				layer.Columns[i].Personal = true
+			}
+		}
+	}
+	located := false
+	for _, f := range layer.Features {
+		if !f.Geometry.Empty() {
+			located = true
+			break
+		}
+	}
+	if !located {
+		if !role.Accepts("table") {
+			return nil, nil, &FileError{File: in.File, What: "no feature has a place on the map", Cure: fmt.Sprintf("Layers of the role %s need %s", role.Name, strings.Join(role.Geometry, " or "))}
+		}
+		if len(questions) > 0 {
+			return nil, nil, &QuestionError{File: in.File, Questions: questions}
+		}
+		rec.Kind, rec.Count = "table", len(layer.Features)
+		return layer, nil, nil
+	}
+
+	if in.SwapAxes {
+		for i := range layer.Features {
+			layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat { return geo.LonLat{Lon: p.Lat, Lat: p.Lon} })
+		}
+	}
+	rec.CRS = first(in.CRSOption, in.CRS)
+	if rec.CRS == "" {
+		if f, bad := outOfDegrees(layer); bad {
+			questions = append(questions, Question{Text: fmt.Sprintf("feature %s has coordinates that are no degrees; in which coordinate system is the file?", f), Option: "--crs EPSG:25832 (for one)"})
+			return nil, nil, &QuestionError{File: in.File, Questions: questions}
+		}
+		rec.CRS = "OGC:CRS84"
+	}
+	transform, pipeline, err := tools.ToLonLat(rec.CRS)
+	if err != nil {
+		return nil, nil, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+	}
+	rec.Pipeline = pipeline
+	for i := range layer.Features {
+		var bad error
+		layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat {
+			q, err := transform(p)
+			if err != nil && bad == nil {
+				bad = err
+			}
+			return q
+		})
+		if bad != nil {
+			return nil, nil, &FileError{File: in.File, Where: "feature " + layer.Features[i].ID, What: fmt.Sprintf("its coordinates cannot be taken from %s to longitude and latitude: %v", rec.CRS, bad), Cure: "Check --crs"}
+		}
+	}
+	if f, bad := outOfDegrees(layer); bad {
+		return nil, nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", rec.CRS), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
+	}
+	rec.Extent = extent(layer)
+	if q := meets(rec, in, snap); q != nil {
+		questions = append(questions, *q)
+	}
+	if len(questions) > 0 {
+		return nil, nil, &QuestionError{File: in.File, Questions: questions}
+	}
+
+	centre := snap.Frame
+	var fixed *geo.LonLat
+	if centre == nil {
+		c := geo.LonLat{Lon: math.Round((rec.Extent[0]+rec.Extent[2])/2*10) / 10, Lat: math.Round((rec.Extent[1]+rec.Extent[3])/2*10) / 10}
+		centre = &c
+		if role.Name == "parcels" {
+			fixed = &c
+		}
+	}
+	if err := s.checkFeatures(rec, in, role, layer, *centre, tools); err != nil {
+		return nil, nil, err
+	}
+	rec.Count = len(layer.Features)
+	return layer, fixed, nil
+}
+
+func personal(in Import, role Role) []string {
+	seen := map[string]bool{}
+	for _, p := range in.Personal {
+		seen[p] = true
+	}
+	for _, c := range in.Layer.Columns {
+		for _, f := range role.Fields {
+			if f.Personal && strings.EqualFold(f.Name, c.Name) {
+				seen[c.Name] = true
+			}
+		}
+	}
+	out := make([]string, 0, len(seen))
+	for p := range seen {
+		out = append(out, p)
+	}
+	sort.Strings(out)
+	return out
+}
+
+// matchFields fills the record's match and units and asks for what is missing.
+func matchFields(rec *LayerRecord, in Import, role Role) []Question {
+	var qs []Question
+	column := func(name string) string {
+		for _, c := range in.Layer.Columns {
+			if strings.EqualFold(c.Name, name) {
+				return c.Name
+			}
+		}
+		return ""
+	}
+	for _, f := range role.Fields {
+		col := in.Match[f.Name]
+		if col != "" && column(col) == "" {
+			qs = append(qs, Question{Text: fmt.Sprintf("there is no column %q; the columns are: %s", col, columnNames(in.Layer)), Option: fmt.Sprintf("--match %s=COLUMN", f.Name)})
+			continue
+		}
+		if col == "" {
+			col = column(f.Name)
+		}
+		if col == "" {
+			for _, syn := range synonyms[f.Name] {
+				if c := column(syn); c != "" {
+					if in.AcceptProposals {
+						col = c
+					} else if f.Required {
+						qs = append(qs, Question{Text: fmt.Sprintf("is column %q the field %s that %s needs?", c, f.Name, role.Title), Option: fmt.Sprintf("--match %s=%s, or --accept-proposals", f.Name, c)})
+					}
+					break
+				}
+			}
+		}
+		if col == "" {
+			if f.Required && f.Name != "parcel_id" && len(qs) == 0 && !in.AcceptProposals {
+				qs = append(qs, Question{Text: fmt.Sprintf("%s need a field %s (%s); the columns are: %s", role.Title, f.Name, f.Unit, columnNames(in.Layer)), Option: fmt.Sprintf("--match %s=COLUMN", f.Name)})
+			}
+			continue
+		}
+		rec.Match[f.Name] = col
+		unit := in.Units[col]
+		if f.Physical() {
+			if unit == "" && in.AcceptProposals {
+				unit = f.Unit
+			}
+			if unit == "" {
+				qs = append(qs, Question{Text: fmt.Sprintf("in which unit is column %q (field %s)?", col, f.Name), Option: fmt.Sprintf("--unit %s=%s, or --accept-proposals", col, f.Unit)})
+			}
+		}
+		if unit != "" && f.Physical() {
+			if _, err := units.Convert(1, unit, f.Unit); err != nil {
+				qs = append(qs, Question{Text: fmt.Sprintf("column %q: %v", col, err), Option: fmt.Sprintf("--unit %s=%s", col, f.Unit)})
+			}
+			rec.Units[col] = unit
+		}
+	}
+	return qs
+}
+
+func columnNames(l *geo.Layer) string {
+	names := make([]string, len(l.Columns))
+	for i, c := range l.Columns {
+		names[i] = c.Name
+	}
+	if len(names) == 0 {
+		return "none"
+	}
+	return strings.Join(names, ", ")
+}
+
+func outOfDegrees(l *geo.Layer) (feature string, bad bool) {
+	for _, f := range l.Features {
+		f.Geometry.Each(func(p geo.LonLat) {
+			if !bad && !(math.Abs(p.Lon) <= 180 && math.Abs(p.Lat) <= 90) {
+				feature, bad = f.ID, true
+			}
+		})
+		if bad {
+			return feature, true
+		}
+	}
+	return "", false
+}
+
+func extent(l *geo.Layer) [4]float64 {
+	e := [4]float64{math.Inf(1), math.Inf(1), math.Inf(-1), math.Inf(-1)}
+	for _, f := range l.Features {
+		f.Geometry.Each(func(p geo.LonLat) {
+			e[0], e[1] = math.Min(e[0], p.Lon), math.Min(e[1], p.Lat)
+			e[2], e[3] = math.Max(e[2], p.Lon), math.Max(e[3], p.Lat)
+		})
+	}
+	return e
+}
+
+func boxesMeet(a, b [4]float64) bool {
+	return a[0] <= b[2] && b[0] <= a[2] && a[1] <= b[3] && b[1] <= a[3]
+}
+
+// meets compares the layer's place with that of the layers that are there. A layer that would meet
+// them only with swapped axes is asked about; one that does not meet them at all gets a notice.
+func meets(rec *LayerRecord, in Import, snap *Snapshot) *Question {
+	var all [4]float64
+	n := 0
+	for _, l := range snap.Layers {
+		if l.Kind == "table" || l.Kind == "raster" || l.Name == rec.Name {
+			continue
+		}
+		if n == 0 {
+			all = l.Extent
+		} else {
+			all = [4]float64{math.Min(all[0], l.Extent[0]), math.Min(all[1], l.Extent[1]), math.Max(all[2], l.Extent[2]), math.Max(all[3], l.Extent[3])}
+		}
+		n++
+	}
+	if n == 0 || boxesMeet(all, rec.Extent) {
+		return nil
+	}
+	swapped := [4]float64{rec.Extent[1], rec.Extent[0], rec.Extent[3], rec.Extent[2]}
+	if !in.SwapAxes && boxesMeet(all, swapped) {
+		return &Question{Text: "the layer lies far from the others, but would meet them with latitude and longitude swapped", Option: "--swap-axes"}
+	}
+	rec.Notices = append(rec.Notices, geo.Notice{Code: "layer_apart", Severity: geo.Warning, File: in.Base, Layer: rec.Name, Args: map[string]string{
+		"west": deg(rec.Extent[0]), "south": deg(rec.Extent[1]), "east": deg(rec.Extent[2]), "north": deg(rec.Extent[3])}})
+	return nil
+}
+
+func deg(x float64) string { return strconv.FormatFloat(x, 'f', 4, 64) }
+
+// checkFeatures drops features that cannot serve (each with a notice), repairs polygons, finds
+// duplicates and missing values, and gives parcels their identifiers.
+func (s *Study) checkFeatures(rec *LayerRecord, in Import, role Role, layer *geo.Layer, centre geo.LonLat, tools Tools) error {
+	forward, inverse, err := tools.Frame(centre)
+	if err != nil {
+		return fmt.Errorf("%s: %w", in.File, err)
+	}
+	note := func(n geo.Notice) {
+		n.File, n.Layer = in.Base, rec.Name
+		rec.Notices = append(rec.Notices, n)
+	}
+	idColumn := -1
+	if role.Name == "parcels" && rec.Match["parcel_id"] != "" {
+		idColumn = layer.ColumnIndex(rec.Match["parcel_id"])
+	}
+	required := map[string]int{}
+	for _, f := range role.Fields {
+		if f.Required && rec.Match[f.Name] != "" {
+			required[f.Name] = layer.ColumnIndex(rec.Match[f.Name])
+		}
+	}
+	fieldNames := make([]string, 0, len(required))
+	for n := range required {
+		fieldNames = append(fieldNames, n)
+	}
+	sort.Strings(fieldNames)
+
+	seenShape := map[string]string{}
+	seenID := map[string]int{}
+	kinds := map[string]int{}
+	kept := layer.Features[:0:0]
+	for _, f := range layer.Features {
+		if idColumn >= 0 && f.Values[idColumn].Kind != geo.Null {
+			f.ID = f.Values[idColumn].String()
+		}
+		if f.Geometry.Empty() {
+			rec.Ledger.LeftOut++
+			note(geo.Notice{Code: "no_geometry", Severity: geo.Warning, Feature: f.ID})
+			continue
+		}
+		if !role.Accepts(f.Geometry.Kind.String()) {
+			rec.Ledger.LeftOut++
+			note(geo.Notice{Code: "wrong_geometry", Severity: geo.Warning, Feature: f.ID, Args: map[string]string{"kind": f.Geometry.Kind.String(), "wanted": strings.Join(role.Geometry, " or ")}})
+			continue
+		}
+		at := anyPosition(f.Geometry)
+		if f.Geometry.Kind == geo.Polygons {
+			flat, err := forward(f.Geometry)
+			if err != nil {
+				return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
+			}
+			repaired, changed, before, after, err := tools.Repair(flat)
+			if err != nil || repaired.Empty() {
+				rec.Ledger.LeftOut++
+				args := map[string]string{}
+				if err != nil {
+					args["error"] = err.Error()
+				}
+				note(geo.Notice{Code: "not_repairable", Severity: geo.Fault, Feature: f.ID, At: &at, Args: args})
+				continue
+			}
+			if changed {
+				if f.Geometry, err = inverse(repaired); err != nil {
+					return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
+				}
+				rec.Ledger.Repaired++
+				note(geo.Notice{Code: "repaired", Severity: geo.Warning, Feature: f.ID, At: &at, Args: map[string]string{
+					"area_before_ha": strconv.FormatFloat(before/units.M2PerHa, 'f', 4, 64), "area_after_ha": strconv.FormatFloat(after/units.M2PerHa, 'f', 4, 64)}})
+			}
+		}
+		// A resource point stands once per sector, so equal places are no mistake there.
+		if role.Name != "wind_resource" && role.Name != "solar_resource" {
+			one := geo.Layer{Features: []geo.Feature{{Geometry: f.Geometry}}}
+			shape := LayerDigest(&one)
+			if earlier, dup := seenShape[shape]; dup {
+				rec.Ledger.LeftOut++
+				note(geo.Notice{Code: "duplicate", Severity: geo.Warning, Feature: f.ID, At: &at, Args: map[string]string{"of": earlier}})
+				continue
+			}
+			seenShape[shape] = f.ID
+		}
+		if n := seenID[f.ID]; n > 0 {
+			old := f.ID
+			f.ID = fmt.Sprintf("%s (%d)", old, n+1)
+			note(geo.Notice{Code: "same_identifier", Severity: geo.Warning, Feature: old, At: &at, Args: map[string]string{"now": f.ID}})
+			seenID[old]++
+		} else {
+			seenID[f.ID] = 1
+		}
+		for _, name := range fieldNames {
+			if v := f.Values[required[name]]; v.Kind == geo.Null || (v.Kind == geo.Text && strings.TrimSpace(v.Text) == "") {
+				note(geo.Notice{Code: "missing_value", Severity: geo.Warning, Feature: f.ID, Field: name, At: &at})
+			}
+		}
+		kinds[f.Geometry.Kind.String()]++
+		kept = append(kept, f)
+	}
+	layer.Features = kept
+	if len(kept) == 0 {
+		return &FileError{File: in.File, What: fmt.Sprintf("no feature of the file can serve as %s: %d were read, all were left out", role.Name, rec.Ledger.Read), Cure: fmt.Sprintf("The role takes %s; the first notice says: %s", strings.Join(role.Geometry, " or "), rec.Notices[0].Code)}
+	}
+	for _, k := range []string{"polygon", "line", "point"} {
+		if kinds[k] > kinds[rec.Kind] {
+			rec.Kind = k
+		}
+	}
+	return nil
+}
+
+func anyPosition(g geo.LonLatGeometry) geo.LonLat {
+	for _, part := range g.Parts {
+		for _, ring := range part {
+			if len(ring) > 0 {
+				return ring[0]
+			}
+		}
+	}
+	return geo.LonLat{}
+}

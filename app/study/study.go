@@ -1,0 +1,446 @@
+package study
+
+import (
+	"bytes"
+	"context"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"sort"
+	"strconv"
+	"strings"
+	"sync"
+	"time"
+
+	"groundtally/assets/citedtable"
+	"groundtally/geo"
+)
+
+// Setting is the value of one key with where it comes from.
+type Setting struct {
+	Value      string                `json:"value"`
+	Unit       string                `json:"unit,omitempty"`
+	Source     string                `json:"source,omitempty"`
+	Provenance citedtable.Provenance `json:"provenance,omitempty"` // of a default; empty for a user's value
+	AcceptedBy string                `json:"accepted_by,omitempty"`
+	Reason     string                `json:"reason,omitempty"`
+}
+
+// Group is a site made of several parcels.
+type Group struct {
+	Site    string   `json:"site"`
+	Parcels []string `json:"parcels"`
+}
+
+// Study is an open study. It may be used from several goroutines.
+type Study struct {
+	cat   *Catalog
+	store Store
+	clock func() time.Time
+	who   string
+
+	mu      sync.Mutex
+	records map[RecordKind]map[string]json.RawMessage
+	journal []Entry
+	frozen  []Frozen
+}
+
+// Options say who edits and how the time is told; both go into the journal and into nothing else.
+type Options struct {
+	Who   string
+	Clock func() time.Time
+}
+
+// Open reads a study from its store.
+func Open(ctx context.Context, store Store, cat *Catalog, o Options) (*Study, error) {
+	st, err := store.Load(ctx)
+	if err != nil {
+		return nil, err
+	}
+	s := &Study{cat: cat, store: store, clock: o.Clock, who: o.Who, records: map[RecordKind]map[string]json.RawMessage{}, journal: st.Journal, frozen: st.Frozen}
+	if s.clock == nil {
+		s.clock = time.Now
+	}
+	for _, r := range st.Records {
+		s.put(r.Kind, r.Key, r.Value)
+	}
+	return s, nil
+}
+
+// Catalog gives the words and defaults the study was opened with.
+func (s *Study) Catalog() *Catalog { return s.cat }
+
+// Store gives the store that keeps the study.
+func (s *Study) Store() Store { return s.store }
+
+// Close closes the study's file.
+func (s *Study) Close() error { return s.store.Close() }
+
+func (s *Study) put(kind RecordKind, key string, value json.RawMessage) {
+	m := s.records[kind]
+	if m == nil {
+		m = map[string]json.RawMessage{}
+		s.records[kind] = m
+	}
+	if value == nil {
+		delete(m, key)
+	} else {
+		m[key] = value
+	}
+}
+
+// Edit commits changes as one journal entry. Old values are filled in from the present state, and
+// changes that change nothing are dropped; an edit without any change is not written.
+func (s *Study) Edit(ctx context.Context, verb, reason string, changes []Change, add []Version) (Entry, error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return s.edit(ctx, verb, reason, 0, changes, add)
+}
+
+func (s *Study) edit(ctx context.Context, verb, reason string, of int64, changes []Change, add []Version) (Entry, error) {
+	var kept []Change
+	for _, c := range changes {
+		c.Old = s.records[c.Kind][c.Key]
+		if bytes.Equal(c.Old, c.New) {
+			continue
+		}
+		kept = append(kept, c)
+	}
+	if len(kept) == 0 {
+		return Entry{}, nil
+	}
+	e, err := s.store.Commit(ctx, Entry{At: s.clock().UTC().Truncate(time.Second), Who: s.who, Verb: verb, Reason: reason, Of: of, Changes: kept}, add)
+	if err != nil {
+		return Entry{}, err
+	}
+	for _, c := range kept {
+		s.put(c.Kind, c.Key, c.New)
+	}
+	s.journal = append(s.journal, e)
+	return e, nil
+}
+
+// Canonical gives the JSON form in which records are kept.
+func Canonical(v any) json.RawMessage {
+	b, err := json.Marshal(v)
+	if err != nil {
+		panic(fmt.Sprintf("study: a record cannot be written as JSON: %v", err)) // only for a type that has no JSON form
+	}
+	return b
+}
+
+// UnknownKeyError says that no setting has the key.
+type UnknownKeyError struct{ Key, Nearest string }
+
+func (e *UnknownKeyError) Error() string {
+	return fmt.Sprintf("no setting is called %q; the nearest is %q", e.Key, e.Nearest)
+}
+
+// ValueError says that a setting cannot have the value.
+type ValueError struct {
+	Key string
+	Err error
+}
+
+func (e *ValueError) Error() string { return fmt.Sprintf("setting %s: %v", e.Key, e.Err) }
+func (e *ValueError) Unwrap() error { return e.Err }
+
+// SettingEdit is one setting to change. An empty Value takes the user's value out, so that the
+// default holds again.
+type SettingEdit struct {
+	Key        string
+	Value      string
+	Source     string
+	Reason     string
+	AcceptedBy string
+}
+
+// Set changes settings as one journal entry.
+func (s *Study) Set(ctx context.Context, verb, reason string, edits ...SettingEdit) (Entry, error) {
+	changes := make([]Change, 0, len(edits))
+	for _, e := range edits {
+		def, ok := s.cat.Definition(e.Key)
+		if !ok {
+			return Entry{}, &UnknownKeyError{Key: e.Key, Nearest: s.cat.Nearest(e.Key)}
+		}
+		c := Change{Kind: SettingRecord, Key: e.Key}
+		if e.Value != "" {
+			v, err := def.CheckValue(e.Value)
+			if err != nil {
+				return Entry{}, &ValueError{Key: e.Key, Err: err}
+			}
+			by := e.AcceptedBy
+			if by == "" {
+				by = s.who
+			}
+			c.New = Canonical(Setting{Value: v, Unit: def.Unit, Source: e.Source, AcceptedBy: by, Reason: e.Reason})
+		}
+		changes = append(changes, c)
+	}
+	return s.Edit(ctx, verb, reason, changes, nil)
+}
+
+// Undo takes back the last edit that is in force; Redo brings back the last one taken back.
+func (s *Study) Undo(ctx context.Context) (Entry, error) { return s.step(ctx, "undo") }
+
+// Redo brings back the edit that was last taken back, as long as no new edit came after.
+func (s *Study) Redo(ctx context.Context) (Entry, error) { return s.step(ctx, "redo") }
+
+func (s *Study) step(ctx context.Context, verb string) (Entry, error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	done, undone := stacks(s.journal)
+	from := done
+	if verb == "redo" {
+		from = undone
+	}
+	if len(from) == 0 {
+		return Entry{}, ErrNothingToDo
+	}
+	of := from[len(from)-1]
+	changes := make([]Change, 0, len(of.Changes))
+	for _, c := range of.Changes {
+		to := c.Old
+		if verb == "redo" {
+			to = c.New
+		}
+		changes = append(changes, Change{Kind: c.Kind, Key: c.Key, New: to})
+	}
+	return s.edit(ctx, verb, of.Verb, of.Seq, changes, nil)
+}
+
+// stacks gives the entries in force and those taken back, last one last.
+func stacks(journal []Entry) (done, undone []Entry) {
+	bySeq := make(map[int64]Entry, len(journal))
+	for _, e := range journal {
+		bySeq[e.Seq] = e
+		switch e.Verb {
+		case "undo":
+			done = done[:len(done)-1]
+			undone = append(undone, bySeq[e.Of])
+		case "redo":
+			undone = undone[:len(undone)-1]
+			done = append(done, bySeq[e.Of])
+		default:
+			done = append(done, e)
+			undone = nil
+		}
+	}
+	return done, undone
+}
+
+// Journal gives all entries, oldest first.
+func (s *Study) Journal() []Entry {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return append([]Entry(nil), s.journal...)
+}
+
+// Freeze keeps the present state under a name. The code may be empty.
+func (s *Study) Freeze(ctx context.Context, name, code string) (Frozen, error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if strings.TrimSpace(name) == "" {
+		return Frozen{}, errors.New("a frozen state needs a name")
+	}
+	f := Frozen{Name: name, At: s.clock().UTC().Truncate(time.Second), Code: code, Records: s.list()}
+	if n := len(s.journal); n > 0 {
+		f.Seq = s.journal[n-1].Seq
+	}
+	if err := s.store.Freeze(ctx, f); err != nil {
+		return Frozen{}, err
+	}
+	s.frozen = append(s.frozen, f)
+	return f, nil
+}
+
+// FrozenStates gives the frozen states, oldest first.
+func (s *Study) FrozenStates() []Frozen {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return append([]Frozen(nil), s.frozen...)
+}
+
+func (s *Study) list() []Record {
+	var out []Record
+	kinds := make([]string, 0, len(s.records))
+	for k := range s.records {
+		kinds = append(kinds, string(k))
+	}
+	sort.Strings(kinds)
+	for _, k := range kinds {
+		m := s.records[RecordKind(k)]
+		keys := make([]string, 0, len(m))
+		for key := range m {
+			keys = append(keys, key)
+		}
+		sort.Strings(keys)
+		for _, key := range keys {
+			out = append(out, Record{Kind: RecordKind(k), Key: key, Value: m[key]})
+		}
+	}
+	return out
+}
+
+// Snapshot gives the present state for computing: a plain copy that later edits do not touch.
+func (s *Study) Snapshot() (*Snapshot, error) {
+	s.mu.Lock()
+	records := s.list()
+	s.mu.Unlock()
+	return NewSnapshot(s.cat, records)
+}
+
+// Snapshot is a state of a study, read-only and free of its store.
+type Snapshot struct {
+	cat      *Catalog
+	Explicit map[string]Setting // the user's settings
+	Layers   []LayerRecord      // by name
+	Groups   []Group            // by site
+	Frame    *geo.LonLat        // centre of the local frame; nil before the first parcels
+}
+
+// FrameKey is the meta record that holds the centre of the local frame.
+const FrameKey = "frame_centre"
+
+// NewSnapshot reads records, as of a frozen state for one.
+func NewSnapshot(cat *Catalog, records []Record) (*Snapshot, error) {
+	n := &Snapshot{cat: cat, Explicit: map[string]Setting{}}
+	for _, r := range records {
+		var err error
+		switch r.Kind {
+		case SettingRecord:
+			var v Setting
+			if err = json.Unmarshal(r.Value, &v); err == nil {
+				n.Explicit[r.Key] = v
+			}
+		case LayerRecKind:
+			var v LayerRecord
+			if err = json.Unmarshal(r.Value, &v); err == nil {
+				n.Layers = append(n.Layers, v)
+			}
+		case GroupRecord:
+			var v Group
+			if err = json.Unmarshal(r.Value, &v); err == nil {
+				n.Groups = append(n.Groups, v)
+			}
+		case MetaRecord:
+			if r.Key == FrameKey {
+				var v geo.LonLat
+				if err = json.Unmarshal(r.Value, &v); err == nil {
+					n.Frame = &v
+				}
+			}
+		}
+		if err != nil {
+			return nil, fmt.Errorf("record %s %q: %w: %w", r.Kind, r.Key, ErrDamaged, err)
+		}
+	}
+	sort.Slice(n.Layers, func(i, j int) bool { return n.Layers[i].Name < n.Layers[j].Name })
+	sort.Slice(n.Groups, func(i, j int) bool { return n.Groups[i].Site < n.Groups[j].Site })
+	return n, nil
+}
+
+// Catalog gives the words and defaults of the snapshot.
+func (n *Snapshot) Catalog() *Catalog { return n.cat }
+
+// Lookup gives the setting in force: the user's, else the default. ok is false when the setting is
+// neither set nor has a default ("not in force").
+func (n *Snapshot) Lookup(key string) (s Setting, byUser, ok bool) {
+	if s, ok := n.Explicit[key]; ok {
+		return s, true, true
+	}
+	d, known := n.cat.Definition(key)
+	if !known || d.Default == "" {
+		return Setting{}, false, false
+	}
+	return Setting{Value: d.Default, Unit: d.Unit, Source: d.Source, Provenance: d.Provenance}, false, true
+}
+
+// Number gives a numeric setting; ok is false when it is not in force or not set.
+func (n *Snapshot) Number(key string) (x float64, ok bool) {
+	s, _, in := n.Lookup(key)
+	if !in || s.Value == NotSetText {
+		return 0, false
+	}
+	x, err := strconv.ParseFloat(s.Value, 64)
+	return x, err == nil
+}
+
+// Text gives a text setting; empty when it is not in force or not set.
+func (n *Snapshot) Text(key string) string {
+	s, _, in := n.Lookup(key)
+	if !in || s.Value == NotSetText {
+		return ""
+	}
+	return s.Value
+}
+
+// Yes reports whether a yes-or-no setting is on.
+func (n *Snapshot) Yes(key string) bool { return n.Text(key) == "true" }
+
+// Names gives, sorted, the middle names of the user's settings prefix.<name>.suffix.
+func (n *Snapshot) Names(prefix, suffix string) []string {
+	var out []string
+	for k := range n.Explicit {
+		rest, ok := strings.CutPrefix(k, prefix+".")
+		if !ok {
+			continue
+		}
+		if name, ok := strings.CutSuffix(rest, "."+suffix); ok && !strings.Contains(name, ".") {
+			out = append(out, name)
+		}
+	}
+	sort.Strings(out)
+	return out
+}
+
+// Plants gives the plant option ids, sorted.
+func (n *Snapshot) Plants() []string { return n.Names("plant", "technology") }
+
+// Voices gives the voice names, sorted: every voice with a weight or a title.
+func (n *Snapshot) Voices() []string {
+	seen := map[string]bool{}
+	for k := range n.Explicit {
+		if rest, ok := strings.CutPrefix(k, "voice."); ok {
+			name, _, _ := strings.Cut(rest, ".")
+			seen[name] = true
+		}
+	}
+	out := make([]string, 0, len(seen))
+	for v := range seen {
+		out = append(out, v)
+	}
+	sort.Strings(out)
+	return out
+}
+
+// LayersOf gives the layers of a role, by name.
+func (n *Snapshot) LayersOf(role string) []LayerRecord {
+	var out []LayerRecord
+	for _, l := range n.Layers {
+		if l.Role == role {
+			out = append(out, l)
+		}
+	}
+	return out
+}
+
+// Keys lists every key in force or settable without a name in it, sorted: the definitions without
+// angle brackets and the user's own.
+func (n *Snapshot) Keys() []string {
+	seen := map[string]bool{}
+	for _, d := range n.cat.Definitions {
+		if !strings.Contains(d.Key, "<") {
+			seen[d.Key] = true
+		}
+	}
+	for k := range n.Explicit {
+		seen[k] = true
+	}
+	out := make([]string, 0, len(seen))
+	for k := range seen {
+		out = append(out, k)
+	}
+	sort.Strings(out)
+	return out
+}
