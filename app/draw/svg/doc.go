@@ -1,0 +1,2 @@
+// Package svg writes scenes as scalable vector graphics.
+package svg

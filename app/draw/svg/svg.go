@@ -1,0 +1,81 @@
+package svg
+
+import (
+	"bytes"
+	"fmt"
+	"html"
+	"math"
+	"strconv"
+
+	"groundtally/app/draw"
+)
+
+// Write gives the scene as an svg element that needs nothing from outside. The same scene gives the same
+// bytes.
+func Write(s *draw.Scene) []byte {
+	var b bytes.Buffer
+	fmt.Fprintf(&b, `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" role="img" aria-label="%s" font-family="system-ui, sans-serif">`, num(s.Width), num(s.Height), html.EscapeString(s.Title))
+	fmt.Fprintf(&b, `<defs><pattern id="unknown" width="6" height="6" patternUnits="userSpaceOnUse" patternTransform="rotate(45)"><rect width="6" height="6" fill="%s"/><line x1="0" y1="0" x2="0" y2="6" stroke="%s" stroke-width="1.4"/></pattern></defs>`, draw.Paper, draw.Faint)
+	for _, it := range s.Items {
+		switch v := it.(type) {
+		case draw.Path:
+			path(&b, v)
+		case draw.Text:
+			text(&b, v)
+		}
+	}
+	b.WriteString("</svg>")
+	return b.Bytes()
+}
+
+func path(b *bytes.Buffer, p draw.Path) {
+	b.WriteString(`<path d="`)
+	for _, ring := range p.Rings {
+		for i, q := range ring {
+			op := "L"
+			if i == 0 {
+				op = "M"
+			}
+			b.WriteString(op + num(q.X) + " " + num(q.Y))
+		}
+		if p.Closed {
+			b.WriteByte('Z')
+		}
+	}
+	b.WriteByte('"')
+	fill := "none"
+	if p.Style.Hatch {
+		fill = "url(#unknown)"
+	} else if p.Style.Fill != "" {
+		fill = p.Style.Fill
+	}
+	fmt.Fprintf(b, ` fill="%s" fill-rule="evenodd"`, fill)
+	if p.Style.Stroke != "" {
+		fmt.Fprintf(b, ` stroke="%s" stroke-width="%s" stroke-linejoin="round"`, p.Style.Stroke, num(p.Style.Width))
+		if p.Style.Dash != "" {
+			fmt.Fprintf(b, ` stroke-dasharray="%s"`, p.Style.Dash)
+		}
+	}
+	if p.Title != "" {
+		fmt.Fprintf(b, `><title>%s</title></path>`, html.EscapeString(p.Title))
+		return
+	}
+	b.WriteString("/>")
+}
+
+func text(b *bytes.Buffer, t draw.Text) {
+	weight := ""
+	if t.Bold {
+		weight = ` font-weight="600"`
+	}
+	halo := ""
+	if t.Halo {
+		halo = fmt.Sprintf(` paint-order="stroke" stroke="%s" stroke-width="3" stroke-linejoin="round"`, draw.Paper)
+	}
+	fmt.Fprintf(b, `<text x="%s" y="%s" font-size="%s" fill="%s" text-anchor="%s"%s%s>%s</text>`, num(t.At.X), num(t.At.Y), num(t.Size), t.Colour, t.Anchor, weight, halo, html.EscapeString(t.Text))
+}
+
+// num writes a hundredth of a unit at most.
+func num(x float64) string {
+	return strconv.FormatFloat(math.Round(x*100)/100, 'f', -1, 64)
+}

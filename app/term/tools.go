@@ -1,0 +1,43 @@
+package term
+
+import (
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/geo/crs"
+	"groundtally/geo/overlay"
+)
+
+// tools are the geometry services of an import.
+type tools struct {
+	engine *overlay.Engine
+}
+
+// NewTools gives the geometry services of an import, to be closed after use.
+func NewTools() (study.Tools, func(), error) {
+	t := &tools{engine: overlay.New()}
+	return t, func() { _ = t.engine.Close() }, nil // closing only frees memory
+}
+
+func (t *tools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
+	tr, err := crs.NewTransform(code)
+	if err != nil {
+		return nil, "", err
+	}
+	if tr.Identity() {
+		return func(p geo.LonLat) (geo.LonLat, error) { return p, nil }, "none: longitude and latitude on WGS 84", nil
+	}
+	return func(p geo.LonLat) (geo.LonLat, error) { return tr.Forward(p.Lon, p.Lat) }, tr.Code() + " to OGC:CRS84", nil
+}
+
+func (t *tools) Frame(centre geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error), func(geo.XYGeometry) (geo.LonLatGeometry, error), error) {
+	f, err := crs.NewFrame(centre)
+	if err != nil {
+		return nil, nil, err
+	}
+	return f.Project, f.Unproject, nil
+}
+
+func (t *tools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
+	out, rep, err := t.engine.Repair(g)
+	return out, rep.Changed, rep.BeforeM2, rep.AfterM2, err
+}
