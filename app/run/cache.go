@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"compress/flate"
 	"context"
+	"crypto/sha256"
 	"encoding/json"
 	"fmt"
 	"io"
@@ -71,27 +72,40 @@ var writers = sync.Pool{New: func() any {
 
 // pack writes a result as compressed JSON. JSON keeps every finite float64 to its last bit.
 func pack(v any) ([]byte, error) {
+	b, _, err := packed(v)
+	return b, err
+}
+
+// packed also gives the digest of the JSON, which is what a result is known by.
+func packed(v any) ([]byte, digest, error) {
 	j, err := json.Marshal(v)
 	if err != nil {
-		return nil, err
+		return nil, digest{}, err
 	}
 	var b bytes.Buffer
 	w := writers.Get().(*flate.Writer)
 	defer writers.Put(w)
 	w.Reset(&b)
 	if _, err := w.Write(j); err != nil {
-		return nil, err
+		return nil, digest{}, err
 	}
 	if err := w.Close(); err != nil {
-		return nil, err
+		return nil, digest{}, err
 	}
-	return b.Bytes(), nil
+	return b.Bytes(), sha256.Sum256(j), nil
 }
 
 func unpack(data []byte, v any) error {
+	_, err := unpacked(data, v)
+	return err
+}
+
+func unpacked(data []byte, v any) (digest, error) {
 	b, err := io.ReadAll(flate.NewReader(bytes.NewReader(data)))
 	if err != nil {
-		return fmt.Errorf("stored result: %w", err)
+		return digest{}, fmt.Errorf("stored result: %w", err)
 	}
-	return json.Unmarshal(b, v)
+	return sha256.Sum256(b), json.Unmarshal(b, v)
 }
+
+type digest = [sha256.Size]byte

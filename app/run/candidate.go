@@ -13,6 +13,7 @@ import (
 	"groundtally/geo"
 	"groundtally/geo/overlay"
 	"groundtally/scoring"
+	"groundtally/scoring/criteria"
 	"groundtally/scoring/params"
 	"groundtally/scoring/reckon"
 	"groundtally/scoring/units"
@@ -600,15 +601,11 @@ func roundLL(p geo.LonLat) geo.LonLat {
 }
 
 // candidates computes the step for every site and option, by option and then site.
-func (r *runner) candidates(ctx context.Context, fitKeys map[string][]string, fitData map[string][]byte) ([]Candidate, error) {
+func (r *runner) candidates(ctx context.Context, fr *fitter, fitKeys map[string][]string, fitData map[string][]byte) ([]Candidate, []digest, error) {
 	w := r.w
 	k, err := w.newReckoner()
 	if err != nil {
-		return nil, err
-	}
-	fr, err := w.newFitter()
-	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	assets := w.assets()
 	common := k.key(w)
@@ -642,7 +639,7 @@ func (r *runner) candidates(ctx context.Context, fitKeys map[string][]string, fi
 	}
 	have, err := r.cached(ctx, "candidate", all)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	bySite := map[int][]int{} // what is to be computed, grouped so that the options of a site share work
 	for i, j := range list {
@@ -656,6 +653,7 @@ func (r *runner) candidates(ctx context.Context, fitKeys map[string][]string, fi
 	}
 	sort.Ints(sites)
 	out := make([]Candidate, len(list))
+	digests := make([]digest, len(list))
 	fresh := make([][]byte, len(list))
 	err = forEach(ctx, r.cores, len(sites), openEngine, closeEngine, func(e *overlay.Engine, n int) error {
 		around := w.newPieces(w.sites[sites[n]])
@@ -680,14 +678,14 @@ func (r *runner) candidates(ctx context.Context, fitKeys map[string][]string, fi
 				return err
 			}
 			out[i] = *c
-			if fresh[i], err = pack(c); err != nil {
+			if fresh[i], digests[i], err = packed(c); err != nil {
 				return err
 			}
 		}
 		return nil
 	}, r.report("candidate", len(sites)))
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	todo := 0
 	for i := range list {
@@ -700,33 +698,61 @@ func (r *runner) candidates(ctx context.Context, fitKeys map[string][]string, fi
 		if fresh[i] != nil {
 			return nil
 		}
-		return unpack(have[list[i].key], &out[i])
+		var err error
+		digests[i], err = unpacked(have[list[i].key], &out[i])
+		return err
 	}, nil)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	r.keep("candidate", all)
 	r.count("candidate", todo, len(list)-todo)
+	limits := limitsOf(w.snap, k.keys)
 	for i := range out {
 		out[i].Gates = w.gates(w.sites[list[i].s])
-		out[i].OverLimit = overLimit(w.snap, &out[i])
+		out[i].OverLimit = overLimit(limits, &out[i])
 	}
-	return out, nil
+	return out, digests, nil
+}
+
+// limit is a threshold that the user entered for a consequence.
+type limit struct {
+	x    float64
+	more bool // more is better, so less than x breaks it
+}
+
+func limitsOf(snap *study.Snapshot, keys []KeyInfo) map[string]limit {
+	out := map[string]limit{}
+	for _, k := range keys {
+		x, ok := snap.Number("limit." + k.Key)
+		if !ok {
+			continue
+		}
+		c, known := snap.Catalog().Criterion(k.Key)
+		if !known {
+			c, _ = snap.Catalog().Criterion(strings.TrimSuffix(k.Key, criteria.BurdenSuffix))
+		}
+		out[k.Key] = limit{x: x, more: c.Better == criteria.More}
+	}
+	return out
 }
 
 // overLimit lists the keys whose central value breaks a limit that the user entered.
-func overLimit(snap *study.Snapshot, c *Candidate) []string {
+func overLimit(limits map[string]limit, c *Candidate) []string {
+	if len(limits) == 0 {
+		return nil
+	}
 	var out []string
 	for _, q := range c.Consequences {
-		x, ok := snap.Number("limit." + q.Key)
-		if !ok || q.State != scoring.Number {
+		l, ok := limits[q.Key]
+		if !ok {
 			continue
 		}
-		crit, known := snap.Catalog().Criterion(strings.TrimSuffix(q.Key, "_per_gwh"))
-		if !known {
+		never := q.State == scoring.Never
+		if q.State != scoring.Number && !never {
 			continue
 		}
-		if crit.Better == "more" && q.Central < x || crit.Better != "more" && q.Central > x {
+		if never || l.more && q.Central < l.x || !l.more && q.Central > l.x {
 			out = append(out, q.Key)
 		}
 	}

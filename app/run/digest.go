@@ -58,4 +58,11 @@ func (k *keyer) geometry(g geo.XYGeometry) {
 	}
 }
 
+func (k *keyer) texts(list []string) {
+	k.int(len(list))
+	for _, s := range list {
+		k.text(s)
+	}
+}
+
 func (k *keyer) sum() string { return hex.EncodeToString(k.h.Sum(nil)) }

@@ -53,11 +53,12 @@ type yieldValue struct {
 
 // fitter holds what all fits share.
 type fitter struct {
-	w      *world
-	wind   []windPoint
-	sun    *sunlight
-	sunKey string
-	yields map[string]solar.YearResult // by option and rounded latitude
+	w       *world
+	wind    []windPoint
+	sun     *sunlight
+	sunKey  string
+	yields  map[string]solar.YearResult // by option and rounded latitude
+	gridKey string                      // digest of the settings that a connection reads
 }
 
 // latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
@@ -65,7 +66,9 @@ type fitter struct {
 const latStep = 0.01
 
 func (w *world) newFitter() (*fitter, error) {
-	f := &fitter{w: w, yields: map[string]solar.YearResult{}}
+	g := newKey("grid settings", 1)
+	w.gridSettingsKey(g)
+	f := &fitter{w: w, yields: map[string]solar.YearResult{}, gridKey: g.sum()}
 	var err error
 	if f.wind, err = w.windPoints(); err != nil {
 		return nil, err
@@ -179,7 +182,7 @@ func (f *fitter) key(o option, s site, ground []string) string {
 				k.text(l.rec.Digest)
 			}
 		}
-		f.w.gridSettingsKey(k)
+		k.text(f.gridKey)
 	}
 	return k.sum()
 }
@@ -669,11 +672,7 @@ func (f *fitter) totals(e *overlay.Engine, o option, s site, r *fitResult) error
 }
 
 // fits computes the step for every site and option; data and keys are by option, then site.
-func (r *runner) fits(ctx context.Context) (map[string][]string, map[string][]byte, error) {
-	f, err := r.w.newFitter()
-	if err != nil {
-		return nil, nil, err
-	}
+func (r *runner) fits(ctx context.Context, f *fitter) (map[string][]string, map[string][]byte, error) {
 	type job struct {
 		o   option
 		s   int

@@ -1,8 +1,6 @@
 package run
 
 import (
-	"encoding/json"
-
 	"groundtally/geo"
 	"groundtally/scoring"
 )
@@ -217,12 +215,4 @@ type Results struct {
 	Steps      []StepCount
 	Notices    []geo.Notice
 	Code       Code
-}
-
-// canonical writes the results for their digest: candidates and orders, without notices on layers.
-func (r *Results) canonical() ([]byte, error) {
-	return json.Marshal(struct {
-		Candidates []Candidate
-		Voices     []VoiceOrder
-	}{r.Candidates, r.Voices})
 }

@@ -51,11 +51,15 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if err := r.ground(ctx); err != nil {
 		return nil, err
 	}
-	keys, data, err := r.fits(ctx)
+	fr, err := w.newFitter()
 	if err != nil {
 		return nil, err
 	}
-	cs, err := r.candidates(ctx, keys, data)
+	keys, data, err := r.fits(ctx, fr)
+	if err != nil {
+		return nil, err
+	}
+	cs, digests, err := r.candidates(ctx, fr, keys, data)
 	if err != nil {
 		return nil, err
 	}
@@ -76,7 +80,7 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 		out.Voices = append(out.Voices, o)
 	}
 	out.Steps = append(out.Steps, StepCount{Step: "order", Computed: len(out.Voices)})
-	if err := out.code(snap, e.Params); err != nil {
+	if err := out.code(snap, e.Params, digests); err != nil {
 		return nil, err
 	}
 	return out, nil
@@ -84,9 +88,12 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 
 // code fills in the check code. The canonical form of the inputs is JSON with sorted keys: settings in
 // force by key (value, unit), layers by name (role, digest, match, units, completeness), groups, the
-// frame's centre, parameter and formula editions. The canonical form of the results is JSON of the
-// candidates by option and site and of the orders by voice. All are hashed with SHA-256.
-func (r *Results) code(snap *study.Snapshot, p *Params) error {
+// frame's centre, parameter and formula editions. The results go in one after the other: for every
+// candidate, by option and site, the digest of its JSON (written by encoding/json, which sorts keys and
+// gives every number with the digits that bring its bits back), its gates, the limits it breaks; for every
+// voice the rows of its order. Texts stand with their length before them and numbers as their IEEE 754
+// bits, little-endian. All is hashed with SHA-256.
+func (r *Results) code(snap *study.Snapshot, p *Params, digests []digest) error {
 	type setting struct{ Key, Value, Unit string }
 	type layer struct {
 		Name, Role, Digest string
@@ -114,13 +121,62 @@ func (r *Results) code(snap *study.Snapshot, p *Params) error {
 	if err != nil {
 		return fmt.Errorf("check code: %w", err)
 	}
-	res, err := r.canonical()
-	if err != nil {
-		return fmt.Errorf("check code: %w", err)
-	}
-	r.Code.Inputs, r.Code.Results = sha(b), sha(res)
+	r.Code.Inputs, r.Code.Results = sha(b), r.digest(digests)
 	r.Code.Check = sha([]byte(r.Code.Inputs + r.Code.Results))
 	return nil
+}
+
+// digest gives the digest of the results; see code.
+func (r *Results) digest(candidates []digest) string {
+	k := newKey("results", 1)
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		k.text(c.ID())
+		k.h.Write(candidates[i][:])
+		for _, g := range sortedNames(c.Gates) {
+			k.text(g)
+			k.text(c.Gates[g].State)
+		}
+		k.texts(c.OverLimit)
+	}
+	for _, v := range r.Voices {
+		k.text(v.Voice)
+		k.texts(v.HeldBack)
+		for _, row := range v.Order {
+			k.text(row.Site)
+			k.text(row.Plant)
+			k.int(row.Place)
+			k.int(row.Tier)
+			k.int(row.RankBest)
+			k.int(row.RankWorst)
+			k.text(row.CanBeFirst)
+			for _, x := range []float64{row.Score, row.ScoreLow, row.ScoreHigh, row.FirstIn100} {
+				k.num(x)
+			}
+			for _, key := range sortedNames(row.Parts) {
+				p := row.Parts[key]
+				k.text(key)
+				k.num(p.Weight)
+				k.num(p.Share)
+				k.num(p.ShareLow)
+				k.num(p.ShareHigh)
+			}
+			k.texts(row.DominatedBy)
+			k.texts(row.Alerts)
+		}
+		for _, t := range v.Tipping {
+			k.text(t.Key)
+			for _, s := range []*TippingSide{t.Below, t.Above} {
+				if s != nil {
+					k.num(s.At)
+					k.text(s.NewFirst)
+				} else {
+					k.text("none")
+				}
+			}
+		}
+	}
+	return k.sum()
 }
 
 func sha(b []byte) string {

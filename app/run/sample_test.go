@@ -103,3 +103,12 @@ func TestSampleComputes(t *testing.T) {
 		}
 	}
 }
+
+func BenchmarkSampleFromStored(b *testing.B) {
+	s := sampleStudy(b)
+	cache := &Memory{}
+	compute(b, s, cache, 2)
+	for b.Loop() {
+		compute(b, s, cache, 2)
+	}
+}

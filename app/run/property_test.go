@@ -1,0 +1,309 @@
+package run
+
+import (
+	"context"
+	"fmt"
+	"io/fs"
+	"math"
+	"math/rand/v2"
+	"testing"
+	"time"
+
+	"groundtally/app/files"
+	"groundtally/app/study"
+	"groundtally/app/study/studytest"
+	"groundtally/geo"
+	"groundtally/geo/overlay"
+	"groundtally/sampledata"
+	"groundtally/scoring"
+)
+
+// smallStudy is the sample with a handful of its parcels, so that many states can be computed.
+func smallStudy(t testing.TB, every int) *study.Study {
+	t.Helper()
+	shipped(t)
+	s, err := study.Open(context.Background(), studytest.New(), catalog, study.Options{Clock: func() time.Time { return time.Unix(0, 0) }})
+	if err != nil {
+		t.Fatal(err)
+	}
+	e := overlay.New()
+	defer e.Close()
+	read := func(ctx context.Context, fsys fs.FS, name string) (study.Import, error) {
+		in, err := files.ImportFS(ctx, fsys, name)
+		if err == nil && name == "parcels.geojson" {
+			var few []geo.Feature
+			for i, f := range in.Layer.Features {
+				if i%every == 0 {
+					few = append(few, f)
+				}
+			}
+			in.Layer.Features = few
+		}
+		return in, err
+	}
+	if err := s.LoadSample(context.Background(), sampledata.FS(), read, testTools{e}, func(study.LayerRecord) {}); err != nil {
+		t.Fatal(err)
+	}
+	return s
+}
+
+// TestEditsAndUndosEqualAFreshRun is the property that stored results may never show: after any edits,
+// undos and redos, results equal a run from nothing, bit for bit.
+func TestEditsAndUndosEqualAFreshRun(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 60)
+	cache := &Memory{}
+	rng := rand.New(rand.NewPCG(7, 11))
+	settings := []struct {
+		key    string
+		values []string
+	}{
+		{"rule.setback.dwellings.wind_m", []string{"400", "500", "900", "not set", ""}},
+		{"rule.setback.water.solar_fixed_m", []string{"20", "60"}},
+		{"rule.slope_max.solar_fixed_deg", []string{"4", "12"}},
+		{"rule.smallest_patch.solar_fixed_ha", []string{"1", "3"}},
+		{"rule.exclude.farmland", []string{"yes", "no"}},
+		{"plant.solar_fixed.tilt_deg", []string{"20", "35"}},
+		{"plant.wind.fit_machines", []string{"1", "4"}},
+		{"plant.wind.spacing_along_d", []string{"5", "7"}},
+		{"wind.shear_alpha", []string{"0.14", "0.2"}},
+		{"grid.export_limit_kw", []string{"2000", ""}},
+		{"grid.voltage_rise_limit_frac", []string{"0.03", ""}},
+		{"inventory.wind_turbine-mj.central", []string{"9000", ""}},
+		{"inventory.pv_system_mono-mj.high", []string{"40000", ""}},
+		{"land.habitat_edge_m", []string{"0", "80"}},
+		{"climate.grid_factor_g_per_kwh", []string{"400", "not set", "250"}},
+		{"climate.zone", []string{"boreal", "cool temperate moist"}},
+		{"voice.residents.weight.net_share", []string{"5", "90"}},
+		{"limit.connection_km", []string{"3", ""}},
+		{"gate.owner_consent", []string{"off", "not_no", "yes"}},
+		{"run.seed", []string{"1", "5"}},
+		{"run.trials", []string{"40", "60"}},
+		{"plant.extra.technology", []string{"solar_vertical", ""}},
+		{"energy.household_mwh_per_yr", []string{"3.5", "not set"}},
+	}
+	layers := []string{"Peat depth", "Flood areas", "Land cover", "Power lines", "Ground heights", "Wind grid", "Soils"}
+	steps, checks := 36, 0
+	if testing.Short() {
+		steps = 6
+	}
+	for step := range steps {
+		what := ""
+		switch n := rng.IntN(10); {
+		case n < 6:
+			c := settings[rng.IntN(len(settings))]
+			v := c.values[rng.IntN(len(c.values))]
+			what = c.key + " = " + v
+			if _, err := s.Set(ctx, "set", "", study.SettingEdit{Key: c.key, Value: v}); err != nil {
+				t.Fatal(err)
+			}
+		case n == 6:
+			what = "remove a layer"
+			if err := s.RemoveLayer(ctx, layers[rng.IntN(len(layers))], ""); err != nil {
+				continue // it is gone already
+			}
+		case n == 7:
+			what = "group"
+			snap, err := s.Snapshot()
+			if err != nil {
+				t.Fatal(err)
+			}
+			v, _, err := s.Store().Version(ctx, snap.LayersOf("parcels")[0].Digest)
+			if err != nil {
+				t.Fatal(err)
+			}
+			i := rng.IntN(len(v.Layer.Features) - 1)
+			if _, err := s.GroupParcels(ctx, fmt.Sprintf("pair %d", i), []string{v.Layer.Features[i].ID, v.Layer.Features[i+1].ID}, ""); err != nil {
+				t.Fatal(err)
+			}
+		case n == 8:
+			what = "undo"
+			if _, err := s.Undo(ctx); err != nil {
+				continue
+			}
+		default:
+			what = "redo"
+			if _, err := s.Redo(ctx); err != nil {
+				continue
+			}
+		}
+		if step%2 == 1 && step != steps-1 {
+			continue // results are compared after one or two edits, so that steps pile up
+		}
+		kept := compute(t, s, cache, 2)
+		fresh := compute(t, s, nil, 1)
+		checks++
+		if kept.Code != fresh.Code {
+			_, d := Compare(fresh, kept)
+			t.Fatalf("after step %d (%s) stored results differ from a fresh run: %+v", step, what, d)
+		}
+	}
+	if checks < 3 {
+		t.Fatalf("only %d states were compared", checks)
+	}
+}
+
+func TestOneCoreOrMany(t *testing.T) {
+	s := smallStudy(t, 80)
+	one := compute(t, s, nil, 1)
+	many := compute(t, s, nil, 5)
+	if one.Code != many.Code {
+		_, d := Compare(one, many)
+		t.Fatalf("one core and five differ: %+v", d)
+	}
+}
+
+func TestOnlyWhatChangedIsComputedAgain(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 60)
+	cache := &Memory{}
+	steps := func() map[string]StepCount {
+		m := map[string]StepCount{}
+		for _, c := range compute(t, s, cache, 2).Steps {
+			m[c.Step] = c
+		}
+		return m
+	}
+	edit := func(key, value string) {
+		t.Helper()
+		if _, err := s.Set(ctx, "set", "", study.SettingEdit{Key: key, Value: value}); err != nil {
+			t.Fatal(err)
+		}
+	}
+	first := steps()
+	if first["ground"].Valid != 0 || first["candidate"].Computed == 0 {
+		t.Fatalf("first run: %+v", first)
+	}
+	edit("voice.residents.weight.net_share", "77")
+	m := steps()
+	for _, step := range []string{"ground", "fit", "candidate"} {
+		if m[step].Computed != 0 {
+			t.Errorf("a weight made %d of step %s compute again", m[step].Computed, step)
+		}
+	}
+	edit("inventory.wind_turbine-mj.central", "8000")
+	if m = steps(); m["ground"].Computed != 0 || m["fit"].Computed != 0 || m["candidate"].Computed == 0 {
+		t.Errorf("an inventory row: %+v", m)
+	}
+	edit("rule.setback.forest.wind_m", "300")
+	m = steps()
+	if m["ground"].Computed == 0 || m["ground"].Computed > first["ground"].Computed/4 {
+		t.Errorf("a setback from a dozen woods made %d of %d grounds compute again, want those near them", m["ground"].Computed, first["ground"].Computed)
+	}
+	if _, err := s.Undo(ctx); err != nil {
+		t.Fatal(err)
+	}
+	edit("plant.solar_agri.gcr", "0.28")
+	if m = steps(); m["fit"].Computed == 0 || m["fit"].Computed > first["fit"].Computed/4 {
+		t.Errorf("one option of seven made %d of %d fits compute again", m["fit"].Computed, first["fit"].Computed)
+	}
+}
+
+// TestResultsHold checks what must be true of every candidate, whatever the data.
+func TestResultsHold(t *testing.T) {
+	s := smallStudy(t, 12)
+	r := compute(t, s, nil, 2)
+	p := shipped(t)
+	states := map[scoring.State]int{}
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		sum := c.TakenSharedHa + c.ShapeHa
+		for _, tk := range c.Taken {
+			sum += tk.AloneHa
+		}
+		gross, _ := c.Consequence("gross_area_ha")
+		left, _ := c.Consequence("buildable_area_ha")
+		if math.Abs(gross.Central-left.Central-sum) > 1e-6*gross.Central {
+			t.Errorf("%s: gross %v, buildable %v, taken %v: the parts do not add up", c.ID(), gross.Central, left.Central, sum)
+		}
+		if c.Status != Fitted {
+			continue
+		}
+		if len(c.Consequences) != len(p.Keys()) {
+			t.Fatalf("%s has %d consequences, want all %d", c.ID(), len(c.Consequences), len(p.Keys()))
+		}
+		for _, q := range c.Consequences {
+			states[q.State]++
+			for _, x := range []float64{q.Low, q.Central, q.High, q.Median} {
+				if math.IsNaN(x) || math.IsInf(x, 0) {
+					t.Errorf("%s, %s: %v", c.ID(), q.Key, x)
+				}
+			}
+			if q.Low > q.High {
+				t.Errorf("%s, %s: low %v above high %v", c.ID(), q.Key, q.Low, q.High)
+			}
+			if q.State != scoring.Number && (q.Low != 0 || q.Central != 0 || q.High != 0) {
+				t.Errorf("%s, %s is %v and has a number", c.ID(), q.Key, q.State)
+			}
+			if (q.State == scoring.Unknown || q.State == scoring.NotSet || q.State == scoring.None) && q.Why == "" {
+				t.Errorf("%s, %s is %v without a reason", c.ID(), q.Key, q.State)
+			}
+		}
+		b1, _ := c.Consequence("eroi_generation")
+		b2, _ := c.Consequence("eroi_delivered")
+		b3, _ := c.Consequence("eroi_extended")
+		if b1.State == scoring.Number && b3.State == scoring.Number && !(b1.Central > b2.Central && b2.Central > b3.Central) {
+			t.Errorf("%s: returns %v, %v, %v do not fall as more is counted", c.ID(), b1.Central, b2.Central, b3.Central)
+		}
+	}
+	for _, st := range []scoring.State{scoring.Number, scoring.NotAssessed, scoring.None, scoring.NotSet} {
+		if states[st] == 0 {
+			t.Errorf("no consequence is %v: the states are not exercised", st)
+		}
+	}
+	for _, v := range r.Voices {
+		at := map[string]Row{}
+		for i, row := range v.Order {
+			if row.Place != i+1 {
+				t.Errorf("voice %s: place %d at position %d", v.Voice, row.Place, i+1)
+			}
+			sum, low, high := 0.0, 0.0, 0.0
+			for _, k := range sortedNames(row.Parts) {
+				sum += row.Parts[k].Share
+				low += row.Parts[k].ShareLow
+				high += row.Parts[k].ShareHigh
+			}
+			if math.Abs(sum-row.Score) > 1e-12 || math.Abs((low+high)/2-row.Score) > 1e-12 {
+				t.Errorf("voice %s, %s: parts %v, interval %v to %v, score %v", v.Voice, row.Site, sum, low, high, row.Score)
+			}
+			at[row.Site+"/"+row.Plant] = row
+		}
+		for id, row := range at {
+			for _, d := range row.DominatedBy {
+				if at[d].Place > row.Place {
+					t.Errorf("voice %s: %s stands above %s, which dominates it", v.Voice, id, d)
+				}
+			}
+		}
+	}
+}
+
+func TestMissingLayersAreUnknownAndNeverZero(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 12)
+	for _, l := range []string{"Habitats", "Soils", "Power lines", "Substations", "Dwellings", "Hourly demand"} {
+		if err := s.RemoveLayer(ctx, l, ""); err != nil {
+			t.Fatal(err)
+		}
+	}
+	r := compute(t, s, nil, 2)
+	n := 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		if c.Status != Fitted {
+			continue
+		}
+		n++
+		for _, key := range []string{"habitat_ha", "soil_carbon_loss_tc", "eroi_delivered", "eroi_stock", "delivered_mwh_per_yr", "nearest_dwelling_m", "demand_share_frac", "connection_km", "ghg_g_per_kwh"} {
+			if q, _ := c.Consequence(key); q.State != scoring.Unknown {
+				t.Errorf("%s, %s is %v %v without its layer, want unknown", c.ID(), key, q.State, q.Central)
+			}
+		}
+		if q, _ := c.Consequence("eroi_generation"); q.State != scoring.Number {
+			t.Errorf("%s: the return at the plant needs no grid, but is %v (%s)", c.ID(), q.State, q.Why)
+		}
+	}
+	if n == 0 {
+		t.Fatal("nothing was fitted")
+	}
+}
