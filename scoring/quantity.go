@@ -9,8 +9,26 @@ type Quantity struct {
 	Formula string // for people, in the names of the inputs
 	Source  string // publication or standard the formula stands in; "identity" for arithmetic
 	Inputs  []string
-	// Eval gives the value from the inputs' values, in the order of Inputs. It must be pure.
-	Eval func(in []Value) Value
+	// Eval gives the value from the inputs' values, in the order of Inputs.
+	Eval Eval
+}
+
+// Eval is a pure function of a quantity's inputs. Values serves any states; Numbers, where there is one,
+// gives the same when all inputs are numbers, and ok false where Values must be asked.
+type Eval struct {
+	Values  func(in []Value) Value
+	Numbers func(x []float64) (y float64, ok bool)
+}
+
+// Custom makes an Eval of a function that looks at the states itself.
+func Custom(f func(in []Value) Value) Eval { return Eval{Values: f} }
+
+// known gives the numbers of values that are all numbers.
+func known(in []Value, buf []float64) []float64 {
+	for _, v := range in {
+		buf = append(buf, v.X)
+	}
+	return buf
 }
 
 // LeafKind says where a leaf's value comes from.
@@ -33,17 +51,16 @@ type Leaf struct {
 
 // Plain wraps a function of numbers: when an input is not a number, the answer is that input's state,
 // the first one in the order of inputs, with a state that is missing data before one that is None.
-func Plain(f func(x []float64) float64) func([]Value) Value {
-	return func(in []Value) Value {
-		if v, missing := FirstMissing(in); missing {
-			return v
-		}
-		var buf [16]float64
-		x := buf[:0]
-		for _, v := range in {
-			x = append(x, v.X)
-		}
-		return Num(f(x))
+func Plain(f func(x []float64) float64) Eval {
+	return Eval{
+		Values: func(in []Value) Value {
+			if v, missing := FirstMissing(in); missing {
+				return v
+			}
+			var buf [24]float64
+			return Num(f(known(in, buf[:0])))
+		},
+		Numbers: func(x []float64) (float64, bool) { return f(x), true },
 	}
 }
 
@@ -87,27 +104,29 @@ type Consequence struct {
 }
 
 // Guarded wraps a formula that may refuse its input: an error becomes Unknown with the code.
-func Guarded(code string, f func(x []float64) (float64, error)) func([]Value) Value {
-	return func(in []Value) Value {
-		if v, missing := FirstMissing(in); missing {
-			return v
-		}
-		var buf [24]float64
-		x := buf[:0]
-		for _, v := range in {
-			x = append(x, v.X)
-		}
-		y, err := f(x)
-		if err != nil {
-			return UnknownBecause(code)
-		}
-		return Num(y)
+func Guarded(code string, f func(x []float64) (float64, error)) Eval {
+	return Eval{
+		Values: func(in []Value) Value {
+			if v, missing := FirstMissing(in); missing {
+				return v
+			}
+			var buf [24]float64
+			y, err := f(known(in, buf[:0]))
+			if err != nil {
+				return UnknownBecause(code)
+			}
+			return Num(y)
+		},
+		Numbers: func(x []float64) (float64, bool) {
+			y, err := f(x)
+			return y, err == nil
+		},
 	}
 }
 
 // NoneIsZero wraps an evaluation in which an effect that does not arise adds nothing.
-func NoneIsZero(eval func([]Value) Value) func([]Value) Value {
-	return func(in []Value) Value {
+func NoneIsZero(e Eval) Eval {
+	return Eval{Numbers: e.Numbers, Values: func(in []Value) Value {
 		var buf [24]Value
 		y := buf[:0]
 		for _, v := range in {
@@ -116,8 +135,8 @@ func NoneIsZero(eval func([]Value) Value) func([]Value) Value {
 			}
 			y = append(y, v)
 		}
-		return eval(y)
-	}
+		return e.Values(y)
+	}}
 }
 
 // Dot gives a function that sums amount × factor over n amounts that are followed by their n factors.

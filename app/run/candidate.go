@@ -282,9 +282,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	for _, n := range r.Notices {
 		noted[n] = true
 	}
-	for _, n := range sortedNames(noted) {
-		c.Notices = append(c.Notices, n)
-	}
+	c.Notices = append(c.Notices, sortedNames(noted)...)
 
 	v := slices.Clone(k.central)
 	for _, name := range k.p.facts {

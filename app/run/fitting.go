@@ -56,7 +56,6 @@ type fitter struct {
 	w       *world
 	wind    []windPoint
 	sun     *sunlight
-	sunKey  string
 	yields  map[string]solar.YearResult // by option and rounded latitude
 	gridKey string                      // digest of the settings that a connection reads
 }

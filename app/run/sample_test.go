@@ -97,6 +97,19 @@ func TestSampleComputes(t *testing.T) {
 		}
 	}
 	t.Log(fitted, r.Steps)
+	// What the sample is there to show: three voices, three first candidates.
+	first := map[string]string{}
+	for _, v := range r.Voices {
+		for _, row := range v.Order {
+			if row.Site != NoSite {
+				first[row.Site+"/"+row.Plant] = v.Voice
+				break
+			}
+		}
+	}
+	if len(r.Voices) != 3 || len(first) != 3 {
+		t.Errorf("the voices' first candidates are %v: three voices must disagree", first)
+	}
 	for _, o := range []string{"solar_fixed", "solar_tracking", "solar_vertical", "solar_agri", "wind", "wind_large", "wind_solar"} {
 		if fitted[o] == 0 {
 			t.Errorf("option %s fits nowhere", o)

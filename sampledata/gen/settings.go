@@ -131,7 +131,7 @@ func settingTable() ([]byte, error) {
 		weights   [7]int
 	}{
 		{"residents", "Residents", [7]int{20, 15, 45, 30, 100, 85, 5}},
-		{"farmers", "Farmers", [7]int{35, 100, 30, 25, 25, 10, 20}},
+		{"farmers", "Farmers", [7]int{12, 100, 0, 0, 2, 1, 0}},
 		{"operator", "Network operator", [7]int{70, 10, 10, 35, 10, 5, 100}},
 	}
 	keys := [7]string{"net_share", "footprint_direct_ha_per_gwh", "habitat_ha_per_gwh", "ghg_g_per_kwh", "noise_dba", "dwellings_seeing_per_gwh", "connection_km"}

@@ -41,12 +41,12 @@ func Quantities() []scoring.Quantity {
 		exceedance("energy_p90_mwh_per_yr", "Yearly energy, nine in ten", 0.90),
 		exceedance("energy_p99_mwh_per_yr", "Yearly energy, bad year", 0.99),
 		{Name: "curtailed_frac", Unit: "1", Title: "Share of the energy cut off", Formula: "curtailed_share; taken as none, and said so, while the spare capacity is unknown", Source: "identity",
-			Inputs: []string{"curtailed_share"}, Eval: func(in []scoring.Value) scoring.Value {
+			Inputs: []string{"curtailed_share"}, Eval: scoring.Custom(func(in []scoring.Value) scoring.Value {
 				if in[0].State == scoring.Unknown {
 					return scoring.Num(0)
 				}
 				return in[0]
-			}},
+			})},
 		{Name: "delivered_mwh_per_yr", Unit: "MWh/yr", Title: "Energy delivered per year", Formula: "energy_p50 × (1 − curtailed_frac) × (1 − connection_loss_frac)", Source: "identity",
 			Inputs: []string{"energy_p50_mwh_per_yr", "curtailed_frac", "connection_loss_frac"}, Eval: plain(func(x []float64) float64 { return x[0] * (1 - x[1]) * (1 - x[2]) })},
 		{Name: "specific_yield_kwh_per_kw", Unit: "kWh/(kW yr)", Title: "Energy per installed kilowatt", Formula: "energy_p50 / rated_kw", Source: "identity",
@@ -115,7 +115,7 @@ func Quantities() []scoring.Quantity {
 				return mj / units.MJPerGWh, err
 			})},
 		{Name: "energy_payback_yr", Unit: "yr", Title: "Energy payback time", Formula: "I_delivered / (E_first year/η_G − I_upkeep), primary equivalent", Source: "IEA-PVPS T12 methodology guidelines",
-			Inputs: []string{"input_delivered_mj", "delivered_mwh_per_yr", "input_upkeep_mj_per_yr", "grid_efficiency"}, Eval: func(in []scoring.Value) scoring.Value {
+			Inputs: []string{"input_delivered_mj", "delivered_mwh_per_yr", "input_upkeep_mj_per_yr", "grid_efficiency"}, Eval: scoring.Custom(func(in []scoring.Value) scoring.Value {
 				if v, missing := scoring.FirstMissing(in); missing {
 					return v
 				}
@@ -127,7 +127,7 @@ func Quantities() []scoring.Quantity {
 					return scoring.NeverValue()
 				}
 				return scoring.Num(p.Yr)
-			}},
+			})},
 		{Name: "power_density_w_per_m2", Unit: "W/m2", Title: "Power per square metre", Formula: "delivered_mwh_per_yr / 8760 h / footprint_total_ha", Source: "van Zalk & Behrens 2018 for the definition",
 			Inputs: []string{"delivered_mwh_per_yr", "footprint_total_ha"}, Eval: plain(func(x []float64) float64 {
 				return x[0] * units.KWhPerMWh * units.WPerKW / units.HoursPerYear / (x[1] * units.M2PerHa)

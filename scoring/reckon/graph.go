@@ -34,7 +34,7 @@ func New(leaves []scoring.Leaf, quantities []scoring.Quantity) (*Graph, error) {
 		if _, dup := byName[q.Name]; dup {
 			return nil, fmt.Errorf("quantity %q stands twice", q.Name)
 		}
-		if q.Eval == nil || q.Formula == "" || q.Unit == "" || q.Source == "" {
+		if q.Eval.Values == nil || q.Formula == "" || q.Unit == "" || q.Source == "" {
 			return nil, fmt.Errorf("quantity %q lacks its formula, unit, source or function", q.Name)
 		}
 		byName[q.Name] = q
@@ -128,7 +128,7 @@ func (g *Graph) eval(i int, v []scoring.Value, buf []scoring.Value) scoring.Valu
 	for _, s := range g.inputs[i] {
 		buf = append(buf, v[s])
 	}
-	return g.quantities[i].Eval(buf)
+	return g.quantities[i].Eval.Values(buf)
 }
 
 // dependents gives the quantities, in order, that depend on any of the leaf slots.

@@ -1,6 +1,8 @@
 package reckon
 
 import (
+	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"groundtally/scoring"
@@ -112,6 +114,29 @@ func BenchmarkTrials(b *testing.B) {
 	for b.Loop() {
 		if _, err := g.Trials(v, []Drawn{{Slot: 0, Values: draws}}, want); err != nil {
 			b.Fatal(err)
+		}
+	}
+}
+
+func TestPercentileEqualsSorting(t *testing.T) {
+	rng := rand.New(rand.NewPCG(1, 2))
+	for n := 1; n < 60; n++ {
+		a := make([]float64, n)
+		for i := range a {
+			a[i] = float64(rng.IntN(9))
+		}
+		sorted := slices.Clone(a)
+		slices.Sort(sorted)
+		for _, p := range []float64{0, 0.1, 0.5, 0.9, 1} {
+			at := float64(n-1) * p
+			i := int(at)
+			want := sorted[i]
+			if i+1 < n {
+				want += (at - float64(i)) * (sorted[i+1] - sorted[i])
+			}
+			if got := percentile(slices.Clone(a), p); got != want {
+				t.Fatalf("%d values, p %v: %v, want %v", n, p, got, want)
+			}
 		}
 	}
 }

@@ -51,7 +51,7 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 	for _, s := range leafSlots {
 		moves[s] = true
 	}
-	work := slices.Clone(v)
+	work := g.bench(v)
 	samples := make([][]float64, len(want))
 	for i, s := range want {
 		if moves[s] {
@@ -59,29 +59,22 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 			samples[i] = make([]float64, 0, n)
 		}
 	}
-	var buf [16]scoring.Value
 	for t := range n {
-		for _, d := range drawn {
-			work[d.Slot] = scoring.Num(d.Values[t])
-		}
-		for _, i := range hot {
-			work[len(g.leaves)+i] = g.eval(i, work, buf[:0])
-		}
+		work.trial(g, drawn, hot, t)
 		for i, s := range want {
 			if !moves[s] {
 				continue
 			}
-			switch w := work[s]; w.State {
-			case scoring.Number:
-				samples[i] = append(samples[i], w.X)
-			case scoring.Never:
+			switch {
+			case work.odd[s] == nil:
+				samples[i] = append(samples[i], work.x[s])
+			case work.odd[s].State == scoring.Never:
 				out[i].Nevers++
 			}
 		}
 	}
 	for i := range want {
 		if s := samples[i]; len(s) > 0 {
-			slices.Sort(s)
 			out[i].Numbers = len(s)
 			out[i].Low, out[i].Median, out[i].High = percentile(s, 0.1), percentile(s, 0.5), percentile(s, 0.9)
 		}
@@ -89,14 +82,112 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 	return out, nil
 }
 
-func percentile(sorted []float64, p float64) float64 {
-	at := float64(len(sorted)-1) * p
-	i := int(math.Floor(at))
-	if i+1 >= len(sorted) {
-		return sorted[len(sorted)-1]
+// bench is a value vector for trials: numbers apart from the few that are none, so that the usual case
+// moves eight bytes a value.
+type bench struct {
+	x   []float64
+	odd []*scoring.Value // nil for a number
+}
+
+func (g *Graph) bench(v []scoring.Value) *bench {
+	b := &bench{x: make([]float64, len(v)), odd: make([]*scoring.Value, len(v))}
+	for i := range v {
+		b.put(i, v[i])
 	}
-	f := at - float64(i)
-	return sorted[i] + float64(f*(sorted[i+1]-sorted[i]))
+	return b
+}
+
+func (b *bench) put(slot int, v scoring.Value) {
+	if v.OK() {
+		b.x[slot], b.odd[slot] = v.X, nil
+		return
+	}
+	b.x[slot], b.odd[slot] = 0, &v
+}
+
+func (b *bench) value(slot int) scoring.Value {
+	if b.odd[slot] != nil {
+		return *b.odd[slot]
+	}
+	return scoring.Value{X: b.x[slot]}
+}
+
+// trial sets the drawn leaves of trial t and evaluates what depends on them.
+func (b *bench) trial(g *Graph, drawn []Drawn, hot []int, t int) {
+	for _, d := range drawn {
+		b.x[d.Slot], b.odd[d.Slot] = d.Values[t], nil
+	}
+	var buf [24]float64
+	for _, i := range hot {
+		q := &g.quantities[i]
+		numbers := q.Eval.Numbers != nil
+		x := buf[:0]
+		for _, s := range g.inputs[i] {
+			if b.odd[s] != nil {
+				numbers = false
+				break
+			}
+			x = append(x, b.x[s])
+		}
+		slot := len(g.leaves) + i
+		if numbers {
+			if y, ok := q.Eval.Numbers(x); ok && !math.IsNaN(y) && !math.IsInf(y, 0) {
+				b.x[slot], b.odd[slot] = y, nil
+				continue
+			}
+		}
+		var in [24]scoring.Value
+		vs := in[:0]
+		for _, s := range g.inputs[i] {
+			vs = append(vs, b.value(s))
+		}
+		b.put(slot, q.Eval.Values(vs))
+	}
+}
+
+// percentile gives the value at position (n-1)p of the sorted sample, linear between neighbours. It
+// reorders the sample, which is cheaper than sorting it.
+func percentile(a []float64, p float64) float64 {
+	at := float64(len(a)-1) * p
+	i := int(math.Floor(at))
+	low := nth(a, i)
+	if i+1 >= len(a) {
+		return low
+	}
+	high := slices.Min(a[i+1:]) // nth leaves what is not less behind i
+	return low + float64((at-float64(i))*(high-low))
+}
+
+// nth puts the k-th smallest value at index k, smaller ones before and larger ones behind it (Hoare 1961,
+// algorithm 65), and gives it.
+func nth(a []float64, k int) float64 {
+	lo, hi := 0, len(a)-1
+	for lo < hi {
+		pivot := a[(lo+hi)/2]
+		i, j := lo, hi
+		for i <= j {
+			for a[i] < pivot {
+				i++
+			}
+			for a[j] > pivot {
+				j--
+			}
+			if i <= j {
+				a[i], a[j] = a[j], a[i]
+				i++
+				j--
+			}
+		}
+		switch {
+		case k <= j:
+			hi = j
+		case k >= i:
+			lo = i
+		default:
+			return a[k]
+		}
+	}
+	return a[k]
 }
 
 // Samples evaluates the graph in the first n trials and gives the wanted slots' values, per trial. The
@@ -108,19 +199,13 @@ func (g *Graph) Samples(v []scoring.Value, drawn []Drawn, want []int, n int) [][
 		n = min(n, len(d.Values))
 	}
 	hot := g.dependents(leafSlots)
-	work := slices.Clone(v)
+	work := g.bench(v)
 	out := make([][]scoring.Value, n)
-	var buf [16]scoring.Value
 	for t := range n {
-		for _, d := range drawn {
-			work[d.Slot] = scoring.Num(d.Values[t])
-		}
-		for _, i := range hot {
-			work[len(g.leaves)+i] = g.eval(i, work, buf[:0])
-		}
+		work.trial(g, drawn, hot, t)
 		row := make([]scoring.Value, len(want))
 		for i, s := range want {
-			row[i] = work[s]
+			row[i] = work.value(s)
 		}
 		out[t] = row
 	}

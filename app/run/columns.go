@@ -1,0 +1,128 @@
+package run
+
+import (
+	"slices"
+	"strings"
+
+	"groundtally/scoring"
+)
+
+// Columns hold the consequences and facts of one plant option: one column a key, one row a site. They take
+// about a quarter of the memory that a struct for each consequence would, so that a hundred thousand
+// parcels fit. Texts that repeat (reasons, notices, sources) are kept once.
+type Columns struct {
+	keys  []KeyInfo
+	at    map[string]int
+	facts []string
+	rows  int
+
+	state, rng   []uint8 // key-major, as all that follow
+	central, low []float64
+	high, median []float64
+	why, quality []uint32
+	notices      []uint32
+	filled       []bool
+
+	factState []uint8
+	factX     []float64
+	factWhy   []uint32
+	factFrom  []uint32
+	hasFacts  []bool // by row
+
+	texts texts
+}
+
+// texts keeps each text once; 0 is the empty one.
+type texts struct {
+	list []string
+	at   map[string]uint32
+}
+
+func (t *texts) put(s string) uint32 {
+	if s == "" {
+		return 0
+	}
+	if i, ok := t.at[s]; ok {
+		return i
+	}
+	if t.at == nil {
+		t.at = map[string]uint32{}
+		t.list = []string{""}
+	}
+	i := uint32(len(t.list))
+	t.list = append(t.list, s)
+	t.at[s] = i
+	return i
+}
+
+func (t *texts) get(i uint32) string {
+	if i == 0 {
+		return ""
+	}
+	return t.list[i]
+}
+
+var ranges = []scoring.Range{"", scoring.NoRange, scoring.P10P90, scoring.Bounds, scoring.Corners, scoring.LayerTolerance}
+
+func newColumns(keys []KeyInfo, facts []string, rows int) *Columns {
+	n, m := len(keys)*rows, len(facts)*rows
+	c := &Columns{keys: keys, facts: facts, rows: rows, at: make(map[string]int, len(keys)),
+		state: make([]uint8, n), rng: make([]uint8, n), central: make([]float64, n), low: make([]float64, n), high: make([]float64, n), median: make([]float64, n),
+		why: make([]uint32, n), quality: make([]uint32, n), notices: make([]uint32, n), filled: make([]bool, n),
+		factState: make([]uint8, m), factX: make([]float64, m), factWhy: make([]uint32, m), factFrom: make([]uint32, m), hasFacts: make([]bool, rows)}
+	for i, k := range keys {
+		c.at[k.Key] = i
+	}
+	return c
+}
+
+// put writes the consequences and facts of a row.
+func (c *Columns) put(row int, qs []scoring.Consequence, leaves []Leaf) {
+	for _, q := range qs {
+		k, ok := c.at[q.Key]
+		if !ok {
+			continue
+		}
+		i := k*c.rows + row
+		c.filled[i] = true
+		c.state[i], c.rng[i] = uint8(q.State), uint8(max(0, slices.Index(ranges, q.Range)))
+		c.central[i], c.low[i], c.high[i], c.median[i] = q.Central, q.Low, q.High, q.Median
+		c.why[i], c.quality[i], c.notices[i] = c.texts.put(q.Why), c.texts.put(q.Quality), c.texts.put(strings.Join(q.Notices, ","))
+	}
+	if len(leaves) != len(c.facts) {
+		return
+	}
+	c.hasFacts[row] = true
+	for f, l := range leaves {
+		i := f*c.rows + row
+		c.factState[i], c.factX[i], c.factWhy[i], c.factFrom[i] = uint8(l.State), l.X, c.texts.put(l.Why), c.texts.put(l.Source)
+	}
+}
+
+// consequence gives the view of one cell; ok is false when the row has no such consequence.
+func (c *Columns) consequence(row, key int) (scoring.Consequence, bool) {
+	i := key*c.rows + row
+	if !c.filled[i] {
+		return scoring.Consequence{}, false
+	}
+	k := c.keys[key]
+	q := scoring.Consequence{Key: k.Key, Account: k.Account, Unit: k.Unit, State: scoring.State(c.state[i]), Range: ranges[c.rng[i]],
+		Central: c.central[i], Low: c.low[i], High: c.high[i], Median: c.median[i], Why: c.texts.get(c.why[i]), Quality: c.texts.get(c.quality[i])}
+	if n := c.texts.get(c.notices[i]); n != "" {
+		q.Notices = strings.Split(n, ",")
+	}
+	return q, true
+}
+
+// leaves gives the facts of a row; nil when it has none.
+func (c *Columns) leaves(row int) []Leaf {
+	if !c.hasFacts[row] {
+		return nil
+	}
+	out := make([]Leaf, len(c.facts))
+	for f, name := range c.facts {
+		i := f*c.rows + row
+		out[f] = Leaf{Name: name, State: scoring.State(c.factState[i]), X: c.factX[i], Why: c.texts.get(c.factWhy[i]), Source: c.texts.get(c.factFrom[i])}
+	}
+	return out
+}
