@@ -213,10 +213,7 @@ func (k *reckoner) key(w *world) string {
 			}
 		}
 	}
-	for _, family := range sortedNames(w.p.Dates) {
-		h.text(family)
-		h.text(w.p.Dates[family])
-	}
+	h.text(w.p.Digest)
 	return h.sum()
 }
 
@@ -302,7 +299,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	}
 	k.fill(c, v, spreads, k.leafNotices(r, l))
 	for _, name := range k.p.facts {
-		c.Leaves = append(c.Leaves, Leaf{Name: name, State: f[name].v.State, X: f[name].v.X, Why: f[name].v.Why, Source: f[name].source})
+		c.Facts = append(c.Facts, Leaf{Name: name, State: f[name].v.State, X: f[name].v.X, Why: f[name].v.Why, Source: f[name].source})
 	}
 	if c.Fit, err = w.fitView(r, track); err != nil {
 		return nil, err
@@ -705,6 +702,14 @@ func (r *runner) candidates(ctx context.Context, fr *fitter, fitKeys map[string]
 	}
 	r.keep("candidate", all)
 	r.count("candidate", todo, len(list)-todo)
+	perOption := map[string]*Columns{}
+	for i := range out {
+		o := list[i].o.id
+		if perOption[o] == nil {
+			perOption[o] = newColumns(k.keys, k.p.facts, len(w.sites))
+		}
+		out[i].toColumns(perOption[o], list[i].s)
+	}
 	limits := limitsOf(w.snap, k.keys)
 	for i := range out {
 		out[i].Gates = w.gates(w.sites[list[i].s])
@@ -741,8 +746,9 @@ func overLimit(limits map[string]limit, c *Candidate) []string {
 		return nil
 	}
 	var out []string
-	for _, q := range c.Consequences {
-		l, ok := limits[q.Key]
+	for _, key := range sortedNames(limits) {
+		l := limits[key]
+		q, ok := c.Consequence(key)
 		if !ok {
 			continue
 		}

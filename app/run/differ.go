@@ -61,11 +61,12 @@ func differCandidate(a, b *Candidate) *Difference {
 	if a.Fit != nil && b.Fit != nil && len(a.Fit.Turbines) != len(b.Fit.Turbines) {
 		return &Difference{Where: at + ", number of turbines", Old: fmt.Sprint(len(a.Fit.Turbines)), New: fmt.Sprint(len(b.Fit.Turbines))}
 	}
-	if len(a.Consequences) != len(b.Consequences) {
-		return &Difference{Where: at + ", number of consequences", Old: fmt.Sprint(len(a.Consequences)), New: fmt.Sprint(len(b.Consequences))}
+	as, bs := a.All(), b.All()
+	if len(as) != len(bs) {
+		return &Difference{Where: at + ", number of consequences", Old: fmt.Sprint(len(as)), New: fmt.Sprint(len(bs))}
 	}
-	for i, q := range a.Consequences {
-		p := b.Consequences[i]
+	for i, q := range as {
+		p := bs[i]
 		if q.Key != p.Key || q.State != p.State || q.Why != p.Why {
 			return &Difference{Where: at + ", " + q.Key, Old: q.State.String() + " " + q.Why, New: p.Key + " " + p.State.String() + " " + p.Why}
 		}

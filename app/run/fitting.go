@@ -132,6 +132,7 @@ func (f *fitter) key(o option, s site, ground []string) string {
 	for _, g := range ground {
 		k.text(g)
 	}
+	k.text(f.w.p.Digest)
 	k.text(o.id)
 	names := make([]string, 0, len(o.settings))
 	for n := range o.settings {

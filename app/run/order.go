@@ -361,7 +361,7 @@ func (d *draws) ready(ctx context.Context, k *reckoner, cs []Candidate, which []
 // vector rebuilds the central values of a candidate.
 func (k *reckoner) vector(c *Candidate) []scoring.Value {
 	v := slices.Clone(k.central)
-	for _, l := range c.Leaves {
+	for _, l := range c.Leaves() {
 		if slot, ok := k.p.Graph.Slot(l.Name); ok {
 			v[slot] = scoring.Value{State: l.State, X: l.X, Why: l.Why}
 		}
@@ -373,7 +373,7 @@ func (k *reckoner) vector(c *Candidate) []scoring.Value {
 // sigmas brings back what siteDraws reads of a fit.
 func sigmas(c *Candidate) fitResult {
 	var r fitResult
-	for _, l := range c.Leaves {
+	for _, l := range c.Leaves() {
 		switch l.Name {
 		case "wind_yield_sigma":
 			r.WindSigma = l.X

@@ -32,6 +32,7 @@ type Params struct {
 	Grid     *grid.Model
 	Soil     *land.SoilTable
 	Graph    *reckon.Graph
+	Digest   string // of the shipped parameter files and keys; a new edition makes stored results stale
 
 	keys    []criteria.Criterion
 	facts   []string         // leaf names given by fitting, connecting and measuring
@@ -126,7 +127,12 @@ func Quantities() []scoring.Quantity {
 // LoadParams reads the shipped parameters and builds the graph.
 func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 	p := &Params{Factors: map[string]params.Factor{}, Dates: map[string]string{}, keys: cat.Criteria}
-	inv, err := params.OpenTable(fsys, "params", "inventory", "")
+	var err error
+	if p.Digest, err = fileDigest(fsys); err != nil {
+		return nil, err
+	}
+	var inv *citedtable.Table
+	inv, err = params.OpenTable(fsys, "params", "inventory", "")
 	if err != nil {
 		return nil, err
 	}
@@ -240,6 +246,31 @@ func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 		p.reaches[k.Key] = p.Graph.Reaches(k.Key)
 	}
 	return p, nil
+}
+
+// fileDigest gives the digest of all shipped parameter files and of the keys with their anchors. The
+// definitions of settings do not belong to it: their values are inputs of their own.
+func fileDigest(fsys fs.FS) (string, error) {
+	entries, err := fs.ReadDir(fsys, "params")
+	if err != nil {
+		return "", err
+	}
+	k := newKey("parameter files", 1)
+	names := []string{"words/keys.csv"}
+	for _, e := range entries { // sorted by name
+		if e.Name() != "settings.csv" {
+			names = append(names, "params/"+e.Name())
+		}
+	}
+	for _, n := range names {
+		b, err := fs.ReadFile(fsys, n)
+		if err != nil {
+			return "", err
+		}
+		k.text(n)
+		k.text(string(b))
+	}
+	return k.sum(), nil
 }
 
 func gridModel(fsys fs.FS) (*grid.Model, error) {

@@ -219,10 +219,10 @@ func TestResultsHold(t *testing.T) {
 		if c.Status != Fitted {
 			continue
 		}
-		if len(c.Consequences) != len(p.Keys()) {
-			t.Fatalf("%s has %d consequences, want all %d", c.ID(), len(c.Consequences), len(p.Keys()))
+		if len(c.All()) != len(p.Keys()) {
+			t.Fatalf("%s has %d consequences, want all %d", c.ID(), len(c.All()), len(p.Keys()))
 		}
-		for _, q := range c.Consequences {
+		for _, q := range c.All() {
 			states[q.State]++
 			for _, x := range []float64{q.Low, q.Central, q.High, q.Median} {
 				if math.IsNaN(x) || math.IsInf(x, 0) {

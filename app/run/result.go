@@ -1,6 +1,8 @@
 package run
 
 import (
+	"encoding/json"
+
 	"groundtally/geo"
 	"groundtally/scoring"
 )
@@ -106,9 +108,48 @@ type Candidate struct {
 	Miss          *Nearest              `json:"nearest_miss,omitempty"`
 	Connection    *Connection           `json:"connection,omitempty"`
 	Chain         []ChainStep           `json:"chain,omitempty"`
-	Leaves        []Leaf                `json:"leaves,omitempty"`
+	Facts         []Leaf                `json:"leaves,omitempty"`
 	OverLimit     []string              `json:"over_limit,omitempty"`
 	Notices       []string              `json:"notices"` // codes
+
+	columns *Columns // once among results, consequences and facts lie in columns; see All and Leaves
+	row     int
+}
+
+// toColumns moves the consequences and facts into columns.
+func (c *Candidate) toColumns(cols *Columns, row int) {
+	cols.put(row, c.Consequences, c.Facts)
+	c.columns, c.row, c.Consequences, c.Facts = cols, row, nil, nil
+}
+
+// All gives every consequence, in the order of the keys.
+func (c *Candidate) All() []scoring.Consequence {
+	if c.columns == nil {
+		return c.Consequences
+	}
+	var out []scoring.Consequence
+	for k := range c.columns.keys {
+		if q, ok := c.columns.consequence(c.row, k); ok {
+			out = append(out, q)
+		}
+	}
+	return out
+}
+
+// Leaves gives the facts that the reckoning of the candidate stands on; none without a fitted plant.
+func (c *Candidate) Leaves() []Leaf {
+	if c.columns == nil {
+		return c.Facts
+	}
+	return c.columns.leaves(c.row)
+}
+
+// MarshalJSON writes the candidate with its consequences and facts, wherever they lie.
+func (c Candidate) MarshalJSON() ([]byte, error) {
+	type plain Candidate
+	p := plain(c)
+	p.Consequences, p.Facts = c.All(), c.Leaves()
+	return json.Marshal(p)
 }
 
 // ID names a candidate.
@@ -116,6 +157,12 @@ func (c *Candidate) ID() string { return c.Site + "/" + c.Plant }
 
 // Consequence finds a consequence by key.
 func (c *Candidate) Consequence(key string) (scoring.Consequence, bool) {
+	if c.columns != nil {
+		if k, ok := c.columns.at[key]; ok {
+			return c.columns.consequence(c.row, k)
+		}
+		return scoring.Consequence{}, false
+	}
 	for _, q := range c.Consequences {
 		if q.Key == key {
 			return q, true
@@ -158,8 +205,9 @@ func ConsequenceJSON(c scoring.Consequence) map[string]any {
 
 // PublicJSON gives the candidate as terminal and appendix write it.
 func (c *Candidate) PublicJSON() map[string]any {
-	cons := make(map[string]any, len(c.Consequences))
-	for _, q := range c.Consequences {
+	all := c.All()
+	cons := make(map[string]any, len(all))
+	for _, q := range all {
 		cons[q.Key] = ConsequenceJSON(q)
 	}
 	m := map[string]any{

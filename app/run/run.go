@@ -108,7 +108,7 @@ func (r *Results) code(snap *study.Snapshot, p *Params, digests []digest) error 
 		Params   map[string]string
 		Factors  string
 		Editions map[string]int
-	}{Groups: snap.Groups, Frame: snap.Frame, Params: p.Dates, Factors: p.digest(), Editions: Editions()}
+	}{Groups: snap.Groups, Frame: snap.Frame, Params: p.Dates, Factors: p.Digest, Editions: Editions()}
 	for _, key := range snap.Keys() {
 		if s, _, ok := snap.Lookup(key); ok {
 			in.Settings = append(in.Settings, setting{key, s.Value, s.Unit})
@@ -182,33 +182,6 @@ func (r *Results) digest(candidates []digest) string {
 func sha(b []byte) string {
 	h := sha256.Sum256(b)
 	return hex.EncodeToString(h[:])
-}
-
-// digest gives the digest of the shipped factors and turbine curves.
-func (p *Params) digest() string {
-	k := newKey("params", 1)
-	for _, id := range sortedNames(p.Factors) {
-		f := p.Factors[id]
-		k.text(id)
-		k.num(f.Low)
-		k.num(f.Central)
-		k.num(f.High)
-		k.text(string(f.Dist))
-		k.text(f.Group)
-	}
-	for _, t := range p.Turbines {
-		k.text(t.ID)
-		for _, c := range t.Curve.Points() {
-			k.num(c.SpeedMPerS)
-			k.num(c.PowerKW)
-			k.num(c.Ct)
-		}
-	}
-	for _, d := range p.Solar.All() {
-		k.text(d.Name)
-		k.num(d.Central)
-	}
-	return k.sum()
 }
 
 // Find gives a candidate by site and option.

@@ -50,7 +50,7 @@ func Unfold(p *Params, snap *study.Snapshot, c *Candidate, key string) (*Unfoldi
 	}
 	v := k.vector(c)
 	leaves := map[string]Leaf{}
-	for _, l := range c.Leaves {
+	for _, l := range c.Leaves() {
 		leaves[l.Name] = l
 	}
 	var open func(name string) (*Unfolding, error)
