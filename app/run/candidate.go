@@ -50,6 +50,7 @@ func (w *world) newReckoner() (*reckoner, error) {
 	}
 	k.trials = int(n)
 	g := w.p.Graph
+	groups := map[string][]float64{} // the draws that all factors of a group share
 	k.central = make([]scoring.Value, g.Size())
 	needed := map[int]bool{}
 	for _, key := range k.keys {
@@ -71,8 +72,19 @@ func (w *world) newReckoner() (*reckoner, error) {
 			continue
 		}
 		d := reckon.Drawn{Slot: slot, Values: make([]float64, k.trials)}
-		for t := range d.Values {
-			d.Values[t] = f.Draw(k.seed, t)
+		group := f.Group
+		if group == "" {
+			group = f.ID
+		}
+		if groups[group] == nil {
+			u := make([]float64, k.trials)
+			for t := range u {
+				u[t] = params.Draw(k.seed, group, t)
+			}
+			groups[group] = stratify(u)
+		}
+		for t, u := range groups[group] {
+			d.Values[t] = f.Quantile(u)
 		}
 		k.drawn = append(k.drawn, d)
 	}
@@ -177,7 +189,9 @@ func (w *world) demand() (mwh float64, source string, ok bool) {
 		sum := 0.0
 		for _, f := range t.Features {
 			if x, ok := f.Values[c].Float(); ok {
-				sum += x
+				if y, err := units.Convert(x, unitOr(rec.Units[rec.Match["energy"]], "MWh/yr"), "MWh/yr"); err == nil {
+					sum += y
+				}
 			}
 		}
 		return sum, rec.Name, sum > 0
@@ -192,6 +206,7 @@ func (k *reckoner) key(w *world) string {
 		if l.Role == "parcels" || l.Role == "wind_resource" || l.Role == "place_names" || l.Role == "backdrop" {
 			continue
 		}
+		h.text(l.Name) // stands in the sources
 		h.text(l.Role)
 		h.text(l.Digest)
 		h.text(fmt.Sprint(l.Complete))
@@ -209,6 +224,7 @@ func (k *reckoner) key(w *world) string {
 				if s, _, in := w.snap.Lookup(key); in {
 					h.text(key)
 					h.text(s.Value)
+					h.text(s.Reason)
 				}
 			}
 		}
@@ -267,8 +283,12 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 	}
 	fitFacts(o, r, f)
-	track := w.trackKm(r, f["road_m"].v)
-	f.num("track_km", track, "rule of thumb: shortest tree × detour")
+	track, counted, err := w.tracks(r, f["road_m"].v)
+	if err != nil {
+		return nil, err
+	}
+	f.set("track_km", track, "rule of thumb: shortest tree × detour")
+	f.num("track_counted_km", counted, "rule of thumb")
 	l, err := w.connect(fr, o, s, r, assets)
 	if err != nil {
 		return nil, err
@@ -301,7 +321,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	for _, name := range k.p.facts {
 		c.Facts = append(c.Facts, Leaf{Name: name, State: f[name].v.State, X: f[name].v.X, Why: f[name].v.Why, Source: f[name].source})
 	}
-	if c.Fit, err = w.fitView(r, track); err != nil {
+	if c.Fit, err = w.fitView(r, counted); err != nil {
 		return nil, err
 	}
 	return c, nil
@@ -357,7 +377,7 @@ func fitFacts(o option, r fitResult, f facts) {
 	f.num("turbines", n, fitted)
 	f.num("turbine_count", n, fitted)
 	f.num("fence_ha", r.FenceHa, fitted)
-	f.num("footprint_total_ha", r.TotalHa, fitted)
+	f.num("plant_ground_ha", r.TotalHa, fitted)
 	f.set("wind_p50_mwh", energy(r.WindMWh), "wind yield")
 	f.set("solar_p50_mwh", energy(r.SolarMWh), "solar yield")
 	f.num("wind_yield_sigma", r.WindSigma, "root sum of squares")
@@ -411,6 +431,9 @@ func linkFacts(l link, f facts) {
 	f.num("connection_straight_km", l.conn.StraightKm, src)
 	f.num("connection_route_km", l.best.RouteKm.Central, src)
 	f.num("connection_route_loss_frac", l.best.LossFrac.Central, "conductor "+l.conn.Conductor)
+	if l.energyWhy != "" {
+		f.set("connection_route_loss_frac", scoring.UnknownBecause(l.energyWhy), "")
+	}
 	f.num("connection_route_rise_frac", l.best.RiseFrac, "conductor "+l.conn.Conductor)
 	f.num("circuits_lv", l.circ[0], src)
 	f.num("circuits_mv", l.circ[1], src)
@@ -433,6 +456,22 @@ func linkFacts(l link, f facts) {
 	}
 }
 
+// stratify keeps the order of draws and spreads their values evenly: the k-th smallest of n becomes
+// (k+½)/n (Latin hypercube sampling, McKay, Beckman & Conover 1979), so that percentiles of few trials are
+// steady.
+func stratify(u []float64) []float64 {
+	at := make([]int, len(u))
+	for i := range at {
+		at[i] = i
+	}
+	sort.SliceStable(at, func(i, j int) bool { return u[at[i]] < u[at[j]] })
+	out := make([]float64, len(u))
+	for k, i := range at {
+		out[i] = (float64(k) + 0.5) / float64(len(u))
+	}
+	return out
+}
+
 // siteDraws draws the yield errors of a site: normal around 1, cut at zero. Options of one technology on
 // one site share their draw, because they share the wind or the sun.
 func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
@@ -441,14 +480,18 @@ func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
 		leaf  string
 		sigma float64
 		on    bool
-	}{{"wind_yield_error", r.WindSigma, r.WindKW > 0}, {"solar_yield_error", r.SolarSigma, r.SolarKW > 0}} {
+	}{{"wind_yield_error", r.WindLong, r.WindKW > 0}, {"solar_yield_error", r.SolarLong, r.SolarKW > 0}} {
 		if !d.on || d.sigma == 0 {
 			continue
 		}
 		slot, _ := k.p.Graph.Slot(d.leaf)
-		v := make([]float64, k.trials)
+		u := make([]float64, k.trials)
+		for t := range u {
+			u[t] = params.DrawSite(k.seed, site, d.leaf, t)
+		}
+		v := stratify(u)
 		for t := range v {
-			z := math.Sqrt2 * math.Erfinv(2*params.DrawSite(k.seed, site, d.leaf, t)-1)
+			z := math.Sqrt2 * math.Erfinv(2*v[t]-1)
 			v[t] = math.Max(0, 1+float64(d.sigma*z))
 		}
 		out = append(out, reckon.Drawn{Slot: slot, Values: v})
@@ -475,6 +518,7 @@ func (k *reckoner) leafNotices(r fitResult, l link) map[int][]string {
 			out[slot] = append(out[slot], "memory_parameter")
 		}
 	}
+	put("track_counted_km", "tracks_rule")
 	put("track_km", "tracks_rule")
 	put("detour_ratio", "route_straight")
 	if l.ok && !l.asset.spare.Known {
@@ -508,7 +552,7 @@ func (k *reckoner) fill(c *Candidate, v []scoring.Value, spreads []reckon.Spread
 		if spread[i] < 0 {
 			q.State = scoring.NotAssessed
 			if reason, ok := noneFor(key, c.Technology); ok {
-				q.State, q.Why = scoring.None, reason
+				q.State, q.Why = notHere(key), reason
 			}
 			c.Consequences = append(c.Consequences, q)
 			continue
@@ -523,12 +567,17 @@ func (k *reckoner) fill(c *Candidate, v []scoring.Value, spreads []reckon.Spread
 			}
 		}
 		if reason, ok := noneFor(key, c.Technology); ok && val.State != scoring.Number {
-			q.State, q.Why = scoring.None, reason
+			q.State, q.Why = notHere(key), reason
 		}
 		if q.State == scoring.Number {
 			q.Central, q.Low, q.High, q.Median, q.Range = val.X, val.X, val.X, val.X, scoring.NoRange
 			if s := spreads[spread[i]]; s.Moves && s.Numbers > 0 {
 				q.Low, q.High, q.Median, q.Range = s.Low, s.High, s.Median, scoring.P10P90
+				if q.Central < q.Low || q.Central > q.High {
+					// A factor whose likeliest value is an end of its range can do this.
+					q.Low, q.High = math.Min(q.Low, q.Central), math.Max(q.High, q.Central)
+					codes["central_outside"] = true
+				}
 				if s.Nevers > 0 {
 					codes["may_never"] = true
 				}
@@ -553,6 +602,15 @@ func quality(codes map[string]bool, reach []int, p *Params) string {
 		return "measured"
 	}
 	return "computed"
+}
+
+// notHere gives the state of a key that does not belong to a technology: none where there is no such
+// effect, not assessed where the figure is merely not used.
+func notHere(key KeyInfo) scoring.State {
+	if strings.HasPrefix(key.NotApplicable, "none: ") {
+		return scoring.None
+	}
+	return scoring.NotAssessed
 }
 
 // noneFor gives the reason why a key does not arise for a technology.
@@ -617,9 +675,8 @@ func (r *runner) candidates(ctx context.Context, fr *fitter, fitKeys map[string]
 			h.text(common)
 			h.text(fitKeys[o.id][i])
 			for _, part := range o.parts() {
-				for _, n := range r.sets[o.id+"/"+part].incomplete {
-					h.text(n)
-				}
+				h.texts(r.sets[o.id+"/"+part].incomplete)
+				h.texts(r.sets[o.id+"/"+part].notApplied)
 			}
 			for _, n := range legalNotSet(w.snap, o) {
 				h.text(n)
@@ -651,7 +708,10 @@ func (r *runner) candidates(ctx context.Context, fr *fitter, fitKeys map[string]
 	digests := make([]digest, len(list))
 	fresh := make([][]byte, len(list))
 	err = forEach(ctx, r.cores, len(sites), openEngine, closeEngine, func(e *overlay.Engine, n int) error {
-		around := w.newPieces(w.sites[sites[n]])
+		around, err := w.newPieces(e, w.sites[sites[n]])
+		if err != nil {
+			return err
+		}
 		for _, i := range bySite[sites[n]] {
 			j := list[i]
 			grounds := map[string]groundResult{}

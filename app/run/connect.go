@@ -8,6 +8,7 @@ import (
 	"groundtally/geo"
 	"groundtally/geo/measure"
 	"groundtally/scoring/grid"
+	"groundtally/scoring/solar"
 	"groundtally/scoring/units"
 	"groundtally/scoring/wind"
 )
@@ -42,9 +43,11 @@ func (w *world) assets() []asset {
 				if x, ok := l.number(i, "spare_capacity", "kW"); ok {
 					a.spare = grid.Known(x)
 				}
-				if x, ok := w.snap.Number("grid.typed_spare_" + settingName(f.ID) + "_kw"); ok {
+				typed := "grid.typed_spare_" + settingName(l.rec.Name+"/"+f.ID) + "_kw"
+				if x, ok := w.snap.Number(typed); ok {
 					a.spare = grid.Known(x)
-					if s, _, _ := w.snap.Lookup("grid.typed_spare_" + settingName(f.ID) + "_kw"); s.Reason != "" {
+					a.toldBy, a.toldOn = "", ""
+					if s, _, _ := w.snap.Lookup(typed); s.Reason != "" {
 						a.toldBy = s.Reason
 					}
 				}
@@ -103,29 +106,42 @@ func (w *world) gridSettingsKey(k *keyer) {
 			if s, _, in := w.snap.Lookup(key); in {
 				k.text(key)
 				k.text(s.Value)
+				k.text(s.Reason) // by whom a spare capacity was told
 			}
 		}
 	}
 }
 
 // spareFor gives the spare capacity of the nearest line or substation with a known one, for fitting up
-// to it.
-func (w *world) spareFor(s site) (kw float64, known bool, why string) {
+// to it, cut to the agreed export limit.
+func (w *world) spareFor(s site) (kw float64, asset string, known bool) {
 	c := s.box.Centre()
 	best := math.Inf(1)
 	for _, a := range w.assets() {
-		if !a.spare.Known {
+		if !a.spare.Known || !a.kv.Known {
 			continue
 		}
-		if _, d := measure.NearestOnOutline(c, a.layer.xy[a.feature]); d < best {
-			best, kw, known = d, a.spare.Value, true
+		if d := a.distM(c); d < best {
+			best, kw, asset, known = d, a.spare.Value, a.id, true
 		}
 	}
-	if !known {
-		return 0, false, "spare_unknown"
+	if x, ok := w.snap.Number("grid.export_limit_kw"); ok {
+		kw = math.Min(kw, x)
 	}
-	return kw, true, ""
+	return kw, asset, known
 }
+
+// nearest gives the place of the asset nearest to a point.
+func (a asset) nearest(from geo.XY) geo.XY {
+	g := a.layer.xy[a.feature]
+	if g.Kind == geo.Points {
+		return g.Parts[0][0][0]
+	}
+	p, _ := measure.NearestOnOutline(from, g)
+	return p
+}
+
+func (a asset) distM(from geo.XY) float64 { return from.Dist(a.nearest(from)) }
 
 // link is the outcome of connecting a candidate.
 type link struct {
@@ -139,6 +155,8 @@ type link struct {
 	gear   float64
 	share  float64 // of the energy above what may flow
 	shareK bool
+
+	energyWhy string // why the yield, and with it the loss, is unknown; empty when it is known
 }
 
 // connect assesses every line and substation and chooses one.
@@ -148,39 +166,47 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 		out.why = "no_layer:grid_lines|substations"
 		return out, nil
 	}
-	energy := r.WindMWh.MWh + r.SolarMWh.MWh
-	if r.WindMWh.Why != "" || r.SolarMWh.Why != "" {
-		out.why = r.WindMWh.Why + r.SolarMWh.Why
-		return out, nil
+	energy, energyWhy := r.WindMWh.MWh+r.SolarMWh.MWh, r.WindMWh.Why
+	if energyWhy == "" {
+		energyWhy = r.SolarMWh.Why
+	}
+	if r.SpareAsset != "" {
+		// A plant fitted to one asset's spare capacity is connected there.
+		var one []asset
+		for _, a := range assets {
+			if a.id == r.SpareAsset {
+				one = append(one, a)
+			}
+		}
+		assets = one
 	}
 	ac := r.WindKW + r.SolarACKW
 	plant := ac
-	if x, ok := w.snap.Number("grid.export_limit_kw"); ok {
+	if x, ok := w.snap.Number("grid.export_limit_kw"); ok && x > 0 {
 		plant = math.Min(plant, x)
 	}
 	from := terminal(r)
-	list := make([]grid.Assessment, len(assets))
-	nearest := make([]geo.XY, len(assets))
-	for i, a := range assets {
-		g := a.layer.xy[a.feature]
-		p, d := measure.NearestOnOutline(from, g)
-		if g.Kind == geo.Points {
-			p = g.Parts[0][0][0]
-			d = from.Dist(p)
-		}
-		nearest[i] = p
+	assess := func(a asset, plantKW, lostShare float64) (grid.Assessment, error) {
 		in := grid.AssessInput{ID: fmt.Sprintf("%s at %g kV", a.id, a.kv.Value), Kind: a.kind, VoltageKV: a.kv, TapAllowed: a.tap, Spare: a.spare, ShortCircuitMVA: a.sk,
-			StraightM: math.Max(d, 1), PlantKW: plant, Technology: o.technology, LoadFactor: math.Min(1, energy*units.KWhPerMWh/(plant*units.HoursPerYear))}
+			StraightM: math.Max(a.distM(from), 1), PlantKW: plantKW, Technology: o.technology}
+		in.LoadFactor = typicalLoadFactor
+		if energyWhy == "" {
+			in.LoadFactor = math.Min(1, energy*(1-lostShare)*units.KWhPerMWh/(plantKW*units.HoursPerYear))
+		}
 		if o.technology == "wind_solar" {
 			in.Technology = "wind" // the greater weight, so the loss is not understated
 		}
-		if s, byUser, _ := w.snap.Lookup("grid.voltage_rise_limit_frac"); byUser {
-			if x, ok := w.snap.Number("grid.voltage_rise_limit_frac"); ok && s.Value != "" {
+		if _, byUser, _ := w.snap.Lookup("grid.voltage_rise_limit_frac"); byUser {
+			if x, ok := w.snap.Number("grid.voltage_rise_limit_frac"); ok {
 				in.RiseLimit = grid.Known(x)
 			}
 		}
+		return w.p.Grid.Assess(in)
+	}
+	list := make([]grid.Assessment, len(assets))
+	for i, a := range assets {
 		var err error
-		if list[i], err = w.p.Grid.Assess(in); err != nil {
+		if list[i], err = assess(a, plant, 0); err != nil {
 			return out, fmt.Errorf("site %s, option %s, %s: %w", s.id, o.id, a.id, err)
 		}
 	}
@@ -190,10 +216,29 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 		return out, nil
 	}
 	b, a := list[choice.Picked], assets[choice.Picked]
-	out.ok, out.best, out.asset = true, b, a
+	var err error
+	if out.share, out.shareK, err = w.aboveLimit(f, o, s, r, ac, a); err != nil {
+		return out, err
+	}
+	if out.shareK && out.share > 0 && a.spare.Known && a.spare.Value < plant && a.spare.Value > 0 {
+		// What really flows is the spare capacity; the status stays that of the whole plant.
+		limited, err := assess(a, a.spare.Value, out.share)
+		if err != nil {
+			return out, fmt.Errorf("site %s, option %s, %s: %w", s.id, o.id, a.id, err)
+		}
+		limited.Status, limited.Reason = b.Status, b.Reason
+		b = limited
+	}
+	if !b.Computed {
+		// No conductor is listed for this voltage, so its figures are unknown and not zero.
+		out.why = "no_conductor_listed"
+		return out, nil
+	}
+	out.ok, out.best, out.asset, out.energyWhy = true, b, a, energyWhy
 	c := &Connection{Asset: a.name, Kind: string(a.kind), VoltageKV: b.VoltageKV, Status: string(b.Status), Reason: string(b.Reason), Conductor: b.Conductor.ID, Circuits: b.Circuits,
 		RouteKm: b.RouteKm.Central, ToldBy: a.toldBy, ToldOn: a.toldOn}
-	c.StraightKm = from.Dist(nearest[choice.Picked]) / units.MPerKm
+	to := a.nearest(from)
+	c.StraightKm = from.Dist(to) / units.MPerKm
 	if a.spare.Known {
 		v := a.spare.Value
 		c.SpareKW = &v
@@ -201,11 +246,10 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 	if choice.Unknown >= 0 && choice.Unknown != choice.Picked && list[choice.Unknown].Effort.Central < b.Effort.Central {
 		c.Beside = assets[choice.Unknown].name
 	}
-	var err error
 	if c.From, err = w.frame.Inverse(from); err != nil {
 		return out, err
 	}
-	if c.To, err = w.frame.Inverse(nearest[choice.Picked]); err != nil {
+	if c.To, err = w.frame.Inverse(to); err != nil {
 		return out, err
 	}
 	out.conn = c
@@ -218,13 +262,17 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 	default:
 		out.circ[1] = n
 	}
-	if b.NeedsTransformer {
+	if b.OwnSubstation { // unit transformers at lower voltages belong to the plant itself
 		out.kva = b.TransformerKVA
 	}
-	out.gear = 1
-	out.share, out.shareK, err = w.aboveLimit(f, o, s, r, ac, a)
-	return out, err
+	if b.Level != grid.LV {
+		out.gear = 1
+	}
+	return out, nil
 }
+
+// typicalLoadFactor stands for an unknown yield when a conductor is chosen; the loss stays unknown.
+const typicalLoadFactor = 0.3
 
 // terminal is where the plant's cables meet: the mean of the towers, or the middle of the fence.
 func terminal(r fitResult) geo.XY {
@@ -242,54 +290,98 @@ func terminal(r fitResult) geo.XY {
 	return geo.ExtentOf(r.Fence).Centre()
 }
 
-// aboveLimit gives the share of the energy that lies above what may flow. For wind alone it follows
-// from the distribution of the free wind; otherwise it is the bound 1 − limit/rating for a plant that is
-// either at full power or still.
+// aboveLimit gives the share of the energy that lies above what may flow: spare capacity or agreed limit.
+// It follows from the distributions of the free wind and of the plant's solar hours; a plant of both takes
+// them as independent. There is no hourly file in it.
 func (w *world) aboveLimit(f *fitter, o option, s site, r fitResult, acKW float64, a asset) (share float64, known bool, err error) {
 	limit := acKW
 	if x, ok := w.snap.Number("grid.export_limit_kw"); ok {
 		limit = math.Min(limit, x)
 	}
-	if !a.spare.Known {
-		if limit < acKW {
-			return bound(limit, acKW), true, nil
-		}
+	if a.spare.Known {
+		limit = math.Min(limit, a.spare.Value)
+	} else if limit >= acKW {
 		return 0, false, nil
 	}
-	limit = math.Min(limit, a.spare.Value)
 	if limit >= acKW {
 		return 0, true, nil
 	}
-	if r.SolarKW > 0 {
-		return bound(limit, acKW), true, nil
+	windP, windW, err := f.windDistribution(o, s, r)
+	if err != nil {
+		return 0, false, err
 	}
+	sunP, sunW, err := f.sunDistribution(o, s, r)
+	if err != nil {
+		return 0, false, err
+	}
+	if windP == nil && r.WindKW > 0 || sunP == nil && r.SolarKW > 0 {
+		return 0, false, nil
+	}
+	power, weight := windP, windW
+	switch {
+	case r.WindKW == 0:
+		power, weight = sunP, sunW
+	case r.SolarKW > 0:
+		power, weight = nil, nil
+		for i := range windP {
+			for j := range sunP {
+				power = append(power, windP[i]+sunP[j])
+				weight = append(weight, windW[i]*sunW[j])
+			}
+		}
+	}
+	res, err := grid.LimitedShare(power, weight, math.Max(0, limit))
+	return res.LostFrac, true, err
+}
+
+// windDistribution gives the farm's power over the speeds of the free wind, all machines alike; nil
+// without a resource.
+func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []float64, err error) {
 	p, _, ok := nearestWind(f.wind, s.box.Centre())
-	if !ok {
-		return bound(limit, acKW), true, nil
+	if !ok || r.WindKW == 0 {
+		return nil, nil, nil
 	}
 	d, _ := o.num("rotor_diameter_m")
 	hub, _ := o.num("hub_height_m")
 	rated, _ := o.num("rated_kw")
 	machine, err := f.turbine(o, rated, d)
 	if err != nil {
-		return 0, false, err
+		return nil, nil, err
 	}
 	all, err := wind.CombineSectors(p.sectors)
 	if err != nil {
-		return 0, false, err
+		return nil, nil, err
 	}
-	alpha, _ := w.snap.Number("wind.shear_alpha")
+	alpha, _ := f.w.snap.Number("wind.shear_alpha")
 	if all, err = all.AtHeight(p.heightM, hub, alpha); err != nil {
-		return 0, false, err
+		return nil, nil, err
 	}
-	const step = 0.1 // m/s
-	var power, weight []float64
+	const step = 0.25 // m/s
+	left := 1.0
 	for v := step / 2; v < machine.Curve.Last(); v += step {
-		power = append(power, machine.Curve.PowerKW(v))
-		weight = append(weight, all.CDF(v+step/2)-all.CDF(v-step/2))
+		share = append(share, all.CDF(v+step/2)-all.CDF(v-step/2))
+		kw = append(kw, machine.Curve.PowerKW(v)*r.WindKW/rated)
+		left -= share[len(share)-1]
 	}
-	res, err := grid.LimitedShare(power, weight, rated*limit/acKW)
-	return res.LostFrac, true, err
+	return append(kw, 0), append(share, math.Max(0, left)), nil
 }
 
-func bound(limit, rating float64) float64 { return math.Max(0, 1-limit/rating) }
+// sunDistribution gives the panels' power over the hours of the year; nil without a resource.
+func (f *fitter) sunDistribution(o option, s site, r fitResult) (kw, share []float64, err error) {
+	if f.sun == nil || r.SolarKW == 0 {
+		return nil, nil, nil
+	}
+	lat, err := f.siteLat(s)
+	if err != nil {
+		return nil, nil, err
+	}
+	left := 1.0
+	for b, h := range f.yields[yieldKey(o, lat)].PowerHours {
+		if h > 0 {
+			kw = append(kw, (float64(b)+0.5)/solar.PowerBins*r.SolarACKW)
+			share = append(share, h/units.HoursPerYear)
+			left -= h / units.HoursPerYear
+		}
+	}
+	return append(kw, 0), append(share, math.Max(0, left)), nil
+}

@@ -100,9 +100,10 @@ func (w *world) nearestM(e *overlay.Engine, r fitResult, role string, keep func(
 
 // pieces are the parts of a role's features around one site. The options of a site share them.
 type pieces struct {
-	w    *world
-	box  geo.Extent
-	made map[string][]piece
+	w      *world
+	box    geo.Extent
+	made   map[string][]piece
+	inside bool // the site lies in the district, or there is none
 }
 
 type piece struct {
@@ -115,9 +116,40 @@ type piece struct {
 // siteMarginM is how far a plant's ground may reach over its site's box: a pad around a tower.
 const siteMarginM = 100
 
-func (w *world) newPieces(s site) *pieces {
+func (w *world) newPieces(e *overlay.Engine, s site) (*pieces, error) {
 	edge, _ := w.snap.Number("land.habitat_edge_m")
-	return &pieces{w: w, box: s.box.Grow(siteMarginM + edge), made: map[string][]piece{}}
+	p := &pieces{w: w, box: s.box.Grow(siteMarginM + edge), made: map[string][]piece{}, inside: true}
+	if len(w.byRole["district"]) == 0 {
+		return p, nil
+	}
+	// A layer that is complete is complete for the district; beyond it, nothing there proves nothing.
+	p.inside = false
+	for _, l := range w.byRole["district"] {
+		for i, g := range l.xy {
+			if l.src.Features[i].Geometry.Kind != geo.Polygons {
+				continue
+			}
+			yes, err := e.Covers(g, middle(s))
+			if err != nil {
+				return nil, err
+			}
+			p.inside = p.inside || yes
+		}
+	}
+	return p, nil
+}
+
+// middle gives a point inside the site's largest part.
+func middle(s site) geo.XYGeometry {
+	best, at := -1.0, s.box.Centre()
+	for _, part := range s.geom.Parts {
+		if a := measure.AreaM2(geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}}); a > best {
+			if p, ok := measure.InteriorPoint(part); ok {
+				best, at = a, p
+			}
+		}
+	}
+	return geo.XYGeometry{Kind: geo.Points, Parts: [][][]geo.XY{{{at}}}}
 }
 
 func (p *pieces) of(e *overlay.Engine, role string) ([]piece, error) {
@@ -146,12 +178,31 @@ func (p *pieces) of(e *overlay.Engine, role string) ([]piece, error) {
 	return out, nil
 }
 
-// overlap lays the plant's ground over the features of a role: the area touched (overlaps counted
-// once), and the sum of each feature's area times a weight.
-func (p *pieces) overlap(e *overlay.Engine, g geo.XYGeometry, role string, weight func(l *layer, i int) float64) (ha, weighted float64, err error) {
+// touch is what lies under a plant's ground in the layers of a role.
+type touch struct {
+	ha      float64 // union of what is touched
+	sumHa   float64 // sum over features, more than ha where they overlap
+	sum     float64 // sum of each feature's area times its number
+	missing bool    // a touched feature lacks its number
+}
+
+// mean gives the mean number of what is touched, overlaps counted as often as they stand.
+func (t touch) mean() float64 {
+	if t.sumHa == 0 {
+		return 0
+	}
+	return t.sum / t.sumHa
+}
+
+// sliverHa is an area below which two layers only share an edge: one square metre.
+const sliverHa = 1e-4
+
+// overlap lays the plant's ground over the features of a role. number gives a feature's number.
+func (p *pieces) overlap(e *overlay.Engine, g geo.XYGeometry, role string, number func(l *layer, i int) (float64, bool)) (touch, error) {
+	var t touch
 	list, err := p.of(e, role)
 	if err != nil {
-		return 0, 0, err
+		return t, err
 	}
 	box := geo.ExtentOf(g)
 	var parts []geo.XYGeometry
@@ -161,32 +212,71 @@ func (p *pieces) overlap(e *overlay.Engine, g geo.XYGeometry, role string, weigh
 		}
 		x, err := e.Intersection(g, q.geom)
 		if err != nil {
-			return 0, 0, err
+			return t, err
 		}
 		if x.Kind != geo.Polygons || x.Empty() {
 			continue
 		}
-		parts = append(parts, x)
-		if weight != nil {
-			weighted += measure.AreaM2(x) / units.M2PerHa * weight(q.layer, q.feature)
+		ha := measure.AreaM2(x) / units.M2PerHa
+		if ha < sliverHa {
+			continue
 		}
+		parts = append(parts, x)
+		if number == nil {
+			continue
+		}
+		v, ok := number(q.layer, q.feature)
+		if !ok {
+			t.missing = true
+			continue
+		}
+		t.sumHa += ha
+		t.sum += float64(ha * v)
 	}
-	if len(parts) == 0 {
-		return 0, 0, nil
-	}
-	if len(parts) == 1 {
-		return measure.AreaM2(parts[0]) / units.M2PerHa, weighted, nil
+	switch len(parts) {
+	case 0:
+		return t, nil
+	case 1:
+		t.ha = measure.AreaM2(parts[0]) / units.M2PerHa
+		return t, nil
 	}
 	u, err := e.Union(parts...)
 	if err != nil {
-		return 0, 0, err
+		return t, err
 	}
-	return measure.AreaM2(u) / units.M2PerHa, weighted, nil
+	t.ha = measure.AreaM2(u) / units.M2PerHa
+	return t, nil
 }
 
-// complete reports whether a layer of the role is declared complete for the place.
-func (w *world) complete(role string) bool {
-	for _, l := range w.byRole[role] {
+// meets reports whether a way comes within half a track's width of any feature of a role.
+func (w *world) meets(way [][2]geo.XY, role string) bool {
+	var buf []int
+	for _, s := range way {
+		n := int(s[0].Dist(s[1])/trackWidthM) + 1
+		box := geo.EmptyExtent().Add(s[0]).Add(s[1]).Grow(trackWidthM / 2)
+		for _, l := range w.byRole[role] {
+			buf = l.tree.Search(box, buf[:0])
+			for _, i := range buf {
+				for k := 0; k <= n; k++ {
+					t := float64(k) / float64(n)
+					p := geo.XY{X: s[0].X + float64(t*(s[1].X-s[0].X)), Y: s[0].Y + float64(t*(s[1].Y-s[0].Y))}
+					if d, ok := measure.PointToM(p, l.xy[i]); ok && d <= trackWidthM/2 {
+						return true
+					}
+				}
+			}
+		}
+	}
+	return false
+}
+
+// complete reports whether a layer of the role is declared complete for the place, and the site lies
+// there.
+func (p *pieces) complete(role string) bool {
+	if !p.inside {
+		return false
+	}
+	for _, l := range p.w.byRole[role] {
 		if l.rec.Complete {
 			return true
 		}
@@ -195,17 +285,42 @@ func (w *world) complete(role string) bool {
 }
 
 // touched gives an area, or the state in its place: unknown without a layer; none when nothing was
-// found and the layer is complete; unknown when nothing was found and it may not be.
-func (w *world) touched(ha float64, role, none string) scoring.Value {
+// found, the layer is complete here and the likely way of the tracks meets nothing either; else unknown.
+func (p *pieces) touched(ha float64, onTrack bool, role, none string) scoring.Value {
 	switch {
-	case len(w.byRole[role]) == 0:
+	case len(p.w.byRole[role]) == 0:
 		return scoring.UnknownBecause("no_layer:" + role)
-	case ha > 0:
+	case ha >= sliverHa:
 		return scoring.Num(ha)
-	case w.complete(role):
+	case onTrack:
+		return scoring.UnknownBecause("tracks_not_placed:" + role)
+	case p.complete(role):
 		return scoring.NoneBecause(none)
 	}
 	return scoring.UnknownBecause("layer_not_complete:" + role)
+}
+
+// trackWidthM is the width of the strip in which a track along the straight way would lie.
+const trackWidthM = 20
+
+// way gives the straight ways that tracks would take: between towers by the shortest tree, and from the
+// nearest tower to the nearest road. The true ways are not known.
+func (w *world) way(r fitResult) [][2]geo.XY {
+	out := treeEdges(r.Turbines)
+	best, from, to := math.Inf(1), geo.XY{}, geo.XY{}
+	for _, t := range r.Turbines {
+		for _, l := range w.byRole["roads"] {
+			for _, g := range l.xy {
+				if p, d := measure.NearestOnOutline(t, g); d < best {
+					best, from, to = d, t, p
+				}
+			}
+		}
+	}
+	if !math.IsInf(best, 1) {
+		out = append(out, [2]geo.XY{from, to})
+	}
+	return out
 }
 
 func layerNames(ls []*layer) string {
@@ -254,61 +369,77 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, r fitR
 			return err
 		}
 	}
+	way := w.way(r)
+	measured := func(name, role, none string, over geo.XYGeometry) (scoring.Value, error) {
+		t, err := around.overlap(e, over, role, nil)
+		if err != nil {
+			return scoring.Value{}, err
+		}
+		v := around.touched(t.ha, t.ha < sliverHa && w.meets(way, role), role, none)
+		f.set(name, v, layerNames(w.byRole[role]))
+		return v, nil
+	}
 	for _, d := range []struct {
 		name, role, none string
 		over             geo.XYGeometry
 	}{
 		{"habitat_ha", "habitat", "no mapped habitat touched", edge},
-		{"forest_ha", "forest", "no forest touched", g},
 		{"flood_ha", "flood", "no flood area touched", g},
 		{"water_protection_ha", "water_protection", "no water protection area touched", g},
 		{"sensitive_ha", "sensitive", "no sensitive area touched", g},
 	} {
-		ha, _, err := around.overlap(e, d.over, d.role, nil)
-		if err != nil {
+		if _, err := measured(d.name, d.role, d.none, d.over); err != nil {
 			return err
 		}
-		f.set(d.name, w.touched(ha, d.role, d.none), layerNames(w.byRole[d.role]))
+	}
+	if err := w.forestFacts(e, around, g, way, f); err != nil {
+		return err
 	}
 
 	best, _ := w.snap.Number("land.farmland_best_grade")
 	worst, _ := w.snap.Number("land.farmland_worst_grade")
-	coshare, _, _ := w.cascadeNumber("land.farmland_coshare.", o, solarPart, "")
-	farm, quality, err := around.overlap(e, g, "farmland", func(l *layer, i int) float64 {
+	main := windPart
+	if !o.wind {
+		main = solarPart
+	}
+	coshare, _, _ := w.cascadeNumber("land.farmland_coshare.", o, main, "")
+	farm, err := around.overlap(e, g, "farmland", func(l *layer, i int) (float64, bool) {
 		grade, ok := l.number(i, "quality", "grade or points")
-		if !ok || best == worst {
-			return 1
+		if !ok {
+			return 0, false
 		}
-		return math.Min(1, math.Max(0, (worst+1-grade)/(worst+1-best)))
+		return quality01(grade, best, worst), true
 	})
 	if err != nil {
 		return err
 	}
-	v := w.touched(farm, "farmland", "no farmland touched")
-	f.set("farmland_lost_ha", v, layerNames(w.byRole["farmland"]))
-	f.set("farmland_quality_ha", v, layerNames(w.byRole["farmland"]))
+	v := around.touched(farm.ha, false, "farmland", "no farmland touched")
+	src := layerNames(w.byRole["farmland"])
+	f.set("farmland_lost_ha", v, src)
+	f.set("farmland_quality_ha", v, src)
 	if v.OK() {
-		f.num("farmland_lost_ha", farm*(1-coshare), layerNames(w.byRole["farmland"]))
-		f.num("farmland_quality_ha", quality*(1-coshare), layerNames(w.byRole["farmland"]))
+		f.num("farmland_lost_ha", farm.ha*(1-coshare), src)
+		f.num("farmland_quality_ha", farm.ha*farm.mean()*(1-coshare), src)
+		if farm.missing {
+			f.set("farmland_quality_ha", scoring.UnknownBecause("missing_value:farmland.quality"), src)
+		}
 	}
 
 	// Soil: the mean stock under the plant's ground, ploughland and grass under the fence.
-	soilHa, soilSum, err := around.overlap(e, g, "soil", func(l *layer, i int) float64 {
-		x, ok := l.number(i, "organic_carbon_stock", "t C/ha")
-		if !ok {
-			return 0
-		}
-		return x
-	})
+	soil, err := around.overlap(e, g, "soil", func(l *layer, i int) (float64, bool) { return l.number(i, "organic_carbon_stock", "t C/ha") })
 	if err != nil {
 		return err
 	}
-	if soilHa > 0 && soilSum > 0 {
-		f.num("soil_stock_tc_per_ha", soilSum/soilHa, layerNames(w.byRole["soil"]))
-	} else if len(w.byRole["soil"]) == 0 {
+	src = layerNames(w.byRole["soil"])
+	switch {
+	case len(w.byRole["soil"]) == 0:
 		f.set("soil_stock_tc_per_ha", scoring.UnknownBecause("no_layer:soil"), "")
-	} else {
-		f.set("soil_stock_tc_per_ha", scoring.UnknownBecause("no_soil_here"), layerNames(w.byRole["soil"]))
+	case soil.missing:
+		f.set("soil_stock_tc_per_ha", scoring.UnknownBecause("missing_value:soil.organic_carbon_stock"), src)
+	case soil.sumHa == 0 || soil.ha < 0.5*groundHa:
+		f.set("soil_stock_tc_per_ha", scoring.UnknownBecause("no_soil_here"), src)
+	default:
+		f.num("soil_stock_tc_per_ha", soil.mean(), src)
 	}
 	f.num("fence_grass_ha", r.FenceHa, "fence")
 	f.num("fence_arable_ha", 0, "fence")
@@ -317,75 +448,169 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, r fitR
 			f.set("fence_grass_ha", scoring.UnknownBecause("no_layer:land_cover"), "")
 			f.set("fence_arable_ha", scoring.UnknownBecause("no_layer:land_cover"), "")
 		} else {
-			_, arable, err := around.overlap(e, r.Fence, "land_cover", func(l *layer, i int) float64 {
-				c := strings.ToLower(l.text(i, "class"))
-				if strings.Contains(c, "arable") || strings.Contains(c, "plough") || strings.Contains(c, "crop") {
-					return 1
+			cover, err := around.overlap(e, r.Fence, "land_cover", func(l *layer, i int) (float64, bool) {
+				if hasWord(l.text(i, "class"), "arable", "plough", "crop") {
+					return 1, true
 				}
-				return 0
+				return 0, true
 			})
 			if err != nil {
 				return err
 			}
-			f.num("fence_arable_ha", math.Min(arable, r.FenceHa), layerNames(w.byRole["land_cover"]))
-			f.num("fence_grass_ha", math.Max(0, r.FenceHa-arable), layerNames(w.byRole["land_cover"]))
+			arable := math.Min(cover.sum, r.FenceHa)
+			f.num("fence_arable_ha", arable, layerNames(w.byRole["land_cover"]))
+			f.num("fence_grass_ha", r.FenceHa-arable, layerNames(w.byRole["land_cover"]))
 		}
 	}
+	return w.peatFacts(e, around, g, way, groundHa, f, notices)
+}
 
-	peatHa, depthSum, err := around.overlap(e, g, "peat", func(l *layer, i int) float64 {
-		x, ok := l.number(i, "depth", "m")
-		if !ok {
-			return 0
+// quality01 turns a grade into a share from 0 to 1: the best grade is 1, and the worst still counts as
+// one step above nothing.
+func quality01(grade, best, worst float64) float64 {
+	if best == worst {
+		return 1
+	}
+	s := 1.0
+	if worst < best {
+		s = -1
+	}
+	return math.Min(1, math.Max(0, (worst+s-grade)/(worst+s-best)))
+}
+
+func hasWord(text string, words ...string) bool {
+	text = strings.ToLower(text)
+	for _, w := range words {
+		if strings.Contains(text, w) {
+			return true
 		}
-		return x
+	}
+	return false
+}
+
+// forestFacts takes the forest from its own layer, else from land cover.
+func (w *world) forestFacts(e *overlay.Engine, around *pieces, g geo.XYGeometry, way [][2]geo.XY, f facts) error {
+	role := "forest"
+	if len(w.byRole[role]) == 0 {
+		role = "land_cover"
+	}
+	if len(w.byRole[role]) == 0 {
+		f.set("forest_ha", scoring.UnknownBecause("no_layer:forest|land_cover"), "")
+		return nil
+	}
+	t, err := around.overlap(e, g, role, func(l *layer, i int) (float64, bool) {
+		if role == "forest" || hasWord(l.text(i, "class"), "forest", "wood") {
+			return 1, true
+		}
+		return 0, true
 	})
 	if err != nil {
 		return err
 	}
-	pv := w.touched(peatHa, "peat", "no mapped peat touched")
-	f.set("peat_ha", pv, layerNames(w.byRole["peat"]))
+	ha, track := t.sum, false
+	if role == "forest" {
+		ha = t.ha
+		track = ha < sliverHa && w.meets(way, role)
+	}
+	f.set("forest_ha", around.touched(ha, track, role, "no forest touched"), layerNames(w.byRole[role]))
+	return nil
+}
+
+// peatFacts takes the peat from its own layer; without one, from the classes of the soil layer, whose
+// depth is then unknown.
+func (w *world) peatFacts(e *overlay.Engine, around *pieces, g geo.XYGeometry, way [][2]geo.XY, groundHa float64, f facts, notices map[string]bool) error {
+	role := "peat"
+	number := func(l *layer, i int) (float64, bool) { return l.number(i, "depth", "m") }
+	if len(w.byRole[role]) == 0 {
+		role = "soil"
+		number = func(l *layer, i int) (float64, bool) {
+			if hasWord(l.text(i, "soil_class"), "peat", "bog", "histosol", "fen") {
+				return 1, true
+			}
+			return 0, true
+		}
+	}
+	src := layerNames(w.byRole[role])
+	if len(w.byRole[role]) == 0 {
+		for _, n := range []string{"peat_ha", "peat_share", "peat_depth_m"} {
+			f.set(n, scoring.UnknownBecause("no_layer:peat|soil"), "")
+		}
+		return nil
+	}
+	t, err := around.overlap(e, g, role, number)
+	if err != nil {
+		return err
+	}
+	ha, track := t.ha, false
+	if role == "soil" {
+		ha = t.sum
+	} else {
+		track = ha < sliverHa && w.meets(way, role)
+	}
+	v := around.touched(ha, track, role, "no mapped peat touched")
+	f.set("peat_ha", v, src)
 	switch {
-	case pv.OK():
-		f.num("peat_share", math.Min(1, peatHa/groundHa), layerNames(w.byRole["peat"]))
-		f.num("peat_depth_m", depthSum/peatHa, layerNames(w.byRole["peat"]))
+	case v.OK():
 		notices["peat_touched"] = true
-	case pv.State == scoring.None:
-		f.num("peat_share", 0, layerNames(w.byRole["peat"]))
-		f.num("peat_depth_m", 0, layerNames(w.byRole["peat"]))
+		f.num("peat_share", math.Min(1, ha/groundHa), src)
+		if role == "soil" || t.missing {
+			f.set("peat_depth_m", scoring.UnknownBecause("missing_value:peat.depth"), src)
+		} else {
+			f.num("peat_depth_m", t.mean(), src)
+		}
+	case v.State == scoring.None:
+		f.num("peat_share", 0, src)
+		f.num("peat_depth_m", 0, src)
 	default:
-		f.set("peat_share", pv, "")
-		f.set("peat_depth_m", pv, "")
+		f.set("peat_share", v, src)
+		f.set("peat_depth_m", v, src)
 	}
 	return nil
 }
 
-// trackKm is the rule of thumb for new track: the shortest tree through the towers and from the nearest
-// road to the first, times a detour.
-func (w *world) trackKm(r fitResult, roadM scoring.Value) float64 {
+// tracks gives the new track: the shortest tree through the towers and from the nearest road to the first,
+// times a detour. Without roads it is unknown; what is counted for land and energy is then the usual share
+// of sealed ground per megawatt of wind (Denholm et al. 2009), nothing for solar.
+func (w *world) tracks(r fitResult, roadM scoring.Value) (km scoring.Value, countedKm float64, err error) {
 	detour, err := w.p.Wind.Get("track_detour")
 	if err != nil {
-		return 0
+		return scoring.Value{}, 0, err
 	}
-	access := 0.0
 	if roadM.OK() {
-		access = roadM.X
+		x := detour.Central * (tree(r.Turbines) + roadM.X) / units.MPerKm
+		return scoring.Num(x), x, nil
 	}
-	return detour.Central * (tree(r.Turbines) + access) / units.MPerKm
+	perMW, err := w.p.Wind.Get("permanent_ha_per_mw")
+	if err != nil {
+		return scoring.Value{}, 0, err
+	}
+	ground := perMW.Central * r.WindKW / units.KWPerMW * units.M2PerHa
+	return roadM, ground / w.p.Factors["track_width_m"].Central / units.MPerKm, nil
 }
 
-// tree gives the length of the shortest tree through points (Prim 1957).
+// tree gives the length of the shortest tree through points.
 func tree(at []geo.XY) float64 {
+	sum := 0.0
+	for _, s := range treeEdges(at) {
+		sum += s[0].Dist(s[1])
+	}
+	return sum
+}
+
+// treeEdges gives the edges of the shortest tree through points (Prim 1957).
+func treeEdges(at []geo.XY) [][2]geo.XY {
 	if len(at) < 2 {
-		return 0
+		return nil
 	}
 	in := make([]bool, len(at))
 	dist := make([]float64, len(at))
+	from := make([]int, len(at))
 	for i := range dist {
 		dist[i] = math.Inf(1)
 	}
 	dist[0] = 0
-	sum := 0.0
-	for range at {
+	var out [][2]geo.XY
+	for n := range at {
 		best := -1
 		for i := range at {
 			if !in[i] && (best < 0 || dist[i] < dist[best]) {
@@ -393,10 +618,14 @@ func tree(at []geo.XY) float64 {
 			}
 		}
 		in[best] = true
-		sum += dist[best]
+		if n > 0 {
+			out = append(out, [2]geo.XY{at[from[best]], at[best]})
+		}
 		for i := range at {
-			dist[i] = math.Min(dist[i], at[best].Dist(at[i]))
+			if d := at[best].Dist(at[i]); !in[i] && d < dist[i] {
+				dist[i], from[i] = d, best
+			}
 		}
 	}
-	return sum
+	return out
 }

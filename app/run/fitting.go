@@ -37,8 +37,11 @@ type fitResult struct {
 	WakeLoss       float64
 	PR             float64
 	CropLight      float64
-	WindSigma      float64
+	WindSigma      float64 // of one year's energy
 	SolarSigma     float64
+	WindLong       float64 // of the long-term mean
+	SolarLong      float64
+	SpareAsset     string // the line or substation that a fit to its spare capacity was made for
 	Chain          []ChainStep
 	Notices        []string
 	NeedsPatchHa   float64
@@ -57,6 +60,7 @@ type fitter struct {
 	wind    []windPoint
 	sun     *sunlight
 	yields  map[string]solar.YearResult // by option and rounded latitude
+	faults  map[string]string           // options that cannot be computed, with the reason
 	gridKey string                      // digest of the settings that a connection reads
 }
 
@@ -67,7 +71,7 @@ const latStep = 0.01
 func (w *world) newFitter() (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, yields: map[string]solar.YearResult{}, gridKey: g.sum()}
+	f := &fitter{w: w, yields: map[string]solar.YearResult{}, faults: map[string]string{}, gridKey: g.sum()}
 	var err error
 	if f.wind, err = w.windPoints(); err != nil {
 		return nil, err
@@ -107,7 +111,9 @@ func (w *world) newFitter() (*fitter, error) {
 			}
 			y, err := c.Yield(p)
 			if err != nil {
-				return nil, fmt.Errorf("plant option %q: %w", o.id, err)
+				// A setting out of range: the option is not computed, the others are.
+				f.faults[o.id] = "plant_out_of_range"
+				continue
 			}
 			f.yields[yieldKey(o, lat)] = y
 		}
@@ -133,6 +139,8 @@ func (f *fitter) key(o option, s site, ground []string) string {
 		k.text(g)
 	}
 	k.text(f.w.p.Digest)
+	k.num(f.w.frame.Centre().Lon)
+	k.num(f.w.frame.Centre().Lat)
 	k.text(o.id)
 	names := make([]string, 0, len(o.settings))
 	for n := range o.settings {
@@ -153,6 +161,7 @@ func (f *fitter) key(o option, s site, ground []string) string {
 		if p, d, ok := nearestWind(f.wind, s.box.Centre()); ok {
 			k.num(d)
 			k.num(p.heightM)
+			k.text(fmt.Sprint(p.typed))
 			for _, sec := range p.sectors {
 				k.num(sec.FrequencyFrac)
 				k.num(sec.Weibull.AMPerS)
@@ -161,6 +170,7 @@ func (f *fitter) key(o option, s site, ground []string) string {
 		}
 		if f.w.terrain != nil {
 			k.text(f.w.terrain.rec.Digest)
+			k.text(f.w.terrain.rec.CRS)
 		}
 	}
 	if o.solar && f.sun != nil {
@@ -190,14 +200,19 @@ func (f *fitter) key(o option, s site, ground []string) string {
 // compute fits an option on a site.
 func (f *fitter) compute(e *overlay.Engine, o option, s site, ground map[string]groundResult) (fitResult, error) {
 	r := fitResult{Mode: o.fit, Fence: geo.XYGeometry{Kind: geo.Polygons}}
+	if why, bad := f.faults[o.id]; bad {
+		r.Status, r.Reason = NotComputed, why
+		return r, nil
+	}
 	limit := math.Inf(1) // power that may be fitted
+	limitAC := false
 	if o.fit == "spare_capacity" {
-		spare, known, why := f.w.spareFor(s)
+		spare, asset, known := f.w.spareFor(s)
 		if !known {
-			r.Status, r.Reason = NotComputed, why
+			r.Status, r.Reason = NotComputed, "spare_unknown"
 			return r, nil
 		}
-		limit = spare
+		limit, limitAC, r.SpareAsset = spare, true, asset
 	}
 	if o.fit == "power" {
 		x, ok := o.num("fit_power_kw")
@@ -222,13 +237,20 @@ func (f *fitter) compute(e *overlay.Engine, o option, s site, ground map[string]
 		}
 	}
 	if o.solar {
-		if err := f.fitSolar(e, o, s, ground[solarPart], limit-r.WindKW, target-r.WindMWh.MWh, &r); err != nil || r.Status == NotComputed {
+		left := limit - r.WindKW
+		if ratio, ok := o.num("dc_ac_ratio"); ok && limitAC {
+			left *= ratio // what the connection takes is alternating current
+		}
+		if err := f.fitSolar(e, o, s, ground[solarPart], left, target-r.WindMWh.MWh, &r); err != nil || r.Status == NotComputed {
 			return r, err
 		}
 	}
 	switch {
 	case o.wind && o.solar && (len(r.Turbines) == 0 || r.SolarKW == 0):
 		r.Status = NoRoom // a plant of both needs both
+		if r.Reason == "" {
+			r.Reason = "one_part_without_room"
+		}
 	case len(r.Turbines) == 0 && r.SolarKW == 0:
 		r.Status = NoRoom
 	default:
@@ -245,15 +267,19 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	hub, okH := o.num("hub_height_m")
 	d, okD := o.num("rotor_diameter_m")
 	rated, okR := o.num("rated_kw")
-	for name, ok := range map[string]bool{"hub_height_m": okH, "rotor_diameter_m": okD, "rated_kw": okR} {
-		if !ok {
-			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+"."+name
+	for _, need := range []struct {
+		name string
+		ok   bool
+	}{{"hub_height_m", okH}, {"rotor_diameter_m", okD}, {"rated_kw", okR}} {
+		if !need.ok {
+			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+"."+need.name
 			return nil
 		}
 	}
 	machine, err := f.turbine(o, rated, d)
 	if err != nil {
-		return err
+		r.Status, r.Reason = NotComputed, "turbine_does_not_fit"
+		return nil
 	}
 	if g.BuildableM2 <= 0 {
 		return nil
@@ -273,12 +299,21 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		most = min(most, int(math.Floor(limitKW/rated+1e-9)))
 	}
 	if most <= 0 {
+		r.Reason = "limit_below_one_machine"
 		return nil
 	}
 	p, dist, known := nearestWind(f.wind, s.box.Centre())
 	r.ResourceM = dist
+	if !known && !math.IsInf(targetMWh, 1) {
+		r.Status, r.Reason = NotComputed, "no_layer:wind_resource"
+		return nil
+	}
 	along, _ := o.num("spacing_along_d")
 	across, _ := o.num("spacing_across_d")
+	if !(along > 0) || !(across > 0) || !(hub > 0) || !(d > 0) || !(rated > 0) {
+		r.Status, r.Reason = NotComputed, "plant_out_of_range"
+		return nil
+	}
 	el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
 	var in wind.FarmInput
 	if known {
@@ -347,12 +382,25 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	if p.typed {
 		r.Notices = append(r.Notices, "rayleigh")
 	}
-	r.WindSigma, err = f.windSigma(res.SpeedSensitivity)
+	if f.w.terrain != nil {
+		if _, ok, err := f.w.heightM(s.box.Centre()); err != nil {
+			return err
+		} else if !ok {
+			r.Notices = append(r.Notices, "height_unknown")
+		}
+	}
+	if r.WindSigma, err = f.windSigma(res.SpeedSensitivity, 1); err != nil {
+		return err
+	}
+	r.WindLong, err = f.windSigma(res.SpeedSensitivity, longTermYears)
 	return err
 }
 
-// windSigma joins the screening uncertainty without a mast with the variation of one year.
-func (f *fitter) windSigma(sensitivity float64) (float64, error) {
+// longTermYears is the span over which the long-term mean evens the variation between years out.
+const longTermYears = 20
+
+// windSigma joins the screening uncertainty without a mast with the variation between years.
+func (f *fitter) windSigma(sensitivity, years float64) (float64, error) {
 	model, err := f.w.p.Wind.Get("sigma_no_mast_frac")
 	if err != nil {
 		return 0, err
@@ -361,7 +409,7 @@ func (f *fitter) windSigma(sensitivity float64) (float64, error) {
 	if err != nil {
 		return 0, err
 	}
-	return wind.SigmaOverYears(model.Central, year.Central*sensitivity, 1)
+	return wind.SigmaOverYears(model.Central, year.Central*sensitivity, years)
 }
 
 // turbine finds the machine of an option: a reference curve by name, else the generic curve for its
@@ -409,6 +457,11 @@ func (f *fitter) farm(o option, machine wind.Turbine, hubM float64, p windPoint,
 	losses, err := f.w.p.Wind.Losses(machine.RatedKW)
 	if err != nil {
 		return wind.FarmInput{}, err
+	}
+	for i := range losses {
+		if losses[i].Name == wind.LossCurtailment {
+			losses[i].Frac = 0 // what the grid does not take is reckoned at the connection
+		}
 	}
 	return wind.FarmInput{
 		Site:    wind.Site{Rose: p.sectors, RefHeightM: p.heightM, ShearAlpha: alpha, ElevationM: height},
@@ -477,7 +530,8 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	ratio, _ := o.num("dc_ac_ratio")
 	kwPerHa := solar.CapacityMWpPerHa(eff, gcr, share) * units.KWPerMW
 	if !(kwPerHa > 0) || !(ratio > 0) {
-		return fmt.Errorf("plant option %q: module_efficiency, gcr, usable_share and dc_ac_ratio must be above zero", o.id)
+		r.Status, r.Reason = NotComputed, "plant_out_of_range"
+		return nil
 	}
 	area := g.Area
 	if len(r.Turbines) > 0 {
@@ -520,6 +574,10 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 			limitKW = math.Min(limitKW, targetMWh*units.KWhPerMWh/specific)
 		}
 	}
+	if f.sun == nil && !math.IsInf(targetMWh, 1) {
+		r.Status, r.Reason = NotComputed, "no_layer:solar_resource"
+		return nil
+	}
 	if limitKW <= 0 {
 		return nil
 	}
@@ -549,7 +607,7 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	if err != nil {
 		return err
 	}
-	r.SolarSigma = sig.Total(1)
+	r.SolarSigma, r.SolarLong = sig.Total(1), sig.Total(longTermYears)
 	r.Notices = append(r.Notices, "horizon_flat")
 	return nil
 }
@@ -658,6 +716,10 @@ func (f *fitter) totals(e *overlay.Engine, o option, s site, r *fitResult) error
 			return fmt.Errorf("site %s: %w", s.id, err)
 		}
 		r.SpacingHa = measure.AreaM2(u) / units.M2PerHa
+		whole := math.Pi / 4 * el.AlongM * el.AcrossM / units.M2PerHa * float64(len(r.Turbines))
+		if r.SpacingHa < 0.6*whole {
+			r.Notices = append(r.Notices, "spacing_beyond_site")
+		}
 		all = append(all, u)
 	}
 	if !r.Fence.Empty() {

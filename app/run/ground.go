@@ -3,6 +3,7 @@ package run
 import (
 	"context"
 	"fmt"
+	"slices"
 	"sort"
 	"strings"
 
@@ -26,6 +27,7 @@ type rule struct {
 type ruleSource struct {
 	layer    *layer
 	keep     []bool // features that count
+	distM    float64
 	prepared *overlay.Layer
 }
 
@@ -49,10 +51,9 @@ func (w *world) rulesFor(o option, part string) (*ruleset, error) {
 	if part == windPart {
 		hub, ok1 := o.num("hub_height_m")
 		d, ok2 := o.num("rotor_diameter_m")
-		if !ok1 || !ok2 {
-			return nil, fmt.Errorf("plant option %q needs hub_height_m and rotor_diameter_m", o.id)
-		}
-		tip, rotor = hub+d/2, d
+		if ok1 && ok2 {
+			tip, rotor = hub+d/2, d
+		} // without them the option is not computed: see fitWind
 	}
 	distance := func(role string) (float64, bool, bool) { // metres, in force, not set
 		best, in, unset := 0.0, false, false
@@ -75,23 +76,45 @@ func (w *world) rulesFor(o option, part string) (*ruleset, error) {
 		if role.Name == "parcels" || role.Name == "district" {
 			continue
 		}
-		if d, in, unset := distance(role.Name); unset {
+		d, in, unset := distance(role.Name)
+		switch {
+		case unset:
 			rs.incomplete = append(rs.incomplete, "setback:"+role.Name)
-		} else if in && len(ls) > 0 && d > 0 {
+		case in && d > 0 && len(ls) == 0:
+			// A distance that is in force and cannot be kept for want of a layer is not a distance of zero.
+			rs.incomplete = append(rs.incomplete, "setback:"+role.Name)
+			rs.notApplied = append(rs.notApplied, "rule_without_layer")
+		case in && d > 0:
 			r := rule{name: "setback:" + role.Name, distM: d}
 			for _, l := range ls {
-				r.sources = append(r.sources, ruleSource{layer: l, keep: w.counted(l, role.Name, "", part)})
+				r.sources = append(r.sources, ruleSource{layer: l, keep: w.counted(l, role.Name, "", part), distM: d})
 			}
 			rs.rules = append(rs.rules, r)
 		}
-		if len(ls) > 0 && w.snap.Yes("rule.exclude."+role.Name) {
-			r := rule{name: "exclude:" + role.Name}
-			classes := w.snap.Text("rule.exclude." + role.Name + ".class")
-			for _, l := range ls {
-				r.sources = append(r.sources, ruleSource{layer: l, keep: w.counted(l, role.Name, classes, part)})
-			}
-			rs.rules = append(rs.rules, r)
+		if !w.snap.Yes("rule.exclude." + role.Name) {
+			continue
 		}
+		if len(ls) == 0 {
+			if _, byUser, _ := w.snap.Lookup("rule.exclude." + role.Name); byUser {
+				rs.incomplete = append(rs.incomplete, "exclude:"+role.Name)
+			}
+			rs.notApplied = append(rs.notApplied, "rule_without_layer")
+			continue
+		}
+		r := rule{name: "exclude:" + role.Name}
+		classes := w.snap.Text("rule.exclude." + role.Name + ".class")
+		for _, l := range ls {
+			keep := w.counted(l, role.Name, classes, part)
+			for own, some := range l.byOwnSetback(keep) {
+				r.sources = append(r.sources, ruleSource{layer: l, keep: some, distM: own})
+				r.distM = max(r.distM, own)
+			}
+			if l.thin(keep) {
+				rs.notApplied = append(rs.notApplied, "exclusion_needs_width")
+			}
+		}
+		sort.SliceStable(r.sources, func(i, j int) bool { return r.sources[i].distM < r.sources[j].distM })
+		rs.rules = append(rs.rules, r)
 	}
 	if d, in, _ := distance("boundary"); in && d > 0 {
 		rs.rules = append(rs.rules, rule{name: "setback:boundary", distM: d, boundary: true})
@@ -103,6 +126,8 @@ func (w *world) rulesFor(o option, part string) (*ruleset, error) {
 			rs.slopeDeg = x
 		}
 	}
+	sort.Strings(rs.incomplete)
+	rs.notApplied = unique(rs.notApplied)
 	rs.widthM, _, _ = w.cascadeNumber("rule.smallest_width.", o, part, "_m")
 	if x, _, ok := w.cascadeNumber("rule.smallest_patch.", o, part, "_ha"); ok {
 		rs.patchM2 = x * units.M2PerHa
@@ -117,7 +142,7 @@ func (w *world) counted(l *layer, role, classes, part string) []bool {
 	if classes != "" {
 		want = map[string]bool{}
 		for _, c := range strings.Split(classes, "|") {
-			want[strings.TrimSpace(c)] = true
+			want[strings.ToLower(strings.TrimSpace(c))] = true
 		}
 	}
 	for i := range keep {
@@ -125,6 +150,7 @@ func (w *world) counted(l *layer, role, classes, part string) []bool {
 		if class == "" {
 			class = l.text(i, "kind")
 		}
+		class = strings.ToLower(class)
 		switch {
 		case role == "dwellings" && class == notLived:
 		case want != nil && !want[class]:
@@ -136,29 +162,90 @@ func (w *world) counted(l *layer, role, classes, part string) []bool {
 	return keep
 }
 
+// byOwnSetback parts the counted features by the distance that each brings itself, as an exclusion line
+// or a listed site may; 0 for those that bring none.
+func (l *layer) byOwnSetback(keep []bool) map[float64][]bool {
+	out := map[float64][]bool{}
+	for i := range keep {
+		if !keep[i] {
+			continue
+		}
+		d, ok := l.number(i, "setback", "m")
+		if !ok || d < 0 {
+			d = 0
+		}
+		if out[d] == nil {
+			out[d] = make([]bool, len(keep))
+		}
+		out[d][i] = true
+	}
+	return out
+}
+
+// thin reports whether a counted point or line brings no distance, so that it takes no ground.
+func (l *layer) thin(keep []bool) bool {
+	for i := range keep {
+		if keep[i] && l.xy[i].Kind != geo.Polygons {
+			if d, ok := l.number(i, "setback", "m"); !ok || d <= 0 {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+func unique(list []string) []string {
+	sort.Strings(list)
+	return slices.Compact(list)
+}
+
 func appliesTo(text, part string) bool { return text == "" || text == "all" || text == part }
 
 // prepare widens the features of every rule once for all sites.
-func (rs *ruleset) prepare(e *overlay.Engine) error {
+//
+// Layers that were widened alike before are taken from made, so that rulesets share them.
+func (rs *ruleset) prepare(e *overlay.Engine, made map[string]*overlay.Layer) error {
 	for i := range rs.rules {
 		r := &rs.rules[i]
 		for j := range r.sources {
 			s := &r.sources[j]
+			name := s.id()
+			if l, there := made[name]; there {
+				s.prepared = l
+				continue
+			}
 			var fs []geo.XYGeometry
 			for k, g := range s.layer.xy {
-				if s.keep[k] && (r.distM > 0 || g.Kind == geo.Polygons) {
+				if s.keep[k] && (s.distM > 0 || g.Kind == geo.Polygons) {
 					fs = append(fs, g)
 				}
 			}
-			l, err := e.NewLayer(fs, r.distM)
+			l, err := e.NewLayer(fs, s.distM)
 			if err != nil {
 				return fmt.Errorf("rule %s, layer %q: %w", r.name, s.layer.rec.Name, err)
 			}
-			s.prepared = l
+			s.prepared, made[name] = l, l
 		}
 	}
 	return nil
 }
+
+// id names a source by what makes its widened layer.
+func (s ruleSource) id() string {
+	k := newKey("source", 1)
+	k.text(s.layer.rec.Name)
+	k.num(s.distM)
+	for i, keep := range s.keep {
+		if keep {
+			k.int(i)
+		}
+	}
+	return k.sum()
+}
+
+// bufferReach is how far a widened feature may reach beyond its distance: arcs are drawn around the true
+// circle, and the geometry engine fills shallow hollows.
+const bufferReach = 1.02
 
 // key writes what the ground of a site depends on: the site, each rule that has features within its
 // reach with those features, and the shape steps. A rule without features near by does not take part,
@@ -171,6 +258,7 @@ func (rs *ruleset) key(w *world, s site) string {
 	if rs.slopeDeg > 0 {
 		k.num(rs.slopeDeg)
 		k.text(w.terrain.rec.Digest)
+		k.text(w.terrain.rec.CRS)
 	}
 	var buf []int
 	for _, r := range rs.rules {
@@ -181,16 +269,16 @@ func (rs *ruleset) key(w *world, s site) string {
 		}
 		near := false
 		for _, src := range r.sources {
-			buf = src.layer.tree.Search(s.box.Grow(r.distM+1), buf[:0])
+			buf = src.layer.tree.Search(s.box.Grow(src.distM*bufferReach+1), buf[:0])
 			for _, i := range buf {
 				if !src.keep[i] {
 					continue
 				}
 				if !near {
 					k.text(r.name)
-					k.num(r.distM)
 					near = true
 				}
+				k.num(src.distM)
 				k.h.Write(src.layer.hash[i][:])
 			}
 		}
@@ -210,7 +298,7 @@ type groundResult struct {
 	Repaired      int
 }
 
-func (rs *ruleset) compute(e *overlay.Engine, w *world, s site) (groundResult, error) {
+func (rs *ruleset) compute(e *overlay.Engine, w *world, s site, steep map[float64]geo.XYGeometry) (groundResult, error) {
 	in := overlay.BuildableInput{Site: s.geom, SmallestWidthM: rs.widthM, SmallestPatchM2: rs.patchM2}
 	for _, r := range rs.rules {
 		or := overlay.Rule{Name: r.name, SetbackM: r.distM, Boundary: r.boundary}
@@ -226,12 +314,16 @@ func (rs *ruleset) compute(e *overlay.Engine, w *world, s site) (groundResult, e
 		in.Rules = append(in.Rules, or)
 	}
 	if rs.slopeDeg > 0 {
-		steep, err := w.steep(s.box, rs.slopeDeg)
-		if err != nil {
-			return groundResult{}, err
+		over, done := steep[rs.slopeDeg]
+		if !done {
+			var err error
+			if over, err = w.steep(s.box, rs.slopeDeg); err != nil {
+				return groundResult{}, err
+			}
+			steep[rs.slopeDeg] = over
 		}
-		if !steep.Empty() {
-			in.Rules = append(in.Rules, overlay.Rule{Name: "slope", Features: []geo.XYGeometry{steep}})
+		if !over.Empty() {
+			in.Rules = append(in.Rules, overlay.Rule{Name: "slope", Features: []geo.XYGeometry{over}})
 		}
 	}
 	out, err := e.Buildable(in)
@@ -266,9 +358,10 @@ func (r *runner) ground(ctx context.Context) error {
 	jobs := map[string]job{}
 	r.sets = map[string]*ruleset{}
 	r.groundKeys = map[string][]string{}
-	for _, o := range w.options {
+	for i := range w.options {
+		o := &w.options[i]
 		for _, part := range o.parts() {
-			rs, err := w.rulesFor(o, part)
+			rs, err := w.rulesFor(*o, part)
 			if err != nil {
 				return err
 			}
@@ -310,28 +403,46 @@ func (r *runner) ground(ctx context.Context) error {
 	}
 	if len(todo) > 0 {
 		e := overlay.New()
-		prepared := map[*ruleset]bool{}
+		done := map[*ruleset]bool{}
+		made := map[string]*overlay.Layer{}
 		for _, j := range todo {
-			if !prepared[j.rs] {
-				prepared[j.rs] = true
-				if err := j.rs.prepare(e); err != nil {
-					return err
-				}
+			if done[j.rs] {
+				continue
+			}
+			done[j.rs] = true
+			if err := j.rs.prepare(e, made); err != nil {
+				return err
 			}
 		}
 		closeEngine(e)
 	}
+	// A site's rulesets go to one worker, whose engine remembers what they share. todo is in site order.
+	var starts []int
+	for i, j := range todo {
+		if i == 0 || j.s != todo[i-1].s {
+			starts = append(starts, i)
+		}
+	}
 	fresh := make([][]byte, len(todo))
 	live := make([]*groundResult, len(todo))
-	err = forEach(ctx, r.cores, len(todo), openEngine, closeEngine, func(e *overlay.Engine, i int) error {
-		g, err := todo[i].rs.compute(e, w, w.sites[todo[i].s])
-		if err != nil {
-			return err
+	err = forEach(ctx, r.cores, len(starts), openEngine, closeEngine, func(e *overlay.Engine, n int) error {
+		end := len(todo)
+		if n+1 < len(starts) {
+			end = starts[n+1]
 		}
-		live[i] = &g
-		fresh[i], err = pack(g)
-		return err
-	}, r.report("ground", len(todo)))
+		steep := map[float64]geo.XYGeometry{}
+		for i := starts[n]; i < end; i++ {
+			g, err := todo[i].rs.compute(e, w, w.sites[todo[i].s], steep)
+			if err != nil {
+				return err
+			}
+			live[i] = &g
+			if fresh[i], err = pack(g); err != nil {
+				return err
+			}
+		}
+		return nil
+	}, r.report("ground", len(starts)))
 	if err != nil {
 		return err
 	}

@@ -88,6 +88,7 @@ type scale struct {
 	key    string
 	info   KeyInfo
 	better criteria.Better
+	gain   bool // more of it is something the plant brings, and not the absence of a burden
 	raw    float64
 	curve  weigh.Linear
 }
@@ -136,12 +137,27 @@ func scales(snap *study.Snapshot, p *Params, voice string) ([]scale, []geo.Notic
 			}
 			families[f] = k.Key
 		}
-		out = append(out, scale{key: k.Key, info: k, better: c.Better, raw: raw, curve: curve})
+		out = append(out, scale{key: k.Key, info: k, better: c.Better, gain: brings(c), raw: raw, curve: curve})
 	}
 	if len(out) == 0 {
 		return nil, nil, fmt.Errorf("voice %q weighs nothing; set voice.%s.weight.KEY", voice, voice)
 	}
 	return out, notices, nil
+}
+
+// brings reports whether more of a consequence is something that the plant itself brings: energy, room on
+// the grid, carbon laid down. A distance or light left is the absence of a burden.
+func brings(c criteria.Criterion) bool {
+	if c.Better != criteria.More {
+		return false
+	}
+	for _, f := range c.Families {
+		switch f {
+		case "yield", "size", "grid_room", "land_carbon":
+			return true
+		}
+	}
+	return false
 }
 
 // part turns a consequence into a value.
@@ -215,7 +231,7 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	nothing := weigh.Item{ID: NoSite}
 	for _, s := range sc {
 		// Doing nothing spares every burden and brings no gain.
-		if s.better == criteria.Less {
+		if s.better == criteria.Less || !s.gain {
 			nothing.Values = append(nothing.Values, weigh.Part{Known: true, Low: 1, Mid: 1, High: 1})
 		} else {
 			nothing.Values = append(nothing.Values, weigh.Part{Known: true})

@@ -6,6 +6,7 @@ import (
 	"io/fs"
 	"math"
 	"math/rand/v2"
+	"slices"
 	"testing"
 	"time"
 
@@ -45,6 +46,16 @@ func smallStudy(t testing.TB, every int) *study.Study {
 		t.Fatal(err)
 	}
 	return s
+}
+
+// addFarParcel adds a layer with one parcel at the island's edge, which widens the district's box.
+func addFarParcel(ctx context.Context, s *study.Study) error {
+	e := overlay.New()
+	defer e.Close()
+	ring := []geo.LonLat{{Lon: -27.35, Lat: 47.52}, {Lon: -27.345, Lat: 47.52}, {Lon: -27.345, Lat: 47.524}, {Lon: -27.35, Lat: 47.524}, {Lon: -27.35, Lat: 47.52}}
+	l := &geo.Layer{Columns: []geo.Column{{Name: "parcel_id"}}, Features: []geo.Feature{{ID: "1", Geometry: geo.LonLatGeometry{Kind: geo.Polygons, Parts: [][][]geo.LonLat{{ring}}}, Values: []geo.Value{geo.TextValue("FAR-1")}}}}
+	_, err := s.AddLayer(ctx, study.Import{File: "far.geojson", Base: "far.geojson", Layer: l, Role: "parcels", Name: "Far parcel", Ledger: study.Ledger{Read: 1}}, testTools{e})
+	return err
 }
 
 // TestEditsAndUndosEqualAFreshRun is the property that stored results may never show: after any edits,
@@ -102,13 +113,19 @@ func TestEditsAndUndosEqualAFreshRun(t *testing.T) {
 			if err := s.RemoveLayer(ctx, layers[rng.IntN(len(layers))], ""); err != nil {
 				continue // it is gone already
 			}
+		case n == 7 && rng.IntN(3) == 0:
+			what = "a parcel far from the others"
+			if err := addFarParcel(ctx, s); err != nil {
+				continue // it is there already
+			}
 		case n == 7:
 			what = "group"
 			snap, err := s.Snapshot()
 			if err != nil {
 				t.Fatal(err)
 			}
-			v, _, err := s.Store().Version(ctx, snap.LayersOf("parcels")[0].Digest)
+			parcels := snap.LayersOf("parcels")
+			v, _, err := s.Store().Version(ctx, parcels[len(parcels)-1].Digest)
 			if err != nil {
 				t.Fatal(err)
 			}
@@ -192,6 +209,9 @@ func TestOnlyWhatChangedIsComputedAgain(t *testing.T) {
 	}
 	if _, err := s.Undo(ctx); err != nil {
 		t.Fatal(err)
+	}
+	if m = steps(); m["ground"].Computed+m["fit"].Computed+m["candidate"].Computed != 0 {
+		t.Errorf("undo did not find its old results valid: %+v", m)
 	}
 	edit("plant.solar_agri.gcr", "0.28")
 	if m = steps(); m["fit"].Computed == 0 || m["fit"].Computed > first["fit"].Computed/4 {
@@ -305,5 +325,135 @@ func TestMissingLayersAreUnknownAndNeverZero(t *testing.T) {
 	}
 	if n == 0 {
 		t.Fatal("nothing was fitted")
+	}
+}
+
+func TestSitesDoNotDependOnEachOther(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 40)
+	before := compute(t, s, nil, 2)
+	if err := addFarParcel(ctx, s); err != nil {
+		t.Fatal(err)
+	}
+	after := compute(t, s, nil, 2)
+	for i := range before.Candidates {
+		c := &before.Candidates[i]
+		d, err := after.Find(c.Site, c.Plant)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if diff := differCandidate(c, d); diff != nil {
+			t.Fatalf("a parcel far away changed %s: %+v", c.ID(), diff)
+		}
+	}
+	// What lies outside the district is not known to be free of anything.
+	c, err := after.Find("FAR-1", "solar_fixed")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if c.Status == Fitted {
+		for _, key := range []string{"habitat_ha", "flood_ha", "peat_ha"} {
+			if q, _ := c.Consequence(key); q.State != scoring.Unknown {
+				t.Errorf("%s outside the district is %v, want unknown", key, q.State)
+			}
+		}
+	}
+}
+
+func TestRulesWithoutTheirLayerAreTold(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 40)
+	for _, l := range []string{"Dwellings", "Roads"} {
+		if err := s.RemoveLayer(ctx, l, ""); err != nil {
+			t.Fatal(err)
+		}
+	}
+	r := compute(t, s, nil, 2)
+	n := 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		if c.Status != Fitted {
+			continue
+		}
+		n++
+		if !slices.Contains(c.Incomplete, "setback:dwellings") {
+			t.Fatalf("%s keeps no distance from dwellings and says nothing: %v", c.ID(), c.Incomplete)
+		}
+		if q, _ := c.Consequence("track_km"); q.State != scoring.Unknown {
+			t.Errorf("%s: track_km without roads is %v %v, want unknown", c.ID(), q.State, q.Central)
+		}
+		if q, _ := c.Consequence("eroi_delivered"); q.State != scoring.Number {
+			t.Errorf("%s: the return needs no roads, but is %v (%s)", c.ID(), q.State, q.Why)
+		}
+	}
+	if n == 0 {
+		t.Fatal("nothing was fitted")
+	}
+}
+
+func TestMissingPeatDepthIsUnknown(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 12)
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	rec := snap.LayersOf("peat")[0]
+	v, _, err := s.Store().Version(ctx, rec.Digest)
+	if err != nil {
+		t.Fatal(err)
+	}
+	blank := *v.Layer
+	blank.Features = slices.Clone(v.Layer.Features)
+	for i := range blank.Features {
+		blank.Features[i].Values = make([]geo.Value, len(blank.Columns))
+	}
+	e := overlay.New()
+	defer e.Close()
+	if _, err := s.AddLayer(ctx, study.Import{File: "peat.geojson", Base: "peat.geojson", Layer: &blank, Role: "peat", Replace: rec.Name, AcceptProposals: true, Complete: true}, testTools{e}); err != nil {
+		t.Fatal(err)
+	}
+	r := compute(t, s, nil, 2)
+	n := 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		q, ok := c.Consequence("peat_ha")
+		if !ok || q.State != scoring.Number {
+			continue
+		}
+		n++
+		if loss, _ := c.Consequence("soil_carbon_loss_tc"); loss.State != scoring.Unknown {
+			t.Errorf("%s touches %.2f ha of peat of unknown depth and loses %v %v", c.ID(), q.Central, loss.State, loss.Central)
+		}
+	}
+	if n == 0 {
+		t.Fatal("no candidate touches peat")
+	}
+}
+
+func TestDoingNothingKeepsItsDistance(t *testing.T) {
+	ctx := context.Background()
+	s := smallStudy(t, 40)
+	for _, kv := range [][2]string{{"voice.far.weight.nearest_dwelling_m", "100"}, {"voice.far.weight.net_share", "100"}} {
+		if _, err := s.Set(ctx, "set", "", study.SettingEdit{Key: kv[0], Value: kv[1]}); err != nil {
+			t.Fatal(err)
+		}
+	}
+	r := compute(t, s, nil, 2)
+	for _, v := range r.Voices {
+		if v.Voice != "far" {
+			continue
+		}
+		for _, row := range v.Order {
+			if row.Site != NoSite {
+				continue
+			}
+			if x := row.Parts["nearest_dwelling_m"].Value; x == nil || *x != 1 {
+				t.Errorf("doing nothing stands near no dwelling, but has the value %v", x)
+			}
+			if x := row.Parts["net_share"].Value; x == nil || *x != 0 {
+				t.Errorf("doing nothing brings no energy, but has the value %v", x)
+			}
+		}
 	}
 }

@@ -81,12 +81,21 @@ func (r *runner) report(step string, total int) func(done int) {
 	return func(done int) { r.progress(step, done, total) }
 }
 
-// save writes new results and drops those that this state does not need.
+// save writes new results. Older ones stay, so that undo finds them valid, until more than half of
+// everything is new: then what this state does not need is dropped, which bounds the file.
 func (r *runner) save(ctx context.Context) error {
 	if r.cache == nil || len(r.pending) == 0 {
 		return nil
 	}
-	if err := r.cache.PutResults(ctx, r.pending, r.kept); err != nil {
+	all := 0
+	for _, keys := range r.kept {
+		all += len(keys)
+	}
+	keep := r.kept
+	if 2*len(r.pending) <= all {
+		keep = nil
+	}
+	if err := r.cache.PutResults(ctx, r.pending, keep); err != nil {
 		return fmt.Errorf("keep results: %w", err)
 	}
 	return nil

@@ -139,7 +139,9 @@ func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader)
 		}
 		switch {
 		case rec.Kind == "table":
-			w.tables[rec.Role] = v.Layer
+			if _, there := w.tables[rec.Role]; !there { // the first by name counts
+				w.tables[rec.Role] = v.Layer
+			}
 		default:
 			l := &layer{rec: rec, src: v.Layer, xy: make([]geo.XYGeometry, len(v.Layer.Features)), hash: make([][sha256.Size]byte, len(v.Layer.Features))}
 			for i, f := range v.Layer.Features {
@@ -198,12 +200,15 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	}
 	box = box.Grow(terrainMarginM)
 	cell := raw.CellX
-	if math.Abs(cell) < 1 { // degrees
+	if geographic(t, w.frame) {
 		cell *= metresPerDegree
 	}
-	nx, ny := int((box.MaxX-box.MinX)/cell)+1, int((box.MaxY-box.MinY)/cell)+1
+	// Cells stand at multiples of their size from the frame's centre, so that a site's heights do not
+	// depend on which other sites there are.
+	origin := geo.XY{X: math.Floor(box.MinX/cell) * cell, Y: math.Floor(box.MinY/cell) * cell}
+	nx, ny := int((box.MaxX-origin.X)/cell)+2, int((box.MaxY-origin.Y)/cell)+2
 	var bad error
-	g, err := terrain.Fill(geo.XY{X: box.MinX, Y: box.MinY}, cell, nx, ny, func(p geo.XY) (float64, bool) {
+	g, err := terrain.Fill(origin, cell, nx, ny, func(p geo.XY) (float64, bool) {
 		ll, err := w.frame.Inverse(p)
 		if err != nil {
 			bad = err
@@ -220,6 +225,13 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 		err = bad
 	}
 	return g, err
+}
+
+// geographic reports whether a system gives the frame's centre as degrees.
+func geographic(t *crs.Transform, f crs.Frame) bool {
+	c := f.Centre()
+	x, y, err := t.Inverse(c)
+	return err == nil && math.Abs(x-c.Lon) < 1 && math.Abs(y-c.Lat) < 1
 }
 
 // metresPerDegree sizes the cells of a grid in degrees; only their fineness depends on it.
@@ -271,10 +283,17 @@ func (w *world) makeSites() {
 	for li, l := range w.byRole["parcels"] {
 		for fi, f := range l.src.Features {
 			id := f.ID
-			if g, ok := group[f.ID]; ok {
+			g, grouped := group[f.ID]
+			if grouped {
 				id = g
 			}
 			i, ok := at[id]
+			if ok && !grouped {
+				// The same identifier in another parcel layer is another parcel.
+				id = l.rec.Name + "/" + f.ID
+				w.notices = append(w.notices, geo.Notice{Code: "same_parcel_twice", Severity: geo.Warning, Layer: l.rec.Name, Feature: f.ID, Args: map[string]string{"now": id}})
+				i, ok = at[id]
+			}
 			if !ok {
 				i = len(w.sites)
 				at[id] = i
@@ -372,11 +391,19 @@ func (w *world) makeOptions() error {
 	return nil
 }
 
-// cascade finds a setting by the most special name there is: prefix.<option>suffix, then the
-// technology's, then wind or solar. A user's setting of a general name stands before a default of a
-// special one.
+// names gives the names under which a part of an option finds its settings, the most special first. The
+// panels of a plant of both are named <option>_panels: a distance named after the option is the masts'.
+func (o option) names(part string) []string {
+	if o.wind && o.solar && part == solarPart {
+		return []string{o.id + "_panels", "solar_fixed", solarPart}
+	}
+	return []string{o.id, o.technology, part}
+}
+
+// cascade finds a setting by the most special name there is. A user's setting of a general name stands
+// before a default of a special one.
 func (w *world) cascade(prefix string, o option, part, suffix string) (key string, s study.Setting, ok bool) {
-	names := []string{o.id, o.technology, part}
+	names := o.names(part)
 	for _, n := range names {
 		if s, byUser, in := w.snap.Lookup(prefix + n + suffix); in && byUser {
 			return prefix + n + suffix, s, true

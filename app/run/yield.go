@@ -73,6 +73,12 @@ func (w *world) windPoints() ([]windPoint, error) {
 				pt.sectors = evenSectors(rs[0].w)
 				pt.typed = true
 			} else {
+				width := units.DegreesPerCircle / float64(len(rs))
+				for i, r := range rs {
+					if math.Abs(r.from-rs[0].from-float64(i)*width) > 0.5 || math.Abs(rs[0].from) > 0.5 {
+						return nil, fmt.Errorf("layer %q, point at %.0f, %.0f: its sectors are not equal sectors from north (%d rows, one begins at %g degrees)", l.rec.Name, p.X, p.Y, len(rs), r.from)
+					}
+				}
 				for _, r := range rs {
 					pt.sectors = append(pt.sectors, wind.Sector{FrequencyFrac: r.share, Weibull: r.w})
 				}
@@ -176,9 +182,13 @@ func (w *world) sunlight() (*sunlight, error) {
 				s.ghi[i] = g
 			}
 			if hasDHI {
-				if d[i], ok = f.Values[dhi].Float(); !ok {
-					hasDHI = false
+				x, ok := f.Values[dhi].Float()
+				y, err := units.Convert(x, unitOr(rec.Units[rec.Match["dhi"]], "kWh/(m2 month)"), "kWh/(m2 month)")
+				if err != nil {
+					return nil, fmt.Errorf("layer %q: %w", rec.Name, err)
 				}
+				d[i] = y
+				hasDHI = hasDHI && ok
 			}
 			if temp >= 0 {
 				if x, ok := f.Values[temp].Float(); ok {

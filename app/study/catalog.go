@@ -28,7 +28,8 @@ type Definition struct {
 	Choices    []string // for choice
 	Default    string   // "" means not in force, "not set" that the user must enter it
 	Unit       string
-	Legal      bool // a legal or policy value
+	Min, Max   string // least and greatest number; empty for none
+	Legal      bool   // a legal or policy value
 	What       string
 	Source     string
 	Provenance citedtable.Provenance
@@ -73,7 +74,7 @@ func LoadCatalog(fsys fs.FS) (*Catalog, error) {
 		return nil, err
 	}
 	for _, r := range t.Rows {
-		d := Definition{Key: r.Text("key"), Kind: r.Text("kind"), Default: r.Text("value"), Unit: r.Text("unit"), Legal: r.Text("legal") == "yes",
+		d := Definition{Key: r.Text("key"), Kind: r.Text("kind"), Default: r.Text("value"), Unit: r.Text("unit"), Min: r.Text("min"), Max: r.Text("max"), Legal: r.Text("legal") == "yes",
 			What: r.Text("what"), Source: r.Source, Provenance: r.Provenance}
 		if list, ok := strings.CutPrefix(d.Kind, "choice("); ok {
 			d.Kind, d.Choices = "choice", strings.Split(strings.TrimSuffix(list, ")"), "|")
@@ -189,6 +190,12 @@ func (d Definition) CheckValue(text string) (string, error) {
 		if err != nil || f != f || f > 1e300 || f < -1e300 {
 			return "", fmt.Errorf("%q is not a number; %s is given in %s", text, d.Key, orPlain(d.Unit))
 		}
+		if lo, err := strconv.ParseFloat(d.Min, 64); err == nil && f < lo {
+			return "", fmt.Errorf("%s is less than %s", text, strings.TrimSpace(d.Min+" "+unitWord(d.Unit)))
+		}
+		if hi, err := strconv.ParseFloat(d.Max, 64); err == nil && f > hi {
+			return "", fmt.Errorf("%s is more than %s", text, strings.TrimSpace(d.Max+" "+unitWord(d.Unit)))
+		}
 		return strconv.FormatFloat(f, 'g', -1, 64), nil
 	case "choice":
 		for _, c := range d.Choices {
@@ -207,6 +214,13 @@ func (d Definition) CheckValue(text string) (string, error) {
 		return "", fmt.Errorf("%q is neither yes nor no", text)
 	}
 	return text, nil
+}
+
+func unitWord(unit string) string {
+	if unit == "1" {
+		return ""
+	}
+	return unit
 }
 
 func orPlain(unit string) string {

@@ -24,7 +24,7 @@ type Rule struct {
 	// empty.
 	Boundary bool
 	// Checked says that polygon features are known to be valid, as those of a Layer are, so that they
-	// are not checked again.
+	// are not checked again. Nobody may alter them from then on: an Engine remembers what they take.
 	Checked bool
 }
 
@@ -87,6 +87,9 @@ const allShare = 1e-9
 // lose their tip. A part exactly w wide stays. What is left and what is taken are computed apart; when they
 // do not add up to gross within 1e-6, or a part is out of its bounds, the site is computed again on a grid of
 // 1 micrometre, then 1 mm, then 1 cm, then refused with ErrNotComputed.
+//
+// The Engine remembers what it found out about the last site. Calls for one site under several rulesets are
+// therefore best made one after the other on one Engine; the results are the same in any other way.
 func (e *Engine) Buildable(in BuildableInput) (out BuildableResult, err error) {
 	if err := in.check(); err != nil {
 		return out, fmt.Errorf("buildable area: %w", err)
@@ -137,6 +140,9 @@ func (in BuildableInput) check() error {
 func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64) {
 	out = BuildableResult{Rules: make([]RuleTaken, len(in.Rules))}
 	site := e.raw(in.Site)
+	if e.grid == 0 {
+		e.memory.at(e.buf)
+	}
 	if !site.IsValid() {
 		site = e.makeValid(site)
 		out.Repaired++
@@ -155,36 +161,33 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 	slices.SortFunc(order, func(a, b int) int { return cmp.Compare(in.Rules[a].Name, in.Rules[b].Name) })
 
 	var active []int // rules that take anything, in that order
-	var regions []*geos.Geom
+	var taking []*known
 	all := 0
 	for _, i := range order {
 		t := &out.Rules[i]
 		t.Name, t.Taken = in.Rules[i].Name, geo.XYGeometry{Kind: geo.Polygons}
-		region, whole := e.region(in.Rules[i], site, box, &out.Repaired)
-		if region == nil {
+		k := e.takes(in.Rules[i], site, box)
+		out.Repaired += k.repaired
+		if k.region == nil || !k.whole && k.areaM2 <= 0 {
 			continue
 		}
-		own := site
-		if !whole {
-			own = e.overlay(intersection, region, site)
-		}
-		area := own.Area()
-		if area <= 0 {
-			continue
-		}
-		if whole || out.GrossM2-area <= allShare*out.GrossM2 {
-			t.TakesAll, own, area = true, site, out.GrossM2
+		t.SharedM2 = k.areaM2 // until the part taken alone is known
+		if k.whole || out.GrossM2-k.areaM2 <= allShare*out.GrossM2 {
+			t.TakesAll, t.SharedM2 = true, out.GrossM2
 			all++
 		}
-		t.SharedM2 = area // until the part taken alone is known
 		if in.KeepTaken {
+			own := site
+			if !t.TakesAll {
+				own = e.overlay(intersection, e.read(k.region), site)
+			}
 			t.Taken = e.give(own, geo.Polygons)
 		}
 		active = append(active, i)
-		regions = append(regions, region)
+		taking = append(taking, k)
 	}
-	left, takenM2 := e.alone(site, regions, active, all, &out)
-	leftM2 := left.Area()
+	left, takenM2 := e.alone(site, taking, active, all, &out)
+	leftM2 := left.areaM2
 	off = out.GrossM2 - leftM2 - takenM2
 	sumAlone := 0.0
 	for _, i := range active {
@@ -200,10 +203,10 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 	out.TakenSharedM2 = math.Max(0, takenM2-sumAlone)
 
 	kept := left
-	if w := in.SmallestWidthM; w > 0 && !left.IsEmpty() {
-		kept = e.wideEnough(left, w)
+	if w := in.SmallestWidthM; w > 0 && leftM2 > 0 {
+		kept = e.recall(name('w', taking, w), func() *geos.Geom { return e.wideEnough(left.in(e), w) })
 	}
-	out.Buildable = e.give(kept, geo.Polygons)
+	out.Buildable = e.give(kept.in(e), geo.Polygons)
 	if in.SmallestPatchM2 > 0 {
 		out.Buildable.Parts = slices.DeleteFunc(out.Buildable.Parts, func(part [][]geo.XY) bool {
 			return partArea(part) < in.SmallestPatchM2
@@ -229,64 +232,114 @@ func worse(a, b float64) float64 {
 
 // alone finds the land left, the area taken by all rules together, what each takes alone. One or more
 // rules that take all leave nothing: two of them share everything.
-func (e *Engine) alone(site *geos.Geom, regions []*geos.Geom, active []int, all int, out *BuildableResult) (left *geos.Geom, takenM2 float64) {
-	n := len(regions)
+func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, out *BuildableResult) (left *drawn, takenM2 float64) {
+	n := len(taking)
 	if n == 0 {
-		return site, 0
+		return &drawn{g: site, shape: &shape{areaM2: out.GrossM2}}, 0
 	}
+	nothing := &drawn{g: e.own(e.ctx.NewEmptyPolygon(), "empty"), shape: &shape{}}
 	if all > 1 {
-		return e.own(e.ctx.NewEmptyPolygon(), "empty"), out.GrossM2
+		return nothing, out.GrossM2
+	}
+	if n == 1 && all == 1 {
+		out.Rules[active[0]].AloneM2 = out.GrossM2
+		return nothing, out.GrossM2
+	}
+	// Rules first to last may take something alone; their land is asked for with after[from:].
+	first, last, from := 0, n-1, 0
+	if all == 1 { // only the one that takes all
+		first = slices.IndexFunc(active, func(i int) bool { return out.Rules[i].TakesAll })
+		last, from = first, first+1
+	}
+	regions := make([]*drawn, n)
+	for k := range regions {
+		regions[k] = &drawn{shape: &shape{wkb: taking[k].region}}
+	}
+	// before[k] is the site without the regions before k.
+	before := make([]*drawn, n)
+	before[0] = &drawn{g: site, shape: &shape{areaM2: out.GrossM2}}
+	for k := 1; k <= last; k++ {
+		before[k] = e.recall(name('b', taking[:k], 0), func() *geos.Geom {
+			return e.overlay(difference, before[k-1].in(e), regions[k-1].in(e))
+		})
+	}
+	left = nothing
+	if all == 0 {
+		// The last difference is done on a grid, where gaps, spikes without area collapse that rounding
+		// left between regions side by side.
+		left = e.recall(name('l', taking, 0), func() *geos.Geom {
+			return e.overlayFrom(max(e.grid, finest), difference, before[n-1].in(e), regions[n-1].in(e))
+		})
 	}
 	if n == 1 {
 		r := &out.Rules[active[0]]
 		r.AloneM2 = r.SharedM2 // which is still all that the rule takes
-		if r.TakesAll {
-			return e.own(e.ctx.NewEmptyPolygon(), "empty"), r.AloneM2
-		}
-		return e.overlayFrom(max(e.grid, finest), difference, site, regions[0]), r.AloneM2
+		return left, r.AloneM2
 	}
-	// after[k] is the union of regions[k:]; left loses one region after the other.
-	after := make([]*geos.Geom, n)
+	// after[k] is the union of regions[k:].
+	after := make([]*drawn, n)
 	after[n-1] = regions[n-1]
-	for k := n - 2; k >= 0; k-- {
-		after[k] = e.overlay(union, regions[k], after[k+1])
+	for k := n - 2; k >= from; k-- {
+		after[k] = e.recall(name('u', taking[k:], 0), func() *geos.Geom {
+			return e.overlay(union, regions[k].in(e), after[k+1].in(e))
+		})
 	}
-	left = site
-	lifted := make([]float64, n) // area left if the rule were lifted
-	for k, i := range active {
-		if all == 0 || out.Rules[i].TakesAll {
-			without := left
-			if k+1 < n {
-				without = e.overlay(difference, left, after[k+1])
-			}
-			lifted[k] = without.Area()
+	for k := first; k <= last; k++ {
+		lifted := before[k].areaM2 // area left if the rule were lifted
+		if k+1 < n {
+			lifted = e.recall(name('a', taking, float64(k)), func() *geos.Geom {
+				return e.overlay(difference, before[k].in(e), after[k+1].in(e))
+			}).areaM2
 		}
-		// The last difference is done on a grid, where gaps, spikes without area collapse that rounding
-		// left between regions side by side.
-		level := e.grid
-		if k == n-1 {
-			level = max(level, finest)
-		}
-		left = e.overlayFrom(level, difference, left, regions[k])
-	}
-	if all == 1 {
-		left = e.own(e.ctx.NewEmptyPolygon(), "empty")
-	}
-	leftM2 := left.Area()
-	for k, i := range active {
-		if all == 0 || out.Rules[i].TakesAll {
-			out.Rules[i].AloneM2 = lifted[k] - leftM2
-		}
+		out.Rules[active[k]].AloneM2 = lifted - left.areaM2
 	}
 	if all == 1 {
 		return left, out.GrossM2
 	}
-	return left, e.overlay(intersection, after[0], site).Area()
+	return left, e.recall(name('t', taking, 0), func() *geos.Geom {
+		return e.overlay(intersection, after[0].in(e), site)
+	}).areaM2
+}
+
+// takes gives what a rule takes from the site, from memory if it is known.
+func (e *Engine) takes(r Rule, site *geos.Geom, box geo.Extent) *known {
+	remember := e.grid == 0
+	if remember {
+		if k := e.memory.given(r); k != nil {
+			e.retries += k.retries
+			return k
+		}
+	}
+	var ps []piece
+	reach := box.Grow(r.SetbackM*arcFactor + 1)
+	if !r.Boundary {
+		ps = pieces(r, reach)
+		if remember {
+			if k := e.memory.alike(r, ps); k != nil {
+				e.retries += k.retries
+				return k
+			}
+		}
+	}
+	before := e.retries
+	k := &known{}
+	region, whole := e.region(r, ps, reach, site, box, &k.repaired)
+	if region != nil {
+		k.region, k.whole = region.ToWKB(), whole
+		if !whole {
+			k.areaM2 = e.overlay(intersection, region, site).Area()
+		}
+	}
+	k.retries = e.retries - before
+	if remember {
+		e.memory.add(k, r, ps)
+	}
+	return k
 }
 
 // region gives what a rule takes in the neighbourhood of the site, nil for nothing; whole says that it
 // covers the site. Regions reach beyond the site, so that their edges do not run along the site's.
-func (e *Engine) region(r Rule, site *geos.Geom, box geo.Extent, repaired *int) (region *geos.Geom, whole bool) {
+func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, box geo.Extent, repaired *int) (region *geos.Geom, whole bool) {
 	if r.Boundary {
 		if r.SetbackM == 0 {
 			return nil, false
@@ -299,32 +352,26 @@ func (e *Engine) region(r Rule, site *geos.Geom, box geo.Extent, repaired *int) 
 		}
 		return e.overlay(difference, around, inner), false
 	}
-	reach := box.Grow(r.SetbackM*arcFactor + 1)
+	// What may cover the site comes first: then the others need no work.
+	wide := make([]*geos.Geom, len(ps))
+	for i, p := range ps {
+		if !within(box, p.x.Grow(r.SetbackM*arcFactor)) {
+			continue
+		}
+		if wide[i] = e.widened(r, p, reach, repaired); !wide[i].IsEmpty() && e.covers(wide[i], site) {
+			return wide[i], true
+		}
+	}
 	var members []*geos.Geom
-	for _, p := range pieces(r, reach) {
-		g := e.raw(p.g)
-		if p.g.Kind == geo.Polygons && !r.Checked && !g.IsValid() {
-			g = e.makeValid(g)
-			*repaired++
-		}
-		if !within(p.x, reach) {
-			cut := e.clip(g, reach)
-			g.Destroy()
-			g = cut
-		}
-		if r.SetbackM > 0 {
-			wide := e.setback(g, r.SetbackM)
-			g.Destroy()
-			g = wide
+	for i, p := range ps {
+		g := wide[i]
+		if g == nil {
+			g = e.widened(r, p, reach, repaired)
 		}
 		if g.IsEmpty() {
 			continue
 		}
-		x := p.x.Grow(r.SetbackM * arcFactor)
-		if within(box, x) && e.covers(g, site) {
-			return g, true
-		}
-		if !within(x, box.Grow(1)) {
+		if !within(p.x.Grow(r.SetbackM*arcFactor), box.Grow(1)) {
 			cut := e.clip(g, box.Grow(1))
 			g.Destroy()
 			if g = cut; g.IsEmpty() {
@@ -337,6 +384,26 @@ func (e *Engine) region(r Rule, site *geos.Geom, box geo.Extent, repaired *int) 
 		return nil, false
 	}
 	return e.join(members), false
+}
+
+// widened takes a piece into the context: valid, cut to the reach, widened by the setback.
+func (e *Engine) widened(r Rule, p piece, reach geo.Extent, repaired *int) *geos.Geom {
+	g := e.raw(p.g)
+	if p.g.Kind == geo.Polygons && !r.Checked && !g.IsValid() {
+		g = e.makeValid(g)
+		*repaired++
+	}
+	if !within(p.x, reach) {
+		cut := e.clip(g, reach)
+		g.Destroy()
+		g = cut
+	}
+	if r.SetbackM > 0 {
+		wide := e.setback(g, r.SetbackM)
+		g.Destroy()
+		g = wide
+	}
+	return g
 }
 
 // piece is one part of a feature with its extent.
@@ -354,14 +421,9 @@ func pieces(r Rule, reach geo.Extent) []piece {
 			continue
 		}
 		for _, part := range f.Parts {
-			x := geo.EmptyExtent()
-			for _, ring := range part {
-				for _, p := range ring {
-					if !p.Finite() {
-						fail("rule %q, feature %d: a position is not finite: %v", r.Name, i+1, p)
-					}
-					x = x.Add(p)
-				}
+			x, finite := extentOf(part)
+			if !finite {
+				fail("rule %q, feature %d: a position is not finite", r.Name, i+1)
 			}
 			if !x.Empty() && x.Meets(reach) {
 				out = append(out, piece{geo.XYGeometry{Kind: f.Kind, Parts: [][][]geo.XY{part}}, x})
@@ -375,6 +437,31 @@ func pieces(r Rule, reach geo.Extent) []piece {
 			cmp.Compare(a.g.Kind, b.g.Kind), compareParts(a.g.Parts[0], b.g.Parts[0]))
 	})
 	return out
+}
+
+// extentOf gives the extent of a part, whether its positions are finite, in one quick pass: the scan of large
+// features is a good share of a site's work.
+func extentOf(part [][]geo.XY) (x geo.Extent, finite bool) {
+	x = geo.EmptyExtent()
+	zero := 0.0 // v − v is not a number for a v that is none or is infinite
+	for _, ring := range part {
+		for _, p := range ring {
+			zero += (p.X - p.X) + (p.Y - p.Y)
+			if p.X < x.MinX {
+				x.MinX = p.X
+			}
+			if p.X > x.MaxX {
+				x.MaxX = p.X
+			}
+			if p.Y < x.MinY {
+				x.MinY = p.Y
+			}
+			if p.Y > x.MaxY {
+				x.MaxY = p.Y
+			}
+		}
+	}
+	return x, zero == 0
 }
 
 func within(x, y geo.Extent) bool {

@@ -434,6 +434,7 @@ func BenchmarkBuildable(b *testing.B) {
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			e, in := New(), scene(n)
 			for b.Loop() {
+				e.memory = memory{}
 				if _, err := e.Buildable(in); err != nil {
 					b.Fatal(err)
 				}
@@ -454,6 +455,7 @@ func BenchmarkBuildableFromLayers(b *testing.B) {
 				in.Rules[i] = l.Rule(rule.Name, geo.ExtentOf(in.Site))
 			}
 			for b.Loop() {
+				e.memory = memory{}
 				if _, err := e.Buildable(in); err != nil {
 					b.Fatal(err)
 				}

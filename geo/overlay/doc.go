@@ -15,7 +15,7 @@
 //   - A collection owns its members. Engine.collect is the only maker of collections and clears the slice
 //     it was given.
 //   - Memory of the library is invisible to Go's collector. Every geometry made in a call is destroyed
-//     when the call ends.
+//     when the call ends; what Buildable remembers of a site is kept as bytes.
 //   - Constructors panic on bad rings. Geometry goes in as well-known binary; a panic ends at the call's
 //     border as an error, and the context is replaced.
 //   - Positions that are not finite pass the reader and come out as nil or NaN. They are refused on the

@@ -59,6 +59,7 @@ type Engine struct {
 	buf     []byte
 	retries int
 	grid    int // first of gridsM that the job in hand still trusts
+	memory  memory
 }
 
 // New gives an Engine with a context of its own.
@@ -70,7 +71,7 @@ func (e *Engine) Close() error {
 		return ErrBusy
 	}
 	defer e.busy.Store(false)
-	e.closed, e.ctx = true, nil
+	e.closed, e.ctx, e.memory = true, nil, memory{}
 	return nil
 }
 
@@ -107,7 +108,7 @@ func (e *Engine) do(name string, job func()) (err error) {
 			return
 		}
 		// Anything else came from the library or is a fault: the context is not trusted any more.
-		e.ctx = geos.NewContext()
+		e.ctx, e.memory = geos.NewContext(), memory{}
 		err = fmt.Errorf("%s: %w: %v", name, ErrNotComputed, r)
 	}()
 	job()
@@ -141,7 +142,12 @@ func (e *Engine) raw(g geo.XYGeometry) *geos.Geom {
 	if e.buf, err = encode(e.buf[:0], g); err != nil {
 		panic(failure{err})
 	}
-	out, err := e.ctx.NewGeomFromWKB(e.buf)
+	return e.read(e.buf)
+}
+
+// read takes well-known binary into the context.
+func (e *Engine) read(wkb []byte) *geos.Geom {
+	out, err := e.ctx.NewGeomFromWKB(wkb)
 	if err != nil {
 		fail("%w: %v", ErrInvalid, err)
 	}

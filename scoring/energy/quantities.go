@@ -78,7 +78,7 @@ func Quantities() []scoring.Quantity {
 			Inputs: []string{"wind_kw", "solar_kw", "tracking_kw", "vertical_kw", "elevated_kw", "wind_turbine.mj", "pv_system_mono.mj", "pv_tracker_surcharge.mj", "pv_vertical_surcharge.mj", "pv_elevated_surcharge.mj"},
 			Eval:   plain(scoring.Dot(5))},
 		{Name: "input_works_mj", Unit: "MJ", Title: "Energy spent on pads, tracks and fence", Formula: "wind_crane_pad × turbines + track × km + pv_fence × kW", Source: "inventory",
-			Inputs: []string{"turbines", "track_km", "solar_kw", "wind_crane_pad.mj", "track.mj", "pv_fence.mj"}, Eval: plain(scoring.Dot(3))},
+			Inputs: []string{"turbines", "track_counted_km", "solar_kw", "wind_crane_pad.mj", "track.mj", "pv_fence.mj"}, Eval: plain(scoring.Dot(3))},
 		{Name: "input_plant_mj", Unit: "MJ", Title: "Energy spent up to the plant's terminals", Formula: "generator + works", Source: murphy,
 			Inputs: []string{"input_generator_mj", "input_works_mj"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1] })},
 		{Name: "input_connection_mj", Unit: "MJ", Title: "Energy spent on the connection", Formula: "cable × km × circuits + transformer × kVA + switchgear", Source: "inventory",

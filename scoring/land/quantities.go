@@ -12,7 +12,7 @@ func Quantities() []scoring.Quantity {
 	const denholm = "build-up of pads, foundations and tracks; compare Denholm et al. 2009, NREL/TP-6A2-45834"
 	return []scoring.Quantity{
 		{Name: "footprint_permanent_ha", Unit: "ha", Title: "Ground sealed or built", Formula: "turbines × (crane pad + foundation) + track × width + sealed share × fenced ground", Source: denholm,
-			Inputs: []string{"turbines", "crane_pad_m2", "foundation_m2", "track_km", "track_width_m", "fence_ha", "pv_sealed_frac"}, Eval: plain(func(x []float64) float64 {
+			Inputs: []string{"turbines", "crane_pad_m2", "foundation_m2", "track_counted_km", "track_width_m", "fence_ha", "pv_sealed_frac"}, Eval: plain(func(x []float64) float64 {
 				return (x[0]*(x[1]+x[2])+x[3]*units.MPerKm*x[4])/units.M2PerHa + float64(x[5]*x[6])
 			})},
 		{Name: "footprint_temporary_ha", Unit: "ha", Title: "Ground disturbed while building", Formula: "turbines × laydown + compound, for wind; trenches are not counted yet", Source: denholm,
@@ -24,6 +24,8 @@ func Quantities() []scoring.Quantity {
 			})},
 		{Name: "footprint_direct_ha", Unit: "ha", Title: "Ground taken directly", Formula: "pads, foundations and tracks of wind + everything inside the solar fence", Source: denholm,
 			Inputs: []string{"footprint_permanent_ha", "fence_ha", "pv_sealed_frac"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1]*(1-x[2]) })},
+		{Name: "footprint_total_ha", Unit: "ha", Title: "Total ground of plant", Formula: "union of the spacing ellipses inside the site, or the fence; never less than the ground taken directly", Source: "area definitions as in van Zalk & Behrens 2018",
+			Inputs: []string{"plant_ground_ha", "footprint_direct_ha"}, Eval: plain(func(x []float64) float64 { return max(x[0], x[1]) })},
 		{Name: "capacity_density_kw_per_ha", Unit: "kW/ha", Title: "Power per hectare", Formula: "rated_kw / footprint_total_ha", Source: "identity",
 			Inputs: []string{"rated_kw", "footprint_total_ha"}, Eval: plain(func(x []float64) float64 { return x[0] / x[1] })},
 		{Name: "occupation_ha_yr", Unit: "ha yr", Title: "Ground times years", Formula: "footprint_direct × life + footprint_temporary × years disturbed", Source: "land occupation as in life cycle assessment",
@@ -47,23 +49,29 @@ func Quantities() []scoring.Quantity {
 				}
 				return sum.LossTC, nil
 			}))},
-		{Name: "soil_loss_peat_tc", Unit: "t C", Title: "Carbon lost from peat", Formula: "dug: sealed ground on peat × depth × carbon × share oxidised; drained: strips beside tracks and pits, fenced peat; never more than the stock", Source: "IPCC 2013 Wetlands Supplement; strips after Nayak et al. 2008",
-			Inputs: []string{"peat_ha", "peat_share", "peat_depth_m", "footprint_permanent_ha", "track_km", "turbines", "fence_ha", "peat_carbon_kg_per_m3", "peat_oxidised_share", "peat_drain_width_m", "peat_drained_tc_per_ha_yr", "life_yr", "pv_sealed_frac"},
+		{Name: "peat_dug_ha", Unit: "ha", Title: "Peat dug away", Formula: "sealed ground × share on peat", Source: "identity",
+			Inputs: []string{"footprint_permanent_ha", "peat_share"}, Eval: scoring.NoneIsZero(plain(func(x []float64) float64 { return x[0] * x[1] }))},
+		{Name: "peat_drained_ha", Unit: "ha", Title: "Peat drained", Formula: "strips beside tracks and around pits on peat, fenced peat that is not dug", Source: "strips after Nayak et al. 2008; fenced peat taken as drained: assumption of this program",
+			Inputs: []string{"peat_share", "track_counted_km", "turbines", "fence_ha", "peat_drain_width_m", "pv_sealed_frac"},
 			Eval: scoring.NoneIsZero(guarded("peat", func(x []float64) (float64, error) {
 				if x[0] == 0 {
 					return 0, nil
 				}
-				pits := make([]float64, int(x[5]))
-				for i := range pits {
-					pits[i] = pitPerimeterM
-				}
-				drained, err := DrainedAreaHa(x[4]*units.MPerKm*x[1], pits, x[9])
+				strips, err := DrainedAreaHa(x[1]*units.MPerKm*x[0], nil, x[4])
 				if err != nil {
 					return 0, err
 				}
-				drained += x[6] * x[1] * (1 - x[12])
-				loss, err := Peat{DepthM: x[2], CarbonKgPerM3: x[7], ExcavatedHa: x[3] * x[1], ExcavatedDepthM: x[2], OxidisedFrac: x[8],
-					DrainedHa: drained, DrainDepthM: x[2], EmissionTCPerHaYr: x[10], DrainYears: x[11]}.Loss()
+				ring, err := DrainedAreaHa(0, []float64{pitPerimeterM}, x[4])
+				if err != nil {
+					return 0, err
+				}
+				return strips + float64(x[2]*x[0]*ring) + float64(x[3]*x[0]*(1-x[5])), nil
+			}))},
+		{Name: "soil_loss_peat_tc", Unit: "t C", Title: "Carbon lost from peat", Formula: "dug: area × depth × carbon × share oxidised; drained: area × emission × life; never more than the stock", Source: "IPCC 2013 Wetlands Supplement",
+			Inputs: []string{"peat_dug_ha", "peat_drained_ha", "peat_depth_m", "peat_carbon_kg_per_m3", "peat_oxidised_share", "peat_drained_tc_per_ha_yr", "life_yr"},
+			Eval: scoring.NoneIsZero(guarded("peat", func(x []float64) (float64, error) {
+				loss, err := Peat{DepthM: x[2], CarbonKgPerM3: x[3], ExcavatedHa: x[0], ExcavatedDepthM: x[2], OxidisedFrac: x[4],
+					DrainedHa: x[1], DrainDepthM: x[2], EmissionTCPerHaYr: x[5], DrainYears: x[6]}.Loss()
 				return loss.TotalTC, err
 			}))},
 		{Name: "soil_carbon_loss_tc", Unit: "t C", Title: "Soil carbon lost", Formula: "mineral soil + peat", Source: "IPCC 2006 Guidelines vol. 4, Tier 1 form",
@@ -80,8 +88,8 @@ func Quantities() []scoring.Quantity {
 			})},
 		{Name: "biomass_carbon_loss_tc", Unit: "t C", Title: "Plant carbon lost", Formula: "forest cleared × dry matter × (1 + root share) × carbon share", Source: "IPCC 2006 Guidelines vol. 4 tables 4.4 and 4.7",
 			Inputs: []string{"forest_ha", "forest_biomass_tdm_per_ha", "forest_root_ratio", "biomass_carbon_frac"}, Eval: guarded("biomass", func(x []float64) (float64, error) { return ForestCarbonTC(x[0], x[1], x[2], x[3]) })},
-		{Name: "regrowth_yr", Unit: "yr", Title: "Years to grow back", Formula: "the longer of: peat carbon lost / (peat touched × growth of a bog); 20 yr for mineral soil", Source: "Nayak et al. 2008 for the growth of a bog; IPCC 2006 for the 20 yr",
-			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc", "peat_ha", "regrowth_peat_tc_per_ha_yr", "soc_transition_yr"}, Eval: scoring.NoneIsZero(scoring.Custom(func(in []scoring.Value) scoring.Value {
+		{Name: "regrowth_yr", Unit: "yr", Title: "Years to grow back", Formula: "the longer of: peat carbon lost / ((peat dug + drained) × growth of a bog); 20 yr for mineral soil", Source: "Nayak et al. 2008 for the growth of a bog; IPCC 2006 for the 20 yr",
+			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc", "peat_dug_ha", "peat_drained_ha", "regrowth_peat_tc_per_ha_yr", "soc_transition_yr"}, Eval: scoring.NoneIsZero(scoring.Custom(func(in []scoring.Value) scoring.Value {
 				if v, missing := scoring.FirstMissing(in); missing {
 					return v
 				}
@@ -91,10 +99,10 @@ func Quantities() []scoring.Quantity {
 				}
 				yr := 0.0
 				if mineral > 0 {
-					yr = in[4].X
+					yr = in[5].X
 				}
 				if peat > 0 {
-					r, err := RegrowthYears(peat, in[2].X, in[3].X)
+					r, err := RegrowthYears(peat, in[2].X+in[3].X, in[4].X)
 					switch {
 					case err != nil:
 						return scoring.UnknownBecause("regrowth")

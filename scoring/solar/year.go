@@ -124,6 +124,9 @@ type YearInput struct {
 	Plant   Plant
 }
 
+// PowerBins is the number of steps of a plant's distribution of power.
+const PowerBins = 100
+
 // YearResult is the first year of a plant. Energies are at the plant's alternating-current terminals.
 type YearResult struct {
 	SpecificYieldKWhPerKWp float64     // first year
@@ -136,7 +139,10 @@ type YearResult struct {
 	GHIKWhPerM2            [12]float64 // light on the open ground
 	GroundKWhPerM2         [12]float64 // mean light on the ground between and under the rows
 	DiffuseShare           float64     // of the light on the open ground
-	Notes                  []MonthNote
+	// PowerHours are the hours of the year in which the inverters give from b to b+1 hundredths of their
+	// rating, before the losses behind them; hours without power are left out.
+	PowerHours [PowerBins]float64
+	Notes      []MonthNote
 }
 
 // CropLight gives the mean light on the ground between and under the rows as a share of that on open
@@ -243,6 +249,7 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 	frame := NewFrame(axis, m.SlopeDeg, m.AspectDeg)
 	var acc [12][sums]float64
 	var ground [12]float64
+	var hours [PowerBins]float64
 	var n sun.Vec
 	var cosTilt float64
 	var front, rear face
@@ -368,9 +375,14 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 			sum[sumInverted] += float64(w * ac * units.WPerKW)
 			sum[sumClipped] += float64(w * out * units.WPerKW)
 			ground[mo.month] += float64(w * onGround)
+			if out > 0 {
+				hours[min(PowerBins-1, int(out/rated*PowerBins))] += float64(w * units.WPerKW)
+			}
 		}
 	}
-	return c.result(&p, &acc, ground), nil
+	r := c.result(&p, &acc, ground)
+	r.PowerHours = hours
+	return r, nil
 }
 
 // left gives the share of an open view that rows leave; all of it when nothing is seen anyway.

@@ -2,7 +2,6 @@ package weigh
 
 import (
 	"fmt"
-	"hash/fnv"
 	"math"
 	"math/rand/v2"
 )
@@ -54,16 +53,13 @@ func DrawsFor(halfWidth, z float64) (int, error) {
 	return int(math.Ceil(n - 1e-9)), nil
 }
 
-// seedUnknown sets the stream of an item's unknown values in one mix. The odd factor keeps these
-// streams apart from those of the weights.
-func seedUnknown(p *rand.PCG, seed, idHash uint64, mix int) {
-	p.Seed(seed^idHash, uint64(mix)*0x9e3779b97f4a7c15+1)
-}
+// unknownStream keeps the streams of unknown values apart from those of the weights.
+const unknownStream = 0x6b65795f756e6b6e
 
-func hashID(id string) uint64 {
-	h := fnv.New64a()
-	h.Write([]byte(id))
-	return h.Sum64()
+// seedUnknown sets the stream of unknown values in one mix. A key's unknown value is one state of the
+// world for all items that lack it: with a draw for each item the luckiest of a thousand would win.
+func seedUnknown(p *rand.PCG, seed uint64, mix int) {
+	p.Seed(seed^unknownStream, uint64(mix)*0x9e3779b97f4a7c15+1)
 }
 
 // firstInMixes counts in how many mixes each item comes first, and keeps the first mix that it won.
@@ -113,16 +109,15 @@ func (m *matrix) firstInMixes(in *Input, set spread, order []int) (count []int, 
 			field = append(field, i)
 		}
 	}
-	hash := make([]uint64, m.n)
-	for _, i := range field {
-		if !m.complete[i] {
-			hash[i] = hashID(m.ids[i])
-		}
-	}
 	var stream rand.PCG
 	draw := rand.New(&stream)
+	missing := make([]float64, m.d) // one draw a key and mix, shared by all that lack the key
 	for mix := range in.Mixes {
 		u := mixRaw(m.w, in.MixSpread, in.Seed, mix)
+		seedUnknown(&stream, in.Seed, mix)
+		for k := range missing {
+			missing[k] = draw.Float64()
+		}
 		best, top := -1, 0.0
 		for _, i := range field {
 			row := m.midRow(i)
@@ -141,10 +136,9 @@ func (m *matrix) firstInMixes(in *Input, set spread, order []int) (count []int, 
 			if !m.complete[i] {
 				copy(buf, row)
 				row = buf
-				seedUnknown(&stream, in.Seed, hash[i], mix)
 				for k := range buf {
 					if m.unknown(i, k) {
-						buf[k] = draw.Float64()
+						buf[k] = missing[k]
 					}
 				}
 			}

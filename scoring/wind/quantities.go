@@ -7,7 +7,7 @@ import "groundtally/scoring"
 func Quantities() []scoring.Quantity {
 	return []scoring.Quantity{
 		{Name: "energy_p50_adjusted_mwh_per_yr", Unit: "MWh/yr", Title: "Yearly energy, bias taken off", Formula: "wind energy × (1 + long_run_bias_frac) + solar energy", Source: "Hammond et al. 2026, Wind Energy Science 11:1251",
-			Inputs: []string{"wind_p50_mwh", "solar_p50_mwh", "turbine_count", "long_run_bias_frac"}, Eval: scoring.Plain(func(x []float64) float64 {
+			Inputs: []string{"wind_first_year_mwh", "solar_first_year_mwh", "turbine_count", "long_run_bias_frac"}, Eval: scoring.Plain(func(x []float64) float64 {
 				return BiasAdjusted(x[0], x[3]) + x[1]
 			})},
 	}
