@@ -6,7 +6,9 @@ import (
 	_ "embed"
 	"fmt"
 	"html/template"
+	"slices"
 	"sort"
+	"strconv"
 	"strings"
 
 	"groundtally/app/draw"
@@ -15,7 +17,6 @@ import (
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
-	"groundtally/scoring"
 )
 
 //go:embed page.html
@@ -80,7 +81,7 @@ var cautions = []string{
 
 // alwaysNotAssessed is what the program does not look at whatever the data.
 var alwaysNotAssessed = []string{
-	"noise, shadow flicker, visibility and glare (in this version of the program)",
+	"noise, shadow flicker, visibility and glare, in this version of the program: where a voice weighs them they are unknown",
 	"a routed grid connection: the length is the straight distance times a detour factor",
 	"terrain horizon, slope and orientation of the ground in the solar yield; hill speed-up, blockage and far wakes in the wind yield",
 	"birds and bats, aviation and radar, telecommunication links, archaeology below ground",
@@ -89,171 +90,195 @@ var alwaysNotAssessed = []string{
 	"ownership and contracts besides the noted consent; the opinion of anyone not asked",
 }
 
-type tableRow struct {
-	ID, Site, Plant string
-	Cells           []cell
-	Marks           string
+// book is what the parts of a page share while it is written.
+type book struct {
+	in    Input
+	info  map[string]run.KeyInfo
+	plant map[string]string         // title by id
+	by    map[string]*run.Candidate // fitted and other candidates by id
+	shown map[string]bool           // candidates among the places shown
+	told  bool                      // who told a spare capacity may be named
+	notes map[string]int            // number of each notice on consequences
+	list  []string                  // their codes, by number
 }
 
-type cell struct {
-	Text, Full, Class string
+func newBook(in Input) *book {
+	b := &book{in: in, info: map[string]run.KeyInfo{}, plant: map[string]string{}, by: map[string]*run.Candidate{}, shown: map[string]bool{}, told: true, notes: map[string]int{}}
+	for _, k := range in.Params.Keys() {
+		b.info[k.Key] = k
+	}
+	for _, p := range in.Snapshot.Plants() {
+		b.plant[p] = first(in.Snapshot.Text("plant."+p+".title"), p)
+	}
+	for i := range in.Results.Candidates {
+		c := &in.Results.Candidates[i]
+		b.by[c.ID()] = c
+	}
+	for _, l := range in.Snapshot.Layers {
+		for _, field := range []string{"told_by", "told_on"} {
+			if col := l.Match[field]; col != "" && slices.Contains(l.Personal, col) {
+				b.told = false
+			}
+		}
+	}
+	return b
 }
 
-type voiceView struct {
-	Title, Name string
-	Chart       template.HTML
-	Rows        []run.Row
-	Keys        []string
-	Weights     []string
-	More        int
-	Tipping     []string
-	Held        int
-	Notices     []string
+// title gives the words for a key; a key without any is shown as it is.
+func (b *book) title(key string) string {
+	return first(b.info[key].Title, strings.ReplaceAll(key, "_", " "))
 }
 
-type unfolded struct {
-	ID, Title string
-	C         *run.Candidate
-	Accounts  []accountView
-	Chain     []string
-	Taken     []string
-	Fit       string
-	Grid      string
-	Notices   []string
+func (b *book) titles(keys []string) string {
+	out := make([]string, len(keys))
+	for i, k := range keys {
+		out[i] = b.title(k)
+	}
+	return strings.Join(out, ", ")
 }
 
-type accountView struct {
-	Name string
-	Rows [][]string
+func (b *book) plantTitle(id string) string { return first(b.plant[id], id) }
+
+func (b *book) rules(names []string) string {
+	out := make([]string, len(names))
+	for i, n := range names {
+		out[i] = present.Rule(n)
+	}
+	return strings.Join(out, ", ")
 }
 
-// pageKeys are the columns of the consequence table on the page.
-var pageKeys = []string{"buildable_area_ha", "rated_kw", "energy_p50_mwh_per_yr", "delivered_mwh_per_yr", "eroi_generation", "eroi_delivered", "eroi_extended", "eroi_stock", "net_share", "energy_payback_yr",
-	"footprint_direct_ha", "footprint_total_ha", "power_density_w_per_m2", "soil_carbon_loss_tc", "habitat_ha", "flood_ha", "ghg_g_per_kwh", "carbon_payback_yr", "nearest_dwelling_m", "noise_dba", "connection_km", "connection_loss_frac"}
+// note gives the number of a notice code.
+func (b *book) note(code string) int {
+	if n, ok := b.notes[code]; ok {
+		return n
+	}
+	b.list = append(b.list, code)
+	b.notes[code] = len(b.list)
+	return len(b.list)
+}
+
+func (b *book) noteNumbers(codes []string) string {
+	out := make([]string, len(codes))
+	for i, c := range codes {
+		out[i] = strconv.Itoa(b.note(c))
+	}
+	return strings.Join(out, ", ")
+}
+
+// hexOnly gives the first digits of a check code, and nothing else, for the foot of printed pages.
+func hexOnly(code string) string {
+	code = code[:min(12, len(code))]
+	return strings.Map(func(r rune) rune {
+		if strings.ContainsRune("0123456789abcdef", r) {
+			return r
+		}
+		return -1
+	}, code)
+}
+
+// picture writes a scene of our own; its texts are escaped by the writer.
+func picture(s *draw.Scene) template.HTML { return template.HTML(svg.Write(s)) }
+
+func first(texts ...string) string {
+	for _, t := range texts {
+		if t != "" {
+			return t
+		}
+	}
+	return ""
+}
+
+type plantView struct {
+	ID, Title, Technology, Fit string
+	Fitted, NoRoom, Other      int
+	Reasons                    []string
+}
+
+type settingView struct {
+	Key, What, Value, Unit, From, Reason, Source string
+	NotSet, Unverified                           bool
+}
+
+type factorView struct {
+	ID, Low, Central, High, Unit, From, Source string
+	Unverified                                 bool
+}
+
+type layerView struct {
+	Name, Role, CRS, Edition, Holder, Complete, Digest string
+	Count, Read, Repaired, LeftOut                     int
+}
+
+type journalView struct {
+	Seq, Changes           int64
+	Day, Who, Verb, Reason string
+}
 
 // Page writes the appendix as one self-contained HTML page.
 func Page(in Input) ([]byte, error) {
-	top := in.Top
-	if top == 0 {
-		top = 15
+	if in.Top == 0 {
+		in.Top = 15
 	}
-	info := map[string]run.KeyInfo{}
-	for _, k := range in.Params.Keys() {
-		info[k.Key] = k
-	}
+	b := newBook(in)
 	data := map[string]any{
 		"Name": first(in.Snapshot.Text("study.name"), "Study"), "Author": in.Snapshot.Text("study.author"), "Place": in.Snapshot.Text("study.place"),
-		"Code": in.Results.Code, "Version": in.Version, "Engines": in.Engines, "Cautions": cautions, "NotAssessed": alwaysNotAssessed,
+		"Code": in.Results.Code, "Short": template.CSS(hexOnly(in.Results.Code.Check)), "Version": in.Version, "Engines": in.Engines, "Cautions": cautions, "NotAssessed": alwaysNotAssessed, "Terms": terms,
+		"Seed": in.Snapshot.Text("run.seed"), "Trials": in.Snapshot.Text("run.trials"), "Mixes": in.Snapshot.Text("weigh.mixes"), "Spread": in.Snapshot.Text("weigh.spread"),
 	}
-	shown := map[string]bool{}
 	var voices []voiceView
-	for _, v := range in.Results.Voices {
-		voices = append(voices, voiceOf(v, top, shown))
+	for i := range in.Results.Voices {
+		voices = append(voices, b.voice(i))
 	}
 	data["Voices"] = voices
-	data["Map"] = template.HTML(svg.Write(mapOf(in, shown))) // our own scene, escaped by the writer
-
-	var heads []map[string]string
-	for _, k := range pageKeys {
-		heads = append(heads, map[string]string{"Key": k, "Title": info[k].Title, "Unit": present.Unit(info[k].Unit), "Sentence": info[k].Sentence})
+	data["Maps"] = b.maps()
+	data["Plants"] = b.plants()
+	data["Groups"] = b.groups()
+	data["Shown"] = len(b.shown)
+	bulk, fitted, noRoom := b.bulk()
+	data["Bulk"], data["FittedCount"], data["NoRoomCount"] = bulk, fitted, noRoom
+	data["KeyCount"], data["PageKeyCount"] = len(b.info), len(pageKeys)
+	leads, others, err := b.unfoldings()
+	if err != nil {
+		return nil, err
 	}
-	data["Heads"] = heads
-	var rows []tableRow
-	var full []unfolded
-	counts := map[string]int{}
-	for i := range in.Results.Candidates {
-		c := &in.Results.Candidates[i]
-		counts[c.Status]++
-		if c.Status != run.Fitted {
-			continue
-		}
-		row := tableRow{ID: c.ID(), Site: c.Site, Plant: c.Plant, Marks: marks(c)}
-		for _, k := range pageKeys {
-			q, _ := c.Consequence(k)
-			row.Cells = append(row.Cells, cellOf(q))
-		}
-		rows = append(rows, row)
-		if shown[c.ID()] {
-			full = append(full, unfold(c, info))
-		}
-	}
-	data["Rows"], data["Full"], data["Counts"] = rows, full, counts
-	data["KeyCount"], data["PageKeyCount"] = len(info), len(pageKeys)
-
-	var settings [][]string
-	for _, k := range in.Snapshot.Keys() {
-		s, byUser, ok := in.Snapshot.Lookup(k)
-		if !ok {
-			continue
-		}
-		from := "default"
-		if byUser {
-			from = first(s.AcceptedBy, "user")
-		} else if s.Provenance == "memory" {
-			from = "default, unverified"
-		}
-		settings = append(settings, []string{k, s.Value, present.Unit(s.Unit), from, s.Source, s.Reason})
-	}
-	data["Settings"] = settings
-
-	var layers [][]string
+	data["Leads"], data["Others"] = leads, others
+	data["Own"], data["Defaults"] = b.settings()
+	var layers []layerView
 	for _, l := range in.Snapshot.Layers {
 		complete := "no"
 		if l.Complete {
 			complete = "yes"
 		}
-		layers = append(layers, []string{l.Name, l.Role, fmt.Sprint(l.Count), l.CRS, l.Edition, l.Holder, complete, fmt.Sprintf("%d / %d / %d", l.Ledger.Read, l.Ledger.Repaired, l.Ledger.LeftOut), l.Digest[:16]})
+		layers = append(layers, layerView{Name: l.Name, Role: present.Named(l.Role), CRS: l.CRS, Edition: l.Edition, Holder: l.Holder, Complete: complete, Digest: l.Digest[:min(16, len(l.Digest))], Count: l.Count, Read: l.Ledger.Read, Repaired: l.Ledger.Repaired, LeftOut: l.Ledger.LeftOut})
 	}
 	data["Layers"] = layers
-
-	var factors [][]string
-	ids := make([]string, 0, len(in.Params.Factors))
-	for id := range in.Params.Factors {
-		ids = append(ids, id)
+	if data["Factors"], err = b.factors(); err != nil {
+		return nil, err
 	}
-	sort.Strings(ids)
-	for _, id := range ids {
-		f, changed, err := run.UserFactor(in.Params, in.Snapshot, id)
-		if err != nil {
-			return nil, err
-		}
-		prov := string(f.Provenance)
-		if changed {
-			prov = "user"
-		}
-		if prov == "memory" {
-			prov = "default, unverified (memory)"
-		}
-		factors = append(factors, []string{id, fmt.Sprintf("%.4g / %.4g / %.4g", f.Low, f.Central, f.High), present.Unit(f.Unit), prov, f.Source})
-	}
-	data["Factors"] = factors
-
 	var glossary [][]string
 	var missing []string
 	for _, k := range in.Params.Keys() {
 		if !k.Derived {
-			glossary = append(glossary, []string{k.Title, k.Key, present.Unit(k.Unit), k.Sentence})
+			glossary = append(glossary, []string{k.Title, k.Key, present.UnitWords(k.Unit), k.Sentence})
 		}
-	}
-	for _, k := range in.Params.Keys() {
-		if _, ok := in.Params.Graph.Slot(k.Key); !ok {
+		if _, ok := in.Params.Graph.Slot(k.Key); !ok && !k.Derived {
 			missing = append(missing, k.Title)
 		}
 	}
 	data["Glossary"], data["MissingKeys"] = glossary, missing
-
-	var notices []string
-	for _, n := range in.Notices {
-		notices = append(notices, n.Severity.String()+": "+present.Notice(n))
-	}
-	for _, n := range in.Results.Notices {
-		notices = append(notices, n.Severity.String()+": "+present.Notice(n))
+	var notices [][]string
+	for _, n := range append(append([]geo.Notice(nil), in.Notices...), in.Results.Notices...) {
+		notices = append(notices, []string{n.Severity.String(), present.Notice(n)})
 	}
 	data["Notices"] = notices
-	data["JournalCount"] = len(in.Journal)
-	var journal [][]string
+	var notes []string
+	for _, code := range b.list {
+		notes = append(notes, present.Sentence(code, nil))
+	}
+	data["Notes"] = notes
+	var journal []journalView
 	for _, e := range in.Journal {
-		journal = append(journal, []string{fmt.Sprint(e.Seq), e.Verb, fmt.Sprint(len(e.Changes)), e.Reason})
+		journal = append(journal, journalView{Seq: e.Seq, Changes: int64(len(e.Changes)), Day: e.At.UTC().Format("2006-01-02"), Who: e.Who, Verb: e.Verb, Reason: e.Reason})
 	}
 	data["Journal"] = journal
 	var frozen []string
@@ -266,230 +291,121 @@ func Page(in Input) ([]byte, error) {
 	if err != nil {
 		return nil, err
 	}
-	var b bytes.Buffer
-	if err := t.Execute(&b, data); err != nil {
+	var out bytes.Buffer
+	if err := t.Execute(&out, data); err != nil {
 		return nil, fmt.Errorf("write the appendix: %w", err)
 	}
-	return b.Bytes(), nil
+	return out.Bytes(), nil
 }
 
-func first(texts ...string) string {
-	for _, t := range texts {
-		if t != "" {
-			return t
-		}
+// plants sums up each plant option.
+func (b *book) plants() []plantView {
+	at := map[string]int{}
+	var out []plantView
+	for _, id := range b.in.Snapshot.Plants() {
+		at[id] = len(out)
+		out = append(out, plantView{ID: id, Title: b.plantTitle(id), Technology: present.Named(b.in.Snapshot.Text("plant." + id + ".technology")), Fit: present.Named(first(b.in.Snapshot.Text("plant."+id+".fit"), "fill"))})
 	}
-	return ""
-}
-
-func marks(c *run.Candidate) string {
-	var m []string
-	if len(c.OverLimit) > 0 {
-		m = append(m, "over the limit: "+strings.Join(c.OverLimit, ", "))
-	}
-	if len(c.Incomplete) > 0 {
-		m = append(m, "incomplete: "+strings.Join(c.Incomplete, ", "))
-	}
-	return strings.Join(m, "; ")
-}
-
-func cellOf(q scoring.Consequence) cell {
-	out := cell{Text: present.Cell(q), Full: present.Span(q)}
-	switch q.State {
-	case scoring.Unknown, scoring.NotAssessed, scoring.NotSet:
-		out.Class, out.Full = "unknown", q.Why
-	case scoring.None, scoring.Never, scoring.Class:
-		out.Class, out.Full = "state", q.Why
-	}
-	return out
-}
-
-func voiceOf(v run.VoiceOrder, top int, shown map[string]bool) voiceView {
-	out := voiceView{Title: first(v.Title, v.Voice), Name: v.Voice, Held: len(v.HeldBack)}
-	if len(v.Order) == 0 {
-		return out
-	}
-	for k := range v.Order[0].Parts {
-		out.Keys = append(out.Keys, k)
-	}
-	sort.Strings(out.Keys)
-	for _, k := range out.Keys {
-		out.Weights = append(out.Weights, fmt.Sprintf("%.3f", v.Order[0].Parts[k].Weight))
-	}
-	for i, r := range v.Order {
-		if i < top || r.Site == run.NoSite {
-			out.Rows = append(out.Rows, r)
-			if r.Site != run.NoSite {
-				shown[r.Site+"/"+r.Plant] = true
-			}
-		}
-	}
-	out.More = len(v.Order) - len(out.Rows)
-	for _, t := range v.Tipping {
-		s := fmt.Sprintf("%s, weight %.3f: ", t.Key, t.Weight)
-		switch {
-		case t.Below == nil && t.Above == nil:
-			s += "no weight of it changes first place"
-		case t.Below == nil:
-			s += fmt.Sprintf("above %.3f %s leads", t.Above.At, t.Above.NewFirst)
-		case t.Above == nil:
-			s += fmt.Sprintf("below %.3f %s leads", t.Below.At, t.Below.NewFirst)
-		default:
-			s += fmt.Sprintf("below %.3f %s leads, above %.3f %s leads", t.Below.At, t.Below.NewFirst, t.Above.At, t.Above.NewFirst)
-		}
-		out.Tipping = append(out.Tipping, s)
-	}
-	for _, n := range v.Notices {
-		out.Notices = append(out.Notices, present.Notice(n))
-	}
-	out.Chart = template.HTML(svg.Write(bars(out.Rows, out.Keys, out.Title))) // our own scene, escaped by the writer
-	return out
-}
-
-// bars draws scores as stacked parts with the interval under them; an unknown part is hatched.
-func bars(rows []run.Row, keys []string, title string) *draw.Scene {
-	const label, width, rowH = 230.0, 980.0, 24.0
-	head := 24*float64((len(keys)+1)/2) + 14
-	s := &draw.Scene{Width: width, Height: head + rowH*float64(len(rows)) + 30, Title: "Scores under " + title + ", by part"}
-	s.Rect(0, 0, s.Width, s.Height, draw.Style{Fill: draw.Paper}, "")
-	for i, k := range keys {
-		x, y := 10+float64(i%2)*width/2, 8+24*float64(i/2)
-		s.Rect(x, y, 14, 12, draw.Style{Fill: draw.Category(i)}, "")
-		s.Text(draw.Text{At: draw.Point{X: x + 20, Y: y + 11}, Text: k, Size: 12, Colour: draw.Ink})
-	}
-	scale := width - label - 70
-	for i, r := range rows {
-		y := head + rowH*float64(i)
-		name := fmt.Sprintf("%d. %s, %s", r.Place, r.Site, r.Plant)
-		if r.Site == run.NoSite {
-			name = fmt.Sprintf("%d. do nothing", r.Place)
-		}
-		s.Text(draw.Text{At: draw.Point{X: label - 8, Y: y + 14}, Text: name, Size: 12, Colour: draw.Ink, Anchor: draw.End})
-		x := label
-		for j, k := range keys {
-			p := r.Parts[k]
-			st := draw.Style{Fill: draw.Category(j)}
-			words := fmt.Sprintf("%s: %.3f of weight %.3f", k, p.Share, p.Weight)
-			if p.Value == nil {
-				st = draw.Style{Hatch: true, Stroke: draw.Category(j), Width: 1.2}
-				words = k + ": unknown, counts half its weight"
-			}
-			s.Rect(x, y+3, p.Share*scale, 13, st, words)
-			x += p.Share * scale
-		}
-		s.Line(draw.Style{Stroke: draw.Ink, Width: 1.2}, draw.Point{X: label + r.ScoreLow*scale, Y: y + 19}, draw.Point{X: label + r.ScoreHigh*scale, Y: y + 19})
-		s.Text(draw.Text{At: draw.Point{X: width - 56, Y: y + 14}, Text: fmt.Sprintf("%.3f", r.Score), Size: 12, Colour: draw.Ink, Bold: true})
-	}
-	s.Text(draw.Text{At: draw.Point{X: label, Y: s.Height - 9}, Text: "Coloured parts add up to the score; hatching: unknown; the line below each bar runs from the lowest to the highest score.", Size: 11, Colour: draw.Faint})
-	return s
-}
-
-// mapOf draws the district: a parcel is shaded by the best score that any option reaches there under the
-// first voice.
-func mapOf(in Input, shown map[string]bool) *draw.Scene {
-	best := map[string]float64{}
-	words := map[string]string{}
-	lo, hi := 1.0, 0.0
-	title := "Map of the district"
-	var marks draw.Marks
-	first := map[string]bool{}
-	parcels := map[string][]string{}
-	for i := range in.Results.Candidates {
-		parcels[in.Results.Candidates[i].Site] = in.Results.Candidates[i].Parcels
-	}
-	if len(in.Results.Voices) > 0 {
-		v := in.Results.Voices[0]
-		title = "Best score of each site under " + v.Title
-		for i, r := range v.Order {
-			if r.Site == run.NoSite {
-				continue
-			}
-			if i < 3 {
-				first[r.Site+"/"+r.Plant] = true
-			}
-			for _, p := range parcels[r.Site] {
-				if _, there := best[p]; !there {
-					best[p] = r.Score
-					words[p] = fmt.Sprintf("%s: %.3f with %s", r.Site, r.Score, r.Plant)
-				}
-			}
-			lo, hi = min(lo, r.Score), max(hi, r.Score)
-		}
-	}
-	for i := range in.Results.Candidates {
-		c := &in.Results.Candidates[i]
-		if !first[c.ID()] || c.Fit == nil {
+	for i := range b.in.Results.Candidates {
+		c := &b.in.Results.Candidates[i]
+		j, ok := at[c.Plant]
+		if !ok {
 			continue
 		}
-		marks.Turbines = append(marks.Turbines, c.Fit.Turbines...)
-		if !c.Fit.Panels.Empty() {
-			marks.Fences = append(marks.Fences, c.Fit.Panels)
-		}
-		if c.Connection != nil {
-			marks.Routes = append(marks.Routes, [2]geo.LonLat{c.Connection.From, c.Connection.To})
+		switch c.Status {
+		case run.Fitted:
+			out[j].Fitted++
+		case run.NoRoom:
+			out[j].NoRoom++
+		default:
+			out[j].Other++
+			if r := present.Reason(c.Reason); !slices.Contains(out[j].Reasons, r) {
+				out[j].Reasons = append(out[j].Reasons, r)
+			}
 		}
 	}
-	shade := func(id string) (draw.Style, string) {
-		if s, ok := best[id]; ok && hi > lo {
-			return draw.Style{Fill: draw.Ramp((s - lo) / (hi - lo)), Stroke: "#ffffff", Width: 0.4}, words[id]
-		}
-		return draw.Style{Fill: "#ffffff", Stroke: draw.Rule, Width: 0.5}, id + ": no room for any option"
+	for i := range out {
+		sort.Strings(out[i].Reasons)
 	}
-	legend := []draw.Legend{
-		{Style: draw.Style{Fill: draw.Ramp(0)}, Text: fmt.Sprintf("lowest best score, %.3f", lo)},
-		{Style: draw.Style{Fill: draw.Ramp(0.5)}, Text: fmt.Sprintf("middle, %.3f", (lo+hi)/2)},
-		{Style: draw.Style{Fill: draw.Ramp(1)}, Text: fmt.Sprintf("highest, %.3f", hi)},
-		{Style: draw.Style{Fill: "#ffffff", Stroke: draw.Rule, Width: 1}, Text: "no room for any option"},
-		{Style: draw.Style{Stroke: draw.Ink, Width: 1.4}, Text: "plant of the first three places"},
-		{Style: draw.Style{Stroke: draw.Ink, Width: 1.2, Dash: "3 3"}, Text: "straight line of its connection"},
-	}
-	return draw.Map(title, in.Layers, shade, marks, legend, 1000)
+	return out
 }
 
-func unfold(c *run.Candidate, info map[string]run.KeyInfo) unfolded {
-	u := unfolded{ID: c.ID(), Title: c.Site + ", " + c.Plant, C: c}
-	for _, a := range scoring.Accounts() {
-		v := accountView{Name: string(a)}
-		for _, q := range c.Consequences {
-			if q.Account != a {
-				continue
-			}
-			why := q.Quality
-			if q.State != scoring.Number && q.Why != "" {
-				why = q.Why
-			}
-			var ns []string
-			for _, n := range q.Notices {
-				ns = append(ns, present.Sentence(n, nil))
-			}
-			v.Rows = append(v.Rows, []string{info[q.Key].Title, present.Cell(q), present.Unit(q.Unit), present.Span(q), why, strings.Join(ns, " ")})
+// settings gives the settings of the study and the defaults in force.
+func (b *book) settings() (own, defaults []settingView) {
+	for _, k := range b.in.Snapshot.Keys() {
+		s, byUser, ok := b.in.Snapshot.Lookup(k)
+		if !ok {
+			continue
 		}
-		if len(v.Rows) > 0 {
-			u.Accounts = append(u.Accounts, v)
+		v := settingView{Key: k, Value: first(s.Value, "not in force"), Unit: present.Unit(s.Unit), Reason: s.Reason, Source: s.Source, NotSet: s.Value == study.NotSetText}
+		if d, there := b.in.Snapshot.Catalog().Definition(k); there {
+			v.What = d.What
 		}
-	}
-	for _, st := range c.Chain {
-		u.Chain = append(u.Chain, fmt.Sprintf("%s: %.1f %s (%+.2f %%)", strings.ReplaceAll(st.Name, "_", " "), st.After, st.Unit, -100*st.Share))
-	}
-	for _, t := range c.Taken {
-		s := fmt.Sprintf("%s: %.2f ha alone, %.2f ha shared", t.Rule, t.AloneHa, t.SharedHa)
-		if t.TakesAll {
-			s += "; alone it takes the whole site"
+		if byUser {
+			v.From = first(s.AcceptedBy, "user")
+			own = append(own, v)
+			continue
 		}
-		u.Taken = append(u.Taken, s)
-	}
-	u.Taken = append(u.Taken, fmt.Sprintf("by several rules: %.2f ha; by smallest width or patch: %.2f ha", c.TakenSharedHa, c.ShapeHa))
-	if f := c.Fit; f != nil {
-		u.Fit = fmt.Sprintf("%s: %.0f kW rated, %.0f kW at the terminals, %d turbines, %.2f ha fenced, %.2f km of new track", strings.ReplaceAll(f.Mode, "_", " "), f.RatedKW, f.ACKW, len(f.Turbines), f.FencedHa, f.TrackKm)
-	}
-	if n := c.Connection; n != nil {
-		u.Grid = fmt.Sprintf("%s (%s, %g kV): %s %s; %.2f km straight, %.2f km with detour; %d × %s", n.Asset, n.Kind, n.VoltageKV, n.Status, strings.ReplaceAll(n.Reason, "_", " "), n.StraightKm, n.RouteKm, n.Circuits, n.Conductor)
-		if n.ToldBy != "" {
-			u.Grid += "; spare capacity told by " + n.ToldBy + " " + n.ToldOn
+		v.From, v.Unverified = "default, "+present.Provenance(string(s.Provenance)), s.Provenance == "memory"
+		if v.Unverified || s.Provenance == "" {
+			v.From = strings.TrimPrefix(v.From, "default, ")
 		}
+		v.From = first(v.From, "default")
+		if v.NotSet {
+			v.From = "to be entered"
+		}
+		defaults = append(defaults, v)
 	}
-	for _, n := range c.Notices {
-		u.Notices = append(u.Notices, present.Sentence(n, nil))
+	return own, defaults
+}
+
+// factors lists every factor that the program ships, as it stands in this study.
+func (b *book) factors() ([]factorView, error) {
+	ids := make([]string, 0, len(b.in.Params.Factors))
+	for id := range b.in.Params.Factors {
+		ids = append(ids, id)
 	}
-	return u
+	sort.Strings(ids)
+	var out []factorView
+	for _, id := range ids {
+		f, changed, err := run.UserFactor(b.in.Params, b.in.Snapshot, id)
+		if err != nil {
+			return nil, err
+		}
+		v := factorView{ID: id, Low: plainNumber(f.Low), Central: plainNumber(f.Central), High: plainNumber(f.High), Unit: present.UnitWords(f.Unit), From: present.Provenance(string(f.Provenance)), Source: f.Source, Unverified: string(f.Provenance) == "memory"}
+		if changed {
+			v.From, v.Unverified = present.Provenance("user"), false
+		}
+		out = append(out, v)
+	}
+	return out, nil
+}
+
+// plainNumber writes a value to six digits, for a reader who reckons it again.
+func plainNumber(x float64) string { return strconv.FormatFloat(x, 'g', 6, 64) }
+
+// terms are the words of the page that are no consequences.
+var terms = [][2]string{
+	{"site", "one or more parcels considered together; by default each parcel is a site"},
+	{"plant option", "a variant tried on every site: a technology with its size and rules"},
+	{"candidate", "a site with one plant option fitted"},
+	{"consequence", "one quantity that follows from a candidate: low, central, high, what that range means, unit and source"},
+	{"account", "a family of consequences that is never merged silently with another: energy, land, climate, neighbours, grid"},
+	{"voice", "the weights and value scales of one group"},
+	{"score", "the weighted sum of values from 0 (worst) to 1 (best) on fixed scales; it is the middle of its interval"},
+	{"tier", "candidates of an order that cannot be told apart, because their intervals overlap"},
+	{"first in N of 100", "in how many of 100 weight mixes near the voice's weights, and of uncertain consequences, a candidate comes first"},
+	{"tipping weight", "the weight at which first place changes hands"},
+	{"dominated", "another candidate is at least as good in everything weighed and better in something"},
+	{"limit, over the limit", "a threshold entered with its citation; a breach is marked and never netted off"},
+	{"gate", "a condition that must hold before a candidate is ordered, such as the owner's consent"},
+	{"unknown", "the data do not give it; hatched, and never taken as zero; in a score it counts half its weight and widens the interval"},
+	{"not set", "a legal or policy value that must be entered and has not been"},
+	{"none", "no such effect arises; it scores as best"},
+	{"never", "a payback that never comes; it scores as worst"},
+	{"not assessed", "the program does not look at it"},
+	{"incomplete", "a legal rule is not set, so the candidate was computed without it"},
+	{"default, unverified", "a value that was written down from memory and not checked against its source"},
+	{"P10 to P90", "eight of ten trials with drawn inputs lie between these two values"},
+	{"check code", "a digest over inputs, settings, editions and results; whoever has the study can compute it again"},
 }

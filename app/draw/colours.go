@@ -30,8 +30,17 @@ func Ramp(v float64) string {
 }
 
 // okabeIto is the published set of colours for categories that people with colour blindness tell apart
-// (Okabe & Ito 2008), without black and yellow, which vanish on paper.
-var okabeIto = []string{"#0072b2", "#d55e00", "#009e73", "#cc79a7", "#56b4e9", "#e69f00"}
+// (Okabe & Ito 2008); black, which is kept for text, is replaced by a grey.
+var okabeIto = []string{"#0072b2", "#e69f00", "#009e73", "#cc79a7", "#56b4e9", "#d55e00", "#f0e442", "#999999"}
 
-// Category gives the colour of the i-th category.
+// linear undoes the gamma of a colour channel from 0 to 1 (WCAG 2.1).
+func linear(c float64) float64 {
+	if c <= 0.04045 {
+		return c / 12.92
+	}
+	return math.Pow((c+0.055)/1.055, 2.4)
+}
+
+// Category gives the colour of the i-th category. Colours come again after eight, so a number or a word
+// always goes with them.
 func Category(i int) string { return okabeIto[i%len(okabeIto)] }

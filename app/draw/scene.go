@@ -46,6 +46,7 @@ type Text struct {
 type Scene struct {
 	Width, Height float64
 	Title         string // for readers who cannot see it
+	ID            string // tells its hatching from that of other scenes on one page
 	Items         []any  // Path or Text
 }
 

@@ -67,6 +67,14 @@ func Unit(u string) string {
 	return u
 }
 
+// UnitWords writes a unit for a column of units; a pure number says so.
+func UnitWords(u string) string {
+	if u == "1" {
+		return "pure number"
+	}
+	return u
+}
+
 // Cell writes a consequence in a few characters: its central value, or the state in its place.
 func Cell(c scoring.Consequence) string {
 	switch c.State {

@@ -197,6 +197,9 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 		return out, err
 	}
 	out.Notices = notices
+	if out.Notices == nil {
+		out.Notices = []geo.Notice{}
+	}
 	mixes, _ := snap.Number("weigh.mixes")
 	spread, _ := snap.Number("weigh.spread")
 	in := weigh.Input{Seed: k.seed, Mixes: int(mixes), MixSpread: spread}

@@ -60,7 +60,10 @@ func Unfold(p *Params, snap *study.Snapshot, c *Candidate, key string) (*Unfoldi
 			return u, nil
 		}
 		slot, _ := p.Graph.Slot(name)
-		u := &Unfolding{Name: name, State: v[slot].State.String(), Value: finite(v[slot].X), Why: v[slot].Why}
+		u := &Unfolding{Name: name, State: v[slot].State.String(), Value: v[slot].X, Why: v[slot].Why}
+		if u.Value == math.MaxFloat64 {
+			u.State, u.Value, u.Why = scoring.None.String(), 0, "no limit"
+		}
 		made[name] = u
 		if q, ok := c.Consequence(name); ok && q.State == scoring.Number && q.Range == scoring.P10P90 {
 			u.Low, u.High, u.Range, u.Notices = q.Low, q.High, string(q.Range), q.Notices
@@ -113,14 +116,6 @@ func Unfold(p *Params, snap *study.Snapshot, c *Candidate, key string) (*Unfoldi
 		return u, nil
 	}
 	return open(key)
-}
-
-// finite keeps the stand-in for "no limit" out of JSON that people read.
-func finite(x float64) float64 {
-	if x == math.MaxFloat64 {
-		return 0
-	}
-	return x
 }
 
 // SortBy puts candidates with the best value of a key first. States stand behind numbers: none first

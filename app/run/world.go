@@ -30,10 +30,11 @@ type layer struct {
 	tree *index.Tree
 }
 
-// text gives a field of a feature by the role's field name; empty when missing.
+// text gives a field of a feature by the role's field name; empty when missing, and when the column is
+// personal: such a text may not reach any result.
 func (l *layer) text(i int, field string) string {
 	c := l.src.ColumnIndex(l.rec.Match[field])
-	if l.rec.Match[field] == "" || c < 0 {
+	if l.rec.Match[field] == "" || c < 0 || l.src.Columns[c].Personal {
 		return ""
 	}
 	return strings.TrimSpace(l.src.Features[i].Values[c].String())

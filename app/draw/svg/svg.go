@@ -6,6 +6,7 @@ import (
 	"html"
 	"math"
 	"strconv"
+	"strings"
 
 	"groundtally/app/draw"
 )
@@ -14,12 +15,18 @@ import (
 // bytes.
 func Write(s *draw.Scene) []byte {
 	var b bytes.Buffer
-	fmt.Fprintf(&b, `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" role="img" aria-label="%s" font-family="system-ui, sans-serif">`, num(s.Width), num(s.Height), html.EscapeString(s.Title))
-	fmt.Fprintf(&b, `<defs><pattern id="unknown" width="6" height="6" patternUnits="userSpaceOnUse" patternTransform="rotate(45)"><rect width="6" height="6" fill="%s"/><line x1="0" y1="0" x2="0" y2="6" stroke="%s" stroke-width="1.4"/></pattern></defs>`, draw.Paper, draw.Faint)
+	fmt.Fprintf(&b, `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" role="img" aria-label="%s" font-family="system-ui, sans-serif">`, num(s.Width), num(s.Height), html.EscapeString(clean(s.Title)))
+	hatch := "unknown" + html.EscapeString(s.ID)
+	for _, it := range s.Items {
+		if p, ok := it.(draw.Path); ok && p.Style.Hatch {
+			hatching(&b, hatch)
+			break
+		}
+	}
 	for _, it := range s.Items {
 		switch v := it.(type) {
 		case draw.Path:
-			path(&b, v)
+			path(&b, v, hatch)
 		case draw.Text:
 			text(&b, v)
 		}
@@ -28,15 +35,23 @@ func Write(s *draw.Scene) []byte {
 	return b.Bytes()
 }
 
-func path(b *bytes.Buffer, p draw.Path) {
+func hatching(b *bytes.Buffer, id string) {
+	fmt.Fprintf(b, `<defs><pattern id="%s" width="6" height="6" patternUnits="userSpaceOnUse" patternTransform="rotate(45)"><rect width="6" height="6" fill="%s"/><line x1="0" y1="0" x2="0" y2="6" stroke="%s" stroke-width="1.4"/></pattern></defs>`, id, draw.Paper, draw.Faint)
+}
+
+func path(b *bytes.Buffer, p draw.Path, hatch string) {
 	b.WriteString(`<path d="`)
 	for _, ring := range p.Rings {
+		last := ""
 		for i, q := range ring {
-			op := "L"
-			if i == 0 {
-				op = "M"
+			at := num(q.X) + " " + num(q.Y)
+			switch {
+			case i == 0:
+				b.WriteString("M" + at)
+			case at != last:
+				b.WriteString("L" + at)
 			}
-			b.WriteString(op + num(q.X) + " " + num(q.Y))
+			last = at
 		}
 		if p.Closed {
 			b.WriteByte('Z')
@@ -45,7 +60,7 @@ func path(b *bytes.Buffer, p draw.Path) {
 	b.WriteByte('"')
 	fill := "none"
 	if p.Style.Hatch {
-		fill = "url(#unknown)"
+		fill = "url(#" + hatch + ")"
 	} else if p.Style.Fill != "" {
 		fill = p.Style.Fill
 	}
@@ -57,7 +72,7 @@ func path(b *bytes.Buffer, p draw.Path) {
 		}
 	}
 	if p.Title != "" {
-		fmt.Fprintf(b, `><title>%s</title></path>`, html.EscapeString(p.Title))
+		fmt.Fprintf(b, `><title>%s</title></path>`, html.EscapeString(clean(p.Title)))
 		return
 	}
 	b.WriteString("/>")
@@ -72,10 +87,24 @@ func text(b *bytes.Buffer, t draw.Text) {
 	if t.Halo {
 		halo = fmt.Sprintf(` paint-order="stroke" stroke="%s" stroke-width="3" stroke-linejoin="round"`, draw.Paper)
 	}
-	fmt.Fprintf(b, `<text x="%s" y="%s" font-size="%s" fill="%s" text-anchor="%s"%s%s>%s</text>`, num(t.At.X), num(t.At.Y), num(t.Size), t.Colour, t.Anchor, weight, halo, html.EscapeString(t.Text))
+	fmt.Fprintf(b, `<text x="%s" y="%s" font-size="%s" fill="%s" text-anchor="%s"%s%s>%s</text>`, num(t.At.X), num(t.At.Y), num(t.Size), t.Colour, t.Anchor, weight, halo, html.EscapeString(clean(t.Text)))
 }
 
-// num writes a hundredth of a unit at most.
+// clean takes out what XML does not allow in a text.
+func clean(s string) string {
+	return strings.Map(func(r rune) rune {
+		if r < 0x20 && r != '\t' && r != '\n' && r != '\r' || r == 0xfffe || r == 0xffff {
+			return -1
+		}
+		return r
+	}, strings.ToValidUTF8(s, "\ufffd"))
+}
+
+// num writes a tenth of a unit at most, which no eye can tell from more.
 func num(x float64) string {
-	return strconv.FormatFloat(math.Round(x*100)/100, 'f', -1, 64)
+	x = math.Round(x*10) / 10
+	if x == 0 {
+		x = 0 // no minus zero
+	}
+	return strconv.FormatFloat(x, 'f', -1, 64)
 }

@@ -1,0 +1,487 @@
+package appendix_test
+
+import (
+	"bytes"
+	"context"
+	"encoding/json"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"regexp"
+	"strconv"
+	"strings"
+	"sync"
+	"testing"
+	"time"
+
+	"groundtally/app/appendix"
+	"groundtally/app/files"
+	"groundtally/app/run"
+	"groundtally/app/study"
+	"groundtally/app/study/studytest"
+	"groundtally/assets"
+	"groundtally/geo"
+	"groundtally/geo/crs"
+	"groundtally/geo/overlay"
+	"groundtally/sampledata"
+	"groundtally/scoring"
+)
+
+// tools are the geometry services of an import.
+type tools struct{ e *overlay.Engine }
+
+func (t tools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
+	tr, err := crs.NewTransform(code)
+	if err != nil {
+		return nil, "", err
+	}
+	return func(p geo.LonLat) (geo.LonLat, error) { return tr.Forward(p.Lon, p.Lat) }, tr.Code(), nil
+}
+
+func (t tools) Frame(c geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error), func(geo.XYGeometry) (geo.LonLatGeometry, error), error) {
+	f, err := crs.NewFrame(c)
+	return f.Project, f.Unproject, err
+}
+
+func (t tools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
+	out, rep, err := t.e.Repair(g)
+	return out, rep.Changed, rep.BeforeM2, rep.AfterM2, err
+}
+
+const (
+	ownerName  = "Ottilie Quellmark"
+	markupSite = `<script>alert("site")</script>&'`
+	markupText = `</title></style><script>alert(1)</script>`
+)
+
+// made is a study of a few parcels of the sample, whose owners have a name and whose texts hold markup.
+var made = sync.OnceValues(func() (appendix.Input, error) {
+	ctx := context.Background()
+	var none appendix.Input
+	cat, err := study.LoadCatalog(assets.FS())
+	if err != nil {
+		return none, err
+	}
+	p, err := run.LoadParams(assets.FS(), cat)
+	if err != nil {
+		return none, err
+	}
+	s, err := study.Open(ctx, studytest.New(), cat, study.Options{Clock: func() time.Time { return time.Unix(0, 0) }})
+	if err != nil {
+		return none, err
+	}
+	e := overlay.New()
+	defer e.Close()
+	read := func(ctx context.Context, fsys fs.FS, name string) (study.Import, error) {
+		in, err := files.ImportFS(ctx, fsys, name)
+		if err == nil && name == "parcels.geojson" {
+			few(in.Layer)
+		}
+		return in, err
+	}
+	if err := s.LoadSample(ctx, sampledata.FS(), read, tools{e}, func(study.LayerRecord) {}); err != nil {
+		return none, err
+	}
+	if _, err := s.Set(ctx, "set", "to see marks", study.SettingEdit{Key: "limit.connection_km", Value: "0.3"}, study.SettingEdit{Key: "study.name", Value: markupText}, study.SettingEdit{Key: "plant.wind.title", Value: markupText}, study.SettingEdit{Key: "run.trials", Value: "50"}); err != nil {
+		return none, err
+	}
+	return inputOf(ctx, s, p)
+})
+
+// few keeps every fortieth parcel, names an owner for each, and gives one an identifier with markup.
+func few(l *geo.Layer) {
+	owner := l.ColumnIndex("owner")
+	if owner < 0 {
+		owner = len(l.Columns)
+		l.Columns = append(l.Columns, geo.Column{Name: "owner"})
+	}
+	id := l.ColumnIndex("parcel_id")
+	var out []geo.Feature
+	for i, f := range l.Features {
+		if i%40 != 0 {
+			continue
+		}
+		for len(f.Values) < len(l.Columns) {
+			f.Values = append(f.Values, geo.Value{})
+		}
+		f.Values[owner] = geo.TextValue(ownerName)
+		if len(out) == 20 {
+			f.ID = markupSite
+			if id >= 0 {
+				f.Values[id] = geo.TextValue(markupSite)
+			}
+		}
+		out = append(out, f)
+	}
+	l.Features = out
+}
+
+func inputOf(ctx context.Context, s *study.Study, p *run.Params) (appendix.Input, error) {
+	var none appendix.Input
+	snap, err := s.Snapshot()
+	if err != nil {
+		return none, err
+	}
+	r, err := (&run.Engine{Params: p, Cores: 2, Load: run.StoreLoader(s.Store())}).Compute(ctx, snap)
+	if err != nil {
+		return none, err
+	}
+	layers, err := appendix.MapLayers(ctx, snap, run.StoreLoader(s.Store()))
+	if err != nil {
+		return none, err
+	}
+	notices, err := run.Check(ctx, s, p)
+	return appendix.Input{Snapshot: snap, Results: r, Params: p, Layers: layers, Notices: notices, Engines: []string{"GEOS"}, Version: "groundtally test", Journal: s.Journal(), Frozen: s.FrozenStates()}, err
+}
+
+func input(t testing.TB) appendix.Input {
+	t.Helper()
+	in, err := made()
+	if err != nil {
+		t.Fatal(err)
+	}
+	return in
+}
+
+func page(t testing.TB, in appendix.Input) string {
+	t.Helper()
+	b, err := appendix.Page(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return string(b)
+}
+
+func TestSamePageTwice(t *testing.T) {
+	in := input(t)
+	if page(t, in) != page(t, in) {
+		t.Error("the same results gave two different pages")
+	}
+	a, err := json.Marshal(appendix.NewStamp(in.Results, in.Version))
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := json.Marshal(appendix.NewStamp(in.Results, in.Version))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !bytes.Equal(a, b) {
+		t.Error("the same results gave two different stamps")
+	}
+}
+
+func TestNoPersonalColumnReachesThePage(t *testing.T) {
+	in := input(t)
+	personal := false
+	for _, l := range in.Snapshot.LayersOf("parcels") {
+		personal = personal || strings.Contains(strings.Join(l.Personal, " "), "owner")
+	}
+	if !personal {
+		t.Fatal("the owner column was not marked personal, so this test shows nothing")
+	}
+	b, err := json.Marshal(appendix.NewStamp(in.Results, in.Version))
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, part := range strings.Fields(ownerName) {
+		if strings.Contains(page(t, in), part) || bytes.Contains(b, []byte(part)) {
+			t.Errorf("%q of an owner's name is in the appendix", part)
+		}
+	}
+}
+
+// A column of the word on spare capacity that was marked personal must not come through a candidate's
+// connection either.
+func TestWhoToldACapacityIsLeftOutWhenPersonal(t *testing.T) {
+	in := input(t)
+	const told = "planning desk"
+	if !strings.Contains(page(t, in), told) {
+		t.Fatalf("the page does not say who told a capacity, so this test shows nothing")
+	}
+	snap := *in.Snapshot
+	snap.Layers = append([]study.LayerRecord(nil), snap.Layers...)
+	for i, l := range snap.Layers {
+		if col := l.Match["told_by"]; col != "" {
+			snap.Layers[i].Personal = []string{col}
+		}
+	}
+	in.Snapshot = &snap
+	if strings.Contains(page(t, in), told) {
+		t.Error("the page says who told a capacity although the column is personal")
+	}
+}
+
+func TestEverythingIsEscaped(t *testing.T) {
+	in := input(t)
+	snap := *in.Snapshot
+	snap.Layers = append([]study.LayerRecord(nil), snap.Layers...)
+	snap.Layers[0].Name = markupText
+	in.Snapshot = &snap
+	in.Notices = append([]geo.Notice{{Code: "duplicate", Layer: markupText, Args: map[string]string{"of": markupText}}}, in.Notices...)
+	in.Engines = []string{markupText}
+	in.Frozen = []study.Frozen{{Name: markupText}}
+	in.Journal = append([]study.Entry{{Reason: markupText, Who: markupText, Verb: markupText}}, in.Journal...)
+	html := page(t, in)
+	if strings.Contains(strings.ToLower(html), "<script") || strings.Count(html, "</title></style>") != 0 {
+		t.Error("markup of a text came through")
+	}
+	for _, want := range []string{"&lt;script&gt;alert(1)", "&lt;script&gt;alert("} {
+		if !strings.Contains(html, want) {
+			t.Errorf("the text %q does not stand on the page", want)
+		}
+	}
+	seen := false
+	for i := range in.Results.Candidates {
+		seen = seen || in.Results.Candidates[i].Site == markupSite
+	}
+	if !seen {
+		t.Error("no site has an identifier with markup, so this test shows little")
+	}
+}
+
+func TestPageNeedsNothingFromOutside(t *testing.T) {
+	html := page(t, input(t))
+	for _, bad := range []string{"<script", "<link", "<img", "<iframe", "@import", "url(http", `src="http`, `href="http`, " onload=", " onclick="} {
+		if strings.Contains(strings.ToLower(html), bad) {
+			t.Errorf("the page contains %s", bad)
+		}
+	}
+}
+
+func TestPageTellsItsParts(t *testing.T) {
+	in := input(t)
+	html := page(t, in)
+	for _, want := range []string{"Cautions", "In short", "Maps", "What is not assessed", "Settings in force", "default, unverified", "gtally verify STUDY.gpkg --code " + in.Results.Code.Check, "over the limit", "not set", "not assessed", "tipping", "8,760 hours"} {
+		if !strings.Contains(html, want) {
+			t.Errorf("the page says nowhere %q", want)
+		}
+	}
+	if strings.ContainsAny(html, "–—") {
+		t.Error("a typographic dash stands on the page")
+	}
+	for _, v := range in.Results.Voices {
+		if !strings.Contains(html, v.Title) {
+			t.Errorf("voice %q is missing", v.Title)
+		}
+	}
+	// Every fitted candidate has its row in the tables of all candidates.
+	fitted := 0
+	for i := range in.Results.Candidates {
+		if in.Results.Candidates[i].Status == run.Fitted {
+			fitted++
+		}
+	}
+	for _, s := range []string{strconv.Itoa(fitted) + " candidates have room", "All " + strconv.Itoa(fitted) + " fitted candidates"} {
+		if !strings.Contains(html, s) {
+			t.Errorf("the page does not say %q", s)
+		}
+	}
+}
+
+var (
+	tag     = regexp.MustCompile(`<(h[1-6])[ >]`)
+	id      = regexp.MustCompile(` id="([^"]*)"`)
+	href    = regexp.MustCompile(` href="#([^"]*)"`)
+	header  = regexp.MustCompile(`<th( [^>]*)?>`)
+	picture = regexp.MustCompile(`<svg[^>]*>`)
+)
+
+// TestPageCanBeReadByEveryone holds what a reader without eyes or without colours needs.
+func TestPageCanBeReadByEveryone(t *testing.T) {
+	html := page(t, input(t))
+	level := 0
+	for _, m := range tag.FindAllStringSubmatch(html, -1) {
+		n := int(m[1][1] - '0')
+		if n > level+1 {
+			t.Errorf("heading h%d follows h%d", n, level)
+		}
+		level = n
+	}
+	for _, m := range header.FindAllString(html, -1) {
+		if !strings.Contains(m, "scope=") {
+			t.Errorf("table header without scope: %s", m)
+			break
+		}
+	}
+	pictures := picture.FindAllString(html, -1)
+	if len(pictures) < 4 {
+		t.Errorf("only %d pictures", len(pictures))
+	}
+	for _, p := range pictures {
+		if !strings.Contains(p, `role="img"`) || !strings.Contains(p, `aria-label="`) || strings.Contains(p, `aria-label=""`) {
+			t.Errorf("picture without words: %.100s", p)
+		}
+	}
+	ids := map[string]bool{}
+	for _, m := range id.FindAllStringSubmatch(html, -1) {
+		if ids[m[1]] {
+			t.Errorf("the id %q stands twice", m[1])
+		}
+		ids[m[1]] = true
+	}
+	for _, m := range href.FindAllStringSubmatch(html, -1) {
+		if !ids[m[1]] && !strings.Contains(m[1], "%") {
+			t.Errorf("a link leads to %q, which is not there", m[1])
+		}
+	}
+}
+
+func TestUnknownIsAWordAndNeverZero(t *testing.T) {
+	html := page(t, input(t))
+	hatched := regexp.MustCompile(`<td class="?n? ?u"?>(<b>)?([^<]*)`).FindAllStringSubmatch(html, -1)
+	if len(hatched) == 0 {
+		t.Fatal("no cell is unknown; the sample has some")
+	}
+	for _, m := range hatched {
+		switch m[2] {
+		case "unknown", "not set", "not assessed":
+		default:
+			t.Errorf("a hatched cell reads %q", m[2])
+		}
+	}
+}
+
+// bare are results without a cache or digests behind them, as Compare takes them.
+func bare() *run.Results {
+	return &run.Results{
+		Code: run.Code{Inputs: "in", Results: "one", Check: "check one"},
+		Candidates: []run.Candidate{
+			{Site: "A", Plant: "wind", Status: run.Fitted, Fit: &run.Fit{Turbines: make([]geo.LonLat, 2)}, Consequences: []scoring.Consequence{
+				{Key: "energy_p50_mwh_per_yr", Low: 900.5, Central: 1000.25, High: 1100.125},
+				{Key: "noise_dba", State: scoring.NotAssessed},
+				{Key: "flood_ha", State: scoring.None, Why: "no flood area touched"},
+				{Key: "habitat_ha", Low: 0, Central: 0, High: 3.5},
+			}},
+			{Site: "B", Plant: "wind", Status: run.NoRoom},
+		},
+		Voices: []run.VoiceOrder{{Voice: "farmers", Order: []run.Row{{Place: 1, Tier: 1, Site: "A", Plant: "wind", Score: 0.75}, {Place: 2, Tier: 2, Site: run.NoSite, Score: 0.25}}}},
+	}
+}
+
+// changed are bare results as a later run may find them: another digest, and what a test changes.
+func changed(change func(*run.Results)) *run.Results {
+	r := bare()
+	r.Code.Results, r.Code.Check = "two", "check two"
+	change(r)
+	return r
+}
+
+func TestStampCompares(t *testing.T) {
+	stamp := appendix.NewStamp(bare(), "v")
+	if verdict, diff := stamp.Compare(bare(), "v"); verdict != "identical" || diff != nil {
+		t.Errorf("the same results: %q, %v", verdict, diff)
+	}
+	agrees := changed(func(r *run.Results) {
+		for i := range r.Candidates[0].Consequences {
+			q := &r.Candidates[0].Consequences[i]
+			q.Low, q.Central, q.High = q.Low*(1+1e-9), q.Central*(1-1e-9), q.High*(1+1e-9)
+		}
+		r.Voices[0].Order[0].Score *= 1 + 1e-9
+	})
+	if verdict, diff := stamp.Compare(agrees, "v"); verdict != "agrees" || diff != nil {
+		t.Errorf("results a billionth off: %q, %v", verdict, diff)
+	}
+	for _, c := range []struct {
+		name   string
+		change func(*run.Results)
+		where  string
+	}{
+		{"a value", func(r *run.Results) { r.Candidates[0].Consequences[0].Central *= 1.00001 }, "energy_p50_mwh_per_yr"},
+		{"a low value", func(r *run.Results) { r.Candidates[0].Consequences[3].Low = 0.5 }, "habitat_ha"},
+		{"a state", func(r *run.Results) { r.Candidates[0].Consequences[1].State = scoring.Unknown }, "noise_dba"},
+		{"a reason", func(r *run.Results) { r.Candidates[0].Consequences[2].Why = "other" }, "flood_ha"},
+		{"a status", func(r *run.Results) { r.Candidates[1].Status = run.NotComputed }, "B"},
+		{"a turbine", func(r *run.Results) { r.Candidates[0].Fit.Turbines = make([]geo.LonLat, 3) }, "turbines"},
+		{"a candidate", func(r *run.Results) { r.Candidates = r.Candidates[:1] }, "candidates"},
+		{"a tier", func(r *run.Results) { r.Voices[0].Order[1].Tier = 1 }, "tier"},
+		{"a score", func(r *run.Results) { r.Voices[0].Order[0].Score = 0.7 }, "score"},
+		{"a voice", func(r *run.Results) { r.Voices = nil }, "voices"},
+	} {
+		verdict, diff := stamp.Compare(changed(c.change), "v")
+		if diff == nil || !strings.Contains(diff.Where, c.where) || diff.Old == diff.New {
+			t.Errorf("%s changed: %q, %+v", c.name, verdict, diff)
+		}
+	}
+	inputs := bare()
+	inputs.Code.Inputs, inputs.Code.Check = "other", "check three"
+	if _, diff := stamp.Compare(inputs, "v"); diff == nil || !strings.Contains(diff.Where, "inputs or settings") {
+		t.Errorf("other inputs with the same results: %+v", diff)
+	}
+}
+
+func TestStampSurvivesItsFile(t *testing.T) {
+	in := input(t)
+	dir := t.TempDir()
+	b, err := json.Marshal(appendix.NewStamp(in.Results, in.Version))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := os.WriteFile(filepath.Join(dir, appendix.StampFile), b, 0o600); err != nil {
+		t.Fatal(err)
+	}
+	s, err := appendix.ReadStamp(dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if verdict, diff := s.Compare(in.Results, in.Version); verdict != "identical" || diff != nil {
+		t.Errorf("after the file: %q, %v", verdict, diff)
+	}
+	// The values themselves must agree too, not only the digest.
+	again := *in.Results
+	again.Code.Results, again.Code.Check = "other", "other"
+	if verdict, diff := s.Compare(&again, in.Version); verdict != "agrees" || diff != nil {
+		t.Errorf("value by value: %q, %+v", verdict, diff)
+	}
+}
+
+func TestDamagedStampIsAnErrorOrADifference(t *testing.T) {
+	dir := t.TempDir()
+	if _, err := appendix.ReadStamp(dir); err == nil {
+		t.Error("a folder without a check code was read")
+	}
+	for _, text := range []string{"", "{", "[]", "{\"values\": 3}"} {
+		if err := os.WriteFile(filepath.Join(dir, appendix.StampFile), []byte(text), 0o600); err != nil {
+			t.Fatal(err)
+		}
+		if _, err := appendix.ReadStamp(dir); err == nil {
+			t.Errorf("%q was read as a check code", text)
+		}
+	}
+	for _, values := range []string{"", "???", "aGVsbG8="} {
+		s := appendix.NewStamp(bare(), "v")
+		s.Values = values
+		if verdict, diff := s.Compare(changed(func(*run.Results) {}), "v"); diff == nil {
+			t.Errorf("values %q: %q", values, verdict)
+		}
+	}
+}
+
+func TestOtherEditionIsNamed(t *testing.T) {
+	s := appendix.NewStamp(bare(), "v")
+	for step, n := range s.Editions {
+		s.Editions = map[string]int{}
+		for k, v := range run.Editions() {
+			s.Editions[k] = v
+		}
+		s.Editions[step] = n + 1
+		if _, diff := s.Compare(changed(func(*run.Results) {}), "v"); diff == nil || !strings.Contains(diff.Where, step) {
+			t.Errorf("edition of %s: %+v", step, diff)
+		}
+	}
+}
+
+func BenchmarkPage(b *testing.B) {
+	in := input(b)
+	for b.Loop() {
+		if _, err := appendix.Page(in); err != nil {
+			b.Fatal(err)
+		}
+	}
+}
+
+func BenchmarkStamp(b *testing.B) {
+	in := input(b)
+	for b.Loop() {
+		appendix.NewStamp(in.Results, in.Version)
+	}
+}

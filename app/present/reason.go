@@ -1,0 +1,182 @@
+package present
+
+import (
+	"strings"
+
+	"groundtally/scoring"
+)
+
+// reasons says in plain words why a value is missing, why a connection was judged as it was, or why a
+// candidate was not computed.
+var reasons = map[string]string{
+	"not_finite":              "the formula gives no finite number for these inputs",
+	"not_assessed":            "this version does not look at it",
+	"no_soil_here":            "the soil layer has no value for this ground",
+	"no_connection":           "no line or substation that the study knows can take the power",
+	"energy_payback":          "the inputs do not allow a payback time to be worked out",
+	"carbon_payback":          "the inputs do not allow a payback time to be worked out",
+	"regrowth":                "the inputs do not allow a time of regrowth to be worked out",
+	"eroi":                    "the inputs do not allow an energy return to be worked out",
+	"fit_machines_needs_wind": "a number of machines was asked for, and this plant option has no turbine",
+
+	"one_part_without_room":   "only one of the plant's two parts finds room here",
+	"limit_below_one_machine": "what the fit allows is less than one machine",
+	"turbine_does_not_fit":    "the settings of the plant option do not fit the chosen turbine",
+	"plant_out_of_range":      "a setting of the plant option is outside the range of the method",
+
+	// Judgements on a line or substation.
+	"voltage_out_of_scope":       "the voltage is outside what this screening covers; ask the network operator",
+	"voltage_unknown":            "the voltage is not known; ask the network operator",
+	"above_level_band":           "the plant is too large for this voltage",
+	"tap_forbidden":              "the line may not be tapped",
+	"tap_high_voltage":           "a line of this voltage is not tapped for a plant of this size; it needs a substation",
+	"tap_unknown":                "it is not known whether the line may be tapped; ask the network operator",
+	"no_conductor_listed":        "the table of conductors has none for this voltage",
+	"thermal_rating":             "the current would be more than the conductor bears",
+	"voltage_rise":               "the voltage would rise beyond the limit",
+	"voltage_rise_at_long_route": "with the longest route the voltage would rise beyond the limit",
+	"transfer_impossible":        "the power cannot be carried that far at this voltage",
+	"spare_none":                 "no spare capacity is left",
+	"spare_part":                 "the spare capacity covers only part of the plant; an export limit would be needed",
+	"spare_unknown":              "the spare capacity is not known; ask the network operator",
+	"spare_old":                  "the word on spare capacity is old; ask the network operator again",
+	"upstream_unknown":           "it is not known what the network behind it can take; ask the network operator",
+	"below_level_band":           "the plant is small for this voltage",
+	"above_usual_power":          "the power is above what is usual at this voltage; expect a study by the network operator",
+	"short_circuit_weak":         "the network is weak here for this power",
+	"short_circuit_low":          "the network is rather weak here for this power",
+	"short_circuit_noted":        "the strength of the network here should be looked at",
+	"charging_ask":               "a cable of this length draws charging power; ask the network operator",
+	"charging_compensation":      "a cable of this length draws so much charging power that it needs compensation",
+	"rapid_change":               "switching the plant would change the voltage quickly",
+	"busbar_taken_as_regulated":  "the voltage of the substation is taken as held steady",
+}
+
+// prefixed are reasons that name something after a colon; %s stands for it.
+var prefixed = map[string]string{
+	"no_layer":           "the study has no layer of %s",
+	"layer_not_complete": "nothing was found, and no layer of %s is declared complete for the place",
+	"nothing_found":      "the layer of %s has nothing to measure to",
+	"not_set":            "the setting %s must be entered first",
+	"missing_value":      "features of the layer lack the value they need: %s",
+	"tracks_not_placed":  "the likely way of new tracks meets %s, and their true place is not known",
+}
+
+// Reason writes in plain words why a value is unknown, not set or none, why a candidate was not
+// computed, or how a connection was judged. A reason that is plain words already stays as it is.
+func Reason(code string) string {
+	if s, ok := reasons[code]; ok {
+		return s
+	}
+	if name, what, ok := strings.Cut(code, ":"); ok {
+		if s, known := prefixed[name]; known {
+			if name != "not_set" {
+				what = strings.ReplaceAll(plain(strings.ReplaceAll(what, "|", " or of ")), ".", ", ")
+			}
+			return strings.Replace(s, "%s", what, 1)
+		}
+	}
+	if strings.Contains(code, " ") {
+		return code
+	}
+	if strings.Contains(code, ".") { // the key of a setting
+		return strings.Replace(prefixed["not_set"], "%s", code, 1)
+	}
+	return plain(code)
+}
+
+// WhyNot writes the state of a consequence that is no number, with its reason: "unknown: the study has
+// no layer of soil". It is empty for a number.
+func WhyNot(c scoring.Consequence) string {
+	switch c.State {
+	case scoring.Number:
+		return ""
+	case scoring.Never:
+		return "never: what was spent is not paid back within the life of the plant"
+	case scoring.NotAssessed:
+		return "not assessed: " + reasons["not_assessed"]
+	case scoring.Class:
+		return c.Why
+	}
+	if c.Why == "" {
+		return c.State.String()
+	}
+	return c.State.String() + ": " + Reason(c.Why)
+}
+
+// plain writes a code with blanks.
+func plain(code string) string { return strings.ReplaceAll(code, "_", " ") }
+
+// Rule writes the name of a rule in words: "setback:dwellings" becomes "distance from dwellings".
+func Rule(name string) string {
+	kind, what, ok := strings.Cut(name, ":")
+	if !ok {
+		return plain(name)
+	}
+	switch kind {
+	case "setback":
+		if what == "boundary" {
+			return "distance from the site's boundary"
+		}
+		return "distance from " + plain(what)
+	case "exclude":
+		if what == "exclusion" {
+			return "excluded ground"
+		}
+		return "ground excluded as " + plain(what)
+	}
+	return plain(kind) + " " + plain(what)
+}
+
+// steps names the steps of a loss chain.
+var steps = map[string]string{
+	"wake": "wakes of the other turbines", "availability": "time out of service", "electrical": "losses in cables and transformers", "performance": "performance below the published curve",
+	"environment": "ice, dirt and weather", "curtailment": "energy cut off", "ac_wiring": "wiring behind the inverter", "dc_wiring": "wiring before the inverter", "auxiliary": "own use",
+	"clipping": "power above what the inverter takes", "incidence_angle": "reflection at the glass", "inverter": "inverter", "light_induced": "first fading of the modules in light", "mismatch": "differences between modules",
+	"nameplate": "modules below their rating", "rear_light": "light on the rear side", "row_shade_beam": "rows shading each other, direct light", "row_shade_diffuse": "rows shading each other, light of the sky",
+	"row_shade_electrical": "strings held back by shade", "snow": "snow", "soiling": "dirt on the modules", "temperature": "warmth of the modules", "transformer": "transformer",
+}
+
+// Step writes the name of a step of a loss chain in words.
+func Step(name string) string {
+	if s, ok := steps[name]; ok {
+		return s
+	}
+	return plain(name)
+}
+
+// words of the few codes that people meet outside notices.
+var named = map[string]string{
+	"fitted": "fitted", "no_room": "without room", "not_computed": "not computed",
+	"fill": "fills the buildable area", "power": "up to a power", "machines": "a number of machines", "yearly_energy": "up to a yearly energy", "spare_capacity": "up to the spare capacity",
+	"grid_line": "power line", "line": "power line", "substation": "substation",
+	"grid_lines": "power line", "substations": "substation",
+}
+
+// Named writes a status, a fit mode or a kind of connection in words.
+func Named(code string) string {
+	if s, ok := named[code]; ok {
+		return s
+	}
+	return plain(code)
+}
+
+// Provenance writes how a value was come by. A value that was not checked against its source says so.
+func Provenance(p string) string {
+	switch p {
+	case "memory":
+		return "default, unverified"
+	case "read":
+		return "read in the source"
+	case "secondary":
+		return "second-hand"
+	case "derived":
+		return "derived from the source"
+	case "user", "user ":
+		return "entered by the user"
+	}
+	if who, ok := strings.CutPrefix(p, "user "); ok {
+		return "entered by " + who
+	}
+	return p
+}
