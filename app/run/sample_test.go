@@ -110,6 +110,7 @@ func TestSampleComputes(t *testing.T) {
 	if len(r.Voices) != 3 || len(first) != 3 {
 		t.Errorf("the voices' first candidates are %v: three voices must disagree", first)
 	}
+	checkGolden(t, r)
 	for _, o := range []string{"solar_fixed", "solar_tracking", "solar_vertical", "solar_agri", "wind", "wind_large", "wind_solar"} {
 		if fitted[o] == 0 {
 			t.Errorf("option %s fits nowhere", o)

@@ -66,9 +66,9 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 				continue
 			}
 			switch {
-			case work.odd[s] == nil:
+			case !work.odd[s]:
 				samples[i] = append(samples[i], work.x[s])
-			case work.odd[s].State == scoring.Never:
+			case work.val[s].State == scoring.Never:
 				out[i].Nevers++
 			}
 		}
@@ -86,11 +86,15 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 // moves eight bytes a value.
 type bench struct {
 	x   []float64
-	odd []*scoring.Value // nil for a number
+	odd []bool
+	val []scoring.Value // of those that are no number
+
+	in  []scoring.Value // room for the inputs of one quantity
+	buf [24]float64
 }
 
 func (g *Graph) bench(v []scoring.Value) *bench {
-	b := &bench{x: make([]float64, len(v)), odd: make([]*scoring.Value, len(v))}
+	b := &bench{x: make([]float64, len(v)), odd: make([]bool, len(v)), val: make([]scoring.Value, len(v)), in: make([]scoring.Value, 0, 24)}
 	for i := range v {
 		b.put(i, v[i])
 	}
@@ -99,15 +103,15 @@ func (g *Graph) bench(v []scoring.Value) *bench {
 
 func (b *bench) put(slot int, v scoring.Value) {
 	if v.OK() {
-		b.x[slot], b.odd[slot] = v.X, nil
+		b.x[slot], b.odd[slot] = v.X, false
 		return
 	}
-	b.x[slot], b.odd[slot] = 0, &v
+	b.val[slot], b.odd[slot] = v, true
 }
 
 func (b *bench) value(slot int) scoring.Value {
-	if b.odd[slot] != nil {
-		return *b.odd[slot]
+	if b.odd[slot] {
+		return b.val[slot]
 	}
 	return scoring.Value{X: b.x[slot]}
 }
@@ -115,15 +119,16 @@ func (b *bench) value(slot int) scoring.Value {
 // trial sets the drawn leaves of trial t and evaluates what depends on them.
 func (b *bench) trial(g *Graph, drawn []Drawn, hot []int, t int) {
 	for _, d := range drawn {
-		b.x[d.Slot], b.odd[d.Slot] = d.Values[t], nil
+		b.x[d.Slot], b.odd[d.Slot] = d.Values[t], false
 	}
-	var buf [24]float64
+	in := b.in
+	buf := &b.buf
 	for _, i := range hot {
 		q := &g.quantities[i]
 		numbers := q.Eval.Numbers != nil
 		x := buf[:0]
 		for _, s := range g.inputs[i] {
-			if b.odd[s] != nil {
+			if b.odd[s] {
 				numbers = false
 				break
 			}
@@ -132,16 +137,15 @@ func (b *bench) trial(g *Graph, drawn []Drawn, hot []int, t int) {
 		slot := len(g.leaves) + i
 		if numbers {
 			if y, ok := q.Eval.Numbers(x); ok && !math.IsNaN(y) && !math.IsInf(y, 0) {
-				b.x[slot], b.odd[slot] = y, nil
+				b.x[slot], b.odd[slot] = y, false
 				continue
 			}
 		}
-		var in [24]scoring.Value
-		vs := in[:0]
+		in = in[:0]
 		for _, s := range g.inputs[i] {
-			vs = append(vs, b.value(s))
+			in = append(in, b.value(s))
 		}
-		b.put(slot, q.Eval.Values(vs))
+		b.put(slot, q.Eval.Values(in))
 	}
 }
 
