@@ -3,27 +3,16 @@ package term
 import (
 	"context"
 	"encoding/json"
-	"errors"
 	"fmt"
 	"io"
-	"os"
+	"runtime/debug"
+	"slices"
 	"sort"
 	"strings"
 	"time"
 
 	"groundtally/app/run"
 	"groundtally/app/study"
-)
-
-// Exit codes of the terminal program.
-const (
-	ExitDone        = 0
-	ExitNo          = 1 // the answer is no
-	ExitUsage       = 2 // wrong usage, or a question that only the user can answer
-	ExitLeftOut     = 3 // done, but some input was left out
-	ExitUnreadable  = 4 // study unreadable or newer than the program
-	ExitUnexpected  = 5
-	ExitInterrupted = 130
 )
 
 // App is the terminal program with what it is wired to.
@@ -49,6 +38,7 @@ type verb struct {
 	name    string
 	usage   string
 	summary string
+	more    string // what else the help of the verb says
 	options []option
 	places  [2]int // least and most words besides options
 	run     func(c *call) (int, error)
@@ -62,125 +52,159 @@ type call struct {
 	args arguments
 	json bool
 	calm bool
+	out  *watched
 }
 
-var common = []option{
-	{name: "json", help: "answer as JSON"},
-	{name: "quiet", help: "no progress and no notices"},
+// watched remembers the first error of a writer, so that an answer that did not arrive is not called done.
+type watched struct {
+	w   io.Writer
+	err error
 }
+
+func (w *watched) Write(p []byte) (int, error) {
+	n, err := w.w.Write(p)
+	if err != nil && w.err == nil {
+		w.err = err
+	}
+	return n, err
+}
+
+var (
+	common = []option{
+		{name: "json", help: "answer as JSON"},
+		{name: "quiet", help: "no progress and no notices"},
+	}
+	coresOption  = option{name: "cores", value: "N", help: "how many processor cores to use; the digits do not depend on it"}
+	reasonOption = option{name: "reason", value: "TEXT", help: "why, for the journal"}
+)
 
 func verbs() []verb {
 	return []verb{verbNew, verbAdd, verbRemove, verbGroup, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
 		verbCheck, verbCompute, verbTable, verbWhy, verbOrder, verbAppendix, verbVerify}
 }
 
+func findVerb(name string) (verb, bool) {
+	for _, v := range verbs() {
+		if v.name == name {
+			return v, true
+		}
+	}
+	return verb{}, false
+}
+
 // Run runs one verb and gives the exit code.
 func (a *App) Run(ctx context.Context, words []string) int {
-	if len(words) == 0 || words[0] == "help" || words[0] == "--help" || words[0] == "-h" {
-		a.help(words)
-		return ExitDone
+	if len(words) == 0 {
+		a.overview(a.Err)
+		return ExitUsage
 	}
-	if words[0] == "--version" {
-		fmt.Fprintln(a.Out, "gtally "+a.Version)
-		for _, e := range a.Engines {
-			fmt.Fprintln(a.Out, e)
-		}
-		return ExitDone
-	}
-	for _, v := range verbs() {
-		if v.name != words[0] {
-			continue
-		}
-		if len(words) > 1 && (words[1] == "--help" || words[1] == "-h") {
-			a.help([]string{"help", v.name})
-			return ExitDone
-		}
-		args, err := parse(words[1:], append(v.options, common...))
-		c := &call{App: a, ctx: ctx, verb: v, args: args, json: args.has("json"), calm: args.has("quiet")}
-		if err == nil && (len(args.places) < v.places[0] || len(args.places) > v.places[1]) {
-			err = usagef("usage: gtally %s", v.usage)
-		}
-		code := ExitDone
-		if err == nil {
-			code, err = v.run(c)
-		}
-		return c.finish(code, err)
-	}
-	fmt.Fprintf(a.Err, "gtally: there is no verb %q. Type gtally help.\n", words[0])
-	return ExitUsage
-}
-
-// finish writes an error and gives the exit code that belongs to it.
-func (c *call) finish(code int, err error) int {
-	if err == nil {
-		return code
-	}
-	var usage *usageError
-	var question *study.QuestionError
-	var file *study.FileError
-	var key *study.UnknownKeyError
-	var value *study.ValueError
+	v, ok := findVerb(words[0])
+	c := &call{App: a, ctx: ctx, verb: v, json: slices.Contains(words, "--json"), calm: slices.Contains(words, "--quiet"), out: &watched{w: a.Out}}
 	switch {
-	case errors.Is(err, context.Canceled):
-		code = ExitInterrupted
-	case errors.As(err, &usage), errors.As(err, &question), errors.As(err, &key), errors.As(err, &value):
-		code = ExitUsage
-	case errors.Is(err, study.ErrNewerStudy), errors.Is(err, study.ErrNotAStudy), errors.Is(err, study.ErrDamaged):
-		code = ExitUnreadable
-	case errors.Is(err, os.ErrNotExist) && c.verb.name != "add":
-		code = ExitUnreadable
-	case errors.As(err, &file), errors.Is(err, study.ErrNotThere), errors.Is(err, study.ErrNameInUse), errors.Is(err, study.ErrNothingToDo):
-		code = ExitNo
-	default:
-		code = ExitUnexpected
-	}
-	if c.json {
-		out := map[string]any{"error": err.Error(), "exit": code}
-		if question != nil {
-			out["questions"] = question.Questions
+	case words[0] == "help" || words[0] == "--help" || words[0] == "-h":
+		if len(words) == 1 {
+			a.overview(c.out)
+			return c.finish(ExitDone, nil)
 		}
-		c.printJSON(out)
+		if v, ok = findVerb(words[1]); ok {
+			v.help(c.out)
+			return c.finish(ExitDone, nil)
+		}
+		return c.finish(0, usagef("there is no verb %q; gtally help lists the verbs", words[1]))
+	case words[0] == "--version" || words[0] == "version":
+		fmt.Fprintln(c.out, "gtally, "+a.Version)
+		for _, e := range a.Engines {
+			fmt.Fprintln(c.out, e)
+		}
+		return c.finish(ExitDone, nil)
+	case !ok:
+		return c.finish(0, usagef("there is no verb %q; gtally help lists the verbs", words[0]))
+	case slices.Contains(words[1:], "--help") || slices.Contains(words[1:], "-h"):
+		v.help(c.out)
+		return c.finish(ExitDone, nil)
 	}
-	fmt.Fprintf(c.Err, "gtally %s: %v\n", c.verb.name, err)
-	return code
+	var err error
+	if c.args, err = parse(words[1:], append(slices.Clone(v.options), common...)); err != nil {
+		return c.finish(0, err)
+	}
+	c.json, c.calm = c.args.has("json"), c.args.has("quiet")
+	if len(c.args.places) < v.places[0] || len(c.args.places) > v.places[1] {
+		return c.finish(0, usagef("usage: gtally %s", v.usage))
+	}
+	return c.finish(c.guarded())
 }
 
-func (a *App) help(words []string) {
-	if len(words) > 1 {
-		for _, v := range verbs() {
-			if v.name != words[1] {
-				continue
-			}
-			fmt.Fprintf(a.Out, "gtally %s\n  %s\n", v.usage, v.summary)
-			for _, o := range append(v.options, common...) {
-				name := "--" + o.name
-				if o.value != "" {
-					name += " " + o.value
-				}
-				fmt.Fprintf(a.Out, "  %-28s %s\n", name, o.help)
-			}
-			return
+// guarded runs the verb; a fault of the program comes back as an error.
+func (c *call) guarded() (code int, err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			err = &faultError{what: fmt.Sprint(p), details: string(debug.Stack())}
 		}
-	}
-	fmt.Fprintln(a.Out, "gtally compares the parcels of a district for community wind or solar.\n\nVerbs:")
+	}()
+	return c.verb.run(c)
+}
+
+func (a *App) overview(w io.Writer) {
+	fmt.Fprintln(w, "gtally compares the parcels of a district for community wind or solar.\n\nVerbs:")
 	for _, v := range verbs() {
-		fmt.Fprintf(a.Out, "  %-10s %s\n", v.name, v.summary)
+		fmt.Fprintf(w, "  %-10s %s\n", v.name, v.summary)
 	}
-	fmt.Fprintln(a.Out, "\nType gtally help VERB for the options of a verb. A screening: it replaces no permit, no survey,\nno grid operator's study and no licensed engineer.")
+	fmt.Fprint(w, `
+Type gtally help VERB for the options of a verb, gtally --version for versions.
+
+Exit codes: 0 done; 1 the answer is no (check found errors, verify found a difference, a file cannot
+be added); 2 wrong usage, or a question that only you can answer (nothing is done); 3 done, but some
+of the file was left out; 4 the study cannot be read, or was made by a newer version; 5 unexpected
+(disk full, no right to write, a fault of the program); 130 interrupted.
+
+A screening: it replaces no permit, no survey, no grid operator's study and no licensed engineer.
+`)
+}
+
+func (v verb) help(w io.Writer) {
+	fmt.Fprintf(w, "gtally %s\n  %s\n", v.usage, v.summary)
+	if v.more != "" {
+		fmt.Fprintf(w, "  %s\n", strings.ReplaceAll(v.more, "\n", "\n  "))
+	}
+	fmt.Fprintln(w, "options:")
+	for _, o := range append(slices.Clone(v.options), common...) {
+		name := "--" + o.name
+		if o.value != "" {
+			name += " " + o.value
+		}
+		if o.many {
+			name += " ..."
+		}
+		fmt.Fprintf(w, "  %-28s %s\n", name, o.help)
+	}
 }
 
 func (c *call) printJSON(v any) {
-	enc := json.NewEncoder(c.Out)
+	enc := json.NewEncoder(c.out)
 	enc.SetEscapeHTML(false)
 	enc.SetIndent("", " ")
-	if err := enc.Encode(v); err != nil {
-		fmt.Fprintf(c.Err, "gtally: the answer cannot be written as JSON: %v\n", err)
+	if err := enc.Encode(v); err != nil && c.out.err == nil {
+		c.out.err = err
 	}
+}
+
+// answer prints v when JSON is asked for, else text.
+func (c *call) answer(v any, format string, args ...any) {
+	if c.json {
+		c.printJSON(v)
+		return
+	}
+	c.say(format, args...)
+}
+
+// done answers a verb whose answer is only that it was done.
+func (c *call) done(text string) {
+	c.answer(map[string]any{"study": c.args.places[0], "done": text}, "%s", text)
 }
 
 func (c *call) say(format string, args ...any) {
 	if !c.json {
-		fmt.Fprintf(c.Out, format+"\n", args...)
+		fmt.Fprintf(c.out, format+"\n", args...)
 	}
 }
 
@@ -198,7 +222,7 @@ func (c *call) open() (*study.Study, error) {
 	}
 	s, err := study.Open(c.ctx, store, c.Catalog, study.Options{Who: c.Who, Clock: c.Clock})
 	if err != nil {
-		store.Close()
+		_ = store.Close() // the first error is the one to tell
 		return nil, err
 	}
 	return s, nil
@@ -225,27 +249,4 @@ func sortedKeys[V any](m map[string]V) []string {
 	}
 	sort.Strings(out)
 	return out
-}
-
-// columns writes rows with their cells under each other.
-func columns(w io.Writer, rows [][]string) {
-	var width []int
-	for _, r := range rows {
-		for i, cell := range r {
-			if i == len(width) {
-				width = append(width, 0)
-			}
-			width[i] = max(width[i], len([]rune(cell)))
-		}
-	}
-	for _, r := range rows {
-		var b strings.Builder
-		for i, cell := range r {
-			b.WriteString(cell)
-			if i+1 < len(r) {
-				b.WriteString(strings.Repeat(" ", width[i]-len([]rune(cell))+2))
-			}
-		}
-		fmt.Fprintln(w, strings.TrimRight(b.String(), " "))
-	}
 }

@@ -1,9 +1,10 @@
 package term
 
 import (
-	"fmt"
 	"sort"
+	"strconv"
 	"strings"
+	"unicode"
 )
 
 // option describes one option of a verb.
@@ -30,13 +31,6 @@ func (a arguments) get(name string) string {
 	return ""
 }
 
-// usageError is wrong usage: exit code 2.
-type usageError struct{ text string }
-
-func (e *usageError) Error() string { return e.text }
-
-func usagef(format string, args ...any) error { return &usageError{fmt.Sprintf(format, args...)} }
-
 // parse parts words by the options a verb knows. "--" ends the options; "--name=value" and
 // "--name value" are the same.
 func parse(words []string, options []option) (arguments, error) {
@@ -50,6 +44,9 @@ func parse(words []string, options []option) (arguments, error) {
 		if w == "--" {
 			a.places = append(a.places, words[i+1:]...)
 			break
+		}
+		if len(w) > 1 && w[0] == '-' && unicode.IsLetter(rune(w[1])) {
+			return a, usagef("there is no option %s; options begin with two dashes", w)
 		}
 		if !strings.HasPrefix(w, "--") {
 			a.places = append(a.places, w)
@@ -75,14 +72,26 @@ func parse(words []string, options []option) (arguments, error) {
 		case o.value == "":
 		case inline:
 			a.values[name] = append(a.values[name], value)
-		case i+1 < len(words):
+		case i+1 < len(words) && !strings.HasPrefix(words[i+1], "--"):
 			i++
 			a.values[name] = append(a.values[name], words[i])
 		default:
-			return a, usagef("option --%s needs %s", name, o.value)
+			return a, usagef("option --%s needs %s after it", name, o.value)
 		}
 	}
 	return a, nil
+}
+
+// whole reads an option that is a whole number from least on; without the option it gives fallback.
+func (a arguments) whole(name string, least, fallback int) (int, error) {
+	if !a.has(name) {
+		return fallback, nil
+	}
+	n, err := strconv.Atoi(a.get(name))
+	if err != nil || n < least {
+		return 0, usagef("--%s wants a whole number from %d, not %q", name, least, a.get(name))
+	}
+	return n, nil
 }
 
 // pairs reads options of the form KEY=VALUE.

@@ -2,53 +2,63 @@ package term
 
 import (
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
 	"groundtally/app/run"
 	"groundtally/app/study"
+	"groundtally/geo"
 )
+
+// firstPlaces is how many places of an order are printed unless told otherwise.
+const firstPlaces = 20
 
 var verbOrder = verb{
 	name: "order", usage: "order STUDY.gpkg [--voice NAME] [--top N]", summary: "the order under one voice or all, with its parts",
-	options: []option{{name: "voice", value: "NAME", help: "only this voice"}, {name: "top", value: "N", help: "only the first N places"}, {name: "cores", value: "N", help: "cores for computing what is stale"}},
-	places:  [2]int{1, 1},
+	options: []option{{name: "voice", value: "NAME", help: "only this voice"},
+		{name: "top", value: "N", help: fmt.Sprintf("only the first N places; in print %d unless told otherwise, in the JSON all", firstPlaces)}, coresOption},
+	places: [2]int{1, 1},
 	run: func(c *call) (int, error) {
-		top := 20
-		if v := c.args.get("top"); v != "" {
-			var err error
-			if top, err = strconv.Atoi(v); err != nil || top < 1 {
-				return 0, usagef("--top wants a whole number from 1, not %q", v)
-			}
+		top, err := c.args.whole("top", 1, firstPlaces)
+		if err != nil {
+			return 0, err
 		}
 		return c.with(func(s *study.Study) (int, error) {
 			snap, err := s.Snapshot()
 			if err != nil {
 				return 0, err
 			}
-			if len(snap.Voices()) == 0 {
-				return 0, usagef("the study has no voice yet; give weights with gtally set STUDY.gpkg voice.NAME.weight.KEY POINTS")
+			names := snap.Voices()
+			if len(names) == 0 {
+				return 0, &questionsError{[]study.Question{{Text: "the study has no voice yet; what does a group give weight to? For one:",
+					Option: "gtally set " + shellWord(c.args.places[0]) + " voice.residents.weight.nearest_dwelling_m 100"}}}
+			}
+			if v := c.args.get("voice"); c.args.has("voice") && !slices.Contains(names, v) {
+				return 0, usagef("there is no voice %q; the voices are: %s", v, strings.Join(names, ", "))
 			}
 			r, err := c.compute(s)
 			if err != nil {
 				return 0, err
 			}
 			c.tell(r)
-			var voices []run.VoiceOrder
+			voices := []run.VoiceOrder{}
 			for _, v := range r.Voices {
-				if !c.args.has("voice") || v.Voice == c.args.get("voice") {
-					voices = append(voices, v)
+				if c.args.has("voice") && v.Voice != c.args.get("voice") {
+					continue
 				}
-			}
-			if len(voices) == 0 {
-				return 0, fmt.Errorf("voice %q: %w; the voices are %s", c.args.get("voice"), study.ErrNotThere, strings.Join(snap.Voices(), ", "))
+				if v.Title == "" {
+					v.Title = v.Voice
+				}
+				if v.Notices == nil {
+					v.Notices = []geo.Notice{}
+				}
+				if c.json && c.args.has("top") {
+					v.Order = v.Order[:min(top, len(v.Order))]
+				}
+				voices = append(voices, v)
 			}
 			if c.json {
-				if c.args.has("top") {
-					for i := range voices {
-						voices[i].Order = voices[i].Order[:min(top, len(voices[i].Order))]
-					}
-				}
 				c.printJSON(map[string]any{"study": c.args.places[0], "voices": voices, "code": r.Code})
 				return ExitDone, nil
 			}
@@ -60,73 +70,71 @@ var verbOrder = verb{
 	},
 }
 
+// marks shortens what is to be said of many rows to a letter with a line below the table.
+type marks struct {
+	letters map[string]string
+	texts   []string
+}
+
+func (m *marks) letter(text string) string {
+	if l, ok := m.letters[text]; ok {
+		return l
+	}
+	n := len(m.texts)
+	l := string(rune('a' + n%26))
+	if n >= 26 {
+		l += strconv.Itoa(n / 26)
+	}
+	m.letters[text] = l
+	m.texts = append(m.texts, l+"  "+text)
+	return l
+}
+
 // voice prints the first places of an order; a score never stands without its parts.
 func (c *call) voice(v run.VoiceOrder, top int) {
-	title := v.Title
-	if title == "" {
-		title = v.Voice
+	title := v.Voice
+	if v.Title != v.Voice {
+		title = fmt.Sprintf("%s (%s)", v.Title, v.Voice)
 	}
-	c.say("%s (%s): %d candidates in order", title, v.Voice, len(v.Order)-1)
 	if len(v.Order) == 0 {
+		c.say("%s: nothing to order", title)
 		return
 	}
+	count := 0
+	for _, r := range v.Order {
+		if r.Site != run.NoSite {
+			count++
+		}
+	}
+	c.say("%s: %d candidates and doing nothing, in order. Score = sum of the parts [1], [2] and so on; each part is weight times value.", title, count)
 	keys := sortedKeys(v.Order[0].Parts)
 	for i, k := range keys {
 		c.say("  [%d] %s, weight %.3f", i+1, k, v.Order[0].Parts[k].Weight)
 	}
-	head := []string{"place", "tier", "site", "plant", "score", "low", "high", "ranks", "first in 100", "can be first"}
+	head := []string{"place", "tier", "site", "plant", "score", "low", "high", "places", "first in 100", "can lead"}
+	right := map[int]bool{0: true, 1: true, 4: true, 5: true, 6: true, 7: true, 8: true}
 	for i := range keys {
+		right[len(head)] = true
 		head = append(head, fmt.Sprintf("[%d]", i+1))
 	}
 	rows := [][]string{append(head, "marks")}
-	row := func(r run.Row) []string {
-		cells := []string{strconv.Itoa(r.Place), strconv.Itoa(r.Tier), r.Site, r.Plant, fmt.Sprintf("%.3f", r.Score), fmt.Sprintf("%.3f", r.ScoreLow), fmt.Sprintf("%.3f", r.ScoreHigh),
-			fmt.Sprintf("%d-%d", r.RankBest, r.RankWorst), fmt.Sprintf("%.0f", r.FirstIn100), r.CanBeFirst}
-		if r.Site == run.NoSite {
-			cells[2], cells[3] = "do nothing", ""
-		}
-		for _, k := range keys {
-			p := r.Parts[k]
-			cell := fmt.Sprintf("%.3f", p.Share)
-			if p.Value == nil {
-				cell += " ?"
-			}
-			cells = append(cells, cell)
-		}
-		var marks []string
-		if len(r.OverLimit) > 0 {
-			marks = append(marks, "over the limit: "+strings.Join(r.OverLimit, ", "))
-		}
-		if len(r.Unknown) > 0 {
-			marks = append(marks, fmt.Sprintf("%d unknown", len(r.Unknown)))
-		}
-		if len(r.Incomplete) > 0 {
-			marks = append(marks, "incomplete: "+strings.Join(r.Incomplete, ", "))
-		}
-		if len(r.DominatedBy) > 0 {
-			marks = append(marks, "dominated by "+r.DominatedBy[0])
-		}
-		if len(r.Alerts) > 0 {
-			marks = append(marks, "very low: "+strings.Join(r.Alerts, ", "))
-		}
-		if g, ok := r.Gates["owner_consent"]; ok && g.State != "yes" {
-			marks = append(marks, "owner's consent: "+g.State)
-		}
-		return append(cells, strings.Join(marks, "; "))
-	}
+	m := &marks{letters: map[string]string{}}
 	for i, r := range v.Order {
 		if i < top || r.Site == run.NoSite {
-			rows = append(rows, row(r))
+			rows = append(rows, orderRow(r, keys, m))
 		}
 	}
-	columns(c.Out, rows)
+	columns(c.out, rows, right)
+	for _, t := range m.texts {
+		c.say("  %s", t)
+	}
 	for _, t := range v.Tipping {
 		var ends []string
 		if t.Below != nil {
-			ends = append(ends, fmt.Sprintf("below %.3f %s leads", t.Below.At, t.Below.NewFirst))
+			ends = append(ends, fmt.Sprintf("below %.3f %s leads", t.Below.At, leader(t.Below.NewFirst)))
 		}
 		if t.Above != nil {
-			ends = append(ends, fmt.Sprintf("above %.3f %s leads", t.Above.At, t.Above.NewFirst))
+			ends = append(ends, fmt.Sprintf("above %.3f %s leads", t.Above.At, leader(t.Above.NewFirst)))
 		}
 		if len(ends) == 0 {
 			ends = []string{"no weight of it changes first place"}
@@ -134,8 +142,56 @@ func (c *call) voice(v run.VoiceOrder, top int) {
 		c.say("  tipping weight of %s (now %.3f): %s", t.Key, t.Weight, strings.Join(ends, "; "))
 	}
 	if len(v.HeldBack) > 0 {
-		c.say("  held back by a gate: %d", len(v.HeldBack))
+		c.say("  held back by a gate: %d candidates", len(v.HeldBack))
 	}
-	c.say("  \"?\" marks an unknown part: it counts half its weight and widens the interval. \"first in 100\": of 100 weight mixes near the voice's weights.")
+	c.notices(v.Notices)
+	c.say("  Candidates of one tier cannot be told apart. \"places\": best and worst place within the intervals.\n  \"first in 100\": of 100 weight mixes near the voice's weights. \"?\": an unknown part counts half its weight and widens the interval.")
 	c.say("")
+}
+
+func leader(id string) string {
+	if id == run.NoSite {
+		return "doing nothing"
+	}
+	return id
+}
+
+func orderRow(r run.Row, keys []string, m *marks) []string {
+	cells := []string{strconv.Itoa(r.Place), strconv.Itoa(r.Tier), r.Site, r.Plant, fmt.Sprintf("%.3f", r.Score), fmt.Sprintf("%.3f", r.ScoreLow), fmt.Sprintf("%.3f", r.ScoreHigh),
+		fmt.Sprintf("%d-%d", r.RankBest, r.RankWorst), fmt.Sprintf("%.0f", r.FirstIn100), r.CanBeFirst}
+	if r.Site == run.NoSite {
+		cells[2], cells[3] = "do nothing", ""
+	}
+	for _, k := range keys {
+		p := r.Parts[k]
+		mark := "  "
+		if p.Value == nil {
+			mark = " ?"
+		}
+		cells = append(cells, fmt.Sprintf("%.3f", p.Share)+mark)
+	}
+	var said []string
+	if len(r.OverLimit) > 0 {
+		said = append(said, "OVER THE LIMIT: "+strings.Join(r.OverLimit, ", "))
+	}
+	if len(r.Unknown) > 0 {
+		said = append(said, m.letter("unknown: "+strings.Join(r.Unknown, ", ")))
+	}
+	if len(r.Incomplete) > 0 {
+		var without []string
+		for _, k := range r.Incomplete {
+			without = append(without, missingRule(k))
+		}
+		said = append(said, m.letter("incomplete: computed without what is not set: "+strings.Join(without, ", ")))
+	}
+	if len(r.Alerts) > 0 {
+		said = append(said, m.letter("very low: "+strings.Join(r.Alerts, ", ")))
+	}
+	if g, ok := r.Gates["owner_consent"]; ok && g.State != "yes" {
+		said = append(said, m.letter("owner's consent: "+g.State))
+	}
+	if len(r.DominatedBy) > 0 {
+		said = append(said, "dominated by "+leader(r.DominatedBy[0]))
+	}
+	return append(cells, strings.Join(said, ", "))
 }

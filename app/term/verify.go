@@ -1,7 +1,8 @@
 package term
 
 import (
-	"encoding/json"
+	"errors"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"strings"
@@ -11,91 +12,33 @@ import (
 	"groundtally/app/study"
 )
 
-var verbAppendix = verb{
-	name: "appendix", usage: "appendix STUDY.gpkg --to FOLDER [--form page]", summary: "writes the appendix and prints its check code",
-	options: []option{{name: "to", value: "FOLDER", help: "folder to write into"}, {name: "form", value: "page", help: "forms, parted by commas; this version writes page"}, {name: "top", value: "N", help: "places of each voice on the page"}, {name: "cores", value: "N", help: "cores for computing what is stale"}},
-	places:  [2]int{1, 1},
-	run: func(c *call) (int, error) {
-		if !c.args.has("to") {
-			return 0, usagef("where to? Say --to FOLDER")
-		}
-		for _, f := range strings.Split(c.args.get("form"), ",") {
-			if f != "" && f != "page" {
-				return 0, usagef("there is no form %q yet; this version writes page", f)
-			}
-		}
-		return c.with(func(s *study.Study) (int, error) {
-			snap, err := s.Snapshot()
-			if err != nil {
-				return 0, err
-			}
-			r, err := c.compute(s)
-			if err != nil {
-				return 0, err
-			}
-			c.tell(r)
-			layers, err := appendix.MapLayers(c.ctx, snap, run.StoreLoader(s.Store()))
-			if err != nil {
-				return 0, err
-			}
-			notices, err := run.Check(c.ctx, s, c.Params)
-			if err != nil {
-				return 0, err
-			}
-			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: s.Journal(), Frozen: s.FrozenStates()})
-			if err != nil {
-				return 0, err
-			}
-			folder := c.args.get("to")
-			if err := os.MkdirAll(folder, 0o755); err != nil {
-				return 0, &study.FileError{File: folder, What: "the folder cannot be made: " + err.Error(), Cure: "Choose a folder that you may write to"}
-			}
-			code, err := json.MarshalIndent(appendix.NewStamp(r, c.Version), "", " ")
-			if err != nil {
-				return 0, err
-			}
-			files := []string{filepath.Join(folder, "appendix.html"), filepath.Join(folder, appendix.StampFile)}
-			if err := c.Write(files[0], page); err != nil {
-				return 0, err
-			}
-			if err := c.Write(files[1], append(code, '\n')); err != nil {
-				return 0, err
-			}
-			if c.json {
-				c.printJSON(map[string]any{"study": c.args.places[0], "files": files, "code": r.Code})
-				return ExitDone, nil
-			}
-			for _, f := range files {
-				c.say("wrote %s", f)
-			}
-			c.say("Check code %s", r.Code.Check)
-			return ExitDone, nil
-		})
-	},
-}
-
 var verbVerify = verb{
 	name: "verify", usage: "verify STUDY.gpkg [--code HEX] [--appendix FOLDER]", summary: "re-runs from the inputs and compares",
-	options: []option{{name: "code", value: "HEX", help: "check code to compare with"}, {name: "appendix", value: "FOLDER", help: "folder of an appendix to compare with"}, {name: "cores", value: "N", help: "how many processor cores to use"}},
-	places:  [2]int{1, 1},
+	more: "identical: the same to the last digit. agrees: every value within 1e-6, the same tiers.\nOtherwise exit 1 with the first difference.",
+	options: []option{{name: "code", value: "HEX", help: "check code to compare with, at least its first 8 characters"},
+		{name: "appendix", value: "FOLDER", help: "folder of an appendix to compare with"}, coresOption},
+	places: [2]int{1, 1},
 	run: func(c *call) (int, error) {
+		code := strings.ToLower(strings.TrimSpace(c.args.get("code")))
+		if c.args.has("code") && (len(code) < 8 || strings.Trim(code, "0123456789abcdef") != "") {
+			return 0, usagef("--code wants a check code, of 8 to 64 characters 0 to 9 and a to f, not %q", code)
+		}
 		var want *appendix.Stamp
-		if c.args.has("appendix") {
+		if folder := c.args.get("appendix"); c.args.has("appendix") {
+			if _, err := os.Stat(filepath.Join(folder, appendix.StampFile)); errors.Is(err, fs.ErrNotExist) {
+				return 0, usagef("--appendix: there is no %s in %s; give the folder that gtally appendix wrote", appendix.StampFile, folder)
+			}
 			var err error
-			if want, err = appendix.ReadStamp(c.args.get("appendix")); err != nil {
+			if want, err = appendix.ReadStamp(folder); err != nil {
 				return 0, err
 			}
 		}
 		return c.with(func(s *study.Study) (int, error) {
-			snap, err := s.Snapshot()
+			stored, err := c.computeWith(s, true)
 			if err != nil {
 				return 0, err
 			}
-			stored, err := c.engine(s, true).Compute(c.ctx, snap)
-			if err != nil {
-				return 0, err
-			}
-			fresh, err := c.engine(s, false).Compute(c.ctx, snap)
+			fresh, err := c.computeWith(s, false)
 			if err != nil {
 				return 0, err
 			}
@@ -105,16 +48,15 @@ var verbVerify = verb{
 				where = "the appendix"
 				verdict, diff = want.Compare(fresh, c.Version)
 			}
-			if code := strings.ToLower(strings.TrimSpace(c.args.get("code"))); diff == nil && code != "" {
+			if diff == nil && code != "" && !strings.HasPrefix(fresh.Code.Check, code) {
 				where = "the check code"
-				if len(code) < 8 || !strings.HasPrefix(fresh.Code.Check, code) {
-					diff = &run.Difference{Where: "check code", Old: code, New: fresh.Code.Check}
-				}
+				diff = &run.Difference{Where: "check code", Old: code, New: fresh.Code.Check}
 			}
 			if c.json {
-				out := map[string]any{"study": c.args.places[0], "verdict": verdict, "code": fresh.Code}
+				out := map[string]any{"study": c.args.places[0], "verdict": verdict, "code": fresh.Code, "exit": ExitDone, "engines": c.Engines}
 				if diff != nil {
-					out["verdict"], out["difference"] = "differs", map[string]string{"where": diff.Where, "expected": diff.Old, "found": diff.New}
+					out["verdict"], out["exit"], out["compared_with"] = "differs", ExitNo, where
+					out["difference"] = map[string]string{"where": diff.Where, "expected": diff.Old, "found": diff.New}
 				}
 				c.printJSON(out)
 			}

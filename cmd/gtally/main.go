@@ -8,6 +8,7 @@ import (
 	"os"
 	"os/signal"
 	"os/user"
+	"syscall"
 	"time"
 
 	"groundtally/app/files"
@@ -29,8 +30,9 @@ func main() {
 }
 
 func realMain() int {
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	defer stop()
+	context.AfterFunc(ctx, stop) // a second interrupt ends the program at once
 	fail := func(err error) int {
 		fmt.Fprintf(os.Stderr, "gtally: %v\n", err)
 		return term.ExitUnexpected

@@ -1,0 +1,95 @@
+package term
+
+import (
+	"encoding/json"
+	"errors"
+	"fmt"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"strings"
+	"syscall"
+
+	"groundtally/app/appendix"
+	"groundtally/app/run"
+	"groundtally/app/study"
+)
+
+var verbAppendix = verb{
+	name: "appendix", usage: "appendix STUDY.gpkg --to FOLDER [--form page]", summary: "writes the appendix and prints its check code",
+	options: []option{{name: "to", value: "FOLDER", help: "folder to write into"}, {name: "form", value: "page", help: "forms, parted by commas; this version writes page"}, coresOption},
+	places:  [2]int{1, 1},
+	run: func(c *call) (int, error) {
+		if !c.args.has("to") {
+			return 0, usagef("where to? Say --to FOLDER")
+		}
+		for _, f := range strings.Split(c.args.get("form"), ",") {
+			if f != "" && f != "page" {
+				return 0, usagef("there is no form %q yet; this version writes page", f)
+			}
+		}
+		return c.with(func(s *study.Study) (int, error) {
+			snap, err := s.Snapshot()
+			if err != nil {
+				return 0, err
+			}
+			r, err := c.compute(s)
+			if err != nil {
+				return 0, err
+			}
+			c.tell(r)
+			layers, err := appendix.MapLayers(c.ctx, snap, run.StoreLoader(s.Store()))
+			if err != nil {
+				return 0, err
+			}
+			notices, err := run.Check(c.ctx, s, c.Params)
+			if err != nil {
+				return 0, err
+			}
+			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: s.Journal(), Frozen: s.FrozenStates()})
+			if err != nil {
+				return 0, err
+			}
+			folder := c.args.get("to")
+			if err := makeFolder(folder); err != nil {
+				return 0, err
+			}
+			code, err := json.MarshalIndent(appendix.NewStamp(r, c.Version), "", " ")
+			if err != nil {
+				return 0, err
+			}
+			files := []string{filepath.Join(folder, "appendix.html"), filepath.Join(folder, appendix.StampFile)}
+			if err := c.Write(files[0], page); err != nil {
+				return 0, err
+			}
+			if err := c.Write(files[1], append(code, '\n')); err != nil {
+				return 0, err
+			}
+			if c.json {
+				c.printJSON(map[string]any{"study": c.args.places[0], "files": files, "code": r.Code})
+				return ExitDone, nil
+			}
+			for _, f := range files {
+				c.say("wrote %s", f)
+			}
+			c.say("Check code %s", r.Code.Check)
+			return ExitDone, nil
+		})
+	},
+}
+
+// makeFolder makes the folder of an appendix.
+func makeFolder(folder string) error {
+	err := os.MkdirAll(folder, 0o755)
+	switch {
+	case err == nil:
+		return nil
+	case errors.Is(err, fs.ErrPermission), errors.Is(err, syscall.EROFS):
+		return fmt.Errorf("make folder %q: %w: %w", folder, study.ErrReadOnly, err)
+	case errors.Is(err, syscall.ENOSPC):
+		return fmt.Errorf("make folder %q: %w: %w", folder, study.ErrDiskFull, err)
+	case errors.Is(err, syscall.ENOTDIR), errors.Is(err, fs.ErrExist):
+		return usagef("--to: %s is a file, or lies in one; give a folder", folder)
+	}
+	return fmt.Errorf("make folder %q: %w", folder, err)
+}

@@ -1,0 +1,129 @@
+package term
+
+import (
+	"fmt"
+	"io"
+	"math"
+	"strconv"
+	"strings"
+	"unicode/utf8"
+
+	"groundtally/app/present"
+	"groundtally/geo"
+)
+
+func unitWords(u string) string { return present.Unit(u) }
+
+// notices writes notices to standard error; many of one code are counted after the third.
+func (c *call) notices(ns []geo.Notice) {
+	if c.calm {
+		return
+	}
+	shown := map[string]int{}
+	for _, n := range ns {
+		shown[n.Code]++
+		if shown[n.Code] <= 3 {
+			fmt.Fprintf(c.Err, "  %s: %s\n", n.Severity, present.Notice(n))
+		}
+	}
+	for _, code := range sortedKeys(shown) {
+		if shown[code] > 3 {
+			fmt.Fprintf(c.Err, "  and %d more of the kind \"%s\"; gtally check lists all\n", shown[code]-3, strings.ReplaceAll(code, "_", " "))
+		}
+	}
+}
+
+// figure writes a number for redoing a sum by hand: six significant digits, thousands apart.
+func figure(x float64) string {
+	a := math.Abs(x)
+	if x == 0 {
+		return "0"
+	}
+	if a < 1e-4 || a >= 1e15 {
+		return strconv.FormatFloat(x, 'g', 6, 64)
+	}
+	decimals := 5 - int(math.Floor(math.Log10(a)))
+	if decimals < 0 {
+		p := math.Pow(10, float64(-decimals))
+		x, decimals = math.Round(x/p)*p, 0
+	}
+	s := strconv.FormatFloat(x, 'f', decimals, 64)
+	if strings.Contains(s, ".") {
+		s = strings.TrimRight(strings.TrimRight(s, "0"), ".")
+	}
+	sign := ""
+	if s[0] == '-' {
+		sign, s = "-", s[1:]
+	}
+	whole, rest, dot := strings.Cut(s, ".")
+	if len(whole) > 4 {
+		var b strings.Builder
+		for i, r := range whole {
+			if i > 0 && (len(whole)-i)%3 == 0 {
+				b.WriteByte(' ')
+			}
+			b.WriteRune(r)
+		}
+		whole = b.String()
+	}
+	if dot {
+		whole += "." + rest
+	}
+	return sign + whole
+}
+
+// columns writes rows with their cells under each other; cells of columns in right stand at the right
+// edge.
+func columns(w io.Writer, rows [][]string, right map[int]bool) {
+	var width []int
+	for _, r := range rows {
+		for i, cell := range r {
+			if i == len(width) {
+				width = append(width, 0)
+			}
+			width[i] = max(width[i], utf8.RuneCountInString(cell))
+		}
+	}
+	for _, r := range rows {
+		var b strings.Builder
+		for i, cell := range r {
+			pad := strings.Repeat(" ", width[i]-utf8.RuneCountInString(cell))
+			if right[i] {
+				b.WriteString(pad + cell)
+			} else {
+				b.WriteString(cell + pad)
+			}
+			b.WriteString("  ")
+		}
+		fmt.Fprintln(w, strings.TrimRight(b.String(), " "))
+	}
+}
+
+// stacked breaks keys at their underscores so that columns need not be wider than their numbers: it
+// gives the lines of a table's head, bottom lines filled first.
+func stacked(keys []string, width int) [][]string {
+	parts := make([][]string, len(keys))
+	most := 1
+	for i, k := range keys {
+		line := ""
+		for _, word := range strings.SplitAfter(k, "_") {
+			if line != "" && len(line)+len(word) > width {
+				parts[i] = append(parts[i], line)
+				line = ""
+			}
+			line += word
+		}
+		parts[i] = append(parts[i], line)
+		most = max(most, len(parts[i]))
+	}
+	out := make([][]string, most)
+	for l := range out {
+		out[l] = make([]string, len(keys))
+		for i, p := range parts {
+			if at := l - (most - len(p)); at >= 0 {
+				out[l][i] = p[at]
+			}
+		}
+	}
+	return out
+}
