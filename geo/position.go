@@ -3,7 +3,10 @@ package geo
 import "math"
 
 // LonLat is a position in degrees on WGS 84: longitude east positive, latitude north positive.
-type LonLat struct{ Lon, Lat float64 }
+type LonLat struct {
+	Lon float64 `json:"lon"`
+	Lat float64 `json:"lat"`
+}
 
 // XY is a position in metres in a study's local frame: X to grid east, Y to grid north.
 type XY struct{ X, Y float64 }

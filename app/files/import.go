@@ -22,14 +22,15 @@ const ASCIIGridMedia = "text/x-ascii-grid"
 // MaxImportBytes is the largest file that is read.
 const MaxImportBytes = 8 << 30
 
-// Import reads a file of the user as far as that is possible without knowing what it means.
-func Import(ctx context.Context, name string) (study.Import, error) {
+// Import reads a file of the user as far as that is possible without knowing what it means. With crsGiven
+// a coordinate system that the file states badly is passed over, because the user has named it.
+func Import(ctx context.Context, name string, crsGiven bool) (study.Import, error) {
 	f, err := Open(name, MaxImportBytes)
 	if err != nil {
 		return study.Import{}, err
 	}
 	defer f.Close()
-	return decode(ctx, f, f.Kind, name, filepath.Base(name))
+	return decode(ctx, f, f.Kind, name, filepath.Base(name), crsGiven)
 }
 
 // ImportFS reads a file of a file system, as of the sample district. The kind follows from the name.
@@ -44,15 +45,15 @@ func ImportFS(ctx context.Context, fsys fs.FS, name string) (study.Import, error
 	if !ok {
 		return study.Import{}, &study.FileError{File: name, What: "the kind of the file cannot be told from its name"}
 	}
-	return decode(ctx, f, kind, name, path.Base(name))
+	return decode(ctx, f, kind, name, path.Base(name), false)
 }
 
 // decode picks the reader: one line a format.
-func decode(ctx context.Context, r io.Reader, kind Kind, file, base string) (study.Import, error) {
+func decode(ctx context.Context, r io.Reader, kind Kind, file, base string, crsGiven bool) (study.Import, error) {
 	in := study.Import{File: file, Base: base}
 	switch kind {
 	case GeoJSON, GeoJSONText:
-		res, err := geojson.Decode(ctx, r, geojson.Options{File: file})
+		res, err := geojson.Decode(ctx, r, geojson.Options{File: file, IgnoreCRS: crsGiven})
 		if err != nil {
 			return in, readerError(file, err)
 		}

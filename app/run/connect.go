@@ -235,7 +235,7 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 		return out, nil
 	}
 	out.ok, out.best, out.asset, out.energyWhy = true, b, a, energyWhy
-	c := &Connection{Asset: a.name, Kind: string(a.kind), VoltageKV: b.VoltageKV, Status: string(b.Status), Reason: string(b.Reason), Conductor: b.Conductor.ID, Circuits: b.Circuits,
+	c := &Connection{Asset: a.name, Kind: string(a.kind), VoltageKV: b.VoltageKV, Assumed: b.VoltageAssumed, Status: string(b.Status), Reason: string(b.Reason), Conductor: b.Conductor.ID, Circuits: b.Circuits,
 		RouteKm: b.RouteKm.Central, ToldBy: a.toldBy, ToldOn: a.toldOn}
 	to := a.nearest(from)
 	c.StraightKm = from.Dist(to) / units.MPerKm

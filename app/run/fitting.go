@@ -154,7 +154,7 @@ func (f *fitter) key(o option, s site, ground []string) string {
 		k.text(o.settings[n])
 	}
 	if o.wind {
-		for _, n := range []string{"wind.shear_alpha"} {
+		for _, n := range []string{"wind.shear_alpha", "wind.typed_elevation_m"} {
 			v, _, _ := f.w.snap.Lookup(n)
 			k.text(v.Value)
 		}
@@ -448,7 +448,8 @@ func (f *fitter) farm(o option, machine wind.Turbine, hubM float64, p windPoint,
 		return wind.FarmInput{}, err
 	}
 	if !known {
-		height = 0
+		// Sea level unless a height is typed, which the notices say.
+		height, _ = f.w.snap.Number("wind.typed_elevation_m")
 	}
 	set, err := f.w.p.Wind.Settings()
 	if err != nil {

@@ -109,7 +109,7 @@ func (w *world) rulesFor(o option, part string) (*ruleset, error) {
 				r.sources = append(r.sources, ruleSource{layer: l, keep: some, distM: own})
 				r.distM = max(r.distM, own)
 			}
-			if l.thin(keep) {
+			if role.Name == "exclusion" && l.thin(keep) {
 				rs.notApplied = append(rs.notApplied, "exclusion_needs_width")
 			}
 		}
@@ -170,10 +170,7 @@ func (l *layer) byOwnSetback(keep []bool) map[float64][]bool {
 		if !keep[i] {
 			continue
 		}
-		d, ok := l.number(i, "setback", "m")
-		if !ok || d < 0 {
-			d = 0
-		}
+		d := l.ownM(i)
 		if out[d] == nil {
 			out[d] = make([]bool, len(keep))
 		}
@@ -182,11 +179,23 @@ func (l *layer) byOwnSetback(keep []bool) map[float64][]bool {
 	return out
 }
 
+// ownM gives the distance that a feature brings itself: its setback, or half the width of a road or a
+// stream that is drawn as its middle line.
+func (l *layer) ownM(i int) float64 {
+	if d, ok := l.number(i, "setback", "m"); ok && d > 0 {
+		return d
+	}
+	if d, ok := l.number(i, "width", "m"); ok && d > 0 && l.xy[i].Kind == geo.Lines {
+		return d / 2
+	}
+	return 0
+}
+
 // thin reports whether a counted point or line brings no distance, so that it takes no ground.
 func (l *layer) thin(keep []bool) bool {
 	for i := range keep {
 		if keep[i] && l.xy[i].Kind != geo.Polygons {
-			if d, ok := l.number(i, "setback", "m"); !ok || d <= 0 {
+			if l.ownM(i) == 0 {
 				return true
 			}
 		}

@@ -64,6 +64,7 @@ type Connection struct {
 	Asset      string     `json:"asset"`
 	Kind       string     `json:"kind"`
 	VoltageKV  float64    `json:"voltage_kv"`
+	Assumed    bool       `json:"voltage_assumed,omitempty"` // the asset's voltage is not known
 	Status     string     `json:"status"`
 	Reason     string     `json:"reason,omitempty"`
 	Conductor  string     `json:"conductor"`

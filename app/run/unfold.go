@@ -41,6 +41,10 @@ func Unfold(p *Params, snap *study.Snapshot, c *Candidate, key string) (*Unfoldi
 		}
 	}
 	if _, inGraph := p.Graph.Slot(key); !inGraph || c.Status != Fitted {
+		if !ok { // without a plant there is no such figure
+			quantity, _ := p.Graph.Quantity(key)
+			return &Unfolding{Name: key, Title: quantity.Title, Unit: quantity.Unit, State: scoring.Unknown.String(), Why: c.Status, Kind: "quantity", Formula: quantity.Formula}, nil
+		}
 		return &Unfolding{Name: key, Unit: q.Unit, State: q.State.String(), Value: q.Central, Why: q.Why, Kind: "quantity", Notices: q.Notices}, nil
 	}
 	w := &world{snap: snap, p: p}

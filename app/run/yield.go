@@ -5,6 +5,7 @@ import (
 	"math"
 	"sort"
 	"strconv"
+	"strings"
 
 	"groundtally/geo"
 	"groundtally/scoring/solar"
@@ -219,18 +220,28 @@ func (w *world) sunlight() (*sunlight, error) {
 		n := strconv.Itoa(i + 1)
 		g, ok := w.snap.Number("solar.typed_ghi_" + n + "_kwh_per_m2")
 		if !ok {
-			if i == 0 {
+			if !w.anyTypedSun() {
 				return nil, nil
 			}
-			return nil, fmt.Errorf("typed sunlight: month %d is missing", i+1)
+			return nil, fmt.Errorf("typed sunlight: solar.typed_ghi_%d_kwh_per_m2 is missing", i+1)
 		}
 		t, ok := w.snap.Number("solar.typed_temperature_" + n + "_degc")
 		if !ok {
-			return nil, fmt.Errorf("typed sunlight: the temperature of month %d is missing", i+1)
+			return nil, fmt.Errorf("typed sunlight: solar.typed_temperature_%d_degc is missing", i+1)
 		}
 		s.ghi[i], s.temp[i] = g, t
 	}
 	return s, nil
+}
+
+// anyTypedSun reports whether any month's sunlight was typed.
+func (w *world) anyTypedSun() bool {
+	for k := range w.snap.Explicit {
+		if strings.HasPrefix(k, "solar.typed_") {
+			return true
+		}
+	}
+	return false
 }
 
 func unitOr(u, fallback string) string {

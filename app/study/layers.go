@@ -373,7 +373,7 @@ func matchFields(rec *LayerRecord, in Import, role Role) []Question {
 		}
 		if col == "" {
 			for _, syn := range synonyms[f.Name] {
-				if c := column(syn); c != "" {
+				if c := column(syn); c != "" && mostlyFilled(in.Layer, c) {
 					if in.AcceptProposals {
 						col = c
 					} else if f.Required {
@@ -384,7 +384,13 @@ func matchFields(rec *LayerRecord, in Import, role Role) []Question {
 			}
 		}
 		if col == "" {
-			if f.Required && f.Name != "parcel_id" && len(qs) == 0 && !in.AcceptProposals {
+			switch {
+			case !f.Required:
+			case f.Name == "parcel_id":
+				rec.Notices = append(rec.Notices, geo.Notice{Code: "parcels_numbered", Severity: geo.Warning, File: in.Base, Layer: rec.Name})
+			case in.AcceptProposals:
+				rec.Notices = append(rec.Notices, geo.Notice{Code: "missing_field", Severity: geo.Warning, File: in.Base, Layer: rec.Name, Field: f.Name})
+			case len(qs) == 0:
 				qs = append(qs, Question{Text: fmt.Sprintf("%s need a field %s (%s); the columns are: %s", role.Title, f.Name, f.Unit, columnNames(in.Layer)), Option: fmt.Sprintf("--match %s=COLUMN", f.Name)})
 			}
 			continue
@@ -407,6 +413,18 @@ func matchFields(rec *LayerRecord, in Import, role Role) []Question {
 		}
 	}
 	return qs
+}
+
+// mostlyFilled reports whether at least half of the features have a value in a column; an empty one is
+// not worth proposing.
+func mostlyFilled(l *geo.Layer, column string) bool {
+	c, n := l.ColumnIndex(column), 0
+	for _, f := range l.Features {
+		if f.Values[c].Kind != geo.Null {
+			n++
+		}
+	}
+	return 2*n >= len(l.Features)
 }
 
 func columnNames(l *geo.Layer) string {
@@ -465,6 +483,9 @@ func meets(rec *LayerRecord, in Import, snap *Snapshot) *Question {
 		}
 		n++
 	}
+	for i, d := range []float64{-nearDeg, -nearDeg, nearDeg, nearDeg} {
+		all[i] += d
+	}
 	if n == 0 || boxesMeet(all, rec.Extent) {
 		return nil
 	}
@@ -476,6 +497,9 @@ func meets(rec *LayerRecord, in Import, snap *Snapshot) *Question {
 		"west": deg(rec.Extent[0]), "south": deg(rec.Extent[1]), "east": deg(rec.Extent[2]), "north": deg(rec.Extent[3])}})
 	return nil
 }
+
+// nearDeg is how far a layer may lie from the others without a word: about 5 km.
+const nearDeg = 0.05
 
 func deg(x float64) string { return strconv.FormatFloat(x, 'f', 4, 64) }
 
@@ -578,7 +602,7 @@ func (s *Study) checkFeatures(rec *LayerRecord, in Import, role Role, layer *geo
 	}
 	layer.Features = kept
 	if len(kept) == 0 {
-		return &FileError{File: in.File, What: fmt.Sprintf("no feature of the file can serve as %s: %d were read, all were left out", role.Name, rec.Ledger.Read), Cure: fmt.Sprintf("The role takes %s; the first notice says: %s", strings.Join(role.Geometry, " or "), rec.Notices[0].Code)}
+		return &FileError{File: in.File, What: fmt.Sprintf("no feature of the file can serve as %s: %d were read, all were left out", role.Name, rec.Ledger.Read), Cure: fmt.Sprintf("The role takes %s: check that this is the right file, and that its outlines enclose ground", strings.Join(role.Geometry, " or "))}
 	}
 	for _, k := range []string{"polygon", "line", "point"} {
 		if kinds[k] > kinds[rec.Kind] {

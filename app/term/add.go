@@ -57,7 +57,7 @@ var verbAdd = verb{
 			if r := c.args.get("replace"); r != "" && !hasLayer(snap, r) {
 				return 0, usagef("--replace: there is no layer %q; the layers are: %s", r, layerNames(snap))
 			}
-			in, err := c.ReadFile(c.ctx, file)
+			in, err := c.ReadFile(c.ctx, file, c.args.has("crs"))
 			if err != nil {
 				return 0, err
 			}

@@ -21,7 +21,7 @@ type App struct {
 	Terminal bool // Err is a terminal: progress may be shown
 	Create   func(ctx context.Context, path string) (study.Store, error)
 	OpenFile func(ctx context.Context, path string) (study.Store, error)
-	ReadFile func(ctx context.Context, path string) (study.Import, error)
+	ReadFile func(ctx context.Context, path string, crsGiven bool) (study.Import, error)
 	Write    func(path string, data []byte) error // atomically
 	Catalog  *study.Catalog
 	Params   *run.Params

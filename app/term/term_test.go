@@ -387,7 +387,7 @@ func TestFaultIsCaught(t *testing.T) {
 	t.Setenv("TMPDIR", t.TempDir())
 	b := newBench(t)
 	b.run(0, "new")
-	b.app.ReadFile = func(context.Context, string) (study.Import, error) { panic("broken on purpose") }
+	b.app.ReadFile = func(context.Context, string, bool) (study.Import, error) { panic("broken on purpose") }
 	b.run(ExitUnexpected, "add", small+"soil.geojson", "--as", "soil")
 	said := b.err.String()
 	_, path, ok := strings.Cut(strings.TrimSpace(said), "The details are in ")
