@@ -75,6 +75,7 @@ var sentences = map[string]string{
 	"legal_not_set":                  "not set. {what}",
 	"missing_field":                  "no column gives this field. What depends on it is unknown.",
 	"parcels_numbered":               "no column holds the parcels' identifiers, so they are called by their numbers in the file. Name the column with --match parcel_id=COLUMN if there is one.",
+	"group_parcel_missing":           "the site {site} names this parcel, and no layer holds it. The site is smaller than it was meant to be.",
 	"no_parcels":                     "the study has no parcels yet. Add them with gtally add STUDY.gpkg FILE --as parcels.",
 	"no_plants":                      "the study has no plant option yet. Make one with gtally set STUDY.gpkg plant.wind.technology wind, for one.",
 	"voice_unusable":                 "{error}",

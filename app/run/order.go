@@ -83,6 +83,12 @@ func (e *AnchorError) Error() string {
 	return fmt.Sprintf("voice %q weighs %s, whose value scale has no fixed ends; set them first:\n  gtally set STUDY.gpkg anchor.%s.worst NUMBER\n  gtally set STUDY.gpkg anchor.%s.best NUMBER", e.Voice, e.Key, e.Key, e.Key)
 }
 
+// VoiceError says why a voice cannot order anything yet.
+type VoiceError struct{ Err error }
+
+func (e *VoiceError) Error() string { return e.Err.Error() }
+func (e *VoiceError) Unwrap() error { return e.Err }
+
 // scale is the value scale of one weighed key.
 type scale struct {
 	key    string
@@ -194,7 +200,7 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	out := VoiceOrder{Voice: voice, Title: snap.Text("voice." + voice + ".title"), Order: []Row{}, Tipping: []TippingRow{}, HeldBack: []string{}}
 	sc, notices, err := scales(snap, p, voice)
 	if err != nil {
-		return out, err
+		return out, &VoiceError{err}
 	}
 	out.Notices = notices
 	if out.Notices == nil {

@@ -261,6 +261,7 @@ type StepCount struct {
 type Results struct {
 	Candidates []Candidate
 	Voices     []VoiceOrder
+	Unready    map[string]error // voices that cannot order anything yet, with the reason
 	Steps      []StepCount
 	Notices    []geo.Notice
 	Code       Code

@@ -11,6 +11,7 @@ import (
 	"sort"
 
 	"groundtally/app/study"
+	"groundtally/geo"
 )
 
 // Engine computes studies.
@@ -74,6 +75,16 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	draw := newDraws(snap, e.Params, cores, len(cs))
 	for _, voice := range snap.Voices() {
 		o, err := order(ctx, snap, e.Params, k, draw, voice, cs)
+		var unready *VoiceError
+		if errors.As(err, &unready) {
+			// One unfinished voice does not keep the others from theirs.
+			if out.Unready == nil {
+				out.Unready = map[string]error{}
+			}
+			out.Unready[voice] = unready
+			out.Notices = append(out.Notices, geo.Notice{Code: "voice_unusable", Severity: geo.Warning, Field: "voice." + voice, Args: map[string]string{"error": err.Error()}})
+			continue
+		}
 		if err != nil {
 			return nil, err
 		}
@@ -96,9 +107,9 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 func (r *Results) code(snap *study.Snapshot, p *Params, digests []digest) error {
 	type setting struct{ Key, Value, Unit string }
 	type layer struct {
-		Name, Role, Digest string
-		Match, Units       map[string]string
-		Complete           bool
+		Name, Role, Digest, CRS string
+		Match, Units            map[string]string
+		Complete                bool
 	}
 	in := struct {
 		Settings []setting
@@ -115,7 +126,7 @@ func (r *Results) code(snap *study.Snapshot, p *Params, digests []digest) error 
 		}
 	}
 	for _, l := range snap.Layers {
-		in.Layers = append(in.Layers, layer{l.Name, l.Role, l.Digest, l.Match, l.Units, l.Complete})
+		in.Layers = append(in.Layers, layer{l.Name, l.Role, l.Digest, l.CRS, l.Match, l.Units, l.Complete})
 	}
 	b, err := json.Marshal(in)
 	if err != nil {
@@ -199,9 +210,6 @@ type Difference struct {
 	Where    string
 	Old, New string
 }
-
-// ErrStopped says that a computation was stopped by the user.
-var ErrStopped = errors.New("stopped")
 
 // Compare says how two results agree: "identical" (same digest), "agrees" (every value within 1e-6
 // relative, same states, same tiers), or the first difference in words.

@@ -169,17 +169,24 @@ func Check(ctx context.Context, s *study.Study, p *Params) ([]geo.Notice, error)
 	}
 	out := []geo.Notice{}
 	have := map[string]bool{}
+	parcels := map[string]bool{}
 	for _, l := range snap.Layers {
 		have[l.Role] = true
 		out = append(out, l.Notices...)
-		_, changed, err := s.Store().Version(ctx, l.Digest)
+		v, changed, err := s.Store().Version(ctx, l.Digest)
 		if err != nil {
 			return nil, fmt.Errorf("read layer %q: %w", l.Name, err)
+		}
+		if l.Role == "parcels" && v.Layer != nil {
+			for _, f := range v.Layer.Features {
+				parcels[f.ID] = true
+			}
 		}
 		if changed {
 			out = append(out, geo.Notice{Code: "changed_outside", Severity: geo.Fault, Layer: l.Name})
 		}
 	}
+	out = append(out, missingMembers(snap, parcels)...)
 	for _, r := range snap.Catalog().Roles {
 		if !have[r.Name] && r.WithoutIt != "" {
 			out = append(out, geo.Notice{Code: "role_missing", Severity: geo.Info, Layer: r.Title, Args: map[string]string{"without": r.WithoutIt, "holder": r.Holder}})

@@ -272,32 +272,38 @@ func (w *world) steep(box geo.Extent, limitDeg float64) (geo.XYGeometry, error) 
 	return g.Steep(box, limitDeg)
 }
 
-// makeSites puts parcels together by the study's groups; every other parcel is a site of its own.
+// makeSites puts parcels together by the study's groups; every other parcel is a site of its own. A
+// single parcel whose identifier is taken, by a group or by another layer's parcel, is called by its layer
+// too, and that is said.
 func (w *world) makeSites() {
 	group := map[string]string{}
+	names := map[string]bool{}
 	for _, g := range w.snap.Groups {
+		names[g.Site] = true
 		for _, p := range g.Parcels {
 			group[p] = g.Site
 		}
 	}
-	at := map[string]int{}
+	grouped := map[string]int{}
+	seen := map[string]bool{}
 	for li, l := range w.byRole["parcels"] {
 		for fi, f := range l.src.Features {
-			id := f.ID
-			g, grouped := group[f.ID]
-			if grouped {
-				id = g
-			}
-			i, ok := at[id]
-			if ok && !grouped {
-				// The same identifier in another parcel layer is another parcel.
-				id = l.rec.Name + "/" + f.ID
-				w.notices = append(w.notices, geo.Notice{Code: "same_parcel_twice", Severity: geo.Warning, Layer: l.rec.Name, Feature: f.ID, Args: map[string]string{"now": id}})
-				i, ok = at[id]
-			}
-			if !ok {
-				i = len(w.sites)
-				at[id] = i
+			i := len(w.sites)
+			if g, in := group[f.ID]; in {
+				seen[f.ID] = true
+				if at, there := grouped[g]; there {
+					i = at
+				} else {
+					grouped[g] = i
+					w.sites = append(w.sites, site{id: g, geom: geo.XYGeometry{Kind: geo.Polygons}})
+				}
+			} else {
+				id := f.ID
+				if names[id] {
+					id = l.rec.Name + "/" + f.ID
+					w.notices = append(w.notices, geo.Notice{Code: "same_parcel_twice", Severity: geo.Warning, Layer: l.rec.Name, Feature: f.ID, Args: map[string]string{"now": id}})
+				}
+				names[id] = true
 				w.sites = append(w.sites, site{id: id, geom: geo.XYGeometry{Kind: geo.Polygons}})
 			}
 			s := &w.sites[i]
@@ -306,10 +312,24 @@ func (w *world) makeSites() {
 			s.geom.Parts = append(s.geom.Parts, l.xy[fi].Parts...)
 		}
 	}
+	w.notices = append(w.notices, missingMembers(w.snap, seen)...)
 	sort.Slice(w.sites, func(i, j int) bool { return w.sites[i].id < w.sites[j].id })
 	for i := range w.sites {
 		w.sites[i].box = geo.ExtentOf(w.sites[i].geom)
 	}
+}
+
+// missingMembers tells of parcels that a group names and no layer holds.
+func missingMembers(snap *study.Snapshot, there map[string]bool) []geo.Notice {
+	var out []geo.Notice
+	for _, g := range snap.Groups {
+		for _, p := range g.Parcels {
+			if !there[p] {
+				out = append(out, geo.Notice{Code: "group_parcel_missing", Severity: geo.Warning, Feature: p, Args: map[string]string{"site": g.Site}})
+			}
+		}
+	}
+	return out
 }
 
 // gates gives the gates of a site: the owners' consent, the least of its parcels'.
@@ -354,15 +374,7 @@ func (o option) parts() []string {
 }
 
 func (o option) num(name string) (float64, bool) {
-	v := o.settings[name]
-	if v == "" || v == study.NotSetText {
-		return 0, false
-	}
-	var x float64
-	if _, err := fmt.Sscan(v, &x); err != nil {
-		return 0, false
-	}
-	return x, true
+	return study.Setting{Value: o.settings[name]}.Number()
 }
 
 func (w *world) makeOptions() error {
@@ -420,13 +432,11 @@ func (w *world) cascade(prefix string, o option, part, suffix string) (key strin
 
 func (w *world) cascadeNumber(prefix string, o option, part, suffix string) (x float64, key string, ok bool) {
 	key, s, ok := w.cascade(prefix, o, part, suffix)
-	if !ok || s.Value == study.NotSetText {
+	if !ok {
 		return 0, key, false
 	}
-	if _, err := fmt.Sscan(s.Value, &x); err != nil {
-		return 0, key, false
-	}
-	return x, key, true
+	x, ok = s.Number()
+	return x, key, ok
 }
 
 // engines gives each worker a geometry engine of its own.

@@ -2,6 +2,7 @@ package study
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"sort"
 
@@ -33,16 +34,26 @@ func (s *Study) GroupBy(ctx context.Context, column, reason string) ([]Group, er
 		return nil, err
 	}
 	members := map[string][]string{}
+	alone := map[string]bool{}
 	found := false
 	for _, l := range layers {
 		at := l.ColumnIndex(column)
 		if at < 0 {
+			for _, f := range l.Features {
+				alone[f.ID] = true
+			}
 			continue
+		}
+		if l.Columns[at].Personal {
+			// Its values would become the names of sites, which every table shows.
+			return nil, &ValueError{Key: column, Err: errors.New("the column is personal and cannot name sites")}
 		}
 		found = true
 		for _, f := range l.Features {
 			if v := f.Values[at].String(); v != "" {
 				members[v] = append(members[v], f.ID)
+			} else {
+				alone[f.ID] = true
 			}
 		}
 	}
@@ -51,6 +62,12 @@ func (s *Study) GroupBy(ctx context.Context, column, reason string) ([]Group, er
 	}
 	var groups []Group
 	for site, ids := range members {
+		if alone[site] {
+			return nil, fmt.Errorf("site %q: a parcel outside the group has this identifier: %w", site, ErrNameInUse)
+		}
+		if len(ids) < 2 {
+			continue // one parcel is a site by itself
+		}
 		sort.Strings(ids)
 		groups = append(groups, Group{Site: site, Parcels: ids})
 	}

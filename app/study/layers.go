@@ -159,16 +159,33 @@ func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerReco
 		return LayerRecord{}, err
 	}
 	rec := LayerRecord{Name: in.Name, Role: role.Name, File: in.Base, Swapped: in.SwapAxes, Edition: in.Edition, Holder: in.Holder, Complete: in.Complete, Match: map[string]string{}, Units: map[string]string{}, Ledger: in.Ledger, Notices: in.Notices}
+	ask := func(text, option string) error {
+		return &QuestionError{File: in.File, Questions: []Question{{Text: text, Option: option}}}
+	}
 	if rec.Name == "" {
 		rec.Name = strings.TrimSuffix(in.Base, ext(in.Base))
 	}
+	if in.Replace != "" {
+		if in.Name != "" && in.Name != in.Replace {
+			return LayerRecord{}, ask("a replacement keeps the name of the layer it replaces", fmt.Sprintf("--replace %q without --name", in.Replace))
+		}
+		rec.Name = in.Replace
+	}
+	there := false
 	for _, l := range snap.Layers {
-		if l.Name == rec.Name && in.Replace != rec.Name {
-			return LayerRecord{}, &QuestionError{File: in.File, Questions: []Question{{Text: fmt.Sprintf("a layer %q is there already", rec.Name), Option: fmt.Sprintf("--replace %q, or --name with another name", rec.Name)}}}
+		if l.Name != rec.Name {
+			continue
+		}
+		there = true
+		switch {
+		case in.Replace == "":
+			return LayerRecord{}, ask(fmt.Sprintf("a layer %q is there already", rec.Name), fmt.Sprintf("--replace %q, or --name with another name", rec.Name))
+		case l.Role != role.Name:
+			return LayerRecord{}, ask(fmt.Sprintf("the layer %q has the role %s; a replacement keeps its role", rec.Name, l.Role), fmt.Sprintf("--as %s, or remove the layer first", l.Role))
 		}
 	}
-	if in.Replace != "" && in.Replace != rec.Name {
-		rec.Name = in.Replace
+	if in.Replace != "" && !there {
+		return LayerRecord{}, ask(fmt.Sprintf("there is no layer %q to replace", in.Replace), fmt.Sprintf("--name %q", in.Replace))
 	}
 	var changes []Change
 	var version Version
@@ -243,8 +260,13 @@ func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, 
 		return nil, nil, &FileError{File: in.File, What: "the layer holds no feature", Cure: "Check that the export was not filtered to nothing"}
 	}
 	var questions []Question
-	rec.Personal = personal(in, role)
 	questions = append(questions, matchFields(rec, in, role)...)
+	rec.Personal = personal(rec, in, role)
+	for _, p := range rec.Personal {
+		if p == rec.Match["parcel_id"] && role.Name == "parcels" {
+			questions = append(questions, Question{Text: fmt.Sprintf("column %q holds the parcels' identifiers, which every table and map shows, and cannot be personal", p), Option: "leave out --personal " + p + ", or --match parcel_id=ANOTHER COLUMN"})
+		}
+	}
 
 	layer := &geo.Layer{Name: rec.Name, Columns: append([]geo.Column(nil), in.Layer.Columns...), Features: append([]geo.Feature(nil), in.Layer.Features...)}
 	for i := range layer.Columns {
@@ -307,7 +329,7 @@ func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, 
 	if f, bad := outOfDegrees(layer); bad {
 		return nil, nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", rec.CRS), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
 	}
-	rec.Extent = extent(layer)
+	rec.Extent = extent(layer, role)
 	if q := meets(rec, in, snap); q != nil {
 		questions = append(questions, *q)
 	}
@@ -317,6 +339,15 @@ func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, 
 
 	centre := snap.Frame
 	var fixed *geo.LonLat
+	if role.Name == "parcels" {
+		only := true
+		for _, l := range snap.LayersOf("parcels") {
+			only = only && l.Name == rec.Name
+		}
+		if only {
+			centre = nil // the only parcels of the study fix its frame, anew if need be
+		}
+	}
 	if centre == nil {
 		c := geo.LonLat{Lon: math.Round((rec.Extent[0]+rec.Extent[2])/2*10) / 10, Lat: math.Round((rec.Extent[1]+rec.Extent[3])/2*10) / 10}
 		centre = &c
@@ -331,8 +362,15 @@ func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, 
 	return layer, fixed, nil
 }
 
-func personal(in Import, role Role) []string {
+// personal gives the columns that are personal: those the user says, those that are or serve as a personal
+// field of the role.
+func personal(rec *LayerRecord, in Import, role Role) []string {
 	seen := map[string]bool{}
+	for _, f := range role.Fields {
+		if f.Personal && rec.Match[f.Name] != "" {
+			seen[rec.Match[f.Name]] = true
+		}
+	}
 	for _, p := range in.Personal {
 		seen[p] = true
 	}
@@ -412,6 +450,19 @@ func matchFields(rec *LayerRecord, in Import, role Role) []Question {
 			rec.Units[col] = unit
 		}
 	}
+	matched := map[string]bool{}
+	for _, c := range rec.Match {
+		matched[c] = true
+	}
+	for c, u := range in.Units {
+		switch {
+		case column(c) == "":
+			qs = append(qs, Question{Text: fmt.Sprintf("there is no column %q; the columns are: %s", c, columnNames(in.Layer)), Option: fmt.Sprintf("--unit COLUMN=%s", u)})
+		case !matched[c] && rec.Units[c] == "":
+			rec.Units[c] = u // kept with the column, though no field uses it
+		}
+	}
+	sort.Slice(qs, func(i, j int) bool { return qs[i].Option < qs[j].Option })
 	return qs
 }
 
@@ -452,9 +503,17 @@ func outOfDegrees(l *geo.Layer) (feature string, bad bool) {
 	return "", false
 }
 
-func extent(l *geo.Layer) [4]float64 {
+// extent gives the box of the features that the role takes; a stray one of another kind does not count.
+func extent(l *geo.Layer, role Role) [4]float64 {
 	e := [4]float64{math.Inf(1), math.Inf(1), math.Inf(-1), math.Inf(-1)}
+	some := false
 	for _, f := range l.Features {
+		some = some || (!f.Geometry.Empty() && role.Accepts(f.Geometry.Kind.String()))
+	}
+	for _, f := range l.Features {
+		if some && !role.Accepts(f.Geometry.Kind.String()) {
+			continue
+		}
 		f.Geometry.Each(func(p geo.LonLat) {
 			e[0], e[1] = math.Min(e[0], p.Lon), math.Min(e[1], p.Lat)
 			e[2], e[3] = math.Max(e[2], p.Lon), math.Max(e[3], p.Lat)

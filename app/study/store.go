@@ -13,14 +13,12 @@ import (
 type RecordKind string
 
 // The kinds of record. Meta: name, frame centre, seed. Setting: one setting by its key. Layer: one
-// LayerRecord by the layer's name. Group: one site made of several parcels. Hand: a feature added,
-// moved or reclassed by hand.
+// LayerRecord by the layer's name. Group: one site made of several parcels.
 const (
 	MetaRecord    RecordKind = "meta"
 	SettingRecord RecordKind = "setting"
 	LayerRecKind  RecordKind = "layer"
 	GroupRecord   RecordKind = "group"
-	HandRecord    RecordKind = "hand"
 )
 
 // Record is one named piece of a study's state, its value in canonical JSON.

@@ -97,16 +97,27 @@ func (s *Study) Edit(ctx context.Context, verb, reason string, changes []Change,
 	return s.edit(ctx, verb, reason, 0, changes, add)
 }
 
+// recordName names a record.
+type recordName struct {
+	kind RecordKind
+	key  string
+}
+
 func (s *Study) edit(ctx context.Context, verb, reason string, of int64, changes []Change, add []Version) (Entry, error) {
+	last := map[recordName]int{} // of changes to the same record the last one counts
+	key := func(c Change) recordName { return recordName{c.Kind, c.Key} }
+	for i, c := range changes {
+		last[key(c)] = i
+	}
 	var kept []Change
-	for _, c := range changes {
+	for i, c := range changes {
 		c.Old = s.records[c.Kind][c.Key]
-		if bytes.Equal(c.Old, c.New) {
+		if last[key(c)] != i || bytes.Equal(c.Old, c.New) {
 			continue
 		}
 		kept = append(kept, c)
 	}
-	if len(kept) == 0 {
+	if len(kept) == 0 && of == 0 { // undo and redo are written even so: they move through the journal
 		return Entry{}, nil
 	}
 	e, err := s.store.Commit(ctx, Entry{At: s.clock().UTC().Truncate(time.Second), Who: s.who, Verb: verb, Reason: reason, Of: of, Changes: kept}, add)
@@ -169,11 +180,7 @@ func (s *Study) Set(ctx context.Context, verb, reason string, edits ...SettingEd
 			if err != nil {
 				return Entry{}, &ValueError{Key: e.Key, Err: err}
 			}
-			by := e.AcceptedBy
-			if by == "" {
-				by = s.who
-			}
-			c.New = Canonical(Setting{Value: v, Unit: def.Unit, Source: e.Source, AcceptedBy: by, Reason: e.Reason})
+			c.New = Canonical(Setting{Value: v, Unit: def.Unit, Source: e.Source, AcceptedBy: e.AcceptedBy, Reason: e.Reason})
 		}
 		changes = append(changes, c)
 	}
@@ -209,21 +216,27 @@ func (s *Study) step(ctx context.Context, verb string) (Entry, error) {
 	return s.edit(ctx, verb, of.Verb, of.Seq, changes, nil)
 }
 
-// stacks gives the entries in force and those taken back, last one last.
+// stacks gives the entries in force and those taken back, last one last. An undo or redo moves the entry
+// that it names; one that names an entry which is not there, as two programs at once may leave behind,
+// moves nothing.
 func stacks(journal []Entry) (done, undone []Entry) {
-	bySeq := make(map[int64]Entry, len(journal))
+	move := func(from, to []Entry, seq int64) ([]Entry, []Entry) {
+		for i := len(from) - 1; i >= 0; i-- {
+			if from[i].Seq == seq {
+				to = append(to, from[i])
+				return append(from[:i:i], from[i+1:]...), to
+			}
+		}
+		return from, to
+	}
 	for _, e := range journal {
-		bySeq[e.Seq] = e
 		switch e.Verb {
 		case "undo":
-			done = done[:len(done)-1]
-			undone = append(undone, bySeq[e.Of])
+			done, undone = move(done, undone, e.Of)
 		case "redo":
-			undone = undone[:len(undone)-1]
-			done = append(done, bySeq[e.Of])
+			undone, done = move(undone, done, e.Of)
 		default:
-			done = append(done, e)
-			undone = nil
+			done, undone = append(done, e), nil
 		}
 	}
 	return done, undone
@@ -359,9 +372,14 @@ func (n *Snapshot) Lookup(key string) (s Setting, byUser, ok bool) {
 // Number gives a numeric setting; ok is false when it is not in force or not set.
 func (n *Snapshot) Number(key string) (x float64, ok bool) {
 	s, _, in := n.Lookup(key)
-	if !in || s.Value == NotSetText {
+	if !in {
 		return 0, false
 	}
+	return s.Number()
+}
+
+// Number gives the value as a number; ok is false when it is empty or not set.
+func (s Setting) Number() (x float64, ok bool) {
 	x, err := strconv.ParseFloat(s.Value, 64)
 	return x, err == nil
 }

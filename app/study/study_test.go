@@ -255,3 +255,100 @@ func TestGroups(t *testing.T) {
 		t.Errorf("an unknown parcel: %v", err)
 	}
 }
+
+func TestUndoSurvivesAnotherProgramsEdits(t *testing.T) {
+	ctx := context.Background()
+	cat, err := study.LoadCatalog(os.DirFS("../../assets"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	store := studytest.New()
+	a, err := study.Open(ctx, store, cat, study.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	set(t, a, "run.seed", "2")
+	b, err := study.Open(ctx, store, cat, study.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	set(t, b, "run.trials", "50") // a does not know of it
+	if _, err := a.Undo(ctx); err != nil {
+		t.Fatal(err)
+	}
+	c, err := study.Open(ctx, store, cat, study.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := c.Undo(ctx); err != nil {
+		t.Fatalf("the other program's edit cannot be taken back: %v", err)
+	}
+	if got := value(t, c, "run.trials"); got != "400" {
+		t.Errorf("trials are %s after undo, want the default", got)
+	}
+	if _, err := c.Undo(ctx); !errors.Is(err, study.ErrNothingToDo) {
+		t.Errorf("nothing is left to undo: %v", err)
+	}
+	for range 2 {
+		if _, err := c.Redo(ctx); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if s, tr := value(t, c, "run.seed"), value(t, c, "run.trials"); s != "2" || tr != "50" {
+		t.Errorf("after redo seed %s and trials %s, want 2 and 50", s, tr)
+	}
+}
+
+func TestTheLastOfTwoChangesCounts(t *testing.T) {
+	s := open(t)
+	set(t, s, "run.seed", "5")
+	if _, err := s.Set(context.Background(), "set", "", study.SettingEdit{Key: "run.seed", Value: "1"}, study.SettingEdit{Key: "run.seed", Value: "5"}); err != nil {
+		t.Fatal(err)
+	}
+	if got := value(t, s, "run.seed"); got != "5" {
+		t.Errorf("the seed is %s, want the last value 5", got)
+	}
+}
+
+func TestPersonalColumnsNameNothing(t *testing.T) {
+	ctx := context.Background()
+	s := open(t)
+	v := func(id, who string) []geo.Value { return []geo.Value{geo.TextValue(id), geo.TextValue(who)} }
+	in := parcels([]geo.Column{{Name: "parcel_id"}, {Name: "Eigentuemer"}},
+		geo.Feature{ID: "1", Geometry: square(27, 47, 0.01), Values: v("A", "somebody")},
+		geo.Feature{ID: "2", Geometry: square(27.02, 47, 0.01), Values: v("B", "somebody")})
+	in.Match = map[string]string{"owner": "Eigentuemer"}
+	rec, err := s.AddLayer(ctx, in, plain{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(rec.Personal) != 1 || rec.Personal[0] != "Eigentuemer" {
+		t.Errorf("personal columns %v: a column that serves as the owner is personal by any name", rec.Personal)
+	}
+	if _, err := s.GroupBy(ctx, "Eigentuemer", ""); err == nil {
+		t.Error("owners' names became names of sites")
+	}
+	in.Name, in.Personal = "again", []string{"parcel_id"}
+	var q *study.QuestionError
+	if _, err := s.AddLayer(ctx, in, plain{}); !errors.As(err, &q) {
+		t.Errorf("personal identifiers were accepted: %v", err)
+	}
+}
+
+func TestReplacementsKeepTheirRole(t *testing.T) {
+	ctx := context.Background()
+	s := open(t)
+	in := parcels([]geo.Column{{Name: "parcel_id"}}, geo.Feature{ID: "1", Geometry: square(27, 47, 0.01), Values: []geo.Value{geo.TextValue("A")}})
+	if _, err := s.AddLayer(ctx, in, plain{}); err != nil {
+		t.Fatal(err)
+	}
+	var q *study.QuestionError
+	in.Role, in.Replace, in.AcceptProposals = "habitat", "p", true
+	if _, err := s.AddLayer(ctx, in, plain{}); !errors.As(err, &q) {
+		t.Errorf("the parcels became habitats: %v", err)
+	}
+	in.Role, in.Replace = "parcels", "elsewhere"
+	if _, err := s.AddLayer(ctx, in, plain{}); !errors.As(err, &q) {
+		t.Errorf("a layer that is not there was replaced: %v", err)
+	}
+}

@@ -42,6 +42,12 @@ var verbOrder = verb{
 				return 0, err
 			}
 			c.tell(r)
+			if err := r.Unready[c.args.get("voice")]; err != nil {
+				return 0, err
+			}
+			for _, v := range sortedKeys(r.Unready) {
+				c.note("voice %s has no order yet: %v", v, r.Unready[v])
+			}
 			voices := []run.VoiceOrder{}
 			for _, v := range r.Voices {
 				if c.args.has("voice") && v.Voice != c.args.get("voice") {
