@@ -1,7 +1,6 @@
 package run
 
 import (
-	"context"
 	"fmt"
 	"math"
 	"slices"
@@ -651,131 +650,6 @@ func (w *world) fitView(r fitResult, trackKm float64) (*Fit, error) {
 func roundLL(p geo.LonLat) geo.LonLat {
 	const d = 1e7
 	return geo.LonLat{Lon: math.Round(p.Lon*d) / d, Lat: math.Round(p.Lat*d) / d}
-}
-
-// candidates computes the step for every site and option, by option and then site.
-func (r *runner) candidates(ctx context.Context, fr *fitter, fitKeys map[string][]string, fitData map[string][]byte) ([]Candidate, []digest, error) {
-	w := r.w
-	k, err := w.newReckoner()
-	if err != nil {
-		return nil, nil, err
-	}
-	assets := w.assets()
-	common := k.key(w)
-	type job struct {
-		o   option
-		s   int
-		key string
-	}
-	var list []job
-	var all []string
-	for _, o := range w.options {
-		for i := range w.sites {
-			h := newKey("candidate", candidateEdition)
-			h.text(common)
-			h.text(fitKeys[o.id][i])
-			for _, part := range o.parts() {
-				h.texts(r.sets[o.id+"/"+part].incomplete)
-				h.texts(r.sets[o.id+"/"+part].notApplied)
-			}
-			for _, n := range legalNotSet(w.snap, o) {
-				h.text(n)
-			}
-			h.text(w.sites[i].id)
-			for _, p := range w.sites[i].parcels {
-				h.text(p)
-			}
-			list = append(list, job{o, i, h.sum()})
-			all = append(all, list[len(list)-1].key)
-		}
-	}
-	have, err := r.cached(ctx, "candidate", all)
-	if err != nil {
-		return nil, nil, err
-	}
-	bySite := map[int][]int{} // what is to be computed, grouped so that the options of a site share work
-	for i, j := range list {
-		if _, ok := have[j.key]; !ok {
-			bySite[j.s] = append(bySite[j.s], i)
-		}
-	}
-	sites := make([]int, 0, len(bySite))
-	for s := range bySite {
-		sites = append(sites, s)
-	}
-	sort.Ints(sites)
-	out := make([]Candidate, len(list))
-	digests := make([]digest, len(list))
-	fresh := make([][]byte, len(list))
-	err = forEach(ctx, r.cores, len(sites), openEngine, closeEngine, func(e *overlay.Engine, n int) error {
-		around, err := w.newPieces(e, w.sites[sites[n]])
-		if err != nil {
-			return err
-		}
-		for _, i := range bySite[sites[n]] {
-			j := list[i]
-			grounds := map[string]groundResult{}
-			sets := map[string]*ruleset{}
-			for _, part := range j.o.parts() {
-				name := j.o.id + "/" + part
-				g, err := r.groundOf(name, j.s)
-				if err != nil {
-					return err
-				}
-				grounds[part], sets[part] = *g, r.sets[name]
-			}
-			fitted, err := r.fitOf(fitKeys[j.o.id][j.s], fitData)
-			if err != nil {
-				return err
-			}
-			c, err := k.candidate(e, w, around, fr, assets, j.o, w.sites[j.s], grounds, sets, *fitted)
-			if err != nil {
-				return err
-			}
-			out[i] = *c
-			if fresh[i], digests[i], err = packed(c); err != nil {
-				return err
-			}
-		}
-		return nil
-	}, r.report("candidate", len(sites)))
-	if err != nil {
-		return nil, nil, err
-	}
-	todo := 0
-	for i := range list {
-		if fresh[i] != nil {
-			todo++
-			r.add(study.Result{Step: "candidate", Digest: list[i].key, Data: fresh[i]})
-		}
-	}
-	err = forEach(ctx, r.cores, len(list), func() (struct{}, error) { return struct{}{}, nil }, func(struct{}) {}, func(_ struct{}, i int) error {
-		if fresh[i] != nil {
-			return nil
-		}
-		var err error
-		digests[i], err = unpacked(have[list[i].key], &out[i])
-		return err
-	}, nil)
-	if err != nil {
-		return nil, nil, err
-	}
-	r.keep("candidate", all)
-	r.count("candidate", todo, len(list)-todo)
-	perOption := map[string]*Columns{}
-	for i := range out {
-		o := list[i].o.id
-		if perOption[o] == nil {
-			perOption[o] = newColumns(k.keys, k.p.facts, len(w.sites))
-		}
-		out[i].toColumns(perOption[o], list[i].s)
-	}
-	limits := limitsOf(w.snap, k.keys)
-	for i := range out {
-		out[i].Gates = w.gates(w.sites[list[i].s])
-		out[i].OverLimit = overLimit(limits, &out[i])
-	}
-	return out, digests, nil
 }
 
 // limit is a threshold that the user entered for a consequence.

@@ -1,7 +1,6 @@
 package run
 
 import (
-	"context"
 	"errors"
 	"fmt"
 	"math"
@@ -732,70 +731,4 @@ func (f *fitter) totals(e *overlay.Engine, o option, s site, r *fitResult) error
 	}
 	r.TotalHa = measure.AreaM2(u) / units.M2PerHa
 	return nil
-}
-
-// fits computes the step for every site and option; data and keys are by option, then site.
-func (r *runner) fits(ctx context.Context, f *fitter) (map[string][]string, map[string][]byte, error) {
-	type job struct {
-		o   option
-		s   int
-		key string
-	}
-	keys := map[string][]string{}
-	var list []job
-	var all []string
-	for _, o := range r.w.options {
-		ks := make([]string, len(r.w.sites))
-		for i, s := range r.w.sites {
-			var g []string
-			for _, part := range o.parts() {
-				g = append(g, r.groundKeys[o.id+"/"+part][i])
-			}
-			ks[i] = f.key(o, s, g)
-			list = append(list, job{o, i, ks[i]})
-			all = append(all, ks[i])
-		}
-		keys[o.id] = ks
-	}
-	have, err := r.cached(ctx, "fit", all)
-	if err != nil {
-		return nil, nil, err
-	}
-	var todo []job
-	for _, j := range list {
-		if _, ok := have[j.key]; !ok {
-			todo = append(todo, j)
-		}
-	}
-	fresh := make([][]byte, len(todo))
-	live := make([]*fitResult, len(todo))
-	err = forEach(ctx, r.cores, len(todo), openEngine, closeEngine, func(e *overlay.Engine, i int) error {
-		j := todo[i]
-		g := map[string]groundResult{}
-		for _, part := range j.o.parts() {
-			one, err := r.groundOf(j.o.id+"/"+part, j.s)
-			if err != nil {
-				return err
-			}
-			g[part] = *one
-		}
-		res, err := f.compute(e, j.o, r.w.sites[j.s], g)
-		if err != nil {
-			return err
-		}
-		live[i] = &res
-		fresh[i], err = pack(res)
-		return err
-	}, r.report("fit", len(todo)))
-	if err != nil {
-		return nil, nil, err
-	}
-	r.fitLive = map[string]*fitResult{}
-	for i, j := range todo {
-		r.fitLive[j.key] = live[i]
-		r.add(study.Result{Step: "fit", Digest: j.key, Data: fresh[i]})
-	}
-	r.keep("fit", all)
-	r.count("fit", len(todo), len(list)-len(todo))
-	return keys, have, nil
 }

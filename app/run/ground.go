@@ -7,7 +7,6 @@ import (
 	"sort"
 	"strings"
 
-	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/overlay"
 	"groundtally/scoring/units"
@@ -213,10 +212,13 @@ func appliesTo(text, part string) bool { return text == "" || text == "all" || t
 // prepare widens the features of every rule once for all sites.
 //
 // Layers that were widened alike before are taken from made, so that rulesets share them.
-func (rs *ruleset) prepare(e *overlay.Engine, made map[string]*overlay.Layer) error {
+func (rs *ruleset) prepare(ctx context.Context, e *overlay.Engine, made map[string]*overlay.Layer) error {
 	for i := range rs.rules {
 		r := &rs.rules[i]
 		for j := range r.sources {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
 			s := &r.sources[j]
 			name := s.id()
 			if l, there := made[name]; there {
@@ -353,115 +355,4 @@ func (rs *ruleset) compute(e *overlay.Engine, w *world, s site, steep map[float6
 		g.LargestM2 = max(g.LargestM2, a)
 	}
 	return g, nil
-}
-
-// ground computes the step for every site under every distinct ruleset that the options need.
-// It answers with, per option and part, the digest of each site's result.
-func (r *runner) ground(ctx context.Context) error {
-	w := r.w
-	type job struct {
-		rs  *ruleset
-		s   int
-		key string
-	}
-	jobs := map[string]job{}
-	r.sets = map[string]*ruleset{}
-	r.groundKeys = map[string][]string{}
-	for i := range w.options {
-		o := &w.options[i]
-		for _, part := range o.parts() {
-			rs, err := w.rulesFor(*o, part)
-			if err != nil {
-				return err
-			}
-			name := o.id + "/" + part
-			r.sets[name] = rs
-			keys := make([]string, len(w.sites))
-			for i, s := range w.sites {
-				keys[i] = rs.key(w, s)
-				if _, there := jobs[keys[i]]; !there {
-					jobs[keys[i]] = job{rs: rs, s: i, key: keys[i]}
-				}
-			}
-			r.groundKeys[name] = keys
-		}
-	}
-	list := make([]job, 0, len(jobs))
-	keys := make([]string, 0, len(jobs))
-	for _, j := range jobs {
-		list = append(list, j)
-	}
-	sort.Slice(list, func(a, b int) bool {
-		if list[a].s != list[b].s {
-			return list[a].s < list[b].s
-		}
-		return list[a].key < list[b].key
-	})
-	for _, j := range list {
-		keys = append(keys, j.key)
-	}
-	have, err := r.cached(ctx, "ground", keys)
-	if err != nil {
-		return err
-	}
-	var todo []job
-	for _, j := range list {
-		if _, ok := have[j.key]; !ok {
-			todo = append(todo, j)
-		}
-	}
-	if len(todo) > 0 {
-		e := overlay.New()
-		done := map[*ruleset]bool{}
-		made := map[string]*overlay.Layer{}
-		for _, j := range todo {
-			if done[j.rs] {
-				continue
-			}
-			done[j.rs] = true
-			if err := j.rs.prepare(e, made); err != nil {
-				return err
-			}
-		}
-		closeEngine(e)
-	}
-	// A site's rulesets go to one worker, whose engine remembers what they share. todo is in site order.
-	var starts []int
-	for i, j := range todo {
-		if i == 0 || j.s != todo[i-1].s {
-			starts = append(starts, i)
-		}
-	}
-	fresh := make([][]byte, len(todo))
-	live := make([]*groundResult, len(todo))
-	err = forEach(ctx, r.cores, len(starts), openEngine, closeEngine, func(e *overlay.Engine, n int) error {
-		end := len(todo)
-		if n+1 < len(starts) {
-			end = starts[n+1]
-		}
-		steep := map[float64]geo.XYGeometry{}
-		for i := starts[n]; i < end; i++ {
-			g, err := todo[i].rs.compute(e, w, w.sites[todo[i].s], steep)
-			if err != nil {
-				return err
-			}
-			live[i] = &g
-			if fresh[i], err = pack(g); err != nil {
-				return err
-			}
-		}
-		return nil
-	}, r.report("ground", len(starts)))
-	if err != nil {
-		return err
-	}
-	r.groundLive = map[string]*groundResult{}
-	for i, j := range todo {
-		r.groundLive[j.key] = live[i]
-		r.add(study.Result{Step: "ground", Digest: j.key, Data: fresh[i]})
-	}
-	r.keep("ground", keys)
-	r.count("ground", len(todo), len(list)-len(todo))
-	r.groundData = have
-	return nil
 }

@@ -49,29 +49,21 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 		cores = runtime.NumCPU()
 	}
 	r := &runner{w: w, cores: cores, cache: e.Cache, progress: e.Progress}
-	if err := r.ground(ctx); err != nil {
+	if r.f, err = w.newFitter(); err != nil {
 		return nil, err
 	}
-	fr, err := w.newFitter()
+	if r.k, err = w.newReckoner(); err != nil {
+		return nil, err
+	}
+	if err := r.makePlans(ctx); err != nil {
+		return nil, err
+	}
+	cs, digests, err := r.run(ctx)
 	if err != nil {
 		return nil, err
 	}
-	keys, data, err := r.fits(ctx, fr)
-	if err != nil {
-		return nil, err
-	}
-	cs, digests, err := r.candidates(ctx, fr, keys, data)
-	if err != nil {
-		return nil, err
-	}
-	if err := r.save(ctx); err != nil {
-		return nil, err
-	}
-	out := &Results{Candidates: cs, Steps: r.counts, Notices: w.notices}
-	k, err := w.newReckoner()
-	if err != nil {
-		return nil, err
-	}
+	k := r.k
+	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices}
 	draw := newDraws(snap, e.Params, cores, len(cs))
 	for _, voice := range snap.Voices() {
 		o, err := order(ctx, snap, e.Params, k, draw, voice, cs)

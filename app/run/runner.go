@@ -5,49 +5,100 @@ import (
 	"fmt"
 
 	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/geo/overlay"
 )
 
-// runner carries one computation through the steps.
+// runner carries one computation through the steps, in batches of sites: what a batch found is kept before
+// the next begins, so that a stop or a kill loses one batch at most, and memory holds one batch of
+// geometry.
 type runner struct {
 	w        *world
+	k        *reckoner
+	f        *fitter
 	cores    int
 	cache    Cache
 	progress Progress
 
-	pending []study.Result
-	kept    map[string]map[string]bool
-	counts  []StepCount
+	plans  []plan
+	assets []asset
+	layers map[string]*overlay.Layer // widened once for all rulesets
+	ready  map[*ruleset]bool
 
-	sets       map[string]*ruleset // by option/part
-	groundKeys map[string][]string // by option/part, per site
-	groundData map[string][]byte   // by key, those that were stored
-	groundLive map[string]*groundResult
-	fitLive    map[string]*fitResult
+	computed map[string]int
+	wanted   map[string]map[string]bool // digests of this state by step
 }
 
-// groundOf gives the ground of a site under an option's part: computed just now, or stored.
-func (r *runner) groundOf(name string, s int) (*groundResult, error) {
-	key := r.groundKeys[name][s]
-	if g, ok := r.groundLive[key]; ok {
-		return g, nil
-	}
-	var g groundResult
-	err := unpack(r.groundData[key], &g)
-	return &g, err
+// batchSites is the number of sites in a batch.
+const batchSites = 250
+
+// The steps whose results are kept.
+const (
+	groundStep    = "ground"
+	fitStep       = "fit"
+	candidateStep = "candidate"
+)
+
+// plan is what one option asks for: the rules of its parts, and the digest of each step for every site.
+type plan struct {
+	o      option
+	sets   map[string]*ruleset // by part
+	ground map[string][]string // by part, per site
+	fit    []string
+	cand   []string
 }
 
-// fitOf gives a fit: computed just now, or stored.
-func (r *runner) fitOf(key string, stored map[string][]byte) (*fitResult, error) {
-	if f, ok := r.fitLive[key]; ok {
-		return f, nil
+// makePlans finds rules and digests without computing anything.
+func (r *runner) makePlans(ctx context.Context) error {
+	w := r.w
+	r.layers, r.ready = map[string]*overlay.Layer{}, map[*ruleset]bool{}
+	r.computed = map[string]int{}
+	r.wanted = map[string]map[string]bool{groundStep: {}, fitStep: {}, candidateStep: {}}
+	r.assets = w.assets()
+	common := r.k.key(w)
+	for _, o := range w.options {
+		p := plan{o: o, sets: map[string]*ruleset{}, ground: map[string][]string{}, fit: make([]string, len(w.sites)), cand: make([]string, len(w.sites))}
+		for _, part := range o.parts() {
+			rs, err := w.rulesFor(o, part)
+			if err != nil {
+				return err
+			}
+			p.sets[part], p.ground[part] = rs, make([]string, len(w.sites))
+		}
+		legal := legalNotSet(w.snap, o)
+		for i, s := range w.sites {
+			if i%1000 == 0 && ctx.Err() != nil {
+				return ctx.Err()
+			}
+			var grounds []string
+			for _, part := range o.parts() {
+				key := p.sets[part].key(w, s)
+				p.ground[part][i] = key
+				grounds = append(grounds, key)
+				r.wanted[groundStep][key] = true
+			}
+			p.fit[i] = r.f.key(o, s, grounds)
+			h := newKey(candidateStep, candidateEdition)
+			h.text(common)
+			h.text(p.fit[i])
+			for _, part := range o.parts() {
+				h.texts(p.sets[part].incomplete)
+				h.texts(p.sets[part].notApplied)
+			}
+			h.texts(legal)
+			h.text(s.id)
+			h.texts(s.parcels)
+			p.cand[i] = h.sum()
+			r.wanted[fitStep][p.fit[i]] = true
+			r.wanted[candidateStep][p.cand[i]] = true
+		}
+		r.plans = append(r.plans, p)
 	}
-	var f fitResult
-	err := unpack(stored[key], &f)
-	return &f, err
+	return nil
 }
 
 func (r *runner) cached(ctx context.Context, step string, keys []string) (map[string][]byte, error) {
-	if r.cache == nil {
+	if r.cache == nil || len(keys) == 0 {
 		return map[string][]byte{}, nil
 	}
 	have, err := r.cache.Results(ctx, step, keys)
@@ -57,46 +108,257 @@ func (r *runner) cached(ctx context.Context, step string, keys []string) (map[st
 	return have, nil
 }
 
-func (r *runner) add(res study.Result) { r.pending = append(r.pending, res) }
+// stored are the kept results that a batch needs, by step and digest.
+type stored map[string]map[string][]byte
 
-func (r *runner) keep(step string, keys []string) {
-	if r.kept == nil {
-		r.kept = map[string]map[string]bool{}
+// fetch reads what a batch needs: the candidates, the fits of those that are missing, and the grounds of
+// those and of the candidates.
+func (r *runner) fetch(ctx context.Context, from, to int) (stored, error) {
+	out := stored{}
+	var keys []string
+	for _, p := range r.plans {
+		keys = append(keys, p.cand[from:to]...)
 	}
-	m := make(map[string]bool, len(keys))
-	for _, k := range keys {
-		m[k] = true
+	var err error
+	if out[candidateStep], err = r.cached(ctx, candidateStep, keys); err != nil {
+		return nil, err
 	}
-	r.kept[step] = m
+	var fits, grounds []string
+	for _, p := range r.plans {
+		for i := from; i < to; i++ {
+			if _, ok := out[candidateStep][p.cand[i]]; ok {
+				continue
+			}
+			fits = append(fits, p.fit[i])
+			for _, part := range p.o.parts() {
+				grounds = append(grounds, p.ground[part][i])
+			}
+		}
+	}
+	if out[fitStep], err = r.cached(ctx, fitStep, fits); err != nil {
+		return nil, err
+	}
+	out[groundStep], err = r.cached(ctx, groundStep, grounds)
+	return out, err
 }
 
-func (r *runner) count(step string, computed, valid int) {
-	r.counts = append(r.counts, StepCount{Step: step, Computed: computed, Valid: valid})
+// prepare widens the layers of every ruleset that the batch must apply.
+func (r *runner) prepare(ctx context.Context, have stored, from, to int) error {
+	var e *overlay.Engine
+	defer func() {
+		if e != nil {
+			closeEngine(e)
+		}
+	}()
+	for _, p := range r.plans {
+		for part, rs := range p.sets {
+			if r.ready[rs] {
+				continue
+			}
+			need := false
+			for i := from; i < to && !need; i++ {
+				_, done := have[candidateStep][p.cand[i]]
+				_, kept := have[groundStep][p.ground[part][i]]
+				need = !done && !kept
+			}
+			if !need {
+				continue
+			}
+			if e == nil {
+				e = overlay.New()
+			}
+			if err := rs.prepare(ctx, e, r.layers); err != nil {
+				return err
+			}
+			r.ready[rs] = true
+		}
+	}
+	return nil
 }
 
-func (r *runner) report(step string, total int) func(done int) {
-	if r.progress == nil {
+// siteResult is what one site gives: its candidates in the order of the plans, and what is to be kept.
+type siteResult struct {
+	candidates []Candidate
+	digests    []digest
+	fresh      []study.Result
+}
+
+// site carries one site through the steps for every option. The options share the geometry engine, what
+// was cut out around the site, and grounds under equal rules.
+func (r *runner) site(ctx context.Context, e *overlay.Engine, s int, have stored) (siteResult, error) {
+	w, here := r.w, r.w.sites[s]
+	out := siteResult{candidates: make([]Candidate, len(r.plans)), digests: make([]digest, len(r.plans))}
+	grounds := map[string]*groundResult{}
+	steep := map[float64]geo.XYGeometry{}
+	keep := func(step, key string, data []byte) {
+		out.fresh = append(out.fresh, study.Result{Step: step, Digest: key, Data: data})
+	}
+	groundOf := func(rs *ruleset, key string) (*groundResult, error) {
+		if g, ok := grounds[key]; ok {
+			return g, nil
+		}
+		var g groundResult
+		if data, ok := have[groundStep][key]; ok {
+			if err := unpack(data, &g); err != nil {
+				return nil, err
+			}
+		} else {
+			var err error
+			if g, err = rs.compute(e, w, here, steep); err != nil {
+				return nil, err
+			}
+			data, err := pack(g)
+			if err != nil {
+				return nil, err
+			}
+			keep(groundStep, key, data)
+		}
+		grounds[key] = &g
+		return &g, nil
+	}
+	var around *pieces
+	for n, p := range r.plans {
+		if err := ctx.Err(); err != nil {
+			return out, err
+		}
+		var err error
+		if data, ok := have[candidateStep][p.cand[s]]; ok {
+			if out.digests[n], err = unpacked(data, &out.candidates[n]); err != nil {
+				return out, err
+			}
+			continue
+		}
+		parts := map[string]groundResult{}
+		for _, part := range p.o.parts() {
+			g, err := groundOf(p.sets[part], p.ground[part][s])
+			if err != nil {
+				return out, err
+			}
+			parts[part] = *g
+		}
+		var fitted fitResult
+		if data, ok := have[fitStep][p.fit[s]]; ok {
+			err = unpack(data, &fitted)
+		} else if fitted, err = r.f.compute(e, p.o, here, parts); err == nil {
+			var data []byte
+			if data, err = pack(fitted); err == nil {
+				keep(fitStep, p.fit[s], data)
+			}
+		}
+		if err != nil {
+			return out, err
+		}
+		if around == nil {
+			if around, err = w.newPieces(e, here); err != nil {
+				return out, err
+			}
+		}
+		c, err := r.k.candidate(e, w, around, r.f, r.assets, p.o, here, parts, p.sets, fitted)
+		if err != nil {
+			return out, err
+		}
+		out.candidates[n] = *c
+		data, sum, err := packed(c)
+		if err != nil {
+			return out, err
+		}
+		out.digests[n] = sum
+		keep(candidateStep, p.cand[s], data)
+	}
+	return out, nil
+}
+
+// run computes every candidate: by option, then site.
+func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
+	w := r.w
+	n := len(w.sites)
+	out := make([]Candidate, n*len(r.plans))
+	digests := make([]digest, len(out))
+	columns := make([]*Columns, len(r.plans))
+	for i := range columns {
+		columns[i] = newColumns(r.k.keys, r.k.p.facts, n)
+	}
+	limits := limitsOf(w.snap, r.k.keys)
+	for from := 0; from < n; from += batchSites {
+		to := min(n, from+batchSites)
+		have, err := r.fetch(ctx, from, to)
+		if err != nil {
+			return nil, nil, err
+		}
+		if err := r.prepare(ctx, have, from, to); err != nil {
+			return nil, nil, err
+		}
+		found := make([]siteResult, to-from)
+		var report func(int)
+		if r.progress != nil {
+			report = func(done int) { r.progress("sites", from+done, n) }
+		}
+		err = forEach(ctx, r.cores, to-from, openEngine, closeEngine, func(e *overlay.Engine, i int) error {
+			var err error
+			found[i], err = r.site(ctx, e, from+i, have)
+			return err
+		}, report)
+		var fresh []study.Result
+		for i := range found {
+			fresh = append(fresh, found[i].fresh...)
+		}
+		if kerr := r.keepResults(ctx, fresh); err == nil {
+			err = kerr
+		}
+		if err != nil {
+			return nil, nil, err
+		}
+		for i, f := range found {
+			for p := range f.candidates {
+				at := p*n + from + i
+				out[at], digests[at] = f.candidates[p], f.digests[p]
+				c := &out[at]
+				c.toColumns(columns[p], from+i)
+				c.Gates = w.gates(w.sites[from+i])
+				c.OverLimit = overLimit(limits, c)
+			}
+		}
+	}
+	return out, digests, r.prune(ctx)
+}
+
+// keepResults writes what a batch found. After a stop it writes what is whole, so that it need not be
+// computed again.
+func (r *runner) keepResults(ctx context.Context, fresh []study.Result) error {
+	for _, f := range fresh {
+		r.computed[f.Step]++
+	}
+	if r.cache == nil || len(fresh) == 0 {
 		return nil
 	}
-	return func(done int) { r.progress(step, done, total) }
-}
-
-// save writes new results. Older ones stay, so that undo finds them valid, until more than half of
-// everything is new: then what this state does not need is dropped, which bounds the file.
-func (r *runner) save(ctx context.Context) error {
-	if r.cache == nil || len(r.pending) == 0 {
-		return nil
-	}
-	all := 0
-	for _, keys := range r.kept {
-		all += len(keys)
-	}
-	keep := r.kept
-	if 2*len(r.pending) <= all {
-		keep = nil
-	}
-	if err := r.cache.PutResults(ctx, r.pending, keep); err != nil {
+	if err := r.cache.PutResults(context.WithoutCancel(ctx), fresh, nil); err != nil {
 		return fmt.Errorf("keep results: %w", err)
 	}
 	return nil
+}
+
+// prune drops results that this state does not need, once more than half of everything was new. Until then
+// older ones stay, so that undo finds them valid.
+func (r *runner) prune(ctx context.Context) error {
+	all, fresh := 0, 0
+	for step, keys := range r.wanted {
+		all += len(keys)
+		fresh += r.computed[step]
+	}
+	if r.cache == nil || 2*fresh <= all {
+		return nil
+	}
+	if err := r.cache.PutResults(ctx, nil, r.wanted); err != nil {
+		return fmt.Errorf("drop old results: %w", err)
+	}
+	return nil
+}
+
+// counts says how much of each step was computed and how much was still valid.
+func (r *runner) counts() []StepCount {
+	var out []StepCount
+	for _, step := range []string{groundStep, fitStep, candidateStep} {
+		out = append(out, StepCount{Step: step, Computed: r.computed[step], Valid: len(r.wanted[step]) - r.computed[step]})
+	}
+	return out
 }
