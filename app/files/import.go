@@ -29,7 +29,7 @@ func Import(ctx context.Context, name string, crsGiven bool) (study.Import, erro
 	if err != nil {
 		return study.Import{}, err
 	}
-	defer f.Close()
+	defer func() { _ = f.Close() }() // only read
 	return decode(ctx, f, f.Kind, name, filepath.Base(name), crsGiven)
 }
 

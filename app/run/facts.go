@@ -165,9 +165,18 @@ func (p *pieces) of(e *overlay.Engine, role string) ([]piece, error) {
 			if l.xy[i].Kind != geo.Polygons {
 				continue
 			}
-			x, err := e.Intersection(l.xy[i], window)
+			// Cutting to a box is much cheaper than an overlay, and may leave rings that touch themselves:
+			// then the overlay is made after all.
+			x, err := e.Clip(l.xy[i], p.box)
 			if err != nil {
 				return nil, err
+			}
+			if ok, _, err := e.Valid(x); err != nil {
+				return nil, err
+			} else if !ok {
+				if x, err = e.Intersection(l.xy[i], window); err != nil {
+					return nil, err
+				}
 			}
 			if x.Kind == geo.Polygons && !x.Empty() {
 				out = append(out, piece{layer: l, feature: i, geom: x, box: geo.ExtentOf(x)})

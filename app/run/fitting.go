@@ -275,11 +275,12 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 			return nil
 		}
 	}
-	machine, err := f.turbine(o, rated, d)
-	if err != nil {
-		r.Status, r.Reason = NotComputed, "turbine_does_not_fit"
-		return nil
+	machine, unfit := f.turbine(o, rated, d)
+	if unfit != nil {
+		r.Status, r.Reason = NotComputed, "turbine_does_not_fit" // the option is at fault, not the computation
+		return nil                                               //nolint:nilerr // said by the status
 	}
+	var err error
 	if g.BuildableM2 <= 0 {
 		return nil
 	}

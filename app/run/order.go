@@ -6,6 +6,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"sync"
 
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -264,7 +265,10 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 			items, which = append(items, item), append(which, at[item])
 		}
 	}
-	if err := draw.ready(ctx, k, cs, which, n); err != nil {
+	draw.mu.Lock()
+	err = draw.ready(ctx, k, cs, which, n)
+	draw.mu.Unlock()
+	if err != nil {
 		return out, err
 	}
 	if len(items) > 0 {
@@ -351,6 +355,7 @@ type draws struct {
 	keys    []string
 	slots   []int
 	cores   int
+	mu      sync.Mutex          // voices fill it one after the other
 	samples [][][]scoring.Value // by candidate, trial, key
 }
 
@@ -372,8 +377,7 @@ func newDraws(snap *study.Snapshot, p *Params, cores, candidates int) *draws {
 }
 
 func (d *draws) ready(ctx context.Context, k *reckoner, cs []Candidate, which []int, n int) error {
-	none := func() (struct{}, error) { return struct{}{}, nil }
-	return forEach(ctx, d.cores, len(which), none, func(struct{}) {}, func(_ struct{}, i int) error {
+	return forEach(ctx, d.cores, len(which), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
 		c := which[i]
 		if len(d.samples[c]) < n {
 			drawn := append(slices.Clone(k.drawn), k.siteDraws(cs[c].Site, sigmas(&cs[c]))...)

@@ -65,22 +65,30 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	k := r.k
 	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices}
 	draw := newDraws(snap, e.Params, cores, len(cs))
-	for _, voice := range snap.Voices() {
-		o, err := order(ctx, snap, e.Params, k, draw, voice, cs)
-		var unready *VoiceError
-		if errors.As(err, &unready) {
-			// One unfinished voice does not keep the others from theirs.
-			if out.Unready == nil {
-				out.Unready = map[string]error{}
-			}
-			out.Unready[voice] = unready
-			out.Notices = append(out.Notices, geo.Notice{Code: "voice_unusable", Severity: geo.Warning, Field: "voice." + voice, Args: map[string]string{"error": err.Error()}})
+	voices := snap.Voices()
+	orders := make([]VoiceOrder, len(voices))
+	unready := make([]*VoiceError, len(voices))
+	err = forEach(ctx, cores, len(voices), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
+		var err error
+		orders[i], err = order(ctx, snap, e.Params, k, draw, voices[i], cs)
+		if errors.As(err, &unready[i]) {
+			return nil // one unfinished voice does not keep the others from theirs
+		}
+		return err
+	}, nil)
+	if err != nil {
+		return nil, err
+	}
+	for i, voice := range voices {
+		if unready[i] == nil {
+			out.Voices = append(out.Voices, orders[i])
 			continue
 		}
-		if err != nil {
-			return nil, err
+		if out.Unready == nil {
+			out.Unready = map[string]error{}
 		}
-		out.Voices = append(out.Voices, o)
+		out.Unready[voice] = unready[i]
+		out.Notices = append(out.Notices, geo.Notice{Code: "voice_unusable", Severity: geo.Warning, Field: "voice." + voice, Args: map[string]string{"error": unready[i].Error()}})
 	}
 	out.Steps = append(out.Steps, StepCount{Step: "order", Computed: len(out.Voices)})
 	if err := out.code(snap, e.Params, digests); err != nil {

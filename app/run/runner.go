@@ -30,7 +30,7 @@ type runner struct {
 }
 
 // batchSites is the number of sites in a batch.
-const batchSites = 250
+const batchSites = 500
 
 // The steps whose results are kept.
 const (
@@ -66,16 +66,12 @@ func (r *runner) makePlans(ctx context.Context) error {
 			p.sets[part], p.ground[part] = rs, make([]string, len(w.sites))
 		}
 		legal := legalNotSet(w.snap, o)
-		for i, s := range w.sites {
-			if i%1000 == 0 && ctx.Err() != nil {
-				return ctx.Err()
-			}
+		err := forEach(ctx, r.cores, len(w.sites), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
+			s := w.sites[i]
 			var grounds []string
 			for _, part := range o.parts() {
-				key := p.sets[part].key(w, s)
-				p.ground[part][i] = key
-				grounds = append(grounds, key)
-				r.wanted[groundStep][key] = true
+				p.ground[part][i] = p.sets[part].key(w, s)
+				grounds = append(grounds, p.ground[part][i])
 			}
 			p.fit[i] = r.f.key(o, s, grounds)
 			h := newKey(candidateStep, candidateEdition)
@@ -89,6 +85,15 @@ func (r *runner) makePlans(ctx context.Context) error {
 			h.text(s.id)
 			h.texts(s.parcels)
 			p.cand[i] = h.sum()
+			return nil
+		}, nil)
+		if err != nil {
+			return err
+		}
+		for i := range w.sites {
+			for _, part := range o.parts() {
+				r.wanted[groundStep][p.ground[part][i]] = true
+			}
 			r.wanted[fitStep][p.fit[i]] = true
 			r.wanted[candidateStep][p.cand[i]] = true
 		}
@@ -166,6 +171,9 @@ func (r *runner) prepare(ctx context.Context, have stored, from, to int) error {
 			}
 			if e == nil {
 				e = overlay.New()
+				if r.w.terrain != nil {
+					go func() { _, _ = r.w.terrain.get() }() // read beside; whoever needs it sees its error
+				}
 			}
 			if err := rs.prepare(ctx, e, r.layers); err != nil {
 				return err
@@ -279,6 +287,7 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 		columns[i] = newColumns(r.k.keys, r.k.p.facts, n)
 	}
 	limits := limitsOf(w.snap, r.k.keys)
+	var writing background
 	for from := 0; from < n; from += batchSites {
 		to := min(n, from+batchSites)
 		have, err := r.fetch(ctx, from, to)
@@ -302,10 +311,12 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 		for i := range found {
 			fresh = append(fresh, found[i].fresh...)
 		}
-		if kerr := r.keepResults(ctx, fresh); err == nil {
+		if kerr := writing.wait(); err == nil {
 			err = kerr
 		}
+		writing.start(func() error { return r.keepResults(ctx, fresh) })
 		if err != nil {
+			_ = writing.wait() // what is whole is kept; the first error counts
 			return nil, nil, err
 		}
 		for i, f := range found {
@@ -319,8 +330,31 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 			}
 		}
 	}
+	if err := writing.wait(); err != nil {
+		return nil, nil, err
+	}
 	return out, digests, r.prune(ctx)
 }
+
+// background does one thing beside the rest.
+type background struct{ done chan error }
+
+func (b *background) start(do func() error) {
+	b.done = make(chan error, 1)
+	go func(done chan error) { done <- do() }(b.done)
+}
+
+// wait gives the error of what was started last; nil when nothing was.
+func (b *background) wait() error {
+	if b.done == nil {
+		return nil
+	}
+	err := <-b.done
+	b.done = nil
+	return err
+}
+
+func noResource() (struct{}, error) { return struct{}{}, nil }
 
 // keepResults writes what a batch found. After a stop it writes what is whole, so that it need not be
 // computed again.

@@ -283,7 +283,7 @@ func TestUndoSurvivesAnotherProgramsEdits(t *testing.T) {
 	if _, err := c.Undo(ctx); err != nil {
 		t.Fatalf("the other program's edit cannot be taken back: %v", err)
 	}
-	if got := value(t, c, "run.trials"); got != "400" {
+	if got := value(t, c, "run.trials"); got != "200" {
 		t.Errorf("trials are %s after undo, want the default", got)
 	}
 	if _, err := c.Undo(ctx); !errors.Is(err, study.ErrNothingToDo) {

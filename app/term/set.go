@@ -122,9 +122,9 @@ func (c *call) checkSetting(key, value string) error {
 	if strings.HasPrefix(key, "plant.") && strings.HasSuffix(key, ".turbine") && !slices.Contains(c.turbines(), value) {
 		return usagef("setting %s: there is no reference curve %q; the curves are: %s", key, value, strings.Join(c.turbines(), ", "))
 	}
-	x, err := strconv.ParseFloat(value, 64)
-	if def.Kind != "number" || err != nil {
-		return nil // Set judges the form
+	x, bad := strconv.ParseFloat(value, 64)
+	if def.Kind != "number" || bad != nil {
+		return nil //nolint:nilerr // Set judges the form
 	}
 	whole := map[string][2]float64{"run.seed": {0, 1 << 53}, "run.trials": {10, 100_000}, "weigh.mixes": {1, 100_000}}
 	if span, ok := whole[key]; ok && (x != float64(int64(x)) || x < span[0] || x > span[1]) {

@@ -20,10 +20,9 @@ var ErrUnknownCRS = errors.New("unknown coordinate reference system")
 // Source coordinates are always given as east before north, or longitude before latitude, whatever order
 // the system's definition states, as map files have them.
 type Transform struct {
-	code    string
-	lib     *Library
-	pj      *proj.PJ // nil for WGS 84 itself
-	degrees bool
+	code string
+	lib  *Library
+	pj   *proj.PJ // nil for WGS 84 itself
 }
 
 var (

@@ -50,7 +50,7 @@ const (
 const (
 	toleranceM   = 1e-6  // positions this far outside count as on the edge
 	maxMachines  = 20000 // an area for more is refused
-	maxJudged    = 64    // tied lattices that the Gain judges
+	maxJudged    = 24    // tied lattices that the Gain judges
 	maxPoints    = 3000  // candidate positions
 	searchPoints = 120   // of which the search of subsets takes
 	searchNodes  = 200000
@@ -70,7 +70,7 @@ const (
 //  4. With 6 machines or fewer, a search for one more among at most 120 candidates; it is exhaustive for a
 //     handful of machines and gives up after 200,000 steps.
 //
-// With a Gain up to 64 tied lattices are judged, and at the end machines move, as long as the Gain rises,
+// With a Gain up to 24 tied lattices are judged, and at the end machines move, as long as the Gain rises,
 // by an eighth to a thirty-second of the spacing. With Max fewer machines than would fit, the spacing is
 // stretched as far as still holds Max, then surplus machines go: the one whose loss costs the Gain least,
 // without a Gain the most crowded one.
