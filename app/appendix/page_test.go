@@ -130,7 +130,7 @@ func inputOf(ctx context.Context, s *study.Study, p *run.Params) (appendix.Input
 	if err != nil {
 		return none, err
 	}
-	notices, err := run.Check(ctx, s, p)
+	notices, err := run.Check(ctx, s.Store(), snap, p)
 	return appendix.Input{Snapshot: snap, Results: r, Params: p, Layers: layers, Notices: notices, Engines: []string{"GEOS"}, Version: "groundtally test", Journal: s.Journal(), Frozen: s.FrozenStates()}, err
 }
 

@@ -160,20 +160,16 @@ func SortBy(list []*Candidate, cat *study.Catalog, key string) {
 	})
 }
 
-// Check lists every notice on the study's data and settings: those of the imports, roles that are
+// Check lists every notice on the data and settings of a state of a study: those of the imports, roles that are
 // missing, legal values that are not set, layers that another program changed.
-func Check(ctx context.Context, s *study.Study, p *Params) ([]geo.Notice, error) {
-	snap, err := s.Snapshot()
-	if err != nil {
-		return nil, err
-	}
+func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Params) ([]geo.Notice, error) {
 	out := []geo.Notice{}
 	have := map[string]bool{}
 	parcels := map[string]bool{}
 	for _, l := range snap.Layers {
 		have[l.Role] = true
 		out = append(out, l.Notices...)
-		v, changed, err := s.Store().Version(ctx, l.Digest)
+		v, changed, err := store.Version(ctx, l.Digest)
 		if err != nil {
 			return nil, fmt.Errorf("read layer %q: %w", l.Name, err)
 		}

@@ -74,6 +74,7 @@ var (
 		{name: "json", help: "answer as JSON"},
 		{name: "quiet", help: "no progress and no notices"},
 	}
+	frozenOption = option{name: "frozen", value: "NAME", help: "answer for this frozen state, not for the present one"}
 	coresOption  = option{name: "cores", value: "N", help: "how many processor cores to use; the digits do not depend on it"}
 	reasonOption = option{name: "reason", value: "TEXT", help: "why, for the journal"}
 )

@@ -7,6 +7,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"syscall"
 
@@ -16,8 +17,8 @@ import (
 )
 
 var verbAppendix = verb{
-	name: "appendix", usage: "appendix STUDY.gpkg --to FOLDER [--form page]", summary: "writes the appendix and prints its check code",
-	options: []option{{name: "to", value: "FOLDER", help: "folder to write into"}, {name: "form", value: "page", help: "forms, parted by commas; this version writes page"}, coresOption},
+	name: "appendix", usage: "appendix STUDY.gpkg --to FOLDER [--form page] [--frozen NAME]", summary: "writes the appendix and prints its check code",
+	options: []option{{name: "to", value: "FOLDER", help: "folder to write into"}, {name: "form", value: "page", help: "forms, parted by commas; this version writes page"}, frozenOption, coresOption},
 	places:  [2]int{1, 1},
 	run: func(c *call) (int, error) {
 		if !c.args.has("to") {
@@ -29,7 +30,7 @@ var verbAppendix = verb{
 			}
 		}
 		return c.with(func(s *study.Study) (int, error) {
-			snap, err := s.Snapshot()
+			snap, err := c.state(s)
 			if err != nil {
 				return 0, err
 			}
@@ -42,11 +43,15 @@ var verbAppendix = verb{
 			if err != nil {
 				return 0, err
 			}
-			notices, err := run.Check(c.ctx, s, c.Params)
+			notices, err := run.Check(c.ctx, s.Store(), snap, c.Params)
 			if err != nil {
 				return 0, err
 			}
-			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: s.Journal(), Frozen: s.FrozenStates()})
+			journal, frozen, err := c.history(s)
+			if err != nil {
+				return 0, err
+			}
+			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: journal, Frozen: frozen})
 			if err != nil {
 				return 0, err
 			}
@@ -76,6 +81,18 @@ var verbAppendix = verb{
 			return ExitDone, nil
 		})
 	},
+}
+
+// history gives the journal and the frozen states up to the state that the verb answers for.
+func (c *call) history(s *study.Study) ([]study.Entry, []study.Frozen, error) {
+	journal, states := s.Journal(), s.FrozenStates()
+	f, err := c.frozen(s)
+	if f == nil || err != nil {
+		return journal, states, err
+	}
+	journal = slices.DeleteFunc(journal, func(e study.Entry) bool { return e.Seq > f.Seq })
+	states = slices.DeleteFunc(states, func(z study.Frozen) bool { return z.Seq > f.Seq })
+	return journal, states, nil
 }
 
 // makeFolder makes the folder of an appendix.

@@ -15,11 +15,11 @@ var verbCheck = verb{
 			if err := s.Store().Check(c.ctx); err != nil {
 				return 0, err
 			}
-			notices, err := run.Check(c.ctx, s, c.Params)
+			snap, err := s.Snapshot()
 			if err != nil {
 				return 0, err
 			}
-			snap, err := s.Snapshot()
+			notices, err := run.Check(c.ctx, s.Store(), snap, c.Params)
 			if err != nil {
 				return 0, err
 			}

@@ -10,6 +10,37 @@ import (
 	"groundtally/app/study"
 )
 
+// frozen finds the frozen state that --frozen names; without the option it gives nil.
+func (c *call) frozen(s *study.Study) (*study.Frozen, error) {
+	if !c.args.has("frozen") {
+		return nil, nil
+	}
+	name := c.args.get("frozen")
+	states := s.FrozenStates()
+	names := make([]string, len(states))
+	for i := range states {
+		if names[i] = states[i].Name; names[i] == name {
+			return &states[i], nil
+		}
+	}
+	if len(names) == 0 {
+		return nil, usagef("the study has no frozen state yet; gtally freeze %s NAME makes one", shellWord(c.args.places[0]))
+	}
+	return nil, usagef("there is no frozen state %q; the frozen states are: %s", name, strings.Join(names, ", "))
+}
+
+// state gives the state of the study that the verb answers for: the present one, or a frozen one.
+func (c *call) state(s *study.Study) (*study.Snapshot, error) {
+	f, err := c.frozen(s)
+	switch {
+	case err != nil:
+		return nil, err
+	case f != nil:
+		return study.NewSnapshot(c.Catalog, f.Records)
+	}
+	return s.Snapshot()
+}
+
 // compute carries the study through all steps, keeping step results in the study file.
 func (c *call) compute(s *study.Study) (*run.Results, error) {
 	return c.computeWith(s, true)
@@ -17,7 +48,7 @@ func (c *call) compute(s *study.Study) (*run.Results, error) {
 
 // computeWith computes; without stored step results everything is computed from the inputs.
 func (c *call) computeWith(s *study.Study, stored bool) (*run.Results, error) {
-	snap, err := s.Snapshot()
+	snap, err := c.state(s)
 	if err != nil {
 		return nil, err
 	}
@@ -56,7 +87,10 @@ func (c *call) engine(s *study.Study, stored bool) (*run.Engine, error) {
 		return nil, err
 	}
 	e := &run.Engine{Params: c.Params, Load: run.StoreLoader(s.Store()), Cores: cores}
-	if stored {
+	switch {
+	case stored && c.args.has("frozen"):
+		e.Cache = &keeping{store: s.Store(), c: c, lookOnly: true}
+	case stored:
 		e.Cache = &keeping{store: s.Store(), c: c}
 	}
 	if c.Terminal && !c.calm {
@@ -77,8 +111,9 @@ func (c *call) engine(s *study.Study, stored bool) (*run.Engine, error) {
 // keeping keeps step results in the study. They can always be made again, so a study that cannot be
 // written, as a copy that somebody else is only to read, still gives its answers.
 type keeping struct {
-	store study.Store
-	c     *call
+	store    study.Store
+	c        *call
+	lookOnly bool // keeps nothing: the study keeps the results of one state, which is the present one
 }
 
 func (k *keeping) Results(ctx context.Context, step string, digests []string) (map[string][]byte, error) {
@@ -86,6 +121,9 @@ func (k *keeping) Results(ctx context.Context, step string, digests []string) (m
 }
 
 func (k *keeping) PutResults(ctx context.Context, add []study.Result, keep map[string]map[string]bool) error {
+	if k.lookOnly {
+		return nil
+	}
 	err := k.store.PutResults(ctx, add, keep)
 	for _, only := range []error{study.ErrReadOnly, study.ErrDiskFull, study.ErrBusy} {
 		if errors.Is(err, only) {

@@ -15,9 +15,9 @@ import (
 const firstPlaces = 20
 
 var verbOrder = verb{
-	name: "order", usage: "order STUDY.gpkg [--voice NAME] [--top N]", summary: "the order under one voice or all, with its parts",
+	name: "order", usage: "order STUDY.gpkg [--voice NAME] [--top N] [--frozen NAME]", summary: "the order under one voice or all, with its parts",
 	options: []option{{name: "voice", value: "NAME", help: "only this voice"},
-		{name: "top", value: "N", help: fmt.Sprintf("only the first N places; in print %d unless told otherwise, in the JSON all", firstPlaces)}, coresOption},
+		{name: "top", value: "N", help: fmt.Sprintf("only the first N places; in print %d unless told otherwise, in the JSON all", firstPlaces)}, frozenOption, coresOption},
 	places: [2]int{1, 1},
 	run: func(c *call) (int, error) {
 		top, err := c.args.whole("top", 1, firstPlaces)
@@ -25,7 +25,7 @@ var verbOrder = verb{
 			return 0, err
 		}
 		return c.with(func(s *study.Study) (int, error) {
-			snap, err := s.Snapshot()
+			snap, err := c.state(s)
 			if err != nil {
 				return 0, err
 			}

@@ -12,10 +12,10 @@ import (
 var tableKeys = []string{"buildable_area_ha", "rated_kw", "delivered_mwh_per_yr", "eroi_delivered", "net_share", "footprint_direct_ha_per_gwh", "ghg_g_per_kwh", "nearest_dwelling_m", "habitat_ha", "connection_km"}
 
 var verbTable = verb{
-	name: "table", usage: "table STUDY.gpkg [--plant ID] [--site ID] [--sort KEY] [--top N] [--keys KEY,KEY]", summary: "the consequence table",
+	name: "table", usage: "table STUDY.gpkg [--plant ID] [--site ID] [--sort KEY] [--top N] [--keys KEY,KEY] [--frozen NAME]", summary: "the consequence table",
 	options: []option{{name: "plant", value: "ID", help: "only this plant option"}, {name: "site", value: "ID", help: "only this site"},
 		{name: "sort", value: "KEY", help: "best first by this consequence"}, {name: "top", value: "N", help: "only the first N rows"},
-		{name: "keys", value: "KEY,KEY", help: "columns to print; all are in the JSON"}, coresOption},
+		{name: "keys", value: "KEY,KEY", help: "columns to print; all are in the JSON"}, frozenOption, coresOption},
 	places: [2]int{1, 1},
 	run: func(c *call) (int, error) {
 		top, err := c.args.whole("top", 1, 0)

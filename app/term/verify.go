@@ -1,6 +1,7 @@
 package term
 
 import (
+	"cmp"
 	"errors"
 	"io/fs"
 	"os"
@@ -13,10 +14,10 @@ import (
 )
 
 var verbVerify = verb{
-	name: "verify", usage: "verify STUDY.gpkg [--code HEX] [--appendix FOLDER]", summary: "re-runs from the inputs and compares",
-	more: "identical: the same to the last digit. agrees: every value within 1e-6, the same tiers.\nOtherwise exit 1 with the first difference.",
+	name: "verify", usage: "verify STUDY.gpkg [--code HEX] [--appendix FOLDER] [--frozen NAME]", summary: "re-runs from the inputs and compares",
+	more: "identical: the same to the last digit. agrees: every value within 1e-6, the same tiers.\nOtherwise exit 1 with the first difference. A frozen state is compared with the check code that it was frozen with.",
 	options: []option{{name: "code", value: "HEX", help: "check code to compare with, at least its first 8 characters"},
-		{name: "appendix", value: "FOLDER", help: "folder of an appendix to compare with"}, coresOption},
+		{name: "appendix", value: "FOLDER", help: "folder of an appendix to compare with"}, frozenOption, coresOption},
 	places: [2]int{1, 1},
 	run: func(c *call) (int, error) {
 		code := strings.ToLower(strings.TrimSpace(c.args.get("code")))
@@ -34,7 +35,7 @@ var verbVerify = verb{
 			}
 		}
 		return c.with(func(s *study.Study) (int, error) {
-			stored, err := c.computeWith(s, true)
+			frozen, err := c.frozen(s)
 			if err != nil {
 				return 0, err
 			}
@@ -42,8 +43,21 @@ var verbVerify = verb{
 			if err != nil {
 				return 0, err
 			}
-			verdict, diff := run.Compare(stored, fresh)
-			where := "the stored results"
+			var verdict, where string
+			var diff *run.Difference
+			if frozen != nil {
+				verdict, where = "identical", "the frozen state"
+				if frozen.Code != fresh.Code.Check {
+					diff = &run.Difference{Where: "check code", Old: cmp.Or(frozen.Code, "none"), New: fresh.Code.Check}
+				}
+			} else {
+				stored, err := c.computeWith(s, true)
+				if err != nil {
+					return 0, err
+				}
+				verdict, diff = run.Compare(stored, fresh)
+				where = "the stored results"
+			}
 			if diff == nil && want != nil {
 				where = "the appendix"
 				verdict, diff = want.Compare(fresh, c.Version)

@@ -12,9 +12,9 @@ import (
 )
 
 var verbWhy = verb{
-	name: "why", usage: "why STUDY.gpkg SITE PLANT [KEY]", summary: "unfolds a candidate, or one consequence", places: [2]int{3, 4},
+	name: "why", usage: "why STUDY.gpkg SITE PLANT [KEY] [--frozen NAME]", summary: "unfolds a candidate, or one consequence", places: [2]int{3, 4},
 	more:    "With a key: the figure, its formula, and indented below it the figures that go into it, down to the\nmeasured facts and cited factors, so that it can be done again by hand.",
-	options: []option{coresOption},
+	options: []option{frozenOption, coresOption},
 	run: func(c *call) (int, error) {
 		if len(c.args.places) == 4 && !c.knownKey(c.args.places[3]) {
 			if _, inGraph := c.Params.Graph.Slot(c.args.places[3]); !inGraph {
@@ -42,7 +42,7 @@ var verbWhy = verb{
 				c.candidate(cand)
 				return ExitDone, nil
 			}
-			snap, err := s.Snapshot()
+			snap, err := c.state(s)
 			if err != nil {
 				return 0, err
 			}
