@@ -167,7 +167,7 @@ func (p *pieces) of(e *overlay.Engine, role string) ([]piece, error) {
 			}
 			// Cutting to a box is much cheaper than an overlay, and may leave rings that touch themselves:
 			// then the overlay is made after all.
-			x, err := e.Clip(l.xy[i], p.box)
+			x, err := l.clip(e, i, p.box)
 			if err != nil {
 				return nil, err
 			}

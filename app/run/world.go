@@ -10,6 +10,7 @@ import (
 	"sort"
 	"strings"
 	"sync"
+	"sync/atomic"
 
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -28,6 +29,32 @@ type layer struct {
 	xy   []geo.XYGeometry
 	hash [][sha256.Size]byte // per feature: geometry and matched values
 	tree *index.Tree
+
+	validity []atomic.Uint32 // per feature: 0 not asked yet
+}
+
+const (
+	validFeature   = 1
+	invalidFeature = 2
+)
+
+// clip cuts a feature to an extent. Whether the feature is valid is asked once, not for every site.
+func (l *layer) clip(e *overlay.Engine, i int, x geo.Extent) (geo.XYGeometry, error) {
+	if l.validity[i].Load() == 0 {
+		ok, _, err := e.Valid(l.xy[i])
+		if err != nil {
+			return geo.XYGeometry{}, err
+		}
+		state := uint32(invalidFeature)
+		if ok {
+			state = validFeature
+		}
+		l.validity[i].Store(state)
+	}
+	if l.validity[i].Load() == validFeature {
+		return e.ClipValid(l.xy[i], x)
+	}
+	return e.Clip(l.xy[i], x)
 }
 
 // text gives a field of a feature by the role's field name; empty when missing, and when the column is
@@ -144,7 +171,7 @@ func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader)
 				w.tables[rec.Role] = v.Layer
 			}
 		default:
-			l := &layer{rec: rec, src: v.Layer, xy: make([]geo.XYGeometry, len(v.Layer.Features)), hash: make([][sha256.Size]byte, len(v.Layer.Features))}
+			l := &layer{rec: rec, src: v.Layer, xy: make([]geo.XYGeometry, len(v.Layer.Features)), hash: make([][sha256.Size]byte, len(v.Layer.Features)), validity: make([]atomic.Uint32, len(v.Layer.Features))}
 			for i, f := range v.Layer.Features {
 				if l.xy[i], err = w.frame.Project(f.Geometry); err != nil {
 					return nil, fmt.Errorf("layer %q, feature %s: %w", rec.Name, f.ID, err)

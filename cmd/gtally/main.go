@@ -8,6 +8,7 @@ import (
 	"os"
 	"os/signal"
 	"os/user"
+	"runtime"
 	"syscall"
 	"time"
 
@@ -30,6 +31,11 @@ func main() {
 }
 
 func realMain() int {
+	if os.Getenv("GOMAXPROCS") == "" {
+		// Much of the time is spent in the geometry library, and a goroutine that comes back from C must wait
+		// for a place to run. With two places for each core the cores are kept busy.
+		runtime.GOMAXPROCS(2 * runtime.GOMAXPROCS(0))
+	}
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	defer stop()
 	context.AfterFunc(ctx, stop) // a second interrupt ends the program at once
