@@ -12,6 +12,7 @@ import (
 	"strings"
 	"testing"
 
+	"groundtally/geo"
 	"groundtally/scoring"
 )
 
@@ -237,5 +238,16 @@ func TestSentenceFillsItsArguments(t *testing.T) {
 	}
 	if got := Sentence("a_code_of_tomorrow", map[string]string{"b": "2", "a": "1"}); got != "a code of tomorrow; a 1; b 2" {
 		t.Errorf("a code without a text reads %q", got)
+	}
+}
+
+func TestNoticesPlaceWithoutSigns(t *testing.T) {
+	got := Notice(geo.Notice{Code: "no_geometry", Feature: "7", At: &geo.LonLat{Lon: -27.0737, Lat: 47.45733}})
+	if !strings.Contains(got, "near 47.45733 N, 27.07370 W:") {
+		t.Errorf("the notice says %q", got)
+	}
+	got = Notice(geo.Notice{Code: "no_geometry", Feature: "7", At: &geo.LonLat{Lon: 18.5, Lat: -33.9}})
+	if !strings.Contains(got, "near 33.90000 S, 18.50000 E:") {
+		t.Errorf("the notice says %q", got)
 	}
 }

@@ -2,6 +2,7 @@ package present
 
 import (
 	"fmt"
+	"math"
 	"sort"
 	"strings"
 
@@ -107,7 +108,7 @@ func Notice(n geo.Notice) string {
 		where = append(where, fmt.Sprintf("line %d", n.Line))
 	}
 	if n.At != nil {
-		where = append(where, fmt.Sprintf("near %.5f E, %.5f N", n.At.Lon, n.At.Lat))
+		where = append(where, "near "+place(*n.At))
 	}
 	text := Sentence(n.Code, n.Args)
 	if len(where) == 0 {
@@ -136,4 +137,16 @@ func Sentence(code string, args map[string]string) string {
 		s = strings.ReplaceAll(s, "{"+k+"}", v)
 	}
 	return s
+}
+
+// place writes a position with the letters of its half of the world in place of signs.
+func place(p geo.LonLat) string {
+	lat, lon := "N", "E"
+	if p.Lat < 0 {
+		lat = "S"
+	}
+	if p.Lon < 0 {
+		lon = "W"
+	}
+	return fmt.Sprintf("%.5f %s, %.5f %s", math.Abs(p.Lat), lat, math.Abs(p.Lon), lon)
 }

@@ -203,7 +203,7 @@ func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerReco
 		version = Version{Digest: BlobDigest(in.Media, in.Blob), Blob: in.Blob, Media: in.Media}
 		rec.Kind, rec.Media, rec.Count = "raster", in.Media, 1
 	} else {
-		layer, frame, err := s.prepare(&rec, in, role, snap, tools)
+		layer, frame, err := s.prepare(ctx, &rec, in, role, snap, tools)
 		if err != nil {
 			return LayerRecord{}, err
 		}
@@ -255,7 +255,7 @@ func ext(name string) string {
 
 // prepare brings the coordinates to WGS 84, matches fields, checks and repairs the features. It
 // returns the frame centre when this import fixes it.
-func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, tools Tools) (*geo.Layer, *geo.LonLat, error) {
+func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role Role, snap *Snapshot, tools Tools) (*geo.Layer, *geo.LonLat, error) {
 	if len(in.Layer.Features) == 0 {
 		return nil, nil, &FileError{File: in.File, What: "the layer holds no feature", Cure: "Check that the export was not filtered to nothing"}
 	}
@@ -314,6 +314,9 @@ func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, 
 	}
 	rec.Pipeline = pipeline
 	for i := range layer.Features {
+		if err := ctx.Err(); err != nil {
+			return nil, nil, err
+		}
 		var bad error
 		layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat {
 			q, err := transform(p)
@@ -355,7 +358,7 @@ func (s *Study) prepare(rec *LayerRecord, in Import, role Role, snap *Snapshot, 
 			fixed = &c
 		}
 	}
-	if err := s.checkFeatures(rec, in, role, layer, *centre, tools); err != nil {
+	if err := s.checkFeatures(ctx, rec, in, role, layer, *centre, tools); err != nil {
 		return nil, nil, err
 	}
 	rec.Count = len(layer.Features)
@@ -564,7 +567,7 @@ func deg(x float64) string { return strconv.FormatFloat(x, 'f', 4, 64) }
 
 // checkFeatures drops features that cannot serve (each with a notice), repairs polygons, finds
 // duplicates and missing values, and gives parcels their identifiers.
-func (s *Study) checkFeatures(rec *LayerRecord, in Import, role Role, layer *geo.Layer, centre geo.LonLat, tools Tools) error {
+func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, role Role, layer *geo.Layer, centre geo.LonLat, tools Tools) error {
 	forward, inverse, err := tools.Frame(centre)
 	if err != nil {
 		return fmt.Errorf("%s: %w", in.File, err)
@@ -594,6 +597,9 @@ func (s *Study) checkFeatures(rec *LayerRecord, in Import, role Role, layer *geo
 	kinds := map[string]int{}
 	kept := layer.Features[:0:0]
 	for _, f := range layer.Features {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
 		if idColumn >= 0 && f.Values[idColumn].Kind != geo.Null {
 			f.ID = f.Values[idColumn].String()
 		}
@@ -643,14 +649,14 @@ func (s *Study) checkFeatures(rec *LayerRecord, in Import, role Role, layer *geo
 			}
 			seenShape[shape] = f.ID
 		}
-		if n := seenID[f.ID]; n > 0 {
-			old := f.ID
-			f.ID = fmt.Sprintf("%s (%d)", old, n+1)
+		if old := f.ID; seenID[old] > 0 {
+			for seenID[f.ID] > 0 { // the name made here may be another feature's own
+				seenID[old]++
+				f.ID = fmt.Sprintf("%s (%d)", old, seenID[old])
+			}
 			note(geo.Notice{Code: "same_identifier", Severity: geo.Warning, Feature: old, At: &at, Args: map[string]string{"now": f.ID}})
-			seenID[old]++
-		} else {
-			seenID[f.ID] = 1
 		}
+		seenID[f.ID] = 1
 		for _, name := range fieldNames {
 			if v := f.Values[required[name]]; v.Kind == geo.Null || (v.Kind == geo.Text && strings.TrimSpace(v.Text) == "") {
 				note(geo.Notice{Code: "missing_value", Severity: geo.Warning, Feature: f.ID, Field: name, At: &at})

@@ -228,6 +228,63 @@ func TestAddLeavesNothingOutInSilence(t *testing.T) {
 	}
 }
 
+func TestNoTwoFeaturesShareAnIdentifier(t *testing.T) {
+	s := open(t)
+	var list []geo.Feature
+	for i, id := range []string{"A", "A (2)", "A", "A", "A (3)"} {
+		list = append(list, geo.Feature{ID: id, Geometry: square(27+float64(i)/50, 47, 0.01), Values: []geo.Value{geo.TextValue(id)}})
+	}
+	rec, err := s.AddLayer(context.Background(), parcels([]geo.Column{{Name: "parcel_id"}}, list...), plain{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	v, _, err := s.Store().Version(context.Background(), rec.Digest)
+	if err != nil {
+		t.Fatal(err)
+	}
+	seen := map[string]bool{}
+	for _, f := range v.Layer.Features {
+		if seen[f.ID] {
+			t.Errorf("two features are called %q", f.ID)
+		}
+		seen[f.ID] = true
+	}
+	if !seen["A"] || !seen["A (2)"] || len(seen) != 5 {
+		t.Errorf("the features are called %v; the first of a name keeps it", seen)
+	}
+}
+
+func TestAddIsStopped(t *testing.T) {
+	s := open(t)
+	ctx, stop := context.WithCancel(context.Background())
+	tools := stopping{stop: stop}
+	in := parcels([]geo.Column{{Name: "parcel_id"}},
+		geo.Feature{ID: "1", Geometry: square(27, 47, 0.01), Values: []geo.Value{geo.TextValue("A")}},
+		geo.Feature{ID: "2", Geometry: square(27.02, 47, 0.01), Values: []geo.Value{geo.TextValue("B")}})
+	if _, err := s.AddLayer(ctx, in, &tools); !errors.Is(err, context.Canceled) {
+		t.Fatalf("got %v, want a stop", err)
+	}
+	if tools.repairs != 1 {
+		t.Errorf("%d features were worked on; the stop came with the first", tools.repairs)
+	}
+	if len(s.Journal()) != 0 {
+		t.Error("a stopped import left a change")
+	}
+}
+
+// stopping is stopped by the user while it looks at the first feature.
+type stopping struct {
+	plain
+	stop    func()
+	repairs int
+}
+
+func (s *stopping) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
+	s.repairs++
+	s.stop()
+	return s.plain.Repair(g)
+}
+
 func TestGroups(t *testing.T) {
 	ctx := context.Background()
 	s := open(t)
