@@ -3,6 +3,7 @@ package run
 import (
 	"fmt"
 	"io/fs"
+	"regexp"
 	"sort"
 	"strings"
 
@@ -365,4 +366,23 @@ func (p *Params) Memory() []string {
 	}
 	sort.Strings(out)
 	return out
+}
+
+// keyInText is the form of a consequence key within a sentence.
+var keyInText = regexp.MustCompile(`[a-z0-9]+(_[a-z0-9]+)+`)
+
+// titled gives a function that puts the titles of consequences in place of their keys.
+func (p *Params) titled() func(text string) string {
+	titles := map[string]string{}
+	for _, k := range p.Keys() {
+		titles[k.Key] = k.Title
+	}
+	return func(text string) string {
+		return keyInText.ReplaceAllStringFunc(text, func(key string) string {
+			if title := titles[key]; title != "" {
+				return "'" + title + "'"
+			}
+			return key
+		})
+	}
 }
