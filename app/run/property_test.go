@@ -61,10 +61,22 @@ func addFarParcel(ctx context.Context, s *study.Study) error {
 // TestEditsAndUndosEqualAFreshRun is the property that stored results may never show: after any edits,
 // undos and redos, results equal a run from nothing, bit for bit.
 func TestEditsAndUndosEqualAFreshRun(t *testing.T) {
+	steps := 37
+	if testing.Short() {
+		steps = 7
+	}
+	if checks := editsAndUndos(t, smallStudy(t, 60), 7, func(step int) bool { return step < steps }); checks < 3 {
+		t.Fatalf("only %d states were compared", checks)
+	}
+}
+
+// editsAndUndos edits, takes back and brings back by chance, as long as it is told to go on, and compares
+// after every second step. It gives how many states were compared.
+func editsAndUndos(t *testing.T, s *study.Study, seed uint64, goOn func(step int) bool) (checks int) {
+	t.Helper()
 	ctx := context.Background()
-	s := smallStudy(t, 60)
 	cache := &Memory{}
-	rng := rand.New(rand.NewPCG(7, 11))
+	rng := rand.New(rand.NewPCG(seed, 11))
 	settings := []struct {
 		key    string
 		values []string
@@ -94,11 +106,7 @@ func TestEditsAndUndosEqualAFreshRun(t *testing.T) {
 		{"energy.household_mwh_per_yr", []string{"3.5", "not set"}},
 	}
 	layers := []string{"Peat depth", "Flood areas", "Land cover", "Power lines", "Ground heights", "Wind grid", "Soils"}
-	steps, checks := 36, 0
-	if testing.Short() {
-		steps = 6
-	}
-	for step := range steps {
+	for step := 0; goOn(step); step++ {
 		what := ""
 		switch n := rng.IntN(10); {
 		case n < 6:
@@ -144,7 +152,7 @@ func TestEditsAndUndosEqualAFreshRun(t *testing.T) {
 				continue
 			}
 		}
-		if step%2 == 1 && step != steps-1 {
+		if step%2 == 1 {
 			continue // results are compared after one or two edits, so that steps pile up
 		}
 		kept := compute(t, s, cache, 2)
@@ -155,9 +163,7 @@ func TestEditsAndUndosEqualAFreshRun(t *testing.T) {
 			t.Fatalf("after step %d (%s) stored results differ from a fresh run: %+v", step, what, d)
 		}
 	}
-	if checks < 3 {
-		t.Fatalf("only %d states were compared", checks)
-	}
+	return checks
 }
 
 func TestOneCoreOrMany(t *testing.T) {
@@ -219,10 +225,19 @@ func TestOnlyWhatChangedIsComputedAgain(t *testing.T) {
 	}
 }
 
-// TestResultsHold checks what must be true of every candidate, whatever the data.
 func TestResultsHold(t *testing.T) {
-	s := smallStudy(t, 12)
-	r := compute(t, s, nil, 2)
+	states := holds(t, compute(t, smallStudy(t, 12), nil, 2))
+	for _, st := range []scoring.State{scoring.Number, scoring.NotAssessed, scoring.None, scoring.NotSet} {
+		if states[st] == 0 {
+			t.Errorf("no consequence is %v: the states are not exercised", st)
+		}
+	}
+}
+
+// holds checks what must be true of every candidate, whatever the data, and counts the states of their
+// consequences.
+func holds(t *testing.T, r *Results) map[scoring.State]int {
+	t.Helper()
 	p := shipped(t)
 	states := map[scoring.State]int{}
 	for i := range r.Candidates {
@@ -266,11 +281,6 @@ func TestResultsHold(t *testing.T) {
 			t.Errorf("%s: returns %v, %v, %v do not fall as more is counted", c.ID(), b1.Central, b2.Central, b3.Central)
 		}
 	}
-	for _, st := range []scoring.State{scoring.Number, scoring.NotAssessed, scoring.None, scoring.NotSet} {
-		if states[st] == 0 {
-			t.Errorf("no consequence is %v: the states are not exercised", st)
-		}
-	}
 	for _, v := range r.Voices {
 		at := map[string]Row{}
 		for i, row := range v.Order {
@@ -296,6 +306,7 @@ func TestResultsHold(t *testing.T) {
 			}
 		}
 	}
+	return states
 }
 
 func TestMissingLayersAreUnknownAndNeverZero(t *testing.T) {
