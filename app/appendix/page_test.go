@@ -21,32 +21,9 @@ import (
 	"groundtally/app/study/studytest"
 	"groundtally/assets"
 	"groundtally/geo"
-	"groundtally/geo/crs"
-	"groundtally/geo/overlay"
 	"groundtally/sampledata"
 	"groundtally/scoring"
 )
-
-// tools are the geometry services of an import.
-type tools struct{ e *overlay.Engine }
-
-func (t tools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
-	tr, err := crs.NewTransform(code)
-	if err != nil {
-		return nil, "", err
-	}
-	return func(p geo.LonLat) (geo.LonLat, error) { return tr.Forward(p.Lon, p.Lat) }, tr.Code(), nil
-}
-
-func (t tools) Frame(c geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error), func(geo.XYGeometry) (geo.LonLatGeometry, error), error) {
-	f, err := crs.NewFrame(c)
-	return f.Project, f.Unproject, err
-}
-
-func (t tools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
-	out, rep, err := t.e.Repair(g)
-	return out, rep.Changed, rep.BeforeM2, rep.AfterM2, err
-}
 
 const (
 	ownerName  = "Ottilie Quellmark"
@@ -70,8 +47,8 @@ var made = sync.OnceValues(func() (appendix.Input, error) {
 	if err != nil {
 		return none, err
 	}
-	e := overlay.New()
-	defer e.Close()
+	tools, done := files.NewTools()
+	defer done()
 	read := func(ctx context.Context, fsys fs.FS, name string) (study.Import, error) {
 		in, err := files.ImportFS(ctx, fsys, name)
 		if err == nil && name == "parcels.geojson" {
@@ -79,7 +56,7 @@ var made = sync.OnceValues(func() (appendix.Input, error) {
 		}
 		return in, err
 	}
-	if err := s.LoadSample(ctx, sampledata.FS(), read, tools{e}, func(study.LayerRecord) {}); err != nil {
+	if err := s.LoadSample(ctx, sampledata.FS(), read, tools, func(study.LayerRecord) {}); err != nil {
 		return none, err
 	}
 	if _, err := s.Set(ctx, "set", "to see marks", study.SettingEdit{Key: "limit.connection_km", Value: "0.3"}, study.SettingEdit{Key: "study.name", Value: markupText}, study.SettingEdit{Key: "plant.wind.title", Value: markupText}, study.SettingEdit{Key: "run.trials", Value: "50"}); err != nil {

@@ -14,7 +14,6 @@ import (
 	"groundtally/app/study"
 	"groundtally/app/study/studytest"
 	"groundtally/geo"
-	"groundtally/geo/overlay"
 	"groundtally/sampledata"
 	"groundtally/scoring"
 )
@@ -27,8 +26,8 @@ func smallStudy(t testing.TB, every int) *study.Study {
 	if err != nil {
 		t.Fatal(err)
 	}
-	e := overlay.New()
-	defer e.Close()
+	tools, done := files.NewTools()
+	defer done()
 	read := func(ctx context.Context, fsys fs.FS, name string) (study.Import, error) {
 		in, err := files.ImportFS(ctx, fsys, name)
 		if err == nil && name == "parcels.geojson" {
@@ -42,7 +41,7 @@ func smallStudy(t testing.TB, every int) *study.Study {
 		}
 		return in, err
 	}
-	if err := s.LoadSample(context.Background(), sampledata.FS(), read, testTools{e}, func(study.LayerRecord) {}); err != nil {
+	if err := s.LoadSample(context.Background(), sampledata.FS(), read, tools, func(study.LayerRecord) {}); err != nil {
 		t.Fatal(err)
 	}
 	return s
@@ -50,11 +49,11 @@ func smallStudy(t testing.TB, every int) *study.Study {
 
 // addFarParcel adds a layer with one parcel at the island's edge, which widens the district's box.
 func addFarParcel(ctx context.Context, s *study.Study) error {
-	e := overlay.New()
-	defer e.Close()
+	tools, done := files.NewTools()
+	defer done()
 	ring := []geo.LonLat{{Lon: -27.35, Lat: 47.52}, {Lon: -27.345, Lat: 47.52}, {Lon: -27.345, Lat: 47.524}, {Lon: -27.35, Lat: 47.524}, {Lon: -27.35, Lat: 47.52}}
 	l := &geo.Layer{Columns: []geo.Column{{Name: "parcel_id"}}, Features: []geo.Feature{{ID: "1", Geometry: geo.LonLatGeometry{Kind: geo.Polygons, Parts: [][][]geo.LonLat{{ring}}}, Values: []geo.Value{geo.TextValue("FAR-1")}}}}
-	_, err := s.AddLayer(ctx, study.Import{File: "far.geojson", Base: "far.geojson", Layer: l, Role: "parcels", Name: "Far parcel", Ledger: study.Ledger{Read: 1}}, testTools{e})
+	_, err := s.AddLayer(ctx, study.Import{File: "far.geojson", Base: "far.geojson", Layer: l, Role: "parcels", Name: "Far parcel", Ledger: study.Ledger{Read: 1}}, tools)
 	return err
 }
 
@@ -419,9 +418,9 @@ func TestMissingPeatDepthIsUnknown(t *testing.T) {
 	for i := range blank.Features {
 		blank.Features[i].Values = make([]geo.Value, len(blank.Columns))
 	}
-	e := overlay.New()
-	defer e.Close()
-	if _, err := s.AddLayer(ctx, study.Import{File: "peat.geojson", Base: "peat.geojson", Layer: &blank, Role: "peat", Replace: rec.Name, AcceptProposals: true, Complete: true}, testTools{e}); err != nil {
+	tools, done := files.NewTools()
+	defer done()
+	if _, err := s.AddLayer(ctx, study.Import{File: "peat.geojson", Base: "peat.geojson", Layer: &blank, Role: "peat", Replace: rec.Name, AcceptProposals: true, Complete: true}, tools); err != nil {
 		t.Fatal(err)
 	}
 	r := compute(t, s, nil, 2)

@@ -10,32 +10,8 @@ import (
 	"groundtally/app/study"
 	"groundtally/app/study/studytest"
 	"groundtally/assets"
-	"groundtally/geo"
-	"groundtally/geo/crs"
-	"groundtally/geo/overlay"
 	"groundtally/sampledata"
 )
-
-// testTools are the geometry services of an import, as the programs wire them.
-type testTools struct{ e *overlay.Engine }
-
-func (t testTools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
-	tr, err := crs.NewTransform(code)
-	if err != nil {
-		return nil, "", err
-	}
-	return func(p geo.LonLat) (geo.LonLat, error) { return tr.Forward(p.Lon, p.Lat) }, tr.Code(), nil
-}
-
-func (t testTools) Frame(c geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error), func(geo.XYGeometry) (geo.LonLatGeometry, error), error) {
-	f, err := crs.NewFrame(c)
-	return f.Project, f.Unproject, err
-}
-
-func (t testTools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
-	out, rep, err := t.e.Repair(g)
-	return out, rep.Changed, rep.BeforeM2, rep.AfterM2, err
-}
 
 var loaded = sync.OnceValues(func() (*Params, error) {
 	cat, err := study.LoadCatalog(assets.FS())
@@ -65,9 +41,9 @@ func sampleStudy(t testing.TB) *study.Study {
 	if err != nil {
 		t.Fatal(err)
 	}
-	e := overlay.New()
-	defer e.Close()
-	if err := s.LoadSample(context.Background(), sampledata.FS(), files.ImportFS, testTools{e}, func(study.LayerRecord) {}); err != nil {
+	tools, done := files.NewTools()
+	defer done()
+	if err := s.LoadSample(context.Background(), sampledata.FS(), files.ImportFS, tools, func(study.LayerRecord) {}); err != nil {
 		t.Fatal(err)
 	}
 	return s

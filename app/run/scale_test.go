@@ -12,10 +12,10 @@ import (
 	"testing"
 	"time"
 
+	"groundtally/app/files"
 	"groundtally/app/study"
 	"groundtally/app/study/studytest"
 	"groundtally/geo"
-	"groundtally/geo/overlay"
 )
 
 // TestScaleDistrict computes an invented district of GROUNDTALLY_SCALE_PARCELS parcels (100,000 unless told
@@ -100,11 +100,11 @@ func wideDistrict(t *testing.T, parcels int) *study.Study {
 			lines = append(lines, across(len(lines), float64(y)+0.2, geo.NumberValue(33), geo.NumberValue(9000)))
 		}
 	}
-	e := overlay.New()
-	defer e.Close()
+	tools, done := files.NewTools()
+	defer done()
 	add := func(role string, columns []geo.Column, features []geo.Feature, units map[string]string) {
 		t.Helper()
-		_, err := s.AddLayer(ctx, study.Import{File: role, Base: role, Name: role, Role: role, Complete: role != "parcels", Layer: &geo.Layer{Columns: columns, Features: features}, Units: units, Ledger: study.Ledger{Read: len(features)}}, testTools{e})
+		_, err := s.AddLayer(ctx, study.Import{File: role, Base: role, Name: role, Role: role, Complete: role != "parcels", Layer: &geo.Layer{Columns: columns, Features: features}, Units: units, Ledger: study.Ledger{Read: len(features)}}, tools)
 		if err != nil {
 			t.Fatal(err)
 		}

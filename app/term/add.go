@@ -74,10 +74,7 @@ var verbAdd = verb{
 					}
 				}
 			}
-			tools, closeTools, err := c.Tools()
-			if err != nil {
-				return 0, err
-			}
+			tools, closeTools := c.Tools()
 			defer closeTools()
 			r, err := s.AddLayer(c.ctx, in, tools)
 			if err != nil {

@@ -25,7 +25,7 @@ type App struct {
 	Write    func(path string, data []byte) error // atomically
 	Catalog  *study.Catalog
 	Params   *run.Params
-	Tools    func() (study.Tools, func(), error)
+	Tools    func() (study.Tools, func())
 	Sample   func(ctx context.Context, s *study.Study, tools study.Tools, report func(study.LayerRecord)) error
 	Clock    func() time.Time
 	Who      string

@@ -29,10 +29,7 @@ var verbNew = verb{
 		}
 		layers := []study.LayerRecord{}
 		if c.args.has("sample") {
-			tools, closeTools, err := c.Tools()
-			if err != nil {
-				return 0, err
-			}
+			tools, closeTools := c.Tools()
 			defer closeTools()
 			err = c.Sample(c.ctx, s, tools, func(r study.LayerRecord) {
 				layers = append(layers, r)

@@ -49,7 +49,7 @@ func newBench(t *testing.T) *bench {
 				return err
 			})
 		},
-		Catalog: catalog, Params: params, Tools: NewTools,
+		Catalog: catalog, Params: params, Tools: files.NewTools,
 		Clock: func() time.Time { return time.Date(2025, 5, 3, 12, 0, 0, 0, time.UTC) }, Who: "tester", Version: "test",
 	}
 	return b

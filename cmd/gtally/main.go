@@ -61,7 +61,7 @@ func realMain() int {
 	app := &term.App{
 		Out: os.Stdout, Err: os.Stderr, Terminal: isTerminal(os.Stderr),
 		Create: store.Create, OpenFile: store.Open, ReadFile: files.Import, Write: write,
-		Catalog: catalog, Params: params, Tools: term.NewTools,
+		Catalog: catalog, Params: params, Tools: files.NewTools,
 		Sample: func(ctx context.Context, s *study.Study, tools study.Tools, report func(study.LayerRecord)) error {
 			return s.LoadSample(ctx, sampledata.FS(), files.ImportFS, tools, report)
 		},

@@ -1,4 +1,4 @@
-package term
+package files
 
 import (
 	"groundtally/app/study"
@@ -13,9 +13,9 @@ type tools struct {
 }
 
 // NewTools gives the geometry services of an import, to be closed after use.
-func NewTools() (study.Tools, func(), error) {
+func NewTools() (study.Tools, func()) {
 	t := &tools{engine: overlay.New()}
-	return t, func() { _ = t.engine.Close() }, nil // closing only frees memory
+	return t, func() { _ = t.engine.Close() } // closing only frees memory
 }
 
 func (t *tools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
