@@ -2,39 +2,19 @@ package climate
 
 import (
 	"errors"
-	"fmt"
 	"math"
 
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
 // ErrInput is wrapped by every error about a number outside its range.
-var ErrInput = errors.New("input outside its range")
-
-func bad(name string, v float64, want string) error {
-	return fmt.Errorf("%s is %v, want %s: %w", name, v, want, ErrInput)
-}
-
-func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
-
-func nonNegative(name string, v float64) error {
-	if !(v >= 0) || !finite(v) {
-		return bad(name, v, "0 or more")
-	}
-	return nil
-}
-
-func positive(name string, v float64) error {
-	if !(v > 0) || !finite(v) {
-		return bad(name, v, "above 0")
-	}
-	return nil
-}
+var ErrInput = bounds.ErrInput
 
 // CO2FromCarbonT turns carbon into carbon dioxide by 44/12, t CO2.
 func CO2FromCarbonT(carbonT float64) (float64, error) {
-	if !finite(carbonT) {
-		return 0, bad("carbon", carbonT, "a finite number")
+	if !bounds.Finite(carbonT) {
+		return 0, bounds.Error("carbon", carbonT, "a finite number")
 	}
 	return carbonT * units.CO2PerC, nil
 }
@@ -45,10 +25,10 @@ func CO2FromCarbonT(carbonT float64) (float64, error) {
 // G totalTCO2e, t CO2e, plant and land together, may be negative when gains are counted; E_del
 // deliveredMJ, MJ, above 0.
 func GPerKWh(totalTCO2e, deliveredMJ float64) (float64, error) {
-	if !finite(totalTCO2e) {
-		return 0, bad("greenhouse gas", totalTCO2e, "a finite number")
+	if !bounds.Finite(totalTCO2e) {
+		return 0, bounds.Error("greenhouse gas", totalTCO2e, "a finite number")
 	}
-	if err := positive("energy delivered", deliveredMJ); err != nil {
+	if err := bounds.Positive("energy delivered", deliveredMJ); err != nil {
 		return 0, err
 	}
 	return totalTCO2e * units.KgPerT * units.GPerKg / (deliveredMJ / units.MJPerKWh), nil
@@ -58,7 +38,7 @@ func GPerKWh(totalTCO2e, deliveredMJ float64) (float64, error) {
 //
 // g_lc gPerKWh of energy generated; E_gen generatedMJ.
 func LifeCycleT(gPerKWh, generatedMJ float64) (float64, error) {
-	if err := errors.Join(nonNegative("life-cycle figure", gPerKWh), nonNegative("energy generated", generatedMJ)); err != nil {
+	if err := errors.Join(bounds.NonNegative("life-cycle figure", gPerKWh), bounds.NonNegative("energy generated", generatedMJ)); err != nil {
 		return 0, err
 	}
 	return gPerKWh * (generatedMJ / units.MJPerKWh) / units.GPerKg / units.KgPerT, nil
@@ -70,7 +50,7 @@ func LifeCycleT(gPerKWh, generatedMJ float64) (float64, error) {
 // H irradiation, kWh/(m2 yr); PR performance ratio; T life, yr. It holds where the plant itself is alike.
 // Hsu et al. 2012, Kim et al. 2012.
 func RescaledSolarG(gRef, hRef, prRef, lifeRef, h, pr, life float64) (float64, error) {
-	if err := errors.Join(nonNegative("life-cycle figure", gRef), positive("reference irradiation", hRef), positive("reference performance ratio", prRef), positive("reference life", lifeRef), positive("irradiation", h), positive("performance ratio", pr), positive("life", life)); err != nil {
+	if err := errors.Join(bounds.NonNegative("life-cycle figure", gRef), bounds.Positive("reference irradiation", hRef), bounds.Positive("reference performance ratio", prRef), bounds.Positive("reference life", lifeRef), bounds.Positive("irradiation", h), bounds.Positive("performance ratio", pr), bounds.Positive("life", life)); err != nil {
 		return 0, err
 	}
 	return gRef * (hRef * prRef * lifeRef) / (h * pr * life), nil
@@ -80,7 +60,7 @@ func RescaledSolarG(gRef, hRef, prRef, lifeRef, h, pr, life float64) (float64, e
 //
 // CF capacity factor; T life, yr. Dolan & Heath 2012 harmonise to CF 0.30 and 20 yr.
 func RescaledWindG(gRef, cfRef, lifeRef, cf, life float64) (float64, error) {
-	if err := errors.Join(nonNegative("life-cycle figure", gRef), positive("reference capacity factor", cfRef), positive("reference life", lifeRef), positive("capacity factor", cf), positive("life", life)); err != nil {
+	if err := errors.Join(bounds.NonNegative("life-cycle figure", gRef), bounds.Positive("reference capacity factor", cfRef), bounds.Positive("reference life", lifeRef), bounds.Positive("capacity factor", cf), bounds.Positive("life", life)); err != nil {
 		return 0, err
 	}
 	return gRef * (cfRef * lifeRef) / (cf * life), nil
@@ -93,11 +73,11 @@ type Grid struct {
 }
 
 func (g Grid) check() error {
-	if err := nonNegative("grid factor", g.KgPerKWh); err != nil {
+	if err := bounds.NonNegative("grid factor", g.KgPerKWh); err != nil {
 		return err
 	}
 	if !(g.DeclinePerYr >= 0 && g.DeclinePerYr < 1) {
-		return bad("decline of the grid factor", g.DeclinePerYr, "0 to below 1")
+		return bounds.Error("decline of the grid factor", g.DeclinePerYr, "0 to below 1")
 	}
 	return nil
 }
@@ -109,11 +89,11 @@ func (g Grid) check() error {
 // E_1 firstYearKWh delivered, kWh; d degradationPerYr, 0 to below 1; EF_0, δ in grid. Years that are not
 // whole are interpolated by the closed form.
 func DisplacedT(firstYearKWh, degradationPerYr, years float64, grid Grid) (float64, error) {
-	if err := errors.Join(nonNegative("energy delivered", firstYearKWh), nonNegative("years", years), grid.check()); err != nil {
+	if err := errors.Join(bounds.NonNegative("energy delivered", firstYearKWh), bounds.NonNegative("years", years), grid.check()); err != nil {
 		return 0, err
 	}
 	if !(degradationPerYr >= 0 && degradationPerYr < 1) {
-		return 0, bad("degradation", degradationPerYr, "0 to below 1")
+		return 0, bounds.Error("degradation", degradationPerYr, "0 to below 1")
 	}
 	a := firstYearKWh * grid.KgPerKWh / units.KgPerT
 	lnq := math.Log1p(-degradationPerYr) + math.Log1p(-grid.DeclinePerYr)
@@ -141,10 +121,10 @@ func (p Payback) Within(lifeYr float64) bool { return !p.Never && p.Yr <= lifeYr
 // lifeYr above zero also gives never when the time is longer than the life, since a plant that is gone
 // displaces nothing; zero leaves the life out.
 func PaybackYears(causedTCO2e, firstYearKWh, degradationPerYr float64, grid Grid, lifeYr float64) (Payback, error) {
-	if !finite(causedTCO2e) {
-		return Payback{}, bad("greenhouse gas", causedTCO2e, "a finite number")
+	if !bounds.Finite(causedTCO2e) {
+		return Payback{}, bounds.Error("greenhouse gas", causedTCO2e, "a finite number")
 	}
-	if err := nonNegative("life", lifeYr); err != nil {
+	if err := bounds.NonNegative("life", lifeYr); err != nil {
 		return Payback{}, err
 	}
 	a, err := DisplacedT(firstYearKWh, degradationPerYr, 1, grid)
@@ -163,7 +143,7 @@ func PaybackYears(causedTCO2e, firstYearKWh, degradationPerYr float64, grid Grid
 	if lnq != 0 {
 		n = math.Log1p(-left/a) / lnq
 	}
-	if !finite(n) || (lifeYr > 0 && n > lifeYr) {
+	if !bounds.Finite(n) || (lifeYr > 0 && n > lifeYr) {
 		return Payback{Never: true}, nil
 	}
 	return Payback{Yr: n}, nil

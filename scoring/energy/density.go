@@ -2,6 +2,7 @@ package energy
 
 import (
 	"fmt"
+	"groundtally/scoring/bounds"
 	"slices"
 )
 
@@ -34,17 +35,17 @@ func FindDensityOptima(points []DensityPoint, inputWeight float64) (DensityOptim
 	if len(points) < 3 {
 		return DensityOptima{}, fmt.Errorf("%d layouts, want 3 or more: %w", len(points), ErrInput)
 	}
-	if !(inputWeight > 0) || !finite(inputWeight) {
-		return DensityOptima{}, bad("weight of the input", inputWeight, "above 0")
+	if !(inputWeight > 0) || !bounds.Finite(inputWeight) {
+		return DensityOptima{}, bounds.Error("weight of the input", inputWeight, "above 0")
 	}
 	n := make([]float64, len(points))
 	ret, net, en := slices.Clone(n), slices.Clone(n), slices.Clone(n)
 	for i, p := range points {
-		if !finite(p.UnitsPerHa) || !finite(p.EnergyMJPerHa) || !finite(p.InputMJPerHa) || !(p.InputMJPerHa > 0) {
-			return DensityOptima{}, fmt.Errorf("layout %d: %w", i, bad("input", p.InputMJPerHa, "finite numbers and input above 0"))
+		if !bounds.Finite(p.UnitsPerHa) || !bounds.Finite(p.EnergyMJPerHa) || !bounds.Finite(p.InputMJPerHa) || !(p.InputMJPerHa > 0) {
+			return DensityOptima{}, fmt.Errorf("layout %d: %w", i, bounds.Error("input", p.InputMJPerHa, "finite numbers and input above 0"))
 		}
 		if i > 0 && p.UnitsPerHa <= points[i-1].UnitsPerHa {
-			return DensityOptima{}, fmt.Errorf("layout %d: %w", i, bad("density", p.UnitsPerHa, "rising values"))
+			return DensityOptima{}, fmt.Errorf("layout %d: %w", i, bounds.Error("density", p.UnitsPerHa, "rising values"))
 		}
 		n[i] = p.UnitsPerHa
 		ret[i] = p.EnergyMJPerHa / p.InputMJPerHa

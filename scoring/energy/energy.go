@@ -1,22 +1,16 @@
 package energy
 
 import (
-	"errors"
 	"fmt"
 	"math"
 
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/params"
 	"groundtally/scoring/units"
 )
 
 // ErrInput is wrapped by every error about a number outside its range.
-var ErrInput = errors.New("input outside its range")
-
-func bad(name string, v float64, want string) error {
-	return fmt.Errorf("%s is %v, want %s: %w", name, v, want, ErrInput)
-}
-
-func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
+var ErrInput = bounds.ErrInput
 
 // EffectiveYears is the life counted in years of first-year output.
 //
@@ -27,10 +21,10 @@ func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
 func EffectiveYears(degradationPerYr, lifeYr float64) (float64, error) {
 	d, T := degradationPerYr, lifeYr
 	if !(d >= 0 && d < 1) {
-		return 0, bad("degradation", d, "0 to below 1")
+		return 0, bounds.Error("degradation", d, "0 to below 1")
 	}
-	if !(T > 0) || !finite(T) {
-		return 0, bad("life", T, "above 0")
+	if !(T > 0) || !bounds.Finite(T) {
+		return 0, bounds.Error("life", T, "above 0")
 	}
 	if d == 0 {
 		return T, nil
@@ -46,11 +40,11 @@ func EffectiveYears(degradationPerYr, lifeYr float64) (float64, error) {
 // nothing. The rule of the IEA-PVPS Task 12 guidelines.
 func EffectiveYearsLinear(degradationPerYr, lifeYr float64) (float64, error) {
 	d, T := degradationPerYr, lifeYr
-	if !(T >= 1) || !finite(T) {
-		return 0, bad("life", T, "1 or more")
+	if !(T >= 1) || !bounds.Finite(T) {
+		return 0, bounds.Error("life", T, "1 or more")
 	}
 	if !(d >= 0 && d*(T-1) <= 1) {
-		return 0, bad("degradation", d, "0 to 1/(life−1)")
+		return 0, bounds.Error("degradation", d, "0 to 1/(life−1)")
 	}
 	return T - d*T*(T-1)/2, nil
 }
@@ -59,11 +53,11 @@ func EffectiveYearsLinear(degradationPerYr, lifeYr float64) (float64, error) {
 //
 // Y1 firstYearKWh, kWh/yr; D effectiveYears, yr.
 func GeneratedMJ(firstYearKWh, effectiveYears float64) (float64, error) {
-	if !(firstYearKWh >= 0) || !finite(firstYearKWh) {
-		return 0, bad("first-year yield", firstYearKWh, "0 or more")
+	if !(firstYearKWh >= 0) || !bounds.Finite(firstYearKWh) {
+		return 0, bounds.Error("first-year yield", firstYearKWh, "0 or more")
 	}
-	if !(effectiveYears > 0) || !finite(effectiveYears) {
-		return 0, bad("effective years", effectiveYears, "above 0")
+	if !(effectiveYears > 0) || !bounds.Finite(effectiveYears) {
+		return 0, bounds.Error("effective years", effectiveYears, "above 0")
 	}
 	return units.MJPerKWh * firstYearKWh * effectiveYears, nil
 }
@@ -75,13 +69,13 @@ func GeneratedMJ(firstYearKWh, effectiveYears float64) (float64, error) {
 // gives.
 func DeliveredMJ(generatedMJ, lossFrac, auxiliaryMJ float64) (float64, error) {
 	if !(lossFrac >= 0 && lossFrac <= 1) {
-		return 0, bad("loss", lossFrac, "0 to 1")
+		return 0, bounds.Error("loss", lossFrac, "0 to 1")
 	}
-	if !(generatedMJ >= 0) || !finite(generatedMJ) {
-		return 0, bad("generated energy", generatedMJ, "0 or more")
+	if !(generatedMJ >= 0) || !bounds.Finite(generatedMJ) {
+		return 0, bounds.Error("generated energy", generatedMJ, "0 or more")
 	}
-	if !(auxiliaryMJ >= 0) || !finite(auxiliaryMJ) {
-		return 0, bad("auxiliary energy", auxiliaryMJ, "0 or more")
+	if !(auxiliaryMJ >= 0) || !bounds.Finite(auxiliaryMJ) {
+		return 0, bounds.Error("auxiliary energy", auxiliaryMJ, "0 or more")
 	}
 	return float64((1-lossFrac)*generatedMJ) - auxiliaryMJ, nil
 }
@@ -103,8 +97,8 @@ type Inputs struct {
 func Sum(inputs []Input) (Inputs, error) {
 	var own [3]float64
 	for _, in := range inputs {
-		if !(in.MJ >= 0) || !finite(in.MJ) {
-			return Inputs{}, fmt.Errorf("input %s: %w", in.ItemID, bad("energy", in.MJ, "0 or more"))
+		if !(in.MJ >= 0) || !bounds.Finite(in.MJ) {
+			return Inputs{}, fmt.Errorf("input %s: %w", in.ItemID, bounds.Error("energy", in.MJ, "0 or more"))
 		}
 		switch in.Boundary {
 		case params.Generation:
@@ -156,12 +150,12 @@ func (b Balance) EROI(at params.Boundary) (float64, error) {
 	if err != nil {
 		return 0, err
 	}
-	if !(I > 0) || !finite(I) {
-		return 0, bad("energy spent", I, "above 0")
+	if !(I > 0) || !bounds.Finite(I) {
+		return 0, bounds.Error("energy spent", I, "above 0")
 	}
 	E := b.Out(at)
-	if !finite(E) {
-		return 0, bad("energy given", E, "a finite number")
+	if !bounds.Finite(E) {
+		return 0, bounds.Error("energy given", E, "a finite number")
 	}
 	return E / I, nil
 }
@@ -187,11 +181,11 @@ func (b Balance) EROIPrimary(at params.Boundary, gridEfficiency float64) (float6
 // is shown beside EROI, never in its place. Its relatives are the returns with environmental inputs of
 // Murphy et al. 2011, Guzmán & González de Molina 2015 and Tello et al. 2015.
 func (b Balance) EROIStock(soilMJ, biomassMJ float64) (float64, error) {
-	if !(soilMJ >= 0) || !finite(soilMJ) {
-		return 0, bad("energy content of soil", soilMJ, "0 or more")
+	if !(soilMJ >= 0) || !bounds.Finite(soilMJ) {
+		return 0, bounds.Error("energy content of soil", soilMJ, "0 or more")
 	}
-	if !(biomassMJ >= 0) || !finite(biomassMJ) {
-		return 0, bad("energy content of plants", biomassMJ, "0 or more")
+	if !(biomassMJ >= 0) || !bounds.Finite(biomassMJ) {
+		return 0, bounds.Error("energy content of plants", biomassMJ, "0 or more")
 	}
 	b.Inputs.B3MJ += soilMJ + biomassMJ
 	return b.EROI(params.Extended)
@@ -201,10 +195,10 @@ func (b Balance) EROIStock(soilMJ, biomassMJ float64) (float64, error) {
 // (E_soil + E_bio)/E_del.
 func (b Balance) Drawdown(soilMJ, biomassMJ float64) (float64, error) {
 	if !(b.DeliveredMJ > 0) {
-		return 0, bad("energy delivered", b.DeliveredMJ, "above 0")
+		return 0, bounds.Error("energy delivered", b.DeliveredMJ, "above 0")
 	}
-	if !(soilMJ >= 0 && biomassMJ >= 0) || !finite(soilMJ+biomassMJ) {
-		return 0, bad("energy content of stocks", soilMJ+biomassMJ, "0 or more")
+	if !(soilMJ >= 0 && biomassMJ >= 0) || !bounds.Finite(soilMJ+biomassMJ) {
+		return 0, bounds.Error("energy content of stocks", soilMJ+biomassMJ, "0 or more")
 	}
 	return (soilMJ + biomassMJ) / b.DeliveredMJ, nil
 }
@@ -250,7 +244,7 @@ func (b Balance) NetShare(at params.Boundary, c Currency, gridEfficiency float64
 		return 0, err
 	}
 	if !(out > 0) {
-		return 0, bad("energy given", out, "above 0")
+		return 0, bounds.Error("energy given", out, "above 0")
 	}
 	return 1 - in/out, nil
 }
@@ -260,8 +254,8 @@ func (b Balance) like(at params.Boundary, c Currency, eta float64) (out, in floa
 		return 0, 0, err
 	}
 	out = b.Out(at)
-	if !finite(out) || !finite(in) {
-		return 0, 0, bad("balance", out+in, "finite numbers")
+	if !bounds.Finite(out) || !bounds.Finite(in) {
+		return 0, 0, bounds.Error("balance", out+in, "finite numbers")
 	}
 	if c == AsAccounted {
 		return out, in, nil
@@ -280,15 +274,15 @@ func (b Balance) like(at params.Boundary, c Currency, eta float64) (out, in floa
 
 func efficiency(eta float64) error {
 	if !(eta > 0 && eta <= 1) {
-		return bad("grid efficiency", eta, "above 0 to 1")
+		return bounds.Error("grid efficiency", eta, "above 0 to 1")
 	}
 	return nil
 }
 
 // NetToGross is the share left of a return, NTG = 1 − 1/EROI, for an EROI above zero.
 func NetToGross(eroi float64) (float64, error) {
-	if !(eroi > 0) || !finite(eroi) {
-		return 0, bad("energy return", eroi, "above 0")
+	if !(eroi > 0) || !bounds.Finite(eroi) {
+		return 0, bounds.Error("energy return", eroi, "above 0")
 	}
 	return 1 - 1/eroi, nil
 }
@@ -311,21 +305,21 @@ func PaybackYears(capitalMJ, annualMJ, upkeepMJPerYr, gridEfficiency float64) (P
 	if err := efficiency(gridEfficiency); err != nil {
 		return Payback{}, err
 	}
-	if !(capitalMJ >= 0) || !finite(capitalMJ) {
-		return Payback{}, bad("energy of building", capitalMJ, "0 or more")
+	if !(capitalMJ >= 0) || !bounds.Finite(capitalMJ) {
+		return Payback{}, bounds.Error("energy of building", capitalMJ, "0 or more")
 	}
-	if !finite(annualMJ) {
-		return Payback{}, bad("yearly energy", annualMJ, "a finite number")
+	if !bounds.Finite(annualMJ) {
+		return Payback{}, bounds.Error("yearly energy", annualMJ, "a finite number")
 	}
-	if !(upkeepMJPerYr >= 0) || !finite(upkeepMJPerYr) {
-		return Payback{}, bad("upkeep", upkeepMJPerYr, "0 or more")
+	if !(upkeepMJPerYr >= 0) || !bounds.Finite(upkeepMJPerYr) {
+		return Payback{}, bounds.Error("upkeep", upkeepMJPerYr, "0 or more")
 	}
 	net := annualMJ/gridEfficiency - upkeepMJPerYr
 	if net <= 0 {
 		return Payback{Never: true}, nil
 	}
 	yr := capitalMJ / net
-	if !finite(yr) {
+	if !bounds.Finite(yr) {
 		return Payback{Never: true}, nil
 	}
 	return Payback{Yr: yr}, nil
@@ -341,8 +335,8 @@ func CapitalFromPayback(paybackYr, irradiationKWhPerM2, performanceRatio, gridEf
 		return 0, err
 	}
 	for _, v := range []float64{paybackYr, irradiationKWhPerM2, performanceRatio} {
-		if !(v > 0) || !finite(v) {
-			return 0, bad("payback, irradiation or performance ratio", v, "above 0")
+		if !(v > 0) || !bounds.Finite(v) {
+			return 0, bounds.Error("payback, irradiation or performance ratio", v, "above 0")
 		}
 	}
 	return paybackYr * irradiationKWhPerM2 * performanceRatio * units.MJPerKWh / gridEfficiency / units.MJPerGJ, nil
@@ -354,14 +348,14 @@ func CapitalFromPayback(paybackYr, irradiationKWhPerM2, performanceRatio, gridEf
 // E_del deliveredMJ; T lifeYr; A areaHa. State which area was taken: definitions explain most of the
 // spread between published figures (van Zalk & Behrens 2018).
 func PowerDensityWPerM2(deliveredMJ, lifeYr, areaHa float64) (float64, error) {
-	if !(lifeYr > 0) || !finite(lifeYr) {
-		return 0, bad("life", lifeYr, "above 0")
+	if !(lifeYr > 0) || !bounds.Finite(lifeYr) {
+		return 0, bounds.Error("life", lifeYr, "above 0")
 	}
-	if !(areaHa > 0) || !finite(areaHa) {
-		return 0, bad("area", areaHa, "above 0")
+	if !(areaHa > 0) || !bounds.Finite(areaHa) {
+		return 0, bounds.Error("area", areaHa, "above 0")
 	}
-	if !finite(deliveredMJ) {
-		return 0, bad("energy delivered", deliveredMJ, "a finite number")
+	if !bounds.Finite(deliveredMJ) {
+		return 0, bounds.Error("energy delivered", deliveredMJ, "a finite number")
 	}
 	return deliveredMJ * jPerMJ / (lifeYr * units.SecondsPerYear) / (areaHa * units.M2PerHa), nil
 }
@@ -373,11 +367,11 @@ const jPerMJ = 1e6
 //
 // r growthPerYr, 1/yr; EPBT paybackYr. Grimmer 1981; Dale & Benson 2013.
 func ReinvestedShare(growthPerYr, paybackYr float64) (float64, error) {
-	if !(growthPerYr >= 0) || !finite(growthPerYr) {
-		return 0, bad("growth", growthPerYr, "0 or more")
+	if !(growthPerYr >= 0) || !bounds.Finite(growthPerYr) {
+		return 0, bounds.Error("growth", growthPerYr, "0 or more")
 	}
-	if !(paybackYr >= 0) || !finite(paybackYr) {
-		return 0, bad("payback", paybackYr, "0 or more")
+	if !(paybackYr >= 0) || !bounds.Finite(paybackYr) {
+		return 0, bounds.Error("payback", paybackYr, "0 or more")
 	}
 	return growthPerYr * paybackYr, nil
 }
@@ -388,14 +382,14 @@ func ReinvestedShare(growthPerYr, paybackYr float64) (float64, error) {
 // E deliveredMWhPerYr; λ_dist distributionLossFrac, 0 to 1; ρ reboundFrac, the share of a saving that is
 // eaten by more use, 0 to below 1 (households 0.1 to 0.3, Sorrell et al. 2009).
 func SavingEquivalent(deliveredMWhPerYr, distributionLossFrac, reboundFrac float64) (float64, error) {
-	if !finite(deliveredMWhPerYr) || deliveredMWhPerYr < 0 {
-		return 0, bad("energy delivered", deliveredMWhPerYr, "0 or more")
+	if !bounds.Finite(deliveredMWhPerYr) || deliveredMWhPerYr < 0 {
+		return 0, bounds.Error("energy delivered", deliveredMWhPerYr, "0 or more")
 	}
 	if !(distributionLossFrac >= 0 && distributionLossFrac <= 1) {
-		return 0, bad("distribution loss", distributionLossFrac, "0 to 1")
+		return 0, bounds.Error("distribution loss", distributionLossFrac, "0 to 1")
 	}
 	if !(reboundFrac >= 0 && reboundFrac < 1) {
-		return 0, bad("rebound", reboundFrac, "0 to below 1")
+		return 0, bounds.Error("rebound", reboundFrac, "0 to below 1")
 	}
 	return deliveredMWhPerYr * (1 - distributionLossFrac) / (1 - reboundFrac), nil
 }
@@ -405,11 +399,11 @@ func SavingEquivalent(deliveredMWhPerYr, distributionLossFrac, reboundFrac float
 //
 // E deliveredKWhPerYr; P bodyW, W per person (100 W at rest).
 func HumanPersons(deliveredKWhPerYr, bodyW float64) (float64, error) {
-	if !finite(deliveredKWhPerYr) || deliveredKWhPerYr < 0 {
-		return 0, bad("energy delivered", deliveredKWhPerYr, "0 or more")
+	if !bounds.Finite(deliveredKWhPerYr) || deliveredKWhPerYr < 0 {
+		return 0, bounds.Error("energy delivered", deliveredKWhPerYr, "0 or more")
 	}
-	if !(bodyW > 0) || !finite(bodyW) {
-		return 0, bad("body power", bodyW, "above 0")
+	if !(bodyW > 0) || !bounds.Finite(bodyW) {
+		return 0, bounds.Error("body power", bodyW, "above 0")
 	}
 	return deliveredKWhPerYr / (bodyW / units.WPerKW * units.HoursPerYear), nil
 }
@@ -425,8 +419,8 @@ type Mass struct {
 func EmbodiedMJ(bill []Mass) (float64, error) {
 	var sum float64
 	for _, m := range bill {
-		if !(m.Kg >= 0) || !finite(m.Kg) || !(m.MJPerKg >= 0) || !finite(m.MJPerKg) {
-			return 0, fmt.Errorf("material %s: %w", m.Material, bad("mass or factor", math.Min(m.Kg, m.MJPerKg), "0 or more"))
+		if !(m.Kg >= 0) || !bounds.Finite(m.Kg) || !(m.MJPerKg >= 0) || !bounds.Finite(m.MJPerKg) {
+			return 0, fmt.Errorf("material %s: %w", m.Material, bounds.Error("mass or factor", math.Min(m.Kg, m.MJPerKg), "0 or more"))
 		}
 		sum += float64(m.Kg * m.MJPerKg)
 	}

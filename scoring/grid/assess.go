@@ -6,6 +6,7 @@ import (
 	"math"
 	"strings"
 
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
@@ -222,9 +223,9 @@ func (m *Model) Assess(in AssessInput) (Assessment, error) {
 }
 
 func (in AssessInput) check() error {
-	err := errors.Join(positive("plant power", in.PlantKW), nonNegative("distance", in.StraightM))
+	err := errors.Join(bounds.Positive("plant power", in.PlantKW), bounds.NonNegative("distance", in.StraightM))
 	if !(in.LoadFactor > 0 && in.LoadFactor <= 1) {
-		err = errors.Join(err, bad("load factor", in.LoadFactor, "above 0 to 1"))
+		err = errors.Join(err, bounds.Error("load factor", in.LoadFactor, "above 0 to 1"))
 	}
 	switch in.Kind {
 	case Substation, Line, TransformerStation:
@@ -240,18 +241,18 @@ func (in AssessInput) check() error {
 		name string
 		n    Number
 		f    func(string, float64) error
-	}{{"voltage", in.VoltageKV, positive}, {"spare capacity", in.Spare, nonNegative}, {"age of the spare capacity", in.SpareAge, nonNegative},
-		{"short-circuit power", in.ShortCircuitMVA, positive}, {"X over R", in.XOverR, nonNegative}, {"route", in.RoutedM, nonNegative},
-		{"loss load factor", in.LossLoad, unitShare}, {"rise limit", in.RiseLimit, positive}, {"derating", in.Derating, positive}} {
+	}{{"voltage", in.VoltageKV, bounds.Positive}, {"spare capacity", in.Spare, bounds.NonNegative}, {"age of the spare capacity", in.SpareAge, bounds.NonNegative},
+		{"short-circuit power", in.ShortCircuitMVA, bounds.Positive}, {"X over R", in.XOverR, bounds.NonNegative}, {"route", in.RoutedM, bounds.NonNegative},
+		{"loss load factor", in.LossLoad, unitShare}, {"rise limit", in.RiseLimit, bounds.Positive}, {"derating", in.Derating, bounds.Positive}} {
 		if n.n.Known {
 			err = errors.Join(err, n.f(n.name, n.n.Value))
 		}
 	}
 	if in.LossLoad.Known && (in.LossLoad.Value > in.LoadFactor*(1+1e-9) || in.LossLoad.Value < in.LoadFactor*in.LoadFactor*(1-1e-9)) {
-		err = errors.Join(err, bad("loss load factor", in.LossLoad.Value, "between LF squared and LF"))
+		err = errors.Join(err, bounds.Error("loss load factor", in.LossLoad.Value, "between LF squared and LF"))
 	}
 	if in.MaxCircuits < 0 {
-		err = errors.Join(err, bad("most circuits", float64(in.MaxCircuits), "0 or more"))
+		err = errors.Join(err, bounds.Error("most circuits", float64(in.MaxCircuits), "0 or more"))
 	}
 	return err
 }
@@ -259,13 +260,13 @@ func (in AssessInput) check() error {
 // Route gives the ground length, km, of a connection by the model's detour rule.
 func (m *Model) Route(straightM float64, routedM Number) (Range, error) {
 	if routedM.Known {
-		if err := nonNegative("route", routedM.Value); err != nil {
+		if err := bounds.NonNegative("route", routedM.Value); err != nil {
 			return Range{}, err
 		}
 		km := routedM.Value / units.MPerKm
 		return Range{km, km, km}, nil
 	}
-	if err := nonNegative("distance", straightM); err != nil {
+	if err := bounds.NonNegative("distance", straightM); err != nil {
 		return Range{}, err
 	}
 	// The extra stays constant beyond the short distance so that a longer way never gets a shorter route.

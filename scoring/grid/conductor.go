@@ -7,6 +7,7 @@ import (
 	"slices"
 
 	"groundtally/assets/citedtable"
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
@@ -117,11 +118,11 @@ func ResistanceAt(r20OhmPerKm float64, m Material, thetaC float64) (float64, err
 	if err != nil {
 		return 0, err
 	}
-	if err := positive("resistance", r20OhmPerKm); err != nil {
+	if err := bounds.Positive("resistance", r20OhmPerKm); err != nil {
 		return 0, err
 	}
 	if !(thetaC >= -60 && thetaC <= 250) {
-		return 0, bad("conductor temperature", thetaC, "-60 to 250 °C")
+		return 0, bounds.Error("conductor temperature", thetaC, "-60 to 250 °C")
 	}
 	return r20OhmPerKm * (1 + float64(a*(thetaC-reference))), nil
 }
@@ -136,11 +137,11 @@ func (c Conductor) ResistanceOhmPerKm(thetaC float64) (float64, error) {
 //
 // For yearly losses I is the root mean square current. Above Iz the temperature exceeds θmax.
 func OperatingC(currentA, ratedA, ambientC, maxC float64) (float64, error) {
-	if err := errors.Join(nonNegative("current", currentA), positive("rating", ratedA)); err != nil {
+	if err := errors.Join(bounds.NonNegative("current", currentA), bounds.Positive("rating", ratedA)); err != nil {
 		return 0, err
 	}
-	if !(maxC > ambientC) || !finite(ambientC) || !finite(maxC) {
-		return 0, bad("highest temperature", maxC, "above ambient")
+	if !(maxC > ambientC) || !bounds.Finite(ambientC) || !bounds.Finite(maxC) {
+		return 0, bounds.Error("highest temperature", maxC, "above ambient")
 	}
 	q := currentA / ratedA
 	return ambientC + float64((maxC-ambientC)*q*q), nil
@@ -155,11 +156,11 @@ func OperatingC(currentA, ratedA, ambientC, maxC float64) (float64, error) {
 // R′ dcOhmPerKm at the temperature; kp 1 for copper, 0.8 for stranded aluminium; dc diameterMM; s
 // spacingMM between centres, not below dc; xp up to 2.8. IEC 60287-1-1; yp was not read in the standard.
 func ACFactor(dcOhmPerKm, kp, diameterMM, spacingMM, frequencyHz float64) (float64, error) {
-	if err := errors.Join(positive("resistance", dcOhmPerKm), positive("kp", kp), positive("diameter", diameterMM), positive("frequency", frequencyHz)); err != nil {
+	if err := errors.Join(bounds.Positive("resistance", dcOhmPerKm), bounds.Positive("kp", kp), bounds.Positive("diameter", diameterMM), bounds.Positive("frequency", frequencyHz)); err != nil {
 		return 0, err
 	}
-	if !(spacingMM >= diameterMM) || !finite(spacingMM) {
-		return 0, bad("spacing", spacingMM, "the diameter or more")
+	if !(spacingMM >= diameterMM) || !bounds.Finite(spacingMM) {
+		return 0, bounds.Error("spacing", spacingMM, "the diameter or more")
 	}
 	R := dcOhmPerKm / units.MPerKm
 	x2 := 8 * math.Pi * frequencyHz * 1e-7 / R
@@ -175,7 +176,7 @@ func ACFactor(dcOhmPerKm, kp, diameterMM, spacingMM, frequencyHz float64) (float
 	}
 	xp2 := x2 * kp
 	if math.Sqrt(xp2) > 2.8 {
-		return 0, bad("xp of the proximity effect", math.Sqrt(xp2), "2.8 or less")
+		return 0, bounds.Error("xp of the proximity effect", math.Sqrt(xp2), "2.8 or less")
 	}
 	F := xp2 * xp2 / (192 + float64(0.8*xp2*xp2))
 	g := diameterMM / spacingMM
@@ -188,11 +189,11 @@ func ACFactor(dcOhmPerKm, kp, diameterMM, spacingMM, frequencyHz float64) (float
 //
 // GMD gmdMM, geometric mean distance ∛(d12·d23·d31); r radiusMM of the conductor.
 func ReactanceOhmPerKm(gmdMM, radiusMM, frequencyHz float64) (float64, error) {
-	if err := errors.Join(positive("radius", radiusMM), positive("frequency", frequencyHz)); err != nil {
+	if err := errors.Join(bounds.Positive("radius", radiusMM), bounds.Positive("frequency", frequencyHz)); err != nil {
 		return 0, err
 	}
-	if !(gmdMM >= radiusMM) || !finite(gmdMM) {
-		return 0, bad("mean distance", gmdMM, "the radius or more")
+	if !(gmdMM >= radiusMM) || !bounds.Finite(gmdMM) {
+		return 0, bounds.Error("mean distance", gmdMM, "the radius or more")
 	}
 	return 2 * math.Pi * frequencyHz * 2e-4 * (math.Log(gmdMM/radiusMM) + 0.25), nil
 }
@@ -200,9 +201,9 @@ func ReactanceOhmPerKm(gmdMM, radiusMM, frequencyHz float64) (float64, error) {
 // MassTPerKm is the metal of n conductors of a nominal section, n·S·δ·1e−3, t/km, without lay.
 func MassTPerKm(n int, sectionMM2 float64, m Material) (float64, error) {
 	if n < 1 {
-		return 0, bad("number of conductors", float64(n), "1 or more")
+		return 0, bounds.Error("number of conductors", float64(n), "1 or more")
 	}
-	if err := positive("section", sectionMM2); err != nil {
+	if err := bounds.Positive("section", sectionMM2); err != nil {
 		return 0, err
 	}
 	d := densityAl
@@ -219,7 +220,7 @@ func MassTPerKm(n int, sectionMM2 float64, m Material) (float64, error) {
 // ElectricalSectionMM2 is the section that gives the standard's resistance with the metal's resistivity,
 // ρ/r20, mm2. It is 4 to 12 % below the nominal section for common sizes.
 func ElectricalSectionMM2(r20OhmPerKm float64, m Material) (float64, error) {
-	if err := positive("resistance", r20OhmPerKm); err != nil {
+	if err := bounds.Positive("resistance", r20OhmPerKm); err != nil {
 		return 0, err
 	}
 	const mm2PerM2 = 1e6
@@ -235,7 +236,7 @@ func ElectricalSectionMM2(r20OhmPerKm float64, m Material) (float64, error) {
 // ACSRMassKgPerKm is the mass of one steel-cored conductor, Al·2.703·1.0226 + St·7.78·1.004, kg/km.
 // The lay increments were not read in a source.
 func ACSRMassKgPerKm(aluminiumMM2, steelMM2 float64) (float64, error) {
-	if err := errors.Join(positive("aluminium section", aluminiumMM2), nonNegative("steel section", steelMM2)); err != nil {
+	if err := errors.Join(bounds.Positive("aluminium section", aluminiumMM2), bounds.NonNegative("steel section", steelMM2)); err != nil {
 		return 0, err
 	}
 	return float64(aluminiumMM2*densityAl*layAl) + float64(steelMM2*densitySteel*laySteel), nil

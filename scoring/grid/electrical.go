@@ -2,41 +2,21 @@ package grid
 
 import (
 	"errors"
-	"fmt"
 	"math"
 
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
 // ErrInput is wrapped by every error about a number outside its range.
-var ErrInput = errors.New("input outside its range")
+var ErrInput = bounds.ErrInput
 
 // ErrTransferImpossible tells that no voltage exists at which the line carries the power.
 var ErrTransferImpossible = errors.New("transfer impossible: the line cannot carry this power at any voltage")
 
-func bad(name string, v float64, want string) error {
-	return fmt.Errorf("%s is %v, want %s: %w", name, v, want, ErrInput)
-}
-
-func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
-
-func nonNegative(name string, v float64) error {
-	if !(v >= 0) || !finite(v) {
-		return bad(name, v, "0 or more")
-	}
-	return nil
-}
-
-func positive(name string, v float64) error {
-	if !(v > 0) || !finite(v) {
-		return bad(name, v, "above 0")
-	}
-	return nil
-}
-
 func unitShare(name string, v float64) error {
 	if !(v >= 0 && v <= 1) {
-		return bad(name, v, "0 to 1")
+		return bounds.Error(name, v, "0 to 1")
 	}
 	return nil
 }
@@ -54,7 +34,7 @@ const (
 //
 // P powerKW; U line-to-line voltageKV; cosφ cosPhi, above 0 to 1.
 func CurrentA(powerKW, voltageKV, cosPhi float64) (float64, error) {
-	if err := errors.Join(nonNegative("power", powerKW), positive("voltage", voltageKV), positive("cos phi", cosPhi), unitShare("cos phi", cosPhi)); err != nil {
+	if err := errors.Join(bounds.NonNegative("power", powerKW), bounds.Positive("voltage", voltageKV), bounds.Positive("cos phi", cosPhi), unitShare("cos phi", cosPhi)); err != nil {
 		return 0, err
 	}
 	return powerKW / (sqrt3 * voltageKV * cosPhi), nil
@@ -62,7 +42,7 @@ func CurrentA(powerKW, voltageKV, cosPhi float64) (float64, error) {
 
 // ApparentMVA is the power that a current carries, S = √3·U·I·k, MVA; k derating, 0 to 1.
 func ApparentMVA(currentA, voltageKV, derating float64) (float64, error) {
-	if err := errors.Join(nonNegative("current", currentA), positive("voltage", voltageKV), unitShare("derating", derating)); err != nil {
+	if err := errors.Join(bounds.NonNegative("current", currentA), bounds.Positive("voltage", voltageKV), unitShare("derating", derating)); err != nil {
 		return 0, err
 	}
 	return sqrt3 * voltageKV * currentA * derating / units.KWPerMW, nil
@@ -74,7 +54,7 @@ type Path struct {
 }
 
 func (c Path) check() error {
-	return errors.Join(positive("voltage", c.VoltageKV), nonNegative("resistance", c.ROhm), nonNegative("reactance", c.XOhm))
+	return errors.Join(bounds.Positive("voltage", c.VoltageKV), bounds.NonNegative("resistance", c.ROhm), bounds.NonNegative("reactance", c.XOhm))
 }
 
 // Flow is the power of the plant at the connection. InjectedKVAr is negative when the plant absorbs.
@@ -83,8 +63,8 @@ type Flow struct {
 }
 
 func (f Flow) check() error {
-	if !finite(f.ExportKW) || !finite(f.InjectedKVAr) {
-		return bad("power", f.ExportKW+f.InjectedKVAr, "a finite number")
+	if !bounds.Finite(f.ExportKW) || !bounds.Finite(f.InjectedKVAr) {
+		return bounds.Error("power", f.ExportKW+f.InjectedKVAr, "a finite number")
 	}
 	return nil
 }
@@ -129,11 +109,11 @@ func (c Path) RiseExact(f Flow) (float64, error) {
 // riseLimitFrac above 0; Q/P injectedOverExport, negative when absorbing. Where the sum below is zero or
 // less the voltage does not limit the power: unlimited is true.
 func (c Path) MaxPowerKW(riseLimitFrac, injectedOverExport float64) (kW float64, unlimited bool, err error) {
-	if err := errors.Join(c.check(), positive("rise limit", riseLimitFrac)); err != nil {
+	if err := errors.Join(c.check(), bounds.Positive("rise limit", riseLimitFrac)); err != nil {
 		return 0, false, err
 	}
-	if !finite(injectedOverExport) {
-		return 0, false, bad("reactive over active power", injectedOverExport, "a finite number")
+	if !bounds.Finite(injectedOverExport) {
+		return 0, false, bounds.Error("reactive over active power", injectedOverExport, "a finite number")
 	}
 	z := c.ROhm + float64(c.XOhm*injectedOverExport)
 	if z <= 0 {
@@ -158,7 +138,7 @@ func (c Path) MaxTransferKW() (kW float64, unlimited bool, err error) {
 // ZeroRiseCosPhi is the cos phi at which an absorbing plant leaves the voltage unchanged,
 // Q = −(R/X)·P, cosφ = 1/√(1 + (R/X)²).
 func ZeroRiseCosPhi(rOverX float64) (float64, error) {
-	if err := nonNegative("R over X", rOverX); err != nil {
+	if err := bounds.NonNegative("R over X", rOverX); err != nil {
 		return 0, err
 	}
 	return 1 / math.Hypot(1, rOverX), nil
@@ -176,7 +156,7 @@ func (c Path) PeakLossKW(f Flow) (float64, error) {
 // PowerLengthMWKm is the product of power and length at which a line of its own reaches a rise limit at
 // cos phi 1, P·L = lim·U²/r′, MW km.
 func PowerLengthMWKm(voltageKV, ohmPerKm, riseLimitFrac float64) (float64, error) {
-	if err := errors.Join(positive("voltage", voltageKV), positive("resistance", ohmPerKm), positive("rise limit", riseLimitFrac)); err != nil {
+	if err := errors.Join(bounds.Positive("voltage", voltageKV), bounds.Positive("resistance", ohmPerKm), bounds.Positive("rise limit", riseLimitFrac)); err != nil {
 		return 0, err
 	}
 	return riseLimitFrac * voltageKV * voltageKV / ohmPerKm, nil
@@ -186,7 +166,7 @@ func PowerLengthMWKm(voltageKV, ohmPerKm, riseLimitFrac float64) (float64, error
 //
 // C′ nFPerKm, nF/km; L lengthKm; frequencyHz.
 func ChargingMVAr(nFPerKm, voltageKV, lengthKm, frequencyHz float64) (float64, error) {
-	if err := errors.Join(nonNegative("capacitance", nFPerKm), positive("voltage", voltageKV), nonNegative("length", lengthKm), positive("frequency", frequencyHz)); err != nil {
+	if err := errors.Join(bounds.NonNegative("capacitance", nFPerKm), bounds.Positive("voltage", voltageKV), bounds.NonNegative("length", lengthKm), bounds.Positive("frequency", frequencyHz)); err != nil {
 		return 0, err
 	}
 	return 2 * math.Pi * frequencyHz * nFPerKm * nF * voltageKV * voltageKV * lengthKm, nil
@@ -200,7 +180,7 @@ func ChargingAPerKm(nFPerKm, voltageKV, frequencyHz float64) (float64, error) {
 
 // ChargingRise is the no-load rise of a line by its own charging, X·Qc/(2U²).
 func ChargingRise(xOhm, chargingMVAr, voltageKV float64) (float64, error) {
-	if err := errors.Join(nonNegative("reactance", xOhm), nonNegative("charging power", chargingMVAr), positive("voltage", voltageKV)); err != nil {
+	if err := errors.Join(bounds.NonNegative("reactance", xOhm), bounds.NonNegative("charging power", chargingMVAr), bounds.Positive("voltage", voltageKV)); err != nil {
 		return 0, err
 	}
 	return xOhm * chargingMVAr / (2 * voltageKV * voltageKV), nil
@@ -209,7 +189,7 @@ func ChargingRise(xOhm, chargingMVAr, voltageKV float64) (float64, error) {
 // NetworkImpedance is the impedance behind a point of known short-circuit power,
 // Z = U²/Sk″, R = Z/√(1+κ²), X = κR, κ = X/R.
 func NetworkImpedance(voltageKV, shortCircuitMVA, xOverR float64) (Path, error) {
-	if err := errors.Join(positive("voltage", voltageKV), positive("short-circuit power", shortCircuitMVA), nonNegative("X over R", xOverR)); err != nil {
+	if err := errors.Join(bounds.Positive("voltage", voltageKV), bounds.Positive("short-circuit power", shortCircuitMVA), bounds.NonNegative("X over R", xOverR)); err != nil {
 		return Path{}, err
 	}
 	z := voltageKV * voltageKV / shortCircuitMVA
@@ -224,7 +204,7 @@ func ShortCircuitBehindMVA(network, line Path) (float64, error) {
 	}
 	z := math.Hypot(network.ROhm+line.ROhm, network.XOhm+line.XOhm)
 	if z == 0 {
-		return 0, bad("impedance", z, "above 0")
+		return 0, bounds.Error("impedance", z, "above 0")
 	}
 	return network.VoltageKV * network.VoltageKV / z, nil
 }
@@ -232,7 +212,7 @@ func ShortCircuitBehindMVA(network, line Path) (float64, error) {
 // ShortCircuitRatio is SCR = Sk″/P at the point of connection; Sk″ is the least network value without
 // other plants.
 func ShortCircuitRatio(shortCircuitMVA, powerKW float64) (float64, error) {
-	if err := errors.Join(positive("short-circuit power", shortCircuitMVA), positive("power", powerKW)); err != nil {
+	if err := errors.Join(bounds.Positive("short-circuit power", shortCircuitMVA), bounds.Positive("power", powerKW)); err != nil {
 		return 0, err
 	}
 	return shortCircuitMVA * units.KWPerMW / powerKW, nil
@@ -242,11 +222,11 @@ func ShortCircuitRatio(shortCircuitMVA, powerKW float64) (float64, error) {
 // 2014). Powers in kW, short-circuit powers in MVA.
 func WeightedShortCircuitRatio(shortCircuitMVA, powerKW []float64) (float64, error) {
 	if len(shortCircuitMVA) != len(powerKW) || len(powerKW) == 0 {
-		return 0, bad("number of plants", float64(len(powerKW)), "as many as short-circuit powers, one or more")
+		return 0, bounds.Error("number of plants", float64(len(powerKW)), "as many as short-circuit powers, one or more")
 	}
 	var num, sum float64
 	for i, p := range powerKW {
-		if err := errors.Join(positive("short-circuit power", shortCircuitMVA[i]), positive("power", p)); err != nil {
+		if err := errors.Join(bounds.Positive("short-circuit power", shortCircuitMVA[i]), bounds.Positive("power", p)); err != nil {
 			return 0, err
 		}
 		num += float64(shortCircuitMVA[i] * units.KWPerMW * p)

@@ -3,6 +3,7 @@ package grid
 import (
 	"errors"
 	"fmt"
+	"groundtally/scoring/bounds"
 	"math"
 )
 
@@ -29,11 +30,11 @@ type LimitResult struct {
 // alike. Add the plants behind one limit hour by hour first. Hourly means understate the clipping of
 // solar.
 func LimitedShare(power, weight []float64, limit float64) (LimitResult, error) {
-	if err := nonNegative("limit", limit); err != nil {
+	if err := bounds.NonNegative("limit", limit); err != nil {
 		return LimitResult{}, err
 	}
 	if weight != nil && len(weight) != len(power) {
-		return LimitResult{}, bad("number of weights", float64(len(weight)), "as many as power values")
+		return LimitResult{}, bounds.Error("number of weights", float64(len(weight)), "as many as power values")
 	}
 	var all, lost, time, cut float64
 	for i, p := range power {
@@ -41,7 +42,7 @@ func LimitedShare(power, weight []float64, limit float64) (LimitResult, error) {
 		if weight != nil {
 			w = weight[i]
 		}
-		if err := errors.Join(nonNegative("power", p), nonNegative("weight", w)); err != nil {
+		if err := errors.Join(bounds.NonNegative("power", p), bounds.NonNegative("weight", w)); err != nil {
 			return LimitResult{}, err
 		}
 		all += float64(w * p)
@@ -52,7 +53,7 @@ func LimitedShare(power, weight []float64, limit float64) (LimitResult, error) {
 		}
 	}
 	if all == 0 {
-		return LimitResult{}, bad("energy", all, "above 0")
+		return LimitResult{}, bounds.Error("energy", all, "above 0")
 	}
 	return LimitResult{LostFrac: lost / all, LimitedShare: cut / time}, nil
 }
@@ -79,11 +80,11 @@ const (
 // Σg ≤ C and g_i ≤ r_i. Rank the candidates on what they would get alone: a rank that follows the grants
 // is circular.
 func ShareSpare(spare float64, requests, minimum []float64, rule ShareRule) ([]float64, error) {
-	if err := nonNegative("spare capacity", spare); err != nil {
+	if err := bounds.NonNegative("spare capacity", spare); err != nil {
 		return nil, err
 	}
 	if minimum != nil && len(minimum) != len(requests) {
-		return nil, bad("number of minimums", float64(len(minimum)), "as many as requests")
+		return nil, bounds.Error("number of minimums", float64(len(minimum)), "as many as requests")
 	}
 	least := func(i int) float64 {
 		if minimum == nil {
@@ -92,7 +93,7 @@ func ShareSpare(spare float64, requests, minimum []float64, rule ShareRule) ([]f
 		return minimum[i]
 	}
 	for i, r := range requests {
-		if err := errors.Join(nonNegative("request", r), nonNegative("minimum", least(i))); err != nil {
+		if err := errors.Join(bounds.NonNegative("request", r), bounds.NonNegative("minimum", least(i))); err != nil {
 			return nil, err
 		}
 	}

@@ -2,6 +2,7 @@ package grid
 
 import (
 	"errors"
+	"groundtally/scoring/bounds"
 	"math"
 )
 
@@ -21,12 +22,12 @@ func LossLoadFactor(loadFactor, weight float64) (float64, error) {
 // LossLoadWeight is the k that gives a known pair, (LLF − LF²)/(LF − LF²). LF must lie inside (0,1).
 func LossLoadWeight(loadFactor, lossLoadFactor float64) (float64, error) {
 	if !(loadFactor > 0 && loadFactor < 1) {
-		return 0, bad("load factor", loadFactor, "inside 0 to 1")
+		return 0, bounds.Error("load factor", loadFactor, "inside 0 to 1")
 	}
 	lf2 := loadFactor * loadFactor
 	const slack = 1e-9
 	if !(lossLoadFactor >= lf2-slack && lossLoadFactor <= loadFactor+slack) {
-		return 0, bad("loss load factor", lossLoadFactor, "between LF squared and LF")
+		return 0, bounds.Error("loss load factor", lossLoadFactor, "between LF squared and LF")
 	}
 	return (lossLoadFactor - lf2) / (loadFactor - lf2), nil
 }
@@ -44,25 +45,25 @@ func ProfileFactors(power []float64, peak float64) (Factors, error) {
 // count alike. Weights need not sum to 1: what is missing is time without power. With weights that sum to
 // more than 1 by rounding the sum is used.
 func DistributionFactors(power, weight []float64, peak float64) (Factors, error) {
-	if err := positive("peak", peak); err != nil {
+	if err := bounds.Positive("peak", peak); err != nil {
 		return Factors{}, err
 	}
 	if len(power) == 0 {
-		return Factors{}, bad("number of steps", 0, "1 or more")
+		return Factors{}, bounds.Error("number of steps", 0, "1 or more")
 	}
 	if weight != nil && len(weight) != len(power) {
-		return Factors{}, bad("number of weights", float64(len(weight)), "as many as power values")
+		return Factors{}, bounds.Error("number of weights", float64(len(weight)), "as many as power values")
 	}
 	var s1, s2, w float64
 	for i, p := range power {
 		if !(p >= 0 && p <= peak*(1+1e-12)) {
-			return Factors{}, bad("power", p, "0 to the peak")
+			return Factors{}, bounds.Error("power", p, "0 to the peak")
 		}
 		q := p / peak
 		wi := 1.0
 		if weight != nil {
-			if wi = weight[i]; !(wi >= 0) || !finite(wi) {
-				return Factors{}, bad("weight", wi, "0 or more")
+			if wi = weight[i]; !(wi >= 0) || !bounds.Finite(wi) {
+				return Factors{}, bounds.Error("weight", wi, "0 or more")
 			}
 		}
 		s1 += float64(wi * q)
@@ -79,7 +80,7 @@ func DistributionFactors(power, weight []float64, peak float64) (Factors, error)
 //
 // p/P peakLossFrac, loss at peak over peak power.
 func LossShare(peakLossFrac float64, f Factors) (float64, error) {
-	if err := errors.Join(nonNegative("peak loss", peakLossFrac), positive("load factor", f.Load), unitShare("load factor", f.Load), unitShare("loss load factor", f.LossLoad)); err != nil {
+	if err := errors.Join(bounds.NonNegative("peak loss", peakLossFrac), bounds.Positive("load factor", f.Load), unitShare("load factor", f.Load), unitShare("loss load factor", f.LossLoad)); err != nil {
 		return 0, err
 	}
 	return peakLossFrac * f.LossLoad / f.Load, nil
@@ -102,17 +103,17 @@ type HourlyLine struct {
 // exportKW are equal time steps after export limiting; the plant runs at cos phi 1. Hourly means hide
 // peaks within the hour: solar losses come out 1 to 3 % of the loss too low.
 func (l HourlyLine) LossFrac(exportKW []float64) (float64, error) {
-	if err := errors.Join(positive("length", l.LengthKm), positive("voltage", l.VoltageKV), positive("rating", l.RatedA), nonNegative("screen loss", l.ScreenAdd)); err != nil {
+	if err := errors.Join(bounds.Positive("length", l.LengthKm), bounds.Positive("voltage", l.VoltageKV), bounds.Positive("rating", l.RatedA), bounds.NonNegative("screen loss", l.ScreenAdd)); err != nil {
 		return 0, err
 	}
 	if l.Circuits < 1 {
-		return 0, bad("number of circuits", float64(l.Circuits), "1 or more")
+		return 0, bounds.Error("number of circuits", float64(l.Circuits), "1 or more")
 	}
 	n := float64(l.Circuits)
 	c := l.Conductor
 	var loss, energy float64
 	for _, p := range exportKW {
-		if err := nonNegative("power", p); err != nil {
+		if err := bounds.NonNegative("power", p); err != nil {
 			return 0, err
 		}
 		theta := c.ThetaMaxC
@@ -131,7 +132,7 @@ func (l HourlyLine) LossFrac(exportKW []float64) (float64, error) {
 		energy += p
 	}
 	if energy == 0 {
-		return 0, bad("energy of the profile", energy, "above 0")
+		return 0, bounds.Error("energy of the profile", energy, "above 0")
 	}
 	return loss / energy, nil
 }

@@ -6,6 +6,7 @@ import (
 	"math"
 
 	"groundtally/assets/citedtable"
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
@@ -69,7 +70,7 @@ func ParseTransformers(t *citedtable.Table) (*Transformers, error) {
 // index is used, linear between rows, split by P0/Pk = ρ pei split; beyond the last row its index holds.
 // A kind without efficiency rows refuses larger ratings. Commission Regulation (EU) 548/2014.
 func (t *Transformers) Loss(kind string, tier int, ratedKVA, peiSplit float64) (TransformerLoss, error) {
-	if err := positive("rated power", ratedKVA); err != nil {
+	if err := bounds.Positive("rated power", ratedKVA); err != nil {
 		return TransformerLoss{}, err
 	}
 	rows := t.rows[trKey(kind, tier)]
@@ -96,7 +97,7 @@ func (t *Transformers) Loss(kind string, tier int, ratedKVA, peiSplit float64) (
 	}
 	last := rows[len(rows)-1]
 	if last.pei == 0 {
-		return TransformerLoss{}, bad("rated power", ratedKVA, "within the table")
+		return TransformerLoss{}, bounds.Error("rated power", ratedKVA, "within the table")
 	}
 	return SplitPEI(last.pei, ratedKVA, peiSplit)
 }
@@ -104,7 +105,7 @@ func (t *Transformers) Loss(kind string, tier int, ratedKVA, peiSplit float64) (
 // PeakEfficiency is PEI = 1 − 2√(P0·Pk)/Sr. The formula is that of EN 50588 from memory; the equation was
 // missing in the text of the regulation at hand.
 func (l TransformerLoss) PeakEfficiency(ratedKVA float64) (float64, error) {
-	if err := errors.Join(nonNegative("no-load loss", l.NoLoadW), nonNegative("load loss", l.LoadW), positive("rated power", ratedKVA)); err != nil {
+	if err := errors.Join(bounds.NonNegative("no-load loss", l.NoLoadW), bounds.NonNegative("load loss", l.LoadW), bounds.Positive("rated power", ratedKVA)); err != nil {
 		return 0, err
 	}
 	return 1 - 2*math.Sqrt(l.NoLoadW*l.LoadW)/(ratedKVA*units.WPerKW), nil
@@ -112,7 +113,7 @@ func (l TransformerLoss) PeakEfficiency(ratedKVA float64) (float64, error) {
 
 // BestLoad is the load at which the efficiency peaks, √(P0/Pk), as a share of rated.
 func (l TransformerLoss) BestLoad() (float64, error) {
-	if err := errors.Join(nonNegative("no-load loss", l.NoLoadW), positive("load loss", l.LoadW)); err != nil {
+	if err := errors.Join(bounds.NonNegative("no-load loss", l.NoLoadW), bounds.Positive("load loss", l.LoadW)); err != nil {
 		return 0, err
 	}
 	return math.Sqrt(l.NoLoadW / l.LoadW), nil
@@ -123,9 +124,9 @@ func (l TransformerLoss) BestLoad() (float64, error) {
 // ρ split, no-load over load loss, an assumption of 0.08 to 0.2.
 func SplitPEI(pei, ratedKVA, split float64) (TransformerLoss, error) {
 	if !(pei > 0 && pei < 1) {
-		return TransformerLoss{}, bad("peak efficiency", pei, "inside 0 to 1")
+		return TransformerLoss{}, bounds.Error("peak efficiency", pei, "inside 0 to 1")
 	}
-	if err := errors.Join(positive("rated power", ratedKVA), positive("loss split", split)); err != nil {
+	if err := errors.Join(bounds.Positive("rated power", ratedKVA), bounds.Positive("loss split", split)); err != nil {
 		return TransformerLoss{}, err
 	}
 	pk := (1 - pei) * ratedKVA * units.WPerKW / (2 * math.Sqrt(split))
@@ -135,7 +136,7 @@ func SplitPEI(pei, ratedKVA, split float64) (TransformerLoss, error) {
 // YearKWh is the energy that a transformer takes in a year, E = P0·8760 + Pk·LLF·(Smax/Sr)²·8760, kWh/yr,
 // in its two parts. It is always live; the no-load part of a solar plant at night is an import.
 func (l TransformerLoss) YearKWh(lossLoadFactor, peakOverRated float64) (noLoad, load float64, err error) {
-	if err := errors.Join(nonNegative("no-load loss", l.NoLoadW), nonNegative("load loss", l.LoadW), unitShare("loss load factor", lossLoadFactor), nonNegative("peak over rated", peakOverRated)); err != nil {
+	if err := errors.Join(bounds.NonNegative("no-load loss", l.NoLoadW), bounds.NonNegative("load loss", l.LoadW), unitShare("loss load factor", lossLoadFactor), bounds.NonNegative("peak over rated", peakOverRated)); err != nil {
 		return 0, 0, err
 	}
 	return l.NoLoadW * units.HoursPerYear / units.WPerKW, l.LoadW * lossLoadFactor * peakOverRated * peakOverRated * units.HoursPerYear / units.WPerKW, nil
@@ -146,14 +147,14 @@ func (l TransformerLoss) YearKWh(lossLoadFactor, peakOverRated float64) (noLoad,
 // uk shortCircuitVoltage as a share; the impedance counts towards the voltage rise only where the voltage
 // is not regulated behind it.
 func TransformerImpedance(voltageKV, ratedKVA, shortCircuitVoltage, loadW float64) (Path, error) {
-	if err := errors.Join(positive("voltage", voltageKV), positive("rated power", ratedKVA), positive("short-circuit voltage", shortCircuitVoltage), nonNegative("load loss", loadW)); err != nil {
+	if err := errors.Join(bounds.Positive("voltage", voltageKV), bounds.Positive("rated power", ratedKVA), bounds.Positive("short-circuit voltage", shortCircuitVoltage), bounds.NonNegative("load loss", loadW)); err != nil {
 		return Path{}, err
 	}
 	sr := ratedKVA / units.KWPerMW
 	z := shortCircuitVoltage * voltageKV * voltageKV / sr
 	r := loadW / wPerMW * voltageKV * voltageKV / (sr * sr)
 	if r > z {
-		return Path{}, bad("load loss", loadW, "less than the short-circuit voltage allows")
+		return Path{}, bounds.Error("load loss", loadW, "less than the short-circuit voltage allows")
 	}
 	return Path{VoltageKV: voltageKV, ROhm: r, XOhm: math.Sqrt(float64(z*z) - float64(r*r))}, nil
 }

@@ -2,31 +2,17 @@ package land
 
 import (
 	"errors"
-	"fmt"
-	"math"
 
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
 // ErrInput is wrapped by every error about a number outside its range.
-var ErrInput = errors.New("input outside its range")
-
-func bad(name string, v float64, want string) error {
-	return fmt.Errorf("%s is %v, want %s: %w", name, v, want, ErrInput)
-}
-
-func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
-
-func nonNegative(name string, v float64) error {
-	if !(v >= 0) || !finite(v) {
-		return bad(name, v, "0 or more")
-	}
-	return nil
-}
+var ErrInput = bounds.ErrInput
 
 func share(name string, v float64) error {
 	if !(v >= 0 && v <= 1) {
-		return bad(name, v, "0 to 1")
+		return bounds.Error(name, v, "0 to 1")
 	}
 	return nil
 }
@@ -44,7 +30,7 @@ type Use struct {
 func OccupationHaYr(uses []Use) (float64, error) {
 	var o float64
 	for _, u := range uses {
-		if err := errors.Join(nonNegative("area", u.AreaHa), nonNegative("years", u.Years)); err != nil {
+		if err := errors.Join(bounds.NonNegative("area", u.AreaHa), bounds.NonNegative("years", u.Years)); err != nil {
 			return 0, err
 		}
 		o += float64(u.AreaHa * u.Years)
@@ -57,7 +43,7 @@ func OccupationHaYr(uses []Use) (float64, error) {
 func QualityHectares(uses []Use) (float64, error) {
 	var q float64
 	for _, u := range uses {
-		if err := errors.Join(nonNegative("area", u.AreaHa), share("quality", u.Quality), share("co-use", u.CoUse)); err != nil {
+		if err := errors.Join(bounds.NonNegative("area", u.AreaHa), share("quality", u.Quality), share("co-use", u.CoUse)); err != nil {
 			return 0, err
 		}
 		q += float64(u.AreaHa * u.Quality * (1 - u.CoUse))
@@ -71,7 +57,7 @@ func QualityHectares(uses []Use) (float64, error) {
 // A areaHa; co coUseFrac, 0 to 1; y yieldTPerHa, t/(ha yr); e energyMJPerKg, MJ/kg, which is numerically
 // GJ/t. Food energy and gross heat differ: label which e was taken. A flow: never add it to a stock loss.
 func CropEnergyGJPerYr(areaHa, coUseFrac, yieldTPerHa, energyMJPerKg float64) (float64, error) {
-	if err := errors.Join(nonNegative("area", areaHa), share("co-use", coUseFrac), nonNegative("yield", yieldTPerHa), nonNegative("energy content", energyMJPerKg)); err != nil {
+	if err := errors.Join(bounds.NonNegative("area", areaHa), share("co-use", coUseFrac), bounds.NonNegative("yield", yieldTPerHa), bounds.NonNegative("energy content", energyMJPerKg)); err != nil {
 		return 0, err
 	}
 	return areaHa * (1 - coUseFrac) * yieldTPerHa * units.KgPerT * energyMJPerKg / units.MJPerGJ, nil
@@ -79,7 +65,7 @@ func CropEnergyGJPerYr(areaHa, coUseFrac, yieldTPerHa, energyMJPerKg float64) (f
 
 // FoodEnergyMJPerKg turns a nutrition figure into MJ/kg.
 func FoodEnergyMJPerKg(kcalPer100g float64) (float64, error) {
-	if err := nonNegative("food energy", kcalPer100g); err != nil {
+	if err := bounds.NonNegative("food energy", kcalPer100g); err != nil {
 		return 0, err
 	}
 	return kcalPer100g * 10 * units.JPerCal / kJPerMJ, nil
@@ -89,7 +75,7 @@ const kJPerMJ = 1e3
 
 // HeatGJPerHaYr turns a mean power per area into a yearly harvest of heat, GJ/(ha yr).
 func HeatGJPerHaYr(wPerM2 float64) (float64, error) {
-	if err := nonNegative("power per area", wPerM2); err != nil {
+	if err := bounds.NonNegative("power per area", wPerM2); err != nil {
 		return 0, err
 	}
 	return wPerM2 * units.SecondsPerYear * units.M2PerHa / (units.MJPerGJ * jPerMJ), nil
@@ -122,7 +108,7 @@ func change(lossTC float64) Change {
 // A areaHa; B biomassTPerHa, above-ground dry matter; R rootRatio; CF carbonFrac, t C per t dry matter.
 // IPCC 2006 Guidelines Vol 4, Tier 1.
 func ForestCarbonTC(areaHa, biomassTPerHa, rootRatio, carbonFrac float64) (float64, error) {
-	if err := errors.Join(nonNegative("area", areaHa), nonNegative("biomass", biomassTPerHa), nonNegative("root ratio", rootRatio), share("carbon share", carbonFrac)); err != nil {
+	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("biomass", biomassTPerHa), bounds.NonNegative("root ratio", rootRatio), share("carbon share", carbonFrac)); err != nil {
 		return 0, err
 	}
 	return areaHa * biomassTPerHa * (1 + rootRatio) * carbonFrac, nil
@@ -131,7 +117,7 @@ func ForestCarbonTC(areaHa, biomassTPerHa, rootRatio, carbonFrac float64) (float
 // ForestHeatMJ is the heat content of the same trees, A·B·(1+R)·e, MJ; e heatMJPerKg of dry matter.
 // Timber that is used is still gone from the stock of the land.
 func ForestHeatMJ(areaHa, biomassTPerHa, rootRatio, heatMJPerKg float64) (float64, error) {
-	if err := errors.Join(nonNegative("area", areaHa), nonNegative("biomass", biomassTPerHa), nonNegative("root ratio", rootRatio), nonNegative("heat content", heatMJPerKg)); err != nil {
+	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("biomass", biomassTPerHa), bounds.NonNegative("root ratio", rootRatio), bounds.NonNegative("heat content", heatMJPerKg)); err != nil {
 		return 0, err
 	}
 	return areaHa * biomassTPerHa * (1 + rootRatio) * units.KgPerT * heatMJPerKg, nil
@@ -140,7 +126,7 @@ func ForestHeatMJ(areaHa, biomassTPerHa, rootRatio, heatMJPerKg float64) (float6
 // LostSinkTC is the carbon that felled forest would have taken up, A·s·T, t C. It is a flow forgone, not
 // a stock lost.
 func LostSinkTC(areaHa, sinkTCPerHaYr, years float64) (float64, error) {
-	if err := errors.Join(nonNegative("area", areaHa), nonNegative("sink", sinkTCPerHaYr), nonNegative("years", years)); err != nil {
+	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("sink", sinkTCPerHaYr), bounds.NonNegative("years", years)); err != nil {
 		return 0, err
 	}
 	return areaHa * sinkTCPerHaYr * years, nil
@@ -151,7 +137,7 @@ func LostSinkTC(areaHa, sinkTCPerHaYr, years float64) (float64, error) {
 // ΔC lossTC, t C, 0 or more; e_C energyMJPerKgC, MJ/kg C (33 to 42; Gorham & Sanger 1967, floor 32.8 for
 // pure carbon). It is low-grade heat, not fuel that anybody bought.
 func CarbonEnergyMJ(lossTC, energyMJPerKgC float64) (float64, error) {
-	if err := errors.Join(nonNegative("carbon loss", lossTC), nonNegative("energy content", energyMJPerKgC)); err != nil {
+	if err := errors.Join(bounds.NonNegative("carbon loss", lossTC), bounds.NonNegative("energy content", energyMJPerKgC)); err != nil {
 		return 0, err
 	}
 	return lossTC * units.KgPerT * energyMJPerKgC, nil
@@ -166,14 +152,14 @@ type Regrowth struct {
 // RegrowthYears is loss over yearly growth, ΔC/(A·g). Never when nothing grows and something was lost;
 // zero when nothing was lost.
 func RegrowthYears(lossTC, areaHa, growthTCPerHaYr float64) (Regrowth, error) {
-	if err := errors.Join(nonNegative("carbon loss", lossTC), nonNegative("area", areaHa), nonNegative("growth", growthTCPerHaYr)); err != nil {
+	if err := errors.Join(bounds.NonNegative("carbon loss", lossTC), bounds.NonNegative("area", areaHa), bounds.NonNegative("growth", growthTCPerHaYr)); err != nil {
 		return Regrowth{}, err
 	}
 	if lossTC == 0 {
 		return Regrowth{}, nil
 	}
 	yr := lossTC / (areaHa * growthTCPerHaYr)
-	if !finite(yr) {
+	if !bounds.Finite(yr) {
 		return Regrowth{Never: true}, nil
 	}
 	return Regrowth{Yr: yr}, nil

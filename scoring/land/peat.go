@@ -4,6 +4,7 @@ import (
 	"errors"
 	"math"
 
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
@@ -12,7 +13,7 @@ import (
 // depth depthM, m; c_v carbonKgPerM3, kg C per cubic metre (37 to 80; 53 is a bulk density of 0.1 t/m3
 // with a carbon share of 0.53).
 func PeatStockTCPerHa(depthM, carbonKgPerM3 float64) (float64, error) {
-	if err := errors.Join(nonNegative("depth", depthM), nonNegative("carbon density", carbonKgPerM3)); err != nil {
+	if err := errors.Join(bounds.NonNegative("depth", depthM), bounds.NonNegative("carbon density", carbonKgPerM3)); err != nil {
 		return 0, err
 	}
 	return depthM * units.M2PerHa * carbonKgPerM3 / units.KgPerT, nil
@@ -22,7 +23,7 @@ func PeatStockTCPerHa(depthM, carbonKgPerM3 float64) (float64, error) {
 //
 // V volumeM3; c_v carbonKgPerM3; s oxidisedFrac, 0 to 1, the share that oxidises (1 unless restored wet).
 func ExcavatedPeatTC(volumeM3, carbonKgPerM3, oxidisedFrac float64) (float64, error) {
-	if err := errors.Join(nonNegative("volume", volumeM3), nonNegative("carbon density", carbonKgPerM3), share("oxidised share", oxidisedFrac)); err != nil {
+	if err := errors.Join(bounds.NonNegative("volume", volumeM3), bounds.NonNegative("carbon density", carbonKgPerM3), share("oxidised share", oxidisedFrac)); err != nil {
 		return 0, err
 	}
 	return volumeM3 * carbonKgPerM3 / units.KgPerT * oxidisedFrac, nil
@@ -33,7 +34,7 @@ func ExcavatedPeatTC(volumeM3, carbonKgPerM3, oxidisedFrac float64) (float64, er
 // EF emissionTCPerHaYr, t C/(ha yr), IPCC 2013 Wetlands Supplement Table 2.1; A areaHa; t years, life plus
 // restoration; stock stockTC, carbon down to the drains. The loss never exceeds the stock.
 func DrainedPeatTC(emissionTCPerHaYr, areaHa, years, stockTC float64) (float64, error) {
-	if err := errors.Join(nonNegative("emission factor", emissionTCPerHaYr), nonNegative("area", areaHa), nonNegative("years", years), nonNegative("stock", stockTC)); err != nil {
+	if err := errors.Join(bounds.NonNegative("emission factor", emissionTCPerHaYr), bounds.NonNegative("area", areaHa), bounds.NonNegative("years", years), bounds.NonNegative("stock", stockTC)); err != nil {
 		return 0, err
 	}
 	return math.Min(emissionTCPerHaYr*areaHa*years, stockTC), nil
@@ -45,12 +46,12 @@ func DrainedPeatTC(emissionTCPerHaYr, areaHa, years, stockTC float64) (float64, 
 // whose corners are taken round. Crossings and overlaps are counted twice: an upper bound. After Nayak et
 // al. 2008.
 func DrainedAreaHa(trackM float64, pitPerimetersM []float64, widthM float64) (float64, error) {
-	if err := errors.Join(nonNegative("track", trackM), nonNegative("width", widthM)); err != nil {
+	if err := errors.Join(bounds.NonNegative("track", trackM), bounds.NonNegative("width", widthM)); err != nil {
 		return 0, err
 	}
 	a := 2 * trackM * widthM
 	for _, p := range pitPerimetersM {
-		if err := nonNegative("pit outline", p); err != nil {
+		if err := bounds.NonNegative("pit outline", p); err != nil {
 			return 0, err
 		}
 		a += float64(p*widthM) + float64(math.Pi*widthM*widthM)
@@ -77,7 +78,7 @@ type PeatLoss struct {
 // Loss gives the carbon lost; no part exceeds the stock it comes from.
 func (p Peat) Loss() (PeatLoss, error) {
 	for _, v := range []float64{p.DepthM, p.ExcavatedHa, p.ExcavatedDepthM, p.DrainedHa, p.DrainDepthM} {
-		if err := nonNegative("peat area or depth", v); err != nil {
+		if err := bounds.NonNegative("peat area or depth", v); err != nil {
 			return PeatLoss{}, err
 		}
 	}
@@ -106,7 +107,7 @@ const maxRegressionTableM = 0.5
 
 func tableDepth(w float64) error {
 	if !(w >= 0 && w <= maxRegressionTableM) {
-		return bad("water table depth", w, "0 to 0.5 m")
+		return bounds.Error("water table depth", w, "0 to 0.5 m")
 	}
 	return nil
 }
@@ -156,7 +157,7 @@ func BogCH4TCO2ePerHaYr(tableM, airC float64) (t float64, clamped bool, err erro
 
 func temperature(c float64) error {
 	if !(c >= -20 && c <= 40) {
-		return bad("air temperature", c, "-20 to 40 °C")
+		return bounds.Error("air temperature", c, "-20 to 40 °C")
 	}
 	return nil
 }

@@ -6,6 +6,7 @@ import (
 	"math"
 
 	"groundtally/assets/citedtable"
+	"groundtally/scoring/bounds"
 )
 
 // ErrNoSoilValue is wrapped when the guidelines give no value for a climate and class.
@@ -73,7 +74,7 @@ func (s *SoilTable) Lookup(kind, method, climate, class string) (SoilValue, erro
 // SOC_ref referenceTCPerHa; F_LU landUse, F_MG management, F_I input, all 0 or more. IPCC 2006 Guidelines
 // Vol 4, Tier 1, mineral soils only; the stated error of a reference stock is about 90 %.
 func SOCTCPerHa(referenceTCPerHa, landUse, management, input float64) (float64, error) {
-	if err := errors.Join(nonNegative("reference stock", referenceTCPerHa), nonNegative("land use factor", landUse), nonNegative("management factor", management), nonNegative("input factor", input)); err != nil {
+	if err := errors.Join(bounds.NonNegative("reference stock", referenceTCPerHa), bounds.NonNegative("land use factor", landUse), bounds.NonNegative("management factor", management), bounds.NonNegative("input factor", input)); err != nil {
 		return 0, err
 	}
 	return referenceTCPerHa * landUse * management * input, nil
@@ -84,11 +85,11 @@ func SOCTCPerHa(referenceTCPerHa, landUse, management, input float64) (float64, 
 //
 // years is how long the new use lasts; the change is linear over transitionYr and then complete.
 func UseChange(areaHa, beforeTCPerHa, afterTCPerHa, years, transitionYr float64) (Change, error) {
-	if err := errors.Join(nonNegative("area", areaHa), nonNegative("stock before", beforeTCPerHa), nonNegative("stock after", afterTCPerHa), nonNegative("years", years)); err != nil {
+	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("stock before", beforeTCPerHa), bounds.NonNegative("stock after", afterTCPerHa), bounds.NonNegative("years", years)); err != nil {
 		return Change{}, err
 	}
-	if !(transitionYr > 0) || !finite(transitionYr) {
-		return Change{}, bad("transition time", transitionYr, "above 0")
+	if !(transitionYr > 0) || !bounds.Finite(transitionYr) {
+		return Change{}, bounds.Error("transition time", transitionYr, "above 0")
 	}
 	return change(areaHa * (beforeTCPerHa - afterTCPerHa) * math.Min(1, years/transitionYr)), nil
 }
@@ -96,7 +97,7 @@ func UseChange(areaHa, beforeTCPerHa, afterTCPerHa, years, transitionYr float64)
 // Relaxed is the share of a change that is done after n years when a fixed share of what remains is
 // done each year, 1 − (1−r)^n. An alternative to the linear course.
 func Relaxed(ratePerYr, years float64) (float64, error) {
-	if err := errors.Join(share("rate", ratePerYr), nonNegative("years", years)); err != nil {
+	if err := errors.Join(share("rate", ratePerYr), bounds.NonNegative("years", years)); err != nil {
 		return 0, err
 	}
 	return 1 - math.Pow(1-ratePerYr, years), nil
@@ -107,11 +108,11 @@ func Relaxed(ratePerYr, years float64) (float64, error) {
 // f lossFrac is at most 1 and may be negative, down to −1, where the works bring a gain (panels over
 // grass). The loss never exceeds the stock.
 func DisturbanceChange(areaHa, stockTCPerHa, lossFrac float64) (Change, error) {
-	if err := errors.Join(nonNegative("area", areaHa), nonNegative("stock", stockTCPerHa)); err != nil {
+	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("stock", stockTCPerHa)); err != nil {
 		return Change{}, err
 	}
 	if !(lossFrac >= -1 && lossFrac <= 1) {
-		return Change{}, bad("loss share", lossFrac, "-1 to 1")
+		return Change{}, bounds.Error("loss share", lossFrac, "-1 to 1")
 	}
 	return change(areaHa * stockTCPerHa * lossFrac), nil
 }
