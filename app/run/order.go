@@ -113,30 +113,12 @@ func scales(snap *study.Snapshot, p *Params, voice string) ([]scale, []geo.Notic
 		if raw < 0 {
 			return nil, nil, fmt.Errorf("voice %q: the weight of %s is below zero", voice, k.Key)
 		}
-		c, known := snap.Catalog().Criterion(k.Key)
-		if !known {
-			if c, known = snap.Catalog().Criterion(strings.TrimSuffix(k.Key, criteria.BurdenSuffix)); !known {
-				continue
-			}
-			c.Worst, c.Best = criteria.Anchor{Ask: true}, criteria.Anchor{X: 0}
-		}
-		if c.Better == criteria.Neither {
-			return nil, nil, fmt.Errorf("voice %q: %s is not scored: neither more nor less of it is better", voice, k.Key)
-		}
-		worst, okW := snap.Number("anchor." + k.Key + ".worst")
-		if !okW && !c.Worst.Ask {
-			worst, okW = c.Worst.X, true
-		}
-		best, okB := snap.Number("anchor." + k.Key + ".best")
-		if !okB && !c.Best.Ask {
-			best, okB = c.Best.X, true
-		}
-		if !okW || !okB {
-			return nil, nil, &AnchorError{Voice: voice, Key: k.Key}
-		}
-		curve, err := weigh.NewLinear(worst, best)
+		one, c, err := scaleOf(snap, voice, k)
 		if err != nil {
-			return nil, nil, fmt.Errorf("value scale of %s: %w", k.Key, err)
+			return nil, nil, err
+		}
+		if c == nil {
+			continue
 		}
 		for _, f := range c.Families {
 			if other, twice := families[f]; twice {
@@ -144,12 +126,43 @@ func scales(snap *study.Snapshot, p *Params, voice string) ([]scale, []geo.Notic
 			}
 			families[f] = k.Key
 		}
-		out = append(out, scale{key: k.Key, info: k, better: c.Better, gain: brings(c), raw: raw, curve: curve})
+		one.raw = raw
+		out = append(out, one)
 	}
 	if len(out) == 0 {
 		return nil, nil, fmt.Errorf("voice %q weighs nothing; set voice.%s.weight.KEY", voice, voice)
 	}
 	return out, notices, nil
+}
+
+// scaleOf finds the value scale of a key. The criterion is nil for a key that has none.
+func scaleOf(snap *study.Snapshot, voice string, k KeyInfo) (scale, *criteria.Criterion, error) {
+	c, known := snap.Catalog().Criterion(k.Key)
+	if !known {
+		if c, known = snap.Catalog().Criterion(strings.TrimSuffix(k.Key, criteria.BurdenSuffix)); !known {
+			return scale{}, nil, nil
+		}
+		c.Worst, c.Best = criteria.Anchor{Ask: true}, criteria.Anchor{X: 0}
+	}
+	if c.Better == criteria.Neither {
+		return scale{}, nil, fmt.Errorf("voice %q: %s is not scored: neither more nor less of it is better", voice, k.Key)
+	}
+	worst, okW := snap.Number("anchor." + k.Key + ".worst")
+	if !okW && !c.Worst.Ask {
+		worst, okW = c.Worst.X, true
+	}
+	best, okB := snap.Number("anchor." + k.Key + ".best")
+	if !okB && !c.Best.Ask {
+		best, okB = c.Best.X, true
+	}
+	if !okW || !okB {
+		return scale{}, nil, &AnchorError{Voice: voice, Key: k.Key}
+	}
+	curve, err := weigh.NewLinear(worst, best)
+	if err != nil {
+		return scale{}, nil, fmt.Errorf("value scale of %s: %w", k.Key, err)
+	}
+	return scale{key: k.Key, info: k, better: c.Better, gain: brings(c), curve: curve}, &c, nil
 }
 
 // brings reports whether more of a consequence is something that the plant itself brings: energy, room on
@@ -196,6 +209,40 @@ func (s scale) trial(v scoring.Value) (float64, error) {
 	return 0.5, nil // not used for an unknown part
 }
 
+// weighed gives the fitted candidates and the row of doing nothing as items to weigh, with the candidate
+// behind each item (-1 for doing nothing), and the candidates that a gate holds back.
+func weighed(snap *study.Snapshot, sc []scale, cs []Candidate) (items []weigh.Item, at []int, heldBack []string, err error) {
+	gate := snap.Text("gate.owner_consent")
+	for i := range cs {
+		c := &cs[i]
+		if c.Status != Fitted {
+			continue
+		}
+		if held(gate, c.Gates["owner_consent"].State) {
+			heldBack = append(heldBack, c.ID())
+			continue
+		}
+		item := weigh.Item{ID: c.ID(), Values: make([]weigh.Part, len(sc))}
+		for k, s := range sc {
+			q, _ := c.Consequence(s.key)
+			if item.Values[k], err = s.part(q, slices.Contains(c.OverLimit, s.key)); err != nil {
+				return nil, nil, nil, fmt.Errorf("candidate %s, %s: %w", c.ID(), s.key, err)
+			}
+		}
+		items, at = append(items, item), append(at, i)
+	}
+	nothing := weigh.Item{ID: NoSite}
+	for _, s := range sc {
+		// Doing nothing spares every burden and brings no gain.
+		if s.better == criteria.Less || !s.gain {
+			nothing.Values = append(nothing.Values, weigh.Part{Known: true, Low: 1, Mid: 1, High: 1})
+		} else {
+			nothing.Values = append(nothing.Values, weigh.Part{Known: true})
+		}
+	}
+	return append(items, nothing), append(at, -1), heldBack, nil
+}
+
 // order weighs the fitted candidates under one voice.
 func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, draw *draws, voice string, cs []Candidate) (VoiceOrder, error) {
 	out := VoiceOrder{Voice: voice, Title: snap.Text("voice." + voice + ".title"), Order: []Row{}, Tipping: []TippingRow{}, HeldBack: []string{}}
@@ -213,42 +260,12 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	for _, s := range sc {
 		in.Keys = append(in.Keys, weigh.Key{Name: s.key, Account: string(s.info.Account), RawWeight: s.raw})
 	}
-	var at []int // candidate of each item; -1 for doing nothing
-	byID := map[string]int{}
-	gate := snap.Text("gate.owner_consent")
-	for i := range cs {
-		c := &cs[i]
-		if c.Status != Fitted {
-			continue
-		}
-		if held(gate, c.Gates["owner_consent"].State) {
-			out.HeldBack = append(out.HeldBack, c.ID())
-			continue
-		}
-		item := weigh.Item{ID: c.ID()}
-		for _, s := range sc {
-			q, _ := c.Consequence(s.key)
-			part, err := s.part(q, slices.Contains(c.OverLimit, s.key))
-			if err != nil {
-				return out, fmt.Errorf("candidate %s, %s: %w", c.ID(), s.key, err)
-			}
-			item.Values = append(item.Values, part)
-		}
-		byID[item.ID] = len(in.Items)
-		in.Items = append(in.Items, item)
-		at = append(at, i)
+	items, at, heldBack, err := weighed(snap, sc, cs)
+	if err != nil {
+		return out, err
 	}
-	nothing := weigh.Item{ID: NoSite}
-	for _, s := range sc {
-		// Doing nothing spares every burden and brings no gain.
-		if s.better == criteria.Less || !s.gain {
-			nothing.Values = append(nothing.Values, weigh.Part{Known: true, Low: 1, Mid: 1, High: 1})
-		} else {
-			nothing.Values = append(nothing.Values, weigh.Part{Known: true})
-		}
-	}
-	in.Items = append(in.Items, nothing)
-	at = append(at, -1)
+	in.Items = items
+	out.HeldBack = append(out.HeldBack, heldBack...)
 
 	contenders, err := weigh.Contenders(in)
 	if err != nil {
@@ -259,10 +276,10 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 		column[i] = slices.Index(draw.keys, s.key)
 	}
 	n := min(in.Mixes, k.trials)
-	var items, which []int
+	var drawn, which []int
 	for _, item := range contenders {
 		if at[item] >= 0 {
-			items, which = append(items, item), append(which, at[item])
+			drawn, which = append(drawn, item), append(which, at[item])
 		}
 	}
 	draw.mu.Lock()
@@ -271,8 +288,8 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	if err != nil {
 		return out, err
 	}
-	if len(items) > 0 {
-		in.Trials = &weigh.Trials{Count: n, Items: items, Row: func(trial, item int, row []float64) error {
+	if len(drawn) > 0 {
+		in.Trials = &weigh.Trials{Count: n, Items: drawn, Row: func(trial, item int, row []float64) error {
 			for i, s := range sc {
 				v := scoring.UnknownBecause("not_assessed")
 				if column[i] >= 0 {

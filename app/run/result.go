@@ -265,4 +265,8 @@ type Results struct {
 	Steps      []StepCount
 	Notices    []geo.Notice
 	Code       Code
+
+	made     []geo.Notice // notices of the steps before weighing
+	digests  []digest     // of the candidates
+	reckoner *reckoner
 }

@@ -7,8 +7,11 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"reflect"
 	"runtime"
+	"slices"
 	"sort"
+	"strings"
 
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -62,23 +65,79 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if err != nil {
 		return nil, err
 	}
-	k := r.k
-	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices}
+	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices, made: w.notices, digests: digests, reckoner: r.k}
+	if err := e.weigh(ctx, snap, out, cores); err != nil {
+		return nil, err
+	}
+	return out, nil
+}
+
+// Reweigh puts the candidates of earlier results in order under another snapshot, without any other step.
+// The snapshots may differ in what weighing alone reads; see OnlyWeighing. The results are those of
+// Compute, bit for bit.
+func (e *Engine) Reweigh(ctx context.Context, snap *study.Snapshot, prev *Results) (*Results, error) {
+	cores := e.Cores
+	if cores <= 0 {
+		cores = runtime.NumCPU()
+	}
+	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, reckoner: prev.reckoner}
+	for _, c := range prev.Steps {
+		if c.Step != orderStep {
+			out.Steps = append(out.Steps, StepCount{Step: c.Step, Valid: c.Computed + c.Valid})
+		}
+	}
+	if err := e.weigh(ctx, snap, out, cores); err != nil {
+		return nil, err
+	}
+	return out, nil
+}
+
+// OnlyWeighing reports whether two states of a study differ at most in what weighing alone reads: voices,
+// ends of value scales, weight mixes, gates, the study's own titles.
+func OnlyWeighing(a, b *study.Snapshot) bool {
+	if !reflect.DeepEqual(a.Layers, b.Layers) || !reflect.DeepEqual(a.Groups, b.Groups) || !reflect.DeepEqual(a.Frame, b.Frame) {
+		return false
+	}
+	weighing := func(key string) bool {
+		for _, prefix := range []string{"voice.", "anchor.", "weigh.", "gate.", "study."} {
+			if strings.HasPrefix(key, prefix) {
+				return true
+			}
+		}
+		return false
+	}
+	same := func(a, b *study.Snapshot) bool {
+		for key, s := range a.Explicit {
+			if t, ok := b.Explicit[key]; (!ok || s != t) && !weighing(key) {
+				return false
+			}
+		}
+		return true
+	}
+	return same(a, b) && same(b, a)
+}
+
+const orderStep = "order"
+
+// weigh fills in the orders of all voices with what belongs to them, and the check code.
+func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out *Results, cores int) error {
+	cs := out.Candidates
 	draw := newDraws(snap, e.Params, cores, len(cs))
 	voices := snap.Voices()
 	orders := make([]VoiceOrder, len(voices))
 	unready := make([]*VoiceError, len(voices))
-	err = forEach(ctx, cores, len(voices), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
+	err := forEach(ctx, cores, len(voices), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
 		var err error
-		orders[i], err = order(ctx, snap, e.Params, k, draw, voices[i], cs)
+		orders[i], err = order(ctx, snap, e.Params, out.reckoner, draw, voices[i], cs)
 		if errors.As(err, &unready[i]) {
 			return nil // one unfinished voice does not keep the others from theirs
 		}
 		return err
 	}, nil)
 	if err != nil {
-		return nil, err
+		return err
 	}
+	out.Notices = slices.Clip(out.Notices)
 	for i, voice := range voices {
 		if unready[i] == nil {
 			out.Voices = append(out.Voices, orders[i])
@@ -90,11 +149,8 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 		out.Unready[voice] = unready[i]
 		out.Notices = append(out.Notices, geo.Notice{Code: "voice_unusable", Severity: geo.Warning, Field: "voice." + voice, Args: map[string]string{"error": unready[i].Error()}})
 	}
-	out.Steps = append(out.Steps, StepCount{Step: "order", Computed: len(out.Voices)})
-	if err := out.code(snap, e.Params, digests); err != nil {
-		return nil, err
-	}
-	return out, nil
+	out.Steps = append(out.Steps, StepCount{Step: orderStep, Computed: len(out.Voices)})
+	return out.code(snap, e.Params, out.digests)
 }
 
 // code fills in the check code. The canonical form of the inputs is JSON with sorted keys: settings in
