@@ -6,6 +6,7 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"reflect"
 	"sort"
 	"strconv"
 	"strings"
@@ -214,6 +215,26 @@ func (s *Study) step(ctx context.Context, verb string) (Entry, error) {
 		changes = append(changes, Change{Kind: c.Kind, Key: c.Key, New: to})
 	}
 	return s.edit(ctx, verb, of.Verb, of.Seq, changes, nil)
+}
+
+// Undoable gives the verbs of the edits that Undo would take back, Redo bring back; empty when there are none.
+func (s *Study) Undoable() (undo, redo string) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	done, undone := stacks(s.journal)
+	if n := len(done); n > 0 {
+		undo = done[n-1].Verb
+	}
+	if n := len(undone); n > 0 {
+		redo = undone[n-1].Verb
+	}
+	return undo, redo
+}
+
+// SameInputs reports whether two states hold the same settings, layers and groups, so that the same
+// results follow from both.
+func SameInputs(a, b *Snapshot) bool {
+	return a == b || reflect.DeepEqual(a.Explicit, b.Explicit) && reflect.DeepEqual(a.Layers, b.Layers) && reflect.DeepEqual(a.Groups, b.Groups) && reflect.DeepEqual(a.Frame, b.Frame)
 }
 
 // stacks gives the entries in force and those taken back, last one last. An undo or redo moves the entry

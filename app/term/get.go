@@ -1,6 +1,7 @@
 package term
 
 import (
+	"groundtally/app/run"
 	"groundtally/app/study"
 )
 
@@ -23,7 +24,7 @@ var verbGet = verb{
 				if !known {
 					return 0, &study.UnknownKeyError{Key: k, Nearest: c.Catalog.Nearest(k)}
 				}
-				if err := c.checkKey(k); err != nil && len(c.args.places) == 2 {
+				if err := run.CheckKey(c.Catalog, c.Params, k); err != nil && len(c.args.places) == 2 {
 					return 0, err
 				}
 				v, byUser, in := snap.Lookup(k)

@@ -32,7 +32,7 @@ var verbTable = verb{
 		}
 		for _, k := range wanted {
 			if !c.knownKey(k) {
-				return 0, usagef("there is no consequence %q%s", k, likeThis(k, c.keyNames()))
+				return 0, usagef("there is no consequence %q%s", k, run.LikeThis(k, c.keyNames()))
 			}
 		}
 		return c.with(func(s *study.Study) (int, error) {
@@ -108,7 +108,7 @@ func (c *call) knownNames(r *run.Results, site, plant string) error {
 		sites[cand.Site], plants[cand.Plant] = true, true
 	}
 	if site != "" && !sites[site] {
-		return usagef("there is no site %q among the %d%s", site, len(sites), likeThis(site, sortedKeys(sites)))
+		return usagef("there is no site %q among the %d%s", site, len(sites), run.LikeThis(site, sortedKeys(sites)))
 	}
 	if plant != "" && !plants[plant] {
 		return usagef("there is no plant option %q; the options are: %s", plant, strings.Join(sortedKeys(plants), ", "))

@@ -18,7 +18,7 @@ var verbWhy = verb{
 	run: func(c *call) (int, error) {
 		if len(c.args.places) == 4 && !c.knownKey(c.args.places[3]) {
 			if _, inGraph := c.Params.Graph.Slot(c.args.places[3]); !inGraph {
-				return 0, usagef("there is no consequence %q%s", c.args.places[3], likeThis(c.args.places[3], c.keyNames()))
+				return 0, usagef("there is no consequence %q%s", c.args.places[3], run.LikeThis(c.args.places[3], c.keyNames()))
 			}
 		}
 		return c.with(func(s *study.Study) (int, error) {

@@ -1,0 +1,479 @@
+package core
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"slices"
+	"strings"
+	"time"
+
+	"fyne.io/fyne/v2"
+
+	"groundtally/app/desk/theme"
+	"groundtally/app/draw"
+	"groundtally/app/live"
+	"groundtally/app/program"
+	"groundtally/app/run"
+	"groundtally/app/study"
+	"groundtally/geo"
+)
+
+// Change says what changed; several may come together.
+type Change uint
+
+// The changes.
+const (
+	StudyChanged     Change = 1 << iota // the View: settings, layers, journal, results
+	RankingChanged                      // the order under the weights shown, saved or tried out
+	SelectionChanged                    // the chosen candidates
+	ShadeChanged                        // what the map shades by, or the voice
+	WorkChanged                         // progress of what is under way
+	LookChanged                         // light or dark
+	Everything       = ^Change(0)
+)
+
+// Stage is one of the five stages of the window.
+type Stage interface {
+	// Title is the word on the rail.
+	Title() string
+	// State is what the rail says of the stage in a few words. Warn marks the second line as wanting
+	// attention.
+	State() (first, second string, warn bool)
+	// Content makes the pane; it is called once, when the stage is first shown.
+	Content() fyne.CanvasObject
+	// Changed tells the stage what changed. It is called on the window's goroutine, also before Content was.
+	Changed(Change)
+}
+
+// MostChosen is how many candidates can stand side by side.
+const MostChosen = 4
+
+// Core is shared by everything in one window on one study. It may be used on the window's goroutine alone,
+// but for what is said to be free of it.
+type Core struct {
+	App     fyne.App
+	Window  fyne.Window
+	Parts   *program.Parts
+	Session *live.Session
+	Theme   *theme.Theme
+
+	// Do runs something on the window's goroutine; the way back from any other.
+	Do func(func())
+
+	// Hooks that the window sets.
+	ShowParcels func(ids []string)                          // brings parcels into view on the map and marks them
+	ShowPlace   func(at geo.LonLat)                         // brings a place into view on the map
+	ShowStage   func(title string)                          // opens a stage
+	Boxed       func() []string                             // parcels in the box last drawn on the map
+	Tell        func(words string)                          // a short word at the foot of the window, that something is done
+	Ask         func(title, words, yes string, then func()) // asks before something that cannot be undone
+
+	view      *live.View
+	voice     string
+	shade     string
+	chosen    []string
+	ranking   *live.Ranking
+	weigher   *live.Weigher
+	trying    []float64 // raw weights tried out and not saved; nil when those of the study hold
+	shadedBy  *live.Ranking
+	listeners []func(Change)
+	info      map[string]run.KeyInfo
+}
+
+// New makes the core of a window. The session's Notify must lead to Update on the window's goroutine.
+func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core {
+	c := &Core{App: a, Window: w, Parts: parts, Theme: th, Do: fyne.Do, info: map[string]run.KeyInfo{}}
+	for _, k := range parts.Params.Keys() {
+		c.info[k.Key] = k
+	}
+	c.weigher = live.NewWeigher(func(r *live.Ranking) { c.Do(func() { c.ranked(r) }) })
+	c.Boxed = func() []string { return nil }
+	c.Tell = func(string) {}
+	c.ShowParcels, c.ShowPlace, c.ShowStage = func([]string) {}, func(geo.LonLat) {}, func(string) {}
+	return c
+}
+
+// Attach puts a session in place of the one before.
+func (c *Core) Attach(s *live.Session) {
+	c.Session = s
+	c.view, c.ranking, c.trying, c.chosen, c.voice, c.shade = nil, nil, nil, nil, "", ""
+	c.Update()
+}
+
+// OnChange asks to be told of changes.
+func (c *Core) OnChange(f func(Change)) { c.listeners = append(c.listeners, f) }
+
+// Emit tells everybody of a change.
+func (c *Core) Emit(ch Change) {
+	for _, f := range c.listeners {
+		f(ch)
+	}
+}
+
+// View gives what is known of the study; never nil once a session is attached.
+func (c *Core) View() *live.View { return c.view }
+
+// Update takes over what the session found since the last call.
+func (c *Core) Update() {
+	if c.Session == nil {
+		return
+	}
+	ch := WorkChanged
+	if v := c.Session.View(); v != c.view {
+		old := c.view
+		c.view = v
+		ch |= StudyChanged
+		if voices := v.Snap.Voices(); !slices.Contains(voices, c.voice) {
+			c.voice, c.trying = "", nil
+			if len(voices) > 0 {
+				c.voice = voices[0]
+			}
+			ch |= ShadeChanged
+		}
+		if old == nil || old.Board != v.Board || old.Snap != v.Snap {
+			if c.trying != nil && v.Board != nil && len(c.trying) != len(v.Board.Keys) {
+				c.trying = nil
+			}
+			c.rank()
+		}
+		if v.Index != nil {
+			kept := slices.DeleteFunc(slices.Clone(c.chosen), func(id string) bool { _, ok := v.Index.ByID[id]; return !ok })
+			if len(kept) != len(c.chosen) {
+				c.chosen = kept
+				ch |= SelectionChanged
+			}
+		}
+	}
+	c.Emit(ch)
+}
+
+// rank asks for the order under the weights shown.
+func (c *Core) rank() {
+	b := c.view.Board
+	if b == nil || len(b.Keys) == 0 || c.voice == "" {
+		c.ranking = nil
+		return
+	}
+	raw := c.trying
+	if raw == nil {
+		raw = b.Raw(c.view.Snap, c.voice)
+	}
+	c.weigher.Ask(b, c.view.Index, c.voice, raw)
+}
+
+func (c *Core) ranked(r *live.Ranking) {
+	if c.view == nil || r.Board != c.view.Board || r.Voice != c.voice {
+		return // out of date
+	}
+	c.ranking = r
+	ch := RankingChanged
+	if len(c.chosen) == 0 && r.Err == nil { // the first of the order is what a user wants to see first
+		for _, item := range r.Standing.Order {
+			if at := r.Board.At[item]; at >= 0 {
+				c.chosen = []string{r.Board.IDs[item]}
+				ch |= SelectionChanged
+				break
+			}
+		}
+	}
+	c.Emit(ch)
+}
+
+// Ranking gives the order under the weights shown; nil as long as there is none.
+func (c *Core) Ranking() *live.Ranking { return c.ranking }
+
+// Voice gives the name of the chosen voice; empty when the study has none.
+func (c *Core) Voice() string { return c.voice }
+
+// VoiceTitle gives a voice's title, or its name.
+func (c *Core) VoiceTitle(voice string) string {
+	if t := c.view.Snap.Text("voice." + voice + ".title"); t != "" {
+		return t
+	}
+	return voice
+}
+
+// SetVoice chooses a voice. Weights tried out and not saved are dropped.
+func (c *Core) SetVoice(voice string) {
+	if voice == c.voice || !slices.Contains(c.view.Snap.Voices(), voice) {
+		return
+	}
+	c.voice, c.trying = voice, nil
+	c.rank()
+	c.Emit(ShadeChanged)
+}
+
+// Order gives the saved order of the chosen voice with everything that belongs to it: tiers, first in N
+// of 100, tipping weights. It is nil while it is computed anew, and while other weights are tried out.
+func (c *Core) Order() *run.VoiceOrder {
+	if c.view == nil || c.view.Results == nil || !c.view.Current || c.trying != nil {
+		return nil
+	}
+	for i := range c.view.Results.Voices {
+		if v := &c.view.Results.Voices[i]; v.Voice == c.voice {
+			return v
+		}
+	}
+	return nil
+}
+
+// Trying reports whether weights are tried out that are not saved.
+func (c *Core) Trying() bool { return c.trying != nil }
+
+// Raw gives the weights shown, by key of the board: those tried out, else those of the study.
+func (c *Core) Raw() []float64 {
+	if c.view == nil || c.view.Board == nil {
+		return nil
+	}
+	if c.trying != nil {
+		return slices.Clone(c.trying)
+	}
+	return c.view.Board.Raw(c.view.Snap, c.voice)
+}
+
+// Try shows the order under other weights without saving them. The newest call wins.
+func (c *Core) Try(raw []float64) {
+	if c.view == nil || c.view.Board == nil || len(raw) != len(c.view.Board.Keys) {
+		return
+	}
+	c.trying = slices.Clone(raw)
+	c.rank()
+}
+
+// SaveWeights puts the weights tried out into the study as one edit.
+func (c *Core) SaveWeights() {
+	if c.trying == nil {
+		return
+	}
+	saved := c.view.Board.Raw(c.view.Snap, c.voice)
+	var edits []study.SettingEdit
+	for i, k := range c.view.Board.Keys {
+		if i < len(saved) && saved[i] != c.trying[i] {
+			edits = append(edits, study.SettingEdit{Key: "voice." + c.voice + ".weight." + k.Info.Key, Value: fmt.Sprintf("%g", c.trying[i]), Reason: "set in the window"})
+		}
+	}
+	if len(edits) == 0 {
+		c.trying = nil
+		c.rank()
+		return
+	}
+	tried := c.trying
+	c.Session.Set("weights of "+c.VoiceTitle(c.voice), func(err error) {
+		c.Do(func() {
+			if slices.Equal(c.trying, tried) { // the user may drag on meanwhile
+				c.trying = nil
+			}
+			c.Update()
+			c.Fail("save the weights", err)
+		})
+	}, edits...)
+}
+
+// Shade gives the consequence that shades the map; empty for the score.
+func (c *Core) Shade() string { return c.shade }
+
+// SetShade chooses what shades the map: a consequence, or nothing for the score.
+func (c *Core) SetShade(key string) {
+	if key != c.shade {
+		c.shade = key
+		c.Emit(ShadeChanged)
+	}
+}
+
+// Chosen gives the chosen candidates in the order of choosing, A first. It is empty without results.
+func (c *Core) Chosen() []*run.Candidate {
+	if c.view == nil || c.view.Index == nil {
+		return nil
+	}
+	var out []*run.Candidate
+	for _, id := range c.chosen {
+		if i, ok := c.view.Index.ByID[id]; ok {
+			out = append(out, &c.view.Results.Candidates[i])
+		}
+	}
+	return out
+}
+
+// ChosenIDs names the chosen candidates.
+func (c *Core) ChosenIDs() []string { return slices.Clone(c.chosen) }
+
+// Choose makes candidates the chosen ones, at most MostChosen.
+func (c *Core) Choose(ids ...string) {
+	ids = ids[:min(len(ids), MostChosen)]
+	if !slices.Equal(ids, c.chosen) {
+		c.chosen = slices.Clone(ids)
+		c.Emit(SelectionChanged)
+	}
+}
+
+// Toggle adds a candidate to the chosen ones or takes it out. When there is no room the oldest but the
+// first gives way.
+func (c *Core) Toggle(id string) {
+	if i := slices.Index(c.chosen, id); i >= 0 {
+		c.Choose(slices.Delete(slices.Clone(c.chosen), i, i+1)...)
+		return
+	}
+	ids := slices.Clone(c.chosen)
+	if len(ids) == MostChosen {
+		ids = slices.Delete(ids, 1, 2)
+	}
+	c.Choose(append(ids, id)...)
+}
+
+// Letter gives the letter under which a chosen candidate stands on map, strip and charts.
+func Letter(i int) string { return string(rune('A' + i)) }
+
+// BestAt gives the candidate of a site that stands highest in the order shown, else the first fitted one,
+// else the first; nil for a site that is not there.
+func (c *Core) BestAt(site int) *run.Candidate {
+	v := c.view
+	if v == nil || v.Index == nil || site < 0 || site >= len(v.Index.Candidates) {
+		return nil
+	}
+	if r := c.ranking; r != nil && r.Err == nil && r.Index == v.Index && r.Best[site] >= 0 {
+		return &v.Results.Candidates[r.Board.At[r.Best[site]]]
+	}
+	var first *run.Candidate
+	for _, i := range v.Index.Candidates[site] {
+		cand := &v.Results.Candidates[i]
+		if cand.Status == run.Fitted {
+			return cand
+		}
+		if first == nil {
+			first = cand
+		}
+	}
+	return first
+}
+
+// ChooseParcel chooses the best candidate of the site that a parcel belongs to, or adds it.
+func (c *Core) ChooseParcel(parcel string, add bool) {
+	if c.view == nil || c.view.Index == nil {
+		return
+	}
+	site, ok := c.view.Index.SiteOfParcel(parcel)
+	if !ok {
+		return
+	}
+	cand := c.BestAt(site)
+	switch {
+	case cand == nil:
+	case add:
+		c.Toggle(cand.ID())
+	default:
+		c.Choose(cand.ID())
+	}
+}
+
+// Info gives title, sentence, unit and account of a consequence.
+func (c *Core) Info(key string) run.KeyInfo {
+	k, ok := c.info[key]
+	if !ok {
+		k.Key, k.Title = key, strings.ReplaceAll(key, "_", " ")
+	}
+	return k
+}
+
+// PlantTitle gives a plant option's title, or its name.
+func (c *Core) PlantTitle(id string) string {
+	if t := c.view.Snap.Text("plant." + id + ".title"); t != "" {
+		return t
+	}
+	return id
+}
+
+// CandidateTitle names a candidate in words.
+func (c *Core) CandidateTitle(cand *run.Candidate) string {
+	return cand.Site + ", " + c.PlantTitle(cand.Plant)
+}
+
+// IDTitle names a candidate, or doing nothing, by its id in words.
+func (c *Core) IDTitle(id string) string {
+	if id == run.NoSite {
+		return "Doing nothing"
+	}
+	if c.view != nil && c.view.Index != nil {
+		if i, ok := c.view.Index.ByID[id]; ok {
+			return c.CandidateTitle(&c.view.Results.Candidates[i])
+		}
+	}
+	return id
+}
+
+// Palette gives the colours of pictures.
+func (c *Core) Palette() draw.Palette { return c.Theme.Palette(c.App.Settings().ThemeVariant()) }
+
+// Edit changes the study; what fails is shown. Then, which may be nil, is called on the window's
+// goroutine after it was saved.
+func (c *Core) Edit(what string, do func(ctx context.Context, s *study.Study) error, then func()) {
+	c.Session.Edit(do, func(err error) {
+		c.Do(func() {
+			c.Update()
+			if c.Fail(what, err); err == nil && then != nil {
+				then()
+			}
+		})
+	})
+}
+
+// Set changes settings as one edit, after the checks that a form needs; what fails is shown.
+func (c *Core) Set(what, reason string, edits ...study.SettingEdit) {
+	for _, e := range edits {
+		if e.Value == "" {
+			continue
+		}
+		if err := run.CheckSetting(c.Parts.Catalog, c.Parts.Params, e.Key, e.Value); err != nil {
+			c.Fail(what, err)
+			return
+		}
+	}
+	c.Edit(what, func(ctx context.Context, s *study.Study) error {
+		_, err := s.Set(ctx, "set", reason, edits...)
+		return err
+	}, nil)
+}
+
+// Undo takes back the last edit.
+func (c *Core) Undo() {
+	verb := c.view.CanUndo
+	c.trying = nil
+	c.Edit("take back", func(ctx context.Context, s *study.Study) error {
+		_, err := s.Undo(ctx)
+		return ignoreNothing(err)
+	}, func() {
+		if verb != "" {
+			c.Tell("Taken back: " + verb)
+		}
+	})
+}
+
+// Redo brings back what was taken back last.
+func (c *Core) Redo() {
+	verb := c.view.CanRedo
+	c.trying = nil
+	c.Edit("bring back", func(ctx context.Context, s *study.Study) error {
+		_, err := s.Redo(ctx)
+		return ignoreNothing(err)
+	}, func() {
+		if verb != "" {
+			c.Tell("Brought back: " + verb)
+		}
+	})
+}
+
+func ignoreNothing(err error) error {
+	if errors.Is(err, study.ErrNothingToDo) {
+		return nil
+	}
+	return err
+}
+
+// Clock writes a moment of the journal for people: the time of today, else the date with it.
+func Clock(t, now time.Time) string {
+	t, now = t.Local(), now.Local()
+	if t.Year() == now.Year() && t.YearDay() == now.YearDay() {
+		return t.Format("15:04")
+	}
+	return t.Format("2006-01-02 15:04")
+}

@@ -1,0 +1,2 @@
+// Package core is what the panes of the window share: the session, what is chosen, who is told of changes.
+package core

@@ -1,0 +1,2 @@
+// Package desktest sets up a window on a computed study for tests, without a screen.
+package desktest

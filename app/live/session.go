@@ -1,0 +1,380 @@
+package live
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"runtime/debug"
+	"sync"
+	"time"
+
+	"groundtally/app/run"
+	"groundtally/app/study"
+	"groundtally/geo"
+)
+
+// View is what is known of a study at one moment. It is never changed after it was published.
+type View struct {
+	Path     string
+	Snap     *study.Snapshot
+	Journal  []study.Entry
+	Frozen   []study.Frozen
+	CanUndo  string // verb of the edit that undo takes back; empty when there is none
+	CanRedo  string
+	SavedAt  time.Time // of the last journal entry; zero for a new study
+	Notices  []geo.Notice
+	Results  *run.Results // nil until something was computed
+	Of       *study.Snapshot
+	Board    *run.Board // of Results, nil as long as they are
+	Index    *Index     // of Results, nil as long as they are
+	Current  bool       // Results are those of Snap
+	Stopped  bool       // the user stopped the computing of Snap
+	Problem  error      // why Snap cannot be computed; nil while it may be
+	Contents string     // tells the contents of the layers, so that a picture is drawn anew only when they change
+}
+
+// Work is something long that is under way.
+type Work struct {
+	What        string // "sites", "order", …
+	Done, Total int    // Total is 0 when it is not known
+	Left        time.Duration
+	LeftKnown   bool
+}
+
+// Config is what a session stands on. Notify is called, from any goroutine, after a new View or Work can
+// be had; calls are not parted by views, so it must look for itself.
+type Config struct {
+	Catalog *study.Catalog
+	Params  *run.Params
+	Who     string
+	Clock   func() time.Time
+	Cores   int // 0 takes all
+	Notify  func()
+}
+
+// Session is an open study that is kept computed.
+type Session struct {
+	cfg   Config
+	study *study.Study
+	ctx   context.Context
+	stop  context.CancelFunc
+	group sync.WaitGroup
+	edits chan edit
+	wake  chan struct{}
+
+	mu        sync.Mutex
+	view      *View
+	work      *Work
+	began     time.Time
+	cancelRun context.CancelFunc // of the computing under way
+	stopped   *study.Snapshot    // state that the user does not want computed
+}
+
+type edit struct {
+	do   func(ctx context.Context, s *study.Study) error
+	done func(error)
+}
+
+// Start opens a session on a store, which it closes at its end.
+func Start(ctx context.Context, store study.Store, cfg Config) (*Session, error) {
+	s, err := study.Open(ctx, store, cfg.Catalog, study.Options{Who: cfg.Who, Clock: cfg.Clock})
+	if err != nil {
+		return nil, err
+	}
+	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1)}
+	session.ctx, session.stop = context.WithCancel(context.WithoutCancel(ctx))
+	if err := session.refresh(); err != nil {
+		return nil, err
+	}
+	session.group.Add(2)
+	go session.editing()
+	go session.computing()
+	session.poke()
+	return session, nil
+}
+
+// View gives what is known now.
+func (s *Session) View() *View {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	return s.view
+}
+
+// Work gives what is under way; ok is false when nothing is.
+func (s *Session) Work() (w Work, ok bool) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if s.work == nil {
+		return Work{}, false
+	}
+	return *s.work, true
+}
+
+// Study gives the open study, for reading. Edits go through Edit.
+func (s *Session) Study() *study.Study { return s.study }
+
+// Edit runs a change of the study after those asked for before. done, which may be nil, is called on
+// another goroutine when the change is saved, or with what kept it from being saved.
+func (s *Session) Edit(do func(ctx context.Context, s *study.Study) error, done func(error)) {
+	if done == nil {
+		done = func(error) {}
+	}
+	select {
+	case s.edits <- edit{do, done}:
+	case <-s.ctx.Done():
+		go done(context.Canceled)
+	}
+}
+
+// Set changes settings as one journal entry; see study.Set.
+func (s *Session) Set(reason string, done func(error), edits ...study.SettingEdit) {
+	s.Edit(func(ctx context.Context, st *study.Study) error {
+		_, err := st.Set(ctx, "set", reason, edits...)
+		return err
+	}, done)
+}
+
+// StopComputing stops the computing of the present state, until it changes or Compute is called. What was
+// found so far is kept.
+func (s *Session) StopComputing() {
+	s.mu.Lock()
+	s.stopped = s.view.Snap
+	v := *s.view
+	v.Stopped = true
+	s.view = &v
+	cancel := s.cancelRun
+	s.mu.Unlock()
+	if cancel != nil {
+		cancel()
+	}
+	s.cfg.Notify()
+}
+
+// Compute takes the computing up again after a stop or a problem.
+func (s *Session) Compute() {
+	s.mu.Lock()
+	s.stopped = nil
+	v := *s.view
+	v.Stopped, v.Problem = false, nil
+	s.view = &v
+	s.mu.Unlock()
+	s.poke()
+	s.cfg.Notify()
+}
+
+// Close stops everything, waits for it, and closes the study's file. Edits asked for before are saved.
+func (s *Session) Close() error {
+	finished := make(chan struct{})
+	s.Edit(func(context.Context, *study.Study) error { return nil }, func(error) { close(finished) })
+	s.mu.Lock()
+	cancel := s.cancelRun
+	s.stopped = s.view.Snap
+	s.mu.Unlock()
+	if cancel != nil {
+		cancel()
+	}
+	<-finished
+	s.stop()
+	s.group.Wait()
+	return s.study.Close()
+}
+
+func (s *Session) poke() {
+	select {
+	case s.wake <- struct{}{}:
+	default:
+	}
+}
+
+// guarded runs something and turns a panic into an error that carries its stack.
+func guarded(do func() error) (err error) {
+	defer func() {
+		if p := recover(); p != nil {
+			err = &FaultError{What: fmt.Sprint(p), Details: string(debug.Stack())}
+		}
+	}()
+	return do()
+}
+
+// FaultError says that the program itself is at fault.
+type FaultError struct{ What, Details string }
+
+func (e *FaultError) Error() string {
+	return "a fault of the program: " + e.What + ". The study is unharmed; what was changed before is saved."
+}
+
+func (s *Session) editing() {
+	defer s.group.Done()
+	for {
+		select {
+		case <-s.ctx.Done():
+			return
+		case e := <-s.edits:
+			err := guarded(func() error { return e.do(s.ctx, s.study) })
+			// What an edit did before it failed is in the study, so the view follows in either case.
+			if rerr := s.refresh(); err == nil {
+				err = rerr
+			}
+			s.poke()
+			s.cfg.Notify()
+			e.done(err)
+		}
+	}
+}
+
+// refresh publishes the present state of the study, and stops the computing of one that is out of date.
+func (s *Session) refresh() error {
+	snap, err := s.study.Snapshot()
+	if err != nil {
+		return err
+	}
+	v := View{Path: s.study.Store().Path(), Snap: snap, Journal: s.study.Journal(), Frozen: s.study.FrozenStates(), Contents: contents(snap)}
+	v.CanUndo, v.CanRedo = s.study.Undoable()
+	if n := len(v.Journal); n > 0 {
+		v.SavedAt = v.Journal[n-1].At
+	}
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if old := s.view; old != nil {
+		same := study.SameInputs(old.Snap, snap)
+		if same {
+			v.Snap = old.Snap // so that what was computed of it stays current
+			v.Stopped, v.Problem, v.Notices = old.Stopped, old.Problem, old.Notices
+		} else {
+			v.Notices = old.Notices
+			if s.cancelRun != nil {
+				s.cancelRun()
+			}
+		}
+		v.Results, v.Of, v.Board, v.Index = old.Results, old.Of, old.Board, old.Index
+		v.Current = v.Of == v.Snap && v.Of != nil
+	}
+	s.view = &v
+	return nil
+}
+
+// contents names what is drawn of a state.
+func contents(snap *study.Snapshot) string {
+	out := ""
+	for _, l := range snap.Layers {
+		out += l.Role + " " + l.Digest + "\n"
+	}
+	return out
+}
+
+func (s *Session) computing() {
+	defer s.group.Done()
+	for {
+		select {
+		case <-s.ctx.Done():
+			return
+		case <-s.wake:
+		}
+		s.mu.Lock()
+		v := s.view
+		if v.Current || v.Problem != nil || s.stopped == v.Snap {
+			s.mu.Unlock()
+			continue
+		}
+		ctx, cancel := context.WithCancel(s.ctx)
+		s.cancelRun, s.work, s.began = cancel, &Work{What: "order"}, time.Time{}
+		s.mu.Unlock()
+		s.cfg.Notify()
+		var found found
+		err := guarded(func() error { return s.compute(ctx, v, &found) })
+		cancel()
+		s.mu.Lock()
+		s.cancelRun, s.work = nil, nil
+		now := *s.view
+		if found.notices != nil {
+			now.Notices = found.notices
+		}
+		switch {
+		case err == nil:
+			now.Results, now.Of, now.Board, now.Index = found.results, v.Snap, found.board, found.index
+			now.Current = now.Snap == v.Snap
+		case errors.Is(err, context.Canceled):
+		case now.Snap == v.Snap:
+			now.Problem = err
+		}
+		s.view = &now
+		s.mu.Unlock()
+		s.poke() // the state may have changed meanwhile
+		s.cfg.Notify()
+	}
+}
+
+type found struct {
+	notices []geo.Notice
+	results *run.Results
+	board   *run.Board
+	index   *Index
+}
+
+func (s *Session) compute(ctx context.Context, v *View, out *found) error {
+	e := &run.Engine{Params: s.cfg.Params, Cache: &keeping{store: s.study.Store()}, Cores: s.cfg.Cores, Progress: s.progress, Load: run.StoreLoader(s.study.Store())}
+	var err error
+	if v.Of != nil && v.Results != nil && run.OnlyWeighing(v.Of, v.Snap) {
+		out.results, err = e.Reweigh(ctx, v.Snap, v.Results)
+	} else {
+		if out.notices, err = run.Check(ctx, s.study.Store(), v.Snap, s.cfg.Params); err != nil {
+			return err
+		}
+		s.mu.Lock()
+		now := *s.view
+		now.Notices = out.notices
+		s.view = &now
+		s.mu.Unlock()
+		s.cfg.Notify()
+		out.results, err = e.Compute(ctx, v.Snap)
+	}
+	if err != nil {
+		return err
+	}
+	if out.board, err = run.NewBoard(v.Snap, s.cfg.Params, out.results); err != nil {
+		return err
+	}
+	out.index = newIndex(out.results)
+	return nil
+}
+
+// progress is told by the engine how far it is.
+func (s *Session) progress(step string, done, total int) {
+	s.mu.Lock()
+	w := Work{What: step, Done: done, Total: total}
+	now := s.cfg.now()
+	if s.began.IsZero() || done <= 1 {
+		s.began = now
+	}
+	if spent := now.Sub(s.began); done > 0 && spent > 500*time.Millisecond {
+		w.Left, w.LeftKnown = time.Duration(float64(spent)/float64(done)*float64(total-done)), true
+	}
+	s.work = &w
+	s.mu.Unlock()
+	s.cfg.Notify()
+}
+
+func (c Config) now() time.Time {
+	if c.Clock != nil {
+		return c.Clock()
+	}
+	return time.Now()
+}
+
+// keeping keeps step results in the study. They can always be made again, so a study that cannot be
+// written still gives its answers.
+type keeping struct{ store study.Store }
+
+func (k *keeping) Results(ctx context.Context, step string, digests []string) (map[string][]byte, error) {
+	return k.store.Results(ctx, step, digests)
+}
+
+func (k *keeping) PutResults(ctx context.Context, add []study.Result, keep map[string]map[string]bool) error {
+	err := k.store.PutResults(ctx, add, keep)
+	for _, only := range []error{study.ErrReadOnly, study.ErrDiskFull, study.ErrBusy} {
+		if errors.Is(err, only) {
+			return nil
+		}
+	}
+	return err
+}

@@ -1,0 +1,2 @@
+// Package program wires up what the window and the terminal program stand on.
+package program
