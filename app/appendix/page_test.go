@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"context"
 	"encoding/json"
+	"html/template"
 	"io/fs"
 	"os"
 	"path/filepath"
@@ -252,6 +253,32 @@ func TestPageTellsItsParts(t *testing.T) {
 	for _, s := range []string{strconv.Itoa(fitted) + " candidates have room", "All " + strconv.Itoa(fitted) + " fitted candidates"} {
 		if !strings.Contains(html, s) {
 			t.Errorf("the page does not say %q", s)
+		}
+	}
+}
+
+// Every unfolded candidate has its land and, where a yield is known, its loss chain as pictures, told apart
+// by the words that stand for them.
+func TestUnfoldedCandidatesHaveTheirPictures(t *testing.T) {
+	in := input(t)
+	html := page(t, in)
+	lands, chains := 0, 0
+	for i := range in.Results.Candidates {
+		c := &in.Results.Candidates[i]
+		title := c.Site + ", " + in.Snapshot.Text("plant."+c.Plant+".title")
+		land := strings.Count(html, `aria-label="Bar chart: area of the site of `+template.HTMLEscapeString(title)+`, taken`)
+		chain := strings.Count(html, `aria-label="Bar chart: yield of `+template.HTMLEscapeString(title)+` step by step`)
+		if land > 1 || chain > 1 || chain == 1 && land == 0 || land == 1 && chain != min(1, len(c.Chain)) {
+			t.Errorf("%s has %d pictures of its land and %d of its %d steps of yield", c.ID(), land, chain, len(c.Chain))
+		}
+		lands, chains = lands+land, chains+chain
+	}
+	if lands < 3 || chains < 3 || lands != strings.Count(html, "Land taken from the site") {
+		t.Errorf("%d pictures of land, %d of yields, for %d tables of land", lands, chains, strings.Count(html, "Land taken from the site"))
+	}
+	for _, want := range []string{"buildable area: ", "before losses", "area, ha", "yield of a year, kWh/kWp"} {
+		if !strings.Contains(html, want) {
+			t.Errorf("the pictures say nowhere %q", want)
 		}
 	}
 }

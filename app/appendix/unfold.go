@@ -2,6 +2,7 @@ package appendix
 
 import (
 	"fmt"
+	"html/template"
 	"strconv"
 	"strings"
 
@@ -21,6 +22,7 @@ type unfolded struct {
 	NotAssessed         string
 	Notes               []string
 	Trace               *traceView
+	Losses, Land        template.HTML // pictures
 }
 
 type takenView struct{ Rule, Alone, Shared, Word string }
@@ -72,6 +74,7 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 			continue
 		}
 		u := b.unfold(c)
+		u.Losses, u.Land = losses(c, u.Title), land(c, u.Title, "-land-"+strconv.Itoa(i))
 		voices := firstFor[c.ID()]
 		if len(voices) == 0 {
 			others = append(others, u)

@@ -1,2 +1,2 @@
-// Package draw describes maps, charts as scenes of simple shapes that any back end can paint.
+// Package draw describes maps as scenes of simple shapes that any back end can paint.
 package draw

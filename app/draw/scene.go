@@ -63,7 +63,12 @@ func (s *Scene) Text(t Text) {
 
 // Rect adds a box.
 func (s *Scene) Rect(x, y, w, h float64, st Style, title string) {
-	s.Path(Path{Rings: [][]Point{{{x, y}, {x + w, y}, {x + w, y + h}, {x, y + h}}}, Closed: true, Style: st, Title: title})
+	s.Bar(x, y, w, h, st, "", title)
+}
+
+// Bar adds a box that stands for an item, with the words shown when the pointer rests on it.
+func (s *Scene) Bar(x, y, w, h float64, st Style, item, title string) {
+	s.Path(Path{Rings: [][]Point{{{x, y}, {x + w, y}, {x + w, y + h}, {x, y + h}}}, Closed: true, Style: st, Item: item, Title: title})
 }
 
 // Line adds a line.

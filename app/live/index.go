@@ -4,16 +4,17 @@ import "groundtally/app/run"
 
 // Index finds candidates by site, parcel and name.
 type Index struct {
-	Sites      []string       // in the order of the results
-	Candidates [][]int        // by site: candidates in the results
-	ByID       map[string]int // candidate by run.Candidate.ID
-	SiteOf     []int          // by candidate: its site
+	Sites      []string              // in the order of the results
+	Candidates [][]int               // by site: candidates in the results
+	ByID       map[string]int        // candidate by run.Candidate.ID
+	SiteOf     []int                 // by candidate: its site
+	Spans      map[string][2]float64 // by consequence: see run.Results.Spans
 	parcel     map[string]int
 	site       map[string]int
 }
 
 func newIndex(r *run.Results) *Index {
-	x := &Index{ByID: make(map[string]int, len(r.Candidates)), SiteOf: make([]int, len(r.Candidates)), parcel: map[string]int{}, site: map[string]int{}}
+	x := &Index{ByID: make(map[string]int, len(r.Candidates)), SiteOf: make([]int, len(r.Candidates)), Spans: r.Spans(), parcel: map[string]int{}, site: map[string]int{}}
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
 		at, ok := x.site[c.Site]

@@ -68,6 +68,8 @@ type Session struct {
 	began     time.Time
 	cancelRun context.CancelFunc // of the computing under way
 	stopped   *study.Snapshot    // state that the user does not want computed
+	surveyor  *run.Surveyor      // of the state surveyed
+	surveyed  *study.Snapshot
 }
 
 type edit struct {
@@ -376,5 +378,39 @@ func (k *keeping) PutResults(ctx context.Context, add []study.Result, keep map[s
 			return nil
 		}
 	}
+	return err
+}
+
+// Around finds what a map shows around a candidate of the present results, on another goroutine. done is
+// called there; an answer that comes late may be of results that are no longer the present ones.
+func (s *Session) Around(c *run.Candidate, done func(*run.Surroundings, error)) {
+	s.mu.Lock()
+	v := s.view
+	if v.Of == nil {
+		s.mu.Unlock()
+		return
+	}
+	if s.surveyor == nil || s.surveyed != v.Of {
+		s.surveyor = run.NewSurveyor(v.Of, s.cfg.Params, run.StoreLoader(s.study.Store()), &keeping{store: s.study.Store()})
+		s.surveyed = v.Of
+	}
+	surveyor := s.surveyor
+	s.mu.Unlock()
+	s.group.Add(1)
+	go func() {
+		defer s.group.Done()
+		var around *run.Surroundings
+		err := guarded(func() (err error) {
+			around, err = surveyor.Around(s.ctx, c)
+			return err
+		})
+		done(around, err)
+	}()
+}
+
+// Refresh publishes what an edit that is still at work has saved so far.
+func (s *Session) Refresh() error {
+	err := s.refresh()
+	s.cfg.Notify()
 	return err
 }

@@ -9,13 +9,18 @@ import (
 )
 
 // Figure writes a number with as many digits as its range bears: the last digit shown is worth about
-// a tenth of the distance from low to high. Without a range three significant digits are shown.
+// a tenth of the distance from low to high. Without a range three significant digits are shown, and a whole
+// number below a thousand as it is.
 func Figure(central, low, high float64) string {
 	if central == 0 {
 		return "0"
 	}
 	digits := 2 - int(math.Floor(math.Log10(math.Abs(central))))
-	if w := high - low; w > 0 {
+	w := high - low
+	if w == 0 && central == math.Trunc(central) && math.Abs(central) < 1000 {
+		return group(central, 0) // a count
+	}
+	if w > 0 {
 		digits = 1 - int(math.Floor(math.Log10(w)))
 		if top := 3 - int(math.Floor(math.Log10(math.Abs(central)))); digits > top {
 			digits = top
@@ -107,4 +112,55 @@ func RangeWords(r scoring.Range) string {
 		return "position tolerance of the layers"
 	}
 	return "no uncertainty stated"
+}
+
+// Exact writes a number for redoing a sum by hand: six significant digits, thousands apart.
+func Exact(x float64) string {
+	a := math.Abs(x)
+	if x == 0 {
+		return "0"
+	}
+	if a < 1e-4 || a >= 1e15 {
+		return strconv.FormatFloat(x, 'g', 6, 64)
+	}
+	decimals := 5 - int(math.Floor(math.Log10(a)))
+	if decimals < 0 {
+		p := math.Pow(10, float64(-decimals))
+		x, decimals = math.Round(x/p)*p, 0
+	}
+	s := strconv.FormatFloat(x, 'f', decimals, 64)
+	if strings.Contains(s, ".") {
+		s = strings.TrimRight(strings.TrimRight(s, "0"), ".")
+	}
+	sign := ""
+	if s[0] == '-' {
+		sign, s = "-", s[1:]
+	}
+	whole, rest, dot := strings.Cut(s, ".")
+	if len(whole) > 4 {
+		var b strings.Builder
+		for i, r := range whole {
+			if i > 0 && (len(whole)-i)%3 == 0 {
+				b.WriteByte(' ')
+			}
+			b.WriteRune(r)
+		}
+		whole = b.String()
+	}
+	if dot {
+		whole += "." + rest
+	}
+	return sign + whole
+}
+
+// Signed writes a number with two decimals and its sign; what rounds to nothing has none.
+func Signed(x float64) string {
+	s := strconv.FormatFloat(x, 'f', 2, 64)
+	switch {
+	case s == "0.00" || s == "-0.00":
+		return "0.00"
+	case x > 0:
+		return "+" + s
+	}
+	return s
 }

@@ -126,3 +126,50 @@ func (c *Columns) leaves(row int) []Leaf {
 	}
 	return out
 }
+
+// span gives the least and the greatest number of a column, low and high ends counted; ok is false when
+// it has none.
+func (c *Columns) span(key int) (least, greatest float64, ok bool) {
+	for i := key * c.rows; i < (key+1)*c.rows; i++ {
+		if !c.filled[i] || scoring.State(c.state[i]) != scoring.Number {
+			continue
+		}
+		lo, hi := c.central[i], c.central[i]
+		if ranges[c.rng[i]] != scoring.NoRange && ranges[c.rng[i]] != "" {
+			lo, hi = min(lo, c.low[i]), max(hi, c.high[i])
+		}
+		if !ok || lo < least {
+			least = lo
+		}
+		if !ok || hi > greatest {
+			greatest = hi
+		}
+		ok = true
+	}
+	return least, greatest, ok
+}
+
+// Spans gives for every consequence the least and the greatest number among all candidates, with the ends
+// of their ranges. A consequence without any number is not in it.
+func (r *Results) Spans() map[string][2]float64 {
+	out := map[string][2]float64{}
+	seen := map[*Columns]bool{}
+	for i := range r.Candidates {
+		c := r.Candidates[i].columns
+		if c == nil || seen[c] {
+			continue
+		}
+		seen[c] = true
+		for k, info := range c.keys {
+			lo, hi, ok := c.span(k)
+			if !ok {
+				continue
+			}
+			if old, there := out[info.Key]; there {
+				lo, hi = min(lo, old[0]), max(hi, old[1])
+			}
+			out[info.Key] = [2]float64{lo, hi}
+		}
+	}
+	return out
+}

@@ -3,8 +3,6 @@ package term
 import (
 	"fmt"
 	"io"
-	"math"
-	"strconv"
 	"strings"
 	"unicode/utf8"
 
@@ -33,44 +31,8 @@ func (c *call) notices(ns []geo.Notice) {
 	}
 }
 
-// figure writes a number for redoing a sum by hand: six significant digits, thousands apart.
-func figure(x float64) string {
-	a := math.Abs(x)
-	if x == 0 {
-		return "0"
-	}
-	if a < 1e-4 || a >= 1e15 {
-		return strconv.FormatFloat(x, 'g', 6, 64)
-	}
-	decimals := 5 - int(math.Floor(math.Log10(a)))
-	if decimals < 0 {
-		p := math.Pow(10, float64(-decimals))
-		x, decimals = math.Round(x/p)*p, 0
-	}
-	s := strconv.FormatFloat(x, 'f', decimals, 64)
-	if strings.Contains(s, ".") {
-		s = strings.TrimRight(strings.TrimRight(s, "0"), ".")
-	}
-	sign := ""
-	if s[0] == '-' {
-		sign, s = "-", s[1:]
-	}
-	whole, rest, dot := strings.Cut(s, ".")
-	if len(whole) > 4 {
-		var b strings.Builder
-		for i, r := range whole {
-			if i > 0 && (len(whole)-i)%3 == 0 {
-				b.WriteByte(' ')
-			}
-			b.WriteRune(r)
-		}
-		whole = b.String()
-	}
-	if dot {
-		whole += "." + rest
-	}
-	return sign + whole
-}
+// figure writes a number for redoing a sum by hand.
+func figure(x float64) string { return present.Exact(x) }
 
 // columns writes rows with their cells under each other; cells of columns in right stand at the right
 // edge.

@@ -160,3 +160,6 @@ func explain(owner fyne.CanvasObject, text string, at fyne.Position) {
 		Explainer(owner, text, at)
 	}
 }
+
+// Explain shows a sentence beside the pointer, as Line does with its hint; an empty text hides it.
+func Explain(owner fyne.CanvasObject, text string, at fyne.Position) { explain(owner, text, at) }

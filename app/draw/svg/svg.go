@@ -12,10 +12,10 @@ import (
 )
 
 // Write gives the scene as an svg element that needs nothing from outside. The same scene gives the same
-// bytes.
+// bytes. It is made for paper: hatching and the edge around names have the colours of the light palette.
 func Write(s *draw.Scene) []byte {
 	var b bytes.Buffer
-	fmt.Fprintf(&b, `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" role="img" aria-label="%s" font-family="system-ui, sans-serif">`, num(s.Width), num(s.Height), html.EscapeString(clean(s.Title)))
+	fmt.Fprintf(&b, `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 %s %s" role="img" aria-label="%s" font-family="Lato, sans-serif" font-kerning="none">`, num(s.Width), num(s.Height), html.EscapeString(clean(s.Title)))
 	hatch := "unknown" + html.EscapeString(s.ID)
 	for _, it := range s.Items {
 		if p, ok := it.(draw.Path); ok && p.Style.Hatch {
@@ -36,7 +36,7 @@ func Write(s *draw.Scene) []byte {
 }
 
 func hatching(b *bytes.Buffer, id string) {
-	fmt.Fprintf(b, `<defs><pattern id="%s" width="6" height="6" patternUnits="userSpaceOnUse" patternTransform="rotate(45)"><rect width="6" height="6" fill="%s"/><line x1="0" y1="0" x2="0" y2="6" stroke="%s" stroke-width="1.4"/></pattern></defs>`, id, draw.Paper, draw.Faint)
+	fmt.Fprintf(b, `<defs><pattern id="%s" width="6" height="6" patternUnits="userSpaceOnUse" patternTransform="rotate(45)"><rect width="6" height="6" fill="%s"/><line x1="3" y1="0" x2="3" y2="6" stroke="%s" stroke-width="1.1"/></pattern></defs>`, id, draw.Paper, draw.Light().Hatch)
 }
 
 func path(b *bytes.Buffer, p draw.Path, hatch string) {
@@ -72,6 +72,9 @@ func path(b *bytes.Buffer, p draw.Path, hatch string) {
 		}
 	}
 	if p.Title != "" {
+		if fill == "none" && p.Closed { // an open shape answers to the pointer all over its inside
+			b.WriteString(` pointer-events="all"`)
+		}
 		fmt.Fprintf(b, `><title>%s</title></path>`, html.EscapeString(clean(p.Title)))
 		return
 	}
@@ -81,13 +84,19 @@ func path(b *bytes.Buffer, p draw.Path, hatch string) {
 func text(b *bytes.Buffer, t draw.Text) {
 	weight := ""
 	if t.Bold {
-		weight = ` font-weight="600"`
+		weight = ` font-weight="700"`
 	}
 	halo := ""
 	if t.Halo {
 		halo = fmt.Sprintf(` paint-order="stroke" stroke="%s" stroke-width="3" stroke-linejoin="round"`, draw.Paper)
 	}
-	fmt.Fprintf(b, `<text x="%s" y="%s" font-size="%s" fill="%s" text-anchor="%s"%s%s>%s</text>`, num(t.At.X), num(t.At.Y), num(t.Size), t.Colour, t.Anchor, weight, halo, html.EscapeString(clean(t.Text)))
+	words := strings.Join(strings.Fields(clean(t.Text)), " ") // as a reader of SVG does with blanks
+	length := ""
+	if words != "" && draw.HasLetters(words) {
+		// Where the shipped face is not installed another steps in; it is set as wide as the scene reckons with.
+		length = fmt.Sprintf(` textLength="%s" lengthAdjust="spacingAndGlyphs"`, num(draw.TextWidth(words, t.Size, t.Bold)))
+	}
+	fmt.Fprintf(b, `<text x="%s" y="%s" font-size="%s" fill="%s" text-anchor="%s"%s%s%s>%s</text>`, num(t.At.X), num(t.At.Y), num(t.Size), t.Colour, t.Anchor, weight, halo, length, html.EscapeString(words))
 }
 
 // clean takes out what XML does not allow in a text.

@@ -1,0 +1,2 @@
+// Package chart draws comparisons of candidates as scenes.
+package chart

@@ -1,0 +1,2 @@
+// Package raster paints scenes as pixels.
+package raster

@@ -1,0 +1,136 @@
+package run
+
+import (
+	"context"
+	"fmt"
+	"sync"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/geo/overlay"
+)
+
+// KeptFrom is one distance that a candidate keeps, with what near the site it is kept from.
+type KeptFrom struct {
+	Rule      string // as in Taken
+	DistanceM float64
+	Features  geo.LonLatGeometry
+}
+
+// Surroundings are what a map shows around a candidate.
+type Surroundings struct {
+	Buildable geo.LonLatGeometry
+	Kept      []KeptFrom
+}
+
+// Surveyor looks at the ground around candidates of one state of a study. It reads the layers once, when
+// first asked, and may be used from several goroutines.
+type Surveyor struct {
+	snap   *study.Snapshot
+	params *Params
+	load   Loader
+	cache  Cache // nil computes everything
+
+	mu    sync.Mutex
+	world *world
+	sites map[string]int
+}
+
+// NewSurveyor makes a surveyor.
+func NewSurveyor(snap *study.Snapshot, p *Params, load Loader, cache Cache) *Surveyor {
+	return &Surveyor{snap: snap, params: p, load: load, cache: cache}
+}
+
+// Around gives the buildable area of a candidate's site for its plant option, and the distances that were
+// kept near by.
+func (s *Surveyor) Around(ctx context.Context, c *Candidate) (*Surroundings, error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if s.world == nil {
+		w, err := newWorld(ctx, s.snap, s.params, s.load)
+		if err != nil {
+			return nil, err
+		}
+		s.world, s.sites = w, map[string]int{}
+		for i, site := range w.sites {
+			s.sites[site.id] = i
+		}
+	}
+	w := s.world
+	at, ok := s.sites[c.Site]
+	if !ok {
+		return nil, fmt.Errorf("site %q: %w", c.Site, study.ErrNotThere)
+	}
+	here := w.sites[at]
+	out := &Surroundings{Buildable: geo.LonLatGeometry{Kind: geo.Polygons}}
+	for _, o := range w.options {
+		if o.id != c.Plant {
+			continue
+		}
+		for _, part := range o.parts() {
+			rs, err := w.rulesFor(o, part)
+			if err != nil {
+				return nil, err
+			}
+			g, err := s.ground(ctx, rs, here)
+			if err != nil {
+				return nil, err
+			}
+			ll, err := w.frame.Unproject(g.Area)
+			if err != nil {
+				return nil, err
+			}
+			out.Buildable.Parts = append(out.Buildable.Parts, ll.Parts...)
+			out.keep(rs, here)
+		}
+	}
+	return out, nil
+}
+
+// ground takes the stored ground of a site, or computes it.
+func (s *Surveyor) ground(ctx context.Context, rs *ruleset, here site) (groundResult, error) {
+	var g groundResult
+	key := rs.key(s.world, here)
+	if s.cache != nil {
+		have, err := s.cache.Results(ctx, groundStep, []string{key})
+		if err != nil {
+			return g, err
+		}
+		if data, ok := have[key]; ok {
+			return g, unpack(data, &g)
+		}
+	}
+	e := overlay.New()
+	defer closeEngine(e)
+	if err := rs.prepare(ctx, e, map[string]*overlay.Layer{}); err != nil {
+		return g, err
+	}
+	return rs.compute(e, s.world, here, map[float64]geo.XYGeometry{})
+}
+
+// keep adds the distances of a ruleset that reach the site, one entry for each kind of geometry.
+func (o *Surroundings) keep(rs *ruleset, here site) {
+	for _, r := range rs.rules {
+		for _, src := range r.sources {
+			if src.distM <= 0 {
+				continue
+			}
+			byKind := map[geo.Kind]*KeptFrom{}
+			for _, i := range src.layer.tree.Search(here.box.Grow(src.distM*bufferReach), nil) {
+				if !src.keep[i] {
+					continue
+				}
+				g := src.layer.src.Features[i].Geometry
+				if byKind[g.Kind] == nil {
+					byKind[g.Kind] = &KeptFrom{Rule: r.name, DistanceM: src.distM, Features: geo.LonLatGeometry{Kind: g.Kind}}
+				}
+				byKind[g.Kind].Features.Parts = append(byKind[g.Kind].Features.Parts, g.Parts...)
+			}
+			for _, kind := range []geo.Kind{geo.Points, geo.Lines, geo.Polygons} {
+				if k := byKind[kind]; k != nil {
+					o.Kept = append(o.Kept, *k)
+				}
+			}
+		}
+	}
+}
