@@ -11,6 +11,7 @@ import (
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
+	"groundtally/scoring"
 )
 
 // View is what is known of a study at one moment. It is never changed after it was published.
@@ -62,6 +63,10 @@ type Session struct {
 	edits chan edit
 	wake  chan struct{}
 
+	asking sync.RWMutex
+	closed bool
+	edited chan struct{} // closed when the last edit is saved
+
 	mu        sync.Mutex
 	view      *View
 	work      *Work
@@ -83,7 +88,7 @@ func Start(ctx context.Context, store study.Store, cfg Config) (*Session, error)
 	if err != nil {
 		return nil, err
 	}
-	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1)}
+	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{})}
 	session.ctx, session.stop = context.WithCancel(context.WithoutCancel(ctx))
 	if err := session.refresh(); err != nil {
 		return nil, err
@@ -121,11 +126,13 @@ func (s *Session) Edit(do func(ctx context.Context, s *study.Study) error, done 
 	if done == nil {
 		done = func(error) {}
 	}
-	select {
-	case s.edits <- edit{do, done}:
-	case <-s.ctx.Done():
+	s.asking.RLock() // so that none is asked for after the last one that Close waits for
+	defer s.asking.RUnlock()
+	if s.closed {
 		go done(context.Canceled)
+		return
 	}
+	s.edits <- edit{do, done}
 }
 
 // Set changes settings as one journal entry; see study.Set.
@@ -164,10 +171,17 @@ func (s *Session) Compute() {
 	s.cfg.Notify()
 }
 
-// Close stops everything, waits for it, and closes the study's file. Edits asked for before are saved.
+// Close stops everything, waits for it, and closes the study's file. Edits asked for before are saved; later
+// ones are not done. Closing again does nothing.
 func (s *Session) Close() error {
-	finished := make(chan struct{})
-	s.Edit(func(context.Context, *study.Study) error { return nil }, func(error) { close(finished) })
+	s.asking.Lock()
+	if s.closed {
+		s.asking.Unlock()
+		return nil
+	}
+	s.closed = true
+	close(s.edits)
+	s.asking.Unlock()
 	s.mu.Lock()
 	cancel := s.cancelRun
 	s.stopped = s.view.Snap
@@ -175,7 +189,7 @@ func (s *Session) Close() error {
 	if cancel != nil {
 		cancel()
 	}
-	<-finished
+	<-s.edited
 	s.stop()
 	s.group.Wait()
 	return s.study.Close()
@@ -207,20 +221,16 @@ func (e *FaultError) Error() string {
 
 func (s *Session) editing() {
 	defer s.group.Done()
-	for {
-		select {
-		case <-s.ctx.Done():
-			return
-		case e := <-s.edits:
-			err := guarded(func() error { return e.do(s.ctx, s.study) })
-			// What an edit did before it failed is in the study, so the view follows in either case.
-			if rerr := s.refresh(); err == nil {
-				err = rerr
-			}
-			s.poke()
-			s.cfg.Notify()
-			e.done(err)
+	defer close(s.edited)
+	for e := range s.edits {
+		err := guarded(func() error { return e.do(s.ctx, s.study) })
+		// What an edit did before it failed is in the study, so the view follows in either case.
+		if rerr := s.refresh(); err == nil {
+			err = rerr
 		}
+		s.poke()
+		s.cfg.Notify()
+		e.done(err)
 	}
 }
 
@@ -303,6 +313,7 @@ func (s *Session) computing() {
 		s.mu.Unlock()
 		s.poke() // the state may have changed meanwhile
 		s.cfg.Notify()
+		debug.FreeOSMemory() // computing leaves several times the memory that its results need
 	}
 }
 
@@ -384,27 +395,37 @@ func (k *keeping) PutResults(ctx context.Context, add []study.Result, keep map[s
 // Around finds what a map shows around a candidate of the present results, on another goroutine. done is
 // called there; an answer that comes late may be of results that are no longer the present ones.
 func (s *Session) Around(c *run.Candidate, done func(*run.Surroundings, error)) {
+	survey(s, func(sv *run.Surveyor) (*run.Surroundings, error) { return sv.Around(s.ctx, c) }, done)
+}
+
+// Months finds the energy of a candidate by month, as Around does; see run.Surveyor.
+func (s *Session) Months(c *run.Candidate, done func([12]scoring.Value, error)) {
+	survey(s, func(sv *run.Surveyor) ([12]scoring.Value, error) { return sv.Months(s.ctx, c) }, done)
+}
+
+// survey asks the surveyor of the present results something on another goroutine. Nothing happens without
+// results.
+func survey[T any](s *Session, ask func(*run.Surveyor) (T, error), done func(T, error)) {
 	s.mu.Lock()
-	v := s.view
-	if v.Of == nil {
-		s.mu.Unlock()
+	defer s.mu.Unlock()
+	of := s.view.Of
+	if of == nil || s.ctx.Err() != nil {
 		return
 	}
-	if s.surveyor == nil || s.surveyed != v.Of {
-		s.surveyor = run.NewSurveyor(v.Of, s.cfg.Params, run.StoreLoader(s.study.Store()), &keeping{store: s.study.Store()})
-		s.surveyed = v.Of
+	if s.surveyor == nil || s.surveyed != of {
+		s.surveyor = run.NewSurveyor(of, s.cfg.Params, run.StoreLoader(s.study.Store()), &keeping{store: s.study.Store()})
+		s.surveyed = of
 	}
 	surveyor := s.surveyor
-	s.mu.Unlock()
 	s.group.Add(1)
 	go func() {
 		defer s.group.Done()
-		var around *run.Surroundings
+		var found T
 		err := guarded(func() (err error) {
-			around, err = surveyor.Around(s.ctx, c)
+			found, err = ask(surveyor)
 			return err
 		})
-		done(around, err)
+		done(found, err)
 	}()
 }
 

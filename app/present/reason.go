@@ -11,6 +11,7 @@ import (
 var reasons = map[string]string{
 	"not_finite":              "the formula gives no finite number for these inputs",
 	"not_assessed":            "this version does not look at it",
+	"wind_by_year_alone":      "the wind is known for the year and not for its months",
 	"no_soil_here":            "the soil layer has no value for this ground",
 	"no_connection":           "no line or substation that the study knows can take the power",
 	"energy_payback":          "the inputs do not allow a payback time to be worked out",

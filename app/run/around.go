@@ -8,6 +8,8 @@ import (
 	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/overlay"
+	"groundtally/scoring"
+	"groundtally/scoring/units"
 )
 
 // KeptFrom is one distance that a candidate keeps, with what near the site it is kept from.
@@ -31,9 +33,10 @@ type Surveyor struct {
 	load   Loader
 	cache  Cache // nil computes everything
 
-	mu    sync.Mutex
-	world *world
-	sites map[string]int
+	mu     sync.Mutex
+	world  *world
+	sites  map[string]int
+	fitter *fitter // made when months are first asked for
 }
 
 // NewSurveyor makes a surveyor.
@@ -46,22 +49,11 @@ func NewSurveyor(snap *study.Snapshot, p *Params, load Loader, cache Cache) *Sur
 func (s *Surveyor) Around(ctx context.Context, c *Candidate) (*Surroundings, error) {
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	if s.world == nil {
-		w, err := newWorld(ctx, s.snap, s.params, s.load)
-		if err != nil {
-			return nil, err
-		}
-		s.world, s.sites = w, map[string]int{}
-		for i, site := range w.sites {
-			s.sites[site.id] = i
-		}
+	here, err := s.site(ctx, c)
+	if err != nil {
+		return nil, err
 	}
 	w := s.world
-	at, ok := s.sites[c.Site]
-	if !ok {
-		return nil, fmt.Errorf("site %q: %w", c.Site, study.ErrNotThere)
-	}
-	here := w.sites[at]
 	out := &Surroundings{Buildable: geo.LonLatGeometry{Kind: geo.Polygons}}
 	for _, o := range w.options {
 		if o.id != c.Plant {
@@ -82,6 +74,75 @@ func (s *Surveyor) Around(ctx context.Context, c *Candidate) (*Surroundings, err
 			}
 			out.Buildable.Parts = append(out.Buildable.Parts, ll.Parts...)
 			out.keep(rs, here)
+		}
+	}
+	return out, nil
+}
+
+// site reads the layers where that was not done yet, and finds a candidate's site.
+func (s *Surveyor) site(ctx context.Context, c *Candidate) (site, error) {
+	if s.world == nil {
+		w, err := newWorld(ctx, s.snap, s.params, s.load)
+		if err != nil {
+			return site{}, err
+		}
+		s.world, s.sites = w, map[string]int{}
+		for i, one := range w.sites {
+			s.sites[one.id] = i
+		}
+	}
+	at, ok := s.sites[c.Site]
+	if !ok {
+		return site{}, fmt.Errorf("site %q: %w", c.Site, study.ErrNotThere)
+	}
+	return s.world.sites[at], nil
+}
+
+// Months gives the energy of a candidate's plant in MWh for each month of the year that its solar yield
+// rests on, before the bias of forecasts and the losses of the connection. Wind is known by the year
+// alone, so that the months of a plant with turbines are unknown, with the reason.
+func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value, error) {
+	var out [12]scoring.Value
+	every := func(v scoring.Value) [12]scoring.Value {
+		for m := range out {
+			out[m] = v
+		}
+		return out
+	}
+	if c.Fit == nil {
+		return every(scoring.UnknownBecause(c.Status)), nil
+	}
+	if c.Fit.WindKW > 0 {
+		return every(scoring.UnknownBecause("wind_by_year_alone")), nil
+	}
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	here, err := s.site(ctx, c)
+	if err != nil {
+		return out, err
+	}
+	if s.fitter == nil {
+		if s.fitter, err = s.world.newFitter(); err != nil {
+			return out, err
+		}
+	}
+	if s.fitter.sun == nil {
+		return every(scoring.UnknownBecause("no_layer:solar_resource")), nil
+	}
+	lat, err := s.fitter.siteLat(here)
+	if err != nil {
+		return out, err
+	}
+	for _, o := range s.world.options {
+		if o.id != c.Plant {
+			continue
+		}
+		y, ok := s.fitter.yields[yieldKey(o, lat)]
+		if !ok {
+			return every(scoring.UnknownBecause("plant_out_of_range")), nil
+		}
+		for m := range out {
+			out[m] = scoring.Num(y.MonthKWhPerKWp[m] * c.Fit.SolarKW / units.KWhPerMWh)
 		}
 	}
 	return out, nil

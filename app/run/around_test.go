@@ -45,3 +45,53 @@ func TestAroundHasTheBuildableArea(t *testing.T) {
 		t.Error("no distance is drawn")
 	}
 }
+
+// The months of a solar plant add up to its yearly energy before the adjustments of the year; those of
+// wind are unknown.
+func TestMonthsAddUp(t *testing.T) {
+	s := smallStudy(t, 60)
+	r := compute(t, s, nil, 2)
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	sv := NewSurveyor(snap, shipped(t), StoreLoader(s.Store()), nil)
+	solar, windy := 0, 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		if c.Status != Fitted || i%5 != 0 {
+			continue
+		}
+		months, err := sv.Months(context.Background(), c)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if c.Fit.WindKW > 0 {
+			windy++
+			if months[0].OK() || months[0].Why == "" {
+				t.Errorf("%s: a month of wind is %+v", c.ID(), months[0])
+			}
+			continue
+		}
+		solar++
+		sum := 0.0
+		for m, v := range months {
+			if !v.OK() || v.X <= 0 {
+				t.Fatalf("%s: month %d is %+v", c.ID(), m+1, v)
+			}
+			sum += v.X
+		}
+		want := 0.0
+		for _, l := range c.Leaves() {
+			if l.Name == "solar_p50_mwh" {
+				want = l.X
+			}
+		}
+		if math.Abs(sum-want) > 1e-9*want {
+			t.Errorf("%s: the months add up to %v MWh, the year is %v", c.ID(), sum, want)
+		}
+	}
+	if solar < 5 || windy < 2 {
+		t.Fatalf("%d solar plants and %d with wind were looked at", solar, windy)
+	}
+}

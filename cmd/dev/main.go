@@ -144,7 +144,7 @@ func runStart(ctx context.Context, w workshop, args []string) error {
 	var study string
 	var terminal bool
 	err := parseAlone(w, "start", args, func(fs *flag.FlagSet) {
-		fs.StringVar(&study, "study", sampleStudy(), "the study `file`; made when it is not there")
+		fs.StringVar(&study, "study", "", "the study `file`; made when it is not there (default: "+sampleStudy()+")")
 		fs.BoolVar(&terminal, "terminal", false, "use the terminal program even where there is a screen")
 	})
 	if err != nil {

@@ -15,8 +15,9 @@ const (
 	binFolder      = ".build/bin"
 )
 
-// start builds the programs and opens the sample study: in the window where there is one and
-// a screen to show it on, else with the terminal program.
+// start builds the programs and opens the sample study: in the window where there is a screen to
+// show it on, else with the terminal program. Without a named file the window opens the sample at
+// its first start, and later offers it beside the last study.
 func (w workshop) start(ctx context.Context, study string, terminal bool) error {
 	if !w.has(terminalFolder) {
 		return &failure{what: "this checkout has no " + terminalFolder + ", so there is nothing to start", advice: "take a complete checkout"}
@@ -38,13 +39,19 @@ func (w workshop) start(ctx context.Context, study string, terminal bool) error 
 	if err := w.build(ctx, packages, "-o", bin+string(filepath.Separator)); err != nil {
 		return err
 	}
+	if window {
+		argv := []string{program(bin, "groundtally")}
+		if study != "" {
+			argv = append(argv, "--sample", study)
+		}
+		return w.show(ctx, "start", command{argv: argv}, "start it without the window: go run ./cmd/dev start -terminal")
+	}
 	gtally := program(bin, "gtally")
+	if study == "" {
+		study = sampleStudy()
+	}
 	if err := w.sample(ctx, gtally, study); err != nil {
 		return err
-	}
-	if window {
-		return w.show(ctx, "start", command{argv: []string{program(bin, "groundtally"), study}},
-			"start it without the window: go run ./cmd/dev start -terminal")
 	}
 	for _, verb := range []string{"compute", "order"} {
 		// The program shows progress of its own on a terminal alone, and this is none for it.

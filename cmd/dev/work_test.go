@@ -161,7 +161,7 @@ func TestStart(t *testing.T) {
 		{"nothing to start", nil, nil, false, false, nil, "no cmd/gtally"},
 		{"terminal program alone", []string{terminalFolder}, nil, false, false, []string{"gtally new", "gtally compute", "gtally order"}, ""},
 		{"the study is used again", []string{terminalFolder}, nil, false, true, []string{"gtally compute", "gtally order"}, ""},
-		{"window", []string{terminalFolder, windowFolder}, map[string]string{"DISPLAY": ":0"}, false, false, []string{"gtally new", "groundtally"}, ""},
+		{"window", []string{terminalFolder, windowFolder}, map[string]string{"DISPLAY": ":0"}, false, false, []string{"groundtally"}, ""},
 		{"window on Wayland", []string{terminalFolder, windowFolder}, map[string]string{"WAYLAND_DISPLAY": "wayland-0"}, false, true, []string{"groundtally"}, ""},
 		{"no screen", []string{terminalFolder, windowFolder}, nil, false, true, []string{"gtally compute", "gtally order"}, ""},
 		{"terminal wanted", []string{terminalFolder, windowFolder}, map[string]string{"DISPLAY": ":0"}, true, true, []string{"gtally compute", "gtally order"}, ""},
