@@ -83,7 +83,7 @@ func (r *pillRenderer) Layout(s fyne.Size) {
 }
 
 func (r *pillRenderer) MinSize() fyne.Size {
-	return fyne.NewSize(float32(draw.TextWidth(r.p.Text, 12.5, r.p.Chosen))+22, 26)
+	return fyne.NewSize(float32(draw.TextWidth(r.p.Text, 12.5, true))+22, 26) // chosen or not, so that no pill moves
 }
 
 func (r *pillRenderer) Refresh() {

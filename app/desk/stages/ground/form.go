@@ -1,0 +1,486 @@
+package ground
+
+import (
+	"cmp"
+	"context"
+	"errors"
+	"fmt"
+	"path/filepath"
+	"slices"
+	"strings"
+
+	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/container"
+	"fyne.io/fyne/v2/dialog"
+	"fyne.io/fyne/v2/layout"
+	"fyne.io/fyne/v2/widget"
+
+	"groundtally/app/desk/theme"
+	"groundtally/app/desk/widgets"
+	"groundtally/app/present"
+	"groundtally/app/study"
+	"groundtally/geo"
+)
+
+// noColumn stands in a field's select for no column at all.
+const noColumn = "no column"
+
+// form asks what only the user knows about a file. Nothing is added before it is answered, and nothing
+// that was answered is lost when more is asked.
+type form struct {
+	s       *Stage
+	in      study.Import
+	replace study.LayerRecord // the layer in whose place the file goes; without a name when it is new
+	made    string
+	dialog  *dialog.CustomDialog
+
+	role             *widget.Select
+	guess            *widgets.Line
+	purpose          *widgets.Paragraph
+	usual            *widgets.Line
+	name             *widget.Entry
+	crs              *widget.Entry
+	swap             *widget.Check
+	complete         *widget.Check
+	edition, holder  *widget.Entry
+	reason           *widget.Entry
+	fields           []*fieldRow
+	fieldBox         *fyne.Container
+	personal         map[string]*widget.Check
+	personalBox      *fyne.Container
+	sample           *fyne.Container
+	without          *widget.Check
+	asked            *widget.Label // questions and faults, in place
+	askedBox         *fyne.Container
+	ok, cancelButton *widget.Button
+	progress         *widget.ProgressBarInfinite
+	scroll           *container.Scroll
+	stop             context.CancelFunc // of the adding under way
+}
+
+// fieldRow is one field of the role with the column that is it.
+type fieldRow struct {
+	field  study.RoleField
+	column *widget.Select
+	unit   *widget.Select
+	sure   string // column of the field's own name, which is always taken
+}
+
+func newForm(s *Stage, in study.Import, replace string) *form {
+	f := &form{s: s, in: in, made: madeOf(in), guess: widgets.Faint(""), purpose: widgets.NewParagraph("", 2), usual: widgets.Faint(""), name: widget.NewEntry(), crs: widget.NewEntry(), edition: widget.NewEntry(), holder: widget.NewEntry(), reason: widget.NewEntry(),
+		fieldBox: container.NewVBox(), personalBox: container.NewVBox(), sample: container.NewVBox(), personal: map[string]*widget.Check{}, asked: widgets.NewText(""), progress: widget.NewProgressBarInfinite()}
+	cat := s.c.Parts.Catalog
+	if rec, ok := hasLayer(s.c.View().Snap, replace); ok && replace != "" {
+		f.replace = rec
+	}
+	var titles []string
+	for _, r := range cat.Roles {
+		if fits(r, f.made) || r.Name == f.replace.Role {
+			titles = append(titles, r.Title)
+		}
+	}
+	f.role = widget.NewSelect(titles, func(string) { f.roleChosen() })
+	f.role.PlaceHolder = "What does the file mean here?"
+	f.crs.SetPlaceHolder("as EPSG:25832; empty for degrees")
+	f.crs.SetText(in.CRS)
+	f.swap = widget.NewCheck("The file has latitude before longitude", nil)
+	f.complete = widget.NewCheck("It covers the whole place", nil)
+	f.purpose.Colour = theme.Faint
+	f.edition.SetPlaceHolder("edition or date of the data")
+	f.holder.SetPlaceHolder("who holds the data")
+	f.reason.SetPlaceHolder("for the journal")
+	f.without = widget.NewCheck("Go on without the columns that are missing: what rests on them is unknown", nil)
+	f.without.Hide()
+	f.progress.Hide()
+	f.progress.Stop()
+	f.askedBox = container.NewVBox(container.New(layout.NewCustomPaddedLayout(4, 0, 6, 0), widgets.Warm("Before it can be added")), f.asked, f.without)
+	f.askedBox.Hide()
+
+	base := strings.TrimSuffix(in.Base, filepath.Ext(in.Base))
+	f.name.SetText(base)
+	if r := f.replace; r.Name != "" {
+		f.name.SetText(r.Name)
+		f.name.Disable()
+		f.complete.SetChecked(r.Complete)
+		f.holder.SetText(r.Holder)
+		f.swap.SetChecked(r.Swapped)
+		if in.CRS == "" && r.CRS != "OGC:CRS84" {
+			f.crs.SetText(r.CRS)
+		}
+		role, _ := cat.Role(r.Role)
+		f.role.SetSelected(role.Title)
+		f.role.Disable()
+	} else if guess := guessRole(cat, in.Base, f.made); guess != "" {
+		role, _ := cat.Role(guess)
+		f.role.SetSelected(role.Title)
+		f.guess.Set("A guess from the file's name. Change it if it is wrong.")
+	}
+	f.role.OnChanged = func(string) { f.guess.Set(""); f.roleChosen() }
+	return f
+}
+
+// chosen gives the role that is chosen.
+func (f *form) chosen() (study.Role, bool) {
+	for _, r := range f.s.c.Parts.Catalog.Roles {
+		if r.Title == f.role.Selected {
+			return r, true
+		}
+	}
+	return study.Role{}, false
+}
+
+// open shows the form.
+func (f *form) open() {
+	what := fmt.Sprintf("%s: %s", f.in.Base, ledgerWords(f.in.Ledger))
+	if f.in.Layer == nil {
+		what = f.in.Base + ": a grid of values"
+	}
+	found := "The file says " + f.in.CRS + "."
+	if f.in.CRS == "" {
+		found = "The file does not say; empty means degrees."
+	}
+	form := container.New(columns{label: 150})
+	row := func(label, hint string, o fyne.CanvasObject) {
+		form.Add(widgets.NewLine(label).Hinted(hint))
+		form.Add(o)
+	}
+	row("Meaning", "The role of the layer in the study.", f.role)
+	row("", "", container.NewVBox(f.guess, f.purpose))
+	row("Name", "The name of the layer.", f.name)
+	if f.made != "table" {
+		row("Coordinate system", "The system in which the coordinates of the file are.", f.crs)
+		row("", "", container.NewVBox(widgets.Faint(found), f.swap))
+	}
+	row("Whole place", "Whether nothing found means that nothing is there.", f.complete)
+	row("", "", widgets.Faint("Ticked: where nothing is drawn, nothing is there."))
+	row("Edition", "", f.edition)
+	row("Holder", "", f.holder)
+	row("", "", f.usual)
+	row("Reason", "", f.reason)
+	body := container.NewVBox(widgets.Faint(what), gap(2), form, gap(4), f.fieldBox, f.sample, f.personalBox)
+	f.scroll = container.NewVScroll(container.New(layout.NewCustomPaddedLayout(0, 0, 0, 14), body))
+	f.ok = widget.NewButton("Add", f.add)
+	f.ok.Importance = widget.HighImportance
+	title := "Add " + f.in.Base
+	if f.replace.Name != "" {
+		f.ok.SetText("Replace")
+		title = fmt.Sprintf("Put %s in place of %s", f.in.Base, f.replace.Name)
+	}
+	f.cancelButton = widget.NewButton("Leave it out", f.leave)
+	waits := widgets.Faint("")
+	if n := len(f.s.queue); n > 0 {
+		waits.Set(fmt.Sprintf("%d more to come", n))
+	}
+	foot := container.NewVBox(f.askedBox, f.progress, container.NewBorder(nil, nil, nil, container.NewHBox(f.cancelButton, f.ok), waits))
+	f.dialog = dialog.NewCustomWithoutButtons(title, container.NewBorder(nil, foot, nil, nil, f.scroll), f.s.c.Window)
+	f.roleChosen()
+	f.dialog.Resize(dialogSize(f.s.c, 760, 640))
+	f.dialog.Show()
+	f.s.c.Window.Canvas().Focus(f.role)
+}
+
+// leave ends the form without adding the file, or stops the adding under way.
+func (f *form) leave() {
+	if f.stop != nil {
+		f.stop()
+		return
+	}
+	f.close()
+}
+
+func (f *form) close() {
+	f.dialog.Hide()
+	f.s.finished()
+}
+
+// roleChosen puts the fields of the role into the form, with proposals.
+func (f *form) roleChosen() {
+	f.fieldBox.RemoveAll()
+	f.personalBox.RemoveAll()
+	f.fields = nil
+	role, ok := f.chosen()
+	if !ok {
+		f.purpose.Hide()
+		f.showSample()
+		return
+	}
+	f.purpose.Set(role.Purpose)
+	f.purpose.Show()
+	f.usual.Set("Usually: " + role.Holder)
+	if f.in.Layer == nil || len(f.in.Layer.Columns) == 0 {
+		f.showSample()
+		return
+	}
+	proposed := study.Propose(f.in.Layer, role)
+	names := make([]string, len(f.in.Layer.Columns))
+	for i, c := range f.in.Layer.Columns {
+		names[i] = c.Name
+	}
+	table := container.New(layout.NewGridLayoutWithColumns(3), widgets.Faint("field"), widgets.Faint("column of the file"), widgets.Faint("unit of the column"))
+	for _, field := range role.Fields {
+		r := &fieldRow{field: field}
+		r.unit = widget.NewSelect(unitsFor(field.Unit), func(string) { f.showSample() })
+		r.unit.PlaceHolder = "choose its unit"
+		options := names
+		at := slices.IndexFunc(names, func(n string) bool { return strings.EqualFold(n, field.Name) })
+		if at < 0 {
+			options = append([]string{noColumn}, names...)
+		} else {
+			r.sure = names[at]
+		}
+		r.column = widget.NewSelect(options, func(string) { f.columnChosen(r) })
+		r.column.PlaceHolder = noColumn
+		label := fieldWords(field)
+		if field.Required {
+			label += " (needed)"
+		}
+		hint := "In the program's own unit: " + present.UnitWords(field.Unit) + "."
+		if !field.Physical() {
+			hint = "Text or choice: " + field.Unit + "."
+		}
+		table.Add(widgets.NewLine(label).Hinted(hint))
+		table.Add(r.column)
+		table.Add(container.NewStack(r.unit))
+		f.fields = append(f.fields, r)
+		column := proposed[field.Name]
+		if old := f.replace.Match[field.Name]; old != "" && slices.Contains(names, old) {
+			column = old
+		}
+		r.column.SetSelected(cmp.Or(column, noColumn))
+	}
+	f.fieldBox.Add(widgets.Part("Which column is which").Hinted("What the program proposes is chosen already. Change what is wrong."))
+	f.fieldBox.Add(table)
+
+	f.personalBox.Add(gap(4))
+	f.personalBox.Add(widgets.Part("Personal columns").Hinted("They are kept in the study, never drawn, and never leave it unasked."))
+	f.personalBox.Add(widgets.NewParagraph("Tick what says something about a person: names, addresses, contacts. It is never drawn and never leaves the study unasked.", 2))
+	grid := container.NewGridWithColumns(3)
+	f.personal = map[string]*widget.Check{}
+	for _, n := range names {
+		check := widget.NewCheck(n, func(bool) { f.showSample() })
+		for _, field := range role.Fields {
+			if field.Personal && strings.EqualFold(field.Name, n) {
+				check.SetChecked(true)
+				check.Disable() // the role says so
+			}
+		}
+		if slices.Contains(f.replace.Personal, n) {
+			check.SetChecked(true)
+		}
+		f.personal[n] = check
+		grid.Add(check)
+	}
+	f.personalBox.Add(grid)
+	f.showSample()
+}
+
+// columnChosen asks for the unit of a column where the field is a measure.
+func (f *form) columnChosen(r *fieldRow) {
+	column := r.column.Selected
+	if column == noColumn || !r.field.Physical() {
+		r.unit.Hide()
+	} else {
+		r.unit.Show()
+		r.unit.ClearSelected()
+		known := cmp.Or(f.replace.Units[column], f.unitOf(column), unitInName(column, r.field.Unit))
+		if slices.Contains(r.unit.Options, known) {
+			r.unit.SetSelected(known)
+		}
+	}
+	if check := f.personal[column]; check != nil && r.field.Personal {
+		check.SetChecked(true)
+	}
+	f.showSample()
+}
+
+// unitOf gives the unit that the file says of a column.
+func (f *form) unitOf(column string) string {
+	if i := f.in.Layer.ColumnIndex(column); i >= 0 {
+		return f.in.Layer.Columns[i].Unit
+	}
+	return ""
+}
+
+// sampled is how many features the sample shows.
+const sampled = 3
+
+// showSample shows the first features in the columns that are matched.
+func (f *form) showSample() {
+	f.sample.RemoveAll()
+	if f.in.Layer == nil {
+		return
+	}
+	type shown struct {
+		title    string
+		at       int
+		personal bool
+	}
+	var cols []shown
+	for _, r := range f.fields {
+		i := f.in.Layer.ColumnIndex(r.column.Selected)
+		if i < 0 || len(cols) == 5 {
+			continue
+		}
+		check := f.personal[r.column.Selected]
+		title := r.column.Selected
+		if r.unit.Visible() && r.unit.Selected != "" {
+			title += " (" + r.unit.Selected + ")"
+		}
+		cols = append(cols, shown{title, i, r.field.Personal || check != nil && check.Checked})
+	}
+	if len(cols) == 0 {
+		return
+	}
+	table := container.NewGridWithColumns(len(cols))
+	for _, c := range cols {
+		table.Add(widgets.Faint(c.title))
+	}
+	for _, x := range f.in.Layer.Features[:min(sampled, len(f.in.Layer.Features))] {
+		for _, c := range cols {
+			l := widgets.NewLine(x.Values[c.at].String())
+			l.TextSize = 12
+			switch {
+			case x.Values[c.at].Kind == geo.Null:
+				l.Text, l.Colour = "no value", theme.Faint
+			case c.personal:
+				l.Text, l.Colour = "personal", theme.Faint
+			}
+			table.Add(l)
+		}
+	}
+	f.sample.Add(gap(4))
+	f.sample.Add(widgets.Part("First features"))
+	f.sample.Add(table)
+}
+
+// ask shows questions in place.
+func (f *form) ask(words string) {
+	f.asked.SetText(words)
+	f.askedBox.Show()
+	f.askedBox.Refresh()
+}
+
+// answers gives the import with the answers; unanswered says in words what is open.
+func (f *form) answers() (in study.Import, unanswered string) {
+	in = f.in
+	in.Notices = slices.Clone(f.in.Notices)
+	role, ok := f.chosen()
+	if !ok {
+		return in, "Choose what the file means here."
+	}
+	in.Role, in.Name, in.CRSOption = role.Name, strings.TrimSpace(f.name.Text), strings.TrimSpace(f.crs.Text)
+	if in.CRSOption == "" {
+		in.CRS = "" // the user took out what the file says
+	}
+	in.Replace = f.replace.Name
+	in.SwapAxes, in.Complete = f.swap.Checked, f.complete.Checked
+	in.Edition, in.Holder, in.Reason = strings.TrimSpace(f.edition.Text), strings.TrimSpace(f.holder.Text), strings.TrimSpace(f.reason.Text)
+	in.Match, in.Units = map[string]string{}, map[string]string{}
+	var open []string
+	for _, r := range f.fields {
+		column := r.column.Selected
+		if column == noColumn || column == "" {
+			continue
+		}
+		in.Match[r.field.Name] = column
+		if !r.field.Physical() {
+			continue
+		}
+		if r.unit.Selected == "" {
+			open = append(open, fmt.Sprintf("In which unit is column %s (%s)?", column, fieldWords(r.field)))
+			continue
+		}
+		in.Units[column] = r.unit.Selected
+	}
+	for n, check := range f.personal {
+		if check.Checked {
+			in.Personal = append(in.Personal, n)
+		}
+	}
+	slices.Sort(in.Personal)
+	in.AcceptProposals = f.without.Visible() && f.without.Checked
+	if f.in.Layer == nil && in.CRSOption == "" && in.CRS == "" {
+		open = append(open, "In which coordinate system are the corners of the grid?")
+	}
+	return in, strings.Join(open, "\n")
+}
+
+// add adds the layer; what is asked comes back into the form.
+func (f *form) add() {
+	in, open := f.answers()
+	if open != "" {
+		f.ask(open)
+		return
+	}
+	stopped, stop := context.WithCancel(context.Background())
+	f.stop = stop
+	f.ok.Disable()
+	f.cancelButton.SetText("Stop")
+	f.progress.Show()
+	f.progress.Start()
+	var rec study.LayerRecord
+	var failed error
+	parts := f.s.c.Parts
+	f.s.c.Edit("add the layer", func(ctx context.Context, s *study.Study) error {
+		ctx, cancel := context.WithCancel(ctx)
+		defer cancel()
+		defer context.AfterFunc(stopped, cancel)()
+		tools, done := parts.Tools()
+		defer done()
+		rec, failed = s.AddLayer(ctx, in, tools)
+		return nil // shown in the form, so that no answer is lost
+	}, func() { f.added(rec, failed) })
+}
+
+func (f *form) added(rec study.LayerRecord, err error) {
+	f.stop()
+	f.stop = nil
+	f.ok.Enable()
+	f.cancelButton.SetText("Leave it out")
+	f.progress.Stop()
+	f.progress.Hide()
+	var question *study.QuestionError
+	var file *study.FileError
+	switch {
+	case err == nil:
+		f.dialog.Hide()
+		f.s.c.Tell(fmt.Sprintf("%s: %s.", rec.Name, ledgerWords(rec.Ledger)))
+		if f.s.layers != nil {
+			f.s.layers.open(rec.Name)
+		}
+		f.s.finished()
+	case errors.Is(err, context.Canceled):
+		f.ask("Stopped. Nothing was added.")
+	case errors.As(err, &question):
+		f.ask(f.questions(question))
+	case errors.As(err, &file):
+		shown := *file
+		shown.File = f.in.Base
+		f.ask(inWindow.Replace(present.Problem(&shown)))
+	default:
+		f.s.c.Fail("add the layer", err)
+	}
+}
+
+// questions writes what is asked in words of the form.
+func (f *form) questions(e *study.QuestionError) string {
+	var lines []string
+	for _, q := range e.Questions {
+		text := strings.ToUpper(q.Text[:1]) + q.Text[1:]
+		switch {
+		case q.Option == "--swap-axes":
+			text += ". If so, tick that the file has latitude before longitude."
+		case strings.HasPrefix(q.Option, "--replace"):
+			text += ". Give another name, or take the other layer and replace it by this file."
+		case strings.HasPrefix(q.Option, "leave out --personal"):
+			text += ". Take the tick away, or choose another column."
+		case strings.HasPrefix(q.Option, "--match"):
+			text += " Choose the column above."
+			f.without.Show()
+		case strings.HasPrefix(q.Option, "--crs"):
+			text += " Enter it above."
+		}
+		lines = append(lines, text)
+	}
+	return strings.Join(lines, "\n")
+}
