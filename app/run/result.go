@@ -2,6 +2,7 @@ package run
 
 import (
 	"encoding/json"
+	"slices"
 
 	"groundtally/geo"
 	"groundtally/scoring"
@@ -117,8 +118,14 @@ type Candidate struct {
 	row     int
 }
 
-// toColumns moves the consequences and facts into columns.
-func (c *Candidate) toColumns(cols *Columns, row int) {
+// toColumns moves the consequences and facts into columns. A candidate without a plant has so few that
+// they stay where they are.
+func (c *Candidate) toColumns(cols *Columns) {
+	if c.Status != Fitted {
+		c.Consequences = slices.Clip(c.Consequences)
+		return
+	}
+	row := cols.add()
 	cols.put(row, c.Consequences, c.Facts)
 	c.columns, c.row, c.Consequences, c.Facts = cols, row, nil, nil
 }

@@ -284,7 +284,7 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 	digests := make([]digest, len(out))
 	columns := make([]*Columns, len(r.plans))
 	for i := range columns {
-		columns[i] = newColumns(r.k.keys, r.k.p.facts, n)
+		columns[i] = newColumns(r.k.keys, r.k.p.facts)
 	}
 	limits := limitsOf(w.snap, r.k.keys)
 	var writing background
@@ -324,7 +324,7 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 				at := p*n + from + i
 				out[at], digests[at] = f.candidates[p], f.digests[p]
 				c := &out[at]
-				c.toColumns(columns[p], from+i)
+				c.toColumns(columns[p])
 				c.Gates = w.gates(w.sites[from+i])
 				c.OverLimit = overLimit(limits, c)
 			}
