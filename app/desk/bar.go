@@ -1,0 +1,154 @@
+package desk
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/container"
+	"fyne.io/fyne/v2/layout"
+	toolkit "fyne.io/fyne/v2/theme"
+	"fyne.io/fyne/v2/widget"
+
+	"groundtally/app/desk/core"
+	"groundtally/app/desk/widgets"
+	"groundtally/app/run"
+)
+
+// bar is the head of the window: the study, the voice, the search, undo and redo, when it was saved.
+type bar struct {
+	w          *Window
+	name, size *widgets.Line
+	voice      *widget.Select
+	voices     []string // names behind the titles of voice
+	find       *widget.Entry
+	undo, redo *widget.Button
+	saved      *widgets.Line
+	all        fyne.CanvasObject
+}
+
+func newBar(w *Window) *bar {
+	b := &bar{w: w, name: widgets.Heading("").Wide(), size: widgets.Faint("").Wide(), saved: widgets.Faint("").Wide()}
+	b.name.TextSize = 16
+	b.saved.Hint = "Every change is saved as it is made, in one file."
+	b.voice = widget.NewSelect(nil, nil)
+	b.voice.PlaceHolder = "No voice yet"
+	b.find = widget.NewEntry()
+	b.find.SetPlaceHolder("Find parcel or site")
+	b.find.OnSubmitted = b.search
+	b.undo = widget.NewButtonWithIcon("", toolkit.ContentUndoIcon(), func() { w.core.Undo() })
+	b.redo = widget.NewButtonWithIcon("", toolkit.ContentRedoIcon(), func() { w.core.Redo() })
+	b.undo.Importance, b.redo.Importance = widget.LowImportance, widget.LowImportance
+	files := widget.NewButtonWithIcon("", toolkit.MenuIcon(), nil)
+	files.Importance = widget.LowImportance
+	files.OnTapped = func() {
+		menu := fyne.NewMenu("", fyne.NewMenuItem("Open a study…", w.chooseFile), fyne.NewMenuItem("Make a new study…", w.chooseNew),
+			fyne.NewMenuItem("Open the sample study", func() { w.Sample(SamplePath()) }), fyne.NewMenuItemSeparator(), fyne.NewMenuItem("Keys…", w.showKeys), fyne.NewMenuItem("Cautions…", w.showCautions))
+		at := fyne.CurrentApp().Driver().AbsolutePositionForObject(files)
+		widget.ShowPopUpMenuAtPosition(menu, w.window.Canvas(), at.AddXY(0, files.Size().Height))
+	}
+	left := container.New(layout.NewCustomPaddedHBoxLayout(12), files, container.NewCenter(b.name), container.NewCenter(b.size))
+	right := container.New(layout.NewCustomPaddedHBoxLayout(8), container.NewCenter(widgets.Faint("Voice").Hinted("One group's weights and value scales. Map, order and scores follow the voice chosen here.").Wide()),
+		container.NewGridWrap(fyne.NewSize(170, 31), b.voice), container.NewGridWrap(fyne.NewSize(170, 31), b.find), b.undo, b.redo, container.NewCenter(b.saved))
+	b.all = container.NewVBox(container.New(layout.NewCustomPaddedLayout(4, 3, 8, 14), container.NewBorder(nil, nil, nil, right, container.NewHScroll(left))), widget.NewSeparator())
+	return b
+}
+
+func (b *bar) update() {
+	v := b.w.core.View()
+	if v == nil {
+		return
+	}
+	name := v.Snap.Text("study.name")
+	if name == "" {
+		name = strings.TrimSuffix(baseName(v.Path), ".gpkg")
+	}
+	b.name.Set(name)
+	b.name.Hint = v.Path
+	b.w.window.SetTitle(name + " · Groundtally")
+	parcels := 0
+	for _, l := range v.Snap.LayersOf("parcels") {
+		parcels += l.Count
+	}
+	size := fmt.Sprintf("%s parcels · %d plant options", core.Count(parcels), len(v.Snap.Plants()))
+	if v.Results != nil {
+		fitted := 0
+		for i := range v.Results.Candidates {
+			if v.Results.Candidates[i].Status == run.Fitted {
+				fitted++
+			}
+		}
+		size += fmt.Sprintf(" · %s candidates fitted", core.Count(fitted))
+	}
+	b.size.Set(size)
+	voices := v.Snap.Voices()
+	titles := make([]string, len(voices))
+	for i, n := range voices {
+		if titles[i] = b.w.core.VoiceTitle(n); slices.Contains(titles[:i], titles[i]) {
+			titles[i] += " (" + n + ")"
+		}
+	}
+	b.voice.OnChanged = nil
+	b.voices = voices
+	b.voice.SetOptions(titles)
+	if i := slices.Index(voices, b.w.core.Voice()); i >= 0 {
+		b.voice.SetSelectedIndex(i)
+	}
+	b.voice.OnChanged = func(string) {
+		if i := b.voice.SelectedIndex(); i >= 0 && i < len(b.voices) {
+			b.w.core.SetVoice(b.voices[i])
+		}
+	}
+	able(b.undo, v.CanUndo != "")
+	able(b.redo, v.CanRedo != "")
+	saved := "Saved"
+	if !v.SavedAt.IsZero() {
+		saved += " · " + core.Clock(v.SavedAt, b.w.clock())
+	}
+	b.saved.Set(saved)
+}
+
+func able(b *widget.Button, yes bool) {
+	if yes {
+		b.Enable()
+	} else {
+		b.Disable()
+	}
+}
+
+// search brings a parcel or a site into view and chooses its best candidate.
+func (b *bar) search(text string) {
+	text = strings.TrimSpace(text)
+	v := b.w.core.View()
+	if text == "" || v == nil || v.Index == nil {
+		return
+	}
+	site, ok := v.Index.SiteOfParcel(text)
+	if !ok {
+		site, ok = v.Index.Site(text)
+	}
+	if !ok { // as it is written elsewhere: in other letters, or in part
+		for i, s := range v.Index.Sites {
+			if strings.Contains(strings.ToLower(s), strings.ToLower(text)) {
+				site, ok = i, true
+				break
+			}
+		}
+	}
+	if !ok {
+		b.w.foot.tell("There is no parcel or site " + text)
+		return
+	}
+	if cand := b.w.core.BestAt(site); cand != nil {
+		b.w.core.Choose(cand.ID())
+		b.w.core.ShowParcels(cand.Parcels)
+	}
+}
+
+func baseName(path string) string {
+	if i := strings.LastIndexAny(path, `/\`); i >= 0 {
+		return path[i+1:]
+	}
+	return path
+}

@@ -1,0 +1,2 @@
+// Package desk is the window of the program.
+package desk

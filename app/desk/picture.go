@@ -1,0 +1,477 @@
+package desk
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"slices"
+	"sort"
+	"strings"
+
+	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/container"
+	"fyne.io/fyne/v2/layout"
+	"fyne.io/fyne/v2/widget"
+
+	"groundtally/app/appendix"
+	"groundtally/app/desk/core"
+	"groundtally/app/desk/mapview"
+	"groundtally/app/desk/theme"
+	"groundtally/app/desk/widgets"
+	"groundtally/app/draw"
+	"groundtally/app/draw/tiles"
+	"groundtally/app/live"
+	"groundtally/app/present"
+	"groundtally/app/run"
+	"groundtally/geo"
+	"groundtally/scoring"
+)
+
+// picture is the map with what the window puts on it: colours, marks, legend.
+type picture struct {
+	w     *Window
+	m     *mapview.Map
+	shade *widget.Select
+	keys  []string // behind the options of shade
+	all   fyne.CanvasObject
+	boxed []string
+
+	ground   *tiles.Ground
+	contents string             // of the ground shown or being made
+	making   context.CancelFunc // of the ground being made
+	wanted   *shadeJob          // newest colouring asked for
+	busy     bool
+	around   map[string]*run.Surroundings // by candidate, of the results shown
+	of       *run.Results
+}
+
+func newPicture(w *Window) *picture {
+	p := &picture{w: w, around: map[string]*run.Surroundings{}}
+	p.m = mapview.New(mapview.Options{})
+	p.m.OnSelect = func(parcel string, add bool) {
+		if parcel == "" {
+			return
+		}
+		w.core.ChooseParcel(parcel, add)
+	}
+	p.m.OnBox = p.box
+	p.m.OnHover = p.words
+	p.shade = widget.NewSelect(nil, nil)
+	p.shade.PlaceHolder = "Score"
+	head := container.New(layout.NewCustomPaddedLayout(6, 2, 12, 8), container.NewBorder(nil, nil, widgets.Faint("Map shows").Hinted("Parcels are shaded by the score of their best candidate under the chosen voice, or by any consequence of that candidate.").Wide(), nil, p.shade))
+	p.all = container.NewBorder(head, nil, nil, nil, p.m)
+	return p
+}
+
+func (p *picture) close() { p.m.Close() }
+
+func (p *picture) changed(ch core.Change) {
+	if ch&core.LookChanged != 0 {
+		if p.w.theme.Dark(p.w.app.Settings().ThemeVariant()) {
+			p.m.SetLook(tiles.DarkLook())
+		} else {
+			p.m.SetLook(tiles.LightLook())
+		}
+	}
+	if ch&core.StudyChanged != 0 {
+		p.options()
+		p.renew()
+	}
+	if ch&(core.StudyChanged|core.RankingChanged|core.ShadeChanged|core.LookChanged) != 0 {
+		p.colour()
+	}
+	if ch&(core.StudyChanged|core.SelectionChanged) != 0 {
+		p.mark()
+	}
+}
+
+// options fills the choice of what shades the map.
+func (p *picture) options() {
+	if p.keys != nil {
+		return
+	}
+	titles := []string{"Score under the voice"}
+	p.keys = []string{""}
+	for _, k := range p.w.parts.Params.Keys() {
+		title := k.Title
+		if u := present.Unit(k.Unit); u != "" {
+			title += ", " + u
+		}
+		p.keys, titles = append(p.keys, k.Key), append(titles, title)
+	}
+	p.shade.SetOptions(titles)
+	p.shade.SetSelectedIndex(0)
+	p.shade.OnChanged = func(string) {
+		if i := p.shade.SelectedIndex(); i >= 0 {
+			p.w.core.SetShade(p.keys[i])
+		}
+	}
+}
+
+// renew makes the ground of the map anew when layers changed, in the background; the newest counts.
+func (p *picture) renew() {
+	v := p.w.core.View()
+	if v.Contents == p.contents {
+		return
+	}
+	p.contents = v.Contents
+	if p.making != nil {
+		p.making()
+	}
+	ctx, cancel := context.WithCancel(context.Background())
+	p.making = cancel
+	store := p.w.core.Session.Study().Store()
+	go func() {
+		layers, err := appendix.MapLayers(ctx, v.Snap, run.StoreLoader(store))
+		var g *tiles.Ground
+		if err == nil {
+			out := make([]tiles.Layer, len(layers))
+			for i, l := range layers {
+				out[i] = tiles.Layer{Role: l.Role, Features: make([]tiles.Feature, len(l.Features))}
+				for j, f := range l.Features {
+					out[i].Features[j] = tiles.Feature{ID: f.ID, Name: f.Name, Class: f.Class, Rank: f.Rank, Geometry: f.Geometry}
+				}
+			}
+			g, err = tiles.NewGround(ctx, out)
+		}
+		fyne.Do(func() {
+			if ctx.Err() != nil {
+				return
+			}
+			cancel()
+			if err != nil {
+				p.w.core.Fail("draw the map", err)
+				return
+			}
+			first := p.ground == nil || p.ground.Parcels() == 0
+			view := p.m.View()
+			p.ground = g
+			p.m.SetGround(g)
+			if !first {
+				p.m.SetView(view)
+			}
+			p.colour()
+			p.mark()
+		})
+	}()
+}
+
+// shadeJob is all that colouring reads, so that it can be done on another goroutine.
+type shadeJob struct {
+	view    *live.View
+	ranking *live.Ranking
+	ground  *tiles.Ground
+	palette draw.Palette
+	key     string
+	info    run.KeyInfo
+	voice   string
+}
+
+// shaded is a colouring with its legend.
+type shaded struct {
+	shading tiles.Shading
+	title   string
+	legend  []mapview.LegendEntry
+}
+
+// colour has the parcels coloured anew, off the window's goroutine; the newest counts.
+func (p *picture) colour() {
+	c := p.w.core
+	v := c.View()
+	if v == nil || p.ground == nil {
+		return
+	}
+	p.wanted = &shadeJob{view: v, ranking: c.Ranking(), ground: p.ground, palette: c.Palette(), key: c.Shade(), info: c.Info(c.Shade())}
+	if c.Voice() != "" {
+		p.wanted.voice = c.VoiceTitle(c.Voice())
+	}
+	if p.busy {
+		return
+	}
+	p.busy = true
+	go p.colouring(p.wanted)
+}
+
+func (p *picture) colouring(job *shadeJob) {
+	out := job.do()
+	fyne.Do(func() {
+		if job.ground == p.ground {
+			p.m.SetShading(out.shading)
+			p.m.SetLegend(out.title, out.legend)
+		}
+		if p.wanted != job {
+			go p.colouring(p.wanted)
+			return
+		}
+		p.busy = false
+	})
+}
+
+// shadeClasses is the number of classes of a consequence.
+const shadeClasses = 6
+
+// scoreClasses is the greatest number of steps of the score.
+const scoreClasses = 9
+
+// do gives every parcel a class.
+func (j *shadeJob) do() shaded {
+	n := j.ground.Parcels()
+	out := shaded{shading: tiles.Shading{Class: make([]uint8, n), Over: make([]bool, n)}}
+	for i := range out.shading.Class {
+		out.shading.Class[i] = tiles.Bare
+	}
+	x := j.view.Index
+	if x == nil || j.view.Results == nil {
+		out.title = "Nothing is computed yet"
+		return out
+	}
+	best := j.bestOfSites()
+	values := make([]float64, n)
+	known := make([]bool, n)
+	anyUnknown, anyOver, anyBare := false, false, false
+	for i := range n {
+		site, ok := x.SiteOfParcel(j.ground.ID(i))
+		if !ok || best[site] < 0 {
+			anyBare = true
+			continue
+		}
+		cand := &j.view.Results.Candidates[best[site]]
+		if len(cand.OverLimit) > 0 {
+			out.shading.Over[i], anyOver = true, true
+		}
+		values[i], known[i] = j.value(site, cand)
+		if !known[i] {
+			out.shading.Class[i], anyUnknown = tiles.Unknown, true
+		}
+	}
+	bounds := j.bounds(values, known)
+	classes := max(len(bounds)-1, 0)
+	for i := range n {
+		if !known[i] {
+			continue
+		}
+		c := sort.SearchFloat64s(bounds, values[i])
+		if c < len(bounds) && bounds[c] == values[i] {
+			c++ // a class begins with its lower end
+		}
+		out.shading.Class[i] = uint8(min(max(c-1, 0), max(classes-1, 0)))
+	}
+	unit := present.Unit(j.info.Unit)
+	for c := range classes {
+		share := 0.5
+		if classes > 1 {
+			share = float64(c) / float64(classes-1)
+		}
+		colour := theme.Colour(j.palette.Ramp(share))
+		out.shading.Colours = append(out.shading.Colours, colour)
+		text := fmt.Sprintf("%.2f to %.2f", bounds[c], bounds[c+1])
+		if j.key != "" {
+			text = strings.TrimSpace(present.Figure(bounds[c], bounds[0], bounds[len(bounds)-1]) + " to " + present.Figure(bounds[c+1], bounds[0], bounds[len(bounds)-1]) + " " + unit)
+		}
+		out.legend = append(out.legend, mapview.LegendEntry{Text: text, Sample: tiles.Coloured, Colour: colour})
+	}
+	if anyUnknown {
+		out.legend = append(out.legend, mapview.LegendEntry{Text: "unknown", Sample: tiles.UnknownParcel})
+	}
+	if anyOver {
+		out.legend = append(out.legend, mapview.LegendEntry{Text: "over a limit", Sample: tiles.OverLimit})
+	}
+	if anyBare {
+		out.legend = append(out.legend, mapview.LegendEntry{Text: "no room", Sample: tiles.BareParcel})
+	}
+	out.title = "Score, voice " + j.voice
+	if j.key != "" {
+		out.title = j.info.Title
+	}
+	return out
+}
+
+// bestOfSites gives the candidate of every site that stands highest, else its first fitted one; -1 for a
+// site without any.
+func (j *shadeJob) bestOfSites() []int {
+	x := j.view.Index
+	best := make([]int, len(x.Sites))
+	r := j.ranking
+	ranked := r != nil && r.Err == nil && r.Index == x
+	for s := range best {
+		best[s] = -1
+		if ranked && r.Best[s] >= 0 {
+			best[s] = r.Board.At[r.Best[s]]
+			continue
+		}
+		for _, c := range x.Candidates[s] {
+			if j.view.Results.Candidates[c].Status == run.Fitted {
+				best[s] = c
+				break
+			}
+		}
+	}
+	return best
+}
+
+// value gives what a site is coloured by.
+func (j *shadeJob) value(site int, cand *run.Candidate) (float64, bool) {
+	if j.key == "" {
+		r := j.ranking
+		if r == nil || r.Err != nil || r.Index != j.view.Index || r.Best[site] < 0 {
+			return 0, false
+		}
+		return r.Standing.Score[r.Best[site]], true
+	}
+	q, ok := cand.Consequence(j.key)
+	if !ok || q.State != scoring.Number {
+		return 0, false
+	}
+	return q.Central, true
+}
+
+// bounds gives the ends of the classes: for the score equal steps, so that sites that can hardly be
+// told apart look alike; for a consequence classes of about as many parcels each.
+func (j *shadeJob) bounds(values []float64, known []bool) []float64 {
+	var list []float64
+	for i, ok := range known {
+		if ok {
+			list = append(list, values[i])
+		}
+	}
+	if len(list) == 0 {
+		return nil
+	}
+	slices.Sort(list)
+	lo, hi := list[0], list[len(list)-1]
+	if j.key == "" {
+		step := 0.2
+		for _, finer := range []float64{0.1, 0.05, 0.02} {
+			if math.Ceil(hi/finer)-math.Floor(lo/finer) <= scoreClasses {
+				step = finer
+			}
+		}
+		var out []float64
+		first, last := math.Floor(lo/step+1e-9), math.Ceil(hi/step-1e-9)
+		for k := first; k <= max(last, first+1); k++ {
+			out = append(out, k*step)
+		}
+		return out
+	}
+	out := []float64{lo}
+	for k := 1; k < shadeClasses; k++ {
+		if x := list[k*len(list)/shadeClasses]; x > out[len(out)-1] {
+			out = append(out, x)
+		}
+	}
+	if hi > out[len(out)-1] {
+		out = append(out, hi)
+	} else if len(out) == 1 {
+		out = append(out, hi)
+	}
+	return out
+}
+
+// words name a parcel under the pointer.
+func (p *picture) words(parcel string) string {
+	c := p.w.core
+	v := c.View()
+	if v == nil || v.Index == nil {
+		return "Parcel " + parcel
+	}
+	site, ok := v.Index.SiteOfParcel(parcel)
+	if !ok {
+		return "Parcel " + parcel
+	}
+	words := "Parcel " + parcel
+	if s := v.Index.Sites[site]; s != parcel {
+		words += ", part of site " + s
+	}
+	cand := c.BestAt(site)
+	if cand == nil || cand.Status != run.Fitted {
+		return words + "\nno room for any plant option"
+	}
+	words += "\nbest: " + c.PlantTitle(cand.Plant)
+	if r := c.Ranking(); r != nil && r.Err == nil && r.Index == v.Index && r.Best[site] >= 0 {
+		words += fmt.Sprintf("\nscore %.2f, place %d", r.Standing.Score[r.Best[site]], r.Standing.Place[r.Best[site]])
+	}
+	if key := c.Shade(); key != "" {
+		if q, ok := cand.Consequence(key); ok {
+			text := present.Cell(q)
+			if q.State == scoring.Number {
+				text += " " + present.Unit(q.Unit)
+			}
+			words += "\n" + c.Info(key).Title + ": " + strings.TrimSpace(text)
+		}
+	}
+	if len(cand.OverLimit) > 0 {
+		words += "\nover a limit"
+	}
+	return words
+}
+
+// box keeps the parcels of a box, for making a site of them, and says what can be done.
+func (p *picture) box(parcels []string) {
+	p.boxed = parcels
+	p.w.core.Emit(core.SelectionChanged)
+	if len(parcels) > 0 {
+		p.w.foot.tell(fmt.Sprintf("%s parcels in the box. Ground, Sites makes one site of them.", core.Count(len(parcels))))
+	}
+}
+
+// mark draws the chosen candidates: their parcels, buildable area, plant, connection, distances kept.
+func (p *picture) mark() {
+	c := p.w.core
+	v := c.View()
+	if v == nil || p.ground == nil {
+		return
+	}
+	if p.of != v.Results {
+		p.of, p.around = v.Results, map[string]*run.Surroundings{}
+	}
+	var marks []tiles.Mark
+	for i, cand := range c.Chosen() {
+		m := tiles.Mark{Letter: core.Letter(i), Parcels: cand.Parcels}
+		if f := cand.Fit; f != nil {
+			m.Turbines = f.Turbines
+			if !f.Panels.Empty() {
+				m.Panels = []geo.LonLatGeometry{f.Panels}
+			}
+		}
+		if n := cand.Connection; n != nil {
+			m.Routes = []geo.LonLatGeometry{{Kind: geo.Lines, Parts: [][][]geo.LonLat{{{n.From, n.To}}}}}
+		}
+		a, asked := p.around[cand.ID()]
+		if a != nil {
+			m.Buildable = []geo.LonLatGeometry{a.Buildable}
+			for _, k := range a.Kept {
+				m.Setbacks = append(m.Setbacks, tiles.Setback{Geometry: k.Features, RadiusM: k.DistanceM})
+			}
+		}
+		if !asked && v.Current {
+			p.ask(cand)
+		}
+		marks = append(marks, m)
+	}
+	p.m.SetMarks(marks)
+}
+
+// ask finds what is drawn around a candidate, once.
+func (p *picture) ask(cand *run.Candidate) {
+	p.around[cand.ID()] = nil
+	of := p.of
+	p.w.core.Session.Around(cand, func(a *run.Surroundings, err error) {
+		fyne.Do(func() {
+			if err != nil || of != p.of { // without it the map shows the plant alone
+				return
+			}
+			p.around[cand.ID()] = a
+			p.mark()
+		})
+	})
+}
+
+// showParcels brings parcels into view.
+func (p *picture) showParcels(ids []string) {
+	if len(ids) > 0 {
+		p.m.ShowParcel(ids[0])
+	}
+}
+
+// showPlace brings a place into view, near enough to see a house.
+func (p *picture) showPlace(at geo.LonLat) { p.m.CentreOn(at, 4) }

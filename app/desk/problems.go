@@ -1,0 +1,126 @@
+package desk
+
+import (
+	"slices"
+
+	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/container"
+	"fyne.io/fyne/v2/dialog"
+	"fyne.io/fyne/v2/layout"
+	"fyne.io/fyne/v2/widget"
+
+	"groundtally/app/desk/core"
+	"groundtally/app/desk/theme"
+	"groundtally/app/desk/widgets"
+	"groundtally/app/present"
+	"groundtally/geo"
+)
+
+// problem is one line of the problem list.
+type problem struct {
+	words string
+	grade string
+	warm  bool
+	at    *geo.LonLat
+	stage string // where it is mended
+	layer string
+}
+
+// problems lists everything that wants a look, the gravest first.
+func (w *Window) problems() []problem {
+	v := w.core.View()
+	if v == nil {
+		return nil
+	}
+	var out []problem
+	if v.Problem != nil {
+		out = append(out, problem{words: present.Problem(v.Problem), grade: "not computed", warm: true, stage: "Ground"})
+	}
+	notices := slices.Clone(v.Notices)
+	slices.SortStableFunc(notices, func(a, b geo.Notice) int { return int(b.Severity) - int(a.Severity) })
+	for _, n := range notices {
+		p := problem{words: present.Notice(n), grade: grade(n.Severity), warm: n.Severity == geo.Fault, at: n.At, layer: n.Layer, stage: "Ground"}
+		switch n.Code {
+		case "legal_not_set", "no_plants":
+			p.stage = "Plant"
+		case "voice_unusable", "family_twice":
+			p.stage = "Weigh"
+		}
+		out = append(out, p)
+	}
+	return out
+}
+
+func grade(s geo.Severity) string {
+	switch s {
+	case geo.Fault:
+		return "keeps something back"
+	case geo.Warning:
+		return "look at it"
+	}
+	return "to know"
+}
+
+// showProblems opens the one list of everything that wants a look.
+func (w *Window) showProblems() {
+	list := w.problems()
+	if len(list) == 0 {
+		dialog.ShowInformation("Problems", "There is nothing to look at.", w.window)
+		return
+	}
+	var d dialog.Dialog
+	l := widget.NewList(func() int { return len(list) }, func() fyne.CanvasObject {
+		grade := widgets.Faint("")
+		words := widget.NewLabel("")
+		words.Wrapping = fyne.TextWrapWord
+		words.Truncation = fyne.TextTruncateOff
+		b := widget.NewButton("", nil)
+		b.Importance = widget.LowImportance
+		return container.NewBorder(nil, nil, container.NewGridWrap(fyne.NewSize(140, 22), grade), container.NewCenter(b), words)
+	}, func(i widget.ListItemID, o fyne.CanvasObject) {
+		p := list[i]
+		box := o.(*fyne.Container)
+		words := box.Objects[0].(*widget.Label)
+		g := box.Objects[1].(*fyne.Container).Objects[0].(*widgets.Line)
+		b := box.Objects[2].(*fyne.Container).Objects[0].(*widget.Button)
+		colour := theme.Faint
+		if p.warm {
+			colour = theme.Warm
+		}
+		g.SetLook(p.grade, colour, p.warm)
+		words.SetText(p.words)
+		if p.at != nil {
+			b.SetText("Show on the map")
+			b.OnTapped = func() { d.Hide(); w.core.ShowPlace(*p.at) }
+			return
+		}
+		b.SetText("Go to " + p.stage)
+		b.OnTapped = func() { d.Hide(); w.core.ShowStage(p.stage) }
+	})
+	for i := range list { // rows are as high as their words need
+		l.SetItemHeight(i, float32(24+18*((len(list[i].words)+74)/75)))
+	}
+	title := widgets.Faint(core.Count(len(list)) + " entries. Each says where, what, and what the program did or what you can do.")
+	d = dialog.NewCustom("Problems", "Close", container.NewBorder(title, nil, nil, nil, l), w.window)
+	d.Resize(fyne.NewSize(900, 520))
+	d.Show()
+}
+
+// cautions stand in the window as in the appendix.
+var cautions = []string{
+	"This is a screening. It replaces no permit, no survey, no measurement on site and no licensed engineer. Local codes and licensed practice prevail over every default.",
+	"Grid: only the network operator's study can offer a connection. Lines and substations are live: never approach, measure, dig or fly near them on the strength of this map; call the operator and the buried-services enquiry first.",
+	"Wind: setbacks for topple and ice throw are screening distances. Ice throw, noise, shadow and structural safety need assessments by qualified people under local law.",
+	"Yields rest on climatology without a mast or a year of measurements; realised yields have on average come out lower than forecast.",
+	"A legal distance that is not entered is not set, never zero: candidates computed without it are marked incomplete.",
+}
+
+func (w *Window) showCautions() {
+	box := container.New(layout.NewCustomPaddedVBoxLayout(2))
+	for _, c := range cautions {
+		box.Add(widgets.NewText(c))
+	}
+	d := dialog.NewCustom("Cautions", "Close", container.NewVScroll(box), w.window)
+	d.Resize(fyne.NewSize(640, 420))
+	d.Show()
+}

@@ -1,0 +1,2 @@
+// Package accounts is the stage of the consequence table.
+package accounts

@@ -1,0 +1,2 @@
+// Package weigh is the stage of the window in which voices give weights that put the candidates in order.
+package weigh
