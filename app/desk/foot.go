@@ -46,7 +46,7 @@ func (f *foot) tell(words string) {
 	round := f.round
 	f.words.Set(words)
 	time.AfterFunc(6*time.Second, func() {
-		fyne.Do(func() {
+		f.w.do(func() {
 			if f.round == round {
 				f.round = 0
 				f.update()

@@ -47,7 +47,7 @@ type picture struct {
 
 func newPicture(w *Window) *picture {
 	p := &picture{w: w, around: map[string]*run.Surroundings{}}
-	p.m = mapview.New(mapview.Options{})
+	p.m = mapview.New(mapview.Options{Do: w.do})
 	p.m.OnSelect = func(parcel string, add bool) {
 		if parcel == "" {
 			return
@@ -134,7 +134,7 @@ func (p *picture) renew() {
 			}
 			g, err = tiles.NewGround(ctx, out)
 		}
-		fyne.Do(func() {
+		p.w.do(func() {
 			if ctx.Err() != nil {
 				return
 			}
@@ -194,7 +194,7 @@ func (p *picture) colour() {
 
 func (p *picture) colouring(job *shadeJob) {
 	out := job.do()
-	fyne.Do(func() {
+	p.w.do(func() {
 		if job.ground == p.ground {
 			p.m.SetShading(out.shading)
 			p.m.SetLegend(out.title, out.legend)
@@ -456,7 +456,7 @@ func (p *picture) ask(cand *run.Candidate) {
 	p.around[cand.ID()] = nil
 	of := p.of
 	p.w.core.Session.Around(cand, func(a *run.Surroundings, err error) {
-		fyne.Do(func() {
+		p.w.do(func() {
 			if err != nil || of != p.of { // without it the map shows the plant alone
 				return
 			}

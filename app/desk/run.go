@@ -72,7 +72,7 @@ func Main(args []string, stdout, stderr io.Writer) int {
 		fmt.Fprintf(stderr, "groundtally: there is no screen to open a window on (neither DISPLAY nor WAYLAND_DISPLAY is set).\n%s", wayOut(path))
 		return exitUnexpected
 	}
-	return supervise(args, path, stderr)
+	return supervise(args, path, stdout, stderr)
 }
 
 // wayOut says how to go on without a window.
@@ -87,7 +87,7 @@ func wayOut(path string) string {
 const upWord = "window open"
 
 // supervise runs the window in a child process and puts its failure into words.
-func supervise(args []string, path string, stderr io.Writer) int {
+func supervise(args []string, path string, stdout, stderr io.Writer) int {
 	self, err := os.Executable()
 	if err != nil {
 		fmt.Fprintf(stderr, "groundtally: %v\n", err)
@@ -95,6 +95,7 @@ func supervise(args []string, path string, stderr io.Writer) int {
 	}
 	cmd := exec.Command(self, args...)
 	cmd.Env = append(os.Environ(), childMark+"=1")
+	cmd.Stdin = os.Stdin
 	if os.Getenv("MALLOC_ARENA_MAX") == "" {
 		// The geometry library frees memory on many threads; with an arena for each, little of it comes back.
 		cmd.Env = append(cmd.Env, "MALLOC_ARENA_MAX=2")
@@ -119,8 +120,12 @@ func supervise(args []string, path string, stderr io.Writer) int {
 	}()
 	up := false
 	lines := bufio.NewScanner(out)
+	lines.Buffer(nil, 1<<20)
 	for lines.Scan() {
 		up = up || lines.Text() == upWord
+		if os.Getenv(probeMark) != "" {
+			fmt.Fprintln(stdout, lines.Text())
+		}
 	}
 	err = cmd.Wait()
 	signal.Stop(signals)
@@ -223,6 +228,7 @@ func window(sample bool, path string) int {
 	}
 	a := fyneapp.NewWithID(AppID)
 	w := New(a, parts)
+	w.watch(os.Stdin, os.Stdout)
 	a.Lifecycle().SetOnStarted(func() { fmt.Println(upWord) })
 	signals := make(chan os.Signal, 1)
 	signal.Notify(signals, os.Interrupt, syscall.SIGTERM)

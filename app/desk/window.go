@@ -9,6 +9,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strings"
+	"sync/atomic"
 	"time"
 
 	"fyne.io/fyne/v2"
@@ -49,6 +50,7 @@ type Window struct {
 	core   *core.Core
 	theme  *theme.Theme
 	clock  func() time.Time
+	do     func(func()) // runs something on the window's goroutine
 
 	stages []core.Stage
 	panes  []fyne.CanvasObject
@@ -66,13 +68,12 @@ type Window struct {
 	bubble  *bubble
 	layers  *fyne.Container // all, and what lies over it
 
-	sample  *live.Session // being filled with the sample district
-	pending bool          // an update of the core waits for its turn
+	pending atomic.Bool // an update of the core waits for its turn
 }
 
 // New makes the window; it shows nothing until a study is opened or Offer is called.
 func New(a fyne.App, parts *program.Parts) *Window {
-	w := &Window{app: a, parts: parts, clock: time.Now}
+	w := &Window{app: a, parts: parts, clock: time.Now, do: fyne.Do}
 	w.theme = theme.New(theme.Mode(a.Preferences().StringWithFallback(lookKey, string(theme.Light))))
 	a.Settings().SetTheme(w.theme)
 	w.window = a.NewWindow("Groundtally")
@@ -80,7 +81,7 @@ func New(a fyne.App, parts *program.Parts) *Window {
 	w.window.SetMaster()
 	w.window.Resize(fyne.NewSize(1366, 768))
 	w.window.SetCloseIntercept(w.close)
-	w.bubble = newBubble(fyne.Do)
+	w.bubble = newBubble(func(f func()) { w.do(f) })
 	w.window.SetOnDropped(w.dropped)
 	return w
 }
@@ -92,6 +93,7 @@ func (w *Window) build() {
 	}
 	c := core.New(w.app, w.window, w.parts, w.theme)
 	w.core = c
+	c.Do = w.do
 	w.ground = ground.New(c)
 	w.stages = []core.Stage{w.ground, plant.New(c), accounts.New(c), weigh.New(c), appendix.New(c)}
 	w.panes = make([]fyne.CanvasObject, len(w.stages))
@@ -180,13 +182,17 @@ func (w *Window) attach(s *live.Session) {
 	}
 }
 
-// notify is told by sessions, from any goroutine, that there is something new.
+// notify is told by sessions, from any goroutine, that there is something new. Calls that come in quick
+// succession lead to one update.
 func (w *Window) notify(s *live.Session) {
-	fyne.Do(func() {
-		if w.core == nil || w.core.Session != s || w.pending {
-			return
+	if !w.pending.CompareAndSwap(false, true) {
+		return
+	}
+	w.do(func() {
+		w.pending.Store(false)
+		if w.core != nil && w.core.Session == s {
+			w.core.Update()
 		}
-		w.core.Update()
 	})
 }
 
@@ -202,7 +208,7 @@ func (w *Window) start(store study.Store, then func(s *live.Session)) error {
 		return err
 	}
 	close(ready)
-	fyne.Do(func() {
+	w.do(func() {
 		w.attach(s)
 		w.app.Preferences().SetString(lastKey, store.Path())
 		if then != nil {
@@ -222,7 +228,7 @@ func (w *Window) Open(path string) {
 			err = w.start(store, nil)
 		}
 		if err != nil {
-			fyne.Do(func() { w.offer(err, path) })
+			w.do(func() { w.offer(err, path) })
 		}
 	}()
 }
@@ -239,7 +245,7 @@ func (w *Window) Create(path string) {
 			err = w.start(store, func(*live.Session) { w.core.ShowStage("Ground") })
 		}
 		if err != nil {
-			fyne.Do(func() { w.offer(err, path) })
+			w.do(func() { w.offer(err, path) })
 		}
 	}()
 }
@@ -259,7 +265,7 @@ func (w *Window) Sample(path string) {
 	go func() {
 		ctx := context.Background()
 		if err := w.openSample(ctx, path); err != nil {
-			fyne.Do(func() { w.offer(err, path) })
+			w.do(func() { w.offer(err, path) })
 		}
 	}()
 }
@@ -341,7 +347,7 @@ func (w *Window) droppedPackage(path string) {
 		if err == nil {
 			_ = store.Close()
 		}
-		fyne.Do(func() {
+		w.do(func() {
 			if errors.Is(err, study.ErrNotAStudy) {
 				w.take([]string{path})
 				return
@@ -373,7 +379,7 @@ func (w *Window) close() {
 	s := w.core.Session
 	go func() {
 		err := s.Close()
-		fyne.Do(func() {
+		w.do(func() {
 			if err != nil {
 				fmt.Fprintln(os.Stderr, "groundtally: close the study:", err)
 			}
@@ -472,4 +478,4 @@ func (w *Window) showKeys() {
 }
 
 // End closes the window as its user would. It may be called from any goroutine.
-func (w *Window) End() { fyne.Do(w.close) }
+func (w *Window) End() { w.do(w.close) }

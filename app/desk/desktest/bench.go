@@ -34,17 +34,47 @@ type Bench struct {
 	Window fyne.Window
 	Core   *core.Core
 	Theme  *theme.Theme
+	Queue
+}
 
+// Queue holds what other goroutines hand to the window until the test lets it through.
+type Queue struct {
 	mu    sync.Mutex
 	queue []func()
 }
 
-var load = sync.OnceValues(program.Load)
+// Do is the queue's end for other goroutines.
+func (q *Queue) Do(f func()) {
+	q.mu.Lock()
+	defer q.mu.Unlock()
+	q.queue = append(q.queue, f)
+}
+
+// Pump lets through what waits for the window; it tells whether there was anything.
+func (q *Queue) Pump() bool {
+	any := false
+	for {
+		q.mu.Lock()
+		list := q.queue
+		q.queue = nil
+		q.mu.Unlock()
+		if len(list) == 0 {
+			return any
+		}
+		any = true
+		for _, f := range list {
+			f()
+		}
+	}
+}
+
+// Parts are what the program stands on, read once for all tests.
+var Parts = sync.OnceValues(program.Load)
 
 // New opens a window on the sample study with every n-th of its parcels, in memory.
 func New(t testing.TB, every int) *Bench {
 	t.Helper()
-	parts, err := load()
+	parts, err := Parts()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -54,7 +84,7 @@ func New(t testing.TB, every int) *Bench {
 // Over opens a window on a store.
 func Over(t testing.TB, store study.Store) *Bench {
 	t.Helper()
-	parts, err := load()
+	parts, err := Parts()
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -63,8 +93,8 @@ func Over(t testing.TB, store study.Store) *Bench {
 	b.Window = test.NewTempWindow(t, nil)
 	b.Window.SetPadded(false)
 	b.Core = core.New(b.App, b.Window, parts, b.Theme)
-	b.Core.Do = b.do
-	s, err := live.Start(context.Background(), store, live.Config{Catalog: parts.Catalog, Params: parts.Params, Who: "Tester", Clock: clock(), Notify: func() { b.do(b.Core.Update) }})
+	b.Core.Do = b.Queue.Do
+	s, err := live.Start(context.Background(), store, live.Config{Catalog: parts.Catalog, Params: parts.Params, Who: "Tester", Clock: clock(), Notify: func() { b.Queue.Do(b.Core.Update) }})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -85,10 +115,17 @@ func clock() func() time.Time {
 	}
 }
 
-// Sample is the sample study with every n-th of its parcels.
+// Sample is the sample study with every n-th of its parcels, in memory.
 func Sample(t testing.TB, parts *program.Parts, every int) study.Store {
 	t.Helper()
 	store := studytest.New()
+	Fill(t, parts, store, every)
+	return store
+}
+
+// Fill puts the sample study with every n-th of its parcels into a store.
+func Fill(t testing.TB, parts *program.Parts, store study.Store, every int) {
+	t.Helper()
 	s, err := study.Open(context.Background(), store, parts.Catalog, study.Options{Clock: clock()})
 	if err != nil {
 		t.Fatal(err)
@@ -111,31 +148,6 @@ func Sample(t testing.TB, parts *program.Parts, every int) study.Store {
 	if err := s.LoadSample(context.Background(), sampledata.FS(), read, tools, func(study.LayerRecord) {}); err != nil {
 		t.Fatal(err)
 	}
-	return store
-}
-
-func (b *Bench) do(f func()) {
-	b.mu.Lock()
-	defer b.mu.Unlock()
-	b.queue = append(b.queue, f)
-}
-
-// Pump lets through what waits for the window; it tells whether there was anything.
-func (b *Bench) Pump() bool {
-	any := false
-	for {
-		b.mu.Lock()
-		q := b.queue
-		b.queue = nil
-		b.mu.Unlock()
-		if len(q) == 0 {
-			return any
-		}
-		any = true
-		for _, f := range q {
-			f()
-		}
-	}
 }
 
 // Until pumps until something holds; it fails the test when it does not hold within two minutes.
@@ -157,7 +169,7 @@ func (b *Bench) Until(what string, holds func() bool) {
 func (b *Bench) Settle() {
 	b.T.Helper()
 	saved := false
-	b.Core.Session.Edit(func(context.Context, *study.Study) error { return nil }, func(error) { b.do(func() { saved = true }) })
+	b.Core.Session.Edit(func(context.Context, *study.Study) error { return nil }, func(error) { b.Queue.Do(func() { saved = true }) })
 	b.Until("the study is saved", func() bool { return saved })
 	b.Until("the study is computed", func() bool {
 		v := b.Core.View()
@@ -188,7 +200,7 @@ func (b *Bench) Shoot(name string) (light, dark image.Image) {
 		b.Core.Emit(core.LookChanged)
 		b.Pump()
 		shots[i] = b.Window.Canvas().Capture()
-		save(b.T, fmt.Sprintf("%s-%s.png", name, mode), shots[i])
+		Save(b.T, fmt.Sprintf("%s-%s.png", name, mode), shots[i])
 	}
 	*b.Theme = *theme.New(theme.Light)
 	b.App.Settings().SetTheme(b.Theme)
@@ -197,7 +209,8 @@ func (b *Bench) Shoot(name string) (light, dark image.Image) {
 	return shots[0], shots[1]
 }
 
-func save(t testing.TB, name string, img image.Image) {
+// Save keeps a picture as an artefact of the test, in the folder .build/shots of the checkout.
+func Save(t testing.TB, name string, img image.Image) {
 	t.Helper()
 	dir, err := os.Getwd()
 	if err != nil {

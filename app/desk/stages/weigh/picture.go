@@ -23,11 +23,13 @@ type picture struct {
 	make    func(p draw.Palette, width float64) *draw.Scene
 	pressed func(item string, add bool) // a shape with an item was clicked; may be nil
 	sized   func()                      // the height changed
+	fit     func(width float32) float32 // how much of the width the scene takes; may be nil
 
 	work     latest
 	width    float32
 	scene    *draw.Scene
 	img      image.Image
+	palette  draw.Palette // that the picture is painted in
 	modifier fyne.KeyModifier
 }
 
@@ -49,12 +51,16 @@ func (p *picture) paint() {
 	}
 	scale := float64(p.c.Window.Canvas().Scale())
 	build, palette, width := p.make, p.c.Palette(), float64(p.width)
+	if p.img != nil && p.palette != palette { // nothing rather than light paper in the dark
+		p.img = nil
+		p.Refresh()
+	}
 	p.work.ask(p.c, nil, func() func() {
 		scene := build(palette, width)
 		img := raster.Paint(scene, scale, palette)
 		return func() {
 			taller := p.scene == nil || p.scene.Height != scene.Height
-			p.scene, p.img = scene, img
+			p.scene, p.img, p.palette = scene, img, palette
 			p.Refresh()
 			if taller {
 				p.sized()
@@ -132,8 +138,12 @@ func (r *pictureRenderer) Layout(size fyne.Size) {
 	if r.p.scene != nil {
 		r.img.Resize(fyne.NewSize(float32(r.p.scene.Width), float32(r.p.scene.Height)))
 	}
-	if size.Width != r.p.width {
-		r.p.width = size.Width
+	width := size.Width
+	if r.p.fit != nil {
+		width = r.p.fit(width)
+	}
+	if width != r.p.width {
+		r.p.width = width
 		r.p.paint()
 	}
 }

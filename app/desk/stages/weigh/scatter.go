@@ -67,6 +67,11 @@ func newScatter(s *stage) *scatterPane {
 			s.c.Choose(id)
 		}
 	}
+	// A scatter is about 0.62 times as high as it is wide, with axes and legend under it; what does not fit
+	// the height is made narrower, so that both axes are in view.
+	p.picture.fit = func(width float32) float32 {
+		return min(width, max((scroll.Size().Height-130)/0.62+60, 400))
+	}
 	scroll.Content = container.New(inset{right: 12}, p.picture)
 	across, up, only := widgets.Faint("Across"), widgets.Faint("Up"), widgets.Faint("Plant")
 	choice := container.New(free{
