@@ -1,9 +1,11 @@
 package desk
 
 import (
+	"image/color"
 	"slices"
 
 	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/canvas"
 	"fyne.io/fyne/v2/container"
 	"fyne.io/fyne/v2/dialog"
 	"fyne.io/fyne/v2/layout"
@@ -12,6 +14,7 @@ import (
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/theme"
 	"groundtally/app/desk/widgets"
+	"groundtally/app/draw"
 	"groundtally/app/present"
 	"groundtally/geo"
 )
@@ -69,20 +72,20 @@ func (w *Window) showProblems() {
 		return
 	}
 	var d dialog.Dialog
+	const gradeWide, buttonWide, wordsWide = 140, 150, 540
 	l := widget.NewList(func() int { return len(list) }, func() fyne.CanvasObject {
-		grade := widgets.Faint("")
 		words := widget.NewLabel("")
 		words.Wrapping = fyne.TextWrapWord
-		words.Truncation = fyne.TextTruncateOff
 		b := widget.NewButton("", nil)
 		b.Importance = widget.LowImportance
-		return container.NewBorder(nil, nil, container.NewGridWrap(fyne.NewSize(140, 22), grade), container.NewCenter(b), words)
+		grade := container.NewVBox(place(gradeWide, 3), widgets.Faint(""))
+		return container.NewBorder(nil, nil, grade, container.NewVBox(container.NewGridWrap(fyne.NewSize(buttonWide, 28), b)), words)
 	}, func(i widget.ListItemID, o fyne.CanvasObject) {
 		p := list[i]
 		box := o.(*fyne.Container)
 		words := box.Objects[0].(*widget.Label)
-		g := box.Objects[1].(*fyne.Container).Objects[0].(*widgets.Line)
-		b := box.Objects[2].(*fyne.Container).Objects[0].(*widget.Button)
+		g := box.Objects[1].(*fyne.Container).Objects[1].(*widgets.Line)
+		b := box.Objects[2].(*fyne.Container).Objects[0].(*fyne.Container).Objects[0].(*widget.Button)
 		colour := theme.Faint
 		if p.warm {
 			colour = theme.Warm
@@ -98,12 +101,20 @@ func (w *Window) showProblems() {
 		b.OnTapped = func() { d.Hide(); w.core.ShowStage(p.stage) }
 	})
 	for i := range list { // rows are as high as their words need
-		l.SetItemHeight(i, float32(24+18*((len(list[i].words)+74)/75)))
+		lines := len(draw.Lines(list[i].words, 13, false, wordsWide, 20))
+		l.SetItemHeight(i, float32(16+18*max(lines, 1)))
 	}
 	title := widgets.Faint(core.Count(len(list)) + " entries. Each says where, what, and what the program did or what you can do.")
 	d = dialog.NewCustom("Problems", "Close", container.NewBorder(title, nil, nil, nil, l), w.window)
 	d.Resize(fyne.NewSize(900, 520))
 	d.Show()
+}
+
+// place is something unseen that keeps room.
+func place(width, height float32) fyne.CanvasObject {
+	r := canvas.NewRectangle(color.Transparent)
+	r.SetMinSize(fyne.NewSize(width, height))
+	return r
 }
 
 // cautions stand in the window as in the appendix.

@@ -68,7 +68,8 @@ type Window struct {
 	bubble  *bubble
 	layers  *fyne.Container // all, and what lies over it
 
-	pending atomic.Bool // an update of the core waits for its turn
+	held    map[string]func() // what the keys of the window do, by shortcut
+	pending atomic.Bool       // an update of the core waits for its turn
 }
 
 // New makes the window; it shows nothing until a study is opened or Offer is called.
@@ -391,13 +392,18 @@ func (w *Window) close() {
 // keys sets the keys that hold in the whole window.
 func (w *Window) keys() {
 	cv := w.window.Canvas()
-	cv.AddShortcut(&fyne.ShortcutUndo{}, func(fyne.Shortcut) { w.core.Undo() })
-	cv.AddShortcut(&fyne.ShortcutRedo{}, func(fyne.Shortcut) { w.core.Redo() })
-	on := func(key fyne.KeyName, do func()) {
-		cv.AddShortcut(&desktop.CustomShortcut{KeyName: key, Modifier: fyne.KeyModifierShortcutDefault}, func(fyne.Shortcut) { do() })
+	w.held = map[string]func(){}
+	add := func(s fyne.Shortcut, do func()) {
+		w.held[s.ShortcutName()] = do
+		cv.AddShortcut(s, func(fyne.Shortcut) { do() })
 	}
-	for i := range w.stages {
-		on([]fyne.KeyName{fyne.Key1, fyne.Key2, fyne.Key3, fyne.Key4, fyne.Key5}[i], func() { w.choose(i) })
+	on := func(key fyne.KeyName, do func()) {
+		add(&desktop.CustomShortcut{KeyName: key, Modifier: fyne.KeyModifierShortcutDefault}, do)
+	}
+	add(&fyne.ShortcutUndo{}, w.core.Undo)
+	add(&fyne.ShortcutRedo{}, w.core.Redo)
+	for i, key := range []fyne.KeyName{fyne.Key1, fyne.Key2, fyne.Key3, fyne.Key4, fyne.Key5} {
+		on(key, func() { w.choose(i) })
 	}
 	on(fyne.KeyF, func() { cv.Focus(w.bar.find) })
 	on(fyne.KeyO, w.chooseFile)

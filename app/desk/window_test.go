@@ -26,7 +26,6 @@ type stand struct {
 	t *testing.T
 	w *Window
 	desktest.Queue
-	longest time.Duration // processor time of the longest call on the window's goroutine
 }
 
 // open opens the window on a study of every n-th parcel of the sample.
@@ -118,13 +117,14 @@ func (s *stand) shoot(name string) {
 	s.settle()
 }
 
+// press does what a shortcut does; that the toolkit leads keys there is tried in the real window.
 func (s *stand) press(sc fyne.Shortcut) {
 	s.t.Helper()
-	c, ok := s.w.window.Canvas().(interface{ TypedShortcut(fyne.Shortcut) })
-	if !ok {
-		s.t.Skip("the driver takes no shortcuts")
+	do := s.w.held[sc.ShortcutName()]
+	if do == nil {
+		s.t.Fatalf("%s does nothing", sc.ShortcutName())
 	}
-	c.TypedShortcut(sc)
+	do()
 	s.Pump()
 }
 
