@@ -425,7 +425,7 @@ func (w *Window) switchLook() {
 	*w.theme = *theme.New(mode)
 	w.app.Preferences().SetString(lookKey, string(mode))
 	w.app.Settings().SetTheme(w.theme)
-	w.core.Emit(core.LookChanged)
+	w.do(func() { w.core.Emit(core.LookChanged) }) // apart, so that the window answers in between
 }
 
 // chooseFile asks for a study to open.

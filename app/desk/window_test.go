@@ -23,13 +23,16 @@ import (
 
 // stand is a whole window under test, over a study file.
 type stand struct {
-	t *testing.T
+	t testing.TB
 	w *Window
 	desktest.Queue
 }
 
 // open opens the window on a study of every n-th parcel of the sample.
-func open(t *testing.T, every int) *stand {
+func open(t *testing.T, every int) *stand { return openFor(t, every) }
+
+// openFor is open, for benchmarks too.
+func openFor(t testing.TB, every int) *stand {
 	t.Helper()
 	parts, err := desktest.Parts()
 	if err != nil {
@@ -51,7 +54,7 @@ func open(t *testing.T, every int) *stand {
 }
 
 // empty is a window without a study.
-func empty(t *testing.T) *stand {
+func empty(t testing.TB) *stand {
 	t.Helper()
 	parts, err := desktest.Parts()
 	if err != nil {

@@ -13,7 +13,8 @@ type Index struct {
 	site       map[string]int
 }
 
-func newIndex(r *run.Results) *Index {
+// NewIndex makes the index of results.
+func NewIndex(r *run.Results) *Index {
 	x := &Index{ByID: make(map[string]int, len(r.Candidates)), SiteOf: make([]int, len(r.Candidates)), Spans: r.Spans(), parcel: map[string]int{}, site: map[string]int{}}
 	for i := range r.Candidates {
 		c := &r.Candidates[i]

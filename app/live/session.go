@@ -347,7 +347,7 @@ func (s *Session) compute(ctx context.Context, v *View, out *found) error {
 	if out.board, err = run.NewBoard(v.Snap, s.cfg.Params, out.results); err != nil {
 		return err
 	}
-	out.index = newIndex(out.results)
+	out.index = NewIndex(out.results)
 	return nil
 }
 

@@ -8,6 +8,7 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"runtime"
 	"sync"
 	"testing"
 	"time"
@@ -39,8 +40,20 @@ type Bench struct {
 
 // Queue holds what other goroutines hand to the window until the test lets it through.
 type Queue struct {
+	// Longest is the processor time of the longest call that was let through.
+	Longest time.Duration
+
 	mu    sync.Mutex
 	queue []func()
+}
+
+// Call runs something as the toolkit would on the window's goroutine, and takes its time.
+func (q *Queue) Call(f func()) {
+	runtime.LockOSThread()
+	defer runtime.UnlockOSThread()
+	from := threadTime()
+	f()
+	q.Longest = max(q.Longest, threadTime()-from)
 }
 
 // Do is the queue's end for other goroutines.
@@ -63,7 +76,7 @@ func (q *Queue) Pump() bool {
 		}
 		any = true
 		for _, f := range list {
-			f()
+			q.Call(f)
 		}
 	}
 }
