@@ -17,6 +17,7 @@ import (
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
+	"groundtally/scoring"
 )
 
 //go:embed page.html
@@ -35,6 +36,8 @@ type Input struct {
 	Journal  []study.Entry
 	Frozen   []study.Frozen
 	Top      int // places of each voice shown in full; 0 takes 15
+	// Months gives the energy of a candidate by month; nil leaves the months out.
+	Months func(*run.Candidate) ([12]scoring.Value, error)
 }
 
 // MapLayers reads the layers that a map shows. Personal columns are never read.

@@ -490,3 +490,26 @@ func BenchmarkStamp(b *testing.B) {
 		appendix.NewStamp(in.Results, in.Version)
 	}
 }
+
+// The first of each voice has its months where somebody tells them; unknown months say so and show no
+// figure.
+func TestMonths(t *testing.T) {
+	in := input(t)
+	if html := page(t, in); strings.Contains(html, "by month") {
+		t.Error("months stand on the page though nobody tells them")
+	}
+	in.Months = func(c *run.Candidate) ([12]scoring.Value, error) {
+		var out [12]scoring.Value
+		for m := range out {
+			out[m] = scoring.Num(float64(111 + m))
+		}
+		out[4] = scoring.UnknownBecause("wind_by_year_alone")
+		return out, nil
+	}
+	html := page(t, in)
+	for _, want := range []string{"Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
+		if !strings.Contains(html, want) {
+			t.Errorf("the page has no %q", want)
+		}
+	}
+}

@@ -4,12 +4,13 @@ import (
 	"fmt"
 	"html/template"
 	"strconv"
+	"time"
 
 	"groundtally/app/draw"
 	"groundtally/app/draw/chart"
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
-	"groundtally/scoring"
 )
 
 // Widths of the pictures, in their own units: across the page, or half of it beside a table.
@@ -41,35 +42,45 @@ func (b *book) bars(rows []run.Row, keys []string, title string, index int) *dra
 
 // losses draws the loss chain of a candidate; nothing where it has none.
 func losses(c *run.Candidate, title string) template.HTML {
-	if len(c.Chain) == 0 {
+	in, ok := pictures.Losses(c, "Bar chart: yield of "+title+" step by step; the same steps stand in the table above it", "")
+	if !ok {
 		return ""
-	}
-	in := chart.Chain{Title: "Bar chart: yield of " + title + " step by step; the same steps stand in the table above it", What: "yield of a year"}
-	for _, st := range c.Chain {
-		in.Steps = append(in.Steps, chart.Step{Name: present.Step(st.Name), Unit: st.Unit, Before: st.Before, Share: st.Share, After: st.After})
 	}
 	return picture(chart.Waterfall(in, draw.Light(), halfWidth))
 }
 
-// land draws how the area of a candidate's site comes down to its buildable area. A rule that is not set
-// takes an unknown area; its hatching needs a name of its own on the page.
+// land draws how the area of a candidate's site comes down to its buildable area. The hatching of rules
+// that are not set needs a name of its own on the page.
 func land(c *run.Candidate, title, id string) template.HTML {
-	in := chart.Land{Title: "Bar chart: area of the site of " + title + ", taken by each rule or buildable; the same figures stand in the table above it", ID: id,
-		SharedHa: c.TakenSharedHa, ShapeHa: c.ShapeHa}
-	sum := c.TakenSharedHa + c.ShapeHa
-	for _, t := range c.Taken {
-		in.Rules = append(in.Rules, chart.TakenRule{Name: present.Rule(t.Rule), AloneHa: t.AloneHa, SharedHa: t.SharedHa, TakesAll: t.TakesAll})
-		sum += t.AloneHa
+	return picture(chart.TakenBars(pictures.Land(c, "Bar chart: area of the site of "+title+", taken by each rule or buildable; the same figures stand in the table above it", id), draw.Light(), halfWidth))
+}
+
+// monthsView is the energy of a candidate by month.
+type monthsView struct {
+	Picture template.HTML
+	Rows    []monthView
+	Why     string // what keeps months unknown
+}
+
+type monthView struct{ Month, MWh string }
+
+// months draws the energy of a candidate by month; nil where nobody tells it.
+func (b *book) months(c *run.Candidate, title, id string) (*monthsView, error) {
+	if b.in.Months == nil {
+		return nil, nil
 	}
-	for _, n := range c.Incomplete {
-		in.Rules = append(in.Rules, chart.TakenRule{Name: present.Rule(n), Unknown: true})
+	values, err := b.in.Months(c)
+	if err != nil {
+		return nil, err
 	}
-	if q, ok := c.Consequence("buildable_area_ha"); ok && q.State == scoring.Number {
-		in.BuildableHa = q.Central
+	in, why := pictures.Months(values, "Column chart: energy of "+title+" by month; the same figures stand in the table beside it", id)
+	out := &monthsView{Picture: picture(chart.Monthly(in, draw.Light(), halfWidth)), Why: why}
+	for m, v := range values {
+		row := monthView{Month: time.Month(m + 1).String(), MWh: v.State.String()}
+		if v.OK() {
+			row.MWh = present.Figure(v.X, v.X, v.X)
+		}
+		out.Rows = append(out.Rows, row)
 	}
-	in.GrossHa = sum + in.BuildableHa
-	if q, ok := c.Consequence("gross_area_ha"); ok && q.State == scoring.Number {
-		in.GrossHa = q.Central
-	}
-	return picture(chart.TakenBars(in, draw.Light(), halfWidth))
+	return out, nil
 }

@@ -21,6 +21,7 @@ type unfolded struct {
 	Accounts            []accountView
 	NotAssessed         string
 	Notes               []string
+	Months              *monthsView // of the first of each voice
 	Trace               *traceView
 	Losses, Land        template.HTML // pictures
 }
@@ -81,6 +82,9 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 			continue
 		}
 		u.FirstFor = strings.Join(voices, ", ")
+		if u.Months, err = b.months(c, u.Title, "-months-"+strconv.Itoa(len(leads)+1)); err != nil {
+			return nil, nil, err
+		}
 		if u.Trace, err = b.trace(c, "q"+strconv.Itoa(len(leads)+1)+"-"); err != nil {
 			return nil, nil, err
 		}

@@ -51,8 +51,13 @@ func (w *Window) watch(in io.Reader, out io.Writer) {
 	}
 	p := &probe{w: w, out: out}
 	go func() { // some changes are the toolkit's own, as a dialog that opens
+		told := make(chan struct{}, 1)
 		for range time.Tick(50 * time.Millisecond) {
-			w.do(p.tell)
+			w.do(func() {
+				p.tell()
+				told <- struct{}{}
+			})
+			<-told // a busy window is not asked again before it has answered
 		}
 	}()
 	go func() {

@@ -51,7 +51,7 @@ var verbAppendix = verb{
 			if err != nil {
 				return 0, err
 			}
-			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: journal, Frozen: frozen})
+			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: journal, Frozen: frozen, Months: appendix.MonthsOf(c.ctx, snap, c.Params, s.Store())})
 			if err != nil {
 				return 0, err
 			}

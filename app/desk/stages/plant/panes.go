@@ -14,6 +14,7 @@ import (
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
+	"groundtally/scoring"
 )
 
 // rules shows the rules that bear on the chosen option.
@@ -269,14 +270,20 @@ type fitted struct {
 	lossHead    *widgets.Line
 	loss, taken *picture
 	takenHead   *widgets.Line
+	monthHead   *widgets.Line
+	monthWords  *widgets.Line
+	month       *picture
+	months      *run.Candidate // whose months are shown or asked for
 }
 
 func newFitted(s *stage) *fitted {
-	f := &fitted{s: s, title: widgets.Part(""), words: widgets.NewText(""), lines: container.NewVBox(), lossHead: widgets.Part("What is lost on the way"), takenHead: widgets.Part("What the rules take of the site")}
+	f := &fitted{s: s, title: widgets.Part(""), words: widgets.NewText(""), lines: container.NewVBox(), lossHead: widgets.Part("What is lost on the way"), takenHead: widgets.Part("What the rules take of the site"),
+		monthHead: widgets.Part("Energy at the plant by month"), monthWords: widgets.Faint("")}
 	background := func(do func()) { s.background(do) }
 	grew := func() { f.body.Refresh() }
 	f.loss, f.taken = newPicture(s.core, background, grew), newPicture(s.core, background, grew)
-	f.box = container.NewVBox(f.title, flush(f.words), f.lines, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), flush(caption(caution)))
+	f.month = newPicture(s.core, background, grew)
+	f.box = container.NewVBox(f.title, flush(f.words), f.lines, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, space(6), flush(caption(caution)))
 	f.body = container.NewVScroll(container.New(insets{2, 6, 16, 8}, f.box))
 	return f
 }
@@ -312,6 +319,10 @@ func (f *fitted) update() {
 	visible(f.taken, c != nil)
 	visible(f.lossHead, c != nil && len(c.Chain) > 0)
 	visible(f.loss, c != nil && len(c.Chain) > 0)
+	withPlant := c != nil && c.Status == run.Fitted
+	visible(f.monthHead, withPlant)
+	visible(f.monthWords, withPlant)
+	visible(f.month, withPlant)
 	if c == nil {
 		f.title.Set("No candidate of this option is chosen")
 		f.words.SetText("Choose a site on the map or in the table of Accounts, then come back.")
@@ -335,7 +346,40 @@ func (f *fitted) update() {
 	f.fill(c)
 	f.taken.show(landOf(c))
 	f.loss.show(lossOf(c))
+	f.askMonths(c)
 	f.body.Refresh()
+}
+
+// askMonths finds the months of a candidate, once, off the window's goroutine.
+func (f *fitted) askMonths(c *run.Candidate) {
+	if f.months == c {
+		return
+	}
+	f.months = c
+	f.month.show(nil)
+	f.monthWords.Set("")
+	if c.Status != run.Fitted {
+		return
+	}
+	f.s.core.Session.Months(c, func(months [12]scoring.Value, err error) {
+		f.s.core.Do(func() {
+			switch {
+			case f.months != c:
+				return
+			case err != nil:
+				f.monthWords.Set(present.Problem(err))
+				return
+			}
+			do, why := monthsOf(c, months)
+			if why != "" {
+				f.monthWords.Set("Unknown: " + why + ".")
+			} else {
+				f.monthWords.Set("Of the year that the yield rests on; before the bias of forecasts and the losses of the connection.")
+			}
+			f.month.show(do)
+			f.body.Refresh()
+		})
+	})
 }
 
 func (f *fitted) fill(c *run.Candidate) {

@@ -571,11 +571,14 @@ func TestFittedShowsTheCandidate(t *testing.T) {
 	if len(said) < len(c.Chain) {
 		t.Errorf("resting on the losses says %d things of %d", len(said), len(c.Chain))
 	}
+	b.Until("the months of wind are known to be unknown", func() bool { return strings.HasPrefix(s.fitted.monthWords.Text, "Unknown: ") })
 	// Another option: the same site is shown with it.
 	s.choose("solar_fixed")
 	if got := s.fitted.candidate(); got == nil || got.Plant != "solar_fixed" || got.Site != c.Site {
 		t.Errorf("with another option %v is shown", got)
 	}
+	s.chooseBest()
+	b.Until("the months of sun are drawn", func() bool { return s.fitted.month.scene != nil && strings.HasPrefix(s.fitted.monthWords.Text, "Of the year") })
 }
 
 func TestWithoutAnyOption(t *testing.T) {

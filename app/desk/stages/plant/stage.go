@@ -39,6 +39,8 @@ type stage struct {
 	asked   counting
 	who     map[string]string // by setting: who changed it last
 	read    int               // journal entries that who knows
+	stated  *study.Snapshot   // what unset was counted in
+	unset   int               // legal values that are not set
 	content fyne.CanvasObject
 	syncing bool
 
@@ -77,7 +79,10 @@ func (s *stage) State() (first, second string, warn bool) {
 	if n == 1 {
 		first = "1 option"
 	}
-	switch missing := len(legalNotSet(v.Snap)); {
+	if s.stated != v.Snap { // the rail asks at every change; most leave the settings as they are
+		s.stated, s.unset = v.Snap, len(legalNotSet(v.Snap))
+	}
+	switch missing := s.unset; {
 	case n == 0:
 		return "no option yet", "make one", true
 	case missing == 1:

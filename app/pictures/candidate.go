@@ -1,0 +1,57 @@
+package pictures
+
+import (
+	"fmt"
+	"strings"
+
+	"groundtally/app/draw/chart"
+	"groundtally/app/present"
+	"groundtally/app/run"
+	"groundtally/scoring"
+)
+
+// Land shows how the area of a candidate's site comes down to its buildable area. A rule that is not set
+// takes an unknown area. id tells its hatching from that of other pictures on one page.
+func Land(c *run.Candidate, title, id string) chart.Land {
+	in := chart.Land{Title: title, ID: id, SharedHa: c.TakenSharedHa, ShapeHa: c.ShapeHa}
+	sum := c.TakenSharedHa + c.ShapeHa
+	for _, t := range c.Taken {
+		in.Rules = append(in.Rules, chart.TakenRule{Item: t.Rule, Name: present.Rule(t.Rule), AloneHa: t.AloneHa, SharedHa: t.SharedHa, TakesAll: t.TakesAll})
+		sum += t.AloneHa
+	}
+	for _, n := range c.Incomplete {
+		if strings.Contains(n, ":") { // a rule and not a limit
+			in.Rules = append(in.Rules, chart.TakenRule{Item: n, Name: present.Rule(n), Unknown: true})
+		}
+	}
+	if q, ok := c.Consequence("buildable_area_ha"); ok && q.State == scoring.Number {
+		in.BuildableHa = q.Central
+	}
+	in.GrossHa = sum + in.BuildableHa
+	if q, ok := c.Consequence("gross_area_ha"); ok && q.State == scoring.Number {
+		in.GrossHa = q.Central
+	}
+	return in
+}
+
+// Losses shows the loss chain of a candidate; ok is false where it has none.
+func Losses(c *run.Candidate, title, id string) (in chart.Chain, ok bool) {
+	in = chart.Chain{Title: title, ID: id, What: "yield of a year"}
+	for _, st := range c.Chain {
+		in.Steps = append(in.Steps, chart.Step{Item: st.Name, Name: present.Step(st.Name), Unit: st.Unit, Before: st.Before, Share: st.Share, After: st.After})
+	}
+	return in, len(c.Chain) > 0
+}
+
+// Months shows the energy of a candidate by month, as run.Surveyor gives it. Why says what keeps months
+// unknown; it is empty when all are known.
+func Months(months [12]scoring.Value, title, id string) (in chart.Months, why string) {
+	in = chart.Months{Title: title, ID: id, What: "energy at the plant", Unit: "MWh"}
+	for m, v := range months {
+		in.Values[m] = chart.Month{Item: fmt.Sprintf("month-%d", m+1), Value: v.X, Unknown: !v.OK()}
+		if !v.OK() {
+			why = present.Reason(v.Why)
+		}
+	}
+	return in, why
+}

@@ -1,0 +1,2 @@
+// Package pictures turns candidates into the charts that window and appendix share.
+package pictures
