@@ -7,6 +7,7 @@ import (
 	"slices"
 	"sort"
 	"strings"
+	"time"
 
 	"fyne.io/fyne/v2"
 	"fyne.io/fyne/v2/container"
@@ -121,7 +122,15 @@ func (p *picture) renew() {
 	ctx, cancel := context.WithCancel(context.Background())
 	p.making = cancel
 	store := p.w.core.Session.Study().Store()
+	again := p.ground != nil
 	go func() {
+		if again { // several layers may come one after the other
+			select {
+			case <-ctx.Done():
+				return
+			case <-time.After(300 * time.Millisecond):
+			}
+		}
 		layers, err := appendix.MapLayers(ctx, v.Snap, run.StoreLoader(store))
 		var g *tiles.Ground
 		if err == nil {
@@ -152,8 +161,25 @@ func (p *picture) renew() {
 			}
 			p.colour()
 			p.mark()
+			p.release()
 		})
 	}()
+}
+
+// release lets the computing begin once the map is drawn for the first time.
+func (p *picture) release() {
+	s := p.w.core.Session
+	if p.m.Settled() {
+		s.Release()
+		return
+	}
+	time.AfterFunc(20*time.Millisecond, func() {
+		p.w.do(func() {
+			if p.w.core.Session == s {
+				p.release()
+			}
+		})
+	})
 }
 
 // shadeJob is all that colouring reads, so that it can be done on another goroutine.

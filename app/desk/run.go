@@ -2,6 +2,7 @@ package desk
 
 import (
 	"bufio"
+	"cmp"
 	"errors"
 	"fmt"
 	"io"
@@ -15,7 +16,9 @@ import (
 	"sync"
 	"syscall"
 
+	"fyne.io/fyne/v2"
 	fyneapp "fyne.io/fyne/v2/app"
+	"fyne.io/fyne/v2/driver"
 
 	"groundtally/app/program"
 )
@@ -154,10 +157,10 @@ func explainStart(said, path string) string {
 	what := "the window could not be opened."
 	cure := "Update the graphics driver, or start it on another screen."
 	switch {
-	case strings.Contains(low, "display") && (strings.Contains(low, "failed to open") || strings.Contains(low, "platformerror") || strings.Contains(low, "x11")):
-		what = "the screen " + os.Getenv("DISPLAY") + " cannot be reached."
+	case strings.Contains(low, "platformunavailable") || strings.Contains(low, "display") && (strings.Contains(low, "failed to open") || strings.Contains(low, "platformerror")):
+		what = "the screen " + cmp.Or(os.Getenv("WAYLAND_DISPLAY"), os.Getenv("DISPLAY")) + " cannot be reached."
 		cure = "Start the program in a session that has a screen."
-	case strings.Contains(low, "apiunavailable") || strings.Contains(low, "versionunavailable") || strings.Contains(low, "opengl") || strings.Contains(low, "glx") || strings.Contains(low, "egl"):
+	case strings.Contains(low, "apiunavailable") || strings.Contains(low, "versionunavailable") || strings.Contains(low, "formatunavailable") || strings.Contains(low, "opengl") || strings.Contains(low, "glx") || strings.Contains(low, "egl"):
 		what = "the screen offers no OpenGL, which the window is drawn with."
 		cure = "Update the graphics driver, or install software rendering (on Debian: libgl1-mesa-dri)."
 	}
@@ -228,6 +231,10 @@ func window(sample bool, path string) int {
 	}
 	a := fyneapp.NewWithID(AppID)
 	w := New(a, parts)
+	w.window.Show()
+	if !there(w.window) {
+		return exitUnexpected // the toolkit has said why; left to itself it would run on without a window
+	}
 	w.watch(os.Stdin, os.Stdout)
 	a.Lifecycle().SetOnStarted(func() { fmt.Println(upWord) })
 	signals := make(chan os.Signal, 1)
@@ -249,6 +256,29 @@ func window(sample bool, path string) int {
 	default:
 		w.Offer()
 	}
-	w.window.ShowAndRun()
+	a.Run()
 	return exitDone
+}
+
+// there reports whether the system made the window.
+func there(w fyne.Window) bool {
+	n, ok := w.(driver.NativeWindow)
+	made := !ok
+	if ok {
+		n.RunNative(func(c any) {
+			switch c := c.(type) {
+			case driver.X11WindowContext:
+				made = c.WindowHandle != 0
+			case driver.WaylandWindowContext:
+				made = c.WaylandSurface != 0
+			case driver.WindowsWindowContext:
+				made = c.HWND != 0
+			case driver.MacWindowContext:
+				made = c.NSWindow != 0
+			default:
+				made = true
+			}
+		})
+	}
+	return made
 }

@@ -197,11 +197,14 @@ func (w *Window) notify(s *live.Session) {
 	})
 }
 
+// mapFirst is how long the computing of a study that was just opened waits for its map at most.
+const mapFirst = 2 * time.Second
+
 // start opens a session over a store, off the window's goroutine, and shows it.
 func (w *Window) start(store study.Store, then func(s *live.Session)) error {
 	var s *live.Session
 	ready := make(chan struct{})
-	s, err := live.Start(context.Background(), store, live.Config{Catalog: w.parts.Catalog, Params: w.parts.Params, Who: w.parts.Who, Clock: w.clock, Notify: func() {
+	s, err := live.Start(context.Background(), store, live.Config{Catalog: w.parts.Catalog, Params: w.parts.Params, Who: w.parts.Who, Clock: w.clock, Wait: true, Notify: func() {
 		go func() { <-ready; w.notify(s) }()
 	}})
 	if err != nil {
@@ -209,6 +212,7 @@ func (w *Window) start(store study.Store, then func(s *live.Session)) error {
 		return err
 	}
 	close(ready)
+	time.AfterFunc(mapFirst, s.Release)
 	w.do(func() {
 		w.attach(s)
 		w.app.Preferences().SetString(lastKey, store.Path())

@@ -51,6 +51,8 @@ type Config struct {
 	Clock   func() time.Time
 	Cores   int // 0 takes all
 	Notify  func()
+	// Wait keeps the first computing back until Release is called, so that a window can show its map first.
+	Wait bool
 }
 
 // Session is an open study that is kept computed.
@@ -75,6 +77,7 @@ type Session struct {
 	stopped   *study.Snapshot    // state that the user does not want computed
 	surveyor  *run.Surveyor      // of the state surveyed
 	surveyed  *study.Snapshot
+	waiting   bool // for Release
 }
 
 type edit struct {
@@ -88,7 +91,7 @@ func Start(ctx context.Context, store study.Store, cfg Config) (*Session, error)
 	if err != nil {
 		return nil, err
 	}
-	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{})}
+	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{}), waiting: cfg.Wait}
 	session.ctx, session.stop = context.WithCancel(context.WithoutCancel(ctx))
 	if err := session.refresh(); err != nil {
 		return nil, err
@@ -169,6 +172,14 @@ func (s *Session) Compute() {
 	s.mu.Unlock()
 	s.poke()
 	s.cfg.Notify()
+}
+
+// Release lets the computing begin that Config.Wait kept back.
+func (s *Session) Release() {
+	s.mu.Lock()
+	s.waiting = false
+	s.mu.Unlock()
+	s.poke()
 }
 
 // Close stops everything, waits for it, and closes the study's file. Edits asked for before are saved; later
@@ -284,7 +295,7 @@ func (s *Session) computing() {
 		}
 		s.mu.Lock()
 		v := s.view
-		if v.Current || v.Problem != nil || s.stopped == v.Snap {
+		if v.Current || v.Problem != nil || s.stopped == v.Snap || s.waiting {
 			s.mu.Unlock()
 			continue
 		}

@@ -578,7 +578,9 @@ func TestFittedShowsTheCandidate(t *testing.T) {
 		t.Errorf("with another option %v is shown", got)
 	}
 	s.chooseBest()
-	b.Until("the months of sun are drawn", func() bool { return s.fitted.month.scene != nil && strings.HasPrefix(s.fitted.monthWords.Text, "Of the year") })
+	b.Until("the months of sun are drawn", func() bool {
+		return s.fitted.month.scene != nil && strings.HasPrefix(s.fitted.monthWords.Text, "Of the year")
+	})
 }
 
 func TestWithoutAnyOption(t *testing.T) {
