@@ -66,8 +66,8 @@ type Core struct {
 	ShowPlace   func(at geo.LonLat)                         // brings a place into view on the map
 	ShowStage   func(title string)                          // opens a stage
 	Boxed       func() []string                             // parcels in the box last drawn on the map
+	Ask         func(title, words, yes string, then func()) // asks before something that takes much away
 	Tell        func(words string)                          // a short word at the foot of the window, that something is done
-	Ask         func(title, words, yes string, then func()) // asks before something that cannot be undone
 
 	view      *live.View
 	voice     string
@@ -76,7 +76,6 @@ type Core struct {
 	ranking   *live.Ranking
 	weigher   *live.Weigher
 	trying    []float64 // raw weights tried out and not saved; nil when those of the study hold
-	shadedBy  *live.Ranking
 	listeners []func(Change)
 	info      map[string]run.KeyInfo
 }
@@ -90,6 +89,7 @@ func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core
 	c.weigher = live.NewWeigher(func(r *live.Ranking) { c.Do(func() { c.ranked(r) }) })
 	c.Boxed = func() []string { return nil }
 	c.Tell = func(string) {}
+	c.Ask = c.confirm
 	c.ShowParcels, c.ShowPlace, c.ShowStage = func([]string) {}, func(geo.LonLat) {}, func(string) {}
 	return c
 }

@@ -36,3 +36,16 @@ func (c *Core) Fail(what string, err error) {
 	d.Resize(fyne.NewSize(520, 180))
 	d.Show()
 }
+
+// confirm asks a question and does what follows when the answer is yes.
+func (c *Core) confirm(title, words, yes string, then func()) {
+	label := widget.NewLabel(words)
+	label.Wrapping = fyne.TextWrapWord
+	d := dialog.NewCustomConfirm(title, yes, "Leave it", label, func(ok bool) {
+		if ok {
+			then()
+		}
+	}, c.Window)
+	d.Resize(fyne.NewSize(460, 170))
+	d.Show()
+}

@@ -168,5 +168,5 @@ func render(t testing.TB, g *Ground, level int, rect image.Rectangle, s Shading,
 
 func at(img *image.RGBA, x, y int) color.NRGBA {
 	c := img.RGBAAt(x, y)
-	return color.NRGBA{R: c.R, G: c.G, B: c.B, A: c.A}
+	return color.NRGBA(c)
 }

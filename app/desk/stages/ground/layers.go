@@ -254,7 +254,7 @@ func (p *layersPane) choose(replace string) {
 // remove takes the unfolded layer out.
 func (p *layersPane) remove() {
 	name := p.opened
-	ask(p.s.c, "Take out "+name, fmt.Sprintf("The layer %q leaves the study, and everything that rests on it becomes unknown. Undo brings it back.", name), "Take out", func() {
+	p.s.c.Ask("Take out "+name, fmt.Sprintf("The layer %q leaves the study, and everything that rests on it becomes unknown. Undo brings it back.", name), "Take out", func() {
 		p.s.c.Edit("take out the layer", func(ctx context.Context, s *study.Study) error {
 			return s.RemoveLayer(ctx, name, "taken out in the window")
 		}, func() { p.s.c.Tell(name + " was taken out. Undo brings it back.") })

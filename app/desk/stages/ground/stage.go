@@ -3,7 +3,6 @@ package ground
 import (
 	"fyne.io/fyne/v2"
 	"fyne.io/fyne/v2/container"
-	"fyne.io/fyne/v2/dialog"
 	"fyne.io/fyne/v2/layout"
 
 	"groundtally/app/desk/core"
@@ -86,22 +85,6 @@ func (s *Stage) Changed(ch core.Change) {
 	if s.typed != nil {
 		s.typed.changed()
 	}
-}
-
-// ask asks before something that takes away.
-func ask(c *core.Core, title, words, yes string, then func()) {
-	if c.Ask != nil {
-		c.Ask(title, words, yes, then)
-		return
-	}
-	d := dialog.NewConfirm(title, words, func(ok bool) {
-		if ok {
-			then()
-		}
-	}, c.Window)
-	d.SetConfirmText(yes)
-	d.SetDismissText("Leave it")
-	d.Show()
 }
 
 // dialogSize fits a dialog into the window.

@@ -625,7 +625,7 @@ func TestKeyboardWalksThroughTheForm(t *testing.T) {
 	}
 	n := len(want)
 	for range 80 {
-		test.FocusNext(b.Window.Canvas())
+		b.Window.Canvas().FocusNext()
 		f := b.Window.Canvas().Focused()
 		if !want[f] {
 			continue

@@ -314,7 +314,7 @@ func (r *row) giveBack() {
 		do()
 		return
 	}
-	r.s.confirm("Take the rule out for others too?", r.label+": this value was entered for "+generalName(key)+" and goes out for all of them. To change it for this option alone, type another value.", "Take out", do)
+	r.s.core.Ask("Take the rule out for others too?", r.label+": this value was entered for "+generalName(key)+" and goes out for all of them. To change it for this option alone, type another value.", "Take out", do)
 }
 
 // beside lays a text that wraps out beside a button, which keeps its width at the right.

@@ -8,7 +8,6 @@ import (
 
 	"fyne.io/fyne/v2"
 	"fyne.io/fyne/v2/container"
-	"fyne.io/fyne/v2/dialog"
 	"fyne.io/fyne/v2/widget"
 
 	"groundtally/app/desk/core"
@@ -336,22 +335,7 @@ func (s *stage) takeOut() {
 		}
 	}
 	words := title + " goes out with its sizes and its own rules. Undo brings it back."
-	s.confirm("Take the option out?", words, "Take out", do)
-}
-
-// confirm asks before something is done.
-func (s *stage) confirm(title, words, yes string, then func()) {
-	if s.core.Ask != nil {
-		s.core.Ask(title, words, yes, then)
-		return
-	}
-	d := dialog.NewConfirm(title, words, func(agreed bool) {
-		if agreed {
-			then()
-		}
-	}, s.core.Window)
-	d.SetConfirmText(yes)
-	d.Show()
+	s.core.Ask("Take the option out?", words, "Take out", do)
 }
 
 // origin says in words what a setting is and where its value is from.
