@@ -21,6 +21,7 @@ import (
 	"groundtally/app/files"
 	"groundtally/app/live"
 	"groundtally/app/program"
+	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/app/study/studytest"
 	"groundtally/geo"
@@ -128,12 +129,37 @@ func clock() func() time.Time {
 	}
 }
 
-// Sample is the sample study with every n-th of its parcels, in memory.
+// samples are the studies made so far by this test binary, computed.
+var samples = struct {
+	sync.Mutex
+	by map[int]*studytest.Store
+}{by: map[int]*studytest.Store{}}
+
+// Sample is the sample study with every n-th of its parcels, in memory, with its step results. It is made
+// and computed once; every call gives a copy of its own.
 func Sample(t testing.TB, parts *program.Parts, every int) study.Store {
 	t.Helper()
-	store := studytest.New()
-	Fill(t, parts, store, every)
-	return store
+	samples.Lock()
+	defer samples.Unlock()
+	store := samples.by[every]
+	if store == nil {
+		store = studytest.New()
+		Fill(t, parts, store, every)
+		s, err := study.Open(context.Background(), store, parts.Catalog, study.Options{Clock: clock()})
+		if err != nil {
+			t.Fatal(err)
+		}
+		snap, err := s.Snapshot()
+		if err != nil {
+			t.Fatal(err)
+		}
+		e := &run.Engine{Params: parts.Params, Cache: store, Load: run.StoreLoader(store)}
+		if _, err := e.Compute(context.Background(), snap); err != nil {
+			t.Fatal(err)
+		}
+		samples.by[every] = store
+	}
+	return store.Clone()
 }
 
 // Fill puts the sample study with every n-th of its parcels into a store.

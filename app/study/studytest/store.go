@@ -4,6 +4,8 @@ package studytest
 import (
 	"context"
 	"fmt"
+	"maps"
+	"slices"
 	"sort"
 	"sync"
 
@@ -22,6 +24,22 @@ type Store struct {
 // New gives an empty store.
 func New() *Store {
 	return &Store{records: map[study.RecordKind]map[string]study.Record{}, versions: map[string]study.Version{}, results: map[string]map[string][]byte{}}
+}
+
+// Clone gives a store with the same content, which changes by itself.
+func (s *Store) Clone() *Store {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	out := &Store{state: s.state, records: map[study.RecordKind]map[string]study.Record{}, versions: maps.Clone(s.versions), results: map[string]map[string][]byte{}}
+	out.state.Journal = slices.Clone(s.state.Journal)
+	out.state.Frozen = slices.Clone(s.state.Frozen)
+	for k, m := range s.records {
+		out.records[k] = maps.Clone(m)
+	}
+	for k, m := range s.results {
+		out.results[k] = maps.Clone(m)
+	}
+	return out
 }
 
 // Path implements study.Store.
