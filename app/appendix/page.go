@@ -234,6 +234,7 @@ func Page(in Input) ([]byte, error) {
 	}
 	data["Voices"] = voices
 	data["Maps"] = b.maps()
+	data["Cloud"] = b.cloud()
 	data["Plants"] = b.plants()
 	data["Groups"] = b.groups()
 	data["Shown"] = len(b.shown)
@@ -290,7 +291,7 @@ func Page(in Input) ([]byte, error) {
 	}
 	data["Frozen"] = frozen
 
-	t, err := template.New("page").Parse(pageHTML)
+	t, err := template.New("page").Funcs(template.FuncMap{"inc": func(i int) int { return i + 1 }}).Parse(pageHTML)
 	if err != nil {
 		return nil, err
 	}

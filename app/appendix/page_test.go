@@ -513,3 +513,21 @@ func TestMonths(t *testing.T) {
 		}
 	}
 }
+
+// Each voice has its first two places against each other as a picture; one cloud shows all candidates.
+func TestComparingPictures(t *testing.T) {
+	in := input(t)
+	html := page(t, in)
+	voices := 0
+	for _, v := range in.Results.Voices {
+		if len(v.Order) > 1 {
+			voices++
+		}
+	}
+	if got := strings.Count(html, `aria-label="Bar chart: the first two places under the voice `); got != voices || got == 0 {
+		t.Errorf("%d pairs are drawn for %d voices", got, voices)
+	}
+	if got := strings.Count(html, `aria-label="Scatter chart: all fitted candidates`); got != 1 {
+		t.Errorf("%d clouds are drawn", got)
+	}
+}

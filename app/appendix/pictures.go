@@ -40,6 +40,54 @@ func (b *book) bars(rows []run.Row, keys []string, title string, index int) *dra
 	return chart.ScoreBars(in, draw.Light(), fullWidth)
 }
 
+// pair draws the first two places of a voice against each other; nothing where there is only one.
+func (b *book) pair(v run.VoiceOrder, keys []string, title string, index int) template.HTML {
+	if len(v.Order) < 2 {
+		return ""
+	}
+	var rows [2]run.Row
+	var cands [2]*run.Candidate
+	var names [2]string
+	for i := range rows {
+		rows[i] = v.Order[i]
+		cands[i] = b.by[rowID(rows[i])]
+		names[i] = b.candidateName(rowID(rows[i]))
+	}
+	infos := make([]run.KeyInfo, len(keys))
+	for i, k := range keys {
+		infos[i] = b.info[k]
+	}
+	in := pictures.Pair(rows, cands, names, infos, "Bar chart: the first two places under the voice "+title+" against each other, by consequence", "-pair-"+strconv.Itoa(index+1))
+	return picture(chart.PairBars(in, draw.Light(), fullWidth))
+}
+
+// cloud draws all fitted candidates by power for each area and energy return, which pull against each
+// other, with the first of each voice marked by its number.
+func (b *book) cloud() template.HTML {
+	keys := [2]run.KeyInfo{b.info["power_density_w_per_m2"], b.info["eroi_delivered"]}
+	if keys[0].Key == "" || keys[1].Key == "" || len(b.in.Results.Voices) == 0 {
+		return ""
+	}
+	marks := map[string]string{}
+	for i, v := range b.in.Results.Voices {
+		for _, r := range v.Order {
+			if r.Site != run.NoSite {
+				if marks[rowID(r)] != "" {
+					marks[rowID(r)] += ", "
+				}
+				marks[rowID(r)] += strconv.Itoa(i + 1)
+				break
+			}
+		}
+	}
+	in := pictures.Cloud(b.in.Results, keys, [2]chart.Better{chart.More, chart.More}, "", b.plant, marks)
+	if len(in.Points) == 0 {
+		return ""
+	}
+	in.Title = "Scatter chart: all fitted candidates by " + keys[0].Title + " and " + keys[1].Title + "; the figures stand in the tables below it"
+	return picture(chart.Scatter(in, draw.Light(), fullWidth))
+}
+
 // losses draws the loss chain of a candidate; nothing where it has none.
 func losses(c *run.Candidate, title string) template.HTML {
 	in, ok := pictures.Losses(c, "Bar chart: yield of "+title+" step by step; the same steps stand in the table above it", "")

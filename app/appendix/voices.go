@@ -19,6 +19,8 @@ type voiceView struct {
 	Title, Anchor string
 	Lead          string // sentence on first place
 	Chart         template.HTML
+	Pair          template.HTML // the first two places against each other
+	First, Second string
 	Weights       []weightView
 	Accounts      []string
 	Rows          []rowView
@@ -114,6 +116,9 @@ func (b *book) voice(i int) voiceView {
 		out.Tipping = append(out.Tipping, row)
 	}
 	out.Chart = picture(b.bars(rows, keys, out.Title, i))
+	if out.Pair = b.pair(v, keys, out.Title, i); out.Pair != "" {
+		out.First, out.Second = b.candidateName(rowID(v.Order[0])), b.candidateName(rowID(v.Order[1]))
+	}
 	return out
 }
 

@@ -91,6 +91,18 @@ func Cell(c scoring.Consequence) string {
 	return c.State.String()
 }
 
+// Value writes a consequence with its unit and its low to high, or the state in its place.
+func Value(c scoring.Consequence) string {
+	if c.State != scoring.Number {
+		return Cell(c)
+	}
+	out := strings.TrimSpace(Cell(c) + " " + Unit(c.Unit))
+	if c.Range != scoring.NoRange && c.Range != "" && c.Low != c.High {
+		out += " (" + Figure(c.Low, c.Low, c.High) + " to " + Figure(c.High, c.Low, c.High) + ")"
+	}
+	return out
+}
+
 // Span writes low to high with the meaning of the range; empty when no range is stated.
 func Span(c scoring.Consequence) string {
 	if c.State != scoring.Number || c.Range == scoring.NoRange || c.Range == "" {

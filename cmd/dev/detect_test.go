@@ -41,6 +41,7 @@ func TestDetect(t *testing.T) {
 		{"no proj.db", whole().without(needProjData), needProjData, "", "none of these is there"},
 		{"Xvfb", whole(), "Xvfb", byProgram, "Xvfb"},
 		{"no Xvfb", whole().without("Xvfb"), "Xvfb", "", "Xvfb is not on the PATH"},
+		{"no xdotool", whole().without("xdotool"), "xdotool", "", "xdotool is not on the PATH"},
 		{"no software OpenGL", whole().without("software OpenGL"), "software OpenGL", "", "swrast_dri.so"},
 	}
 	for _, tt := range tests {

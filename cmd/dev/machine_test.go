@@ -139,7 +139,7 @@ func (d *described) stream(_ context.Context, c command, stdout, _ io.Writer) er
 func whole() *described {
 	d := &described{
 		system:   "linux",
-		programs: []string{"gcc", "pkg-config", "apt-get", "Xvfb"},
+		programs: []string{"gcc", "pkg-config", "apt-get", "Xvfb", "xdotool"},
 		files: map[string]string{
 			"/etc/os-release":         "PRETTY_NAME=\"Debian GNU/Linux 12 (bookworm)\"\nID=debian\n",
 			"/usr/share/proj/proj.db": "", "/usr/lib/x86_64-linux-gnu/dri/swrast_dri.so": "",

@@ -111,6 +111,13 @@ var needs = []need{
 		},
 	},
 	{
+		name: "xdotool", purpose: "works mouse and keyboard of the window in the tests", tests: true, linux: true,
+		programs: []string{"xdotool"},
+		packages: map[string][]string{
+			"apt": {"xdotool"}, "dnf": {"xdotool"}, "pacman": {"xdotool"}, "zypper": {"xdotool"},
+		},
+	},
+	{
 		name: "software OpenGL", purpose: "draws the window for the tests without a graphics card", tests: true, linux: true,
 		files: []string{"/usr/lib/*/dri/swrast_dri.so", "/usr/lib/dri/swrast_dri.so", "/usr/lib64/dri/swrast_dri.so"},
 		packages: map[string][]string{

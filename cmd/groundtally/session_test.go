@@ -9,6 +9,7 @@ import (
 	"errors"
 	"fmt"
 	"image"
+	"image/color"
 	"io"
 	"os"
 	"os/exec"
@@ -21,9 +22,11 @@ import (
 	"testing"
 	"time"
 
+	toolkit "fyne.io/fyne/v2/theme"
 	_ "modernc.org/sqlite"
 
 	"groundtally/app/desk/desktest"
+	"groundtally/app/desk/theme"
 )
 
 // The window tells its state by this mark; see app/desk/probe.go.
@@ -45,11 +48,6 @@ var (
 	atFormAdd      = image.Pt(1029, 669)
 	atRulesTab     = image.Pt(902, 114)
 	atRulesMargin  = image.Pt(1334, 400) // wheels over a field are the field's
-	atRuleFrom     = image.Pt(930, 363)
-	atRuleNumber   = image.Pt(1150, 363)
-	atRuleSource   = image.Pt(870, 394)
-	atRuleWhy      = image.Pt(1110, 394)
-	atRuleAdd      = image.Pt(1280, 394)
 	atWeightsTab   = image.Pt(788, 146)
 	atPairTab      = image.Pt(928, 146)
 	atSecondWeight = image.Pt(1162, 255) // the knob, at 100 points
@@ -58,8 +56,15 @@ var (
 	atGoOn         = image.Pt(683, 300) // on the first page
 )
 
-// notchesToNewRule of the wheel bring the form for one more distance to where the places above have it.
-const notchesToNewRule = 23
+// The form for one more distance stands somewhere in the rules. Its places are counted from the middle of its
+// button, which is found by its colour in a column of pixels that no other button of the rules crosses.
+var (
+	ruleAddColumn = image.Rect(1240, 150, 1241, 470)
+	fromAddToFrom = image.Pt(-310, -31)
+	fromAddToSize = image.Pt(-90, -31)
+	fromAddToFind = image.Pt(-370, 0) // the source
+	fromAddToWhy  = image.Pt(-130, 0)
+)
 
 // Settings that the session changes.
 const (
@@ -271,6 +276,24 @@ func (w *window) dark() (dark, mixed bool) {
 	return is(atRest), is(atRest) != is(atSea)
 }
 
+// ruleAdd finds the button of the form for one more distance.
+func ruleAdd(img *image.RGBA) (at image.Point, ok bool) {
+	red, green, blue, _ := theme.New(theme.Light).Color(toolkit.ColorNameButton, toolkit.VariantLight).RGBA()
+	button := color.RGBA{uint8(red >> 8), uint8(green >> 8), uint8(blue >> 8), 255}
+	r, high := ruleAddColumn, 0
+	for y := r.Min.Y; y < r.Max.Y; y++ {
+		if img.RGBAAt(r.Min.X, y) == button {
+			high++
+			continue
+		}
+		if high >= 20 && high < 32 {
+			return image.Pt(r.Min.X+40, y-high/2), true
+		}
+		high = 0
+	}
+	return image.Point{}, false
+}
+
 // query asks the study file.
 func query[T any](w *window, ask string, args ...any) T {
 	w.t.Helper()
@@ -315,7 +338,10 @@ func TestSession(t *testing.T) {
 		}
 	}
 
-	t.Log("a first start opens the sample study and computes it")
+	start := time.Now()
+	step := func(words string) { t.Logf("%5.1f s: %s", time.Since(start).Seconds(), words) }
+
+	step("a first start opens the sample study and computes it")
 	w := d.open()
 	begun := time.Now()
 	w.until("the sample is open and its map drawn", time.Minute, func(s state) bool {
@@ -327,7 +353,7 @@ func TestSession(t *testing.T) {
 		t.Errorf("a first start: dark %v, window and map differ %v", dark, mixed)
 	}
 
-	t.Log("a dropped file becomes a layer")
+	step("a dropped file becomes a layer")
 	file := filepath.Join(t.TempDir(), "heritage sites.geojson")
 	text := `{"type":"FeatureCollection","features":[{"type":"Feature","properties":{"name":"Old mill","class":"monument"},"geometry":{"type":"Point","coordinates":[-26.95,47.5]}}]}`
 	if err := os.WriteFile(file, []byte(text), 0o600); err != nil {
@@ -344,12 +370,19 @@ func TestSession(t *testing.T) {
 		t.Errorf("the journal grew from %d to %d entries by one layer", computed.Journal, added.Journal)
 	}
 
-	t.Log("a rule is added while the study is being computed")
+	step("a rule is added while the study is being computed")
 	w.stage(2, "Plant")
 	w.click(atRulesTab)
 	w.hands(to(atRulesMargin)...)
-	w.hands("click", "--repeat", strconv.Itoa(notchesToNewRule), "--delay", "20", "5")
-	w.click(atRuleFrom)
+	add, ok := ruleAdd(w.still())
+	for n := 0; !ok && n < 40; n++ {
+		w.hands("click", "--repeat", "4", "--delay", "10", "5")
+		add, ok = ruleAdd(w.still())
+	}
+	if !ok {
+		w.fatal("the rules have no form for one more distance")
+	}
+	w.click(add.Add(fromAddToFrom))
 	w.until("the list of what a distance is kept from is open", answers, func(s state) bool { return s.Over == 1 })
 	keys := []string{"key", "--delay", "40"}
 	for range 8 { // the eighth are substations
@@ -357,18 +390,18 @@ func TestSession(t *testing.T) {
 	}
 	w.hands(append(keys, "Return")...)
 	w.until("the list is closed", answers, func(s state) bool { return s.Over == 0 })
-	w.write(atRuleNumber, "60")
-	w.write(atRuleSource, "Plan 2031")
-	w.write(atRuleWhy, "room for the fire brigade")
+	w.write(add.Add(fromAddToSize), "60")
+	w.write(add.Add(fromAddToFind), "Plan 2031")
+	w.write(add.Add(fromAddToWhy), "room for the fire brigade")
 	w.glimpse("rule-light")
-	w.click(atRuleAdd)
+	w.click(add)
 	w.until("the rule is in the journal", answers, func(s state) bool { return s.Journal == added.Journal+1 })
 	ruled := w.until("it is computed again", wholeSession, func(s state) bool { return s.Current && s.First != "" && s.Map })
 	if got := w.value(ruleKey); got != "60" {
 		t.Errorf("%s is %q, want 60", ruleKey, got)
 	}
 
-	t.Log("a weight is dragged")
+	step("a weight is dragged")
 	w.stage(4, "Weigh")
 	w.drawn()
 	w.hands(append(to(atSecondWeight), "mousedown", "1", "sleep", "0.1")...)
@@ -388,14 +421,14 @@ func TestSession(t *testing.T) {
 		t.Errorf("%s is %v after the drag: %v", weightKey, x, err)
 	}
 
-	t.Log("two candidates are compared")
+	step("two candidates are compared")
 	w.drawn()
 	w.hands(slices.Concat(to(atOtherParcel), []string{"keydown", "ctrl", "sleep", "0.1"}, press, []string{"sleep", "0.1", "keyup", "ctrl"})...)
 	w.until("a second candidate is chosen", answers, func(s state) bool { return len(s.Chosen) == 2 })
 	w.click(atPairTab)
 	w.shoot("pair-light")
 
-	t.Log("the weight is taken back")
+	step("the weight is taken back")
 	w.hands("key", "ctrl+z")
 	undone := w.until("the weight is as before", time.Minute, func(s state) bool {
 		return s.Journal == weighed.Journal+1 && s.Current && s.First == ruled.First
@@ -407,7 +440,7 @@ func TestSession(t *testing.T) {
 		t.Errorf("the last entry of the journal is %q, want undo", got)
 	}
 
-	t.Log("the appendix is made")
+	step("the appendix is made")
 	w.stage(5, "Appendix")
 	folder := filepath.Join(t.TempDir(), "appendix")
 	w.write(atFolder, folder)
@@ -419,7 +452,7 @@ func TestSession(t *testing.T) {
 		}
 	}
 
-	t.Log("all stages are looked at in both themes")
+	step("all stages are looked at in both themes")
 	titles := []string{"Ground", "Plant", "Accounts", "Weigh", "Appendix"}
 	look := func(theme string) {
 		for i, title := range titles {
@@ -440,7 +473,7 @@ func TestSession(t *testing.T) {
 	})
 	look("dark")
 
-	t.Log("another voice is chosen")
+	step("another voice is chosen")
 	w.click(atVoice)
 	w.until("the voices are listed", answers, func(s state) bool { return s.Over == 1 })
 	w.hands("key", "--delay", "40", "Down", "Down", "Return")
@@ -453,7 +486,7 @@ func TestSession(t *testing.T) {
 	})
 	entries := w.journal()
 
-	t.Log("the window is killed")
+	step("the window is killed")
 	if err := childOf(t, w.cmd.Process.Pid).Kill(); err != nil {
 		t.Fatal(err)
 	}
@@ -464,7 +497,7 @@ func TestSession(t *testing.T) {
 		t.Errorf("after the kill it says: %s", got)
 	}
 
-	t.Log("started again, everything is found")
+	step("started again, everything is found")
 	w = d.open()
 	w.until("the first page is open", answers, func(s state) bool { return s.Study == "" && s.Over == 0 })
 	w.wait("the first page is in dark colours", answers, func() bool { dark, _ := w.dark(); return dark })
@@ -489,7 +522,7 @@ func TestSession(t *testing.T) {
 	}
 	w.shoot("found-dark")
 
-	t.Log("the program is ended in good order")
+	step("the program is ended in good order")
 	if err := w.cmd.Process.Signal(syscall.SIGTERM); err != nil {
 		t.Fatal(err)
 	}

@@ -66,7 +66,7 @@ func comparePair(sh *shown, ids [2]string, titles [2]string) pair {
 		pa, pb := sh.Board.Part(items[0], k), sh.Board.Part(items[1], k)
 		a, _ := sh.candidate(items[0]).Consequence(key.Info.Key)
 		b, _ := sh.candidate(items[1]).Consequence(key.Info.Key)
-		p.chart.Keys = append(p.chart.Keys, chart.PairKey{Item: key.Info.Key, Title: key.Info.Title, A: valueWords(a), B: valueWords(b), Difference: w[k] * (values[0][k] - values[1][k]),
+		p.chart.Keys = append(p.chart.Keys, chart.PairKey{Item: key.Info.Key, Title: key.Info.Title, A: present.Value(a), B: present.Value(b), Difference: w[k] * (values[0][k] - values[1][k]),
 			Unknown: !pa.Known || !pb.Known, OverA: pa.OverLimit, OverB: pb.OverLimit})
 	}
 	ahead, behind := 0, 1
@@ -124,7 +124,7 @@ func weightNeeded(sh *shown, ahead, behind []float64, k int) string {
 // valueNeeded says which value of a key would put the one behind level.
 func valueNeeded(sh *shown, ahead, behind []float64, k int, q scoring.Consequence) string {
 	key := sh.Board.Keys[k]
-	now := "now " + valueWords(q)
+	now := "now " + present.Value(q)
 	if sh.Standing.Weights[k] == 0 {
 		return "it has no weight, so its value changes nothing; " + now
 	}

@@ -233,7 +233,7 @@ func (r *orderRow) updateParts(sh *shown, cand *run.Candidate) {
 		value, colour, hint := "", fyne.ThemeColorName(toolkit.ColorNameForeground), ""
 		if cand != nil {
 			q, _ := cand.Consequence(key.Info.Key)
-			value, hint = valueWords(q), present.WhyNot(q)
+			value, hint = present.Value(q), present.WhyNot(q)
 			if part.OverLimit {
 				value, colour = value+", over the limit", theme.Warm
 			}

@@ -11,37 +11,13 @@ import (
 	"groundtally/app/desk/widgets"
 	"groundtally/app/draw"
 	"groundtally/app/draw/chart"
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
-	"groundtally/scoring"
 	"groundtally/scoring/criteria"
 )
 
 const allPlants = "All plant options"
-
-// cloud gives the fitted candidates by two consequences. What is needed of the study comes with it, since
-// it runs off the window's goroutine.
-func cloud(results *run.Results, keys [2]run.KeyInfo, better [2]chart.Better, plant string, titles map[string]string, letters map[string]string) chart.Cloud {
-	quantity := func(i int) chart.Quantity {
-		return chart.Quantity{Title: keys[i].Title, Unit: present.UnitWords(keys[i].Unit), Better: better[i]}
-	}
-	out := chart.Cloud{Title: keys[0].Title + " against " + keys[1].Title, X: quantity(0), Y: quantity(1)}
-	for i := range results.Candidates {
-		c := &results.Candidates[i]
-		if c.Status != run.Fitted || plant != "" && c.Plant != plant {
-			continue
-		}
-		x, _ := c.Consequence(keys[0].Key)
-		y, _ := c.Consequence(keys[1].Key)
-		if x.State != scoring.Number || y.State != scoring.Number {
-			out.LeftOut++
-			continue
-		}
-		out.Points = append(out.Points, chart.CloudPoint{Item: c.ID(), Name: c.Site + ", " + titles[c.Plant], X: x.Central, Y: y.Central, XLow: x.Low, XHigh: x.High, YLow: y.Low, YHigh: y.High,
-			Mark: letters[c.ID()], Over: slices.Contains(c.OverLimit, keys[0].Key) || slices.Contains(c.OverLimit, keys[1].Key)})
-	}
-	return out
-}
 
 // scatterPane shows any two consequences of the candidates against each other.
 type scatterPane struct {
@@ -175,6 +151,6 @@ func (p *scatterPane) draw() {
 	}
 	results, titles := v.Results, plantTitles(p.s.c)
 	p.picture.set(func(palette draw.Palette, width float64) *draw.Scene {
-		return chart.Scatter(cloud(results, keys, better, plant, titles, letters), palette, width)
+		return chart.Scatter(pictures.Cloud(results, keys, better, plant, titles, letters), palette, width)
 	})
 }

@@ -11,7 +11,6 @@ import (
 
 	"groundtally/app/present"
 	"groundtally/app/run"
-	"groundtally/scoring"
 	"groundtally/scoring/criteria"
 )
 
@@ -46,18 +45,6 @@ func amount(x float64, unit string) string {
 // scaleWords writes the span of a value scale, worst to best.
 func scaleWords(k run.BoardKey) string {
 	return present.Figure(k.Worst, 0, 0) + " → " + amount(k.Best, k.Info.Unit)
-}
-
-// valueWords writes a consequence with its unit, and from low to high.
-func valueWords(q scoring.Consequence) string {
-	if q.State != scoring.Number {
-		return present.Cell(q)
-	}
-	out := strings.TrimSpace(present.Cell(q) + " " + present.Unit(q.Unit))
-	if q.Range != scoring.NoRange && q.Range != "" && q.Low != q.High {
-		out += " (" + present.Figure(q.Low, q.Low, q.High) + " to " + present.Figure(q.High, q.Low, q.High) + ")"
-	}
-	return out
 }
 
 // unitPhrase says in what a consequence is given.
