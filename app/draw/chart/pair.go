@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 
 	"groundtally/app/draw"
 )
@@ -48,8 +49,10 @@ func PairBars(in Pair, p draw.Palette, width float64) *draw.Scene {
 		anyUnknown = anyUnknown || k.Unknown
 	}
 	largest = math.Max(largest, math.Abs(sum))
-	if largest == 0 {
-		largest = 1
+	figures := fine{decimals: 3}
+	if largest < smallDifference {
+		// Those that can hardly be told apart must not look far apart, and their difference is still a number.
+		figures.decimals, largest = 5, smallDifference
 	}
 	y := pad + 10
 	for _, n := range [][2]string{{"A", in.NameA}, {"B", in.NameB}} {
@@ -65,7 +68,7 @@ func PairBars(in Pair, p draw.Palette, width float64) *draw.Scene {
 	}
 	right := s.Width - pad
 	middle := (left + right) / 2
-	label := draw.TextWidth("+0.000", small, true) + 6
+	label := draw.TextWidth("+"+figures.text(0), small, true) + 6
 	half := (right-left)/2 - label
 	y += 8
 	s.write(middle-gap, y, "A better", small, p.Faint, draw.End)
@@ -76,15 +79,15 @@ func PairBars(in Pair, p draw.Palette, width float64) *draw.Scene {
 	rows.Scene, rows.p = &draw.Scene{Width: s.Width}, p
 	for _, k := range keys {
 		y += rows.pairRow(k, y, room, wide, func(y, height float64) {
-			rows.difference(k.Difference, middle, half/largest, y, height, p.Accent, k.Unknown, k.Item, fmt.Sprintf("%s: A %s, B %s; difference in score %s", k.Title, k.A, k.B, words(k.Difference)))
+			rows.difference(k.Difference, middle, half/largest, y, height, p.Accent, k.Unknown, k.Item, fmt.Sprintf("%s: A %s, B %s; difference in score %s", k.Title, k.A, k.B, figures.words(k.Difference)), figures)
 		})
 	}
 	lead := "Sum: A and B have the same score"
 	switch {
-	case sum >= 0.0005:
-		lead = "Sum: A leads by " + three(sum)
-	case sum <= -0.0005:
-		lead = "Sum: B leads by " + three(-sum)
+	case sum >= figures.least():
+		lead = "Sum: A leads by " + figures.text(sum)
+	case sum <= -figures.least():
+		lead = "Sum: B leads by " + figures.text(-sum)
 	}
 	rows.line(p.Faint, 1, pad, y+2, right, y+2)
 	rows.bold(pad, y+20, lead, body, p.Ink, draw.Start)
@@ -92,7 +95,7 @@ func PairBars(in Pair, p draw.Palette, width float64) *draw.Scene {
 	if !wide {
 		bar = y + 28
 	}
-	rows.difference(sum, middle, half/largest, bar, 14, p.Ink, false, "", lead)
+	rows.difference(sum, middle, half/largest, bar, 14, p.Ink, false, "", lead, figures)
 	bottom := bar + 18
 	if wide {
 		s.line(p.Faint, 1, middle, top, middle, bottom)
@@ -106,12 +109,23 @@ func PairBars(in Pair, p draw.Palette, width float64) *draw.Scene {
 	return s.done(y + 4)
 }
 
-func words(difference float64) string {
+// smallDifference is a difference in score below which figures are written finer and bars stay short.
+const smallDifference = 0.01
+
+// fine writes differences with so many decimals.
+type fine struct{ decimals int }
+
+func (f fine) text(x float64) string { return strconv.FormatFloat(x, 'f', f.decimals, 64) }
+
+// least is the smallest difference that is not written as nothing.
+func (f fine) least() float64 { return 0.5 * math.Pow10(-f.decimals) }
+
+func (f fine) words(difference float64) string {
 	switch {
-	case difference >= 0.0005:
-		return three(difference) + " for A"
-	case difference <= -0.0005:
-		return three(-difference) + " for B"
+	case difference >= f.least():
+		return f.text(difference) + " for A"
+	case difference <= -f.least():
+		return f.text(-difference) + " for B"
 	}
 	return "none"
 }
@@ -143,14 +157,14 @@ func (s *sheet) pairRow(k PairKey, y, room float64, wide bool, bar func(y, heigh
 }
 
 // difference draws a bar to the left for A, to the right for B, with its length in words beside it.
-func (s *sheet) difference(d, middle, scale, y, height float64, colour string, unknown bool, item, title string) {
+func (s *sheet) difference(d, middle, scale, y, height float64, colour string, unknown bool, item, title string, figures fine) {
 	w := math.Abs(d) * scale
 	st := draw.Style{Fill: colour}
 	s.line(s.p.Faint, 1, middle, y-2, middle, y+height+2)
 	if unknown {
 		st, w = s.unknown(), math.Max(w, 10)
 	}
-	if text := three(math.Abs(d)); d >= 0 {
+	if text := figures.text(math.Abs(d)); d >= 0 {
 		s.Bar(middle-w, y, w, height, st, item, title)
 		s.write(middle-w-5, y+height/2+3.8, text, small, s.p.Ink, draw.End)
 	} else {
