@@ -23,8 +23,9 @@ const (
 func (b *book) bars(rows []run.Row, keys []string, title string, index int) *draw.Scene {
 	in := chart.Scores{ID: "-" + strconv.Itoa(index+1),
 		Title: fmt.Sprintf("Bar chart: scores under the voice %s, by part, for %d places; the same figures stand in the table below it", title, len(rows))}
+	colours := run.Categories(b.in.Snapshot, b.in.Params)
 	for _, k := range keys {
-		in.Keys = append(in.Keys, chart.ScoreKey{Title: b.title(k), Weight: rows[0].Parts[k].Weight})
+		in.Keys = append(in.Keys, chart.ScoreKey{Category: colours[k], Title: b.title(k), Weight: rows[0].Parts[k].Weight})
 	}
 	for _, r := range rows {
 		row := chart.ScoreRow{Name: fmt.Sprintf("%d. %s", r.Place, b.candidateName(rowID(r))), Score: r.Score, Low: r.ScoreLow, High: r.ScoreHigh}

@@ -76,20 +76,26 @@ func (f *foot) update() {
 	}
 	words := "Up to date."
 	switch {
+	case busy && work.What == "voices":
+		words = "Putting the candidates in order. You can go on working."
+	case busy && work.What == "kept sites":
+		words = fmt.Sprintf("Reading what is kept: %s of %s sites. You can go on working.", core.Count(work.Done), core.Count(work.Total))
 	case busy && work.Total > 0:
-		words = fmt.Sprintf("Computing: %s of %s %s", core.Count(work.Done), core.Count(work.Total), work.What)
+		words = fmt.Sprintf("Computing: %s of %s sites", core.Count(work.Done), core.Count(work.Total))
 		if work.LeftKnown {
 			words += ", about " + left(work.Left) + " left"
 		}
 		words += ". You can go on working."
 	case busy:
-		words = "Putting the candidates in order. You can go on working."
+		words = "Getting ready: layers, rules, plant options. You can go on working."
 	case v.Problem != nil:
 		words = "Not computed: " + present.Problem(v.Problem)
 	case v.Stopped:
 		words = "Stopped. What was found so far is kept; Compute goes on from there."
 	case !v.Current:
 		words = "Out of date."
+	case c.Ordering():
+		words = "Putting the candidates in order."
 	}
 	f.words.Set(words)
 }

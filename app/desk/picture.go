@@ -204,8 +204,8 @@ type shaded struct {
 func (p *picture) colour() {
 	c := p.w.core
 	v := c.View()
-	if v == nil || p.ground == nil {
-		return
+	if v == nil || p.ground == nil || c.Ranking() == nil && c.Ordering() {
+		return // it is coloured once the best of each site is known
 	}
 	p.wanted = &shadeJob{view: v, ranking: c.Ranking(), ground: p.ground, palette: c.Palette(), key: c.Shade(), info: c.Info(c.Shade())}
 	if c.Voice() != "" {
@@ -292,7 +292,8 @@ func (j *shadeJob) do() shaded {
 		out.shading.Colours = append(out.shading.Colours, colour)
 		text := fmt.Sprintf("%.2f to %.2f", bounds[c], bounds[c+1])
 		if j.key != "" {
-			text = strings.TrimSpace(present.Figure(bounds[c], bounds[0], bounds[len(bounds)-1]) + " to " + present.Figure(bounds[c+1], bounds[0], bounds[len(bounds)-1]) + " " + unit)
+			digits := j.decimals(bounds[0], bounds[len(bounds)-1])
+			text = strings.TrimSpace(present.Rounded(bounds[c], digits) + " to " + present.Rounded(bounds[c+1], digits) + " " + unit)
 		}
 		out.legend = append(out.legend, mapview.LegendEntry{Text: text, Sample: tiles.Coloured, Colour: colour})
 	}
@@ -379,18 +380,23 @@ func (j *shadeJob) bounds(values []float64, known []bool) []float64 {
 		}
 		return out
 	}
-	out := []float64{lo}
+	// Ends are rounded before parcels are put into classes, so that the legend says what the map shows.
+	step := math.Pow(10, float64(-j.decimals(lo, hi)))
+	out := []float64{math.Floor(lo/step) * step}
 	for k := 1; k < shadeClasses; k++ {
-		if x := list[k*len(list)/shadeClasses]; x > out[len(out)-1] {
+		if x := math.Round(list[k*len(list)/shadeClasses]/step) * step; x > out[len(out)-1]+step/2 && x < hi {
 			out = append(out, x)
 		}
 	}
-	if hi > out[len(out)-1] {
-		out = append(out, hi)
-	} else if len(out) == 1 {
-		out = append(out, hi)
+	return append(out, max(math.Ceil(hi/step), math.Round(out[len(out)-1]/step)+1)*step)
+}
+
+// decimals is how fine the ends of classes are written: a hundredth of the whole span.
+func (j *shadeJob) decimals(lo, hi float64) int {
+	if hi <= lo {
+		hi = lo + math.Max(math.Abs(lo), 1)
 	}
-	return out
+	return 1 - int(math.Floor(math.Log10(hi-lo)))
 }
 
 // words name a parcel under the pointer.
@@ -436,7 +442,7 @@ func (p *picture) box(parcels []string) {
 	p.boxed = parcels
 	p.w.core.Emit(core.SelectionChanged)
 	if len(parcels) > 0 {
-		p.w.foot.tell(fmt.Sprintf("%s parcels in the box. Ground, Sites makes one site of them.", core.Count(len(parcels))))
+		p.w.foot.tell(core.Counted(len(parcels), "parcel", "parcels") + " wholly in the box. Ground, Sites makes one site of several.")
 	}
 }
 

@@ -71,7 +71,7 @@ func (b *railButton) TypedKey(e *fyne.KeyEvent) {
 // CreateRenderer implements fyne.Widget.
 func (b *railButton) CreateRenderer() fyne.WidgetRenderer {
 	r := &railRenderer{b: b, ground: canvas.NewRectangle(color.Transparent), edge: canvas.NewRectangle(color.Transparent), title: widgets.Part(""), first: widgets.Faint(""), second: widgets.Faint("")}
-	r.first.TextSize, r.second.TextSize = 11.5, 11.5
+	r.first.TextSize, r.second.TextSize = 11, 11
 	r.objects = []fyne.CanvasObject{r.ground, r.edge, r.title, r.first, r.second}
 	r.Refresh()
 	return r
@@ -89,7 +89,7 @@ func (r *railRenderer) Layout(s fyne.Size) {
 	r.edge.Resize(fyne.NewSize(4, s.Height))
 	for i, l := range []*widgets.Line{r.title, r.first, r.second} {
 		l.Move(fyne.NewPos(14, 8+float32(i)*18+float32(min(i, 1))*3))
-		l.Resize(fyne.NewSize(s.Width-20, 18))
+		l.Resize(fyne.NewSize(s.Width-18, 18))
 	}
 }
 
@@ -132,7 +132,7 @@ type rail struct {
 	all      fyne.CanvasObject
 }
 
-const railWidth = 150
+const railWidth = 160
 
 func newRail(w *Window) *rail {
 	r := &rail{w: w}

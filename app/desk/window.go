@@ -82,6 +82,7 @@ func New(a fyne.App, parts *program.Parts) *Window {
 	w.window.SetMaster()
 	w.window.Resize(fyne.NewSize(1366, 768))
 	w.window.SetCloseIntercept(w.close)
+	a.Lifecycle().SetOnEnteredForeground(w.look)
 	w.bubble = newBubble(func(f func()) { w.do(f) })
 	w.window.SetOnDropped(w.dropped)
 	return w
@@ -151,8 +152,8 @@ func (w *Window) changed(ch core.Change) {
 	for _, s := range w.stages {
 		s.Changed(ch)
 	}
+	w.rail.update()
 	if ch&^core.WorkChanged != 0 {
-		w.rail.update()
 		w.bar.update()
 		w.picture.changed(ch)
 	}
@@ -169,12 +170,13 @@ func (w *Window) attach(s *live.Session) {
 		old = w.core.Session
 	}
 	w.build()
+	voice := w.app.Preferences().String(voiceKey) // read first: attaching shows the study's first voice, which is kept as any other
 	w.core.Attach(s)
 	if w.at < 0 { // panes are made over a study
 		w.choose(min(max(w.app.Preferences().IntWithFallback(stageKey, 3), 0), len(w.stages)-1))
 	}
-	if v := w.app.Preferences().String(voiceKey); v != "" {
-		w.core.SetVoice(v)
+	if voice != "" {
+		w.core.SetVoice(voice)
 	}
 	w.window.SetContent(w.layers)
 	w.core.Emit(core.Everything)
@@ -323,6 +325,22 @@ func halfMade(ctx context.Context, store study.Store) (bool, error) {
 	return !slices.ContainsFunc(st.Journal, func(e study.Entry) bool { return e.Reason != "sample district" }), nil
 }
 
+// look reads the study anew when another program has changed it, as when the user comes back to the window.
+func (w *Window) look() {
+	if w.core == nil || w.core.Session == nil {
+		return
+	}
+	changed := false
+	w.core.Edit("look whether another program changed the study", func(ctx context.Context, s *study.Study) (err error) {
+		changed, err = s.Reload(ctx)
+		return err
+	}, func() {
+		if changed {
+			w.foot.tell("Another program changed the study; it was read again.")
+		}
+	})
+}
+
 // busy shows that something is being opened.
 func (w *Window) busy(words string) {
 	if w.core != nil && w.core.Session != nil {
@@ -414,7 +432,10 @@ func (w *Window) keys() {
 	on(fyne.KeyM, func() { cv.Focus(w.picture.m) })
 	on(fyne.KeyU, func() { w.strip.SetHigh(true) })
 	cv.SetOnTypedKey(func(e *fyne.KeyEvent) {
-		if e.Name == fyne.KeyF1 {
+		switch top := cv.Overlays().Top(); {
+		case e.Name == fyne.KeyEscape && top != nil:
+			top.Hide()
+		case e.Name == fyne.KeyF1:
 			w.showKeys()
 		}
 	})

@@ -36,7 +36,7 @@ type View struct {
 
 // Work is something long that is under way.
 type Work struct {
-	What        string // "sites", "order", …
+	What        string // "start", then as run.Progress says
 	Done, Total int    // Total is 0 when it is not known
 	Left        time.Duration
 	LeftKnown   bool
@@ -72,7 +72,8 @@ type Session struct {
 	mu        sync.Mutex
 	view      *View
 	work      *Work
-	began     time.Time
+	began     time.Time          // of the step of work
+	begun     int                // how much of it was done then
 	cancelRun context.CancelFunc // of the computing under way
 	stopped   *study.Snapshot    // state that the user does not want computed
 	surveyor  *run.Surveyor      // of the state surveyed
@@ -300,7 +301,7 @@ func (s *Session) computing() {
 			continue
 		}
 		ctx, cancel := context.WithCancel(s.ctx)
-		s.cancelRun, s.work, s.began = cancel, &Work{What: "order"}, time.Time{}
+		s.cancelRun, s.work, s.began = cancel, &Work{What: "start"}, time.Time{}
 		s.mu.Unlock()
 		s.cfg.Notify()
 		var found found
@@ -324,15 +325,18 @@ func (s *Session) computing() {
 		s.mu.Unlock()
 		s.poke() // the state may have changed meanwhile
 		s.cfg.Notify()
-		debug.FreeOSMemory() // computing leaves several times the memory that its results need
+		if found.computed {
+			debug.FreeOSMemory() // computing leaves several times the memory that its results need
+		}
 	}
 }
 
 type found struct {
-	notices []geo.Notice
-	results *run.Results
-	board   *run.Board
-	index   *Index
+	computed bool // and not only ordered
+	notices  []geo.Notice
+	results  *run.Results
+	board    *run.Board
+	index    *Index
 }
 
 func (s *Session) compute(ctx context.Context, v *View, out *found) error {
@@ -350,6 +354,7 @@ func (s *Session) compute(ctx context.Context, v *View, out *found) error {
 		s.view = &now
 		s.mu.Unlock()
 		s.cfg.Notify()
+		out.computed = true
 		out.results, err = e.Compute(ctx, v.Snap)
 	}
 	if err != nil {
@@ -367,11 +372,11 @@ func (s *Session) progress(step string, done, total int) {
 	s.mu.Lock()
 	w := Work{What: step, Done: done, Total: total}
 	now := s.cfg.now()
-	if s.began.IsZero() || done <= 1 {
-		s.began = now
+	if s.work == nil || s.work.What != step || done < s.begun {
+		s.began, s.begun = now, done
 	}
-	if spent := now.Sub(s.began); done > 0 && spent > 500*time.Millisecond {
-		w.Left, w.LeftKnown = time.Duration(float64(spent)/float64(done)*float64(total-done)), true
+	if spent := now.Sub(s.began); step == "sites" && done > s.begun && spent > time.Second {
+		w.Left, w.LeftKnown = time.Duration(float64(spent)/float64(done-s.begun)*float64(total-done)), true
 	}
 	s.work = &w
 	s.mu.Unlock()

@@ -64,20 +64,25 @@ func group(x float64, decimals int) string {
 	return sign + b.String()
 }
 
-// Unit writes a unit for people; a pure number has none.
+// Unit writes a unit for people, with raised and lowered figures; a pure number has none.
 func Unit(u string) string {
-	if u == "1" {
+	switch u {
+	case "1":
 		return ""
+	case "deg":
+		return "°"
 	}
-	return u
+	return signs.Replace(u)
 }
+
+var signs = strings.NewReplacer("m2", "m²", "m3", "m³", "CO2e", "CO₂e", "degC", "°C")
 
 // UnitWords writes a unit for a column of units; a pure number says so.
 func UnitWords(u string) string {
 	if u == "1" {
 		return "pure number"
 	}
-	return u
+	return Unit(u)
 }
 
 // Cell writes a consequence in a few characters: its central value, or the state in its place.
@@ -175,4 +180,10 @@ func Signed(x float64) string {
 		return "+" + s
 	}
 	return s
+}
+
+// Rounded writes a number with so many decimals (rounded to tens and more for fewer than none), thousands
+// apart.
+func Rounded(x float64, decimals int) string {
+	return group(roundTo(x, decimals), max(decimals, 0))
 }

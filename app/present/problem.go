@@ -31,15 +31,17 @@ func Problem(err error) string {
 	case errors.Is(err, study.ErrNewerStudy):
 		return "The study was written by a newer version of the program. Open it with that version; it was left as it is."
 	case errors.Is(err, study.ErrDamaged):
-		return sentence(err.Error()) + " The file was left as it is; take a copy of it made earlier."
+		return "The study file is damaged and cannot be used as it is. It was left untouched; open a copy of it made earlier."
 	case errors.Is(err, study.ErrReadOnly):
 		return "The file or its folder cannot be written. Copy the study to a folder of your own, or ask for the right to write there."
 	case errors.Is(err, study.ErrDiskFull):
 		return "The disk is full. Nothing was changed; make room, then do it again."
 	case errors.Is(err, study.ErrBusy):
 		return "Another program is changing the study. Wait until it is done, then do it again."
+	case errors.Is(err, study.ErrNotThere) && strings.Contains(err.Error(), "study"):
+		return "The study's file is gone: it was moved or deleted while it was open. Put it back, then do it again."
 	case errors.Is(err, fs.ErrNotExist):
-		return "The file is not there any more: " + sentence(err.Error())
+		return "The file is not there. It may have been moved or deleted; choose another one."
 	}
 	return sentence(err.Error())
 }

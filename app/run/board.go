@@ -32,32 +32,11 @@ type Board struct {
 // NewBoard lays out results for the voices of a state of the study. A study whose voices weigh nothing
 // gives a board without keys, which cannot be weighed.
 func NewBoard(snap *study.Snapshot, p *Params, r *Results) (*Board, error) {
-	b := &Board{Unready: map[string]error{}}
+	b := &Board{}
 	var sc []scale
-	voices := snap.Voices()
-	for _, k := range p.Keys() {
-		weighs := slices.ContainsFunc(voices, func(v string) bool {
-			_, _, ok := snap.Lookup("voice." + v + ".weight." + k.Key)
-			_, byUser := snap.Explicit["voice."+v+".weight."+k.Key]
-			return ok && byUser
-		})
-		if !weighs {
-			continue
-		}
-		s, c, err := scaleOf(snap, "", k)
-		var anchors *AnchorError
-		switch {
-		case errors.As(err, &anchors):
-			b.Unready[k.Key] = fmt.Errorf("the ends of its value scale are not set: anchor.%s.worst, anchor.%s.best", k.Key, k.Key)
-			continue
-		case err != nil:
-			b.Unready[k.Key] = err
-			continue
-		case c == nil:
-			continue
-		}
-		sc = append(sc, s)
-		b.Keys = append(b.Keys, BoardKey{Info: k, Worst: s.curve.Worst, Best: s.curve.Best, Better: s.better})
+	sc, b.Unready = scaled(snap, p)
+	for _, one := range sc {
+		b.Keys = append(b.Keys, BoardKey{Info: one.info, Worst: one.curve.Worst, Best: one.curve.Best, Better: one.better})
 	}
 	if len(sc) == 0 {
 		return b, nil
@@ -79,6 +58,45 @@ func NewBoard(snap *study.Snapshot, p *Params, r *Results) (*Board, error) {
 		return nil, err
 	}
 	return b, nil
+}
+
+// scaled gives the value scales of all keys that some voice has a weight for, and the keys that have none
+// that can be used, with the reason.
+func scaled(snap *study.Snapshot, p *Params) ([]scale, map[string]error) {
+	var out []scale
+	unready := map[string]error{}
+	voices := snap.Voices()
+	for _, k := range p.Keys() {
+		weighs := slices.ContainsFunc(voices, func(v string) bool {
+			_, byUser := snap.Explicit["voice."+v+".weight."+k.Key]
+			return byUser
+		})
+		if !weighs {
+			continue
+		}
+		s, c, err := scaleOf(snap, "", k)
+		var anchors *AnchorError
+		switch {
+		case errors.As(err, &anchors):
+			unready[k.Key] = fmt.Errorf("the ends of its value scale are not set: anchor.%s.worst, anchor.%s.best", k.Key, k.Key)
+		case err != nil:
+			unready[k.Key] = err
+		case c != nil:
+			out = append(out, s)
+		}
+	}
+	return out, unready
+}
+
+// Categories numbers the keys that voices weigh, so that each has the same colour under every voice, in
+// window and appendix.
+func Categories(snap *study.Snapshot, p *Params) map[string]int {
+	out := map[string]int{}
+	list, _ := scaled(snap, p)
+	for i, s := range list {
+		out[s.key] = i
+	}
+	return out
 }
 
 // Raw gives the raw weights of a voice, one for each key of the board.

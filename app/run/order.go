@@ -81,7 +81,7 @@ type VoiceOrder struct {
 type AnchorError struct{ Voice, Key string }
 
 func (e *AnchorError) Error() string {
-	return fmt.Sprintf("voice %q weighs %s, whose value scale has no fixed ends; set them first:\n  gtally set STUDY.gpkg anchor.%s.worst NUMBER\n  gtally set STUDY.gpkg anchor.%s.best NUMBER", e.Voice, e.Key, e.Key, e.Key)
+	return fmt.Sprintf("voice %q weighs %s, whose value scale has no fixed ends; set anchor.%s.worst and anchor.%s.best first", e.Voice, e.Key, e.Key, e.Key)
 }
 
 // VoiceError says why a voice cannot order anything yet.

@@ -126,6 +126,13 @@ func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out *Results, 
 	voices := snap.Voices()
 	orders := make([]VoiceOrder, len(voices))
 	unready := make([]*VoiceError, len(voices))
+	var report func(int)
+	if e.Progress != nil {
+		report = func(done int) { e.Progress("voices", done, len(voices)) }
+		if len(voices) > 0 {
+			report(0)
+		}
+	}
 	err := forEach(ctx, cores, len(voices), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
 		var err error
 		orders[i], err = order(ctx, snap, e.Params, out.reckoner, draw, voices[i], cs)
@@ -133,7 +140,7 @@ func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out *Results, 
 			return nil // one unfinished voice does not keep the others from theirs
 		}
 		return err
-	}, nil)
+	}, report)
 	if err != nil {
 		return err
 	}

@@ -300,7 +300,16 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 		found := make([]siteResult, to-from)
 		var report func(int)
 		if r.progress != nil {
-			report = func(done int) { r.progress("sites", from+done, n) }
+			// Sites whose results are kept take next to no time, and say nothing of how long the others take.
+			what := "kept sites"
+			for _, p := range r.plans {
+				for i := from; i < to; i++ {
+					if _, kept := have[candidateStep][p.cand[i]]; !kept {
+						what = "sites"
+					}
+				}
+			}
+			report = func(done int) { r.progress(what, from+done, n) }
 		}
 		err = forEach(ctx, r.cores, to-from, openEngine, closeEngine, func(e *overlay.Engine, i int) error {
 			var err error

@@ -128,10 +128,10 @@ func (h *heights) get() (*terrain.Grid, error) {
 }
 
 // ErrNoParcels says that there is nothing to compare yet.
-var ErrNoParcels = errors.New("the study has no parcels yet; add them with gtally add STUDY.gpkg FILE --as parcels")
+var ErrNoParcels = errors.New("the study has no parcels yet; add them as a layer of that role")
 
 // ErrNoPlants says that there is no plant option yet.
-var ErrNoPlants = errors.New("the study has no plant option yet; make one with gtally set STUDY.gpkg plant.wind.technology wind (for one)")
+var ErrNoPlants = errors.New("the study has no plant option yet; make one, as plant.wind with the technology wind")
 
 // Loader reads the content of a layer version.
 type Loader func(ctx context.Context, digest string) (study.Version, error)

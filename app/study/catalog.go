@@ -188,7 +188,7 @@ func (d Definition) CheckValue(text string) (string, error) {
 	case "number":
 		f, err := strconv.ParseFloat(text, 64)
 		if err != nil || f != f || f > 1e300 || f < -1e300 {
-			return "", fmt.Errorf("%q is not a number; %s is given in %s", text, d.Key, orPlain(d.Unit))
+			return "", fmt.Errorf("%q is not a number; the value is given in %s", text, orPlain(d.Unit))
 		}
 		if lo, err := strconv.ParseFloat(d.Min, 64); err == nil && f < lo {
 			return "", fmt.Errorf("%s is less than %s", text, strings.TrimSpace(d.Min+" "+unitWord(d.Unit)))

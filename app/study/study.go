@@ -125,11 +125,37 @@ func (s *Study) edit(ctx context.Context, verb, reason string, of int64, changes
 	if err != nil {
 		return Entry{}, err
 	}
+	if n := len(s.journal); n > 0 && e.Seq != s.journal[n-1].Seq+1 || n == 0 && e.Seq != 1 {
+		return e, s.reload(ctx) // another program wrote in between
+	}
 	for _, c := range kept {
 		s.put(c.Kind, c.Key, c.New)
 	}
 	s.journal = append(s.journal, e)
 	return e, nil
+}
+
+// Reload reads the study anew when another program has changed it since; it tells whether one has.
+func (s *Study) Reload(ctx context.Context) (changed bool, err error) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	n, frozen := len(s.journal), len(s.frozen)
+	if err := s.reload(ctx); err != nil {
+		return false, err
+	}
+	return len(s.journal) != n || len(s.frozen) != frozen, nil
+}
+
+func (s *Study) reload(ctx context.Context) error {
+	st, err := s.store.Load(ctx)
+	if err != nil {
+		return fmt.Errorf("read the study: %w", err)
+	}
+	s.records, s.journal, s.frozen = map[RecordKind]map[string]json.RawMessage{}, st.Journal, st.Frozen
+	for _, r := range st.Records {
+		s.put(r.Kind, r.Key, r.Value)
+	}
+	return nil
 }
 
 // Canonical gives the JSON form in which records are kept.

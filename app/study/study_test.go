@@ -409,3 +409,49 @@ func TestReplacementsKeepTheirRole(t *testing.T) {
 		t.Errorf("a layer that is not there was replaced: %v", err)
 	}
 }
+
+// What another program writes while the study is open is neither lost nor overlooked.
+func TestAnotherProgramWrites(t *testing.T) {
+	ctx := context.Background()
+	store := studytest.New()
+	cat, err := study.LoadCatalog(os.DirFS("../../assets"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	a, err := study.Open(ctx, store, cat, study.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := study.Open(ctx, store, cat, study.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	set := func(s *study.Study, key, value string) {
+		t.Helper()
+		if _, err := s.Set(ctx, "set", "", study.SettingEdit{Key: key, Value: value}); err != nil {
+			t.Fatal(err)
+		}
+	}
+	set(a, "study.name", "A")
+	set(b, "study.place", "B") // b has not seen what a wrote
+	set(a, "study.author", "C")
+	for name, s := range map[string]*study.Study{"a": a, "b": b} {
+		if _, err := s.Reload(ctx); err != nil {
+			t.Fatal(err)
+		}
+		snap, err := s.Snapshot()
+		if err != nil {
+			t.Fatal(err)
+		}
+		if len(s.Journal()) != 3 || snap.Text("study.name") != "A" || snap.Text("study.place") != "B" || snap.Text("study.author") != "C" {
+			t.Errorf("%s sees %d entries, name %q, place %q, author %q", name, len(s.Journal()), snap.Text("study.name"), snap.Text("study.place"), snap.Text("study.author"))
+		}
+	}
+	if changed, err := a.Reload(ctx); err != nil || changed {
+		t.Errorf("nothing was written: changed %v, error %v", changed, err)
+	}
+	set(b, "study.name", "D")
+	if changed, err := a.Reload(ctx); err != nil || !changed {
+		t.Errorf("something was written: changed %v, error %v", changed, err)
+	}
+}

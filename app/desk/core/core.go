@@ -181,7 +181,17 @@ func (c *Core) ranked(r *live.Ranking) {
 }
 
 // Ranking gives the order under the weights shown; nil as long as there is none.
-func (c *Core) Ranking() *live.Ranking { return c.ranking }
+func (c *Core) Ranking() *live.Ranking {
+	if c.ranking == nil || c.view == nil || c.ranking.Board != c.view.Board {
+		return nil // of results that are no longer the present ones
+	}
+	return c.ranking
+}
+
+// Ordering reports whether an order of the present results is on its way.
+func (c *Core) Ordering() bool {
+	return c.view != nil && c.view.Board != nil && len(c.view.Board.Keys) > 0 && c.voice != "" && c.Ranking() == nil
+}
 
 // Voice gives the name of the chosen voice; empty when the study has none.
 func (c *Core) Voice() string { return c.voice }
@@ -241,6 +251,14 @@ func (c *Core) Try(raw []float64) {
 	c.rank()
 }
 
+// Back drops weights that are tried out and shows the order under those of the study.
+func (c *Core) Back() {
+	if c.trying != nil {
+		c.trying = nil
+		c.rank()
+	}
+}
+
 // SaveWeights puts the weights tried out into the study as one edit.
 func (c *Core) SaveWeights() {
 	if c.trying == nil {
@@ -254,17 +272,16 @@ func (c *Core) SaveWeights() {
 		}
 	}
 	if len(edits) == 0 {
-		c.trying = nil
-		c.rank()
+		c.Back()
 		return
 	}
 	tried := c.trying
 	c.Session.Set("weights of "+c.VoiceTitle(c.voice), func(err error) {
 		c.Do(func() {
-			if slices.Equal(c.trying, tried) { // the user may drag on meanwhile
+			if err == nil && slices.Equal(c.trying, tried) { // the user may drag on meanwhile
 				c.trying = nil
 			}
-			c.Update()
+			c.Update() // weights that could not be saved stay what they are: tried out
 			c.Fail("save the weights", err)
 		})
 	}, edits...)
@@ -331,7 +348,7 @@ func (c *Core) BestAt(site int) *run.Candidate {
 	if v == nil || v.Index == nil || site < 0 || site >= len(v.Index.Candidates) {
 		return nil
 	}
-	if r := c.ranking; r != nil && r.Err == nil && r.Index == v.Index && r.Best[site] >= 0 {
+	if r := c.Ranking(); r != nil && r.Err == nil && r.Best[site] >= 0 {
 		return &v.Results.Candidates[r.Board.At[r.Best[site]]]
 	}
 	var first *run.Candidate
@@ -437,7 +454,7 @@ func (c *Core) Set(what, reason string, edits ...study.SettingEdit) {
 // Undo takes back the last edit.
 func (c *Core) Undo() {
 	verb := c.view.CanUndo
-	c.trying = nil
+	c.Back()
 	c.Edit("take back", func(ctx context.Context, s *study.Study) error {
 		_, err := s.Undo(ctx)
 		return ignoreNothing(err)
@@ -451,7 +468,7 @@ func (c *Core) Undo() {
 // Redo brings back what was taken back last.
 func (c *Core) Redo() {
 	verb := c.view.CanRedo
-	c.trying = nil
+	c.Back()
 	c.Edit("bring back", func(ctx context.Context, s *study.Study) error {
 		_, err := s.Redo(ctx)
 		return ignoreNothing(err)

@@ -98,6 +98,9 @@ func (m *Map) Tapped(e *fyne.PointEvent) {
 		m.press.handled = false
 		return
 	}
+	if time.Since(m.press.last) < 3*fyne.CurrentApp().Driver().DoubleTapDelay() && !far(e.Position, m.press.lastAt) {
+		return // the toolkit's word on a click that was told already, late
+	}
 	var held fyne.KeyModifier
 	if d, ok := fyne.CurrentApp().Driver().(desktop.Driver); ok {
 		held = d.CurrentKeyModifiers()

@@ -32,6 +32,7 @@ const (
 	labelLine  = 13
 	labelRow   = 2*labelLine + 3
 	valueRow   = 26
+	scrollRoom = 14 // for the bar of the scroll at the right
 )
 
 // value is what a cell shows of one candidate.
@@ -364,8 +365,8 @@ func text(size float32, bold bool) *canvas.Text {
 }
 
 func (r *gridRenderer) Layout(s fyne.Size) {
-	if s.Width != r.g.width {
-		r.g.arrange(s.Width)
+	if w := s.Width - scrollRoom; w != r.g.width {
+		r.g.arrange(w)
 		r.drawn = -1
 	}
 	r.draw()

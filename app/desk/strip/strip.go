@@ -102,9 +102,12 @@ func (s *Strip) head() {
 	for i, cand := range chosen {
 		name := widgets.NewLine(s.c.CandidateTitle(cand)).Wide()
 		name.Bold, name.TextSize = true, 12.5
-		name.Hint = strings.Join(s.flags(cand), "\n")
+		if len(chosen) > 2 { // four must find room side by side
+			name.Set(cand.Site)
+		}
+		name.Hint = strings.TrimSpace(s.c.CandidateTitle(cand) + "\n" + strings.Join(s.flags(cand), "\n"))
 		badge := widgets.NewBadge(core.Letter(i))
-		row := container.New(layout.NewCustomPaddedHBoxLayout(8), badge, name, widgets.Faint(s.score(cand)).Wide())
+		row := container.New(layout.NewCustomPaddedHBoxLayout(8), badge, name, widgets.Faint(s.score(cand, len(chosen) > 2)).Hinted(s.score(cand, false)).Wide())
 		if len(cand.OverLimit) > 0 {
 			row.Add(widgets.Warm("over a limit").Hinted(strings.Join(s.flags(cand), "\n")).Wide())
 		} else if len(cand.Incomplete) > 0 {
@@ -121,7 +124,7 @@ func (s *Strip) head() {
 	if nothing, ok := s.nothing(); ok {
 		s.names.Add(widgets.Faint("doing nothing: " + nothing).Hinted("Doing nothing spares every burden and brings no gain. It is weighed like any candidate.").Wide())
 	}
-	if len(chosen) < core.MostChosen {
+	if len(chosen) < 3 {
 		s.names.Add(widgets.Faint("Ctrl-click adds another").Wide())
 	}
 	if v != nil && !v.Current {
@@ -130,8 +133,8 @@ func (s *Strip) head() {
 	s.names.Refresh()
 }
 
-// score writes place and score under the weights shown.
-func (s *Strip) score(cand *run.Candidate) string {
+// score writes place and score under the weights shown; in short without the range.
+func (s *Strip) score(cand *run.Candidate, short bool) string {
 	switch {
 	case cand.Status != run.Fitted && cand.Reason != "":
 		return present.Named(cand.Status) + ": " + present.Reason(cand.Reason)
@@ -145,6 +148,9 @@ func (s *Strip) score(cand *run.Candidate) string {
 	for item, id := range r.Board.IDs {
 		if id == cand.ID() {
 			st := &r.Standing
+			if short {
+				return fmt.Sprintf("place %d, %.2f", st.Place[item], st.Score[item])
+			}
 			return fmt.Sprintf("place %d, score %.2f (%.2f to %.2f)", st.Place[item], st.Score[item], st.Low[item], st.High[item])
 		}
 	}

@@ -80,7 +80,7 @@ func TestStripFour(t *testing.T) {
 		t.Fatalf("%d chosen, %d values in a cell", len(b.Core.Chosen()), len(s.grid.cells[0].values))
 	}
 	for i, cand := range b.Core.Chosen() {
-		if got := s.score(cand); !strings.Contains(got, "score ") {
+		if got := s.score(cand, false); !strings.Contains(got, "score ") {
 			t.Errorf("candidate %d stands without its score: %q", i, got)
 		}
 	}

@@ -53,6 +53,7 @@ func (b *RangeBar) change(n barState) {
 func (b *RangeBar) CreateRenderer() fyne.WidgetRenderer {
 	r := &barRenderer{b: b, track: canvas.NewRectangle(color.Transparent), span: canvas.NewRectangle(color.Transparent), mark: canvas.NewRectangle(color.Transparent), hatch: NewHatch()}
 	r.objects = []fyne.CanvasObject{r.track, r.span, r.mark, r.hatch}
+	r.Refresh() // an empty bar shows neither mark nor hatching
 	return r
 }
 

@@ -35,7 +35,7 @@ var names = map[string]func(i int) string{
 func scores(name func(int) string, n int) chart.Scores {
 	in := chart.Scores{Title: "scores", ID: "-1"}
 	for k := range 6 {
-		in.Keys = append(in.Keys, chart.ScoreKey{Title: name(k), Weight: []float64{0.24, 0.22, 0.17, 0.15, 0.12, 0.1}[k]})
+		in.Keys = append(in.Keys, chart.ScoreKey{Category: k, Title: name(k), Weight: []float64{0.24, 0.22, 0.17, 0.15, 0.12, 0.1}[k]})
 	}
 	for i := range n {
 		r := chart.ScoreRow{Item: fmt.Sprintf("P-%d", i), Name: fmt.Sprintf("%d. %s", i+1, name(i))}
@@ -276,7 +276,7 @@ func says(s *draw.Scene, words string) bool {
 }
 
 func TestScoreBarsAreTrue(t *testing.T) {
-	in := chart.Scores{Keys: []chart.ScoreKey{{Title: "Energy", Weight: 0.6}, {Title: "Noise", Weight: 0.4}}, Rows: []chart.ScoreRow{
+	in := chart.Scores{Keys: []chart.ScoreKey{{Title: "Energy", Weight: 0.6}, {Category: 1, Title: "Noise", Weight: 0.4}}, Rows: []chart.ScoreRow{
 		{Item: "P-1", Name: "1. Ings", Score: 0.5, Low: 0.3, High: 0.7, Parts: []chart.ScorePart{{Share: 0.3}, {Share: 0.2, Unknown: true}}, Over: "over the limit: Noise"}}}
 	s := chart.ScoreBars(in, draw.Light(), 760)
 	energy, noise := find(s, "1. Energy: 0.300 of weight 0.600"), find(s, "2. Noise: unknown")

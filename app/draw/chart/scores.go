@@ -18,8 +18,9 @@ type Scores struct {
 
 // ScoreKey is one thing that is weighed; its number in the picture is its place in the list.
 type ScoreKey struct {
-	Title  string
-	Weight float64 // share of all weights, 0 to 1
+	Category int // of its colour; the same key has the same one in all pictures
+	Title    string
+	Weight   float64 // share of all weights, 0 to 1
 }
 
 // ScoreRow is one score.
@@ -112,8 +113,8 @@ func (s *sheet) scoreLegend(in Scores) float64 {
 	top := pad - 2
 	for i, k := range in.Keys {
 		x, y := pad+float64(i%columns)*width, top+row*float64(i/columns)
-		s.Rect(x, y, 18, 14, draw.Style{Fill: draw.Category(i)}, k.Title+", weight "+three(k.Weight))
-		s.write(x+9, y+11, strconv.Itoa(i+1), 10, draw.TextOn(draw.Category(i)), draw.Middle)
+		s.Rect(x, y, 18, 14, draw.Style{Fill: draw.Category(k.Category)}, k.Title+", weight "+three(k.Weight))
+		s.write(x+9, y+11, strconv.Itoa(i+1), 10, draw.TextOn(draw.Category(k.Category)), draw.Middle)
 		weight := ", weight " + three(k.Weight)
 		title := draw.Fit(k.Title, body, false, width-26-gap-draw.TextWidth(weight, body, false))
 		s.write(x+26, y+11.5, title+weight, body, s.p.Ink, draw.Start)
@@ -159,8 +160,8 @@ func (s *sheet) scoreRow(keys []ScoreKey, r ScoreRow, y, height, left, scale flo
 		}
 		k := keys[j]
 		words := fmt.Sprintf("%d. %s: %s of weight %s", j+1, k.Title, three(part.Share), three(k.Weight))
-		text := draw.TextOn(draw.Category(j))
-		st := draw.Style{Fill: draw.Category(j), Stroke: s.p.Paper, Width: 0.8}
+		text := draw.TextOn(draw.Category(k.Category))
+		st := draw.Style{Fill: draw.Category(k.Category), Stroke: s.p.Paper, Width: 0.8}
 		if part.Unknown {
 			st, text = s.unknown(), s.p.Ink
 			words = fmt.Sprintf("%d. %s: unknown, counts half its weight of %s", j+1, k.Title, three(k.Weight))

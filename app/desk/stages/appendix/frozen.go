@@ -121,7 +121,7 @@ func (p *frozenPane) keep(name string) {
 		return err
 	}, func() {
 		p.name.SetText("")
-		p.s.c.Tell(fmt.Sprintf("Frozen as %s with check code %s.", name, short(code)))
+		p.s.c.Tell(fmt.Sprintf("Frozen: %q, with check code %s.", name, short(code)))
 	})
 }
 

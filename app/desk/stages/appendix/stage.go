@@ -113,6 +113,7 @@ func (s *Stage) remember(m made) {
 		return
 	}
 	s.c.App.Preferences().SetString(s.prefKey(), string(b))
+	s.c.Emit(core.WorkChanged) // the rail says so
 }
 
 // job is something long that is under way, with a line that shows how far it is.

@@ -82,7 +82,7 @@ func (o *order) changed(core.Change) {
 	sh := o.s.shown
 	if sh == nil || sh.Err != nil {
 		o.items = []int{}
-		words := "The order is shown as soon as the study was computed."
+		words := "The order stands here once the study is computed."
 		if sh != nil {
 			words = "Give at least one consequence a weight above 0; there is no order without one."
 		} else if v := o.s.c.View(); v != nil && v.Board != nil {

@@ -165,7 +165,7 @@ func (p *voicesPane) object() fyne.CanvasObject { return p.all }
 func (p *voicesPane) changed(core.Change) {
 	v, sh := p.s.c.View(), p.s.shown
 	if v == nil || v.Results == nil {
-		p.words.SetText("The voices are compared as soon as the study was computed.")
+		p.words.SetText("The voices stand side by side here once the study is computed.")
 		return
 	}
 	results, snap, chosen, ids := v.Results, v.Of, p.s.c.Chosen(), p.s.c.ChosenIDs()

@@ -90,7 +90,7 @@ func (w *weights) object() fyne.CanvasObject { return w.all }
 func (w *weights) changed(core.Change) {
 	v := w.s.c.View()
 	if v == nil || v.Board == nil {
-		w.say("The order is shown as soon as the study was computed.")
+		w.say("The order stands here once the study is computed.")
 		return
 	}
 	var unready []string
