@@ -12,6 +12,7 @@ import (
 	"fyne.io/fyne/v2/widget"
 
 	"groundtally/app/desk/core"
+	"groundtally/app/desk/theme"
 	"groundtally/app/desk/widgets"
 	"groundtally/app/run"
 )
@@ -109,7 +110,11 @@ func (b *bar) update() {
 	if !v.SavedAt.IsZero() {
 		saved += " · " + core.Clock(v.SavedAt, b.w.clock())
 	}
-	b.saved.Set(saved)
+	colour := theme.Faint
+	if b.w.locked == v.Path {
+		saved, colour = "Read only: changes cannot be saved", theme.Warm
+	}
+	b.saved.SetLook(saved, colour, false)
 	b.left.Refresh() // their texts have other widths now
 	b.right.Refresh()
 }

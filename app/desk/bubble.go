@@ -20,6 +20,7 @@ type bubble struct {
 	ground *canvas.Rectangle
 	lines  []*canvas.Text
 	wait   *time.Timer
+	gone   *time.Timer
 	owner  fyne.CanvasObject
 	words  string
 	round  int
@@ -30,6 +31,7 @@ const (
 	bubbleSize  = 12
 	bubbleWidth = 340
 	bubbleWait  = 350 * time.Millisecond
+	bubbleStay  = 8 * time.Second // what scrolled away under the pointer tells nobody that it left
 )
 
 func newBubble(do func(func())) *bubble {
@@ -54,6 +56,7 @@ func (b *bubble) explain(owner fyne.CanvasObject, words string, at fyne.Position
 	b.round++
 	if b.wait != nil {
 		b.wait.Stop()
+		b.gone.Stop()
 	}
 	b.hide()
 	if words == "" {
@@ -64,6 +67,13 @@ func (b *bubble) explain(owner fyne.CanvasObject, words string, at fyne.Position
 		b.do(func() {
 			if round == b.round {
 				b.show(words, at)
+			}
+		})
+	})
+	b.gone = time.AfterFunc(bubbleStay, func() {
+		b.do(func() {
+			if round == b.round {
+				b.hide()
 			}
 		})
 	})

@@ -59,7 +59,7 @@ func newPicture(w *Window) *picture {
 	p.m.OnHover = p.words
 	p.shade = widget.NewSelect(nil, nil)
 	p.shade.PlaceHolder = "Score"
-	head := container.New(layout.NewCustomPaddedLayout(6, 2, 12, 8), container.NewBorder(nil, nil, widgets.Faint("Map shows").Hinted("Parcels are shaded by the score of their best candidate under the chosen voice, or by any consequence of that candidate.").Wide(), nil, p.shade))
+	head := container.New(layout.NewCustomPaddedLayout(6, 2, 12, 8), container.NewBorder(nil, nil, widgets.Faint("Map shows").Hinted("Parcels are shaded by the score of their best candidate under the chosen voice, or by any consequence of that candidate. Each class of the legend holds about as many parcels as the others.").Wide(), nil, p.shade))
 	p.all = container.NewBorder(head, nil, nil, nil, p.m)
 	return p
 }
@@ -93,12 +93,17 @@ func (p *picture) options() {
 	}
 	titles := []string{"Score under the voice"}
 	p.keys = []string{""}
-	for _, k := range p.w.parts.Params.Keys() {
-		title := k.Title
-		if u := present.Unit(k.Unit); u != "" {
-			title += ", " + u
+	for _, account := range scoring.Accounts() {
+		for _, k := range p.w.parts.Params.Keys() {
+			if k.Account != account {
+				continue
+			}
+			title := strings.ToUpper(string(account[:1])) + string(account[1:]) + " · " + k.Title
+			if u := present.Unit(k.Unit); u != "" {
+				title += ", " + u
+			}
+			p.keys, titles = append(p.keys, k.Key), append(titles, title)
 		}
-		p.keys, titles = append(p.keys, k.Key), append(titles, title)
 	}
 	p.shade.SetOptions(titles)
 	p.shade.SetSelectedIndex(0)
@@ -236,9 +241,6 @@ func (p *picture) colouring(job *shadeJob) {
 // shadeClasses is the number of classes of a consequence.
 const shadeClasses = 6
 
-// scoreClasses is the greatest number of steps of the score.
-const scoreClasses = 9
-
 // do gives every parcel a class.
 func (j *shadeJob) do() shaded {
 	n := j.ground.Parcels()
@@ -290,9 +292,9 @@ func (j *shadeJob) do() shaded {
 		}
 		colour := theme.Colour(j.palette.Ramp(share))
 		out.shading.Colours = append(out.shading.Colours, colour)
-		text := fmt.Sprintf("%.2f to %.2f", bounds[c], bounds[c+1])
-		if j.key != "" {
-			digits := j.decimals(bounds[0], bounds[len(bounds)-1])
+		digits := j.decimals(bounds[0], bounds[len(bounds)-1])
+		text := present.Rounded(bounds[c], digits) + " to " + present.Rounded(bounds[c+1], digits)
+		if unit != "" && j.key != "" {
 			text = strings.TrimSpace(present.Rounded(bounds[c], digits) + " to " + present.Rounded(bounds[c+1], digits) + " " + unit)
 		}
 		out.legend = append(out.legend, mapview.LegendEntry{Text: text, Sample: tiles.Coloured, Colour: colour})
@@ -352,8 +354,7 @@ func (j *shadeJob) value(site int, cand *run.Candidate) (float64, bool) {
 	return q.Central, true
 }
 
-// bounds gives the ends of the classes: for the score equal steps, so that sites that can hardly be
-// told apart look alike; for a consequence classes of about as many parcels each.
+// bounds gives the ends of the classes, which hold about as many parcels each.
 func (j *shadeJob) bounds(values []float64, known []bool) []float64 {
 	var list []float64
 	for i, ok := range known {
@@ -366,20 +367,6 @@ func (j *shadeJob) bounds(values []float64, known []bool) []float64 {
 	}
 	slices.Sort(list)
 	lo, hi := list[0], list[len(list)-1]
-	if j.key == "" {
-		step := 0.2
-		for _, finer := range []float64{0.1, 0.05, 0.02} {
-			if math.Ceil(hi/finer)-math.Floor(lo/finer) <= scoreClasses {
-				step = finer
-			}
-		}
-		var out []float64
-		first, last := math.Floor(lo/step+1e-9), math.Ceil(hi/step-1e-9)
-		for k := first; k <= max(last, first+1); k++ {
-			out = append(out, k*step)
-		}
-		return out
-	}
 	// Ends are rounded before parcels are put into classes, so that the legend says what the map shows.
 	step := math.Pow(10, float64(-j.decimals(lo, hi)))
 	out := []float64{math.Floor(lo/step) * step}
@@ -391,8 +378,12 @@ func (j *shadeJob) bounds(values []float64, known []bool) []float64 {
 	return append(out, max(math.Ceil(hi/step), math.Round(out[len(out)-1]/step)+1)*step)
 }
 
-// decimals is how fine the ends of classes are written: a hundredth of the whole span.
+// decimals is how fine the ends of classes are written: a hundredth of the whole span, and two decimals for
+// a score.
 func (j *shadeJob) decimals(lo, hi float64) int {
+	if j.key == "" {
+		return 2
+	}
 	if hi <= lo {
 		hi = lo + math.Max(math.Abs(lo), 1)
 	}

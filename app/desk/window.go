@@ -69,6 +69,7 @@ type Window struct {
 	layers  *fyne.Container // all, and what lies over it
 
 	held    map[string]func() // what the keys of the window do, by shortcut
+	locked  string            // the study's file when it can be read only
 	pending atomic.Bool       // an update of the core waits for its turn
 }
 
@@ -138,6 +139,7 @@ func (w *Window) choose(i int) {
 		return
 	}
 	w.at = i
+	w.bubble.explain(nil, "", fyne.Position{})
 	if w.panes[i] == nil {
 		w.panes[i] = w.stages[i].Content()
 	}
@@ -215,7 +217,14 @@ func (w *Window) start(store study.Store, then func(s *live.Session)) error {
 	}
 	close(ready)
 	time.AfterFunc(mapFirst, s.Release)
+	locked := ""
+	if f, err := os.OpenFile(store.Path(), os.O_RDWR, 0); errors.Is(err, fs.ErrPermission) {
+		locked = store.Path()
+	} else if err == nil {
+		_ = f.Close()
+	}
 	w.do(func() {
+		w.locked = locked
 		w.attach(s)
 		w.app.Preferences().SetString(lastKey, store.Path())
 		if then != nil {
