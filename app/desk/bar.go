@@ -1,7 +1,6 @@
 package desk
 
 import (
-	"fmt"
 	"slices"
 	"strings"
 
@@ -14,7 +13,7 @@ import (
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/theme"
 	"groundtally/app/desk/widgets"
-	"groundtally/app/run"
+	"groundtally/app/live"
 )
 
 // bar is the head of the window: the study, the voice, the search, undo and redo, when it was saved.
@@ -26,6 +25,8 @@ type bar struct {
 	find       *widget.Entry
 	undo, redo *widget.Button
 	saved      *widgets.Line
+	shown      *live.View // that the bar tells of
+	voiceShown string
 	left       *fyne.Container
 	right      *fyne.Container
 	all        fyne.CanvasObject
@@ -61,9 +62,10 @@ func newBar(w *Window) *bar {
 
 func (b *bar) update() {
 	v := b.w.core.View()
-	if v == nil {
+	if v == nil || v == b.shown && b.w.core.Voice() == b.voiceShown {
 		return
 	}
+	b.shown, b.voiceShown = v, b.w.core.Voice()
 	name := v.Snap.Text("study.name")
 	if name == "" {
 		name = strings.TrimSuffix(baseName(v.Path), ".gpkg")
@@ -75,15 +77,9 @@ func (b *bar) update() {
 	for _, l := range v.Snap.LayersOf("parcels") {
 		parcels += l.Count
 	}
-	size := fmt.Sprintf("%s parcels · %d plant options", core.Count(parcels), len(v.Snap.Plants()))
-	if v.Results != nil {
-		fitted := 0
-		for i := range v.Results.Candidates {
-			if v.Results.Candidates[i].Status == run.Fitted {
-				fitted++
-			}
-		}
-		size += fmt.Sprintf(" · %s candidates fitted", core.Count(fitted))
+	size := core.Counted(parcels, "parcel", "parcels") + " · " + core.Counted(len(v.Snap.Plants()), "plant option", "plant options")
+	if v.Index != nil {
+		size += " · " + core.Counted(v.Index.Fitted, "candidate fitted", "candidates fitted")
 	}
 	b.size.Set(size)
 	voices := v.Snap.Voices()

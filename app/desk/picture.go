@@ -2,11 +2,13 @@ package desk
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"slices"
 	"sort"
 	"strings"
+	"sync"
 	"time"
 
 	"fyne.io/fyne/v2"
@@ -37,6 +39,10 @@ type picture struct {
 	all   fyne.CanvasObject
 	boxed []string
 
+	ended sync.Once
+	life  context.Context // ends with the picture
+	stop  context.CancelFunc
+
 	ground   *tiles.Ground
 	contents string             // of the ground shown or being made
 	making   context.CancelFunc // of the ground being made
@@ -48,9 +54,11 @@ type picture struct {
 
 func newPicture(w *Window) *picture {
 	p := &picture{w: w, around: map[string]*run.Surroundings{}}
+	p.life, p.stop = context.WithCancel(context.Background())
 	p.m = mapview.New(mapview.Options{Do: w.do})
 	p.m.OnSelect = func(parcel string, add bool) {
 		if parcel == "" {
+			w.core.Choose()
 			return
 		}
 		w.core.ChooseParcel(parcel, add)
@@ -64,7 +72,13 @@ func newPicture(w *Window) *picture {
 	return p
 }
 
-func (p *picture) close() { p.m.Close() }
+// close ends all drawing. It may be called from any goroutine, and again.
+func (p *picture) close() {
+	p.ended.Do(func() {
+		p.stop()
+		p.m.Close()
+	})
+}
 
 func (p *picture) changed(ch core.Change) {
 	if ch&core.LookChanged != 0 {
@@ -124,7 +138,7 @@ func (p *picture) renew() {
 	if p.making != nil {
 		p.making()
 	}
-	ctx, cancel := context.WithCancel(context.Background())
+	ctx, cancel := context.WithCancel(p.life)
 	p.making = cancel
 	store := p.w.core.Session.Study().Store()
 	again := p.ground != nil
@@ -154,6 +168,7 @@ func (p *picture) renew() {
 			}
 			cancel()
 			if err != nil {
+				p.contents = "" // so that the next change tries again
 				p.w.core.Fail("draw the map", err)
 				return
 			}
@@ -256,19 +271,26 @@ func (j *shadeJob) do() shaded {
 	best := j.bestOfSites()
 	values := make([]float64, n)
 	known := make([]bool, n)
-	anyUnknown, anyOver, anyBare := false, false, false
+	anyUnknown, anyOver, anyBare, anyNotComputed, anyNone := false, false, false, false, false
 	for i := range n {
 		site, ok := x.SiteOfParcel(j.ground.ID(i))
 		if !ok || best[site] < 0 {
 			anyBare = true
+			anyNotComputed = anyNotComputed || !ok || strings.HasPrefix(whyBare(j.view, site), "not computed")
 			continue
 		}
 		cand := &j.view.Results.Candidates[best[site]]
 		if len(cand.OverLimit) > 0 {
 			out.shading.Over[i], anyOver = true, true
 		}
-		values[i], known[i] = j.value(site, cand)
-		if !known[i] {
+		var state scoring.State
+		values[i], state = j.value(site, cand)
+		switch state {
+		case scoring.Number:
+			known[i] = true
+		case scoring.None, scoring.Never, scoring.Class: // known, and no number to be put into a class
+			anyNone = true
+		default:
 			out.shading.Class[i], anyUnknown = tiles.Unknown, true
 		}
 	}
@@ -305,8 +327,18 @@ func (j *shadeJob) do() shaded {
 	if anyOver {
 		out.legend = append(out.legend, mapview.LegendEntry{Text: "over a limit", Sample: tiles.OverLimit})
 	}
+	var bare []string
 	if anyBare {
-		out.legend = append(out.legend, mapview.LegendEntry{Text: "no room", Sample: tiles.BareParcel})
+		bare = append(bare, "no room")
+	}
+	if anyNotComputed {
+		bare = append(bare, "not computed")
+	}
+	if anyNone {
+		bare = append(bare, map[bool]string{true: "held back", false: "none"}[j.key == ""])
+	}
+	if len(bare) > 0 {
+		out.legend = append(out.legend, mapview.LegendEntry{Text: strings.Join(bare, ", "), Sample: tiles.BareParcel})
 	}
 	out.title = "Score, voice " + j.voice
 	if j.key != "" {
@@ -338,20 +370,24 @@ func (j *shadeJob) bestOfSites() []int {
 	return best
 }
 
-// value gives what a site is coloured by.
-func (j *shadeJob) value(site int, cand *run.Candidate) (float64, bool) {
+// value gives what a site is coloured by, or the state that stands in its place; None stands for a site
+// whose candidates a gate holds back.
+func (j *shadeJob) value(site int, cand *run.Candidate) (float64, scoring.State) {
 	if j.key == "" {
-		r := j.ranking
-		if r == nil || r.Err != nil || r.Index != j.view.Index || r.Best[site] < 0 {
-			return 0, false
+		switch r := j.ranking; {
+		case r == nil || r.Err != nil || r.Index != j.view.Index:
+			return 0, scoring.Unknown
+		case r.Best[site] < 0:
+			return 0, scoring.None
+		default:
+			return r.Standing.Score[r.Best[site]], scoring.Number
 		}
-		return r.Standing.Score[r.Best[site]], true
 	}
 	q, ok := cand.Consequence(j.key)
-	if !ok || q.State != scoring.Number {
-		return 0, false
+	if !ok {
+		return 0, scoring.Unknown
 	}
-	return q.Central, true
+	return q.Central, q.State
 }
 
 // bounds gives the ends of the classes, which hold about as many parcels each.
@@ -407,7 +443,7 @@ func (p *picture) words(parcel string) string {
 	}
 	cand := c.BestAt(site)
 	if cand == nil || cand.Status != run.Fitted {
-		return words + "\nno room for any plant option"
+		return words + "\n" + whyBare(v, site)
 	}
 	words += "\nbest: " + c.PlantTitle(cand.Plant)
 	if r := c.Ranking(); r != nil && r.Err == nil && r.Index == v.Index && r.Best[site] >= 0 {
@@ -428,6 +464,19 @@ func (p *picture) words(parcel string) string {
 	return words
 }
 
+// whyBare says why a site has no candidate on the map.
+func whyBare(v *live.View, site int) string {
+	for _, i := range v.Index.Candidates[site] {
+		if c := &v.Results.Candidates[i]; c.Status == run.NotComputed {
+			if c.Reason != "" {
+				return "not computed: " + present.Reason(c.Reason)
+			}
+			return "not computed"
+		}
+	}
+	return "no room for any plant option"
+}
+
 // box keeps the parcels of a box, for making a site of them, and says what can be done.
 func (p *picture) box(parcels []string) {
 	p.boxed = parcels
@@ -437,6 +486,14 @@ func (p *picture) box(parcels []string) {
 	}
 }
 
+// mostAround is how many surroundings are kept.
+const mostAround = 24
+
+// sameCandidates reports whether results differ at most in their order.
+func sameCandidates(a, b *run.Results) bool {
+	return a == b || a != nil && b != nil && len(a.Candidates) == len(b.Candidates) && len(a.Candidates) > 0 && &a.Candidates[0] == &b.Candidates[0]
+}
+
 // mark draws the chosen candidates: their parcels, buildable area, plant, connection, distances kept.
 func (p *picture) mark() {
 	c := p.w.core
@@ -444,9 +501,10 @@ func (p *picture) mark() {
 	if v == nil || p.ground == nil {
 		return
 	}
-	if p.of != v.Results {
-		p.of, p.around = v.Results, map[string]*run.Surroundings{}
+	if !sameCandidates(p.of, v.Results) || len(p.around) > mostAround {
+		p.around = map[string]*run.Surroundings{}
 	}
+	p.of = v.Results
 	var marks []tiles.Mark
 	for i, cand := range c.Chosen() {
 		m := tiles.Mark{Letter: core.Letter(i), Parcels: cand.Parcels}
@@ -480,7 +538,14 @@ func (p *picture) ask(cand *run.Candidate) {
 	of := p.of
 	p.w.core.Session.Around(cand, func(a *run.Surroundings, err error) {
 		p.w.do(func() {
-			if err != nil || of != p.of { // without it the map shows the plant alone
+			switch {
+			case of != p.of:
+				return
+			case err != nil:
+				delete(p.around, cand.ID()) // asked again when it is next chosen
+				if !errors.Is(err, context.Canceled) {
+					p.w.foot.tell("The ground around " + cand.Site + " cannot be shown: " + present.Problem(err))
+				}
 				return
 			}
 			p.around[cand.ID()] = a

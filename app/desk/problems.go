@@ -11,6 +11,7 @@ import (
 	"fyne.io/fyne/v2/layout"
 	"fyne.io/fyne/v2/widget"
 
+	"groundtally/app/appendix"
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/theme"
 	"groundtally/app/desk/widgets"
@@ -64,6 +65,9 @@ func grade(s geo.Severity) string {
 	return "to know"
 }
 
+// measured is how many entries get rows of their own height; more would keep the window from answering.
+const measured = 2000
+
 // showProblems opens the one list of everything that wants a look.
 func (w *Window) showProblems() {
 	list := w.problems()
@@ -100,14 +104,14 @@ func (w *Window) showProblems() {
 		b.SetText("Go to " + p.stage)
 		b.OnTapped = func() { d.Hide(); w.core.ShowStage(p.stage) }
 	})
-	for i := range list { // rows are as high as their words need
+	for i := range min(len(list), measured) { // rows are as high as their words need
 		lines := len(draw.Lines(list[i].words, 13, false, wordsWide, 20))
 		l.SetItemHeight(i, float32(16+18*max(lines, 1)))
 	}
 	title := widgets.Faint(core.Count(len(list)) + " entries. Each says where, what, and what the program did or what you can do.")
 	d = dialog.NewCustom("Problems", "Close", container.NewBorder(title, nil, nil, nil, l), w.window)
 	d.Resize(fyne.NewSize(900, 520))
-	d.Show()
+	w.core.Open(d)
 }
 
 // place is something unseen that keeps room.
@@ -117,21 +121,13 @@ func place(width, height float32) fyne.CanvasObject {
 	return r
 }
 
-// cautions stand in the window as in the appendix.
-var cautions = []string{
-	"This is a screening. It replaces no permit, no survey, no measurement on site and no licensed engineer. Local codes and licensed practice prevail over every default.",
-	"Grid: only the network operator's study can offer a connection. Lines and substations are live: never approach, measure, dig or fly near them on the strength of this map; call the operator and the buried-services enquiry first.",
-	"Wind: setbacks for topple and ice throw are screening distances. Ice throw, noise, shadow and structural safety need assessments by qualified people under local law.",
-	"Yields rest on climatology without a mast or a year of measurements; realised yields have on average come out lower than forecast.",
-	"A legal distance that is not entered is not set, never zero: candidates computed without it are marked incomplete.",
-}
-
+// showCautions shows the cautions of the appendix.
 func (w *Window) showCautions() {
 	box := container.New(layout.NewCustomPaddedVBoxLayout(2))
-	for _, c := range cautions {
+	for _, c := range appendix.Cautions() {
 		box.Add(widgets.NewText(c))
 	}
 	d := dialog.NewCustom("Cautions", "Close", container.NewVScroll(box), w.window)
 	d.Resize(fyne.NewSize(640, 420))
-	d.Show()
+	w.core.Open(d)
 }

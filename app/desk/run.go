@@ -130,6 +130,7 @@ func supervise(args []string, path string, stdout, stderr io.Writer) int {
 			fmt.Fprintln(stdout, lines.Text())
 		}
 	}
+	_, _ = io.Copy(io.Discard, out) // should a line be too long for the scanner, the child must not wait for a reader
 	err = cmd.Wait()
 	signal.Stop(signals)
 	said := errs.String()

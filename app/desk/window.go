@@ -18,6 +18,7 @@ import (
 	"fyne.io/fyne/v2/driver/desktop"
 	"fyne.io/fyne/v2/layout"
 	toolkit "fyne.io/fyne/v2/theme"
+	"fyne.io/fyne/v2/widget"
 
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/stages/accounts"
@@ -29,6 +30,7 @@ import (
 	"groundtally/app/desk/theme"
 	"groundtally/app/desk/widgets"
 	"groundtally/app/live"
+	"groundtally/app/present"
 	"groundtally/app/program"
 	"groundtally/app/study"
 )
@@ -69,8 +71,10 @@ type Window struct {
 	layers  *fyne.Container // all, and what lies over it
 
 	held    map[string]func() // what the keys of the window do, by shortcut
-	locked  string            // the study's file when it can be read only
-	pending atomic.Bool       // an update of the core waits for its turn
+	round   int               // of the newest opening
+	closing bool
+	locked  string      // the study's file when it can be read only
+	pending atomic.Bool // an update of the core waits for its turn
 }
 
 // New makes the window; it shows nothing until a study is opened or Offer is called.
@@ -89,14 +93,19 @@ func New(a fyne.App, parts *program.Parts) *Window {
 	return w
 }
 
-// build makes everything that needs a study.
+// build makes everything that shows a study, anew for every study, so that nothing of one is left in
+// another.
 func (w *Window) build() {
-	if w.core != nil {
-		return
-	}
 	c := core.New(w.app, w.window, w.parts, w.theme)
 	w.core = c
-	c.Do = w.do
+	c.Do = func(f func()) {
+		w.do(func() {
+			if w.core == c {
+				f()
+			}
+		})
+	}
+	c.Always = w.do
 	w.ground = ground.New(c)
 	w.stages = []core.Stage{w.ground, plant.New(c), accounts.New(c), weigh.New(c), appendix.New(c)}
 	w.panes = make([]fyne.CanvasObject, len(w.stages))
@@ -167,9 +176,13 @@ func (w *Window) changed(ch core.Change) {
 
 // attach shows an open session.
 func (w *Window) attach(s *live.Session) {
-	old := (*live.Session)(nil)
+	var old *live.Session
 	if w.core != nil {
 		old = w.core.Session
+		w.picture.close()
+		for _, o := range w.window.Canvas().Overlays().List() { // a form of the study before
+			w.window.Canvas().Overlays().Remove(o)
+		}
 	}
 	w.build()
 	voice := w.app.Preferences().String(voiceKey) // read first: attaching shows the study's first voice, which is kept as any other
@@ -189,13 +202,13 @@ func (w *Window) attach(s *live.Session) {
 
 // notify is told by sessions, from any goroutine, that there is something new. Calls that come in quick
 // succession lead to one update.
-func (w *Window) notify(s *live.Session) {
+func (w *Window) notify() {
 	if !w.pending.CompareAndSwap(false, true) {
 		return
 	}
 	w.do(func() {
 		w.pending.Store(false)
-		if w.core != nil && w.core.Session == s {
+		if w.core != nil && w.core.Session != nil { // whichever session told
 			w.core.Update()
 		}
 	})
@@ -205,17 +218,14 @@ func (w *Window) notify(s *live.Session) {
 const mapFirst = 2 * time.Second
 
 // start opens a session over a store, off the window's goroutine, and shows it.
-func (w *Window) start(store study.Store, then func(s *live.Session)) error {
-	var s *live.Session
-	ready := make(chan struct{})
+func (w *Window) start(store study.Store, round int, then func(s *live.Session)) error {
 	s, err := live.Start(context.Background(), store, live.Config{Catalog: w.parts.Catalog, Params: w.parts.Params, Who: w.parts.Who, Clock: w.clock, Wait: true, Notify: func() {
-		go func() { <-ready; w.notify(s) }()
+		w.notify()
 	}})
 	if err != nil {
 		_ = store.Close()
 		return err
 	}
-	close(ready)
 	time.AfterFunc(mapFirst, s.Release)
 	locked := ""
 	if f, err := os.OpenFile(store.Path(), os.O_RDWR, 0); errors.Is(err, fs.ErrPermission) {
@@ -224,6 +234,10 @@ func (w *Window) start(store study.Store, then func(s *live.Session)) error {
 		_ = f.Close()
 	}
 	w.do(func() {
+		if round != w.round { // another study was asked for meanwhile
+			go func() { _ = s.Close() }()
+			return
+		}
 		w.locked = locked
 		w.attach(s)
 		w.app.Preferences().SetString(lastKey, store.Path())
@@ -236,12 +250,12 @@ func (w *Window) start(store study.Store, then func(s *live.Session)) error {
 
 // Open opens a study file; what keeps it from being opened is shown, with a way on.
 func (w *Window) Open(path string) {
-	w.busy("Opening " + filepath.Base(path) + "…")
+	round := w.busy("Opening " + filepath.Base(path) + "…")
 	go func() {
 		ctx := context.Background()
 		store, err := w.parts.Open(ctx, path)
 		if err == nil {
-			err = w.start(store, nil)
+			err = w.start(store, round, nil)
 		}
 		if err != nil {
 			w.do(func() { w.offer(err, path) })
@@ -254,11 +268,11 @@ func (w *Window) Create(path string) {
 	if filepath.Ext(path) == "" {
 		path += ".gpkg"
 	}
-	w.busy("Making " + filepath.Base(path) + "…")
+	round := w.busy("Making " + filepath.Base(path) + "…")
 	go func() {
 		store, err := w.parts.Create(context.Background(), path)
 		if err == nil {
-			err = w.start(store, func(*live.Session) { w.core.ShowStage("Ground") })
+			err = w.start(store, round, func(*live.Session) { w.core.ShowStage("Ground") })
 		}
 		if err != nil {
 			w.do(func() { w.offer(err, path) })
@@ -277,24 +291,25 @@ func SamplePath() string {
 
 // Sample opens the sample study, making it where it is not there yet or only in part.
 func (w *Window) Sample(path string) {
-	w.busy("Opening the sample study…")
+	round := w.busy("Opening the sample study…")
 	go func() {
 		ctx := context.Background()
-		if err := w.openSample(ctx, path); err != nil {
+		if err := w.openSample(ctx, path, round); err != nil {
 			w.do(func() { w.offer(err, path) })
 		}
 	}()
 }
 
-func (w *Window) openSample(ctx context.Context, path string) error {
+func (w *Window) openSample(ctx context.Context, path string, round int) error {
 	store, err := w.parts.Open(ctx, path)
 	if err == nil {
 		half, err := halfMade(ctx, store)
 		if err != nil {
+			_ = store.Close()
 			return err
 		}
 		if !half {
-			return w.start(store, nil)
+			return w.start(store, round, nil)
 		}
 		if err := store.Close(); err != nil {
 			return err
@@ -311,7 +326,7 @@ func (w *Window) openSample(ctx context.Context, path string) error {
 	if store, err = w.parts.Create(ctx, path); err != nil {
 		return err
 	}
-	return w.start(store, func(s *live.Session) {
+	return w.start(store, round, func(s *live.Session) {
 		w.core.Edit("make the sample study", func(ctx context.Context, st *study.Study) error {
 			tools, done := w.parts.Tools()
 			defer done()
@@ -339,24 +354,32 @@ func (w *Window) look() {
 	if w.core == nil || w.core.Session == nil {
 		return
 	}
-	changed := false
-	w.core.Edit("look whether another program changed the study", func(ctx context.Context, s *study.Study) (err error) {
+	c, changed := w.core, false
+	c.Session.Edit(func(ctx context.Context, s *study.Study) (err error) {
 		changed, err = s.Reload(ctx)
 		return err
-	}, func() {
-		if changed {
-			w.foot.tell("Another program changed the study; it was read again.")
-		}
+	}, func(err error) {
+		c.Do(func() {
+			c.Update()
+			switch {
+			case err != nil: // told at the foot, since this comes at every return to the window
+				w.foot.tell("The study's file cannot be read: " + present.Problem(err))
+			case changed:
+				w.foot.tell("Another program changed the study; it was read again.")
+			}
+		})
 	})
 }
 
-// busy shows that something is being opened.
-func (w *Window) busy(words string) {
+// busy shows that something is being opened, and numbers the opening: the newest counts.
+func (w *Window) busy(words string) int {
+	w.round++
 	if w.core != nil && w.core.Session != nil {
 		w.foot.tell(words)
-		return
+		return w.round
 	}
 	w.window.SetContent(container.NewStack(widgets.NewGround(toolkit.ColorNameBackground, fyne.Size{}), container.NewCenter(widgets.Part(words).Wide())))
+	return w.round
 }
 
 // dropped takes files that were dropped on the window.
@@ -400,17 +423,22 @@ func (w *Window) take(paths []string) {
 
 // close ends the program after everything is saved.
 func (w *Window) close() {
-	w.window.SetCloseIntercept(func() {}) // once is enough
+	if w.closing {
+		return
+	}
+	w.closing = true
 	if w.core == nil || w.core.Session == nil {
 		w.app.Quit()
 		return
 	}
 	w.app.Preferences().SetFloat(wideKey, w.middle.Offset)
-	w.foot.tell("Saving…")
-	w.picture.close()
-	s := w.core.Session
+	// Nothing can be changed any more while what was changed is saved.
+	words := widgets.Part("Saving what was changed…").Wide()
+	widget.NewModalPopUp(container.NewPadded(words), w.window.Canvas()).Show()
+	s, m := w.core.Session, w.picture
 	go func() {
 		err := s.Close()
+		m.close()
 		w.do(func() {
 			if err != nil {
 				fmt.Fprintln(os.Stderr, "groundtally: close the study:", err)
@@ -441,10 +469,10 @@ func (w *Window) keys() {
 	on(fyne.KeyM, func() { cv.Focus(w.picture.m) })
 	on(fyne.KeyU, func() { w.strip.SetHigh(true) })
 	cv.SetOnTypedKey(func(e *fyne.KeyEvent) {
-		switch top := cv.Overlays().Top(); {
-		case e.Name == fyne.KeyEscape && top != nil:
-			top.Hide()
-		case e.Name == fyne.KeyF1:
+		switch e.Name {
+		case fyne.KeyEscape:
+			w.core.CloseLight()
+		case fyne.KeyF1:
 			w.showKeys()
 		}
 	})
@@ -514,7 +542,7 @@ func (w *Window) showKeys() {
 		grid.Add(key)
 		grid.Add(widgets.NewLine(r[1]).Wide())
 	}
-	dialog.ShowCustom("Keys", "Close", container.NewPadded(grid), w.window)
+	w.core.Open(dialog.NewCustom("Keys", "Close", container.NewPadded(grid), w.window))
 }
 
 // End closes the window as its user would. It may be called from any goroutine.

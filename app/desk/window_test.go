@@ -146,8 +146,10 @@ func TestStages(t *testing.T) {
 		if got := s.w.state().Stage; got != want {
 			t.Errorf("Ctrl %d opens %s, want %s", i+1, got, want)
 		}
-		if !s.w.strip.Visible() || !s.w.picture.m.Visible() {
-			t.Errorf("in %s map or strip cannot be seen", want)
+		for name, o := range map[string]fyne.CanvasObject{"map": s.w.picture.m, "strip": s.w.strip, "pane": s.w.pane} {
+			if size := o.Size(); size.Width < 300 || size.Height < 120 {
+				t.Errorf("in %s the %s has %v", want, name, size)
+			}
 		}
 		if first, _, _ := s.w.stages[i].State(); first == "" {
 			t.Errorf("the rail says nothing of %s", want)
@@ -353,11 +355,42 @@ func TestLists(t *testing.T) {
 			t.Errorf("an entry without words or cure: %+v", p)
 		}
 	}
-	s.w.window.Canvas().Overlays().Top().Hide()
-	s.w.showCautions()
-	s.w.showKeys()
-	s.w.core.Fail("try", errors.New("nothing"))
+	s.w.core.CloseLight()
+	for what, open := range map[string]func(){"the cautions": s.w.showCautions, "the keys": s.w.showKeys, "an error": func() { s.w.core.Fail("try", errors.New("nothing")) }} {
+		open()
+		s.Pump()
+		if s.w.state().Over != 1 {
+			t.Errorf("%s: %d dialogs are open", what, s.w.state().Over)
+		}
+		s.w.core.CloseLight() // as Escape does
+		if s.w.state().Over != 0 {
+			t.Errorf("Escape does not close %s", what)
+		}
+	}
+}
+
+// Another study in the same window has nothing of the one before: no choice, no shade, no box, no answer
+// that comes late.
+func TestSecondStudy(t *testing.T) {
+	s := open(t, 60)
+	first := s.w.core
+	s.w.core.SetShade("connection_km")
+	s.w.picture.boxed = []string{"M-0001"}
+	late := false
+	first.Do(func() { late = true })
+	made := filepath.Join(t.TempDir(), "second.gpkg")
+	s.w.Create(made)
+	s.until("the second study is open", func() bool { return s.w.core != first && s.w.state().Study == made })
+	late = false
+	first.Do(func() { late = true })
 	s.Pump()
+	if late {
+		t.Error("an answer for the first study reached the window")
+	}
+	if st := s.w.state(); len(st.Chosen) != 0 || st.Layers != 0 || s.w.core.Shade() != "" || len(s.w.picture.boxed) != 0 || s.w.bar.name.Text != "second" {
+		t.Errorf("the second study shows %+v, shade %q, box %v, name %q", st, s.w.core.Shade(), s.w.picture.boxed, s.w.bar.name.Text)
+	}
+	s.until("it says what is missing", func() bool { return s.w.state().Problem != "" })
 }
 
 // Terms carry their sentence: it is shown when the pointer rests, and goes when it leaves.

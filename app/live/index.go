@@ -8,6 +8,7 @@ type Index struct {
 	Candidates [][]int               // by site: candidates in the results
 	ByID       map[string]int        // candidate by run.Candidate.ID
 	SiteOf     []int                 // by candidate: its site
+	Fitted     int                   // candidates with a plant
 	Spans      map[string][2]float64 // by consequence: see run.Results.Spans
 	parcel     map[string]int
 	site       map[string]int
@@ -29,6 +30,9 @@ func NewIndex(r *run.Results) *Index {
 		}
 		x.Candidates[at] = append(x.Candidates[at], i)
 		x.SiteOf[i] = at
+		if c.Status == run.Fitted {
+			x.Fitted++
+		}
 		x.ByID[c.ID()] = i
 	}
 	return x

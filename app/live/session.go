@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"runtime/debug"
+	"slices"
 	"sync"
 	"time"
 
@@ -68,17 +69,25 @@ type Session struct {
 	asking sync.RWMutex
 	closed bool
 	edited chan struct{} // closed when the last edit is saved
+	gone   chan struct{} // closed when the session is
+
+	closeErr error
 
 	mu        sync.Mutex
 	view      *View
 	work      *Work
 	began     time.Time          // of the step of work
 	begun     int                // how much of it was done then
+	told      time.Time          // when progress was last told
 	cancelRun context.CancelFunc // of the computing under way
 	stopped   *study.Snapshot    // state that the user does not want computed
 	surveyor  *run.Surveyor      // of the state surveyed
 	surveyed  *study.Snapshot
 	waiting   bool // for Release
+
+	// Of the computing goroutine alone: notices on data and settings, and the state that they are of.
+	onData  []geo.Notice
+	checked *study.Snapshot
 }
 
 type edit struct {
@@ -92,7 +101,7 @@ func Start(ctx context.Context, store study.Store, cfg Config) (*Session, error)
 	if err != nil {
 		return nil, err
 	}
-	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{}), waiting: cfg.Wait}
+	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{}), gone: make(chan struct{}), waiting: cfg.Wait}
 	session.ctx, session.stop = context.WithCancel(context.WithoutCancel(ctx))
 	if err := session.refresh(); err != nil {
 		return nil, err
@@ -133,7 +142,7 @@ func (s *Session) Edit(do func(ctx context.Context, s *study.Study) error, done 
 	s.asking.RLock() // so that none is asked for after the last one that Close waits for
 	defer s.asking.RUnlock()
 	if s.closed {
-		go done(context.Canceled)
+		go done(ErrClosed)
 		return
 	}
 	s.edits <- edit{do, done}
@@ -151,6 +160,10 @@ func (s *Session) Set(reason string, done func(error), edits ...study.SettingEdi
 // found so far is kept.
 func (s *Session) StopComputing() {
 	s.mu.Lock()
+	if s.view.Current { // it was done a moment before
+		s.mu.Unlock()
+		return
+	}
 	s.stopped = s.view.Snap
 	v := *s.view
 	v.Stopped = true
@@ -184,14 +197,16 @@ func (s *Session) Release() {
 }
 
 // Close stops everything, waits for it, and closes the study's file. Edits asked for before are saved; later
-// ones are not done. Closing again does nothing.
+// ones are not done. Closing again waits for the first.
 func (s *Session) Close() error {
 	s.asking.Lock()
 	if s.closed {
 		s.asking.Unlock()
-		return nil
+		<-s.gone
+		return s.closeErr
 	}
 	s.closed = true
+	defer close(s.gone)
 	close(s.edits)
 	s.asking.Unlock()
 	s.mu.Lock()
@@ -202,9 +217,12 @@ func (s *Session) Close() error {
 		cancel()
 	}
 	<-s.edited
-	s.stop()
+	s.mu.Lock()
+	s.stop() // under the lock, so that nothing is begun afterwards
+	s.mu.Unlock()
 	s.group.Wait()
-	return s.study.Close()
+	s.closeErr = s.study.Close()
+	return s.closeErr
 }
 
 func (s *Session) poke() {
@@ -223,6 +241,9 @@ func guarded(do func() error) (err error) {
 	}()
 	return do()
 }
+
+// ErrClosed says that an edit came after the study was closed. It was not done.
+var ErrClosed = errors.New("the study is being closed; this change was not made")
 
 // FaultError says that the program itself is at fault.
 type FaultError struct{ What, Details string }
@@ -257,10 +278,17 @@ func (s *Session) refresh() error {
 	if n := len(v.Journal); n > 0 {
 		v.SavedAt = v.Journal[n-1].At
 	}
+	// The state is changed here alone, so that comparing needs no lock that the window waits for.
+	var before *study.Snapshot
+	s.mu.Lock()
+	if s.view != nil {
+		before = s.view.Snap
+	}
+	s.mu.Unlock()
+	same := before != nil && study.SameInputs(before, snap)
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	if old := s.view; old != nil {
-		same := study.SameInputs(old.Snap, snap)
 		if same {
 			v.Snap = old.Snap // so that what was computed of it stays current
 			v.Stopped, v.Problem, v.Notices = old.Stopped, old.Problem, old.Notices
@@ -281,7 +309,7 @@ func (s *Session) refresh() error {
 func contents(snap *study.Snapshot) string {
 	out := ""
 	for _, l := range snap.Layers {
-		out += l.Role + " " + l.Digest + "\n"
+		out += fmt.Sprint(l.Role, " ", l.Digest, " ", l.Match, " ", l.Personal, "\n") // maps are printed in the order of their keys
 	}
 	return out
 }
@@ -310,7 +338,7 @@ func (s *Session) computing() {
 		s.mu.Lock()
 		s.cancelRun, s.work = nil, nil
 		now := *s.view
-		if found.notices != nil {
+		if found.notices != nil && now.Snap == v.Snap {
 			now.Notices = found.notices
 		}
 		switch {
@@ -340,20 +368,27 @@ type found struct {
 }
 
 func (s *Session) compute(ctx context.Context, v *View, out *found) error {
+	if s.checked == nil || !run.OnlyWeighing(s.checked, v.Snap) {
+		all, err := run.Check(ctx, s.study.Store(), v.Snap, s.cfg.Params)
+		if err != nil {
+			return err
+		}
+		s.checked, s.onData = v.Snap, all[:len(all)-len(run.VoiceNotices(v.Snap, s.cfg.Params))]
+	}
+	out.notices = append(slices.Clip(s.onData), run.VoiceNotices(v.Snap, s.cfg.Params)...)
+	s.mu.Lock()
+	if s.view.Snap == v.Snap { // notices are of one state, and a newer one has its own
+		now := *s.view
+		now.Notices = out.notices
+		s.view = &now
+	}
+	s.mu.Unlock()
+	s.cfg.Notify()
 	e := &run.Engine{Params: s.cfg.Params, Cache: &keeping{store: s.study.Store()}, Cores: s.cfg.Cores, Progress: s.progress, Load: run.StoreLoader(s.study.Store())}
 	var err error
 	if v.Of != nil && v.Results != nil && run.OnlyWeighing(v.Of, v.Snap) {
 		out.results, err = e.Reweigh(ctx, v.Snap, v.Results)
 	} else {
-		if out.notices, err = run.Check(ctx, s.study.Store(), v.Snap, s.cfg.Params); err != nil {
-			return err
-		}
-		s.mu.Lock()
-		now := *s.view
-		now.Notices = out.notices
-		s.view = &now
-		s.mu.Unlock()
-		s.cfg.Notify()
 		out.computed = true
 		out.results, err = e.Compute(ctx, v.Snap)
 	}
@@ -367,11 +402,19 @@ func (s *Session) compute(ctx context.Context, v *View, out *found) error {
 	return nil
 }
 
+// tellEvery is how often progress is told.
+const tellEvery = 60 * time.Millisecond
+
 // progress is told by the engine how far it is.
 func (s *Session) progress(step string, done, total int) {
 	s.mu.Lock()
 	w := Work{What: step, Done: done, Total: total}
 	now := s.cfg.now()
+	if s.work != nil && s.work.What == step && done < total && now.Sub(s.told) < tellEvery {
+		s.mu.Unlock()
+		return
+	}
+	s.told = now
 	if s.work == nil || s.work.What != step || done < s.begun {
 		s.began, s.begun = now, done
 	}
@@ -428,7 +471,7 @@ func survey[T any](s *Session, ask func(*run.Surveyor) (T, error), done func(T, 
 	if of == nil || s.ctx.Err() != nil {
 		return
 	}
-	if s.surveyor == nil || s.surveyed != of {
+	if s.surveyor == nil || s.surveyed != of && !run.OnlyWeighing(s.surveyed, of) {
 		s.surveyor = run.NewSurveyor(of, s.cfg.Params, run.StoreLoader(s.study.Store()), &keeping{store: s.study.Store()})
 		s.surveyed = of
 	}

@@ -3,6 +3,7 @@ package live
 import (
 	"context"
 	"errors"
+	"reflect"
 	"strconv"
 	"sync/atomic"
 	"testing"
@@ -131,10 +132,11 @@ func TestNewestStateWins(t *testing.T) {
 func TestStopAndGoOn(t *testing.T) {
 	s := start(t)
 	fill(t, s)
+	until(t, "it is at work", func() bool { _, busy := s.Work(); return busy })
 	s.StopComputing()
 	until(t, "nothing is at work", func() bool { _, busy := s.Work(); return !busy })
-	if v := s.View(); !v.Stopped && !v.Current {
-		t.Error("the view does not say that it was stopped")
+	if v := s.View(); !v.Current && (!v.Stopped || v.Results != nil) {
+		t.Errorf("after a stop: stopped %v, results %v", v.Stopped, v.Results != nil)
 	}
 	s.Compute()
 	until(t, "it is computed", current(s))
@@ -204,5 +206,59 @@ func TestWeigherNewestWins(t *testing.T) {
 	case r := <-last:
 		t.Errorf("after the last weights came %v", r.Raw)
 	case <-time.After(20 * time.Millisecond):
+	}
+}
+
+// Notices are those of the state shown, also when only voices changed since, and after an undo.
+func TestNoticesFollowTheState(t *testing.T) {
+	s := start(t)
+	fill(t, s)
+	do(t, s, set("voice.idle.title", "Idle"))
+	until(t, "it is computed", current(s))
+	has := func(code string) bool {
+		for _, n := range s.View().Notices {
+			if n.Code == code {
+				return true
+			}
+		}
+		return false
+	}
+	until(t, "the idle voice is noticed", func() bool { return has("voice_unusable") })
+	do(t, s, set("voice.idle.weight.net_share", "5"))
+	until(t, "it is computed", current(s))
+	if has("voice_unusable") {
+		t.Error("a voice that weighs something is still said to weigh nothing")
+	}
+	do(t, s, func(ctx context.Context, st *study.Study) error { return st.RemoveLayer(ctx, "Parcels", "") })
+	do(t, s, func(ctx context.Context, st *study.Study) error { _, err := st.Undo(ctx); return err })
+	until(t, "it is computed", current(s))
+	snap, err := s.Study().Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	want, err := run.Check(context.Background(), s.Study().Store(), snap, parts.Params)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got := s.View().Notices; !reflect.DeepEqual(got, want) {
+		t.Errorf("%d notices are shown, the state has %d", len(got), len(want))
+	}
+}
+
+// An edit that comes too late is refused and says so; closing again waits for the first closing.
+func TestAfterClosing(t *testing.T) {
+	s := start(t)
+	fill(t, s)
+	done := make(chan error, 2)
+	for range 2 {
+		go func() { done <- s.Close() }()
+	}
+	for range 2 {
+		if err := <-done; err != nil {
+			t.Error(err)
+		}
+	}
+	if err := try(s, set("study.name", "late")); !errors.Is(err, ErrClosed) {
+		t.Errorf("a late edit gives %v", err)
 	}
 }

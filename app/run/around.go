@@ -144,8 +144,9 @@ func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value,
 		for m := range out {
 			out[m] = scoring.Num(y.MonthKWhPerKWp[m] * c.Fit.SolarKW / units.KWhPerMWh)
 		}
+		return out, nil
 	}
-	return out, nil
+	return out, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
 }
 
 // ground takes the stored ground of a site, or computes it.

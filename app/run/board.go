@@ -24,6 +24,7 @@ type Board struct {
 	Unready map[string]error // keys that voices weigh but that have no usable scale, with the reason
 	IDs     []string         // by item: Candidate.ID, or NoSite for doing nothing
 	At      []int            // by item: candidate in the results, -1 for doing nothing
+	ItemOf  []int32          // by candidate: its item, -1 for one that is not ordered
 	Held    []string         // candidates that a gate holds back
 
 	board *weigh.Board
@@ -46,6 +47,15 @@ func NewBoard(snap *study.Snapshot, p *Params, r *Results) (*Board, error) {
 		return nil, err
 	}
 	b.At, b.Held = at, held
+	b.ItemOf = make([]int32, len(r.Candidates))
+	for i := range b.ItemOf {
+		b.ItemOf[i] = -1
+	}
+	for item, c := range at {
+		if c >= 0 {
+			b.ItemOf[c] = int32(item)
+		}
+	}
 	b.IDs = make([]string, len(items))
 	for i := range items {
 		b.IDs[i] = items[i].ID

@@ -202,6 +202,12 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 	if len(snap.Plants()) == 0 {
 		out = append(out, geo.Notice{Code: "no_plants", Severity: geo.Fault})
 	}
+	return append(out, VoiceNotices(snap, p)...), nil
+}
+
+// VoiceNotices lists the notices on the voices of a state of a study, the last ones that Check gives.
+func VoiceNotices(snap *study.Snapshot, p *Params) []geo.Notice {
+	var out []geo.Notice
 	for _, v := range snap.Voices() {
 		_, ns, err := scales(snap, p, v)
 		if err != nil {
@@ -210,7 +216,7 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 		}
 		out = append(out, ns...)
 	}
-	return out, nil
+	return out
 }
 
 // StoreLoader reads layer contents from a store, each once.

@@ -502,7 +502,7 @@ func TestSession(t *testing.T) {
 	w.until("the voices are listed", answers, func(s state) bool { return s.Over == 1 })
 	w.hands("key", "--delay", "40", "Down", "Down", "Return")
 	before := w.until("the order is another voice's", answers, func(s state) bool {
-		return s.Over == 0 && s.Voice != "" && s.Voice != undone.Voice && s.First != "" && s.Map
+		return s.Over == 0 && s.Voice != "" && s.Voice != undone.Voice && s.First != "" && s.First != undone.First && s.Map
 	})
 	w.wait("the choice is kept", answers, func() bool {
 		kept, err := os.ReadFile(filepath.Join(d.home, "config", "fyne", "groundtally", "preferences.json"))
@@ -528,11 +528,13 @@ func TestSession(t *testing.T) {
 	w.shoot("again-dark")
 	begun = time.Now()
 	w.click(atGoOn)
-	found := w.until("the study is open with its results", cold, func(s state) bool { return s.Current && s.First != "" && s.Map })
+	found := w.until("the study is open with its results and in its order", max(cold, answers), func(s state) bool {
+		return s.Current && s.First == before.First && s.Map
+	})
 	if took := time.Since(begun); took > cold/2 {
 		t.Errorf("opened again the study was there after %v, at first after %v; were its results not kept?", took, cold)
 	}
-	if found.Study != before.Study || found.Layers != before.Layers || found.Journal != before.Journal || found.Voice != before.Voice || found.First != before.First || found.Stage != before.Stage {
+	if found.Study != before.Study || found.Layers != before.Layers || found.Journal != before.Journal || found.Voice != before.Voice || found.Stage != before.Stage {
 		t.Errorf("before it was killed the window told %+v, now it tells %+v", before, found)
 	}
 	if got := found.Stages["Appendix"]; !strings.HasPrefix(got[0], "made at") {

@@ -1,6 +1,7 @@
 package core
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -9,6 +10,7 @@ import (
 	"time"
 
 	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/dialog"
 
 	"groundtally/app/desk/theme"
 	"groundtally/app/draw"
@@ -58,8 +60,11 @@ type Core struct {
 	Session *live.Session
 	Theme   *theme.Theme
 
-	// Do runs something on the window's goroutine; the way back from any other.
+	// Do runs something on the window's goroutine; the way back from any other. What comes after another
+	// study was opened in the window falls away.
 	Do func(func())
+	// Always is Do for what must be said in any case, as that an edit was not saved.
+	Always func(func())
 
 	// Hooks that the window sets.
 	ShowParcels func(ids []string)                          // brings parcels into view on the map and marks them
@@ -75,14 +80,33 @@ type Core struct {
 	chosen    []string
 	ranking   *live.Ranking
 	weigher   *live.Weigher
-	trying    []float64 // raw weights tried out and not saved; nil when those of the study hold
+	light     dialog.Dialog // that Escape closes
+	met       bool          // a first candidate was chosen for the user
+	trying    []float64     // raw weights tried out and not saved; nil when those of the study hold
 	listeners []func(Change)
 	info      map[string]run.KeyInfo
 }
 
+// Open shows a dialog that Escape closes.
+func (c *Core) Open(d dialog.Dialog) {
+	c.light = d
+	d.Show()
+}
+
+// CloseLight closes the dialog that Open showed last, when it is still there; it tells whether it was.
+func (c *Core) CloseLight() bool {
+	d := c.light
+	c.light = nil
+	if d == nil || c.Window.Canvas().Overlays().Top() == nil {
+		return false
+	}
+	d.Hide()
+	return true
+}
+
 // New makes the core of a window. The session's Notify must lead to Update on the window's goroutine.
 func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core {
-	c := &Core{App: a, Window: w, Parts: parts, Theme: th, Do: fyne.Do, info: map[string]run.KeyInfo{}}
+	c := &Core{App: a, Window: w, Parts: parts, Theme: th, Do: fyne.Do, Always: fyne.Do, info: map[string]run.KeyInfo{}}
 	for _, k := range parts.Params.Keys() {
 		c.info[k.Key] = k
 	}
@@ -94,10 +118,9 @@ func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core
 	return c
 }
 
-// Attach puts a session in place of the one before.
+// Attach gives the core its session. A core has one session for all its life.
 func (c *Core) Attach(s *live.Session) {
 	c.Session = s
-	c.view, c.ranking, c.trying, c.chosen, c.voice, c.shade = nil, nil, nil, nil, "", ""
 	c.Update()
 }
 
@@ -132,8 +155,8 @@ func (c *Core) Update() {
 			ch |= ShadeChanged
 		}
 		if old == nil || old.Board != v.Board || old.Snap != v.Snap {
-			if c.trying != nil && v.Board != nil && len(c.trying) != len(v.Board.Keys) {
-				c.trying = nil
+			if c.trying != nil && (old == nil || old.Board == nil || v.Board == nil || !slices.EqualFunc(old.Board.Keys, v.Board.Keys, func(a, b run.BoardKey) bool { return a.Info.Key == b.Info.Key })) {
+				c.trying = nil // they are weights of other consequences
 			}
 			c.rank()
 		}
@@ -168,7 +191,8 @@ func (c *Core) ranked(r *live.Ranking) {
 	}
 	c.ranking = r
 	ch := RankingChanged
-	if len(c.chosen) == 0 && r.Err == nil { // the first of the order is what a user wants to see first
+	if !c.met && r.Err == nil { // the first of the order is what a user wants to see first
+		c.met = true
 		for _, item := range r.Standing.Order {
 			if at := r.Board.At[item]; at >= 0 {
 				c.chosen = []string{r.Board.IDs[item]}
@@ -182,8 +206,8 @@ func (c *Core) ranked(r *live.Ranking) {
 
 // Ranking gives the order under the weights shown; nil as long as there is none.
 func (c *Core) Ranking() *live.Ranking {
-	if c.ranking == nil || c.view == nil || c.ranking.Board != c.view.Board {
-		return nil // of results that are no longer the present ones
+	if c.ranking == nil || c.view == nil || c.ranking.Board != c.view.Board || c.ranking.Voice != c.voice {
+		return nil // of results that are no longer the present ones, or of another voice
 	}
 	return c.ranking
 }
@@ -264,27 +288,37 @@ func (c *Core) SaveWeights() {
 	if c.trying == nil {
 		return
 	}
-	saved := c.view.Board.Raw(c.view.Snap, c.voice)
-	var edits []study.SettingEdit
-	for i, k := range c.view.Board.Keys {
-		if i < len(saved) && saved[i] != c.trying[i] {
-			edits = append(edits, study.SettingEdit{Key: "voice." + c.voice + ".weight." + k.Info.Key, Value: fmt.Sprintf("%g", c.trying[i]), Reason: "set in the window"})
+	// What differs is found where the edits are made: those asked for before may not be in the view yet.
+	tried, voice, keys := slices.Clone(c.trying), c.voice, c.view.Board.Keys
+	c.Session.Edit(func(ctx context.Context, st *study.Study) error {
+		snap, err := st.Snapshot()
+		if err != nil {
+			return err
 		}
-	}
-	if len(edits) == 0 {
-		c.Back()
-		return
-	}
-	tried := c.trying
-	c.Session.Set("weights of "+c.VoiceTitle(c.voice), func(err error) {
-		c.Do(func() {
-			if err == nil && slices.Equal(c.trying, tried) { // the user may drag on meanwhile
-				c.trying = nil
+		var edits []study.SettingEdit
+		for i, k := range keys {
+			key := "voice." + voice + ".weight." + k.Info.Key
+			if x, _ := snap.Number(key); x != tried[i] {
+				edits = append(edits, study.SettingEdit{Key: key, Value: fmt.Sprintf("%g", tried[i]), Reason: "set in the window"})
 			}
-			c.Update() // weights that could not be saved stay what they are: tried out
-			c.Fail("save the weights", err)
+		}
+		if len(edits) == 0 {
+			return nil
+		}
+		title := snap.Text("voice." + voice + ".title")
+		_, err = st.Set(ctx, "set", "weights of "+cmp.Or(title, voice), edits...)
+		return err
+	}, func(err error) {
+		c.Do(func() {
+			c.Update()
+			if err == nil && slices.Equal(c.trying, tried) { // the user may drag on meanwhile
+				c.Back()
+			} // weights that could not be saved stay what they are: tried out
 		})
-	}, edits...)
+		if err != nil {
+			c.Always(func() { c.Fail("save the weights", err) })
+		}
+	})
 }
 
 // Shade gives the consequence that shades the map; empty for the score.
@@ -425,9 +459,12 @@ func (c *Core) Palette() draw.Palette { return c.Theme.Palette(c.App.Settings().
 // goroutine after it was saved.
 func (c *Core) Edit(what string, do func(ctx context.Context, s *study.Study) error, then func()) {
 	c.Session.Edit(do, func(err error) {
+		if err != nil {
+			c.Always(func() { c.Fail(what, err) })
+		}
 		c.Do(func() {
 			c.Update()
-			if c.Fail(what, err); err == nil && then != nil {
+			if err == nil && then != nil {
 				then()
 			}
 		})

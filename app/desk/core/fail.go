@@ -34,7 +34,7 @@ func (c *Core) Fail(what string, err error) {
 	}
 	d := dialog.NewCustom(fmt.Sprintf("Could not %s", strings.TrimSuffix(what, ".")), "Close", body, c.Window)
 	d.Resize(fyne.NewSize(520, 180))
-	d.Show()
+	c.Open(d)
 }
 
 // confirm asks a question and does what follows when the answer is yes.
@@ -47,5 +47,5 @@ func (c *Core) confirm(title, words, yes string, then func()) {
 		}
 	}, c.Window)
 	d.Resize(fyne.NewSize(460, 170))
-	d.Show()
+	c.Open(d)
 }

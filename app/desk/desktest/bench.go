@@ -107,7 +107,7 @@ func Over(t testing.TB, store study.Store) *Bench {
 	b.Window = test.NewTempWindow(t, nil)
 	b.Window.SetPadded(false)
 	b.Core = core.New(b.App, b.Window, parts, b.Theme)
-	b.Core.Do = b.Queue.Do
+	b.Core.Do, b.Core.Always = b.Queue.Do, b.Queue.Do
 	s, err := live.Start(context.Background(), store, live.Config{Catalog: parts.Catalog, Params: parts.Params, Who: "Tester", Clock: clock(), Notify: func() { b.Queue.Do(b.Core.Update) }})
 	if err != nil {
 		t.Fatal(err)

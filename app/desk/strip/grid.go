@@ -133,7 +133,7 @@ func valueOf(c *core.Core, cand *run.Candidate, k run.KeyInfo) value {
 		}
 		if slices.Contains(cand.OverLimit, k.Key) {
 			out.warm, out.word = true, "over"
-			if x, ok := c.View().Snap.Number("limit." + k.Key); ok {
+			if x, ok := c.View().Of.Number("limit." + k.Key); ok { // as it stood when it was computed
 				out.word = "over " + present.Figure(x, x, x)
 			}
 		}

@@ -145,16 +145,18 @@ func (s *Strip) score(cand *run.Candidate, short bool) string {
 	if r == nil || r.Err != nil {
 		return "no order yet"
 	}
-	for item, id := range r.Board.IDs {
-		if id == cand.ID() {
-			st := &r.Standing
-			if short {
-				return fmt.Sprintf("place %d, %.2f", st.Place[item], st.Score[item])
-			}
-			return fmt.Sprintf("place %d, score %.2f (%.2f to %.2f)", st.Place[item], st.Score[item], st.Low[item], st.High[item])
-		}
+	item := int32(-1)
+	if at, ok := s.c.View().Index.ByID[cand.ID()]; ok {
+		item = r.Board.ItemOf[at]
 	}
-	return "held back by a gate"
+	st := &r.Standing
+	switch {
+	case item < 0:
+		return "held back by a gate"
+	case short:
+		return fmt.Sprintf("place %d, %.2f", st.Place[item], st.Score[item])
+	}
+	return fmt.Sprintf("place %d, score %.2f (%.2f to %.2f)", st.Place[item], st.Score[item], st.Low[item], st.High[item])
 }
 
 func (s *Strip) nothing() (string, bool) {

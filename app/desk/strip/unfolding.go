@@ -27,15 +27,16 @@ type row struct {
 // unfolding shows a consequence with its formula, inputs, sources, uncertainty, down to facts and cited
 // factors.
 type unfolding struct {
-	c     *core.Core
-	key   string
-	at    int
-	round int // of the newest question; older answers are dropped
-	rows  []row
-	title *widgets.Line
-	sub   *widgets.Line
-	list  *widget.List
-	all   fyne.CanvasObject
+	c                 *core.Core
+	key               string
+	at                int
+	round             int // of the newest question; older answers are dropped
+	shownKey, shownID string
+	rows              []row
+	title             *widgets.Line
+	sub               *widgets.Line
+	list              *widget.List
+	all               fyne.CanvasObject
 }
 
 func newUnfolding(c *core.Core, fold func()) *unfolding {
@@ -89,7 +90,10 @@ func (u *unfolding) refill() {
 			}
 			u.rows = rows
 			u.list.Refresh()
-			u.list.ScrollToTop()
+			if key != u.shownKey || cand.ID() != u.shownID {
+				u.shownKey, u.shownID = key, cand.ID()
+				u.list.ScrollToTop()
+			}
 		})
 	}()
 }
@@ -104,7 +108,7 @@ func more(cand *run.Candidate, key string) []row {
 	for _, n := range q.Notices {
 		out[0].source = strings.TrimSpace(out[0].source + " " + present.Sentence(n, nil))
 	}
-	if key == "buildable_area_ha" {
+	if key == "buildable_area_ha" && q.State == scoring.Number {
 		for _, t := range cand.Taken {
 			out = append(out, row{depth: 1, title: "Taken by " + present.Rule(t.Rule), value: present.Exact(t.AloneHa) + " ha alone, " + present.Exact(t.SharedHa) + " ha shared with other rules"})
 		}

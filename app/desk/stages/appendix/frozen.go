@@ -33,6 +33,7 @@ type frozenPane struct {
 	verdict *verdict
 
 	waiting string // name under which the present state is frozen once it is computed
+	wanted  *study.Snapshot
 	shown   []study.Frozen
 }
 
@@ -71,6 +72,10 @@ func (p *frozenPane) changed() {
 		p.head.Set(core.Counted(len(p.shown), "frozen state", "frozen states"))
 	}
 	p.list.Refresh()
+	if p.waiting != "" && p.wanted != v.Snap {
+		p.s.c.Tell("The study was changed, so the state that was to be frozen is gone. Freeze it again.")
+		p.waiting = ""
+	}
 	switch {
 	case p.waiting != "" && v.Results != nil && v.Current:
 		name := p.waiting
@@ -98,7 +103,7 @@ func (p *frozenPane) ask() {
 	if name == "" || p.waiting != "" {
 		return
 	}
-	p.waiting = name
+	p.waiting, p.wanted = name, p.s.c.View().Snap
 	if p.s.c.View().Stopped {
 		p.s.c.Session.Compute()
 	}

@@ -330,6 +330,10 @@ func (p *makePane) doVerify() {
 			}
 			return
 		}
+		if s.c.View().Snap != v.Snap {
+			s.c.Tell("The study was changed meanwhile, so the verdict is not on the present state. Verify again.")
+			return
+		}
 		p.verdict.show(s.c, found)
 	})
 }

@@ -421,7 +421,8 @@ func (f *form) add() {
 	var rec study.LayerRecord
 	var failed error
 	parts := f.s.c.Parts
-	f.s.c.Edit("add the layer", func(ctx context.Context, s *study.Study) error {
+	c := f.s.c
+	c.Session.Edit(func(ctx context.Context, s *study.Study) error {
 		ctx, cancel := context.WithCancel(ctx)
 		defer cancel()
 		defer context.AfterFunc(stopped, cancel)()
@@ -429,7 +430,12 @@ func (f *form) add() {
 		defer done()
 		rec, failed = s.AddLayer(ctx, in, tools)
 		return nil // shown in the form, so that no answer is lost
-	}, func() { f.added(rec, failed) })
+	}, func(err error) { // told whatever happened, since the form waits for it
+		c.Do(func() {
+			c.Update()
+			f.added(rec, errors.Join(failed, err))
+		})
+	})
 }
 
 func (f *form) added(rec study.LayerRecord, err error) {

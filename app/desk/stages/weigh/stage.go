@@ -307,11 +307,8 @@ func (s *stage) save() {
 
 // back drops the weights tried out.
 func (s *stage) back() {
-	if v := s.c.View(); s.c.Trying() && v.Board != nil {
-		s.c.Try(v.Board.Raw(v.Snap, s.c.Voice()))
-		s.c.SaveWeights() // nothing differs, so nothing is saved
-		s.Changed(core.RankingChanged)
-	}
+	s.c.Back()
+	s.Changed(core.RankingChanged)
 }
 
 func unreadyWords(err error) string {
