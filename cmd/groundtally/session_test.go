@@ -292,6 +292,27 @@ func ruleAdd(img *image.RGBA) (at image.Point, ok bool) {
 	return image.Point{}, false
 }
 
+// findRuleAdd wheels through the rules until the form for one more distance is there, and stays where it is.
+func (w *window) findRuleAdd() image.Point {
+	w.t.Helper()
+	for range 40 {
+		at, ok := ruleAdd(w.still())
+		if ok {
+			// On a busy machine the picture may lag behind the wheel.
+			time.Sleep(time.Second)
+			if again, still := ruleAdd(w.still()); still && again == at {
+				return at
+			}
+			continue
+		}
+		before := w.frame()
+		w.hands("click", "--repeat", "4", "--delay", "10", "5")
+		w.wait("the rules move", answers, func() bool { return !bytes.Equal(before.Pix, w.frame().Pix) })
+	}
+	w.fatal("the rules have no form for one more distance")
+	return image.Point{}
+}
+
 // parcelWithCandidate finds a spot on the map well inside a parcel with a high score, east of the middle: the
 // dark colours are the high ones, and the parcel that leads lies west of it.
 func parcelWithCandidate(img *image.RGBA) (at image.Point, ok bool) {
@@ -394,14 +415,7 @@ func TestSession(t *testing.T) {
 	w.stage(2, "Plant")
 	w.click(atRulesTab)
 	w.hands(to(atRulesMargin)...)
-	add, ok := ruleAdd(w.still())
-	for n := 0; !ok && n < 40; n++ {
-		w.hands("click", "--repeat", "4", "--delay", "10", "5")
-		add, ok = ruleAdd(w.still())
-	}
-	if !ok {
-		w.fatal("the rules have no form for one more distance")
-	}
+	add := w.findRuleAdd()
 	w.click(add.Add(fromAddToFrom))
 	w.until("the list of what a distance is kept from is open", answers, func(s state) bool { return s.Over == 1 })
 	keys := []string{"key", "--delay", "40"}
