@@ -54,7 +54,7 @@ func newBar(w *Window) *bar {
 	}
 	left := container.New(layout.NewCustomPaddedHBoxLayout(12), files, container.NewCenter(b.name), container.NewCenter(b.size))
 	right := container.New(layout.NewCustomPaddedHBoxLayout(8), container.NewCenter(widgets.Faint("Voice").Hinted("One group's weights and value scales. Map, order and scores follow the voice chosen here.").Wide()),
-		container.NewGridWrap(fyne.NewSize(170, 31), b.voice), container.NewGridWrap(fyne.NewSize(170, 31), b.find), b.undo, b.redo, container.NewCenter(b.saved))
+		container.NewCenter(container.NewGridWrap(fyne.NewSize(170, b.voice.MinSize().Height), b.voice)), container.NewCenter(container.NewGridWrap(fyne.NewSize(170, b.find.MinSize().Height), b.find)), b.undo, b.redo, container.NewCenter(b.saved))
 	b.left, b.right = left, right
 	b.all = container.NewVBox(container.New(layout.NewCustomPaddedLayout(4, 3, 8, 14), container.NewBorder(nil, nil, nil, right, container.NewHScroll(left))), widget.NewSeparator())
 	return b

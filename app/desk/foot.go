@@ -36,7 +36,7 @@ func newFoot(w *Window) *foot {
 	f.stop.Importance, f.resume.Importance = widget.LowImportance, widget.LowImportance
 	f.working = container.New(layout.NewCustomPaddedHBoxLayout(6), container.NewGridWrap(fyne.NewSize(220, 14), f.bar), f.stop)
 	row := container.NewBorder(nil, nil, nil, container.NewHBox(container.NewCenter(f.working), f.resume), f.words)
-	f.all = container.NewVBox(widget.NewSeparator(), container.New(layout.NewCustomPaddedLayout(0, 0, 12, 8), container.NewStack(container.NewGridWrap(fyne.NewSize(1, 26)), row)))
+	f.all = container.NewVBox(widget.NewSeparator(), container.New(layout.NewCustomPaddedLayout(0, 0, 12, 8), container.NewStack(container.NewGridWrap(fyne.NewSize(1, f.stop.MinSize().Height)), row)))
 	return f
 }
 

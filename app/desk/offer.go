@@ -38,8 +38,7 @@ func (w *Window) offer(err error, path string) {
 	}
 	var first fyne.Focusable
 	add := func(icon fyne.Resource, words, detail string, do func()) {
-		b := widget.NewButtonWithIcon(words, icon, do)
-		b.Alignment = widget.ButtonAlignLeading
+		b := widgets.NewEnterButton(words, icon, do)
 		if first == nil {
 			b.Importance, first = widget.HighImportance, b
 		}

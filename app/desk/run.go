@@ -223,7 +223,7 @@ func (t *tail) String() string {
 func window(sample bool, path string) int {
 	program.UseCores()
 	if os.Getenv("GOGC") == "" {
-		debug.SetGCPercent(40) // a window shares its machine with other programs
+		debug.SetGCPercent(25) // a window shares its machine with other programs
 	}
 	parts, err := program.Load()
 	if err != nil {

@@ -54,10 +54,11 @@ type Window struct {
 	clock  func() time.Time
 	do     func(func()) // runs something on the window's goroutine
 
-	stages []core.Stage
-	panes  []fyne.CanvasObject
-	at     int
-	ground *ground.Stage
+	stages  []core.Stage
+	panes   []fyne.CanvasObject
+	oldLook []bool // by stage: it was hidden when the look changed
+	at      int
+	ground  *ground.Stage
 
 	rail    *rail
 	bar     *bar
@@ -108,7 +109,7 @@ func (w *Window) build() {
 	c.Always = w.do
 	w.ground = ground.New(c)
 	w.stages = []core.Stage{w.ground, plant.New(c), accounts.New(c), weigh.New(c), appendix.New(c)}
-	w.panes = make([]fyne.CanvasObject, len(w.stages))
+	w.panes, w.oldLook = make([]fyne.CanvasObject, len(w.stages)), make([]bool, len(w.stages))
 	c.ShowStage = func(title string) {
 		if i := slices.IndexFunc(w.stages, func(s core.Stage) bool { return s.Title() == title }); i >= 0 {
 			w.choose(i)
@@ -148,6 +149,10 @@ func (w *Window) choose(i int) {
 		return
 	}
 	w.at = i
+	if w.oldLook[i] && w.panes[i] != nil { // the toolkit gives new colours to what is shown alone
+		w.panes[i].Refresh()
+	}
+	w.oldLook[i] = false
 	w.bubble.explain(nil, "", fyne.Position{})
 	if w.panes[i] == nil {
 		w.panes[i] = w.stages[i].Content()
@@ -160,6 +165,11 @@ func (w *Window) choose(i int) {
 
 // changed follows the core.
 func (w *Window) changed(ch core.Change) {
+	if ch&core.LookChanged != 0 {
+		for i := range w.oldLook {
+			w.oldLook[i] = i != w.at
+		}
+	}
 	for _, s := range w.stages {
 		s.Changed(ch)
 	}

@@ -314,6 +314,9 @@ func contents(snap *study.Snapshot) string {
 	return out
 }
 
+// afterwards is when whoever shows results has looked at them.
+const afterwards = 4 * time.Second
+
 func (s *Session) computing() {
 	defer s.group.Done()
 	for {
@@ -354,7 +357,9 @@ func (s *Session) computing() {
 		s.poke() // the state may have changed meanwhile
 		s.cfg.Notify()
 		if found.computed {
-			debug.FreeOSMemory() // computing leaves several times the memory that its results need
+			// Computing leaves several times the memory that its results need, and so does showing them first.
+			debug.FreeOSMemory()
+			time.AfterFunc(afterwards, debug.FreeOSMemory)
 		}
 	}
 }

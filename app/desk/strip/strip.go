@@ -124,7 +124,7 @@ func (s *Strip) head() {
 	if nothing, ok := s.nothing(); ok {
 		s.names.Add(widgets.Faint("doing nothing: " + nothing).Hinted("Doing nothing spares every burden and brings no gain. It is weighed like any candidate.").Wide())
 	}
-	if len(chosen) < 3 {
+	if len(chosen) == 1 {
 		s.names.Add(widgets.Faint("Ctrl-click adds another").Wide())
 	}
 	if v != nil && !v.Current {

@@ -68,7 +68,7 @@ func PairBars(in Pair, p draw.Palette, width float64) *draw.Scene {
 	}
 	right := s.Width - pad
 	middle := (left + right) / 2
-	label := draw.TextWidth("+"+figures.text(0), small, true) + 6
+	label := math.Max(draw.TextWidth("+"+figures.text(0), small, true), draw.TextWidth("unknown", small, false)) + 6
 	half := (right-left)/2 - label
 	y += 8
 	s.write(middle-gap, y, "A better", small, p.Faint, draw.End)
@@ -164,7 +164,11 @@ func (s *sheet) difference(d, middle, scale, y, height float64, colour string, u
 	if unknown {
 		st, w = s.unknown(), math.Max(w, 10)
 	}
-	if text := figures.text(math.Abs(d)); d >= 0 {
+	text := figures.text(math.Abs(d))
+	if unknown && math.Abs(d) < figures.least() {
+		text = "unknown"
+	}
+	if d >= 0 {
 		s.Bar(middle-w, y, w, height, st, item, title)
 		s.write(middle-w-5, y+height/2+3.8, text, small, s.p.Ink, draw.End)
 	} else {

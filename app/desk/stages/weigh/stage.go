@@ -144,7 +144,7 @@ func (s *stage) State() (first, second string, warn bool) {
 		if top.Site == run.NoSite {
 			name = "Doing nothing"
 		}
-		return first, fmt.Sprintf("%s first in %s of 100 weight mixes", name, share100(top.FirstIn100)), false
+		return first, fmt.Sprintf("%s: %s of 100 mixes", name, share100(top.FirstIn100)), false
 	}
 	return first, "", false
 }

@@ -508,7 +508,7 @@ func TestState(t *testing.T) {
 	b, s := open(t, 60, 520, 480)
 	first, second, warn := s.State()
 	o := b.Core.Order()
-	if !strings.HasPrefix(first, "3 voices, ") || !strings.Contains(second, o.Order[0].Site+" first in ") || warn {
+	if !strings.HasPrefix(first, "3 voices, ") || !strings.Contains(second, o.Order[0].Site+": ") || warn {
 		t.Errorf("%q, %q, %v", first, second, warn)
 	}
 	raw := b.Core.Raw()
