@@ -131,8 +131,8 @@ func (p *picture) options() {
 // renew makes the ground of the map anew when layers changed, in the background; the newest counts.
 func (p *picture) renew() {
 	v := p.w.core.View()
-	if v.Contents == p.contents {
-		return
+	if v.Contents == p.contents || p.making != nil && p.ground == nil {
+		return // the first ground is shown before newer layers, which may come faster than it is made
 	}
 	p.contents = v.Contents
 	if p.making != nil {
@@ -167,6 +167,7 @@ func (p *picture) renew() {
 				return
 			}
 			cancel()
+			p.making = nil
 			if err != nil {
 				p.contents = "" // so that the next change tries again
 				p.w.core.Fail("draw the map", err)
@@ -182,6 +183,7 @@ func (p *picture) renew() {
 			p.colour()
 			p.mark()
 			p.release()
+			p.renew() // layers that came meanwhile
 		})
 	}()
 }
