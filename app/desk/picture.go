@@ -52,10 +52,13 @@ type picture struct {
 	of       *run.Results
 }
 
+// tileBytes is the memory for tiles beyond those in view. Drawing one anew takes a millisecond or two.
+const tileBytes = 24 << 20
+
 func newPicture(w *Window) *picture {
 	p := &picture{w: w, around: map[string]*run.Surroundings{}}
 	p.life, p.stop = context.WithCancel(context.Background())
-	p.m = mapview.New(mapview.Options{Do: w.do})
+	p.m = mapview.New(mapview.Options{Do: w.do, MaxTileBytes: tileBytes})
 	p.m.OnSelect = func(parcel string, add bool) {
 		if parcel == "" {
 			w.core.Choose()

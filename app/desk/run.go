@@ -222,9 +222,6 @@ func (t *tail) String() string {
 // window opens the window and stays until it is closed.
 func window(sample bool, path string) int {
 	program.UseCores()
-	if os.Getenv("GOGC") == "" {
-		debug.SetGCPercent(25) // a window shares its machine with other programs
-	}
 	parts, err := program.Load()
 	if err != nil {
 		fmt.Fprintln(os.Stderr, err)
@@ -232,6 +229,12 @@ func window(sample bool, path string) int {
 	}
 	a := fyneapp.NewWithID(AppID)
 	w := New(a, parts)
+	if os.Getenv("GOGC") == "" {
+		// A window shares its machine with other programs: at rest it keeps little more than it needs. While
+		// it computes it may have more, since collecting so often would cost time.
+		w.Busy = func(busy bool) { debug.SetGCPercent(map[bool]int{true: 60, false: 12}[busy]) }
+		w.Busy(false)
+	}
 	w.window.Show()
 	if !there(w.window) {
 		return exitUnexpected // the toolkit has said why; left to itself it would run on without a window

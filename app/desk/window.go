@@ -74,6 +74,8 @@ type Window struct {
 	held    map[string]func() // what the keys of the window do, by shortcut
 	round   int               // of the newest opening
 	closing bool
+	// Busy, which may be nil, is told when computing begins and when it ends.
+	Busy    func(bool)
 	locked  string      // the study's file when it can be read only
 	pending atomic.Bool // an update of the core waits for its turn
 }
@@ -229,7 +231,7 @@ const mapFirst = 2 * time.Second
 
 // start opens a session over a store, off the window's goroutine, and shows it.
 func (w *Window) start(store study.Store, round int, then func(s *live.Session)) error {
-	s, err := live.Start(context.Background(), store, live.Config{Catalog: w.parts.Catalog, Params: w.parts.Params, Who: w.parts.Who, Clock: w.clock, Wait: true, Notify: func() {
+	s, err := live.Start(context.Background(), store, live.Config{Catalog: w.parts.Catalog, Params: w.parts.Params, Who: w.parts.Who, Clock: w.clock, Wait: true, Busy: w.Busy, Notify: func() {
 		w.notify()
 	}})
 	if err != nil {

@@ -52,6 +52,8 @@ type Config struct {
 	Clock   func() time.Time
 	Cores   int // 0 takes all
 	Notify  func()
+	// Busy, which may be nil, is told when computing begins and when it ends.
+	Busy func(bool)
 	// Wait keeps the first computing back until Release is called, so that a window can show its map first.
 	Wait bool
 }
@@ -336,7 +338,9 @@ func (s *Session) computing() {
 		s.mu.Unlock()
 		s.cfg.Notify()
 		var found found
+		s.busy(true)
 		err := guarded(func() error { return s.compute(ctx, v, &found) })
+		s.busy(false)
 		cancel()
 		s.mu.Lock()
 		s.cancelRun, s.work = nil, nil
@@ -361,6 +365,12 @@ func (s *Session) computing() {
 			debug.FreeOSMemory()
 			time.AfterFunc(afterwards, debug.FreeOSMemory)
 		}
+	}
+}
+
+func (s *Session) busy(yes bool) {
+	if s.cfg.Busy != nil {
+		s.cfg.Busy(yes)
 	}
 }
 
