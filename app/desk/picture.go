@@ -273,7 +273,10 @@ func (j *shadeJob) do() shaded {
 		out.title = "Nothing is computed yet"
 		return out
 	}
-	best := j.bestOfSites()
+	best := make([]int, len(x.Sites))
+	for site := range best {
+		best[site] = j.view.Best(j.ranking, site)
+	}
 	values := make([]float64, n)
 	known := make([]bool, n)
 	anyUnknown, anyOver, anyBare, anyNotComputed, anyNone := false, false, false, false, false
@@ -350,29 +353,6 @@ func (j *shadeJob) do() shaded {
 		out.title = j.info.Title
 	}
 	return out
-}
-
-// bestOfSites gives the candidate of every site that stands highest, else its first fitted one; -1 for a
-// site without any.
-func (j *shadeJob) bestOfSites() []int {
-	x := j.view.Index
-	best := make([]int, len(x.Sites))
-	r := j.ranking
-	ranked := r != nil && r.Err == nil && r.Index == x
-	for s := range best {
-		best[s] = -1
-		if ranked && r.Best[s] >= 0 {
-			best[s] = r.Board.At[r.Best[s]]
-			continue
-		}
-		for _, c := range x.Candidates[s] {
-			if j.view.Results.Candidates[c].Status == run.Fitted {
-				best[s] = c
-				break
-			}
-		}
-	}
-	return best
 }
 
 // value gives what a site is coloured by, or the state that stands in its place; None stands for a site

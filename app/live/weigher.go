@@ -76,3 +76,17 @@ func (r *Ranking) Rank() {
 		}
 	}
 }
+
+// Best gives the candidate of a site that stands highest in an order of the view's results, else the first
+// fitted one; -1 for a site without any. The order may be nil.
+func (v *View) Best(r *Ranking, site int) int {
+	if r != nil && r.Err == nil && r.Index == v.Index && r.Best[site] >= 0 {
+		return r.Board.At[r.Best[site]]
+	}
+	for _, c := range v.Index.Candidates[site] {
+		if v.Results.Candidates[c].Status == run.Fitted {
+			return c
+		}
+	}
+	return -1
+}

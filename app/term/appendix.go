@@ -1,18 +1,15 @@
 package term
 
 import (
-	"encoding/json"
 	"errors"
 	"fmt"
 	"io/fs"
 	"os"
-	"path/filepath"
 	"slices"
 	"strings"
 	"syscall"
 
 	"groundtally/app/appendix"
-	"groundtally/app/run"
 	"groundtally/app/study"
 )
 
@@ -39,42 +36,23 @@ var verbAppendix = verb{
 				return 0, err
 			}
 			c.tell(r)
-			layers, err := appendix.MapLayers(c.ctx, snap, run.StoreLoader(s.Store()))
-			if err != nil {
-				return 0, err
-			}
-			notices, err := run.Check(c.ctx, s.Store(), snap, c.Params)
-			if err != nil {
-				return 0, err
-			}
 			journal, frozen, err := c.history(s)
 			if err != nil {
 				return 0, err
 			}
-			page, err := appendix.Page(appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Layers: layers, Notices: notices, Engines: c.Engines, Version: c.Version, Journal: journal, Frozen: frozen, Months: appendix.MonthsOf(c.ctx, snap, c.Params, s.Store())})
-			if err != nil {
-				return 0, err
-			}
 			folder := c.args.get("to")
-			if err := makeFolder(folder); err != nil {
+			if err := makeFolder(folder); err != nil { // first, for words on the option
 				return 0, err
 			}
-			code, err := json.MarshalIndent(appendix.NewStamp(r, c.Version), "", " ")
+			made, err := appendix.Make(c.ctx, appendix.Input{Snapshot: snap, Results: r, Params: c.Params, Engines: c.Engines, Version: c.Version, Journal: journal, Frozen: frozen}, s.Store(), folder, c.Write, nil)
 			if err != nil {
-				return 0, err
-			}
-			files := []string{filepath.Join(folder, "appendix.html"), filepath.Join(folder, appendix.StampFile)}
-			if err := c.Write(files[0], page); err != nil {
-				return 0, err
-			}
-			if err := c.Write(files[1], append(code, '\n')); err != nil {
 				return 0, err
 			}
 			if c.json {
-				c.printJSON(map[string]any{"study": c.args.places[0], "files": files, "code": r.Code})
+				c.printJSON(map[string]any{"study": c.args.places[0], "files": made.Files, "code": r.Code})
 				return ExitDone, nil
 			}
-			for _, f := range files {
+			for _, f := range made.Files {
 				c.say("wrote %s", f)
 			}
 			c.say("Check code %s", r.Code.Check)

@@ -382,20 +382,11 @@ func (c *Core) BestAt(site int) *run.Candidate {
 	if v == nil || v.Index == nil || site < 0 || site >= len(v.Index.Candidates) {
 		return nil
 	}
-	if r := c.Ranking(); r != nil && r.Err == nil && r.Best[site] >= 0 {
-		return &v.Results.Candidates[r.Board.At[r.Best[site]]]
+	at := v.Best(c.Ranking(), site)
+	if at < 0 {
+		at = v.Index.Candidates[site][0] // a site is there because it has a candidate
 	}
-	var first *run.Candidate
-	for _, i := range v.Index.Candidates[site] {
-		cand := &v.Results.Candidates[i]
-		if cand.Status == run.Fitted {
-			return cand
-		}
-		if first == nil {
-			first = cand
-		}
-	}
-	return first
+	return &v.Results.Candidates[at]
 }
 
 // ChooseParcel chooses the best candidate of the site that a parcel belongs to, or adds it.
