@@ -25,7 +25,7 @@ func (b *book) bars(rows []run.Row, keys []string, title string, index int) *dra
 		Title: fmt.Sprintf("Bar chart: scores under the voice %s, by part, for %d places; the same figures stand in the table below it", title, len(rows))}
 	colours := run.Categories(b.in.Snapshot, b.in.Params)
 	for _, k := range keys {
-		in.Keys = append(in.Keys, chart.ScoreKey{Category: colours[k], Title: b.title(k), Weight: rows[0].Parts[k].Weight})
+		in.Keys = append(in.Keys, chart.ScoreKey{Category: colours[k], Title: b.title(k), Weight: rows[0].Parts.Of(k).Weight})
 	}
 	for _, r := range rows {
 		row := chart.ScoreRow{Name: fmt.Sprintf("%d. %s", r.Place, b.candidateName(rowID(r))), Score: r.Score, Low: r.ScoreLow, High: r.ScoreHigh}
@@ -33,8 +33,8 @@ func (b *book) bars(rows []run.Row, keys []string, title string, index int) *dra
 			row.Over = "over the limit: " + b.titles(r.OverLimit)
 		}
 		for _, k := range keys {
-			p := r.Parts[k]
-			row.Parts = append(row.Parts, chart.ScorePart{Share: p.Share, Unknown: p.Value == nil})
+			p := r.Parts.Of(k)
+			row.Parts = append(row.Parts, chart.ScorePart{Share: p.Share, Unknown: !p.Known})
 		}
 		in.Rows = append(in.Rows, row)
 	}

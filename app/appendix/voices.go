@@ -51,12 +51,9 @@ func keysOf(v run.VoiceOrder) []string {
 		return nil
 	}
 	parts := v.Order[0].Parts
-	keys := make([]string, 0, len(parts))
-	for k := range parts {
-		keys = append(keys, k)
-	}
+	keys := slices.Clone(parts.Names())
 	sort.Slice(keys, func(i, j int) bool {
-		a, b := parts[keys[i]].Weight, parts[keys[j]].Weight
+		a, b := parts.Of(keys[i]).Weight, parts.Of(keys[j]).Weight
 		if a != b {
 			return a > b
 		}
@@ -79,11 +76,11 @@ func (b *book) voice(i int) voiceView {
 	}
 	keys := keysOf(v)
 	for j, k := range keys {
-		out.Weights = append(out.Weights, weightView{Number: j + 1, Title: b.title(k), Unit: present.UnitWords(b.info[k].Unit), Share: three(v.Order[0].Parts[k].Weight), Sentence: b.info[k].Sentence})
+		out.Weights = append(out.Weights, weightView{Number: j + 1, Title: b.title(k), Unit: present.UnitWords(b.info[k].Unit), Share: three(v.Order[0].Parts.Of(k).Weight), Sentence: b.info[k].Sentence})
 	}
 	var accounts []scoring.Account
 	for _, a := range scoring.Accounts() {
-		if _, ok := v.Order[0].Accounts[string(a)]; ok {
+		if _, ok := v.Order[0].Accounts.Find(string(a)); ok {
 			accounts = append(accounts, a)
 			out.Accounts = append(out.Accounts, string(a))
 		}
@@ -191,7 +188,7 @@ func (b *book) row(r run.Row, accounts []scoring.Account, same []string) rowView
 	out := rowView{Place: strconv.Itoa(r.Place), Tier: strconv.Itoa(r.Tier), Site: r.Site, Plant: b.plantTitle(r.Plant), ID: rowID(r), Score: three(r.Score), Span: three(r.ScoreLow) + " to " + three(r.ScoreHigh),
 		Ranks: fmt.Sprintf("%d to %d", r.RankBest, r.RankWorst), First: fmt.Sprintf("%.0f", r.FirstIn100), CanBe: r.CanBeFirst, Nothing: r.Site == run.NoSite, Unknown: len(r.Unknown) > 0}
 	for _, a := range accounts {
-		out.Accounts = append(out.Accounts, three(r.Accounts[string(a)]))
+		out.Accounts = append(out.Accounts, three(r.Accounts.Of(string(a))))
 	}
 	if len(r.OverLimit) > 0 {
 		out.Over = "over the limit: " + b.titles(r.OverLimit)

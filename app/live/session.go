@@ -85,6 +85,7 @@ type Session struct {
 	stopped   *study.Snapshot    // state that the user does not want computed
 	surveyor  *run.Surveyor      // of the state surveyed
 	surveyed  *study.Snapshot
+	rest      *time.Timer // lets the surveyor go
 	waiting   bool // for Release
 
 	// Of the computing goroutine alone: notices on data and settings, and the state that they are of.
@@ -477,6 +478,15 @@ func (s *Session) Months(c *run.Candidate, done func([12]scoring.Value, error)) 
 	survey(s, func(sv *run.Surveyor) ([12]scoring.Value, error) { return sv.Months(s.ctx, c) }, done)
 }
 
+// surveyRest is how long the layers that a surveyor has read are kept after it was last asked.
+const surveyRest = 20 * time.Second
+
+func (s *Session) release() {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	s.surveyor, s.surveyed = nil, nil
+}
+
 // survey asks the surveyor of the present results something on another goroutine. Nothing happens without
 // results.
 func survey[T any](s *Session, ask func(*run.Surveyor) (T, error), done func(T, error)) {
@@ -491,6 +501,10 @@ func survey[T any](s *Session, ask func(*run.Surveyor) (T, error), done func(T, 
 		s.surveyed = of
 	}
 	surveyor := s.surveyor
+	if s.rest == nil {
+		s.rest = time.AfterFunc(surveyRest, s.release)
+	}
+	s.rest.Reset(surveyRest)
 	s.group.Add(1)
 	go func() {
 		defer s.group.Done()

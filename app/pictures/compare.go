@@ -38,8 +38,8 @@ func Cloud(results *run.Results, keys [2]run.KeyInfo, better [2]chart.Better, pl
 func Pair(rows [2]run.Row, candidates [2]*run.Candidate, names [2]string, keys []run.KeyInfo, title, id string) chart.Pair {
 	out := chart.Pair{Title: title, ID: id, NameA: names[0], NameB: names[1]}
 	for _, k := range keys {
-		a, b := rows[0].Parts[k.Key], rows[1].Parts[k.Key]
-		one := chart.PairKey{Item: k.Key, Title: k.Title, Difference: a.Share - b.Share, Unknown: a.Value == nil || b.Value == nil,
+		a, b := rows[0].Parts.Of(k.Key), rows[1].Parts.Of(k.Key)
+		one := chart.PairKey{Item: k.Key, Title: k.Title, Difference: a.Share - b.Share, Unknown: !a.Known || !b.Known,
 			OverA: slices.Contains(rows[0].OverLimit, k.Key), OverB: slices.Contains(rows[1].OverLimit, k.Key)}
 		for i, words := range []*string{&one.A, &one.B} {
 			*words = "nothing is built"

@@ -1,78 +1,53 @@
 package run
 
 import (
-	"slices"
 	"strings"
 
 	"groundtally/scoring"
 )
 
-// Columns hold the consequences and facts of one plant option: one row a site, one column a key. They
-// take about a quarter of the memory that a struct for each consequence would, so that a hundred thousand
-// parcels fit. Rows come in blocks, so that sites without a plant take none. Texts that repeat (reasons,
-// notices, sources) are kept once.
+// Columns hold the consequences and facts of the candidates of one plant option: one row a site, one
+// column a key. Rows come in blocks. What repeats from row to row (state, reason, source, notices) is kept
+// once, and numbers take room only in columns that have some, so that a hundred thousand parcels fit.
 type Columns struct {
 	keys   []KeyInfo
 	at     map[string]int
 	facts  []string
 	rows   int
 	blocks []*block
-	texts  texts
+	forms  []form // by number; the first stands for no entry
+	known  map[form]uint32
 }
 
 // blockRows is the number of rows of a block.
 const blockRows = 128
 
-// block holds some rows, key-major.
+// block holds some rows: the cells of each key, and those of each fact.
 type block struct {
-	state, rng   []uint8
-	central, low []float64
-	high, median []float64
-	why, quality []uint32
-	notices      []uint32
-	filled       []bool
-
-	factState []uint8
-	factX     []float64
-	factWhy   []uint32
-	factFrom  []uint32
-	hasFacts  [blockRows]bool
+	keys, facts []cells
+	hasFacts    [blockRows]bool
 }
 
-// texts keeps each text once; 0 is the empty one.
-type texts struct {
-	list []string
-	at   map[string]uint32
+// cells are one column of a block. Any slice may be missing: the forms where no row has an entry, the
+// numbers where all are zero, the spreads where every end is the central number.
+type cells struct {
+	form   []uint32
+	x      []float64
+	spread []spread
 }
 
-func (t *texts) put(s string) uint32 {
-	if s == "" {
-		return 0
-	}
-	if i, ok := t.at[s]; ok {
-		return i
-	}
-	if t.at == nil {
-		t.at = map[string]uint32{}
-		t.list = []string{""}
-	}
-	i := uint32(len(t.list))
-	t.list = append(t.list, s)
-	t.at[s] = i
-	return i
-}
+// spread is what a consequence has beside its central number.
+type spread struct{ low, high, median float64 }
 
-func (t *texts) get(i uint32) string {
-	if i == 0 {
-		return ""
-	}
-	return t.list[i]
+// form is what an entry has beside its numbers.
+type form struct {
+	state                scoring.State
+	rng                  scoring.Range
+	why, source, notices string
 }
-
-var ranges = []scoring.Range{"", scoring.NoRange, scoring.P10P90, scoring.Bounds, scoring.Corners, scoring.LayerTolerance}
 
 func newColumns(keys []KeyInfo, facts []string) *Columns {
-	c := &Columns{keys: keys, facts: facts, at: make(map[string]int, len(keys))}
+	c := &Columns{keys: keys, facts: facts, at: make(map[string]int, len(keys)), forms: []form{{}}, known: map[form]uint32{}}
 	for i, k := range keys {
 		c.at[k.Key] = i
 	}
@@ -82,51 +57,92 @@ func newColumns(keys []KeyInfo, facts []string) *Columns {
 // add makes a new row and gives its number.
 func (c *Columns) add() int {
 	if c.rows == len(c.blocks)*blockRows {
-		n, m := len(c.keys)*blockRows, len(c.facts)*blockRows
-		c.blocks = append(c.blocks, &block{
-			state: make([]uint8, n), rng: make([]uint8, n), central: make([]float64, n), low: make([]float64, n), high: make([]float64, n), median: make([]float64, n),
-			why: make([]uint32, n), quality: make([]uint32, n), notices: make([]uint32, n), filled: make([]bool, n),
-			factState: make([]uint8, m), factX: make([]float64, m), factWhy: make([]uint32, m), factFrom: make([]uint32, m)})
+		c.blocks = append(c.blocks, &block{keys: make([]cells, len(c.keys)), facts: make([]cells, len(c.facts))})
 	}
 	c.rows++
 	return c.rows - 1
+}
+
+func (c *Columns) number(f form) uint32 {
+	n, ok := c.known[f]
+	if !ok {
+		n = uint32(len(c.forms))
+		c.forms, c.known[f] = append(c.forms, f), n
+	}
+	return n
+}
+
+func (l *cells) put(row int, form uint32, x float64, s spread) {
+	if l.form == nil {
+		l.form = make([]uint32, blockRows)
+	}
+	l.form[row] = form
+	if l.x == nil && x != 0 {
+		l.x = make([]float64, blockRows)
+	}
+	if l.x != nil {
+		l.x[row] = x
+	}
+	if l.spread == nil && s != (spread{x, x, x}) {
+		l.spread = make([]spread, blockRows)
+		for i := range l.spread {
+			y := l.number(i)
+			l.spread[i] = spread{y, y, y}
+		}
+	}
+	if l.spread != nil {
+		l.spread[row] = s
+	}
+}
+
+func (l *cells) number(row int) float64 {
+	if l.x == nil {
+		return 0
+	}
+	return l.x[row]
+}
+
+// get gives the number of the form, 0 where there is no entry, and the numbers.
+func (l *cells) get(row int) (form uint32, x float64, s spread) {
+	if l.form == nil {
+		return 0, 0, s
+	}
+	x = l.number(row)
+	if s = (spread{x, x, x}); l.spread != nil {
+		s = l.spread[row]
+	}
+	return l.form[row], x, s
 }
 
 // put writes the consequences and facts of a row.
 func (c *Columns) put(row int, qs []scoring.Consequence, leaves []Leaf) {
 	b, row := c.blocks[row/blockRows], row%blockRows
 	for _, q := range qs {
-		k, ok := c.at[q.Key]
-		if !ok {
-			continue
+		if k, ok := c.at[q.Key]; ok {
+			f := c.number(form{q.State, q.Range, q.Why, q.Quality, strings.Join(q.Notices, ",")})
+			b.keys[k].put(row, f, q.Central, spread{q.Low, q.High, q.Median})
 		}
-		i := k*blockRows + row
-		b.filled[i] = true
-		b.state[i], b.rng[i] = uint8(q.State), uint8(max(0, slices.Index(ranges, q.Range)))
-		b.central[i], b.low[i], b.high[i], b.median[i] = q.Central, q.Low, q.High, q.Median
-		b.why[i], b.quality[i], b.notices[i] = c.texts.put(q.Why), c.texts.put(q.Quality), c.texts.put(strings.Join(q.Notices, ","))
 	}
 	if len(leaves) != len(c.facts) {
 		return
 	}
 	b.hasFacts[row] = true
-	for f, l := range leaves {
-		i := f*blockRows + row
-		b.factState[i], b.factX[i], b.factWhy[i], b.factFrom[i] = uint8(l.State), l.X, c.texts.put(l.Why), c.texts.put(l.Source)
+	for i, l := range leaves {
+		b.facts[i].put(row, c.number(form{state: l.State, why: l.Why, source: l.Source}), l.X, spread{l.X, l.X, l.X})
 	}
 }
 
 // consequence gives the view of one cell; ok is false when the row has no such consequence.
 func (c *Columns) consequence(row, key int) (scoring.Consequence, bool) {
-	b, i := c.blocks[row/blockRows], key*blockRows+row%blockRows
-	if !b.filled[i] {
+	n, x, s := c.blocks[row/blockRows].keys[key].get(row % blockRows)
+	if n == 0 {
 		return scoring.Consequence{}, false
 	}
-	k := c.keys[key]
-	q := scoring.Consequence{Key: k.Key, Account: k.Account, Unit: k.Unit, State: scoring.State(b.state[i]), Range: ranges[b.rng[i]],
-		Central: b.central[i], Low: b.low[i], High: b.high[i], Median: b.median[i], Why: c.texts.get(b.why[i]), Quality: c.texts.get(b.quality[i])}
-	if n := c.texts.get(b.notices[i]); n != "" {
-		q.Notices = strings.Split(n, ",")
+	k, f := c.keys[key], &c.forms[n]
+	q := scoring.Consequence{Key: k.Key, Account: k.Account, Unit: k.Unit, State: f.state, Range: f.rng,
+		Central: x, Low: s.low, High: s.high, Median: s.median, Why: f.why, Quality: f.source}
+	if f.notices != "" {
+		q.Notices = strings.Split(f.notices, ",")
 	}
 	return q, true
 }
@@ -138,9 +154,10 @@ func (c *Columns) leaves(row int) []Leaf {
 		return nil
 	}
 	out := make([]Leaf, len(c.facts))
-	for f, name := range c.facts {
-		i := f*blockRows + row
-		out[f] = Leaf{Name: name, State: scoring.State(b.factState[i]), X: b.factX[i], Why: c.texts.get(b.factWhy[i]), Source: c.texts.get(b.factFrom[i])}
+	for i, name := range c.facts {
+		n, x, _ := b.facts[i].get(row)
+		f := &c.forms[n]
+		out[i] = Leaf{Name: name, State: f.state, X: x, Why: f.why, Source: f.source}
 	}
 	return out
 }
@@ -149,13 +166,14 @@ func (c *Columns) leaves(row int) []Leaf {
 // it has none.
 func (c *Columns) span(key int) (least, greatest float64, ok bool) {
 	for _, b := range c.blocks {
-		for i := key * blockRows; i < (key+1)*blockRows; i++ {
-			if !b.filled[i] || scoring.State(b.state[i]) != scoring.Number {
+		for i := range blockRows {
+			n, lo, s := b.keys[key].get(i)
+			if n == 0 || c.forms[n].state != scoring.Number {
 				continue
 			}
-			lo, hi := b.central[i], b.central[i]
-			if r := ranges[b.rng[i]]; r != scoring.NoRange && r != "" {
-				lo, hi = min(lo, b.low[i]), max(hi, b.high[i])
+			hi := lo
+			if r := c.forms[n].rng; r != scoring.NoRange && r != "" {
+				lo, hi = min(lo, s.low), max(hi, s.high)
 			}
 			if !ok || lo < least {
 				least = lo
@@ -176,7 +194,7 @@ func (r *Results) Spans() map[string][2]float64 {
 	seen := map[*Columns]bool{}
 	for i := range r.Candidates {
 		c := r.Candidates[i].columns
-		if c == nil || seen[c] {
+		if c == nil || seen[c] || r.Candidates[i].Status != Fitted {
 			continue
 		}
 		seen[c] = true

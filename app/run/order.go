@@ -2,6 +2,7 @@ package run
 
 import (
 	"context"
+	"encoding/json"
 	"fmt"
 	"math"
 	"slices"
@@ -20,36 +21,93 @@ const NoSite = "none"
 
 // Part is one key's part of a score.
 type Part struct {
-	Weight    float64  `json:"weight"`
-	Value     *float64 `json:"value"` // null when unknown
-	Share     float64  `json:"share"`
-	ShareLow  float64  `json:"share_low"`
-	ShareHigh float64  `json:"share_high"`
-	Outside   bool     `json:"outside_anchors,omitempty"`
+	Known     bool // the candidate has a value
+	Outside   bool // of the ends of the value scale
+	Weight    float64
+	Value     float64 // when known
+	Share     float64
+	ShareLow  float64
+	ShareHigh float64
+}
+
+// MarshalJSON writes a part; a value that is not known is null.
+func (p Part) MarshalJSON() ([]byte, error) {
+	var value *float64
+	if p.Known {
+		value = &p.Value
+	}
+	return json.Marshal(struct {
+		Weight    float64  `json:"weight"`
+		Value     *float64 `json:"value"`
+		Share     float64  `json:"share"`
+		ShareLow  float64  `json:"share_low"`
+		ShareHigh float64  `json:"share_high"`
+		Outside   bool     `json:"outside_anchors,omitempty"`
+	}{p.Weight, value, p.Share, p.ShareLow, p.ShareHigh, p.Outside})
+}
+
+// Named are values by name. Their names are in order and shared by all rows, so that an order of a hundred
+// thousand rows fits.
+type Named[T any] struct {
+	names []string
+	list  []T
+}
+
+// Names gives the names in order.
+func (n Named[T]) Names() []string { return n.names }
+
+// Of gives the value of a name; the zero value when there is none.
+func (n Named[T]) Of(name string) T {
+	v, _ := n.Find(name)
+	return v
+}
+
+// Find gives the value of a name; ok is false when there is none.
+func (n Named[T]) Find(name string) (v T, ok bool) {
+	i, ok := slices.BinarySearch(n.names, name)
+	if !ok {
+		return v, false
+	}
+	return n.list[i], true
+}
+
+// MarshalJSON writes an object.
+func (n Named[T]) MarshalJSON() ([]byte, error) {
+	m := make(map[string]T, len(n.names))
+	for i, name := range n.names {
+		m[name] = n.list[i]
+	}
+	return json.Marshal(m)
+}
+
+// set gives the value of a name, which must be there, in place.
+func (n Named[T]) set(name string, v T) {
+	i, _ := slices.BinarySearch(n.names, name)
+	n.list[i] = v
 }
 
 // Row is a candidate in the order of a voice.
 type Row struct {
-	Place        int                `json:"place"`
-	Tier         int                `json:"tier"`
-	Site         string             `json:"site"`
-	Plant        string             `json:"plant"`
-	Score        float64            `json:"score"`
-	ScoreLow     float64            `json:"score_low"`
-	ScoreHigh    float64            `json:"score_high"`
-	RankBest     int                `json:"rank_best"`
-	RankWorst    int                `json:"rank_worst"`
-	CanBeFirst   string             `json:"can_be_first"`
-	Parts        map[string]Part    `json:"parts"`
-	Accounts     map[string]float64 `json:"accounts"`
-	OverLimit    []string           `json:"over_limit"`
-	Unknown      []string           `json:"unknown"`
-	Incomplete   []string           `json:"incomplete"`
-	FirstIn100   float64            `json:"first_in_100"`
-	DominatedBy  []string           `json:"dominated_by"`
-	DominanceAll bool               `json:"dominance_known"`
-	Alerts       []string           `json:"alerts,omitempty"`
-	Gates        map[string]Gate    `json:"gates"`
+	Place        int             `json:"place"`
+	Tier         int             `json:"tier"`
+	Site         string          `json:"site"`
+	Plant        string          `json:"plant"`
+	Score        float64         `json:"score"`
+	ScoreLow     float64         `json:"score_low"`
+	ScoreHigh    float64         `json:"score_high"`
+	RankBest     int             `json:"rank_best"`
+	RankWorst    int             `json:"rank_worst"`
+	CanBeFirst   string          `json:"can_be_first"`
+	Parts        Named[Part]     `json:"parts"`
+	Accounts     Named[float64]  `json:"accounts"`
+	OverLimit    []string        `json:"over_limit"`
+	Unknown      []string        `json:"unknown"`
+	Incomplete   []string        `json:"incomplete"`
+	FirstIn100   float64         `json:"first_in_100"`
+	DominatedBy  []string        `json:"dominated_by"`
+	DominanceAll bool            `json:"dominance_known"`
+	Alerts       []string        `json:"alerts,omitempty"`
+	Gates        map[string]Gate `json:"gates"`
 }
 
 // TippingSide is where first place changes hands.
@@ -309,20 +367,29 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 		return out, fmt.Errorf("voice %q: %w", voice, err)
 	}
 	out.Mixes = res.Mixes
+	var keys, accounts []string
+	for _, s := range sc {
+		keys = append(keys, s.key)
+		if a := string(s.info.Account); !slices.Contains(accounts, a) {
+			accounts = append(accounts, a)
+		}
+	}
+	slices.Sort(keys)
+	slices.Sort(accounts)
+	out.Order = make([]Row, 0, len(res.Lines))
 	for _, l := range res.Lines {
 		r := Row{Place: l.Place, Tier: l.Tier, Site: NoSite, Score: l.Score, ScoreLow: l.ScoreLow, ScoreHigh: l.ScoreHigh, RankBest: l.RankBest, RankWorst: l.RankWorst,
-			CanBeFirst: canBeFirst(l.CanBeFirst), Parts: map[string]Part{}, Accounts: map[string]float64{}, OverLimit: orEmpty(l.OverLimit), Unknown: orEmpty(l.Unknown), Incomplete: []string{},
+			CanBeFirst: canBeFirst(l.CanBeFirst), Parts: Named[Part]{keys, make([]Part, len(keys))}, Accounts: Named[float64]{accounts, make([]float64, len(accounts))}, OverLimit: orEmpty(l.OverLimit), Unknown: orEmpty(l.Unknown), Incomplete: []string{},
 			FirstIn100: res.FirstInHundred(l), DominatedBy: []string{}, DominanceAll: l.DominanceKnown, Alerts: l.Alerts, Gates: map[string]Gate{}}
 		for _, s := range res.Parts(l) {
-			part := Part{Weight: s.Weight, Share: s.Share, ShareLow: s.ShareLow, ShareHigh: s.ShareHigh, Outside: s.OutsideAnchor}
+			part := Part{Known: s.Known, Weight: s.Weight, Share: s.Share, ShareLow: s.ShareLow, ShareHigh: s.ShareHigh, Outside: s.OutsideAnchor}
 			if s.Known {
-				v := s.Value
-				part.Value = &v
+				part.Value = s.Value
 			}
-			r.Parts[s.Key] = part
+			r.Parts.set(s.Key, part)
 		}
 		for _, a := range res.Accounts(l) {
-			r.Accounts[a.Account] = a.Share
+			r.Accounts.set(a.Account, a.Share)
 		}
 		for _, d := range l.DominatedBy {
 			r.DominatedBy = append(r.DominatedBy, d.ID)

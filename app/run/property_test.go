@@ -287,10 +287,10 @@ func holds(t *testing.T, r *Results) map[scoring.State]int {
 				t.Errorf("voice %s: place %d at position %d", v.Voice, row.Place, i+1)
 			}
 			sum, low, high := 0.0, 0.0, 0.0
-			for _, k := range sortedNames(row.Parts) {
-				sum += row.Parts[k].Share
-				low += row.Parts[k].ShareLow
-				high += row.Parts[k].ShareHigh
+			for _, k := range row.Parts.Names() {
+				sum += row.Parts.Of(k).Share
+				low += row.Parts.Of(k).ShareLow
+				high += row.Parts.Of(k).ShareHigh
 			}
 			if math.Abs(sum-row.Score) > 1e-12 || math.Abs((low+high)/2-row.Score) > 1e-12 {
 				t.Errorf("voice %s, %s: parts %v, interval %v to %v, score %v", v.Voice, row.Site, sum, low, high, row.Score)
@@ -458,10 +458,10 @@ func TestDoingNothingKeepsItsDistance(t *testing.T) {
 			if row.Site != NoSite {
 				continue
 			}
-			if x := row.Parts["nearest_dwelling_m"].Value; x == nil || *x != 1 {
+			if x := row.Parts.Of("nearest_dwelling_m"); !x.Known || x.Value != 1 {
 				t.Errorf("doing nothing stands near no dwelling, but has the value %v", x)
 			}
-			if x := row.Parts["net_share"].Value; x == nil || *x != 0 {
+			if x := row.Parts.Of("net_share"); !x.Known || x.Value != 0 {
 				t.Errorf("doing nothing brings no energy, but has the value %v", x)
 			}
 		}

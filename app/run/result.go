@@ -2,7 +2,6 @@ package run
 
 import (
 	"encoding/json"
-	"slices"
 
 	"groundtally/geo"
 	"groundtally/scoring"
@@ -118,16 +117,28 @@ type Candidate struct {
 	row     int
 }
 
-// toColumns moves the consequences and facts into columns. A candidate without a plant has so few that
-// they stay where they are.
+// toColumns moves the consequences and facts into columns, and makes the rest as small as it can be.
 func (c *Candidate) toColumns(cols *Columns) {
-	if c.Status != Fitted {
-		c.Consequences = slices.Clip(c.Consequences)
-		return
-	}
 	row := cols.add()
 	cols.put(row, c.Consequences, c.Facts)
 	c.columns, c.row, c.Consequences, c.Facts = cols, row, nil, nil
+	c.Parcels, c.Incomplete, c.Taken, c.Chain, c.Notices = exact(c.Parcels), exact(c.Incomplete), exact(c.Taken), exact(c.Chain), exact(c.Notices)
+	if c.Fit != nil {
+		c.Fit.Turbines = exact(c.Fit.Turbines)
+		for _, rings := range c.Fit.Panels.Parts {
+			for i := range rings {
+				rings[i] = exact(rings[i])
+			}
+		}
+	}
+}
+
+// exact gives a slice with the same elements and no room beyond them.
+func exact[T any](s []T) []T {
+	if len(s) == cap(s) {
+		return s
+	}
+	return append(make([]T, 0, len(s)), s...)
 }
 
 // All gives every consequence, in the order of the keys.

@@ -227,8 +227,8 @@ func (r *Results) digest(candidates []digest) string {
 			for _, x := range []float64{row.Score, row.ScoreLow, row.ScoreHigh, row.FirstIn100} {
 				k.num(x)
 			}
-			for _, key := range sortedNames(row.Parts) {
-				p := row.Parts[key]
+			for _, key := range row.Parts.Names() {
+				p := row.Parts.Of(key)
 				k.text(key)
 				k.num(p.Weight)
 				k.num(p.Share)

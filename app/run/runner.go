@@ -282,9 +282,9 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 	n := len(w.sites)
 	out := make([]Candidate, n*len(r.plans))
 	digests := make([]digest, len(out))
-	columns := make([]*Columns, len(r.plans))
+	columns := make([]map[bool]*Columns, len(r.plans)) // a plant without room has few of the keys
 	for i := range columns {
-		columns[i] = newColumns(r.k.keys, r.k.p.facts)
+		columns[i] = map[bool]*Columns{true: newColumns(r.k.keys, r.k.p.facts), false: newColumns(r.k.keys, r.k.p.facts)}
 	}
 	limits := limitsOf(w.snap, r.k.keys)
 	var writing background
@@ -329,12 +329,13 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 			return nil, nil, err
 		}
 		for i, f := range found {
+			gates := w.gates(w.sites[from+i])
 			for p := range f.candidates {
 				at := p*n + from + i
 				out[at], digests[at] = f.candidates[p], f.digests[p]
 				c := &out[at]
-				c.toColumns(columns[p])
-				c.Gates = w.gates(w.sites[from+i])
+				c.toColumns(columns[p][c.Status == Fitted])
+				c.Gates = gates
 				c.OverLimit = overLimit(limits, c)
 			}
 		}

@@ -113,9 +113,9 @@ func (c *call) voice(v run.VoiceOrder, top int) {
 		}
 	}
 	c.say("%s: %d candidates and doing nothing, in order. Score = sum of the parts [1], [2] and so on; each part is weight times value.", title, count)
-	keys := sortedKeys(v.Order[0].Parts)
+	keys := v.Order[0].Parts.Names()
 	for i, k := range keys {
-		c.say("  [%d] %s, weight %.3f", i+1, k, v.Order[0].Parts[k].Weight)
+		c.say("  [%d] %s, weight %.3f", i+1, k, v.Order[0].Parts.Of(k).Weight)
 	}
 	head := []string{"place", "tier", "site", "plant", "score", "low", "high", "places", "first in 100", "can lead"}
 	right := map[int]bool{0: true, 1: true, 4: true, 5: true, 6: true, 7: true, 8: true}
@@ -169,9 +169,9 @@ func orderRow(r run.Row, keys []string, m *marks) []string {
 		cells[2], cells[3] = "do nothing", ""
 	}
 	for _, k := range keys {
-		p := r.Parts[k]
+		p := r.Parts.Of(k)
 		mark := "  "
-		if p.Value == nil {
+		if !p.Known {
 			mark = " ?"
 		}
 		cells = append(cells, fmt.Sprintf("%.3f", p.Share)+mark)
