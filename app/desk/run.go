@@ -233,7 +233,7 @@ func window(sample bool, path string) int {
 		// A window shares its machine with other programs: at rest it keeps little more than it needs. While
 		// it computes it may have more, since collecting so often would cost time.
 		w.Busy = func(busy bool) { debug.SetGCPercent(map[bool]int{true: 60, false: 12}[busy]) }
-		w.Busy(false)
+		w.Busy(true) // starting is work, too
 	}
 	w.window.Show()
 	if !there(w.window) {

@@ -342,7 +342,10 @@ func (w *Window) openSample(ctx context.Context, path string, round int) error {
 		w.core.Edit("make the sample study", func(ctx context.Context, st *study.Study) error {
 			tools, done := w.parts.Tools()
 			defer done()
-			return w.parts.Sample(ctx, st, tools, func(study.LayerRecord) { _ = s.Refresh() })
+			return w.parts.Sample(ctx, st, tools, func(study.LayerRecord) {
+				_ = s.Refresh()
+				<-s.Released() // the first layers are on the map before the next are read
+			})
 		}, nil)
 	})
 }

@@ -86,7 +86,8 @@ type Session struct {
 	surveyor  *run.Surveyor      // of the state surveyed
 	surveyed  *study.Snapshot
 	rest      *time.Timer // lets the surveyor go
-	waiting   bool // for Release
+	waiting   bool        // for Release
+	released  chan struct{}
 
 	// Of the computing goroutine alone: notices on data and settings, and the state that they are of.
 	onData  []geo.Notice
@@ -104,7 +105,10 @@ func Start(ctx context.Context, store study.Store, cfg Config) (*Session, error)
 	if err != nil {
 		return nil, err
 	}
-	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{}), gone: make(chan struct{}), waiting: cfg.Wait}
+	session := &Session{cfg: cfg, study: s, edits: make(chan edit, 1024), wake: make(chan struct{}, 1), edited: make(chan struct{}), gone: make(chan struct{}), released: make(chan struct{}), waiting: cfg.Wait}
+	if !cfg.Wait {
+		close(session.released)
+	}
 	session.ctx, session.stop = context.WithCancel(context.WithoutCancel(ctx))
 	if err := session.refresh(); err != nil {
 		return nil, err
@@ -194,10 +198,16 @@ func (s *Session) Compute() {
 // Release lets the computing begin that Config.Wait kept back.
 func (s *Session) Release() {
 	s.mu.Lock()
-	s.waiting = false
+	if s.waiting {
+		s.waiting = false
+		close(s.released)
+	}
 	s.mu.Unlock()
 	s.poke()
 }
+
+// Released is closed once computing may begin.
+func (s *Session) Released() <-chan struct{} { return s.released }
 
 // Close stops everything, waits for it, and closes the study's file. Edits asked for before are saved; later
 // ones are not done. Closing again waits for the first.
@@ -212,6 +222,7 @@ func (s *Session) Close() error {
 	defer close(s.gone)
 	close(s.edits)
 	s.asking.Unlock()
+	s.Release() // no edit waits for it any longer
 	s.mu.Lock()
 	cancel := s.cancelRun
 	s.stopped = s.view.Snap

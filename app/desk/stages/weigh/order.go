@@ -31,6 +31,10 @@ type order struct {
 	lead     *widget.Label
 	count    *widgets.Line
 	legend   *legend
+	bars     *picture // of the first places, in the place of the list
+	scroll   *container.Scroll
+	toggle   *widget.Button
+	pictured bool // the picture is shown
 	columns  *widgets.Line
 	all      *fyne.Container
 	work     latest
@@ -47,7 +51,17 @@ func newOrder(s *stage) *order {
 	o.list = newOrderList(o)
 	o.columns = widgets.Faint("score · first in … of 100 weight mixes").Hinted("The score under the voice's weights; in how many of 100 weight mixes near them, with what is uncertain drawn anew in each, the candidate comes first.")
 	o.columns.TextSize, o.columns.Align = 11, fyne.TextAlignTrailing
-	bar := container.NewBorder(nil, nil, nil, o.count, o.filter)
+	o.scroll = container.NewVScroll(nil)
+	o.bars = newPicture(s.c, o.scroll.Refresh)
+	o.bars.pressed = func(id string, add bool) {
+		if item, ok := o.filtered.item(id); ok {
+			o.choose(item, add)
+		}
+	}
+	o.scroll.Content = container.New(inset{right: 12}, o.bars)
+	o.toggle = widget.NewButton("", func() { o.picture(!o.pictured) })
+	o.picture(false)
+	bar := container.NewBorder(nil, nil, nil, container.NewHBox(o.count, o.toggle), o.filter)
 	o.all = container.New(free{
 		min: func() fyne.Size { return fyne.NewSize(380, 220) },
 		place: func(size fyne.Size) {
@@ -56,6 +70,7 @@ func newOrder(s *stage) *order {
 			put(o.lead, -6, -6, size.Width+12, y)
 			put(bar, 0, y, size.Width, bar.MinSize().Height)
 			y += bar.MinSize().Height + 4
+			put(o.scroll, 0, y, size.Width, size.Height-y)
 			h := o.legend.flow(size.Width, nil)
 			put(o.legend, 0, y, size.Width, h)
 			y += h + 4
@@ -72,7 +87,7 @@ func newOrder(s *stage) *order {
 				o.list.Refresh()
 			}
 		},
-	}, o.lead, bar, o.legend, o.columns, o.list)
+	}, o.lead, bar, o.legend, o.columns, o.list, o.scroll)
 	return o
 }
 
@@ -213,6 +228,22 @@ func (o *order) show() {
 	}
 	o.reopen()
 	o.list.Refresh()
+	o.drawBars()
+}
+
+// picture changes between the list and the picture of its first places.
+func (o *order) picture(yes bool) {
+	o.pictured = yes
+	words := "As a picture"
+	if yes {
+		words = "As a list"
+	}
+	o.toggle.SetText(words)
+	show(o.scroll, yes)
+	for _, l := range []fyne.CanvasObject{o.legend, o.columns, o.list} {
+		show(l, !yes)
+	}
+	o.drawBars()
 }
 
 // reopen keeps the unfolded candidate unfolded wherever it stands now.

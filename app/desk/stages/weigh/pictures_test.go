@@ -3,6 +3,7 @@ package weigh
 import (
 	"image"
 	"image/color"
+	"math"
 	"reflect"
 	"testing"
 
@@ -29,6 +30,10 @@ func TestPictures(t *testing.T) {
 		list.unfold(list.rows()[1])
 		b.Shoot("weigh-order-open-" + size.name)
 		list.unfold(list.rows()[1])
+		list.picture(true)
+		wait(b, list.bars)
+		b.Shoot("weigh-order-picture-" + size.name)
+		list.picture(false)
 		s.tabs.Choose(pairTab)
 		p := s.panes[pairTab].(*pairPane)
 		wait(b, p.picture)
@@ -122,4 +127,39 @@ func TestLookReachesPartsThatWereNotShown(t *testing.T) {
 		}
 		dark(theme.Light)
 	}
+}
+
+// TestPictureOfTheOrder holds the picture against the order: the same places, and parts that add up.
+func TestPictureOfTheOrder(t *testing.T) {
+	b, s := open(t, 60, 520, 480)
+	s.tabs.Choose(orderTab)
+	o := s.panes[orderTab].(*order)
+	o.picture(true)
+	wait(b, o.bars)
+	in := scoresOf(b.Core, s.shown, o.rows())
+	if len(in.Rows) != len(s.shown.Standing.Order) || len(in.Rows) < 3 {
+		t.Fatalf("%d rows for %d places", len(in.Rows), len(s.shown.Standing.Order))
+	}
+	weights := 0.0
+	for _, k := range in.Keys {
+		weights += k.Weight
+	}
+	if math.Abs(weights-1) > 1e-12 {
+		t.Errorf("weights add up to %v", weights)
+	}
+	for i, r := range in.Rows {
+		item := s.shown.Standing.Order[i]
+		sum := 0.0
+		for _, p := range r.Parts {
+			sum += p.Share
+		}
+		if r.Item != s.shown.Board.IDs[item] || math.Abs(sum-s.shown.Standing.Score[item]) > 1e-12 {
+			t.Errorf("row %d is %s with parts of %v; the order has %s with %v", i, r.Item, sum, s.shown.Board.IDs[item], s.shown.Standing.Score[item])
+		}
+	}
+	o.bars.pressed(in.Rows[1].Item, false)
+	if got := b.Core.ChosenIDs(); len(got) != 1 || got[0] != in.Rows[1].Item {
+		t.Errorf("a click on a bar chose %v", got)
+	}
+	b.Core.Choose()
 }
