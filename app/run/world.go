@@ -18,6 +18,7 @@ import (
 	"groundtally/geo/formats/asciigrid"
 	"groundtally/geo/index"
 	"groundtally/geo/overlay"
+	"groundtally/geo/raster"
 	"groundtally/geo/terrain"
 	"groundtally/scoring/units"
 )
@@ -266,7 +267,7 @@ func geographic(t *crs.Transform, f crs.Frame) bool {
 const metresPerDegree = 111_200
 
 // ownGrid turns a grid of a file, north row first, into one in the file's own coordinates.
-func (w *world) ownGrid(raw *asciigrid.Grid) (*terrain.Grid, error) {
+func (w *world) ownGrid(raw *raster.Grid) (*terrain.Grid, error) {
 	if raw.CellX != raw.CellY {
 		return nil, fmt.Errorf("cells of %g by %g: only square cells are read", raw.CellX, raw.CellY)
 	}

@@ -11,26 +11,8 @@ import (
 	"strings"
 
 	"groundtally/geo"
+	"groundtally/geo/raster"
 )
-
-// Grid is a raster of values with its place.
-type Grid struct {
-	NCols, NRows int
-	XLL, YLL     float64 // outer corner of the lower left cell, in the units of the file's reference system
-	CellX, CellY float64 // size of a cell
-	NoData       float64 // the value of Values that means missing, exact as a float32
-	Values       []float32
-}
-
-// At gives the value in the column counted from the west and the row counted from the north, both from
-// 0; ok is false where it is missing or outside.
-func (g *Grid) At(col, row int) (v float32, ok bool) {
-	if col < 0 || row < 0 || col >= g.NCols || row >= g.NRows {
-		return 0, false
-	}
-	v = g.Values[row*g.NCols+col]
-	return v, v != float32(g.NoData)
-}
 
 // Options say how much is read at most. A limit of zero is the default.
 type Options struct {
@@ -42,7 +24,7 @@ type Options struct {
 
 // Result is what a file holds.
 type Result struct {
-	Grid    *Grid
+	Grid    *raster.Grid
 	Missing int // cells without a value
 	Notices []geo.Notice
 }
@@ -276,7 +258,7 @@ func short(s string) string {
 }
 
 // place makes a grid without values from the header.
-func (d *decoder) place() (*Grid, error) {
+func (d *decoder) place() (*raster.Grid, error) {
 	h := d.head
 	has := func(k string) bool { _, ok := h[k]; return ok }
 	for _, k := range []string{"ncols", "nrows"} {
@@ -287,7 +269,7 @@ func (d *decoder) place() (*Grid, error) {
 			return nil, d.fault("bad_header", fmt.Sprintf("%s is %g, not a whole number above 0", k, v), doExport)
 		}
 	}
-	g := &Grid{NCols: int(h["ncols"]), NRows: int(h["nrows"]), NoData: usualNoData}
+	g := &raster.Grid{NCols: int(h["ncols"]), NRows: int(h["nrows"]), NoData: usualNoData}
 	if int64(g.NCols)*int64(g.NRows) > int64(d.o.MaxCells) {
 		return nil, d.fault("too_many", fmt.Sprintf("the grid has %d by %d cells, at most %d can be read", g.NCols, g.NRows, d.o.MaxCells), "cut it to the district")
 	}
@@ -368,7 +350,7 @@ func (d *decoder) decode() (Result, error) {
 	return Result{Grid: g, Missing: missing, Notices: d.notices}, nil
 }
 
-func (d *decoder) value(g *Grid) (v float32, missing bool, err error) {
+func (d *decoder) value(g *raster.Grid) (v float32, missing bool, err error) {
 	if d.nan && strings.EqualFold(string(d.token), "nan") {
 		return float32(g.NoData), true, nil
 	}

@@ -14,14 +14,16 @@ import (
 	"strings"
 	"testing"
 	"testing/iotest"
+
+	"groundtally/geo/raster"
 )
 
 var ctx = context.Background()
 
 const head = "ncols 3\nnrows 2\nxllcorner 500000\nyllcorner 5316300\ncellsize 25\n"
 
-func want() *Grid {
-	return &Grid{NCols: 3, NRows: 2, XLL: 500000, YLL: 5316300, CellX: 25, CellY: 25, NoData: -9999, Values: []float32{1, 2.5, -9999, 4, 5e3, -6}}
+func want() *raster.Grid {
+	return &raster.Grid{NCols: 3, NRows: 2, XLL: 500000, YLL: 5316300, CellX: 25, CellY: 25, NoData: -9999, Values: []float32{1, 2.5, -9999, 4, 5e3, -6}}
 }
 
 func TestRead(t *testing.T) {
@@ -35,7 +37,7 @@ func TestRead(t *testing.T) {
 	floats.Values[2] = -math.MaxFloat32
 	for name, c := range map[string]struct {
 		in      string
-		want    *Grid
+		want    *raster.Grid
 		notices string
 	}{
 		"plain":             {head + "NODATA_value -9999\n" + body, want(), ""},
@@ -49,7 +51,7 @@ func TestRead(t *testing.T) {
 		"oblong":            {strings.Replace(head, "cellsize 25", "dx 25\ndy 10", 1) + "nodata_value -9999\n" + body, oblong, ""},
 		"decimal comma":     {head + "nodata_value -9999\n1 2,5 -9999\n4 5e3 -6\n", want(), "decimal_comma"},
 		"nan is missing":    {head + "nodata_value nan\n1 2.5 NaN\n4 5e3 -6\n", floats, ""},
-		"first one missing": {head + "nodata_value nan\nnan nan nan\nnan 1 nan\n", &Grid{NCols: 3, NRows: 2, XLL: 500000, YLL: 5316300, CellX: 25, CellY: 25, NoData: -math.MaxFloat32, Values: []float32{-math.MaxFloat32, -math.MaxFloat32, -math.MaxFloat32, -math.MaxFloat32, 1, -math.MaxFloat32}}, "mostly_missing"},
+		"first one missing": {head + "nodata_value nan\nnan nan nan\nnan 1 nan\n", &raster.Grid{NCols: 3, NRows: 2, XLL: 500000, YLL: 5316300, CellX: 25, CellY: 25, NoData: -math.MaxFloat32, Values: []float32{-math.MaxFloat32, -math.MaxFloat32, -math.MaxFloat32, -math.MaxFloat32, 1, -math.MaxFloat32}}, "mostly_missing"},
 		"long lowest float": {head + "nodata_value -3.40282346639e+38\n1 2.5 -3.4028234663852886e+38\n4 5e3 -6\n", floats, ""},
 	} {
 		t.Run(name, func(t *testing.T) {

@@ -1,0 +1,2 @@
+// Package raster holds grids of numbers as map files have them.
+package raster
