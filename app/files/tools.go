@@ -29,6 +29,22 @@ func (t *tools) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), str
 	return func(p geo.LonLat) (geo.LonLat, error) { return tr.Forward(p.Lon, p.Lat) }, tr.Code() + " to OGC:CRS84", nil
 }
 
+func (t *tools) Operation(code string, at geo.LonLat) (study.Operation, error) {
+	tr, err := crs.NewTransform(code)
+	if err != nil {
+		return study.Operation{}, err
+	}
+	if tr.Identity() {
+		return study.Operation{Known: true}, nil
+	}
+	a, err := tr.AccuracyAt(at.Lon, at.Lat)
+	if err != nil {
+		return study.Operation{}, err
+	}
+	e := tr.Editions()
+	return study.Operation{Name: a.Operation, AccuracyM: a.Metres, Known: a.Known, Ballpark: a.Ballpark, Database: "PROJ " + e.Library + ", EPSG " + e.Database}, nil
+}
+
 func (t *tools) Frame(centre geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error), func(geo.XYGeometry) (geo.LonLatGeometry, error), error) {
 	f, err := crs.NewFrame(centre)
 	if err != nil {

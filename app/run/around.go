@@ -167,7 +167,7 @@ func (s *Surveyor) ground(ctx context.Context, rs *ruleset, here site) (groundRe
 	if err := rs.prepare(ctx, e, map[string]*overlay.Layer{}); err != nil {
 		return g, err
 	}
-	return rs.compute(e, s.world, here, map[float64]geo.XYGeometry{})
+	return rs.compute(e, s.world, here, terrainCells{})
 }
 
 // keep adds the distances of a ruleset that reach the site, one entry for each kind of geometry.

@@ -19,7 +19,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 1
+const candidateEdition = 2
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {
@@ -264,6 +264,10 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	f.num("gross_area_ha", g.GrossM2/units.M2PerHa, "parcels")
 	f.num("buildable_area_ha", g.BuildableM2/units.M2PerHa, "parcels, rules")
 	f.num("largest_patch_ha", g.LargestM2/units.M2PerHa, "parcels, rules")
+	if c.Excepted = sets[main].excepted[s.id]; len(c.Excepted) > 0 {
+		c.Notices = append(c.Notices, "rule_excepted")
+	}
+	defer c.bounds(g)
 	if r.Status != Fitted {
 		c.Notices = append(c.Notices, r.Notices...)
 		for _, key := range k.keys {
@@ -278,7 +282,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	}
 
 	noted := map[string]bool{}
-	if err := w.measureFacts(e, around, o, r, f, noted); err != nil {
+	if err := w.measureFacts(e, around, o, s, r, f, noted); err != nil {
 		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 	}
 	fitFacts(o, r, f)
@@ -324,6 +328,18 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		return nil, err
 	}
 	return c, nil
+}
+
+// bounds gives the buildable area the low and high that the position tolerance of the layers makes.
+func (c *Candidate) bounds(g groundResult) {
+	if !g.Tolerant {
+		return
+	}
+	for i := range c.Consequences {
+		if q := &c.Consequences[i]; q.Key == "buildable_area_ha" && q.State == scoring.Number {
+			q.Low, q.High, q.Range = g.LeastM2/units.M2PerHa, g.MostM2/units.M2PerHa, scoring.LayerTolerance
+		}
+	}
 }
 
 // legalNotSet lists the legal limits that apply to an option and are not set.

@@ -58,6 +58,14 @@ func (k *keyer) geometry(g geo.XYGeometry) {
 	}
 }
 
+// of writes numbers and ends the digest.
+func (k *keyer) of(xs ...float64) string {
+	for _, x := range xs {
+		k.num(x)
+	}
+	return k.sum()
+}
+
 func (k *keyer) texts(list []string) {
 	k.int(len(list))
 	for _, s := range list {

@@ -341,7 +341,7 @@ func layerNames(ls []*layer) string {
 }
 
 // measureFacts gives every fact of a fitted candidate that follows from the map.
-func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, r fitResult, f facts, notices map[string]bool) error {
+func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site, r fitResult, f facts, notices map[string]bool) error {
 	anyFeature := func(*layer, int) bool { return true }
 	for _, d := range []struct {
 		name, role string
@@ -366,6 +366,12 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, r fitR
 		}
 		f.num(d.name, m, layerNames(w.byRole[d.role]))
 	}
+
+	allowed, err := w.heightAllowed(e, around, o, s)
+	if err != nil {
+		return err
+	}
+	f.set("height_limit_m", allowed, layerNames(w.byRole[heightRule]))
 
 	g, err := w.plantGround(e, r)
 	if err != nil {

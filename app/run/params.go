@@ -77,6 +77,7 @@ var factLeaves = []scoring.Leaf{
 	{Name: "nearest_dwelling_m", Unit: "m", Title: "Distance to nearest dwelling"},
 	{Name: "heritage_m", Unit: "m", Title: "Distance to heritage"},
 	{Name: "sensitive_m", Unit: "m", Title: "Distance to sensitive place"},
+	{Name: "height_limit_m", Unit: "m", Title: "Height that the mapped limits allow"},
 	{Name: "road_m", Unit: "m", Title: "Distance to a road"},
 	{Name: "habitat_ha", Unit: "ha", Title: "Habitat touched"},
 	{Name: "forest_ha", Unit: "ha", Title: "Forest cleared"},

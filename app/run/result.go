@@ -111,7 +111,8 @@ type Candidate struct {
 	Chain         []ChainStep           `json:"chain,omitempty"`
 	Facts         []Leaf                `json:"leaves,omitempty"`
 	OverLimit     []string              `json:"over_limit,omitempty"`
-	Notices       []string              `json:"notices"` // codes
+	Excepted      []string              `json:"excepted,omitempty"` // rules that do not hold here by the user's word
+	Notices       []string              `json:"notices"`            // codes
 
 	columns *Columns // once among results, consequences and facts lie in columns; see All and Leaves
 	row     int
@@ -236,6 +237,9 @@ func (c *Candidate) PublicJSON() map[string]any {
 	}
 	if c.Taken == nil {
 		m["taken"] = []Taken{}
+	}
+	if len(c.Excepted) > 0 {
+		m["excepted"] = c.Excepted
 	}
 	if c.Reason != "" {
 		m["reason"] = c.Reason

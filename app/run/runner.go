@@ -99,6 +99,9 @@ func (r *runner) makePlans(ctx context.Context) error {
 		}
 		r.plans = append(r.plans, p)
 	}
+	if w.plotless > 0 {
+		w.notices = append(w.notices, geo.Notice{Code: "plot_unknown", Severity: geo.Warning, Args: map[string]string{"count": fmt.Sprint(w.plotless)}})
+	}
 	return nil
 }
 
@@ -197,7 +200,7 @@ func (r *runner) site(ctx context.Context, e *overlay.Engine, s int, have stored
 	w, here := r.w, r.w.sites[s]
 	out := siteResult{candidates: make([]Candidate, len(r.plans)), digests: make([]digest, len(r.plans))}
 	grounds := map[string]*groundResult{}
-	steep := map[float64]geo.XYGeometry{}
+	known := terrainCells{}
 	keep := func(step, key string, data []byte) {
 		out.fresh = append(out.fresh, study.Result{Step: step, Digest: key, Data: data})
 	}
@@ -212,7 +215,7 @@ func (r *runner) site(ctx context.Context, e *overlay.Engine, s int, have stored
 			}
 		} else {
 			var err error
-			if g, err = rs.compute(e, w, here, steep); err != nil {
+			if g, err = rs.compute(e, w, here, known); err != nil {
 				return nil, err
 			}
 			data, err := pack(g)

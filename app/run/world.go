@@ -17,6 +17,7 @@ import (
 	"groundtally/geo/crs"
 	"groundtally/geo/formats/asciigrid"
 	"groundtally/geo/index"
+	"groundtally/geo/measure"
 	"groundtally/geo/overlay"
 	"groundtally/geo/raster"
 	"groundtally/geo/terrain"
@@ -32,6 +33,9 @@ type layer struct {
 	tree *index.Tree
 
 	validity []atomic.Uint32 // per feature: 0 not asked yet
+
+	variant  string            // "centroid" or "plot" for a layer with geometry other than drawn
+	variants map[string]*layer // of this layer, made when first asked for
 }
 
 const (
@@ -56,6 +60,53 @@ func (l *layer) clip(e *overlay.Engine, i int, x geo.Extent) (geo.XYGeometry, er
 		return e.ClipValid(l.xy[i], x)
 	}
 	return e.Clip(l.xy[i], x)
+}
+
+// variant gives a layer whose features stand at their centroids, or are the parcels on which they stand. A
+// feature on no parcel stays as it is.
+func (w *world) variant(l *layer, from string) *layer {
+	if v := l.variants[from]; v != nil {
+		return v
+	}
+	v := &layer{rec: l.rec, src: l.src, xy: make([]geo.XYGeometry, len(l.xy)), hash: make([][sha256.Size]byte, len(l.xy)), validity: make([]atomic.Uint32, len(l.xy)), variant: from}
+	for i, g := range l.xy {
+		v.xy[i] = g
+		if at, ok := measure.Centroid(g); ok {
+			switch from {
+			case "centroid":
+				v.xy[i] = geo.XYGeometry{Kind: geo.Points, Parts: [][][]geo.XY{{{at}}}}
+			case "plot":
+				if plot, ok := w.plotAt(at); ok {
+					v.xy[i] = plot
+				} else {
+					w.plotless++
+				}
+			}
+		}
+		k := newKey("variant", 1)
+		k.text(from)
+		k.h.Write(l.hash[i][:])
+		k.geometry(v.xy[i])
+		copy(v.hash[i][:], k.h.Sum(nil))
+	}
+	v.tree = index.Of(v.xy, 0)
+	if l.variants == nil {
+		l.variants = map[string]*layer{}
+	}
+	l.variants[from] = v
+	return v
+}
+
+// plotAt gives the parcel that holds a place.
+func (w *world) plotAt(at geo.XY) (geo.XYGeometry, bool) {
+	for _, l := range w.byRole["parcels"] {
+		for _, i := range l.tree.Search(geo.EmptyExtent().Add(at), nil) {
+			if measure.Inside(at, l.xy[i]) {
+				return l.xy[i], true
+			}
+		}
+	}
+	return geo.XYGeometry{}, false
 }
 
 // text gives a field of a feature by the role's field name; empty when missing, and when the column is
@@ -112,6 +163,8 @@ type world struct {
 	options []option
 	terrain *heights
 	notices []geo.Notice
+
+	plotless int // features that should stand for their plots and are on none
 }
 
 // heights is the terrain in the local frame, read when it is first needed.
@@ -289,15 +342,6 @@ func (w *world) heightM(p geo.XY) (m float64, ok bool, err error) {
 	}
 	m, ok = g.Sample(p)
 	return m, ok, nil
-}
-
-// steep gives the ground steeper than a limit within an extent.
-func (w *world) steep(box geo.Extent, limitDeg float64) (geo.XYGeometry, error) {
-	g, err := w.terrain.get()
-	if err != nil {
-		return geo.XYGeometry{}, err
-	}
-	return g.Steep(box, limitDeg)
 }
 
 // makeSites puts parcels together by the study's groups; every other parcel is a site of its own. A

@@ -124,8 +124,8 @@ func (c *Catalog) Definition(key string) (Definition, bool) {
 	return Definition{}, false
 }
 
-// matches reports whether key fits a pattern in which each <name> stands for a run of letters,
-// digits, dashes, blanks and underscores.
+// matches reports whether key fits a pattern in which each <name> stands for a run of characters without a
+// dot. A <site> at the end may hold dots, because parcels have the identifiers that their register gave them.
 func matches(pattern, key string) bool {
 	open := strings.IndexByte(pattern, '<')
 	if open < 0 {
@@ -136,6 +136,9 @@ func matches(pattern, key string) bool {
 	}
 	end := strings.IndexByte(pattern, '>')
 	rest, key := pattern[end+1:], key[open:]
+	if pattern[open:] == "<site>" {
+		return key != ""
+	}
 	for n := 1; n <= len(key); n++ {
 		if key[n-1] == '.' {
 			return false

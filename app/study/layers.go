@@ -23,6 +23,7 @@ type LayerRecord struct {
 	File     string            `json:"file"` // base name of the file it came from
 	CRS      string            `json:"crs"`  // as delivered
 	Pipeline string            `json:"pipeline,omitempty"`
+	Database string            `json:"projection_data,omitempty"` // editions of the projection library and its database
 	Swapped  bool              `json:"swapped,omitempty"`
 	Edition  string            `json:"edition,omitempty"`
 	Holder   string            `json:"holder,omitempty"`
@@ -71,10 +72,22 @@ type Import struct {
 type Tools interface {
 	// ToLonLat gives the way from a coordinate system to longitude and latitude on WGS 84.
 	ToLonLat(crs string) (transform func(geo.LonLat) (geo.LonLat, error), pipeline string, err error)
+	// Operation says by which operation positions near one in the source system come to WGS 84, and how true
+	// that is.
+	Operation(crs string, at geo.LonLat) (Operation, error)
 	// Frame gives the local metric frame around a centre.
 	Frame(centre geo.LonLat) (forward func(geo.LonLatGeometry) (geo.XYGeometry, error), inverse func(geo.XYGeometry) (geo.LonLatGeometry, error), err error)
 	// Repair makes a polygon geometry valid; changed is false when it was valid already.
 	Repair(g geo.XYGeometry) (repaired geo.XYGeometry, changed bool, areaBeforeM2, areaAfterM2 float64, err error)
+}
+
+// Operation is a way between two coordinate systems.
+type Operation struct {
+	Name      string
+	AccuracyM float64
+	Known     bool   // AccuracyM is stated
+	Ballpark  bool   // the shift between the two datums is not known: positions may be off by 100 m and more
+	Database  string // editions of the projection library and its database
 }
 
 // Question is something that only the user can answer, with the exact option that answers it.
@@ -313,6 +326,9 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 		return nil, nil, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
 	}
 	rec.Pipeline = pipeline
+	if err := s.operation(rec, in, layer, tools); err != nil {
+		return nil, nil, err
+	}
 	for i := range layer.Features {
 		if err := ctx.Err(); err != nil {
 			return nil, nil, err
@@ -363,6 +379,40 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 	}
 	rec.Count = len(layer.Features)
 	return layer, fixed, nil
+}
+
+// roughM is the accuracy from which on a change of datum is worth a word.
+const roughM = 0.5
+
+// operation records how the coordinates come to WGS 84, and says so where that is not exact.
+func (s *Study) operation(rec *LayerRecord, in Import, layer *geo.Layer, tools Tools) error {
+	for _, f := range layer.Features {
+		if f.Geometry.Empty() {
+			continue
+		}
+		at := anyPosition(f.Geometry)
+		op, err := tools.Operation(rec.CRS, at)
+		if err != nil {
+			return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error(), Cure: "Check --crs"}
+		}
+		rec.operated(op, in.Base)
+		return nil
+	}
+	return nil
+}
+
+// operated takes over what is known of the way to WGS 84.
+func (rec *LayerRecord) operated(op Operation, file string) {
+	rec.Database = op.Database
+	if op.Name != "" {
+		rec.Pipeline += " by " + op.Name
+	}
+	switch {
+	case op.Ballpark:
+		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_unknown", Severity: geo.Warning, File: file, Layer: rec.Name, Args: map[string]string{"crs": rec.CRS}})
+	case op.Known && op.AccuracyM > roughM:
+		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_approximate", Severity: geo.Info, File: file, Layer: rec.Name, Args: map[string]string{"crs": rec.CRS, "metres": strconv.FormatFloat(op.AccuracyM, 'g', -1, 64)}})
+	}
 }
 
 // personal gives the columns that are personal: those the user says, those that are or serve as a personal

@@ -193,13 +193,19 @@ type SettingEdit struct {
 	AcceptedBy string
 }
 
-// Set changes settings as one journal entry.
+// ExceptPrefix begins the keys of exceptions: rules that do not hold on a site by the user's word.
+const ExceptPrefix = "rule.except."
+
+// Set changes settings as one journal entry. An exception needs a reason.
 func (s *Study) Set(ctx context.Context, verb, reason string, edits ...SettingEdit) (Entry, error) {
 	changes := make([]Change, 0, len(edits))
 	for _, e := range edits {
 		def, ok := s.cat.Definition(e.Key)
 		if !ok {
 			return Entry{}, &UnknownKeyError{Key: e.Key, Nearest: s.cat.Nearest(e.Key)}
+		}
+		if strings.HasPrefix(e.Key, ExceptPrefix) && e.Value == "true" && strings.TrimSpace(e.Reason) == "" {
+			return Entry{}, &ValueError{Key: e.Key, Err: errors.New("an exception needs a reason; it goes into the appendix")}
 		}
 		c := Change{Kind: SettingRecord, Key: e.Key}
 		if e.Value != "" {

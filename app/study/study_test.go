@@ -137,6 +137,10 @@ func TestFreezeKeepsTheState(t *testing.T) {
 // plain tools: no library, every polygon is taken as valid.
 type plain struct{}
 
+func (plain) Operation(string, geo.LonLat) (study.Operation, error) {
+	return study.Operation{Known: true}, nil
+}
+
 func (plain) ToLonLat(code string) (func(geo.LonLat) (geo.LonLat, error), string, error) {
 	if code != "OGC:CRS84" {
 		return nil, "", errors.New("no such system")

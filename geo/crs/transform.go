@@ -108,6 +108,9 @@ func clip(s string) string {
 // Code gives the canonical name of the source system.
 func (t *Transform) Code() string { return t.code }
 
+// Editions gives the editions of the library and the database that the transform comes from.
+func (t *Transform) Editions() Editions { return t.lib.editions }
+
 // Identity reports whether source coordinates are WGS 84 degrees already.
 func (t *Transform) Identity() bool { return t.pj == nil }
 

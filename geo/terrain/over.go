@@ -102,21 +102,67 @@ func (g *Grid) Over(polygons geo.XYGeometry, limitDeg float64) (Summary, error) 
 }
 
 // Steep gives the cells within the extent whose slope is above limitDeg as polygons for a rule that takes
-// land: cells side by side are merged to rows, equal rows above each other to blocks. Blocks may share
-// edges; the overlay joins them. Cells without a slope are left out.
+// land; see blocks. Cells without a slope are left out.
 func (g *Grid) Steep(within geo.Extent, limitDeg float64) (geo.XYGeometry, error) {
-	out := geo.XYGeometry{Kind: geo.Polygons}
 	if math.IsNaN(limitDeg) || limitDeg < 0 || limitDeg > 90 {
-		return out, fmt.Errorf("slope limit %v degrees: want 0 to 90", limitDeg)
+		return geo.XYGeometry{Kind: geo.Polygons}, fmt.Errorf("slope limit %v degrees: want 0 to 90", limitDeg)
 	}
-	e := g.Extent()
-	if within.Empty() || !within.Meets(e) {
-		return out, nil
-	}
-	c0, r0 := g.cell(geo.XY{X: math.Max(within.MinX, e.MinX), Y: math.Max(within.MinY, e.MinY)})
-	c1, r1 := g.cell(geo.XY{X: math.Min(within.MaxX, e.MaxX), Y: math.Min(within.MaxY, e.MaxY)})
-	c1, r1 = min(c1, g.NX-1), min(r1, g.NY-1)
+	return g.blocks(within, func(c, r int) bool {
+		a, ok := g.SlopeDeg(c, r)
+		return ok && a > limitDeg
+	}), nil
+}
 
+// Turned gives the cells within the extent that fall in a direction outside of those from fromDeg clockwise
+// to toDeg, both clockwise from grid north, where the slope is above slopeDeg. Level cells, cells without a
+// slope are left out; a sweep of 360 degrees or more takes nothing.
+func (g *Grid) Turned(within geo.Extent, fromDeg, toDeg, slopeDeg float64) (geo.XYGeometry, error) {
+	for _, x := range []float64{fromDeg, toDeg, slopeDeg} {
+		if math.IsNaN(x) || math.IsInf(x, 0) {
+			return geo.XYGeometry{Kind: geo.Polygons}, fmt.Errorf("aspect from %v to %v degrees above a slope of %v: want numbers", fromDeg, toDeg, slopeDeg)
+		}
+	}
+	if toDeg-fromDeg >= 360 {
+		return geo.XYGeometry{Kind: geo.Polygons}, nil
+	}
+	sweep := clockwise(toDeg - fromDeg)
+	return g.blocks(within, func(c, r int) bool {
+		if s, ok := g.SlopeDeg(c, r); !ok || s <= slopeDeg {
+			return false
+		}
+		a, ok := g.AspectDeg(c, r)
+		return ok && clockwise(a-fromDeg) > sweep
+	}), nil
+}
+
+// clockwise brings an angle into 0 to under 360 degrees.
+func clockwise(deg float64) float64 {
+	if deg = math.Mod(deg, 360); deg < 0 {
+		deg += 360
+	}
+	return deg
+}
+
+// Above gives the cells within the extent whose height is above heightM, as polygons; see blocks. Cells
+// without a height are left out.
+func (g *Grid) Above(within geo.Extent, heightM float64) (geo.XYGeometry, error) {
+	if math.IsNaN(heightM) {
+		return geo.XYGeometry{Kind: geo.Polygons}, fmt.Errorf("height limit %v m: want a number", heightM)
+	}
+	return g.blocks(within, func(c, r int) bool {
+		h, ok := g.Height(c, r)
+		return ok && h > heightM
+	}), nil
+}
+
+// blocks gives the cells within the extent that are taken as polygons: cells side by side are merged to
+// rows, equal rows above each other to blocks. Blocks may share edges; the overlay joins them.
+func (g *Grid) blocks(within geo.Extent, takes func(c, r int) bool) geo.XYGeometry {
+	out := geo.XYGeometry{Kind: geo.Polygons}
+	c0, r0, c1, r1, ok := g.Window(within)
+	if !ok {
+		return out
+	}
 	type run struct{ c0, c1, r0 int } // columns c0 to c1, begun in row r0
 	var open []run                    // blocks that the last row could continue, by rising c0
 	end := func(b run, r int) {
@@ -128,7 +174,7 @@ func (g *Grid) Steep(within geo.Extent, limitDeg float64) (geo.XYGeometry, error
 	for r := r0; r <= r1; r++ {
 		var row []run
 		for c := c0; c <= c1; c++ {
-			if a, ok := g.SlopeDeg(c, r); !ok || a <= limitDeg {
+			if !takes(c, r) {
 				continue
 			}
 			if n := len(row); n > 0 && row[n-1].c1 == c-1 {
@@ -153,5 +199,16 @@ func (g *Grid) Steep(within geo.Extent, limitDeg float64) (geo.XYGeometry, error
 	for _, b := range open {
 		end(b, r1)
 	}
-	return out, nil
+	return out
+}
+
+// Window gives the columns, rows of the cells that meet an extent; false when none does.
+func (g *Grid) Window(within geo.Extent) (c0, r0, c1, r1 int, ok bool) {
+	e := g.Extent()
+	if within.Empty() || !within.Meets(e) {
+		return 0, 0, 0, 0, false
+	}
+	c0, r0 = g.cell(geo.XY{X: math.Max(within.MinX, e.MinX), Y: math.Max(within.MinY, e.MinY)})
+	c1, r1 = g.cell(geo.XY{X: math.Min(within.MaxX, e.MaxX), Y: math.Min(within.MaxY, e.MaxY)})
+	return c0, r0, min(c1, g.NX-1), min(r1, g.NY-1), true
 }

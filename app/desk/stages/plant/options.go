@@ -126,6 +126,8 @@ func renamed(key, from, to string) (string, bool) {
 	}
 	head, last := key[:dot+1], key[dot+1:]
 	switch {
+	case head == "rule.measured_to." && last == from:
+		return head + to, true
 	case head == "land.farmland_coshare." && (last == from || last == from+"_panels"):
 		return head + to + strings.TrimPrefix(last, from), true
 	case !strings.HasPrefix(key, "rule."):

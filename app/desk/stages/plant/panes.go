@@ -28,6 +28,7 @@ type rules struct {
 
 	others  []string // behind the options of more
 	exclude *fyne.Container
+	except  *exception
 	laid    string // what the rows were laid out for
 }
 
@@ -35,6 +36,7 @@ func newRules(s *stage) *rules {
 	r := &rules{s: s, box: container.NewVBox(), rows: map[string]*row{}, adds: map[string]*adding{}}
 	r.more = newChoiceField(nil, nil, s.reached)
 	r.more.PlaceHolder = "Exclude ground of another kind"
+	r.except = newException(s)
 	r.exclude = widgets.Fields(8, []float32{0, 96}, r.more, widget.NewButton("Exclude", r.addExclusion))
 	r.body = container.NewVScroll(container.New(insets{2, 6, 16, 8}, r.box))
 	return r
@@ -94,7 +96,15 @@ func (r *rules) update() {
 		for _, d := range shapes(snap, p) {
 			put(d.prefix+p.names[0]+d.suffix, d.label, "Take out", nil, d.held)
 		}
+		if p.wind {
+			key := "rule.measured_to." + p.names[0]
+			put(key, "Distances end at", "Use default", []choice{{"mast", "the mast"}, {"blade tip", "the tip of a blade"}}, cascade(snap, "rule.measured_to.", p, ""))
+		}
 	}
+	r.common(snap, add, func(key, label string, choices []choice) {
+		held, byUser, ok := snap.Lookup(key)
+		put(key, label, "Take out", choices, inForce{key, held, byUser, ok})
+	})
 	add(widgets.Part("Excluded ground, for every option"))
 	yesno := []choice{{"true", "taken out"}, {"false", "may be built on"}}
 	var others, titles []string
@@ -142,6 +152,92 @@ func (r *rules) update() {
 	if moved {
 		r.body.Refresh()
 	}
+}
+
+// common shows what holds for every option: where distances from dwellings begin, how true positions are,
+// and the user's exceptions.
+func (r *rules) common(snap *study.Snapshot, add func(fyne.CanvasObject), put func(key, label string, choices []choice)) {
+	add(widgets.Part("Distances and places, for every option"))
+	put("rule.measured_from.dwellings", "From dwellings", []choice{{"facade", "at their outline"}, {"centroid", "at their centre"}, {"plot", "at their parcel's edge"}})
+	for _, role := range snap.Catalog().Roles {
+		if key := "layer.tolerance." + role.Name + "_m"; len(snap.LayersOf(role.Name)) > 0 && (role.Accepts("point") || role.Accepts("line") || role.Accepts("polygon")) && role.Name != "district" && role.Name != "place_names" {
+			put(key, role.Title+" lie within", nil)
+		}
+	}
+	var excepted []string
+	for key := range snap.Explicit {
+		if strings.HasPrefix(key, study.ExceptPrefix) {
+			excepted = append(excepted, key)
+		}
+	}
+	slices.Sort(excepted)
+	offered := r.except.offer()
+	if len(excepted) == 0 && !offered {
+		return
+	}
+	add(widgets.Part("Your exceptions"))
+	if offered {
+		add(r.except.all)
+	}
+	for _, key := range excepted {
+		name, site, _ := strings.Cut(strings.TrimPrefix(key, study.ExceptPrefix), ".")
+		put(key, site+": "+present.Rule(name), []choice{{"true", "does not hold"}, {"false", "holds"}})
+	}
+}
+
+// exception is the form by which the user lets a rule not hold on the chosen site.
+type exception struct {
+	s     *stage
+	site  string
+	names []string // of the rules, behind the options of pick
+	pick  *choiceField
+	why   *field
+	all   *fyne.Container
+}
+
+func newException(s *stage) *exception {
+	x := &exception{s: s, pick: newChoiceField(nil, nil, s.reached), why: newField("why (needed; it goes into the appendix)", s.reached)}
+	x.why.OnSubmitted = func(string) { x.commit() }
+	x.all = container.NewVBox(x.pick, widgets.Fields(6, []float32{0, 96}, x.why, widget.NewButton("Except", x.commit)))
+	return x
+}
+
+// offer fills in the rules that take land of the chosen site; it gives false when there is none.
+func (x *exception) offer() bool {
+	x.site, x.names = "", nil
+	var titles []string
+	for _, c := range x.s.core.Chosen() {
+		if c == nil {
+			continue
+		}
+		x.site = c.Site
+		for _, t := range c.Taken {
+			x.names = append(x.names, t.Rule)
+			titles = append(titles, present.Rule(t.Rule))
+		}
+		break
+	}
+	x.pick.PlaceHolder = "A rule that shall not hold on " + x.site
+	if !slices.Equal(x.pick.Options, titles) {
+		x.pick.ClearSelected()
+		x.pick.SetOptions(titles)
+	}
+	return len(x.names) > 0
+}
+
+func (x *exception) commit() {
+	i, why := x.pick.SelectedIndex(), strings.TrimSpace(x.why.Text)
+	switch {
+	case i < 0 || i >= len(x.names):
+		x.s.core.Tell("Choose the rule that shall not hold on " + x.site + ".")
+		return
+	case why == "":
+		x.s.core.Tell("An exception needs a reason; everyone who reads the appendix will see it.")
+		return
+	}
+	x.s.core.Set("except a rule", why, study.SettingEdit{Key: study.ExceptPrefix + x.names[i] + "." + x.site, Value: "true", Source: "user", Reason: why})
+	x.pick.ClearSelected()
+	x.why.SetText("")
 }
 
 // addExclusion takes ground of one more kind out, for every option.
@@ -194,6 +290,7 @@ type adding struct {
 	part        part
 	roles       []string
 	role, unit  *choiceField
+	only        *field // which features: all, a class, from a voltage
 	number      *field
 	source, why *field
 	fault       *widget.Label
@@ -201,7 +298,7 @@ type adding struct {
 }
 
 func newAdding(s *stage, p part) *adding {
-	a := &adding{s: s, part: p, roles: distanceRoles(s.core.Parts.Catalog), number: newField("number", s.reached), source: newField("source", s.reached), why: newField("why", s.reached), fault: caption("")}
+	a := &adding{s: s, part: p, roles: distanceRoles(s.core.Parts.Catalog), only: newField("all; a class; 110 kV", s.reached), number: newField("number", s.reached), source: newField("source", s.reached), why: newField("why", s.reached), fault: caption("")}
 	titles := make([]string, len(a.roles))
 	for i, role := range a.roles {
 		titles[i] = roleTitle(s.core.Parts.Catalog, role)
@@ -218,12 +315,13 @@ func newAdding(s *stage, p part) *adding {
 	a.unit.SetSelectedIndex(0)
 	a.fault.Importance = widget.WarningImportance
 	a.fault.Hide()
-	for _, e := range []*field{a.number, a.source, a.why} {
+	for _, e := range []*field{a.only, a.number, a.source, a.why} {
 		e.OnSubmitted = func(string) { a.commit() }
 	}
 	a.all = container.NewVBox(
-		widgets.Fields(6, []float32{0, 76, 126}, a.role, a.number, a.unit),
-		widgets.Fields(6, []float32{0, 0, 96}, a.source, a.why, widget.NewButton("Add", a.commit)),
+		widgets.Fields(6, []float32{0, 150}, a.role, a.only),
+		widgets.Fields(6, []float32{0, 76, 126}, a.source, a.number, a.unit),
+		widgets.Fields(6, []float32{0, 96}, a.why, widget.NewButton("Add", a.commit)),
 		a.fault, space(8))
 	return a
 }
@@ -245,7 +343,12 @@ func (a *adding) commit() {
 		refuse(errors.New("give the distance as a number"))
 		return
 	}
-	key := "rule.setback." + a.roles[i] + "." + a.part.names[0] + distanceUnits[max(j, 0)].suffix
+	only, err := special(a.only.Text)
+	if err != nil {
+		refuse(err)
+		return
+	}
+	key := "rule.setback." + a.roles[i] + "." + only + a.part.names[0] + distanceUnits[max(j, 0)].suffix
 	if err := run.CheckSetting(a.s.core.Parts.Catalog, a.s.core.Parts.Params, key, text); err != nil {
 		refuse(err)
 		return
@@ -254,6 +357,7 @@ func (a *adding) commit() {
 	a.s.core.Set("add the distance", why, study.SettingEdit{Key: key, Value: text, Source: strings.TrimSpace(a.source.Text), Reason: why})
 	a.fault.Hide()
 	a.role.ClearSelected()
+	a.only.SetText("")
 	a.number.SetText("")
 	a.source.SetText("")
 	a.why.SetText("")

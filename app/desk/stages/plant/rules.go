@@ -1,8 +1,11 @@
 package plant
 
 import (
+	"fmt"
+	"strconv"
 	"strings"
 
+	"groundtally/app/run"
 	"groundtally/app/study"
 )
 
@@ -96,8 +99,7 @@ func distanceRoles(cat *study.Catalog) []string {
 func distances(snap *study.Snapshot, p part) []rule {
 	cat := snap.Catalog()
 	var out []rule
-	for _, role := range distanceRoles(cat) {
-		prefix := "rule.setback." + role + "."
+	add := func(role, prefix, label string) {
 		var held []rule
 		number := false
 		for _, u := range distanceUnits {
@@ -106,7 +108,7 @@ func distances(snap *study.Snapshot, p part) []rule {
 				continue
 			}
 			number = number || !f.notSet()
-			held = append(held, rule{role: role, label: roleTitle(cat, role), prefix: prefix, suffix: u.suffix, held: f})
+			held = append(held, rule{role: role, label: label, prefix: prefix, suffix: u.suffix, held: f})
 		}
 		for _, r := range held {
 			if !number || !r.held.notSet() { // a distance in another unit answers for one that is not set
@@ -114,13 +116,52 @@ func distances(snap *study.Snapshot, p part) []rule {
 			}
 		}
 	}
+	for _, role := range distanceRoles(cat) {
+		prefix := "rule.setback." + role + "."
+		add(role, prefix, roleTitle(cat, role))
+		for _, name := range run.SpecialDistances(snap, role) {
+			add(role, prefix+name, roleTitle(cat, role)+", "+specialWords(name))
+		}
+	}
 	return out
+}
+
+// specialWords writes which features of a role have a distance of their own.
+func specialWords(name string) string {
+	name = strings.TrimSuffix(name, ".")
+	if class, ok := strings.CutPrefix(name, "class."); ok {
+		return class
+	}
+	return strings.TrimSuffix(strings.TrimPrefix(name, "from_"), "_kv") + " kV and more"
+}
+
+// special reads what a user writes of the features that have a distance of their own: nothing for all, a
+// voltage such as "110 kV", else a class.
+func special(words string) (string, error) {
+	words = strings.Join(strings.Fields(words), " ")
+	if words == "" {
+		return "", nil
+	}
+	if number, ok := strings.CutSuffix(strings.ToLower(words), "kv"); ok {
+		number = strings.TrimSpace(number)
+		if kv, err := strconv.ParseFloat(number, 64); err != nil || kv <= 0 || strings.ContainsAny(number, ".,") {
+			return "", fmt.Errorf("give the least voltage in whole kilovolts, as 110 kV")
+		}
+		return "from_" + number + "_kv.", nil
+	}
+	if strings.Contains(words, ".") {
+		return "", fmt.Errorf("a class with a dot in its name cannot have a distance of its own")
+	}
+	return "class." + strings.ToLower(words) + ".", nil
 }
 
 // shapes lists the rules on slope and shape, whether they are in force or not.
 func shapes(snap *study.Snapshot, p part) []rule {
 	out := []rule{
 		{label: "Steepest slope", prefix: "rule.slope_max.", suffix: "_deg"},
+		{label: "Ground may fall from", prefix: "rule.aspect_from.", suffix: "_deg"},
+		{label: "… clockwise to", prefix: "rule.aspect_to.", suffix: "_deg"},
+		{label: "… where steeper than", prefix: "rule.aspect_slope.", suffix: "_deg"},
 		{label: "Smallest patch", prefix: "rule.smallest_patch.", suffix: "_ha"},
 		{label: "Smallest width", prefix: "rule.smallest_width.", suffix: "_m"},
 		{label: "Farming that goes on", prefix: "land.farmland_coshare.", suffix: ""},
