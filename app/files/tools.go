@@ -1,9 +1,14 @@
 package files
 
 import (
+	"cmp"
+	"slices"
+
 	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/crs"
+	"groundtally/geo/index"
+	"groundtally/geo/measure"
 	"groundtally/geo/overlay"
 )
 
@@ -52,6 +57,33 @@ func (t *tools) Frame(centre geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeomet
 	}
 	return f.Project, f.Unproject, nil
 }
+
+func (t *tools) Overlaps(polygons []geo.XYGeometry, leastM2 float64) ([]study.Overlap, error) {
+	tree := index.Of(polygons, 0)
+	var out []study.Overlap
+	for i, g := range polygons {
+		for _, j := range tree.Search(geo.ExtentOf(g).Grow(-edgeM), nil) {
+			if j <= i {
+				continue
+			}
+			both, err := t.engine.Intersection(g, polygons[j])
+			if err != nil {
+				return nil, err
+			}
+			if both.Kind != geo.Polygons {
+				continue
+			}
+			if m2 := measure.AreaM2(both); m2 > leastM2 {
+				out = append(out, study.Overlap{I: i, J: j, AreaM2: m2})
+			}
+		}
+	}
+	slices.SortFunc(out, func(a, b study.Overlap) int { return cmp.Or(cmp.Compare(a.I, b.I), cmp.Compare(a.J, b.J)) })
+	return out, nil
+}
+
+// edgeM is how far neighbours' boxes may reach over each other without their outlines being compared.
+const edgeM = 0.01
 
 func (t *tools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
 	out, rep, err := t.engine.Repair(g)

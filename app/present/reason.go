@@ -181,3 +181,19 @@ func Provenance(p string) string {
 	}
 	return p
 }
+
+// Relaxation writes a change of one rule that would bring a candidate back. Part is empty, "wind" or "solar".
+func Relaxation(rule, part string, from, to float64, unit string, lifted bool) string {
+	words := Rule(rule)
+	if part != "" {
+		words += " (" + part + " part)"
+	}
+	if lifted {
+		return words + ": only without this rule"
+	}
+	digits := 1
+	if unit == "ha" {
+		digits = 3
+	}
+	return words + ": " + group(to, digits) + " " + Unit(unit) + " in place of " + group(from, digits) + " " + Unit(unit)
+}

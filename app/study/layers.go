@@ -9,6 +9,7 @@ import (
 	"strings"
 
 	"groundtally/geo"
+	"groundtally/geo/measure"
 	"groundtally/scoring/units"
 )
 
@@ -32,6 +33,7 @@ type LayerRecord struct {
 	Units    map[string]string `json:"units,omitempty"` // by column
 	Personal []string          `json:"personal,omitempty"`
 	Ledger   Ledger            `json:"ledger"`
+	Only     []Wanted          `json:"only,omitempty"` // the part of the file that was asked for
 	Notices  []geo.Notice      `json:"notices,omitempty"`
 	Extent   [4]float64        `json:"extent"` // west, south, east, north in degrees
 }
@@ -41,6 +43,7 @@ type Ledger struct {
 	Read     int `json:"read"`
 	Repaired int `json:"repaired"`
 	LeftOut  int `json:"left_out"`
+	NotAsked int `json:"not_asked,omitempty"` // features outside the part that was asked for
 }
 
 // Import is one file, read but not yet given a meaning, with the user's answers.
@@ -61,6 +64,7 @@ type Import struct {
 	Units           map[string]string // column to unit
 	Personal        []string
 	SwapAxes        bool
+	Only            []Wanted // features that fit any; none for all
 	Replace         string
 	AcceptProposals bool
 	Complete        bool
@@ -77,6 +81,8 @@ type Tools interface {
 	Operation(crs string, at geo.LonLat) (Operation, error)
 	// Frame gives the local metric frame around a centre.
 	Frame(centre geo.LonLat) (forward func(geo.LonLatGeometry) (geo.XYGeometry, error), inverse func(geo.XYGeometry) (geo.LonLatGeometry, error), err error)
+	// Overlaps gives the pairs of polygons that share more than leastM2, in order.
+	Overlaps(polygons []geo.XYGeometry, leastM2 float64) ([]Overlap, error)
 	// Repair makes a polygon geometry valid; changed is false when it was valid already.
 	Repair(g geo.XYGeometry) (repaired geo.XYGeometry, changed bool, areaBeforeM2, areaAfterM2 float64, err error)
 }
@@ -88,6 +94,12 @@ type Operation struct {
 	Known     bool   // AccuracyM is stated
 	Ballpark  bool   // the shift between the two datums is not known: positions may be off by 100 m and more
 	Database  string // editions of the projection library and its database
+}
+
+// Overlap is a pair of polygons by their numbers, and the area that they share.
+type Overlap struct {
+	I, J   int
+	AreaM2 float64
 }
 
 // Question is something that only the user can answer, with the exact option that answers it.
@@ -272,6 +284,12 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 	if len(in.Layer.Features) == 0 {
 		return nil, nil, &FileError{File: in.File, What: "the layer holds no feature", Cure: "Check that the export was not filtered to nothing"}
 	}
+	for _, w := range in.Only {
+		if in.Layer.ColumnIndex(w.Column) < 0 {
+			return nil, nil, &QuestionError{File: in.File, Questions: []Question{{Text: fmt.Sprintf("there is no column %q; the columns are: %s", w.Column, columnNames(in.Layer)), Option: "--only COLUMN=VALUE"}}}
+		}
+	}
+	Remember(&in, role, snap)
 	var questions []Question
 	questions = append(questions, matchFields(rec, in, role)...)
 	rec.Personal = personal(rec, in, role)
@@ -282,6 +300,10 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 	}
 
 	layer := &geo.Layer{Name: rec.Name, Columns: append([]geo.Column(nil), in.Layer.Columns...), Features: append([]geo.Feature(nil), in.Layer.Features...)}
+	rec.Only, rec.Ledger.NotAsked = in.Only, only(layer, in.Only)
+	if len(layer.Features) == 0 {
+		return nil, nil, &FileError{File: in.File, What: "no feature has the values that were asked for", Cure: "Check --only"}
+	}
 	for i := range layer.Columns {
 		layer.Columns[i].Unit = rec.Units[layer.Columns[i].Name]
 		for _, p := range rec.Personal {
@@ -326,6 +348,9 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 		return nil, nil, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
 	}
 	rec.Pipeline = pipeline
+	if q := degreesAsMetres(rec, in, layer, transform); q != nil {
+		return nil, nil, &QuestionError{File: in.File, Questions: append(questions, *q)}
+	}
 	if err := s.operation(rec, in, layer, tools); err != nil {
 		return nil, nil, err
 	}
@@ -489,11 +514,15 @@ func matchFields(rec *LayerRecord, in Import, role Role) []Question {
 		rec.Match[f.Name] = col
 		unit := in.Units[col]
 		if f.Physical() {
+			proposed, why := ProposeUnit(in.Layer, col, f)
 			if unit == "" && in.AcceptProposals {
-				unit = f.Unit
+				unit = proposed
 			}
 			if unit == "" {
-				qs = append(qs, Question{Text: fmt.Sprintf("in which unit is column %q (field %s)?", col, f.Name), Option: fmt.Sprintf("--unit %s=%s, or --accept-proposals", col, f.Unit)})
+				if why != "" {
+					why = fmt.Sprintf(" It looks like %s: %s.", proposed, why)
+				}
+				qs = append(qs, Question{Text: fmt.Sprintf("in which unit is column %q (field %s)?%s", col, f.Name, why), Option: fmt.Sprintf("--unit %s=%s, or --accept-proposals", col, proposed)})
 			}
 		}
 		if unit != "" && f.Physical() {
@@ -646,6 +675,7 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 	seenID := map[string]int{}
 	kinds := map[string]int{}
 	kept := layer.Features[:0:0]
+	var flats []geo.XYGeometry // of parcels
 	for _, f := range layer.Features {
 		if err := ctx.Err(); err != nil {
 			return err
@@ -664,8 +694,10 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 			continue
 		}
 		at := anyPosition(f.Geometry)
+		var flat geo.XYGeometry
 		if f.Geometry.Kind == geo.Polygons {
-			flat, err := forward(f.Geometry)
+			var err error
+			flat, err = forward(f.Geometry)
 			if err != nil {
 				return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
 			}
@@ -680,6 +712,7 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 				continue
 			}
 			if changed {
+				flat = repaired
 				if f.Geometry, err = inverse(repaired); err != nil {
 					return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
 				}
@@ -714,8 +747,17 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 		}
 		kinds[f.Geometry.Kind.String()]++
 		kept = append(kept, f)
+		if role.Name == "parcels" {
+			flats = append(flats, flat)
+		}
 	}
 	layer.Features = kept
+	if len(flats) > 0 {
+		size := func(g geo.XYGeometry) (float64, float64) { return measure.AreaM2(g), measure.LengthM(g) }
+		if err := parcelChecks(rec, layer, flats, size, tools, note); err != nil {
+			return err
+		}
+	}
 	if len(kept) == 0 {
 		return &FileError{File: in.File, What: fmt.Sprintf("no feature of the file can serve as %s: %d were read, all were left out", role.Name, rec.Ledger.Read), Cure: fmt.Sprintf("The role takes %s: check that this is the right file, and that its outlines enclose ground", strings.Join(role.Geometry, " or "))}
 	}

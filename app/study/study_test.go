@@ -137,6 +137,8 @@ func TestFreezeKeepsTheState(t *testing.T) {
 // plain tools: no library, every polygon is taken as valid.
 type plain struct{}
 
+func (plain) Overlaps([]geo.XYGeometry, float64) ([]study.Overlap, error) { return nil, nil }
+
 func (plain) Operation(string, geo.LonLat) (study.Operation, error) {
 	return study.Operation{Known: true}, nil
 }

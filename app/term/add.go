@@ -18,6 +18,7 @@ var verbAdd = verb{
 		{name: "match", value: "FIELD=COLUMN", many: true, help: "which column is which field"},
 		{name: "unit", value: "COLUMN=UNIT", many: true, help: "unit of a column"},
 		{name: "personal", value: "COLUMN", many: true, help: "column that must never be drawn or exported unasked"},
+		{name: "only", value: "COLUMN=VALUE|VALUE", many: true, help: "only the features with one of these values; several are joined by or"},
 		{name: "swap-axes", help: "the file has latitude before longitude"},
 		{name: "replace", value: "LAYER", help: "put the file in place of this layer"},
 		{name: "accept-proposals", help: "take the proposed columns and units"},
@@ -30,7 +31,21 @@ var verbAdd = verb{
 	run: func(c *call) (int, error) {
 		file := c.args.places[1]
 		if !c.args.has("as") {
-			return 0, &study.QuestionError{File: file, Questions: []study.Question{{Text: "what does the file mean here? The roles are: " + c.roleNames(), Option: "--as ROLE"}}}
+			option := "--as ROLE"
+			if in, err := c.ReadFile(c.ctx, file, true); err == nil {
+				if proposed := study.ProposeRole(c.Catalog, in); proposed != "" {
+					option = "--as " + proposed + " (proposed from the file's name)"
+				}
+			}
+			return 0, &study.QuestionError{File: file, Questions: []study.Question{{Text: "what does the file mean here? The roles are: " + c.roleNames(), Option: option}}}
+		}
+		var only []study.Wanted
+		for _, text := range c.args.values["only"] {
+			w, err := study.ParseWanted(text)
+			if err != nil {
+				return 0, usagef("--only: %v", err)
+			}
+			only = append(only, w)
 		}
 		role, ok := c.Catalog.Role(c.args.get("as"))
 		if !ok {
@@ -64,6 +79,7 @@ var verbAdd = verb{
 			in.Role, in.Name, in.CRSOption, in.Match, in.Units = role.Name, c.args.get("name"), c.args.get("crs"), match, unit
 			in.Personal, in.SwapAxes, in.Replace = c.args.values["personal"], c.args.has("swap-axes"), c.args.get("replace")
 			in.AcceptProposals, in.Complete = c.args.has("accept-proposals"), c.args.has("complete")
+			in.Only = only
 			in.Edition, in.Holder, in.Reason = c.args.get("edition"), c.args.get("holder"), c.args.get("reason")
 			if in.Layer != nil {
 				for _, opt := range [][]string{in.Personal, sortedKeys(unit)} {
@@ -104,7 +120,11 @@ var verbAdd = verb{
 }
 
 func ledgerWords(l study.Ledger) string {
-	return fmt.Sprintf("%d read, %d repaired, %d left out", l.Read, l.Repaired, l.LeftOut)
+	words := fmt.Sprintf("%d read, %d repaired, %d left out", l.Read, l.Repaired, l.LeftOut)
+	if l.NotAsked > 0 {
+		words += fmt.Sprintf(", %d not asked for", l.NotAsked)
+	}
+	return words
 }
 
 func (c *call) roleNames() string {

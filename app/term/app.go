@@ -81,7 +81,7 @@ var (
 
 func verbs() []verb {
 	return []verb{verbNew, verbAdd, verbRemove, verbGroup, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
-		verbCheck, verbCompute, verbTable, verbWhy, verbOrder, verbAppendix, verbVerify}
+		verbCheck, verbCompute, verbTable, verbWhy, verbRegister, verbOrder, verbAppendix, verbVerify}
 }
 
 func findVerb(name string) (verb, bool) {

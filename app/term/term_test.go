@@ -321,7 +321,7 @@ func TestEveryVerbInJSON(t *testing.T) {
 	runs := map[string][]string{
 		"add": {small + "soil.geojson", "--as", "soil", "--name", "more"}, "remove": {"more"}, "group": {"--by", "farm"},
 		"set": {"run.seed", "7"}, "get": nil, "undo": nil, "redo": nil, "journal": nil, "freeze": {"now"}, "check": nil, "compute": nil, "table": {"--top", "1"},
-		"why": {"south", "sun"}, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
+		"why": {"south", "sun"}, "register": nil, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
 	}
 	for _, v := range verbs()[1:] { // new comes first by itself
 		args, ok := runs[v.name]

@@ -2,6 +2,7 @@ package units
 
 import (
 	"fmt"
+	"sort"
 	"strings"
 )
 
@@ -17,6 +18,18 @@ func Convert(x float64, from, to string) (float64, error) {
 		return 0, fmt.Errorf("%q cannot be brought to %q", from, to)
 	}
 	return x * f.factor / t.factor, nil
+}
+
+// Alike lists the units that can be brought to one, itself first, the others in order of their names.
+func Alike(unit string) []string {
+	out := []string{unit}
+	for u := range unitTable {
+		if _, err := Convert(1, u, unit); err == nil && u != unit {
+			out = append(out, u)
+		}
+	}
+	sort.Strings(out[1:])
+	return out
 }
 
 // unitTable holds the units a file may deliver, by what they measure. Exact by definition (SI; the

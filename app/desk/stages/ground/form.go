@@ -20,6 +20,7 @@ import (
 	"groundtally/app/present"
 	"groundtally/app/study"
 	"groundtally/geo"
+	"groundtally/scoring/units"
 )
 
 // noColumn stands in a field's select for no column at all.
@@ -30,6 +31,7 @@ const noColumn = "no column"
 type form struct {
 	s       *Stage
 	in      study.Import
+	before  study.Import      // what was answered earlier of the same columns
 	replace study.LayerRecord // the layer in whose place the file goes; without a name when it is new
 	made    string
 	dialog  *dialog.CustomDialog
@@ -42,6 +44,8 @@ type form struct {
 	crs              *widget.Entry
 	swap             *widget.Check
 	complete         *widget.Check
+	only             *widget.Entry
+	systemAsked      bool // the user was asked about the coordinate system: what stands there now is an answer
 	edition, holder  *widget.Entry
 	reason           *widget.Entry
 	fields           []*fieldRow
@@ -67,7 +71,7 @@ type fieldRow struct {
 }
 
 func newForm(s *Stage, in study.Import, replace string) *form {
-	f := &form{s: s, in: in, made: madeOf(in), guess: widgets.Faint(""), purpose: widgets.NewParagraph("", 2), usual: widgets.Faint(""), name: widget.NewEntry(), crs: widget.NewEntry(), edition: widget.NewEntry(), holder: widget.NewEntry(), reason: widget.NewEntry(),
+	f := &form{s: s, in: in, made: madeOf(in), guess: widgets.Faint(""), purpose: widgets.NewParagraph("", 2), usual: widgets.Faint(""), name: widget.NewEntry(), crs: widget.NewEntry(), only: widget.NewEntry(), edition: widget.NewEntry(), holder: widget.NewEntry(), reason: widget.NewEntry(),
 		fieldBox: container.NewVBox(), personalBox: container.NewVBox(), sample: container.NewVBox(), personal: map[string]*widget.Check{}, asked: widgets.NewText(""), progress: widget.NewProgressBarInfinite()}
 	cat := s.c.Parts.Catalog
 	if rec, ok := hasLayer(s.c.View().Snap, replace); ok && replace != "" {
@@ -86,6 +90,13 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 	f.swap = widget.NewCheck("The file has latitude before longitude", nil)
 	f.complete = widget.NewCheck("It covers the whole place", nil)
 	f.purpose.Colour = theme.Faint
+	f.only.SetPlaceHolder("all; or natural=wood, landuse=forest|orchard")
+	for i, w := range f.replace.Only {
+		if i > 0 {
+			f.only.Text += ", "
+		}
+		f.only.Text += w.Column + "=" + strings.Join(w.Values, "|")
+	}
 	f.edition.SetPlaceHolder("edition or date of the data")
 	f.holder.SetPlaceHolder("who holds the data")
 	f.reason.SetPlaceHolder("for the journal")
@@ -110,7 +121,7 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 		role, _ := cat.Role(r.Role)
 		f.role.SetSelected(role.Title)
 		f.role.Disable()
-	} else if guess := guessRole(cat, in.Base, f.made); guess != "" {
+	} else if guess := study.ProposeRole(cat, in); guess != "" {
 		role, _ := cat.Role(guess)
 		f.role.SetSelected(role.Title)
 		f.guess.Set("A guess from the file's name. Change it if it is wrong.")
@@ -150,6 +161,9 @@ func (f *form) open() {
 	if f.made != "table" {
 		row("Coordinate system", "The system in which the coordinates of the file are.", f.crs)
 		row("", "", container.NewVBox(widgets.Faint(found), f.swap))
+	}
+	if f.made != "raster" {
+		row("Only", "The part of the features that is added: columns with the values that count. Several are joined by or.", f.only)
 	}
 	row("Whole place", "Whether nothing found means that nothing is there.", f.complete)
 	row("", "", widgets.Faint("Ticked: where nothing is drawn, nothing is there."))
@@ -212,6 +226,8 @@ func (f *form) roleChosen() {
 		return
 	}
 	proposed := study.Propose(f.in.Layer, role)
+	f.before = study.Import{Layer: f.in.Layer, Replace: f.replace.Name}
+	study.Remember(&f.before, role, f.s.c.View().Snap)
 	names := make([]string, len(f.in.Layer.Columns))
 	for i, c := range f.in.Layer.Columns {
 		names[i] = c.Name
@@ -219,7 +235,7 @@ func (f *form) roleChosen() {
 	table := container.New(layout.NewGridLayoutWithColumns(3), widgets.Faint("field"), widgets.Faint("column of the file"), widgets.Faint("unit of the column"))
 	for _, field := range role.Fields {
 		r := &fieldRow{field: field}
-		r.unit = widget.NewSelect(unitsFor(field.Unit), func(string) { f.showSample() })
+		r.unit = widget.NewSelect(units.Alike(field.Unit), func(string) { f.showSample() })
 		r.unit.PlaceHolder = "choose its unit"
 		options := names
 		at := slices.IndexFunc(names, func(n string) bool { return strings.EqualFold(n, field.Name) })
@@ -243,7 +259,7 @@ func (f *form) roleChosen() {
 		table.Add(container.NewStack(r.unit))
 		f.fields = append(f.fields, r)
 		column := proposed[field.Name]
-		if old := f.replace.Match[field.Name]; old != "" && slices.Contains(names, old) {
+		if old := f.before.Match[field.Name]; old != "" && slices.Contains(names, old) {
 			column = old
 		}
 		r.column.SetSelected(cmp.Or(column, noColumn))
@@ -282,7 +298,10 @@ func (f *form) columnChosen(r *fieldRow) {
 	} else {
 		r.unit.Show()
 		r.unit.ClearSelected()
-		known := cmp.Or(f.replace.Units[column], f.unitOf(column), unitInName(column, r.field.Unit))
+		known := cmp.Or(f.before.Units[column], f.unitOf(column))
+		if unit, why := study.ProposeUnit(f.in.Layer, column, r.field); known == "" && why != "" {
+			known = unit
+		}
 		if slices.Contains(r.unit.Options, known) {
 			r.unit.SetSelected(known)
 		}
@@ -369,8 +388,21 @@ func (f *form) answers() (in study.Import, unanswered string) {
 		return in, "Choose what the file means here."
 	}
 	in.Role, in.Name, in.CRSOption = role.Name, strings.TrimSpace(f.name.Text), strings.TrimSpace(f.crs.Text)
-	if in.CRSOption == "" {
+	switch {
+	case in.CRSOption == "":
 		in.CRS = "" // the user took out what the file says
+	case in.CRSOption == in.CRS && !f.systemAsked:
+		in.CRSOption = "" // the file's word, not the user's
+	}
+	for _, text := range strings.Split(f.only.Text, ",") {
+		if strings.TrimSpace(text) == "" {
+			continue
+		}
+		w, err := study.ParseWanted(text)
+		if err != nil {
+			return in, "Only: " + err.Error() + "."
+		}
+		in.Only = append(in.Only, w)
 	}
 	in.Replace = f.replace.Name
 	in.SwapAxes, in.Complete = f.swap.Checked, f.complete.Checked
@@ -483,7 +515,10 @@ func (f *form) questions(e *study.QuestionError) string {
 		case strings.HasPrefix(q.Option, "--match"):
 			text += " Choose the column above."
 			f.without.Show()
+		case strings.HasPrefix(q.Option, "--only"):
+			text += ". Change what stands at Only."
 		case strings.HasPrefix(q.Option, "--crs"):
+			f.systemAsked = true
 			text += " Enter it above."
 		}
 		lines = append(lines, text)

@@ -14,7 +14,6 @@ import (
 	"fyne.io/fyne/v2/widget"
 
 	"groundtally/app/desk/desktest"
-	"groundtally/app/program"
 	"groundtally/app/study"
 	"groundtally/geo"
 )
@@ -577,26 +576,6 @@ func TestSpareCapacity(t *testing.T) {
 	b.Settle()
 	if _, there := b.Core.View().Snap.Explicit[p.asset]; there {
 		t.Error("it was not taken out")
-	}
-}
-
-func TestGuessRole(t *testing.T) {
-	parts, err := program.Load()
-	if err != nil {
-		t.Fatal(err)
-	}
-	for file, want := range map[string]string{"Parcels_2031.geojson": "parcels", "water-protection.geojson": "water_protection", "dgm25.asc": "terrain", "xyz.csv": "", "grid lines.geojson": "grid_lines"} {
-		if got := guessRole(parts.Catalog, file, ""); got != want {
-			t.Errorf("%s: %q, want %q", file, got, want)
-		}
-	}
-	if got := guessRole(parts.Catalog, "parcels.asc", "raster"); got != "" {
-		t.Errorf("a grid is guessed to be %q", got)
-	}
-	for _, c := range [][3]string{{"rated_kw", "kW", "kW"}, {"voltage", "kV", ""}, {"ghi_kwh_per_m2_month", "kWh/(m2 month)", "kWh/(m2 month)"}, {"height_cm", "m", "cm"}} {
-		if got := unitInName(c[0], c[1]); got != c[2] {
-			t.Errorf("%s: %q, want %q", c[0], got, c[2])
-		}
 	}
 }
 
