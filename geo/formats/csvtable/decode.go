@@ -129,7 +129,7 @@ func (t *table) decode() (Result, error) {
 		l.Columns = append(l.Columns, geo.Column{Name: name})
 		t.fill(l, j, forms[j], decimal)
 	}
-	res := Result{Layer: l, Delimiter: t.in.comma, Decimal: decimal, Positions: t.pairs()}
+	res := Result{Layer: l, Delimiter: t.in.comma, Decimal: decimal, Positions: Places(l)}
 	res.Ledger.Read = len(l.Features)
 	if t.o.X != "" || t.o.Y != "" {
 		if res.Ledger.NoGeometry, err = t.points(l, decimal); err != nil {
@@ -523,13 +523,16 @@ var pairNames = []Pair{
 	{"rechtswert", "hochwert", false}, {"x_coord", "y_coord", false}, {"coord_x", "coord_y", false},
 }
 
-// pairs lists the columns whose names are those of positions.
-func (t *table) pairs() []Pair {
+// Places lists the columns of a table whose names are those of positions.
+func Places(l *geo.Layer) []Pair {
+	at := map[string]string{}
+	for i := len(l.Columns) - 1; i >= 0; i-- { // the first of two counts
+		at[strings.ToLower(l.Columns[i].Name)] = l.Columns[i].Name
+	}
 	var out []Pair
 	for _, p := range pairNames {
-		x, y := t.column(p.X), t.column(p.Y)
-		if x >= 0 && y >= 0 {
-			out = append(out, Pair{t.names[x], t.names[y], p.Degrees})
+		if x, y := at[p.X], at[p.Y]; x != "" && y != "" {
+			out = append(out, Pair{x, y, p.Degrees})
 		}
 	}
 	return out

@@ -125,7 +125,7 @@ func (d *decoder) unmix(l *geo.Layer) {
 
 // plain writes a number without an exponent where a person would.
 func plain(f float64) string {
-	if f != 0 && (f > 1e15 || f < -1e15 || (f < 1e-6 && f > -1e-6)) {
+	if f != 0 && (f >= 1<<53 || f <= -1<<53 || (f < 1e-6 && f > -1e-6)) {
 		return strconv.FormatFloat(f, 'g', -1, 64)
 	}
 	return strconv.FormatFloat(f, 'f', -1, 64)
