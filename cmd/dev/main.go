@@ -34,6 +34,7 @@ var verbs = []verb{
 	{"kill", "[-rounds 5]", "kills the program while it writes, over and over (tests TestKill...)", runKill},
 	{"soak", "[-time 10m]", "works for a long time on one study (tests TestSoak..., build tag soak)", runSoak},
 	{"scale", "", "works on large districts (tests TestScale..., build tag scale)", runScale},
+	{"overlay", "[-parcels 20000] [-cores N]", "times the overlay of the hard set beside a C program's", runOverlay},
 	{"memory", "", "lists the numbers that still rest on memory", runMemory},
 	{"sample", "", "makes the files of the sample study anew", runSample},
 }

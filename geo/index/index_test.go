@@ -123,3 +123,39 @@ func BenchmarkSearch(b *testing.B) {
 		})
 	}
 }
+
+// Each step of the curve goes to a cell beside; every cell is reached once.
+func TestCurveIsOneWalk(t *testing.T) {
+	const side = 32
+	es := make([]geo.Extent, 0, side*side+1)
+	for y := range side {
+		for x := range side {
+			es = append(es, geo.Extent{MinX: float64(x), MinY: float64(y), MaxX: float64(x), MaxY: float64(y)})
+		}
+	}
+	es = append(es, geo.EmptyExtent())
+	order := Curve(es)
+	if last := order[len(order)-1]; last != side*side {
+		t.Errorf("the empty extent is not last: %d", last)
+	}
+	seen := map[int]bool{}
+	steps := 0.0
+	for i, n := range order[:side*side] {
+		seen[n] = true
+		if i > 0 {
+			steps += es[n].Centre().Dist(es[order[i-1]].Centre())
+		}
+	}
+	if len(seen) != side*side {
+		t.Errorf("%d cells of %d", len(seen), side*side)
+	}
+	if mean := steps / (side*side - 1); mean != 1 {
+		t.Errorf("a step is %v cells long", mean)
+	}
+	if got := Curve(nil); len(got) != 0 {
+		t.Errorf("got %v", got)
+	}
+	if got := Curve(es[:1]); !slices.Equal(got, []int{0}) {
+		t.Errorf("got %v", got)
+	}
+}

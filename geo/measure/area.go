@@ -1,7 +1,9 @@
 package measure
 
 import (
+	"cmp"
 	"math"
+	"slices"
 
 	"groundtally/geo"
 )
@@ -118,4 +120,35 @@ func Centroid(g geo.XYGeometry) (geo.XY, bool) {
 	var sx, sy, n float64
 	g.Each(func(p geo.XY) { sx += p.X - o.X; sy += p.Y - o.Y; n++ })
 	return geo.XY{X: o.X + sx/n, Y: o.Y + sy/n}, true
+}
+
+// ConvexHull gives the smallest convex polygon around positions, counter-clockwise; empty when they lie on one
+// line. It is Andrew's monotone chain (Andrew 1979, Information Processing Letters 9).
+func ConvexHull(ps []geo.XY) geo.XYGeometry {
+	out := geo.XYGeometry{Kind: geo.Polygons}
+	ps = slices.Clone(ps)
+	slices.SortFunc(ps, func(a, b geo.XY) int { return cmp.Or(cmp.Compare(a.X, b.X), cmp.Compare(a.Y, b.Y)) })
+	ps = slices.Compact(ps)
+	left := func(a, b, c geo.XY) bool {
+		u, v := b.Sub(a), c.Sub(a)
+		return float64(u.X*v.Y)-float64(u.Y*v.X) > 0
+	}
+	half := func(ps []geo.XY) []geo.XY {
+		var h []geo.XY
+		for _, p := range ps {
+			for len(h) > 1 && !left(h[len(h)-2], h[len(h)-1], p) {
+				h = h[:len(h)-1]
+			}
+			h = append(h, p)
+		}
+		return h
+	}
+	lower := half(ps)
+	slices.Reverse(ps)
+	upper := half(ps)
+	if len(lower)+len(upper) < 5 { // a triangle has three corners, the first and last of which stand twice
+		return out
+	}
+	out.Parts = [][][]geo.XY{{append(lower[:len(lower):len(lower)], upper[1:]...)}}
+	return out
 }

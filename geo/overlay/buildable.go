@@ -9,7 +9,6 @@ import (
 	"github.com/twpayne/go-geos"
 
 	"groundtally/geo"
-	"groundtally/geo/index"
 	"groundtally/geo/measure"
 )
 
@@ -26,6 +25,8 @@ type Rule struct {
 	// Checked says that polygon features are known to be valid, as those of a Layer are, so that they
 	// are not checked again. Nobody may alter them from then on: an Engine remembers what they take.
 	Checked bool
+
+	regions []piece // the features with their extents, when they come from layers
 }
 
 // BuildableInput is a site with its rules.
@@ -113,8 +114,10 @@ func (e *Engine) Buildable(in BuildableInput) (out BuildableResult, err error) {
 	return out, nil
 }
 
+// bad reports whether v is no length or area: negative or not finite.
+func bad(v float64) bool { return v < 0 || math.IsNaN(v) || math.IsInf(v, 0) }
+
 func (in BuildableInput) check() error {
-	bad := func(v float64) bool { return v < 0 || math.IsNaN(v) || math.IsInf(v, 0) }
 	if in.Site.Kind != geo.Polygons || in.Site.Empty() {
 		return fmt.Errorf("the site is a %v, want polygons", in.Site.Kind)
 	}
@@ -168,7 +171,7 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 		t.Name, t.Taken = in.Rules[i].Name, geo.XYGeometry{Kind: geo.Polygons}
 		k := e.takes(in.Rules[i], site, box)
 		out.Repaired += k.repaired
-		if k.region == nil || !k.whole && k.areaM2 <= 0 {
+		if !k.taken || !k.whole && k.areaM2 <= 0 {
 			continue
 		}
 		t.SharedM2 = k.areaM2 // until the part taken alone is known
@@ -179,7 +182,7 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 		if in.KeepTaken {
 			own := site
 			if !t.TakesAll {
-				own = e.overlay(intersection, e.read(k.region), site)
+				own = e.overlay(intersection, k.region, site)
 			}
 			t.Taken = e.give(own, geo.Polygons)
 		}
@@ -204,9 +207,9 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 
 	kept := left
 	if w := in.SmallestWidthM; w > 0 && leftM2 > 0 {
-		kept = e.recall(name('w', taking, w), func() *geos.Geom { return e.wideEnough(left.in(e), w) })
+		kept = e.recall(name('w', taking, w), func() *geos.Geom { return e.wideEnough(left.g, w) })
 	}
-	out.Buildable = e.give(kept.in(e), geo.Polygons)
+	out.Buildable = e.give(kept.g, geo.Polygons)
 	if in.SmallestPatchM2 > 0 {
 		out.Buildable.Parts = slices.DeleteFunc(out.Buildable.Parts, func(part [][]geo.XY) bool {
 			return partArea(part) < in.SmallestPatchM2
@@ -232,12 +235,12 @@ func worse(a, b float64) float64 {
 
 // alone finds the land left, the area taken by all rules together, what each takes alone. One or more
 // rules that take all leave nothing: two of them share everything.
-func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, out *BuildableResult) (left *drawn, takenM2 float64) {
+func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, out *BuildableResult) (left *shape, takenM2 float64) {
 	n := len(taking)
 	if n == 0 {
-		return &drawn{g: site, shape: &shape{areaM2: out.GrossM2}}, 0
+		return &shape{g: site, areaM2: out.GrossM2}, 0
 	}
-	nothing := &drawn{g: e.own(e.ctx.NewEmptyPolygon(), "empty"), shape: &shape{}}
+	nothing := &shape{g: e.own(e.ctx.NewEmptyPolygon(), "empty")}
 	if all > 1 {
 		return nothing, out.GrossM2
 	}
@@ -251,16 +254,12 @@ func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, 
 		first = slices.IndexFunc(active, func(i int) bool { return out.Rules[i].TakesAll })
 		last, from = first, first+1
 	}
-	regions := make([]*drawn, n)
-	for k := range regions {
-		regions[k] = &drawn{shape: &shape{wkb: taking[k].region}}
-	}
 	// before[k] is the site without the regions before k.
-	before := make([]*drawn, n)
-	before[0] = &drawn{g: site, shape: &shape{areaM2: out.GrossM2}}
+	before := make([]*shape, n)
+	before[0] = &shape{g: site, areaM2: out.GrossM2}
 	for k := 1; k <= last; k++ {
 		before[k] = e.recall(name('b', taking[:k], 0), func() *geos.Geom {
-			return e.overlay(difference, before[k-1].in(e), regions[k-1].in(e))
+			return e.overlay(difference, before[k-1].g, taking[k-1].region)
 		})
 	}
 	left = nothing
@@ -268,7 +267,7 @@ func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, 
 		// The last difference is done on a grid, where gaps, spikes without area collapse that rounding
 		// left between regions side by side.
 		left = e.recall(name('l', taking, 0), func() *geos.Geom {
-			return e.overlayFrom(max(e.grid, finest), difference, before[n-1].in(e), regions[n-1].in(e))
+			return e.overlayFrom(max(e.grid, finest), difference, before[n-1].g, taking[n-1].region)
 		})
 	}
 	if n == 1 {
@@ -277,18 +276,18 @@ func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, 
 		return left, r.AloneM2
 	}
 	// after[k] is the union of regions[k:].
-	after := make([]*drawn, n)
-	after[n-1] = regions[n-1]
+	after := make([]*shape, n)
+	after[n-1] = &shape{g: taking[n-1].region}
 	for k := n - 2; k >= from; k-- {
 		after[k] = e.recall(name('u', taking[k:], 0), func() *geos.Geom {
-			return e.overlay(union, regions[k].in(e), after[k+1].in(e))
+			return e.overlay(union, taking[k].region, after[k+1].g)
 		})
 	}
 	for k := first; k <= last; k++ {
 		lifted := before[k].areaM2 // area left if the rule were lifted
 		if k+1 < n {
 			lifted = e.recall(name('a', taking, float64(k)), func() *geos.Geom {
-				return e.overlay(difference, before[k].in(e), after[k+1].in(e))
+				return e.overlay(difference, before[k].g, after[k+1].g)
 			}).areaM2
 		}
 		out.Rules[active[k]].AloneM2 = lifted - left.areaM2
@@ -297,7 +296,7 @@ func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, 
 		return left, out.GrossM2
 	}
 	return left, e.recall(name('t', taking, 0), func() *geos.Geom {
-		return e.overlay(intersection, after[0].in(e), site)
+		return e.overlay(intersection, after[0].g, site)
 	}).areaM2
 }
 
@@ -323,34 +322,51 @@ func (e *Engine) takes(r Rule, site *geos.Geom, box geo.Extent) *known {
 	}
 	before := e.retries
 	k := &known{}
-	region, whole := e.region(r, ps, reach, site, box, &k.repaired)
-	if region != nil {
-		k.region, k.whole = region.ToWKB(), whole
-		if !whole {
-			k.areaM2 = e.overlay(intersection, region, site).Area()
-		}
+	k.region, k.whole = e.region(r, ps, reach, site, box, &k.repaired)
+	k.taken = k.whole || k.region != nil
+	if k.taken && !k.whole {
+		k.areaM2 = e.overlay(intersection, k.region, site).Area()
 	}
 	k.retries = e.retries - before
 	if remember {
+		if k.region != nil {
+			e.memory.hold(e.keep(k.region))
+		}
 		e.memory.add(k, r, ps)
 	}
 	return k
 }
 
 // region gives what a rule takes in the neighbourhood of the site, nil for nothing; whole says that it
-// covers the site. Regions reach beyond the site, so that their edges do not run along the site's.
+// covers the site, which needs no region. Regions reach beyond the site, so that their edges do not run
+// along the site's.
 func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, box geo.Extent, repaired *int) (region *geos.Geom, whole bool) {
 	if r.Boundary {
 		if r.SetbackM == 0 {
 			return nil, false
 		}
 		x := box.Grow(2)
-		around := e.own(e.ctx.NewGeomFromBounds(x.MinX, x.MinY, x.MaxX, x.MaxY), "box")
+		rim := e.own(e.ctx.NewGeomFromBounds(x.MinX, x.MinY, x.MaxX, x.MaxY), "box")
 		inner := e.setback(site, -r.SetbackM)
 		if inner.IsEmpty() {
-			return around, true
+			return nil, true
 		}
-		return e.overlay(difference, around, inner), false
+		return e.overlay(difference, rim, inner), false
+	}
+	// Pieces that are taken as they are need not go to the library when they cover the site's surroundings or
+	// stay out of them: of large ones next to small sites most do.
+	asIs := r.Checked && r.SetbackM == 0
+	if asIs {
+		near := ps[:0:0]
+		for _, p := range ps {
+			switch around(p.g.Parts[0], reach) {
+			case covering:
+				return nil, true
+			case meeting:
+				near = append(near, p)
+			}
+		}
+		ps = near
 	}
 	// What may cover the site comes first: then the others need no work.
 	wide := make([]*geos.Geom, len(ps))
@@ -359,7 +375,7 @@ func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, b
 			continue
 		}
 		if wide[i] = e.widened(r, p, reach, repaired); !wide[i].IsEmpty() && e.covers(wide[i], site) {
-			return wide[i], true
+			return nil, true
 		}
 	}
 	var members []*geos.Geom
@@ -371,7 +387,8 @@ func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, b
 		if g.IsEmpty() {
 			continue
 		}
-		if !within(p.x.Grow(r.SetbackM*arcFactor), box.Grow(1)) {
+		// What is not widened was cut to this box already.
+		if r.SetbackM > 0 && !within(p.x.Grow(r.SetbackM*arcFactor), box.Grow(1)) {
 			cut := e.clip(g, box.Grow(1))
 			g.Destroy()
 			if g = cut; g.IsEmpty() {
@@ -388,6 +405,17 @@ func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, b
 
 // widened takes a piece into the context: valid, cut to the reach, widened by the setback.
 func (e *Engine) widened(r Rule, p piece, reach geo.Extent, repaired *int) *geos.Geom {
+	if r.Checked && p.g.Kind == geo.Polygons && !within(p.x, reach) {
+		if known := e.large.of(e, p.g); known != nil {
+			g := e.clip(known, reach)
+			if r.SetbackM > 0 {
+				wide := e.setback(g, r.SetbackM)
+				g.Destroy()
+				g = wide
+			}
+			return g
+		}
+	}
 	g := e.raw(p.g)
 	if p.g.Kind == geo.Polygons && !r.Checked && !g.IsValid() {
 		g = e.makeValid(g)
@@ -420,13 +448,28 @@ func pieces(r Rule, reach geo.Extent) []piece {
 		if f.Kind != geo.Polygons && r.SetbackM == 0 {
 			continue
 		}
-		for _, part := range f.Parts {
-			x, finite := extentOf(part)
+		// A layer knows the extents of its regions, which are finite.
+		known := i < len(r.regions) && sameStore(r.regions[i].g, f)
+		if known && !r.regions[i].x.Meets(reach) {
+			continue
+		}
+		for k, part := range f.Parts {
+			var x geo.Extent
+			finite := true
+			if known && len(f.Parts) == 1 {
+				x = r.regions[i].x
+			} else {
+				x, finite = extentOf(part)
+			}
 			if !finite {
 				fail("rule %q, feature %d: a position is not finite", r.Name, i+1)
 			}
 			if !x.Empty() && x.Meets(reach) {
-				out = append(out, piece{geo.XYGeometry{Kind: f.Kind, Parts: [][][]geo.XY{part}}, x})
+				own := f
+				if len(f.Parts) > 1 {
+					own.Parts = f.Parts[k : k+1 : k+1]
+				}
+				out = append(out, piece{own, x})
 			}
 		}
 	}
@@ -478,57 +521,19 @@ func (e *Engine) wideEnough(g *geos.Geom, w float64) *geos.Geom {
 		return core
 	}
 	// A mitre limit of 2 squares corners down to 60 degrees.
-	back := e.own(core.BufferWithStyle(w/2+widthSlackM, askedSegments, geos.BufCapStyleRound, geos.BufJoinStyleMitre, 2), "buffer")
+	back := e.sound(e.own(core.BufferWithStyle(w/2+widthSlackM, askedSegments, geos.BufCapStyleRound, geos.BufJoinStyleMitre, 2), "buffer"))
 	return e.overlay(intersection, g, back)
+}
+
+// sound repairs what the library made wrong: of a large core with many holes a buffer with square corners is
+// now and then shells within shells, with which an overlay fails or, worse, does not.
+func (e *Engine) sound(g *geos.Geom) *geos.Geom {
+	if g.IsValid() {
+		return g
+	}
+	return e.makeValid(g)
 }
 
 func partArea(part [][]geo.XY) float64 {
 	return measure.AreaM2(geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}})
-}
-
-// Layer is a rule's features widened by its setback once for many sites. It is read-only, so workers may
-// share it.
-type Layer struct {
-	regions []geo.XYGeometry
-	tree    *index.Tree
-}
-
-// NewLayer repairs the features where needed, widens each by setbackM metres, packs them in an index.
-// Without a setback, points and lines take no land and are left out.
-func (e *Engine) NewLayer(features []geo.XYGeometry, setbackM float64) (l *Layer, err error) {
-	l = &Layer{}
-	for i, f := range features {
-		err := e.do(fmt.Sprintf("feature %d", i+1), func() {
-			if setbackM < 0 || math.IsNaN(setbackM) || math.IsInf(setbackM, 0) {
-				fail("the setback %v m must be 0 or more", setbackM)
-			}
-			if f.Empty() || (f.Kind != geo.Polygons && setbackM == 0) {
-				return
-			}
-			g := e.raw(f)
-			if f.Kind == geo.Polygons && !g.IsValid() {
-				g = e.makeValid(g)
-			}
-			if r := e.give(e.setback(g, setbackM), geo.Polygons); !r.Empty() {
-				l.regions = append(l.regions, r)
-			}
-		})
-		if err != nil {
-			return nil, err
-		}
-	}
-	l.tree = index.Of(l.regions, 0)
-	return l, nil
-}
-
-// Len gives the number of regions.
-func (l *Layer) Len() int { return len(l.regions) }
-
-// Rule gives the rule with the regions that meet the extent of a site.
-func (l *Layer) Rule(name string, site geo.Extent) Rule {
-	r := Rule{Name: name, Checked: true}
-	for _, i := range l.tree.Search(site, nil) {
-		r.Features = append(r.Features, l.regions[i])
-	}
-	return r
 }

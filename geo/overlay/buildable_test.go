@@ -162,6 +162,27 @@ func TestShapeSteps(t *testing.T) {
 	}
 }
 
+// Shells within shells, as the library's buffer now and then gives them: the outer counts, once.
+func TestUnsoundBufferIsRepaired(t *testing.T) {
+	e := New()
+	nested := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{box(0, 0, 100, 100).Parts[0], box(10, 10, 20, 20).Parts[0]}}
+	err := e.do("sound", func() {
+		g := e.raw(nested)
+		if g.IsValid() || g.Area() != 10400 {
+			t.Error("this proves nothing")
+		}
+		if s := e.sound(g); !s.IsValid() || s.Area() != 10000 {
+			t.Errorf("got %s", s.ToWKT())
+		}
+		if g = e.raw(box(0, 0, 10, 10)); e.sound(g) != g {
+			t.Error("what is valid was made anew")
+		}
+	})
+	if err != nil {
+		t.Error(err)
+	}
+}
+
 // random gives a site with rules of every kind, some broken.
 func random(r *rand.Rand) BuildableInput {
 	site := star(r, geo.XY{}, 400, 6+r.IntN(30), false)
@@ -434,7 +455,7 @@ func BenchmarkBuildable(b *testing.B) {
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			e, in := New(), scene(n)
 			for b.Loop() {
-				e.memory = memory{}
+				e.memory.forget()
 				if _, err := e.Buildable(in); err != nil {
 					b.Fatal(err)
 				}
@@ -455,7 +476,7 @@ func BenchmarkBuildableFromLayers(b *testing.B) {
 				in.Rules[i] = l.Rule(rule.Name, geo.ExtentOf(in.Site))
 			}
 			for b.Loop() {
-				e.memory = memory{}
+				e.memory.forget()
 				if _, err := e.Buildable(in); err != nil {
 					b.Fatal(err)
 				}

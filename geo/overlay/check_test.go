@@ -40,7 +40,7 @@ func wkt(t testing.TB, s string) geo.XYGeometry {
 		kind = geo.Lines
 	}
 	out := geo.XYGeometry{Kind: kind}
-	d := decoder{g.ToWKB()}
+	d := decoder{b: g.ToWKB()}
 	if err := d.decode(&out); err != nil {
 		t.Fatal(err)
 	}

@@ -308,6 +308,9 @@ func TestNothingIsLeftAlive(t *testing.T) {
 		}
 		made++
 	}
+	if err := e.Close(); err != nil { // what it remembers of the site
+		t.Fatal(err)
+	}
 	for range 5 {
 		runtime.GC()
 	}
@@ -421,7 +424,7 @@ func FuzzDecode(f *testing.F) {
 	f.Add([]byte{1, 7, 0, 0, 0, 255, 255, 255, 255})
 	f.Fuzz(func(t *testing.T, data []byte) {
 		g := geo.XYGeometry{Kind: geo.Polygons}
-		d := decoder{data}
+		d := decoder{b: data}
 		if d.decode(&g) == nil {
 			g.Each(func(p geo.XY) {
 				if !p.Finite() {

@@ -12,9 +12,8 @@ import (
 )
 
 // memory holds what Buildable found out about one site, so that the next call for the same site under
-// rules that are partly the same need not compute it again. Geometry is kept as the library's well-known
-// binary, which carries every bit of a position, so that results with memory are the same, bit for bit,
-// as without; geometries of the library still end with the call that made them.
+// rules that are partly the same need not compute it again. Its geometries outlive the call that made them
+// and are destroyed with the memory: at the next site, at a fault, when the engine is closed.
 //
 // Only results of the first attempt, in floating precision, are kept. A result that failed to close the
 // account fails again in the same way.
@@ -22,6 +21,7 @@ type memory struct {
 	site   []byte // what the site was read from
 	rules  []*known
 	shapes map[string]*shape
+	held   []*geos.Geom
 }
 
 // mostKnown bounds the rules that are kept for one site.
@@ -36,31 +36,18 @@ type known struct {
 	features []geo.XYGeometry // of a checked rule, which nobody alters
 	pieces   []piece          // parts that reach the site
 
-	region            []byte  // nil when nothing reaches the site
-	whole             bool    // the region covers the site
-	areaM2            float64 // of region ∩ site; not set when whole
+	taken             bool       // something reaches the site
+	whole             bool       // the rule takes the whole site
+	region            *geos.Geom // what it takes in and around the site; nil when nothing, may be nil when whole
+	areaM2            float64    // of region ∩ site; not set when whole
 	repaired, retries int
 }
 
-// shape is a geometry, read into the context by the first call that uses it.
+// shape is a geometry with its area.
 type shape struct {
-	wkb     []byte
+	g       *geos.Geom
 	areaM2  float64
 	retries int // of its own making, not of what it was made from
-}
-
-// drawn is a shape in the hands of one call.
-type drawn struct {
-	*shape
-	g *geos.Geom
-}
-
-// in gives the geometry itself.
-func (d *drawn) in(e *Engine) *geos.Geom {
-	if d.g == nil {
-		d.g = e.read(d.wkb)
-	}
-	return d.g
 }
 
 // at forgets everything unless the site, as written in well-known binary, is the one known.
@@ -68,7 +55,22 @@ func (m *memory) at(site []byte) {
 	if len(m.rules) <= mostKnown && bytes.Equal(m.site, site) {
 		return
 	}
-	*m = memory{site: bytes.Clone(site), shapes: map[string]*shape{}}
+	m.forget()
+	m.site = append(m.site[:0], site...)
+}
+
+// forget destroys everything.
+func (m *memory) forget() {
+	for _, g := range m.held {
+		g.Destroy()
+	}
+	clear(m.held)
+	clear(m.rules)
+	if m.shapes == nil {
+		m.shapes = map[string]*shape{}
+	}
+	clear(m.shapes)
+	m.site, m.rules, m.held = m.site[:0], m.rules[:0], m.held[:0]
 }
 
 // given finds a rule by the features that it was given. Only features that are never altered can be told
@@ -134,17 +136,20 @@ func name(step byte, ks []*known, x float64) string {
 
 // recall gives a shape from memory, or makes it. What it is made from must have been recalled before, so
 // that operations tried again are counted once.
-func (e *Engine) recall(name string, compute func() *geos.Geom) *drawn {
+func (e *Engine) recall(name string, compute func() *geos.Geom) *shape {
 	if s, ok := e.memory.shapes[name]; ok && e.grid == 0 {
 		e.retries += s.retries
-		return &drawn{shape: s}
+		return s
 	}
 	before := e.retries
 	g := compute()
-	d := &drawn{g: g, shape: &shape{areaM2: g.Area(), retries: e.retries - before}}
+	s := &shape{g: g, areaM2: g.Area(), retries: e.retries - before}
 	if e.grid == 0 {
-		d.wkb = g.ToWKB()
-		e.memory.shapes[name] = d.shape
+		e.memory.hold(e.keep(g))
+		e.memory.shapes[name] = s
 	}
-	return d
+	return s
 }
+
+// hold makes the memory the owner of a geometry.
+func (m *memory) hold(g *geos.Geom) { m.held = append(m.held, g) }

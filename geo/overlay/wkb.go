@@ -78,7 +78,30 @@ func encode(buf []byte, g geo.XYGeometry) ([]byte, error) {
 
 var errShort = errors.New("well-known binary ends early")
 
-type decoder struct{ b []byte }
+// decoder reads well-known binary into the slices of its store.
+type decoder struct {
+	b []byte
+	store
+}
+
+// store hands out slices. With a chunk they are cut from slabs of so many positions and rings, so that the
+// collector has few things to look after where geometries stay for long; without, each is made by itself.
+type store struct {
+	chunk int
+	xy    []geo.XY
+	rings [][]geo.XY
+	parts [][][]geo.XY
+}
+
+// cut gives n items that nobody else has; appending to them copies them.
+func cut[T any](slab *[]T, n, chunk int) []T {
+	from := len(*slab)
+	if cap(*slab)-from < n {
+		*slab, from = make([]T, 0, max(n, chunk)), 0
+	}
+	*slab = (*slab)[:from+n]
+	return (*slab)[from : from+n : from+n]
+}
 
 func (d *decoder) u32() (uint32, error) {
 	if len(d.b) < 4 {
@@ -102,14 +125,20 @@ func (d *decoder) positions(n int) ([]geo.XY, error) {
 	if len(d.b) < 16*n {
 		return nil, errShort
 	}
-	ring := make([]geo.XY, n)
+	ring := cut(&d.xy, n, d.chunk)
+	b := d.b[:16*n]
+	d.b = d.b[16*n:]
+	zero := 0.0 // v − v is not a number for a v that is none or is infinite
 	for i := range ring {
-		ring[i].X = math.Float64frombits(binary.LittleEndian.Uint64(d.b))
-		ring[i].Y = math.Float64frombits(binary.LittleEndian.Uint64(d.b[8:]))
-		d.b = d.b[16:]
-		if !ring[i].Finite() {
-			return nil, fmt.Errorf("a position is not finite: %v", ring[i])
+		p := geo.XY{
+			X: math.Float64frombits(binary.LittleEndian.Uint64(b[16*i:])),
+			Y: math.Float64frombits(binary.LittleEndian.Uint64(b[16*i+8:])),
 		}
+		zero += (p.X - p.X) + (p.Y - p.Y)
+		ring[i] = p
+	}
+	if zero != 0 {
+		return nil, errors.New("a position is not finite")
 	}
 	return ring, nil
 }
@@ -129,9 +158,13 @@ func (d *decoder) decode(g *geo.XYGeometry) error {
 		return err
 	}
 	add := func(kind geo.Kind, part [][]geo.XY) {
-		if g.Kind == kind {
-			g.Parts = append(g.Parts, part)
+		if g.Kind != kind {
+			return
 		}
+		if g.Parts == nil {
+			g.Parts = cut(&d.parts, 1, d.chunk)[:0]
+		}
+		g.Parts = append(g.Parts, part)
 	}
 	switch t {
 	case wkbPoint:
@@ -161,7 +194,7 @@ func (d *decoder) decode(g *geo.XYGeometry) error {
 		if err != nil {
 			return err
 		}
-		part := make([][]geo.XY, 0, n)
+		part := cut(&d.rings, n, d.chunk)[:0]
 		for range n {
 			k, err := d.count(16)
 			if err != nil {
@@ -180,6 +213,9 @@ func (d *decoder) decode(g *geo.XYGeometry) error {
 		n, err := d.count(5)
 		if err != nil {
 			return err
+		}
+		if g.Parts == nil && n > 0 {
+			g.Parts = cut(&d.parts, n, d.chunk)[:0]
 		}
 		for range n {
 			if err := d.decode(g); err != nil {
