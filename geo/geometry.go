@@ -1,5 +1,10 @@
 package geo
 
+import (
+	"errors"
+	"fmt"
+)
+
 // Kind is the dimension of a geometry.
 type Kind uint8
 
@@ -94,4 +99,24 @@ func ExtentOf(g XYGeometry) Extent {
 	e := EmptyExtent()
 	g.Each(func(p XY) { e = e.Add(p) })
 	return e
+}
+
+// Shape gives the geometry that positions make: one a point, several a line, four or more that end where they
+// began a polygon. Positions beyond 180 by 90 degrees and none at all are errors.
+func Shape(ps []LonLat) (LonLatGeometry, error) {
+	for _, p := range ps {
+		if !p.Finite() || p.Lon < -180 || p.Lon > 180 || p.Lat < -90 || p.Lat > 90 {
+			return LonLatGeometry{}, fmt.Errorf("longitude %v, latitude %v is no place in degrees", p.Lon, p.Lat)
+		}
+	}
+	g := LonLatGeometry{Kind: Lines, Parts: [][][]LonLat{{ps}}}
+	switch n := len(ps); {
+	case n == 0:
+		return LonLatGeometry{}, errors.New("there is no position")
+	case n == 1:
+		g.Kind = Points
+	case n > 3 && ps[0] == ps[n-1]:
+		g.Kind = Polygons
+	}
+	return g, nil
 }

@@ -256,6 +256,7 @@ func Page(in Input) ([]byte, error) {
 		layers = append(layers, layerView{Name: l.Name, Role: present.Named(l.Role), CRS: l.CRS, Edition: l.Edition, Holder: l.Holder, Complete: complete, Digest: l.Digest[:min(16, len(l.Digest))], Count: l.Count, Read: l.Ledger.Read, Repaired: l.Ledger.Repaired, LeftOut: l.Ledger.LeftOut})
 	}
 	data["Layers"] = layers
+	data["Exceptions"], data["Out"], data["Coverage"] = exceptions(in.Snapshot), b.out(), coverage(in.Params, in.Results)
 	if data["Factors"], err = b.factors(); err != nil {
 		return nil, err
 	}

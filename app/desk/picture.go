@@ -49,6 +49,7 @@ type picture struct {
 	wanted   *shadeJob          // newest colouring asked for
 	busy     bool
 	around   map[string]*run.Surroundings // by candidate, of the results shown
+	zones    []geo.LonLatGeometry         // land left, drawn besides
 	of       *run.Results
 }
 
@@ -514,7 +515,16 @@ func (p *picture) mark() {
 		}
 		marks = append(marks, m)
 	}
+	if len(p.zones) > 0 {
+		marks = append(marks, tiles.Mark{Buildable: p.zones})
+	}
 	p.m.SetMarks(marks)
+}
+
+// showZones draws land that is left in the district.
+func (p *picture) showZones(zones []geo.LonLatGeometry) {
+	p.zones = zones
+	p.mark()
 }
 
 // ask finds what is drawn around a candidate, once.

@@ -120,6 +120,7 @@ func (w *Window) build() {
 	c.Tell = func(words string) { w.foot.tell(words) }
 	w.rail, w.bar, w.foot = newRail(w), newBar(w), newFoot(w)
 	w.picture = newPicture(w)
+	c.ShowZones = w.picture.showZones
 	c.ShowParcels, c.ShowPlace, c.Boxed = w.picture.showParcels, w.picture.showPlace, func() []string { return w.picture.boxed }
 	w.strip = strip.New(c)
 	w.strip.OnTaller = func(taller bool) {

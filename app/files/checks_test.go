@@ -46,7 +46,7 @@ func (b *bench) add(name, role, head string, change func(*study.Import), feature
 		list = append(list, fmt.Sprintf(`{"type":"Feature","geometry":%s,"properties":%s}`, g, props))
 	}
 	path := put(b.t, b.dir, name, fmt.Sprintf(`{"type":"FeatureCollection",%s"features":[%s]}`, head, strings.Join(list, ",")))
-	in, err := Import(context.Background(), path, false)
+	in, err := Import(context.Background(), path, study.ReadOptions{})
 	if err != nil {
 		return study.LayerRecord{}, err
 	}

@@ -29,6 +29,7 @@ const (
 	Shapefile   Kind = "shp"      // the .shp of a set
 	GeoTIFF     Kind = "tif"      // any TIFF
 	HGT         Kind = "hgt"      // known by its name and size alone
+	Workbook    Kind = "xlsx"     // sheets of a workbook
 	Zip         Kind = "zip"      // an archive that may hold a set of files
 )
 
@@ -207,8 +208,11 @@ func sniff(path string, head []byte, size int64) (Kind, error) {
 		return database(path, head)
 	}
 	if bytes.HasPrefix(head, []byte("PK\x03\x04")) {
-		if ext == ".xlsx" || ext == ".ods" || ext == ".xlsm" || ext == ".docx" {
-			return "", refuse(path, "it is a workbook or document", "Save the table as CSV")
+		switch ext {
+		case ".xlsx", ".xlsm":
+			return Workbook, nil
+		case ".ods", ".docx", ".odt":
+			return "", refuse(path, "it is a workbook or document", "Save the table as .xlsx or CSV")
 		}
 		return Zip, nil
 	}

@@ -489,6 +489,61 @@ func (s *Session) Months(c *run.Candidate, done func([12]scoring.Value, error)) 
 	survey(s, func(sv *run.Surveyor) ([12]scoring.Value, error) { return sv.Months(s.ctx, c) }, done)
 }
 
+// NearestMiss finds which change of one rule would bring a candidate back, as Around does; see run.Surveyor.
+func (s *Session) NearestMiss(c *run.Candidate, done func([]run.Relaxed, error)) {
+	survey(s, func(sv *run.Surveyor) ([]run.Relaxed, error) { return sv.NearestMiss(s.ctx, c) }, done)
+}
+
+// LandLeft finds the land that the rules of a plant option leave in the district, on another goroutine, where
+// progress and done are called. Stop ends it early.
+func (s *Session) LandLeft(plant string, progress run.Progress, done func([]run.Left, error)) (stop func()) {
+	return s.beside(progress, func(ctx context.Context, e *run.Engine, snap *study.Snapshot) func(error) {
+		list, err := e.LandLeft(ctx, snap, plant)
+		return func(other error) { done(list, errors.Join(err, other)) }
+	}, func(err error) { done(nil, err) })
+}
+
+// Sweep finds the land left, and the candidates, at each value of one rule; see run.Engine. Each and done are
+// called on another goroutine.
+func (s *Session) Sweep(plant, key string, values []float64, progress run.Progress, each func(run.Step), done func(error)) (stop func()) {
+	return s.beside(progress, func(ctx context.Context, e *run.Engine, snap *study.Snapshot) func(error) {
+		err := e.Sweep(ctx, snap, plant, key, values, func(st run.Step) error {
+			each(st)
+			return nil
+		})
+		return func(other error) { done(errors.Join(err, other)) }
+	}, done)
+}
+
+// beside does something with an engine of its own beside the session's computing. Fault is told what keeps it
+// from being done at all.
+func (s *Session) beside(progress run.Progress, do func(context.Context, *run.Engine, *study.Snapshot) func(error), fault func(error)) (stop func()) {
+	s.mu.Lock()
+	defer s.mu.Unlock()
+	if s.ctx.Err() != nil {
+		return func() {}
+	}
+	ctx, stop := context.WithCancel(s.ctx)
+	snap := s.view.Snap
+	e := &run.Engine{Params: s.cfg.Params, Cache: &keeping{store: s.study.Store()}, Progress: progress, Load: run.StoreLoader(s.study.Store())}
+	s.group.Add(1)
+	go func() {
+		defer s.group.Done()
+		defer stop()
+		var told func(error)
+		err := guarded(func() error {
+			told = do(ctx, e, snap)
+			return nil
+		})
+		if told == nil {
+			fault(err)
+			return
+		}
+		told(err)
+	}()
+	return stop
+}
+
 // surveyRest is how long the layers that a surveyor has read are kept after it was last asked.
 const surveyRest = 20 * time.Second
 

@@ -64,6 +64,15 @@ func group(x float64, decimals int) string {
 	return sign + b.String()
 }
 
+// Hectares writes an area. What is less than half a square metre is dust that rounding leaves where two outlines
+// meet, and written as none.
+func Hectares(x float64) string {
+	if math.Abs(x) < 5e-5 {
+		return "0"
+	}
+	return Figure(x, x, x)
+}
+
 // Unit writes a unit for people, with raised and lowered figures; a pure number has none.
 func Unit(u string) string {
 	switch u {

@@ -10,6 +10,7 @@ import (
 // candidate was not computed.
 var reasons = map[string]string{
 	"not_finite":              "the formula gives no finite number for these inputs",
+	"height_unknown":          "the height of the ground is not known here",
 	"not_assessed":            "this version does not look at it",
 	"wind_by_year_alone":      "the wind is known for the year and not for its months",
 	"no_soil_here":            "the soil layer has no value for this ground",

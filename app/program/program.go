@@ -8,11 +8,13 @@ import (
 	"os/user"
 	"runtime"
 
+	"groundtally/app/export"
 	"groundtally/app/files"
 	"groundtally/app/run"
 	"groundtally/app/store"
 	"groundtally/app/study"
 	"groundtally/assets"
+	"groundtally/geo"
 	"groundtally/geo/crs"
 	"groundtally/geo/overlay"
 	"groundtally/sampledata"
@@ -83,8 +85,8 @@ func (*Parts) Open(ctx context.Context, path string) (study.Store, error) {
 }
 
 // Read reads a file of the user as far as that is possible without knowing what it means.
-func (*Parts) Read(ctx context.Context, path string, crsGiven bool) (study.Import, error) {
-	return files.Import(ctx, path, crsGiven)
+func (*Parts) Read(ctx context.Context, path string, o study.ReadOptions) (study.Import, error) {
+	return files.Import(ctx, path, o)
 }
 
 // Tools gives the geometry services of an import, to be closed after use.
@@ -93,6 +95,15 @@ func (*Parts) Tools() (study.Tools, func()) { return files.NewTools() }
 // Sample fills a study with the Isle of Marram.
 func (*Parts) Sample(ctx context.Context, s *study.Study, tools study.Tools, report func(study.LayerRecord)) error {
 	return s.LoadSample(ctx, sampledata.FS(), files.ImportFS, tools, report)
+}
+
+// Export writes layers in the form that the ending of the file's name says.
+func (*Parts) Export(ctx context.Context, path string, layers []*geo.Layer, replace bool) error {
+	f, err := export.FormatOf(path)
+	if err != nil {
+		return err
+	}
+	return export.Layers(ctx, path, layers, export.Options{Format: f, Replace: replace, Triggers: true})
 }
 
 // Write puts data into a file, wholly or not at all.

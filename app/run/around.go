@@ -3,6 +3,7 @@ package run
 import (
 	"context"
 	"fmt"
+	"runtime"
 	"sync"
 
 	"groundtally/app/study"
@@ -164,7 +165,7 @@ func (s *Surveyor) ground(ctx context.Context, rs *ruleset, here site) (groundRe
 	}
 	e := overlay.New()
 	defer closeEngine(e)
-	if err := rs.prepare(ctx, e, map[string]*overlay.Layer{}); err != nil {
+	if err := rs.prepare(ctx, e, runtime.NumCPU(), map[string]*widened{}); err != nil {
 		return g, err
 	}
 	return rs.compute(e, s.world, here, terrainCells{})

@@ -20,7 +20,7 @@ type widened = overlay.Layer
 // prepare widens the features of every rule once for all sites.
 //
 // Layers that were widened alike before are taken from made, so that rulesets share them.
-func (rs *ruleset) prepare(ctx context.Context, e *overlay.Engine, made map[string]*widened) error {
+func (rs *ruleset) prepare(ctx context.Context, e *overlay.Engine, cores int, made map[string]*widened) error {
 	bounds := []bound{asDrawn}
 	if rs.tolerant {
 		bounds = append(bounds, leastLand, mostLand)
@@ -38,7 +38,7 @@ func (rs *ruleset) prepare(ctx context.Context, e *overlay.Engine, made map[stri
 				l, there := made[name]
 				if !there {
 					var err error
-					if l, err = s.widen(e, shiftM); err != nil {
+					if l, err = s.widen(ctx, e, cores, shiftM); err != nil {
 						return ruleError(r, s, err)
 					}
 					made[name] = l
@@ -50,9 +50,18 @@ func (rs *ruleset) prepare(ctx context.Context, e *overlay.Engine, made map[stri
 	return nil
 }
 
+// on gives what a rule has widened near an extent.
+func (r *rule) on(x geo.Extent, b bound) overlay.Rule {
+	layers := make([]*widened, len(r.sources))
+	for i := range r.sources {
+		layers[i] = r.sources[i].prepared[b]
+	}
+	return overlay.RuleOf(r.name, x, layers...)
+}
+
 // widen widens the features that count by the source's distance and a shift of their edges outwards. With
 // a shift inwards that is greater than the distance, polygons shrink; points and lines take nothing.
-func (s *ruleSource) widen(e *overlay.Engine, shiftM float64) (*widened, error) {
+func (s *ruleSource) widen(ctx context.Context, e *overlay.Engine, cores int, shiftM float64) (*widened, error) {
 	m := s.distM + shiftM
 	var fs []geo.XYGeometry
 	for k, g := range s.layer.xy {
@@ -67,7 +76,7 @@ func (s *ruleSource) widen(e *overlay.Engine, shiftM float64) (*widened, error) 
 		}
 		fs = append(fs, g)
 	}
-	return e.NewLayer(fs, math.Max(0, m))
+	return overlay.NewLayer(ctx, cores, fs, math.Max(0, m))
 }
 
 // bufferReach is how far a widened feature may reach beyond its distance: arcs are drawn around the true
@@ -232,11 +241,7 @@ func (rs *ruleset) input(e *overlay.Engine, w *world, s site, known terrainCells
 			in.Rules = append(in.Rules, r.nearby(s)...)
 			continue
 		}
-		or := overlay.Rule{Name: r.name, Checked: true}
-		for _, src := range r.sources {
-			or.Features = append(or.Features, src.prepared[b].Rule(r.name, s.box).Features...)
-		}
-		if len(or.Features) > 0 {
+		if or := r.on(s.box, b); len(or.Features) > 0 {
 			in.Rules = append(in.Rules, or)
 		}
 	}

@@ -372,8 +372,8 @@ func (p *Params) Memory() []string {
 // keyInText is the form of a consequence key within a sentence.
 var keyInText = regexp.MustCompile(`[a-z0-9]+(_[a-z0-9]+)+`)
 
-// titled gives a function that puts the titles of consequences in place of their keys.
-func (p *Params) titled() func(text string) string {
+// Titled gives a function that puts the titles of consequences in place of their keys.
+func (p *Params) Titled() func(text string) string {
 	titles := map[string]string{}
 	for _, k := range p.Keys() {
 		titles[k.Key] = k.Title

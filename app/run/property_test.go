@@ -120,7 +120,7 @@ func editsAndUndos(t *testing.T, s *study.Study, seed uint64, goOn func(step int
 			c := settings[rng.IntN(len(settings))]
 			v := c.values[rng.IntN(len(c.values))]
 			what = c.key + " = " + v
-			if _, err := s.Set(ctx, "set", "", study.SettingEdit{Key: c.key, Value: v}); err != nil {
+			if _, err := s.Set(ctx, "set", "", study.SettingEdit{Key: c.key, Value: v, Reason: "test"}); err != nil {
 				t.Fatal(err)
 			}
 		case n == 6:

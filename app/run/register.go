@@ -5,6 +5,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"runtime"
 	"slices"
 	"strings"
 
@@ -160,7 +161,7 @@ func (m *misser) option(o option) ([]Relaxed, error) {
 			return nil, err
 		}
 		rs.tolerant = false // the least and the most land play no part
-		if err := rs.prepare(m.ctx, m.e, map[string]*widened{}); err != nil {
+		if err := rs.prepare(m.ctx, m.e, runtime.NumCPU(), map[string]*widened{}); err != nil {
 			return nil, err
 		}
 		if sets[part] = rs; err != nil {

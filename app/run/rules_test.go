@@ -14,6 +14,7 @@ import (
 	"groundtally/app/study/studytest"
 	"groundtally/geo"
 	"groundtally/geo/crs"
+	"groundtally/geo/formats/gridfile"
 	"groundtally/geo/overlay"
 )
 
@@ -114,7 +115,7 @@ func (p *plain) ground(part string) (groundResult, *ruleset) {
 		}
 		e := overlay.New()
 		defer closeEngine(e)
-		if err := rs.prepare(context.Background(), e, map[string]*widened{}); err != nil {
+		if err := rs.prepare(context.Background(), e, 2, map[string]*widened{}); err != nil {
 			p.t.Fatal(err)
 		}
 		g, err := rs.compute(e, w, w.sites[0], terrainCells{})
@@ -299,8 +300,55 @@ func (p *plain) terrain(height func(x, y float64) float64) {
 	defer done()
 	// The frame's own projection, so that cells stand where the hand reckons with them.
 	system := "+proj=laea +lat_0=48 +lon_0=9 +datum=WGS84 +units=m +type=crs"
-	in := study.Import{File: "heights.asc", Base: "heights.asc", Blob: []byte(b.String()), Media: files.ASCIIGridMedia, Role: "terrain", Name: "heights", CRSOption: system, Ledger: study.Ledger{Read: 1}}
+	in := study.Import{File: "heights.asc", Base: "heights.asc", Blob: []byte(b.String()), Media: gridfile.ASCIIGrid, Role: "terrain", Name: "heights", CRSOption: system, Ledger: study.Ledger{Read: 1}}
 	if _, err := p.s.AddLayer(context.Background(), in, tools); err != nil {
 		p.t.Fatal(err)
+	}
+}
+
+// A grid in degrees, whose cells are oblong, gives the heights of the plane that it was made of, and its slope.
+func TestHeightsFromOblongCells(t *testing.T) {
+	p := windStudy(t)
+	const n, dx, dy = 60, 0.0004, 0.00025 // about 30 by 28 m at 48 degrees north
+	west, south := 9-n/2*dx, 48-n/2*dy
+	var b strings.Builder
+	fmt.Fprintf(&b, "ncols %d\nnrows %d\nxllcorner %v\nyllcorner %v\ndx %v\ndy %v\n", n, n, west, south, dx, dy)
+	for r := range n {
+		for c := range n {
+			xy, err := p.frame.Forward(geo.LonLat{Lon: west + (float64(c)+0.5)*dx, Lat: south + (n-float64(r)-0.5)*dy})
+			if err != nil {
+				t.Fatal(err)
+			}
+			fmt.Fprintf(&b, "%.6f ", 500+xy.X/10+xy.Y/20)
+		}
+		b.WriteByte('\n')
+	}
+	tools, done := files.NewTools()
+	defer done()
+	in := study.Import{File: "heights.asc", Base: "heights.asc", Blob: []byte(b.String()), Media: gridfile.ASCIIGrid, Role: "terrain", Name: "heights", CRSOption: "EPSG:4326", Ledger: study.Ledger{Read: 1}}
+	if _, err := p.s.AddLayer(context.Background(), in, tools); err != nil {
+		t.Fatal(err)
+	}
+	snap, err := p.s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	w, err := newWorld(context.Background(), snap, shipped(t), StoreLoader(p.s.Store()))
+	if err != nil {
+		t.Fatal(err)
+	}
+	g, err := w.terrain.get()
+	if err != nil {
+		t.Fatal(err)
+	}
+	want := math.Atan(math.Hypot(0.1, 0.05)) * 180 / math.Pi
+	for _, at := range []geo.XY{{X: 0, Y: 0}, {X: 333, Y: -217}, {X: -480, Y: 480}} {
+		z, ok, err := w.heightM(at)
+		if err != nil || !ok || math.Abs(z-(500+at.X/10+at.Y/20)) > 0.05 {
+			t.Errorf("height at %v: %v, %v, %v", at, z, ok, err)
+		}
+		if s, ok := g.SlopeAtDeg(at); !ok || math.Abs(s-want) > 0.02 {
+			t.Errorf("slope at %v: %v, want %v", at, s, want)
+		}
 	}
 }

@@ -6,6 +6,7 @@ import (
 
 	"groundtally/app/study"
 	"groundtally/geo"
+	"groundtally/geo/index"
 	"groundtally/geo/overlay"
 )
 
@@ -178,7 +179,7 @@ func (r *runner) prepare(ctx context.Context, have stored, from, to int) error {
 					go func() { _, _ = r.w.terrain.get() }() // read beside; whoever needs it sees its error
 				}
 			}
-			if err := rs.prepare(ctx, e, r.layers); err != nil {
+			if err := rs.prepare(ctx, e, r.cores, r.layers); err != nil {
 				return err
 			}
 			r.ready[rs] = true
@@ -291,6 +292,8 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 	}
 	limits := limitsOf(w.snap, r.k.keys)
 	var writing background
+	var engines enginePool
+	defer engines.empty()
 	for from := 0; from < n; from += batchSites {
 		to := min(n, from+batchSites)
 		have, err := r.fetch(ctx, from, to)
@@ -314,9 +317,15 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 			}
 			report = func(done int) { r.progress(what, from+done, n) }
 		}
-		err = forEach(ctx, r.cores, to-from, openEngine, closeEngine, func(e *overlay.Engine, i int) error {
+		// In an order in which neighbours follow each other, so that an engine meets again what it remembers.
+		boxes := make([]geo.Extent, to-from)
+		for i := range boxes {
+			boxes[i] = w.sites[from+i].box
+		}
+		order := index.Curve(boxes)
+		err = forEach(ctx, r.cores, to-from, engines.open, engines.close, func(e *overlay.Engine, i int) error {
 			var err error
-			found[i], err = r.site(ctx, e, from+i, have)
+			found[order[i]], err = r.site(ctx, e, from+order[i], have)
 			return err
 		}, report)
 		var fresh []study.Result

@@ -183,7 +183,7 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 		}
 	}
 	out = append(out, missingMembers(snap, parcels)...)
-	titles := p.titled()
+	titles := p.Titled()
 	for _, r := range snap.Catalog().Roles {
 		if !have[r.Name] && r.WithoutIt != "" {
 			out = append(out, geo.Notice{Code: "role_missing", Severity: geo.Info, Layer: r.Title, Args: map[string]string{"without": titles(r.WithoutIt), "holder": r.Holder}})

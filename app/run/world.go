@@ -1,7 +1,6 @@
 package run
 
 import (
-	"bytes"
 	"context"
 	"crypto/sha256"
 	"errors"
@@ -15,7 +14,7 @@ import (
 	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/crs"
-	"groundtally/geo/formats/asciigrid"
+	"groundtally/geo/formats/gridfile"
 	"groundtally/geo/index"
 	"groundtally/geo/measure"
 	"groundtally/geo/overlay"
@@ -169,11 +168,12 @@ type world struct {
 
 // heights is the terrain in the local frame, read when it is first needed.
 type heights struct {
-	rec  study.LayerRecord
-	once sync.Once
-	load func() (*terrain.Grid, error)
-	grid *terrain.Grid
-	err  error
+	rec   study.LayerRecord
+	reach geo.Extent // where heights are wanted besides the sites
+	once  sync.Once
+	load  func() (*terrain.Grid, error)
+	grid  *terrain.Grid
+	err   error
 }
 
 func (h *heights) get() (*terrain.Grid, error) {
@@ -205,7 +205,7 @@ func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader)
 		}
 		if rec.Kind == "raster" {
 			if rec.Role == "terrain" && w.terrain == nil {
-				w.terrain = &heights{rec: rec, load: func() (*terrain.Grid, error) {
+				w.terrain = &heights{rec: rec, reach: geo.EmptyExtent(), load: func() (*terrain.Grid, error) {
 					g, err := w.readTerrain(ctx, rec, load)
 					if err != nil {
 						return nil, fmt.Errorf("read layer %q: %w", rec.Name, err)
@@ -263,16 +263,15 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	if err != nil {
 		return nil, err
 	}
-	decoded, err := asciigrid.Decode(ctx, bytes.NewReader(v.Blob), asciigrid.Options{})
+	raw, _, _, err := gridfile.Decode(ctx, v.Media, rec.File, v.Blob)
 	if err != nil {
 		return nil, err
 	}
-	raw := decoded.Grid
 	t, err := crs.NewTransform(rec.CRS)
 	if err != nil {
 		return nil, err
 	}
-	own, err := w.ownGrid(raw)
+	own, place, err := w.ownGrid(raw)
 	if err != nil {
 		return nil, err
 	}
@@ -280,8 +279,8 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	for _, s := range w.sites {
 		box = box.Union(s.box)
 	}
-	box = box.Grow(terrainMarginM)
-	cell := raw.CellX
+	box = box.Union(w.terrain.reach).Grow(terrainMarginM)
+	cell := math.Min(raw.CellX, raw.CellY)
 	if geographic(t, w.frame) {
 		cell *= metresPerDegree
 	}
@@ -301,7 +300,7 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 			bad = err
 			return 0, false
 		}
-		return own.Sample(geo.XY{X: x, Y: y})
+		return own.Sample(place(geo.XY{X: x, Y: y}))
 	})
 	if err == nil {
 		err = bad
@@ -319,16 +318,19 @@ func geographic(t *crs.Transform, f crs.Frame) bool {
 // metresPerDegree sizes the cells of a grid in degrees; only their fineness depends on it.
 const metresPerDegree = 111_200
 
-// ownGrid turns a grid of a file, north row first, into one in the file's own coordinates.
-func (w *world) ownGrid(raw *raster.Grid) (*terrain.Grid, error) {
-	if raw.CellX != raw.CellY {
-		return nil, fmt.Errorf("cells of %g by %g: only square cells are read", raw.CellX, raw.CellY)
-	}
+// ownGrid turns a grid of a file, north row first, into one in the file's own coordinates, with the way to
+// them. A grid of oblong cells becomes one of cells of size one, counted from its corner.
+func (w *world) ownGrid(raw *raster.Grid) (g *terrain.Grid, place func(geo.XY) geo.XY, err error) {
 	h := make([]float32, len(raw.Values))
 	for r := range raw.NRows {
 		copy(h[r*raw.NCols:(r+1)*raw.NCols], raw.Values[(raw.NRows-1-r)*raw.NCols:(raw.NRows-r)*raw.NCols])
 	}
-	return terrain.New(geo.XY{X: raw.XLL + raw.CellX/2, Y: raw.YLL + raw.CellY/2}, raw.CellX, raw.NCols, raw.NRows, h, float32(raw.NoData))
+	if raw.CellX != raw.CellY {
+		g, err = terrain.New(geo.XY{X: 0.5, Y: 0.5}, 1, raw.NCols, raw.NRows, h, float32(raw.NoData))
+		return g, func(p geo.XY) geo.XY { return geo.XY{X: (p.X - raw.XLL) / raw.CellX, Y: (p.Y - raw.YLL) / raw.CellY} }, err
+	}
+	g, err = terrain.New(geo.XY{X: raw.XLL + raw.CellX/2, Y: raw.YLL + raw.CellY/2}, raw.CellX, raw.NCols, raw.NRows, h, float32(raw.NoData))
+	return g, func(p geo.XY) geo.XY { return p }, err
 }
 
 // heightM gives the ground height at a place; ok is false outside the terrain or without one.
@@ -509,6 +511,36 @@ func (w *world) cascadeNumber(prefix string, o option, part, suffix string) (x f
 	}
 	x, ok = s.Number()
 	return x, key, ok
+}
+
+// enginePool keeps the engines of workers from one batch to the next.
+type enginePool struct {
+	mu   sync.Mutex
+	free []*overlay.Engine
+}
+
+func (p *enginePool) open() (*overlay.Engine, error) {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	if n := len(p.free); n > 0 {
+		e := p.free[n-1]
+		p.free = p.free[:n-1]
+		return e, nil
+	}
+	return openEngine()
+}
+
+func (p *enginePool) close(e *overlay.Engine) {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	p.free = append(p.free, e)
+}
+
+func (p *enginePool) empty() {
+	for _, e := range p.free {
+		closeEngine(e)
+	}
+	p.free = nil
 }
 
 // engines gives each worker a geometry engine of its own.

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 	"sort"
 	"strconv"
 	"strings"
@@ -20,9 +21,10 @@ type LayerRecord struct {
 	Digest   string            `json:"digest"`
 	Media    string            `json:"media,omitempty"` // for a raster kept whole
 	Count    int               `json:"count"`
-	Kind     string            `json:"kind"` // point, line, polygon, table, raster
-	File     string            `json:"file"` // base name of the file it came from
-	CRS      string            `json:"crs"`  // as delivered
+	Kind     string            `json:"kind"`            // point, line, polygon, table, raster
+	File     string            `json:"file"`            // base name of the file it came from
+	Table    string            `json:"table,omitempty"` // of the file
+	CRS      string            `json:"crs"`             // as delivered
 	Pipeline string            `json:"pipeline,omitempty"`
 	Database string            `json:"projection_data,omitempty"` // editions of the projection library and its database
 	Swapped  bool              `json:"swapped,omitempty"`
@@ -33,7 +35,9 @@ type LayerRecord struct {
 	Units    map[string]string `json:"units,omitempty"` // by column
 	Personal []string          `json:"personal,omitempty"`
 	Ledger   Ledger            `json:"ledger"`
-	Only     []Wanted          `json:"only,omitempty"` // the part of the file that was asked for
+	Hand     []HandEdit        `json:"by_hand,omitempty"` // changes of features by hand, in order
+	Changes  *Changes          `json:"changes,omitempty"` // since the edition that this one replaced
+	Only     []Wanted          `json:"only,omitempty"`    // the part of the file that was asked for
 	Notices  []geo.Notice      `json:"notices,omitempty"`
 	Extent   [4]float64        `json:"extent"` // west, south, east, north in degrees
 }
@@ -46,6 +50,18 @@ type Ledger struct {
 	NotAsked int `json:"not_asked,omitempty"` // features outside the part that was asked for
 }
 
+// ReadOptions say how a file is read.
+type ReadOptions struct {
+	CRSGiven bool   // the user names the coordinate system, so one that the file states badly is passed over
+	Table    string // which table, sheet or set of the file; empty for the only one
+}
+
+// Place names two columns that hold the position of a row.
+type Place struct {
+	X, Y    string
+	Degrees bool // their names say longitude and latitude
+}
+
 // Import is one file, read but not yet given a meaning, with the user's answers.
 type Import struct {
 	File    string // path as given, for messages
@@ -53,7 +69,10 @@ type Import struct {
 	Layer   *geo.Layer
 	Blob    []byte // for a raster; Layer is nil then
 	Media   string
-	CRS     string // found in the file, empty if it does not say
+	Corner  *geo.LonLat // of a raster, in its own coordinates
+	Table   string      // of the file, where it has several
+	Places  []Place     // columns that look like positions, for the user to confirm
+	CRS     string      // found in the file, empty if it does not say
 	Notices []geo.Notice
 	Ledger  Ledger
 
@@ -63,6 +82,7 @@ type Import struct {
 	Match           map[string]string // field to column
 	Units           map[string]string // column to unit
 	Personal        []string
+	At              *Place // rows are points there
 	SwapAxes        bool
 	Only            []Wanted // features that fit any; none for all
 	Replace         string
@@ -112,6 +132,7 @@ type Question struct {
 type QuestionError struct {
 	File      string
 	Questions []Question
+	Tables    []string // that the file holds, when the question is which of them
 }
 
 func (e *QuestionError) Error() string {
@@ -183,12 +204,15 @@ func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerReco
 	if err != nil {
 		return LayerRecord{}, err
 	}
-	rec := LayerRecord{Name: in.Name, Role: role.Name, File: in.Base, Swapped: in.SwapAxes, Edition: in.Edition, Holder: in.Holder, Complete: in.Complete, Match: map[string]string{}, Units: map[string]string{}, Ledger: in.Ledger, Notices: in.Notices}
+	rec := LayerRecord{Name: in.Name, Role: role.Name, File: in.Base, Table: in.Table, Swapped: in.SwapAxes, Edition: in.Edition, Holder: in.Holder, Complete: in.Complete, Match: map[string]string{}, Units: map[string]string{}, Ledger: in.Ledger, Notices: in.Notices}
 	ask := func(text, option string) error {
 		return &QuestionError{File: in.File, Questions: []Question{{Text: text, Option: option}}}
 	}
 	if rec.Name == "" {
 		rec.Name = strings.TrimSuffix(in.Base, ext(in.Base))
+		if in.Table != "" && ext(in.Base) != ".zip" {
+			rec.Name = in.Table
+		}
 	}
 	if in.Replace != "" {
 		if in.Name != "" && in.Name != in.Replace {
@@ -225,12 +249,24 @@ func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerReco
 		if _, rec.Pipeline, err = tools.ToLonLat(rec.CRS); err != nil {
 			return LayerRecord{}, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
 		}
+		if in.Corner != nil {
+			op, err := tools.Operation(rec.CRS, *in.Corner)
+			if err != nil {
+				return LayerRecord{}, &FileError{File: in.File, What: "its corner is not in " + rec.CRS + ": " + err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+			}
+			rec.operated(op, in.Base)
+		}
 		version = Version{Digest: BlobDigest(in.Media, in.Blob), Blob: in.Blob, Media: in.Media}
 		rec.Kind, rec.Media, rec.Count = "raster", in.Media, 1
 	} else {
 		layer, frame, err := s.prepare(ctx, &rec, in, role, snap, tools)
 		if err != nil {
 			return LayerRecord{}, err
+		}
+		if in.Replace != "" {
+			if err := s.renew(ctx, &rec, layer, frame, role, snap, tools); err != nil {
+				return LayerRecord{}, err
+			}
 		}
 		version = Version{Digest: LayerDigest(layer), Layer: layer}
 		if frame != nil {
@@ -290,6 +326,9 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 		}
 	}
 	Remember(&in, role, snap)
+	if q := joined(&in); q != nil {
+		return nil, nil, &QuestionError{File: in.File, Questions: []Question{*q}}
+	}
 	var questions []Question
 	questions = append(questions, matchFields(rec, in, role)...)
 	rec.Personal = personal(rec, in, role)
@@ -312,6 +351,11 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 			}
 		}
 	}
+	if q, err := placed(layer, in, role); err != nil {
+		return nil, nil, err
+	} else if q != nil {
+		return nil, nil, &QuestionError{File: in.File, Questions: append(questions, *q)}
+	}
 	located := false
 	for _, f := range layer.Features {
 		if !f.Geometry.Empty() {
@@ -330,48 +374,10 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 		return layer, nil, nil
 	}
 
-	if in.SwapAxes {
-		for i := range layer.Features {
-			layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat { return geo.LonLat{Lon: p.Lat, Lat: p.Lon} })
-		}
-	}
-	rec.CRS = first(in.CRSOption, in.CRS)
-	if rec.CRS == "" {
-		if f, bad := outOfDegrees(layer); bad {
-			questions = append(questions, Question{Text: fmt.Sprintf("feature %s has coordinates that are no degrees; in which coordinate system is the file?", f), Option: "--crs EPSG:25832 (for one)"})
-			return nil, nil, &QuestionError{File: in.File, Questions: questions}
-		}
-		rec.CRS = "OGC:CRS84"
-	}
-	transform, pipeline, err := tools.ToLonLat(rec.CRS)
-	if err != nil {
-		return nil, nil, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
-	}
-	rec.Pipeline = pipeline
-	if q := degreesAsMetres(rec, in, layer, transform); q != nil {
-		return nil, nil, &QuestionError{File: in.File, Questions: append(questions, *q)}
-	}
-	if err := s.operation(rec, in, layer, tools); err != nil {
+	if qs, err := toDegrees(ctx, rec, in, layer, questions, tools); err != nil {
 		return nil, nil, err
-	}
-	for i := range layer.Features {
-		if err := ctx.Err(); err != nil {
-			return nil, nil, err
-		}
-		var bad error
-		layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat {
-			q, err := transform(p)
-			if err != nil && bad == nil {
-				bad = err
-			}
-			return q
-		})
-		if bad != nil {
-			return nil, nil, &FileError{File: in.File, Where: "feature " + layer.Features[i].ID, What: fmt.Sprintf("its coordinates cannot be taken from %s to longitude and latitude: %v", rec.CRS, bad), Cure: "Check --crs"}
-		}
-	}
-	if f, bad := outOfDegrees(layer); bad {
-		return nil, nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", rec.CRS), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
+	} else if len(qs) > 0 {
+		return nil, nil, &QuestionError{File: in.File, Questions: qs}
 	}
 	rec.Extent = extent(layer, role)
 	if q := meets(rec, in, snap); q != nil {
@@ -410,7 +416,7 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 const roughM = 0.5
 
 // operation records how the coordinates come to WGS 84, and says so where that is not exact.
-func (s *Study) operation(rec *LayerRecord, in Import, layer *geo.Layer, tools Tools) error {
+func operation(rec *LayerRecord, in Import, layer *geo.Layer, tools Tools) error {
 	for _, f := range layer.Features {
 		if f.Geometry.Empty() {
 			continue
@@ -438,6 +444,143 @@ func (rec *LayerRecord) operated(op Operation, file string) {
 	case op.Known && op.AccuracyM > roughM:
 		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_approximate", Severity: geo.Info, File: file, Layer: rec.Name, Args: map[string]string{"crs": rec.CRS, "metres": strconv.FormatFloat(op.AccuracyM, 'g', -1, 64)}})
 	}
+}
+
+// toDegrees brings the coordinates of a layer to WGS 84 in place. It gives the questions that are open before
+// that can be done.
+func toDegrees(ctx context.Context, rec *LayerRecord, in Import, layer *geo.Layer, questions []Question, tools Tools) ([]Question, error) {
+	if in.SwapAxes {
+		for i := range layer.Features {
+			layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat { return geo.LonLat{Lon: p.Lat, Lat: p.Lon} })
+		}
+	}
+	rec.CRS = first(in.CRSOption, in.CRS)
+	if rec.CRS == "" {
+		if f, bad := outOfDegrees(layer); bad {
+			questions = append(questions, Question{Text: fmt.Sprintf("feature %s has coordinates that are no degrees; in which coordinate system is the file?", f), Option: "--crs EPSG:25832 (for one)"})
+			return questions, nil
+		}
+		rec.CRS = "OGC:CRS84"
+	}
+	transform, pipeline, err := tools.ToLonLat(rec.CRS)
+	if err != nil {
+		return nil, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+	}
+	rec.Pipeline = pipeline
+	if q := degreesAsMetres(rec, in, layer, transform); q != nil {
+		return append(questions, *q), nil
+	}
+	if err := operation(rec, in, layer, tools); err != nil {
+		return nil, err
+	}
+	for i := range layer.Features {
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		var bad error
+		layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat {
+			q, err := transform(p)
+			if err != nil && bad == nil {
+				bad = err
+			}
+			return q
+		})
+		if bad != nil {
+			return nil, &FileError{File: in.File, Where: "feature " + layer.Features[i].ID, What: fmt.Sprintf("its coordinates cannot be taken from %s to longitude and latitude: %v", rec.CRS, bad), Cure: "Check --crs"}
+		}
+	}
+	if f, bad := outOfDegrees(layer); bad {
+		return nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", rec.CRS), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
+	}
+	return nil, nil
+}
+
+// ToDegrees gives the layer of a read file in longitude and latitude on WGS 84, without a role.
+func ToDegrees(ctx context.Context, in Import, tools Tools) (*geo.Layer, error) {
+	l := cloned(in.Layer)
+	rec := LayerRecord{Name: in.Base}
+	if q, err := placed(l, in, Role{}); err != nil {
+		return nil, err
+	} else if q != nil {
+		return nil, &QuestionError{File: in.File, Questions: []Question{*q}}
+	}
+	if qs, err := toDegrees(ctx, &rec, in, l, nil, tools); err != nil {
+		return nil, err
+	} else if len(qs) > 0 {
+		return nil, &QuestionError{File: in.File, Questions: qs}
+	}
+	return l, nil
+}
+
+// placed makes points of the rows of a table where the user says which columns hold their places, and asks
+// where a role needs places and columns look like them.
+func placed(l *geo.Layer, in Import, role Role) (*Question, error) {
+	if in.At == nil {
+		some := func(f geo.Feature) bool { return !f.Geometry.Empty() }
+		if len(in.Places) == 0 || role.Accepts("table") || !role.Accepts("point") || slices.ContainsFunc(l.Features, some) {
+			return nil, nil
+		}
+		p := in.Places[0]
+		return &Question{Text: fmt.Sprintf("the rows have no place on the map; are columns %s and %s their places?", p.X, p.Y), Option: fmt.Sprintf("--at %s,%s", p.X, p.Y)}, nil
+	}
+	x, y := l.ColumnIndex(in.At.X), l.ColumnIndex(in.At.Y)
+	if x < 0 || y < 0 {
+		return &Question{Text: fmt.Sprintf("there is no column %q or no column %q; the columns are: %s", in.At.X, in.At.Y, columnNames(l)), Option: "--at COLUMN,COLUMN"}, nil
+	}
+	for i := range l.Features {
+		f := &l.Features[i]
+		a, okA := f.Values[x].Float()
+		b, okB := f.Values[y].Float()
+		switch {
+		case okA && okB:
+			f.Geometry = geo.LonLatGeometry{Kind: geo.Points, Parts: [][][]geo.LonLat{{{{Lon: a, Lat: b}}}}}
+		case f.Values[x].Kind != geo.Null || f.Values[y].Kind != geo.Null:
+			return nil, &FileError{File: in.File, Where: "row " + f.ID, What: fmt.Sprintf("%q, %q is no place", f.Values[x], f.Values[y]), Cure: "Correct the row, or name other columns"}
+		}
+	}
+	return nil, nil
+}
+
+// joined makes one column of those that a field is matched to together, as osm_id|osm_way_id: each feature has
+// the value of the first that is filled.
+func joined(in *Import) *Question {
+	fields := make([]string, 0, len(in.Match))
+	for f := range in.Match {
+		fields = append(fields, f)
+	}
+	sort.Strings(fields)
+	for _, field := range fields {
+		name := in.Match[field]
+		if !strings.Contains(name, "|") || in.Layer.ColumnIndex(name) >= 0 {
+			continue
+		}
+		var from []int
+		own := geo.Column{Name: name}
+		for _, col := range strings.Split(name, "|") {
+			c := in.Layer.ColumnIndex(strings.TrimSpace(col))
+			if c < 0 {
+				return &Question{Text: fmt.Sprintf("there is no column %q; the columns are: %s", col, columnNames(in.Layer)), Option: fmt.Sprintf("--match %s=COLUMN|COLUMN", field)}
+			}
+			from = append(from, c)
+			own.Personal = own.Personal || in.Layer.Columns[c].Personal || slices.Contains(in.Personal, in.Layer.Columns[c].Name)
+		}
+		if own.Personal {
+			in.Personal = append(slices.Clone(in.Personal), name)
+		}
+		in.Layer = cloned(in.Layer)
+		in.Layer.Columns = append(in.Layer.Columns, own)
+		for i := range in.Layer.Features {
+			f := &in.Layer.Features[i]
+			v := geo.Value{}
+			for _, c := range from {
+				if v.Kind == geo.Null || v.Kind == geo.Text && strings.TrimSpace(v.Text) == "" {
+					v = f.Values[c]
+				}
+			}
+			f.Values = append(f.Values, v)
+		}
+	}
+	return nil
 }
 
 // personal gives the columns that are personal: those the user says, those that are or serve as a personal

@@ -204,14 +204,14 @@ func (s *Study) Set(ctx context.Context, verb, reason string, edits ...SettingEd
 		if !ok {
 			return Entry{}, &UnknownKeyError{Key: e.Key, Nearest: s.cat.Nearest(e.Key)}
 		}
-		if strings.HasPrefix(e.Key, ExceptPrefix) && e.Value == "true" && strings.TrimSpace(e.Reason) == "" {
-			return Entry{}, &ValueError{Key: e.Key, Err: errors.New("an exception needs a reason; it goes into the appendix")}
-		}
 		c := Change{Kind: SettingRecord, Key: e.Key}
 		if e.Value != "" {
 			v, err := def.CheckValue(e.Value)
 			if err != nil {
 				return Entry{}, &ValueError{Key: e.Key, Err: err}
+			}
+			if strings.HasPrefix(e.Key, ExceptPrefix) && v == "true" && strings.TrimSpace(e.Reason) == "" {
+				return Entry{}, &ValueError{Key: e.Key, Err: errors.New("an exception needs a reason; it goes into the appendix")}
 			}
 			c.New = Canonical(Setting{Value: v, Unit: def.Unit, Source: e.Source, AcceptedBy: e.AcceptedBy, Reason: e.Reason})
 		}
@@ -420,6 +420,27 @@ func (n *Snapshot) Lookup(key string) (s Setting, byUser, ok bool) {
 		return Setting{}, false, false
 	}
 	return Setting{Value: d.Default, Unit: d.Unit, Source: d.Source, Provenance: d.Provenance}, false, true
+}
+
+// With gives the snapshot as it would be with a number for one setting.
+func (n *Snapshot) With(key string, x float64) (*Snapshot, error) {
+	def, ok := n.cat.Definition(key)
+	if !ok {
+		return nil, &UnknownKeyError{Key: key, Nearest: n.cat.Nearest(key)}
+	}
+	v, err := def.CheckValue(strconv.FormatFloat(x, 'g', -1, 64))
+	if err != nil {
+		return nil, &ValueError{Key: key, Err: err}
+	}
+	out := *n
+	out.Explicit = make(map[string]Setting, len(n.Explicit)+1)
+	for k, s := range n.Explicit {
+		out.Explicit[k] = s
+	}
+	s := out.Explicit[key]
+	s.Value, s.Unit = v, def.Unit
+	out.Explicit[key] = s
+	return &out, nil
 }
 
 // Number gives a numeric setting; ok is false when it is not in force or not set.

@@ -14,6 +14,8 @@ var verbAdd = verb{
 	options: []option{
 		{name: "as", value: "ROLE", help: "what the layer means here"},
 		{name: "name", value: "TEXT", help: "name of the layer"},
+		{name: "table", value: "NAME", help: "which table, sheet or layer of the file"},
+		{name: "at", value: "COLUMN,COLUMN", help: "the columns that hold longitude and latitude, or east and north"},
 		{name: "crs", value: "AUTH:CODE", help: "coordinate system of the file"},
 		{name: "match", value: "FIELD=COLUMN", many: true, help: "which column is which field"},
 		{name: "unit", value: "COLUMN=UNIT", many: true, help: "unit of a column"},
@@ -32,7 +34,7 @@ var verbAdd = verb{
 		file := c.args.places[1]
 		if !c.args.has("as") {
 			option := "--as ROLE"
-			if in, err := c.ReadFile(c.ctx, file, true); err == nil {
+			if in, err := c.ReadFile(c.ctx, file, study.ReadOptions{CRSGiven: true, Table: c.args.get("table")}); err == nil {
 				if proposed := study.ProposeRole(c.Catalog, in); proposed != "" {
 					option = "--as " + proposed + " (proposed from the file's name)"
 				}
@@ -72,7 +74,7 @@ var verbAdd = verb{
 			if r := c.args.get("replace"); r != "" && !hasLayer(snap, r) {
 				return 0, usagef("--replace: there is no layer %q; the layers are: %s", r, layerNames(snap))
 			}
-			in, err := c.ReadFile(c.ctx, file, c.args.has("crs"))
+			in, err := c.ReadFile(c.ctx, file, study.ReadOptions{CRSGiven: c.args.has("crs"), Table: c.args.get("table")})
 			if err != nil {
 				return 0, err
 			}
@@ -80,6 +82,9 @@ var verbAdd = verb{
 			in.Personal, in.SwapAxes, in.Replace = c.args.values["personal"], c.args.has("swap-axes"), c.args.get("replace")
 			in.AcceptProposals, in.Complete = c.args.has("accept-proposals"), c.args.has("complete")
 			in.Only = only
+			if in.At, err = placeOf(c.args.get("at")); err != nil {
+				return 0, err
+			}
 			in.Edition, in.Holder, in.Reason = c.args.get("edition"), c.args.get("holder"), c.args.get("reason")
 			if in.Layer != nil {
 				for _, opt := range [][]string{in.Personal, sortedKeys(unit)} {
@@ -193,4 +198,16 @@ func listed(names []string) string {
 		return "none"
 	}
 	return strings.Join(names, ", ")
+}
+
+// placeOf reads COLUMN,COLUMN; nil for nothing.
+func placeOf(text string) (*study.Place, error) {
+	if text == "" {
+		return nil, nil
+	}
+	x, y, ok := strings.Cut(text, ",")
+	if !ok {
+		return nil, usagef("--at: %q is not COLUMN,COLUMN", text)
+	}
+	return &study.Place{X: strings.TrimSpace(x), Y: strings.TrimSpace(y)}, nil
 }

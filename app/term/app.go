@@ -21,7 +21,7 @@ type App struct {
 	Terminal bool // Err is a terminal: progress may be shown
 	Create   func(ctx context.Context, path string) (study.Store, error)
 	OpenFile func(ctx context.Context, path string) (study.Store, error)
-	ReadFile func(ctx context.Context, path string, crsGiven bool) (study.Import, error)
+	ReadFile func(ctx context.Context, path string, o study.ReadOptions) (study.Import, error)
 	Write    func(path string, data []byte) error // atomically
 	Catalog  *study.Catalog
 	Params   *run.Params
@@ -80,8 +80,8 @@ var (
 )
 
 func verbs() []verb {
-	return []verb{verbNew, verbAdd, verbRemove, verbGroup, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
-		verbCheck, verbCompute, verbTable, verbWhy, verbRegister, verbOrder, verbAppendix, verbVerify}
+	return []verb{verbNew, verbAdd, verbJoin, verbRemove, verbGroup, verbDraw, verbPlace, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
+		verbCheck, verbCompute, verbTable, verbWhy, verbRegister, verbLeft, verbRequests, verbCoverage, verbOrder, verbAppendix, verbVerify, verbExport, verbConvert}
 }
 
 func findVerb(name string) (verb, bool) {

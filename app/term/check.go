@@ -7,9 +7,13 @@ import (
 	"groundtally/geo"
 )
 
+// fewNotices is how many notices of a kind on features of one layer are written out.
+const fewNotices = 5
+
 var verbCheck = verb{
-	name: "check", usage: "check STUDY.gpkg", summary: "all notices on data and settings", places: [2]int{1, 1},
-	more: "Exit 1 when something makes results unreliable or stands in the way of computing.",
+	name: "check", usage: "check STUDY.gpkg [--all]", summary: "all notices on data and settings", places: [2]int{1, 1},
+	options: []option{{name: "all", help: "every notice of a kind, not the first five of each layer"}},
+	more:    "Exit 1 when something makes results unreliable or stands in the way of computing.",
 	run: func(c *call) (int, error) {
 		return c.with(func(s *study.Study) (int, error) {
 			if err := s.Store().Check(c.ctx); err != nil {
@@ -41,8 +45,17 @@ var verbCheck = verb{
 				c.printJSON(map[string]any{"study": c.args.places[0], "notices": c.noticeList(notices), "questions": questions, "unreliable": bad, "exit": code})
 				return code, nil
 			}
-			for _, n := range notices {
-				c.say("%-8s %s", n.Severity, c.named(present.Notice(n)))
+			type kind struct{ code, layer, field string }
+			seen := map[kind]int{}
+			for i, n := range notices {
+				k := kind{n.Code, n.Layer, n.Field}
+				if seen[k]++; seen[k] <= fewNotices || c.args.has("all") || n.Feature == "" {
+					c.say("%-8s %s", n.Severity, c.named(present.Notice(n)))
+				}
+				last := i+1 == len(notices) || kind{notices[i+1].Code, notices[i+1].Layer, notices[i+1].Field} != k
+				if more := seen[k] - fewNotices; last && more > 0 && n.Feature != "" && !c.args.has("all") {
+					c.say("%-8s and %d more like it; gtally check --all lists them", n.Severity, more)
+				}
 			}
 			if len(questions) > 0 {
 				c.say("%v", &questionsError{questions})

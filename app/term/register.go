@@ -1,7 +1,6 @@
 package term
 
 import (
-	"fmt"
 	"strings"
 
 	"groundtally/app/present"
@@ -81,7 +80,7 @@ func (c *call) register(list []outRow, of int) {
 		if o.Reason != "" {
 			why += ", " + present.Reason(o.Reason)
 		}
-		c.say("%s with %s: %s. Of %s ha, %s ha are buildable; largest patch %s ha.", o.Site, o.Plant, why, present.Figure(o.GrossHa, o.GrossHa, o.GrossHa), ha(o.BuildableHa), ha(o.LargestPatchHa))
+		c.say("%s with %s: %s. Of %s ha, %s ha are buildable; largest patch %s ha.", o.Site, o.Plant, why, ha(o.GrossHa), ha(o.BuildableHa), ha(o.LargestPatchHa))
 		for _, t := range o.Rules {
 			all := ""
 			if t.TakesAll {
@@ -110,4 +109,4 @@ func (c *call) register(list []outRow, of int) {
 	c.say("%d of %d candidates are out.", len(list), of)
 }
 
-func ha(x float64) string { return fmt.Sprint(present.Figure(x, x, x)) }
+func ha(x float64) string { return present.Hectares(x) }

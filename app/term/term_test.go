@@ -318,12 +318,24 @@ func TestEveryVerbInJSON(t *testing.T) {
 	b := newBench(t)
 	b.district()
 	out := filepath.Join(t.TempDir(), "out")
+	notes := filepath.Join(t.TempDir(), "notes.csv")
+	rows := "parcel,note\n"
+	for n := range 12 {
+		rows += fmt.Sprintf("S-%02d,seen\n", n+1)
+	}
+	if err := os.WriteFile(notes, []byte(rows), 0o600); err != nil {
+		t.Fatal(err)
+	}
 	runs := map[string][]string{
 		"add": {small + "soil.geojson", "--as", "soil", "--name", "more"}, "remove": {"more"}, "group": {"--by", "farm"},
 		"set": {"run.seed", "7"}, "get": nil, "undo": nil, "redo": nil, "journal": nil, "freeze": {"now"}, "check": nil, "compute": nil, "table": {"--top", "1"},
-		"why": {"south", "sun"}, "register": nil, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
+		"why": {"south", "sun"}, "register": nil, "requests": nil, "coverage": nil, "left": {"--plant", "wind"}, "join": {"parcels", notes, "--key", "parcel"}, "draw": {"barns", "--as", "exclusion", "--shape", "-20.0,50.0", "--set", "reason=test", "--set", "setback=10", "--reason", "test"},
+		"place": {"barns", "hand-1", "--shape", "-20.001,50.0", "--reason", "test"}, "export": {"parcels", "--to", filepath.Join(t.TempDir(), "p.gpkg")}, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
 	}
 	for _, v := range verbs()[1:] { // new comes first by itself
+		if v.name == "convert" { // it needs no study
+			continue
+		}
 		args, ok := runs[v.name]
 		if !ok {
 			t.Fatalf("the verb %s is not tried", v.name)
@@ -387,7 +399,7 @@ func TestFaultIsCaught(t *testing.T) {
 	t.Setenv("TMPDIR", t.TempDir())
 	b := newBench(t)
 	b.run(0, "new")
-	b.app.ReadFile = func(context.Context, string, bool) (study.Import, error) { panic("broken on purpose") }
+	b.app.ReadFile = func(context.Context, string, study.ReadOptions) (study.Import, error) { panic("broken on purpose") }
 	b.run(ExitUnexpected, "add", small+"soil.geojson", "--as", "soil")
 	said := b.err.String()
 	_, path, ok := strings.Cut(strings.TrimSpace(said), "The details are in ")

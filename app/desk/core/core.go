@@ -70,6 +70,7 @@ type Core struct {
 	ShowParcels func(ids []string)                          // brings parcels into view on the map and marks them
 	ShowPlace   func(at geo.LonLat)                         // brings a place into view on the map
 	ShowStage   func(title string)                          // opens a stage
+	ShowZones   func(zones []geo.LonLatGeometry)            // draws land on the map, until other land or none is given
 	Boxed       func() []string                             // parcels in the box last drawn on the map
 	Ask         func(title, words, yes string, then func()) // asks before something that takes much away
 	Tell        func(words string)                          // a short word at the foot of the window, that something is done
@@ -115,6 +116,7 @@ func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core
 	c.Tell = func(string) {}
 	c.Ask = c.confirm
 	c.ShowParcels, c.ShowPlace, c.ShowStage = func([]string) {}, func(geo.LonLat) {}, func(string) {}
+	c.ShowZones = func([]geo.LonLatGeometry) {}
 	return c
 }
 

@@ -43,6 +43,7 @@ type form struct {
 	name             *widget.Entry
 	crs              *widget.Entry
 	swap             *widget.Check
+	places           *widget.Check // the rows are points at the columns that look like places
 	complete         *widget.Check
 	only             *widget.Entry
 	systemAsked      bool // the user was asked about the coordinate system: what stands there now is an answer
@@ -88,6 +89,10 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 	f.crs.SetPlaceHolder("as EPSG:25832; empty for degrees")
 	f.crs.SetText(in.CRS)
 	f.swap = widget.NewCheck("The file has latitude before longitude", nil)
+	f.places = widget.NewCheck("", func(bool) { f.remade() })
+	if len(in.Places) > 0 {
+		f.places.Text = fmt.Sprintf("Each row is a point: %s and %s", in.Places[0].X, in.Places[0].Y)
+	}
 	f.complete = widget.NewCheck("It covers the whole place", nil)
 	f.purpose.Colour = theme.Faint
 	f.only.SetPlaceHolder("all; or natural=wood, landuse=forest|orchard")
@@ -108,6 +113,9 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 	f.askedBox.Hide()
 
 	base := strings.TrimSuffix(in.Base, filepath.Ext(in.Base))
+	if in.Table != "" && !strings.EqualFold(filepath.Ext(in.Base), ".zip") {
+		base = in.Table
+	}
 	f.name.SetText(base)
 	if r := f.replace; r.Name != "" {
 		f.name.SetText(r.Name)
@@ -143,6 +151,9 @@ func (f *form) chosen() (study.Role, bool) {
 // open shows the form.
 func (f *form) open() {
 	what := fmt.Sprintf("%s: %s", f.in.Base, ledgerWords(f.in.Ledger))
+	if f.in.Table != "" {
+		what = fmt.Sprintf("%s, %s: %s", f.in.Base, f.in.Table, ledgerWords(f.in.Ledger))
+	}
 	if f.in.Layer == nil {
 		what = f.in.Base + ": a grid of values"
 	}
@@ -158,7 +169,10 @@ func (f *form) open() {
 	row("Meaning", "The role of the layer in the study.", f.role)
 	row("", "", container.NewVBox(f.guess, f.purpose))
 	row("Name", "The name of the layer.", f.name)
-	if f.made != "table" {
+	if len(f.in.Places) > 0 {
+		row("Places", "Whether columns hold the place of each row.", f.places)
+	}
+	if f.made != "table" || len(f.in.Places) > 0 {
 		row("Coordinate system", "The system in which the coordinates of the file are.", f.crs)
 		row("", "", container.NewVBox(widgets.Faint(found), f.swap))
 	}
@@ -191,6 +205,24 @@ func (f *form) open() {
 	f.dialog.Resize(dialogSize(f.s.c, 760, 640))
 	f.dialog.Show()
 	f.s.c.Window.Canvas().Focus(f.role)
+}
+
+// remade offers the roles that fit, rows with places being points.
+func (f *form) remade() {
+	f.made = madeOf(f.in)
+	if f.places.Checked {
+		f.made = "point"
+	}
+	var titles []string
+	for _, r := range f.s.c.Parts.Catalog.Roles {
+		if fits(r, f.made) || r.Name == f.replace.Role {
+			titles = append(titles, r.Title)
+		}
+	}
+	f.role.SetOptions(titles)
+	if !slices.Contains(titles, f.role.Selected) {
+		f.role.ClearSelected()
+	}
 }
 
 // leave ends the form without adding the file, or stops the adding under way.
@@ -405,6 +437,9 @@ func (f *form) answers() (in study.Import, unanswered string) {
 		in.Only = append(in.Only, w)
 	}
 	in.Replace = f.replace.Name
+	if f.places.Checked && len(f.in.Places) > 0 {
+		in.At = &f.in.Places[0]
+	}
 	in.SwapAxes, in.Complete = f.swap.Checked, f.complete.Checked
 	in.Edition, in.Holder, in.Reason = strings.TrimSpace(f.edition.Text), strings.TrimSpace(f.holder.Text), strings.TrimSpace(f.reason.Text)
 	in.Match, in.Units = map[string]string{}, map[string]string{}
@@ -517,6 +552,8 @@ func (f *form) questions(e *study.QuestionError) string {
 			f.without.Show()
 		case strings.HasPrefix(q.Option, "--only"):
 			text += ". Change what stands at Only."
+		case strings.HasPrefix(q.Option, "--at"):
+			text += " Tick that each row is a point."
 		case strings.HasPrefix(q.Option, "--crs"):
 			f.systemAsked = true
 			text += " Enter it above."

@@ -21,7 +21,8 @@ import (
 )
 
 // job is a file that waits to be read; replace names the layer in whose place it goes, if any.
-type job struct{ path, replace string }
+// table names one of several tables of the file.
+type job struct{ path, table, replace string }
 
 // Import reads files one after the other and asks for each what only the user knows. It is for files
 // chosen in the pane or dropped on the window, and must be called on the window's goroutine.
@@ -51,10 +52,24 @@ func (s *Stage) next() {
 	ctx, cancel := context.WithCancel(context.Background())
 	done := s.progress("Reading "+filepath.Base(j.path), cancel)
 	go func() {
-		in, err := s.read(ctx, j.path)
+		in, err := s.read(ctx, j)
 		cancel()
 		s.c.Do(func() {
 			done()
+			var q *study.QuestionError
+			if errors.As(err, &q) && len(q.Tables) > 0 && j.replace != "" {
+				s.chooseTable(j, q.Tables)
+				return
+			}
+			if errors.As(err, &q) && len(q.Tables) > 0 { // each is asked about by itself
+				var more []job
+				for _, t := range q.Tables {
+					more = append(more, job{j.path, t, j.replace})
+				}
+				s.queue = append(more, s.queue...)
+				s.finished()
+				return
+			}
 			if err != nil {
 				s.refused(err)
 				return
@@ -66,24 +81,24 @@ func (s *Stage) next() {
 }
 
 // read reads a file. One whose coordinate system cannot be understood is read without it, and asked about.
-func (s *Stage) read(ctx context.Context, path string) (in study.Import, err error) {
+func (s *Stage) read(ctx context.Context, j job) (in study.Import, err error) {
 	defer func() {
 		if p := recover(); p != nil { // a file must not end the program
 			err = &live.FaultError{What: fmt.Sprint(p), Details: string(debug.Stack())}
 		}
 	}()
-	in, err = s.c.Parts.Read(ctx, path, false)
+	in, err = s.c.Parts.Read(ctx, j.path, study.ReadOptions{Table: j.table})
 	var file *study.FileError
 	if err == nil || ctx.Err() != nil || !errors.As(err, &file) {
 		return in, err
 	}
-	if again, other := s.c.Parts.Read(ctx, path, true); other == nil {
+	if again, other := s.c.Parts.Read(ctx, j.path, study.ReadOptions{Table: j.table, CRSGiven: true}); other == nil {
 		again.CRS = ""
 		return again, nil
 	}
 	if file.Where == "" {
 		shown := *file
-		shown.Cure = strings.TrimSuffix(shown.Cure, ".") + ". Files that are read: GeoJSON (.geojson, .json, .geojsonl), tables (.csv, .tsv, .txt), grids of values (.asc)"
+		shown.Cure = strings.TrimSuffix(shown.Cure, ".") + ". Files that are read: GeoJSON (.geojson, .json, .geojsonl), GeoPackage (.gpkg), shapefile (.shp with the files beside it, or .zip), tables (.csv, .tsv, .txt, .xlsx), grids of values (.tif, .asc, .hgt)"
 		return in, &shown
 	}
 	return in, err

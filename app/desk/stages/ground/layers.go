@@ -31,6 +31,8 @@ type layersPane struct {
 	total   *widgets.Line
 	replace *widget.Button
 	takeOut *widget.Button
+	byHand  *widget.Button
+	write   *widget.Button
 
 	shown  []shownLayer
 	rows   []layerRow
@@ -72,6 +74,12 @@ func newLayersPane(s *Stage) *layersPane {
 	add.Importance = widget.HighImportance
 	p.replace = widget.NewButton("Replace by a file…", func() { p.choose(p.opened) })
 	p.takeOut = widget.NewButton("Take out", p.remove)
+	p.byHand = widget.NewButton("Change by hand…", func() {
+		if rec, ok := hasLayer(s.c.View().Snap, p.opened); ok {
+			newHandForm(s, rec).open()
+		}
+	})
+	p.write = widget.NewButton("Write…", p.writeLayer)
 	p.list = widget.NewList(func() int { return len(p.rows) }, func() fyne.CanvasObject { return newLayerCell(p) },
 		func(i widget.ListItemID, o fyne.CanvasObject) { o.(*layerCell).show(i) })
 	p.list.HideSeparators = true
@@ -82,7 +90,8 @@ func newLayersPane(s *Stage) *layersPane {
 		}
 	}
 	buttons := container.NewHBox(add, p.replace, p.takeOut)
-	head := container.NewVBox(buttons, gap(2), p.total)
+	more := container.NewHBox(p.byHand, p.write)
+	head := container.NewVBox(buttons, more, gap(2), p.total)
 	p.content = padded(container.NewBorder(head, nil, nil, nil, p.list))
 	p.changed()
 	return p
@@ -142,9 +151,22 @@ func (p *layersPane) build() {
 	if found && p.opened != wholeStudy {
 		p.replace.Enable()
 		p.takeOut.Enable()
+		rec, _ := hasLayer(p.s.c.View().Snap, p.opened)
+		if rec.Kind == "raster" || rec.Kind == "table" {
+			p.byHand.Disable()
+		} else {
+			p.byHand.Enable()
+		}
+		if rec.Kind == "raster" {
+			p.write.Disable()
+		} else {
+			p.write.Enable()
+		}
 	} else {
 		p.replace.Disable()
 		p.takeOut.Disable()
+		p.byHand.Disable()
+		p.write.Disable()
 	}
 	p.list.Refresh()
 }
@@ -196,6 +218,7 @@ func (p *layersPane) details(l shownLayer) []pair {
 		{"File", r.File, ""},
 		{"System of the file", system, "The coordinate system in which the file was delivered."},
 		{"Way to degrees", or(r.Pipeline, "none needed"), "How coordinates were brought to longitude and latitude."},
+		{"Projection data", or(r.Database, "none needed"), "Editions of the projection library and its database."},
 		{"Edition", or(r.Edition, "not stated"), ""},
 		{"Holder", or(r.Holder, "not stated"), "Who holds the data."},
 		{"Whole place", complete, "Whether the layer covers the whole place."},
@@ -220,6 +243,19 @@ func (p *layersPane) details(l shownLayer) []pair {
 	if len(r.Personal) > 0 {
 		personal = strings.Join(r.Personal, ", ")
 	}
+	if len(r.Only) > 0 {
+		var words []string
+		for _, w := range r.Only {
+			words = append(words, w.Column+" "+strings.Join(w.Values, " or "))
+		}
+		out = append(out, pair{"Part of the file", strings.Join(words, "; or "), "The features that were asked for."})
+	}
+	if len(r.Hand) > 0 {
+		out = append(out, pair{"Changed by hand", core.Counted(len(r.Hand), "change", "changes"), "Kept with their reasons for the next edition; the appendix lists them."})
+	}
+	if ch := r.Changes; ch != nil {
+		out = append(out, pair{"Since the edition before", fmt.Sprintf("%d new, %d gone, %d renamed, %d moved, %d altered, %d the same", len(ch.Added), len(ch.Removed), len(ch.Renamed), len(ch.Moved), len(ch.Altered), ch.Same), "Matched by identifier, then by overlap of more than half."})
+	}
 	return append(out, pair{"Personal columns", personal, "Personal columns are never drawn, and never leave the study unasked."})
 }
 
@@ -230,7 +266,7 @@ func fieldWords(f study.RoleField) string {
 }
 
 // readable are the endings of files that can be added.
-var readable = []string{".geojson", ".json", ".geojsonl", ".csv", ".txt", ".tsv", ".asc"}
+var readable = []string{".geojson", ".json", ".geojsonl", ".geojsons", ".gpkg", ".shp", ".zip", ".csv", ".txt", ".tsv", ".xlsx", ".tif", ".tiff", ".asc", ".hgt"}
 
 // choose asks for a file and adds it, or puts it in place of a layer.
 func (p *layersPane) choose(replace string) {

@@ -18,6 +18,7 @@ type Stage struct {
 	missing *missingPane
 	sites   *sitesPane
 	typed   *typedPane
+	left    *leftPane
 
 	noted *noted
 
@@ -61,6 +62,7 @@ func (s *Stage) Content() fyne.CanvasObject {
 		widgets.Tab{Text: "Missing", Make: func() fyne.CanvasObject { s.missing = newMissingPane(s.c); return s.missing.content }},
 		widgets.Tab{Text: "Sites", Make: func() fyne.CanvasObject { s.sites = newSitesPane(s.c); return s.sites.content }},
 		widgets.Tab{Text: "Typed values", Make: func() fyne.CanvasObject { s.typed = newTypedPane(s.c); return s.typed.content }},
+		widgets.Tab{Text: "Land left", Make: func() fyne.CanvasObject { s.left = newLeftPane(s.c); return s.left.content }},
 	)
 	return container.New(layout.NewCustomPaddedLayout(12, 4, 12, 8), container.NewBorder(widgets.Heading(s.Title()), nil, nil, nil, s.tabs))
 }
@@ -84,6 +86,9 @@ func (s *Stage) Changed(ch core.Change) {
 	}
 	if s.typed != nil {
 		s.typed.changed()
+	}
+	if s.left != nil {
+		s.left.changed()
 	}
 }
 

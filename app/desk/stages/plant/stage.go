@@ -24,6 +24,7 @@ const (
 	tabSizes
 	tabRules
 	tabFitted
+	tabOut
 )
 
 // stage is the pane of the plant options.
@@ -52,6 +53,7 @@ type stage struct {
 	settings *settings
 	rules    *rules
 	fitted   *fitted
+	out      *out
 }
 
 // New makes the stage.
@@ -168,7 +170,7 @@ func (s *stage) counted(of counting, t map[string]tally) {
 
 // Content implements core.Stage.
 func (s *stage) Content() fyne.CanvasObject {
-	s.settings, s.rules, s.fitted = newSettings(s), newRules(s), newFitted(s)
+	s.settings, s.rules, s.fitted, s.out = newSettings(s), newRules(s), newFitted(s), newOut(s)
 	s.option = widget.NewSelect(nil, func(string) {
 		if i := s.option.SelectedIndex(); !s.syncing && i >= 0 && i < len(s.ids) {
 			s.choose(s.ids[i])
@@ -180,6 +182,7 @@ func (s *stage) Content() fyne.CanvasObject {
 		widgets.Tab{Text: "Sizes", Make: func() fyne.CanvasObject { return s.settings.body }},
 		widgets.Tab{Text: "Rules", Make: func() fyne.CanvasObject { return s.rules.body }},
 		widgets.Tab{Text: "Fitted", Make: func() fyne.CanvasObject { return s.fitted.body }},
+		widgets.Tab{Text: "Out", Make: func() fyne.CanvasObject { return s.out.body }},
 	)
 	s.tabs.OnChosen = func(int) { s.showTab() }
 	head := container.NewVBox(widgets.Fields(12, []float32{60, 0}, widgets.Heading("Plant"), s.option), space(0))
@@ -240,6 +243,8 @@ func (s *stage) showTab() {
 		s.rules.update()
 	case tabFitted:
 		s.fitted.update()
+	case tabOut:
+		s.out.update()
 	}
 }
 

@@ -1,0 +1,153 @@
+package term
+
+import (
+	"errors"
+	"fmt"
+	"strconv"
+	"strings"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+)
+
+var verbJoin = verb{
+	name: "join", usage: "join STUDY.gpkg LAYER FILE --key COLUMN [--layer-key COLUMN] [--table NAME] [--reason TEXT]", summary: "joins a table's columns to a layer by a key", places: [2]int{3, 3},
+	more:    "Features are met by their identifiers, or by a column of the layer. What finds no partner on either side is listed.",
+	options: []option{{name: "key", value: "COLUMN", help: "the column of the table that holds the keys"}, {name: "layer-key", value: "COLUMN", help: "the column of the layer that holds them; without it the identifiers"}, {name: "table", value: "NAME", help: "which sheet or table of the file"}, reasonOption},
+	run: func(c *call) (int, error) {
+		if !c.args.has("key") {
+			return 0, &study.QuestionError{File: c.args.places[2], Questions: []study.Question{{Text: "which column of the table holds the keys?", Option: "--key COLUMN"}}}
+		}
+		return c.with(func(s *study.Study) (int, error) {
+			in, err := c.ReadFile(c.ctx, c.args.places[2], study.ReadOptions{Table: c.args.get("table")})
+			if err != nil {
+				return 0, err
+			}
+			if in.Layer == nil {
+				return 0, usagef("%s is a grid of values and no table", c.args.places[2])
+			}
+			rep, err := s.Join(c.ctx, c.args.places[1], in.Layer, c.args.get("layer-key"), c.args.get("key"), c.args.get("reason"))
+			if err != nil {
+				return 0, c.noLayer(s, err)
+			}
+			c.answer(map[string]any{"study": c.args.places[0], "join": rep}, "Joined %s to %s: %d features met their row.", listed(rep.Columns), c.args.places[1], rep.Matched)
+			c.some("features without a row", rep.Without)
+			c.some("rows without a feature", rep.LeftOver)
+			c.some("keys that stand in several rows, of which the first counts", rep.Doubled)
+			if len(rep.Without)+len(rep.LeftOver)+len(rep.Doubled) > 0 {
+				return ExitLeftOut, nil
+			}
+			return ExitDone, nil
+		})
+	},
+}
+
+// some lists the first of many names.
+func (c *call) some(what string, names []string) {
+	if len(names) == 0 {
+		return
+	}
+	words := strings.Join(names[:min(len(names), 8)], ", ")
+	if len(names) > 8 {
+		words += fmt.Sprintf(" and %d more", len(names)-8)
+	}
+	c.say("  %d %s: %s", len(names), what, words)
+}
+
+// noLayer turns a layer that is not there into words with the layers that are.
+func (c *call) noLayer(s *study.Study, err error) error {
+	if !errors.Is(err, study.ErrNotThere) {
+		return err
+	}
+	snap, e := s.Snapshot()
+	if e != nil {
+		return e
+	}
+	return usagef("%v; the layers are: %s", err, layerNames(snap))
+}
+
+var verbDraw = verb{
+	name: "draw", usage: "draw STUDY.gpkg LAYER --shape 'LON,LAT LON,LAT ...' --reason TEXT [--as ROLE] [--set FIELD=VALUE ...] [--id NAME]", summary: "adds a point, line or polygon to a layer by hand", places: [2]int{2, 2},
+	more: "One position makes a point, several a line; a polygon ends where it began. A layer that is not there is begun\nwith --as. Changes by hand are kept when the layer is replaced by a new edition.",
+	options: []option{{name: "shape", value: "LON,LAT ...", help: "its positions in degrees"}, {name: "as", value: "ROLE", help: "what a new layer means"},
+		{name: "set", value: "FIELD=VALUE", many: true, help: "a field of the role"}, {name: "id", value: "NAME", help: "its identifier"}, reasonOption},
+	run: func(c *call) (int, error) {
+		g, err := shapeOf(c.args.get("shape"))
+		if err != nil {
+			return 0, err
+		}
+		values, err := c.args.pairs("set")
+		if err != nil {
+			return 0, err
+		}
+		return c.byHand(study.HandEdit{Verb: study.HandAdd, Feature: c.args.get("id"), Geometry: &g, Values: values})
+	},
+}
+
+var verbPlace = verb{
+	name: "place", usage: "place STUDY.gpkg LAYER FEATURE (--shape 'LON,LAT ...' | --set FIELD=VALUE ... | --remove) --reason TEXT", summary: "moves, reclasses or takes out a feature by hand", places: [2]int{3, 3},
+	options: []option{{name: "shape", value: "LON,LAT ...", help: "its new place in degrees"}, {name: "set", value: "FIELD=VALUE", many: true, help: "a field of the role, as class=farm"}, {name: "remove", help: "take it out"}, reasonOption},
+	run: func(c *call) (int, error) {
+		values, err := c.args.pairs("set")
+		if err != nil {
+			return 0, err
+		}
+		h := study.HandEdit{Verb: study.HandSet, Feature: c.args.places[2], Values: values}
+		switch {
+		case c.args.has("remove"):
+			h.Verb = study.HandRemove
+		case c.args.has("shape"):
+			g, err := shapeOf(c.args.get("shape"))
+			if err != nil {
+				return 0, err
+			}
+			h.Verb, h.Geometry = study.HandMove, &g
+		case len(values) == 0:
+			return 0, usagef("usage: gtally %s", c.verb.usage)
+		}
+		return c.byHand(h)
+	},
+}
+
+func (c *call) byHand(h study.HandEdit) (int, error) {
+	if h.Reason = c.args.get("reason"); strings.TrimSpace(h.Reason) == "" {
+		return 0, usagef("a change by hand needs --reason TEXT; it goes into the appendix")
+	}
+	role := ""
+	if c.args.has("as") {
+		r, ok := c.Catalog.Role(c.args.get("as"))
+		if !ok {
+			return 0, usagef("there is no role %q; the roles are: %s", c.args.get("as"), c.roleNames())
+		}
+		role = r.Name
+	}
+	return c.with(func(s *study.Study) (int, error) {
+		tools, done := c.Tools()
+		defer done()
+		rec, err := s.EditByHand(c.ctx, c.args.places[1], role, tools, h)
+		if err != nil {
+			return 0, &inputError{c.noLayer(s, err)}
+		}
+		c.answer(map[string]any{"study": c.args.places[0], "layer": rec}, "%s: %d features; changed by hand, and kept for the next edition.", rec.Name, rec.Count)
+		return ExitDone, nil
+	})
+}
+
+// shapeOf reads positions in degrees.
+func shapeOf(text string) (geo.LonLatGeometry, error) {
+	var ps []geo.LonLat
+	for _, word := range strings.Fields(text) {
+		a, b, ok := strings.Cut(word, ",")
+		lon, errA := strconv.ParseFloat(a, 64)
+		lat, errB := strconv.ParseFloat(b, 64)
+		if !ok || errA != nil || errB != nil {
+			return geo.LonLatGeometry{}, usagef("--shape: %q is no LON,LAT in degrees", word)
+		}
+		ps = append(ps, geo.LonLat{Lon: lon, Lat: lat})
+	}
+	g, err := geo.Shape(ps)
+	if err != nil {
+		return g, usagef("--shape 'LON,LAT LON,LAT ...': %v", err)
+	}
+	return g, nil
+}
