@@ -203,7 +203,7 @@ func (d *decoder) attributes(l *geo.Layer, enc *encoding) error {
 			v := &l.Features[i].Values[j]
 			seen[v.Kind]++
 			if v.Kind == geo.Text {
-				ok := true
+				var ok bool
 				if v.Text, ok = enc.decode(v.Text, f.width); !ok {
 					bad++
 				}

@@ -113,10 +113,10 @@ func (f *handForm) open() {
 func (f *handForm) edit() (study.HandEdit, error) {
 	h := study.HandEdit{Verb: handVerbs[max(f.verb.SelectedIndex(), 0)].verb, Feature: strings.TrimSpace(f.feature.Text), Reason: strings.TrimSpace(f.reason.Text)}
 	if h.Feature == "" && h.Verb != study.HandAdd {
-		return h, errors.New("Say which feature.")
+		return h, errors.New("say which feature")
 	}
 	if h.Reason == "" {
-		return h, errors.New("A change by hand needs a reason; everyone who reads the appendix will see it.")
+		return h, errors.New("a change by hand needs a reason; everyone who reads the appendix will see it")
 	}
 	if h.Verb == study.HandMove || h.Verb == study.HandAdd {
 		g, err := placesIn(f.place.Text)
@@ -150,7 +150,8 @@ func placesIn(text string) (geo.LonLatGeometry, error) {
 func (f *handForm) commit() {
 	h, err := f.edit()
 	if err != nil {
-		f.said.SetText(err.Error())
+		said := err.Error()
+		f.said.SetText(strings.ToUpper(said[:1]) + said[1:] + ".")
 		return
 	}
 	var failed error
