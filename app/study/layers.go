@@ -165,7 +165,7 @@ func (e *FileError) Error() string {
 // without the user's word.
 var synonyms = map[string][]string{
 	"parcel_id":            {"id", "parcel", "parcelle", "flurstueck", "flurstück", "cadastral_id", "@id", "osm_id", "fid", "nationalcadastralreference"},
-	"class":                {"highway", "type", "kind", "fclass", "klasse", "building", "code", "landuse", "natural"},
+	"class":                {"highway", "type", "kind", "fclass", "klasse", "building", "code", "protect_class", "designation", "landuse", "natural"},
 	"voltage":              {"voltage_kv", "kv", "spannung", "tension", "volt"},
 	"reason":               {"grund", "motif", "type", "kind", "name"},
 	"kind":                 {"type", "class", "art", "landuse", "natural", "waterway", "amenity"},

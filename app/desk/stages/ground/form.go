@@ -540,6 +540,9 @@ func (f *form) questions(e *study.QuestionError) string {
 	var lines []string
 	for _, q := range e.Questions {
 		text := strings.ToUpper(q.Text[:1]) + q.Text[1:]
+		if !strings.ContainsAny(text[len(text)-1:], ".?") && (strings.HasPrefix(q.Option, "--match") || strings.HasPrefix(q.Option, "--at") || strings.HasPrefix(q.Option, "--crs")) {
+			text += "."
+		}
 		switch {
 		case q.Option == "--swap-axes":
 			text += ". If so, tick that the file has latitude before longitude."
