@@ -2,7 +2,11 @@ package files
 
 import (
 	"cmp"
+	"context"
+	"runtime"
 	"slices"
+	"sync"
+	"sync/atomic"
 
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -85,7 +89,30 @@ func (t *tools) Overlaps(polygons []geo.XYGeometry, leastM2 float64) ([]study.Ov
 // edgeM is how far neighbours' boxes may reach over each other without their outlines being compared.
 const edgeM = 0.01
 
-func (t *tools) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
-	out, rep, err := t.engine.Repair(g)
-	return out, rep.Changed, rep.BeforeM2, rep.AfterM2, err
+func (t *tools) Repair(ctx context.Context, gs []geo.XYGeometry) ([]study.Repaired, error) {
+	out := make([]study.Repaired, len(gs))
+	var next atomic.Int64
+	var wg sync.WaitGroup
+	const block = 256
+	for n := range min(runtime.GOMAXPROCS(0), len(gs)/block+1) {
+		wg.Go(func() {
+			e := t.engine
+			if n > 0 { // an engine serves one goroutine at a time
+				e = overlay.New()
+				defer func() { _ = e.Close() }() // closing only frees memory
+			}
+			for ctx.Err() == nil {
+				from := int(next.Add(block)) - block
+				if from >= len(gs) {
+					return
+				}
+				for i := from; i < min(from+block, len(gs)); i++ {
+					g, rep, err := e.Repair(gs[i])
+					out[i] = study.Repaired{Geometry: g, Changed: rep.Changed, BeforeM2: rep.BeforeM2, AfterM2: rep.AfterM2, Err: err}
+				}
+			}
+		})
+	}
+	wg.Wait()
+	return out, ctx.Err()
 }

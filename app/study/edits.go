@@ -244,15 +244,18 @@ func checkDrawn(g *geo.LonLatGeometry, centre geo.LonLat, tools Tools) error {
 	if err != nil || g.Kind != geo.Polygons {
 		return err
 	}
-	repaired, changed, _, _, err := tools.Repair(flat)
+	list, err := tools.Repair(context.Background(), []geo.XYGeometry{flat})
 	if err != nil {
 		return err
 	}
-	if repaired.Empty() {
+	r := list[0]
+	switch {
+	case r.Err != nil:
+		return r.Err
+	case r.Geometry.Empty():
 		return errors.New("the outline encloses no ground")
-	}
-	if changed {
-		*g, err = inverse(repaired)
+	case r.Changed:
+		*g, err = inverse(r.Geometry)
 	}
 	return err
 }

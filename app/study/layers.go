@@ -4,10 +4,13 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"runtime"
 	"slices"
 	"sort"
 	"strconv"
 	"strings"
+	"sync"
+	"sync/atomic"
 
 	"groundtally/geo"
 	"groundtally/geo/measure"
@@ -103,8 +106,17 @@ type Tools interface {
 	Frame(centre geo.LonLat) (forward func(geo.LonLatGeometry) (geo.XYGeometry, error), inverse func(geo.XYGeometry) (geo.LonLatGeometry, error), err error)
 	// Overlaps gives the pairs of polygons that share more than leastM2, in order.
 	Overlaps(polygons []geo.XYGeometry, leastM2 float64) ([]Overlap, error)
-	// Repair makes a polygon geometry valid; changed is false when it was valid already.
-	Repair(g geo.XYGeometry) (repaired geo.XYGeometry, changed bool, areaBeforeM2, areaAfterM2 float64, err error)
+	// Repair makes polygons valid, on all cores; the answers are in the order of the polygons.
+	Repair(ctx context.Context, gs []geo.XYGeometry) ([]Repaired, error)
+}
+
+// Repaired is what became of a polygon geometry.
+type Repaired struct {
+	Geometry geo.XYGeometry // as it was when it was valid already
+	Changed  bool
+	BeforeM2 float64
+	AfterM2  float64
+	Err      error // why it cannot be made valid
 }
 
 // Operation is a way between two coordinate systems.
@@ -819,7 +831,11 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 	kinds := map[string]int{}
 	kept := layer.Features[:0:0]
 	var flats []geo.XYGeometry // of parcels
-	for _, f := range layer.Features {
+	ready, err := readied(ctx, in, layer, role, forward, tools)
+	if err != nil {
+		return err
+	}
+	for i, f := range layer.Features {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
@@ -837,37 +853,30 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 			continue
 		}
 		at := anyPosition(f.Geometry)
-		var flat geo.XYGeometry
+		flat, shape := ready[i].Geometry, ready[i].shape
 		if f.Geometry.Kind == geo.Polygons {
-			var err error
-			flat, err = forward(f.Geometry)
-			if err != nil {
-				return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
-			}
-			repaired, changed, before, after, err := tools.Repair(flat)
-			if err != nil || repaired.Empty() {
+			r := ready[i]
+			if r.Err != nil || flat.Empty() {
 				rec.Ledger.LeftOut++
 				args := map[string]string{}
-				if err != nil {
-					args["error"] = err.Error()
+				if r.Err != nil {
+					args["error"] = r.Err.Error()
 				}
 				note(geo.Notice{Code: "not_repairable", Severity: geo.Fault, Feature: f.ID, At: &at, Args: args})
 				continue
 			}
-			if changed {
-				flat = repaired
-				if f.Geometry, err = inverse(repaired); err != nil {
+			if r.Changed {
+				if f.Geometry, err = inverse(flat); err != nil {
 					return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
 				}
+				shape = shapeDigest(f.Geometry)
 				rec.Ledger.Repaired++
 				note(geo.Notice{Code: "repaired", Severity: geo.Warning, Feature: f.ID, At: &at, Args: map[string]string{
-					"area_before_ha": strconv.FormatFloat(before/units.M2PerHa, 'f', 4, 64), "area_after_ha": strconv.FormatFloat(after/units.M2PerHa, 'f', 4, 64)}})
+					"area_before_ha": strconv.FormatFloat(r.BeforeM2/units.M2PerHa, 'f', 4, 64), "area_after_ha": strconv.FormatFloat(r.AfterM2/units.M2PerHa, 'f', 4, 64)}})
 			}
 		}
 		// A resource point stands once per sector, so equal places are no mistake there.
 		if role.Name != "wind_resource" && role.Name != "solar_resource" {
-			one := geo.Layer{Features: []geo.Feature{{Geometry: f.Geometry}}}
-			shape := LayerDigest(&one)
 			if earlier, dup := seenShape[shape]; dup {
 				rec.Ledger.LeftOut++
 				note(geo.Notice{Code: "duplicate", Severity: geo.Warning, Feature: f.ID, At: &at, Args: map[string]string{"of": earlier}})
@@ -910,6 +919,67 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 		}
 	}
 	return nil
+}
+
+// ready is a feature with what can be found out of it by itself.
+type ready struct {
+	Repaired        // of polygons
+	shape    string // digest of the geometry as delivered
+}
+
+// readied projects and repairs the features that the role takes, and digests their shapes, on all cores.
+func readied(ctx context.Context, in Import, layer *geo.Layer, role Role, forward func(geo.LonLatGeometry) (geo.XYGeometry, error), tools Tools) ([]ready, error) {
+	out := make([]ready, len(layer.Features))
+	faults := make([]error, len(out))
+	var next atomic.Int64
+	var wg sync.WaitGroup
+	const block = 256
+	for range runtime.GOMAXPROCS(0) {
+		wg.Go(func() {
+			for ctx.Err() == nil {
+				from := int(next.Add(block)) - block
+				if from >= len(out) {
+					return
+				}
+				for i := from; i < min(from+block, len(out)); i++ {
+					f := &layer.Features[i]
+					if f.Geometry.Empty() || !role.Accepts(f.Geometry.Kind.String()) {
+						continue
+					}
+					out[i].shape = shapeDigest(f.Geometry)
+					if f.Geometry.Kind == geo.Polygons {
+						out[i].Geometry, faults[i] = forward(f.Geometry)
+					}
+				}
+			}
+		})
+	}
+	wg.Wait()
+	if err := ctx.Err(); err != nil {
+		return nil, err
+	}
+	var at []int
+	var flat []geo.XYGeometry
+	for i := range out {
+		if faults[i] != nil {
+			return nil, &FileError{File: in.File, Where: "feature " + layer.Features[i].ID, What: faults[i].Error()}
+		}
+		if !out[i].Geometry.Empty() {
+			at, flat = append(at, i), append(flat, out[i].Geometry)
+		}
+	}
+	repaired, err := tools.Repair(ctx, flat)
+	if err != nil {
+		return nil, err
+	}
+	for n, i := range at {
+		out[i].Repaired = repaired[n]
+	}
+	return out, nil
+}
+
+func shapeDigest(g geo.LonLatGeometry) string {
+	return LayerDigest(&geo.Layer{Features: []geo.Feature{{Geometry: g}}})
 }
 
 func anyPosition(g geo.LonLatGeometry) geo.LonLat {

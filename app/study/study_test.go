@@ -158,8 +158,12 @@ func (plain) Frame(geo.LonLat) (func(geo.LonLatGeometry) (geo.XYGeometry, error)
 		}, nil
 }
 
-func (plain) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
-	return g, false, 0, 0, nil
+func (plain) Repair(_ context.Context, gs []geo.XYGeometry) ([]study.Repaired, error) {
+	out := make([]study.Repaired, len(gs))
+	for i, g := range gs {
+		out[i].Geometry = g
+	}
+	return out, nil
 }
 
 func square(x, y, side float64) geo.LonLatGeometry {
@@ -271,24 +275,24 @@ func TestAddIsStopped(t *testing.T) {
 		t.Fatalf("got %v, want a stop", err)
 	}
 	if tools.repairs != 1 {
-		t.Errorf("%d features were worked on; the stop came with the first", tools.repairs)
+		t.Errorf("polygons were made valid %d times; the stop came with the first", tools.repairs)
 	}
 	if len(s.Journal()) != 0 {
 		t.Error("a stopped import left a change")
 	}
 }
 
-// stopping is stopped by the user while it looks at the first feature.
+// stopping is stopped by the user while polygons are made valid.
 type stopping struct {
 	plain
 	stop    func()
 	repairs int
 }
 
-func (s *stopping) Repair(g geo.XYGeometry) (geo.XYGeometry, bool, float64, float64, error) {
+func (s *stopping) Repair(ctx context.Context, gs []geo.XYGeometry) ([]study.Repaired, error) {
 	s.repairs++
 	s.stop()
-	return s.plain.Repair(g)
+	return s.plain.Repair(ctx, gs)
 }
 
 func TestGroups(t *testing.T) {

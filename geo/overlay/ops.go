@@ -37,6 +37,10 @@ func (e *Engine) Repair(g geo.XYGeometry) (out geo.XYGeometry, rep RepairReport,
 		rep.Changed = rep.ClosedRings+rep.DroppedRings > 0
 		rep.BeforeM2 = measure.AreaM2(tidy)
 		out = tidy
+		if tidy.Kind == geo.Polygons && plainlyValid(tidy) {
+			rep.AfterM2 = rep.BeforeM2
+			return
+		}
 		if !tidy.Empty() {
 			raw := e.raw(tidy)
 			if tidy.Kind == geo.Polygons && !raw.IsValid() {

@@ -83,6 +83,8 @@ func (g *Ground) Draw(ctx context.Context, level int, rect image.Rectangle, styl
 	}
 	d.district()
 	d.parcels()
+	d.relief()
+	d.borders()
 	d.coast()
 	for _, s := range g.layers {
 		if !slices.Contains(style.Hidden, s.role) {
@@ -160,8 +162,7 @@ func (d *drawing) coast() {
 	d.p.paint(inkOf(d.look.Coast))
 }
 
-// parcels writes the parcels' numbers, then the lines between them. Numbers come first, all of them, as a
-// parcel's edge is where its own pixels are near its outline.
+// parcels writes the parcels' numbers.
 func (d *drawing) parcels() {
 	p, s := d.p, d.g.parcels
 	if slices.Contains(d.style.Hidden, s.role) || len(s.tree.Search(d.view, d.found[:0])) == 0 {
@@ -195,6 +196,16 @@ func (d *drawing) parcels() {
 	if any {
 		d.t.parcel, d.t.edge = number, edge
 	}
+}
+
+// borders draws the lines between parcels. All numbers must be written, as a parcel's edge is where its own
+// pixels are near its outline.
+func (d *drawing) borders() {
+	p, s := d.p, d.g.parcels
+	if d.t.parcel == nil {
+		return
+	}
+	number, edge := d.t.parcel, d.t.edge
 	d.each(s, func(i int, shape geo.XYGeometry) {
 		side := d.g.sizeM[i] / p.mPerPx / d.k
 		if side < smallestSide {

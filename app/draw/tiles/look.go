@@ -23,6 +23,8 @@ type Look struct {
 	Ink      color.NRGBA // text, outlines of what is selected
 	Faint    color.NRGBA // text of lesser weight
 	Casing   color.NRGBA // under outlines and signs, so that they show on light and dark parcels
+	Shadow   color.NRGBA // on slopes that fall from the light, at their darkest as opaque as it is
+	Light    color.NRGBA // on slopes that fall towards it
 }
 
 // LightLook gives colours like paper.
@@ -32,6 +34,7 @@ func LightLook() Look {
 		Water: hex(0xcfe0e6), Shore: hex(0x7fa6b5), Road: hex(0x8d8574), RoadFill: hex(0xf3eee3), Power: hex(0x4b3f72),
 		Dwelling: hex(0x5b4f45), Border: hex(0xf3eee2), Area: hex(0x77705f), Warm: hex(0xb4500f), Hatch: hex(0x8a8576),
 		Ink: hex(0x26302f), Faint: hex(0x5f6b69), Casing: hex(0xffffff),
+		Shadow: faded(0x4f4636, 64), Light: faded(0xffffff, 120),
 	}
 }
 
@@ -42,6 +45,7 @@ func DarkLook() Look {
 		Water: hex(0x22363d), Shore: hex(0x54808f), Road: hex(0x8f8b7e), RoadFill: hex(0x343a36), Power: hex(0xb9aee0),
 		Dwelling: hex(0xd8c8ae), Border: hex(0x1c2220), Area: hex(0x9a9788), Warm: hex(0xf0945a), Hatch: hex(0x77827e),
 		Ink: hex(0xe9e5da), Faint: hex(0xa5afab), Casing: hex(0x10140f),
+		Shadow: faded(0x000000, 96), Light: faded(0xd9e2da, 44),
 	}
 }
 
@@ -49,11 +53,23 @@ func hex(v uint32) color.NRGBA {
 	return color.NRGBA{R: uint8(v >> 16), G: uint8(v >> 8), B: uint8(v), A: 255}
 }
 
+func faded(v uint32, alpha uint8) color.NRGBA {
+	c := hex(v)
+	c.A = alpha
+	return c
+}
+
+func opaque(c color.NRGBA) color.NRGBA {
+	c.A = 255
+	return c
+}
+
 // Style says how a ground is drawn.
 type Style struct {
 	Look       Look
 	PixelRatio float64  // pixels per unit of line width, the screen's scale; 0 is 1
 	Hidden     []string // roles that are left out
+	Relief     *Relief  // of the same ground, under all that is drawn; nil is none
 }
 
 func (s Style) ratio() float64 {
