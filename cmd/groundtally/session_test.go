@@ -57,10 +57,10 @@ var (
 // button, which is found by its colour in a column of pixels that no other button of the rules crosses.
 var (
 	ruleAddColumn = image.Rect(1240, 150, 1241, 470)
-	fromAddToFrom = image.Pt(-310, -31)
-	fromAddToSize = image.Pt(-90, -31)
-	fromAddToFind = image.Pt(-370, 0) // the source
-	fromAddToWhy  = image.Pt(-130, 0)
+	fromAddToFrom = image.Pt(-310, -63)
+	fromAddToSize = image.Pt(-123, -32)
+	fromAddToFind = image.Pt(-345, -32) // the source
+	fromAddToWhy  = image.Pt(-290, 0)
 )
 
 // Settings that the session changes.

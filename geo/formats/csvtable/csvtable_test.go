@@ -197,7 +197,7 @@ func TestForms(t *testing.T) {
 		"1,234": commaOrGroups, "123,456": commaOrGroups, "1.234": pointOrGroups, "0.123": pointForm, "1234.567": pointForm, "1.234e5": pointForm,
 		"1,234,567": groupsForm, "1.234.567": groupsForm, "1,234.5": groupsForm, "1.234,5": groupsForm, "1 234": groupsForm, "1\u00a0234,50": groupsForm, "1'234'567.8": groupsForm,
 		"1,23,456": notNumber, "1234,567,890": notNumber, "12 34": notNumber, "1.2.3": notNumber, "1,,2": notNumber, "1:30": notNumber, "2026-05-03": notNumber,
-		"007": zerosForm, "00": zerosForm, "0": wholeForm, "-07": zerosForm, "01.5": zerosForm, "9007199254740993000": longForm, "9007199254740992": wholeForm,
+		"007": zerosForm, "00": zerosForm, "0": wholeForm, "-07": zerosForm, "01.5": zerosForm, "9007199254740993000": longForm, "9007199254740992": wholeForm, "9007199254740993": longForm,
 		"true": boolForm, "FALSE": boolForm, "0x10": notNumber, "1_000": notNumber, "NaN": notNumber, "inf": notNumber, "1e999": notNumber, "١": notNumber,
 	} {
 		if got := formOf(s); got != want {

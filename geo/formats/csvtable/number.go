@@ -77,7 +77,7 @@ func formOf(s string) form {
 	case len(marks) == 0 && exponent:
 		return pointForm
 	case len(marks) == 0:
-		if v, err := strconv.ParseFloat(s, 64); err != nil || math.Abs(v) >= 1<<53 {
+		if v, err := strconv.ParseInt(s, 10, 64); err != nil || v > 1<<53 || v < -1<<53 {
 			return longForm
 		}
 		return wholeForm

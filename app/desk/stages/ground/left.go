@@ -312,6 +312,7 @@ func (p *leftPane) show() {
 			drawn = append(drawn, z.Outline)
 		}
 	}
+	words = append(words, "The map veils it and draws its edges.")
 	p.said.SetText(strings.Join(words, " "))
 	p.zoneHead.Set("Zones, the largest first; a click shows one on the map")
 	p.zones.Refresh()
