@@ -125,21 +125,46 @@ func (g *Grid) Sample(p geo.XY) (float64, bool) {
 	return sum, true
 }
 
+// nine fills in the heights of a cell and its eight neighbours, rows from south to north, each from west to
+// east; false when one of them is missing, as at the edge of the grid.
+func (g *Grid) nine(c, r int, z *[3][3]float64) bool {
+	if c < 1 || r < 1 || c >= g.NX-1 || r >= g.NY-1 {
+		return false
+	}
+	for j := range z {
+		from := (r+j-1)*g.NX + c - 1
+		row := g.HeightM[from : from+3 : from+3]
+		for i := range z[j] {
+			h := row[i]
+			if h == g.NoData || h-h != 0 { // infinite or not a number
+				return false
+			}
+			z[j][i] = float64(h)
+		}
+	}
+	return true
+}
+
+// horn gives ∂z/∂x, ∂z/∂y by Horn's differences.
+func horn(z *[3][3]float64, cellM float64) (dzdx, dzdy float64) {
+	dzdx = ((z[0][2] + 2*z[1][2] + z[2][2]) - (z[0][0] + 2*z[1][0] + z[2][0])) / (8 * cellM)
+	dzdy = ((z[2][0] + 2*z[2][1] + z[2][2]) - (z[0][0] + 2*z[0][1] + z[0][2])) / (8 * cellM)
+	return dzdx, dzdy
+}
+
 // gradient gives ∂z/∂x, ∂z/∂y of a cell by Horn's differences over its eight neighbours; false when one
 // of the nine is missing, as at the edge of the grid.
 func (g *Grid) gradient(c, r int) (dzdx, dzdy float64, ok bool) {
-	var z [3][3]float64 // rows from south
-	for j := range 3 {
-		for i := range 3 {
-			if z[j][i], ok = g.Height(c+i-1, r+j-1); !ok {
-				return 0, 0, false
-			}
-		}
+	var z [3][3]float64
+	if !g.nine(c, r, &z) {
+		return 0, 0, false
 	}
-	dzdx = ((z[0][2] + 2*z[1][2] + z[2][2]) - (z[0][0] + 2*z[1][0] + z[2][0])) / (8 * g.CellM)
-	dzdy = ((z[2][0] + 2*z[2][1] + z[2][2]) - (z[0][0] + 2*z[0][1] + z[0][2])) / (8 * g.CellM)
+	dzdx, dzdy = horn(&z, g.CellM)
 	return dzdx, dzdy, true
 }
+
+// slopeDeg gives the slope of a gradient in degrees.
+func slopeDeg(p, q float64) float64 { return math.Atan(math.Hypot(p, q)) * 180 / math.Pi }
 
 // SlopeDeg gives the slope of a cell in degrees, 0 to 90.
 //
@@ -150,7 +175,7 @@ func (g *Grid) gradient(c, r int) (dzdx, dzdy float64, ok bool) {
 // shading and the reflectance map", Proceedings of the IEEE 69.
 func (g *Grid) SlopeDeg(c, r int) (float64, bool) {
 	p, q, ok := g.gradient(c, r)
-	return math.Atan(math.Hypot(p, q)) * 180 / math.Pi, ok
+	return slopeDeg(p, q), ok
 }
 
 // AspectDeg gives the direction in which a cell falls, in degrees clockwise from grid north, 0 to under
@@ -162,14 +187,46 @@ func (g *Grid) AspectDeg(c, r int) (float64, bool) {
 	if !ok || (p == 0 && q == 0) {
 		return 0, false
 	}
-	a := math.Atan2(-p, -q) * 180 / math.Pi
+	return bearingDeg(-p, -q), true
+}
+
+// bearingDeg gives the direction of a vector clockwise from north, 0 to under 360.
+func bearingDeg(east, north float64) float64 {
+	a := math.Atan2(east, north) * 180 / math.Pi
 	if a < 0 {
 		a += 360
 	}
 	if a >= 360 {
 		a = 0
 	}
-	return a, true
+	return a
+}
+
+// RoughnessM gives the terrain ruggedness index of a cell in metres, 0 or more.
+//
+//	TRI = √ Σ (z_i − z)²  over the eight neighbours i
+//
+// It grows with the size of cells, so figures are comparable on one grid only; on an even slope of gradient
+// s it is √6·s·CellM whichever way that falls. Cells at the edge of the grid or beside a missing height have
+// none. Source: Riley, DeGloria, Elliot 1999, "A terrain ruggedness index that
+// quantifies topographic heterogeneity", Intermountain Journal of Sciences 5.
+func (g *Grid) RoughnessM(c, r int) (float64, bool) {
+	var z [3][3]float64
+	if !g.nine(c, r, &z) {
+		return 0, false
+	}
+	return ruggedness(&z), true
+}
+
+func ruggedness(z *[3][3]float64) float64 {
+	sum := 0.0
+	for j := range z {
+		for i := range z[j] {
+			d := z[j][i] - z[1][1]
+			sum += float64(d * d)
+		}
+	}
+	return math.Sqrt(sum)
 }
 
 // SlopeAtDeg gives the slope of the cell that holds p.

@@ -20,6 +20,19 @@ type Summary struct {
 	SteepShare   float64 // share steeper than the limit, of the area with a slope
 	SlopeShare   float64 // share of the area with a slope
 	HasSlope     bool
+
+	// RoughnessM is the mean ruggedness index, see Grid.RoughnessM, of the area with a slope. It stands for
+	// this size of cells only.
+	RoughnessM float64
+
+	// MeanAspectDeg is the direction of the sum of the unit vectors of aspect, clockwise from grid north, 0 to
+	// under 360. AspectLength is that sum by the area with an aspect: 1 when all of it falls one way, near 0
+	// when the ways cancel out, and then the mean says nothing of the site. Source: Mardia and Jupp 2000,
+	// "Directional statistics", section 2.2.
+	MeanAspectDeg float64
+	AspectLength  float64
+	AspectShare   float64 // share of the area with an aspect; level cells have none
+	HasAspect     bool    // whether there is a mean: some area has an aspect, and the ways do not cancel out
 }
 
 // linesPerCell is how many level lines measure the share of a cell inside a polygon; within a line the
@@ -52,6 +65,8 @@ func (g *Grid) Over(polygons geo.XYGeometry, limitDeg float64) (Summary, error) 
 	left := g.Origin.X - g.CellM/2
 	var buf []measure.Span
 	var known, sloped, steep, sumZ, sumSlope float64
+	var sumRough, turned, east, north float64
+	var z [3][3]float64
 	s.MinM, s.MaxM = math.Inf(1), math.Inf(-1)
 	for k := range int(lines) {
 		y := x.MinY + float64((float64(k)+0.5)*h)
@@ -77,11 +92,19 @@ func (g *Grid) Over(polygons geo.XYGeometry, limitDeg float64) (Summary, error) 
 					sumZ += float64(w * z)
 					s.MinM, s.MaxM = math.Min(s.MinM, z), math.Max(s.MaxM, z)
 				}
-				if a, ok := g.SlopeDeg(c, row); ok {
+				if g.nine(c, row, &z) {
+					p, q := horn(&z, g.CellM)
+					a := slopeDeg(p, q)
 					sloped += w
 					sumSlope += float64(w * a)
 					if a > limitDeg {
 						steep += w
+					}
+					sumRough += float64(w * ruggedness(&z))
+					if steepness := math.Hypot(p, q); steepness > 0 {
+						turned += w
+						east -= float64(w * p / steepness)
+						north -= float64(w * q / steepness)
 					}
 				}
 			}
@@ -97,6 +120,17 @@ func (g *Grid) Over(polygons geo.XYGeometry, limitDeg float64) (Summary, error) 
 	}
 	if s.HasSlope = sloped > 0; s.HasSlope {
 		s.MeanSlopeDeg, s.SteepShare, s.SlopeShare = sumSlope/sloped, steep/sloped, math.Min(1, sloped/s.AreaM2)
+		s.RoughnessM = sumRough / sloped
+	}
+	if turned > 0 {
+		s.AspectShare = math.Min(1, turned/s.AreaM2)
+		s.AspectLength = math.Min(1, math.Hypot(east, north)/turned)
+		// Below this the direction is what rounding left.
+		if s.HasAspect = s.AspectLength > 1e-9; s.HasAspect {
+			s.MeanAspectDeg = bearingDeg(east, north)
+		} else {
+			s.AspectLength = 0
+		}
 	}
 	return s, nil
 }
