@@ -26,7 +26,10 @@ import (
 	"groundtally/app/live"
 	"groundtally/app/present"
 	"groundtally/app/run"
+	"groundtally/app/study"
 	"groundtally/geo"
+	"groundtally/geo/crs"
+	"groundtally/geo/formats/gridfile"
 	"groundtally/scoring"
 )
 
@@ -46,6 +49,8 @@ type picture struct {
 	ground   *tiles.Ground
 	contents string             // of the ground shown or being made
 	making   context.CancelFunc // of the ground being made
+	lit      lit                // what the relief shown or being made is of
+	lighting context.CancelFunc // of the relief being made
 	wanted   *shadeJob          // newest colouring asked for
 	busy     bool
 	around   map[string]*run.Surroundings // by candidate, of the results shown
@@ -187,9 +192,67 @@ func (p *picture) renew() {
 			p.colour()
 			p.mark()
 			p.release()
+			p.light(v.Snap, store)
 			p.renew() // layers that came meanwhile
 		})
 	}()
+}
+
+// lit is all that a relief depends on.
+type lit struct {
+	digest, crs string // of the terrain; none when empty
+	plane       tiles.Plane
+	extent      geo.Extent
+}
+
+// light puts the relief of the terrain under the map. It is made in the background after the ground is shown.
+func (p *picture) light(snap *study.Snapshot, store study.Store) {
+	g := p.ground
+	want := lit{plane: g.Plane(), extent: g.Extent()}
+	i := slices.IndexFunc(snap.Layers, func(rec study.LayerRecord) bool { return rec.Kind == "raster" && rec.Role == "terrain" })
+	if i >= 0 {
+		want.digest, want.crs = snap.Layers[i].Digest, snap.Layers[i].CRS
+	}
+	if want == p.lit {
+		return
+	}
+	p.lit = want
+	if p.lighting != nil {
+		p.lighting()
+	}
+	ctx, cancel := context.WithCancel(p.life)
+	p.lighting = cancel
+	go func() {
+		var r *tiles.Relief
+		if i >= 0 {
+			r = relief(ctx, g, snap.Layers[i], store)
+		}
+		p.w.do(func() {
+			if ctx.Err() == nil {
+				cancel()
+				p.m.SetRelief(r)
+			}
+		})
+	}()
+}
+
+// relief makes the relief of a terrain. A terrain that cannot be read gives none: the computing, which needs
+// it more, says what is wrong with it.
+func relief(ctx context.Context, g *tiles.Ground, rec study.LayerRecord, store study.Store) *tiles.Relief {
+	v, err := run.StoreLoader(store)(ctx, rec.Digest)
+	if err != nil {
+		return nil
+	}
+	heights, _, _, err := gridfile.Decode(ctx, v.Media, rec.File, v.Blob)
+	if err != nil {
+		return nil
+	}
+	at, err := crs.NewTransform(rec.CRS)
+	if err != nil {
+		return nil
+	}
+	r, _ := tiles.NewRelief(ctx, g, heights, at)
+	return r
 }
 
 // release lets the computing begin once the map is drawn for the first time.

@@ -38,6 +38,7 @@ type Surveyor struct {
 	world  *world
 	sites  map[string]int
 	fitter *fitter // made when months are first asked for
+	wide   *world  // with heights as far as a horizon reaches
 }
 
 // NewSurveyor makes a surveyor.

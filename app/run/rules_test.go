@@ -2,6 +2,7 @@ package run
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -350,5 +351,48 @@ func TestHeightsFromOblongCells(t *testing.T) {
 		if s, ok := g.SlopeAtDeg(at); !ok || math.Abs(s-want) > 0.02 {
 			t.Errorf("slope at %v: %v, want %v", at, s, want)
 		}
+	}
+}
+
+// On a plane that falls to the north-east, every figure of the relief follows from the plane: heights at the
+// middle, slope, the way it falls from true north, the ruggedness of an even slope, and a horizon as steep as
+// the plane where it rises.
+func TestReliefOfAPlane(t *testing.T) {
+	p := windStudy(t)
+	p.terrain(func(x, y float64) float64 { return 500 - (x+y)/10 })
+	snap, err := p.s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	sv := NewSurveyor(snap, shipped(t), StoreLoader(p.s.Store()), nil)
+	list, err := sv.Relief(context.Background(), "DE.1", "wind")
+	if err != nil || len(list) < 2 {
+		t.Fatal(len(list), err)
+	}
+	slope := math.Atan(math.Hypot(0.1, 0.1)) * 180 / math.Pi
+	for _, r := range list {
+		if math.Abs(*r.MeanM-500) > 0.5 || math.Abs(*r.SlopeDeg-slope) > 0.01 || math.Abs(*r.AspectDeg-45) > 0.05 || r.AspectShare < 0.999 {
+			t.Errorf("patch %d: mean %v, slope %v, falls to %v, agreement %v", r.Patch, *r.MeanM, *r.SlopeDeg, *r.AspectDeg, r.AspectShare)
+		}
+		if want := math.Sqrt(6) * math.Hypot(0.1, 0.1) * 20; math.Abs(*r.RoughnessM-want) > 0.01 {
+			t.Errorf("patch %d: roughness %v, want %v", r.Patch, *r.RoughnessM, want)
+		}
+	}
+	// Uphill to the south-west, at 225 degrees; eyes 1.5 m above the ground see the edge of the grid, 800 m off along
+	// each axis, a little lower than the plane's own slope.
+	up := list[0].HorizonDeg[45]
+	if up == nil || *up > slope || *up < slope-0.2 {
+		t.Errorf("uphill the horizon is at %v, want just below %v", up, slope)
+	}
+	if _, err := sv.Relief(context.Background(), "nobody", ""); err == nil {
+		t.Error("a site that is not there")
+	}
+	bare := windStudy(t)
+	snap, err = bare.s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if _, err := NewSurveyor(snap, shipped(t), StoreLoader(bare.s.Store()), nil).Relief(context.Background(), "DE.1", ""); !errors.Is(err, ErrNoTerrain) {
+		t.Errorf("without heights: %v", err)
 	}
 }

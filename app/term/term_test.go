@@ -326,10 +326,15 @@ func TestEveryVerbInJSON(t *testing.T) {
 	if err := os.WriteFile(notes, []byte(rows), 0o600); err != nil {
 		t.Fatal(err)
 	}
+	heights := filepath.Join(t.TempDir(), "heights.asc")
+	if err := os.WriteFile(heights, []byte("ncols 40\nnrows 40\nxllcorner -20.1\nyllcorner 49.95\ncellsize 0.005\n"+strings.Repeat("1 2 3 4 5 6 7 8 9 10 ", 160)+"\n"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	b.run(0, "add", heights, "--as", "terrain", "--crs", "EPSG:4326", "--quiet")
 	runs := map[string][]string{
 		"add": {small + "soil.geojson", "--as", "soil", "--name", "more"}, "remove": {"more"}, "group": {"--by", "farm"},
 		"set": {"run.seed", "7"}, "get": nil, "undo": nil, "redo": nil, "journal": nil, "freeze": {"now"}, "check": nil, "compute": nil, "table": {"--top", "1"},
-		"why": {"south", "sun"}, "register": nil, "requests": nil, "coverage": nil, "left": {"--plant", "wind"}, "join": {"parcels", notes, "--key", "parcel"}, "draw": {"barns", "--as", "exclusion", "--shape", "-20.0,50.0", "--set", "reason=test", "--set", "setback=10", "--reason", "test"},
+		"why": {"south", "sun"}, "register": nil, "requests": nil, "coverage": nil, "terrain": {"--site", "south"}, "left": {"--plant", "wind"}, "join": {"parcels", notes, "--key", "parcel"}, "draw": {"barns", "--as", "exclusion", "--shape", "-20.0,50.0", "--set", "reason=test", "--set", "setback=10", "--reason", "test"},
 		"place": {"barns", "hand-1", "--shape", "-20.001,50.0", "--reason", "test"}, "export": {"parcels", "--to", filepath.Join(t.TempDir(), "p.gpkg")}, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
 	}
 	for _, v := range verbs()[1:] { // new comes first by itself

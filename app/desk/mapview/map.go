@@ -45,6 +45,7 @@ type Map struct {
 	ground  *tiles.Ground
 	look    tiles.Look
 	hidden  []string
+	relief  *tiles.Relief
 	marks   []tiles.Mark
 	lens    lens
 	fit     bool // the district must be fitted as soon as the size is known
@@ -180,6 +181,13 @@ func (m *Map) SetHidden(roles ...string) {
 	m.painter.SetStyle(m.style())
 }
 
+// SetRelief shows the light on the slopes of a district's terrain, or none. It is left out on any other
+// district than the one it was made for.
+func (m *Map) SetRelief(r *tiles.Relief) {
+	m.relief = r
+	m.painter.SetStyle(m.style())
+}
+
 // SetLegend explains the colours; entries without a title hide it.
 func (m *Map) SetLegend(title string, entries []LegendEntry) {
 	m.furniture.legend.set(title, entries, m.style())
@@ -278,7 +286,7 @@ func (m *Map) Show() {
 }
 
 func (m *Map) style() tiles.Style {
-	return tiles.Style{Look: m.look, PixelRatio: m.ratio, Hidden: m.hidden}
+	return tiles.Style{Look: m.look, PixelRatio: m.ratio, Hidden: m.hidden, Relief: m.relief}
 }
 
 // setLens shows another part of the ground.

@@ -113,6 +113,9 @@ type drawing struct {
 	k     float64 // pixels per unit of line width
 	view  geo.Extent
 	found []int
+
+	number []uint32 // by pixel, as in Tile; nil when no parcel is near
+	edge   []uint8
 }
 
 // each calls f with every shape that the tile may show, until the drawing is stopped.
@@ -170,6 +173,7 @@ func (d *drawing) parcels() {
 	}
 	n := p.rect.Dx() * p.rect.Dy()
 	number, edge := make([]uint32, n), make([]uint8, n)
+	d.number, d.edge = number, edge
 	any := false
 	d.each(s, func(i int, shape geo.XYGeometry) {
 		box := s.boxes[i]
@@ -202,10 +206,10 @@ func (d *drawing) parcels() {
 // pixels are near its outline.
 func (d *drawing) borders() {
 	p, s := d.p, d.g.parcels
-	if d.t.parcel == nil {
+	number, edge := d.number, d.edge
+	if number == nil {
 		return
 	}
-	number, edge := d.t.parcel, d.t.edge
 	d.each(s, func(i int, shape geo.XYGeometry) {
 		side := d.g.sizeM[i] / p.mPerPx / d.k
 		if side < smallestSide {

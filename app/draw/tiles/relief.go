@@ -29,18 +29,16 @@ type Placing interface {
 // Relief is the light on the slopes of a district's terrain, a byte a cell. It never changes, so any number
 // of goroutines may use it.
 type Relief struct {
-	plane Plane
-	// nw is the centre of the first cell; rows run from north to south, each from west to east.
-	nw     geo.XY
+	plane  Plane
 	levels []reliefLevel
 }
 
 // reliefLevel is a copy of the relief, each with half as many cells to a side as the one before.
 type reliefLevel struct {
 	cellM  float64
-	nw     geo.XY
+	nw     geo.XY // centre of the first cell
 	nx, ny int
-	shade  []uint8 // levelShade where nothing is known
+	shade  []uint8 // rows from north to south, each from west to east; levelShade where nothing is known
 }
 
 // NewRelief lights the terrain of a file around a ground. Cells are as fine as those of the file, or coarser
@@ -83,8 +81,8 @@ func NewRelief(ctx context.Context, g *Ground, heights *raster.Grid, at Placing)
 	if err != nil {
 		return nil, err
 	}
-	r := &Relief{plane: g.plane, nw: local.Centre(0, ny-1)}
-	one := reliefLevel{cellM: cellM, nw: r.nw, nx: nx, ny: ny, shade: make([]uint8, 0, nx*ny)}
+	r := &Relief{plane: g.plane}
+	one := reliefLevel{cellM: cellM, nw: local.Centre(0, ny-1), nx: nx, ny: ny, shade: make([]uint8, 0, nx*ny)}
 	plain := true
 	for row := range ny {
 		one.shade = append(one.shade, shade[(ny-1-row)*nx:(ny-row)*nx]...)
@@ -299,14 +297,14 @@ func (d *drawing) relief() {
 // reliefLine says which cells lie beside the pixels of a line.
 type reliefLine struct {
 	from, to int      // pixels that lie within the relief
-	cell     []uint16 // of the pixel: the cell before it
+	cell     []int32  // of the pixel: the cell before it
 	part     []uint32 // of the pixel: how far it is to the next cell, in 1/256
 }
 
 // newReliefLine places n pixels, the first at a count of pixels from the plane's origin, among cells whose
 // first centre lies at a place in metres.
 func newReliefLine(first, n int, centre, mPerPx, cellM float64, cells int) reliefLine {
-	l := reliefLine{from: n, cell: make([]uint16, n), part: make([]uint32, n)}
+	l := reliefLine{from: n, cell: make([]int32, n), part: make([]uint32, n)}
 	for i := range n {
 		at := ((float64(first+i)+0.5)*mPerPx - centre) / cellM
 		if at < -0.5 || at > float64(cells)-0.5 {
@@ -314,7 +312,7 @@ func newReliefLine(first, n int, centre, mPerPx, cellM float64, cells int) relie
 		}
 		l.from, l.to = min(l.from, i), i+1
 		at = math.Max(0, math.Min(at, float64(cells-1)))
-		l.cell[i] = uint16(at)
+		l.cell[i] = int32(at)
 		l.part[i] = uint32((at - math.Floor(at)) * 256)
 	}
 	return l
