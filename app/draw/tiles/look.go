@@ -34,7 +34,7 @@ func LightLook() Look {
 		Water: hex(0xcfe0e6), Shore: hex(0x7fa6b5), Road: hex(0x8d8574), RoadFill: hex(0xf3eee3), Power: hex(0x4b3f72),
 		Dwelling: hex(0x5b4f45), Border: hex(0xf3eee2), Area: hex(0x77705f), Warm: hex(0xb4500f), Hatch: hex(0x8a8576),
 		Ink: hex(0x26302f), Faint: hex(0x5f6b69), Casing: hex(0xffffff),
-		Shadow: faded(0x4f4636, 64), Light: faded(0xffffff, 120),
+		Shadow: faded(0x4f4636, 60), Light: faded(0xffffff, 120),
 	}
 }
 
@@ -45,7 +45,7 @@ func DarkLook() Look {
 		Water: hex(0x22363d), Shore: hex(0x54808f), Road: hex(0x8f8b7e), RoadFill: hex(0x343a36), Power: hex(0xb9aee0),
 		Dwelling: hex(0xd8c8ae), Border: hex(0x1c2220), Area: hex(0x9a9788), Warm: hex(0xf0945a), Hatch: hex(0x77827e),
 		Ink: hex(0xe9e5da), Faint: hex(0xa5afab), Casing: hex(0x10140f),
-		Shadow: faded(0x000000, 96), Light: faded(0xd9e2da, 44),
+		Shadow: faded(0x000000, 96), Light: faded(0xd9e2da, 40),
 	}
 }
 

@@ -228,8 +228,8 @@ func (r *Relief) at(mPerPx float64) *reliefLevel {
 
 // How strong the relief is.
 const (
-	fullSlope     = 0.35 // gradient towards the light from which on the relief is as strong as it gets
-	reliefParcels = 0.4  // of its strength over parcels, whose colours must stay as the legend has them
+	fullSlope     = 0.15 // gradient towards the light from which on the relief is as strong as it gets
+	reliefParcels = 0.25 // of its strength over parcels, whose colours must stay as the legend has them
 )
 
 // reliefInks gives the ink of every shade.
