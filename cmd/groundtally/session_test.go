@@ -323,7 +323,7 @@ func parcelWithCandidate(img *image.RGBA) (at image.Point, ok bool) {
 			same := int(c.R)+int(c.G)+int(c.B) < 300
 			for dy := -around; same && dy <= around; dy++ {
 				for dx := -around; same && dx <= around; dx++ {
-					same = img.RGBAAt(x+dx, y+dy) == c
+					same = alike(img.RGBAAt(x+dx, y+dy), c)
 				}
 			}
 			if same {
@@ -332,6 +332,12 @@ func parcelWithCandidate(img *image.RGBA) (at image.Point, ok bool) {
 		}
 	}
 	return image.Point{}, false
+}
+
+// alike reports whether two colours differ by no more than the relief under a parcel makes.
+func alike(a, b color.RGBA) bool {
+	near := func(x, y uint8) bool { return max(x, y)-min(x, y) <= 10 }
+	return near(a.R, b.R) && near(a.G, b.G) && near(a.B, b.B)
 }
 
 // query asks the study file.
