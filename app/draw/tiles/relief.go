@@ -264,6 +264,7 @@ func (d *drawing) relief() {
 	ground, parcels := reliefInks(d.look, 1), reliefInks(d.look, reliefParcels)
 	first := int(columns.cell[columns.from])
 	last := min(int(columns.cell[columns.to-1])+1, l.nx-1)
+	var any ink
 	line := make([]uint32, last-first+2) // a row of cells between two of the relief, in 1/256
 	for y := rows.from; y < rows.to; y++ {
 		row, f := int(rows.cell[y]), rows.part[y]
@@ -284,14 +285,15 @@ func (d *drawing) relief() {
 		for x := columns.from; x < columns.to; x++ {
 			i, u := int(columns.cell[x])-first, columns.part[x]
 			v := uint8((line[i]*(256-u) + line[i+1]*u + 1<<15) >> 16)
+			c := ground[v]
 			if number != nil && number[x] != 0 {
-				out[x] = parcels[v]
-			} else {
-				out[x] = ground[v]
+				c = parcels[v]
 			}
+			out[x] = c
+			any |= c
 		}
 	}
-	p.drawn = true
+	p.drawn = p.drawn || any != 0 // the sea needs no overlay
 }
 
 // reliefLine says which cells lie beside the pixels of a line.
