@@ -211,3 +211,32 @@ func TestRowsThatArePoints(t *testing.T) {
 		t.Errorf("a name as a place: %v", err)
 	}
 }
+
+// A feature without an identifier of its own is found again by its place: its row may be another's.
+func TestHandEditsFollowThePlace(t *testing.T) {
+	b := newBench(t)
+	if _, err := b.add("p.geojson", "parcels", "", nil, box(9, 48, 9.002, 48.002)+`|{"parcel_id":"A"}`); err != nil {
+		t.Fatal(err)
+	}
+	house := func(lon string) string {
+		return `{"type":"Point","coordinates":[` + lon + `,48.001]}|{"class":"house"}`
+	}
+	if _, err := b.add("d1.geojson", "dwellings", "", func(in *study.Import) { in.Name = "houses" }, house("9.0001"), house("9.0002"), house("9.0003")); err != nil {
+		t.Fatal(err)
+	}
+	if err := b.byHand("houses", "", study.HandEdit{Verb: study.HandRemove, Feature: "1", Reason: "ruin"},
+		study.HandEdit{Verb: study.HandSet, Feature: "3", Values: map[string]string{"class": "farm"}, Reason: "seen"}); err != nil {
+		t.Fatal(err)
+	}
+	rec, err := b.add("d2.geojson", "dwellings", "", func(in *study.Import) { in.Replace = "houses" }, house("9.0002"), house("9.0003"), house("9.0009"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	now, l := b.content("houses")
+	if len(l.Features) != 3 || field(now, l, "1", "class") != "house" || field(now, l, "2", "class") != "farm" || field(now, l, "3", "class") != "house" {
+		t.Errorf("%d features: %s, %s, %s", len(l.Features), field(now, l, "1", "class"), field(now, l, "2", "class"), field(now, l, "3", "class"))
+	}
+	if got := codes(rec.Notices); strings.Count(got, "hand_edit_lost") != 1 {
+		t.Errorf("notices %s", got)
+	}
+}

@@ -81,6 +81,9 @@ func (r *runner) makePlans(ctx context.Context) error {
 			for _, part := range o.parts() {
 				h.texts(p.sets[part].incomplete)
 				h.texts(p.sets[part].notApplied)
+				if list := p.sets[part].excepted[s.id]; len(list) > 0 {
+					h.texts(list)
+				}
 			}
 			h.texts(legal)
 			h.text(s.id)

@@ -22,6 +22,7 @@ type HandEdit struct {
 	Geometry *geo.LonLatGeometry `json:"geometry,omitempty"`
 	Values   map[string]string   `json:"values,omitempty"` // by field of the role, or column
 	Reason   string              `json:"reason"`
+	Was      string              `json:"was,omitempty"` // digest of the geometry that was changed, by which a new edition finds it
 }
 
 // What can be done to a feature by hand.
@@ -197,6 +198,11 @@ func (s *Study) EditByHand(ctx context.Context, layer, newRole string, tools Too
 		if g := edits[i].Geometry; g != nil {
 			if err := checkDrawn(g, *snap.Frame, tools); err != nil {
 				return rec, err
+			}
+		}
+		for _, f := range content.Features {
+			if edits[i].Verb != HandAdd && f.ID == edits[i].Feature {
+				edits[i].Was = shapeDigest(f.Geometry)
 			}
 		}
 		if err := edits[i].apply(content, &rec, role); err != nil {
@@ -557,8 +563,20 @@ func carryOver(old *geo.Layer, oldRec LayerRecord, now *geo.Layer, rec *LayerRec
 		rec.Notices = append(rec.Notices, geo.Notice{Code: "consents_kept", Severity: geo.Info, Layer: rec.Name, Args: map[string]string{"count": strconv.Itoa(kept)}})
 	}
 	for _, h := range oldRec.Hand {
-		h.Feature = name(h.Feature)
-		if err := h.apply(now, rec, role); err != nil {
+		found := true
+		if h.Feature = name(h.Feature); role.Name != "parcels" && h.Verb != HandAdd {
+			// Without an identifier of their own features are called by their row, which another edition gives to
+			// another one: the place tells.
+			at := slices.IndexFunc(now.Features, func(f geo.Feature) bool { return shapeDigest(f.Geometry) == h.Was })
+			if found = at >= 0; found {
+				h.Feature = now.Features[at].ID
+			}
+		}
+		var err error
+		if found {
+			err = h.apply(now, rec, role)
+		}
+		if !found || err != nil {
 			rec.Notices = append(rec.Notices, geo.Notice{Code: "hand_edit_lost", Severity: geo.Warning, Layer: rec.Name, Feature: h.Feature, Args: map[string]string{"verb": h.Verb, "reason": h.Reason}})
 			continue
 		}
