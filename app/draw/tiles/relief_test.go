@@ -315,20 +315,27 @@ func BenchmarkRelief(b *testing.B) {
 	g, r := wide100k(), wideRelief()
 	s := NewPalette(everything(g.Parcels()), g.Parcels(), Style{Look: LightLook()})
 	for _, whole := range []bool{true, false} {
-		keys := benchView(g, whole)
-		for name, relief := range map[string]*Relief{"without": nil, "with": r} {
-			style := Style{Look: LightLook(), Relief: relief}
-			what := map[bool]string{true: "overview", false: "close"}[whole]
-			tiles := make([]*Tile, len(keys))
+		keys, what := benchView(g, whole), map[bool]string{true: "overview", false: "close"}[whole]
+		for _, relief := range []*Relief{nil, r} {
+			style, name := Style{Look: LightLook(), Relief: relief}, map[bool]string{true: "without", false: "with"}[relief == nil]
+			drawAll := func(b *testing.B) (out []*Tile) {
+				for _, k := range keys {
+					tile, err := g.Draw(context.Background(), k.Level, k.Rect(), style)
+					if err != nil {
+						b.Fatal(err)
+					}
+					out = append(out, tile)
+				}
+				return out
+			}
 			b.Run(what+"/draw/"+name, func(b *testing.B) {
 				for b.Loop() {
-					for i, k := range keys {
-						tiles[i], _ = g.Draw(context.Background(), k.Level, k.Rect(), style)
-					}
+					drawAll(b)
 				}
 			})
-			var into *image.RGBA
 			b.Run(what+"/colour/"+name, func(b *testing.B) {
+				tiles := drawAll(b)
+				var into *image.RGBA
 				for b.Loop() {
 					for _, t := range tiles {
 						into = t.Shade(s, nil, into)
