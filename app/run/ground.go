@@ -12,7 +12,7 @@ import (
 )
 
 // groundEdition is raised when the digits of the step change.
-const groundEdition = 1
+const groundEdition = 2
 
 // widened are a source's features, widened by its distance for one bound of the tolerance.
 type widened = overlay.Layer

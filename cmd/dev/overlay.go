@@ -27,7 +27,7 @@ const (
 	overlayParcels = 20000 // the whole set
 
 	overlayShare = 0.75  // of the C program's rate per core that is asked of ours
-	overlayWall  = 32.0  // seconds for the whole set, on two cores
+	overlayWall  = 20.0  // seconds for the whole set, on two cores
 	overlayRSS   = 700.0 // MB
 	overlayOff   = 1e-6  // most that sums may differ, as a share of the gross area
 )

@@ -76,18 +76,21 @@ const allShare = 1e-9
 //
 // With S the site, Rᵢ the region that rule i takes in or out of S:
 //
-//	gross       = area S
 //	left        = S − ∪Rᵢ
-//	aloneᵢ      = area(S − ∪_{j≠i} Rⱼ) − area left,  sharedᵢ = area(Rᵢ ∩ S) − aloneᵢ
-//	takenShared = area(∪Rᵢ ∩ S) − Σ aloneᵢ
+//	aloneᵢ      = area of S that lies in Rᵢ and in no other region
+//	sharedᵢ     = area(Rᵢ ∩ S) − aloneᵢ
+//	takenShared = area of S that lies in two regions or more
 //	buildable   = the patches of width(left) of at least the smallest size
 //	shape       = area left − area buildable
 //
 // where width(L) is L ∩ ((L eroded by w/2) dilated by w/2 with square corners), w the smallest width: a
 // strip narrower than w goes, a part wide enough keeps its own outline, corners sharper than 60 degrees
-// lose their tip. A part exactly w wide stays. What is left and what is taken are computed apart; when they
-// do not add up to gross within 1e-6, or a part is out of its bounds, the site is computed again on a grid of
-// 1 micrometre, then 1 mm, then 1 cm, then refused with ErrNotComputed.
+// lose their tip. A part exactly w wide stays.
+//
+// The areas taken are counted in strips (see tally), the polygon that is left is the library's: what is left
+// and what is taken are computed in two ways that have nothing in common. When they do not add up to gross
+// within 1e-6, the polygon is made again on a grid of 1 micrometre, then 1 mm, then 1 cm, then refused with
+// ErrNotComputed. A site of which less than a billionth is left has nothing left.
 //
 // The Engine remembers what it found out about the last site. Calls for one site under several rulesets are
 // therefore best made one after the other on one Engine; the results are the same in any other way.
@@ -146,8 +149,10 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 	if e.grid == 0 {
 		e.memory.at(e.buf)
 	}
+	parts := in.Site.Parts
 	if !site.IsValid() {
 		site = e.makeValid(site)
+		parts = e.give(site, geo.Polygons).Parts
 		out.Repaired++
 	}
 	out.GrossM2 = site.Area()
@@ -163,53 +168,70 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 	}
 	slices.SortFunc(order, func(a, b int) int { return cmp.Compare(in.Rules[a].Name, in.Rules[b].Name) })
 
-	var active []int // rules that take anything, in that order
-	var taking []*known
-	all := 0
-	for _, i := range order {
-		t := &out.Rules[i]
-		t.Name, t.Taken = in.Rules[i].Name, geo.XYGeometry{Kind: geo.Polygons}
-		k := e.takes(in.Rules[i], site, box)
-		out.Repaired += k.repaired
-		if !k.taken || !k.whole && k.areaM2 <= 0 {
+	t := &e.tally
+	t.begin(box, len(order))
+	t.add(siteEdge, parts, false)
+	for n, i := range order {
+		r := in.Rules[i]
+		out.Rules[i] = RuleTaken{Name: r.Name, Taken: geo.XYGeometry{Kind: geo.Polygons}}
+		if r.asIs() {
+			if near, whole := around(r, box); whole {
+				t.cover(n)
+			} else {
+				for _, p := range near {
+					t.add(int32(n), p.g.Parts, false)
+				}
+			}
 			continue
 		}
-		t.SharedM2 = k.areaM2 // until the part taken alone is known
-		if k.whole || out.GrossM2-k.areaM2 <= allShare*out.GrossM2 {
-			t.TakesAll, t.SharedM2 = true, out.GrossM2
-			all++
+		k := e.takes(r, site, box)
+		out.Repaired += k.repaired
+		switch {
+		case k.whole:
+			t.cover(n)
+		case k.region == nil:
+		case r.Boundary: // of which the region is made only where land is left
+			t.cover(n)
+			t.add(int32(n), k.parts, true)
+		default:
+			t.add(int32(n), k.parts, false)
 		}
-		if in.KeepTaken {
-			own := site
-			if !t.TakesAll {
-				own = e.overlay(intersection, k.region, site)
-			}
-			t.Taken = e.give(own, geo.Polygons)
-		}
-		active = append(active, i)
-		taking = append(taking, k)
 	}
-	left, takenM2 := e.alone(site, taking, active, all, &out)
-	leftM2 := left.areaM2
-	off = out.GrossM2 - leftM2 - takenM2
-	sumAlone := 0.0
-	for _, i := range active {
+	sums := t.count()
+	taken := sums.shared
+	for n, i := range order {
 		r := &out.Rules[i]
-		// Out of bounds by more than rounding, these fail the account.
-		off = worse(off, math.Min(0, r.AloneM2))
-		off = worse(off, math.Min(0, r.SharedM2-r.AloneM2))
-		r.AloneM2 = math.Max(0, r.AloneM2)
-		r.SharedM2 = math.Max(0, r.SharedM2-r.AloneM2)
-		sumAlone += r.AloneM2
+		if r.AloneM2 = sums.alone[n]; sums.gross-sums.total[n] <= allShare*sums.gross {
+			r.TakesAll, sums.total[n] = true, out.GrossM2
+		}
+		r.SharedM2 = math.Max(0, sums.total[n]-r.AloneM2)
+		taken += r.AloneM2
+		if in.KeepTaken && sums.total[n] > 0 {
+			own := site
+			if !r.TakesAll {
+				own = e.overlay(intersection, e.takes(in.Rules[i], site, box).region, site)
+			}
+			r.Taken = e.give(own, geo.Polygons)
+		}
 	}
-	off = worse(off, math.Min(0, takenM2-sumAlone))
-	out.TakenSharedM2 = math.Max(0, takenM2-sumAlone)
-
-	kept := left
-	if w := in.SmallestWidthM; w > 0 && leftM2 > 0 {
-		kept = e.recall(name('w', taking, w), func() *geos.Geom { return e.wideEnough(left.g, w) })
+	out.TakenSharedM2 = sums.shared
+	leftM2 := 0.0
+	if sums.left > allShare*sums.gross {
+		var taking []*known
+		for n, i := range order {
+			if sums.total[n] > 0 {
+				taking = append(taking, e.takes(in.Rules[i], site, box))
+			}
+		}
+		left := e.left(site, out.GrossM2, taking)
+		leftM2 = left.areaM2
+		if w := in.SmallestWidthM; w > 0 && leftM2 > 0 {
+			left = e.recall(name('w', taking, w), func() *geos.Geom { return e.wideEnough(left.g, w) })
+		}
+		out.Buildable = e.give(left.g, geo.Polygons)
 	}
-	out.Buildable = e.give(kept.g, geo.Polygons)
+	off = out.GrossM2 - leftM2 - taken
+	out.Buildable.Kind = geo.Polygons
 	if in.SmallestPatchM2 > 0 {
 		out.Buildable.Parts = slices.DeleteFunc(out.Buildable.Parts, func(part [][]geo.XY) bool {
 			return partArea(part) < in.SmallestPatchM2
@@ -222,85 +244,53 @@ func (e *Engine) buildable(in BuildableInput) (out BuildableResult, off float64)
 	if in.SmallestWidthM == 0 && in.SmallestPatchM2 == 0 {
 		out.ShapeM2 = 0
 	}
-	off = worse(off, out.GrossM2-out.BuildableM2-sumAlone-out.TakenSharedM2-out.ShapeM2)
+	if all := out.GrossM2 - out.BuildableM2 - taken - out.ShapeM2; math.Abs(all) > math.Abs(off) {
+		off = all
+	}
 	return out, off
 }
 
-func worse(a, b float64) float64 {
-	if math.Abs(b) > math.Abs(a) {
-		return b
-	}
-	return a
-}
-
-// alone finds the land left, the area taken by all rules together, what each takes alone. One or more
-// rules that take all leave nothing: two of them share everything.
-func (e *Engine) alone(site *geos.Geom, taking []*known, active []int, all int, out *BuildableResult) (left *shape, takenM2 float64) {
-	n := len(taking)
-	if n == 0 {
-		return &shape{g: site, areaM2: out.GrossM2}, 0
-	}
-	nothing := &shape{g: e.own(e.ctx.NewEmptyPolygon(), "empty")}
-	if all > 1 {
-		return nothing, out.GrossM2
-	}
-	if n == 1 && all == 1 {
-		out.Rules[active[0]].AloneM2 = out.GrossM2
-		return nothing, out.GrossM2
-	}
-	// Rules first to last may take something alone; their land is asked for with after[from:].
-	first, last, from := 0, n-1, 0
-	if all == 1 { // only the one that takes all
-		first = slices.IndexFunc(active, func(i int) bool { return out.Rules[i].TakesAll })
-		last, from = first, first+1
-	}
-	// before[k] is the site without the regions before k.
-	before := make([]*shape, n)
-	before[0] = &shape{g: site, areaM2: out.GrossM2}
-	for k := 1; k <= last; k++ {
-		before[k] = e.recall(name('b', taking[:k], 0), func() *geos.Geom {
-			return e.overlay(difference, before[k-1].g, taking[k-1].region)
-		})
-	}
-	left = nothing
-	if all == 0 {
-		// The last difference is done on a grid, where gaps, spikes without area collapse that rounding
-		// left between regions side by side.
-		left = e.recall(name('l', taking, 0), func() *geos.Geom {
-			return e.overlayFrom(max(e.grid, finest), difference, before[n-1].g, taking[n-1].region)
-		})
-	}
-	if n == 1 {
-		r := &out.Rules[active[0]]
-		r.AloneM2 = r.SharedM2 // which is still all that the rule takes
-		return left, r.AloneM2
-	}
-	// after[k] is the union of regions[k:].
-	after := make([]*shape, n)
-	after[n-1] = &shape{g: taking[n-1].region}
-	for k := n - 2; k >= from; k-- {
-		after[k] = e.recall(name('u', taking[k:], 0), func() *geos.Geom {
-			return e.overlay(union, taking[k].region, after[k+1].g)
-		})
-	}
-	for k := first; k <= last; k++ {
-		lifted := before[k].areaM2 // area left if the rule were lifted
-		if k+1 < n {
-			lifted = e.recall(name('a', taking, float64(k)), func() *geos.Geom {
-				return e.overlay(difference, before[k].g, after[k+1].g)
-			}).areaM2
+// left takes the regions from the site one after the other.
+func (e *Engine) left(site *geos.Geom, siteM2 float64, taking []*known) *shape {
+	left := &shape{g: site, areaM2: siteM2}
+	for k, t := range taking {
+		step, from := byte('b'), e.grid
+		if k == len(taking)-1 {
+			// The last difference is done on a grid, where gaps, spikes without area collapse that rounding
+			// left between regions side by side.
+			step, from = 'l', max(e.grid, finest)
 		}
-		out.Rules[active[k]].AloneM2 = lifted - left.areaM2
+		whole := left
+		left = e.recall(name(step, taking[:k+1], 0), func() *geos.Geom {
+			return e.overlayFrom(from, difference, whole.g, t.region)
+		})
 	}
-	if all == 1 {
-		return left, out.GrossM2
-	}
-	return left, e.recall(name('t', taking, 0), func() *geos.Geom {
-		return e.overlay(intersection, after[0].g, site)
-	}).areaM2
+	return left
 }
 
-// takes gives what a rule takes from the site, from memory if it is known.
+// asIs says that the rule takes polygons as they are.
+func (r Rule) asIs() bool { return r.Checked && r.SetbackM == 0 && !r.Boundary }
+
+// around gives the pieces of an asIs rule that lie in a site's surroundings, or that one covers them whole.
+// Of large pieces next to small sites most cover them or stay out.
+func around(r Rule, box geo.Extent) (near []piece, whole bool) {
+	reach := reachOf(r, box)
+	eachPiece(r, reach, func(p piece) bool {
+		switch lies(p.g.Parts[0], reach) {
+		case covering:
+			whole = true
+		case meeting:
+			near = append(near, p)
+		}
+		return !whole
+	})
+	return near, whole
+}
+
+// reachOf is the box of which a rule's region is made.
+func reachOf(r Rule, box geo.Extent) geo.Extent { return box.Grow(r.SetbackM*arcFactor + 1) }
+
+// takes gives the region that a rule takes in and around the site, from memory if it is known.
 func (e *Engine) takes(r Rule, site *geos.Geom, box geo.Extent) *known {
 	remember := e.grid == 0
 	if remember {
@@ -310,23 +300,23 @@ func (e *Engine) takes(r Rule, site *geos.Geom, box geo.Extent) *known {
 		}
 	}
 	var ps []piece
-	reach := box.Grow(r.SetbackM*arcFactor + 1)
-	if !r.Boundary {
-		ps = pieces(r, reach)
-		if remember {
-			if k := e.memory.alike(r, ps); k != nil {
-				e.retries += k.retries
-				return k
-			}
+	switch {
+	case r.Boundary:
+	case r.asIs():
+		ps, _ = around(r, box)
+	default:
+		eachPiece(r, reachOf(r, box), func(p piece) bool { ps = append(ps, p); return true })
+	}
+	sortPieces(ps)
+	if remember && !r.Boundary {
+		if k := e.memory.alike(r, ps); k != nil {
+			e.retries += k.retries
+			return k
 		}
 	}
 	before := e.retries
 	k := &known{}
-	k.region, k.whole = e.region(r, ps, reach, site, box, &k.repaired)
-	k.taken = k.whole || k.region != nil
-	if k.taken && !k.whole {
-		k.areaM2 = e.overlay(intersection, k.region, site).Area()
-	}
+	e.region(k, r, ps, site, box)
 	k.retries = e.retries - before
 	if remember {
 		if k.region != nil {
@@ -337,52 +327,40 @@ func (e *Engine) takes(r Rule, site *geos.Geom, box geo.Extent) *known {
 	return k
 }
 
-// region gives what a rule takes in the neighbourhood of the site, nil for nothing; whole says that it
-// covers the site, which needs no region. Regions reach beyond the site, so that their edges do not run
-// along the site's.
-func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, box geo.Extent, repaired *int) (region *geos.Geom, whole bool) {
+// region finds what a rule takes in the neighbourhood of the site. Regions reach beyond the site, so that
+// their edges do not run along the site's.
+func (e *Engine) region(k *known, r Rule, ps []piece, site *geos.Geom, box geo.Extent) {
 	if r.Boundary {
 		if r.SetbackM == 0 {
-			return nil, false
+			return
 		}
-		x := box.Grow(2)
-		rim := e.own(e.ctx.NewGeomFromBounds(x.MinX, x.MinY, x.MaxX, x.MaxY), "box")
 		inner := e.setback(site, -r.SetbackM)
-		if inner.IsEmpty() {
-			return nil, true
+		if k.whole = inner.IsEmpty(); k.whole {
+			return
 		}
-		return e.overlay(difference, rim, inner), false
+		k.parts = e.give(inner, geo.Polygons).Parts
+		x := box.Grow(2)
+		k.region = e.overlay(difference, e.own(e.ctx.NewGeomFromBounds(x.MinX, x.MinY, x.MaxX, x.MaxY), "box"), inner)
+		return
 	}
-	// Pieces that are taken as they are need not go to the library when they cover the site's surroundings or
-	// stay out of them: of large ones next to small sites most do.
-	asIs := r.Checked && r.SetbackM == 0
-	if asIs {
-		near := ps[:0:0]
-		for _, p := range ps {
-			switch around(p.g.Parts[0], reach) {
-			case covering:
-				return nil, true
-			case meeting:
-				near = append(near, p)
-			}
-		}
-		ps = near
-	}
-	// What may cover the site comes first: then the others need no work.
+	reach := reachOf(r, box)
+	// What may cover the site comes first: then the others need no work. Of a rule that takes polygons as they
+	// are it is known that it leaves something.
 	wide := make([]*geos.Geom, len(ps))
 	for i, p := range ps {
-		if !within(box, p.x.Grow(r.SetbackM*arcFactor)) {
+		if r.asIs() || !within(box, p.x.Grow(r.SetbackM*arcFactor)) {
 			continue
 		}
-		if wide[i] = e.widened(r, p, reach, repaired); !wide[i].IsEmpty() && e.covers(wide[i], site) {
-			return nil, true
+		if wide[i] = e.widened(r, p, reach, &k.repaired); !wide[i].IsEmpty() && e.covers(wide[i], site) {
+			k.whole = true
+			return
 		}
 	}
 	var members []*geos.Geom
 	for i, p := range ps {
 		g := wide[i]
 		if g == nil {
-			g = e.widened(r, p, reach, repaired)
+			g = e.widened(r, p, reach, &k.repaired)
 		}
 		if g.IsEmpty() {
 			continue
@@ -398,9 +376,12 @@ func (e *Engine) region(r Rule, ps []piece, reach geo.Extent, site *geos.Geom, b
 		members = append(members, g)
 	}
 	if len(members) == 0 {
-		return nil, false
+		return
 	}
-	return e.join(members), false
+	k.region = e.join(members)
+	if !r.asIs() {
+		k.parts = e.give(k.region, geo.Polygons).Parts
+	}
 }
 
 // widened takes a piece into the context: valid, cut to the reach, widened by the setback.
@@ -440,23 +421,22 @@ type piece struct {
 	x geo.Extent
 }
 
-// pieces gives the parts of the rule's features that can reach the site, in an order that does not depend
-// on that of the features. Positions that are not finite end the job even when they lie far away.
-func pieces(r Rule, reach geo.Extent) []piece {
-	var out []piece
-	for i, f := range r.Features {
-		if f.Kind != geo.Polygons && r.SetbackM == 0 {
+// eachPiece calls f for the parts of the rule's features that can reach the site until it says no. Positions
+// that are not finite end the job even when they lie far away.
+func eachPiece(r Rule, reach geo.Extent, f func(piece) bool) {
+	for i, g := range r.Features {
+		if g.Kind != geo.Polygons && r.SetbackM == 0 {
 			continue
 		}
 		// A layer knows the extents of its regions, which are finite.
-		known := i < len(r.regions) && sameStore(r.regions[i].g, f)
+		known := i < len(r.regions) && sameStore(r.regions[i].g, g)
 		if known && !r.regions[i].x.Meets(reach) {
 			continue
 		}
-		for k, part := range f.Parts {
+		for k, part := range g.Parts {
 			var x geo.Extent
 			finite := true
-			if known && len(f.Parts) == 1 {
+			if known && len(g.Parts) == 1 {
 				x = r.regions[i].x
 			} else {
 				x, finite = extentOf(part)
@@ -464,22 +444,28 @@ func pieces(r Rule, reach geo.Extent) []piece {
 			if !finite {
 				fail("rule %q, feature %d: a position is not finite", r.Name, i+1)
 			}
-			if !x.Empty() && x.Meets(reach) {
-				own := f
-				if len(f.Parts) > 1 {
-					own.Parts = f.Parts[k : k+1 : k+1]
-				}
-				out = append(out, piece{own, x})
+			if x.Empty() || !x.Meets(reach) {
+				continue
+			}
+			own := g
+			if len(g.Parts) > 1 {
+				own.Parts = g.Parts[k : k+1 : k+1]
+			}
+			if !f(piece{own, x}) {
+				return
 			}
 		}
 	}
-	slices.SortFunc(out, func(a, b piece) int {
+}
+
+// sortPieces puts pieces in an order that does not depend on that of the features.
+func sortPieces(ps []piece) {
+	slices.SortFunc(ps, func(a, b piece) int {
 		return cmp.Or(
 			cmp.Compare(a.x.MinX, b.x.MinX), cmp.Compare(a.x.MinY, b.x.MinY),
 			cmp.Compare(a.x.MaxX, b.x.MaxX), cmp.Compare(a.x.MaxY, b.x.MaxY),
 			cmp.Compare(a.g.Kind, b.g.Kind), compareParts(a.g.Parts[0], b.g.Parts[0]))
 	})
-	return out
 }
 
 // extentOf gives the extent of a part, whether its positions are finite, in one quick pass: the scan of large

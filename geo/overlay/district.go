@@ -246,7 +246,7 @@ func (e *Engine) cutPart(part [][]geo.XY, own, x geo.Extent) *geos.Geom {
 	if within(own, x) {
 		return e.raw(g)
 	}
-	switch around(part, x) {
+	switch lies(part, x) {
 	case apart:
 		return e.own(e.ctx.NewEmptyPolygon(), "clip")
 	case covering:

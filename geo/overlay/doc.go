@@ -31,8 +31,9 @@
 //
 // # Speed
 //
-// Nearly nine tenths of Buildable's time are the library's own. To come near a plain C program, widen layers
-// once with NewLayer on all cores, take each site's rules from them with RuleOf, go through the sites in the
-// order of index.Curve, and let a worker keep its Engine. go run ./cmd/dev overlay measures it on package
-// overlaytest's set, beside such a C program.
+// Buildable makes one polygon, of what is left, and only where something is left; what each rule takes alone
+// and with others is counted by tally, which makes none. Widen layers once with NewLayer on all cores, take each
+// site's rules from them with RuleOf, go through the sites in the order of index.Curve, and let a worker keep its
+// Engine. go run ./cmd/dev overlay measures it on package overlaytest's set, beside a C program on the library
+// that makes a polygon for every area.
 package overlay

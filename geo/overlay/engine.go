@@ -60,6 +60,7 @@ type Engine struct {
 	retries int
 	grid    int // first of gridsM that the job in hand still trusts
 	memory  memory
+	tally   tally
 	large   large
 }
 

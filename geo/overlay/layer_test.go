@@ -94,7 +94,7 @@ func TestRuleOfChangesNothing(t *testing.T) {
 		big := must[*Layer](t)(New().NewLayer([]geo.XYGeometry{star(r, geo.XY{X: 300 * r.Float64()}, 2500*r.Float64(), 600, false), box(-3000, -3000, 6000, 3000-800*r.Float64())}, 0))
 		small := must[*Layer](t)(New().NewLayer(in.Rules[0].Features, 60))
 		known := RuleOf("layers", geo.ExtentOf(in.Site), big, small)
-		bare := Rule{Name: "layers", Features: known.Features}
+		bare := Rule{Name: "layers", Features: known.Features, Checked: true}
 		with, without := in, in
 		with.Rules = append(append([]Rule(nil), in.Rules...), known)
 		without.Rules = append(append([]Rule(nil), in.Rules...), bare)
@@ -126,7 +126,7 @@ func TestAroundAgainstLibrary(t *testing.T) {
 		site := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{boxOf(x)}}
 		for _, part := range g.Parts {
 			own := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}}
-			got := around(part, x)
+			got := lies(part, x)
 			counts[got]++
 			covers, meets := must[bool](t)(e.Covers(own, site)), must[bool](t)(e.Intersects(own, site))
 			if (got == covering) != covers || (got == apart) == meets {
@@ -149,7 +149,7 @@ func TestAroundAgainstLibrary(t *testing.T) {
 		{geo.Extent{MinX: 100, MinY: 1, MaxX: 199, MaxY: 99}, meeting}, {geo.Extent{MinX: 100.1, MinY: 1, MaxX: 199, MaxY: 99}, apart},
 		{geo.Extent{MinX: -50, MinY: -50, MaxX: 150, MaxY: 150}, meeting}, {geo.Extent{MinX: 50, MinY: 50, MaxX: 50, MaxY: 50}, covering},
 	} {
-		if got := around(square, c.x); got != c.want {
+		if got := lies(square, c.x); got != c.want {
 			t.Errorf("%v: got %v, want %v", c.x, got, c.want)
 		}
 	}
@@ -295,7 +295,7 @@ func BenchmarkAround(b *testing.B) {
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			part := star(rand.New(rand.NewPCG(1, 1)), geo.XY{}, 3000, n, false).Parts[0]
 			for b.Loop() {
-				around(part, geo.Extent{MinX: -100, MinY: -100, MaxX: 100, MaxY: 100})
+				lies(part, geo.Extent{MinX: -100, MinY: -100, MaxX: 100, MaxY: 100})
 			}
 		})
 	}

@@ -36,10 +36,9 @@ type known struct {
 	features []geo.XYGeometry // of a checked rule, which nobody alters
 	pieces   []piece          // parts that reach the site
 
-	taken             bool       // something reaches the site
-	whole             bool       // the rule takes the whole site
-	region            *geos.Geom // what it takes in and around the site; nil when nothing, may be nil when whole
-	areaM2            float64    // of region ∩ site; not set when whole
+	whole             bool         // one piece covers the whole site
+	region            *geos.Geom   // what the rule takes in and around the site; nil when nothing or whole
+	parts             [][][]geo.XY // the polygons of the region, of a boundary rule those of what it leaves; not of an asIs rule
 	repaired, retries int
 }
 

@@ -17,9 +17,9 @@ const (
 	meeting               // neither, or too close to tell
 )
 
-// around tells how a part of a valid polygon lies to a box. Where an edge comes within a hair of the box the
+// lies tells how a part of a valid polygon lies to a box. Where an edge comes within a hair of the box the
 // answer is meeting, so that the other two do not depend on rounding.
-func around(part [][]geo.XY, x geo.Extent) lying {
+func lies(part [][]geo.XY, x geo.Extent) lying {
 	const hairM = 1e-6
 	x = x.Grow(hairM)
 	mid := x.Centre()
