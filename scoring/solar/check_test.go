@@ -3,6 +3,7 @@ package solar
 import (
 	"math"
 	"os"
+	"slices"
 	"testing"
 	"time"
 
@@ -14,6 +15,15 @@ import (
 type inputs struct {
 	v map[string]float64
 	s map[string]string
+}
+
+// ring is a horizon of one height all around; none at 0.
+func ring(deg float64) *Horizon {
+	h, err := NewHorizon(slices.Repeat([]float64{deg}, 72))
+	if err != nil {
+		panic(err)
+	}
+	return h
 }
 
 func cosDeg(d float64) float64 { return cosd(d) }
@@ -129,9 +139,14 @@ func madisonYear(in inputs) YearResult {
 }
 
 var quantities = map[string]func(in inputs) float64{
-	"erbs_hourly":       func(in inputs) float64 { return ErbsHourly(in.v["kt"]) },
-	"beam_ratio":        beamRatioOf,
-	"beam_ratio_of_day": beamRatioOf,
+	"sky_view": func(in inputs) float64 {
+		return ring(in.v["horizon_deg"]).SkyView(sun.PlaneNormal(in.v["tilt_deg"], 180))
+	},
+	"orgill_hollands_hourly": func(in inputs) float64 { return OrgillHollandsHourly(in.v["kt"]) },
+	"reindl_hourly":          func(in inputs) float64 { return ReindlHourly(in.v["kt"], sind(in.v["elevation_deg"])) },
+	"erbs_hourly":            func(in inputs) float64 { return ErbsHourly(in.v["kt"]) },
+	"beam_ratio":             beamRatioOf,
+	"beam_ratio_of_day":      beamRatioOf,
 	"isotropic_hour_mj": func(in inputs) float64 {
 		l, ci := textbookHour(in)
 		ct := cosDeg(in.v["tilt_deg"])

@@ -92,28 +92,45 @@ const (
 // light is the light of one day type at one moment.
 type light struct{ ghi, dhi, dni float64 }
 
-// moment is one time step of a representative day, with all day types.
+// moment is a time with one light for each day type: a step of a representative day, or an hour of a year.
 type moment struct {
 	month   int
-	s       sun.Vec
-	from    sun.Vec // the sun at the beginning of the step
-	to      sun.Vec // and at its end
+	hour    int     // of the day, 0 to 23
+	first   int     // in Climate.suns
+	count   int     // how many suns it has
+	light   int     // in Climate.lights: first of its types
+	sinE    float64 // mean over its suns of the sine of the height, over the horizontal
 	gon     float64 // W/m2
 	zenith  float64 // radians
 	airMass float64
 	airC    float64
+	windMS  float64 // at the panels; negative: the plant's own
 	weight  float64 // hours in the year for which one day type stands at this moment, in units of 1000
-	types   [DayTypes]light
 }
 
-// Climate is the sunlight of a place spread over representative moments, ready for any number of
-// plants. It does not change and may be shared between goroutines.
+// sunAt is the sun at an instant.
+type sunAt struct {
+	v       sun.Vec
+	height  float64 // degrees over the horizontal
+	bearing float64 // degrees from north
+}
+
+func newSunAt(v sun.Vec) sunAt { return sunAt{v, v.ElevationDeg(), v.AzimuthDeg()} }
+
+// Climate is the sunlight of a place spread over moments, ready for any number of plants. It does not
+// change and may be shared between goroutines.
 type Climate struct {
 	in      ClimateInput
+	types   int // lights of a moment
 	moments []moment
-	ghi     [12]float64 // kWh/m2 in use
-	dhi     [12]float64
-	notes   []MonthNote
+	suns    []sunAt
+	lights  []light
+	// edges are the suns at the beginning and the end of the moments, two for each; none where moments have
+	// several suns.
+	edges []sunAt
+	ghi   [12]float64 // kWh/m2 in use
+	dhi   [12]float64
+	notes []MonthNote
 }
 
 // Notes tells what was done to months whose input could not be used as given.
@@ -201,7 +218,7 @@ func newClimate(in ClimateInput, steps int) (*Climate, error) {
 	if err := in.check(); err != nil {
 		return nil, err
 	}
-	c := &Climate{in: in, moments: make([]moment, 0, 12*steps)}
+	c := &Climate{in: in, types: DayTypes, moments: make([]moment, 0, 12*steps)}
 	if in.DHIKWhPerM2 != nil {
 		given := *in.DHIKWhPerM2
 		c.in.DHIKWhPerM2 = &given
@@ -257,18 +274,27 @@ func (c *Climate) addMonth(m, steps int) error {
 	month1 := c.moments[first:]
 	if c.in.DHIKWhPerM2 != nil && given > 0 {
 		want := c.in.DHIKWhPerM2[m] * (K * meanExtra * nDays / units.WPerKW / given)
-		if got := fitMonthDiffuse(month1, want); math.Abs(got-want) > 1e-6*(want+1) {
+		if got := c.fitMonthDiffuse(month1, want); math.Abs(got-want) > 1e-6*(want+1) {
 			c.notes = append(c.notes, MonthNote{month, DiffuseBounded, got})
 		}
 	}
-	for i := range month1 {
-		for j := range month1[i].types {
-			c.ghi[m] += float64(month1[i].weight * month1[i].types[j].ghi)
-			c.dhi[m] += float64(month1[i].weight * month1[i].types[j].dhi)
-		}
-	}
+	c.sum(month1)
 	return nil
 }
+
+// sum adds the light of moments to that of their months.
+func (c *Climate) sum(moments []moment) {
+	for i := range moments {
+		mo := &moments[i]
+		for _, l := range c.of(mo) {
+			c.ghi[mo.month] += float64(mo.weight * l.ghi)
+			c.dhi[mo.month] += float64(mo.weight * l.dhi)
+		}
+	}
+}
+
+// of gives the lights of a moment.
+func (c *Climate) of(mo *moment) []light { return c.lights[mo.light : mo.light+c.types] }
 
 func (c *Climate) addDay(m, steps int, d day, scale, daysPerType, K float64, k *[DayTypes]float64) {
 	first := len(c.moments)
@@ -277,17 +303,21 @@ func (c *Climate) addDay(m, steps int, d day, scale, daysPerType, K float64, k *
 	sum := 0.0
 	shares := make([]float64, steps)
 	// The outer edges lie a trace inside the day: on the horizon itself shadows have no end.
-	edge := func(i int) sun.Vec {
+	edge := func(i int) sunAt {
 		w := -d.sunsetDeg + float64(width*float64(i))
-		return sun.VectorAt(c.in.LatDeg, d.declDeg, float64(w*(1-1e-6)))
+		return newSunAt(sun.VectorAt(c.in.LatDeg, d.declDeg, float64(w*(1-1e-6))))
 	}
 	for i := range steps {
 		w := -d.sunsetDeg + float64(width*(float64(i)+0.5))
 		s := sun.VectorAt(c.in.LatDeg, d.declDeg, w)
 		shares[i] = HourShare(w, d.sunsetDeg)
 		sum += shares[i]
+		c.edges = append(c.edges, edge(i), edge(i+1))
+		c.suns = append(c.suns, newSunAt(s))
+		c.lights = append(c.lights, make([]light, DayTypes)...)
 		c.moments = append(c.moments, moment{
-			month: m, s: s, from: edge(i), to: edge(i + 1), gon: float64(d.normal * scale),
+			month: m, hour: int(12+w/15) % 24, first: len(c.suns) - 1, count: 1, light: len(c.lights) - DayTypes,
+			sinE: s.Z, gon: float64(d.normal * scale), windMS: -1,
 			zenith:  math.Acos(clamp(s.Z, -1, 1)),
 			airMass: sun.AirMass(90 - s.ElevationDeg()),
 			airC:    c.in.TempC[m] + TemperatureSwing(12+w/15, K),
@@ -300,29 +330,28 @@ func (c *Climate) addDay(m, steps int, d day, scale, daysPerType, K float64, k *
 		power := k[j] * d.extraWh * scale / (sum * hours)
 		total := 0.0
 		for i := range mom {
-			l := &mom[i].types[j]
+			l := &c.of(&mom[i])[j]
 			l.ghi = float64(power * shares[i])
 			total += l.ghi
-			shape[i] = float64(l.ghi * ErbsHourly(l.ghi/max(1e-9, float64(mom[i].gon*mom[i].s.Z))))
+			shape[i] = float64(l.ghi * ErbsHourly(l.ghi/max(1e-9, float64(mom[i].gon*mom[i].sinE))))
 		}
 		want := float64(ErbsDaily(k[j], d.sunsetDeg) * total)
 		for i := range mom {
-			least[i], most[i] = diffuseBounds(&mom[i], mom[i].types[j].ghi)
+			least[i], most[i] = diffuseBounds(&mom[i], c.of(&mom[i])[j].ghi)
 		}
 		factor := fitFactor(want, shape, least, most, nil)
 		for i := range mom {
-			mom[i].types[j].dhi = min(most[i], max(least[i], float64(factor*shape[i])))
-		}
-		for i := range mom {
-			mom[i].setBeam(j)
+			l := &c.of(&mom[i])[j]
+			l.dhi = min(most[i], max(least[i], float64(factor*shape[i])))
+			l.setBeam(mom[i].sinE)
 		}
 	}
 }
 
 // diffuseBounds gives the least and the most diffuse light that leave a possible beam.
 func diffuseBounds(mo *moment, ghi float64) (least, most float64) {
-	ramp := clamp((mo.s.Z-sinBeamNone)/(sinBeamFull-sinBeamNone), 0, 1)
-	return max(0, ghi-float64(beamMostShare*ramp*mo.gon*mo.s.Z)), ghi
+	ramp := clamp((mo.sinE-sinBeamNone)/(sinBeamFull-sinBeamNone), 0, 1)
+	return max(0, ghi-float64(beamMostShare*ramp*mo.gon*mo.sinE)), ghi
 }
 
 // fitFactor gives the factor at which the shape, times the factor and drawn into its bounds, adds up to
@@ -367,33 +396,33 @@ func fitFactor(want float64, shape, least, most, weights []float64) float64 {
 	return factor
 }
 
-func (mo *moment) setBeam(j int) {
-	l := &mo.types[j]
+// setBeam gives the beam that the diffuse light leaves.
+func (l *light) setBeam(sinE float64) {
 	l.dni = 0
-	if mo.s.Z > sinBeamNone {
-		l.dni = max(0, l.ghi-l.dhi) / mo.s.Z
+	if sinE > sinBeamNone {
+		l.dni = max(0, l.ghi-l.dhi) / sinE
 	}
 }
 
 // fitMonthDiffuse brings the diffuse sum of a month to want kWh/m2 by one factor, as near as the bounds
 // allow, and gives what it reached.
-func fitMonthDiffuse(mom []moment, want float64) (got float64) {
+func (c *Climate) fitMonthDiffuse(mom []moment, want float64) (got float64) {
 	n := len(mom) * DayTypes
 	shape, least, most, weights := make([]float64, n), make([]float64, n), make([]float64, n), make([]float64, n)
 	for i := range mom {
-		for j := range DayTypes {
+		for j, l := range c.of(&mom[i]) {
 			k := i*DayTypes + j
-			shape[k], weights[k] = mom[i].types[j].dhi, mom[i].weight
-			least[k], most[k] = diffuseBounds(&mom[i], mom[i].types[j].ghi)
+			shape[k], weights[k] = l.dhi, mom[i].weight
+			least[k], most[k] = diffuseBounds(&mom[i], l.ghi)
 		}
 	}
 	factor := fitFactor(want, shape, least, most, weights)
 	for i := range mom {
 		for j := range DayTypes {
-			k := i*DayTypes + j
-			mom[i].types[j].dhi = min(most[k], max(least[k], float64(factor*shape[k])))
-			got += float64(mom[i].weight * mom[i].types[j].dhi)
-			mom[i].setBeam(j)
+			k, l := i*DayTypes+j, &c.of(&mom[i])[j]
+			l.dhi = min(most[k], max(least[k], float64(factor*shape[k])))
+			got += float64(mom[i].weight * l.dhi)
+			l.setBeam(mom[i].sinE)
 		}
 	}
 	return got

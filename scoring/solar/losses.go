@@ -16,6 +16,7 @@ type Losses struct {
 
 // The names of the steps of a loss chain, in their order.
 const (
+	StepHorizon     = "far_horizon" // only where a horizon is given
 	StepRowShade    = "row_shade_beam"
 	StepShadePower  = "row_shade_electrical"
 	StepRowDiffuse  = "row_shade_diffuse"

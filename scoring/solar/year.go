@@ -3,7 +3,6 @@ package solar
 import (
 	"math"
 
-	"groundtally/scoring/sun"
 	"groundtally/scoring/units"
 )
 
@@ -38,6 +37,8 @@ type Mount struct {
 	ClearanceM     float64 // lower edge over ground, for trackers of the flat panel; needed as WidthM
 	SlopeDeg       float64 // of the ground, 0 to 45
 	AspectDeg      float64 // where the ground falls to
+	// Horizon is what stands around the site; nil for a flat horizon.
+	Horizon *Horizon
 }
 
 // Plant is what stands on the site.
@@ -136,9 +137,12 @@ type YearResult struct {
 	PerformanceRatio       float64 // base: front-side light; bifacial plants may exceed 1
 	CapacityFactorDC       float64 // base: panel rating
 	Chain                  []Step
-	GHIKWhPerM2            [12]float64 // light on the open ground
-	GroundKWhPerM2         [12]float64 // mean light on the ground between and under the rows
-	DiffuseShare           float64     // of the light on the open ground
+	// HourKWhPerKWp parts MonthKWhPerKWp by hour of the day: the hour from 0 to 1 first, by the sun where
+	// months are given, by the file's clock where hours are.
+	HourKWhPerKWp  [12][24]float64
+	GHIKWhPerM2    [12]float64 // light on the open ground
+	GroundKWhPerM2 [12]float64 // mean light on the ground between and under the rows
+	DiffuseShare   float64     // of the light on the open ground
 	// PowerHours are the hours of the year in which the inverters give from b to b+1 hundredths of their
 	// rating, before the losses behind them; hours without power are left out.
 	PowerHours [PowerBins]float64
@@ -185,6 +189,7 @@ func Year(in YearInput) (YearResult, error) {
 // The quantities summed over the moments of a month, in kWh/kWp, in the order of the chain.
 const (
 	sumPlane = iota
+	sumHorizon
 	sumShaded
 	sumElectrical
 	sumDiffuse
@@ -197,18 +202,11 @@ const (
 	sums
 )
 
-// face is what one side of a row sees at a moment, apart from the strength of the light.
-type face struct {
-	cosIncidence, ratio float64
-	glass               float64 // beam through the glass
-	sky, ground         float64 // shares of view among rows
-	glassSky, glassGnd  float64
-}
-
 // Yield computes the first year of a plant in this climate.
 //
 // At each moment and for each day type: light on the open plane (beam, sky by the plant's SkyModel,
-// ground); beam and light around the sun less ShadedShare, then less ShadePowerLoss; sky and ground as
+// ground); what the horizon hides of the beam, of the light around the sun, of the sky, for which ground stands;
+// beam and light around the sun less ShadedShare, then less ShadePowerLoss; sky and ground as
 // seen among rows (ViewOfRows); glass (Martin and Ruiz); light on the rear times bifaciality; soiling;
 // FaimanCellC from the light on both sides; power; constant losses; inverter; its limit. The chain of the
 // result has these as steps.
@@ -216,104 +214,44 @@ type face struct {
 // The light of the ground is the mean over the ground among the rows, shade counted. Near-ground rows
 // that are not vertical get its part on the rear times min(1, clearance/(0.5 width)), because the ground
 // under them is darker than the mean; this is a simplification of this program. Of Rows the share
-// (Rows-1)/Rows stands behind another.
+// (Rows-1)/Rows stands behind another. All that the horizon hides of the sky counts as ground in the light of
+// the site's own ground, which is an upper bound.
 func (c *Climate) Yield(p Plant) (YearResult, error) {
 	if err := p.check(); err != nil {
 		return YearResult{}, err
 	}
-	m := p.Mount
-	rowShare := 1.0
-	if m.Rows > 0 {
-		rowShare = float64(m.Rows-1) / float64(m.Rows)
-	}
-	if m.GCR == 0 {
-		rowShare = 0
-	}
+	m := &p.Mount
 	phi := p.Module.Bifaciality * (1 - p.Module.RearStructure - p.Module.RearMismatch)
-	rearGround := 1.0
-	if m.Kind != VerticalRows && p.Module.Bifaciality > 0 {
-		rearGround = min(1, m.ClearanceM/float64(0.5*m.WidthM))
-	}
 	soil := 1 - p.Losses.SoilingFrac
 	dc := (1 - p.Losses.LIDFrac) * (1 - p.Losses.NameplateFrac) * (1 - p.Losses.MismatchFrac) * (1 - p.Losses.DCWiringFrac)
 	rated := 1 / p.Inverter.DCACRatio
-	cooling := p.Module.U0WPerM2K + float64(p.Module.U1WsPerM3K*p.WindMS)
-
-	axis, rotation := m.AzimuthDeg-90, m.TiltDeg
-	switch m.Kind {
-	case SingleAxis:
-		axis = m.AxisAzimuthDeg
-	case VerticalRows:
-		rotation = 90
-	}
-	frame := NewFrame(axis, m.SlopeDeg, m.AspectDeg)
+	v := newViewer(&p, phi)
+	rowShare := v.rowShare
 	var acc [12][sums]float64
 	var ground [12]float64
 	var hours [PowerBins]float64
-	var n sun.Vec
-	var cosTilt float64
-	var front, rear face
-	var view RowView
-	aim := func(rotationDeg float64) {
-		n = frame.Normal(rotationDeg)
-		cosTilt = clamp(n.Z, -1, 1)
-		cr := math.Abs(cosd(rotationDeg))
-		view = ViewOfRows(cr, m.GCR)
-		openSky, openGnd := (1+cosTilt)/2, (1-cosTilt)/2
-		// What rows take away is reckoned on flat ground and applied to the view of the true tilt.
-		skyLeft, gndLeft := left(view.FrontSky, (1+cr)/2), left(view.FrontGround, (1-cr)/2)
-		tilt := math.Acos(cosTilt) / radPerDeg
-		front.sky = float64(openSky * mix(skyLeft, 1, rowShare))
-		front.ground = float64(openGnd * mix(gndLeft, 1, rowShare))
-		front.glassSky, front.glassGnd = p.Module.Glass.Sky(tilt), p.Module.Glass.Ground(tilt)
-		if phi > 0 {
-			rear.sky = float64(openGnd * mix(gndLeft, 1, rowShare))
-			rear.ground = float64(openSky*mix(skyLeft, 1, rowShare)) * rearGround
-			rear.glassSky, rear.glassGnd = p.Module.Glass.Sky(180-tilt), p.Module.Glass.Ground(180-tilt)
-		}
-	}
-	if m.Kind != SingleAxis {
-		aim(rotation)
-	}
-	reach := func(s sun.Vec) float64 {
-		t, r := frame.SunAngleDeg(s), rotation
-		if m.Kind == SingleAxis {
-			r = TrackerAngleDeg(t, frame.CrossTiltDeg, m.GCR, m.MaxAngleDeg, false)
-		}
-		return shadeReach(t, r, frame.CrossTiltDeg, m.GCR)
-	}
+	var clock [12][24]float64
 	for i := range c.moments {
 		mo := &c.moments[i]
-		sunAngle := frame.SunAngleDeg(mo.s)
+		suns := c.suns[mo.first : mo.first+mo.count]
 		if m.Kind == SingleAxis {
-			rotation = TrackerAngleDeg(sunAngle, frame.CrossTiltDeg, m.GCR, m.MaxAngleDeg, m.Backtrack)
-			aim(rotation)
+			v.follow(suns[mo.count/2].v)
 		}
-		cosi := mo.s.Dot(n)
-		if !SunOverGround(sunAngle, frame.CrossTiltDeg) {
-			cosi = 0
+		var lit looks
+		if len(c.edges) > 0 {
+			lit = v.look(suns, c.edges[2*i:2*i+2], mo.sinE)
+		} else {
+			lit = v.look(suns, nil, mo.sinE)
 		}
-		front.cosIncidence, rear.cosIncidence = max(0, cosi), max(0, -cosi)
-		front.ratio, rear.ratio = BeamRatio(cosi, mo.s.Z), BeamRatio(-cosi, mo.s.Z)
-		front.glass = p.Module.Glass.Beam(cosi)
-		shaded, power := 0.0, 0.0
-		switch {
-		case rowShare == 0:
-		case m.Kind == SingleAxis && m.Backtrack:
-			shaded = ShadedShare(sunAngle, rotation, frame.CrossTiltDeg, m.GCR)
-			power = ShadePowerLoss(shaded, p.Module.ShadeBlocks)
-		default:
-			shaded, power = meanShade(reach(mo.from), reach(mo.to), p.Module.ShadeBlocks)
+		wind := mo.windMS
+		if wind < 0 {
+			wind = p.WindMS
 		}
-		shaded, power = float64(shaded*rowShare), float64(power*rowShare)
-		if phi > 0 {
-			rear.glass = p.Module.Glass.Beam(-cosi)
-		}
-		groundShade := GroundShadeShare(sunAngle, rotation, frame.CrossTiltDeg, m.GCR)
+		cooling := p.Module.U0WPerM2K + float64(p.Module.U1WsPerM3K*wind)
 		albedo := c.in.Albedo[mo.month]
+		cosTilt := v.cosTilt
 		sum := &acc[mo.month]
-		for j := range mo.types {
-			l := &mo.types[j]
+		for _, l := range c.of(mo) {
 			if l.ghi <= 0 {
 				continue
 			}
@@ -324,32 +262,41 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 			case HayDavies:
 				around = min(1, l.dni/mo.gon)
 			case Perez:
-				s := perezState(Light{l.ghi, l.dhi, l.dni, mo.gon, mo.s.Z}, mo.airMass, mo.zenith)
+				s := perezState(Light{l.ghi, l.dhi, l.dni, mo.gon, mo.sinE}, mo.airMass, mo.zenith)
 				around = s.F1
 				horizon = float64(l.dhi * s.F2 * math.Sqrt(max(0, 1-float64(cosTilt*cosTilt))))
 			}
 			dome := float64(l.dhi * (1 - around))
 			ring := float64(l.dhi * around)
-			beam := float64(l.dni*front.cosIncidence) + float64(ring*front.ratio)
+			beam := float64(l.dni*lit.front.cosIncidence) + float64(ring*lit.front.ratio)
 			// A dark horizon dims no more than the dome gives.
 			openDome := max(0, float64(dome*(1+cosTilt)/2)+horizon)
 			openGnd := float64(albedo * l.ghi * (1 - cosTilt) / 2)
 			plane := beam + openDome + openGnd
-			cut := float64(beam * (1 - shaded))
-			live := float64(beam * (1 - power))
-			onGround := float64(l.dni*mo.s.Z*(1-groundShade)) + float64(l.dhi*view.GroundSky)
+			// on is the light on open ground at this site.
+			on := l.ghi
+			if m.Horizon != nil {
+				beam = float64(beam * lit.front.seen)
+				horizon = float64(horizon * v.skyLeft)
+				on = float64(l.dni*lit.seenSin) + float64(l.dhi*v.flatSky)
+				openDome = max(0, float64(dome*v.sky)+horizon)
+				openGnd = float64(albedo * on * (1 - v.sky))
+			}
+			cut := float64(beam * (1 - lit.shaded))
+			live := float64(beam * (1 - lit.power))
+			onGround := float64(l.dni*lit.groundSin) + float64(l.dhi*v.groundSky)
 			// A row behind another sees no bright horizon; a dark one is kept.
 			behind := min(0, horizon)
-			skyIn := max(0, float64(dome*front.sky)+mix(behind, horizon, rowShare))
-			gndIn := float64(albedo * mix(onGround, l.ghi, rowShare) * front.ground)
+			skyIn := max(0, float64(dome*v.front.sky)+mix(behind, horizon, rowShare))
+			gndIn := float64(albedo * mix(onGround, on, rowShare) * v.front.ground)
 			among := live + skyIn + gndIn
-			through := float64(live*front.glass) + float64(skyIn*front.glassSky) + float64(gndIn*front.glassGnd)
+			through := float64(live*lit.front.glass) + float64(skyIn*v.front.glassSky) + float64(gndIn*v.front.glassGnd)
 			both, heat := through, cut+skyIn+gndIn
 			if phi > 0 {
-				rb := float64((float64(l.dni*rear.cosIncidence) + float64(ring*rear.ratio)) * (1 - power))
-				rs := float64(dome * rear.sky)
-				rg := float64(albedo * mix(onGround, l.ghi, rowShare) * rear.ground)
-				both += float64(phi * (float64(rb*rear.glass) + float64(rs*rear.glassSky) + float64(rg*rear.glassGnd)))
+				rb := float64((float64(l.dni*lit.rear.cosIncidence) + float64(ring*lit.rear.ratio)) * lit.rear.seen * (1 - lit.power))
+				rs := float64(dome * v.rear.sky)
+				rg := float64(albedo * mix(onGround, on, rowShare) * v.rear.ground)
+				both += float64(phi * (float64(rb*lit.rear.glass) + float64(rs*v.rear.glassSky) + float64(rg*v.rear.glassGnd)))
 				heat += float64(phi * (rb + rs + rg))
 			}
 			clean := float64(both * soil)
@@ -365,6 +312,7 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 			out := min(ac, rated)
 			w := mo.weight
 			sum[sumPlane] += float64(w * plane)
+			sum[sumHorizon] += float64(w * (beam + openDome + openGnd))
 			sum[sumShaded] += float64(w * (cut + openDome + openGnd))
 			sum[sumElectrical] += float64(w * (live + openDome + openGnd))
 			sum[sumDiffuse] += float64(w * among)
@@ -375,12 +323,13 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 			sum[sumInverted] += float64(w * ac * units.WPerKW)
 			sum[sumClipped] += float64(w * out * units.WPerKW)
 			ground[mo.month] += float64(w * onGround)
+			clock[mo.month][mo.hour] += float64(w * out * units.WPerKW)
 			if out > 0 {
 				hours[min(PowerBins-1, int(out/rated*PowerBins))] += float64(w * units.WPerKW)
 			}
 		}
 	}
-	r := c.result(&p, &acc, ground)
+	r := c.result(&p, &acc, &clock, ground)
 	r.PowerHours = hours
 	return r, nil
 }
@@ -398,7 +347,7 @@ func mix(among, open, share float64) float64 {
 	return float64(share*among) + float64((1-share)*open)
 }
 
-func (c *Climate) result(p *Plant, acc *[12][sums]float64, ground [12]float64) YearResult {
+func (c *Climate) result(p *Plant, acc *[12][sums]float64, clock *[12][24]float64, ground [12]float64) YearResult {
 	var total, snowed [sums]float64
 	for m := range acc {
 		for k, v := range acc[m] {
@@ -407,7 +356,10 @@ func (c *Climate) result(p *Plant, acc *[12][sums]float64, ground [12]float64) Y
 		}
 	}
 	l := &p.Losses
-	ch := chain{at: total[sumPlane], steps: make([]Step, 0, 19)}
+	ch := chain{at: total[sumPlane], steps: make([]Step, 0, 20)}
+	if p.Mount.Horizon != nil {
+		ch.to(StepHorizon, total[sumHorizon])
+	}
 	ch.to(StepRowShade, total[sumShaded])
 	ch.to(StepShadePower, total[sumElectrical])
 	ch.to(StepRowDiffuse, total[sumDiffuse])
@@ -442,6 +394,9 @@ func (c *Climate) result(p *Plant, acc *[12][sums]float64, ground [12]float64) Y
 	for m := range acc {
 		r.PlaneMonthKWhPerM2[m] = acc[m][sumPlane]
 		r.MonthKWhPerKWp[m] = float64(acc[m][sumClipped] * (1 - c.in.SnowLossFrac[m]) * after)
+		for h, kwh := range clock[m] {
+			r.HourKWhPerKWp[m][h] = float64(kwh * (1 - c.in.SnowLossFrac[m]) * after)
+		}
 		ghi += c.ghi[m]
 		dhi += c.dhi[m]
 	}
