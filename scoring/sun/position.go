@@ -7,6 +7,7 @@ import (
 
 const (
 	jdJ2000 = 2451545.0 // 2000-01-01 12:00 TT
+	jd1900  = 2415020.0 // 1899-12-31 12:00
 	// deltaTS is terrestrial time minus universal time in seconds in the 2020s; 10 s move the sun
 	// by 0.0001 degrees.
 	deltaTS    = 69.0
@@ -46,11 +47,12 @@ type Apparent struct {
 
 // At gives the apparent place of the sun at the Julian day jdUT (universal time).
 //
-// Low-precision solar theory: mean longitude L0, mean anomaly M, equation of the centre C, apparent
-// longitude with aberration and the main term of nutation, obliquity with the same. Largest errors
-// for 2000 to 2049: right ascension 0.010 degrees, declination 0.0035, altitude 0.009; they grow
-// slowly outside. Source: Meeus 1998, Astronomical Algorithms, chapters 12, 22 and 25; check table
-// sun.csv.
+// Low-precision solar theory: mean longitude L0, mean anomaly M, equation of the centre C with five terms for
+// what Venus, Jupiter, the moon and a long period add, apparent longitude with aberration and the main term of
+// nutation, obliquity with the same. Largest errors for 2000 to 2049: right ascension 0.005 degrees,
+// declination 0.002, altitude 0.006; they grow slowly outside. Source: Meeus 1998, Astronomical Algorithms,
+// chapters 12, 22 and 25; the five terms: Meeus 1979, Astronomical Formulae for Calculators, chapter 18; check
+// tables sun.csv, sun_positions.csv.
 func At(jdUT float64) Apparent {
 	T := (jdUT + deltaTS/secsPerDay - jdJ2000) / 36525
 	T2 := float64(T * T)
@@ -60,6 +62,10 @@ func At(jdUT float64) Apparent {
 	ecc := 0.016708634 - float64(0.000042037*T) - float64(1.267e-7*T2)
 	C := float64((1.914602-float64(0.004817*T)-float64(0.000014*T2))*sind(M)) +
 		float64((0.019993-float64(0.000101*T))*sind(2*M)) + float64(0.000289*sind(3*M))
+	t := (jdUT + deltaTS/secsPerDay - jd1900) / 36525
+	C += float64(0.00134*cosd(153.23+float64(22518.7541*t))) + float64(0.00154*cosd(216.57+float64(45037.5082*t))) +
+		float64(0.00200*cosd(312.69+float64(32964.3577*t))) + float64(0.00179*sind(350.74+float64(445267.1142*t)-float64(0.00144*float64(t*t)))) +
+		float64(0.00178*sind(231.19+float64(20.20*t)))
 	R := float64(1.000001018*(1-float64(ecc*ecc))) / (1 + float64(ecc*cosd(M+C)))
 	omega := 125.04 - float64(1934.136*T)
 	dpsi := -0.00478 * sind(omega)

@@ -1,7 +1,10 @@
 package sun
 
 import (
+	"encoding/csv"
 	"math"
+	"os"
+	"strconv"
 	"testing"
 	"time"
 )
@@ -122,4 +125,49 @@ func BenchmarkMonthMeanDaily(b *testing.B) {
 	for b.Loop() {
 		MonthMeanDailyWhPerM2(47, -27, time.June)
 	}
+}
+
+// Against a general astronomy library at 400 instants and places of 2000 to 2049; how the table was made stands in
+// testdata/check/tools/sun_reference.mjs.
+func TestAgainstAstronomyLibrary(t *testing.T) {
+	f, err := os.Open("../../testdata/check/sun_positions.csv")
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer func() { _ = f.Close() }() // only read
+	r := csv.NewReader(f)
+	r.Comment = '#'
+	rows, err := r.ReadAll()
+	if err != nil || len(rows) != 401 {
+		t.Fatalf("%d rows, %v", len(rows), err)
+	}
+	worst := map[string]float64{}
+	for _, row := range rows[1:] {
+		at, err := time.Parse(time.RFC3339, row[0])
+		if err != nil {
+			t.Fatal(err)
+		}
+		var x [7]float64
+		for i := range x {
+			if x[i], err = strconv.ParseFloat(row[i+1], 64); err != nil {
+				t.Fatal(err)
+			}
+		}
+		lat, lon, ra, decl, elevation, azimuth, au := x[0], x[1], x[2], x[3], x[4], x[5], x[6]
+		a := At(JulianDay(at))
+		p := a.Seen(lat, lon, Air{PressureHPa: 1013, TempC: 15})
+		for what, d := range map[string]float64{
+			"right ascension": wrap180(a.RightAscensionDeg-ra) * cosd(decl),
+			"declination":     a.DeclinationDeg - decl,
+			"elevation":       p.TopocentricDeg - elevation,
+			"azimuth":         wrap180(p.AzimuthDeg-azimuth) * cosd(elevation),
+			"distance":        (a.DistanceAU - au) * 100, // to 0.0001 astronomical units
+		} {
+			worst[what] = math.Max(worst[what], math.Abs(d))
+			if math.Abs(d) > 0.01 {
+				t.Errorf("%s at %v, %v: %s differs by %.4f degrees", row[0], lat, lon, what, d)
+			}
+		}
+	}
+	t.Logf("at most %v", worst)
 }
