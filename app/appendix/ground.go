@@ -18,8 +18,13 @@ import (
 type exceptionView struct{ Where, What, Reason, By string }
 
 // exceptions lists the rules that do not hold on a site by the user's word, and the changes of features by
-// hand.
-func exceptions(snap *study.Snapshot) []exceptionView {
+// hand. One of a site or a rule that is not there is said to have no effect.
+func exceptions(snap *study.Snapshot, r *run.Results) []exceptionView {
+	sites := map[string]bool{}
+	for i := range r.Candidates {
+		sites[r.Candidates[i].Site] = true
+	}
+	rules := run.RuleNames(snap.Catalog())
 	var out []exceptionView
 	for _, key := range snap.Keys() {
 		rest, ok := strings.CutPrefix(key, study.ExceptPrefix)
@@ -28,7 +33,16 @@ func exceptions(snap *study.Snapshot) []exceptionView {
 		}
 		s, _, _ := snap.Lookup(key)
 		name, site, _ := strings.Cut(rest, ".")
-		out = append(out, exceptionView{Where: "site " + site, What: present.Rule(name) + " does not hold", Reason: s.Reason, By: s.AcceptedBy})
+		what := present.Rule(name) + " does not hold"
+		switch {
+		case !slices.Contains(rules, name):
+			what = present.Rule(name) + ": no effect: no such rule"
+		case !sites[site]:
+			what = present.Rule(name) + ": no effect: no such site"
+		case !run.RuleInForce(snap, name):
+			what = present.Rule(name) + ": no effect: the rule is not in force"
+		}
+		out = append(out, exceptionView{Where: "site " + site, What: what, Reason: s.Reason, By: s.AcceptedBy})
 	}
 	sort.Slice(out, func(i, j int) bool { return out[i].Where+out[i].What < out[j].Where+out[j].What })
 	verbs := map[string]string{study.HandAdd: "added", study.HandMove: "moved", study.HandSet: "given other values", study.HandRemove: "taken out"}
@@ -42,7 +56,11 @@ func exceptions(snap *study.Snapshot) []exceptionView {
 			if sort.Strings(values); len(values) > 0 {
 				what += ": " + strings.Join(values, ", ")
 			}
-			out = append(out, exceptionView{Where: l.Name + ", feature " + h.Feature, What: what, Reason: h.Reason})
+			where := l.Name + ", feature " + h.Feature
+			if h.Called != "" {
+				where += " (" + h.Called + ")"
+			}
+			out = append(out, exceptionView{Where: where, What: what, Reason: h.Reason})
 		}
 	}
 	return out

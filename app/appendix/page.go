@@ -207,6 +207,22 @@ type factorView struct {
 	Unverified                                 bool
 }
 
+// holder says who holds a layer; of a backdrop who must be named, and its licence.
+func holder(l study.LayerRecord) string {
+	if l.Role != study.BackdropRole {
+		return l.Holder
+	}
+	c := l.Credit()
+	words := []string{c.Attribution, "licence: " + c.Licence}
+	if c.Licence == "" {
+		words[1] = "licence not stated"
+	}
+	if l.Holder != "" {
+		words = append([]string{l.Holder}, words...)
+	}
+	return strings.Join(words, "; ")
+}
+
 type layerView struct {
 	Name, Role, CRS, Edition, Holder, Complete, Digest string
 	Count, Read, Repaired, LeftOut                     int
@@ -253,10 +269,10 @@ func Page(in Input) ([]byte, error) {
 		if l.Complete {
 			complete = "yes"
 		}
-		layers = append(layers, layerView{Name: l.Name, Role: present.Named(l.Role), CRS: l.CRS, Edition: l.Edition, Holder: l.Holder, Complete: complete, Digest: l.Digest[:min(16, len(l.Digest))], Count: l.Count, Read: l.Ledger.Read, Repaired: l.Ledger.Repaired, LeftOut: l.Ledger.LeftOut})
+		layers = append(layers, layerView{Name: l.Name, Role: present.Named(l.Role), CRS: study.CRSWords(l.CRS), Edition: l.Edition, Holder: holder(l), Complete: complete, Digest: l.Digest[:min(16, len(l.Digest))], Count: l.Count, Read: l.Ledger.Read, Repaired: l.Ledger.Repaired, LeftOut: l.Ledger.LeftOut})
 	}
 	data["Layers"] = layers
-	data["Exceptions"], data["Out"], data["Coverage"] = exceptions(in.Snapshot), b.out(), coverage(in.Params, in.Results)
+	data["Exceptions"], data["Out"], data["Coverage"] = exceptions(in.Snapshot, in.Results), b.out(), coverage(in.Params, in.Results)
 	if data["Factors"], err = b.factors(); err != nil {
 		return nil, err
 	}

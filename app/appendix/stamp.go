@@ -150,7 +150,7 @@ func (s *Stamp) Compare(fresh *run.Results, version string) (string, *run.Differ
 			return "", &run.Difference{Where: "formula edition of the step " + step, Old: fmt.Sprint(s.Editions[step], " in the appendix"), New: fmt.Sprint(now[step], " in this program")}
 		}
 	}
-	old, err := s.results()
+	old, err := s.Results()
 	if err != nil {
 		return "", &run.Difference{Where: "values of the appendix", Old: "values that can be read", New: err.Error()}
 	}
@@ -160,7 +160,8 @@ func (s *Stamp) Compare(fresh *run.Results, version string) (string, *run.Differ
 	return run.Compare(old, fresh)
 }
 
-func (s *Stamp) results() (*run.Results, error) {
+// Results gives the values of the appendix, to nine digits.
+func (s *Stamp) Results() (*run.Results, error) {
 	raw, err := base64.StdEncoding.DecodeString(s.Values)
 	if err != nil {
 		return nil, err

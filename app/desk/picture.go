@@ -1,9 +1,12 @@
 package desk
 
 import (
+	"bytes"
 	"context"
 	"errors"
 	"fmt"
+	"image"
+	"image/color"
 	"math"
 	"slices"
 	"sort"
@@ -12,6 +15,7 @@ import (
 	"time"
 
 	"fyne.io/fyne/v2"
+	"fyne.io/fyne/v2/canvas"
 	"fyne.io/fyne/v2/container"
 	"fyne.io/fyne/v2/layout"
 	"fyne.io/fyne/v2/widget"
@@ -30,6 +34,7 @@ import (
 	"groundtally/geo"
 	"groundtally/geo/crs"
 	"groundtally/geo/formats/gridfile"
+	"groundtally/geo/formats/worldfile"
 	"groundtally/scoring"
 )
 
@@ -38,7 +43,8 @@ type picture struct {
 	w     *Window
 	m     *mapview.Map
 	shade *widget.Select
-	keys  []string // behind the options of shade
+	under *widget.Check // shows the backdrop; hidden where the study has none
+	keys  []string      // behind the options of shade
 	all   fyne.CanvasObject
 	boxed []string
 
@@ -51,6 +57,8 @@ type picture struct {
 	making   context.CancelFunc // of the ground being made
 	lit      lit                // what the relief shown or being made is of
 	lighting context.CancelFunc // of the relief being made
+	hung     hung               // what the backdrop shown or being made is of
+	hanging  context.CancelFunc // of the backdrop being made
 	wanted   *shadeJob          // newest colouring asked for
 	busy     bool
 	around   map[string]*run.Surroundings // by candidate, of the results shown
@@ -76,7 +84,15 @@ func newPicture(w *Window) *picture {
 	p.m.OnHover = p.words
 	p.shade = widget.NewSelect(nil, nil)
 	p.shade.PlaceHolder = "Score"
-	head := container.New(layout.NewCustomPaddedLayout(6, 2, 12, 8), container.NewBorder(nil, nil, widgets.Faint("Map shows").Hinted("Parcels are shaded by the score of their best candidate under the chosen voice, or by any consequence of that candidate. Each class of the legend holds about as many parcels as the others.").Wide(), nil, p.shade))
+	p.under = widget.NewCheck("Backdrop", func(on bool) {
+		w.app.Preferences().SetBool(backdropKey, on)
+		p.hang()
+	})
+	p.under.Checked = w.app.Preferences().BoolWithFallback(backdropKey, true)
+	p.under.Hide()
+	height := canvas.NewRectangle(color.Transparent) // of the row, whether the switch is there or not, so that the map stays
+	height.SetMinSize(fyne.NewSize(1, p.under.MinSize().Height))
+	head := container.New(layout.NewCustomPaddedLayout(6, 2, 12, 8), container.NewBorder(nil, nil, widgets.Faint("Map shows").Hinted("Parcels are shaded by the score of their best candidate under the chosen voice, or by any consequence of that candidate. Each class of the legend holds about as many parcels as the others.").Wide(), p.under, container.NewStack(height, p.shade)))
 	p.all = container.NewBorder(head, nil, nil, nil, p.m)
 	return p
 }
@@ -193,6 +209,7 @@ func (p *picture) renew() {
 			p.mark()
 			p.release()
 			p.light(v.Snap, store)
+			p.hang()
 			p.renew() // layers that came meanwhile
 		})
 	}()
@@ -253,6 +270,114 @@ func relief(ctx context.Context, g *tiles.Ground, rec study.LayerRecord, store s
 	}
 	r, _ := tiles.NewRelief(ctx, g, heights, at)
 	return r
+}
+
+// hung is all that a backdrop depends on.
+type hung struct {
+	pictures string // digests and reference systems; none when empty
+	plane    tiles.Plane
+	extent   geo.Extent
+}
+
+// hang puts the pictures of the ground under the map, unless they are switched off. They are decoded in the
+// background after the ground is shown.
+func (p *picture) hang() {
+	g, v := p.ground, p.w.core.View()
+	if g == nil || v == nil {
+		return
+	}
+	var recs []study.LayerRecord
+	var names []string
+	want := hung{plane: g.Plane(), extent: g.Extent()}
+	for _, rec := range v.Snap.LayersOf(study.BackdropRole) {
+		recs = append(recs, rec)
+		if who := rec.Credit().Attribution; !slices.Contains(names, who) {
+			names = append(names, who)
+		}
+	}
+	if shown := len(recs) > 0; shown != p.under.Visible() {
+		if p.under.Show(); !shown {
+			p.under.Hide()
+		}
+		p.all.Refresh()
+	}
+	if !p.under.Checked {
+		recs = nil
+	}
+	for _, rec := range recs {
+		want.pictures += rec.Digest + " " + rec.CRS + " " + rec.Credit().Attribution + "\n"
+	}
+	if want == p.hung {
+		return
+	}
+	p.hung = want
+	if p.hanging != nil {
+		p.hanging()
+	}
+	ctx, cancel := context.WithCancel(p.life)
+	p.hanging = cancel
+	if len(recs) == 0 {
+		p.m.SetBackdrop(nil, "")
+		return
+	}
+	load := run.StoreLoader(p.w.core.Session.Study().Store())
+	go func() {
+		b, err := backdrop(ctx, g, recs, load)
+		p.w.do(func() {
+			if ctx.Err() != nil {
+				return
+			}
+			cancel()
+			if err != nil {
+				p.w.foot.tell("The backdrop cannot be shown: " + present.Problem(err))
+			}
+			if b == nil {
+				names = nil // nothing of them is seen
+			}
+			p.m.SetBackdrop(b, strings.Join(names, "; "))
+		})
+	}()
+}
+
+// backdrop decodes pictures of a study.
+func backdrop(ctx context.Context, g *tiles.Ground, recs []study.LayerRecord, load run.Loader) (*tiles.Backdrop, error) {
+	var sheets []tiles.Sheet
+	for _, rec := range recs {
+		// The bytes are read again when the picture is decoded, so that those of one alone are held at a time.
+		bytesOf := func() (*bytes.Reader, error) {
+			v, err := load(ctx, rec.Digest)
+			if err != nil {
+				return nil, fmt.Errorf("%s: %w", rec.Name, err)
+			}
+			return bytes.NewReader(v.Blob), nil
+		}
+		r, err := bytesOf()
+		if err != nil {
+			return nil, err
+		}
+		one := tiles.Sheet{Open: func() (image.Image, error) {
+			r, err := bytesOf()
+			if err != nil {
+				return nil, err
+			}
+			return worldfile.Picture(r, r.Size(), worldfile.Options{File: rec.File})
+		}}
+		if one.Info, err = worldfile.Look(r, r.Size(), worldfile.Options{File: rec.File}); err != nil {
+			return nil, err
+		}
+		place, err := worldfile.OfMedia(rec.Media)
+		if err != nil {
+			return nil, fmt.Errorf("%s: %w", rec.Name, err)
+		}
+		if place != nil {
+			one.Info.World = *place
+		}
+		if one.At, err = crs.NewTransform(rec.CRS); err != nil {
+			return nil, fmt.Errorf("%s: %w", rec.Name, err)
+		}
+		sheets = append(sheets, one)
+	}
+	return tiles.NewBackdrop(ctx, g, sheets)
 }
 
 // release lets the computing begin once the map is drawn for the first time.

@@ -21,6 +21,7 @@ import (
 	"fyne.io/fyne/v2/widget"
 
 	"groundtally/app/desk/core"
+	"groundtally/app/desk/mapview"
 	"groundtally/app/desk/stages/accounts"
 	"groundtally/app/desk/stages/appendix"
 	"groundtally/app/desk/stages/ground"
@@ -33,6 +34,7 @@ import (
 	"groundtally/app/present"
 	"groundtally/app/program"
 	"groundtally/app/study"
+	"groundtally/geo"
 )
 
 // Name of what the window keeps about itself between starts.
@@ -42,6 +44,8 @@ const (
 	voiceKey = "voice"
 	lookKey  = "look"
 	wideKey  = "pane"
+
+	backdropKey = "backdrop"
 )
 
 // Window is the program's window.
@@ -121,6 +125,9 @@ func (w *Window) build() {
 	w.rail, w.bar, w.foot = newRail(w), newBar(w), newFoot(w)
 	w.picture = newPicture(w)
 	c.ShowZones = w.picture.showZones
+	c.Sketch = func(kind geo.Kind, words string, from *geo.LonLat, done func([]geo.LonLat, float64)) {
+		w.picture.m.Sketch(mapview.Sketch{Kind: kind, Words: words, From: from, Done: done})
+	}
 	c.ShowParcels, c.ShowPlace, c.Boxed = w.picture.showParcels, w.picture.showPlace, func() []string { return w.picture.boxed }
 	w.strip = strip.New(c)
 	w.strip.OnTaller = func(taller bool) {
@@ -487,7 +494,9 @@ func (w *Window) keys() {
 	cv.SetOnTypedKey(func(e *fyne.KeyEvent) {
 		switch e.Name {
 		case fyne.KeyEscape:
-			w.core.CloseLight()
+			if !w.core.CloseLight() {
+				w.picture.m.GiveUp()
+			}
 		case fyne.KeyF1:
 			w.showKeys()
 		}

@@ -145,6 +145,7 @@ func TestChangesByHand(t *testing.T) {
 		"nobody":                {Verb: study.HandMove, Feature: "x", Geometry: point(9, 48), Reason: "r"},
 		"the last one":          {Verb: study.HandRemove, Feature: "hand-1", Reason: "r"},
 		"a place far away":      {Verb: study.HandAdd, Geometry: point(50, 48), Reason: "r"},
+		"values of what goes":   {Verb: study.HandRemove, Feature: "hand-1", Values: map[string]string{"class": "farm"}, Reason: "r"},
 		"a name that is in use": {Verb: study.HandAdd, Feature: "hand-1", Geometry: point(9, 48), Reason: "r"},
 	} {
 		before, _ := b.content("houses")
@@ -160,8 +161,20 @@ func TestChangesByHand(t *testing.T) {
 	if err := b.byHand("no go", "exclusion", study.HandEdit{Verb: study.HandAdd, Geometry: tie, Values: map[string]string{"reason": "test"}, Reason: "r"}); err != nil {
 		t.Fatal(err)
 	}
-	if _, l := b.content("no go"); len(l.Features[0].Geometry.Parts) != 2 {
+	rec, l = b.content("no go")
+	if len(l.Features[0].Geometry.Parts) != 2 {
 		t.Errorf("%d parts, want the two triangles", len(l.Features[0].Geometry.Parts))
+	}
+	if len(rec.Notices) != 1 || rec.Notices[0].Code != "drawn_repaired" || rec.Notices[0].Args["area_after_ha"] == "0.0000" {
+		t.Errorf("the repair is told as %+v", rec.Notices)
+	}
+	// Moved to a place where it is valid, it is no longer said to be repaired.
+	whole := &geo.LonLatGeometry{Kind: geo.Polygons, Parts: [][][]geo.LonLat{{{{Lon: 9, Lat: 48}, {Lon: 9.002, Lat: 48}, {Lon: 9.002, Lat: 48.002}, {Lon: 9, Lat: 48}}}}}
+	if err := b.byHand("no go", "", study.HandEdit{Verb: study.HandMove, Feature: "hand-1", Geometry: whole, Reason: "r"}); err != nil {
+		t.Fatal(err)
+	}
+	if rec, _ := b.content("no go"); len(rec.Notices) != 0 {
+		t.Errorf("after the move: %+v", rec.Notices)
 	}
 	if entries, err := b.s.Undo(ctx); err != nil {
 		t.Error(entries, err)

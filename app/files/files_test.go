@@ -406,3 +406,15 @@ func TestNthCallFails(t *testing.T) {
 		}
 	}
 }
+
+// A file that may not be read is bad input; one that may not be written is a right to write that is missing.
+func TestNoRightToRead(t *testing.T) {
+	var f *study.FileError
+	denied := &fs.PathError{Op: "open", Path: "x", Err: fs.ErrPermission}
+	if err := system("x", "read", denied); errors.Is(err, study.ErrReadOnly) || !errors.As(err, &f) || f.What != "you have no right to read it" || f.Cure == "" {
+		t.Errorf("read: %v", err)
+	}
+	if err := system("x", "written", denied); !errors.Is(err, study.ErrReadOnly) {
+		t.Errorf("written: %v", err)
+	}
+}

@@ -168,6 +168,9 @@ func fromGeoPackage(ctx context.Context, src source, o study.ReadOptions, in *st
 		return err
 	}
 	defer func() { _ = f.Close() }() // only read
+	if f.Study() {
+		return &study.FileError{File: src.file, What: "it is a study, and its tables are the program's own", Cure: "Write the layer out of it, with gtally export " + src.base + " LAYER --to FILE or from its window, and take that file"}
+	}
 	var names []string
 	for _, t := range f.Tables() {
 		names = append(names, t.Name)

@@ -71,6 +71,9 @@ func system(path, doing string, err error) error {
 		e.What, e.Cure, e.Err = "there is no such file or folder", "Check the name", errors.Join(study.ErrNotThere, err)
 	case errors.Is(err, fs.ErrExist):
 		e.What, e.Cure, e.Err = "there is a file of this name already", "Choose another name", errors.Join(study.ErrNameInUse, err)
+	case doing == "read" && errors.Is(err, fs.ErrPermission):
+		// No study.ErrReadOnly: what was asked for is a right to read, of the user's file.
+		e.What, e.Cure = "you have no right to read it", "Change its permissions or its folder's, or have somebody who may read it make you a copy"
 	case errors.Is(err, fs.ErrPermission), errors.Is(err, syscall.EROFS):
 		e.What, e.Cure, e.Err = "you have no right to have it "+doing, "Change its permissions, or choose another folder", errors.Join(study.ErrReadOnly, err)
 	case errors.Is(err, syscall.ENOSPC), errors.Is(err, syscall.EFBIG):

@@ -416,7 +416,7 @@ func (s *Session) compute(ctx context.Context, v *View, out *found) error {
 	if v.Of != nil && v.Results != nil && run.OnlyWeighing(v.Of, v.Snap) {
 		out.results, err = e.Reweigh(ctx, v.Snap, v.Results)
 	} else {
-		out.computed = true
+		out.computed, e.Before = true, v.Results
 		out.results, err = e.Compute(ctx, v.Snap)
 	}
 	if err != nil {
@@ -487,6 +487,11 @@ func (s *Session) Around(c *run.Candidate, done func(*run.Surroundings, error)) 
 // Months finds the energy of a candidate by month, as Around does; see run.Surveyor.
 func (s *Session) Months(c *run.Candidate, done func([12]scoring.Value, error)) {
 	survey(s, func(sv *run.Surveyor) ([12]scoring.Value, error) { return sv.Months(s.ctx, c) }, done)
+}
+
+// Relief finds the terrain of a candidate's site and of its buildable patches, as Around does; see run.Surveyor.
+func (s *Session) Relief(c *run.Candidate, done func([]run.Relief, error)) {
+	survey(s, func(sv *run.Surveyor) ([]run.Relief, error) { return sv.Relief(s.ctx, c.Site, c.Plant) }, done)
 }
 
 // NearestMiss finds which change of one rule would bring a candidate back, as Around does; see run.Surveyor.

@@ -251,3 +251,10 @@ func TestNoticesPlaceWithoutSigns(t *testing.T) {
 		t.Errorf("the notice says %q", got)
 	}
 }
+
+func TestSidesOfALayerHaveLetters(t *testing.T) {
+	got := Notice(geo.Notice{Code: "layer_apart", Layer: "far", Args: map[string]string{"west": "-27.1000", "south": "-3.0000", "east": "2.5000", "north": "4.0000"}})
+	if !strings.Contains(got, "(27.10000 W to 2.50000 E, 3.00000 S to 4.00000 N)") {
+		t.Errorf("the notice says %q", got)
+	}
+}

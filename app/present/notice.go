@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"sort"
+	"strconv"
 	"strings"
 
 	"groundtally/geo"
@@ -18,7 +19,7 @@ var sentences = map[string]string{
 	"missing_value":                  "the value is missing. What depends on it is unknown for this feature.",
 	"no_geometry":                    "the feature has no place on the map. It was left out.",
 	"wrong_geometry":                 "it is a {kind}, and the role takes {wanted}. It was left out.",
-	"layer_apart":                    "the layer ({west} to {east} E, {south} to {north} N) does not meet the other layers. Check its coordinate system.",
+	"layer_apart":                    "the layer ({west} to {east}, {south} to {north}) does not meet the other layers. Check its coordinate system.",
 	"not_a_candidate":                "the setting {setting} is not set, so the plant option was not fitted.",
 	"inventory_default":              "reckoned with the program's default list of materials and work, not with figures for the machines on offer.",
 	"memory_parameter":               "a parameter rests on a value that was not checked against its source (default, unverified).",
@@ -30,7 +31,17 @@ var sentences = map[string]string{
 	"nearest_resource":               "wind statistics are taken from the nearest resource point.",
 	"rayleigh":                       "an even spread of directions and a Rayleigh distribution are assumed from one typed mean speed.",
 	"terrain_missing":                "no ground heights: slope rules are not applied and sea level is assumed.",
-	"horizon_flat":                   "the horizon is taken as flat and the ground as level.",
+	"horizon_flat":                   "no ground heights here: the horizon is taken as flat and the ground as level.",
+	"weather_not_read":               "the hours are not read: {why}.",
+	"weather_shift":                  "on clear days the light fits the sun best with all times moved by {count} min: their zone, or what they mark (weather.stamp), may be another.",
+	"weather_night":                  "{count} intervals have light while the sun is below the horizon: the times or the place may be wrong.",
+	"weather_bright":                 "{count} intervals have more light than is possible; their light on level ground was parted anew, which may still be too much.",
+	"weather_not_closing":            "in {count} intervals direct and diffuse light do not add up to the light on level ground; that was kept and parted anew.",
+	"weather_twice":                  "{count} rows have the time of an earlier row and are left out.",
+	"weather_filled":                 "{count} intervals are missing: {short} were filled from the hours around, {long} from the same hour of other days.",
+	"weather_negative":               "{count} intervals have light below zero, which counts as none.",
+	"weather_leap":                   "{count} intervals of 29 February are left out: a year has 8,760 hours.",
+	"horizon_partly":                 "ground heights reach less than 20 km around; beyond them the horizon is taken as no higher than what is seen.",
 	"layer_not_complete":             "the layer is not declared complete for the place, so nothing found does not mean that nothing is there.",
 	"soil_counted_twice":             "soil carbon counts in more than one weighed consequence.",
 	"slope_rule_not_applied":         "the slope rule was not applied because there are no ground heights.",
@@ -68,6 +79,18 @@ var sentences = map[string]string{
 	"more_overlaps":                  "{count} more pairs of parcels overlap.",
 	"consents_kept":                  "{count} consents of owners were kept from the edition before.",
 	"hand_edit_lost":                 "a change by hand ({verb}; {reason}) finds its feature no longer. Make it again if it is still wanted.",
+	"drawn_repaired":                 "the drawn outline crossed itself or was not closed properly. It was repaired; its area went from {area_before_ha} ha to {area_after_ha} ha. Undo takes it back.",
+	"hand_value_new":                 "no other feature has the value {value}; the values here are: {there}. Check that it is meant.",
+	"only_value_absent":              "no feature has the value {value} that was asked for. The values here are: {there}.",
+	"except_no_rule":                 "the exception has no effect: there is no rule {rule}; {rules}. Take it out, or name the right rule.",
+	"except_no_site":                 "the exception has no effect: {what}. Take it out, or name the right site.",
+	"except_rule_idle":               "the exception has no effect as things are: the rule ({rule}) is not in force, or has no layer.",
+	"except_no_parcels":              "there are no parcels yet; the exception holds once there is a site {site}.",
+	"setting_no_layer":               "the study has no layer of {role} yet, so the setting has no effect until one is added.",
+	"setting_only_raster":            "what the study has of {role} is a raster or a table, which has no outlines, so the setting has no effect.",
+	"setting_no_class":               "no feature has the class {class}, so the setting has no effect there. Classes of {role} here: {there}.",
+	"setting_no_voltage":             "nothing has {kv} kV or more, so the setting has no effect. Voltages of {role} here: {there}.",
+	"setting_voltage_taken":          "whatever has {kv} kV or more falls under the distance from {above} kV, so the setting has no effect. Voltages of {role} here: {there}.",
 	"ring_repeated":                  "{count} rings stood twice in their shape; one was left out (features {features}).",
 	"measure_left_out":               "measures along the shapes were not used ({count}).",
 	"record_deleted":                 "{count} rows are marked as deleted; they were left out with their shapes.",
@@ -123,6 +146,8 @@ var sentences = map[string]string{
 	"same_parcel_twice":              "the parcel's identifier stands in more than one layer. This one is called {now} here; take one of them out if they are one parcel.",
 	"spacing_beyond_site":            "the spacing that a turbine needs reaches beyond the site.",
 	"decimal_comma":                  "numbers are written with a decimal comma and were read so.",
+	"grid_voids":                     "{voids} of the {count} cells of the grid inside {of} have no value, {area_ha} ha in all. What rests on them is unknown there; they are not filled.",
+	"grid_apart":                     "no cell of the grid has its middle inside {of}. Check its coordinate system.",
 	"mostly_missing":                 "{count} of {of} cells of the grid have no value. Check that the file is the right one.",
 	"nodata_assumed":                 "the file does not say which number stands for a missing value; {value} was taken.",
 	"column_repeated":                "the column name {name} stands twice; the later column got a suffix.",
@@ -169,7 +194,7 @@ func Notice(n geo.Notice) string {
 		where = append(where, fmt.Sprintf("line %d", n.Line))
 	}
 	if n.At != nil {
-		where = append(where, "near "+place(*n.At))
+		where = append(where, "near "+Place(*n.At))
 	}
 	text := Sentence(n.Code, n.Args)
 	if len(where) == 0 {
@@ -195,19 +220,31 @@ func Sentence(code string, args map[string]string) string {
 		return strings.Join(parts, "; ")
 	}
 	for k, v := range args {
+		if deg, err := strconv.ParseFloat(v, 64); err == nil {
+			switch k { // the sides of a layer, kept as signed degrees
+			case "west", "east":
+				v = Longitude(deg)
+			case "south", "north":
+				v = Latitude(deg)
+			}
+		}
 		s = strings.ReplaceAll(s, "{"+k+"}", v)
 	}
 	return s
 }
 
-// place writes a position with the letters of its half of the world in place of signs.
-func place(p geo.LonLat) string {
-	lat, lon := "N", "E"
-	if p.Lat < 0 {
-		lat = "S"
+// Place writes a position in degrees with the letters of its half of the world in place of signs.
+func Place(p geo.LonLat) string { return Latitude(p.Lat) + ", " + Longitude(p.Lon) }
+
+// Latitude writes degrees north or south.
+func Latitude(deg float64) string { return half(deg, "N", "S") }
+
+// Longitude writes degrees east or west.
+func Longitude(deg float64) string { return half(deg, "E", "W") }
+
+func half(deg float64, above, below string) string {
+	if deg < 0 {
+		above = below
 	}
-	if p.Lon < 0 {
-		lon = "W"
-	}
-	return fmt.Sprintf("%.5f %s, %.5f %s", math.Abs(p.Lat), lat, math.Abs(p.Lon), lon)
+	return fmt.Sprintf("%.5f %s", math.Abs(deg), above)
 }

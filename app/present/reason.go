@@ -135,7 +135,7 @@ var steps = map[string]string{
 	"wake": "wakes of the other turbines", "availability": "time out of service", "electrical": "losses in cables and transformers", "performance": "performance below the published curve",
 	"environment": "ice, dirt and weather", "curtailment": "energy cut off", "ac_wiring": "wiring behind the inverter", "dc_wiring": "wiring before the inverter", "auxiliary": "own use",
 	"clipping": "power above what the inverter takes", "incidence_angle": "reflection at the glass", "inverter": "inverter", "light_induced": "first fading of the modules in light", "mismatch": "differences between modules",
-	"nameplate": "modules below their rating", "rear_light": "light on the rear side", "row_shade_beam": "rows shading each other, direct light", "row_shade_diffuse": "rows shading each other, light of the sky",
+	"nameplate": "modules below their rating", "rear_light": "light on the rear side", "far_horizon": "land on the horizon", "row_shade_beam": "rows shading each other, direct light", "row_shade_diffuse": "rows shading each other, light of the sky",
 	"row_shade_electrical": "strings held back by shade", "snow": "snow", "soiling": "dirt on the modules", "temperature": "warmth of the modules", "transformer": "transformer",
 }
 

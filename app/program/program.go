@@ -86,6 +86,9 @@ func (*Parts) Open(ctx context.Context, path string) (study.Store, error) {
 
 // Read reads a file of the user as far as that is possible without knowing what it means.
 func (*Parts) Read(ctx context.Context, path string, o study.ReadOptions) (study.Import, error) {
+	if in, ok, err := files.ImportPicture(ctx, path); ok {
+		return in, err
+	}
 	return files.Import(ctx, path, o)
 }
 

@@ -124,23 +124,21 @@ func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value,
 		return out, err
 	}
 	if s.fitter == nil {
-		if s.fitter, err = s.world.newFitter(); err != nil {
+		if s.fitter, err = s.world.newFitter(ctx, s.cache); err != nil {
 			return out, err
 		}
-	}
-	if s.fitter.sun == nil {
-		return every(scoring.UnknownBecause("no_layer:solar_resource")), nil
-	}
-	lat, err := s.fitter.siteLat(here)
-	if err != nil {
-		return out, err
 	}
 	for _, o := range s.world.options {
 		if o.id != c.Plant {
 			continue
 		}
-		y, ok := s.fitter.yields[yieldKey(o, lat)]
-		if !ok {
+		y, sun, bad, err := s.fitter.yearAt(o, here)
+		switch {
+		case err != nil:
+			return out, err
+		case sun.sunlight == nil:
+			return every(scoring.UnknownBecause(sun.why)), nil
+		case bad:
 			return every(scoring.UnknownBecause("plant_out_of_range")), nil
 		}
 		for m := range out {

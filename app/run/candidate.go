@@ -1,6 +1,7 @@
 package run
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"slices"
@@ -277,6 +278,9 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		}
 		if r.Status == NoRoom {
 			c.Miss = miss(g, sets[main])
+			if err := c.tooTall(e, w, around, o, s, grounds, sets); err != nil {
+				return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+			}
 		}
 		return c, nil
 	}
@@ -284,6 +288,12 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	noted := map[string]bool{}
 	if err := w.measureFacts(e, around, o, s, r, f, noted); err != nil {
 		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+	}
+	if o.wind && !sets[windPart].excepts(s.id, heightRule) {
+		var err error
+		if c.Headroom, err = w.headroom(e, f["height_limit_m"].v, sets[windPart].tipM, false, s); err != nil {
+			return nil, err
+		}
 	}
 	fitFacts(o, r, f)
 	track, counted, err := w.tracks(r, f["road_m"].v)
@@ -328,6 +338,34 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		return nil, err
 	}
 	return c, nil
+}
+
+// tooTall says of a candidate without room which machine would fit under the height limits that take ground of it.
+func (c *Candidate) tooTall(e *overlay.Engine, w *world, around *pieces, o option, s site, grounds map[string]groundResult, sets map[string]*ruleset) error {
+	if !o.wind {
+		return nil
+	}
+	most, high := 0.0, Taken{}
+	for _, t := range grounds[windPart].Taken {
+		most = math.Max(most, t.AloneHa+t.SharedHa)
+		if t.Rule == heightRule {
+			high = t
+		}
+	}
+	if high.Rule == "" {
+		return nil
+	}
+	allowed, err := w.heightAllowed(e, around, o, s)
+	if err != nil {
+		return err
+	}
+	if c.Headroom, err = w.headroom(e, allowed, sets[windPart].tipM, true, s); err != nil || c.Headroom == nil {
+		return err
+	}
+	if c.Reason == "" && (high.TakesAll || high.AloneHa+high.SharedHa == most) {
+		c.Reason = c.Headroom.words()
+	}
+	return nil
 }
 
 // bounds gives the buildable area the low and high that the position tolerance of the layers makes.
@@ -393,8 +431,8 @@ func fitFacts(o option, r fitResult, f facts) {
 	f.num("turbine_count", n, fitted)
 	f.num("fence_ha", r.FenceHa, fitted)
 	f.num("plant_ground_ha", r.TotalHa, fitted)
-	f.set("wind_p50_mwh", energy(r.WindMWh), "wind yield")
-	f.set("solar_p50_mwh", energy(r.SolarMWh), "solar yield")
+	f.set("wind_p50_mwh", energy(r.WindMWh), cmp.Or(r.WindSource, "wind yield"))
+	f.set("solar_p50_mwh", energy(r.SolarMWh), cmp.Or(r.SunSource, "solar yield"))
 	f.num("wind_yield_sigma", r.WindSigma, "root sum of squares")
 	f.num("solar_yield_sigma", r.SolarSigma, "root sum of squares")
 	f.num("wind_yield_error", 1, "even odds")
@@ -544,7 +582,7 @@ func (k *reckoner) leafNotices(r fitResult, l link) map[int][]string {
 		put("curtailed_share", "export_limited", "curtailment_bound")
 	}
 	for _, n := range r.Notices {
-		if n == "horizon_flat" {
+		if strings.HasPrefix(n, "horizon_") {
 			put("solar_p50_mwh", n)
 		} else {
 			put("wind_p50_mwh", n)

@@ -337,9 +337,9 @@ func (w *world) aboveLimit(f *fitter, o option, s site, r fitResult, acKW float6
 // windDistribution gives the farm's power over the speeds of the free wind, all machines alike; nil
 // without a resource.
 func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []float64, err error) {
-	p, _, ok := nearestWind(f.wind, s.box.Centre())
-	if !ok || r.WindKW == 0 {
-		return nil, nil, nil
+	p, err := f.windAt(o, s)
+	if err != nil || !p.known || r.WindKW == 0 {
+		return nil, nil, err
 	}
 	d, _ := o.num("rotor_diameter_m")
 	hub, _ := o.num("hub_height_m")
@@ -368,15 +368,15 @@ func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []fl
 
 // sunDistribution gives the panels' power over the hours of the year; nil without a resource.
 func (f *fitter) sunDistribution(o option, s site, r fitResult) (kw, share []float64, err error) {
-	if f.sun == nil || r.SolarKW == 0 {
+	if r.SolarKW == 0 {
 		return nil, nil, nil
 	}
-	lat, err := f.siteLat(s)
-	if err != nil {
+	y, here, _, err := f.yearAt(o, s)
+	if err != nil || here.sunlight == nil {
 		return nil, nil, err
 	}
 	left := 1.0
-	for b, h := range f.yields[yieldKey(o, lat)].PowerHours {
+	for b, h := range y.PowerHours {
 		if h > 0 {
 			kw = append(kw, (float64(b)+0.5)/solar.PowerBins*r.SolarACKW)
 			share = append(share, h/units.HoursPerYear)

@@ -1,10 +1,13 @@
 package run
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"math"
 	"sort"
+	"strings"
+	"sync"
 
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -17,7 +20,7 @@ import (
 )
 
 // fitEdition is raised when the digits of the step change.
-const fitEdition = 1
+const fitEdition = 2
 
 // fitResult is the plant fitted on a site.
 type fitResult struct {
@@ -44,7 +47,9 @@ type fitResult struct {
 	Chain          []ChainStep
 	Notices        []string
 	NeedsPatchHa   float64
-	ResourceM      float64 // distance to the resource point
+	ResourceM      float64 // distance to the resource point; the size of a cell where a grid serves
+	WindSource     string  `json:",omitempty"` // which layer served; empty in a study without grids of wind
+	SunSource      string  `json:",omitempty"`
 }
 
 // yieldValue is an energy or the reason why it is missing.
@@ -58,69 +63,54 @@ type fitter struct {
 	w       *world
 	wind    []windPoint
 	sun     *sunlight
-	yields  map[string]solar.YearResult // by option and rounded latitude
-	faults  map[string]string           // options that cannot be computed, with the reason
-	gridKey string                      // digest of the settings that a connection reads
+	hours   *weatherFile // nil without a file of hours
+	hourly  *sunlight    // the months of hours
+	gridKey string       // digest of the settings that a connection reads
+
+	temps *sunlight // temperatures for grids of sunlight without such; nil without any
+	wide  *heights  // as far as horizons are looked for; nil without terrain
+
+	mu       sync.Mutex
+	climates map[string]*solar.Climate
+	years    map[string]solarYear
+	lies     map[string]lie // by site
 }
 
 // latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
 // changes the yield by less than 1e-4.
 const latStep = 0.01
 
-func (w *world) newFitter() (*fitter, error) {
+func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, yields: map[string]solar.YearResult{}, faults: map[string]string{}, gridKey: g.sum()}
-	var err error
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}}
+	if w.terrain != nil {
+		f.wide = w.withHorizon(ctx, w.load).terrain
+	}
+	err := w.readGrids(ctx, cache)
+	if err != nil {
+		return nil, err
+	}
 	if f.wind, err = w.windPoints(); err != nil {
 		return nil, err
 	}
 	if f.sun, err = w.sunlight(); err != nil {
 		return nil, err
 	}
-	if f.sun == nil {
+	if f.hours = w.weather(); f.hours != nil && f.hours.climate != nil {
+		dhi := f.hours.report.DHIKWhPerM2
+		f.hourly = &sunlight{ghi: f.hours.report.GHIKWhPerM2, dhi: &dhi, temp: f.hours.report.MeanTempC, albedo: solar.EveryMonth(defaultAlbedo), source: f.hours.rec.Name}
+	}
+	if f.temps = f.sun; f.sun == nil {
+		f.temps = w.typedTemperatures()
 		return f, nil
 	}
-	lats := map[float64]bool{}
-	for _, s := range w.sites {
-		lat, err := f.siteLat(s)
-		if err != nil {
-			return nil, err
-		}
-		lats[lat] = true
-	}
-	sorted := make([]float64, 0, len(lats))
-	for l := range lats {
-		sorted = append(sorted, l)
-	}
-	sort.Float64s(sorted)
-	lon := w.frame.Centre().Lon
-	for _, lat := range sorted {
-		c, err := solar.NewClimate(solar.ClimateInput{LatDeg: lat, LonDeg: lon, GHIKWhPerM2: f.sun.ghi, DHIKWhPerM2: f.sun.dhi, TempC: f.sun.temp, Albedo: f.sun.albedo})
-		if err != nil {
-			return nil, fmt.Errorf("sunlight of %s: %w", f.sun.source, err)
-		}
-		for _, o := range w.options {
-			if !o.solar {
-				continue
-			}
-			p, err := w.solarPlant(o, lat)
-			if err != nil {
-				return nil, err
-			}
-			y, err := c.Yield(p)
-			if err != nil {
-				// A setting out of range: the option is not computed, the others are.
-				f.faults[o.id] = "plant_out_of_range"
-				continue
-			}
-			f.yields[yieldKey(o, lat)] = y
-		}
+	centre := w.frame.Centre()
+	if _, err := f.climate(math.Round(centre.Lat/latStep)*latStep, f.sun); err != nil {
+		return nil, fmt.Errorf("sunlight of %s: %w", f.sun.source, err)
 	}
 	return f, nil
 }
-
-func yieldKey(o option, lat float64) string { return fmt.Sprintf("%s at %.2f", o.id, lat) }
 
 func (f *fitter) siteLat(s site) (float64, error) {
 	c := s.box.Centre()
@@ -132,7 +122,7 @@ func (f *fitter) siteLat(s site) (float64, error) {
 }
 
 // key writes what the fit of a site depends on besides its ground.
-func (f *fitter) key(o option, s site, ground []string) string {
+func (f *fitter) key(o option, s site, ground []string) (string, error) {
 	k := newKey("fit", fitEdition)
 	for _, g := range ground {
 		k.text(g)
@@ -157,8 +147,12 @@ func (f *fitter) key(o option, s site, ground []string) string {
 			v, _, _ := f.w.snap.Lookup(n)
 			k.text(v.Value)
 		}
-		if p, d, ok := nearestWind(f.wind, s.box.Centre()); ok {
-			k.num(d)
+		p, err := f.windAt(o, s)
+		if err != nil {
+			return "", err
+		}
+		if p.known {
+			k.num(p.distM)
 			k.num(p.heightM)
 			k.text(fmt.Sprint(p.typed))
 			for _, sec := range p.sectors {
@@ -167,22 +161,30 @@ func (f *fitter) key(o option, s site, ground []string) string {
 				k.num(sec.Weibull.K)
 			}
 		}
+		k.said("wind", p.source, p.why)
 		if f.w.terrain != nil {
 			k.text(f.w.terrain.rec.Digest)
 			k.text(f.w.terrain.rec.CRS)
 		}
 	}
-	if o.solar && f.sun != nil {
-		for i := range 12 {
-			k.num(f.sun.ghi[i])
-			k.num(f.sun.temp[i])
-			k.num(f.sun.albedo[i])
-			if f.sun.dhi != nil {
-				k.num(f.sun.dhi[i])
+	if o.solar {
+		here, err := f.sunAt(s)
+		if err != nil {
+			return "", err
+		}
+		if here.sunlight != nil {
+			k.sunlight(here.sunlight)
+			if here.hours != nil {
+				k.text(here.hours.key)
+			}
+			if lat, err := f.siteLat(s); err == nil {
+				k.num(lat)
 			}
 		}
-		if lat, err := f.siteLat(s); err == nil {
-			k.num(lat)
+		k.said("sunlight", here.source, here.why)
+		if f.w.terrain != nil {
+			k.text(f.w.terrain.rec.Digest)
+			k.text(f.w.terrain.rec.CRS)
 		}
 	}
 	if o.fit == "spare_capacity" {
@@ -193,16 +195,19 @@ func (f *fitter) key(o option, s site, ground []string) string {
 		}
 		k.text(f.gridKey)
 	}
-	return k.sum()
+	return k.sum(), nil
+}
+
+// said writes which grid served, or why none did; nothing in a study without grids.
+func (k *keyer) said(of, source, why string) {
+	if source != "" || strings.Contains(why, " ") {
+		k.texts([]string{of, source, why})
+	}
 }
 
 // compute fits an option on a site.
 func (f *fitter) compute(e *overlay.Engine, o option, s site, ground map[string]groundResult) (fitResult, error) {
 	r := fitResult{Mode: o.fit, Fence: geo.XYGeometry{Kind: geo.Polygons}}
-	if why, bad := f.faults[o.id]; bad {
-		r.Status, r.Reason = NotComputed, why
-		return r, nil
-	}
 	limit := math.Inf(1) // power that may be fitted
 	limitAC := false
 	if o.fit == "spare_capacity" {
@@ -280,7 +285,6 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		r.Status, r.Reason = NotComputed, "turbine_does_not_fit" // the option is at fault, not the computation
 		return nil                                               //nolint:nilerr // said by the status
 	}
-	var err error
 	if g.BuildableM2 <= 0 {
 		return nil
 	}
@@ -302,10 +306,14 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		r.Reason = "limit_below_one_machine"
 		return nil
 	}
-	p, dist, known := nearestWind(f.wind, s.box.Centre())
-	r.ResourceM = dist
+	p, err := f.windAt(o, s)
+	if err != nil {
+		return err
+	}
+	known := p.known
+	r.ResourceM, r.WindSource = p.distM, p.source
 	if !known && !math.IsInf(targetMWh, 1) {
-		r.Status, r.Reason = NotComputed, "no_layer:wind_resource"
+		r.Status, r.Reason = NotComputed, p.why
 		return nil
 	}
 	along, _ := o.num("spacing_along_d")
@@ -324,7 +332,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
 			return err
 		}
-		if in, err = f.farm(o, machine, hub, p, s); err != nil {
+		if in, err = f.farm(o, machine, hub, p.windPoint, s); err != nil {
 			return err
 		}
 	}
@@ -368,7 +376,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	r.Turbines = at
 	r.WindKW = rated * float64(len(at))
 	if !known {
-		r.WindMWh.Why = "no_layer:wind_resource"
+		r.WindMWh.Why = p.why
 		return nil
 	}
 	r.WindMWh.MWh, r.WakeLoss = res.NetMWhPerYr, res.WakeLossFrac
@@ -378,7 +386,9 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	for _, n := range res.Notices {
 		r.Notices = append(r.Notices, string(n))
 	}
-	r.Notices = append(r.Notices, "nearest_resource")
+	if !p.grid {
+		r.Notices = append(r.Notices, "nearest_resource")
+	}
 	if p.typed {
 		r.Notices = append(r.Notices, "rayleigh")
 	}
@@ -556,14 +566,17 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 		limitKW = math.Min(limitKW, x)
 	}
 	var specific float64 // kWh per kW
-	if f.sun == nil {
-		r.SolarMWh.Why = "no_layer:solar_resource"
-	} else {
-		lat, err := f.siteLat(s)
-		if err != nil {
-			return err
-		}
-		y := f.yields[yieldKey(o, lat)]
+	y, here, bad, err := f.yearAt(o, s)
+	switch {
+	case err != nil:
+		return err
+	case bad:
+		r.Status, r.Reason = NotComputed, "plant_out_of_range"
+		return nil
+	case here.sunlight == nil:
+		r.SolarMWh.Why = here.why
+	default:
+		r.SunSource = here.source
 		specific, r.PR = y.SpecificYieldKWhPerKWp, y.PerformanceRatio
 		var ground, open float64
 		for i := range 12 {
@@ -575,8 +588,8 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 			limitKW = math.Min(limitKW, targetMWh*units.KWhPerMWh/specific)
 		}
 	}
-	if f.sun == nil && !math.IsInf(targetMWh, 1) {
-		r.Status, r.Reason = NotComputed, "no_layer:solar_resource"
+	if here.sunlight == nil && !math.IsInf(targetMWh, 1) {
+		r.Status, r.Reason = NotComputed, here.why
 		return nil
 	}
 	if limitKW <= 0 {
@@ -592,14 +605,9 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	r.Fence, r.FenceHa = fence, ha
 	r.SolarKW = ha * kwPerHa
 	r.SolarACKW = r.SolarKW / ratio
-	if f.sun == nil {
+	if here.sunlight == nil {
 		return nil
 	}
-	lat, err := f.siteLat(s)
-	if err != nil {
-		return err
-	}
-	y := f.yields[yieldKey(o, lat)]
 	r.SolarMWh.MWh = specific * r.SolarKW / units.KWhPerMWh
 	for _, st := range y.Chain {
 		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "kWh/kWp", Before: st.BeforeKWhPerKWp, Share: -st.Share, After: st.AfterKWhPerKWp})
@@ -609,7 +617,13 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 		return err
 	}
 	r.SolarSigma, r.SolarLong = sig.Total(1), sig.Total(longTermYears)
-	r.Notices = append(r.Notices, "horizon_flat")
+	g0, err := f.lie(s)
+	if err != nil {
+		return err
+	}
+	if g0.notice != "" {
+		r.Notices = append(r.Notices, g0.notice)
+	}
 	return nil
 }
 
@@ -690,12 +704,15 @@ func (f *fitter) totals(e *overlay.Engine, o option, s site, r *fitResult) error
 		along, _ := o.num("spacing_along_d")
 		across, _ := o.num("spacing_across_d")
 		el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
-		if p, _, ok := nearestWind(f.wind, s.box.Centre()); ok {
+		p, err := f.windAt(o, s)
+		if err != nil {
+			return err
+		}
+		if p.known {
 			from, even := prevailingDeg(p.sectors)
 			if even {
 				el = fit.Spacing{AlongM: 4 * d, AcrossM: 4 * d}
 			}
-			var err error
 			if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
 				return err
 			}

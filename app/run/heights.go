@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 
 	"groundtally/geo"
 	"groundtally/geo/measure"
@@ -32,8 +33,36 @@ func (w *world) heightAllowed(e *overlay.Engine, around *pieces, o option, s sit
 	if around.complete(heightRule) {
 		free = scoring.NoneBecause("no height limit")
 	}
-	var found []limited
-	sea := false
+	found, why, err := w.limitsOn(e, s)
+	switch {
+	case err != nil:
+		return scoring.Value{}, err
+	case why != "":
+		return scoring.UnknownBecause(why), nil
+	case len(found) == 0:
+		return free, nil
+	}
+	if anyAboveSea(found) {
+		l, why, err := w.limitsBySpot(found, s)
+		switch {
+		case err != nil:
+			return scoring.Value{}, err
+		case l.free:
+			return free, nil
+		case why != "":
+			return scoring.UnknownBecause(why), nil
+		}
+		return scoring.Num(l.mostM), nil
+	}
+	return heightByArea(e, found, s, free)
+}
+
+func anyAboveSea(found []limited) bool {
+	return slices.ContainsFunc(found, func(f limited) bool { return f.aboveSea })
+}
+
+// limitsOn gives the limits for wind that reach a site; why says that the value of one is missing.
+func (w *world) limitsOn(e *overlay.Engine, s site) (found []limited, why string, err error) {
 	for _, l := range w.byRole[heightRule] {
 		for _, i := range l.tree.Search(s.box, nil) {
 			if !appliesTo(l.text(i, "applies_to"), windPart) {
@@ -41,26 +70,19 @@ func (w *world) heightAllowed(e *overlay.Engine, around *pieces, o option, s sit
 			}
 			g, err := l.clip(e, i, s.box)
 			if err != nil {
-				return scoring.Value{}, fmt.Errorf("layer %q: %w", l.rec.Name, err)
+				return nil, "", fmt.Errorf("layer %q: %w", l.rec.Name, err)
 			}
 			if g.Empty() {
 				continue
 			}
 			m, ok := l.number(i, "limit_value", "m")
 			if !ok {
-				return scoring.UnknownBecause("missing_value:limit_value"), nil
+				return nil, "missing_value:limit_value", nil
 			}
 			found = append(found, limited{g, m, l.aboveSea(i)})
-			sea = sea || l.aboveSea(i)
 		}
 	}
-	if len(found) == 0 {
-		return free, nil
-	}
-	if sea {
-		return w.heightBySpot(found, s, free)
-	}
-	return heightByArea(e, found, s, free)
+	return found, "", nil
 }
 
 // leastSpotM2 is an area below which two outlines only share an edge.
@@ -83,17 +105,25 @@ func heightByArea(e *overlay.Engine, found []limited, s site, free scoring.Value
 	return free, nil
 }
 
-// heightBySpot looks at the centres of the terrain's cells, since limits above sea level change with the
-// ground.
-func (w *world) heightBySpot(found []limited, s site, free scoring.Value) (scoring.Value, error) {
+// spotLimits are the limits on a site above ground: the most and the least that spots have; free says that some spot
+// has none.
+type spotLimits struct {
+	mostM, leastM float64
+	free          bool
+}
+
+// limitsBySpot looks at the centres of the terrain's cells, since limits above sea level change with the ground. why
+// says what is missing; free holds all the same.
+func (w *world) limitsBySpot(found []limited, s site) (out spotLimits, why string, err error) {
+	out = spotLimits{mostM: math.Inf(-1), leastM: math.Inf(1)}
 	if w.terrain == nil {
-		return scoring.UnknownBecause("no_layer:terrain"), nil
+		return out, "no_layer:terrain", nil
 	}
 	t, err := w.terrain.get()
 	if err != nil {
-		return scoring.Value{}, err
+		return out, "", err
 	}
-	best, unlimited, missing := math.Inf(-1), false, false
+	missing := false
 	look := func(p geo.XY) {
 		least := math.Inf(1)
 		for _, f := range found {
@@ -111,8 +141,11 @@ func (w *world) heightBySpot(found []limited, s site, free scoring.Value) (scori
 			}
 			least = math.Min(least, m)
 		}
-		unlimited = unlimited || math.IsInf(least, 1)
-		best = math.Max(best, least)
+		if math.IsInf(least, 1) {
+			out.free = true
+			return
+		}
+		out.mostM, out.leastM = math.Max(out.mostM, least), math.Min(out.leastM, least)
 	}
 	spots := 0
 	if c0, r0, c1, r1, ok := t.Window(s.box); ok {
@@ -132,11 +165,97 @@ func (w *world) heightBySpot(found []limited, s site, free scoring.Value) (scori
 			}
 		}
 	}
-	switch {
-	case unlimited:
-		return free, nil
-	case missing || math.IsInf(best, 0):
-		return scoring.UnknownBecause("height_unknown"), nil
+	if missing || math.IsInf(out.mostM, 0) {
+		why = "height_unknown"
 	}
-	return scoring.Num(best), nil
+	return out, why, nil
 }
+
+// Machine is a machine that the study or the program knows by its height.
+type Machine struct {
+	ID   string  `json:"id"` // of the plant option, or of the reference machine
+	Name string  `json:"name"`
+	TipM float64 `json:"tip_m"` // hub height and half the rotor
+}
+
+// Headroom is what the mapped height limits of a site leave a machine. Masts keep half a rotor from a limited area, so
+// that no blade reaches into it.
+type Headroom struct {
+	TipM       float64  `json:"tip_m"`                // of the plant option
+	LimitM     float64  `json:"limit_m"`              // above ground
+	Everywhere bool     `json:"everywhere,omitempty"` // some of the site has no limit, and LimitM is the lowest of the rest; else LimitM is the most that a spot of the site has
+	Tallest    *Machine `json:"tallest_fitting"`      // the tallest known machine that is no higher than LimitM; nil when none is
+	Lowest     Machine  `json:"lowest_known"`         // the lowest machine known
+}
+
+// machines gives the plant options with turbines, then the reference machines of a published hub height, the tallest
+// first.
+func (w *world) machines() []Machine {
+	var out []Machine
+	for _, o := range w.options {
+		hub, okH := o.num("hub_height_m")
+		d, okD := o.num("rotor_diameter_m")
+		if o.wind && okH && okD {
+			out = append(out, Machine{ID: o.id, Name: cmp.Or(o.settings["title"], o.id), TipM: hub + d/2})
+		}
+	}
+	for _, t := range w.p.Turbines {
+		if t.HubHeightKnown {
+			out = append(out, Machine{ID: t.ID, Name: t.Name, TipM: t.HubHeightM + t.RotorDiameterM/2})
+		}
+	}
+	slices.SortStableFunc(out, func(a, b Machine) int { return cmp.Compare(b.TipM, a.TipM) })
+	return out
+}
+
+// headroom gives what the height limits leave on a site whose tallest allowed height is known, or of which they take
+// some ground; nil elsewhere, and where the limits are not known.
+func (w *world) headroom(e *overlay.Engine, allowed scoring.Value, tipM float64, takes bool, s site) (*Headroom, error) {
+	known := w.machines()
+	if len(known) == 0 || tipM == 0 {
+		return nil, nil
+	}
+	h := &Headroom{TipM: tipM, LimitM: allowed.X, Lowest: known[len(known)-1]}
+	if !allowed.OK() {
+		if !takes {
+			return nil, nil
+		}
+		found, why, err := w.limitsOn(e, s)
+		if err != nil || why != "" || len(found) == 0 {
+			return nil, err
+		}
+		h.Everywhere, h.LimitM = true, math.Inf(1)
+		if anyAboveSea(found) {
+			l, why, err := w.limitsBySpot(found, s)
+			if err != nil || why != "" {
+				return nil, err
+			}
+			h.LimitM = l.leastM
+		} else {
+			for _, f := range found {
+				h.LimitM = math.Min(h.LimitM, f.m)
+			}
+		}
+	}
+	for i := range known {
+		if known[i].TipM <= h.LimitM {
+			h.Tallest = &known[i]
+			break
+		}
+	}
+	return h, nil
+}
+
+// words says which machine fits, for people. They name no limit, so that sites of one answer share their words.
+func (h *Headroom) words() string {
+	where := "under the height limits of the site"
+	if h.Everywhere {
+		where = "under all height limits on the site"
+	}
+	if h.Tallest == nil {
+		return fmt.Sprintf("none of the known machines fits %s; the lowest is %s with its tip at %s m", where, h.Lowest.Name, short(h.Lowest.TipM))
+	}
+	return fmt.Sprintf("the tallest known machine that fits %s is %s with its tip at %s m; its mast keeps half a rotor from a lower limit beside it", where, h.Tallest.Name, short(h.Tallest.TipM))
+}
+
+func short(m float64) string { return strconv.FormatFloat(math.Round(m*10)/10, 'f', -1, 64) }

@@ -75,6 +75,7 @@ func editsAndUndos(t *testing.T, s *study.Study, seed uint64, goOn func(step int
 	t.Helper()
 	ctx := context.Background()
 	cache := &Memory{}
+	var before *Results // at hand at every other comparison
 	rng := rand.New(rand.NewPCG(seed, 11))
 	settings := []struct {
 		key    string
@@ -162,7 +163,10 @@ func editsAndUndos(t *testing.T, s *study.Study, seed uint64, goOn func(step int
 		if step%2 == 1 {
 			continue // results are compared after one or two edits, so that steps pile up
 		}
-		kept := compute(t, s, cache, 2)
+		kept := computeAfter(t, s, cache, 2, before)
+		if before = kept; checks%2 == 1 {
+			before = nil
+		}
 		fresh := compute(t, s, nil, 1)
 		checks++
 		if kept.Code != fresh.Code {
@@ -180,6 +184,45 @@ func TestOneCoreOrMany(t *testing.T) {
 	if one.Code != many.Code {
 		_, d := Compare(one, many)
 		t.Fatalf("one core and five differ: %+v", d)
+	}
+}
+
+// asked counts the candidates that are read.
+type asked struct {
+	Memory
+	candidates int
+}
+
+func (a *asked) Results(ctx context.Context, step string, keys []string) (map[string][]byte, error) {
+	if step == candidateStep {
+		a.candidates += len(keys)
+	}
+	return a.Memory.Results(ctx, step, keys)
+}
+
+func TestResultsAtHandAreNotRead(t *testing.T) {
+	s := smallStudy(t, 120)
+	cache := &asked{}
+	first := compute(t, s, cache, 2)
+	all := cache.candidates
+	if all != len(first.Candidates) {
+		t.Fatalf("%d of %d candidates were asked for", all, len(first.Candidates))
+	}
+	if _, err := s.Set(context.Background(), "set", "", study.SettingEdit{Key: "plant.solar_agri.gcr", Value: "0.28"}); err != nil {
+		t.Fatal(err)
+	}
+	second := computeAfter(t, s, cache, 2, first)
+	if got := cache.candidates - all; got == 0 || got > all/4 {
+		t.Errorf("with one option of seven changed, %d of %d candidates were read", got, all)
+	}
+	if fresh := compute(t, s, nil, 2); fresh.Code != second.Code {
+		t.Errorf("results at hand give %v, a fresh run %v", second.Code, fresh.Code)
+	}
+	// What was at hand is as it was.
+	for i := range first.Candidates {
+		if c := &first.Candidates[i]; c.columns == nil || len(c.All()) == 0 && c.Status == Fitted {
+			t.Fatalf("candidate %s lost its consequences", c.ID())
+		}
 	}
 }
 

@@ -27,7 +27,8 @@ type Out struct {
 	LargestPatchHa float64   `json:"largest_patch_ha"`
 	NeedsPatchHa   float64   `json:"needs_patch_ha,omitempty"`
 	ShapeHa        float64   `json:"shape_ha"`
-	Rules          []OutRule `json:"rules"` // what takes most first
+	Rules          []OutRule `json:"rules"`              // what takes most first
+	Headroom       *Headroom `json:"headroom,omitempty"` // where height limits hold
 }
 
 // HeldBack is the status of a fitted candidate that a gate keeps out of every order.
@@ -57,7 +58,7 @@ func Register(snap *study.Snapshot, r *Results) []Out {
 	var out []Out
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
-		o := Out{Site: c.Site, Plant: c.Plant, Status: c.Status, Reason: c.Reason, ShapeHa: c.ShapeHa}
+		o := Out{Site: c.Site, Plant: c.Plant, Status: c.Status, Reason: c.Reason, ShapeHa: c.ShapeHa, Headroom: c.Headroom}
 		if c.Status == Fitted {
 			if !held(gate, c.Gates["owner_consent"].State) {
 				continue
@@ -127,7 +128,7 @@ func (s *Surveyor) NearestMiss(ctx context.Context, c *Candidate) ([]Relaxed, er
 		return nil, err
 	}
 	if s.fitter == nil {
-		if s.fitter, err = s.world.newFitter(); err != nil {
+		if s.fitter, err = s.world.newFitter(ctx, s.cache); err != nil {
 			return nil, err
 		}
 	}

@@ -107,6 +107,7 @@ type Candidate struct {
 	ShapeHa       float64               `json:"shape_ha"`
 	Fit           *Fit                  `json:"fit,omitempty"`
 	Miss          *Nearest              `json:"nearest_miss,omitempty"`
+	Headroom      *Headroom             `json:"headroom,omitempty"` // of a plant with turbines where height limits hold
 	Connection    *Connection           `json:"connection,omitempty"`
 	Chain         []ChainStep           `json:"chain,omitempty"`
 	Facts         []Leaf                `json:"leaves,omitempty"`
@@ -121,8 +122,12 @@ type Candidate struct {
 // toColumns moves the consequences and facts into columns, and makes the rest as small as it can be.
 func (c *Candidate) toColumns(cols *Columns) {
 	row := cols.add()
-	cols.put(row, c.Consequences, c.Facts)
+	cols.put(row, c.All(), c.Leaves())
+	taken := c.columns != nil // from other results, whose parts are not touched
 	c.columns, c.row, c.Consequences, c.Facts = cols, row, nil, nil
+	if taken {
+		return
+	}
 	c.Parcels, c.Incomplete, c.Taken, c.Chain, c.Notices = exact(c.Parcels), exact(c.Incomplete), exact(c.Taken), exact(c.Chain), exact(c.Notices)
 	if c.Fit != nil {
 		c.Fit.Turbines = exact(c.Fit.Turbines)
@@ -256,6 +261,9 @@ func (c *Candidate) PublicJSON() map[string]any {
 	if c.Miss != nil {
 		m["nearest_miss"] = c.Miss
 	}
+	if c.Headroom != nil {
+		m["headroom"] = c.Headroom
+	}
 	if c.Connection != nil {
 		m["connection"] = c.Connection
 	}
@@ -290,5 +298,6 @@ type Results struct {
 
 	made     []geo.Notice // notices of the steps before weighing
 	digests  []digest     // of the candidates
+	keys     []digest     // of what each candidate was computed from
 	reckoner *reckoner
 }

@@ -371,7 +371,7 @@ func TestReliefOfAPlane(t *testing.T) {
 	}
 	slope := math.Atan(math.Hypot(0.1, 0.1)) * 180 / math.Pi
 	for _, r := range list {
-		if math.Abs(*r.MeanM-500) > 0.5 || math.Abs(*r.SlopeDeg-slope) > 0.01 || math.Abs(*r.AspectDeg-45) > 0.05 || r.AspectShare < 0.999 {
+		if math.Abs(*r.MeanM-500) > 0.5 || math.Abs(*r.SlopeDeg-slope) > 0.01 || math.Abs(*r.AspectDeg-45) > 0.05 || r.AspectShare < 0.999 || *r.SteepestDeg < *r.SlopeDeg || *r.SteepestDeg > slope+0.01 {
 			t.Errorf("patch %d: mean %v, slope %v, falls to %v, agreement %v", r.Patch, *r.MeanM, *r.SlopeDeg, *r.AspectDeg, r.AspectShare)
 		}
 		if want := math.Sqrt(6) * math.Hypot(0.1, 0.1) * 20; math.Abs(*r.RoughnessM-want) > 0.01 {

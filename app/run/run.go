@@ -24,6 +24,9 @@ type Engine struct {
 	Cores    int   // 0 takes all
 	Progress Progress
 	Load     Loader
+	// Before are earlier results, nil for none. What of their candidates still holds is taken from them
+	// instead of being read; the results are the same.
+	Before *Results
 }
 
 // Editions are the formula editions of the steps; raised when their digits change.
@@ -51,8 +54,8 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if cores <= 0 {
 		cores = runtime.NumCPU()
 	}
-	r := &runner{w: w, cores: cores, cache: e.Cache, progress: e.Progress}
-	if r.f, err = w.newFitter(); err != nil {
+	r := &runner{w: w, cores: cores, cache: e.Cache, progress: e.Progress, before: e.Before.byKey(), prev: e.Before}
+	if r.f, err = w.newFitter(ctx, e.Cache); err != nil {
 		return nil, err
 	}
 	if r.k, err = w.newReckoner(); err != nil {
@@ -65,7 +68,7 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if err != nil {
 		return nil, err
 	}
-	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices, made: w.notices, digests: digests, reckoner: r.k}
+	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices, made: w.notices, digests: digests, keys: r.keys(), reckoner: r.k}
 	if err := e.weigh(ctx, snap, out, cores); err != nil {
 		return nil, err
 	}
@@ -80,7 +83,7 @@ func (e *Engine) Reweigh(ctx context.Context, snap *study.Snapshot, prev *Result
 	if cores <= 0 {
 		cores = runtime.NumCPU()
 	}
-	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, reckoner: prev.reckoner}
+	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, reckoner: prev.reckoner}
 	for _, c := range prev.Steps {
 		if c.Step != orderStep {
 			out.Steps = append(out.Steps, StepCount{Step: c.Step, Valid: c.Computed + c.Valid})
@@ -189,6 +192,9 @@ func (r *Results) code(snap *study.Snapshot, p *Params, digests []digest) error 
 		}
 	}
 	for _, l := range snap.Layers {
+		if l.Role == study.BackdropRole {
+			continue // drawn, and counted for nothing
+		}
 		in.Layers = append(in.Layers, layer{l.Name, l.Role, l.Digest, l.CRS, l.Match, l.Units, l.Complete})
 	}
 	b, err := json.Marshal(in)

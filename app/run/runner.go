@@ -2,6 +2,7 @@ package run
 
 import (
 	"context"
+	"encoding/hex"
 	"fmt"
 
 	"groundtally/app/study"
@@ -20,6 +21,8 @@ type runner struct {
 	cores    int
 	cache    Cache
 	progress Progress
+	prev     *Results
+	before   map[digest]int // candidates of prev by what they were computed from
 
 	plans  []plan
 	assets []asset
@@ -55,8 +58,21 @@ func (r *runner) makePlans(ctx context.Context) error {
 	r.layers, r.ready = map[string]*overlay.Layer{}, map[*ruleset]bool{}
 	r.computed = map[string]int{}
 	r.wanted = map[string]map[string]bool{groundStep: {}, fitStep: {}, candidateStep: {}}
+	if len(w.gridKeys) > 0 {
+		r.wanted[gridStep] = map[string]bool{}
+	}
+	for _, k := range w.gridKeys {
+		r.wanted[gridStep][k] = true
+	}
 	r.assets = w.assets()
 	common := r.k.key(w)
+	known := newKey("machines", 1)
+	for _, m := range w.machines() {
+		known.text(m.ID)
+		known.text(m.Name)
+		known.num(m.TipM)
+	}
+	machines := known.sum()
 	for _, o := range w.options {
 		p := plan{o: o, sets: map[string]*ruleset{}, ground: map[string][]string{}, fit: make([]string, len(w.sites)), cand: make([]string, len(w.sites))}
 		for _, part := range o.parts() {
@@ -74,7 +90,10 @@ func (r *runner) makePlans(ctx context.Context) error {
 				p.ground[part][i] = p.sets[part].key(w, s)
 				grounds = append(grounds, p.ground[part][i])
 			}
-			p.fit[i] = r.f.key(o, s, grounds)
+			var err error
+			if p.fit[i], err = r.f.key(o, s, grounds); err != nil {
+				return err
+			}
 			h := newKey(candidateStep, candidateEdition)
 			h.text(common)
 			h.text(p.fit[i])
@@ -83,6 +102,13 @@ func (r *runner) makePlans(ctx context.Context) error {
 				h.texts(p.sets[part].notApplied)
 				if list := p.sets[part].excepted[s.id]; len(list) > 0 {
 					h.texts(list)
+				}
+			}
+			if o.wind {
+				under := false
+				p.sets[windPart].eachHeightLimit(s, func(heightLimit, int) { under = true })
+				if under { // which machine would fit
+					h.text(machines)
 				}
 			}
 			h.texts(legal)
@@ -123,13 +149,66 @@ func (r *runner) cached(ctx context.Context, step string, keys []string) (map[st
 // stored are the kept results that a batch needs, by step and digest.
 type stored map[string]map[string][]byte
 
+// has reports whether a candidate need not be computed.
+func (have stored) has(r *runner, key string) bool {
+	if _, ok := have[candidateStep][key]; ok {
+		return true
+	}
+	_, ok := r.held(key)
+	return ok
+}
+
+// held finds a candidate among the earlier results.
+func (r *runner) held(key string) (int, bool) {
+	if r.before == nil {
+		return 0, false
+	}
+	i, ok := r.before[keyDigest(key)]
+	return i, ok
+}
+
+// keyDigest gives a step's key as bytes.
+func keyDigest(key string) (d digest) {
+	if n, err := hex.Decode(d[:], []byte(key)); err != nil || n != len(d) {
+		panic("run: a key is no digest: " + key)
+	}
+	return d
+}
+
+// keys gives what each candidate was computed from, in the order of the candidates.
+func (r *runner) keys() []digest {
+	var out []digest
+	for _, p := range r.plans {
+		for _, k := range p.cand {
+			out = append(out, keyDigest(k))
+		}
+	}
+	return out
+}
+
+// byKey finds candidates by what they were computed from; nil results have none.
+func (r *Results) byKey() map[digest]int {
+	if r == nil || len(r.keys) != len(r.Candidates) {
+		return nil
+	}
+	out := make(map[digest]int, len(r.keys))
+	for i, k := range r.keys {
+		out[k] = i
+	}
+	return out
+}
+
 // fetch reads what a batch needs: the candidates, the fits of those that are missing, and the grounds of
 // those and of the candidates.
 func (r *runner) fetch(ctx context.Context, from, to int) (stored, error) {
 	out := stored{}
 	var keys []string
 	for _, p := range r.plans {
-		keys = append(keys, p.cand[from:to]...)
+		for _, k := range p.cand[from:to] {
+			if _, ok := r.held(k); !ok {
+				keys = append(keys, k)
+			}
+		}
 	}
 	var err error
 	if out[candidateStep], err = r.cached(ctx, candidateStep, keys); err != nil {
@@ -138,7 +217,7 @@ func (r *runner) fetch(ctx context.Context, from, to int) (stored, error) {
 	var fits, grounds []string
 	for _, p := range r.plans {
 		for i := from; i < to; i++ {
-			if _, ok := out[candidateStep][p.cand[i]]; ok {
+			if out.has(r, p.cand[i]) {
 				continue
 			}
 			fits = append(fits, p.fit[i])
@@ -169,9 +248,8 @@ func (r *runner) prepare(ctx context.Context, have stored, from, to int) error {
 			}
 			need := false
 			for i := from; i < to && !need; i++ {
-				_, done := have[candidateStep][p.cand[i]]
 				_, kept := have[groundStep][p.ground[part][i]]
-				need = !done && !kept
+				need = !have.has(r, p.cand[i]) && !kept
 			}
 			if !need {
 				continue
@@ -235,6 +313,10 @@ func (r *runner) site(ctx context.Context, e *overlay.Engine, s int, have stored
 	for n, p := range r.plans {
 		if err := ctx.Err(); err != nil {
 			return out, err
+		}
+		if i, ok := r.held(p.cand[s]); ok {
+			out.candidates[n], out.digests[n] = r.prev.Candidates[i], r.prev.digests[i]
+			continue
 		}
 		var err error
 		if data, ok := have[candidateStep][p.cand[s]]; ok {
@@ -313,7 +395,7 @@ func (r *runner) run(ctx context.Context) ([]Candidate, []digest, error) {
 			what := "kept sites"
 			for _, p := range r.plans {
 				for i := from; i < to; i++ {
-					if _, kept := have[candidateStep][p.cand[i]]; !kept {
+					if !have.has(r, p.cand[i]) {
 						what = "sites"
 					}
 				}

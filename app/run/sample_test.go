@@ -51,11 +51,17 @@ func sampleStudy(t testing.TB) *study.Study {
 
 func compute(t testing.TB, s *study.Study, cache Cache, cores int) *Results {
 	t.Helper()
+	return computeAfter(t, s, cache, cores, nil)
+}
+
+// computeAfter has earlier results at hand.
+func computeAfter(t testing.TB, s *study.Study, cache Cache, cores int, before *Results) *Results {
+	t.Helper()
 	snap, err := s.Snapshot()
 	if err != nil {
 		t.Fatal(err)
 	}
-	e := &Engine{Params: shipped(t), Cache: cache, Cores: cores, Load: StoreLoader(s.Store())}
+	e := &Engine{Params: shipped(t), Cache: cache, Cores: cores, Load: StoreLoader(s.Store()), Before: before}
 	r, err := e.Compute(context.Background(), snap)
 	if err != nil {
 		t.Fatal(err)
@@ -91,6 +97,16 @@ func TestSampleComputes(t *testing.T) {
 		if fitted[o] == 0 {
 			t.Errorf("option %s fits nowhere", o)
 		}
+	}
+}
+
+// BenchmarkSampleAtHand computes a sample of which nothing changed, with its results at hand.
+func BenchmarkSampleAtHand(b *testing.B) {
+	s := sampleStudy(b)
+	cache := &Memory{}
+	r := compute(b, s, cache, 2)
+	for b.Loop() {
+		r = computeAfter(b, s, cache, 2, r)
 	}
 }
 

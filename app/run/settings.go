@@ -1,13 +1,18 @@
 package run
 
 import (
+	"context"
+	"errors"
 	"fmt"
+	"maps"
+	"math"
 	"slices"
 	"strconv"
 	"strings"
 
 	"groundtally/app/present"
 	"groundtally/app/study"
+	"groundtally/geo"
 	"groundtally/scoring/criteria"
 )
 
@@ -67,13 +72,17 @@ func CheckKey(cat *study.Catalog, p *Params, key string) error {
 		return nil
 	}
 	switch {
-	case strings.HasPrefix(key, "rule.setback.") || strings.HasPrefix(key, "rule.exclude."):
+	case strings.HasPrefix(key, study.ExceptPrefix):
+		if name := parts[2]; !slices.Contains(RuleNames(cat), name) {
+			return bad("there is no rule %q; %s", name, ruleList(cat, name))
+		}
+	case strings.HasPrefix(key, "rule.setback.") || strings.HasPrefix(key, "rule.exclude.") || strings.HasPrefix(key, "rule.measured_from."):
 		if _, ok := cat.Role(parts[2]); !ok && parts[2] != "boundary" {
-			roles := make([]string, len(cat.Roles))
-			for i, r := range cat.Roles {
-				roles[i] = r.Name
-			}
-			return bad("there is no role %q; the roles are: %s, and boundary", parts[2], strings.Join(roles, ", "))
+			return bad("there is no role %q; the roles are: %s, and boundary", parts[2], strings.Join(roleNames(cat), ", "))
+		}
+	case strings.HasPrefix(key, tolerancePrefix):
+		if role := strings.TrimSuffix(parts[2], "_m"); !slices.Contains(roleNames(cat), role) {
+			return bad("there is no role %q; the roles are: %s", role, strings.Join(roleNames(cat), ", "))
 		}
 	case parts[0] == "limit":
 		if d, _ := cat.Definition(key); d.Key == key {
@@ -100,6 +109,359 @@ func CheckKey(cat *study.Catalog, p *Params, key string) error {
 		}
 	}
 	return nil
+}
+
+const tolerancePrefix = "layer.tolerance."
+
+func roleNames(cat *study.Catalog) []string {
+	out := make([]string, len(cat.Roles))
+	for i, r := range cat.Roles {
+		out[i] = r.Name
+	}
+	return out
+}
+
+// RuleNames lists the rules that can take land of a site, in the order of the roles, those without a role last.
+func RuleNames(cat *study.Catalog) []string {
+	var out []string
+	for _, kind := range []string{"setback:", "exclude:"} {
+		for _, r := range cat.Roles {
+			if r.Name != "parcels" && r.Name != "district" && r.Name != heightRule && (r.Accepts("point") || r.Accepts("line") || r.Accepts("polygon")) {
+				out = append(out, kind+r.Name)
+			}
+		}
+	}
+	return append(out, boundaryRule, slopeRule, aspectRule, heightRule)
+}
+
+// RuleInForce reports whether a rule can take land of any site in a state of a study: it is set for some plant
+// option, and there is a layer that it is about.
+func RuleInForce(snap *study.Snapshot, name string) bool {
+	some := func(prefix string, atLeast func(x float64) bool) bool {
+		return slices.ContainsFunc(snap.Keys(), func(key string) bool {
+			x, ok := snap.Number(key)
+			return ok && strings.HasPrefix(key, prefix) && atLeast(x)
+		})
+	}
+	whatever := func(float64) bool { return true }
+	positive := func(x float64) bool { return x > 0 }
+	switch name {
+	case boundaryRule:
+		return some("rule.setback.boundary.", positive)
+	case slopeRule:
+		return some("rule.slope_max.", whatever) && len(snap.LayersOf("terrain")) > 0
+	case aspectRule:
+		return some("rule.aspect_from.", whatever) && some("rule.aspect_to.", whatever) && len(snap.LayersOf("terrain")) > 0
+	case heightRule:
+		return len(snap.LayersOf(heightRule)) > 0
+	}
+	kind, role, _ := strings.Cut(name, ":")
+	if len(snap.LayersOf(role)) == 0 {
+		return false
+	}
+	return kind == "exclude" && snap.Yes("rule.exclude."+role) || kind == "setback" && some("rule.setback."+role+".", positive)
+}
+
+// ruleList names the rules that there are, those like a word first.
+func ruleList(cat *study.Catalog, like string) string {
+	names := RuleNames(cat)
+	var alone, roles []string
+	for _, n := range names {
+		role, ok := strings.CutPrefix(n, "setback:")
+		switch {
+		case n == boundaryRule || !strings.Contains(n, ":"):
+			alone = append(alone, n)
+		case ok:
+			roles = append(roles, role)
+		}
+	}
+	near := ""
+	if list := study.Near(like, names, 5); len(list) > 0 {
+		near = "near it are: " + strings.Join(list, ", ") + "; "
+	}
+	return near + "the rules are: " + strings.Join(alone, ", ") + ", and setback:ROLE or exclude:ROLE with one of the roles " + strings.Join(roles, ", ")
+}
+
+// Sites gives the sites of a state of a study, in order, and which group of several parcels holds a parcel.
+// Parcels are read, nothing is computed.
+func Sites(ctx context.Context, load Loader, snap *study.Snapshot) (ids []string, in map[string]string, err error) {
+	w := &world{snap: snap, byRole: map[string][]*layer{}}
+	for _, rec := range snap.LayersOf("parcels") {
+		l, err := contentOf(ctx, load, rec)
+		if err != nil {
+			return nil, nil, err
+		}
+		w.byRole["parcels"] = append(w.byRole["parcels"], l)
+	}
+	w.makeSites()
+	for _, s := range w.sites {
+		ids = append(ids, s.id)
+	}
+	in = map[string]string{}
+	for _, g := range snap.Groups {
+		for _, p := range g.Parcels {
+			in[p] = g.Site
+		}
+	}
+	return ids, in, nil
+}
+
+// contentOf reads a layer without bringing it into the frame.
+func contentOf(ctx context.Context, load Loader, rec study.LayerRecord) (*layer, error) {
+	v, err := load(ctx, rec.Digest)
+	if err != nil {
+		return nil, fmt.Errorf("read layer %q: %w", rec.Name, err)
+	}
+	if v.Layer == nil {
+		return nil, fmt.Errorf("layer %q: %w", rec.Name, study.ErrRaster)
+	}
+	return &layer{rec: rec, src: v.Layer, xy: make([]geo.XYGeometry, len(v.Layer.Features))}, nil
+}
+
+// CheckException reports whether the site of an exception is there. A study without parcels cannot tell, and
+// any site is taken. An error is a *study.ValueError.
+func CheckException(ctx context.Context, load Loader, snap *study.Snapshot, key string) error {
+	rest, ok := strings.CutPrefix(key, study.ExceptPrefix)
+	if !ok || len(snap.LayersOf("parcels")) == 0 {
+		return nil
+	}
+	ids, in, err := Sites(ctx, load, snap)
+	if err != nil {
+		return err
+	}
+	_, site, _ := strings.Cut(rest, ".")
+	if what := noSite(site, ids, in); what != "" {
+		return &study.ValueError{Key: key, Err: errors.New(what)}
+	}
+	return nil
+}
+
+// noSite says why a site is not there; empty for one that is.
+func noSite(site string, ids []string, in map[string]string) string {
+	switch {
+	case slices.Contains(ids, site):
+		return ""
+	case in[site] != "":
+		return fmt.Sprintf("parcel %s is part of the site %s; name that", site, in[site])
+	}
+	text := fmt.Sprintf("there is no site %q among the %d", site, len(ids))
+	if near := study.Near(site, ids, 5); len(near) > 0 {
+		return text + "; near it are: " + strings.Join(near, ", ")
+	}
+	return text
+}
+
+// SettingNotices tells of the user's settings that have no effect on what the study holds: exceptions of sites
+// or rules that are not there, and rules for roles without a layer, for classes that no feature has, for
+// voltages that nothing falls under. With keys, only these are looked at.
+func SettingNotices(ctx context.Context, load Loader, snap *study.Snapshot, keys ...string) ([]geo.Notice, error) {
+	if len(keys) == 0 {
+		keys = slices.Sorted(maps.Keys(snap.Explicit))
+	}
+	var out []geo.Notice
+	c := settingCheck{ctx: ctx, load: load, snap: snap, layers: map[string][]*layer{}}
+	for _, key := range keys {
+		set, ok := snap.Explicit[key]
+		if !ok || set.Value == study.NotSetText || set.Value == "false" {
+			continue
+		}
+		code, args, err := c.look(key)
+		if err != nil {
+			return nil, err
+		}
+		if code != "" {
+			out = append(out, geo.Notice{Code: string(code), Severity: geo.Warning, Field: key, Args: args})
+		}
+	}
+	return out, nil
+}
+
+// settingCheck reads what settings are compared with, each once.
+type settingCheck struct {
+	ctx    context.Context
+	load   Loader
+	snap   *study.Snapshot
+	layers map[string][]*layer // by role, those with features
+	ids    []string
+	in     map[string]string
+}
+
+// noEffect is the code of a notice on a setting.
+type noEffect string
+
+// Codes of settings without an effect.
+const (
+	exceptNoRule     noEffect = "except_no_rule"
+	exceptNoSite     noEffect = "except_no_site"
+	exceptIdle       noEffect = "except_rule_idle"
+	exceptNoParcels  noEffect = "except_no_parcels"
+	settingNoLayer   noEffect = "setting_no_layer"
+	settingRaster    noEffect = "setting_only_raster"
+	settingNoClass   noEffect = "setting_no_class"
+	settingNoVoltage noEffect = "setting_no_voltage"
+	settingVoltageUp noEffect = "setting_voltage_taken"
+)
+
+// look finds out why a setting has no effect; the code is empty where it has one, or may have.
+func (c *settingCheck) look(key string) (noEffect, map[string]string, error) {
+	if rest, ok := strings.CutPrefix(key, study.ExceptPrefix); ok {
+		return c.exception(rest)
+	}
+	parts := strings.Split(key, ".")
+	if len(parts) < 3 {
+		return "", nil, nil
+	}
+	role := parts[2]
+	switch {
+	case strings.HasPrefix(key, tolerancePrefix):
+		role = strings.TrimSuffix(role, "_m")
+		parts = parts[:3]
+	case parts[0] != "rule" || !slices.Contains([]string{"setback", "exclude", "measured_from"}, parts[1]) || role == "boundary":
+		return "", nil, nil
+	}
+	ls, err := c.ofRole(role)
+	if err != nil {
+		return "", nil, err
+	}
+	title := role
+	if r, ok := c.snap.Catalog().Role(role); ok {
+		title = strings.ToLower(r.Title)
+	}
+	if len(ls) == 0 {
+		code := settingNoLayer
+		if len(c.snap.LayersOf(role)) > 0 {
+			code = settingRaster
+		}
+		return code, map[string]string{"role": title}, nil
+	}
+	switch {
+	case len(parts) > 4 && parts[3] == "class":
+		return noClass(ls, title, parts[4])
+	case len(parts) == 4 && parts[1] == "exclude" && parts[3] == "class":
+		return noClass(ls, title, strings.Split(c.snap.Text(key), "|")...)
+	case len(parts) > 4:
+		if kv, ok := fromKV(parts[3]); ok {
+			code, args := c.noVoltage(ls, title, role, parts[4], kv)
+			return code, args, nil
+		}
+	}
+	return "", nil, nil
+}
+
+func (c *settingCheck) exception(rest string) (noEffect, map[string]string, error) {
+	name, site, _ := strings.Cut(rest, ".")
+	if !slices.Contains(RuleNames(c.snap.Catalog()), name) {
+		return exceptNoRule, map[string]string{"rule": name, "rules": ruleList(c.snap.Catalog(), name)}, nil
+	}
+	if len(c.snap.LayersOf("parcels")) == 0 {
+		return exceptNoParcels, map[string]string{"site": site}, nil
+	}
+	if c.in == nil {
+		var err error
+		if c.ids, c.in, err = Sites(c.ctx, c.load, c.snap); err != nil {
+			return "", nil, err
+		}
+	}
+	if what := noSite(site, c.ids, c.in); what != "" {
+		return exceptNoSite, map[string]string{"what": what}, nil
+	}
+	if !RuleInForce(c.snap, name) {
+		return exceptIdle, map[string]string{"rule": present.Rule(name)}, nil
+	}
+	return "", nil, nil
+}
+
+func (c *settingCheck) ofRole(role string) ([]*layer, error) {
+	if ls, ok := c.layers[role]; ok {
+		return ls, nil
+	}
+	var out []*layer
+	for _, rec := range c.snap.LayersOf(role) {
+		if rec.Kind == "raster" || rec.Kind == "table" {
+			continue
+		}
+		l, err := contentOf(c.ctx, c.load, rec)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, l)
+	}
+	c.layers[role] = out
+	return out, nil
+}
+
+// noClass finds the classes that no feature has.
+func noClass(ls []*layer, title string, classes ...string) (noEffect, map[string]string, error) {
+	there := map[string]bool{}
+	for _, l := range ls {
+		for i := range l.xy {
+			if class := l.class(i); class != "" {
+				there[class] = true
+			}
+		}
+	}
+	var missing []string
+	for _, class := range classes {
+		if class = strings.TrimSpace(class); class != "" && !there[strings.ToLower(class)] {
+			missing = append(missing, class)
+		}
+	}
+	if len(missing) == 0 {
+		return "", nil, nil
+	}
+	return settingNoClass, map[string]string{"class": strings.Join(missing, ", "), "role": title, "there": someOf(slices.Sorted(maps.Keys(there)))}, nil
+}
+
+// noVoltage finds out whether no feature reaches a voltage, or all that reach it fall under a higher one
+// that is set for the same plants.
+func (c *settingCheck) noVoltage(ls []*layer, title, role, plant string, leastKV float64) (noEffect, map[string]string) {
+	above := math.Inf(1)
+	for key, set := range c.snap.Explicit {
+		parts := strings.Split(key, ".")
+		if len(parts) != 5 || parts[0] != "rule" || parts[1] != "setback" || parts[2] != role || parts[4] != plant || set.Value == study.NotSetText {
+			continue
+		}
+		if kv, ok := fromKV(parts[3]); ok && kv > leastKV {
+			above = min(above, kv)
+		}
+	}
+	there := map[float64]bool{}
+	reached := false
+	for _, l := range ls {
+		for i := range l.xy {
+			kv, ok := l.number(i, "voltage", "kV")
+			if !ok {
+				continue
+			}
+			there[kv] = true
+			reached = reached || kv >= leastKV
+			if kv >= leastKV && kv < above {
+				return "", nil
+			}
+		}
+	}
+	var words []string
+	for _, kv := range slices.Sorted(maps.Keys(there)) {
+		words = append(words, present.Exact(kv)+" kV")
+	}
+	args := map[string]string{"kv": present.Exact(leastKV), "role": title, "there": someOf(words)}
+	if reached {
+		args["above"] = present.Exact(above)
+		return settingVoltageUp, args
+	}
+	return settingNoVoltage, args
+}
+
+// someOf joins the first of many words; "none" for no word.
+func someOf(words []string) string {
+	const most = 20
+	switch {
+	case len(words) == 0:
+		return "none"
+	case len(words) > most:
+		return strings.Join(words[:most], ", ") + fmt.Sprintf(" and %d more", len(words)-most)
+	}
+	return strings.Join(words, ", ")
 }
 
 func (p *Params) keyNames() []string {

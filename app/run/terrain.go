@@ -22,9 +22,10 @@ type Relief struct {
 	LeastM      *float64 `json:"least_height_m"`
 	MostM       *float64 `json:"greatest_height_m"`
 	SlopeDeg    *float64 `json:"mean_slope_deg"`
-	AspectDeg   *float64 `json:"mean_aspect_deg"`   // from true north; nil for level ground, or ground that falls all ways
-	AspectShare float64  `json:"aspect_agreement"`  // 1 when all of it falls one way, 0 when the ways cancel out
-	RoughnessM  *float64 `json:"roughness_index_m"` // ruggedness index of the terrain's cells
+	SteepestDeg *float64 `json:"greatest_slope_deg"` // of its cells
+	AspectDeg   *float64 `json:"mean_aspect_deg"`    // from true north; nil for level ground, or ground that falls all ways
+	AspectShare float64  `json:"aspect_agreement"`   // 1 when all of it falls one way, 0 when the ways cancel out
+	RoughnessM  *float64 `json:"roughness_index_m"`  // ruggedness index of the terrain's cells
 
 	HorizonDeg   []*float64 `json:"horizon_deg,omitempty"` // every 5 degrees clockwise from true north, of the site's middle
 	HorizonKnown float64    `json:"horizon_known"`         // least share of the reach with known heights
@@ -115,7 +116,7 @@ func (w *world) relief(t *terrain.Grid, g geo.XYGeometry, here site) (Relief, er
 		r.MeanM, r.LeastM, r.MostM = &sum.MeanM, &sum.MinM, &sum.MaxM
 	}
 	if sum.HasSlope {
-		r.SlopeDeg, r.RoughnessM = &sum.MeanSlopeDeg, &sum.RoughnessM
+		r.SlopeDeg, r.SteepestDeg, r.RoughnessM = &sum.MeanSlopeDeg, &sum.MaxSlopeDeg, &sum.RoughnessM
 	}
 	if r.AspectShare = sum.AspectLength; sum.HasAspect {
 		a, err := w.frame.TrueAzimuthDeg(here.box.Centre(), sum.MeanAspectDeg)

@@ -2,9 +2,11 @@ package run
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"sort"
+	"strconv"
 	"strings"
 
 	"groundtally/app/study"
@@ -182,6 +184,21 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 			out = append(out, geo.Notice{Code: "changed_outside", Severity: geo.Fault, Layer: l.Name})
 		}
 	}
+	voids, err := voidNotices(ctx, store, snap)
+	if err != nil {
+		return nil, err
+	}
+	out = append(out, voids...)
+	hours, err := weatherNotices(ctx, store, snap)
+	if err != nil {
+		return nil, err
+	}
+	out = append(out, hours...)
+	idle, err := SettingNotices(ctx, StoreLoader(store), snap)
+	if err != nil {
+		return nil, err
+	}
+	out = append(out, idle...)
 	out = append(out, missingMembers(snap, parcels)...)
 	titles := p.Titled()
 	for _, r := range snap.Catalog().Roles {
@@ -203,6 +220,31 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 		out = append(out, geo.Notice{Code: "no_plants", Severity: geo.Fault})
 	}
 	return append(out, VoiceNotices(snap, p)...), nil
+}
+
+// voidNotices tells of grids with voids inside the district. A layer that another program changed is told of
+// elsewhere, and not looked into.
+func voidNotices(ctx context.Context, store study.Store, snap *study.Snapshot) ([]geo.Notice, error) {
+	list, err := Voids(ctx, snap, StoreLoader(store))
+	if errors.Is(err, study.ErrDamaged) {
+		return nil, nil
+	}
+	var out []geo.Notice
+	for _, v := range list {
+		of := "the district"
+		if v.Parcels {
+			of = "the parcels"
+		}
+		at := v.At
+		switch {
+		case v.Apart:
+			out = append(out, geo.Notice{Code: "grid_apart", Severity: geo.Warning, Layer: v.Layer, Args: map[string]string{"of": of}})
+		case v.Voids > 0:
+			out = append(out, geo.Notice{Code: "grid_voids", Severity: geo.Warning, Layer: v.Layer, At: &at, Args: map[string]string{
+				"voids": strconv.Itoa(v.Voids), "count": strconv.Itoa(v.Cells), "of": of, "area_ha": strconv.FormatFloat(v.VoidHa, 'f', 2, 64)}})
+		}
+	}
+	return out, err
 }
 
 // VoiceNotices lists the notices on the voices of a state of a study, the last ones that Check gives.

@@ -146,6 +146,7 @@ type site struct {
 	geom    geo.XYGeometry
 	box     geo.Extent
 	rows    []parcelRow
+	index   int // among the sites of its world
 }
 
 type parcelRow struct{ layer, feature int }
@@ -161,7 +162,11 @@ type world struct {
 	sites   []site
 	options []option
 	terrain *heights
+	grids   []*resourceGrid // of wind and sun, in the order of their names
 	notices []geo.Notice
+
+	load     Loader
+	gridKeys []string // of the samples of grids that this state needs
 
 	plotless int // features that should stand for their plots and are on none
 }
@@ -191,7 +196,7 @@ var ErrNoPlants = errors.New("the study has no plant option yet; make one, as pl
 type Loader func(ctx context.Context, digest string) (study.Version, error)
 
 func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader) (*world, error) {
-	w := &world{snap: snap, p: p, byRole: map[string][]*layer{}, tables: map[string]*geo.Layer{}}
+	w := &world{snap: snap, p: p, load: load, byRole: map[string][]*layer{}, tables: map[string]*geo.Layer{}}
 	if len(snap.LayersOf("parcels")) == 0 || snap.Frame == nil {
 		return nil, ErrNoParcels
 	}
@@ -212,6 +217,9 @@ func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader)
 					}
 					return g, nil
 				}}
+			}
+			if rec.Role == "wind_resource" || rec.Role == "solar_resource" {
+				w.grids = append(w.grids, &resourceGrid{rec: rec})
 			}
 			continue
 		}
@@ -284,6 +292,11 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	if geographic(t, w.frame) {
 		cell *= metresPerDegree
 	}
+	// Outside the file there is nothing to ask for.
+	if has, ok := w.reachOf(raw, t); ok && has.Meets(box) {
+		has = has.Grow(2 * cell)
+		box = geo.Extent{MinX: max(box.MinX, has.MinX), MinY: max(box.MinY, has.MinY), MaxX: min(box.MaxX, has.MaxX), MaxY: min(box.MaxY, has.MaxY)}
+	}
 	// Cells stand at multiples of their size from the frame's centre, so that a site's heights do not
 	// depend on which other sites there are.
 	origin := geo.XY{X: math.Floor(box.MinX/cell) * cell, Y: math.Floor(box.MinY/cell) * cell}
@@ -306,6 +319,29 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 		err = bad
 	}
 	return g, err
+}
+
+// reachOf gives the extent of a grid in the local frame from points on its border, with a margin for what its
+// sides bend between them; ok is false where one of them has no place there.
+func (w *world) reachOf(raw *raster.Grid, t *crs.Transform) (x geo.Extent, ok bool) {
+	const points = 32
+	x = geo.EmptyExtent()
+	width, height := float64(raw.NCols)*raw.CellX, float64(raw.NRows)*raw.CellY
+	for i := range points + 1 {
+		a := float64(i) / points
+		for _, at := range [4]geo.XY{{X: a}, {X: a, Y: 1}, {Y: a}, {X: 1, Y: a}} {
+			ll, err := t.Forward(raw.XLL+at.X*width, raw.YLL+at.Y*height)
+			if err != nil {
+				return x, false
+			}
+			p, err := w.frame.Forward(ll)
+			if err != nil {
+				return x, false
+			}
+			x = x.Union(geo.Extent{MinX: p.X, MinY: p.Y, MaxX: p.X, MaxY: p.Y})
+		}
+	}
+	return x.Grow(0.02 * max(x.MaxX-x.MinX, x.MaxY-x.MinY)), true
 }
 
 // geographic reports whether a system gives the frame's centre as degrees.
@@ -389,7 +425,7 @@ func (w *world) makeSites() {
 	w.notices = append(w.notices, missingMembers(w.snap, seen)...)
 	sort.Slice(w.sites, func(i, j int) bool { return w.sites[i].id < w.sites[j].id })
 	for i := range w.sites {
-		w.sites[i].box = geo.ExtentOf(w.sites[i].geom)
+		w.sites[i].box, w.sites[i].index = geo.ExtentOf(w.sites[i].geom), i
 	}
 }
 

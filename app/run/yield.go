@@ -7,6 +7,7 @@ import (
 	"strconv"
 	"strings"
 
+	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/scoring/solar"
 	"groundtally/scoring/units"
@@ -99,10 +100,13 @@ func (w *world) windPoints() ([]windPoint, error) {
 		if err != nil {
 			return nil, fmt.Errorf("wind.typed_mean_speed_m_per_s: %w", err)
 		}
-		return []windPoint{{id: "typed mean speed", heightM: h, sectors: evenSectors(wb), typed: true}}, nil
+		return []windPoint{{id: typedWind, heightM: h, sectors: evenSectors(wb), typed: true}}, nil
 	}
 	return nil, nil
 }
+
+// typedWind names the point that stands for a typed mean speed.
+const typedWind = "typed mean speed"
 
 func evenSectors(w wind.Weibull) []wind.Sector {
 	const n = 12
@@ -156,13 +160,19 @@ type sunlight struct {
 // sunlight reads the monthly table, else the typed values; nil when there is neither.
 func (w *world) sunlight() (*sunlight, error) {
 	if t, ok := w.tables["solar_resource"]; ok {
-		var rec = w.snap.LayersOf("solar_resource")[0]
+		var rec study.LayerRecord
+		for _, l := range w.snap.LayersOf("solar_resource") {
+			if l.Kind == "table" {
+				rec = l
+				break // the one in w.tables
+			}
+		}
 		col := func(field string) int { return t.ColumnIndex(rec.Match[field]) }
 		month, ghi, dhi, temp, albedo := col("month"), col("ghi"), col("dhi"), col("temperature"), col("albedo")
 		if month < 0 || ghi < 0 {
 			return nil, fmt.Errorf("layer %q needs the fields month and ghi", rec.Name)
 		}
-		s := &sunlight{source: rec.Name, albedo: solar.EveryMonth(0.2), temp: solar.EveryMonth(math.NaN())}
+		s := &sunlight{source: rec.Name, albedo: solar.EveryMonth(defaultAlbedo), temp: solar.EveryMonth(math.NaN())}
 		var d [12]float64
 		seen := [12]bool{}
 		hasDHI := dhi >= 0
@@ -215,12 +225,15 @@ func (w *world) sunlight() (*sunlight, error) {
 		}
 		return s, nil
 	}
-	s := &sunlight{source: "typed monthly values", albedo: solar.EveryMonth(0.2)}
+	if grids, _ := w.gridsOf("solar_resource"); len(grids) > 0 && !w.anyTyped("solar.typed_ghi_") {
+		return nil, nil // temperatures may be typed beside grids of sunlight
+	}
+	s := &sunlight{source: typedSun, albedo: solar.EveryMonth(defaultAlbedo)}
 	for i := range 12 {
 		n := strconv.Itoa(i + 1)
 		g, ok := w.snap.Number("solar.typed_ghi_" + n + "_kwh_per_m2")
 		if !ok {
-			if !w.anyTypedSun() {
+			if !w.anyTyped("solar.typed_") {
 				return nil, nil
 			}
 			return nil, fmt.Errorf("typed sunlight: solar.typed_ghi_%d_kwh_per_m2 is missing", i+1)
@@ -234,14 +247,30 @@ func (w *world) sunlight() (*sunlight, error) {
 	return s, nil
 }
 
-// anyTypedSun reports whether any month's sunlight was typed.
-func (w *world) anyTypedSun() bool {
+// anyTyped reports whether any value was typed under a beginning of keys.
+func (w *world) anyTyped(prefix string) bool {
 	for k := range w.snap.Explicit {
-		if strings.HasPrefix(k, "solar.typed_") {
+		if strings.HasPrefix(k, prefix) {
 			return true
 		}
 	}
 	return false
+}
+
+const typedSun = "typed monthly values"
+
+// typedTemperatures gives the typed temperatures of all months, for grids of sunlight that have none beside them; nil
+// when one is missing.
+func (w *world) typedTemperatures() *sunlight {
+	s := &sunlight{source: typedSun}
+	for i := range 12 {
+		t, ok := w.snap.Number(fmt.Sprintf("solar.typed_temperature_%d_degc", i+1))
+		if !ok {
+			return nil
+		}
+		s.temp[i] = t
+	}
+	return s
 }
 
 func unitOr(u, fallback string) string {

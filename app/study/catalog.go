@@ -4,12 +4,15 @@ import (
 	"encoding/csv"
 	"fmt"
 	"io/fs"
+	"math"
 	"sort"
 	"strconv"
 	"strings"
+	"time"
 
 	"groundtally/assets/citedtable"
 	"groundtally/scoring/criteria"
+	"groundtally/scoring/units"
 )
 
 // Catalog is what the program ships of words and defaults: definitions of settings, roles, keys.
@@ -150,15 +153,62 @@ func matches(pattern, key string) bool {
 	return false
 }
 
-// Nearest gives the defined key that is most like the given one, for an error that helps.
+// Nearest gives the key of a setting that is most like the given one, for an error that helps; the names in
+// it are those of the given key. It is empty when no key is near.
 func (c *Catalog) Nearest(key string) string {
-	best, dist := "", 1<<30
+	best, dist := "", reach(key)+1
 	for _, d := range c.Definitions {
-		if n := editDistance(d.Key, key); n < dist {
-			best, dist = d.Key, n
+		k := filled(d.Key, key)
+		if n := editDistance(k, key); n < dist && !strings.Contains(k, "<") {
+			best, dist = k, n
 		}
 	}
 	return best
+}
+
+// filled puts the parts of a key in the place of the names in angle brackets that stand there in a pattern.
+func filled(pattern, key string) string {
+	parts, own := strings.Split(pattern, "."), strings.Split(key, ".")
+	if len(parts) != len(own) {
+		return pattern
+	}
+	for i, p := range parts {
+		before, rest, named := strings.Cut(p, "<")
+		if _, after, _ := strings.Cut(rest, ">"); named && own[i] != "" {
+			parts[i] = before + strings.TrimSuffix(strings.TrimPrefix(own[i], before), after) + after
+		}
+	}
+	return strings.Join(parts, ".")
+}
+
+// reach is how many letters may differ between words of which one can be a slip of the other.
+func reach(word string) int { return min(1+len(word)/5, 5) }
+
+// Near gives those of the names that a word can be a slip of, the nearest first, at most so many; case does
+// not count.
+func Near(word string, names []string, most int) []string {
+	type near struct {
+		name string
+		dist int
+	}
+	var list []near
+	word = strings.ToLower(word)
+	for _, n := range names {
+		low := strings.ToLower(n)
+		d := editDistance(low, word)
+		if len(word) > 2 && strings.Contains(low, word) {
+			d = min(d, 1)
+		}
+		if d <= reach(word) {
+			list = append(list, near{n, d})
+		}
+	}
+	sort.SliceStable(list, func(i, j int) bool { return list[i].dist < list[j].dist })
+	out := make([]string, 0, most)
+	for _, n := range list[:min(len(list), most)] {
+		out = append(out, n.name)
+	}
+	return out
 }
 
 func editDistance(a, b string) int {
@@ -328,4 +378,90 @@ func isRatioUnit(u string) bool {
 		return true
 	}
 	return false
+}
+
+// Choices gives the values that a field may have; none for one that is free.
+func (f RoleField) Choices() []string {
+	if f.Physical() || !strings.Contains(f.Unit, "/") {
+		return nil
+	}
+	return strings.Split(f.Unit, "/")
+}
+
+// Check reports whether a text is a possible value of the field and gives it as the layer keeps it: a measure as
+// a number in the unit of its column. A measure may be given with another unit behind it.
+func (f RoleField) Check(text, unit string) (string, error) {
+	text = strings.TrimSpace(text)
+	if list := f.Choices(); list != nil {
+		if yes, err := strconv.ParseBool(text); err == nil && f.Unit == "yes/no" {
+			text = map[bool]string{true: "yes", false: "no"}[yes]
+		}
+		for _, c := range list {
+			if strings.EqualFold(c, text) {
+				return c, nil
+			}
+		}
+		return "", fmt.Errorf("%q is not one of: %s", text, strings.Join(list, ", "))
+	}
+	switch {
+	case f.Unit == "date":
+		for _, form := range []string{"2006-01-02", "2006-01", "2006"} {
+			if _, err := time.Parse(form, text); err == nil {
+				return text, nil
+			}
+		}
+		return "", fmt.Errorf("%q is no date; write it as 2026-05-03", text)
+	case f.Unit != "1" && !f.Physical():
+		return text, nil
+	}
+	if unit == "" {
+		unit = f.Unit
+	}
+	x, err := strconv.ParseFloat(text, 64)
+	if number, given, ok := strings.Cut(text, " "); err != nil && ok && f.Physical() {
+		if x, err = strconv.ParseFloat(number, 64); err == nil {
+			if x, err = units.Convert(x, strings.TrimSpace(given), unit); err != nil {
+				return "", fmt.Errorf("%q is not in %s: %w", text, unit, err)
+			}
+		}
+	}
+	if err != nil || math.IsNaN(x) || math.IsInf(x, 0) {
+		return "", fmt.Errorf("%q is not a number; the value is given in %s", text, orPlain(unit))
+	}
+	lo, hi := f.span()
+	switch {
+	case x < lo && lo == 0:
+		return "", fmt.Errorf("%s is below zero", text)
+	case x < lo || x > hi:
+		return "", fmt.Errorf("%s is not from %g to %g", text, lo, hi)
+	}
+	return strconv.FormatFloat(x, 'g', -1, 64), nil
+}
+
+// span gives the least and the greatest value that a number of the field can be. Source: what the fields
+// mean; a share is no more than the whole, a direction no more than a full turn.
+func (f RoleField) span() (lo, hi float64) {
+	switch {
+	case f.Unit == "degC" || f.Unit == "m below ground" || f.Name == "limit_value":
+		return math.Inf(-1), math.Inf(1)
+	case f.Unit == "deg":
+		return 0, 360
+	case f.Name == "month":
+		return 1, 12
+	case f.Unit == "1" && (strings.HasSuffix(f.Name, "_share") || f.Name == "albedo" || f.Name == "humidity" || f.Name == "snow_loss"):
+		return 0, 1
+	}
+	return 0, math.Inf(1)
+}
+
+// Identifier gives the field by which people call the features of the role: an identifier of its own, else the
+// name; empty when it has neither.
+func (r Role) Identifier() string {
+	if n := r.Fields[0].Name; strings.HasSuffix(n, "_id") && (n != "parcel_id" || r.Name == "parcels") {
+		return n
+	}
+	if _, ok := r.Field("name"); ok {
+		return "name"
+	}
+	return ""
 }

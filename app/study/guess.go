@@ -54,6 +54,12 @@ var roleWords = map[string][]string{
 // ProposeRole proposes what a file means here, from its name; of several words the longest counts, so that
 // water_protection is no water. It is empty when no word fits that the file's kind allows.
 func ProposeRole(cat *Catalog, in Import) string {
+	role, _ := ProposedRole(cat, in)
+	return role
+}
+
+// ProposedRole is ProposeRole with the word of the file's name from which the role follows.
+func ProposedRole(cat *Catalog, in Import) (role, word string) {
 	name := strings.ToLower(strings.TrimSuffix(in.Base, ext(in.Base)))
 	name = strings.Map(func(r rune) rune {
 		if unicode.IsLetter(r) || unicode.IsDigit(r) {
@@ -73,18 +79,17 @@ func ProposeRole(cat *Catalog, in Import) string {
 			kinds["table"] = true
 		}
 	}
-	best, length := "", 0
-	for _, role := range cat.Roles {
-		if !slices.ContainsFunc(role.Geometry, func(k string) bool { return kinds[k] }) {
+	for _, r := range cat.Roles {
+		if !slices.ContainsFunc(r.Geometry, func(k string) bool { return kinds[k] }) {
 			continue
 		}
-		for _, w := range roleWords[role.Name] {
-			if len(w) > length && strings.Contains(name, w) {
-				best, length = role.Name, len(w)
+		for _, w := range roleWords[r.Name] {
+			if len(w) > len(word) && strings.Contains(name, w) {
+				role, word = r.Name, w
 			}
 		}
 	}
-	return best
+	return role, word
 }
 
 // voltsFromKV is a number from which on a voltage can only be volts. Source: common practice, no line in
@@ -177,6 +182,20 @@ func ParseWanted(text string) (Wanted, error) {
 	return w, nil
 }
 
+// absent tells of each wanted value that no feature has, while others are there.
+func absent(l *geo.Layer, wanted []Wanted) []geo.Notice {
+	var out []geo.Notice
+	for _, w := range wanted {
+		there := otherValues(l, l.ColumnIndex(w.Column))
+		for _, v := range w.Values {
+			if !slices.ContainsFunc(there, func(t string) bool { return strings.EqualFold(t, v) }) {
+				out = append(out, geo.Notice{Code: "only_value_absent", Severity: geo.Warning, Field: w.Column, Args: map[string]string{"value": v, "there": few(there, 20)}})
+			}
+		}
+	}
+	return out
+}
+
 // only keeps the features that fit at least one of the wanted parts, and counts the others.
 func only(l *geo.Layer, wanted []Wanted) (left int) {
 	if len(wanted) == 0 {
@@ -213,10 +232,18 @@ func degreesAsMetres(rec *LayerRecord, in Import, l *geo.Layer, transform func(g
 		if err == nil && math.Abs(q.Lon-p.Lon) < 1 && math.Abs(q.Lat-p.Lat) < 1 {
 			return nil // a system of degrees
 		}
-		return &Question{Text: fmt.Sprintf("the file says %s, whose coordinates are metres, but they look like degrees (%s, %s); which system is it?", rec.CRS, strconv.FormatFloat(p.Lon, 'g', 8, 64), strconv.FormatFloat(p.Lat, 'g', 8, 64)),
-			Option: "--crs OGC:CRS84 for longitude and latitude, or --crs " + rec.CRS + " if they are metres indeed"}
+		return &Question{Text: fmt.Sprintf("the file says %s, whose coordinates are metres, but they look like degrees (%s, %s); which system is it?", CRSWords(rec.CRS), strconv.FormatFloat(p.Lon, 'g', 8, 64), strconv.FormatFloat(p.Lat, 'g', 8, 64)),
+			Option: "--crs OGC:CRS84 for longitude and latitude, or --crs " + code(rec.CRS) + " if they are metres indeed"}
 	}
 	return nil
+}
+
+// code gives a coordinate system as it can be typed; a definition stands for a code that the user must find.
+func code(crs string) string {
+	if strings.Contains(crs, "[") {
+		return "AUTH:CODE, the code of that system,"
+	}
+	return crs
 }
 
 // Sizes below which a polygon is no piece of land but a gap between two outlines.

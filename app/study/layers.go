@@ -2,6 +2,7 @@ package study
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"runtime"
@@ -149,7 +150,7 @@ type QuestionError struct {
 
 func (e *QuestionError) Error() string {
 	var b strings.Builder
-	fmt.Fprintf(&b, "%s: nothing was added; please answer:", e.File)
+	fmt.Fprintf(&b, "%s: please answer first:", e.File)
 	for _, q := range e.Questions {
 		fmt.Fprintf(&b, "\n  %s\n    %s", q.Text, q.Option)
 	}
@@ -252,21 +253,24 @@ func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerReco
 	var version Version
 	if in.Layer == nil {
 		if !role.Accepts("raster") {
-			return LayerRecord{}, &FileError{File: in.File, What: fmt.Sprintf("a grid of values cannot serve as %s", role.Name), Cure: "The role takes " + strings.Join(role.Geometry, " or ")}
+			return LayerRecord{}, &FileError{File: in.File, What: fmt.Sprintf("a raster (a grid of values) cannot serve as %s", role.Name), Cure: "The role takes " + strings.Join(role.Geometry, " or ")}
 		}
 		rec.CRS = first(in.CRSOption, in.CRS)
 		if rec.CRS == "" {
 			return LayerRecord{}, &QuestionError{File: in.File, Questions: []Question{{Text: "the file does not say in which coordinate system its corners are", Option: "--crs EPSG:32626 (for one)"}}}
 		}
 		if _, rec.Pipeline, err = tools.ToLonLat(rec.CRS); err != nil {
-			return LayerRecord{}, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+			return LayerRecord{}, badSystem(in.File, rec.CRS, err)
 		}
 		if in.Corner != nil {
 			op, err := tools.Operation(rec.CRS, *in.Corner)
 			if err != nil {
-				return LayerRecord{}, &FileError{File: in.File, What: "its corner is not in " + rec.CRS + ": " + err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+				return LayerRecord{}, &FileError{File: in.File, What: "its corner is not in " + CRSWords(rec.CRS) + ": " + err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
 			}
 			rec.operated(op, in.Base)
+		}
+		if qs := DescribeGrid(&rec, in, role, snap); len(qs) > 0 {
+			return LayerRecord{}, &QuestionError{File: in.File, Questions: qs}
 		}
 		version = Version{Digest: BlobDigest(in.Media, in.Blob), Blob: in.Blob, Media: in.Media}
 		rec.Kind, rec.Media, rec.Count = "raster", in.Media, 1
@@ -351,9 +355,20 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 	}
 
 	layer := &geo.Layer{Name: rec.Name, Columns: append([]geo.Column(nil), in.Layer.Columns...), Features: append([]geo.Feature(nil), in.Layer.Features...)}
+	missed := absent(layer, in.Only)
 	rec.Only, rec.Ledger.NotAsked = in.Only, only(layer, in.Only)
 	if len(layer.Features) == 0 {
-		return nil, nil, &FileError{File: in.File, What: "no feature has the values that were asked for", Cure: "Check --only"}
+		var there []string
+		for _, n := range missed {
+			if words := "column " + n.Field + " holds: " + n.Args["there"]; !slices.Contains(there, words) {
+				there = append(there, words)
+			}
+		}
+		return nil, nil, &FileError{File: in.File, What: "no feature has the values that were asked for; " + strings.Join(there, "; "), Cure: "Check --only; several values are parted by |"}
+	}
+	for _, n := range missed {
+		n.File, n.Layer = in.Base, rec.Name
+		rec.Notices = append(rec.Notices, n)
 	}
 	for i := range layer.Columns {
 		layer.Columns[i].Unit = rec.Units[layer.Columns[i].Name]
@@ -452,10 +467,38 @@ func (rec *LayerRecord) operated(op Operation, file string) {
 	}
 	switch {
 	case op.Ballpark:
-		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_unknown", Severity: geo.Warning, File: file, Layer: rec.Name, Args: map[string]string{"crs": rec.CRS}})
+		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_unknown", Severity: geo.Warning, File: file, Layer: rec.Name, Args: map[string]string{"crs": CRSWords(rec.CRS)}})
 	case op.Known && op.AccuracyM > roughM:
-		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_approximate", Severity: geo.Info, File: file, Layer: rec.Name, Args: map[string]string{"crs": rec.CRS, "metres": strconv.FormatFloat(op.AccuracyM, 'g', -1, 64)}})
+		rec.Notices = append(rec.Notices, geo.Notice{Code: "datum_approximate", Severity: geo.Info, File: file, Layer: rec.Name, Args: map[string]string{"crs": CRSWords(rec.CRS), "metres": strconv.FormatFloat(op.AccuracyM, 'g', -1, 64)}})
 	}
+}
+
+// CRSWords writes a coordinate system for a sentence: its code, or of a definition the name and the beginning.
+func CRSWords(crs string) string {
+	const most = 40
+	crs = strings.TrimSpace(crs)
+	if !strings.Contains(crs, "[") && len([]rune(crs)) <= most {
+		return crs
+	}
+	start := strings.Join(strings.Fields(crs), " ")
+	if r := []rune(start); len(r) > most {
+		start = string(r[:most]) + "..."
+	}
+	if _, rest, ok := strings.Cut(crs, `["`); ok {
+		if name, _, ok := strings.Cut(rest, `"`); ok && name != "" {
+			return fmt.Sprintf("%q (%s)", name, start)
+		}
+	}
+	return start
+}
+
+// badSystem says that a coordinate system is not understood.
+func badSystem(file, crs string, err error) error {
+	what := err.Error()
+	if cause := errors.Unwrap(err); cause != nil && CRSWords(crs) != crs {
+		what = "coordinate system " + CRSWords(crs) + ": " + cause.Error()
+	}
+	return &FileError{File: file, What: what, Cure: "Give the coordinate system with --crs AUTH:CODE"}
 }
 
 // toDegrees brings the coordinates of a layer to WGS 84 in place. It gives the questions that are open before
@@ -476,7 +519,7 @@ func toDegrees(ctx context.Context, rec *LayerRecord, in Import, layer *geo.Laye
 	}
 	transform, pipeline, err := tools.ToLonLat(rec.CRS)
 	if err != nil {
-		return nil, &FileError{File: in.File, What: err.Error(), Cure: "Give the coordinate system with --crs AUTH:CODE"}
+		return nil, badSystem(in.File, rec.CRS, err)
 	}
 	rec.Pipeline = pipeline
 	if q := degreesAsMetres(rec, in, layer, transform); q != nil {
@@ -498,11 +541,11 @@ func toDegrees(ctx context.Context, rec *LayerRecord, in Import, layer *geo.Laye
 			return q
 		})
 		if bad != nil {
-			return nil, &FileError{File: in.File, Where: "feature " + layer.Features[i].ID, What: fmt.Sprintf("its coordinates cannot be taken from %s to longitude and latitude: %v", rec.CRS, bad), Cure: "Check --crs"}
+			return nil, &FileError{File: in.File, Where: "feature " + layer.Features[i].ID, What: fmt.Sprintf("its coordinates cannot be taken from %s to longitude and latitude: %v", CRSWords(rec.CRS), bad), Cure: "Check --crs"}
 		}
 	}
 	if f, bad := outOfDegrees(layer); bad {
-		return nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", rec.CRS), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
+		return nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", CRSWords(rec.CRS)), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
 	}
 	return nil, nil
 }

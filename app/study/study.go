@@ -167,10 +167,13 @@ func Canonical(v any) json.RawMessage {
 	return b
 }
 
-// UnknownKeyError says that no setting has the key.
+// UnknownKeyError says that no setting has the key. Nearest is empty when no key is near.
 type UnknownKeyError struct{ Key, Nearest string }
 
 func (e *UnknownKeyError) Error() string {
+	if e.Nearest == "" {
+		return fmt.Sprintf("no setting is called %q, and none has a name like it", e.Key)
+	}
 	return fmt.Sprintf("no setting is called %q; the nearest is %q", e.Key, e.Nearest)
 }
 

@@ -10,7 +10,7 @@ import (
 
 var verbAdd = verb{
 	name: "add", usage: "add STUDY.gpkg FILE --as ROLE [options]", summary: "adds a file as a layer",
-	more: "What the file does not say is asked for, never guessed: then nothing is added (exit 2).\nExit 1: the file cannot be added. Exit 3: added, but some features were left out.",
+	more: "What the file does not say is asked for, never guessed: then nothing is added (exit 2).\nA backdrop is a PNG or JPEG with its world file beside it, or a colour GeoTIFF; it is kept in the study as it stands.\nExit 1: the file cannot be added. Exit 3: added, but some features were left out.",
 	options: []option{
 		{name: "as", value: "ROLE", help: "what the layer means here"},
 		{name: "name", value: "TEXT", help: "name of the layer"},
@@ -27,19 +27,26 @@ var verbAdd = verb{
 		{name: "complete", help: "the layer covers the whole place: nothing there means nothing is there"},
 		{name: "edition", value: "TEXT", help: "edition or date of the data"},
 		{name: "holder", value: "TEXT", help: "who holds the data"},
+		{name: "attribution", value: "TEXT", help: "of a backdrop: who must be named where the picture is shown"},
+		{name: "licence", value: "TEXT", help: "of a backdrop: its licence"},
 		reasonOption,
 	},
 	places: [2]int{2, 2},
 	run: func(c *call) (int, error) {
 		file := c.args.places[1]
 		if !c.args.has("as") {
-			option := "--as ROLE"
-			if in, err := c.ReadFile(c.ctx, file, study.ReadOptions{CRSGiven: true, Table: c.args.get("table")}); err == nil {
-				if proposed := study.ProposeRole(c.Catalog, in); proposed != "" {
-					option = "--as " + proposed + " (proposed from the file's name)"
-				}
+			in, err := c.ReadFile(c.ctx, file, study.ReadOptions{CRSGiven: true, Table: c.args.get("table")})
+			if err != nil {
+				return 0, err
 			}
-			return 0, &study.QuestionError{File: file, Questions: []study.Question{{Text: "what does the file mean here? The roles are: " + c.roleNames(), Option: option}}}
+			if in.Picture() {
+				return 0, onlyBackdrop(file)
+			}
+			option := "--as ROLE"
+			if proposed, word := study.ProposedRole(c.Catalog, in); proposed != "" {
+				option = fmt.Sprintf("--as %s (proposed, since the file's name holds %q and the role takes what the file has)", proposed, word)
+			}
+			return 0, &study.QuestionError{File: file, Questions: []study.Question{{Text: "what does the file mean here? The roles are, by the account that needs them:" + c.rolesByAccount(), Option: option}}}
 		}
 		var only []study.Wanted
 		for _, text := range c.args.values["only"] {
@@ -51,7 +58,15 @@ var verbAdd = verb{
 		}
 		role, ok := c.Catalog.Role(c.args.get("as"))
 		if !ok {
-			return 0, usagef("there is no role %q; the roles are: %s", c.args.get("as"), c.roleNames())
+			return 0, c.noRole(c.args.get("as"))
+		}
+		if role.Name == study.BackdropRole {
+			return c.addBackdrop()
+		}
+		for _, o := range []string{"attribution", "licence"} {
+			if c.args.has(o) {
+				return 0, usagef("--%s is for a backdrop alone", o)
+			}
 		}
 		match, err := c.args.pairs("match")
 		if err != nil {
@@ -77,6 +92,9 @@ var verbAdd = verb{
 			in, err := c.ReadFile(c.ctx, file, study.ReadOptions{CRSGiven: c.args.has("crs"), Table: c.args.get("table")})
 			if err != nil {
 				return 0, err
+			}
+			if in.Picture() {
+				return 0, onlyBackdrop(file)
 			}
 			in.Role, in.Name, in.CRSOption, in.Match, in.Units = role.Name, c.args.get("name"), c.args.get("crs"), match, unit
 			in.Personal, in.SwapAxes, in.Replace = c.args.values["personal"], c.args.has("swap-axes"), c.args.get("replace")
@@ -132,12 +150,60 @@ func ledgerWords(l study.Ledger) string {
 	return words
 }
 
-func (c *call) roleNames() string {
+// noRole refuses a role that is not there.
+func (c *call) noRole(name string) error {
 	names := make([]string, len(c.Catalog.Roles))
 	for i, r := range c.Catalog.Roles {
 		names[i] = r.Name
 	}
-	return strings.Join(names, ", ")
+	near := ""
+	if list := study.Near(strings.ReplaceAll(name, " ", "_"), names, 3); len(list) > 0 {
+		near = " near it are: " + strings.Join(list, ", ") + ";"
+	}
+	return usagef("there is no role %q;%s the roles are, by the account that needs them:%s", name, near, c.rolesByAccount())
+}
+
+// rolesByAccount lists the roles on lines of their own account: that of which most consequences need them.
+func (c *call) rolesByAccount() string {
+	of := map[string]map[string]int{}
+	var accounts []string
+	for _, k := range c.Catalog.Criteria {
+		account := string(k.Account)
+		if !slices.Contains(accounts, account) {
+			accounts = append(accounts, account)
+		}
+		for _, r := range c.Catalog.Roles {
+			words := strings.FieldsFunc(k.NeedsRoles, func(r rune) bool { return strings.ContainsRune(";|:", r) })
+			if slices.Contains(words, r.Name) {
+				if of[r.Name] == nil {
+					of[r.Name] = map[string]int{}
+				}
+				of[r.Name][account]++
+			}
+		}
+	}
+	lines := map[string][]string{}
+	const all, none = "every account", "the map, rules and other models"
+	for _, r := range c.Catalog.Roles {
+		at := none
+		if len(of[r.Name]) == len(accounts) {
+			at = all
+		} else {
+			for _, a := range accounts {
+				if of[r.Name][a] > of[r.Name][at] {
+					at = a
+				}
+			}
+		}
+		lines[at] = append(lines[at], r.Name)
+	}
+	var b strings.Builder
+	for _, a := range append(append([]string{all}, accounts...), none) {
+		if len(lines[a]) > 0 {
+			b.WriteString("\n    " + wrapped(a+": "+strings.Join(lines[a], ", "), 100, "\n      "))
+		}
+	}
+	return b.String()
 }
 
 func fieldNames(r study.Role) string {

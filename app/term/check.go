@@ -61,9 +61,9 @@ var verbCheck = verb{
 				c.say("%v", &questionsError{questions})
 			}
 			if bad > 0 {
-				c.say("%d of %d notices make results unreliable.", bad, len(notices))
+				c.say("%d of %s make results unreliable.", bad, counted(len(notices), "notice"))
 			} else {
-				c.say("%d notices; none makes results unreliable.", len(notices))
+				c.say("%s; none makes results unreliable.", counted(len(notices), "notice"))
 			}
 			return code, nil
 		})

@@ -3,6 +3,7 @@ package term
 import (
 	"errors"
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -11,12 +12,22 @@ import (
 )
 
 var verbJoin = verb{
-	name: "join", usage: "join STUDY.gpkg LAYER FILE --key COLUMN [--layer-key COLUMN] [--table NAME] [--reason TEXT]", summary: "joins a table's columns to a layer by a key", places: [2]int{3, 3},
-	more:    "Features are met by their identifiers, or by a column of the layer. What finds no partner on either side is listed.",
-	options: []option{{name: "key", value: "COLUMN", help: "the column of the table that holds the keys"}, {name: "layer-key", value: "COLUMN", help: "the column of the layer that holds them; without it the identifiers"}, {name: "table", value: "NAME", help: "which sheet or table of the file"}, reasonOption},
+	name: "join", usage: "join STUDY.gpkg LAYER FILE --key COLUMN [--layer-key COLUMN] [--table NAME] [--replace | --beside] [--reason TEXT]", summary: "joins a table's columns to a layer by a key", places: [2]int{3, 3},
+	more: "Features are met by their identifiers, or by a column of the layer. What finds no partner on either side is listed.",
+	options: []option{{name: "key", value: "COLUMN", help: "the column of the table that holds the keys"}, {name: "layer-key", value: "COLUMN", help: "the column of the layer that holds them; without it the identifiers"}, {name: "table", value: "NAME", help: "which sheet or table of the file"},
+		{name: "replace", help: "columns that the layer has already are replaced by the table's"}, {name: "beside", help: "they stay, and the table's get a number behind their names"}, reasonOption},
 	run: func(c *call) (int, error) {
 		if !c.args.has("key") {
 			return 0, &study.QuestionError{File: c.args.places[2], Questions: []study.Question{{Text: "which column of the table holds the keys?", Option: "--key COLUMN"}}}
+		}
+		twice := study.AskTwice
+		switch {
+		case c.args.has("replace") && c.args.has("beside"):
+			return 0, usagef("--replace and --beside exclude each other")
+		case c.args.has("replace"):
+			twice = study.ReplaceTwice
+		case c.args.has("beside"):
+			twice = study.BesideTwice
 		}
 		return c.with(func(s *study.Study) (int, error) {
 			in, err := c.ReadFile(c.ctx, c.args.places[2], study.ReadOptions{Table: c.args.get("table")})
@@ -24,16 +35,19 @@ var verbJoin = verb{
 				return 0, err
 			}
 			if in.Layer == nil {
-				return 0, usagef("%s is a grid of values and no table", c.args.places[2])
+				return 0, usagef("%s is a raster (a grid of values) and no table", c.args.places[2])
 			}
-			rep, err := s.Join(c.ctx, c.args.places[1], in.Layer, c.args.get("layer-key"), c.args.get("key"), c.args.get("reason"))
+			rep, err := s.Join(c.ctx, c.args.places[1], in.Layer, c.args.get("layer-key"), c.args.get("key"), twice, c.args.get("reason"))
 			if err != nil {
 				return 0, c.noLayer(s, err)
 			}
-			c.answer(map[string]any{"study": c.args.places[0], "join": rep}, "Joined %s to %s: %d features met their row.", listed(rep.Columns), c.args.places[1], rep.Matched)
-			c.some("features without a row", rep.Without)
-			c.some("rows without a feature", rep.LeftOver)
-			c.some("keys that stand in several rows, of which the first counts", rep.Doubled)
+			c.answer(map[string]any{"study": c.args.places[0], "join": rep}, "Joined %s to %s: %s met their row.", listed(rep.Columns), c.args.places[1], counted(rep.Matched, "feature"))
+			if len(rep.Replaced) > 0 {
+				c.say("  replaced: the columns %s that the layer had", listed(rep.Replaced))
+			}
+			c.some("feature", "without a row", rep.Without)
+			c.some("row", "without a feature", rep.LeftOver)
+			c.some("key", "in several rows, of which the first counts", rep.Doubled)
 			if len(rep.Without)+len(rep.LeftOver)+len(rep.Doubled) > 0 {
 				return ExitLeftOut, nil
 			}
@@ -43,7 +57,7 @@ var verbJoin = verb{
 }
 
 // some lists the first of many names.
-func (c *call) some(what string, names []string) {
+func (c *call) some(one, what string, names []string) {
 	if len(names) == 0 {
 		return
 	}
@@ -51,19 +65,23 @@ func (c *call) some(what string, names []string) {
 	if len(names) > 8 {
 		words += fmt.Sprintf(" and %d more", len(names)-8)
 	}
-	c.say("  %d %s: %s", len(names), what, words)
+	c.say("  %s %s: %s", counted(len(names), one), what, words)
 }
 
 // noLayer turns a layer that is not there into words with the layers that are.
 func (c *call) noLayer(s *study.Study, err error) error {
-	if !errors.Is(err, study.ErrNotThere) {
+	var feature *study.FeatureError
+	if !errors.Is(err, study.ErrNotThere) || errors.As(err, &feature) {
 		return err
 	}
 	snap, e := s.Snapshot()
 	if e != nil {
 		return e
 	}
-	return usagef("%v; the layers are: %s", err, layerNames(snap))
+	if hasLayer(snap, c.args.places[1]) {
+		return err
+	}
+	return usagef("there is no layer %q; the layers are: %s", c.args.places[1], layerNames(snap))
 }
 
 var verbDraw = verb{
@@ -86,6 +104,7 @@ var verbDraw = verb{
 
 var verbPlace = verb{
 	name: "place", usage: "place STUDY.gpkg LAYER FEATURE (--shape 'LON,LAT ...' | --set FIELD=VALUE ... | --remove) --reason TEXT", summary: "moves, reclasses or takes out a feature by hand", places: [2]int{3, 3},
+	more:    "FEATURE is its identifier (a dwelling_id, a name) or its row in the file; where both fit, row=3 and\ndwelling_id=3 tell them apart. A measure may have its unit behind it, as --set 'voltage=20 kV'.",
 	options: []option{{name: "shape", value: "LON,LAT ...", help: "its new place in degrees"}, {name: "set", value: "FIELD=VALUE", many: true, help: "a field of the role, as class=farm"}, {name: "remove", help: "take it out"}, reasonOption},
 	run: func(c *call) (int, error) {
 		values, err := c.args.pairs("set")
@@ -94,6 +113,8 @@ var verbPlace = verb{
 		}
 		h := study.HandEdit{Verb: study.HandSet, Feature: c.args.places[2], Values: values}
 		switch {
+		case c.args.has("remove") && (c.args.has("shape") || len(values) > 0):
+			return 0, usagef("--remove takes the feature out and cannot stand beside --shape or --set")
 		case c.args.has("remove"):
 			h.Verb = study.HandRemove
 		case c.args.has("shape"):
@@ -117,7 +138,7 @@ func (c *call) byHand(h study.HandEdit) (int, error) {
 	if c.args.has("as") {
 		r, ok := c.Catalog.Role(c.args.get("as"))
 		if !ok {
-			return 0, usagef("there is no role %q; the roles are: %s", c.args.get("as"), c.roleNames())
+			return 0, c.noRole(c.args.get("as"))
 		}
 		role = r.Name
 	}
@@ -128,7 +149,12 @@ func (c *call) byHand(h study.HandEdit) (int, error) {
 		if err != nil {
 			return 0, &inputError{c.noLayer(s, err)}
 		}
-		c.answer(map[string]any{"study": c.args.places[0], "layer": rec}, "%s: %d features; changed by hand, and kept for the next edition.", rec.Name, rec.Count)
+		h = rec.Hand[len(rec.Hand)-1]
+		c.answer(map[string]any{"study": c.args.places[0], "layer": rec}, "%s, %s. %s; the change is kept for the next edition.", rec.Name, handWords(h), upper(counted(rec.Count, "feature")))
+		c.notices(slices.DeleteFunc(slices.Clone(rec.Notices), func(n geo.Notice) bool {
+			_, now := h.Values[n.Field]
+			return n.Feature != h.Feature || !(n.Code == "drawn_repaired" && h.Geometry != nil || n.Code == "hand_value_new" && now)
+		}))
 		return ExitDone, nil
 	})
 }

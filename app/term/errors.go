@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"os"
+	"regexp"
 	"strings"
 	"unicode"
 	"unicode/utf8"
@@ -80,7 +81,7 @@ func (c *call) exitCode(err error) int {
 		return ExitNo
 	case errors.Is(err, os.ErrNotExist) && file == nil && c.verb.name != "new":
 		return ExitUnreadable
-	case errors.Is(err, study.ErrNotThere), errors.Is(err, study.ErrNameInUse), errors.As(err, &input):
+	case errors.Is(err, study.ErrNotThere), errors.Is(err, study.ErrNameInUse), errors.Is(err, study.ErrRaster), errors.As(err, &input):
 		return ExitUsage
 	case errors.Is(err, study.ErrNothingToDo):
 		return ExitNo
@@ -88,14 +89,33 @@ func (c *call) exitCode(err error) int {
 	return ExitUnexpected
 }
 
+// undone says of a verb that reads a file that it did nothing.
+var undone = map[string]string{"add": "nothing was added", "join": "nothing was joined", "convert": "nothing was written"}
+
 // explain writes an error for people: what is wrong, and the cure.
 func (c *call) explain(err error, code int) string {
+	text := c.explained(err, code)
+	// The database driver writes its number behind its words.
+	var driver interface {
+		error
+		Code() int
+	}
+	if errors.As(err, &driver) {
+		text = strings.ReplaceAll(text, driver.Error(), driverCode.ReplaceAllString(driver.Error(), ""))
+	}
+	return text
+}
+
+var driverCode = regexp.MustCompile(`( \(\d+\)| \(SQLITE_\w+\))+$`)
+
+func (c *call) explained(err error, code int) string {
 	path := ""
 	if len(c.args.places) > 0 {
 		path = c.args.places[0]
 	}
 	var file *study.FileError
 	var fault *faultError
+	var question *study.QuestionError
 	switch {
 	case code == ExitInterrupted && c.verb.name == "new":
 		return "stopped; nothing was made"
@@ -103,7 +123,12 @@ func (c *call) explain(err error, code int) string {
 		return "stopped; the study is as it was"
 	case errors.As(err, &fault):
 		return c.explainFault(fault)
+	case errors.As(err, &question) && undone[c.verb.name] != "":
+		return strings.Replace(question.Error(), "please answer first:", undone[c.verb.name]+"; please answer:", 1)
 	case errors.As(err, &file):
+		if errors.Is(err, study.ErrNameInUse) {
+			file.Cure = "choose another name, or say --replace to put it in the place of what is there"
+		}
 		text := file.File
 		if file.Where != "" {
 			text += ", " + file.Where
@@ -112,8 +137,8 @@ func (c *call) explain(err error, code int) string {
 		if file.Cure != "" {
 			text += " " + upper(strings.TrimSuffix(file.Cure, ".")) + "."
 		}
-		if c.verb.name == "add" {
-			text += " Nothing was added."
+		if words := undone[c.verb.name]; words != "" {
+			text += " " + upper(words) + "."
 		}
 		return text
 	case errors.Is(err, study.ErrNameInUse) && c.verb.name == "new":

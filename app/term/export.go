@@ -2,7 +2,9 @@ package term
 
 import (
 	"cmp"
+	"errors"
 	"fmt"
+	"os"
 	"slices"
 
 	"groundtally/app/export"
@@ -13,7 +15,7 @@ import (
 var verbExport = verb{
 	name: "export", usage: "export STUDY.gpkg LAYER [LAYER ...] --to FILE [--personal] [--replace]", summary: "writes layers as GeoJSON, GeoPackage or CSV", places: [2]int{2, 1000},
 	more:    "The ending of the file's name says the form: .geojson, .gpkg (which holds several layers) or .csv.",
-	options: []option{{name: "to", value: "FILE", help: "where to write"}, {name: "personal", help: "write personal columns too"}, {name: "replace", help: "put it in the place of a file that is there"}},
+	options: []option{{name: "to", value: "FILE", help: "where to write"}, {name: "personal", help: "write personal columns too"}, replaceOption},
 	run: func(c *call) (int, error) {
 		if !c.args.has("to") {
 			return 0, usagef("usage: gtally %s", c.verb.usage)
@@ -34,7 +36,7 @@ var verbExport = verb{
 					return 0, err
 				}
 				if v.Layer == nil {
-					return 0, &inputError{fmt.Errorf("layer %q is a grid of values, which is not written in another form", name)}
+					return 0, &inputError{fmt.Errorf("layer %q is a raster (a grid of values), which is not written in another form", name)}
 				}
 				l := *v.Layer
 				l.Name = name
@@ -49,6 +51,21 @@ var verbExport = verb{
 	},
 }
 
+// replaceOption stands where a verb writes one file.
+var replaceOption = option{name: "replace", help: "put it in the place of a file that is there"}
+
+// freeFile refuses a name that a file has already, unless it is to be replaced; an empty name is free. It is
+// asked before long work.
+func (c *call) freeFile(to string) error {
+	if to == "" || c.args.has("replace") {
+		return nil
+	}
+	if _, err := os.Lstat(to); err == nil {
+		return errors.Join(&study.FileError{File: to, What: "there is a file of this name already"}, study.ErrNameInUse)
+	}
+	return nil // what else may be wrong with the name is said when it is written
+}
+
 func (c *call) export(to string, layers []*geo.Layer, personal, replace bool) error {
 	f, err := export.FormatOf(to)
 	if err != nil {
@@ -61,14 +78,14 @@ var verbConvert = verb{
 	name: "convert", usage: "convert FILE OUT [--table NAME] [--crs AUTH:CODE] [--at COLUMN,COLUMN] [--replace]", summary: "between the forms that the program reads and writes", places: [2]int{2, 2},
 	more: "Coordinates come to longitude and latitude on WGS 84. Read: GeoJSON, GeoPackage, shapefile (also in a zip), CSV,\nworkbook. Written: GeoJSON, GeoPackage, CSV, by the ending of OUT.",
 	options: []option{{name: "table", value: "NAME", help: "which table, sheet or layer of the file"}, {name: "crs", value: "AUTH:CODE", help: "coordinate system of the file"},
-		{name: "at", value: "COLUMN,COLUMN", help: "the columns that hold longitude and latitude, or east and north"}, {name: "replace", help: "put it in the place of a file that is there"}},
+		{name: "at", value: "COLUMN,COLUMN", help: "the columns that hold longitude and latitude, or east and north"}, replaceOption},
 	run: func(c *call) (int, error) {
 		in, err := c.ReadFile(c.ctx, c.args.places[0], study.ReadOptions{CRSGiven: c.args.has("crs"), Table: c.args.get("table")})
 		if err != nil {
 			return 0, err
 		}
 		if in.Layer == nil {
-			return 0, &inputError{fmt.Errorf("%s is a grid of values, which is not written in another form", c.args.places[0])}
+			return 0, &inputError{fmt.Errorf("%s is a raster (a grid of values), which is not written in another form", c.args.places[0])}
 		}
 		if in.At, err = placeOf(c.args.get("at")); err != nil {
 			return 0, err

@@ -7,6 +7,7 @@ import (
 
 var verbGet = verb{
 	name: "get", usage: "get STUDY.gpkg [KEY]", summary: "reads one setting, or lists all", places: [2]int{1, 2},
+	more: keyForms,
 	run: func(c *call) (int, error) {
 		return c.with(func(s *study.Study) (int, error) {
 			snap, err := s.Snapshot()

@@ -63,6 +63,8 @@ func changeWords(e study.Entry) string {
 			parts = append(parts, fmt.Sprintf("%s from %s to %s", ch.Key, settingWords(ch.Old), settingWords(ch.New)))
 		case ch.Kind == study.MetaRecord && ch.Key == study.FrameKey:
 			parts = append(parts, "centre of the local frame")
+		case ch.Kind == study.LayerRecKind && byHand(ch) != "":
+			parts = append(parts, byHand(ch))
 		case ch.New == nil:
 			parts = append(parts, fmt.Sprintf("%s %s out", ch.Kind, ch.Key))
 		case ch.Old == nil:
@@ -72,6 +74,47 @@ func changeWords(e study.Entry) string {
 		}
 	}
 	return strings.Join(parts, "; ")
+}
+
+// byHand says which features a change of a layer's record changed by hand; empty for a change of another kind.
+func byHand(ch study.Change) string {
+	var old, now study.LayerRecord
+	for raw, to := range map[*json.RawMessage]*study.LayerRecord{&ch.Old: &old, &ch.New: &now} {
+		if *raw != nil && json.Unmarshal(*raw, to) != nil {
+			return "" // what cannot be read is told like any other change
+		}
+	}
+	if len(old.Hand) == len(now.Hand) || old.File != now.File || old.Edition != now.Edition {
+		if old.Name != "" || now.File != "drawn by hand" {
+			return ""
+		}
+	}
+	lead, list := ch.Key+", ", now.Hand[min(len(old.Hand), len(now.Hand)):]
+	if len(now.Hand) < len(old.Hand) {
+		lead, list = ch.Key+", no longer: ", old.Hand[len(now.Hand):]
+	}
+	var parts []string
+	for _, h := range list {
+		parts = append(parts, handWords(h))
+	}
+	return lead + strings.Join(parts, ", ")
+}
+
+// handWords tells a change by hand: which feature, and what became of it.
+func handWords(h study.HandEdit) string {
+	text := "feature " + h.Feature
+	if h.Called != "" {
+		text += " (" + h.Called + ")"
+	}
+	text += " " + map[string]string{study.HandAdd: "added", study.HandMove: "moved", study.HandSet: "changed", study.HandRemove: "taken out"}[h.Verb]
+	var values []string
+	for _, k := range sortedKeys(h.Values) {
+		values = append(values, k+"="+h.Values[k])
+	}
+	if len(values) > 0 {
+		text += ": " + strings.Join(values, ", ")
+	}
+	return text
 }
 
 func settingWords(raw json.RawMessage) string {

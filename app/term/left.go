@@ -16,10 +16,10 @@ import (
 const maxSweep = 200
 
 var verbLeft = verb{
-	name: "left", usage: "left STUDY.gpkg [--plant ID] [--sweep KEY=FROM:TO:STEP] [--to FILE] [--top N]", summary: "land left in the whole district, and what each rule took", places: [2]int{1, 1},
+	name: "left", usage: "left STUDY.gpkg [--plant ID] [--sweep KEY=FROM:TO:STEP] [--to FILE [--replace]] [--top N]", summary: "land left in the whole district, and what each rule took", places: [2]int{1, 1},
 	more: "Parcels play no part: the rules of a plant option are laid over the district, and what is left is told in\nhectares and zones. With --sweep one rule takes several values; every step tells land, zones, candidates with a\nplant, their energy and the first place of each voice. --to writes the zones as a layer.",
 	options: []option{{name: "plant", value: "ID", help: "only this plant option"}, {name: "sweep", value: "KEY=FROM:TO:STEP", help: "at each value of one rule; needs --plant"},
-		{name: "to", value: "FILE", help: "write the zones that are left"}, {name: "top", value: "N", help: "list only the N largest zones (10)"}, frozenOption, coresOption},
+		{name: "to", value: "FILE", help: "write the zones that are left"}, replaceOption, {name: "top", value: "N", help: "list only the N largest zones (10)"}, frozenOption, coresOption},
 	run: func(c *call) (int, error) {
 		top, err := c.args.whole("top", 1, 10)
 		if err != nil {
@@ -27,6 +27,12 @@ var verbLeft = verb{
 		}
 		if c.args.has("sweep") && !c.args.has("plant") {
 			return 0, usagef("--sweep needs --plant ID")
+		}
+		if c.args.has("sweep") && c.args.has("to") {
+			return 0, usagef("--to writes the zones of one state and cannot stand beside --sweep")
+		}
+		if err := c.freeFile(c.args.get("to")); err != nil {
+			return 0, err
 		}
 		return c.with(func(s *study.Study) (int, error) {
 			snap, err := c.state(s)
@@ -82,7 +88,7 @@ func (c *call) left(l run.Left, top int) {
 	if l.Part != "" {
 		name += ", " + l.Part + " part"
 	}
-	c.say("%s: of %s ha of %s, %s ha are left in %d zones.", name, ha(l.DistrictHa), what, ha(l.LeftHa), len(l.Zones))
+	c.say("%s: of %s ha of %s, %s ha are left in %s.", name, ha(l.DistrictHa), what, ha(l.LeftHa), counted(len(l.Zones), "zone"))
 	rows := [][]string{{"rule", "takes", "alone", "shared"}, {"", "ha", "ha", "ha"}}
 	for _, t := range l.Rules {
 		rows = append(rows, []string{present.Rule(t.Rule), ha(t.AloneHa + t.SharedHa), ha(t.AloneHa), ha(t.SharedHa)})
@@ -98,10 +104,10 @@ func (c *call) left(l run.Left, top int) {
 	}
 	for i, z := range l.Zones {
 		if i == top {
-			c.say("  and %d smaller zones", len(l.Zones)-i)
+			c.say("  and %s", counted(len(l.Zones)-i, "smaller zone"))
 			break
 		}
-		c.say("  zone %d: %s ha near %.5f N, %.5f E", i+1, ha(z.Ha), z.Centre.Lat, z.Centre.Lon)
+		c.say("  zone %d: %s ha near %s", i+1, ha(z.Ha), present.Place(z.Centre))
 	}
 }
 
@@ -195,5 +201,5 @@ func sweepValues(text string) (key string, values []float64, err error) {
 
 // writeZones writes the zones as a layer.
 func (c *call) writeZones(to string, all []run.Left) error {
-	return c.export(to, []*geo.Layer{run.ZonesLayer(all)}, false, true)
+	return c.export(to, []*geo.Layer{run.ZonesLayer(all)}, false, c.args.has("replace"))
 }

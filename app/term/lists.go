@@ -10,9 +10,12 @@ import (
 )
 
 var verbRequests = verb{
-	name: "requests", usage: "requests STUDY.gpkg [--all] [--to FILE.html]", summary: "data to ask for: per role its use, fields, usual holder, what stays unknown without it", places: [2]int{1, 1},
-	options: []option{{name: "all", help: "roles that the study has, too"}, {name: "to", value: "FILE.html", help: "write a page to print"}},
+	name: "requests", usage: "requests STUDY.gpkg [--all] [--to FILE.html [--replace]]", summary: "data to ask for: per role its use, fields, usual holder, what stays unknown without it", places: [2]int{1, 1},
+	options: []option{{name: "all", help: "roles that the study has, too"}, {name: "to", value: "FILE.html", help: "write a page to print"}, replaceOption},
 	run: func(c *call) (int, error) {
+		if err := c.freeFile(c.args.get("to")); err != nil {
+			return 0, err
+		}
 		return c.with(func(s *study.Study) (int, error) {
 			snap, err := s.Snapshot()
 			if err != nil {
@@ -63,9 +66,12 @@ var verbRequests = verb{
 }
 
 var verbCoverage = verb{
-	name: "coverage", usage: "coverage STUDY.gpkg [--to FILE.html] [--frozen NAME]", summary: "for how many candidates each consequence is known", places: [2]int{1, 1},
-	options: []option{{name: "to", value: "FILE.html", help: "write a page to print"}, frozenOption, coresOption},
+	name: "coverage", usage: "coverage STUDY.gpkg [--to FILE.html [--replace]] [--frozen NAME]", summary: "for how many candidates each consequence is known", places: [2]int{1, 1},
+	options: []option{{name: "to", value: "FILE.html", help: "write a page to print"}, replaceOption, frozenOption, coresOption},
 	run: func(c *call) (int, error) {
+		if err := c.freeFile(c.args.get("to")); err != nil {
+			return 0, err
+		}
 		return c.with(func(s *study.Study) (int, error) {
 			r, err := c.compute(s)
 			if err != nil {

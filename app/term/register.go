@@ -30,13 +30,20 @@ var verbRegister = verb{
 			if err != nil {
 				return 0, err
 			}
-			var list []outRow
-			all := run.Register(snap, r)
-			for _, o := range all {
-				if (c.args.has("plant") && o.Plant != c.args.get("plant")) || (c.args.has("site") && o.Site != c.args.get("site")) {
-					continue
+			asked := func(site, plant string) bool {
+				return (!c.args.has("plant") || plant == c.args.get("plant")) && (!c.args.has("site") || site == c.args.get("site"))
+			}
+			of := 0 // candidates that were asked for
+			for i := range r.Candidates {
+				if asked(r.Candidates[i].Site, r.Candidates[i].Plant) {
+					of++
 				}
-				list = append(list, outRow{Out: o})
+			}
+			var list []outRow
+			for _, o := range run.Register(snap, r) {
+				if asked(o.Site, o.Plant) {
+					list = append(list, outRow{Out: o})
+				}
 			}
 			if c.args.has("near") {
 				sv := run.NewSurveyor(snap, c.Params, run.StoreLoader(s.Store()), nil)
@@ -58,10 +65,10 @@ var verbRegister = verb{
 				if list == nil {
 					list = []outRow{}
 				}
-				c.printJSON(map[string]any{"study": c.args.places[0], "out": list, "of": len(r.Candidates)})
+				c.printJSON(map[string]any{"study": c.args.places[0], "out": list, "of": of})
 				return ExitDone, nil
 			}
-			c.register(list, len(r.Candidates))
+			c.register(list, of)
 			return ExitDone, nil
 		})
 	},

@@ -9,17 +9,34 @@ import (
 	"groundtally/app/study"
 )
 
-var verbSet = verb{
-	name: "set", usage: "set STUDY.gpkg KEY VALUE [--reason TEXT] [--source TEXT] [--accepted-by TEXT]", summary: "changes a setting",
-	more: `Keys with names in them:
+// keyForms says how keys are made that have names in them.
+const keyForms = `Keys with names in them. PLANT is a plant option, a technology, wind or solar; ROLE a role of layers:
   rule.setback.ROLE.PLANT_m          distance kept from a role's features, in metres
-  rule.setback.ROLE.PLANT_tip        the same, as a multiple of tip height
+  rule.setback.ROLE.PLANT_tip        the same, as a multiple of tip height; PLANT_rotor of rotor diameters
+  rule.setback.boundary.PLANT_m      distance kept from the site's own edge; also _rotor
+  rule.setback.ROLE.class.CLASS.PLANT_m    distance kept from one class of a role; also _tip, _rotor
+  rule.setback.ROLE.from_110_kv.PLANT_m    distance kept from lines of that voltage and above; also _tip
+  rule.measured_to.PLANT             where distances end: mast or blade tip
+  rule.measured_from.ROLE            where they begin: facade, centroid or plot
   rule.exclude.ROLE                  yes takes the role's polygons out
+  rule.exclude.ROLE.class            only these classes of it, parted by |
+  rule.slope_max.PLANT_deg           steeper ground is taken out
+  rule.aspect_from.PLANT_deg, rule.aspect_to.PLANT_deg, rule.aspect_slope.PLANT_deg
+                                     the directions towards which ground may fall, from which slope on
+  rule.smallest_patch.PLANT_ha, rule.smallest_width.PLANT_m
+  rule.except.RULE.SITE              yes lets a rule not hold on a site; needs --reason. RULE as setback:roads,
+                                     exclude:habitat, slope, aspect, height_limit
+  layer.tolerance.ROLE_m             how far features may lie from where they are drawn
   plant.ID.technology                makes a plant option; then plant.ID.hub_height_m and so on
   voice.NAME.weight.KEY              swing points of a consequence; makes the voice
   anchor.KEY.worst, anchor.KEY.best  ends of the value scale of a consequence
   limit.KEY                          a limit for a consequence
   inventory.ROW.central              own figure in place of a cited factor
+Limits of height are no setting: they come as a layer of the role height_limit.`
+
+var verbSet = verb{
+	name: "set", usage: "set STUDY.gpkg KEY VALUE [--reason TEXT] [--source TEXT] [--accepted-by TEXT]", summary: "changes a setting",
+	more: keyForms + `
 "not set" says that a value must still be entered. gtally get lists the other keys.`,
 	options: []option{reasonOption, {name: "source", value: "TEXT", help: "where the value stands"}, {name: "accepted-by", value: "TEXT", help: "who answers for the value"}, {name: "default", help: "take the value out, so that the default holds again"}},
 	places:  [2]int{2, 3},
@@ -37,6 +54,16 @@ var verbSet = verb{
 			}
 		}
 		return c.with(func(s *study.Study) (int, error) {
+			load := run.StoreLoader(s.Store())
+			if e.Value != "" && e.Value != study.NotSetText {
+				now, err := s.Snapshot()
+				if err != nil {
+					return 0, err
+				}
+				if err := run.CheckException(c.ctx, load, now, e.Key); err != nil {
+					return 0, err
+				}
+			}
 			entry, err := s.Set(c.ctx, "set", e.Reason, e)
 			if err != nil {
 				return 0, err
@@ -48,16 +75,20 @@ var verbSet = verb{
 			if plant := rulePlant(e.Key); plant != "" && !known(snap, plant) {
 				c.note("no plant option %q yet; the rule holds once there is one.", plant)
 			}
-			if entry.Seq == 0 {
-				c.done(e.Key + " has that value already.")
-				return ExitDone, nil
+			notices, err := run.SettingNotices(c.ctx, load, snap, e.Key)
+			if err != nil {
+				return 0, err
 			}
+			c.notices(notices)
 			v, _, in := snap.Lookup(e.Key)
-			if !in {
-				c.done(e.Key + " is no longer in force.")
-				return ExitDone, nil
+			text := strings.TrimSpace(fmt.Sprintf("%s is %s %s", e.Key, v.Value, unitWords(v.Unit))) + "."
+			switch {
+			case entry.Seq == 0:
+				text = e.Key + " has that value already."
+			case !in:
+				text = e.Key + " is no longer in force."
 			}
-			c.done(strings.TrimSpace(fmt.Sprintf("%s is %s %s", e.Key, v.Value, unitWords(v.Unit))) + ".")
+			c.answer(map[string]any{"study": c.args.places[0], "done": text, "notices": c.noticeList(notices)}, "%s", text)
 			return ExitDone, nil
 		})
 	},

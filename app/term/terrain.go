@@ -37,7 +37,7 @@ var verbTerrain = verb{
 				c.printJSON(map[string]any{"study": c.args.places[0], "terrain": list})
 				return ExitDone, nil
 			}
-			rows := [][]string{{"", "area", "height", "least", "greatest", "slope", "falls to", "agreement", "roughness"}, {"", "ha", "m", "m", "m", "°", "°", "0 to 1", "m"}}
+			rows := [][]string{{"", "area", "height", "least", "greatest", "slope", "steepest", "falls to", "agreement", "roughness"}, {"", "ha", "m", "m", "m", "°", "°", "°", "0 to 1", "m"}}
 			number := func(x *float64, digits int) string {
 				if x == nil {
 					return "unknown"
@@ -53,9 +53,9 @@ var verbTerrain = verb{
 				if r.AspectDeg == nil && r.SlopeDeg != nil {
 					aspect = "no one way"
 				}
-				rows = append(rows, []string{name, ha(r.Ha), number(r.MeanM, 1), number(r.LeastM, 1), number(r.MostM, 1), number(r.SlopeDeg, 1), aspect, fmt.Sprintf("%.2f", r.AspectShare), number(r.RoughnessM, 2)})
+				rows = append(rows, []string{name, ha(r.Ha), number(r.MeanM, 1), number(r.LeastM, 1), number(r.MostM, 1), number(r.SlopeDeg, 1), number(r.SteepestDeg, 1), aspect, fmt.Sprintf("%.2f", r.AspectShare), number(r.RoughnessM, 2)})
 			}
-			columns(c.out, rows, map[int]bool{1: true, 2: true, 3: true, 4: true, 5: true, 6: true, 7: true, 8: true})
+			columns(c.out, rows, map[int]bool{1: true, 2: true, 3: true, 4: true, 5: true, 6: true, 7: true, 8: true, 9: true})
 			for _, r := range list {
 				if len(r.HorizonDeg) == 0 {
 					continue

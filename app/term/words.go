@@ -3,6 +3,7 @@ package term
 import (
 	"fmt"
 	"io"
+	"strconv"
 	"strings"
 	"unicode/utf8"
 
@@ -29,6 +30,34 @@ func (c *call) notices(ns []geo.Notice) {
 			fmt.Fprintf(c.Err, "  and %d more of the kind \"%s\"; gtally check lists all\n", shown[code]-3, strings.ReplaceAll(code, "_", " "))
 		}
 	}
+}
+
+// counted writes a number of things: "1 zone", "2 zones".
+func counted(n int, what string) string {
+	if n != 1 {
+		what += "s"
+	}
+	return strconv.Itoa(n) + " " + what
+}
+
+// wrapped breaks a text at blanks into lines of at most so many characters; edge stands between them.
+func wrapped(text string, width int, edge string) string {
+	var b strings.Builder
+	n := 0
+	for _, w := range strings.Fields(text) {
+		switch {
+		case n == 0:
+		case n+1+len(w) > width:
+			b.WriteString(edge)
+			n = 0
+		default:
+			b.WriteByte(' ')
+			n++
+		}
+		b.WriteString(w)
+		n += len(w)
+	}
+	return b.String()
 }
 
 // figure writes a number for redoing a sum by hand.

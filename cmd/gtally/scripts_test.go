@@ -255,7 +255,7 @@ func (s *script) helper(where string, ws []string) {
 	}
 	switch at(0) {
 	case "write":
-		must(os.WriteFile(file(1), []byte(at(2)), 0o644))
+		must(os.WriteFile(file(1), []byte(strings.ReplaceAll(at(2), `\n`, "\n")), 0o644))
 	case "nested": // opening brackets behind a text
 		n, err := strconv.Atoi(at(3))
 		must(err)
@@ -281,6 +281,12 @@ func (s *script) helper(where string, ws []string) {
 		}
 		if !bytes.Equal(b, old) {
 			s.t.Errorf("%s: %s is not what it was", where, at(1))
+		}
+	case "holds", "lacks":
+		b, err := os.ReadFile(file(1))
+		must(err)
+		if bytes.Contains(b, []byte(at(2))) != (at(0) == "holds") {
+			s.t.Errorf("%s: %s: %s %q is not so", where, at(1), at(0), at(2))
 		}
 	case "absent":
 		if _, err := os.Stat(file(1)); !errors.Is(err, os.ErrNotExist) {

@@ -17,6 +17,7 @@ type Summary struct {
 	HasHeight         bool    // whether any height is known
 
 	MeanSlopeDeg float64
+	MaxSlopeDeg  float64 // of the cells met
 	SteepShare   float64 // share steeper than the limit, of the area with a slope
 	SlopeShare   float64 // share of the area with a slope
 	HasSlope     bool
@@ -97,6 +98,7 @@ func (g *Grid) Over(polygons geo.XYGeometry, limitDeg float64) (Summary, error) 
 					a := slopeDeg(p, q)
 					sloped += w
 					sumSlope += float64(w * a)
+					s.MaxSlopeDeg = math.Max(s.MaxSlopeDeg, a)
 					if a > limitDeg {
 						steep += w
 					}

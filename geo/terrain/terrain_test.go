@@ -155,7 +155,7 @@ func TestOver(t *testing.T) {
 	}
 	// A site much smaller than a cell.
 	s, err = g.Over(box(1401, -401, 0.5, 0.5), 10)
-	if err != nil || s.SteepShare != 1 || math.Abs(s.MeanSlopeDeg-20) > 1e-3 || math.Abs(s.AreaM2-0.25) > 1e-9 {
+	if err != nil || s.SteepShare != 1 || math.Abs(s.MeanSlopeDeg-20) > 1e-3 || math.Abs(s.MaxSlopeDeg-20) > 1e-3 || math.Abs(s.AreaM2-0.25) > 1e-9 {
 		t.Errorf("got %+v %v", s, err)
 	}
 	// Half outside the grid, wholly outside, the edge without slope.

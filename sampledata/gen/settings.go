@@ -124,6 +124,7 @@ func settingTable() ([]byte, error) {
 	add("energy.target_mwh_per_yr", "45000", "MWh/yr", "Council of Marram (invented), resolution of 2025-03-12", "what the island wants from community plant")
 	add("climate.grid_factor_g_per_kwh", "250", "g CO2e/kWh", "Marram Power (invented), supply statement 2025", "mix of the sea cable and the standby station")
 	add("climate.zone", "cool temperate moist", "", "Marram energy office (invented)", "maritime climate at 47.5 N")
+	add("weather.stamp", "start", "", "Marram weather office (invented), hourly year", "what the times of the file mark")
 	add("wind.shear_alpha", "0.14", "1", "power law with about one seventh over open land", "open island")
 
 	voices := []struct {

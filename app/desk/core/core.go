@@ -67,13 +67,16 @@ type Core struct {
 	Always func(func())
 
 	// Hooks that the window sets.
-	ShowParcels func(ids []string)                          // brings parcels into view on the map and marks them
-	ShowPlace   func(at geo.LonLat)                         // brings a place into view on the map
-	ShowStage   func(title string)                          // opens a stage
-	ShowZones   func(zones []geo.LonLatGeometry)            // draws land on the map, until other land or none is given
-	Boxed       func() []string                             // parcels in the box last drawn on the map
-	Ask         func(title, words, yes string, then func()) // asks before something that takes much away
-	Tell        func(words string)                          // a short word at the foot of the window, that something is done
+	ShowParcels func(ids []string)               // brings parcels into view on the map and marks them
+	ShowPlace   func(at geo.LonLat)              // brings a place into view on the map
+	ShowStage   func(title string)               // opens a stage
+	ShowZones   func(zones []geo.LonLatGeometry) // draws land on the map, until other land or none is given
+	Boxed       func() []string                  // parcels in the box last drawn on the map
+	// Sketch asks for places on the map; done is told none when the user gave up, else with how many metres are a
+	// hair's breadth there. From, which may be nil, is where a feature stood.
+	Sketch func(kind geo.Kind, words string, from *geo.LonLat, done func(at []geo.LonLat, nearM float64))
+	Ask    func(title, words, yes string, then func()) // asks before something that takes much away
+	Tell   func(words string)                          // a short word at the foot of the window, that something is done
 
 	view      *live.View
 	voice     string
@@ -117,6 +120,7 @@ func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core
 	c.Ask = c.confirm
 	c.ShowParcels, c.ShowPlace, c.ShowStage = func([]string) {}, func(geo.LonLat) {}, func(string) {}
 	c.ShowZones = func([]geo.LonLatGeometry) {}
+	c.Sketch = func(_ geo.Kind, _ string, _ *geo.LonLat, done func([]geo.LonLat, float64)) { done(nil, 0) }
 	return c
 }
 

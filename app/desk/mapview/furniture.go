@@ -12,6 +12,7 @@ import (
 	"fyne.io/fyne/v2/theme"
 	"fyne.io/fyne/v2/widget"
 
+	"groundtally/app/draw"
 	"groundtally/app/draw/tiles"
 	"groundtally/geo"
 )
@@ -19,6 +20,7 @@ import (
 const (
 	edgeUnits    = 10 // from the map's edge to what lies on the glass
 	longestScale = 110
+	creditLines  = 3 // at most, of those who must be named
 )
 
 // furniture is what lies on the glass: scale bar, north, buttons, the pointer's place, the legend.
@@ -34,16 +36,23 @@ type furniture struct {
 	buttons  []*widget.Button
 	legend   *legend
 	barUnits float32
+	credit   string // who must be named for the backdrop; empty for none
+	named    []*canvas.Text
+	ground   *canvas.Rectangle // under those names
 }
 
 func newFurniture(m *Map) *furniture {
 	f := &furniture{
 		sheet: canvas.NewRectangle(nil), length: &canvas.Text{}, where: &canvas.Text{},
 		north: canvas.NewRectangle(nil), letter: &canvas.Text{Text: "N", TextStyle: fyne.TextStyle{Bold: true}},
-		legend: newLegend(), barUnits: longestScale,
+		legend: newLegend(), barUnits: longestScale, ground: canvas.NewRectangle(nil),
 	}
-	f.sheet.CornerRadius, f.north.CornerRadius = 4, 4
-	f.box = container.NewWithoutLayout(f.sheet, f.north, f.length, f.where, f.letter)
+	f.sheet.CornerRadius, f.north.CornerRadius, f.ground.CornerRadius = 4, 4, 4
+	f.box = container.NewWithoutLayout(f.sheet, f.north, f.length, f.where, f.letter, f.ground)
+	for range creditLines {
+		f.named = append(f.named, &canvas.Text{})
+		f.box.Objects = append(f.box.Objects, f.named[len(f.named)-1])
+	}
 	for range 3 {
 		bar, arrow := &canvas.Line{StrokeWidth: 1.5}, &canvas.Line{StrokeWidth: 1.5}
 		f.bar, f.arrow = append(f.bar, bar), append(f.arrow, arrow)
@@ -63,17 +72,18 @@ func newFurniture(m *Map) *furniture {
 
 func (f *furniture) dress(style tiles.Style) {
 	look := style.Look
-	f.sheet.FillColor, f.north.FillColor = faded(look.Paper, 225), faded(look.Paper, 225)
+	f.sheet.FillColor, f.north.FillColor, f.ground.FillColor = faded(look.Paper, 225), faded(look.Paper, 225), faded(look.Paper, 225)
 	for _, l := range append(append([]*canvas.Line(nil), f.bar...), f.arrow...) {
 		l.StrokeColor = look.Ink
 		canvas.Refresh(l)
 	}
-	for _, t := range []*canvas.Text{f.length, f.where, f.letter} {
+	for _, t := range append([]*canvas.Text{f.length, f.where, f.letter}, f.named...) {
 		t.Color, t.TextSize = look.Ink, theme.Size(theme.SizeNameCaptionText)
 		t.Refresh()
 	}
 	f.sheet.Refresh()
 	f.north.Refresh()
+	f.ground.Refresh()
 	f.legend.dress(style)
 }
 
@@ -154,6 +164,7 @@ func (f *furniture) arrange(size fyne.Size) {
 		b.Move(fyne.NewPos(x, y))
 		y += b.MinSize().Height + 4
 	}
+	f.arrangeCredit(x - 2*edgeUnits)
 	// Scale and place, lower right.
 	length, where := f.length.MinSize(), f.where.MinSize()
 	if f.where.Text == "" {
@@ -180,10 +191,40 @@ func (f *furniture) arrange(size fyne.Size) {
 	f.legend.arrange(size, size.Width-3*edgeUnits-max(sheet.Width, 150))
 }
 
+// setCredit names those to whom the backdrop belongs, in the upper left corner.
+func (f *furniture) setCredit(credit string) { f.credit = credit }
+
+// arrangeCredit writes the names in as many lines as they need, at most creditLines.
+func (f *furniture) arrangeCredit(room float32) {
+	size := theme.Size(theme.SizeNameCaptionText)
+	var lines []string
+	if f.credit != "" && room > 60 {
+		lines = draw.Lines(f.credit, float64(size), false, float64(room-16), creditLines)
+	}
+	wide, high := float32(0), float32(0)
+	for i, t := range f.named {
+		t.Text = ""
+		if i < len(lines) {
+			t.Text = lines[i]
+			t.Resize(t.MinSize())
+			t.Move(fyne.NewPos(edgeUnits+8, edgeUnits+3+high))
+			wide, high = max(wide, t.MinSize().Width), high+t.MinSize().Height
+		}
+		t.Refresh()
+	}
+	if len(lines) == 0 {
+		f.ground.Hide()
+		return
+	}
+	f.ground.Move(fyne.NewPos(edgeUnits, edgeUnits))
+	f.ground.Resize(fyne.NewSize(wide+16, high+6))
+	f.ground.Show()
+}
+
 // covers tells whether something lies on the map at a position, so that a click is not meant for the
 // ground under it.
 func (f *furniture) covers(at fyne.Position) bool {
-	for _, o := range []fyne.CanvasObject{f.sheet, f.north, f.legend.box} {
+	for _, o := range []fyne.CanvasObject{f.sheet, f.north, f.ground, f.legend.box} {
 		p, s := o.Position(), o.Size()
 		if o.Visible() && at.X >= p.X && at.Y >= p.Y && at.X < p.X+s.Width && at.Y < p.Y+s.Height {
 			return true

@@ -65,7 +65,7 @@ func (m *Map) MouseDown(e *desktop.MouseEvent) {
 		return
 	}
 	m.press.at, m.press.dragging, m.press.handled = e.Position, false, false
-	m.press.box = e.Modifier&fyne.KeyModifierShift != 0
+	m.press.box = e.Modifier&fyne.KeyModifierShift != 0 && m.drawn.now == nil
 	m.showCross(false)
 	if c := fyne.CurrentApp().Driver().CanvasForObject(m); c != nil && c.Focused() != fyne.Focusable(m) {
 		c.Focus(m)
@@ -79,8 +79,11 @@ func (m *Map) MouseUp(e *desktop.MouseEvent) {
 	}
 	again := time.Since(m.press.last) < fyne.CurrentApp().Driver().DoubleTapDelay() && !far(e.Position, m.press.lastAt)
 	m.press.handled, m.press.last, m.press.lastAt = true, time.Now(), e.Position
-	if !again {
+	switch {
+	case !again:
 		m.click(e.Position, adds(e.Modifier))
+	case m.drawn.now != nil:
+		m.finishSketch()
 	}
 }
 
@@ -109,6 +112,10 @@ func (m *Map) Tapped(e *fyne.PointEvent) {
 }
 
 func (m *Map) click(at fyne.Position, add bool) {
+	if m.drawn.now != nil {
+		m.setPoint(at)
+		return
+	}
 	if m.ground == nil || m.OnSelect == nil || m.furniture.covers(at) {
 		return
 	}
@@ -131,7 +138,12 @@ func (m *Map) parcelAt(at fyne.Position) string {
 }
 
 // DoubleTapped shows the district whole.
-func (m *Map) DoubleTapped(*fyne.PointEvent) { m.FitAll() }
+func (m *Map) DoubleTapped(*fyne.PointEvent) {
+	// The click that ends a line comes here too, a moment later.
+	if m.drawn.now == nil && time.Since(m.drawn.ended) > 3*fyne.CurrentApp().Driver().DoubleTapDelay() {
+		m.FitAll()
+	}
+}
 
 // TappedSecondary tells of a click with the other button.
 func (m *Map) TappedSecondary(e *fyne.PointEvent) {
@@ -185,6 +197,9 @@ func (m *Map) MouseMoved(e *desktop.MouseEvent) {
 // MouseOut hides what was shown for the pointer.
 func (m *Map) MouseOut() {
 	m.pointed = false
+	if m.drawn.now != nil {
+		m.showSketch()
+	}
 	m.setHover(-1)
 	m.furniture.setPlace("")
 	m.furniture.arrange(m.lens.size)
@@ -201,7 +216,10 @@ func (m *Map) point(at fyne.Position) {
 		m.furniture.arrange(m.lens.size)
 	}
 	n, ok := m.ground.Hit(xy)
-	if !ok || m.press.dragging || m.furniture.covers(at) {
+	if m.drawn.now != nil {
+		m.showSketch()
+	}
+	if !ok || m.press.dragging || m.drawn.now != nil || m.furniture.covers(at) {
 		n = -1
 	}
 	m.setHover(n)
@@ -281,6 +299,9 @@ func (m *Map) TypedRune(r rune) {
 
 // TypedKey pans with the arrows, fits with Home, chooses with Enter, lets go with Escape.
 func (m *Map) TypedKey(e *fyne.KeyEvent) {
+	if m.sketchKey(e.Name) {
+		return
+	}
 	switch e.Name {
 	case fyne.KeyLeft:
 		m.byKey(func() { m.pan(panUnits, 0) })

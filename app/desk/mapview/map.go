@@ -46,6 +46,7 @@ type Map struct {
 	look    tiles.Look
 	hidden  []string
 	relief  *tiles.Relief
+	under   *tiles.Backdrop
 	marks   []tiles.Mark
 	lens    lens
 	fit     bool // the district must be fitted as soon as the size is known
@@ -61,6 +62,7 @@ type Map struct {
 	names      *nameLayer
 	badges     *badgeLayer
 	furniture  *furniture
+	drawn      *sketchLayer
 	hover      *card
 	hoverOver  int // parcel that the words belong to, or -1
 	box        *canvas.Rectangle
@@ -118,6 +120,7 @@ func New(o Options) *Map {
 	m.names, m.badges = newNameLayer(), newBadgeLayer()
 	m.furniture = newFurniture(m)
 	m.hover = newCard(m.look)
+	m.drawn = newSketchLayer(m.look)
 	m.box = canvas.NewRectangle(nil)
 	m.box.StrokeWidth = 1.5
 	m.box.Hide()
@@ -127,12 +130,12 @@ func New(o Options) *Map {
 	m.ring = canvas.NewRectangle(nil)
 	m.ring.StrokeWidth = 2
 	m.ring.Hide()
-	objects := []fyne.CanvasObject{m.backdrop, m.back.box, m.front.box, m.names.box, m.badges.box, m.box}
+	objects := []fyne.CanvasObject{m.backdrop, m.back.box, m.front.box, m.names.box, m.badges.box, m.drawn.box, m.box}
 	for _, l := range m.cross {
 		l.Hide()
 		objects = append(objects, l)
 	}
-	objects = append(objects, m.furniture.box, m.hover.box, m.ring)
+	objects = append(objects, m.furniture.box, m.drawn.card.box, m.hover.box, m.ring)
 	m.stage = container.NewWithoutLayout(objects...)
 	m.clip = container.NewClip(m.stage)
 	m.ExtendBaseWidget(m)
@@ -186,6 +189,15 @@ func (m *Map) SetHidden(roles ...string) {
 func (m *Map) SetRelief(r *tiles.Relief) {
 	m.relief = r
 	m.painter.SetStyle(m.style())
+}
+
+// SetBackdrop shows pictures of the ground under the map with those who must be named, or none. They are left out
+// on any other district than the one they were made for.
+func (m *Map) SetBackdrop(b *tiles.Backdrop, credit string) {
+	m.under = b
+	m.painter.SetStyle(m.style())
+	m.furniture.setCredit(credit)
+	m.arrange()
 }
 
 // SetLegend explains the colours; entries without a title hide it.
@@ -286,7 +298,7 @@ func (m *Map) Show() {
 }
 
 func (m *Map) style() tiles.Style {
-	return tiles.Style{Look: m.look, PixelRatio: m.ratio, Hidden: m.hidden, Relief: m.relief}
+	return tiles.Style{Look: m.look, PixelRatio: m.ratio, Hidden: m.hidden, Relief: m.relief, Backdrop: m.under}
 }
 
 // setLens shows another part of the ground.
@@ -339,6 +351,9 @@ func (m *Map) place() {
 	}
 	m.names.place(m.lens)
 	m.badges.place(m.lens)
+	if m.drawn.now != nil {
+		m.showSketch()
+	}
 	m.furniture.place(m.lens)
 	canvas.Refresh(m.backdrop) // objects that were only shown or hidden do not ask for a repaint
 }
@@ -372,6 +387,7 @@ func (m *Map) dress() {
 	m.badges.set(m.ground, m.marks, m.look)
 	m.furniture.dress(m.style())
 	m.hover.dress(m.look)
+	m.drawn.card.dress(m.look)
 	m.box.StrokeColor, m.box.FillColor = m.look.Ink, faded(m.look.Ink, 30)
 	for i, l := range m.cross {
 		l.StrokeColor = m.look.Ink
@@ -423,7 +439,7 @@ func (r *renderer) Layout(size fyne.Size) {
 	m := r.m
 	m.clip.Resize(size)
 	m.backdrop.Resize(size)
-	for _, o := range []fyne.CanvasObject{m.front.box, m.back.box, m.names.box, m.badges.box, m.furniture.box} {
+	for _, o := range []fyne.CanvasObject{m.front.box, m.back.box, m.names.box, m.badges.box, m.drawn.box, m.furniture.box} {
 		o.Resize(size)
 	}
 	m.ring.Move(fyne.NewPos(1, 1))

@@ -137,6 +137,7 @@ func each(name func(int) string, p draw.Palette, width float64) map[string]*draw
 		out[fmt.Sprintf("chain-%d", n)] = chart.Waterfall(chain(name, n), p, width)
 		out[fmt.Sprintf("land-%d", n)] = chart.TakenBars(land(name, n), p, width)
 		out[fmt.Sprintf("months-%d", n)] = chart.Monthly(months(name, n), p, width)
+		out[fmt.Sprintf("horizon-%d", n)] = chart.HorizonStrip(horizon(n), p, width)
 		out[fmt.Sprintf("cloud-%d", n*n)] = chart.Scatter(cloud(name, n*n), p, width)
 	}
 	for i, s := range []chart.Span{{Low: 3, Central: 4, High: 6, Least: 0, Greatest: 10}, {Low: 3, Central: 3, High: 3, Least: 3, Greatest: 3}, {Unknown: true}, {Low: 9, Central: 10, High: 10, Least: 0, Greatest: 10, Over: true}} {

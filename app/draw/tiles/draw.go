@@ -83,6 +83,7 @@ func (g *Ground) Draw(ctx context.Context, level int, rect image.Rectangle, styl
 	}
 	d.district()
 	d.parcels()
+	d.backdrop()
 	d.relief()
 	d.borders()
 	d.coast()

@@ -67,9 +67,10 @@ func opaque(c color.NRGBA) color.NRGBA {
 // Style says how a ground is drawn.
 type Style struct {
 	Look       Look
-	PixelRatio float64  // pixels per unit of line width, the screen's scale; 0 is 1
-	Hidden     []string // roles that are left out
-	Relief     *Relief  // of the same ground, under all that is drawn; nil is none
+	PixelRatio float64   // pixels per unit of line width, the screen's scale; 0 is 1
+	Hidden     []string  // roles that are left out
+	Relief     *Relief   // of the same ground, under all that is drawn; nil is none
+	Backdrop   *Backdrop // of the same ground, under all that is drawn and in place of the relief; nil is none
 }
 
 func (s Style) ratio() float64 {

@@ -57,7 +57,9 @@ func NewRelief(ctx context.Context, g *Ground, heights *raster.Grid, at Placing)
 		return nil, err
 	}
 	origin := geo.XY{X: box.MinX + cellM/2, Y: box.MinY + cellM/2}
-	nodes, err := newReliefNodes(ctx, g.plane, heights, at, origin, cellM, nx, ny)
+	nodes, err := newNodes(ctx, g.plane, at, func(x, y float64) geo.XY {
+		return geo.XY{X: (x - heights.XLL) / heights.CellX, Y: float64(heights.NRows) - (y-heights.YLL)/heights.CellY}
+	}, origin, cellM, nx, ny)
 	if err != nil {
 		return nil, err
 	}
@@ -123,8 +125,7 @@ func reliefBox(g *Ground, heights *raster.Grid, at Placing) (box geo.Extent, cel
 			}
 		}
 	}
-	e := g.extent
-	near := e.Grow(math.Max(e.MaxX-e.MinX, e.MaxY-e.MinY) / 2)
+	near := g.near()
 	if box.Empty() || !box.Meets(near) {
 		return geo.EmptyExtent(), 0
 	}
@@ -148,10 +149,10 @@ func reliefBox(g *Ground, heights *raster.Grid, at Placing) (box geo.Extent, cel
 	return box, cellM
 }
 
-// reliefNodes are places of the plane in the columns and rows of a file, every nodeCells cells. Between them
-// the way from one to the other is straight to a hundredth of a cell, and asking the file's system for every
-// cell would take a second.
-type reliefNodes struct {
+// nodes are places of the plane in the columns and rows of a file, every nodeCells cells. Between them the way
+// from one to the other is straight to a hundredth of a cell, and asking the file's system for every cell would
+// take a second.
+type nodes struct {
 	origin geo.XY
 	stepM  float64
 	nx     int
@@ -160,8 +161,10 @@ type reliefNodes struct {
 
 const nodeCells = 16
 
-func newReliefNodes(ctx context.Context, plane Plane, heights *raster.Grid, at Placing, origin geo.XY, cellM float64, nx, ny int) (*reliefNodes, error) {
-	n := &reliefNodes{origin: origin, stepM: cellM * nodeCells, nx: nx/nodeCells + 2}
+// newNodes places nodes for nx by ny cells from an origin to the north-east. inFile gives the columns and rows of
+// a place in the file's own coordinates.
+func newNodes(ctx context.Context, plane Plane, at Placing, inFile func(x, y float64) geo.XY, origin geo.XY, cellM float64, nx, ny int) (*nodes, error) {
+	n := &nodes{origin: origin, stepM: cellM * nodeCells, nx: nx/nodeCells + 2}
 	rows := ny/nodeCells + 2
 	n.at = make([]geo.XY, 0, n.nx*rows)
 	for j := range rows {
@@ -172,16 +175,16 @@ func newReliefNodes(ctx context.Context, plane Plane, heights *raster.Grid, at P
 			p := plane.From(geo.XY{X: origin.X + float64(i)*n.stepM, Y: origin.Y + float64(j)*n.stepM})
 			x, y, err := at.Inverse(p)
 			if err != nil {
-				x, y = math.NaN(), math.NaN() // no height is sampled there
+				x, y = math.NaN(), math.NaN() // nothing is sampled there
 			}
-			n.at = append(n.at, geo.XY{X: (x - heights.XLL) / heights.CellX, Y: float64(heights.NRows) - (y-heights.YLL)/heights.CellY})
+			n.at = append(n.at, inFile(x, y))
 		}
 	}
 	return n, nil
 }
 
 // place gives where a place lies in the file.
-func (n *reliefNodes) place(p geo.XY) geo.XY {
+func (n *nodes) place(p geo.XY) geo.XY {
 	x, y := (p.X-n.origin.X)/n.stepM, (p.Y-n.origin.Y)/n.stepM
 	i, j := int(x), int(y)
 	u, v := x-float64(i), y-float64(j)
@@ -256,8 +259,8 @@ func (d *drawing) relief() {
 	p := d.p
 	l := r.at(p.mPerPx)
 	// Places of pixels come from the level's own count, so that tiles meet without a seam.
-	columns := newReliefLine(p.rect.Min.X, p.w, l.nw.X, p.mPerPx, l.cellM, l.nx)
-	rows := newReliefLine(p.rect.Min.Y, p.rect.Dy(), -l.nw.Y, p.mPerPx, l.cellM, l.ny)
+	columns := newCellLine(p.rect.Min.X, p.w, l.nw.X, p.mPerPx, l.cellM, l.nx)
+	rows := newCellLine(p.rect.Min.Y, p.rect.Dy(), -l.nw.Y, p.mPerPx, l.cellM, l.ny)
 	if columns.from >= columns.to || rows.from >= rows.to {
 		return
 	}
@@ -283,6 +286,9 @@ func (d *drawing) relief() {
 			number = d.t.parcel[y*p.w : (y+1)*p.w]
 		}
 		for x := columns.from; x < columns.to; x++ {
+			if out[x] != 0 {
+				continue // a picture of the ground has its own light
+			}
 			i, u := int(columns.cell[x])-first, columns.part[x]
 			v := uint8((line[i]*(256-u) + line[i+1]*u + 1<<15) >> 16)
 			c := ground[v]
@@ -296,17 +302,17 @@ func (d *drawing) relief() {
 	p.drawn = p.drawn || any != 0 // the sea needs no overlay
 }
 
-// reliefLine says which cells lie beside the pixels of a line.
-type reliefLine struct {
-	from, to int      // pixels that lie within the relief
+// cellLine says which cells lie beside the pixels of a line.
+type cellLine struct {
+	from, to int      // pixels that lie within the cells
 	cell     []int32  // of the pixel: the cell before it
 	part     []uint32 // of the pixel: how far it is to the next cell, in 1/256
 }
 
-// newReliefLine places n pixels, the first at a count of pixels from the plane's origin, among cells whose
+// newCellLine places n pixels, the first at a count of pixels from the plane's origin, among cells whose
 // first centre lies at a place in metres.
-func newReliefLine(first, n int, centre, mPerPx, cellM float64, cells int) reliefLine {
-	l := reliefLine{from: n, cell: make([]int32, n), part: make([]uint32, n)}
+func newCellLine(first, n int, centre, mPerPx, cellM float64, cells int) cellLine {
+	l := cellLine{from: n, cell: make([]int32, n), part: make([]uint32, n)}
 	for i := range n {
 		at := ((float64(first+i)+0.5)*mPerPx - centre) / cellM
 		if at < -0.5 || at > float64(cells)-0.5 {

@@ -4,6 +4,8 @@ import (
 	"context"
 	"errors"
 	"io/fs"
+	"regexp"
+	"strings"
 
 	"modernc.org/sqlite"
 
@@ -53,7 +55,7 @@ func plain(file, where string, err error) error {
 	if err == nil || errors.As(err, &done) || errors.Is(err, context.Canceled) || errors.Is(err, context.DeadlineExceeded) {
 		return err
 	}
-	e := &formats.Error{File: file, Where: where, Code: "not_readable", What: "it cannot be read", Do: doCopy, Err: err}
+	e := &formats.Error{File: file, Where: where, Code: "not_readable", What: "it cannot be read", Do: doCopy, Err: worded{err}}
 	switch code := sqliteCode(err); {
 	case code == codeIOErrShortRead, code == codeIOErrCorruptFS, code&0xff == codeCorrupt, code&0xff == codeNotADB:
 		e.Code, e.What = "damaged", "the file is damaged or cut short"
@@ -78,3 +80,19 @@ func plain(file, where string, err error) error {
 	}
 	return e
 }
+
+// worded is an error whose text leaves out the number that SQLite's driver writes behind its words.
+type worded struct{ error }
+
+var driverCode = regexp.MustCompile(`( \(\d+\)| \(SQLITE_\w+\))+$`)
+
+func (w worded) Error() string {
+	text := w.error.Error()
+	var se *sqlite.Error
+	if errors.As(w.error, &se) {
+		text = strings.ReplaceAll(text, se.Error(), driverCode.ReplaceAllString(se.Error(), ""))
+	}
+	return text
+}
+
+func (w worded) Unwrap() error { return w.error }

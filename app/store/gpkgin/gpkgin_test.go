@@ -999,3 +999,43 @@ func BenchmarkRead20000Polygons(b *testing.B) {
 		}
 	}
 }
+
+// What the driver says is kept in words, and what it is can still be asked.
+func TestDriverNumbersAreLeftOut(t *testing.T) {
+	db, err := sql.Open("sqlite", filepath.Join(t.TempDir(), "x.gpkg"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer db.Close()
+	_, raw := db.Exec("SELECT * FROM nothing")
+	if raw == nil || !strings.Contains(raw.Error(), "(1)") {
+		t.Fatalf("the driver says %v", raw)
+	}
+	var f *formats.Error
+	if err := plain("x.gpkg", "", raw); !errors.As(err, &f) || strings.Contains(f.Err.Error(), "(1)") || !strings.Contains(f.Err.Error(), "nothing") || sqliteCode(err) != codeError {
+		t.Errorf("it is said: %v", f.Err)
+	}
+}
+
+func TestAStudyIsTold(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "s.gpkg")
+	s, err := store.Create(context.Background(), path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := s.Close(); err != nil {
+		t.Fatal(err)
+	}
+	for file, want := range map[string]bool{path: true, copied(t, "survey.gpkg"): false} {
+		f, err := Open(context.Background(), file)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if f.Study() != want {
+			t.Errorf("%s is a study: %v", file, f.Study())
+		}
+		if err := f.Close(); err != nil {
+			t.Error(err)
+		}
+	}
+}

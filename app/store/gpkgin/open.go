@@ -46,6 +46,7 @@ type File struct {
 	about   map[string]about // by name as in the contents
 	units   map[string]map[string]string
 	notices []geo.Notice
+	study   bool        // it has the table by which a study is told
 	stamp   os.FileInfo // how the file looked when it was opened; nil where SQLite looks after changes
 }
 
@@ -107,6 +108,9 @@ func (f *File) note(n geo.Notice) { f.notices = append(f.notices, n) }
 
 // Tables lists what can be read, in the order of the file.
 func (f *File) Tables() []Table { return append([]Table(nil), f.tables...) }
+
+// Study reports whether the file is a study, whose tables are no layers as somebody delivered them.
+func (f *File) Study() bool { return f.study }
 
 // Notices tells what was found when the file was opened. Every Result repeats it.
 func (f *File) Notices() []geo.Notice { return append([]geo.Notice(nil), f.notices...) }
@@ -345,6 +349,7 @@ func (f *File) list(ctx context.Context) error {
 	if !real("gpkg_contents") {
 		return f.fault("not_geopackage", "it is a database, but not a GeoPackage: it has no table gpkg_contents", "export the layer as GeoPackage")
 	}
+	f.study = real("gt_schema")
 	shapes := map[string]geometryColumn{}
 	if real("gpkg_geometry_columns") {
 		if err := f.each(ctx, `SELECT table_name, column_name, geometry_type_name, srs_id FROM main.gpkg_geometry_columns`, 4, func(c []cell) error {

@@ -31,6 +31,7 @@ type stage struct {
 	filter  filter
 	plants  []string
 	content fyne.CanvasObject
+	tabs    *widgets.Tabs
 
 	grid                       *grid
 	count, hidden, unit, left  *widgets.Line
@@ -38,7 +39,8 @@ type stage struct {
 	plant, status, key, bounds *widget.Select
 	bound                      *fyne.Container // the row of the numeric filter
 	returns                    *returns
-	syncing                    bool // controls are set by the program
+	ground                     *groundHere // nil before its tab is shown
+	syncing                    bool        // controls are set by the program
 }
 
 // New makes the stage.
@@ -96,8 +98,14 @@ func (s *stage) Changed(ch core.Change) {
 		s.fillPlants()
 		s.showCount()
 	}
+	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.ground != nil {
+		s.ground.update()
+	}
 	if ch&core.LookChanged != 0 {
 		s.grid.setLook()
+		if s.ground != nil {
+			s.ground.picture.Repaint()
+		}
 	}
 	if ch&core.ShadeChanged != 0 {
 		s.grid.Refresh() // the head of the column says that the map shows it
@@ -118,12 +126,13 @@ func (s *stage) Content() fyne.CanvasObject {
 	s.count, s.hidden, s.unit, s.left = widgets.NewLine(""), widgets.Faint(""), widgets.Faint(""), widgets.Faint("")
 	s.left.Hide()
 	s.returns = newReturns(s.core)
-	tabs := widgets.NewTabs(
+	s.tabs = widgets.NewTabs(
 		widgets.Tab{Text: "Table", Make: s.table},
 		widgets.Tab{Text: "Energy return", Make: func() fyne.CanvasObject { return s.returns.body }},
+		widgets.Tab{Text: "The ground here", Make: func() fyne.CanvasObject { s.ground = newGroundHere(s.core); return s.ground.body }},
 		widgets.Tab{Text: "Not assessed", Make: s.notAssessed},
 	)
-	s.content = container.New(insets{12, 8, 12, 4}, container.NewBorder(container.NewVBox(widgets.Heading("Accounts"), space(0)), nil, nil, nil, tabs))
+	s.content = container.New(insets{12, 8, 12, 4}, container.NewBorder(container.NewVBox(widgets.Heading("Accounts"), space(0)), nil, nil, nil, s.tabs))
 	s.fillPlants()
 	s.showColumns()
 	s.grid.setLook()

@@ -48,6 +48,8 @@ type form struct {
 	only             *widget.Entry
 	systemAsked      bool // the user was asked about the coordinate system: what stands there now is an answer
 	edition, holder  *widget.Entry
+	named, licence   *widget.Entry // of a backdrop
+	namedBox         *fyne.Container
 	reason           *widget.Entry
 	fields           []*fieldRow
 	fieldBox         *fyne.Container
@@ -105,6 +107,9 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 	f.edition.SetPlaceHolder("edition or date of the data")
 	f.holder.SetPlaceHolder("who holds the data")
 	f.reason.SetPlaceHolder("for the journal")
+	f.named, f.licence = widget.NewEntry(), widget.NewEntry()
+	f.named.SetPlaceHolder("needed; as © Survey office 2031. It stands in the corner of the map")
+	f.licence.SetPlaceHolder("what may be done with the picture; empty means not stated")
 	f.without = widget.NewCheck("Go on without the columns that are missing: what rests on them is unknown", nil)
 	f.without.Hide()
 	f.progress.Hide()
@@ -122,6 +127,8 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 		f.name.Disable()
 		f.complete.SetChecked(r.Complete)
 		f.holder.SetText(r.Holder)
+		f.named.SetText(r.Credit().Attribution)
+		f.licence.SetText(r.Credit().Licence)
 		f.swap.SetChecked(r.Swapped)
 		if in.CRS == "" && r.CRS != "OGC:CRS84" {
 			f.crs.SetText(r.CRS)
@@ -129,6 +136,9 @@ func newForm(s *Stage, in study.Import, replace string) *form {
 		role, _ := cat.Role(r.Role)
 		f.role.SetSelected(role.Title)
 		f.role.Disable()
+	} else if in.Picture() {
+		role, _ := cat.Role(study.BackdropRole)
+		f.role.SetSelected(role.Title)
 	} else if guess := study.ProposeRole(cat, in); guess != "" {
 		role, _ := cat.Role(guess)
 		f.role.SetSelected(role.Title)
@@ -157,8 +167,14 @@ func (f *form) open() {
 	if f.in.Layer == nil {
 		what = f.in.Base + ": a grid of values"
 	}
+	if f.made == "picture" {
+		what = fmt.Sprintf("%s: a picture of %d kB, kept in the study as it stands", f.in.Base, (len(f.in.Blob)+1023)/1024)
+	}
 	found := "The file says " + f.in.CRS + "."
-	if f.in.CRS == "" {
+	switch {
+	case f.in.CRS == "" && f.in.Layer == nil:
+		found = "The file does not say, so it is needed."
+	case f.in.CRS == "":
 		found = "The file does not say; empty means degrees."
 	}
 	form := container.New(columns{label: 150})
@@ -176,15 +192,24 @@ func (f *form) open() {
 		row("Coordinate system", "The system in which the coordinates of the file are.", f.crs)
 		row("", "", container.NewVBox(widgets.Faint(found), f.swap))
 	}
-	if f.made != "raster" {
+	if f.in.Layer == nil {
+		f.swap.Hide() // it is about the coordinates of features
+		f.namedBox = container.New(columns{label: 150}, widgets.NewLine("Named with it").Hinted("Who must be named where the picture is shown."), f.named, widgets.NewLine("Licence").Hinted("The appendix lists it."), f.licence)
+	}
+	if f.in.Layer != nil {
 		row("Only", "The part of the features that is added: columns with the values that count. Several are joined by or.", f.only)
 	}
-	row("Whole place", "Whether nothing found means that nothing is there.", f.complete)
-	row("", "", widgets.Faint("Ticked: where nothing is drawn, nothing is there."))
+	if f.made != "picture" {
+		row("Whole place", "Whether nothing found means that nothing is there.", f.complete)
+		row("", "", widgets.Faint("Ticked: where nothing is drawn, nothing is there."))
+	}
 	row("Edition", "", f.edition)
 	row("Holder", "", f.holder)
 	row("", "", f.usual)
 	row("Reason", "", f.reason)
+	if f.namedBox != nil {
+		form = container.NewVBox(form, f.namedBox)
+	}
 	body := container.NewVBox(widgets.Faint(what), gap(2), form, gap(4), f.fieldBox, f.sample, f.personalBox)
 	f.scroll = container.NewVScroll(container.New(layout.NewCustomPaddedLayout(0, 0, 0, 14), body))
 	f.ok = widget.NewButton("Add", f.add)
@@ -245,6 +270,9 @@ func (f *form) roleChosen() {
 	f.personalBox.RemoveAll()
 	f.fields = nil
 	role, ok := f.chosen()
+	if f.namedBox != nil {
+		visible(f.namedBox, ok && role.Name == study.BackdropRole)
+	}
 	if !ok {
 		f.purpose.Hide()
 		f.showSample()
@@ -467,7 +495,10 @@ func (f *form) answers() (in study.Import, unanswered string) {
 	slices.Sort(in.Personal)
 	in.AcceptProposals = f.without.Visible() && f.without.Checked
 	if f.in.Layer == nil && in.CRSOption == "" && in.CRS == "" {
-		open = append(open, "In which coordinate system are the corners of the grid?")
+		open = append(open, "In which coordinate system are the corners of the "+map[bool]string{true: "picture", false: "grid"}[in.Role == study.BackdropRole]+"?")
+	}
+	if in.Role == study.BackdropRole && strings.TrimSpace(f.named.Text) == "" {
+		open = append(open, "Who must be named where the picture is shown?")
 	}
 	return in, strings.Join(open, "\n")
 }
@@ -487,6 +518,7 @@ func (f *form) add() {
 	f.progress.Start()
 	var rec study.LayerRecord
 	var failed error
+	credit := study.Credit{Attribution: f.named.Text, Licence: f.licence.Text}
 	parts := f.s.c.Parts
 	c := f.s.c
 	c.Session.Edit(func(ctx context.Context, s *study.Study) error {
@@ -495,7 +527,11 @@ func (f *form) add() {
 		defer context.AfterFunc(stopped, cancel)()
 		tools, done := parts.Tools()
 		defer done()
-		rec, failed = s.AddLayer(ctx, in, tools)
+		if in.Role == study.BackdropRole {
+			rec, failed = s.AddBackdrop(ctx, in, credit, tools)
+		} else {
+			rec, failed = s.AddLayer(ctx, in, tools)
+		}
 		return nil // shown in the form, so that no answer is lost
 	}, func(err error) { // told whatever happened, since the form waits for it
 		c.Do(func() {

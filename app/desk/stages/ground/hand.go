@@ -28,9 +28,12 @@ var handVerbs = []struct{ verb, words string }{
 type handForm struct {
 	s        *Stage
 	rec      study.LayerRecord
+	newRole  string   // of a layer that the change begins; empty for one that is there
+	kind     geo.Kind // of a new feature; NoGeometry where the layer's role leaves it open
 	verb     *widget.Select
 	feature  *widget.Entry
 	place    *widget.Entry
+	draw     *widget.Button
 	field    *widget.Select
 	value    *widget.Entry
 	reason   *widget.Entry
@@ -47,7 +50,6 @@ func newHandForm(s *Stage, rec study.LayerRecord) *handForm {
 		words[i] = v.words
 	}
 	f.verb = widget.NewSelect(words, func(string) { f.fits() })
-	f.feature.SetPlaceHolder("its identifier, as the map and the notices name it")
 	f.place.SetPlaceHolder("longitude, latitude; several for a line or an outline")
 	f.reason.SetPlaceHolder("needed; it goes into the appendix")
 	role, _ := s.c.Parts.Catalog.Role(rec.Role)
@@ -61,6 +63,7 @@ func newHandForm(s *Stage, rec study.LayerRecord) *handForm {
 	f.field = widget.NewSelect(titles, nil)
 	f.field.SetSelectedIndex(0)
 	f.value.SetPlaceHolder("its value")
+	f.draw = widget.NewButton("Draw…", f.sketch)
 	f.ok = widget.NewButton("Change it", f.commit)
 	f.ok.Importance = widget.HighImportance
 	f.back = widget.NewButton("Leave it", func() { f.dialog.Hide() })
@@ -81,7 +84,9 @@ func (f *handForm) fits() {
 		}
 	}
 	verb := handVerbs[max(f.verb.SelectedIndex(), 0)].verb
+	f.feature.SetPlaceHolder(map[bool]string{true: "may stay empty: a name is found for it", false: "its identifier, as the map and the notices name it"}[verb == study.HandAdd])
 	able(f.place, verb == study.HandMove || verb == study.HandAdd)
+	able(f.draw, verb == study.HandMove || verb == study.HandAdd)
 	able(f.field, verb == study.HandSet || verb == study.HandAdd)
 	able(f.value, verb == study.HandSet || verb == study.HandAdd)
 }
@@ -97,16 +102,25 @@ func (f *handForm) open() {
 	form.Add(widgets.NewLine("What to do"))
 	form.Add(f.verb)
 	row("Feature", f.feature)
-	row("Place", f.place)
+	form.Add(widgets.NewLine("Place"))
+	form.Add(container.NewBorder(nil, nil, nil, f.draw, f.place))
 	form.Add(widgets.NewLine("Field"))
 	form.Add(widgets.Fields(6, []float32{170, 0}, f.field, f.value))
 	row("Why", f.reason)
 	foot := container.NewBorder(nil, nil, nil, container.NewHBox(f.back, f.ok))
-	words := widgets.NewText("The change is kept with its reason, undone like any other, and made again when the layer is replaced by a new edition.")
-	f.dialog = dialog.NewCustomWithoutButtons("Change "+f.rec.Name+" by hand", container.NewBorder(nil, foot, nil, nil, container.NewVBox(words, form, f.said)), f.s.c.Window)
+	words := widgets.NewText("The change is kept with its reason, undone like any other, and made again when the layer is replaced by a new edition. A place can be typed, or drawn on the map by mouse or by keys: arrows move a cross, with Shift in small steps, and Space sets a point.")
+	title := "Change " + f.rec.Name + " by hand"
+	if f.newRole != "" {
+		title = "Begin the layer " + f.rec.Name + " by hand"
+	}
+	f.dialog = dialog.NewCustomWithoutButtons(title, container.NewBorder(nil, foot, nil, nil, container.NewVBox(words, form, f.said)), f.s.c.Window)
 	f.dialog.Resize(dialogSize(f.s.c, 620, 420))
 	f.dialog.Show()
-	f.s.c.Window.Canvas().Focus(f.feature)
+	first := f.feature
+	if f.place.Text != "" { // it was drawn
+		first = f.reason
+	}
+	f.s.c.Window.Canvas().Focus(first)
 }
 
 // edit gives the change that the form asks for.
@@ -125,7 +139,13 @@ func (f *handForm) edit() (study.HandEdit, error) {
 		}
 		h.Geometry = &g
 	}
-	if i := f.field.SelectedIndex(); i > 0 && (h.Verb == study.HandSet || h.Verb == study.HandAdd) {
+	if i := f.field.SelectedIndex(); i > 0 && h.Verb == study.HandAdd && strings.TrimSpace(f.value.Text) == "" {
+		role, _ := f.s.c.Parts.Catalog.Role(f.rec.Role)
+		if field, _ := role.Field(f.fields[i]); field.Required {
+			return h, fmt.Errorf("write the value of the field %s, which %s need", fieldWords(field), role.Title)
+		}
+	}
+	if i := f.field.SelectedIndex(); i > 0 && (h.Verb == study.HandSet || h.Verb == study.HandAdd && strings.TrimSpace(f.value.Text) != "") {
 		h.Values = map[string]string{f.fields[i]: strings.TrimSpace(f.value.Text)}
 	}
 	return h, nil
@@ -155,13 +175,13 @@ func (f *handForm) commit() {
 		return
 	}
 	var failed error
-	parts, name := f.s.c.Parts, f.rec.Name
+	parts, name, newRole := f.s.c.Parts, f.rec.Name, f.newRole
 	c := f.s.c
 	f.ok.Disable()
 	c.Session.Edit(func(ctx context.Context, s *study.Study) error {
 		tools, done := parts.Tools()
 		defer done()
-		_, failed = s.EditByHand(ctx, name, "", tools, h)
+		_, failed = s.EditByHand(ctx, name, newRole, tools, h)
 		return nil // said in the form, so that nothing typed is lost
 	}, func(err error) {
 		c.Do(func() {

@@ -98,7 +98,7 @@ func (s *Stage) read(ctx context.Context, j job) (in study.Import, err error) {
 	}
 	if file.Where == "" {
 		shown := *file
-		shown.Cure = strings.TrimSuffix(shown.Cure, ".") + ". Files that are read: GeoJSON (.geojson, .json, .geojsonl), GeoPackage (.gpkg), shapefile (.shp with the files beside it, or .zip), tables (.csv, .tsv, .txt, .xlsx), grids of values (.tif, .asc, .hgt)"
+		shown.Cure = strings.TrimSuffix(shown.Cure, ".") + ". Files that are read: GeoJSON (.geojson, .json, .geojsonl), GeoPackage (.gpkg), shapefile (.shp with the files beside it, or .zip), tables (.csv, .tsv, .txt, .xlsx), grids of values (.tif, .asc, .hgt), pictures (.png, .jpg with a world file, .tif)"
 		return in, &shown
 	}
 	return in, err

@@ -32,6 +32,7 @@ type layersPane struct {
 	replace *widget.Button
 	takeOut *widget.Button
 	byHand  *widget.Button
+	draw    *widget.Button
 	write   *widget.Button
 
 	shown  []shownLayer
@@ -90,7 +91,8 @@ func newLayersPane(s *Stage) *layersPane {
 		}
 	}
 	buttons := container.NewHBox(add, p.replace, p.takeOut)
-	more := container.NewHBox(p.byHand, p.write)
+	p.draw = widget.NewButton("Draw…", p.chooseDrawing)
+	more := container.NewHBox(p.draw, p.byHand, p.write)
 	head := container.NewVBox(buttons, more, gap(2), p.total)
 	p.content = padded(container.NewBorder(head, nil, nil, nil, p.list))
 	p.changed()
@@ -239,6 +241,9 @@ func (p *layersPane) details(l shownLayer) []pair {
 			}
 		}
 	}
+	if r.Role == study.BackdropRole {
+		out = append(out[:len(out)-1], pair{"Named with it", or(r.Credit().Attribution, "nobody"), "Who must be named where the picture is shown."}, pair{"Licence", or(r.Credit().Licence, "not stated"), "What may be done with the picture."})
+	}
 	personal := "none"
 	if len(r.Personal) > 0 {
 		personal = strings.Join(r.Personal, ", ")
@@ -266,7 +271,7 @@ func fieldWords(f study.RoleField) string {
 }
 
 // readable are the endings of files that can be added.
-var readable = []string{".geojson", ".json", ".geojsonl", ".geojsons", ".gpkg", ".shp", ".zip", ".csv", ".txt", ".tsv", ".xlsx", ".tif", ".tiff", ".asc", ".hgt"}
+var readable = []string{".geojson", ".json", ".geojsonl", ".geojsons", ".gpkg", ".shp", ".zip", ".csv", ".txt", ".tsv", ".xlsx", ".tif", ".tiff", ".asc", ".hgt", ".png", ".jpg", ".jpeg"}
 
 // choose asks for a file and adds it, or puts it in place of a layer.
 func (p *layersPane) choose(replace string) {
@@ -340,6 +345,9 @@ func ledgerWords(l study.Ledger) string {
 var kinds = map[string][2]string{"point": {"point", "points"}, "line": {"line", "lines"}, "polygon": {"area", "areas"}, "table": {"row", "rows"}, "raster": {"grid", "grids"}}
 
 func countWords(r study.LayerRecord) string {
+	if r.Role == study.BackdropRole {
+		return core.Counted(r.Count, "picture", "pictures")
+	}
 	k, ok := kinds[r.Kind]
 	if !ok {
 		k = [2]string{"feature", "features"}

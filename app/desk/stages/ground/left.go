@@ -69,7 +69,7 @@ func newLeftPane(c *core.Core) *leftPane {
 	p.clear = widget.NewButton("Clear the map", func() { c.ShowZones(nil) })
 	p.zones = widget.NewList(func() int { return len(p.shown) }, func() fyne.CanvasObject { return widgets.NewLine("") }, func(i widget.ListItemID, o fyne.CanvasObject) {
 		z := p.shown[i]
-		o.(*widgets.Line).Set(fmt.Sprintf("%d   %s ha   near %.4f N, %.4f E", i+1, hectares(z.Ha), z.Centre.Lat, z.Centre.Lon))
+		o.(*widgets.Line).Set(zoneWords(i, z))
 	})
 	p.zones.HideSeparators = true
 	p.zones.OnSelected = func(i widget.ListItemID) {
@@ -452,4 +452,9 @@ func saved(fail func(what string, err error), then func(path string)) func(fyne.
 			then(path)
 		}
 	}
+}
+
+// zoneWords writes a piece of the land left in a line of the list.
+func zoneWords(i int, z run.Zone) string {
+	return fmt.Sprintf("%d   %s ha   near %s", i+1, hectares(z.Ha), present.Place(z.Centre))
 }

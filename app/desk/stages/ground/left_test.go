@@ -39,6 +39,11 @@ func TestLandLeft(t *testing.T) {
 	if !strings.Contains(p.said.Text, "are left, in") {
 		t.Errorf("it says %q", p.said.Text)
 	}
+	for i, z := range l.Zones { // the island lies west of Greenwich
+		if words := zoneWords(i, z); !strings.Contains(words, " W") || !strings.Contains(words, " N") || strings.ContainsAny(words, "-−") {
+			t.Fatalf("a zone is told as %q", words)
+		}
+	}
 	p.zones.Select(0)
 	if n := len(b.places); n == 0 || b.places[n-1] != l.Zones[0].Centre {
 		t.Errorf("shown %v, want %v", b.places, l.Zones[0].Centre)

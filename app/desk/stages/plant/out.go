@@ -28,6 +28,7 @@ type out struct {
 	all     []run.Out // of the option
 	rows    []run.Out // that the filter lets through
 	chosen  string    // site
+	fitted  int       // candidates of the option with a plant
 	of      *run.Results
 	id      string
 	looking string // site that is being looked at
@@ -103,8 +104,7 @@ func (o *out) update() {
 			if o.of != results || o.id != id {
 				return
 			}
-			o.all = list
-			o.head.Set(fmt.Sprintf("%d candidates are out, %d have a plant. What takes most of each site:", len(list), fitted))
+			o.all, o.fitted = list, fitted
 			o.search()
 			at := slices.IndexFunc(list, func(x run.Out) bool { return x.Site == o.chosen })
 			if at < 0 {
@@ -126,6 +126,13 @@ func (o *out) search() {
 				o.rows = append(o.rows, x)
 			}
 		}
+	}
+	words := fmt.Sprintf("%d candidates are out, %d have a plant. What takes most of each site:", len(o.all), o.fitted)
+	if want != "" {
+		words = fmt.Sprintf("%d of the %d candidates that are out fit what is searched for. What takes most of each site:", len(o.rows), len(o.all))
+	}
+	if o.of != nil {
+		o.head.Set(words)
 	}
 	o.list.UnselectAll()
 	o.list.Refresh()

@@ -1,6 +1,7 @@
 package plant
 
 import (
+	"fmt"
 	"strings"
 	"testing"
 
@@ -25,7 +26,17 @@ func TestOut(t *testing.T) {
 			t.Errorf("%s: %s", x.Site, outWords(x))
 		}
 	}
+	if want := fmt.Sprintf("%d of the %d candidates", len(o.rows), len(o.all)); len(o.rows) == 0 || len(o.rows) == len(o.all) || !strings.HasPrefix(o.head.Text, want) {
+		t.Errorf("with a search the head says %q, want %q", o.head.Text, want)
+	}
+	o.filter.SetText("nothing is called so")
+	if !strings.HasPrefix(o.head.Text, "0 of the ") {
+		t.Errorf("where nothing fits, the head says %q", o.head.Text)
+	}
 	o.filter.SetText("")
+	if want := fmt.Sprintf("%d candidates are out", len(o.all)); !strings.HasPrefix(o.head.Text, want) {
+		t.Errorf("without a search the head says %q", o.head.Text)
+	}
 	at := -1
 	for i, x := range o.rows {
 		if x.Status == run.NoRoom && len(x.Rules) > 0 && !x.Rules[0].TakesAll {

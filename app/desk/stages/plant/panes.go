@@ -10,6 +10,7 @@ import (
 	"fyne.io/fyne/v2/container"
 	"fyne.io/fyne/v2/widget"
 
+	"groundtally/app/desk/chartview"
 	"groundtally/app/desk/widgets"
 	"groundtally/app/present"
 	"groundtally/app/run"
@@ -372,11 +373,11 @@ type fitted struct {
 	words       *widget.Label
 	lines       *fyne.Container
 	lossHead    *widgets.Line
-	loss, taken *picture
+	loss, taken *chartview.Picture
 	takenHead   *widgets.Line
 	monthHead   *widgets.Line
 	monthWords  *widgets.Line
-	month       *picture
+	month       *chartview.Picture
 	months      *run.Candidate // whose months are shown or asked for
 }
 
@@ -385,8 +386,8 @@ func newFitted(s *stage) *fitted {
 		monthHead: widgets.Part("Energy at the plant by month"), monthWords: widgets.Faint("")}
 	background := func(do func()) { s.background(do) }
 	grew := func() { f.body.Refresh() }
-	f.loss, f.taken = newPicture(s.core, background, grew), newPicture(s.core, background, grew)
-	f.month = newPicture(s.core, background, grew)
+	f.loss, f.taken = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
+	f.month = chartview.New(s.core, background, grew)
 	f.box = container.NewVBox(f.title, flush(f.words), f.lines, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, space(6), flush(caption(caution)))
 	f.body = container.NewVScroll(container.New(insets{2, 6, 16, 8}, f.box))
 	return f
@@ -430,8 +431,8 @@ func (f *fitted) update() {
 	if c == nil {
 		f.title.Set("No candidate of this option is chosen")
 		f.words.SetText("Choose a site on the map or in the table of Accounts, then come back.")
-		f.loss.show(nil)
-		f.taken.show(nil)
+		f.loss.Set(nil)
+		f.taken.Set(nil)
 		f.body.Refresh()
 		return
 	}
@@ -448,8 +449,8 @@ func (f *fitted) update() {
 	}
 	f.words.SetText(text + ".")
 	f.fill(c)
-	f.taken.show(landOf(c))
-	f.loss.show(lossOf(c))
+	f.taken.Set(landOf(c))
+	f.loss.Set(lossOf(c))
 	f.askMonths(c)
 	f.body.Refresh()
 }
@@ -460,7 +461,7 @@ func (f *fitted) askMonths(c *run.Candidate) {
 		return
 	}
 	f.months = c
-	f.month.show(nil)
+	f.month.Set(nil)
 	f.monthWords.Set("")
 	if c.Status != run.Fitted {
 		return
@@ -480,7 +481,7 @@ func (f *fitted) askMonths(c *run.Candidate) {
 			} else {
 				f.monthWords.Set("Of the year that the yield rests on; before the bias of forecasts and the losses of the connection.")
 			}
-			f.month.show(do)
+			f.month.Set(do)
 			f.body.Refresh()
 		})
 	})

@@ -9,6 +9,7 @@ import (
 	"fyne.io/fyne/v2"
 	"fyne.io/fyne/v2/test"
 
+	"groundtally/app/desk/chartview"
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/desktest"
 	"groundtally/app/desk/widgets"
@@ -90,8 +91,8 @@ func painted(b *desktest.Bench, s *stage) {
 	b.T.Helper()
 	b.Until("the charts are painted", func() bool {
 		ok := true
-		for _, p := range []*picture{s.fitted.loss, s.fitted.taken} {
-			ok = ok && (p.scene == nil || p.image.Image.Bounds().Dx() >= int(p.scene.Width) && p.image.Image.Bounds().Dy() >= int(p.scene.Height)-1)
+		for _, p := range []*chartview.Picture{s.fitted.loss, s.fitted.taken} {
+			ok = ok && (p.Scene() == nil || p.Painted().Bounds().Dx() >= int(p.Scene().Width) && p.Painted().Bounds().Dy() >= int(p.Scene().Height)-1)
 		}
 		return ok
 	})
@@ -552,19 +553,19 @@ func TestFittedShowsTheCandidate(t *testing.T) {
 	s.choose("wind")
 	s.tabs.Choose(tabFitted)
 	b.Core.Choose()
-	if s.fitted.candidate() != nil || s.fitted.loss.scene != nil {
+	if s.fitted.candidate() != nil || s.fitted.loss.Scene() != nil {
 		t.Error("without a chosen candidate something is shown")
 	}
 	s.chooseBest()
 	painted(b, s)
 	c := b.Core.Chosen()[0]
-	if s.fitted.title.Text != b.Core.CandidateTitle(c) || s.fitted.loss.scene == nil || s.fitted.taken.scene == nil {
+	if s.fitted.title.Text != b.Core.CandidateTitle(c) || s.fitted.loss.Scene() == nil || s.fitted.taken.Scene() == nil {
 		t.Fatalf("shown is %q", s.fitted.title.Text)
 	}
 	said := map[string]bool{}
 	p := s.fitted.loss
-	for y := 0.0; y < p.scene.Height; y += 4 {
-		if _, words := raster.Hit(p.scene, p.scene.Width/2, y); words != "" {
+	for y := 0.0; y < p.Scene().Height; y += 4 {
+		if _, words := raster.Hit(p.Scene(), p.Scene().Width/2, y); words != "" {
 			said[words] = true
 		}
 	}
@@ -579,7 +580,7 @@ func TestFittedShowsTheCandidate(t *testing.T) {
 	}
 	s.chooseBest()
 	b.Until("the months of sun are drawn", func() bool {
-		return s.fitted.month.scene != nil && strings.HasPrefix(s.fitted.monthWords.Text, "Of the year")
+		return s.fitted.month.Scene() != nil && strings.HasPrefix(s.fitted.monthWords.Text, "Of the year")
 	})
 }
 

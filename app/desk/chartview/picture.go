@@ -1,4 +1,4 @@
-package plant
+package chartview
 
 import (
 	"image"
@@ -15,9 +15,9 @@ import (
 	"groundtally/app/draw/raster"
 )
 
-// picture shows a chart as wide as there is room, painted off the window's goroutine, with the words of
+// Picture shows a chart as wide as there is room, painted off the window's goroutine, with the words of
 // what the pointer rests on.
-type picture struct {
+type Picture struct {
 	widget.BaseWidget
 	core *core.Core
 	run  func(func())                                    // off the window's goroutine
@@ -29,21 +29,26 @@ type picture struct {
 	job   int // of the newest painting
 }
 
-func newPicture(c *core.Core, run func(func()), grew func()) *picture {
-	p := &picture{core: c, run: run, grew: grew, image: canvas.NewImageFromImage(image.NewRGBA(image.Rect(0, 0, 1, 1)))}
+// New makes a picture without a chart. Run does its work off the window's goroutine, grew is told when the height
+// changes.
+func New(c *core.Core, run func(func()), grew func()) *Picture {
+	p := &Picture{core: c, run: run, grew: grew, image: canvas.NewImageFromImage(image.NewRGBA(image.Rect(0, 0, 1, 1)))}
 	p.image.FillMode = canvas.ImageFillStretch
 	p.ExtendBaseWidget(p)
 	return p
 }
 
-// show draws something else; nil shows nothing.
-func (p *picture) show(do func(pal draw.Palette, width float64) *draw.Scene) {
+// Set draws something else; nil shows nothing.
+func (p *Picture) Set(do func(pal draw.Palette, width float64) *draw.Scene) {
 	p.make = do
 	p.draw()
 }
 
+// Repaint paints the chart anew, in another look for one.
+func (p *Picture) Repaint() { p.draw() }
+
 // Resize implements fyne.CanvasObject: another width is another picture.
-func (p *picture) Resize(s fyne.Size) {
+func (p *Picture) Resize(s fyne.Size) {
 	was := p.Size().Width
 	p.BaseWidget.Resize(s)
 	if s.Width != was {
@@ -51,14 +56,20 @@ func (p *picture) Resize(s fyne.Size) {
 	}
 }
 
-func (p *picture) height() float32 {
+// Scene gives what is shown; nil for nothing.
+func (p *Picture) Scene() *draw.Scene { return p.scene }
+
+// Painted gives the newest picture that was painted.
+func (p *Picture) Painted() image.Image { return p.image.Image }
+
+func (p *Picture) height() float32 {
 	if p.scene == nil {
 		return 0
 	}
 	return float32(p.scene.Height)
 }
 
-func (p *picture) draw() {
+func (p *Picture) draw() {
 	p.job++
 	was := p.height()
 	width := p.Size().Width
@@ -85,10 +96,10 @@ func (p *picture) draw() {
 }
 
 // MouseIn implements desktop.Hoverable.
-func (p *picture) MouseIn(e *desktop.MouseEvent) { p.MouseMoved(e) }
+func (p *Picture) MouseIn(e *desktop.MouseEvent) { p.MouseMoved(e) }
 
 // MouseMoved implements desktop.Hoverable.
-func (p *picture) MouseMoved(e *desktop.MouseEvent) {
+func (p *Picture) MouseMoved(e *desktop.MouseEvent) {
 	words := ""
 	if p.scene != nil {
 		_, words = raster.Hit(p.scene, float64(e.Position.X), float64(e.Position.Y))
@@ -97,18 +108,18 @@ func (p *picture) MouseMoved(e *desktop.MouseEvent) {
 }
 
 // MouseOut implements desktop.Hoverable.
-func (p *picture) MouseOut() { p.say("", fyne.Position{}) }
+func (p *Picture) MouseOut() { p.say("", fyne.Position{}) }
 
-func (p *picture) say(words string, at fyne.Position) {
+func (p *Picture) say(words string, at fyne.Position) {
 	if widgets.Explainer != nil {
 		widgets.Explainer(p, words, at)
 	}
 }
 
 // CreateRenderer implements fyne.Widget.
-func (p *picture) CreateRenderer() fyne.WidgetRenderer { return &pictureRenderer{p} }
+func (p *Picture) CreateRenderer() fyne.WidgetRenderer { return &pictureRenderer{p} }
 
-type pictureRenderer struct{ p *picture }
+type pictureRenderer struct{ p *Picture }
 
 func (r *pictureRenderer) Layout(s fyne.Size) {
 	// A chart has a least width; what is narrower sees its left part.

@@ -1,0 +1,2 @@
+// Package chartview shows charts in the window.
+package chartview

@@ -1,0 +1,217 @@
+package run
+
+import (
+	"fmt"
+	"math"
+
+	"groundtally/geo/crs"
+	"groundtally/geo/terrain"
+	"groundtally/scoring/solar"
+)
+
+// lie is how a site lies to the sun, in steps: sites that lie alike share a solar year. The steps move a year's
+// yield by less than 0.2 % (TestStepsOfTheLie).
+type lie struct {
+	slope   uint8                  // of the mean ground, in slopeStepDeg
+	aspect  uint8                  // where it falls to from true north, in aspectStepDeg; 0 on level ground
+	horizon [horizonAzimuths]uint8 // height over the horizontal every 5 degrees from true north, in horizonStepDeg
+	notice  string                 // what is not known
+}
+
+const (
+	slopeStepDeg   = 0.2
+	aspectStepDeg  = 2.0
+	horizonStepDeg = 0.5
+)
+
+// lie gives how a site lies. Without heights the ground counts as level and the horizon as flat, which the notice
+// says.
+func (f *fitter) lie(s site) (lie, error) {
+	if f.wide == nil {
+		return lie{notice: "horizon_flat"}, nil
+	}
+	f.mu.Lock()
+	known, done := f.lies[s.id]
+	f.mu.Unlock()
+	if done {
+		return known, nil
+	}
+	t, err := f.wide.get()
+	if err != nil {
+		return lie{}, err
+	}
+	out, err := lieOn(t, f.w.frame, s)
+	if err != nil {
+		return lie{}, err
+	}
+	f.mu.Lock()
+	f.lies[s.id] = out
+	f.mu.Unlock()
+	return out, nil
+}
+
+func lieOn(t *terrain.Grid, frame crs.Frame, s site) (out lie, err error) {
+	p := middle(s).Parts[0][0][0]
+	if _, ok := t.Sample(p); !ok {
+		return lie{notice: "horizon_flat"}, nil
+	}
+	turn, err := frame.ConvergenceDeg(p)
+	if err != nil {
+		return lie{}, err
+	}
+	angles, known, err := t.Horizon(p, eyeM, horizonAzimuths, horizonReachM)
+	if err != nil {
+		return lie{}, siteError(s, err)
+	}
+	for i := range angles {
+		if known[i] < 1 {
+			// Beyond the heights that are known, the land counts as no higher than what is seen of it.
+			out.notice = "horizon_partly"
+		}
+		if !(angles[i] > 0) || known[i] == 0 {
+			angles[i] = 0
+		}
+	}
+	h, err := solar.NewHorizon(angles)
+	if err != nil {
+		return lie{}, siteError(s, err)
+	}
+	for i := range out.horizon {
+		out.horizon[i] = uint8(math.Round(h.HeightDeg(float64(i)*360/horizonAzimuths-turn) / horizonStepDeg))
+	}
+	sum, err := t.Over(s.geom, 90)
+	if err != nil {
+		return lie{}, siteError(s, err)
+	}
+	if sum.HasSlope && sum.HasAspect {
+		// Where the ground falls several ways, the mean ground is less steep than its parts.
+		slope := math.Atan(math.Tan(sum.MeanSlopeDeg*math.Pi/180)*sum.AspectLength) * 180 / math.Pi
+		if out.slope = uint8(math.Round(min(slope, mostSlopeDeg) / slopeStepDeg)); out.slope > 0 {
+			a, err := frame.TrueAzimuthDeg(p, sum.MeanAspectDeg)
+			if err != nil {
+				return lie{}, err
+			}
+			out.aspect = uint8(int(math.Round(a/aspectStepDeg)) % (360 / aspectStepDeg))
+		}
+	}
+	return out, nil
+}
+
+// mostSlopeDeg is the steepest ground that the engine takes.
+const mostSlopeDeg = 45
+
+// on lays a plant on the ground.
+func (l *lie) on(m *solar.Mount) error {
+	m.SlopeDeg, m.AspectDeg = float64(l.slope)*slopeStepDeg, float64(l.aspect)*aspectStepDeg
+	if l.notice == "horizon_flat" {
+		return nil
+	}
+	heights := make([]float64, len(l.horizon))
+	for i, h := range l.horizon {
+		heights[i] = float64(h) * horizonStepDeg
+	}
+	var err error
+	m.Horizon, err = solar.NewHorizon(heights)
+	return err
+}
+
+// Solar years and climates that are kept at a time.
+const (
+	mostYears    = 4096
+	mostClimates = 512
+)
+
+// solarYear is the year of a plant.
+type solarYear struct {
+	y   solar.YearResult
+	bad bool   // a setting of the plant is out of range
+	why string // the numbers of grids are no sunlight
+}
+
+// yearAt gives the solar year of an option on a site with the sunlight that serves it. bad says that a setting of
+// the plant is out of range.
+func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad bool, err error) {
+	if here, err = f.sunAt(s); err != nil || here.sunlight == nil {
+		return y, here, false, err
+	}
+	lat, err := f.siteLat(s)
+	if err != nil {
+		return y, here, false, err
+	}
+	l, err := f.lie(s)
+	if err != nil {
+		return y, here, false, err
+	}
+	k := newKey("solar year", 2)
+	k.text(o.id)
+	k.num(lat)
+	k.sunlight(here.sunlight)
+	if here.hours != nil {
+		k.text(here.hours.key)
+	}
+	k.int(int(l.slope))
+	k.int(int(l.aspect))
+	k.text(l.notice)
+	k.text(string(l.horizon[:]))
+	key := k.sum()
+	f.mu.Lock()
+	year, done := f.years[key]
+	f.mu.Unlock()
+	if !done {
+		year = f.year(o, lat, here, &l)
+		f.mu.Lock()
+		if len(f.years) >= mostYears {
+			clear(f.years)
+		}
+		f.years[key] = year
+		f.mu.Unlock()
+	}
+	if year.why != "" {
+		return y, sunHere{why: year.why}, false, nil
+	}
+	return year.y, here, year.bad, nil
+}
+
+func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie) solarYear {
+	var c *solar.Climate
+	var err error
+	if s.hours != nil {
+		c = s.hours.climate
+	} else if c, err = f.climate(latDeg, s.sunlight); err != nil {
+		return solarYear{why: fmt.Sprintf("what stands at the site in the %s is no sunlight: %v", s.sunlight.source, err)}
+	}
+	p, err := f.w.solarPlant(o, latDeg)
+	if err != nil {
+		return solarYear{bad: true}
+	}
+	if err := l.on(&p.Mount); err != nil {
+		return solarYear{bad: true}
+	}
+	y, err := c.Yield(p)
+	return solarYear{y: y, bad: err != nil}
+}
+
+// climate gives the sunlight spread over the hours of a latitude.
+func (f *fitter) climate(latDeg float64, s *sunlight) (*solar.Climate, error) {
+	k := newKey("solar climate", 1)
+	k.num(latDeg)
+	k.sunlight(s)
+	key := k.sum()
+	f.mu.Lock()
+	c, done := f.climates[key]
+	f.mu.Unlock()
+	if done {
+		return c, nil
+	}
+	c, err := solar.NewClimate(solar.ClimateInput{LatDeg: latDeg, LonDeg: f.w.frame.Centre().Lon, GHIKWhPerM2: s.ghi, DHIKWhPerM2: s.dhi, TempC: s.temp, Albedo: s.albedo})
+	if err != nil {
+		return nil, err
+	}
+	f.mu.Lock()
+	if len(f.climates) >= mostClimates {
+		clear(f.climates)
+	}
+	f.climates[key] = c
+	f.mu.Unlock()
+	return c, nil
+}
