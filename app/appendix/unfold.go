@@ -140,6 +140,9 @@ func (b *book) unfold(c *run.Candidate) unfolded {
 		if f.FencedHa > 0 {
 			parts = append(parts, hectares(f.FencedHa)+" ha inside the fence")
 		}
+		if words := present.PanelDensity(c.Technology, f.Modules, f.SolarKW, f.FencedHa); words != "" {
+			parts = append(parts, words)
+		}
 		u.Fit = strings.Join(append(parts, fmt.Sprintf("%.2f km of new track", f.TrackKm)), "; ")
 	}
 	u.Grid = "unknown: " + present.Reason("no_connection")

@@ -694,6 +694,9 @@ func (p *picture) mark() {
 		a, asked := p.around[cand.ID()]
 		if a != nil {
 			m.Buildable = []geo.LonLatGeometry{a.Buildable}
+			if !a.Rows.Empty() {
+				m.Rows = []geo.LonLatGeometry{a.Rows}
+			}
 			for _, k := range a.Kept {
 				m.Setbacks = append(m.Setbacks, tiles.Setback{Geometry: k.Features, RadiusM: k.DistanceM})
 			}

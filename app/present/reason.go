@@ -22,6 +22,7 @@ var reasons = map[string]string{
 	"fit_machines_needs_wind": "a number of machines was asked for, and this plant option has no turbine",
 
 	"one_part_without_room":   "only one of the plant's two parts finds room here",
+	"no_row_fits":             "the ground that is left has no room for a row of panels inside its fence",
 	"limit_below_one_machine": "what the fit allows is less than one machine",
 	"turbine_does_not_fit":    "the settings of the plant option do not fit the chosen turbine",
 	"plant_out_of_range":      "a setting of the plant option is outside the range of the method",

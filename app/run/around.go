@@ -9,6 +9,7 @@ import (
 	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/overlay"
+	"groundtally/geo/rows"
 	"groundtally/scoring"
 	"groundtally/scoring/units"
 )
@@ -23,6 +24,7 @@ type KeptFrom struct {
 // Surroundings are what a map shows around a candidate.
 type Surroundings struct {
 	Buildable geo.LonLatGeometry
+	Rows      geo.LonLatGeometry // ground plans of the rows of panels; empty where there are none
 	Kept      []KeptFrom
 }
 
@@ -37,7 +39,7 @@ type Surveyor struct {
 	mu     sync.Mutex
 	world  *world
 	sites  map[string]int
-	fitter *fitter // made when months are first asked for
+	fitter *fitter // made when months or rows are first asked for
 	wide   *world  // with heights as far as a horizon reaches
 }
 
@@ -77,8 +79,49 @@ func (s *Surveyor) Around(ctx context.Context, c *Candidate) (*Surroundings, err
 			out.Buildable.Parts = append(out.Buildable.Parts, ll.Parts...)
 			out.keep(rs, here)
 		}
+		if c.Fit != nil && c.Fit.Modules > 0 {
+			if out.Rows, err = s.rows(ctx, o, here, c.Fit); err != nil {
+				return nil, err
+			}
+		}
 	}
 	return out, nil
+}
+
+// rows lays the rows of a fitted plant again, for the map: a fit keeps their number and its fence, to a centimetre.
+func (s *Surveyor) rows(ctx context.Context, o option, here site, fit *Fit) (geo.LonLatGeometry, error) {
+	none := geo.LonLatGeometry{}
+	f, err := s.fitted(ctx)
+	if err != nil {
+		return none, err
+	}
+	p, ok, err := f.rowsOf(o, here)
+	if err != nil || !ok {
+		return none, err
+	}
+	fence, err := s.world.frame.Project(fit.Panels)
+	if err != nil {
+		return none, err
+	}
+	e := overlay.New()
+	defer closeEngine(e)
+	rs, err := p.in(e, fence, fit.Modules/p.across)
+	if err != nil {
+		return none, err
+	}
+	return s.world.frame.Unproject(rows.Polygons(rs, p.layout.DepthM))
+}
+
+// fitted makes the fitter where that was not done yet.
+func (s *Surveyor) fitted(ctx context.Context) (*fitter, error) {
+	if s.fitter == nil {
+		f, err := s.world.newFitter(ctx, s.cache)
+		if err != nil {
+			return nil, err
+		}
+		s.fitter = f
+	}
+	return s.fitter, nil
 }
 
 // site reads the layers where that was not done yet, and finds a candidate's site.
@@ -123,16 +166,15 @@ func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value,
 	if err != nil {
 		return out, err
 	}
-	if s.fitter == nil {
-		if s.fitter, err = s.world.newFitter(ctx, s.cache); err != nil {
-			return out, err
-		}
+	f, err := s.fitted(ctx)
+	if err != nil {
+		return out, err
 	}
 	for _, o := range s.world.options {
 		if o.id != c.Plant {
 			continue
 		}
-		y, sun, bad, err := s.fitter.yearAt(o, here)
+		y, sun, bad, err := f.yearAt(o, here)
 		switch {
 		case err != nil:
 			return out, err

@@ -20,7 +20,7 @@ import (
 )
 
 // fitEdition is raised when the digits of the step change.
-const fitEdition = 2
+const fitEdition = 3
 
 // fitResult is the plant fitted on a site.
 type fitResult struct {
@@ -32,6 +32,7 @@ type fitResult struct {
 	SolarKW        float64
 	SolarACKW      float64
 	FenceHa        float64
+	Modules        int
 	SpacingHa      float64 // union of the spacing ellipses inside the site
 	TotalHa        float64 // union of spacing ellipses and fence
 	WindMWh        yieldValue
@@ -525,8 +526,8 @@ func (j judge) Move(at []geo.XY, i int, p geo.XY) float64 {
 	return j.ev.Move(j.all(at), i, j.toTrue(p))
 }
 
-// fitSolar lays panels: the largest patches first, the last one cut by a line from south to north so
-// that no more ground is fenced than the power needs.
+// fitSolar lays rows of panels: the largest patches first, the last one cut so that little more ground is fenced
+// than the power needs.
 func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, limitKW, targetMWh float64, r *fitResult) error {
 	if o.fit == "machines" && !o.wind {
 		r.Status, r.Reason = NotComputed, "fit_machines_needs_wind"
@@ -535,12 +536,12 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	if g.BuildableM2 <= 0 {
 		return nil
 	}
-	eff, _ := o.num("module_efficiency")
-	gcr, _ := o.num("gcr")
-	share, _ := o.num("usable_share")
 	ratio, _ := o.num("dc_ac_ratio")
-	kwPerHa := solar.CapacityMWpPerHa(eff, gcr, share) * units.KWPerMW
-	if !(kwPerHa > 0) || !(ratio > 0) {
+	panels, ok, err := f.rowsOf(o, s)
+	if err != nil {
+		return err
+	}
+	if !ok || !(ratio > 0) {
 		r.Status, r.Reason = NotComputed, "plant_out_of_range"
 		return nil
 	}
@@ -592,18 +593,25 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 		r.Status, r.Reason = NotComputed, here.why
 		return nil
 	}
-	if limitKW <= 0 {
-		return nil
+	most := 0 // units of a row; no limit but the room
+	if !math.IsInf(limitKW, 1) {
+		if most = int(math.Floor(limitKW/panels.unitKW + 1e-9)); most <= 0 {
+			return nil
+		}
 	}
-	fence, ha, err := firstHectares(e, area, limitKW/kwPerHa)
+	laid, err := panels.fill(e, area, most)
 	if err != nil {
-		return fmt.Errorf("site %s: %w", s.id, err)
+		return siteError(s, err)
 	}
-	if ha <= 0 {
+	if laid.units == 0 {
+		if r.Reason == "" {
+			r.Reason = "no_row_fits"
+		}
 		return nil
 	}
-	r.Fence, r.FenceHa = fence, ha
-	r.SolarKW = ha * kwPerHa
+	r.Fence, r.FenceHa = laid.fence, laid.ha
+	r.SolarKW = float64(laid.units) * panels.unitKW
+	r.Modules = laid.units * panels.across
 	r.SolarACKW = r.SolarKW / ratio
 	if here.sunlight == nil {
 		return nil

@@ -127,12 +127,11 @@ func (s *Surveyor) NearestMiss(ctx context.Context, c *Candidate) ([]Relaxed, er
 	if err != nil {
 		return nil, err
 	}
-	if s.fitter == nil {
-		if s.fitter, err = s.world.newFitter(ctx, s.cache); err != nil {
-			return nil, err
-		}
+	f, err := s.fitted(ctx)
+	if err != nil {
+		return nil, err
 	}
-	m := misser{ctx: ctx, w: s.world, f: s.fitter, here: here, e: overlay.New()}
+	m := misser{ctx: ctx, w: s.world, f: f, here: here, e: overlay.New()}
 	defer closeEngine(m.e)
 	for _, o := range s.world.options {
 		if o.id == c.Plant {

@@ -46,6 +46,7 @@ type Fit struct {
 	Turbines  []geo.LonLat       `json:"turbines,omitempty"`
 	Panels    geo.LonLatGeometry `json:"panels"` // ground inside the fence
 	FencedHa  float64            `json:"fenced_ha,omitempty"`
+	Modules   int                `json:"modules,omitempty"`
 	SpacingHa float64            `json:"spacing_ha,omitempty"`
 	TrackKm   float64            `json:"track_km"`
 }

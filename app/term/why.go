@@ -111,6 +111,9 @@ func (c *call) candidate(cand *run.Candidate) {
 		if f.FencedHa > 0 {
 			line += fmt.Sprintf(", %.2f ha fenced", f.FencedHa)
 		}
+		if words := present.PanelDensity(cand.Technology, f.Modules, f.SolarKW, f.FencedHa); words != "" {
+			line += ", " + words
+		}
 		c.say("  %s", line)
 	}
 	if n := cand.Connection; n != nil {

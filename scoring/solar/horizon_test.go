@@ -142,3 +142,19 @@ func TestYieldBehindAHorizon(t *testing.T) {
 		t.Errorf("June behind the ridge keeps only %v", s)
 	}
 }
+
+// Between the steps of a tracker's turn the views are true to 0.001.
+func TestViewsOfATracker(t *testing.T) {
+	p := defaultPlant(Mount{Kind: SingleAxis, AxisAzimuthDeg: 170, MaxAngleDeg: 57, GCR: 0.35, WidthM: 4, ClearanceM: 1.5, SlopeDeg: 6, AspectDeg: 120})
+	p.Module = defaults(t).Module(true)
+	p.Mount.Horizon = horizon(t, southern(25))
+	v := newViewer(&p, 0.7)
+	for deg := -57.0; deg <= 57; deg += 0.7 {
+		v.sinR, v.cosR = math.Sincos(deg * radPerDeg)
+		n := v.frame.Normal(deg)
+		got, want := v.viewsAt(n), v.viewsOf(n)
+		if math.Abs(got.front-want.front) > 1e-3 || math.Abs(got.rear-want.rear) > 1e-3 {
+			t.Errorf("turned by %v: %+v, want %+v", deg, got, want)
+		}
+	}
+}

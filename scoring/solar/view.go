@@ -29,6 +29,7 @@ type viewer struct {
 	sky       float64 // share of the sky that an open plane sees past the horizon
 	skyLeft   float64 // the same over what it sees without horizon
 	flatSky   float64 // share of the sky that the horizontal sees
+	views     []views // of a tracker behind a horizon, every viewStepDeg from one end of its turn to the other
 	groundSky float64 // that the ground among rows sees
 	front     face
 	rear      face
@@ -59,10 +60,42 @@ func newViewer(p *Plant, phi float64) *viewer {
 	if m.Horizon != nil {
 		v.flatSky = m.Horizon.SkyView(sun.Vec{Z: 1})
 	}
+	if m.Kind == SingleAxis && m.Horizon != nil {
+		for i := range int(math.Ceil(2*m.MaxAngleDeg/viewStepDeg)) + 1 {
+			v.views = append(v.views, v.viewsOf(v.frame.Normal(float64(i)*viewStepDeg-m.MaxAngleDeg)))
+		}
+	}
 	if m.Kind != SingleAxis {
 		v.aim(math.Sincos(rotation * radPerDeg))
 	}
 	return v
+}
+
+// views are the shares of the sky that front and rear see past the horizon.
+type views struct{ front, rear float64 }
+
+// viewStepDeg is the step of rotation in which they are kept; they are drawn straight between, which is true to
+// 0.001.
+const viewStepDeg = 5
+
+func (v *viewer) viewsOf(n sun.Vec) (out views) {
+	h := v.p.Mount.Horizon
+	out.front = min((1+n.Z)/2, h.SkyView(n))
+	if v.phi > 0 {
+		out.rear = min((1-n.Z)/2, h.SkyView(sun.Vec{X: -n.X, Y: -n.Y, Z: -n.Z}))
+	}
+	return out
+}
+
+// viewsAt gives the views of panels with the normal n.
+func (v *viewer) viewsAt(n sun.Vec) views {
+	if len(v.views) < 2 {
+		return v.viewsOf(n)
+	}
+	x := (math.Atan2(v.sinR, v.cosR)/radPerDeg + v.p.Mount.MaxAngleDeg) / viewStepDeg
+	i := min(max(int(x), 0), len(v.views)-2)
+	a, b, part := v.views[i], v.views[i+1], x-float64(i)
+	return views{a.front + float64(part*(b.front-a.front)), a.rear + float64(part*(b.rear-a.rear))}
 }
 
 // aim turns the panels.
@@ -80,8 +113,10 @@ func (v *viewer) aim(sinR, cosR float64) {
 	v.groundSky = float64(view.GroundSky * v.flatSky)
 	openSky, openGnd := (1+v.cosTilt)/2, (1-v.cosTilt)/2
 	v.sky, v.skyLeft = openSky, 1
-	if h := v.p.Mount.Horizon; h != nil {
-		v.sky = min(openSky, h.SkyView(n))
+	var past views
+	if v.p.Mount.Horizon != nil {
+		past = v.viewsAt(n)
+		v.sky = past.front
 		v.skyLeft = left(v.sky, openSky)
 		openSky, openGnd = v.sky, 1-v.sky
 	}
@@ -94,9 +129,8 @@ func (v *viewer) aim(sinR, cosR float64) {
 	v.front.glassSky, v.front.glassGnd = glass.Sky(tilt), glass.Ground(tilt)
 	if v.phi > 0 {
 		rearSky, rearGnd := (1-v.cosTilt)/2, (1+v.cosTilt)/2
-		if h := v.p.Mount.Horizon; h != nil {
-			rearSky = min(rearSky, h.SkyView(sun.Vec{X: -n.X, Y: -n.Y, Z: -n.Z}))
-			rearGnd = 1 - rearSky
+		if v.p.Mount.Horizon != nil {
+			rearSky, rearGnd = past.rear, 1-past.rear
 		}
 		v.rear.sky = float64(rearSky * mix(gndLeft, 1, v.rowShare))
 		v.rear.ground = float64(rearGnd*mix(skyLeft, 1, v.rowShare)) * v.rearGnd

@@ -14,6 +14,7 @@ type Mark struct {
 	Parcels   []string // identifiers; their outlines are drawn
 	Buildable []geo.LonLatGeometry
 	Panels    []geo.LonLatGeometry // fences, or areas of panels
+	Rows      []geo.LonLatGeometry // rows of panels, drawn where they are wide enough to tell apart
 	Turbines  []geo.LonLat
 	Routes    []geo.LonLatGeometry // lines of the connection
 	Setbacks  []Setback
@@ -47,11 +48,15 @@ const (
 	markBuildable markKind = iota
 	markSetback
 	markPanels
+	markRows
 	markParcel
 	markRoute
 	markTurbine
 	markKinds
 )
+
+// rowsFromMPerPx is the scale from which rows of panels, some 8 m apart, are drawn.
+const rowsFromMPerPx = 2.5
 
 // Place projects marks to the plane of the ground.
 func (g *Ground) Place(marks []Mark) *Placed {
@@ -74,6 +79,14 @@ func (g *Ground) Place(marks []Mark) *Placed {
 		}
 		for _, b := range m.Panels {
 			put(markPanels, project(g.plane, b), 0)
+		}
+		for _, r := range m.Rows {
+			// A mark of its own for each row, so that only those in view are drawn.
+			for i := range r.Parts {
+				one := r
+				one.Parts = r.Parts[i : i+1]
+				put(markRows, project(g.plane, one), 0)
+			}
 		}
 		for _, r := range m.Routes {
 			put(markRoute, project(g.plane, r), 0)
@@ -138,6 +151,9 @@ func (m *Placed) Draw(level int, rect image.Rectangle, style Style) []ink {
 	each(markPanels, inkOf(veil), func(s placed) { p.fill(s.shape) })
 	each(markPanels, casing, stroke(3))
 	each(markPanels, line, stroke(1.3, 4, 3))
+	if px < rowsFromMPerPx {
+		each(markRows, inkOf(look.Ink).part(120), func(s placed) { p.fill(s.shape) })
+	}
 	each(markParcel, casing, stroke(5))
 	each(markParcel, line, stroke(2.4))
 	each(markRoute, casing, stroke(3.6))

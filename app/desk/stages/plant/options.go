@@ -40,7 +40,8 @@ var labels = []struct{ name, words string }{
 	{"turbine", "Reference curve"}, {"hub_height_m", "Hub height"}, {"rotor_diameter_m", "Rotor diameter"}, {"rated_kw", "Rated power of a machine"},
 	{"spacing_along_d", "Spacing along the wind"}, {"spacing_across_d", "Spacing across the wind"},
 	{"tilt_deg", "Tilt"}, {"azimuth_deg", "Direction of the panels"}, {"rotation_max_deg", "Largest rotation"}, {"gcr", "Ground cover ratio"}, {"module_efficiency", "Module efficiency"},
-	{"usable_share", "Usable share of the ground"}, {"dc_ac_ratio", "Panel over inverter power"}, {"bifaciality", "Rear side of the modules"}, {"collector_width_m", "Width of the collector"},
+	{"module_width_m", "Module along the row"}, {"module_length_m", "Module across the row"},
+	{"fence_offset_m", "From the fence to the panels"}, {"lane_every_m", "Lane every"}, {"lane_m", "Width of a lane"}, {"usable_share", "Share of the rows that is built"}, {"dc_ac_ratio", "Panel over inverter power"}, {"bifaciality", "Rear side of the modules"}, {"collector_width_m", "Width of the collector"},
 	{"clearance_m", "Lower edge above ground"}, {"tower_clear_m", "Panels from a tower"},
 }
 
@@ -64,7 +65,7 @@ func reads(technology, fit, name string) bool {
 		return sun && technology != "solar_tracking"
 	case "rotation_max_deg":
 		return technology == "solar_tracking"
-	case "gcr", "module_efficiency", "usable_share", "dc_ac_ratio", "bifaciality":
+	case "gcr", "module_efficiency", "module_width_m", "module_length_m", "fence_offset_m", "lane_every_m", "lane_m", "usable_share", "dc_ac_ratio", "bifaciality":
 		return sun
 	case "collector_width_m", "clearance_m":
 		return sun && technology != "solar_vertical"

@@ -506,6 +506,13 @@ func (f *fitted) fill(c *run.Candidate) {
 		figure("Power of the panels, direct current", c.Fit.SolarKW, "kW")
 		figure("Power at the terminals", c.Fit.ACKW, "kW")
 		figure("Ground inside the fence", c.Fit.FencedHa, "ha")
+		if n := c.Fit.Modules; n > 0 {
+			line("Modules", strconv.Itoa(n))
+			line("Panels on the fenced ground", present.Density(c.Fit.SolarKW, c.Fit.FencedHa))
+			if words := present.PublishedDensity(c.Technology); words != "" {
+				f.lines.Add(widgets.Faint(words))
+			}
+		}
 		figure("Ground inside the spacing", c.Fit.SpacingHa, "ha")
 		figure("New track, by rule of thumb", c.Fit.TrackKm, "km")
 	}
