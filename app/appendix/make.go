@@ -12,7 +12,6 @@ import (
 
 	"groundtally/app/run"
 	"groundtally/app/study"
-	"groundtally/scoring"
 )
 
 // PageFile is the page in the folder of an appendix.
@@ -53,8 +52,8 @@ func Make(ctx context.Context, in Input, store study.Store, folder string, write
 			return err
 		}},
 		{"page", func() (err error) {
-			if in.Months == nil {
-				in.Months = MonthsOf(ctx, in.Snapshot, in.Params, store)
+			if in.Course == nil {
+				in.Course = CourseOf(ctx, in.Snapshot, in.Params, store)
 			}
 			page, err = Page(in)
 			return err
@@ -108,8 +107,8 @@ func Cautions() []string { return slices.Clone(cautions) }
 // NotAssessed gives what the program does not look at, whatever the data.
 func NotAssessed() []string { return slices.Clone(alwaysNotAssessed) }
 
-// MonthsOf gives what Input.Months asks for, read from a store.
-func MonthsOf(ctx context.Context, snap *study.Snapshot, p *run.Params, store study.Store) func(*run.Candidate) ([12]scoring.Value, error) {
+// CourseOf gives what Input.Course asks for, read from a store.
+func CourseOf(ctx context.Context, snap *study.Snapshot, p *run.Params, store study.Store) func(*run.Candidate) (*run.Course, error) {
 	sv := run.NewSurveyor(snap, p, run.StoreLoader(store), store)
-	return func(c *run.Candidate) ([12]scoring.Value, error) { return sv.Months(ctx, c) }
+	return func(c *run.Candidate) (*run.Course, error) { return sv.Course(ctx, c) }
 }

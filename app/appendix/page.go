@@ -17,7 +17,6 @@ import (
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
-	"groundtally/scoring"
 )
 
 //go:embed page.html
@@ -36,8 +35,8 @@ type Input struct {
 	Journal  []study.Entry
 	Frozen   []study.Frozen
 	Top      int // places of each voice shown in full; 0 takes 15
-	// Months gives the energy of a candidate by month; nil leaves the months out.
-	Months func(*run.Candidate) ([12]scoring.Value, error)
+	// Course gives how the energy of a candidate comes over the year; nil leaves that out.
+	Course func(*run.Candidate) (*run.Course, error)
 }
 
 // MapLayers reads the layers that a map shows. Personal columns are never read.

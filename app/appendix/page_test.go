@@ -498,16 +498,17 @@ func TestMonths(t *testing.T) {
 	if html := page(t, in); strings.Contains(html, "by month") {
 		t.Error("months stand on the page though nobody tells them")
 	}
-	in.Months = func(c *run.Candidate) ([12]scoring.Value, error) {
-		var out [12]scoring.Value
+	in.Course = func(c *run.Candidate) (*run.Course, error) {
+		course := &run.Course{Hours: &[12][24]float64{6: {12: 5}}, Sky: []run.SkyYield{{Model: "isotropic", KWhPerKWp: 970}, {Model: "Hay-Davies", KWhPerKWp: 1000, Used: true}}}
+		out := &course.Months
 		for m := range out {
 			out[m] = scoring.Num(float64(111 + m))
 		}
 		out[4] = scoring.UnknownBecause("wind_by_year_alone")
-		return out, nil
+		return course, nil
 	}
 	html := page(t, in)
-	for _, want := range []string{"Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
+	for _, want := range []string{"Map: energy of ", "July, 12 to 13 h: 5.00 MWh", "isotropic 970, Hay-Davies 1000 (used); from -3.0 to &#43;0.0 %", "Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
 		if !strings.Contains(html, want) {
 			t.Errorf("the page has no %q", want)
 		}

@@ -109,22 +109,28 @@ type monthsView struct {
 	Picture template.HTML
 	Rows    []monthView
 	Why     string // what keeps months unknown
+	Hours   template.HTML
+	Sky     string
 }
 
 type monthView struct{ Month, MWh string }
 
 // months draws the energy of a candidate by month; nil where nobody tells it.
 func (b *book) months(c *run.Candidate, title, id string) (*monthsView, error) {
-	if b.in.Months == nil {
+	if b.in.Course == nil {
 		return nil, nil
 	}
-	values, err := b.in.Months(c)
+	course, err := b.in.Course(c)
 	if err != nil {
 		return nil, err
 	}
-	in, why := pictures.Months(values, "Column chart: energy of "+title+" by month; the same figures stand in the table beside it", id)
+	in, why := pictures.Months(course.Months, "Column chart: energy of "+title+" by month; the same figures stand in the table beside it", id)
 	out := &monthsView{Picture: picture(chart.Monthly(in, draw.Light(), halfWidth)), Why: why}
-	for m, v := range values {
+	if course.Hours != nil {
+		out.Hours = picture(chart.DayByMonth(pictures.Hours(course, "Map: energy of "+title+" by month and hour of the day", id+"-hours"), draw.Light(), halfWidth))
+	}
+	out.Sky = pictures.SkySpread(course.Sky)
+	for m, v := range course.Months {
 		row := monthView{Month: time.Month(m + 1).String(), MWh: v.State.String()}
 		if v.OK() {
 			row.MWh = present.Figure(v.X, v.X, v.X)

@@ -12,7 +12,6 @@ import (
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
-	"groundtally/scoring"
 )
 
 // View is what is known of a study at one moment. It is never changed after it was published.
@@ -484,9 +483,9 @@ func (s *Session) Around(c *run.Candidate, done func(*run.Surroundings, error)) 
 	survey(s, func(sv *run.Surveyor) (*run.Surroundings, error) { return sv.Around(s.ctx, c) }, done)
 }
 
-// Months finds the energy of a candidate by month, as Around does; see run.Surveyor.
-func (s *Session) Months(c *run.Candidate, done func([12]scoring.Value, error)) {
-	survey(s, func(sv *run.Surveyor) ([12]scoring.Value, error) { return sv.Months(s.ctx, c) }, done)
+// Course finds how the energy of a candidate comes over the year, as Around does; see run.Surveyor.
+func (s *Session) Course(c *run.Candidate, done func(*run.Course, error)) {
+	survey(s, func(sv *run.Surveyor) (*run.Course, error) { return sv.Course(s.ctx, c) }, done)
 }
 
 // Relief finds the terrain of a candidate's site and of its buildable patches, as Around does; see run.Surveyor.

@@ -43,6 +43,11 @@ func Losses(c *run.Candidate, title, id string) (in chart.Chain, ok bool) {
 	return in, len(c.Chain) > 0
 }
 
+// Hours shows the energy of a candidate by month and hour of the day.
+func Hours(c *run.Course, title, id string) chart.DayMonths {
+	return chart.DayMonths{Title: title, ID: id, What: "energy at the plant by hour of the day (" + c.Clock + ")", Unit: "MWh", Values: *c.Hours}
+}
+
 // Months shows the energy of a candidate by month, as run.Surveyor gives it. Why says what keeps months
 // unknown; it is empty when all are known.
 func Months(months [12]scoring.Value, title, id string) (in chart.Months, why string) {

@@ -143,14 +143,30 @@ func (s *Surveyor) site(ctx context.Context, c *Candidate) (site, error) {
 	return s.world.sites[at], nil
 }
 
-// Months gives the energy of a candidate's plant in MWh for each month of the year that its solar yield
-// rests on, before the bias of forecasts and the losses of the connection. Wind is known by the year
-// alone, so that the months of a plant with turbines are unknown, with the reason.
-func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value, error) {
-	var out [12]scoring.Value
-	every := func(v scoring.Value) [12]scoring.Value {
-		for m := range out {
-			out[m] = v
+// Course is how the energy of a plant comes over the year that its solar yield rests on, before the bias of
+// forecasts and the losses of the connection.
+type Course struct {
+	Months [12]scoring.Value // MWh; wind is known by the year alone, so a plant with turbines has unknown months
+	// Hours part the months by hour of the day, from 0 to 1 first, on the clock named. Nil where the months are
+	// unknown.
+	Hours *[12][24]float64 // MWh
+	Clock string           // "solar time" where the sunlight is given by month, the clock of the file where by hour
+	Sky   []SkyYield       // what each way to bring the sky's light onto the panels gives; nil as Hours
+}
+
+// SkyYield is the yield under one model of the sky.
+type SkyYield struct {
+	Model     string
+	KWhPerKWp float64
+	Used      bool // by the results
+}
+
+// Course finds it for a candidate.
+func (s *Surveyor) Course(ctx context.Context, c *Candidate) (*Course, error) {
+	out := &Course{}
+	every := func(v scoring.Value) *Course {
+		for m := range out.Months {
+			out.Months[m] = v
 		}
 		return out
 	}
@@ -164,11 +180,11 @@ func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value,
 	defer s.mu.Unlock()
 	here, err := s.site(ctx, c)
 	if err != nil {
-		return out, err
+		return nil, err
 	}
 	f, err := s.fitted(ctx)
 	if err != nil {
-		return out, err
+		return nil, err
 	}
 	for _, o := range s.world.options {
 		if o.id != c.Plant {
@@ -177,18 +193,27 @@ func (s *Surveyor) Months(ctx context.Context, c *Candidate) ([12]scoring.Value,
 		y, sun, bad, err := f.yearAt(o, here)
 		switch {
 		case err != nil:
-			return out, err
+			return nil, err
 		case sun.sunlight == nil:
 			return every(scoring.UnknownBecause(sun.why)), nil
 		case bad:
 			return every(scoring.UnknownBecause("plant_out_of_range")), nil
 		}
-		for m := range out {
-			out[m] = scoring.Num(y.MonthKWhPerKWp[m] * c.Fit.SolarKW / units.KWhPerMWh)
+		mwh := c.Fit.SolarKW / units.KWhPerMWh
+		out.Hours, out.Clock = &[12][24]float64{}, "solar time"
+		if sun.hours != nil {
+			out.Clock = sun.hours.clock()
 		}
-		return out, nil
+		for m := range out.Months {
+			out.Months[m] = scoring.Num(y.MonthKWhPerKWp[m] * mwh)
+			for h, kwh := range y.HourKWhPerKWp[m] {
+				out.Hours[m][h] = kwh * mwh
+			}
+		}
+		out.Sky, err = f.skies(o, here, sun)
+		return out, err
 	}
-	return out, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
+	return nil, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
 }
 
 // ground takes the stored ground of a site, or computes it.

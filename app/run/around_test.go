@@ -62,10 +62,11 @@ func TestMonthsAddUp(t *testing.T) {
 		if c.Status != Fitted || i%5 != 0 {
 			continue
 		}
-		months, err := sv.Months(context.Background(), c)
+		course, err := sv.Course(context.Background(), c)
 		if err != nil {
 			t.Fatal(err)
 		}
+		months := course.Months
 		if c.Fit.WindKW > 0 {
 			windy++
 			if months[0].OK() || months[0].Why == "" {
@@ -80,6 +81,13 @@ func TestMonthsAddUp(t *testing.T) {
 				t.Fatalf("%s: month %d is %+v", c.ID(), m+1, v)
 			}
 			sum += v.X
+			hours := 0.0
+			for _, mwh := range course.Hours[m] {
+				hours += mwh
+			}
+			if math.Abs(hours-v.X) > 1e-9*v.X {
+				t.Errorf("%s, month %d: hours add up to %v of %v", c.ID(), m+1, hours, v.X)
+			}
 		}
 		want := 0.0
 		for _, l := range c.Leaves() {

@@ -183,6 +183,9 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 			}
 		}
 		k.said("sunlight", here.source, here.why)
+		if m := f.sky(); m != solar.HayDavies {
+			k.text(m.String())
+		}
 		if f.w.terrain != nil {
 			k.text(f.w.terrain.rec.Digest)
 			k.text(f.w.terrain.rec.CRS)

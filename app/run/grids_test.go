@@ -355,9 +355,9 @@ func TestGridsOfSunlight(t *testing.T) {
 		t.Fatal(err)
 	}
 	c := p.computed(cache)
-	months, err := NewSurveyor(snap, shipped(t), StoreLoader(p.s.Store()), cache).Months(context.Background(), c)
-	if err != nil || !months[6].OK() || months[6].X <= months[0].X {
-		t.Errorf("months %v, %v", months, err)
+	course, err := NewSurveyor(snap, shipped(t), StoreLoader(p.s.Store()), cache).Course(context.Background(), c)
+	if err != nil || !course.Months[6].OK() || course.Months[6].X <= course.Months[0].X {
+		t.Errorf("months %v, %v", course, err)
 	}
 	sun("ghi", 2, "kWh/(m2 month)", "-9999")
 	look("a void", "", `the grid "ghi 03" (ghi, March, cells of 250 m) has no value at the site`)

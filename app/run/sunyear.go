@@ -149,6 +149,7 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	if here.hours != nil {
 		k.text(here.hours.key)
 	}
+	k.int(int(f.sky()))
 	k.int(int(l.slope))
 	k.int(int(l.aspect))
 	k.text(l.notice)
@@ -158,7 +159,7 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	year, done := f.years[key]
 	f.mu.Unlock()
 	if !done {
-		year = f.year(o, lat, here, &l)
+		year = f.year(o, lat, here, &l, f.sky())
 		f.mu.Lock()
 		if len(f.years) >= mostYears {
 			clear(f.years)
@@ -172,7 +173,37 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	return year.y, here, year.bad, nil
 }
 
-func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie) solarYear {
+// skyModels are the ways to bring the sky's light onto the panels, by the words of the setting.
+var skyModels = map[string]solar.SkyModel{"Hay-Davies": solar.HayDavies, "isotropic": solar.Isotropic, "Perez": solar.Perez}
+
+// sky gives the model of the study.
+func (f *fitter) sky() solar.SkyModel {
+	v, _, _ := f.w.snap.Lookup("solar.sky_model")
+	return skyModels[v.Value]
+}
+
+// skies gives the yield of an option on a site under each model.
+func (f *fitter) skies(o option, s site, here sunHere) ([]SkyYield, error) {
+	lat, err := f.siteLat(s)
+	if err != nil {
+		return nil, err
+	}
+	l, err := f.lie(s)
+	if err != nil {
+		return nil, err
+	}
+	var out []SkyYield
+	for _, m := range []solar.SkyModel{solar.Isotropic, solar.HayDavies, solar.Perez} {
+		y := f.year(o, lat, here, &l, m)
+		if y.bad || y.why != "" {
+			return nil, nil // as the year itself
+		}
+		out = append(out, SkyYield{m.String(), y.y.SpecificYieldKWhPerKWp, m == f.sky()})
+	}
+	return out, nil
+}
+
+func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie, sky solar.SkyModel) solarYear {
 	var c *solar.Climate
 	var err error
 	if s.hours != nil {
@@ -187,6 +218,7 @@ func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie) solarYear {
 	if err := l.on(&p.Mount); err != nil {
 		return solarYear{bad: true}
 	}
+	p.Sky = sky
 	y, err := c.Yield(p)
 	return solarYear{y: y, bad: err != nil}
 }

@@ -23,8 +23,9 @@ type weatherFile struct {
 	rec     study.LayerRecord
 	climate *solar.Climate // nil where it cannot be read
 	report  solar.WeatherReport
-	why     string // it cannot be read
-	key     string // of what it was read from
+	why     string  // it cannot be read
+	offsetH float64 // its clock is ahead of UTC
+	key     string  // of what it was read from
 }
 
 // stampFormats are the ways that a time is written.
@@ -73,7 +74,7 @@ func readWeather(l *geo.Layer, rec study.LayerRecord, snap *study.Snapshot, at g
 		w.why = err.Error()
 		return w
 	}
-	in.LatDeg, in.LonDeg = at.Lat, at.Lon
+	in.LatDeg, in.LonDeg, w.offsetH = at.Lat, at.Lon, in.ClockOffset.Hours()
 	if w.climate, w.report, err = solar.NewWeather(in); err != nil {
 		var input *solar.InputError
 		if w.climate = nil; errors.As(err, &input) && input.Field == "Rows" {
@@ -258,6 +259,14 @@ func (f *weatherFile) notices() []geo.Notice {
 	say("weather_negative", geo.Info, r.Negative)
 	say("weather_leap", geo.Info, r.LeapDropped)
 	return out
+}
+
+// clock names the clock by which hours are told.
+func (f *weatherFile) clock() string {
+	if f.offsetH == 0 {
+		return "UTC"
+	}
+	return fmt.Sprintf("UTC%+g h", f.offsetH)
 }
 
 // words name the file in a source.

@@ -109,6 +109,18 @@ func months(name func(int) string, n int) chart.Months {
 	return in
 }
 
+// dayMonths are days that are longer and brighter in summer; without any energy for 0.
+func dayMonths(n int) chart.DayMonths {
+	in := chart.DayMonths{Title: "Energy by month and hour", ID: "hours", What: "energy at the plant by hour of the day", Unit: "MWh"}
+	for m := range in.Values {
+		long := 4 + 3*math.Sin(math.Pi*float64(m+1)/13)
+		for h := range in.Values[m] {
+			in.Values[m][h] = math.Max(0, float64(n)*(long-math.Abs(float64(h)-11.5)))
+		}
+	}
+	return in
+}
+
 func cloud(name func(int) string, n int) chart.Cloud {
 	random := rand.New(rand.NewPCG(1, 2))
 	in := chart.Cloud{Title: "cloud", X: chart.Quantity{Title: name(1), Unit: "MWh/yr", Better: chart.More}, Y: chart.Quantity{Title: name(2), Unit: "homes", Better: chart.Less, Whole: true}, LeftOut: n % 7}
@@ -137,6 +149,7 @@ func each(name func(int) string, p draw.Palette, width float64) map[string]*draw
 		out[fmt.Sprintf("chain-%d", n)] = chart.Waterfall(chain(name, n), p, width)
 		out[fmt.Sprintf("land-%d", n)] = chart.TakenBars(land(name, n), p, width)
 		out[fmt.Sprintf("months-%d", n)] = chart.Monthly(months(name, n), p, width)
+		out[fmt.Sprintf("daymonths-%d", n)] = chart.DayByMonth(dayMonths(n), p, width)
 		out[fmt.Sprintf("horizon-%d", n)] = chart.HorizonStrip(horizon(n), p, width)
 		out[fmt.Sprintf("cloud-%d", n*n)] = chart.Scatter(cloud(name, n*n), p, width)
 	}
@@ -376,6 +389,26 @@ func TestMonthlyIsTrue(t *testing.T) {
 	}
 	if len(august) != 1 || !august[0].Style.Hatch || !says(s, "energy, MWh in each month") {
 		t.Error("an unknown month is not hatched, or the unit is missing")
+	}
+}
+
+func TestDayByMonthIsTrue(t *testing.T) {
+	in := chart.DayMonths{Title: "t", ID: "i", What: "energy", Unit: "MWh"}
+	in.Values[0][12], in.Values[6][5], in.Values[6][12] = 5, 2.5, 10
+	s := chart.DayByMonth(in, draw.Light(), 760)
+	most, half := find(s, "July, 12 to 13 h: 10.0 MWh"), find(s, "July, 5 to 6 h: 2.50 MWh")
+	winter := find(s, "January, 12 to 13 h: 5.00 MWh")
+	if len(most) != 1 || len(half) != 1 || len(winter) != 1 {
+		t.Fatal("a field is missing")
+	}
+	if most[0].Style.Fill != draw.Light().Ramp(1) || winter[0].Style.Fill != draw.Light().Ramp(0.5) || half[0].Style.Fill != draw.Light().Ramp(0.25) {
+		t.Error("fields are not as dark as they have energy")
+	}
+	if left(most[0]) != left(half[0]) || left(winter[0]) >= left(most[0]) || winter[0].Rings[0][0].Y != most[0].Rings[0][0].Y {
+		t.Error("fields stand in other months or hours")
+	}
+	if !says(chart.DayByMonth(chart.DayMonths{}, draw.Light(), 760), "There is none in any hour") {
+		t.Error("a plant without energy has a picture")
 	}
 }
 

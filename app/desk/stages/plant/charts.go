@@ -5,7 +5,6 @@ import (
 	"groundtally/app/draw/chart"
 	"groundtally/app/pictures"
 	"groundtally/app/run"
-	"groundtally/scoring"
 )
 
 // landOf gives the picture of what the rules take of a candidate's site.
@@ -24,7 +23,16 @@ func lossOf(c *run.Candidate) func(draw.Palette, float64) *draw.Scene {
 }
 
 // monthsOf gives the picture of the energy of a candidate by month, and what keeps months unknown.
-func monthsOf(c *run.Candidate, months [12]scoring.Value) (do func(draw.Palette, float64) *draw.Scene, why string) {
-	in, why := pictures.Months(months, "Energy of "+c.Site+" by month", "months")
+func monthsOf(c *run.Candidate, course *run.Course) (do func(draw.Palette, float64) *draw.Scene, why string) {
+	in, why := pictures.Months(course.Months, "Energy of "+c.Site+" by month", "months")
 	return func(p draw.Palette, width float64) *draw.Scene { return chart.Monthly(in, p, width) }, why
+}
+
+// hoursOf gives the picture of the energy of a candidate by month and hour; nil where that is unknown.
+func hoursOf(c *run.Candidate, course *run.Course) func(draw.Palette, float64) *draw.Scene {
+	if course.Hours == nil {
+		return nil
+	}
+	in := pictures.Hours(course, "Energy of "+c.Site+" by month and hour of the day", "hours")
+	return func(p draw.Palette, width float64) *draw.Scene { return chart.DayByMonth(in, p, width) }
 }

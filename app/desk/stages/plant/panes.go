@@ -12,10 +12,10 @@ import (
 
 	"groundtally/app/desk/chartview"
 	"groundtally/app/desk/widgets"
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
-	"groundtally/scoring"
 )
 
 // rules shows the rules that bear on the chosen option.
@@ -377,7 +377,8 @@ type fitted struct {
 	takenHead   *widgets.Line
 	monthHead   *widgets.Line
 	monthWords  *widgets.Line
-	month       *chartview.Picture
+	month, hour *chartview.Picture
+	sky         *widget.Label
 	months      *run.Candidate // whose months are shown or asked for
 }
 
@@ -387,8 +388,9 @@ func newFitted(s *stage) *fitted {
 	background := func(do func()) { s.background(do) }
 	grew := func() { f.body.Refresh() }
 	f.loss, f.taken = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
-	f.month = chartview.New(s.core, background, grew)
-	f.box = container.NewVBox(f.title, flush(f.words), f.lines, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, space(6), flush(caption(caution)))
+	f.month, f.hour = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
+	f.sky = widgets.NewText("")
+	f.box = container.NewVBox(f.title, flush(f.words), f.lines, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, f.hour, flush(f.sky), space(6), flush(caption(caution)))
 	f.body = container.NewVScroll(container.New(insets{2, 6, 16, 8}, f.box))
 	return f
 }
@@ -428,6 +430,7 @@ func (f *fitted) update() {
 	visible(f.monthHead, withPlant)
 	visible(f.monthWords, withPlant)
 	visible(f.month, withPlant)
+	visible(f.hour, withPlant)
 	if c == nil {
 		f.title.Set("No candidate of this option is chosen")
 		f.words.SetText("Choose a site on the map or in the table of Accounts, then come back.")
@@ -462,11 +465,13 @@ func (f *fitted) askMonths(c *run.Candidate) {
 	}
 	f.months = c
 	f.month.Set(nil)
+	f.hour.Set(nil)
+	visible(f.sky, false)
 	f.monthWords.Set("")
 	if c.Status != run.Fitted {
 		return
 	}
-	f.s.core.Session.Months(c, func(months [12]scoring.Value, err error) {
+	f.s.core.Session.Course(c, func(course *run.Course, err error) {
 		f.s.core.Do(func() {
 			switch {
 			case f.months != c:
@@ -475,13 +480,16 @@ func (f *fitted) askMonths(c *run.Candidate) {
 				f.monthWords.Set(present.Problem(err))
 				return
 			}
-			do, why := monthsOf(c, months)
+			do, why := monthsOf(c, course)
 			if why != "" {
 				f.monthWords.Set("Unknown: " + why + ".")
 			} else {
 				f.monthWords.Set("Of the year that the yield rests on; before the bias of forecasts and the losses of the connection.")
 			}
 			f.month.Set(do)
+			f.hour.Set(hoursOf(c, course))
+			f.sky.SetText(pictures.SkySpread(course.Sky))
+			visible(f.sky, len(course.Sky) > 0)
 			f.body.Refresh()
 		})
 	})
