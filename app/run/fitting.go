@@ -640,27 +640,18 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 
 // firstHectares takes the largest patches first until the area is reached.
 func firstHectares(e *overlay.Engine, g geo.XYGeometry, wantHa float64) (geo.XYGeometry, float64, error) {
-	type patch struct {
-		part [][]geo.XY
-		m2   float64
-	}
-	patches := make([]patch, len(g.Parts))
-	for i, part := range g.Parts {
-		patches[i] = patch{part, measure.AreaM2(geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}})}
-	}
-	sort.SliceStable(patches, func(i, j int) bool { return patches[i].m2 > patches[j].m2 })
 	out := geo.XYGeometry{Kind: geo.Polygons}
 	left := wantHa * units.M2PerHa
 	taken := 0.0
-	for _, p := range patches {
+	for _, part := range largestFirst(g) {
 		if left <= 0 {
 			break
 		}
-		one := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{p.part}}
-		if p.m2 <= left {
-			out.Parts = append(out.Parts, p.part)
-			taken += p.m2
-			left -= p.m2
+		one := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}}
+		if m2 := measure.AreaM2(one); m2 <= left {
+			out.Parts = append(out.Parts, part)
+			taken += m2
+			left -= m2
 			continue
 		}
 		box := geo.ExtentOf(one)

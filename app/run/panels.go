@@ -2,7 +2,6 @@ package run
 
 import (
 	"math"
-	"sort"
 
 	"groundtally/geo"
 	"groundtally/geo/measure"
@@ -98,27 +97,18 @@ type fencing struct {
 // them is cut by a line from west to east, so that little more ground is fenced than they need. Patches without
 // room for a row are not fenced.
 func (p panelRows) fill(e *overlay.Engine, area geo.XYGeometry, most int) (out fencing, err error) {
-	type patch struct {
-		g  geo.XYGeometry
-		m2 float64
-	}
-	patches := make([]patch, len(area.Parts))
-	for i, part := range area.Parts {
-		g := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}}
-		patches[i] = patch{g, measure.AreaM2(g)}
-	}
-	sort.SliceStable(patches, func(i, j int) bool { return patches[i].m2 > patches[j].m2 })
 	out.fence.Kind = geo.Polygons
 	take := func(g geo.XYGeometry, n int) {
 		out.fence.Parts = append(out.fence.Parts, g.Parts...)
 		out.ha += measure.AreaM2(g) / units.M2PerHa
 		out.units += n
 	}
-	for _, one := range patches {
+	for _, part := range largestFirst(area) {
 		if most > 0 && out.units >= most {
 			break
 		}
-		rs, err := p.in(e, one.g, 0)
+		one := geo.XYGeometry{Kind: geo.Polygons, Parts: [][][]geo.XY{part}}
+		rs, err := p.in(e, one, 0)
 		if err != nil {
 			return out, err
 		}
@@ -126,9 +116,9 @@ func (p panelRows) fill(e *overlay.Engine, area geo.XYGeometry, most int) (out f
 		switch {
 		case n == 0:
 		case most == 0 || n <= left:
-			take(one.g, n)
+			take(one, n)
 		default:
-			cut, err := p.cut(e, one.g, one.m2*float64(left)/float64(n), left)
+			cut, err := p.cut(e, one, measure.AreaM2(one)*float64(left)/float64(n), left)
 			if err != nil {
 				return out, err
 			}

@@ -1,7 +1,7 @@
-// Package solar estimates the yearly energy of photovoltaic rows from monthly sunlight.
+// Package solar estimates the yearly energy of photovoltaic rows from sunlight by month or by hour.
 //
-// NewClimate spreads monthly sums over representative hours; Climate.Yield puts a plant into that
-// light; Year does both. Every step from the light on the panel plane to the energy at the plant's
+// NewClimate spreads monthly sums over representative hours, NewWeather lays a file of hours on whole years;
+// Climate.Yield puts a plant into that light; Year does both for months. Every step from the light on the panel plane to the energy at the plant's
 // terminals is logged as one link of a chain, so that a result can be unfolded. All functions are
 // deterministic: the day types of a month are quantiles of a published distribution, no random
 // numbers are drawn.
@@ -11,9 +11,8 @@
 // test conditions (1000 W/m2, 25 degrees C). Shares are fractions of 1. The southern hemisphere needs
 // no change of sign.
 //
-// Left out: the far horizon of the terrain, hourly weather files and random hourly series, snow beyond
-// a monthly loss given by the user, spectral effects, light reflected between rows, the effect of slope
-// on diffuse light between rows, clipping inside the time steps (which adds 0.3 to 1 % of loss where
-// the ratio of panel to inverter power exceeds 1.3), shade of posts on crops, panels that let light
+// Left out: random hourly series, snow beyond a monthly loss given by the user, spectral effects, light
+// reflected between rows, the effect of slope on diffuse light between rows, clipping inside the time steps
+// (which adds 0.3 to 1 % of loss where the ratio of panel to inverter power exceeds 1.3), shade of posts on crops, panels that let light
 // through, and shading by trees or buildings.
 package solar
