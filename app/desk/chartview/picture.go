@@ -122,6 +122,7 @@ func (p *Picture) CreateRenderer() fyne.WidgetRenderer { return &pictureRenderer
 type pictureRenderer struct{ p *Picture }
 
 func (r *pictureRenderer) Layout(s fyne.Size) {
+	r.p.image.Hidden = r.p.scene == nil // the toolkit cannot paint a picture without height
 	// A chart has a least width; what is narrower sees its left part.
 	r.p.image.Resize(fyne.NewSize(max(s.Width, chart.Narrowest), r.p.height()))
 }
