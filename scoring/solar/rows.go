@@ -109,20 +109,6 @@ func ShadedShare(sunAngleDeg, rotationDeg, crossTiltDeg, gcr float64) float64 {
 	return f
 }
 
-// shadeReach is ShadedShare before it is drawn into [0, 1]: negative while the shadow's edge falls short
-// of the row, not below -3.
-func shadeReach(sunAngleDeg, rotationDeg, crossTiltDeg, gcr float64) float64 {
-	if !SunOverGround(sunAngleDeg, crossTiltDeg) {
-		return 1
-	}
-	w := float64(gcr * math.Abs(cosd(sunAngleDeg-rotationDeg)))
-	h := math.Abs(spacing(sunAngleDeg, crossTiltDeg))
-	if h >= 4*w {
-		return -3
-	}
-	return 1 - h/w
-}
-
 // meanShade gives the means of the shaded share and of ShadePowerLoss while the shadow's edge moves
 // evenly from one reach to another, so that the yearly energy has no jumps where a block goes dark.
 func meanShade(from, to float64, blocks int) (shaded, power float64) {
