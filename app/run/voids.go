@@ -8,7 +8,6 @@ import (
 	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/crs"
-	"groundtally/geo/formats/gridfile"
 	"groundtally/geo/index"
 	"groundtally/geo/measure"
 	"groundtally/scoring/units"
@@ -83,15 +82,7 @@ func Voids(ctx context.Context, snap *study.Snapshot, load Loader) ([]GridVoids,
 
 func voidsOf(ctx context.Context, rec study.LayerRecord, load Loader, f crs.Frame, tree *index.Tree, inside []geo.XYGeometry) (GridVoids, error) {
 	out := GridVoids{Layer: rec.Name}
-	v, err := load(ctx, rec.Digest)
-	if err != nil {
-		return out, err
-	}
-	g, _, _, err := gridfile.Decode(ctx, v.Media, rec.File, v.Blob)
-	if err != nil {
-		return out, err
-	}
-	t, err := crs.NewTransform(rec.CRS)
+	g, t, err := readGrid(ctx, rec, load)
 	if err != nil {
 		return out, err
 	}

@@ -265,17 +265,23 @@ func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader)
 // terrainMarginM is how far around the parcels heights are kept.
 const terrainMarginM = 200
 
-// readTerrain brings the heights around the parcels into the local frame, at the cells of the file.
-func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loader) (*terrain.Grid, error) {
+// readGrid reads a raster with the way to its reference system.
+func readGrid(ctx context.Context, rec study.LayerRecord, load Loader) (*raster.Grid, *crs.Transform, error) {
 	v, err := load(ctx, rec.Digest)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	raw, _, _, err := gridfile.Decode(ctx, v.Media, rec.File, v.Blob)
+	g, _, _, err := gridfile.Decode(ctx, v.Media, rec.File, v.Blob)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	t, err := crs.NewTransform(rec.CRS)
+	return g, t, err
+}
+
+// readTerrain brings the heights around the parcels into the local frame, at the cells of the file.
+func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loader) (*terrain.Grid, error) {
+	raw, t, err := readGrid(ctx, rec, load)
 	if err != nil {
 		return nil, err
 	}

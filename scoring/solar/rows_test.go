@@ -4,6 +4,8 @@ import (
 	"math"
 	"math/rand/v2"
 	"testing"
+
+	"groundtally/scoring/sun"
 )
 
 // shadedByRays finds the shaded share of a row by casting rays in the plane across the rows, without any
@@ -123,6 +125,39 @@ func TestMeanShadeAgainstSum(t *testing.T) {
 			s, p := meanShade(span[0], span[1], blocks)
 			if math.Abs(s-shaded) > 1e-4 || math.Abs(p-power) > 1e-4 {
 				t.Errorf("blocks %d from %v to %v: %v and %v, summed %v and %v", blocks, span[0], span[1], s, p, shaded, power)
+			}
+		}
+	}
+}
+
+// The engine turns trackers and casts shadows by sines and cosines; the forms that the check table holds against
+// published values work by angles. They are the same.
+func TestEngineUsesThePublishedForms(t *testing.T) {
+	r := rand.New(rand.NewPCG(91, 92))
+	for range 4000 {
+		p := defaultPlant(Mount{Kind: SingleAxis, AxisAzimuthDeg: 360 * r.Float64(), MaxAngleDeg: 30 + 60*r.Float64(), Backtrack: r.IntN(2) == 0,
+			GCR: 0.1 + 0.8*r.Float64(), SlopeDeg: 20 * r.Float64(), AspectDeg: 360 * r.Float64()})
+		m := &p.Mount
+		v := newViewer(&p, 0)
+		s := sun.Direction(1+88*r.Float64(), 360*r.Float64())
+		x, z, up := v.over(s)
+		angle, cross := v.frame.SunAngleDeg(s), v.frame.CrossTiltDeg
+		if (up > 0) != SunOverGround(angle, cross) {
+			t.Fatalf("sun at %v over ground tilted %v: %v", angle, cross, up)
+		}
+		sinR, cosR := v.turn(x, z, up, m.Backtrack)
+		want := TrackerAngleDeg(angle, cross, m.GCR, m.MaxAngleDeg, m.Backtrack)
+		if got := math.Atan2(sinR, cosR) / radPerDeg; math.Abs(got-want) > 1e-6 {
+			t.Fatalf("%+v, sun at %v over ground tilted %v: turned by %v, want %v", *m, angle, cross, got, want)
+		}
+		m.Kind, v.sinR, v.cosR = FixedTilt, sinR, cosR
+		if got, want := clamp(v.reach(x, z, up), 0, 1), ShadedShare(angle, want, cross, m.GCR); math.Abs(got-want) > 1e-6 {
+			t.Fatalf("%+v, sun at %v: shaded %v, want %v", *m, angle, got, want)
+		}
+		if up > 0 {
+			got := v.look([]sunAt{newSunAt(s)}, nil, s.Z).groundSin / s.Z
+			if want := 1 - GroundShadeShare(angle, want, cross, m.GCR); math.Abs(got-want) > 1e-6 {
+				t.Fatalf("%+v, sun at %v: open ground %v, want %v", *m, angle, got, want)
 			}
 		}
 	}

@@ -80,23 +80,8 @@ func (s Sheet) box(g *Ground) (box geo.Extent, pixelM float64) {
 		q := g.plane.To(p)
 		return q, q.Finite()
 	}
-	box = geo.EmptyExtent()
-	const pieces = 16 // of a side, which may be bent in the plane
-	for i := range pieces + 1 {
-		f := float64(i) / pieces
-		for _, c := range [...][2]float64{{f * w, 0}, {f * w, h}, {0, f * h}, {w, f * h}} {
-			if q, ok := to(c[0], c[1]); ok {
-				box = box.Add(q)
-			}
-		}
-	}
-	near := g.near()
-	if box.Empty() || !box.Meets(near) {
-		return geo.EmptyExtent(), 0
-	}
-	box = geo.Extent{
-		MinX: math.Max(box.MinX, near.MinX), MinY: math.Max(box.MinY, near.MinY),
-		MaxX: math.Min(box.MaxX, near.MaxX), MaxY: math.Min(box.MaxY, near.MaxY),
+	if box = g.around(w, h, to); box.Empty() {
+		return box, 0
 	}
 	// Pixels are measured in the middle of what is shown.
 	x, y, err := s.At.Inverse(g.plane.From(box.Centre()))

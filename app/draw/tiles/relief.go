@@ -104,6 +104,28 @@ func NewRelief(ctx context.Context, g *Ground, heights *raster.Grid, at Placing)
 	return r, nil
 }
 
+// around gives what of a file of so many columns and rows lies around the ground; to brings these to the plane.
+func (g *Ground) around(columns, rows float64, to func(column, row float64) (geo.XY, bool)) geo.Extent {
+	box := geo.EmptyExtent()
+	const pieces = 16 // of a side, which may be bent in the plane
+	for i := range pieces + 1 {
+		f := float64(i) / pieces
+		for _, c := range [...][2]float64{{f * columns, 0}, {f * columns, rows}, {0, f * rows}, {columns, f * rows}} {
+			if q, ok := to(c[0], c[1]); ok {
+				box = box.Add(q)
+			}
+		}
+	}
+	near := g.near()
+	if box.Empty() || !box.Meets(near) {
+		return geo.EmptyExtent()
+	}
+	return geo.Extent{
+		MinX: math.Max(box.MinX, near.MinX), MinY: math.Max(box.MinY, near.MinY),
+		MaxX: math.Min(box.MaxX, near.MaxX), MaxY: math.Min(box.MaxY, near.MaxY),
+	}
+}
+
 // reliefBox gives what of a file lies around a ground in its plane, with the lesser side of its cells.
 func reliefBox(g *Ground, heights *raster.Grid, at Placing) (box geo.Extent, cellM float64) {
 	to := func(col, row float64) (geo.XY, bool) {
@@ -114,24 +136,9 @@ func reliefBox(g *Ground, heights *raster.Grid, at Placing) (box geo.Extent, cel
 		q := g.plane.To(p)
 		return q, q.Finite()
 	}
-	box = geo.EmptyExtent()
-	const pieces = 16 // of a side, which may be bent in the plane
 	w, h := float64(heights.NCols), float64(heights.NRows)
-	for i := range pieces + 1 {
-		f := float64(i) / pieces
-		for _, c := range [...][2]float64{{f * w, 0}, {f * w, h}, {0, f * h}, {w, f * h}} {
-			if q, ok := to(c[0], c[1]); ok {
-				box = box.Add(q)
-			}
-		}
-	}
-	near := g.near()
-	if box.Empty() || !box.Meets(near) {
-		return geo.EmptyExtent(), 0
-	}
-	box = geo.Extent{
-		MinX: math.Max(box.MinX, near.MinX), MinY: math.Max(box.MinY, near.MinY),
-		MaxX: math.Min(box.MaxX, near.MaxX), MaxY: math.Min(box.MaxY, near.MaxY),
+	if box = g.around(w, h, to); box.Empty() {
+		return box, 0
 	}
 	// Cells are measured in the middle of what is shown.
 	x, y, err := at.Inverse(g.plane.From(box.Centre()))
