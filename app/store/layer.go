@@ -132,9 +132,20 @@ func (f *file) putVersion(ctx context.Context, c *sql.Conn, v study.Version, at 
 	if err := checkLayer(v.Layer); err != nil {
 		return err
 	}
-	if got := study.LayerDigest(v.Layer); got != v.Digest {
+	// The content is digested on another core while it is written; a fault rolls the writing back.
+	got := make(chan string, 1)
+	go func() { got <- study.LayerDigest(v.Layer) }()
+	if err := f.putNew(ctx, c, v, at); err != nil {
+		return err
+	}
+	if got := <-got; got != v.Digest {
 		return fmt.Errorf("layer %q: content has digest %s, not %s", v.Layer.Name, got, v.Digest)
 	}
+	return nil
+}
+
+// putNew stores a layer's content unless it is there unchanged.
+func (f *file) putNew(ctx context.Context, c *sql.Conn, v study.Version, at time.Time) error {
 	old, err := f.layer(ctx, c, v.Digest)
 	switch {
 	case err == nil && study.LayerDigest(old) == v.Digest:
@@ -232,7 +243,8 @@ func (f *file) putLayer(ctx context.Context, c *sql.Conn, v study.Version, at ti
 	if shape.any {
 		fixed = 3
 	}
-	insert += `) VALUES (?` + strings.Repeat(`, ?`, fixed-1+len(cols)) + `)`
+	insert += `) VALUES `
+	row := `(?` + strings.Repeat(`, ?`, fixed-1+len(cols)) + `)`
 	if err := f.exec(ctx, c, create+`)`); err != nil {
 		return err
 	}
@@ -265,36 +277,44 @@ func (f *file) putLayer(ctx context.Context, c *sql.Conn, v study.Version, at ti
 		v.Digest, table, l.Name, string(described)); err != nil {
 		return err
 	}
-	return f.putFeatures(ctx, c, l, table, insert, cols, shape)
+	return f.putFeatures(ctx, c, l, table, insert, row, cols, shape)
 }
 
-func (f *file) putFeatures(ctx context.Context, c *sql.Conn, l *geo.Layer, table, insert string, cols []column, shape shape) (err error) {
-	row, err := c.PrepareContext(ctx, insert)
-	if err != nil {
-		return err
-	}
-	defer func() { err = errors.Join(err, row.Close()) }()
+// Rows are put in groups: one statement for many costs less than many statements.
+const (
+	groupRows   = 64
+	groupValues = 4096 // SQLite takes 32,766 in a statement
+)
+
+func (f *file) putFeatures(ctx context.Context, c *sql.Conn, l *geo.Layer, table, insert, row string, cols []column, shape shape) (err error) {
 	kind, err := c.PrepareContext(ctx, `INSERT INTO gt_value_kind (table_name, fid, pos, kind) VALUES (?, ?, ?, ?)`)
 	if err != nil {
 		return err
 	}
 	defer func() { err = errors.Join(err, kind.Close()) }()
-	var blob []byte
-	args := make([]any, 0, len(cols)+3)
+	size := max(1, min(groupRows, groupValues/(len(cols)+3), len(l.Features)))
+	group, err := c.PrepareContext(ctx, insert+row+strings.Repeat(`, `+row, size-1))
+	if err != nil {
+		return err
+	}
+	defer func() { err = errors.Join(err, group.Close()) }()
+	var blobs []byte
+	args := make([]any, 0, size*(len(cols)+3))
 	for i, ft := range l.Features {
 		if err := f.mayFail(); err != nil {
 			return err
 		}
 		fid := i + 1
-		args = append(args[:0], fid, ft.ID)
+		args = append(args, fid, ft.ID)
 		if shape.any {
 			if ft.Geometry.Kind == geo.NoGeometry {
 				args = append(args, nil)
 			} else {
-				if blob, err = gpkggeom.Append(blob[:0], ft.Geometry, wgs84ID, shape.multi); err != nil {
+				from := len(blobs)
+				if blobs, err = gpkggeom.Append(blobs, ft.Geometry, wgs84ID, shape.multi); err != nil {
 					return fmt.Errorf("layer %q, feature %d (%s): %w", l.Name, fid, ft.ID, err)
 				}
-				args = append(args, blob)
+				args = append(args, blobs[from:])
 			}
 		}
 		for j, v := range ft.Values {
@@ -314,9 +334,18 @@ func (f *file) putFeatures(ctx context.Context, c *sql.Conn, l *geo.Layer, table
 				}
 			}
 		}
-		if _, err := row.ExecContext(ctx, args...); err != nil {
+		switch n := fid % size; {
+		case n == 0:
+			_, err = group.ExecContext(ctx, args...)
+		case fid == len(l.Features):
+			_, err = c.ExecContext(ctx, insert+row+strings.Repeat(`, `+row, n-1), args...)
+		default:
+			continue
+		}
+		if err != nil {
 			return err
 		}
+		args, blobs = args[:0], blobs[:0]
 	}
 	return nil
 }

@@ -5,7 +5,9 @@ import (
 	"encoding/binary"
 	"encoding/hex"
 	"hash"
+	"io"
 	"math"
+	"sync"
 
 	"groundtally/geo"
 )
@@ -15,7 +17,7 @@ import (
 // little-endian integer; every number is its IEEE 754 bits, little-endian, with negative zero written
 // as zero. The layer's name is not part of it.
 func LayerDigest(l *geo.Layer) string {
-	d := digester{h: sha256.New()}
+	d := newDigester()
 	d.text("layer 1")
 	d.count(len(l.Columns))
 	for _, c := range l.Columns {
@@ -55,34 +57,63 @@ func LayerDigest(l *geo.Layer) string {
 
 // BlobDigest gives the SHA-256 of a file kept whole.
 func BlobDigest(media string, data []byte) string {
-	d := digester{h: sha256.New()}
+	d := newDigester()
 	d.text("blob 1")
 	d.text(media)
 	d.text(string(data))
 	return d.sum()
 }
 
+// digester gathers what is digested, so that the hash takes it in large pieces. It serves until its sum is
+// taken.
 type digester struct {
 	h   hash.Hash
-	buf [8]byte
+	buf [2048]byte
+	n   int
 }
 
-func (d *digester) count(n int) {
-	binary.LittleEndian.PutUint64(d.buf[:], uint64(n))
-	d.h.Write(d.buf[:])
+// digesters are kept for the next: every shape of a layer is digested by itself.
+var digesters = sync.Pool{New: func() any { return &digester{h: sha256.New()} }}
+
+func newDigester() *digester {
+	d, _ := digesters.Get().(*digester) // the pool holds nothing else
+	d.h.Reset()
+	d.n = 0
+	return d
+}
+
+func (d *digester) count(n int) { d.word(uint64(n)) }
+
+func (d *digester) word(w uint64) {
+	if d.n+8 > len(d.buf) {
+		d.flush()
+	}
+	binary.LittleEndian.PutUint64(d.buf[d.n:], w)
+	d.n += 8
 }
 
 func (d *digester) text(s string) {
 	d.count(len(s))
-	d.h.Write([]byte(s))
+	if d.n+len(s) > len(d.buf) {
+		d.flush()
+	}
+	if len(s) > len(d.buf) {
+		_, _ = io.WriteString(d.h, s) // a hash takes everything
+		return
+	}
+	d.n += copy(d.buf[d.n:], s)
+}
+
+func (d *digester) flush() {
+	d.h.Write(d.buf[:d.n])
+	d.n = 0
 }
 
 func (d *digester) number(f float64) {
 	if f == 0 {
 		f = math.Abs(f) // drops the sign of negative zero
 	}
-	binary.LittleEndian.PutUint64(d.buf[:], math.Float64bits(f))
-	d.h.Write(d.buf[:])
+	d.word(math.Float64bits(f))
 }
 
 func (d *digester) flag(b bool) {
@@ -93,4 +124,9 @@ func (d *digester) flag(b bool) {
 	}
 }
 
-func (d *digester) sum() string { return hex.EncodeToString(d.h.Sum(nil)) }
+func (d *digester) sum() string {
+	d.flush()
+	sum := hex.EncodeToString(d.h.Sum(d.buf[:0]))
+	digesters.Put(d)
+	return sum
+}

@@ -532,6 +532,9 @@ func toDegrees(ctx context.Context, rec *LayerRecord, in Import, layer *geo.Laye
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
+		if unmoved(layer.Features[i].Geometry, transform) {
+			continue
+		}
 		var bad error
 		layer.Features[i].Geometry = geo.Map(layer.Features[i].Geometry, func(p geo.LonLat) geo.LonLat {
 			q, err := transform(p)
@@ -548,6 +551,20 @@ func toDegrees(ctx context.Context, rec *LayerRecord, in Import, layer *geo.Laye
 		return nil, &FileError{File: in.File, Where: "feature " + f, What: fmt.Sprintf("its coordinates are no longitude and latitude in %s", CRSWords(rec.CRS)), Cure: "Give the right coordinate system with --crs AUTH:CODE"}
 	}
 	return nil, nil
+}
+
+// unmoved reports whether a transform leaves every position where it is, so that no copy is needed.
+func unmoved(g geo.LonLatGeometry, transform func(geo.LonLat) (geo.LonLat, error)) bool {
+	for _, part := range g.Parts {
+		for _, ring := range part {
+			for _, p := range ring {
+				if q, err := transform(p); err != nil || q != p {
+					return false
+				}
+			}
+		}
+	}
+	return true
 }
 
 // ToDegrees gives the layer of a read file in longitude and latitude on WGS 84, without a role.
@@ -872,7 +889,7 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 	seenShape := map[string]string{}
 	seenID := map[string]int{}
 	kinds := map[string]int{}
-	kept := layer.Features[:0:0]
+	kept := layer.Features[:0] // the list is this layer's own
 	var flats []geo.XYGeometry // of parcels
 	ready, err := readied(ctx, in, layer, role, forward, tools)
 	if err != nil {
@@ -946,6 +963,7 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 			flats = append(flats, flat)
 		}
 	}
+	clear(layer.Features[len(kept):])
 	layer.Features = kept
 	if len(flats) > 0 {
 		size := func(g geo.XYGeometry) (float64, float64) { return measure.AreaM2(g), measure.LengthM(g) }

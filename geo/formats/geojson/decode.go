@@ -7,6 +7,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -108,9 +109,11 @@ type decoder struct {
 
 	events    []event
 	positions int
-	row       int    // number of the feature being read
-	id        string // its id as far as read
-	inside    bool   // a feature is being read
+	ringBuf   []geo.LonLat // of the ring being read
+	setBuf    []bool       // properties of the feature that were there
+	row       int          // number of the feature being read
+	id        string       // its id as far as read
+	inside    bool         // a feature is being read
 	crs       string
 	crsSaid   bool
 	name      string
@@ -337,7 +340,7 @@ type held struct {
 // document reads a collection, a feature or a geometry.
 func (d *decoder) document() error {
 	start := d.s.offset()
-	seen := map[string]bool{}
+	var seen memberNames
 	var g shape
 	var f pending
 	var waiting []held
@@ -345,7 +348,7 @@ func (d *decoder) document() error {
 	d.inside = false
 	first := len(d.layer.Features)
 	err := d.s.object(func(member string) error {
-		if err := d.once(seen, member); err != nil {
+		if err := d.once(&seen, member); err != nil {
 			return err
 		}
 		collection := g.typ == "FeatureCollection"
@@ -395,7 +398,7 @@ func (d *decoder) document() error {
 	}
 	switch {
 	case g.typ == "FeatureCollection":
-		if !seen["features"] {
+		if !seen.has("features") {
 			return d.fault(start, "not_geojson", "the collection has no features member", doExport)
 		}
 		d.name = name
@@ -430,12 +433,35 @@ func (d *decoder) fault(at int64, code, what, do string) *Error {
 	return &Error{Offset: at, Code: code, What: what, Do: do}
 }
 
-func (d *decoder) once(seen map[string]bool, name string) error {
-	if seen[name] {
+func (d *decoder) once(seen *memberNames, name string) error {
+	if seen.has(name) {
 		return d.s.fault("member_twice", fmt.Sprintf("the member %q stands twice", name), "which of the two is meant cannot be known; "+doExport)
 	}
-	seen[name] = true
+	seen.add(name)
 	return nil
+}
+
+// memberNames are the names of an object's members so far: few as a rule, and then without a map.
+type memberNames struct {
+	few  [6]string
+	n    int
+	many map[string]bool
+}
+
+func (m *memberNames) has(name string) bool {
+	return slices.Contains(m.few[:m.n], name) || m.many[name]
+}
+
+func (m *memberNames) add(name string) {
+	if m.n < len(m.few) {
+		m.few[m.n] = name
+		m.n++
+		return
+	}
+	if m.many == nil {
+		m.many = map[string]bool{}
+	}
+	m.many[name] = true
 }
 
 // pending is a feature while it is read.
@@ -469,11 +495,11 @@ func (d *decoder) feature() error {
 		return d.s.fault("not_geojson", "a feature is not an object", doExport)
 	}
 	start := d.s.offset()
-	seen := map[string]bool{}
+	var seen memberNames
 	var f pending
 	typ := ""
 	err := d.s.object(func(name string) error {
-		if err := d.once(seen, name); err != nil {
+		if err := d.once(&seen, name); err != nil {
 			return err
 		}
 		if name == "type" {
@@ -555,7 +581,8 @@ func (d *decoder) properties(f *pending) error {
 	if n := len(d.layer.Columns); n > 0 {
 		f.values = make([]geo.Value, 0, n)
 	}
-	set := make([]bool, len(d.layer.Columns))
+	set := append(d.setBuf[:0], make([]bool, len(d.layer.Columns))...)
+	defer func() { d.setBuf = set }()
 	return d.s.object(func(name string) error {
 		i, ok := d.index[name]
 		if !ok {
@@ -634,6 +661,9 @@ func (d *decoder) finish(f *pending) error {
 		d.noteShape(&f.geom, ft.Geometry)
 	} else {
 		d.note("geometry_missing", "", 1)
+	}
+	if len(d.layer.Features) == cap(d.layer.Features) {
+		d.layer.Features = slices.Grow(d.layer.Features, len(d.layer.Features)+1)
 	}
 	d.layer.Features = append(d.layer.Features, ft)
 	d.rows = append(d.rows, d.row)

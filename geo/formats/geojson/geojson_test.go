@@ -4,10 +4,12 @@ import (
 	"bytes"
 	"context"
 	"encoding/csv"
+	"encoding/json"
 	"errors"
 	"fmt"
 	"io"
 	"math"
+	"math/rand/v2"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -627,6 +629,37 @@ func BenchmarkEncode(b *testing.B) {
 	for b.Loop() {
 		if err := Encode(ctx, io.Discard, l, EncodeOptions{}); err != nil {
 			b.Fatal(err)
+		}
+	}
+}
+
+// The short way of reading a number gives the bits of the standard library's or leaves it alone.
+func TestPlainNumberIsTheNearestDouble(t *testing.T) {
+	r := rand.New(rand.NewPCG(1, 2))
+	texts := []string{"0", "-0", "0.0", "1", "9007199254740992", "9007199254740993", "0.1", "-0.3", "179.99999999", "9.067682100000001", "00", "01", "-01.5", ".5", "1.", "-", "", "1e5", "1.5E3", "1..2", "1.2.3", "0.00000000000000000000001", "0.0000000000000000000001"}
+	for range 200_000 {
+		texts = append(texts, strconv.FormatFloat((r.Float64()-0.5)*math.Pow(10, float64(r.IntN(9))), 'f', r.IntN(18), 64))
+	}
+	read := 0
+	for _, text := range texts {
+		for _, end := range []string{",", "]", "}", " ", "\n"} {
+			literal, v, whole, ok := plainNumber([]byte(text + end))
+			if !ok {
+				continue
+			}
+			read++
+			want, err := strconv.ParseFloat(text, 64)
+			if err != nil || !json.Valid([]byte(text)) || string(literal) != text || math.Float64bits(v) != math.Float64bits(want) || whole == strings.Contains(text, ".") {
+				t.Fatalf("%q reads as %v (%q, whole %v), the standard library says %v (%v)", text, v, literal, whole, want, err)
+			}
+		}
+	}
+	if read < len(texts) {
+		t.Errorf("only %d of %d texts went the short way", read, len(texts))
+	}
+	for _, open := range []string{"12", "1.5", "1x,", "1e5,", "1-,"} {
+		if _, _, _, ok := plainNumber([]byte(open)); ok {
+			t.Errorf("%q is taken, though it may not end there", open)
 		}
 	}
 }

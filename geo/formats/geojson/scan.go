@@ -41,6 +41,25 @@ type scanner struct {
 
 	opened  bool // the bracket of a position has been passed already
 	scratch []byte
+	names   map[string]string // member names met so far, to hold each once
+}
+
+// maxNames bounds the member names that are kept, for files that never repeat one.
+const maxNames = 4096
+
+// intern gives the text that the bytes spell, as one string for all members of that name.
+func (s *scanner) intern(b []byte) string {
+	if name, ok := s.names[string(b)]; ok {
+		return name
+	}
+	name := string(b)
+	if len(s.names) < maxNames {
+		if s.names == nil {
+			s.names = map[string]string{}
+		}
+		s.names[name] = name
+	}
+	return name
 }
 
 func (s *scanner) offset() int64 { return s.base + int64(s.pos) }
@@ -206,10 +225,11 @@ func (s *scanner) object(fn func(name string) error) error {
 		} else if c != '"' {
 			return s.unexpected(c, "a member name in double quotes")
 		}
-		name, err := s.text()
+		b, err := s.textBytes()
 		if err != nil {
 			return err
 		}
+		name := s.intern(b)
 		if err := s.take(':'); err != nil {
 			return err
 		}
@@ -238,30 +258,48 @@ func (s *scanner) array(fn func(i int) error) error {
 // text reads a string. Broken escapes and bytes that are not UTF-8 are faults, since what they stood
 // for cannot be known.
 func (s *scanner) text() (string, error) {
+	b, err := s.textBytes()
+	return string(b), err
+}
+
+// textBytes reads a string as text does; the bytes stay valid until the next call.
+func (s *scanner) textBytes() ([]byte, error) {
 	if err := s.take('"'); err != nil {
-		return "", err
+		return nil, err
+	}
+	// Most texts are plain and lie in the block whole.
+	for i := s.pos; i < s.end; i++ {
+		c := s.buf[i]
+		if c == '"' && i-s.pos <= s.maxValue {
+			b := s.buf[s.pos:i]
+			s.pos = i + 1
+			return b, nil
+		}
+		if c < ' ' || c == '\\' || c >= utf8.RuneSelf {
+			break
+		}
 	}
 	s.scratch = s.scratch[:0]
 	ascii := true
 	for {
 		c, ok := s.peek()
 		if !ok {
-			return "", s.ended()
+			return nil, s.ended()
 		}
 		switch {
 		case c == '"':
 			if !ascii && !utf8.Valid(s.scratch) {
-				return "", s.fault("not_utf8", "a text is not in UTF-8", "save the file as UTF-8")
+				return nil, s.fault("not_utf8", "a text is not in UTF-8", "save the file as UTF-8")
 			}
 			s.pos++
-			return string(s.scratch), nil
+			return s.scratch, nil
 		case c == '\\':
 			if err := s.escape(); err != nil {
-				return "", err
+				return nil, err
 			}
 			ascii = false
 		case c < ' ':
-			return "", s.unexpected(c, "the end of a text or an escape")
+			return nil, s.unexpected(c, "the end of a text or an escape")
 		default:
 			s.pos++
 			if c >= utf8.RuneSelf {
@@ -270,7 +308,7 @@ func (s *scanner) text() (string, error) {
 			s.scratch = append(s.scratch, c)
 		}
 		if len(s.scratch) > s.maxValue {
-			return "", s.fault("value_too_long", fmt.Sprintf("a text is longer than %d bytes", s.maxValue), doExport)
+			return nil, s.fault("value_too_long", fmt.Sprintf("a text is longer than %d bytes", s.maxValue), doExport)
 		}
 	}
 }
@@ -350,6 +388,10 @@ const maxNumber = 1200
 // number reads a number by the grammar of RFC 8259; whole is true when it has neither fraction nor
 // exponent. The literal stays valid until the next call.
 func (s *scanner) number() (literal []byte, value float64, whole bool, err error) {
+	if literal, value, whole, ok := plainNumber(s.buf[s.pos:s.end]); ok {
+		s.pos += len(literal)
+		return literal, value, whole, nil
+	}
 	at := s.offset()
 	s.scratch = s.scratch[:0]
 	next := func() byte {
@@ -415,6 +457,56 @@ func (s *scanner) number() (literal []byte, value float64, whole bool, err error
 		return nil, 0, false, e
 	}
 	return s.scratch, value, whole, nil
+}
+
+// pow10 are the powers of ten that a double holds exactly.
+var pow10 = [...]float64{1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22}
+
+// plainNumber reads a number without an exponent that lies whole in the bytes and whose digits, read as a
+// whole number, and whose power of ten are doubles exactly: one division then gives the nearest double
+// (W. D. Clinger, How to read floating point numbers accurately, 1990). It is not ok for any other, good
+// or bad.
+func plainNumber(b []byte) (literal []byte, value float64, whole, ok bool) {
+	i := 0
+	negative := len(b) > 0 && b[0] == '-'
+	if negative {
+		i = 1
+	}
+	first := i
+	var m uint64
+	point := -1
+	for ; i < len(b); i++ {
+		c := b[i]
+		if c-'0' <= 9 {
+			if m = m*10 + uint64(c-'0'); m > maxWhole {
+				return nil, 0, false, false
+			}
+			continue
+		}
+		if c != '.' || point >= 0 {
+			break
+		}
+		point = i
+	}
+	// The byte behind must be there, and end the number for sure.
+	if i >= len(b) || i == first || point == first || point == i-1 || b[i] != ',' && b[i] != ']' && b[i] != '}' && b[i] > ' ' {
+		return nil, 0, false, false
+	}
+	if b[first] == '0' && i-first > 1 && point != first+1 {
+		return nil, 0, false, false // a needless zero
+	}
+	value = float64(m)
+	if point >= 0 {
+		places := i - point - 1
+		if places >= len(pow10) {
+			return nil, 0, false, false
+		}
+		value /= pow10[places]
+	}
+	if negative {
+		value = -value
+	}
+	return b[:i], value, point < 0, true
 }
 
 func short(b []byte) string {

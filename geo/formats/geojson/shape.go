@@ -2,6 +2,7 @@ package geojson
 
 import (
 	"fmt"
+	"slices"
 
 	"groundtally/geo"
 )
@@ -58,10 +59,10 @@ func (d *decoder) geometry(into *gathered) error {
 	} else if c != '{' {
 		return d.s.fault("not_geojson", "the geometry is not an object", doExport)
 	}
-	seen := map[string]bool{}
+	var seen memberNames
 	var g shape
 	if err := d.s.object(func(name string) error {
-		if err := d.once(seen, name); err != nil {
+		if err := d.once(&seen, name); err != nil {
 			return err
 		}
 		return d.shapeMember(name, &g)
@@ -268,13 +269,16 @@ func (d *decoder) ring(g *gathered) ([]geo.LonLat, error) {
 	if err := d.list("list of positions"); err != nil {
 		return nil, err
 	}
-	var ring []geo.LonLat
+	d.ringBuf = d.ringBuf[:0]
 	err := d.s.array(func(int) error {
 		p, err := d.position(g)
-		ring = append(ring, p)
+		d.ringBuf = append(d.ringBuf, p)
 		return err
 	})
-	return ring, err
+	if len(d.ringBuf) == 0 {
+		return nil, err
+	}
+	return slices.Clone(d.ringBuf), err
 }
 
 func (d *decoder) position(g *gathered) (geo.LonLat, error) {
