@@ -35,6 +35,7 @@ type reckoner struct {
 	want    []int // slots of the keys that the graph gives
 	wantKey []int // their place in keys
 	demand  fact
+	inputs  string // what every candidate depends on
 }
 
 func (w *world) newReckoner() (*reckoner, error) {
@@ -118,6 +119,7 @@ func (w *world) newReckoner() (*reckoner, error) {
 			k.wantKey = append(k.wantKey, i)
 		}
 	}
+	k.inputs = k.key(w)
 	return k, nil
 }
 

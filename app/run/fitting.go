@@ -71,10 +71,11 @@ type fitter struct {
 	temps *sunlight // temperatures for grids of sunlight without such; nil without any
 	wide  *heights  // as far as horizons are looked for; nil without terrain
 
-	mu       sync.Mutex
-	climates map[string]*solar.Climate
-	years    map[string]solarYear
-	lies     map[string]lie // by site
+	mu        sync.Mutex
+	climates  map[string]*solar.Climate
+	years     map[string]solarYear
+	lies      map[string]lie // by site
+	freshLies map[string]lie // those that are not kept yet
 }
 
 // latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
@@ -84,7 +85,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}

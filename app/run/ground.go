@@ -132,6 +132,12 @@ func (rs *ruleset) key(w *world, s site) string {
 		k.text(w.terrain.rec.Digest)
 		k.text(w.terrain.rec.CRS)
 	}
+	rs.keyHeights(k, w, s)
+	return k.sum()
+}
+
+// keyHeights writes the height limits near a site.
+func (rs *ruleset) keyHeights(k *keyer, w *world, s site) {
 	rs.eachHeightLimit(s, func(h heightLimit, i int) {
 		k.text(heightRule)
 		k.num(rs.tipM)
@@ -142,6 +148,17 @@ func (rs *ruleset) key(w *world, s site) string {
 			k.text(w.terrain.rec.CRS)
 		}
 	})
+}
+
+// keyBeyond gives what the steps behind the ground read of the site and of the rules that its result does
+// not hold.
+func (rs *ruleset) keyBeyond(w *world, s site) string {
+	k := newKey("beyond the ground", groundEdition)
+	k.geometry(s.geom)
+	k.num(rs.patchM2)
+	k.num(rs.tipM)
+	k.num(rs.rotorM)
+	rs.keyHeights(k, w, s)
 	return k.sum()
 }
 

@@ -351,7 +351,7 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 			for i, s := range sc {
 				v := scoring.UnknownBecause("not_assessed")
 				if column[i] >= 0 {
-					v = draw.samples[at[item]][trial][column[i]]
+					v = draw.samples[at[item]].value(trial*len(draw.keys) + column[i])
 				}
 				x, err := s.trial(v)
 				if err != nil {
@@ -439,12 +439,44 @@ type draws struct {
 	keys    []string
 	slots   []int
 	cores   int
-	mu      sync.Mutex          // voices fill it one after the other
-	samples [][][]scoring.Value // by candidate, trial, key
+	mu      sync.Mutex // voices fill it one after the other
+	samples []sample   // by candidate
 }
 
-func newDraws(snap *study.Snapshot, p *Params, cores, candidates int) *draws {
-	d := &draws{cores: cores, samples: make([][][]scoring.Value, candidates)}
+// sample holds the trials of a candidate, trial by trial.
+type sample struct {
+	x   []float64       // where the value is no number, oddBits and its place in odd
+	odd []scoring.Value // most candidates have one or two that repeat
+}
+
+// oddBits are the bits of what is not a number; no computed number has them.
+const oddBits = 0x7ff8_1000_0000_0000
+
+func (s *sample) value(i int) scoring.Value {
+	x := s.x[i]
+	if bits := math.Float64bits(x); bits&^0xffff_ffff == oddBits {
+		return s.odd[bits&0xffff_ffff]
+	}
+	return scoring.Value{X: x}
+}
+
+func (s *sample) add(v scoring.Value) {
+	if v.State == scoring.Number {
+		s.x = append(s.x, v.X)
+		return
+	}
+	at := slices.Index(s.odd, v)
+	if at < 0 {
+		at = len(s.odd)
+		s.odd = append(s.odd, v)
+	}
+	s.x = append(s.x, math.Float64frombits(oddBits|uint64(at)))
+}
+
+// newDraws begins the trials of results. Of earlier results those of candidates that are the same are taken
+// over, where everything else that they depend on is the same too.
+func newDraws(snap *study.Snapshot, p *Params, cores int, out, before *Results) *draws {
+	d := &draws{cores: cores, samples: make([]sample, len(out.Candidates))}
 	for _, k := range p.Keys() {
 		slot, ok := p.Graph.Slot(k.Key)
 		if !ok {
@@ -457,16 +489,37 @@ func newDraws(snap *study.Snapshot, p *Params, cores, candidates int) *draws {
 			}
 		}
 	}
+	if before == nil || before.draws == nil || before.reckoner.inputs != out.reckoner.inputs || !slices.Equal(before.draws.keys, d.keys) {
+		return d
+	}
+	known := map[digest]int{}
+	for i, s := range before.draws.samples {
+		if s.x != nil {
+			known[before.digests[i]] = i
+		}
+	}
+	for i, sum := range out.digests {
+		if at, ok := known[sum]; ok {
+			d.samples[i] = before.draws.samples[at]
+		}
+	}
 	return d
 }
 
 func (d *draws) ready(ctx context.Context, k *reckoner, cs []Candidate, which []int, n int) error {
 	return forEach(ctx, d.cores, len(which), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
 		c := which[i]
-		if len(d.samples[c]) < n {
-			drawn := append(slices.Clone(k.drawn), k.siteDraws(cs[c].Site, sigmas(&cs[c]))...)
-			d.samples[c] = k.p.Graph.Samples(k.vector(&cs[c]), drawn, d.slots, n)
+		if len(d.samples[c].x) >= n*len(d.keys) && d.samples[c].x != nil {
+			return nil
 		}
+		drawn := append(slices.Clone(k.drawn), k.siteDraws(cs[c].Site, sigmas(&cs[c]))...)
+		s := sample{x: make([]float64, 0, n*len(d.keys))}
+		for _, row := range k.p.Graph.Samples(k.vector(&cs[c]), drawn, d.slots, n) {
+			for _, v := range row {
+				s.add(v)
+			}
+		}
+		d.samples[c] = s
 		return nil
 	}, nil)
 }

@@ -297,8 +297,11 @@ type Results struct {
 	Notices    []geo.Notice
 	Code       Code
 
-	made     []geo.Notice // notices of the steps before weighing
-	digests  []digest     // of the candidates
-	keys     []digest     // of what each candidate was computed from
+	made     []geo.Notice  // notices of the steps before weighing
+	digests  []digest      // of the candidates
+	keys     []digest      // of the inputs of each candidate
+	contents []contentKeys // of what its last steps read
+	draws    *draws        // for the next results
+	terrain  *keptTerrain  // for the next results; nil when no step read it
 	reckoner *reckoner
 }

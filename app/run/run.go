@@ -54,7 +54,11 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if cores <= 0 {
 		cores = runtime.NumCPU()
 	}
-	r := &runner{w: w, cores: cores, cache: e.Cache, progress: e.Progress, before: e.Before.byKey(), prev: e.Before}
+	if e.Before != nil {
+		w.kept.Store(e.Before.terrain)
+	}
+	r := &runner{w: w, cores: cores, cache: e.Cache, progress: e.Progress, prev: e.Before}
+	r.before, r.settled = e.Before.byKey()
 	if r.f, err = w.newFitter(ctx, e.Cache); err != nil {
 		return nil, err
 	}
@@ -64,12 +68,13 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if err := r.makePlans(ctx); err != nil {
 		return nil, err
 	}
-	cs, digests, err := r.run(ctx)
+	out, err := r.run(ctx)
 	if err != nil {
 		return nil, err
 	}
-	out := &Results{Candidates: cs, Steps: r.counts(), Notices: w.notices, made: w.notices, digests: digests, keys: r.keys(), reckoner: r.k}
-	if err := e.weigh(ctx, snap, out, cores); err != nil {
+	out.terrain = w.kept.Load()
+	out.Steps, out.Notices, out.made = r.counts(), w.notices, w.notices
+	if err := e.weigh(ctx, snap, out, e.Before, cores); err != nil {
 		return nil, err
 	}
 	return out, nil
@@ -83,13 +88,13 @@ func (e *Engine) Reweigh(ctx context.Context, snap *study.Snapshot, prev *Result
 	if cores <= 0 {
 		cores = runtime.NumCPU()
 	}
-	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, reckoner: prev.reckoner}
+	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, contents: prev.contents, terrain: prev.terrain, reckoner: prev.reckoner}
 	for _, c := range prev.Steps {
 		if c.Step != orderStep {
 			out.Steps = append(out.Steps, StepCount{Step: c.Step, Valid: c.Computed + c.Valid})
 		}
 	}
-	if err := e.weigh(ctx, snap, out, cores); err != nil {
+	if err := e.weigh(ctx, snap, out, prev, cores); err != nil {
 		return nil, err
 	}
 	return out, nil
@@ -123,9 +128,10 @@ func OnlyWeighing(a, b *study.Snapshot) bool {
 const orderStep = "order"
 
 // weigh fills in the orders of all voices with what belongs to them, and the check code.
-func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out *Results, cores int) error {
+func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out, before *Results, cores int) error {
 	cs := out.Candidates
-	draw := newDraws(snap, e.Params, cores, len(cs))
+	draw := newDraws(snap, e.Params, cores, out, before)
+	out.draws = draw
 	voices := snap.Voices()
 	orders := make([]VoiceOrder, len(voices))
 	unready := make([]*VoiceError, len(voices))

@@ -45,9 +45,38 @@ func (f *fitter) lie(s site) (lie, error) {
 		return lie{}, err
 	}
 	f.mu.Lock()
-	f.lies[s.id] = out
+	f.lies[s.id], f.freshLies[s.id] = out, out
 	f.mu.Unlock()
 	return out, nil
+}
+
+// lieKey gives what the lie of a site depends on; empty without heights, where there is nothing to find out.
+func (f *fitter) lieKey(s site) string {
+	if f.wide == nil {
+		return ""
+	}
+	k := newKey(lieStep, 1)
+	k.text(f.wide.rec.Digest)
+	k.text(f.wide.rec.CRS)
+	k.num(f.w.frame.Centre().Lon)
+	k.num(f.w.frame.Centre().Lat)
+	k.geometry(s.geom)
+	return k.sum()
+}
+
+// bytes gives a lie as it is kept.
+func (l *lie) bytes() []byte {
+	return append(append([]byte{l.slope, l.aspect}, l.horizon[:]...), l.notice...)
+}
+
+// lieOf reads a lie that was kept; ok is false for anything else.
+func lieOf(data []byte) (l lie, ok bool) {
+	if len(data) < 2+len(l.horizon) {
+		return l, false
+	}
+	l.slope, l.aspect, l.notice = data[0], data[1], string(data[2+len(l.horizon):])
+	copy(l.horizon[:], data[2:])
+	return l, true
 }
 
 func lieOn(t *terrain.Grid, frame crs.Frame, s site) (out lie, err error) {

@@ -162,7 +162,8 @@ type world struct {
 	sites   []site
 	options []option
 	terrain *heights
-	grids   []*resourceGrid // of wind and sun, in the order of their names
+	kept    *atomic.Pointer[keptTerrain] // heights of an earlier computation, then of this
+	grids   []*resourceGrid              // of wind and sun, in the order of their names
 	notices []geo.Notice
 
 	load     Loader
@@ -181,6 +182,21 @@ type heights struct {
 	err   error
 }
 
+// keptTerrain are heights in the local frame, with all that they follow from, for the next computation.
+type keptTerrain struct {
+	digest, crs string
+	centre      geo.LonLat
+	box         geo.Extent
+	grid        *terrain.Grid
+}
+
+// mostKeptCells bounds the heights that stay in memory between computations, to 16 MB.
+const mostKeptCells = 4 << 20
+
+func (k *keptTerrain) same(o *keptTerrain) bool {
+	return k.digest == o.digest && k.crs == o.crs && k.centre == o.centre && k.box == o.box
+}
+
 func (h *heights) get() (*terrain.Grid, error) {
 	h.once.Do(func() { h.grid, h.err = h.load() })
 	return h.grid, h.err
@@ -196,7 +212,7 @@ var ErrNoPlants = errors.New("the study has no plant option yet; make one, as pl
 type Loader func(ctx context.Context, digest string) (study.Version, error)
 
 func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader) (*world, error) {
-	w := &world{snap: snap, p: p, load: load, byRole: map[string][]*layer{}, tables: map[string]*geo.Layer{}}
+	w := &world{snap: snap, p: p, load: load, kept: &atomic.Pointer[keptTerrain]{}, byRole: map[string][]*layer{}, tables: map[string]*geo.Layer{}}
 	if len(snap.LayersOf("parcels")) == 0 || snap.Frame == nil {
 		return nil, ErrNoParcels
 	}
@@ -281,6 +297,15 @@ func readGrid(ctx context.Context, rec study.LayerRecord, load Loader) (*raster.
 
 // readTerrain brings the heights around the parcels into the local frame, at the cells of the file.
 func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loader) (*terrain.Grid, error) {
+	box := geo.EmptyExtent()
+	for _, s := range w.sites {
+		box = box.Union(s.box)
+	}
+	box = box.Union(w.terrain.reach).Grow(terrainMarginM)
+	now := &keptTerrain{digest: rec.Digest, crs: rec.CRS, centre: w.frame.Centre(), box: box}
+	if old := w.kept.Load(); old != nil && old.same(now) {
+		return old.grid, nil
+	}
 	raw, t, err := readGrid(ctx, rec, load)
 	if err != nil {
 		return nil, err
@@ -289,11 +314,6 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	if err != nil {
 		return nil, err
 	}
-	box := geo.EmptyExtent()
-	for _, s := range w.sites {
-		box = box.Union(s.box)
-	}
-	box = box.Union(w.terrain.reach).Grow(terrainMarginM)
 	cell := math.Min(raw.CellX, raw.CellY)
 	if geographic(t, w.frame) {
 		cell *= metresPerDegree
@@ -323,6 +343,10 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	})
 	if err == nil {
 		err = bad
+	}
+	if err == nil && w.terrain.reach.Empty() && nx*ny <= mostKeptCells {
+		now.grid = g
+		w.kept.Store(now)
 	}
 	return g, err
 }
