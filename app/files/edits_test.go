@@ -165,7 +165,7 @@ func TestChangesByHand(t *testing.T) {
 	if len(l.Features[0].Geometry.Parts) != 2 {
 		t.Errorf("%d parts, want the two triangles", len(l.Features[0].Geometry.Parts))
 	}
-	if len(rec.Notices) != 1 || rec.Notices[0].Code != "drawn_repaired" || rec.Notices[0].Args["area_after_ha"] == "0.0000" {
+	if len(rec.Notices) != 1 || rec.Notices[0].Code != "drawn_repaired_crossed" || rec.Notices[0].Args["area_after_ha"] == "0.0000" {
 		t.Errorf("the repair is told as %+v", rec.Notices)
 	}
 	// Moved to a place where it is valid, it is no longer said to be repaired.

@@ -26,11 +26,11 @@ type runner struct {
 	before   map[digest]int // candidates of prev by their inputs
 	settled  map[digest]int // and by what their last steps read
 
-	plans            []plan
-	assets           []asset
-	common, machines string                    // of every candidate's key
-	layers           map[string]*overlay.Layer // widened once for all rulesets
-	ready            map[*ruleset]bool
+	plans    []plan
+	assets   []asset
+	machines string                    // what is known of machines, as a digest
+	layers   map[string]*overlay.Layer // widened once for all rulesets
+	ready    map[*ruleset]bool
 
 	computed map[string]int
 	wanted   map[string]map[string]bool // digests of this state by step

@@ -470,8 +470,8 @@ func (s *Study) byHand(snap *Snapshot, content *geo.Layer, rec *LayerRecord, rol
 		}
 		if r.Changed {
 			at := anyPosition(*h.Geometry)
-			notices = append(notices, geo.Notice{Code: "drawn_repaired", Severity: geo.Warning, Layer: rec.Name, Feature: h.Feature, At: &at, Args: map[string]string{
-				"area_before_ha": hectares(r.BeforeM2), "area_after_ha": hectares(r.AfterM2)}})
+			code, args := repairWords("drawn_repaired", r)
+			notices = append(notices, geo.Notice{Code: code, Severity: geo.Warning, Layer: rec.Name, Feature: h.Feature, At: &at, Args: args})
 		}
 	}
 	if err := h.apply(content, rec, role); err != nil {
@@ -480,7 +480,7 @@ func (s *Study) byHand(snap *Snapshot, content *geo.Layer, rec *LayerRecord, rol
 	// What was said of an earlier change by hand of the feature is no longer so.
 	rec.Notices = slices.DeleteFunc(slices.Clone(rec.Notices), func(n geo.Notice) bool {
 		_, again := h.Values[n.Field]
-		return n.Feature == h.Feature && (n.Code == "drawn_repaired" && (h.Geometry != nil || h.Verb == HandRemove) || n.Code == "hand_value_new" && (again || h.Verb == HandRemove))
+		return n.Feature == h.Feature && (strings.HasPrefix(n.Code, "drawn_repaired") && (h.Geometry != nil || h.Verb == HandRemove) || n.Code == "hand_value_new" && (again || h.Verb == HandRemove))
 	})
 	rec.Notices = append(rec.Notices, notices...)
 	rec.Hand = append(rec.Hand, *h)

@@ -202,6 +202,47 @@ func DescribeGrid(rec *LayerRecord, in Import, role Role, snap *Snapshot) []Ques
 	return nil
 }
 
+// GridAsks are the questions about a grid of a resource, with what the file's name or the layer that it replaces
+// proposes.
+type GridAsks struct {
+	Fields []RoleField // that the values can be
+	Number RoleField   // height or month: one number for the whole grid
+	Field  string      // proposed, or empty
+	Unit   string
+	Value  string // of Number
+}
+
+// GridUnits gives the units that the values of a grid can have: those of the field, and for sums of a month the
+// mean sum of a day.
+func GridUnits(f RoleField) []string {
+	out := units.Alike(f.Unit)
+	if day := strings.Replace(f.Unit, "month)", "day)", 1); day != f.Unit {
+		out = append(out, day)
+	}
+	return out
+}
+
+// AskGrid gives the questions about a grid that is to serve in a role; ok is false where none is asked.
+func AskGrid(in Import, role Role, before LayerRecord) (a GridAsks, ok bool) {
+	g, ok := gridRoles[role.Name]
+	if !ok || in.Layer != nil {
+		return a, false
+	}
+	for _, name := range g.fields {
+		if f, there := role.Field(name); there {
+			a.Fields = append(a.Fields, f)
+		}
+		if before.Match[name] == GridBand {
+			a.Field, a.Unit = name, before.Units[GridBand]
+		}
+	}
+	a.Number, _ = role.Field(g.number)
+	name := strings.ToLower(strings.TrimSuffix(in.Base, ext(in.Base)))
+	a.Field = first(a.Field, gridField(g.fields, name))
+	a.Value = first(before.Match[g.number], gridNumberIn(g.number, name))
+	return a, true
+}
+
 // gridField proposes the field that a grid holds from its file's name; of several words the longest counts.
 func gridField(fields []string, name string) string {
 	best, length := "", 0

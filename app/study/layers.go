@@ -398,6 +398,10 @@ func (s *Study) prepare(ctx context.Context, rec *LayerRecord, in Import, role R
 			return nil, nil, &QuestionError{File: in.File, Questions: questions}
 		}
 		rec.Kind, rec.Count = "table", len(layer.Features)
+		for _, n := range unfit(rec, role, layer) {
+			n.File, n.Layer = in.Base, rec.Name
+			rec.Notices = append(rec.Notices, n)
+		}
 		return layer, nil, nil
 	}
 
@@ -931,8 +935,8 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 				}
 				shape = shapeDigest(f.Geometry)
 				rec.Ledger.Repaired++
-				note(geo.Notice{Code: "repaired", Severity: geo.Warning, Feature: f.ID, At: &at, Args: map[string]string{
-					"area_before_ha": strconv.FormatFloat(r.BeforeM2/units.M2PerHa, 'f', 4, 64), "area_after_ha": strconv.FormatFloat(r.AfterM2/units.M2PerHa, 'f', 4, 64)}})
+				code, args := repairWords("repaired", r.Repaired)
+				note(geo.Notice{Code: code, Severity: geo.Warning, Feature: f.ID, At: &at, Args: args})
 			}
 		}
 		// A resource point stands once per sector, so equal places are no mistake there.
@@ -965,6 +969,9 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 	}
 	clear(layer.Features[len(kept):])
 	layer.Features = kept
+	for _, n := range unfit(rec, role, layer) {
+		note(n)
+	}
 	if len(flats) > 0 {
 		size := func(g geo.XYGeometry) (float64, float64) { return measure.AreaM2(g), measure.LengthM(g) }
 		if err := parcelChecks(rec, layer, flats, size, tools, note); err != nil {
@@ -980,6 +987,59 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 		}
 	}
 	return nil
+}
+
+// unfit looks through the values of matched columns for those that a field cannot have: one notice for a field,
+// with the first of them.
+func unfit(rec *LayerRecord, role Role, layer *geo.Layer) []geo.Notice {
+	var out []geo.Notice
+	for _, field := range role.Fields {
+		column := layer.ColumnIndex(rec.Match[field.Name])
+		if rec.Match[field.Name] == "" || column < 0 {
+			continue
+		}
+		good := map[string]bool{} // classes repeat
+		n := geo.Notice{Code: "value_unfit", Severity: geo.Warning, Field: field.Name}
+		count := 0
+		for _, f := range layer.Features {
+			v := f.Values[column]
+			text := v.String()
+			if v.Kind == geo.Null || good[text] || strings.TrimSpace(text) == "" {
+				continue
+			}
+			_, err := field.Check(text, rec.Units[rec.Match[field.Name]])
+			if err == nil {
+				if v.Kind == geo.Text && len(good) < 1000 {
+					good[text] = true
+				}
+				continue
+			}
+			if count++; count == 1 {
+				n.Feature = f.ID
+				n.Args = map[string]string{"column": rec.Match[field.Name], "error": err.Error()}
+				if !f.Geometry.Empty() {
+					at := anyPosition(f.Geometry)
+					n.At = &at
+				}
+			}
+		}
+		if count > 0 {
+			n.Args["count"] = strconv.Itoa(count)
+			out = append(out, n)
+		}
+	}
+	return out
+}
+
+// repairWords gives code and words of a repair. Rings that cross themselves may enclose as much one way round as
+// the other; their area before tells nothing then, and is not given.
+func repairWords(code string, r Repaired) (string, map[string]string) {
+	after := map[string]string{"area_after_ha": hectares(r.AfterM2)}
+	if r.BeforeM2 < 0.01*r.AfterM2 {
+		return code + "_crossed", after
+	}
+	after["area_before_ha"] = hectares(r.BeforeM2)
+	return code, after
 }
 
 // ready is a feature with what can be found out of it by itself.

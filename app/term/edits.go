@@ -153,7 +153,7 @@ func (c *call) byHand(h study.HandEdit) (int, error) {
 		c.answer(map[string]any{"study": c.args.places[0], "layer": rec}, "%s, %s. %s; the change is kept for the next edition.", rec.Name, handWords(h), upper(counted(rec.Count, "feature")))
 		c.notices(slices.DeleteFunc(slices.Clone(rec.Notices), func(n geo.Notice) bool {
 			_, now := h.Values[n.Field]
-			return n.Feature != h.Feature || !(n.Code == "drawn_repaired" && h.Geometry != nil || n.Code == "hand_value_new" && now)
+			return n.Feature != h.Feature || !(strings.HasPrefix(n.Code, "drawn_repaired") && h.Geometry != nil || n.Code == "hand_value_new" && now)
 		}))
 		return ExitDone, nil
 	})

@@ -52,6 +52,7 @@ type form struct {
 	namedBox         *fyne.Container
 	reason           *widget.Entry
 	fields           []*fieldRow
+	grid             *gridRow // of a grid of wind or sun
 	fieldBox         *fyne.Container
 	personal         map[string]*widget.Check
 	personalBox      *fyne.Container
@@ -71,6 +72,97 @@ type fieldRow struct {
 	column *widget.Select
 	unit   *widget.Select
 	sure   string // column of the field's own name, which is always taken
+}
+
+// gridRow asks what a grid of wind or sun holds.
+type gridRow struct {
+	study.GridAsks
+	field, unit *widget.Select
+	number      *widget.Entry
+}
+
+// titles gives the fields in words.
+func (g *gridRow) titles() []string {
+	var out []string
+	for _, f := range g.Fields {
+		out = append(out, fieldWords(f))
+	}
+	return out
+}
+
+// chosen gives the field that is chosen.
+func (g *gridRow) chosen() (study.RoleField, bool) {
+	i := slices.Index(g.titles(), g.field.Selected)
+	if i < 0 {
+		return study.RoleField{}, false
+	}
+	return g.Fields[i], true
+}
+
+// fieldChosen offers the units of the field.
+func (g *gridRow) fieldChosen() {
+	f, ok := g.chosen()
+	visible(g.unit, ok && f.Physical())
+	if !ok || !f.Physical() {
+		return
+	}
+	g.unit.SetOptions(study.GridUnits(f))
+	if g.unit.ClearSelected(); f.Name == g.Field && g.Unit != "" {
+		g.unit.SetSelected(g.Unit)
+	}
+}
+
+// answers adds what was answered to an import, and gives what is open.
+func (g *gridRow) answers(in *study.Import) (open []string) {
+	f, ok := g.chosen()
+	switch {
+	case !ok:
+		open = append(open, "What are the values of the grid?")
+	case f.Physical() && g.unit.Selected == "":
+		in.Match[f.Name] = study.GridBand
+		open = append(open, fmt.Sprintf("In which unit are the values (%s)?", fieldWords(f)))
+	default:
+		in.Match[f.Name] = study.GridBand
+		if f.Physical() {
+			in.Units[study.GridBand] = g.unit.Selected
+		}
+	}
+	number := strings.TrimSpace(g.number.Text)
+	if number == "" {
+		what := "At how many metres above the ground is the wind of the grid?"
+		if g.Number.Name == "month" {
+			what = "Of which month, 1 to 12, is the grid?"
+		}
+		return append(open, what)
+	}
+	in.Match[g.Number.Name] = number
+	return open
+}
+
+// askGrid puts the questions about a grid into the form.
+func (f *form) askGrid(role study.Role) {
+	asks, ok := study.AskGrid(f.in, role, f.replace)
+	if f.grid = nil; !ok {
+		return
+	}
+	g := &gridRow{GridAsks: asks, unit: widget.NewSelect(nil, nil), number: widget.NewEntry()}
+	g.field = widget.NewSelect(g.titles(), func(string) { g.fieldChosen() })
+	g.field.PlaceHolder = "choose what they are"
+	g.unit.PlaceHolder = "choose its unit"
+	g.unit.Hide()
+	g.number.SetText(g.Value)
+	label, hint := "Height above the ground (m)", "The wind of the grid is that of this height."
+	if g.Number.Name == "month" {
+		label, hint = "Month, 1 to 12", "The grid holds the values of one month; add each month as a layer of its own."
+	}
+	f.grid = g
+	f.fieldBox.Add(widgets.Part("What the grid holds").Hinted("What the file's name says is chosen already. Change what is wrong."))
+	f.fieldBox.Add(container.New(columns{label: 150}, widgets.NewLine("Values"), g.field, widgets.NewLine("Unit"), container.NewStack(g.unit), widgets.NewLine(label).Hinted(hint), g.number))
+	for _, field := range g.Fields {
+		if field.Name == g.Field {
+			g.field.SetSelected(fieldWords(field))
+		}
+	}
 }
 
 func newForm(s *Stage, in study.Import, replace string) *form {
@@ -268,7 +360,7 @@ func (f *form) close() {
 func (f *form) roleChosen() {
 	f.fieldBox.RemoveAll()
 	f.personalBox.RemoveAll()
-	f.fields = nil
+	f.fields, f.grid = nil, nil
 	role, ok := f.chosen()
 	if f.namedBox != nil {
 		visible(f.namedBox, ok && role.Name == study.BackdropRole)
@@ -281,6 +373,7 @@ func (f *form) roleChosen() {
 	f.purpose.Set(role.Purpose)
 	f.purpose.Show()
 	f.usual.Set("Usually: " + role.Holder)
+	f.askGrid(role)
 	if f.in.Layer == nil || len(f.in.Layer.Columns) == 0 {
 		f.showSample()
 		return
@@ -486,6 +579,9 @@ func (f *form) answers() (in study.Import, unanswered string) {
 			continue
 		}
 		in.Units[column] = r.unit.Selected
+	}
+	if f.grid != nil {
+		open = append(open, f.grid.answers(&in)...)
 	}
 	for n, check := range f.personal {
 		if check.Checked {

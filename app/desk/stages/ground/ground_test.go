@@ -322,6 +322,33 @@ func TestImportGrid(t *testing.T) {
 	}
 }
 
+// A grid of wind is asked for what it holds, in the form; the file's name proposes.
+func TestImportGridOfWind(t *testing.T) {
+	b := open(t)
+	b.s.Import(put(t, "mean_speed_80m.asc", "ncols 2\nnrows 2\nxllcorner -23.1\nyllcorner 47.6\ncellsize 0.2\nNODATA_value -9999\n6 7\n6.5 7\n"))
+	f := b.waitForm("mean_speed_80m.asc")
+	f.role.SetSelected("Wind resource")
+	f.crs.SetText("OGC:CRS84")
+	if f.grid == nil || f.grid.field.Selected != f.grid.titles()[0] || f.grid.number.Text != "80" {
+		t.Fatalf("proposed %+v", f.grid)
+	}
+	test.Tap(f.ok)
+	if !strings.Contains(f.asked.Text, "In which unit are the values") {
+		t.Errorf("asked %q", f.asked.Text)
+	}
+	f.grid.unit.SetSelected("m/s")
+	f.grid.number.SetText("8000")
+	test.Tap(f.ok)
+	b.Until("it is asked again", func() bool { return strings.Contains(f.asked.Text, "8000 m is not between") })
+	f.grid.number.SetText("80")
+	test.Tap(f.ok)
+	b.Until("it is added", func() bool { return b.s.form == nil })
+	rec, ok := b.layer("mean_speed_80m")
+	if use, err := study.GridUseOf(rec); !ok || err != nil || use != (study.GridUse{Field: "mean_speed", Unit: "m/s", HeightM: 80}) {
+		t.Errorf("%v %+v %v", ok, use, err)
+	}
+}
+
 func TestReplaceAndTakeOut(t *testing.T) {
 	b := open(t)
 	p := b.s.layers
