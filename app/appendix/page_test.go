@@ -24,6 +24,7 @@ import (
 	"groundtally/geo"
 	"groundtally/sampledata"
 	"groundtally/scoring"
+	"groundtally/scoring/solar"
 )
 
 const (
@@ -499,7 +500,8 @@ func TestMonths(t *testing.T) {
 		t.Error("months stand on the page though nobody tells them")
 	}
 	in.Course = func(c *run.Candidate) (*run.Course, error) {
-		course := &run.Course{Hours: &[12][24]float64{6: {12: 5}}, Sky: []run.SkyYield{{Model: "isotropic", KWhPerKWp: 970}, {Model: "Hay-Davies", KWhPerKWp: 1000, Used: true}}}
+		course := &run.Course{Hours: &[12][24]float64{6: {12: 5}}, Sky: []run.SkyYield{{Model: "isotropic", KWhPerKWp: 970}, {Model: "Hay-Davies", KWhPerKWp: 1000, Used: true}},
+			Doubt: &run.Doubt{Source: "satellite", Said: true, Components: []solar.Component{{Name: "sunlight", Sigma: 0.04, Shared: true}, {Name: "shading", Sigma: 0.01}}, BetweenYears: 0.04, LongTerm: 0.05, OneYear: 0.064}}
 		out := &course.Months
 		for m := range out {
 			out[m] = scoring.Num(float64(111 + m))
@@ -508,7 +510,7 @@ func TestMonths(t *testing.T) {
 		return course, nil
 	}
 	html := page(t, in)
-	for _, want := range []string{"Map: energy of ", "July, 12 to 13 h: 5.00 MWh", "isotropic 970, Hay-Davies 1000 (used); from -3.0 to &#43;0.0 %", "Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
+	for _, want := range []string{"Map: energy of ", "July, 12 to 13 h: 5.00 MWh", "isotropic 970, Hay-Davies 1000 (used); from -3.0 to &#43;0.0 %", "sunlight 4.0 (satellite), shade 1.0 (of this site alone); together 5.0", "P75 96 %, P90 92 %, P99 85 %", "Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
 		if !strings.Contains(html, want) {
 			t.Errorf("the page has no %q", want)
 		}

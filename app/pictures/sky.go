@@ -6,6 +6,7 @@ import (
 	"strings"
 
 	"groundtally/app/run"
+	"groundtally/scoring/solar"
 )
 
 // SkySpread tells what each model of the sky gives, and how far they lie apart; empty without models.
@@ -29,4 +30,46 @@ func SkySpread(list []run.SkyYield) string {
 		text += fmt.Sprintf("; from %+.1f to %+.1f %%", 100*(low/used-1), 100*(high/used-1))
 	}
 	return text + "."
+}
+
+// causes are the names of what makes a solar yield unsure.
+var causes = map[string]string{
+	"sunlight": "sunlight", "model": "models of light", "incidence": "slanting light and its colour", "module": "modules", "temperature": "warmth", "soiling": "dirt and snow",
+	"shading": "shade", "inverter": "inverters and wiring", "availability": "outages", "degradation": "ageing",
+}
+
+// odds are the shares of a year's energy that are reached with the usual odds.
+var odds = [...]struct {
+	name string
+	p    float64
+}{{"P75", 0.75}, {"P90", 0.90}, {"P99", 0.99}}
+
+// Spread tells by how much a solar yield may be another, and why; empty without an answer.
+func Spread(d *run.Doubt) string {
+	if d == nil {
+		return ""
+	}
+	var each []string
+	for _, c := range d.Components {
+		words := fmt.Sprintf("%s %.1f", causes[c.Name], 100*c.Sigma)
+		if c.Name == "sunlight" {
+			words += " (" + d.Source
+			if !d.Said {
+				words += ", the least sure, since nobody said where it was taken from"
+			}
+			words += ")"
+		}
+		if !c.Shared {
+			words += " (of this site alone)"
+		}
+		each = append(each, words)
+	}
+	text := fmt.Sprintf("How sure the yield is, standard deviations in %%: %s; together %.1f. From one year to another %.1f, apart from these.", strings.Join(each, ", "), 100*d.LongTerm, 100*d.BetweenYears)
+	var reached []string
+	for _, o := range odds {
+		if x, ok := solar.ExceededWith(100, d.OneYear, o.p); ok {
+			reached = append(reached, fmt.Sprintf("%s %.0f %%", o.name, x))
+		}
+	}
+	return text + " Of the middle value (P50) a single year reaches " + strings.Join(reached, ", ") + ". What is not of this site alone errs alike on all sites, and hardly changes their order."
 }

@@ -11,6 +11,7 @@ import (
 	"groundtally/geo/overlay"
 	"groundtally/geo/rows"
 	"groundtally/scoring"
+	"groundtally/scoring/solar"
 	"groundtally/scoring/units"
 )
 
@@ -152,6 +153,17 @@ type Course struct {
 	Hours *[12][24]float64 // MWh
 	Clock string           // "solar time" where the sunlight is given by month, the clock of the file where by hour
 	Sky   []SkyYield       // what each way to bring the sky's light onto the panels gives; nil as Hours
+	Doubt *Doubt           // why the yield may be another; nil as Hours
+}
+
+// Doubt is the spread of a solar yield by its causes, as shares of the energy.
+type Doubt struct {
+	Source       string // of the sunlight: station, satellite or map
+	Said         bool   // somebody said so; otherwise it counts as the least sure
+	Components   []solar.Component
+	BetweenYears float64 // from one year to another
+	LongTerm     float64 // of the long-term mean, all components together
+	OneYear      float64
 }
 
 // SkyYield is the yield under one model of the sky.
@@ -209,6 +221,9 @@ func (s *Surveyor) Course(ctx context.Context, c *Candidate) (*Course, error) {
 			for h, kwh := range y.HourKWhPerKWp[m] {
 				out.Hours[m][h] = kwh * mwh
 			}
+		}
+		if out.Doubt, err = f.doubts(o, sun, y); err != nil {
+			return nil, err
 		}
 		out.Sky, err = f.skies(o, here, sun)
 		return out, err

@@ -20,7 +20,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 2
+const candidateEdition = 3
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {
@@ -437,6 +437,9 @@ func fitFacts(o option, r fitResult, f facts) {
 	f.set("solar_p50_mwh", energy(r.SolarMWh), cmp.Or(r.SunSource, "solar yield"))
 	f.num("wind_yield_sigma", r.WindSigma, "root sum of squares")
 	f.num("solar_yield_sigma", r.SolarSigma, "root sum of squares")
+	f.num("wind_yield_sigma_own", r.WindLong, "root sum of squares")
+	f.num("solar_yield_sigma_shared", r.SolarShared, "root sum of squares")
+	f.num("solar_yield_sigma_own", r.SolarOwn, "root sum of squares")
 	f.num("wind_yield_error", 1, "even odds")
 	f.num("solar_yield_error", 1, "even odds")
 	f.set("wind_load_factor", loadFactor(r.WindMWh, r.WindKW), fitted)
@@ -528,26 +531,39 @@ func stratify(u []float64) []float64 {
 }
 
 // siteDraws draws the yield errors of a site: normal around 1, cut at zero. Options of one technology on
-// one site share their draw, because they share the wind or the sun.
+// one site share their draw, because they share the wind or the sun; what errs alike on all sites is drawn once for
+// them all.
 func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
 	var out []reckon.Drawn
 	for _, d := range []struct {
-		leaf  string
-		sigma float64
-		on    bool
-	}{{"wind_yield_error", r.WindLong, r.WindKW > 0}, {"solar_yield_error", r.SolarLong, r.SolarKW > 0}} {
-		if !d.on || d.sigma == 0 {
+		leaf        string
+		shared, own float64
+		on          bool
+	}{{"wind_yield_error", 0, r.WindLong, r.WindKW > 0}, {"solar_yield_error", r.SolarShared, r.SolarOwn, r.SolarKW > 0}} {
+		if !d.on || d.shared == 0 && d.own == 0 {
 			continue
 		}
 		slot, _ := k.p.Graph.Slot(d.leaf)
-		u := make([]float64, k.trials)
-		for t := range u {
-			u[t] = params.DrawSite(k.seed, site, d.leaf, t)
-		}
-		v := stratify(u)
+		v := make([]float64, k.trials)
 		for t := range v {
-			z := math.Sqrt2 * math.Erfinv(2*v[t]-1)
-			v[t] = math.Max(0, 1+float64(d.sigma*z))
+			v[t] = 1
+		}
+		spread := func(sigma float64, draw func(trial int) float64) {
+			if sigma == 0 {
+				return
+			}
+			u := make([]float64, k.trials)
+			for t := range u {
+				u[t] = draw(t)
+			}
+			for t, x := range stratify(u) {
+				v[t] += float64(sigma * math.Sqrt2 * math.Erfinv(2*x-1))
+			}
+		}
+		spread(d.shared, func(t int) float64 { return params.Draw(k.seed, d.leaf+" of all sites", t) })
+		spread(d.own, func(t int) float64 { return params.DrawSite(k.seed, site, d.leaf, t) })
+		for t := range v {
+			v[t] = math.Max(0, v[t])
 		}
 		out = append(out, reckon.Drawn{Slot: slot, Values: v})
 	}

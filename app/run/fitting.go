@@ -20,7 +20,7 @@ import (
 )
 
 // fitEdition is raised when the digits of the step change.
-const fitEdition = 3
+const fitEdition = 4
 
 // fitResult is the plant fitted on a site.
 type fitResult struct {
@@ -43,8 +43,9 @@ type fitResult struct {
 	WindSigma      float64 // of one year's energy
 	SolarSigma     float64
 	WindLong       float64 // of the long-term mean
-	SolarLong      float64
-	SpareAsset     string // the line or substation that a fit to its spare capacity was made for
+	SolarShared    float64 // of the long-term mean, alike on all sites
+	SolarOwn       float64 // and of this site alone
+	SpareAsset     string  // the line or substation that a fit to its spare capacity was made for
 	Chain          []ChainStep
 	Notices        []string
 	NeedsPatchHa   float64
@@ -64,6 +65,7 @@ type fitter struct {
 	w       *world
 	wind    []windPoint
 	sun     *sunlight
+	points  []sunPoint   // of monthly sunlight
 	hours   *weatherFile // nil without a file of hours
 	hourly  *sunlight    // the months of hours
 	gridKey string       // digest of the settings that a connection reads
@@ -99,9 +101,12 @@ func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	if f.sun, err = w.sunlight(); err != nil {
 		return nil, err
 	}
+	if f.points, err = w.sunPoints(); err != nil {
+		return nil, err
+	}
 	if f.hours = w.weather(); f.hours != nil && f.hours.climate != nil {
 		dhi := f.hours.report.DHIKWhPerM2
-		f.hourly = &sunlight{ghi: f.hours.report.GHIKWhPerM2, dhi: &dhi, temp: f.hours.report.MeanTempC, albedo: solar.EveryMonth(defaultAlbedo), source: f.hours.rec.Name}
+		f.hourly = &sunlight{ghi: f.hours.report.GHIKWhPerM2, dhi: &dhi, temp: f.hours.report.MeanTempC, albedo: solar.EveryMonth(defaultAlbedo), snow: unsaid, soiling: unsaid, source: f.hours.rec.Name}
 	}
 	if f.temps = f.sun; f.sun == nil {
 		f.temps = w.typedTemperatures()
@@ -184,6 +189,7 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 			}
 		}
 		k.said("sunlight", here.source, here.why)
+		k.sunSettings(f.w.snap)
 		if m := f.sky(); m != solar.HayDavies {
 			k.text(m.String())
 		}
@@ -624,11 +630,12 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	for _, st := range y.Chain {
 		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "kWh/kWp", Before: st.BeforeKWhPerKWp, Share: -st.Share, After: st.AfterKWhPerKWp})
 	}
-	sig, err := f.w.p.Solar.Sigmas(solar.FromMap)
+	sig, err := f.w.p.Solar.Sigmas(f.doubt(o, here, y))
 	if err != nil {
 		return err
 	}
-	r.SolarSigma, r.SolarLong = sig.Total(1), sig.Total(longTermYears)
+	r.SolarSigma = sig.Total(1)
+	r.SolarShared, r.SolarOwn = sig.Parts(longTermYears)
 	g0, err := f.lie(s)
 	if err != nil {
 		return err

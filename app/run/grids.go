@@ -373,23 +373,29 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 	if h := f.hours; h != nil {
 		if h.climate != nil {
 			monthly := ""
-			if len(grids) > 0 || f.sun != nil {
+			if len(grids) > 0 || f.sun != nil || len(f.points) > 0 {
 				monthly = "; the monthly sunlight of the study stands aside"
 			}
-			return sunHere{sunlight: f.hourly, hours: h, source: "solar yield from " + h.words() + monthly}, nil
+			hourly := *f.hourly
+			if monthly, _ := f.monthly(s); monthly != nil { // what it says of snow and dirt holds all the same
+				hourly.snow, hourly.soiling = monthly.snow, monthly.soiling
+			}
+			return sunHere{sunlight: &hourly, hours: h, source: "solar yield from " + h.words() + monthly}, nil
 		}
 		unread += fmt.Sprintf("; the hours of %s are not read: %s", h.rec.Name, h.why)
 	}
 	fallback := func(note string) sunHere {
-		out := sunHere{sunlight: f.sun}
+		sun, from := f.monthly(s)
+		out := sunHere{sunlight: sun}
 		note = trimmed(note + unread)
 		switch {
-		case f.sun == nil && note != "":
+		case sun == nil && note != "":
 			out.why = note
-		case f.sun == nil:
-			out.why = "no_layer:solar_resource"
-		case note != "":
-			out.source = fmt.Sprintf("solar yield from %s; %s", f.sun.source, note)
+		case sun == nil:
+			out.why = "no_layer:" + sunRole
+		case from != "" || note != "":
+			out.source = "solar yield from " + trimmed(cmp.Or(from, sun.source)+"; "+note)
+			out.source = strings.TrimSuffix(out.source, "; ")
 		}
 		return out
 	}
@@ -400,6 +406,9 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 				return
 			}
 			x[m] = by[m].x
+			if steps := map[string]float64{"ghi": sunSteps, "dhi": sunSteps, "temperature": tempSteps}[field]; steps > 0 {
+				x[m] = math.Round(x[m]*steps) / steps
+			}
 			all = all && by[m].state == gridKnown
 		}
 		return
@@ -432,7 +441,7 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 			}
 		}
 	}
-	out := &sunlight{ghi: ghi, albedo: solar.EveryMonth(defaultAlbedo), source: by[0].g.words() + " and those of the other months"}
+	out := &sunlight{snow: unsaid, soiling: unsaid, ghi: ghi, albedo: solar.EveryMonth(defaultAlbedo), source: by[0].g.words() + " and those of the other months"}
 	source := "solar yield from the " + out.source
 	dhi, _, all, err := of("dhi")
 	if err != nil {
@@ -486,5 +495,7 @@ func (k *keyer) sunlight(s *sunlight) {
 		if s.dhi != nil {
 			k.num(s.dhi[i])
 		}
+		k.num(s.snow[i])
+		k.num(s.soiling[i])
 	}
 }

@@ -541,10 +541,12 @@ func sigmas(c *Candidate) fitResult {
 	var r fitResult
 	for _, l := range c.Leaves() {
 		switch l.Name {
-		case "wind_yield_sigma":
-			r.WindSigma = l.X
-		case "solar_yield_sigma":
-			r.SolarSigma = l.X
+		case "wind_yield_sigma_own":
+			r.WindLong = l.X
+		case "solar_yield_sigma_shared":
+			r.SolarShared = l.X
+		case "solar_yield_sigma_own":
+			r.SolarOwn = l.X
 		case "wind_kw":
 			r.WindKW = l.X
 		case "solar_kw":

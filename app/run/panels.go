@@ -38,7 +38,14 @@ func (f *fitter) rowsOf(o option, s site) (p panelRows, ok bool, err error) {
 	if err != nil {
 		return p, false, err
 	}
+	l, err := f.lie(s)
+	if err != nil {
+		return p, false, err
+	}
 	m := plant.Mount
+	if err := l.on(&m); err != nil {
+		return p, false, err
+	}
 	num := func(name string) float64 { x, _ := o.num(name); return x }
 	eff, width, length := num("module_efficiency"), num("module_width_m"), num("module_length_m")
 	collector, depth, faces := m.WidthM, m.WidthM, m.AzimuthDeg
@@ -53,13 +60,15 @@ func (f *fitter) rowsOf(o option, s site) (p panelRows, ok bool, err error) {
 	if !(m.GCR > 0 && eff > 0 && width > 0 && length > 0 && collector > 0) {
 		return p, false, nil
 	}
+	// Along a row that climbs, a module is shorter on the ground plan.
+	along := solar.AlongSlope(faces-90, m.SlopeDeg, m.AspectDeg)
 	grid, err := f.w.frame.GridAzimuthDeg(s.box.Centre(), faces)
 	if err != nil {
 		return p, false, err
 	}
 	pitch := collector / m.GCR
 	p = panelRows{
-		layout: rows.Layout{AzimuthDeg: grid, PitchM: pitch, DepthM: min(pitch, max(leastDepthM, depth)), UnitM: width, LeastUnits: max(1, int(math.Ceil(leastRunM/width))), BlockM: num("lane_every_m"), LaneM: num("lane_m")},
+		layout: rows.Layout{AzimuthDeg: grid, PitchM: pitch, DepthM: min(pitch, max(leastDepthM, depth)), UnitM: width * along, LeastUnits: max(1, int(math.Ceil(leastRunM/width))), BlockM: num("lane_every_m"), LaneM: num("lane_m")},
 		// Full sun of 1 kW/m2 on the modules, less what gives room to inverters.
 		unitKW: eff * collector * width * num("usable_share"), across: max(1, int(math.Round(collector/length))), offsetM: num("fence_offset_m"),
 	}

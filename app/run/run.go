@@ -34,7 +34,7 @@ func Editions() map[string]int {
 	return map[string]int{"ground": groundEdition, "fit": fitEdition, "candidate": candidateEdition, "order": orderEdition}
 }
 
-const orderEdition = 1
+const orderEdition = 2
 
 // Code is the check code of results: what went in, what came out, and both together.
 type Code struct {

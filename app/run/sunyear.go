@@ -132,6 +132,7 @@ const mostSlopeDeg = 45
 // on lays a plant on the ground.
 func (l *lie) on(m *solar.Mount) error {
 	m.SlopeDeg, m.AspectDeg = float64(l.slope)*slopeStepDeg, float64(l.aspect)*aspectStepDeg
+	spaced(m)
 	if l.notice == "horizon_flat" {
 		return nil
 	}
@@ -142,6 +143,14 @@ func (l *lie) on(m *solar.Mount) error {
 	var err error
 	m.Horizon, err = solar.NewHorizon(heights)
 	return err
+}
+
+// spaced sets the distance between fixed rows to what the slope asks; trackers turn back instead, and upright rows
+// keep theirs.
+func spaced(m *solar.Mount) {
+	if m.GCR > 0 && m.WidthM > 0 && (m.Kind == solar.FixedTilt || m.Kind == solar.Elevated) {
+		m.GCR = m.WidthM / solar.PitchOnSlope(m.WidthM/m.GCR, m.WidthM, m.TiltDeg, m.AzimuthDeg, m.SlopeDeg, m.AspectDeg)
+	}
 }
 
 // Solar years and climates that are kept at a time.
@@ -171,9 +180,10 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	if err != nil {
 		return y, here, false, err
 	}
-	k := newKey("solar year", 2)
+	k := newKey("solar year", 3)
 	k.text(o.id)
 	k.num(lat)
+	k.sunSettings(f.w.snap)
 	k.sunlight(here.sunlight)
 	if here.hours != nil {
 		k.text(here.hours.key)
@@ -248,6 +258,7 @@ func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie, sky solar.Sky
 		return solarYear{bad: true}
 	}
 	p.Sky = sky
+	f.monthlyLosses(s.sunlight, &p.Losses)
 	y, err := c.Yield(p)
 	return solarYear{y: y, bad: err != nil}
 }

@@ -18,7 +18,7 @@ import (
 func TestStepsOfTheLie(t *testing.T) {
 	p := shipped(t)
 	mounts := []solar.Mount{
-		{Kind: solar.FixedTilt, TiltDeg: 30, AzimuthDeg: 180, GCR: 0.45},
+		{Kind: solar.FixedTilt, TiltDeg: 30, AzimuthDeg: 180, GCR: 0.45, WidthM: 4},
 		{Kind: solar.SingleAxis, AxisAzimuthDeg: 180, MaxAngleDeg: 55, Backtrack: true, GCR: 0.35},
 		{Kind: solar.VerticalRows, AzimuthDeg: 90, GCR: 0.22},
 		{Kind: solar.Elevated, TiltDeg: 20, AzimuthDeg: 180, GCR: 0.35, WidthM: 4, ClearanceM: 3},
@@ -48,6 +48,7 @@ func TestStepsOfTheLie(t *testing.T) {
 						t.Fatal(err)
 					}
 					plant.Mount.SlopeDeg, plant.Mount.AspectDeg, plant.Mount.Horizon = slope, aspect, h
+					spaced(&plant.Mount)
 				}
 				y, err := c.Yield(plant)
 				if err != nil {

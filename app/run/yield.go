@@ -150,85 +150,34 @@ func prevailingDeg(sectors []wind.Sector) (deg float64, even bool) {
 	return deg, most < 0.15
 }
 
-// sunlight is the monthly climatology of the study.
+// sunlight is a monthly climatology.
 type sunlight struct {
 	ghi, temp, albedo [12]float64
 	dhi               *[12]float64
+	snow, soiling     [12]float64 // shares lost to snow and to dirt; not a number where nothing is said
 	source            string
 }
 
 // sunlight reads the monthly table, else the typed values; nil when there is neither.
 func (w *world) sunlight() (*sunlight, error) {
-	if t, ok := w.tables["solar_resource"]; ok {
+	if t, ok := w.tables[sunRole]; ok {
 		var rec study.LayerRecord
-		for _, l := range w.snap.LayersOf("solar_resource") {
+		for _, l := range w.snap.LayersOf(sunRole) {
 			if l.Kind == "table" {
 				rec = l
 				break // the one in w.tables
 			}
 		}
-		col := func(field string) int { return t.ColumnIndex(rec.Match[field]) }
-		month, ghi, dhi, temp, albedo := col("month"), col("ghi"), col("dhi"), col("temperature"), col("albedo")
-		if month < 0 || ghi < 0 {
-			return nil, fmt.Errorf("layer %q needs the fields month and ghi", rec.Name)
-		}
-		s := &sunlight{source: rec.Name, albedo: solar.EveryMonth(defaultAlbedo), temp: solar.EveryMonth(math.NaN())}
-		var d [12]float64
-		seen := [12]bool{}
-		hasDHI := dhi >= 0
-		for _, f := range t.Features {
-			m, ok := f.Values[month].Float()
-			i := int(m) - 1
-			if !ok || i < 0 || i > 11 || seen[i] {
-				return nil, fmt.Errorf("layer %q, row %s: month %q is not one of 1 to 12, or stands twice", rec.Name, f.ID, f.Values[month].String())
-			}
-			seen[i] = true
-			g, ok := f.Values[ghi].Float()
-			if !ok {
-				return nil, fmt.Errorf("layer %q, month %d: no sunlight", rec.Name, i+1)
-			}
-			if g, err := units.Convert(g, unitOr(rec.Units[rec.Match["ghi"]], "kWh/(m2 month)"), "kWh/(m2 month)"); err != nil {
-				return nil, fmt.Errorf("layer %q: %w", rec.Name, err)
-			} else {
-				s.ghi[i] = g
-			}
-			if hasDHI {
-				x, ok := f.Values[dhi].Float()
-				y, err := units.Convert(x, unitOr(rec.Units[rec.Match["dhi"]], "kWh/(m2 month)"), "kWh/(m2 month)")
-				if err != nil {
-					return nil, fmt.Errorf("layer %q: %w", rec.Name, err)
-				}
-				d[i] = y
-				hasDHI = hasDHI && ok
-			}
-			if temp >= 0 {
-				if x, ok := f.Values[temp].Float(); ok {
-					s.temp[i] = x
-				}
-			}
-			if albedo >= 0 {
-				if x, ok := f.Values[albedo].Float(); ok {
-					s.albedo[i] = x
-				}
-			}
-		}
-		for i := range 12 {
-			if !seen[i] {
-				return nil, fmt.Errorf("layer %q has no month %d", rec.Name, i+1)
-			}
-			if math.IsNaN(s.temp[i]) {
-				return nil, fmt.Errorf("layer %q, month %d: no temperature; the cells' loss by heat needs it", rec.Name, i+1)
-			}
-		}
-		if hasDHI {
-			s.dhi = &d
+		s, err := monthsOf(t, rec, t.Features)
+		if err != nil {
+			return nil, fmt.Errorf("layer %q%w", rec.Name, err)
 		}
 		return s, nil
 	}
-	if grids, _ := w.gridsOf("solar_resource"); len(grids) > 0 && !w.anyTyped("solar.typed_ghi_") {
-		return nil, nil // temperatures may be typed beside grids of sunlight
+	if grids, _ := w.gridsOf("solar_resource"); (len(grids) > 0 || len(w.byRole[sunRole]) > 0) && !w.anyTyped("solar.typed_ghi_") {
+		return nil, nil // temperatures may be typed beside grids and points of sunlight
 	}
-	s := &sunlight{source: typedSun, albedo: solar.EveryMonth(defaultAlbedo)}
+	s := &sunlight{source: typedSun, albedo: solar.EveryMonth(defaultAlbedo), snow: unsaid, soiling: unsaid}
 	for i := range 12 {
 		n := strconv.Itoa(i + 1)
 		g, ok := w.snap.Number("solar.typed_ghi_" + n + "_kwh_per_m2")

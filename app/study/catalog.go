@@ -448,7 +448,7 @@ func (f RoleField) span() (lo, hi float64) {
 		return 0, 360
 	case f.Name == "month":
 		return 1, 12
-	case f.Unit == "1" && (strings.HasSuffix(f.Name, "_share") || f.Name == "albedo" || f.Name == "humidity" || f.Name == "snow_loss"):
+	case f.Unit == "1" && (strings.HasSuffix(f.Name, "_share") || f.Name == "albedo" || f.Name == "humidity" || f.Name == "snow_loss" || f.Name == "soiling_loss"):
 		return 0, 1
 	}
 	return 0, math.Inf(1)

@@ -125,6 +125,7 @@ func settingTable() ([]byte, error) {
 	add("climate.grid_factor_g_per_kwh", "250", "g CO2e/kWh", "Marram Power (invented), supply statement 2025", "mix of the sea cable and the standby station")
 	add("climate.zone", "cool temperate moist", "", "Marram energy office (invented)", "maritime climate at 47.5 N")
 	add("weather.stamp", "start", "", "Marram weather office (invented), hourly year", "what the times of the file mark")
+	add("weather.data_kind", "satellite", "", "Marram weather office (invented), hourly year", "an hourly year made from satellite images")
 	add("wind.shear_alpha", "0.14", "1", "power law with about one seventh over open land", "open island")
 
 	voices := []struct {

@@ -16,7 +16,6 @@ type ClimateInput struct {
 	DHIKWhPerM2    *[12]float64 // its diffuse part, nil to take it from ErbsDaily
 	TempC          [12]float64  // air, mean of day and night
 	Albedo         [12]float64  // of the ground, 0 to 1
-	SnowLossFrac   [12]float64  // share of the month's energy lost to snow on the panels
 }
 
 // EveryMonth gives twelve times the same value.
@@ -151,8 +150,7 @@ func (in *ClimateInput) check() error {
 		err = firstError(err,
 			within(fmt.Sprintf("GHIKWhPerM2[%d]", m+1), in.GHIKWhPerM2[m], 0, 1000),
 			within(fmt.Sprintf("TempC[%d]", m+1), in.TempC[m], -80, 60),
-			within(fmt.Sprintf("Albedo[%d]", m+1), in.Albedo[m], 0, 1),
-			within(fmt.Sprintf("SnowLossFrac[%d]", m+1), in.SnowLossFrac[m], 0, 1))
+			within(fmt.Sprintf("Albedo[%d]", m+1), in.Albedo[m], 0, 1))
 		if in.DHIKWhPerM2 != nil {
 			err = firstError(err, within(fmt.Sprintf("DHIKWhPerM2[%d]", m+1), in.DHIKWhPerM2[m], 0, in.GHIKWhPerM2[m]))
 		}

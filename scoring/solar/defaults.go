@@ -53,6 +53,8 @@ var defaultNames = [...]struct{ name, unit string }{
 	{"sigma_ghi_satellite", "1"},
 	{"sigma_ghi_map", "1"},
 	{"sigma_model_monthly", "1"},
+	{"sigma_model_hourly", "1"},
+	{"sigma_model_steep", "1"},
 	{"sigma_incidence", "1"},
 	{"sigma_module", "1"},
 	{"sigma_temperature", "1"},
@@ -137,7 +139,7 @@ func (d *Defaults) central(name string) float64 { return d.rows[d.index[name]].C
 // Losses gives the central losses.
 func (d *Defaults) Losses() Losses {
 	return Losses{
-		SoilingFrac: d.central("soiling_frac"), LIDFrac: d.central("lid_frac"),
+		SoilingFrac: EveryMonth(d.central("soiling_frac")), LIDFrac: d.central("lid_frac"),
 		NameplateFrac: d.central("nameplate_frac"), MismatchFrac: d.central("mismatch_frac"),
 		DCWiringFrac: d.central("dc_wiring_frac"), ACWiringFrac: d.central("ac_wiring_frac"),
 		TransformerFrac: d.central("transformer_frac"), AuxiliaryFrac: d.central("auxiliary_frac"),
@@ -187,17 +189,41 @@ const (
 
 func (s SunlightSource) String() string { return [...]string{"station", "satellite", "map"}[s] }
 
-// Sigmas gives the central standard deviations for the monthly mode of this engine.
-func (d *Defaults) Sigmas(source SunlightSource) (Sigmas, error) {
+// Doubt is what the standard deviations of a plant's energy depend on.
+type Doubt struct {
+	Source SunlightSource
+	Hourly bool // hours were given; months otherwise
+	Steep  bool // panels stand steeper than 45 degrees
+	Hilly  bool // the horizon takes more than HillyShare of the light
+}
+
+// HillyShare is the light lost to the horizon from which on shade counts as less sure. Source: assumption of this
+// program.
+const HillyShare = 0.01
+
+// Sigmas gives the standard deviations: the central ones, for shade by a near horizon the high one. The model's is
+// that of months or of hours, and no less than that of steep panels where they are steep.
+func (d *Defaults) Sigmas(by Doubt) (Sigmas, error) {
 	names := [...]string{"sigma_ghi_station", "sigma_ghi_satellite", "sigma_ghi_map"}
-	if int(source) >= len(names) {
-		return Sigmas{}, &InputError{"SunlightSource", float64(source), "station, satellite or map"}
+	if int(by.Source) >= len(names) {
+		return Sigmas{}, &InputError{"SunlightSource", float64(by.Source), "station, satellite or map"}
+	}
+	model := d.central("sigma_model_monthly")
+	if by.Hourly {
+		model = d.central("sigma_model_hourly")
+	}
+	if by.Steep {
+		model = max(model, d.central("sigma_model_steep"))
+	}
+	shading := d.central("sigma_shading")
+	if by.Hilly {
+		shading = d.rows[d.index["sigma_shading"]].High
 	}
 	return Sigmas{
-		Sunlight: d.central(names[source]), Model: d.central("sigma_model_monthly"),
+		Sunlight: d.central(names[by.Source]), Model: model,
 		Incidence: d.central("sigma_incidence"), Module: d.central("sigma_module"),
 		Temperature: d.central("sigma_temperature"), Soiling: d.central("sigma_soiling"),
-		Shading: d.central("sigma_shading"), Inverter: d.central("sigma_inverter"),
+		Shading: shading, Inverter: d.central("sigma_inverter"),
 		Availability: d.central("sigma_availability"), Degradation: d.central("sigma_degradation"),
 		BetweenYears: d.central("sigma_between_years"),
 	}, nil

@@ -68,7 +68,7 @@ func TestDefaultsRefuseBadTables(t *testing.T) {
 
 func TestSigmas(t *testing.T) {
 	d := defaults(t)
-	s, err := d.Sigmas(FromMap)
+	s, err := d.Sigmas(Doubt{Source: FromMap})
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -80,14 +80,26 @@ func TestSigmas(t *testing.T) {
 	if long := s.Total(0); long >= s.Total(20) || s.Total(20) >= s.Total(1) {
 		t.Errorf("long-term %v, 20 years %v, one year %v", long, s.Total(20), s.Total(1))
 	}
-	station, err := d.Sigmas(FromStation)
+	station, err := d.Sigmas(Doubt{Source: FromStation})
 	if err != nil {
 		t.Fatal(err)
 	}
 	if station.Total(1) >= s.Total(1) {
 		t.Error("a station is no surer than a map")
 	}
-	if _, err := d.Sigmas(9); err == nil {
+	// By hand: hours of a station, panels upright, a near horizon: 2.5, 3, 1, 2, 1, 1.5, 2, 1, 1, 1 and 4 %.
+	hours, err := d.Sigmas(Doubt{Source: FromStation, Hourly: true, Steep: true, Hilly: true})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got, byHand := hours.Total(1), math.Sqrt(6.25+9+1+4+1+2.25+4+1+1+1+16)/100; math.Abs(got-byHand) > 1e-12 {
+		t.Errorf("hours: one year %v, by hand %v", got, byHand)
+	}
+	shared, own := hours.Parts(20)
+	if math.Abs(own-0.02) > 1e-15 || math.Abs(math.Hypot(shared, own)-hours.Total(20)) > 1e-15 {
+		t.Errorf("shared %v and own %v of %v", shared, own, hours.Total(20))
+	}
+	if _, err := d.Sigmas(Doubt{Source: 9}); err == nil {
 		t.Error("an unknown source was accepted")
 	}
 	if v, ok := ExceededWith(1000, 0.08, 0.5); !ok || v != 1000 {

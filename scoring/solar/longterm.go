@@ -1,6 +1,10 @@
 package solar
 
-import "math"
+import (
+	"cmp"
+	"math"
+	"slices"
+)
 
 // LifetimeMeanFactor gives the mean energy of years 1 to N over that of the first year when each year
 // gives a share d less than the year before: [1 - (1-d)^N]/(N d), d = degradationPerYr in [0, 1), N =
@@ -44,6 +48,41 @@ type Sigmas struct {
 	Availability float64
 	Degradation  float64
 	BetweenYears float64 // from one year to another
+}
+
+// Component is one cause of a yearly energy's spread.
+type Component struct {
+	Name   string // "sunlight", "model", ...
+	Sigma  float64
+	Shared bool // it errs alike for all sites that the same sunlight and the same kind of panels serve
+}
+
+// Components gives the causes apart from the variation between years, the largest first; equal ones stand in the
+// order of the fields. Shade alone differs from site to site: the others come from one source, one model, one kind
+// of panel. Source: assumption of this program.
+func (s Sigmas) Components() []Component {
+	out := []Component{
+		{"sunlight", s.Sunlight, true}, {"model", s.Model, true}, {"incidence", s.Incidence, true}, {"module", s.Module, true}, {"temperature", s.Temperature, true},
+		{"soiling", s.Soiling, true}, {"shading", s.Shading, false}, {"inverter", s.Inverter, true}, {"availability", s.Availability, true}, {"degradation", s.Degradation, true},
+	}
+	slices.SortStableFunc(out, func(a, b Component) int { return cmp.Compare(b.Sigma, a.Sigma) })
+	return out
+}
+
+// Parts gives the standard deviation that all sites share and that of one site alone: their squares add up to that
+// of Total. The variation between years is shared.
+func (s Sigmas) Parts(years int) (shared, own float64) {
+	for _, c := range s.Components() {
+		if c.Shared {
+			shared += float64(c.Sigma * c.Sigma)
+		} else {
+			own += float64(c.Sigma * c.Sigma)
+		}
+	}
+	if years > 0 {
+		shared += float64(s.BetweenYears*s.BetweenYears) / float64(years)
+	}
+	return math.Sqrt(shared), math.Sqrt(own)
 }
 
 // Total gives the root of the sum of squares. The variance between years is divided by the number of

@@ -1,11 +1,13 @@
 package solar
 
-// Losses are shares of energy that do not depend on the moment, applied in the order of the fields.
+// Losses are shares of energy that do not depend on the moment, applied in the order of the fields. Dirt and snow
+// go by month, January first.
 type Losses struct {
-	SoilingFrac      float64 // dirt on the glass
-	LIDFrac          float64 // light-induced loss of the first days
-	NameplateFrac    float64 // rating below the label; negative when above
-	MismatchFrac     float64 // panels that differ within a string
+	SoilingFrac      [12]float64 // dirt on the glass, of the light
+	SnowFrac         [12]float64 // snow on the panels, of the month's energy
+	LIDFrac          float64     // light-induced loss of the first days
+	NameplateFrac    float64     // rating below the label; negative when above
+	MismatchFrac     float64     // panels that differ within a string
 	DCWiringFrac     float64
 	ACWiringFrac     float64
 	TransformerFrac  float64

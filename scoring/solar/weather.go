@@ -26,10 +26,9 @@ type WeatherInput struct {
 	Rows           []WeatherRow // in any order
 	ClockOffset    time.Duration
 	// WindFactor brings the file's wind to the height of the panels; WindAtPanelMS does so from 10 m.
-	WindFactor   float64
-	Albedo       [12]float64
-	SnowLossFrac [12]float64
-	Split        SplitModel
+	WindFactor float64
+	Albedo     [12]float64
+	Split      SplitModel
 }
 
 // SplitModel is a published way to part an hour's light into beam and diffuse.
@@ -188,7 +187,7 @@ func (w *weather) check() error {
 		return &InputError{"Split", float64(in.Split), "a model of an hour's diffuse share"}
 	}
 	for m := range 12 {
-		if err := firstError(within(fmt.Sprintf("Albedo[%d]", m+1), in.Albedo[m], 0, 1), within(fmt.Sprintf("SnowLossFrac[%d]", m+1), in.SnowLossFrac[m], 0, 1)); err != nil {
+		if err := within(fmt.Sprintf("Albedo[%d]", m+1), in.Albedo[m], 0, 1); err != nil {
 			return err
 		}
 	}
@@ -527,7 +526,7 @@ const sinElevation15 = 0.25881904510252074
 // climate puts the moments together.
 func (w *weather) climate() *Climate {
 	in := w.in
-	c := &Climate{in: ClimateInput{LatDeg: in.LatDeg, LonDeg: in.LonDeg, Albedo: in.Albedo, SnowLossFrac: in.SnowLossFrac}, types: 1}
+	c := &Climate{in: ClimateInput{LatDeg: in.LatDeg, LonDeg: in.LonDeg, Albedo: in.Albedo}, types: 1}
 	weight := in.Step.Hours() / float64(w.report.Years) / units.WPerKW
 	hours := [12]float64{}
 	for i := range w.slots {

@@ -314,7 +314,6 @@ func TestWeatherRefuses(t *testing.T) {
 		"step":     func(in *WeatherInput) { in.Step = 7 * time.Minute },
 		"no step":  func(in *WeatherInput) { in.Step = 0 },
 		"albedo":   func(in *WeatherInput) { in.Albedo[3] = 2 },
-		"snow":     func(in *WeatherInput) { in.SnowLossFrac[3] = -1 },
 		"split":    func(in *WeatherInput) { in.Split = 9 },
 		"wind":     func(in *WeatherInput) { in.WindFactor = unknown },
 	} {

@@ -1,6 +1,7 @@
 package solar
 
 import (
+	"fmt"
 	"math"
 
 	"groundtally/scoring/units"
@@ -81,7 +82,6 @@ func (p *Plant) check() error {
 		within("Inverter.K0", p.Inverter.K0, 0, 0.5),
 		within("Inverter.K1", p.Inverter.K1, 0, 0.5),
 		within("Inverter.K2", p.Inverter.K2, 0, 0.5),
-		within("Losses.SoilingFrac", l.SoilingFrac, 0, 1),
 		within("Losses.LIDFrac", l.LIDFrac, 0, 1),
 		within("Losses.NameplateFrac", l.NameplateFrac, -0.2, 1),
 		within("Losses.MismatchFrac", l.MismatchFrac, 0, 1),
@@ -94,6 +94,9 @@ func (p *Plant) check() error {
 		within("WindMS", p.WindMS, 0, 60),
 		within("Sky", float64(p.Sky), 0, float64(Perez)),
 	)
+	for i := range l.SoilingFrac {
+		err = firstError(err, within(fmt.Sprintf("Losses.SoilingFrac[%d]", i+1), l.SoilingFrac[i], 0, 1), within(fmt.Sprintf("Losses.SnowFrac[%d]", i+1), l.SnowFrac[i], 0, 1))
+	}
 	if err != nil {
 		return err
 	}
@@ -222,7 +225,6 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 	}
 	m := &p.Mount
 	phi := p.Module.Bifaciality * (1 - p.Module.RearStructure - p.Module.RearMismatch)
-	soil := 1 - p.Losses.SoilingFrac
 	dc := (1 - p.Losses.LIDFrac) * (1 - p.Losses.NameplateFrac) * (1 - p.Losses.MismatchFrac) * (1 - p.Losses.DCWiringFrac)
 	rated := 1 / p.Inverter.DCACRatio
 	v := newViewer(&p, phi)
@@ -249,6 +251,7 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 		}
 		cooling := p.Module.U0WPerM2K + float64(p.Module.U1WsPerM3K*wind)
 		albedo := c.in.Albedo[mo.month]
+		soil := 1 - p.Losses.SoilingFrac[mo.month]
 		cosTilt := v.cosTilt
 		sum := &acc[mo.month]
 		for _, l := range c.of(mo) {
@@ -352,7 +355,7 @@ func (c *Climate) result(p *Plant, acc *[12][sums]float64, clock *[12][24]float6
 	for m := range acc {
 		for k, v := range acc[m] {
 			total[k] += v
-			snowed[k] += float64(v * (1 - c.in.SnowLossFrac[m]))
+			snowed[k] += float64(v * (1 - p.Losses.SnowFrac[m]))
 		}
 	}
 	l := &p.Losses
@@ -393,9 +396,9 @@ func (c *Climate) result(p *Plant, acc *[12][sums]float64, clock *[12][24]float6
 	ghi, dhi := 0.0, 0.0
 	for m := range acc {
 		r.PlaneMonthKWhPerM2[m] = acc[m][sumPlane]
-		r.MonthKWhPerKWp[m] = float64(acc[m][sumClipped] * (1 - c.in.SnowLossFrac[m]) * after)
+		r.MonthKWhPerKWp[m] = float64(acc[m][sumClipped] * (1 - p.Losses.SnowFrac[m]) * after)
 		for h, kwh := range clock[m] {
-			r.HourKWhPerKWp[m][h] = float64(kwh * (1 - c.in.SnowLossFrac[m]) * after)
+			r.HourKWhPerKWp[m][h] = float64(kwh * (1 - p.Losses.SnowFrac[m]) * after)
 		}
 		ghi += c.ghi[m]
 		dhi += c.dhi[m]

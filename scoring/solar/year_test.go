@@ -95,13 +95,14 @@ func plants(tb testing.TB) []Plant {
 
 func TestChainClosesExactly(t *testing.T) {
 	in := madison()
-	in.SnowLossFrac = [12]float64{0: .3, 1: .2, 11: .15}
 	c, err := NewClimate(in)
 	if err != nil {
 		t.Fatal(err)
 	}
 	for _, p := range plants(t) {
 		p.Losses.CurtailmentFrac = 0.03
+		p.Losses.SnowFrac = [12]float64{0: .3, 1: .2, 11: .15}
+		p.Losses.SoilingFrac = [12]float64{.01, .01, .02, .03, .04, .05, .05, .05, .03, .02, .01, .01}
 		r, err := c.Yield(p)
 		if err != nil {
 			t.Fatal(err)
@@ -327,7 +328,7 @@ func TestLossesLower(t *testing.T) {
 		t.Fatal(err)
 	}
 	worse := map[string]func(p *Plant){
-		"soiling":      func(p *Plant) { p.Losses.SoilingFrac += 0.02 },
+		"soiling":      func(p *Plant) { p.Losses.SoilingFrac = EveryMonth(p.Losses.SoilingFrac[0] + 0.02) },
 		"dc wiring":    func(p *Plant) { p.Losses.DCWiringFrac += 0.02 },
 		"availability": func(p *Plant) { p.Losses.AvailabilityFrac += 0.02 },
 		"less wind":    func(p *Plant) { p.WindMS = 0 },
@@ -508,7 +509,7 @@ func TestPolarNightAndOddInput(t *testing.T) {
 		"infinite":   func(c *ClimateInput, p *Plant) { p.WindMS = math.Inf(1) },
 		"tilt":       func(c *ClimateInput, p *Plant) { p.Mount.TiltDeg = 100 },
 		"gcr":        func(c *ClimateInput, p *Plant) { p.Mount.GCR = 1.2 },
-		"loss":       func(c *ClimateInput, p *Plant) { p.Losses.SoilingFrac = 2 },
+		"loss":       func(c *ClimateInput, p *Plant) { p.Losses.SoilingFrac[3] = 2 },
 		"ratio":      func(c *ClimateInput, p *Plant) { p.Inverter.DCACRatio = 0 },
 		"no rear":    func(c *ClimateInput, p *Plant) { p.Mount.Kind = VerticalRows },
 		"no width":   func(c *ClimateInput, p *Plant) { p.Module.Bifaciality = 0.8 },

@@ -488,8 +488,8 @@ func (f *fitted) askMonths(c *run.Candidate) {
 			}
 			f.month.Set(do)
 			f.hour.Set(hoursOf(c, course))
-			f.sky.SetText(pictures.SkySpread(course.Sky))
-			visible(f.sky, len(course.Sky) > 0)
+			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt)))
+			visible(f.sky, f.sky.Text != "")
 			f.body.Refresh()
 		})
 	})

@@ -1,0 +1,271 @@
+package run
+
+import (
+	"cmp"
+	"fmt"
+	"math"
+	"slices"
+	"strings"
+
+	"groundtally/app/study"
+	"groundtally/geo"
+	"groundtally/scoring/solar"
+	"groundtally/scoring/units"
+)
+
+// sunRole is the role of monthly sunlight.
+const sunRole = "solar_resource"
+
+// unsaid is a year of which nothing is said.
+var unsaid = solar.EveryMonth(math.NaN())
+
+// monthsOf reads twelve rows of monthly sunlight. An error continues a sentence that names the layer.
+func monthsOf(t *geo.Layer, rec study.LayerRecord, rows []geo.Feature) (*sunlight, error) {
+	col := func(field string) int {
+		if rec.Match[field] == "" {
+			return -1
+		}
+		return t.ColumnIndex(rec.Match[field])
+	}
+	month, ghi, dhi := col("month"), col("ghi"), col("dhi")
+	if month < 0 || ghi < 0 {
+		return nil, fmt.Errorf(" needs the fields month and ghi")
+	}
+	s := &sunlight{source: rec.Name, albedo: solar.EveryMonth(defaultAlbedo), temp: unsaid, snow: unsaid, soiling: unsaid}
+	others := []struct {
+		at int
+		to *[12]float64
+	}{{col("temperature"), &s.temp}, {col("albedo"), &s.albedo}, {col("snow_loss"), &s.snow}, {col("soiling_loss"), &s.soiling}}
+	var diffuse [12]float64
+	var seen [12]bool
+	hasDHI := dhi >= 0
+	light := func(f *geo.Feature, at int, field string) (x float64, ok bool, err error) {
+		if x, ok = f.Values[at].Float(); !ok {
+			return 0, false, nil
+		}
+		x, err = units.Convert(x, unitOr(rec.Units[rec.Match[field]], sunUnit), sunUnit)
+		return x, true, err
+	}
+	for n := range rows {
+		f := &rows[n]
+		m, ok := f.Values[month].Float()
+		i := int(m) - 1
+		if !ok || i < 0 || i > 11 || seen[i] {
+			return nil, fmt.Errorf(", row %s: month %q is not one of 1 to 12, or stands twice", f.ID, f.Values[month].String())
+		}
+		seen[i] = true
+		x, ok, err := light(f, ghi, "ghi")
+		switch {
+		case err != nil:
+			return nil, fmt.Errorf(": %w", err)
+		case !ok:
+			return nil, fmt.Errorf(", month %d: no sunlight", i+1)
+		}
+		s.ghi[i] = x
+		if hasDHI {
+			if diffuse[i], hasDHI, err = light(f, dhi, "dhi"); err != nil {
+				return nil, fmt.Errorf(": %w", err)
+			}
+		}
+		for _, o := range others {
+			if o.at < 0 {
+				continue
+			}
+			if x, ok := f.Values[o.at].Float(); ok {
+				o.to[i] = x
+			}
+		}
+	}
+	for i := range 12 {
+		switch {
+		case !seen[i]:
+			return nil, fmt.Errorf(" has no month %d", i+1)
+		case math.IsNaN(s.temp[i]):
+			return nil, fmt.Errorf(", month %d: no temperature; the cells' loss by heat needs it", i+1)
+		}
+		for _, loss := range []float64{s.snow[i], s.soiling[i]} {
+			if loss < 0 || loss > 1 {
+				return nil, fmt.Errorf(", month %d: a loss of %g is not from 0 to 1", i+1, loss)
+			}
+		}
+	}
+	if hasDHI {
+		s.dhi = &diffuse
+	}
+	return s, nil
+}
+
+// sunPoint is monthly sunlight at a place.
+type sunPoint struct {
+	at geo.XY
+	*sunlight
+}
+
+// sunPoints reads the layers of monthly sunlight at points: twelve rows at each.
+func (w *world) sunPoints() ([]sunPoint, error) {
+	var out []sunPoint
+	for _, l := range w.byRole[sunRole] {
+		rows := map[geo.XY][]geo.Feature{}
+		var order []geo.XY
+		for i, g := range l.xy {
+			if g.Kind != geo.Points || g.Empty() {
+				continue
+			}
+			p := g.Parts[0][0][0]
+			if _, met := rows[p]; !met {
+				order = append(order, p)
+			}
+			rows[p] = append(rows[p], l.src.Features[i])
+		}
+		for _, p := range order {
+			s, err := monthsOf(l.src, l.rec, rows[p])
+			if err != nil {
+				ll, ferr := w.frame.Inverse(p)
+				if ferr != nil {
+					return nil, ferr
+				}
+				return nil, fmt.Errorf("layer %q, point at %.4f, %.4f%w", l.rec.Name, ll.Lat, ll.Lon, err)
+			}
+			out = append(out, sunPoint{p, s})
+		}
+	}
+	return out, nil
+}
+
+// Sunlight between points. Source: D. Shepard, A two-dimensional interpolation function for irregularly-spaced
+// data, 1968, for the weights; the other numbers are assumptions of this program.
+const (
+	mostSunPoints = 4    // that have a say at a place
+	sunLatticeM   = 1000 // sites of one square share their sunlight
+	sunSteps      = 5    // of a kWh/(m2 month) to which it is rounded, so that neighbours share a year
+	tempSteps     = 10   // of a kelvin
+)
+
+// between gives the sunlight at a place from the nearest points, each weighted by the inverse square of its
+// distance, with the distance to the nearest.
+func between(points []sunPoint, p geo.XY) (s *sunlight, nearestM float64, used int) {
+	node := geo.XY{X: math.Round(p.X/sunLatticeM) * sunLatticeM, Y: math.Round(p.Y/sunLatticeM) * sunLatticeM}
+	near := slices.Clone(points)
+	slices.SortStableFunc(near, func(a, b sunPoint) int { return cmp.Compare(a.at.Dist(node), b.at.Dist(node)) })
+	near = near[:min(len(near), mostSunPoints)]
+	nearestM = math.Inf(1)
+	for _, q := range points {
+		nearestM = math.Min(nearestM, q.at.Dist(p))
+	}
+	if len(near) == 1 {
+		return near[0].sunlight, nearestM, 1
+	}
+	weights := make([]float64, len(near))
+	total := 0.0
+	for i, q := range near {
+		weights[i] = 1 / math.Max(1, float64(q.at.Dist(node)*q.at.Dist(node)))
+		total += weights[i]
+	}
+	mean := func(of func(*sunlight) *[12]float64, steps float64) (out [12]float64) {
+		for m := range out {
+			for i, q := range near {
+				out[m] += float64(weights[i] / total * of(q.sunlight)[m])
+			}
+			out[m] = math.Round(out[m]*steps) / steps
+		}
+		return out
+	}
+	s = &sunlight{
+		ghi:    mean(func(s *sunlight) *[12]float64 { return &s.ghi }, sunSteps),
+		temp:   mean(func(s *sunlight) *[12]float64 { return &s.temp }, tempSteps),
+		albedo: mean(func(s *sunlight) *[12]float64 { return &s.albedo }, 100),
+		snow:   mean(func(s *sunlight) *[12]float64 { return &s.snow }, 1000), soiling: mean(func(s *sunlight) *[12]float64 { return &s.soiling }, 1000),
+		source: near[0].source,
+	}
+	if !slices.ContainsFunc(near, func(q sunPoint) bool { return q.dhi == nil }) {
+		d := mean(func(s *sunlight) *[12]float64 { return s.dhi }, sunSteps)
+		for m := range d {
+			d[m] = math.Min(d[m], s.ghi[m])
+		}
+		s.dhi = &d
+	}
+	return s, nearestM, len(near)
+}
+
+// monthly gives the monthly sunlight of a site where no grid serves: that of points, else of the table or the typed
+// values; nil without any. Source is empty for the last two.
+func (f *fitter) monthly(s site) (sun *sunlight, source string) {
+	if len(f.points) == 0 {
+		return f.sun, ""
+	}
+	sun, m, used := between(f.points, s.box.Centre())
+	from := fmt.Sprintf("the point of %s", sun.source)
+	if used > 1 {
+		from = fmt.Sprintf("%d points of %s, weighted by the inverse square of their distances", used, sun.source)
+	}
+	return sun, fmt.Sprintf("%s; the nearest lies %.1f km off", from, m/units.MPerKm)
+}
+
+// monthlyLosses gives the shares that dirt and snow take, month by month: typed, else of the sunlight's own columns,
+// else as shipped, without snow.
+func (f *fitter) monthlyLosses(sun *sunlight, l *solar.Losses) {
+	for _, loss := range []struct {
+		key  string
+		said [12]float64
+		to   *[12]float64
+	}{{"soiling", sun.soiling, &l.SoilingFrac}, {"snow", sun.snow, &l.SnowFrac}} {
+		for m := range 12 {
+			if x, ok := f.w.snap.Number(fmt.Sprintf("solar.%s_%d_frac", loss.key, m+1)); ok {
+				loss.to[m] = x
+			} else if !math.IsNaN(loss.said[m]) {
+				loss.to[m] = loss.said[m]
+			}
+		}
+	}
+}
+
+// sunMatters begin the settings that a plant's sunlight is reckoned with.
+var sunMatters = []string{"solar.soiling_", "solar.snow_", "solar.data_kind", "weather.data_kind"}
+
+// sunSettings writes the settings that a fit reads of sunlight.
+func (k *keyer) sunSettings(snap *study.Snapshot) {
+	for _, key := range snap.Keys() {
+		for _, begin := range sunMatters {
+			if s, _, ok := snap.Lookup(key); ok && strings.HasPrefix(key, begin) {
+				k.text(key)
+				k.text(s.Value)
+			}
+		}
+	}
+}
+
+// sunSources are the kinds of sunlight by the words of the settings.
+var sunSources = map[string]solar.SunlightSource{"station": solar.FromStation, "satellite": solar.FromSatellite, "map": solar.FromMap}
+
+// steepDeg is the tilt from which on a model of the sky is less sure.
+const steepDeg = 45
+
+// dataKind gives the setting that says where the sunlight was taken from.
+func (here sunHere) dataKind() string {
+	if here.hours != nil {
+		return "weather.data_kind"
+	}
+	return "solar.data_kind"
+}
+
+// doubts tells the spread of a yield by its causes.
+func (f *fitter) doubts(o option, here sunHere, y solar.YearResult) (*Doubt, error) {
+	by := f.doubt(o, here, y)
+	s, err := f.w.p.Solar.Sigmas(by)
+	if err != nil {
+		return nil, err
+	}
+	_, said := f.w.snap.Explicit[here.dataKind()]
+	return &Doubt{Source: by.Source.String(), Said: said, Components: s.Components(), BetweenYears: s.BetweenYears, LongTerm: s.Total(0), OneYear: s.Total(1)}, nil
+}
+
+// doubt says what the spread of a plant's energy depends on.
+func (f *fitter) doubt(o option, here sunHere, y solar.YearResult) solar.Doubt {
+	kind, _, _ := f.w.snap.Lookup(here.dataKind())
+	tilt, _ := o.num("tilt_deg")
+	d := solar.Doubt{Source: sunSources[kind.Value], Hourly: here.hours != nil, Steep: o.technology == "solar_vertical" || o.technology != "solar_tracking" && tilt > steepDeg}
+	for _, st := range y.Chain {
+		d.Hilly = d.Hilly || st.Name == solar.StepHorizon && -st.Share > solar.HillyShare
+	}
+	return d
+}
