@@ -13,7 +13,14 @@ func (g Glass) Beam(cosIncidence float64) float64 {
 	if cosIncidence <= 0 {
 		return 0
 	}
-	return math.Expm1(-cosIncidence/g.Ar) / math.Expm1(-1/g.Ar)
+	return g.beam(cosIncidence, g.straight())
+}
+
+// straight is what Beam measures against, kept where many moments are reckoned.
+func (g Glass) straight() float64 { return math.Expm1(-1 / g.Ar) }
+
+func (g Glass) beam(cosIncidence, straight float64) float64 {
+	return math.Expm1(-cosIncidence/g.Ar) / straight
 }
 
 func (g Glass) diffuse(q float64) float64 {

@@ -25,12 +25,14 @@ type viewer struct {
 	cosMax    float64
 	sinR      float64 // of the rotation in hand
 	cosR      float64
-	cosTilt   float64 // of the panels to the horizontal
-	sky       float64 // share of the sky that an open plane sees past the horizon
-	skyLeft   float64 // the same over what it sees without horizon
-	flatSky   float64 // share of the sky that the horizontal sees
-	views     []views // of a tracker behind a horizon, every viewStepDeg from one end of its turn to the other
-	groundSky float64 // that the ground among rows sees
+	cosTilt   float64       // of the panels to the horizontal
+	sky       float64       // share of the sky that an open plane sees past the horizon
+	skyLeft   float64       // the same over what it sees without horizon
+	flatSky   float64       // share of the sky that the horizontal sees
+	views     []views       // of a tracker behind a horizon, every viewStepDeg from one end of its turn to the other
+	glass     []glassShares // of a tracker, every glassStepDeg of tilt from 0 to 180
+	straight  float64       // what Glass.Beam measures against
+	groundSky float64       // that the ground among rows sees
 	front     face
 	rear      face
 }
@@ -57,8 +59,15 @@ func newViewer(p *Plant, phi float64) *viewer {
 	v.frame = NewFrame(axis, m.SlopeDeg, m.AspectDeg)
 	v.tanCross = tand(v.frame.CrossTiltDeg)
 	v.sinMax, v.cosMax = math.Sincos(m.MaxAngleDeg * radPerDeg)
+	v.straight = p.Module.Glass.straight()
 	if m.Horizon != nil {
 		v.flatSky = m.Horizon.SkyView(sun.Vec{Z: 1})
+	}
+	if m.Kind == SingleAxis {
+		v.glass = make([]glassShares, glassSteps+1)
+		for i := range v.glass {
+			v.glass[i] = v.glassOf(float64(i) * glassStepDeg)
+		}
 	}
 	if m.Kind == SingleAxis && m.Horizon != nil {
 		for i := range int(math.Ceil(2*m.MaxAngleDeg/viewStepDeg)) + 1 {
@@ -69,6 +78,30 @@ func newViewer(p *Plant, phi float64) *viewer {
 		v.aim(math.Sincos(rotation * radPerDeg))
 	}
 	return v
+}
+
+// glassShares are the shares of sky and ground light that pass the glass.
+type glassShares struct{ sky, ground float64 }
+
+// glassStepDeg is the step of tilt in which they are kept for trackers, drawn straight between, which is true to 2e-4.
+const (
+	glassStepDeg = 0.5
+	glassSteps   = 180 / glassStepDeg
+)
+
+func (v *viewer) glassOf(tiltDeg float64) glassShares {
+	g := v.p.Module.Glass
+	return glassShares{g.Sky(tiltDeg), g.Ground(tiltDeg)}
+}
+
+func (v *viewer) glassAt(tiltDeg float64) glassShares {
+	if v.glass == nil {
+		return v.glassOf(tiltDeg)
+	}
+	x := tiltDeg / glassStepDeg
+	i := min(max(int(x), 0), len(v.glass)-2)
+	a, b, part := v.glass[i], v.glass[i+1], x-float64(i)
+	return glassShares{a.sky + float64(part*(b.sky-a.sky)), a.ground + float64(part*(b.ground-a.ground))}
 }
 
 // views are the shares of the sky that front and rear see past the horizon.
@@ -123,10 +156,10 @@ func (v *viewer) aim(sinR, cosR float64) {
 	// What rows take away is reckoned on flat ground and applied to the view of the true tilt.
 	skyLeft, gndLeft := left(view.FrontSky, (1+cr)/2), left(view.FrontGround, (1-cr)/2)
 	tilt := math.Acos(v.cosTilt) / radPerDeg
-	glass := v.p.Module.Glass
 	v.front.sky = float64(openSky * mix(skyLeft, 1, v.rowShare))
 	v.front.ground = float64(openGnd * mix(gndLeft, 1, v.rowShare))
-	v.front.glassSky, v.front.glassGnd = glass.Sky(tilt), glass.Ground(tilt)
+	passes := v.glassAt(tilt)
+	v.front.glassSky, v.front.glassGnd = passes.sky, passes.ground
 	if v.phi > 0 {
 		rearSky, rearGnd := (1-v.cosTilt)/2, (1+v.cosTilt)/2
 		if v.p.Mount.Horizon != nil {
@@ -134,7 +167,8 @@ func (v *viewer) aim(sinR, cosR float64) {
 		}
 		v.rear.sky = float64(rearSky * mix(gndLeft, 1, v.rowShare))
 		v.rear.ground = float64(rearGnd*mix(skyLeft, 1, v.rowShare)) * v.rearGnd
-		v.rear.glassSky, v.rear.glassGnd = glass.Sky(180-tilt), glass.Ground(180-tilt)
+		passes := v.glassAt(180 - tilt)
+		v.rear.glassSky, v.rear.glassGnd = passes.sky, passes.ground
 	}
 }
 
@@ -271,14 +305,14 @@ func (v *viewer) look(suns, edges []sunAt, sinE float64) (out looks) {
 			frontSeen += w
 			shadedBy += float64(w * shaded)
 			powerBy += float64(w * power)
-			frontGlass += float64(w * (1 - power) * v.p.Module.Glass.Beam(cosi))
+			frontGlass += float64(w * (1 - power) * v.p.Module.Glass.beam(cosi, v.straight))
 		case cosi < 0 && v.phi > 0:
 			rear -= cosi
 			w := float64(-cosi * seen)
 			rearSeen += w
 			shadedBy += float64(w * shaded)
 			powerBy += float64(w * power)
-			rearGlass += float64(w * (1 - power) * v.p.Module.Glass.Beam(-cosi))
+			rearGlass += float64(w * (1 - power) * v.p.Module.Glass.beam(-cosi, v.straight))
 		}
 	}
 	n := float64(len(suns))

@@ -573,6 +573,23 @@ func benchmarkYield(b *testing.B, m Mount, sky SkyModel) {
 	}
 }
 
+// What trackers keep of the glass is what the formula gives.
+func TestGlassOfTrackers(t *testing.T) {
+	p := plants(t)[0]
+	p.Mount = mounts()[2]
+	v := newViewer(&p, 0.7)
+	if v.glass == nil {
+		t.Fatal("nothing is kept")
+	}
+	for i := range 1801 {
+		tilt := float64(i) / 10
+		got, want := v.glassAt(tilt), v.glassOf(tilt)
+		if math.Abs(got.sky-want.sky) > 2e-4 || math.Abs(got.ground-want.ground) > 2e-4 {
+			t.Fatalf("tilt %v: %v, the formula gives %v", tilt, got, want)
+		}
+	}
+}
+
 func BenchmarkYieldFixed(b *testing.B)    { benchmarkYield(b, mounts()[0], HayDavies) }
 func BenchmarkYieldPerez(b *testing.B)    { benchmarkYield(b, mounts()[0], Perez) }
 func BenchmarkYieldTracking(b *testing.B) { benchmarkYield(b, mounts()[2], HayDavies) }
