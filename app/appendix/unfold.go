@@ -143,6 +143,9 @@ func (b *book) unfold(c *run.Candidate) unfolded {
 		if words := present.PanelDensity(c.Technology, f.Modules, f.SolarKW, f.FencedHa); words != "" {
 			parts = append(parts, words)
 		}
+		if words := present.PanelRows(f.RowPitchM, f.TiltDeg); words != "" {
+			parts = append(parts, words)
+		}
 		u.Fit = strings.Join(append(parts, fmt.Sprintf("%.2f km of new track", f.TrackKm)), "; ")
 	}
 	u.Grid = "unknown: " + present.Reason("no_connection")

@@ -34,3 +34,15 @@ func PanelDensity(technology string, modules int, solarKW, fencedHa float64) str
 	}
 	return words
 }
+
+// PanelRows tells how rows of panels stand; empty for a plant without.
+func PanelRows(pitchM, tiltDeg float64) string {
+	if pitchM == 0 {
+		return ""
+	}
+	words := fmt.Sprintf("rows %.1f m apart on the plan", pitchM)
+	if tiltDeg > 0 {
+		words += fmt.Sprintf(", tilted by %.0f degrees", tiltDeg)
+	}
+	return words
+}

@@ -33,6 +33,8 @@ type fitResult struct {
 	SolarACKW      float64
 	FenceHa        float64
 	Modules        int
+	PitchM         float64 // between rows of panels, on the ground plan
+	TiltDeg        float64 // of fixed panels
 	SpacingHa      float64 // union of the spacing ellipses inside the site
 	TotalHa        float64 // union of spacing ellipses and fence
 	WindMWh        yieldValue
@@ -76,8 +78,9 @@ type fitter struct {
 	mu        sync.Mutex
 	climates  map[string]*solar.Climate
 	years     map[string]solarYear
-	lies      map[string]lie // by site
-	freshLies map[string]lie // those that are not kept yet
+	lies      map[string]lie     // by site
+	tilts     map[string]float64 // found, by option
+	freshLies map[string]lie     // those that are not kept yet
 }
 
 // latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
@@ -87,7 +90,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, freshLies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, tilts: map[string]float64{}, freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}
@@ -190,6 +193,11 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 		}
 		k.said("sunlight", here.source, here.why)
 		k.sunSettings(f.w.snap)
+		tilt, err := f.tiltDeg(o)
+		if err != nil {
+			return "", err
+		}
+		k.num(tilt)
 		if m := f.sky(); m != solar.HayDavies {
 			k.text(m.String())
 		}
@@ -621,7 +629,12 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	}
 	r.Fence, r.FenceHa = laid.fence, laid.ha
 	r.SolarKW = float64(laid.units) * panels.unitKW
-	r.Modules = laid.units * panels.across
+	r.Modules, r.PitchM = laid.units*panels.across, panels.layout.PitchM
+	if o.technology != "solar_vertical" && o.technology != "solar_tracking" {
+		if r.TiltDeg, err = f.tiltDeg(o); err != nil {
+			return err
+		}
+	}
 	r.SolarACKW = r.SolarKW / ratio
 	if here.sunlight == nil {
 		return nil
@@ -630,7 +643,11 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 	for _, st := range y.Chain {
 		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "kWh/kWp", Before: st.BeforeKWhPerKWp, Share: -st.Share, After: st.AfterKWhPerKWp})
 	}
-	sig, err := f.w.p.Solar.Sigmas(f.doubt(o, here, y))
+	doubt, err := f.doubt(o, here, y)
+	if err != nil {
+		return err
+	}
+	sig, err := f.w.p.Solar.Sigmas(doubt)
 	if err != nil {
 		return err
 	}

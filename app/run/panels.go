@@ -34,7 +34,7 @@ func (f *fitter) rowsOf(o option, s site) (p panelRows, ok bool, err error) {
 	if err != nil {
 		return p, false, err
 	}
-	plant, err := f.w.solarPlant(o, lat)
+	plant, err := f.plant(o, lat)
 	if err != nil {
 		return p, false, err
 	}

@@ -47,6 +47,8 @@ type Fit struct {
 	Panels    geo.LonLatGeometry `json:"panels"` // ground inside the fence
 	FencedHa  float64            `json:"fenced_ha,omitempty"`
 	Modules   int                `json:"modules,omitempty"`
+	TiltDeg   float64            `json:"tilt_deg,omitempty"`    // of fixed panels, found or set
+	RowPitchM float64            `json:"row_pitch_m,omitempty"` // between rows of panels, on the ground plan
 	SpacingHa float64            `json:"spacing_ha,omitempty"`
 	TrackKm   float64            `json:"track_km"`
 }

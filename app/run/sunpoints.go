@@ -250,7 +250,10 @@ func (here sunHere) dataKind() string {
 
 // doubts tells the spread of a yield by its causes.
 func (f *fitter) doubts(o option, here sunHere, y solar.YearResult) (*Doubt, error) {
-	by := f.doubt(o, here, y)
+	by, err := f.doubt(o, here, y)
+	if err != nil {
+		return nil, err
+	}
 	s, err := f.w.p.Solar.Sigmas(by)
 	if err != nil {
 		return nil, err
@@ -260,12 +263,15 @@ func (f *fitter) doubts(o option, here sunHere, y solar.YearResult) (*Doubt, err
 }
 
 // doubt says what the spread of a plant's energy depends on.
-func (f *fitter) doubt(o option, here sunHere, y solar.YearResult) solar.Doubt {
+func (f *fitter) doubt(o option, here sunHere, y solar.YearResult) (solar.Doubt, error) {
 	kind, _, _ := f.w.snap.Lookup(here.dataKind())
-	tilt, _ := o.num("tilt_deg")
+	tilt, err := f.tiltDeg(o)
+	if err != nil {
+		return solar.Doubt{}, err
+	}
 	d := solar.Doubt{Source: sunSources[kind.Value], Hourly: here.hours != nil, Steep: o.technology == "solar_vertical" || o.technology != "solar_tracking" && tilt > steepDeg}
 	for _, st := range y.Chain {
 		d.Hilly = d.Hilly || st.Name == solar.StepHorizon && -st.Share > solar.HillyShare
 	}
-	return d
+	return d, nil
 }

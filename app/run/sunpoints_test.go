@@ -249,3 +249,48 @@ func TestDoubtFollowsTheSource(t *testing.T) {
 		t.Errorf("months are less sure than steep panels already: %v", s)
 	}
 }
+
+// A found tilt is the best of all whole degrees, each computed as a tilt that is set.
+func TestFoundTilt(t *testing.T) {
+	at := func(set ...string) (mwh float64, c *Candidate) {
+		p := sunStudy(t)
+		p.add(sunRole, sunColumns, station(0, 0, 1, nil)...)
+		p.set(set...)
+		c = p.computed(nil)
+		x := p.leaf(c, "solar_p50_mwh").X
+		return x / c.Fit.SolarKW, c
+	}
+	got, c := at("plant.sun.tilt_rule", "most energy", "plant.sun.tilt_deg", "5")
+	best, tilt := 0.0, 0.0
+	for deg := 0.0; deg <= mostTiltDeg; deg += 1 {
+		if y, _ := at("plant.sun.tilt_deg", fmt.Sprint(deg)); y > best {
+			best, tilt = y, deg
+		}
+	}
+	if c.Fit.TiltDeg != tilt || math.Abs(got/best-1) > 1e-12 {
+		t.Errorf("found %v degrees with %v MWh/kW, the best is %v with %v", c.Fit.TiltDeg, got, tilt, best)
+	}
+	if tilt < 20 || tilt > 45 {
+		t.Errorf("at 48 degrees north the best tilt among rows is %v", tilt)
+	}
+	if _, set := at("plant.sun.tilt_deg", "5"); set.Fit.TiltDeg != 5 {
+		t.Errorf("a tilt of 5 degrees that is set stands at %v", set.Fit.TiltDeg)
+	}
+}
+
+// On ground that rises to the sun the rows stand farther apart and hold less; on ground that falls to it, more.
+func TestRowsOnASlope(t *testing.T) {
+	fit := func(down float64) *Fit {
+		p := sunStudy(t)
+		p.add(sunRole, sunColumns, station(0, 0, 1, nil)...)
+		p.terrain(func(_, y float64) float64 { return 500 + y*down }) // above 0 it falls to the south
+		return p.computed(nil).Fit
+	}
+	flat, south, north := fit(0), fit(0.1), fit(-0.1)
+	if flat.RowPitchM < 8.8 || flat.RowPitchM > 9 || south.RowPitchM > 0.85*flat.RowPitchM || north.RowPitchM < 1.2*flat.RowPitchM {
+		t.Errorf("rows stand %v m apart on level ground, %v down and %v up to the sun", flat.RowPitchM, south.RowPitchM, north.RowPitchM)
+	}
+	if !(south.SolarKW > flat.SolarKW && flat.SolarKW > north.SolarKW) {
+		t.Errorf("power %v, down %v, up %v", flat.SolarKW, south.SolarKW, north.SolarKW)
+	}
+}

@@ -193,6 +193,11 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	k.int(int(l.aspect))
 	k.text(l.notice)
 	k.text(string(l.horizon[:]))
+	tilt, err := f.tiltDeg(o)
+	if err != nil {
+		return y, here, false, err
+	}
+	k.num(tilt)
 	key := k.sum()
 	f.mu.Lock()
 	year, done := f.years[key]
@@ -243,14 +248,11 @@ func (f *fitter) skies(o option, s site, here sunHere) ([]SkyYield, error) {
 }
 
 func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie, sky solar.SkyModel) solarYear {
-	var c *solar.Climate
-	var err error
-	if s.hours != nil {
-		c = s.hours.climate
-	} else if c, err = f.climate(latDeg, s.sunlight); err != nil {
-		return solarYear{why: fmt.Sprintf("what stands at the site in the %s is no sunlight: %v", s.sunlight.source, err)}
+	c, why, err := f.climateOf(latDeg, s)
+	if err != nil {
+		return solarYear{why: why}
 	}
-	p, err := f.w.solarPlant(o, latDeg)
+	p, err := f.plant(o, latDeg)
 	if err != nil {
 		return solarYear{bad: true}
 	}
@@ -261,6 +263,17 @@ func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie, sky solar.Sky
 	f.monthlyLosses(s.sunlight, &p.Losses)
 	y, err := c.Yield(p)
 	return solarYear{y: y, bad: err != nil}
+}
+
+// climateOf gives the climate of the sunlight that serves a site; why says in words what an error means.
+func (f *fitter) climateOf(latDeg float64, s sunHere) (c *solar.Climate, why string, err error) {
+	if s.hours != nil {
+		return s.hours.climate, "", nil
+	}
+	if c, err = f.climate(latDeg, s.sunlight); err != nil {
+		return nil, fmt.Sprintf("what stands at the site in the %s is no sunlight: %v", s.sunlight.source, err), err
+	}
+	return c, "", nil
 }
 
 // climate gives the sunlight spread over the hours of a latitude.

@@ -15,9 +15,6 @@ import (
 	"groundtally/scoring/units"
 )
 
-// hourlyRole is the role of a table of hours.
-const hourlyRole = "hourly_weather"
-
 // weatherFile is an hourly file brought to a year of sunlight for the middle of the district.
 type weatherFile struct {
 	rec     study.LayerRecord
@@ -203,11 +200,11 @@ func stepOf(rows []solar.WeatherRow) (time.Duration, error) {
 
 // weather reads the first table of hours; nil when there is none.
 func (w *world) weather() *weatherFile {
-	t, ok := w.tables[hourlyRole]
+	t, ok := w.tables[study.HourlyRole]
 	if !ok {
 		return nil
 	}
-	for _, rec := range w.snap.LayersOf(hourlyRole) {
+	for _, rec := range w.snap.LayersOf(study.HourlyRole) {
 		if rec.Kind == "table" {
 			f := readWeather(t, rec, w.snap, w.frame.Centre())
 			return &f
@@ -218,7 +215,7 @@ func (w *world) weather() *weatherFile {
 
 // weatherNotices tells what was found in hourly files.
 func weatherNotices(ctx context.Context, store study.Store, snap *study.Snapshot) ([]geo.Notice, error) {
-	for _, rec := range snap.LayersOf(hourlyRole) {
+	for _, rec := range snap.LayersOf(study.HourlyRole) {
 		if rec.Kind != "table" || snap.Frame == nil {
 			continue
 		}

@@ -2,6 +2,7 @@ package run
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"strings"
@@ -34,16 +35,30 @@ func addHours(t *testing.T, s *study.Study, zone time.Duration, change func(i in
 	if err := s.RemoveLayer(context.Background(), "Hourly year", ""); err != nil {
 		t.Fatal(err)
 	}
-	if _, err := s.Set(context.Background(), "set", "", study.SettingEdit{Key: "weather.stamp"}); err != nil {
-		t.Fatal(err)
+	unsay := func() {
+		t.Helper()
+		if _, err := s.Set(context.Background(), "set", "", study.SettingEdit{Key: study.StampKey}, study.SettingEdit{Key: study.OffsetKey}); err != nil {
+			t.Fatal(err)
+		}
 	}
+	unsay()
 	tools, done := files.NewTools()
 	defer done()
-	in := study.Import{File: "hours.csv", Base: "hours.csv", Layer: l, Role: hourlyRole, Name: "Station", Ledger: study.Ledger{Read: len(l.Features)},
+	in := study.Import{File: "hours.csv", Base: "hours.csv", Layer: l, Role: study.HourlyRole, Name: "Station", Ledger: study.Ledger{Read: len(l.Features)},
 		Match: map[string]string{"time": "time", "ghi": "ghi", "temperature": "temperature"}, Units: map[string]string{"ghi": "W/m2", "temperature": "degC"}, AcceptProposals: true}
+	var asked *study.QuestionError
+	if _, err := s.AddLayer(context.Background(), in, tools); !errors.As(err, &asked) || len(asked.Questions) == 0 {
+		t.Fatalf("what the times mean is asked as %v", err)
+	}
+	in.Stamp, in.OffsetH = "end", "3"
 	if _, err := s.AddLayer(context.Background(), in, tools); err != nil {
 		t.Fatal(err)
 	}
+	after, err := s.Snapshot()
+	if err != nil || after.Explicit[study.StampKey].Value != "end" || after.Explicit[study.OffsetKey].Value != "3" {
+		t.Fatalf("the answers are kept as %v, %v; %v", after.Explicit[study.StampKey], after.Explicit[study.OffsetKey], err)
+	}
+	unsay() // each test says it anew
 }
 
 func TestHoursServeTheYield(t *testing.T) {

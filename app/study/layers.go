@@ -92,6 +92,8 @@ type Import struct {
 	Replace         string
 	AcceptProposals bool
 	Complete        bool
+	Stamp           string // of a table of hours: what its times mark, as StampKey
+	OffsetH         string // and how far its clock is ahead of UTC, as OffsetKey; empty leaves both as they are
 	Edition, Holder string
 	Reason          string
 }
@@ -283,6 +285,16 @@ func (s *Study) AddLayer(ctx context.Context, in Import, tools Tools) (LayerReco
 			if err := s.renew(ctx, &rec, layer, frame, role, snap, tools); err != nil {
 				return LayerRecord{}, err
 			}
+		}
+		if role.Name == HourlyRole {
+			more, qs, err := s.hours(in, rec, snap)
+			if err != nil {
+				return LayerRecord{}, err
+			}
+			if len(qs) > 0 {
+				return LayerRecord{}, &QuestionError{File: in.File, Questions: qs}
+			}
+			changes = append(changes, more...)
 		}
 		version = Version{Digest: LayerDigest(layer), Layer: layer}
 		if frame != nil {

@@ -40,6 +40,27 @@ func (s *Study) LoadSample(ctx context.Context, fsys fs.FS, read func(ctx contex
 	if err := json.Unmarshal(b, &m); err != nil {
 		return fmt.Errorf("manifest.json: %w", err)
 	}
+	file, err := fsys.Open("settings.csv")
+	if err != nil {
+		return err
+	}
+	defer file.Close()
+	rows, err := csv.NewReader(file).ReadAll()
+	if err != nil {
+		return fmt.Errorf("settings.csv: %w", err)
+	}
+	var edits []SettingEdit
+	said := map[string]string{}
+	for i, r := range rows {
+		if i == 0 {
+			continue
+		}
+		if len(r) != 5 {
+			return fmt.Errorf("settings.csv, row %d: %d cells, want key,value,unit,source,reason", i+1, len(r))
+		}
+		said[r[0]] = r[1]
+		edits = append(edits, SettingEdit{Key: r[0], Value: r[1], Source: r[3], Reason: r[4], AcceptedBy: "sample district"})
+	}
 	for pass := range 2 {
 		for _, f := range m.Files {
 			if f.Role == settingsRole || (f.Role == "parcels") != (pass == 0) {
@@ -51,31 +72,15 @@ func (s *Study) LoadSample(ctx context.Context, fsys fs.FS, read func(ctx contex
 			}
 			in.Role, in.Name, in.CRSOption, in.SwapAxes, in.Match, in.Units = f.Role, f.Name, f.CRS, f.SwapAxes, f.Match, f.Units
 			in.Personal, in.Complete, in.Edition, in.Holder, in.Reason = f.Personal, f.Complete, f.Edition, f.Holder, "sample district"
+			if f.Role == HourlyRole {
+				in.Stamp, in.OffsetH = said[StampKey], said[OffsetKey]
+			}
 			rec, err := s.AddLayer(ctx, in, tools)
 			if err != nil {
 				return err
 			}
 			report(rec)
 		}
-	}
-	file, err := fsys.Open("settings.csv")
-	if err != nil {
-		return err
-	}
-	defer file.Close()
-	rows, err := csv.NewReader(file).ReadAll()
-	if err != nil {
-		return fmt.Errorf("settings.csv: %w", err)
-	}
-	var edits []SettingEdit
-	for i, r := range rows {
-		if i == 0 {
-			continue
-		}
-		if len(r) != 5 {
-			return fmt.Errorf("settings.csv, row %d: %d cells, want key,value,unit,source,reason", i+1, len(r))
-		}
-		edits = append(edits, SettingEdit{Key: r[0], Value: r[1], Source: r[3], Reason: r[4], AcceptedBy: "sample district"})
 	}
 	_, err = s.Set(ctx, "set", "ordinance, plant options and voices of the sample district", edits...)
 	return err

@@ -25,6 +25,8 @@ var verbAdd = verb{
 		{name: "replace", value: "LAYER", help: "put the file in place of this layer"},
 		{name: "accept-proposals", help: "take the proposed columns and units"},
 		{name: "complete", help: "the layer covers the whole place: nothing there means nothing is there"},
+		{name: "stamp", value: "start|centre|end", help: "of a table of hours: what its times mark"},
+		{name: "utc-offset", value: "HOURS", help: "of a table of hours: how far its clock is ahead of UTC"},
 		{name: "edition", value: "TEXT", help: "edition or date of the data"},
 		{name: "holder", value: "TEXT", help: "who holds the data"},
 		{name: "attribution", value: "TEXT", help: "of a backdrop: who must be named where the picture is shown"},
@@ -68,6 +70,11 @@ var verbAdd = verb{
 				return 0, usagef("--%s is for a backdrop alone", o)
 			}
 		}
+		for _, o := range []string{"stamp", "utc-offset"} {
+			if c.args.has(o) && role.Name != study.HourlyRole {
+				return 0, usagef("--%s is for hourly weather alone", o)
+			}
+		}
 		match, err := c.args.pairs("match")
 		if err != nil {
 			return 0, err
@@ -100,6 +107,7 @@ var verbAdd = verb{
 			in.Personal, in.SwapAxes, in.Replace = c.args.values["personal"], c.args.has("swap-axes"), c.args.get("replace")
 			in.AcceptProposals, in.Complete = c.args.has("accept-proposals"), c.args.has("complete")
 			in.Only = only
+			in.Stamp, in.OffsetH = c.args.get("stamp"), c.args.get("utc-offset")
 			if in.At, err = placeOf(c.args.get("at")); err != nil {
 				return 0, err
 			}

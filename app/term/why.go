@@ -114,6 +114,9 @@ func (c *call) candidate(cand *run.Candidate) {
 		if words := present.PanelDensity(cand.Technology, f.Modules, f.SolarKW, f.FencedHa); words != "" {
 			line += ", " + words
 		}
+		if words := present.PanelRows(f.RowPitchM, f.TiltDeg); words != "" {
+			line += ", " + words
+		}
 		c.say("  %s", line)
 	}
 	if n := cand.Connection; n != nil {

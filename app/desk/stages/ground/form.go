@@ -53,6 +53,9 @@ type form struct {
 	reason           *widget.Entry
 	fields           []*fieldRow
 	grid             *gridRow // of a grid of wind or sun
+	stamp            *widget.Select
+	offset           *widget.Entry
+	clockBox         *fyne.Container // both, of a table of hours
 	fieldBox         *fyne.Container
 	personal         map[string]*widget.Check
 	personalBox      *fyne.Container
@@ -163,6 +166,33 @@ func (f *form) askGrid(role study.Role) {
 			g.field.SetSelected(fieldWords(field))
 		}
 	}
+}
+
+// The words of what the times of a table of hours mark, and the answers that they stand for.
+var stampWords = []string{"the start of the interval", "its centre", "its end"}
+
+var stamps = []string{"start", "centre", "end"}
+
+// askClock asks how the times of a table of hours are meant.
+func (f *form) askClock(role study.Role) {
+	f.clockBox = nil
+	if role.Name != study.HourlyRole || f.in.Layer == nil {
+		return
+	}
+	f.stamp, f.offset = widget.NewSelect(stampWords, nil), widget.NewEntry()
+	f.stamp.PlaceHolder = "choose what they mark"
+	f.offset.SetPlaceHolder("as 1; not needed where the times say their zone")
+	snap := f.s.c.View().Snap
+	if said, ok := snap.Explicit[study.StampKey]; ok {
+		f.stamp.SetSelectedIndex(slices.Index(stamps, said.Value))
+	}
+	if said, ok := snap.Explicit[study.OffsetKey]; ok {
+		f.offset.SetText(said.Value)
+	}
+	f.clockBox = container.New(columns{label: 150}, widgets.NewLine("Times mark").Hinted("Whether an hour's time is that of its start, its centre or its end."), f.stamp,
+		widgets.NewLine("Hours ahead of UTC").Hinted("Of the file's clock, without daylight saving time."), f.offset)
+	f.fieldBox.Add(widgets.Part("The clock of the file"))
+	f.fieldBox.Add(f.clockBox)
 }
 
 func newForm(s *Stage, in study.Import, replace string) *form {
@@ -374,6 +404,7 @@ func (f *form) roleChosen() {
 	f.purpose.Show()
 	f.usual.Set("Usually: " + role.Holder)
 	f.askGrid(role)
+	f.askClock(role)
 	if f.in.Layer == nil || len(f.in.Layer.Columns) == 0 {
 		f.showSample()
 		return
@@ -580,6 +611,14 @@ func (f *form) answers() (in study.Import, unanswered string) {
 		}
 		in.Units[column] = r.unit.Selected
 	}
+	if f.clockBox != nil {
+		if i := slices.Index(stampWords, f.stamp.Selected); i >= 0 {
+			in.Stamp = stamps[i]
+		} else {
+			open = append(open, "What do the times mark?")
+		}
+		in.OffsetH = strings.TrimSpace(f.offset.Text)
+	}
 	if f.grid != nil {
 		open = append(open, f.grid.answers(&in)...)
 	}
@@ -689,6 +728,8 @@ func (f *form) questions(e *study.QuestionError) string {
 			text += ". Change what stands at Only."
 		case strings.HasPrefix(q.Option, "--at"):
 			text += " Tick that each row is a point."
+		case strings.HasPrefix(q.Option, "--utc-offset"):
+			text += " Enter it at Hours ahead of UTC."
 		case strings.HasPrefix(q.Option, "--crs"):
 			f.systemAsked = true
 			text += " Enter it above."

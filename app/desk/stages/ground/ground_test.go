@@ -349,6 +349,37 @@ func TestImportGridOfWind(t *testing.T) {
 	}
 }
 
+// A table of hours is asked for what its times mark and for its clock; the answers become settings of the study.
+func TestImportHours(t *testing.T) {
+	b := open(t)
+	b.s.Import(put(t, "hours.csv", "time,ghi,temperature\n2025-06-21 12:00,800,20\n2025-06-21 13:00,810,21\n"))
+	f := b.waitForm("hours.csv")
+	f.role.SetSelected("Hourly weather")
+	if f.clockBox == nil || f.stamp.Selected != stampWords[0] {
+		t.Fatalf("what the study says of its times already is not shown: %+v", f.stamp)
+	}
+	for _, r := range f.fields {
+		if r.column.Selected != noColumn && r.field.Physical() {
+			r.unit.SetSelected(r.field.Unit)
+		}
+	}
+	f.stamp.ClearSelected()
+	test.Tap(f.ok)
+	if !strings.Contains(f.asked.Text, "What do the times mark?") {
+		t.Errorf("asked %q", f.asked.Text)
+	}
+	f.stamp.SetSelected(stampWords[2])
+	test.Tap(f.ok)
+	b.Until("the clock is asked for", func() bool { return strings.Contains(f.asked.Text, "Enter it at Hours ahead of UTC") })
+	f.offset.SetText("-2")
+	test.Tap(f.ok)
+	b.Until("it is added", func() bool { return b.s.form == nil })
+	said := b.s.c.View().Snap.Explicit
+	if said[study.StampKey].Value != "end" || said[study.OffsetKey].Value != "-2" {
+		t.Errorf("kept: %v, %v", said[study.StampKey], said[study.OffsetKey])
+	}
+}
+
 func TestReplaceAndTakeOut(t *testing.T) {
 	b := open(t)
 	p := b.s.layers
