@@ -220,7 +220,7 @@ func (f *fitter) monthlyLosses(sun *sunlight, l *solar.Losses) {
 }
 
 // sunMatters begin the settings that a plant's sunlight is reckoned with.
-var sunMatters = []string{"solar.soiling_", "solar.snow_", "solar.data_kind", "weather.data_kind"}
+var sunMatters = []string{"solar.", "weather.data_kind"}
 
 // sunSettings writes the settings that a fit reads of sunlight.
 func (k *keyer) sunSettings(snap *study.Snapshot) {

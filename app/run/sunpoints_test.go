@@ -174,6 +174,23 @@ func TestLossesByMonth(t *testing.T) {
 	if math.Abs(snow/shippedLoss-0.9) > 1e-9 {
 		t.Errorf("a tenth lost to snow leaves %v of %v", snow, shippedLoss)
 	}
+	// Losses behind the inverter multiply; those before it do nearly.
+	if got := energy(nil, "solar.transformer_frac", "0.11"); math.Abs(got/shippedLoss-0.89/0.99) > 1e-9 {
+		t.Errorf("11 %% in the transformer leave %v of %v", got, shippedLoss)
+	}
+	if got := energy(nil, "solar.mismatch_frac", "0.05"); got >= shippedLoss || math.Abs(got/shippedLoss-0.95/0.99) > 0.005 {
+		t.Errorf("5 %% of mismatch leave %v of %v", got, shippedLoss)
+	}
+	// The months are cold, -2 to 9 degrees: what suffers more from heat gains more from cold.
+	if got := energy(nil, "plant.sun.module_gamma_per_k", "-0.0045"); got <= shippedLoss {
+		t.Errorf("modules that gain more from cold give %v, not more than %v", got, shippedLoss)
+	}
+	if got := energy(nil, "plant.sun.module_gamma_per_k", "-0.003"); got != shippedLoss {
+		t.Errorf("the shipped figure, set, gives %v, not %v", got, shippedLoss)
+	}
+	if one, none := energy(nil, "plant.sun.shade_blocks", "1"), energy(nil, "plant.sun.shade_blocks", "0"); !(one < shippedLoss && shippedLoss < none) {
+		t.Errorf("shade on one block leaves %v, on two %v, by width %v", one, shippedLoss, none)
+	}
 	june := energy(nil, "solar.snow_6_frac", "1")
 	if share := 1 - june/shippedLoss; share < 0.1 || share > 0.2 {
 		t.Errorf("June without energy takes %v of the year", share)

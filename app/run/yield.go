@@ -257,6 +257,14 @@ func (w *world) solarPlant(o option, latDeg float64) (solar.Plant, error) {
 		p.Module = mod
 	}
 	p.Inverter.DCACRatio = get("dc_ac_ratio", 1.2)
+	p.Module.ShadeBlocks = int(get("shade_blocks", float64(p.Module.ShadeBlocks)))
+	p.Module.GammaPerK = get("module_gamma_per_k", p.Module.GammaPerK)
+	l := &p.Losses
+	for key, to := range map[string]*float64{"lid": &l.LIDFrac, "nameplate": &l.NameplateFrac, "mismatch": &l.MismatchFrac, "dc_wiring": &l.DCWiringFrac, "ac_wiring": &l.ACWiringFrac, "transformer": &l.TransformerFrac, "auxiliary": &l.AuxiliaryFrac, "availability": &l.AvailabilityFrac} {
+		if x, ok := w.snap.Number("solar." + key + "_frac"); ok {
+			*to = x
+		}
+	}
 	// What the distribution of the study takes off is reckoned at the connection.
 	p.Losses.CurtailmentFrac = 0
 	return p, nil

@@ -266,9 +266,15 @@ func (p *layersPane) details(l shownLayer) []pair {
 
 // fieldWords writes a field of a role for people.
 func fieldWords(f study.RoleField) string {
+	if words, ok := lightWords[f.Name]; ok {
+		return words
+	}
 	s := strings.ReplaceAll(f.Name, "_", " ")
 	return strings.ToUpper(s[:1]) + s[1:]
 }
+
+// lightWords name the fields that go by the trade's letters.
+var lightWords = map[string]string{"ghi": "Light on level ground (GHI)", "dhi": "Diffuse light (DHI)", "dni": "Direct light (DNI)", "weibull_a": "Weibull A", "weibull_k": "Weibull k"}
 
 // readable are the endings of files that can be added.
 var readable = []string{".geojson", ".json", ".geojsonl", ".geojsons", ".gpkg", ".shp", ".zip", ".csv", ".txt", ".tsv", ".xlsx", ".tif", ".tiff", ".asc", ".hgt", ".png", ".jpg", ".jpeg"}

@@ -39,8 +39,8 @@ var labels = []struct{ name, words string }{
 	{"title", "Name"}, {"technology", "Technology"}, {"fit", "How it is fitted"}, {"fit_power_kw", "Power at most"}, {"fit_machines", "Machines at most"}, {"fit_energy_mwh_per_yr", "Yearly energy wanted"},
 	{"turbine", "Reference curve"}, {"hub_height_m", "Hub height"}, {"rotor_diameter_m", "Rotor diameter"}, {"rated_kw", "Rated power of a machine"},
 	{"spacing_along_d", "Spacing along the wind"}, {"spacing_across_d", "Spacing across the wind"},
-	{"tilt_deg", "Tilt"}, {"azimuth_deg", "Direction of the panels"}, {"rotation_max_deg", "Largest rotation"}, {"gcr", "Ground cover ratio"}, {"module_efficiency", "Module efficiency"},
-	{"module_width_m", "Module along the row"}, {"module_length_m", "Module across the row"},
+	{"tilt_rule", "How the tilt is chosen"}, {"tilt_deg", "Tilt"}, {"azimuth_deg", "Direction of the panels"}, {"rotation_max_deg", "Largest rotation"}, {"gcr", "Ground cover ratio"}, {"module_efficiency", "Module efficiency"},
+	{"module_gamma_per_k", "Power of a module by heat"}, {"shade_blocks", "Blocks of cells under shade"}, {"module_width_m", "Module along the row"}, {"module_length_m", "Module across the row"},
 	{"fence_offset_m", "From the fence to the panels"}, {"lane_every_m", "Lane every"}, {"lane_m", "Width of a lane"}, {"usable_share", "Share of the rows that is built"}, {"dc_ac_ratio", "Panel over inverter power"}, {"bifaciality", "Rear side of the modules"}, {"collector_width_m", "Width of the collector"},
 	{"clearance_m", "Lower edge above ground"}, {"tower_clear_m", "Panels from a tower"},
 }
@@ -59,13 +59,13 @@ func reads(technology, fit, name string) bool {
 		return fit == "yearly_energy"
 	case "turbine", "hub_height_m", "rotor_diameter_m", "rated_kw", "spacing_along_d", "spacing_across_d":
 		return wind
-	case "tilt_deg":
+	case "tilt_deg", "tilt_rule":
 		return technology == "solar_fixed" || technology == "solar_agri" || technology == "wind_solar"
 	case "azimuth_deg":
 		return sun && technology != "solar_tracking"
 	case "rotation_max_deg":
 		return technology == "solar_tracking"
-	case "gcr", "module_efficiency", "module_width_m", "module_length_m", "fence_offset_m", "lane_every_m", "lane_m", "usable_share", "dc_ac_ratio", "bifaciality":
+	case "gcr", "module_efficiency", "module_gamma_per_k", "shade_blocks", "module_width_m", "module_length_m", "fence_offset_m", "lane_every_m", "lane_m", "usable_share", "dc_ac_ratio", "bifaciality":
 		return sun
 	case "collector_width_m", "clearance_m":
 		return sun && technology != "solar_vertical"

@@ -517,7 +517,7 @@ func (f *fitted) fill(c *run.Candidate) {
 		if n := c.Fit.Modules; n > 0 {
 			line("Modules", strconv.Itoa(n))
 			figure("Distance between rows, on the plan", c.Fit.RowPitchM, "m")
-			figure("Tilt of the panels", c.Fit.TiltDeg, "deg")
+			figure("Tilt of the panels", c.Fit.TiltDeg, "degrees")
 			line("Panels on the fenced ground", present.Density(c.Fit.SolarKW, c.Fit.FencedHa))
 			if words := present.PublishedDensity(c.Technology); words != "" {
 				f.lines.Add(widgets.Faint(words))

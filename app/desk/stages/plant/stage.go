@@ -498,6 +498,8 @@ func (f *settings) choices(name, technology string) []choice {
 		for _, m := range fits(technology) {
 			out = append(out, choice{m, present.Named(m)})
 		}
+	case "tilt_rule":
+		out = []choice{{"set", "as set below"}, {"most energy", "found: most energy"}}
 	case "turbine":
 		out = append(out, choice{study.NotSetText, "generic curve"})
 		for _, t := range f.s.core.Parts.Params.Turbines {
