@@ -510,7 +510,7 @@ func TestMonths(t *testing.T) {
 		return course, nil
 	}
 	html := page(t, in)
-	for _, want := range []string{"Map: energy of ", "July, 12 to 13 h: 5.00 MWh", "isotropic 970, Hay-Davies 1000 (used); from -3.0 to &#43;0.0 %", "sunlight 4.0 (satellite), shade 1.0 (of this site alone); together 5.0", "P75 96 %, P90 92 %, P99 85 %", "Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
+	for _, want := range []string{"Map: energy of ", "July, 12 to 13 h: 5.00 MWh", "isotropic 970, Hay-Davies 1000 (used); from -3.0 to &#43;0.0 %", "sunlight 4.0 (satellite), shading 1.0 (of this site alone); together 5.0", "P75 96 %, P90 92 %, P99 85 %", "Column chart: energy of ", `<tr><th scope="row">May</th><td class="n">unknown</td></tr>`, `<tr><th scope="row">June</th><td class="n">116</td></tr>`, "Unknown: the wind is known for the year"} {
 		if !strings.Contains(html, want) {
 			t.Errorf("the page has no %q", want)
 		}

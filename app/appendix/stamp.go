@@ -145,7 +145,7 @@ func (s *Stamp) Compare(fresh *run.Results, version string) (string, *run.Differ
 		return "identical", nil
 	}
 	now := run.Editions()
-	for _, step := range []string{"ground", "fit", "candidate", "order"} {
+	for _, step := range []string{"ground", "lie", "fit", "candidate", "order"} {
 		if s.Editions[step] != now[step] {
 			return "", &run.Difference{Where: "formula edition of the step " + step, Old: fmt.Sprint(s.Editions[step], " in the appendix"), New: fmt.Sprint(now[step], " in this program")}
 		}

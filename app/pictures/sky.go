@@ -34,8 +34,8 @@ func SkySpread(list []run.SkyYield) string {
 
 // causes are the names of what makes a solar yield unsure.
 var causes = map[string]string{
-	"sunlight": "sunlight", "model": "models of light", "incidence": "slanting light and its colour", "module": "modules", "temperature": "warmth", "soiling": "dirt and snow",
-	"shading": "shade", "inverter": "inverters and wiring", "availability": "outages", "degradation": "ageing",
+	"sunlight": "sunlight", "model": "models of the sky", "incidence": "reflection and spectrum", "module": "modules", "temperature": "cell temperature", "soiling": "dirt and snow",
+	"shading": "shading", "inverter": "inverters and wiring", "availability": "availability", "degradation": "degradation",
 }
 
 // odds are the shares of a year's energy that are reached with the usual odds.
@@ -55,7 +55,7 @@ func Spread(d *run.Doubt) string {
 		if c.Name == "sunlight" {
 			words += " (" + d.Source
 			if !d.Said {
-				words += ", the least sure, since nobody said where it was taken from"
+				words += ", taken because its source is not stated"
 			}
 			words += ")"
 		}
@@ -71,5 +71,5 @@ func Spread(d *run.Doubt) string {
 			reached = append(reached, fmt.Sprintf("%s %.0f %%", o.name, x))
 		}
 	}
-	return text + " Of the middle value (P50) a single year reaches " + strings.Join(reached, ", ") + ". What is not of this site alone errs alike on all sites, and hardly changes their order."
+	return text + " Of the middle value (P50) a single year reaches " + strings.Join(reached, ", ") + ". All but what is of this site alone is common to all sites, and hardly changes their order."
 }

@@ -40,7 +40,7 @@ func PanelRows(pitchM, tiltDeg float64) string {
 	if pitchM == 0 {
 		return ""
 	}
-	words := fmt.Sprintf("rows %.1f m apart on the plan", pitchM)
+	words := fmt.Sprintf("rows %.1f m apart, measured horizontally", pitchM)
 	if tiltDeg > 0 {
 		words += fmt.Sprintf(", tilted by %.0f degrees", tiltDeg)
 	}

@@ -12,7 +12,7 @@ import (
 
 // sentences gives each notice code its text. Names in braces are arguments.
 var sentences = map[string]string{
-	"repaired_crossed":               "the outline crosses itself, so that its area as delivered cannot be told. It was repaired, and encloses {area_after_ha} ha now. Look whether that is the ground that was meant.",
+	"repaired_crossed":               "the outline crosses itself, so its area as delivered is not known. It was repaired, and encloses {area_after_ha} ha now. Check that this is the ground you meant.",
 	"repaired":                       "the outline crossed itself or was not closed properly. It was repaired; its area went from {area_before_ha} ha to {area_after_ha} ha.",
 	"not_repairable":                 "the outline encloses nothing that can be used. The feature was left out; redraw it or take it out of the file.",
 	"duplicate":                      "it has exactly the outline of {of}. It was left out.",
@@ -80,7 +80,7 @@ var sentences = map[string]string{
 	"more_overlaps":                  "{count} more pairs of parcels overlap.",
 	"consents_kept":                  "{count} consents of owners were kept from the edition before.",
 	"hand_edit_lost":                 "a change by hand ({verb}; {reason}) finds its feature no longer. Make it again if it is still wanted.",
-	"drawn_repaired_crossed":         "the drawn outline crosses itself, so that its area cannot be told. It was repaired, and encloses {area_after_ha} ha now. Undo takes it back.",
+	"drawn_repaired_crossed":         "the drawn outline crosses itself, so its area is not known. It was repaired, and encloses {area_after_ha} ha now. Undo takes it back.",
 	"drawn_repaired":                 "the drawn outline crossed itself or was not closed properly. It was repaired; its area went from {area_before_ha} ha to {area_after_ha} ha. Undo takes it back.",
 	"hand_value_new":                 "no other feature has the value {value}; the values here are: {there}. Check that it is meant.",
 	"only_value_absent":              "no feature has the value {value} that was asked for. The values here are: {there}.",
@@ -120,7 +120,7 @@ var sentences = map[string]string{
 	"reference_system_missing":       "the coordinate system {number} is named and not described. Say which it is.",
 	"reference_system_differs":       "{count} geometries name another coordinate system than their table ({table}); the table's was taken.",
 	"column_left_out":                "the column holds binary data and was left out.",
-	"value_unfit":                    "{count} of the values in column {column} cannot be this field; the first: {error}. Check that it is the right column and unit, or mend the values.",
+	"value_unfit":                    "{count} of the values in column {column} do not fit the field; the first: {error}. Check that it is the right column and unit, or mend the values.",
 	"value_left_out":                 "{count} binary values were read as missing.",
 	"number_not_finite":              "{count} infinite numbers were read as missing.",
 	"text_not_utf8":                  "{count} texts held bytes that are no characters; they were replaced.",

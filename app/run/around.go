@@ -120,6 +120,16 @@ func (s *Surveyor) fitted(ctx context.Context) (*fitter, error) {
 		if err != nil {
 			return nil, err
 		}
+		if cache := s.cache; cache != nil {
+			ctx := context.WithoutCancel(ctx)
+			f.kept = func(key string) (lie, bool) {
+				have, err := cache.Results(ctx, lieStep, []string{key})
+				if err != nil {
+					return lie{}, false // it is found out again
+				}
+				return lieOf(have[key])
+			}
+		}
 		s.fitter = f
 	}
 	return s.fitter, nil

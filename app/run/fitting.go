@@ -68,6 +68,7 @@ type fitter struct {
 	wind    []windPoint
 	sun     *sunlight
 	points  []sunPoint   // of monthly sunlight
+	sunKey  string       // digest of the settings that sunlight is read with
 	hours   *weatherFile // nil without a file of hours
 	hourly  *sunlight    // the months of hours
 	gridKey string       // digest of the settings that a connection reads
@@ -78,9 +79,12 @@ type fitter struct {
 	mu        sync.Mutex
 	climates  map[string]*solar.Climate
 	years     map[string]solarYear
-	lies      map[string]lie     // by site
-	tilts     map[string]float64 // found, by option
-	freshLies map[string]lie     // those that are not kept yet
+	lies      map[string]lie               // by site
+	tilts     map[string]float64           // found, by option
+	nodes     map[geo.XY]betweenPoints     // of the lattice of sunlight
+	freshLies map[string]lie               // those that are not kept yet
+	kept      func(key string) (lie, bool) // finds one that is kept; nil where they were read before
+	tiltMu    sync.Mutex                   // held while a tilt is found
 }
 
 // latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
@@ -90,7 +94,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, tilts: map[string]float64{}, freshLies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, tilts: map[string]float64{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}
@@ -192,7 +196,8 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 			}
 		}
 		k.said("sunlight", here.source, here.why)
-		k.sunSettings(f.w.snap)
+		k.text(f.sunKey)
+		k.int(lieEdition)
 		tilt, err := f.tiltDeg(o)
 		if err != nil {
 			return "", err
@@ -209,7 +214,11 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 	if o.fit == "spare_capacity" {
 		for _, role := range []string{"grid_lines", "substations"} {
 			for _, l := range f.w.byRole[role] {
+				k.text(l.rec.Name) // stands in the asset's name
 				k.text(l.rec.Digest)
+				for _, field := range sortedNames(l.rec.Match) {
+					k.texts([]string{field, l.rec.Match[field], l.rec.Units[l.rec.Match[field]]})
+				}
 			}
 		}
 		k.text(f.gridKey)

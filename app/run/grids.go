@@ -372,15 +372,18 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 	grids, unread := f.w.gridsOf("solar_resource")
 	if h := f.hours; h != nil {
 		if h.climate != nil {
-			monthly := ""
+			aside := ""
 			if len(grids) > 0 || f.sun != nil || len(f.points) > 0 {
-				monthly = "; the monthly sunlight of the study stands aside"
+				aside = "; the monthly sunlight of the study stands aside"
 			}
 			hourly := *f.hourly
 			if monthly, _ := f.monthly(s); monthly != nil { // what it says of snow and dirt holds all the same
 				hourly.snow, hourly.soiling = monthly.snow, monthly.soiling
 			}
-			return sunHere{sunlight: &hourly, hours: h, source: "solar yield from " + h.words() + monthly}, nil
+			if hourly.tellsLosses() {
+				aside = "; of the monthly sunlight only snow and dirt are taken"
+			}
+			return sunHere{sunlight: &hourly, hours: h, source: "solar yield from " + h.words() + aside}, nil
 		}
 		unread += fmt.Sprintf("; the hours of %s are not read: %s", h.rec.Name, h.why)
 	}
@@ -441,7 +444,12 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 			}
 		}
 	}
-	out := &sunlight{snow: unsaid, soiling: unsaid, ghi: ghi, albedo: solar.EveryMonth(defaultAlbedo), source: by[0].g.words() + " and those of the other months"}
+	beside, besideFrom := f.monthly(s)
+	losses := sunlight{snow: unsaid, soiling: unsaid}
+	if beside != nil { // what a table or points say of snow and dirt holds beside grids
+		losses = *beside
+	}
+	out := &sunlight{snow: losses.snow, soiling: losses.soiling, ghi: ghi, albedo: solar.EveryMonth(defaultAlbedo), source: by[0].g.words() + " and those of the other months"}
 	source := "solar yield from the " + out.source
 	dhi, _, all, err := of("dhi")
 	if err != nil {
@@ -473,6 +481,9 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 	case all:
 		out.temp = temp
 		source += fmt.Sprintf(", temperatures from the %s and those of the other months", t[0].g.words())
+	case beside != nil:
+		out.temp = beside.temp
+		source += ", temperatures from " + cmp.Or(besideFrom, beside.source)
 	case f.temps != nil:
 		out.temp = f.temps.temp
 		source += ", temperatures from " + f.temps.source

@@ -506,6 +506,16 @@ func newDraws(snap *study.Snapshot, p *Params, cores int, out, before *Results) 
 	return d
 }
 
+// mostKeptDraws bounds the numbers that stay in memory for the next results, to 16 MB.
+const mostKeptDraws = 2 << 20
+
+func (d *draws) size() (n int) {
+	for i := range d.samples {
+		n += len(d.samples[i].x)
+	}
+	return n
+}
+
 func (d *draws) ready(ctx context.Context, k *reckoner, cs []Candidate, which []int, n int) error {
 	return forEach(ctx, d.cores, len(which), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
 		c := which[i]

@@ -31,7 +31,7 @@ type Engine struct {
 
 // Editions are the formula editions of the steps; raised when their digits change.
 func Editions() map[string]int {
-	return map[string]int{"ground": groundEdition, "fit": fitEdition, "candidate": candidateEdition, "order": orderEdition}
+	return map[string]int{"ground": groundEdition, "fit": fitEdition, "candidate": candidateEdition, "order": orderEdition, "lie": lieEdition}
 }
 
 const orderEdition = 2
@@ -152,6 +152,9 @@ func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out, before *R
 	}, report)
 	if err != nil {
 		return err
+	}
+	if draw.size() > mostKeptDraws {
+		out.draws = nil
 	}
 	out.Notices = slices.Clip(out.Notices)
 	for i, voice := range voices {

@@ -520,6 +520,7 @@ func (r *runner) run(ctx context.Context) (*Results, error) {
 	}
 	limits := limitsOf(w.snap, r.k.keys)
 	var writing background
+	defer func() { _ = writing.wait() }() // its error was told, or another one came before
 	var engines enginePool
 	defer engines.empty()
 	for from := 0; from < n; from += batchSites {

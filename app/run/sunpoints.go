@@ -141,41 +141,53 @@ const (
 	tempSteps     = 10   // of a kelvin
 )
 
-// between gives the sunlight at a place from the nearest points, each weighted by the inverse square of its
-// distance, with the distance to the nearest.
-func between(points []sunPoint, p geo.XY) (s *sunlight, nearestM float64, used int) {
-	node := geo.XY{X: math.Round(p.X/sunLatticeM) * sunLatticeM, Y: math.Round(p.Y/sunLatticeM) * sunLatticeM}
+// sunNode is the square of the lattice that a place belongs to, by its middle.
+func sunNode(p geo.XY) geo.XY {
+	return geo.XY{X: math.Round(p.X/sunLatticeM) * sunLatticeM, Y: math.Round(p.Y/sunLatticeM) * sunLatticeM}
+}
+
+// betweenPoints is sunlight from several points.
+type betweenPoints struct {
+	*sunlight
+	used int
+}
+
+// between gives the sunlight at a node from the nearest points, each weighted by the inverse square of its distance.
+// Of snow and dirt those points have a say that tell of them.
+func between(points []sunPoint, node geo.XY) betweenPoints {
 	near := slices.Clone(points)
 	slices.SortStableFunc(near, func(a, b sunPoint) int { return cmp.Compare(a.at.Dist(node), b.at.Dist(node)) })
 	near = near[:min(len(near), mostSunPoints)]
-	nearestM = math.Inf(1)
-	for _, q := range points {
-		nearestM = math.Min(nearestM, q.at.Dist(p))
-	}
 	if len(near) == 1 {
-		return near[0].sunlight, nearestM, 1
+		return betweenPoints{near[0].sunlight, 1}
 	}
 	weights := make([]float64, len(near))
-	total := 0.0
+	var sources []string
 	for i, q := range near {
 		weights[i] = 1 / math.Max(1, float64(q.at.Dist(node)*q.at.Dist(node)))
-		total += weights[i]
+		if !slices.Contains(sources, q.source) {
+			sources = append(sources, q.source)
+		}
 	}
 	mean := func(of func(*sunlight) *[12]float64, steps float64) (out [12]float64) {
 		for m := range out {
+			total := 0.0
 			for i, q := range near {
-				out[m] += float64(weights[i] / total * of(q.sunlight)[m])
+				if x := of(q.sunlight)[m]; !math.IsNaN(x) {
+					out[m] += float64(weights[i] * x)
+					total += weights[i]
+				}
 			}
-			out[m] = math.Round(out[m]*steps) / steps
+			out[m] = math.Round(out[m]/total*steps) / steps // not a number where none tells
 		}
 		return out
 	}
-	s = &sunlight{
+	s := &sunlight{
 		ghi:    mean(func(s *sunlight) *[12]float64 { return &s.ghi }, sunSteps),
 		temp:   mean(func(s *sunlight) *[12]float64 { return &s.temp }, tempSteps),
 		albedo: mean(func(s *sunlight) *[12]float64 { return &s.albedo }, 100),
 		snow:   mean(func(s *sunlight) *[12]float64 { return &s.snow }, 1000), soiling: mean(func(s *sunlight) *[12]float64 { return &s.soiling }, 1000),
-		source: near[0].source,
+		source: strings.Join(sources, " and "),
 	}
 	if !slices.ContainsFunc(near, func(q sunPoint) bool { return q.dhi == nil }) {
 		d := mean(func(s *sunlight) *[12]float64 { return s.dhi }, sunSteps)
@@ -184,7 +196,7 @@ func between(points []sunPoint, p geo.XY) (s *sunlight, nearestM float64, used i
 		}
 		s.dhi = &d
 	}
-	return s, nearestM, len(near)
+	return betweenPoints{s, len(near)}
 }
 
 // monthly gives the monthly sunlight of a site where no grid serves: that of points, else of the table or the typed
@@ -193,12 +205,36 @@ func (f *fitter) monthly(s site) (sun *sunlight, source string) {
 	if len(f.points) == 0 {
 		return f.sun, ""
 	}
-	sun, m, used := between(f.points, s.box.Centre())
-	from := fmt.Sprintf("the point of %s", sun.source)
-	if used > 1 {
-		from = fmt.Sprintf("%d points of %s, weighted by the inverse square of their distances", used, sun.source)
+	at := s.box.Centre()
+	node := sunNode(at)
+	f.mu.Lock()
+	b, done := f.nodes[node]
+	f.mu.Unlock()
+	if !done {
+		b = between(f.points, node)
+		f.mu.Lock()
+		f.nodes[node] = b
+		f.mu.Unlock()
 	}
-	return sun, fmt.Sprintf("%s; the nearest lies %.1f km off", from, m/units.MPerKm)
+	m := math.Inf(1)
+	for _, q := range f.points {
+		m = math.Min(m, q.at.Dist(at))
+	}
+	from := fmt.Sprintf("the point of %s", b.source)
+	if b.used > 1 {
+		from = fmt.Sprintf("%d points of %s, weighted by the inverse square of their distances", b.used, b.source)
+	}
+	return b.sunlight, fmt.Sprintf("%s; the nearest lies %.1f km off", from, m/units.MPerKm)
+}
+
+// tellsLosses reports whether anything is said of snow or dirt.
+func (s *sunlight) tellsLosses() bool {
+	for m := range 12 {
+		if !math.IsNaN(s.snow[m]) || !math.IsNaN(s.soiling[m]) {
+			return true
+		}
+	}
+	return false
 }
 
 // monthlyLosses gives the shares that dirt and snow take, month by month: typed, else of the sunlight's own columns,
@@ -222,16 +258,19 @@ func (f *fitter) monthlyLosses(sun *sunlight, l *solar.Losses) {
 // sunMatters begin the settings that a plant's sunlight is reckoned with.
 var sunMatters = []string{"solar.", "weather.data_kind"}
 
-// sunSettings writes the settings that a fit reads of sunlight.
-func (k *keyer) sunSettings(snap *study.Snapshot) {
+// sunSettings digests the settings that a fit reads of sunlight.
+func sunSettings(snap *study.Snapshot) string {
+	k := newKey("settings of sunlight", 1)
 	for _, key := range snap.Keys() {
-		for _, begin := range sunMatters {
-			if s, _, ok := snap.Lookup(key); ok && strings.HasPrefix(key, begin) {
-				k.text(key)
-				k.text(s.Value)
-			}
+		if !slices.ContainsFunc(sunMatters, func(begin string) bool { return strings.HasPrefix(key, begin) }) {
+			continue
+		}
+		if s, _, ok := snap.Lookup(key); ok {
+			k.text(key)
+			k.text(s.Value)
 		}
 	}
+	return k.sum()
 }
 
 // sunSources are the kinds of sunlight by the words of the settings.

@@ -97,10 +97,11 @@ func TestStepsOfTheSunlight(t *testing.T) {
 	worst := 0.0
 	for i := range 40 {
 		at := geo.XY{X: -15_000 + 749*float64(i), Y: 15_000 - 613*float64(i)}
-		s, _, used := between(points, at)
-		if used != 4 {
-			t.Fatalf("%d points", used)
+		b := between(points, sunNode(at))
+		if b.used != 4 {
+			t.Fatalf("%d points", b.used)
 		}
+		s := b.sunlight
 		// The same by hand, where the site stands and without rounding.
 		exact := &sunlight{albedo: solar.EveryMonth(0.2)}
 		total := 0.0
@@ -309,5 +310,20 @@ func TestRowsOnASlope(t *testing.T) {
 	}
 	if !(south.SolarKW > flat.SolarKW && flat.SolarKW > north.SolarKW) {
 		t.Errorf("power %v, down %v, up %v", flat.SolarKW, south.SolarKW, north.SolarKW)
+	}
+}
+
+// Points that tell nothing of snow do not silence those that do; grids take snow and temperatures from points beside
+// them.
+func TestLossesOfPointsThatTell(t *testing.T) {
+	s := func(snow float64) *sunlight {
+		return &sunlight{ghi: someGHI, temp: solar.EveryMonth(9), albedo: solar.EveryMonth(0.2), snow: solar.EveryMonth(snow), soiling: unsaid, source: "a"}
+	}
+	b := between([]sunPoint{{geo.XY{X: 1000}, s(0.04)}, {geo.XY{X: -1000}, s(math.NaN())}, {geo.XY{Y: 2000}, s(0.14)}}, geo.XY{})
+	if got := b.snow[3]; math.Abs(got-0.06) > 1e-9 { // 4/5 of 0.04 and 1/5 of 0.14
+		t.Errorf("snow takes %v", got)
+	}
+	if !math.IsNaN(b.soiling[3]) {
+		t.Errorf("dirt takes %v, though nobody says so", b.soiling[3])
 	}
 }

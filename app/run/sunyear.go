@@ -33,6 +33,13 @@ func (f *fitter) lie(s site) (lie, error) {
 	f.mu.Lock()
 	known, done := f.lies[s.id]
 	f.mu.Unlock()
+	if !done && f.kept != nil {
+		if known, done = f.kept(f.lieKey(s)); done {
+			f.mu.Lock()
+			f.lies[s.id] = known
+			f.mu.Unlock()
+		}
+	}
 	if done {
 		return known, nil
 	}
@@ -50,12 +57,15 @@ func (f *fitter) lie(s site) (lie, error) {
 	return out, nil
 }
 
+// lieEdition is raised when the digits of the step change.
+const lieEdition = 1
+
 // lieKey gives what the lie of a site depends on; empty without heights, where there is nothing to find out.
 func (f *fitter) lieKey(s site) string {
 	if f.wide == nil {
 		return ""
 	}
-	k := newKey(lieStep, 1)
+	k := newKey(lieStep, lieEdition)
 	k.text(f.wide.rec.Digest)
 	k.text(f.wide.rec.CRS)
 	k.num(f.w.frame.Centre().Lon)
@@ -183,7 +193,7 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	k := newKey("solar year", 3)
 	k.text(o.id)
 	k.num(lat)
-	k.sunSettings(f.w.snap)
+	k.text(f.sunKey)
 	k.sunlight(here.sunlight)
 	if here.hours != nil {
 		k.text(here.hours.key)

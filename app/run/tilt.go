@@ -1,7 +1,9 @@
 package run
 
 import (
+	"cmp"
 	"math"
+	"slices"
 
 	"groundtally/scoring/solar"
 )
@@ -36,16 +38,15 @@ func (f *fitter) tiltDeg(o option) (float64, error) {
 }
 
 // foundTilt finds the tilt with the most energy on level ground behind a flat horizon, under the sunlight of the site
-// that is nearest to the middle of the district; the tilt set where no sunlight is known.
+// nearest to the middle of the district of those whose sunlight is known; the tilt set where none is.
 func (f *fitter) foundTilt(o option) (float64, error) {
-	f.mu.Lock()
-	tilt, done := f.tilts[o.id]
-	f.mu.Unlock()
-	if done {
+	f.tiltMu.Lock()
+	defer f.tiltMu.Unlock()
+	if tilt, done := f.tilts[o.id]; done {
 		return tilt, nil
 	}
-	tilt, _ = o.num("tilt_deg")
-	if s, ok := f.w.middleSite(); ok {
+	tilt, _ := o.num("tilt_deg")
+	for _, s := range f.w.fromTheMiddle() {
 		lat, err := f.siteLat(s)
 		if err != nil {
 			return 0, err
@@ -54,35 +55,35 @@ func (f *fitter) foundTilt(o option) (float64, error) {
 		if err != nil {
 			return 0, err
 		}
-		if here.sunlight != nil {
-			p, perr := f.w.solarPlant(o, lat)
-			c, _, _ := f.climateOf(lat, here)
-			if perr == nil && c != nil {
-				f.monthlyLosses(here.sunlight, &p.Losses)
-				p.Sky = f.sky()
-				if curve, best, err := c.TiltCurve(p, 1, mostTiltDeg); err == nil {
-					tilt = curve[best].TiltDeg
-				}
-			}
+		if here.sunlight == nil {
+			continue
 		}
+		c, _, err := f.climateOf(lat, here)
+		if err != nil {
+			continue // what stands there is no sunlight, and the site says so
+		}
+		p, err := f.w.solarPlant(o, lat)
+		if err != nil {
+			break // the option is out of range, and every site says so
+		}
+		f.monthlyLosses(here.sunlight, &p.Losses)
+		p.Sky = f.sky()
+		if curve, best, err := c.TiltCurve(p, 1, mostTiltDeg); err == nil {
+			tilt = curve[best].TiltDeg
+		}
+		break
 	}
-	f.mu.Lock()
 	f.tilts[o.id] = tilt
-	f.mu.Unlock()
 	return tilt, nil
 }
 
-// middleSite gives the site nearest to the middle of the frame, the first of equals.
-func (w *world) middleSite() (site, bool) {
-	best, at := math.Inf(1), -1
-	for i, s := range w.sites {
+// fromTheMiddle gives the sites by the distance of their middles from that of the frame.
+func (w *world) fromTheMiddle() []site {
+	out := slices.Clone(w.sites)
+	far := func(s site) float64 {
 		c := s.box.Centre()
-		if d := math.Hypot(c.X, c.Y); d < best {
-			best, at = d, i
-		}
+		return math.Hypot(c.X, c.Y)
 	}
-	if at < 0 {
-		return site{}, false
-	}
-	return w.sites[at], true
+	slices.SortStableFunc(out, func(a, b site) int { return cmp.Compare(far(a), far(b)) })
+	return out
 }

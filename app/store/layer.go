@@ -135,11 +135,13 @@ func (f *file) putVersion(ctx context.Context, c *sql.Conn, v study.Version, at 
 	// The content is digested on another core while it is written; a fault rolls the writing back.
 	got := make(chan string, 1)
 	go func() { got <- study.LayerDigest(v.Layer) }()
-	if err := f.putNew(ctx, c, v, at); err != nil {
+	err := f.putNew(ctx, c, v, at)
+	digest := <-got // the content is not read any more once this is back
+	if err != nil {
 		return err
 	}
-	if got := <-got; got != v.Digest {
-		return fmt.Errorf("layer %q: content has digest %s, not %s", v.Layer.Name, got, v.Digest)
+	if digest != v.Digest {
+		return fmt.Errorf("layer %q: content has digest %s, not %s", v.Layer.Name, digest, v.Digest)
 	}
 	return nil
 }
@@ -284,6 +286,7 @@ func (f *file) putLayer(ctx context.Context, c *sql.Conn, v study.Version, at ti
 const (
 	groupRows   = 64
 	groupValues = 4096 // SQLite takes 32,766 in a statement
+	groupBytes  = 4 << 20
 )
 
 func (f *file) putFeatures(ctx context.Context, c *sql.Conn, l *geo.Layer, table, insert, row string, cols []column, shape shape) (err error) {
@@ -299,6 +302,7 @@ func (f *file) putFeatures(ctx context.Context, c *sql.Conn, l *geo.Layer, table
 	}
 	defer func() { err = errors.Join(err, group.Close()) }()
 	var blobs []byte
+	waiting := 0 // rows of the group
 	args := make([]any, 0, size*(len(cols)+3))
 	for i, ft := range l.Features {
 		if err := f.mayFail(); err != nil {
@@ -334,18 +338,18 @@ func (f *file) putFeatures(ctx context.Context, c *sql.Conn, l *geo.Layer, table
 				}
 			}
 		}
-		switch n := fid % size; {
-		case n == 0:
+		switch waiting++; {
+		case waiting == size:
 			_, err = group.ExecContext(ctx, args...)
-		case fid == len(l.Features):
-			_, err = c.ExecContext(ctx, insert+row+strings.Repeat(`, `+row, n-1), args...)
+		case fid == len(l.Features) || len(blobs) > groupBytes:
+			_, err = c.ExecContext(ctx, insert+row+strings.Repeat(`, `+row, waiting-1), args...)
 		default:
 			continue
 		}
 		if err != nil {
 			return err
 		}
-		args, blobs = args[:0], blobs[:0]
+		args, blobs, waiting = args[:0], blobs[:0], 0
 	}
 	return nil
 }

@@ -11,6 +11,7 @@ import (
 	"time"
 
 	"groundtally/assets/citedtable"
+	"groundtally/geo"
 	"groundtally/scoring/criteria"
 	"groundtally/scoring/units"
 )
@@ -436,6 +437,28 @@ func (f RoleField) Check(text, unit string) (string, error) {
 		return "", fmt.Errorf("%s is not from %g to %g", text, lo, hi)
 	}
 	return strconv.FormatFloat(x, 'g', -1, 64), nil
+}
+
+// fits tells why a value of a file cannot be the field's; nil when it can. Several voltages may stand in one text,
+// and a date may go on with a time.
+func (f RoleField) fits(v geo.Value, unit string) error {
+	texts := []string{v.String()}
+	switch {
+	case f.Name == "voltage":
+		texts = strings.Split(texts[0], ";")
+	case f.Unit == "date":
+		texts[0], _, _ = strings.Cut(texts[0], "T")
+	case f.Unit == "1" || f.Physical():
+		if _, ok := v.Float(); !ok {
+			return fmt.Errorf("%q is not a number", texts[0])
+		}
+	}
+	for _, text := range texts {
+		if _, err := f.Check(text, unit); err != nil {
+			return err
+		}
+	}
+	return nil
 }
 
 // span gives the least and the greatest value that a number of the field can be. Source: what the fields

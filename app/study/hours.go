@@ -18,7 +18,7 @@ const (
 )
 
 // saysZone finds the zone at the end of a time.
-var saysZone = regexp.MustCompile(`(Z|[+-]\d\d:?\d\d)$`)
+var saysZone = regexp.MustCompile(`(Z|[+-]\d\d:\d\d)$`)
 
 // ZoneSaid reports whether the times of a table of hours say their zone.
 func ZoneSaid(l *geo.Layer, column string) bool {

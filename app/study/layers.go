@@ -1019,7 +1019,7 @@ func unfit(rec *LayerRecord, role Role, layer *geo.Layer) []geo.Notice {
 			if v.Kind == geo.Null || good[text] || strings.TrimSpace(text) == "" {
 				continue
 			}
-			_, err := field.Check(text, rec.Units[rec.Match[field.Name]])
+			err := field.fits(v, rec.Units[rec.Match[field.Name]])
 			if err == nil {
 				if v.Kind == geo.Text && len(good) < 1000 {
 					good[text] = true
@@ -1029,6 +1029,9 @@ func unfit(rec *LayerRecord, role Role, layer *geo.Layer) []geo.Notice {
 			if count++; count == 1 {
 				n.Feature = f.ID
 				n.Args = map[string]string{"column": rec.Match[field.Name], "error": err.Error()}
+				if layer.Columns[column].Personal {
+					n.Args["error"] = "a value that is personal and not shown"
+				}
 				if !f.Geometry.Empty() {
 					at := anyPosition(f.Geometry)
 					n.At = &at

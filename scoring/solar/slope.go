@@ -13,7 +13,7 @@ const (
 // aspectDeg, such that the sun clears the row in front at the same height over the horizon as on flat ground. With
 // the flat pitch p, the collector's width L and tilt b (facing azimuthDeg), tan e = L sin b/(p - L cos b), and ground
 // that rises by s towards the front, it is p tan e/(tan e - s). It is no less than leaves an aisle of 2 m (or that of
-// flat ground, if that is less) and no more than twice p. Upright or flat rows keep their distance. Lengths in m, pitch
+// flat ground, if that is less) and holds the panels laid flat, and no more than twice p. Upright or flat rows keep their distance. Lengths in m, pitch
 // above L cos b; derived from the geometry of two parallel edges.
 func PitchOnSlope(flatPitchM, widthM, tiltDeg, azimuthDeg, slopeDeg, aspectDeg float64) float64 {
 	depth, height := float64(widthM*cosd(tiltDeg)), float64(widthM*sind(tiltDeg))
@@ -23,6 +23,7 @@ func PitchOnSlope(flatPitchM, widthM, tiltDeg, azimuthDeg, slopeDeg, aspectDeg f
 		return flatPitchM
 	}
 	least, most := depth+min(leastAisleM, aisle), float64(mostOfFlat*flatPitchM)
+	least = min(max(least, widthM), flatPitchM) // panels laid flat must fit, as on flat ground
 	clear := height / aisle
 	if rise >= clear {
 		return most

@@ -48,3 +48,17 @@ func TestPitchOnSlopeKeepsTheSunClear(t *testing.T) {
 		t.Errorf("along the contour a metre is %v long on the plan", got)
 	}
 }
+
+// However steep the ground falls to the sun, the rows hold their own panels laid flat: what a plant may ask for.
+func TestPitchOnSlopeHoldsThePanels(t *testing.T) {
+	for width := 1.0; width <= 8; width += 0.5 {
+		for tilt := 5.0; tilt <= 85; tilt += 5 {
+			for slope := 0.0; slope <= 45; slope += 5 {
+				flat := width / 0.7
+				if p := PitchOnSlope(flat, width, tilt, 180, slope, 180); p < width-1e-12 || p > flat+1e-12 {
+					t.Fatalf("width %v, tilt %v, slope %v: rows %v m apart, %v on flat ground", width, tilt, slope, p, flat)
+				}
+			}
+		}
+	}
+}

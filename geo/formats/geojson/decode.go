@@ -81,7 +81,7 @@ func Decode(ctx context.Context, r io.Reader, o Options) (Result, error) {
 	o = o.withDefaults()
 	d := &decoder{
 		o:     o,
-		s:     &scanner{ctx: ctx, r: r, buf: make([]byte, blockBytes), maxBytes: o.MaxBytes, maxValue: o.MaxValue, maxDepth: o.MaxDepth, progress: o.Progress},
+		s:     &scanner{ctx: ctx, r: r, buf: make([]byte, blockBytes), maxBytes: o.MaxBytes, maxValue: o.MaxValue, maxDepth: o.MaxDepth, progress: o.Progress, names: map[string]string{}},
 		index: map[string]int{},
 	}
 	if err := d.file(); err != nil {
@@ -326,7 +326,7 @@ func (d *decoder) lines() error {
 
 // within gives a scanner for bytes that were read already and stand at the offset.
 func (d *decoder) within(b []byte, at int64) *scanner {
-	return &scanner{ctx: d.s.ctx, r: bytes.NewReader(nil), buf: b, end: len(b), base: at, failed: io.EOF,
+	return &scanner{ctx: d.s.ctx, r: bytes.NewReader(nil), buf: b, end: len(b), base: at, failed: io.EOF, names: d.s.names,
 		maxBytes: d.o.MaxBytes, maxValue: d.o.MaxValue, maxDepth: d.o.MaxDepth}
 }
 

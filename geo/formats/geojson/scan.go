@@ -44,8 +44,11 @@ type scanner struct {
 	names   map[string]string // member names met so far, to hold each once
 }
 
-// maxNames bounds the member names that are kept, for files that never repeat one.
-const maxNames = 4096
+// They bound the member names that are kept, for files that never repeat one.
+const (
+	maxNames     = 4096
+	maxNameBytes = 256
+)
 
 // intern gives the text that the bytes spell, as one string for all members of that name.
 func (s *scanner) intern(b []byte) string {
@@ -53,10 +56,7 @@ func (s *scanner) intern(b []byte) string {
 		return name
 	}
 	name := string(b)
-	if len(s.names) < maxNames {
-		if s.names == nil {
-			s.names = map[string]string{}
-		}
+	if len(s.names) < maxNames && len(name) <= maxNameBytes {
 		s.names[name] = name
 	}
 	return name

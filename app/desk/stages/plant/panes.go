@@ -516,7 +516,7 @@ func (f *fitted) fill(c *run.Candidate) {
 		figure("Ground inside the fence", c.Fit.FencedHa, "ha")
 		if n := c.Fit.Modules; n > 0 {
 			line("Modules", strconv.Itoa(n))
-			figure("Distance between rows, on the plan", c.Fit.RowPitchM, "m")
+			figure("Distance between rows, horizontally", c.Fit.RowPitchM, "m")
 			figure("Tilt of the panels", c.Fit.TiltDeg, "degrees")
 			line("Panels on the fenced ground", present.Density(c.Fit.SolarKW, c.Fit.FencedHa))
 			if words := present.PublishedDensity(c.Technology); words != "" {
