@@ -80,11 +80,11 @@ type fitter struct {
 	climates  map[string]*solar.Climate
 	years     map[string]solarYear
 	lies      map[string]lie               // by site
-	tilts     map[string]float64           // found, by option
+	stands    map[string]stand             // found, by option
 	nodes     map[geo.XY]betweenPoints     // of the lattice of sunlight
 	freshLies map[string]lie               // those that are not kept yet
 	kept      func(key string) (lie, bool) // finds one that is kept; nil where they were read before
-	tiltMu    sync.Mutex                   // held while a tilt is found
+	standMu   sync.Mutex                   // held while a stand is found
 }
 
 // latStep is how far latitude is rounded so that sites share a solar year: a hundredth of a degree
@@ -94,7 +94,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, tilts: map[string]float64{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), freshLies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}
@@ -198,11 +198,14 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 		k.said("sunlight", here.source, here.why)
 		k.text(f.sunKey)
 		k.int(lieEdition)
-		tilt, err := f.tiltDeg(o)
-		if err != nil {
-			return "", err
+		if o.findsStand() {
+			found, err := f.found(o)
+			if err != nil {
+				return "", err
+			}
+			k.num(found.tiltDeg)
+			k.num(found.azimuthDeg)
 		}
-		k.num(tilt)
 		if m := f.sky(); m != solar.HayDavies {
 			k.text(m.String())
 		}

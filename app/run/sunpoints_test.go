@@ -5,10 +5,12 @@ import (
 	"math"
 	"strings"
 	"testing"
+	"time"
 
 	"groundtally/geo"
 	"groundtally/scoring"
 	"groundtally/scoring/solar"
+	"groundtally/scoring/sun"
 )
 
 func dot(x, y float64) geo.XYGeometry {
@@ -325,5 +327,45 @@ func TestLossesOfPointsThatTell(t *testing.T) {
 	}
 	if !math.IsNaN(b.soiling[3]) {
 		t.Errorf("dirt takes %v, though nobody says so", b.soiling[3])
+	}
+}
+
+// Under mornings in fog the best panels face west of the equator; a direction that is set stays.
+func TestFoundDirection(t *testing.T) {
+	const lat, lon = 48.0, 9.0
+	in := solar.WeatherInput{LatDeg: lat, LonDeg: lon, Step: time.Hour, Albedo: solar.EveryMonth(0.2), WindFactor: 0.7}
+	for at := time.Date(2025, 1, 1, 0, 0, 0, 0, time.UTC); at.Year() == 2025; at = at.Add(time.Hour) {
+		a := sun.At(sun.JulianDay(at.Add(30 * time.Minute)))
+		p := a.Seen(lat, lon, sun.StandardAir(0))
+		share := 0.65
+		if p.AzimuthDeg < 180 {
+			share = 0.2
+		}
+		in.Rows = append(in.Rows, solar.WeatherRow{Start: at, GHI: share * sun.NormalWPerM2(a.DistanceAU) * math.Max(0, math.Sin(p.GeometricDeg*math.Pi/180)), DHI: math.NaN(), DNI: math.NaN(), TempC: 10, WindMS: 2})
+	}
+	c, _, err := solar.NewWeather(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	p := shipped(t).Solar.Plant(solar.Mount{TiltDeg: 30, AzimuthDeg: 180, GCR: 0.3, WidthM: 4})
+	found := bestStand(c, p, true)
+	if found.azimuthDeg < 200 || found.azimuthDeg > 180+mostTurnDeg {
+		t.Errorf("found %+v", found)
+	}
+	yield := func(s stand) float64 {
+		p.Mount.TiltDeg, p.Mount.AzimuthDeg = s.tiltDeg, s.azimuthDeg
+		y, err := c.Yield(p)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return y.SpecificYieldKWhPerKWp
+	}
+	for _, other := range []stand{{found.tiltDeg + 2, found.azimuthDeg}, {found.tiltDeg - 2, found.azimuthDeg}, {found.tiltDeg, 180}} {
+		if yield(other) >= yield(found) {
+			t.Errorf("%+v gives no less than %+v, which was found", other, found)
+		}
+	}
+	if kept := bestStand(c, p, false); kept.azimuthDeg != p.Mount.AzimuthDeg {
+		t.Errorf("a direction of %v that is set was turned to %v", p.Mount.AzimuthDeg, kept.azimuthDeg)
 	}
 }

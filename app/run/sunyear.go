@@ -203,11 +203,6 @@ func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad
 	k.int(int(l.aspect))
 	k.text(l.notice)
 	k.text(string(l.horizon[:]))
-	tilt, err := f.tiltDeg(o)
-	if err != nil {
-		return y, here, false, err
-	}
-	k.num(tilt)
 	key := k.sum()
 	f.mu.Lock()
 	year, done := f.years[key]

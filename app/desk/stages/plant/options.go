@@ -39,7 +39,7 @@ var labels = []struct{ name, words string }{
 	{"title", "Name"}, {"technology", "Technology"}, {"fit", "How it is fitted"}, {"fit_power_kw", "Power at most"}, {"fit_machines", "Machines at most"}, {"fit_energy_mwh_per_yr", "Yearly energy wanted"},
 	{"turbine", "Reference curve"}, {"hub_height_m", "Hub height"}, {"rotor_diameter_m", "Rotor diameter"}, {"rated_kw", "Rated power of a machine"},
 	{"spacing_along_d", "Spacing along the wind"}, {"spacing_across_d", "Spacing across the wind"},
-	{"tilt_rule", "How the tilt is chosen"}, {"tilt_deg", "Tilt"}, {"azimuth_deg", "Direction of the panels"}, {"rotation_max_deg", "Largest rotation"}, {"gcr", "Ground cover ratio"}, {"module_efficiency", "Module efficiency"},
+	{"tilt_rule", "How the panels stand"}, {"tilt_deg", "Tilt"}, {"azimuth_deg", "Direction of the panels"}, {"rotation_max_deg", "Largest rotation"}, {"gcr", "Ground cover ratio"}, {"module_efficiency", "Module efficiency"},
 	{"module_gamma_per_k", "Power of a module by heat"}, {"shade_blocks", "Blocks of cells under shade"}, {"module_width_m", "Module along the row"}, {"module_length_m", "Module across the row"},
 	{"fence_offset_m", "From the fence to the panels"}, {"lane_every_m", "Lane every"}, {"lane_m", "Width of a lane"}, {"usable_share", "Share of the rows that is built"}, {"dc_ac_ratio", "Panel over inverter power"}, {"bifaciality", "Rear side of the modules"}, {"collector_width_m", "Width of the collector"},
 	{"clearance_m", "Lower edge above ground"}, {"tower_clear_m", "Panels from a tower"},

@@ -499,7 +499,7 @@ func (f *settings) choices(name, technology string) []choice {
 			out = append(out, choice{m, present.Named(m)})
 		}
 	case "tilt_rule":
-		out = []choice{{"set", "as set below"}, {"most energy", "found: most energy"}}
+		out = []choice{{"set", "tilt and direction as set"}, {"most energy", "found: most energy"}}
 	case "turbine":
 		out = append(out, choice{study.NotSetText, "generic curve"})
 		for _, t := range f.s.core.Parts.Params.Turbines {
