@@ -28,18 +28,7 @@ func LayerDigest(l *geo.Layer) string {
 	d.count(len(l.Features))
 	for _, f := range l.Features {
 		d.text(f.ID)
-		d.count(int(f.Geometry.Kind))
-		d.count(len(f.Geometry.Parts))
-		for _, part := range f.Geometry.Parts {
-			d.count(len(part))
-			for _, ring := range part {
-				d.count(len(ring))
-				for _, p := range ring {
-					d.number(p.Lon)
-					d.number(p.Lat)
-				}
-			}
-		}
+		d.geometry(f.Geometry)
 		for _, v := range f.Values {
 			d.count(int(v.Kind))
 			switch v.Kind {
@@ -124,9 +113,29 @@ func (d *digester) flag(b bool) {
 	}
 }
 
+func (d *digester) geometry(g geo.LonLatGeometry) {
+	d.count(int(g.Kind))
+	d.count(len(g.Parts))
+	for _, part := range g.Parts {
+		d.count(len(part))
+		for _, ring := range part {
+			d.count(len(ring))
+			for _, p := range ring {
+				d.number(p.Lon)
+				d.number(p.Lat)
+			}
+		}
+	}
+}
+
 func (d *digester) sum() string {
+	sum := d.raw()
+	return hex.EncodeToString(sum[:])
+}
+
+func (d *digester) raw() (sum [sha256.Size]byte) {
 	d.flush()
-	sum := hex.EncodeToString(d.h.Sum(d.buf[:0]))
+	d.h.Sum(sum[:0])
 	digesters.Put(d)
 	return sum
 }

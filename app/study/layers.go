@@ -2,6 +2,7 @@ package study
 
 import (
 	"context"
+	"crypto/sha256"
 	"errors"
 	"fmt"
 	"math"
@@ -902,8 +903,8 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 	}
 	sort.Strings(fieldNames)
 
-	seenShape := map[string]string{}
-	seenID := map[string]int{}
+	seenShape := make(map[shapeSum]string, len(layer.Features))
+	seenID := make(map[string]int, len(layer.Features))
 	kinds := map[string]int{}
 	kept := layer.Features[:0] // the list is this layer's own
 	var flats []geo.XYGeometry // of parcels
@@ -945,7 +946,7 @@ func (s *Study) checkFeatures(ctx context.Context, rec *LayerRecord, in Import, 
 				if f.Geometry, err = inverse(flat); err != nil {
 					return &FileError{File: in.File, Where: "feature " + f.ID, What: err.Error()}
 				}
-				shape = shapeDigest(f.Geometry)
+				shape = shapeSumOf(f.Geometry)
 				rec.Ledger.Repaired++
 				code, args := repairWords("repaired", r.Repaired)
 				note(geo.Notice{Code: code, Severity: geo.Warning, Feature: f.ID, At: &at, Args: args})
@@ -1059,8 +1060,8 @@ func repairWords(code string, r Repaired) (string, map[string]string) {
 
 // ready is a feature with what can be found out of it by itself.
 type ready struct {
-	Repaired        // of polygons
-	shape    string // digest of the geometry as delivered
+	Repaired          // of polygons
+	shape    shapeSum // of the geometry as delivered
 }
 
 // readied projects and repairs the features that the role takes, and digests their shapes, on all cores.
@@ -1082,7 +1083,7 @@ func readied(ctx context.Context, in Import, layer *geo.Layer, role Role, forwar
 					if f.Geometry.Empty() || !role.Accepts(f.Geometry.Kind.String()) {
 						continue
 					}
-					out[i].shape = shapeDigest(f.Geometry)
+					out[i].shape = shapeSumOf(f.Geometry)
 					if f.Geometry.Kind == geo.Polygons {
 						out[i].Geometry, faults[i] = forward(f.Geometry)
 					}
@@ -1114,6 +1115,16 @@ func readied(ctx context.Context, in Import, layer *geo.Layer, role Role, forwar
 	return out, nil
 }
 
+// shapeSum tells equal geometries.
+type shapeSum [sha256.Size]byte
+
+func shapeSumOf(g geo.LonLatGeometry) shapeSum {
+	d := newDigester()
+	d.geometry(g)
+	return d.raw()
+}
+
+// shapeDigest is what a geometry is remembered by.
 func shapeDigest(g geo.LonLatGeometry) string {
 	return LayerDigest(&geo.Layer{Features: []geo.Feature{{Geometry: g}}})
 }
