@@ -7,6 +7,7 @@ import (
 
 	"groundtally/app/run"
 	"groundtally/scoring/solar"
+	"groundtally/scoring/wind"
 )
 
 // SkySpread tells what each model of the sky gives, and how far they lie apart; empty without models.
@@ -72,4 +73,22 @@ func Spread(d *run.Doubt) string {
 		}
 	}
 	return text + " Of the middle value (P50) a single year reaches " + strings.Join(reached, ", ") + ". All but what is of this site alone is common to all sites, and hardly changes their order."
+}
+
+// WindSpread tells by how much the yield of the wind part may be another; empty without an answer.
+func WindSpread(d *run.WindDoubt) string {
+	if d == nil {
+		return ""
+	}
+	source := map[string]string{"mast": "a mast near by with a year of measurements", "model": "an atlas or model without a mast"}[d.Source]
+	if !d.Said {
+		source += ", taken because its source is not stated"
+	}
+	var reached []string
+	for _, o := range odds {
+		if x, err := wind.Exceedance(100, d.OneYear, o.p); err == nil {
+			reached = append(reached, fmt.Sprintf("%s %.0f %%", o.name, x))
+		}
+	}
+	return fmt.Sprintf("How sure the wind yield is, standard deviations in %%: wind, flow over the land, wakes, curve and losses together %.1f (%s). From one year to another %.1f, apart from these: %.1f of the mean speed, and %.2f %% of energy for each per cent of speed. Of the middle value (P50) a single year reaches %s. In the long run plants gave %+.0f %% against such forecasts (Hammond et al. 2026, Wind Energy Science 11:1251); the yearly energy with that bias taken off stands beside.", 100*d.Model, source, 100*d.BetweenYears, 100*d.YearSpeed, d.Sensitivity, strings.Join(reached, ", "), 100*d.Bias)
 }

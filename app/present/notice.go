@@ -29,6 +29,8 @@ var sentences = map[string]string{
 	"tracks_rule":                    "the length of new track follows a rule of thumb; the true place of tracks is not known.",
 	"may_never":                      "in some of the trials the payback never comes.",
 	"median_differs":                 "the median of the trials differs from the central value by more than 2 %.",
+	"wakes_of_others":                "existing or permitted turbines within 10 km take part in the wakes, by the generic curve for their power and rotor; masts keep the spacing across the wind from them.",
+	"wakes_of_others_unknown":        "existing or permitted wind plant within 10 km lacks hub height or rotor, or is drawn as an area: its wakes are not counted.",
 	"nearest_resource":               "wind statistics are taken from the nearest resource point.",
 	"rayleigh":                       "an even spread of directions and a Rayleigh distribution are assumed from one typed mean speed.",
 	"terrain_missing":                "no ground heights: slope rules are not applied and sea level is assumed.",

@@ -3,6 +3,7 @@ package run
 import (
 	"context"
 	"fmt"
+	"math"
 	"runtime"
 	"sync"
 
@@ -164,6 +165,7 @@ type Course struct {
 	Clock string           // "solar time" where the sunlight is given by month, the clock of the file where by hour
 	Sky   []SkyYield       // what each way to bring the sky's light onto the panels gives; nil as Hours
 	Doubt *Doubt           // why the yield may be another; nil as Hours
+	Wind  *WindDoubt       // the same of the wind part; nil without one
 }
 
 // Doubt is the spread of a solar yield by its causes, as shares of the energy.
@@ -174,6 +176,39 @@ type Doubt struct {
 	BetweenYears float64 // from one year to another
 	LongTerm     float64 // of the long-term mean, all components together
 	OneYear      float64
+}
+
+// WindDoubt is the spread of the wind part's yield, as shares of the energy.
+type WindDoubt struct {
+	Source       string  // of the wind: model or mast
+	Said         bool    // somebody said so; otherwise it counts as the least sure
+	Model        float64 // of the long-term energy, all causes together
+	YearSpeed    float64 // of a year's mean speed
+	Sensitivity  float64 // per cent energy per cent speed
+	BetweenYears float64 // of a year's energy
+	OneYear      float64
+	Bias         float64 // what such forecasts gave in the long run, less one
+}
+
+// windDoubt tells the spread of a candidate's wind part; nil where its energy is not known.
+func (w *world) windDoubt(c *Candidate) (*WindDoubt, error) {
+	model, year, err := w.windSigmas()
+	if err != nil {
+		return nil, err
+	}
+	bias, err := w.p.Wind.Get("long_run_bias_frac")
+	if err != nil {
+		return nil, err
+	}
+	for _, l := range c.Leaves() {
+		if l.Name == "wind_yield_sigma" && l.State == scoring.Number && l.X > 0 {
+			between := math.Sqrt(math.Max(0, float64(l.X*l.X)-float64(model*model)))
+			kind, _, _ := w.snap.Lookup("wind.data_kind")
+			_, said := w.snap.Explicit["wind.data_kind"]
+			return &WindDoubt{Source: kind.Value, Said: said, Model: model, YearSpeed: year, Sensitivity: between / year, BetweenYears: between, OneYear: l.X, Bias: bias.Central}, nil
+		}
+	}
+	return nil, nil
 }
 
 // SkyYield is the yield under one model of the sky.
@@ -195,14 +230,17 @@ func (s *Surveyor) Course(ctx context.Context, c *Candidate) (*Course, error) {
 	if c.Fit == nil {
 		return every(scoring.UnknownBecause(c.Status)), nil
 	}
-	if c.Fit.WindKW > 0 {
-		return every(scoring.UnknownBecause("wind_by_year_alone")), nil
-	}
 	s.mu.Lock()
 	defer s.mu.Unlock()
 	here, err := s.site(ctx, c)
 	if err != nil {
 		return nil, err
+	}
+	if c.Fit.WindKW > 0 {
+		if out.Wind, err = s.world.windDoubt(c); err != nil {
+			return nil, err
+		}
+		return every(scoring.UnknownBecause("wind_by_year_alone")), nil
 	}
 	f, err := s.fitted(ctx)
 	if err != nil {

@@ -298,6 +298,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		}
 	}
 	fitFacts(o, r, f)
+	f.set("existing_loss_mwh", fr.lostNearby(o, around, s, r), "wind yield")
 	track, counted, err := w.tracks(r, f["road_m"].v)
 	if err != nil {
 		return nil, err

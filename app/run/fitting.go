@@ -40,6 +40,7 @@ type fitResult struct {
 	WindMWh        yieldValue
 	SolarMWh       yieldValue
 	WakeLoss       float64
+	NearbyLossMWh  float64 // what existing and permitted turbines lose to the new ones
 	PR             float64
 	CropLight      float64
 	WindSigma      float64 // of one year's energy
@@ -66,6 +67,7 @@ type yieldValue struct {
 type fitter struct {
 	w       *world
 	wind    []windPoint
+	others  []neighbour // existing and permitted wind turbines
 	sun     *sunlight
 	points  []sunPoint   // of monthly sunlight
 	sunKey  string       // digest of the settings that sunlight is read with
@@ -103,6 +105,9 @@ func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 		return nil, err
 	}
 	if f.wind, err = w.windPoints(); err != nil {
+		return nil, err
+	}
+	if f.others, err = w.neighbours(); err != nil {
 		return nil, err
 	}
 	if f.sun, err = w.sunlight(); err != nil {
@@ -157,7 +162,7 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 		k.text(o.settings[n])
 	}
 	if o.wind {
-		for _, n := range []string{"wind.shear_alpha", "wind.typed_elevation_m"} {
+		for _, n := range []string{"wind.shear_alpha", "wind.typed_elevation_m", "wind.data_kind"} {
 			v, _, _ := f.w.snap.Lookup(n)
 			k.text(v.Value)
 		}
@@ -176,6 +181,9 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 			}
 		}
 		k.said("wind", p.source, p.why)
+		for _, n := range f.near(s) {
+			k.text(n.key)
+		}
 		if f.w.terrain != nil {
 			k.text(f.w.terrain.rec.Digest)
 			k.text(f.w.terrain.rec.CRS)
@@ -354,6 +362,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		return nil
 	}
 	el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
+	near := wholeOf(f.near(s))
 	var in wind.FarmInput
 	if known {
 		from, even := prevailingDeg(p.sectors)
@@ -366,6 +375,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		if in, err = f.farm(o, machine, hub, p.windPoint, s); err != nil {
 			return err
 		}
+		in.Existing = f.machinesOf(s, near)
 	}
 	var gain fit.Gain
 	if known {
@@ -375,12 +385,19 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		}
 		gain = judge{ev: ev, toTrue: f.turn(s)}
 	}
-	layout, err := fit.Machines(fit.Input{Buildable: g.Area, Spacing: el, Max: capped(most), Gain: gain})
+	room, err := clearOf(e, g.Area, near, across, d)
+	if err != nil {
+		return siteError(s, err)
+	}
+	layout, err := fit.Machines(fit.Input{Buildable: room, Spacing: el, Max: capped(most), Gain: gain})
 	if err != nil {
 		return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 	}
 	at := layout.At
 	if len(at) == 0 {
+		if len(near) > 0 && !g.Area.Empty() && room.Empty() {
+			r.Reason = "existing_turbines_near"
+		}
 		return nil
 	}
 	energy := func(at []geo.XY) (wind.FarmResult, error) {
@@ -410,7 +427,13 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		r.WindMWh.Why = p.why
 		return nil
 	}
-	r.WindMWh.MWh, r.WakeLoss = res.NetMWhPerYr, res.WakeLossFrac
+	r.WindMWh.MWh, r.WakeLoss, r.NearbyLossMWh = res.NetMWhPerYr, res.WakeLossFrac, res.ExistingLossMWhPerYr
+	if len(near) > 0 {
+		r.Notices = append(r.Notices, "wakes_of_others")
+	}
+	if len(near) < len(f.near(s)) {
+		r.Notices = append(r.Notices, "wakes_of_others_unknown")
+	}
 	for _, st := range res.Chain {
 		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "MWh/yr", Before: st.BeforeMWh, Share: st.Share, After: st.AfterMWh})
 	}
@@ -440,17 +463,28 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 // longTermYears is the span over which the long-term mean evens the variation between years out.
 const longTermYears = 20
 
-// windSigma joins the screening uncertainty without a mast with the variation between years.
+// windSigma joins the screening uncertainty with the variation between years.
 func (f *fitter) windSigma(sensitivity, years float64) (float64, error) {
-	model, err := f.w.p.Wind.Get("sigma_no_mast_frac")
+	model, year, err := f.w.windSigmas()
 	if err != nil {
 		return 0, err
 	}
-	year, err := f.w.p.Wind.Get("interannual_speed_sigma_frac")
-	if err != nil {
-		return 0, err
+	return wind.SigmaOverYears(model, year*sensitivity, years)
+}
+
+// windSigmas gives the standard deviations of the long-term energy, by where the wind was taken from, and of a year's
+// mean speed.
+func (w *world) windSigmas() (model, yearSpeed float64, err error) {
+	name := "sigma_no_mast_frac"
+	if kind, _, _ := w.snap.Lookup("wind.data_kind"); kind.Value == "mast" {
+		name = "sigma_one_year_mast_frac"
 	}
-	return wind.SigmaOverYears(model.Central, year.Central*sensitivity, years)
+	m, err := w.p.Wind.Get(name)
+	if err != nil {
+		return 0, 0, err
+	}
+	y, err := w.p.Wind.Get("interannual_speed_sigma_frac")
+	return m.Central, y.Central, err
 }
 
 // turbine finds the machine of an option: a reference curve by name, else the generic curve for its
@@ -468,15 +502,11 @@ func (f *fitter) turbine(o option, ratedKW, rotorM float64) (wind.Turbine, error
 		}
 		return t, nil
 	}
-	g, err := f.w.p.Wind.Generic(ratedKW, rotorM)
+	t, err := f.w.genericTurbine(ratedKW, rotorM)
 	if err != nil {
-		return wind.Turbine{}, err
+		return t, fmt.Errorf("plant option %q: %w", o.id, err)
 	}
-	c, err := g.Curve()
-	if err != nil {
-		return wind.Turbine{}, fmt.Errorf("plant option %q: %w", o.id, err)
-	}
-	return wind.Turbine{ID: "generic", Name: "generic curve", RatedKW: ratedKW, RotorDiameterM: rotorM, CutInMPerS: g.CutInMPerS, CutOutMPerS: g.CutOutMPerS, Curve: c, Source: "Saint-Drenan et al. 2020, Renewable Energy"}, nil
+	return t, nil
 }
 
 func (f *fitter) farm(o option, machine wind.Turbine, hubM float64, p windPoint, s site) (wind.FarmInput, error) {

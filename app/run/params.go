@@ -74,6 +74,7 @@ var factLeaves = []scoring.Leaf{
 	{Name: "solar_yield_error", Unit: "1", Title: "Error of the solar yield, even odds 1"},
 	{Name: "wind_load_factor", Unit: "1", Title: "Load factor of the wind part"},
 	{Name: "solar_load_factor", Unit: "1", Title: "Load factor of the solar part"},
+	{Name: "existing_loss_mwh", Unit: "MWh/yr", Title: "Energy that existing and permitted turbines lose to the new ones"},
 	{Name: "wake_loss_frac", Unit: "1", Title: "Loss by wakes"},
 	{Name: "performance_ratio_frac", Unit: "1", Title: "Solar performance ratio"},
 	{Name: "crop_light_frac", Unit: "1", Title: "Light left for crops"},

@@ -488,7 +488,7 @@ func (f *fitted) askMonths(c *run.Candidate) {
 			}
 			f.month.Set(do)
 			f.hour.Set(hoursOf(c, course))
-			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt)))
+			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt) + pictures.WindSpread(course.Wind)))
 			visible(f.sky, f.sky.Text != "")
 			f.body.Refresh()
 		})

@@ -1,0 +1,128 @@
+package run
+
+import (
+	"math"
+	"testing"
+
+	"groundtally/scoring"
+)
+
+// A turbine upwind of a site costs it energy, and the site's machines cost that one; what is missing is unknown, not
+// zero.
+func TestWakesOfNeighbours(t *testing.T) {
+	study0 := func() *plain {
+		p := windYield(t)
+		p.set("wind.typed_mean_speed_m_per_s", "7", "wind.typed_height_m", "100")
+		return p
+	}
+	columns := []string{"technology", "rated_power", "hub_height", "rotor_diameter", "state"}
+	machine := func(x, y float64, state string) thing {
+		return thing{dot(x, y), map[string]string{"technology": "wind", "rated_power": "2000", "hub_height": "100", "rotor_diameter": "90", "state": state}}
+	}
+	energy := func(p *plain) (mwh float64, lost Leaf, c *Candidate) {
+		c = p.computed(nil)
+		return p.leaf(c, "wind_p50_mwh").X, p.leaf(c, "existing_loss_mwh"), c
+	}
+	alone, lost, _ := energy(study0())
+	if lost.State != scoring.Unknown || lost.Why != "no_layer:existing_plant" {
+		t.Errorf("without a layer: %+v", lost)
+	}
+	near := study0()
+	near.add(neighbourRole, columns, machine(-1500, 0, "existing"), machine(1500, 0, "permitted"))
+	between, lost, c := energy(near)
+	if between >= alone || between < 0.85*alone {
+		t.Errorf("between two turbines %v MWh, alone %v", between, alone)
+	}
+	if lost.State != scoring.Number || lost.X <= 0 || lost.X > 0.2*alone {
+		t.Errorf("the two lose %+v", lost)
+	}
+	if q, ok := c.Consequence("existing_plant_loss_mwh_per_yr"); !ok || q.Central != lost.X {
+		t.Errorf("the consequence is %+v", q)
+	}
+	if s := near.said(c, "wakes_of_others"); !s {
+		t.Errorf("notices: %v", c.Notices)
+	}
+	applied := study0()
+	applied.add(neighbourRole, columns, machine(-1500, 0, "applied"))
+	if got, _, _ := energy(applied); got != alone {
+		t.Errorf("one that is applied for counts: %v, alone %v", got, alone)
+	}
+	applied.set("wind.count_applied", "yes")
+	if got, _, _ := energy(applied); got >= alone {
+		t.Errorf("one that is applied for does not count, though it is to: %v, alone %v", got, alone)
+	}
+	far := study0()
+	far.add(neighbourRole, columns, machine(-30_000, 0, "existing"))
+	if got, lost, _ := energy(far); got != alone || lost.State != scoring.Number || lost.X != 0 {
+		t.Errorf("30 km off: %v MWh, alone %v; lost %+v", got, alone, lost)
+	}
+	bare := study0()
+	bare.add(neighbourRole, columns, thing{dot(-1500, 0), map[string]string{"technology": "wind", "rated_power": "2000", "state": "existing"}})
+	if got, lost, c := energy(bare); got != alone || lost.State != scoring.Unknown || !bare.said(c, "wakes_of_others_unknown") {
+		t.Errorf("without hub and rotor: %v MWh, alone %v; lost %+v", got, alone, lost)
+	}
+	// On the site itself, masts keep their distance.
+	_, _, plainFit := energy(study0())
+	spot := plainFit.Fit.Turbines[0]
+	at, err := study0().frame.Forward(spot)
+	if err != nil {
+		t.Fatal(err)
+	}
+	on := study0()
+	on.add(neighbourRole, columns, machine(at.X, at.Y, "existing"))
+	c = on.computed(nil)
+	if c.Fit != nil {
+		for _, ll := range c.Fit.Turbines {
+			q, err := on.frame.Forward(ll)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if d := math.Hypot(q.X-at.X, q.Y-at.Y); d < 3*90 {
+				t.Errorf("a mast stands %v m from an existing one", d)
+			}
+		}
+	} else if c.Reason != "existing_turbines_near" {
+		t.Errorf("%s: %s", c.Status, c.Reason)
+	}
+}
+
+// said reports whether a notice stands with a candidate.
+func (p *plain) said(c *Candidate, code string) bool {
+	for _, n := range c.Notices {
+		if n == code {
+			return true
+		}
+	}
+	return false
+}
+
+// The spread of the wind follows where it was taken from, and is told by its parts.
+func TestWindDoubtFollowsTheSource(t *testing.T) {
+	of := func(set ...string) (*WindDoubt, float64) {
+		p := windYield(t)
+		p.set("wind.typed_mean_speed_m_per_s", "7", "wind.typed_height_m", "100")
+		p.set(set...)
+		c := p.computed(nil)
+		snap, err := p.s.Snapshot()
+		if err != nil {
+			t.Fatal(err)
+		}
+		course, err := NewSurveyor(snap, shipped(t), StoreLoader(p.s.Store()), nil).Course(t.Context(), c)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return course.Wind, p.leaf(c, "wind_yield_sigma").X
+	}
+	said, sigma := of()
+	if said == nil || said.Said || said.Source != "model" || said.Model != 0.175 || said.OneYear != sigma {
+		t.Fatalf("not said: %+v, sigma %v", said, sigma)
+	}
+	// 0.06 of the speed, times 1 to 2 per cent of energy for each of speed at 7 m/s.
+	if said.Sensitivity < 1 || said.Sensitivity > 2 || math.Abs(math.Hypot(0.175, 0.06*said.Sensitivity)-sigma) > 1e-12 {
+		t.Errorf("%+v, sigma %v", said, sigma)
+	}
+	mast, less := of("wind.data_kind", "mast")
+	if !mast.Said || mast.Model != 0.1 || less >= sigma {
+		t.Errorf("a mast: %+v, sigma %v", mast, less)
+	}
+}
