@@ -130,6 +130,9 @@ func (b *book) months(c *run.Candidate, title, id string) (*monthsView, error) {
 	if course.Hours != nil {
 		out.Hours = picture(chart.DayByMonth(pictures.Hours(course, "Map: energy of "+title+" by month and hour of the day", id+"-hours"), draw.Light(), halfWidth))
 	}
+	if course.Rose != nil {
+		out.Hours = picture(chart.WindRose(pictures.Rose(course.Rose, "Rose: wind and energy of "+title+" by direction", id+"-rose"), draw.Light(), halfWidth))
+	}
 	out.Sky, out.Spread = pictures.SkySpread(course.Sky), pictures.Spread(course.Doubt)+pictures.WindSpread(course.Wind)
 	for m, v := range course.Months {
 		row := monthView{Month: time.Month(m + 1).String(), MWh: v.State.String()}

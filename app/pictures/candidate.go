@@ -48,6 +48,15 @@ func Hours(c *run.Course, title, id string) chart.DayMonths {
 	return chart.DayMonths{Title: title, ID: id, What: "energy at the plant by hour of the day (" + c.Clock + ")", Unit: "MWh", Values: *c.Hours}
 }
 
+// Rose shows the wind of a candidate by direction.
+func Rose(r *run.WindRose, title, id string) chart.Rose {
+	out := chart.Rose{Title: title, ID: id, Even: r.Even}
+	for _, x := range r.Sectors {
+		out.Sectors = append(out.Sectors, chart.RoseSector{Time: x.Time, Energy: x.Energy, WakeLoss: x.WakeLoss, SpeedMPerS: x.SpeedMPerS})
+	}
+	return out
+}
+
 // Months shows the energy of a candidate by month, as run.Surveyor gives it. Why says what keeps months
 // unknown; it is empty when all are known.
 func Months(months [12]scoring.Value, title, id string) (in chart.Months, why string) {

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"runtime"
+	"slices"
 	"sync"
 
 	"groundtally/app/study"
@@ -14,6 +15,7 @@ import (
 	"groundtally/scoring"
 	"groundtally/scoring/solar"
 	"groundtally/scoring/units"
+	"groundtally/scoring/wind"
 )
 
 // KeptFrom is one distance that a candidate keeps, with what near the site it is kept from.
@@ -166,6 +168,7 @@ type Course struct {
 	Sky   []SkyYield       // what each way to bring the sky's light onto the panels gives; nil as Hours
 	Doubt *Doubt           // why the yield may be another; nil as Hours
 	Wind  *WindDoubt       // the same of the wind part; nil without one
+	Rose  *WindRose        // the wind of a plant with turbines by direction; nil where it is not known
 }
 
 // Doubt is the spread of a solar yield by its causes, as shares of the energy.
@@ -176,6 +179,88 @@ type Doubt struct {
 	BetweenYears float64 // from one year to another
 	LongTerm     float64 // of the long-term mean, all components together
 	OneYear      float64
+}
+
+// WindRose is the wind at hub height by the direction that it comes from, with what it gives.
+type WindRose struct {
+	Sectors []WindSector
+	Even    bool // an even spread is assumed
+}
+
+// WindSector is one direction, the first around north and the others evenly clockwise.
+type WindSector struct {
+	Time       float64 // share of the year
+	Energy     float64 // share of the plant's energy behind wakes
+	WakeLoss   float64 // share of the sector's energy in the free stream
+	SpeedMPerS float64 // mean, at hub height
+}
+
+// rose computes the year of a fitted plant's turbines once more, by direction.
+func (s *Surveyor) rose(ctx context.Context, c *Candidate, here site) (*WindRose, error) {
+	f, err := s.fitted(ctx)
+	if err != nil {
+		return nil, err
+	}
+	i := slices.IndexFunc(s.world.options, func(o option) bool { return o.id == c.Plant })
+	if i < 0 {
+		return nil, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
+	}
+	o := s.world.options[i]
+	p, err := f.windAt(o, here)
+	if err != nil || !p.known {
+		return nil, err
+	}
+	hub, _ := o.num("hub_height_m")
+	rotor, _ := o.num("rotor_diameter_m")
+	rated, _ := o.num("rated_kw")
+	machine, err := f.turbine(o, rated, rotor)
+	if err != nil {
+		return nil, err
+	}
+	in, err := f.farm(o, machine, hub, p.windPoint, here)
+	if err != nil {
+		return nil, err
+	}
+	in.Existing = f.machinesOf(here, wholeOf(f.near(here)))
+	var at []geo.XY
+	for _, ll := range c.Fit.Turbines {
+		q, err := s.world.frame.Forward(ll)
+		if err != nil {
+			return nil, err
+		}
+		at = append(at, q)
+	}
+	in.At = f.positions(here, at)
+	res, err := wind.FarmYear(in)
+	if err != nil {
+		return nil, err
+	}
+	return roseOf(p, res, hub, in.Site.ShearAlpha)
+}
+
+// roseOf brings the sectors of the data together with what they give.
+func roseOf(p windHere, res wind.FarmResult, hubM, alpha float64) (*WindRose, error) {
+	out := &WindRose{Sectors: make([]WindSector, len(p.sectors)), Even: p.typed || p.grid}
+	all, time := 0.0, 0.0
+	for i, x := range res.Sectors {
+		all += x.WakedMWhPerYr
+		time += p.sectors[i].FrequencyFrac
+	}
+	for i, x := range res.Sectors {
+		at, err := p.sectors[i].Weibull.AtHeight(p.heightM, hubM, alpha)
+		if err != nil {
+			return nil, err
+		}
+		o := &out.Sectors[i]
+		o.Time, o.SpeedMPerS = p.sectors[i].FrequencyFrac/time, at.Mean()
+		if x.FreeMWhPerYr > 0 {
+			o.WakeLoss = math.Max(0, 1-x.WakedMWhPerYr/x.FreeMWhPerYr)
+		}
+		if all > 0 {
+			o.Energy = x.WakedMWhPerYr / all
+		}
+	}
+	return out, nil
 }
 
 // WindDoubt is the spread of the wind part's yield, as shares of the energy.
@@ -238,6 +323,9 @@ func (s *Surveyor) Course(ctx context.Context, c *Candidate) (*Course, error) {
 	}
 	if c.Fit.WindKW > 0 {
 		if out.Wind, err = s.world.windDoubt(c); err != nil {
+			return nil, err
+		}
+		if out.Rose, err = s.rose(ctx, c, here); err != nil {
 			return nil, err
 		}
 		return every(scoring.UnknownBecause("wind_by_year_alone")), nil

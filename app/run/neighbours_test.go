@@ -1,6 +1,7 @@
 package run
 
 import (
+	"fmt"
 	"math"
 	"testing"
 
@@ -124,5 +125,51 @@ func TestWindDoubtFollowsTheSource(t *testing.T) {
 	mast, less := of("wind.data_kind", "mast")
 	if !mast.Said || mast.Model != 0.1 || less >= sigma {
 		t.Errorf("a mast: %+v, sigma %v", mast, less)
+	}
+}
+
+// The rose holds the whole year, and the energy comes from where the wind does.
+func TestRose(t *testing.T) {
+	p := windStudy(t)
+	p.set("plant.wind.rated_kw", "2000", "plant.wind.fit_machines", "2", "wind.typed_mean_speed_m_per_s", "7", "wind.typed_height_m", "100")
+	look := func() *WindRose {
+		c := p.computed(nil)
+		snap, err := p.s.Snapshot()
+		if err != nil {
+			t.Fatal(err)
+		}
+		course, err := NewSurveyor(snap, shipped(t), StoreLoader(p.s.Store()), nil).Course(t.Context(), c)
+		if err != nil || course.Rose == nil || len(course.Rose.Sectors) != 12 {
+			t.Fatalf("%+v, %v", course, err)
+		}
+		time, energy := 0.0, 0.0
+		for _, s := range course.Rose.Sectors {
+			time += s.Time
+			energy += s.Energy
+		}
+		if math.Abs(time-1) > 1e-9 || math.Abs(energy-1) > 1e-9 {
+			t.Errorf("all sectors hold %v of the time and %v of the energy", time, energy)
+		}
+		return course.Rose
+	}
+	even := look()
+	if s := even.Sectors[3]; !even.Even || math.Abs(s.Time-1.0/12) > 1e-9 || math.Abs(s.SpeedMPerS-7) > 1e-9 {
+		t.Errorf("an even spread at hub height of the data: %+v", s)
+	}
+	var rows []thing
+	for i := range 12 {
+		v := map[string]string{"height": "100", "weibull_a": "6", "weibull_k": "2", "sector_from": fmt.Sprint(30 * i), "sector_share": "0.05"}
+		if i == 8 { // from 240 degrees
+			v["weibull_a"], v["sector_share"] = "10", "0.45"
+		}
+		rows = append(rows, thing{dot(0, 0), v})
+	}
+	p.add("wind_resource", []string{"height", "weibull_a", "weibull_k", "sector_from", "sector_share"}, rows...)
+	west := look()
+	if s := west.Sectors[8]; west.Even || s.Time != 0.45 || s.Energy < 0.6 || s.SpeedMPerS < 8.8 || s.SpeedMPerS > 8.9 {
+		t.Errorf("nearly half of the time from the south-west: %+v", s)
+	}
+	if n, o := west.Sectors[7].Energy, west.Sectors[9].Energy; math.Abs(n/o-1) > 0.15 {
+		t.Errorf("beside it %v and %v of the energy", n, o)
 	}
 }

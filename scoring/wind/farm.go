@@ -40,6 +40,12 @@ type TurbineYear struct {
 	WakeLossFrac  float64
 }
 
+// SectorYear is what one sector of the rose gives in a typical first year, in MWh, before the losses behind the wake.
+type SectorYear struct {
+	FreeMWhPerYr  float64 // all machines in the free stream
+	WakedMWhPerYr float64
+}
+
 // FarmResult is a typical first year of a farm.
 type FarmResult struct {
 	NetMWhPerYr      float64 // P50: even odds, by the inputs
@@ -47,10 +53,11 @@ type FarmResult struct {
 	WakeLossFrac     float64 // by new and existing machines
 	CapacityFactor   float64 // of the net energy
 	Turbines         []TurbineYear
-	Chain            []Step  // gross to net; the first step is the wake
-	SpeedSensitivity float64 // percent energy per percent speed, from runs at plus and minus 1 percent
-	MeanSpeedMPerS   float64 // at the hub, free stream
-	AirKgPerM3       float64 // density at the hub
+	Chain            []Step       // gross to net; the first step is the wake
+	Sectors          []SectorYear // of the site's rose
+	SpeedSensitivity float64      // percent energy per percent speed, from runs at plus and minus 1 percent
+	MeanSpeedMPerS   float64      // at the hub, free stream
+	AirKgPerM3       float64      // density at the hub
 	// ExistingLossMWhPerYr is what the existing machines lose because of the new ones, before their
 	// other losses.
 	ExistingLossMWhPerYr float64
@@ -87,23 +94,34 @@ func FarmYear(in FarmInput) (FarmResult, error) {
 	first := len(in.Existing)
 	own := make([]TurbineYear, len(in.At))
 	var alone, up, down, existing float64
+	sectors := make([]SectorYear, len(f.rose))
+	sectorFree := f.sectorEnergies()
 	for d := range f.shares {
 		alone += dot(w[0][d], f.kinds[0].ones)
 	}
 	fl := f.newFlow()
 	for d := range f.shares {
 		f.solve(fl, nil, d, ms, -1, w)
+		waking := 0.0 // what the direction gives behind wakes, which its sectors share as they share its free energy
 		for i := range ms {
 			if i < first {
 				existing += fl.energy[i]
 				continue
 			}
 			own[i-first].WakedMWhPerYr += fl.energy[i]
+			waking += fl.energy[i]
 			up += dot(wUp[0][d], fl.ratio[i])
 			down += dot(wDown[0][d], fl.ratio[i])
 		}
+		for _, sh := range f.shares[d] {
+			free := float64(sh.frac * sectorFree[sh.sector])
+			sectors[sh.sector].FreeMWhPerYr += float64(free * float64(len(in.At)))
+			if one := dot(w[0][d], f.kinds[0].ones); one > 0 {
+				sectors[sh.sector].WakedMWhPerYr += float64(waking * free / one)
+			}
+		}
 	}
-	r := FarmResult{Turbines: own, AirKgPerM3: air}
+	r := FarmResult{Turbines: own, Sectors: sectors, AirKgPerM3: air}
 	var waked float64
 	for i := range own {
 		own[i].GrossMWhPerYr = alone

@@ -760,3 +760,32 @@ func BenchmarkNewEvaluator(b *testing.B) {
 		}
 	}
 }
+
+// The sectors hold all of the year's energy, in the free stream and behind the wakes, each by its own wind.
+func TestSectorsAddUp(t *testing.T) {
+	r := year(t, farm(t, "iea_3_4mw_130", Position{}, Position{X: 500}, Position{X: 300, Y: 450}))
+	free, waked := 0.0, 0.0
+	for i, s := range r.Sectors {
+		if s.WakedMWhPerYr > s.FreeMWhPerYr*(1+1e-12) {
+			t.Errorf("sector %d gives more behind wakes, %v, than before them, %v", i, s.WakedMWhPerYr, s.FreeMWhPerYr)
+		}
+		free += s.FreeMWhPerYr
+		waked += s.WakedMWhPerYr
+	}
+	if len(r.Sectors) != len(rose12()) || !near(free, r.GrossMWhPerYr, 1e-12) || !near(waked, r.Chain[0].AfterMWh, 1e-9) {
+		t.Errorf("%d sectors give %v and %v MWh, the farm %v and %v", len(r.Sectors), free, waked, r.GrossMWhPerYr, r.Chain[0].AfterMWh)
+	}
+	// One sector alone is the farm in a wind from there.
+	in := farm(t, "iea_3_4mw_130", Position{})
+	alone := year(t, in)
+	for i := range in.Site.Rose {
+		if i != 3 {
+			in.Site.Rose[i].FrequencyFrac = 0
+		}
+	}
+	share := rose12()[3].FrequencyFrac
+	in.Site.Rose[3].FrequencyFrac = 1
+	if only := year(t, in); !near(alone.Sectors[3].FreeMWhPerYr, share*only.GrossMWhPerYr, 1e-9) {
+		t.Errorf("sector 3 gives %v of the farm, %v as the only one", alone.Sectors[3].FreeMWhPerYr, share*only.GrossMWhPerYr)
+	}
+}

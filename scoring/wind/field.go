@@ -319,9 +319,18 @@ func (f *field) thrust(k *kind, i int, left float64, r row) {
 	}
 }
 
-// weights gives the free-stream energy (MWh/yr) of each kind by direction and speed node, when all
-// speeds are multiplied by speedFactor. Sum over a kind's weights is its energy alone.
-func (f *field) weights(speedFactor float64) [][][]float64 {
+// sectorEnergies gives the free-stream energy (MWh/yr) of one machine of the farm by sector of the rose.
+func (f *field) sectorEnergies() []float64 {
+	out := make([]float64, len(f.rose))
+	for s, nodes := range f.bySector(1)[0] {
+		out[s] = dot(nodes, f.kinds[0].ones)
+	}
+	return out
+}
+
+// bySector gives the free-stream energy (MWh/yr) of each kind by sector of the rose and speed node, when all
+// speeds are multiplied by speedFactor.
+func (f *field) bySector(speedFactor float64) [][][]float64 {
 	n := len(f.nodes)
 	bySector := make([][][]float64, len(f.kinds)) // kind, sector, node
 	for k := range bySector {
@@ -370,6 +379,14 @@ func (f *field) weights(speedFactor float64) [][][]float64 {
 			}
 		}
 	}
+	return bySector
+}
+
+// weights gives the free-stream energy (MWh/yr) of each kind by direction and speed node, when all
+// speeds are multiplied by speedFactor. Sum over a kind's weights is its energy alone.
+func (f *field) weights(speedFactor float64) [][][]float64 {
+	n := len(f.nodes)
+	bySector := f.bySector(speedFactor)
 	out := make([][][]float64, len(f.kinds))
 	for k := range out {
 		out[k] = make([][]float64, len(f.shares))

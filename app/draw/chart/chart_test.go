@@ -121,6 +121,16 @@ func dayMonths(n int) chart.DayMonths {
 	return in
 }
 
+// rose is wind from the south-west mostly; without any for 0.
+func rose(n int) chart.Rose {
+	in := chart.Rose{Title: "Wind by direction", ID: "rose", Even: n == 1}
+	for i := range n {
+		w := 1 + math.Cos(2*math.Pi*float64(i)/float64(n)-4)
+		in.Sectors = append(in.Sectors, chart.RoseSector{Time: (1 + w) / float64(3*n), Energy: w * w / float64(2*n), SpeedMPerS: 5 + w})
+	}
+	return in
+}
+
 func cloud(name func(int) string, n int) chart.Cloud {
 	random := rand.New(rand.NewPCG(1, 2))
 	in := chart.Cloud{Title: "cloud", X: chart.Quantity{Title: name(1), Unit: "MWh/yr", Better: chart.More}, Y: chart.Quantity{Title: name(2), Unit: "homes", Better: chart.Less, Whole: true}, LeftOut: n % 7}
@@ -150,6 +160,7 @@ func each(name func(int) string, p draw.Palette, width float64) map[string]*draw
 		out[fmt.Sprintf("land-%d", n)] = chart.TakenBars(land(name, n), p, width)
 		out[fmt.Sprintf("months-%d", n)] = chart.Monthly(months(name, n), p, width)
 		out[fmt.Sprintf("daymonths-%d", n)] = chart.DayByMonth(dayMonths(n), p, width)
+		out[fmt.Sprintf("rose-%d", n)] = chart.WindRose(rose(n), p, width)
 		out[fmt.Sprintf("horizon-%d", n)] = chart.HorizonStrip(horizon(n), p, width)
 		out[fmt.Sprintf("cloud-%d", n*n)] = chart.Scatter(cloud(name, n*n), p, width)
 	}

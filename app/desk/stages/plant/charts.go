@@ -28,8 +28,13 @@ func monthsOf(c *run.Candidate, course *run.Course) (do func(draw.Palette, float
 	return func(p draw.Palette, width float64) *draw.Scene { return chart.Monthly(in, p, width) }, why
 }
 
-// hoursOf gives the picture of the energy of a candidate by month and hour; nil where that is unknown.
+// hoursOf gives the picture of the energy of a candidate by month and hour, or of its wind by direction; nil where
+// neither is known.
 func hoursOf(c *run.Candidate, course *run.Course) func(draw.Palette, float64) *draw.Scene {
+	if course.Rose != nil {
+		in := pictures.Rose(course.Rose, "Wind and energy of "+c.Site+" by direction", "rose")
+		return func(p draw.Palette, width float64) *draw.Scene { return chart.WindRose(in, p, width) }
+	}
 	if course.Hours == nil {
 		return nil
 	}
