@@ -42,9 +42,18 @@ func WindRose(in Rose, p draw.Palette, width float64) *draw.Scene {
 		head = "share of the year by direction; an even spread is assumed"
 	}
 	s.write(pad, 18, draw.Fit(head, small, false, s.Width-2*pad), small, p.Faint, draw.Start)
+	round := func(r float64) []draw.Point {
+		const steps = 72
+		ring := make([]draw.Point, steps)
+		for k := range ring {
+			sin, cos := math.Sincos(2 * math.Pi * float64(k) / steps)
+			ring[k] = draw.Point{X: centre.X + r*sin, Y: centre.Y - r*cos}
+		}
+		return ring
+	}
 	for _, t := range a.ticks() {
 		if t > 0 {
-			s.Path(draw.Path{Rings: [][]draw.Point{ringAround(centre, at(t))}, Closed: true, Style: draw.Style{Stroke: p.Rule, Width: 1}})
+			s.Path(draw.Path{Rings: [][]draw.Point{round(at(t))}, Closed: true, Style: draw.Style{Stroke: p.Rule, Width: 1}})
 		}
 	}
 	wedge := func(i int, percent, half float64) []draw.Point {

@@ -486,6 +486,9 @@ func (f *fitted) askMonths(c *run.Candidate) {
 			} else {
 				f.monthWords.Set("Of the year that the yield rests on; before the bias of forecasts and the losses of the connection.")
 			}
+			if course.Rose != nil {
+				do = nil // the wind's months are all unknown, and its directions say more
+			}
 			f.month.Set(do)
 			f.hour.Set(hoursOf(c, course))
 			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt) + pictures.WindSpread(course.Wind)))
