@@ -21,6 +21,7 @@ var reasons = map[string]string{
 	"eroi":                    "the inputs do not allow an energy return to be worked out",
 	"fit_machines_needs_wind": "a number of machines was asked for, and this plant option has no turbine",
 
+	"existing_turbines_near":  "turbines of others stand too near on all buildable ground",
 	"one_part_without_room":   "only one of the plant's two parts finds room here",
 	"no_row_fits":             "the ground that is left has no room for a row of panels inside its fence",
 	"limit_below_one_machine": "what the fit allows is less than one machine",
@@ -57,13 +58,12 @@ var reasons = map[string]string{
 
 // prefixed are reasons that name something after a colon; %s stands for it.
 var prefixed = map[string]string{
-	"no_layer":               "the study has no layer of %s",
-	"existing_turbines_near": "existing or permitted turbines stand too near on all buildable ground",
-	"layer_not_complete":     "nothing was found, and no layer of %s is declared complete for the place",
-	"nothing_found":          "the layer of %s has nothing to measure to",
-	"not_set":                "the setting %s must be entered first",
-	"missing_value":          "features of the layer lack the value they need: %s",
-	"tracks_not_placed":      "the likely way of new tracks meets %s, and their true place is not known",
+	"no_layer":           "the study has no layer of %s",
+	"layer_not_complete": "nothing was found, and no layer of %s is declared complete for the place",
+	"nothing_found":      "the layer of %s has nothing to measure to",
+	"not_set":            "the setting %s must be entered first",
+	"missing_value":      "features of the layer lack the value they need: %s",
+	"tracks_not_placed":  "the likely way of new tracks meets %s, and their true place is not known",
 }
 
 // Reason writes in plain words why a value is unknown, not set or none, why a candidate was not

@@ -71,6 +71,7 @@ type fitter struct {
 	sun     *sunlight
 	points  []sunPoint   // of monthly sunlight
 	sunKey  string       // digest of the settings that sunlight is read with
+	sunWhy  string       // monthly sunlight that cannot be read
 	hours   *weatherFile // nil without a file of hours
 	hourly  *sunlight    // the months of hours
 	gridKey string       // digest of the settings that a connection reads
@@ -107,14 +108,13 @@ func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	if f.wind, err = w.windPoints(); err != nil {
 		return nil, err
 	}
-	if f.others, err = w.neighbours(); err != nil {
-		return nil, err
-	}
+	f.others = w.neighbours()
+	// Sunlight that cannot be read leaves the sun unknown, and says why; wind goes on.
 	if f.sun, err = w.sunlight(); err != nil {
-		return nil, err
+		f.sunWhy = err.Error()
 	}
 	if f.points, err = w.sunPoints(); err != nil {
-		return nil, err
+		f.sunWhy, f.points = err.Error(), nil
 	}
 	if f.hours = w.weather(); f.hours != nil && f.hours.climate != nil {
 		dhi := f.hours.report.DHIKWhPerM2

@@ -343,6 +343,8 @@ func (f *fitter) windAt(o option, s site) (windHere, error) {
 	switch {
 	case !out.known:
 		out.why = cmp.Or(apart, "no_layer:wind_resource")
+	case apart == "" && out.id != typedWind:
+		out.source = fmt.Sprintf("wind yield from the point of %s, %.0f m off", out.id, out.distM)
 	case apart == "":
 	case out.id == typedWind:
 		out.source = "wind yield from the typed mean speed; " + apart
@@ -390,6 +392,9 @@ func (f *fitter) sunAt(s site) (sunHere, error) {
 	fallback := func(note string) sunHere {
 		sun, from := f.monthly(s)
 		out := sunHere{sunlight: sun}
+		if f.sunWhy != "" {
+			note += "; the monthly sunlight is not read: " + f.sunWhy
+		}
 		note = trimmed(note + unread)
 		switch {
 		case sun == nil && note != "":

@@ -1,7 +1,6 @@
 package run
 
 import (
-	"fmt"
 	"math"
 
 	"groundtally/geo"
@@ -27,7 +26,7 @@ type neighbour struct {
 
 // neighbours reads the wind turbines of the layers of existing plant. Those that are only applied for count when the
 // study says so.
-func (w *world) neighbours() ([]neighbour, error) {
+func (w *world) neighbours() []neighbour {
 	applied, _, _ := w.snap.Lookup("wind.count_applied")
 	type kind struct{ ratedKW, rotorM float64 }
 	curves := map[kind]wind.Turbine{}
@@ -57,16 +56,17 @@ func (w *world) neighbours() ([]neighbour, error) {
 				if !made {
 					var err error
 					if t, err = w.genericTurbine(rated, rotor); err != nil {
-						return nil, fmt.Errorf("layer %q, feature %s: %w", l.rec.Name, l.src.Features[i].ID, err)
+						t = wind.Turbine{} // no machine has that power and rotor: it counts as one that lacks them
 					}
 					curves[kind{rated, rotor}] = t
 				}
 				n.turbine, n.hubM = t, hub
+				n.whole = t.RatedKW > 0 && hub > rotor/2
 			}
 			out = append(out, n)
 		}
 	}
-	return out, nil
+	return out
 }
 
 // genericTurbine gives the machine with the generic curve of a power and a rotor.

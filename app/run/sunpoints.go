@@ -2,6 +2,7 @@ package run
 
 import (
 	"cmp"
+	"context"
 	"fmt"
 	"math"
 	"slices"
@@ -19,7 +20,14 @@ const sunRole = "solar_resource"
 // unsaid is a year of which nothing is said.
 var unsaid = solar.EveryMonth(math.NaN())
 
-// monthsOf reads twelve rows of monthly sunlight. An error continues a sentence that names the layer.
+// The temperatures and the sunlight of a month that can be. Source: what the solar engine takes.
+const (
+	coldestC, warmestC = -80, 60
+	mostMonthKWh       = 1000
+)
+
+// monthsOf reads twelve rows of monthly sunlight. An error continues a sentence that names the layer, and says how to
+// mend it.
 func monthsOf(t *geo.Layer, rec study.LayerRecord, rows []geo.Feature) (*sunlight, error) {
 	col := func(field string) int {
 		if rec.Match[field] == "" {
@@ -33,45 +41,73 @@ func monthsOf(t *geo.Layer, rec study.LayerRecord, rows []geo.Feature) (*sunligh
 	}
 	s := &sunlight{source: rec.Name, albedo: solar.EveryMonth(defaultAlbedo), temp: unsaid, snow: unsaid, soiling: unsaid}
 	others := []struct {
-		at int
-		to *[12]float64
-	}{{col("temperature"), &s.temp}, {col("albedo"), &s.albedo}, {col("snow_loss"), &s.snow}, {col("soiling_loss"), &s.soiling}}
+		field, what  string
+		to           *[12]float64
+		least, most  float64
+		unit, mended string
+	}{
+		{"temperature", "temperature", &s.temp, coldestC, warmestC, "degC", "if it is in kelvin, give its unit as K"},
+		{"albedo", "albedo", &s.albedo, 0, 1, "1", "write a share, as 0.2"},
+		{"snow_loss", "loss by snow", &s.snow, 0, 1, "1", "write a share, 0.05 for 5 %"},
+		{"soiling_loss", "loss by dirt", &s.soiling, 0, 1, "1", "write a share, 0.05 for 5 %"},
+	}
 	var diffuse [12]float64
 	var seen [12]bool
 	hasDHI := dhi >= 0
-	light := func(f *geo.Feature, at int, field string) (x float64, ok bool, err error) {
-		if x, ok = f.Values[at].Float(); !ok {
+	number := func(f *geo.Feature, m int, field, what, unit string) (x float64, said bool, err error) {
+		v := f.Values[t.ColumnIndex(rec.Match[field])]
+		if v.Kind == geo.Null || strings.TrimSpace(v.String()) == "" {
 			return 0, false, nil
 		}
-		x, err = units.Convert(x, unitOr(rec.Units[rec.Match[field]], sunUnit), sunUnit)
-		return x, true, err
+		x, ok := v.Float()
+		if !ok {
+			return 0, false, fmt.Errorf(", row %s, month %d: the %s is %q, which is not a number", f.ID, m, what, v.String())
+		}
+		if u := rec.Units[rec.Match[field]]; u != "" {
+			if x, err = units.Convert(x, u, unit); err != nil {
+				return 0, false, fmt.Errorf(", column %q: %w", rec.Match[field], err)
+			}
+		}
+		return x, true, nil
 	}
 	for n := range rows {
 		f := &rows[n]
+		text := f.Values[month].String()
 		m, ok := f.Values[month].Float()
 		i := int(m) - 1
-		if !ok || i < 0 || i > 11 || seen[i] {
-			return nil, fmt.Errorf(", row %s: month %q is not one of 1 to 12, or stands twice", f.ID, f.Values[month].String())
+		switch {
+		case !ok || m != math.Trunc(m) || i < 0 || i > 11:
+			return nil, fmt.Errorf(", row %s: %q is no month; write 1 to 12", f.ID, text)
+		case seen[i]:
+			return nil, fmt.Errorf(", row %s: month %d stands twice; each place has twelve rows, one for a month", f.ID, i+1)
 		}
 		seen[i] = true
-		x, ok, err := light(f, ghi, "ghi")
+		x, said, err := number(f, i+1, "ghi", "sunlight", sunUnit)
 		switch {
 		case err != nil:
-			return nil, fmt.Errorf(": %w", err)
-		case !ok:
-			return nil, fmt.Errorf(", month %d: no sunlight", i+1)
+			return nil, err
+		case !said:
+			return nil, fmt.Errorf(", row %s, month %d: there is no sunlight", f.ID, i+1)
+		case x < 0 || x > mostMonthKWh:
+			return nil, fmt.Errorf(", row %s, month %d: sunlight of %g kWh/m2 is not from 0 to %d; check the column and its unit", f.ID, i+1, x, mostMonthKWh)
 		}
 		s.ghi[i] = x
 		if hasDHI {
-			if diffuse[i], hasDHI, err = light(f, dhi, "dhi"); err != nil {
-				return nil, fmt.Errorf(": %w", err)
+			if diffuse[i], hasDHI, err = number(f, i+1, "dhi", "diffuse light", sunUnit); err != nil {
+				return nil, err
 			}
 		}
 		for _, o := range others {
-			if o.at < 0 {
+			if col(o.field) < 0 {
 				continue
 			}
-			if x, ok := f.Values[o.at].Float(); ok {
+			x, said, err := number(f, i+1, o.field, o.what, o.unit)
+			switch {
+			case err != nil:
+				return nil, err
+			case said && (x < o.least || x > o.most):
+				return nil, fmt.Errorf(", row %s, month %d: a %s of %g is not from %g to %g; %s", f.ID, i+1, o.what, x, o.least, o.most, o.mended)
+			case said:
 				o.to[i] = x
 			}
 		}
@@ -79,20 +115,77 @@ func monthsOf(t *geo.Layer, rec study.LayerRecord, rows []geo.Feature) (*sunligh
 	for i := range 12 {
 		switch {
 		case !seen[i]:
-			return nil, fmt.Errorf(" has no month %d", i+1)
+			return nil, fmt.Errorf(" has no month %d; each place needs twelve rows", i+1)
 		case math.IsNaN(s.temp[i]):
-			return nil, fmt.Errorf(", month %d: no temperature; the cells' loss by heat needs it", i+1)
-		}
-		for _, loss := range []float64{s.snow[i], s.soiling[i]} {
-			if loss < 0 || loss > 1 {
-				return nil, fmt.Errorf(", month %d: a loss of %g is not from 0 to 1", i+1, loss)
-			}
+			return nil, fmt.Errorf(", month %d: there is no temperature, which the cells' loss by heat needs; add a column of it", i+1)
 		}
 	}
 	if hasDHI {
 		s.dhi = &diffuse
 	}
 	return s, nil
+}
+
+// A year of sunlight on level ground lies between these everywhere on land. Source: common practice.
+const leastYearKWh, mostYearKWh = 500, 2900
+
+// sunNotices tells which monthly sunlight cannot be read, and which is hardly that of a year.
+func sunNotices(ctx context.Context, store study.Store, snap *study.Snapshot) ([]geo.Notice, error) {
+	var out []geo.Notice
+	for _, rec := range snap.LayersOf(sunRole) {
+		if rec.Kind == "raster" {
+			continue
+		}
+		v, _, err := store.Version(ctx, rec.Digest)
+		if err != nil {
+			return nil, fmt.Errorf("read layer %q: %w", rec.Name, err)
+		}
+		places := map[geo.LonLat][]geo.Feature{}
+		var order []geo.LonLat
+		for _, f := range v.Layer.Features {
+			var at geo.LonLat
+			if f.Geometry.Kind == geo.Points && !f.Geometry.Empty() {
+				at = f.Geometry.Parts[0][0][0]
+			}
+			if _, met := places[at]; !met {
+				order = append(order, at)
+			}
+			places[at] = append(places[at], f)
+		}
+		for _, at := range order {
+			n := geo.Notice{Severity: geo.Warning, Layer: rec.Name}
+			if rec.Kind != "table" {
+				n.At = &at
+			}
+			s, err := monthsOf(v.Layer, rec, places[at])
+			if err != nil {
+				n.Code, n.Args = "sun_not_read", map[string]string{"why": strings.TrimLeft(err.Error(), ", ")}
+				out = append(out, n)
+				continue
+			}
+			year := 0.0
+			for _, x := range s.ghi {
+				year += x
+			}
+			if year < leastYearKWh || year > mostYearKWh {
+				n.Code, n.Args = "sun_hardly", map[string]string{"year": fmt.Sprintf("%.0f", year)}
+				out = append(out, n)
+			}
+		}
+	}
+	return out, nil
+}
+
+// placeWords writes a place as people read it.
+func placeWords(p geo.LonLat) string {
+	north, east := "N", "E"
+	if p.Lat < 0 {
+		north = "S"
+	}
+	if p.Lon < 0 {
+		east = "W"
+	}
+	return fmt.Sprintf("%.5f %s, %.5f %s", math.Abs(p.Lat), north, math.Abs(p.Lon), east)
 }
 
 // sunPoint is monthly sunlight at a place.
@@ -124,7 +217,7 @@ func (w *world) sunPoints() ([]sunPoint, error) {
 				if ferr != nil {
 					return nil, ferr
 				}
-				return nil, fmt.Errorf("layer %q, point at %.4f, %.4f%w", l.rec.Name, ll.Lat, ll.Lon, err)
+				return nil, fmt.Errorf("layer %q, point at %s%w", l.rec.Name, placeWords(ll), err)
 			}
 			out = append(out, sunPoint{p, s})
 		}

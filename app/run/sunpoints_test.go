@@ -67,9 +67,37 @@ func TestPointsOfMonthlySunlight(t *testing.T) {
 
 	short := sunStudy(t)
 	short.add(sunRole, sunColumns, station(0, 0, 1, nil)[:11]...)
-	w, err := newTestFitter(short)
-	if err == nil || !strings.Contains(err.Error(), "has no month 12") {
-		t.Errorf("a point of eleven months: %v %v", w, err)
+	x := short.leaf(short.computed(nil), "solar_p50_mwh")
+	if x.State != scoring.Unknown || !strings.Contains(x.Why, "has no month 12; each place needs twelve rows") {
+		t.Errorf("a point of eleven months: %+v", x)
+	}
+	for what, change := range map[string]func(map[string]string){
+		`row 5: "13" is no month; write 1 to 12`:                                        func(v map[string]string) { v["month"] = "13" },
+		"row 5: month 4 stands twice":                                                   func(v map[string]string) { v["month"] = "4" },
+		`row 5, month 5: the sunlight is "lots", which is not a number`:                 func(v map[string]string) { v["ghi"] = "lots" },
+		"row 5, month 5: there is no sunlight":                                          func(v map[string]string) { v["ghi"] = "" },
+		"row 5, month 5: sunlight of -20 kWh/m2 is not from 0 to 1000":                  func(v map[string]string) { v["ghi"] = "-20" },
+		"a temperature of 279 is not from -80 to 60; if it is in kelvin, give its unit": func(v map[string]string) { v["temperature"] = "279" },
+		"a loss by snow of 5 is not from 0 to 1; write a share, 0.05 for 5 %":           func(v map[string]string) { v["snow_loss"] = "5" },
+		`the loss by snow is "5%", which is not a number`:                               func(v map[string]string) { v["snow_loss"] = "5%" },
+		"sun_hardly": func(v map[string]string) {},
+	} {
+		p := sunStudy(t)
+		factor := 1.0
+		if what == "sun_hardly" {
+			factor = 1.0 / 30
+		}
+		rows := station(0, 0, factor, map[string]string{"snow_loss": "0"})
+		change(rows[4].values)
+		p.add(sunRole, append(sunColumns[:3:3], "snow_loss"), rows...)
+		snap, err := p.s.Snapshot()
+		if err != nil {
+			t.Fatal(err)
+		}
+		all, err := sunNotices(t.Context(), p.s.Store(), snap)
+		if err != nil || len(all) != 1 || !strings.Contains(all[0].Code+" "+all[0].Args["why"], what) {
+			t.Errorf("%s: %+v, %v", what, all, err)
+		}
 	}
 }
 

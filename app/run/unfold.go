@@ -189,11 +189,15 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 		return nil, err
 	}
 	out = append(out, voids...)
+	sun, err := sunNotices(ctx, store, snap)
+	if err != nil {
+		return nil, err
+	}
 	hours, err := weatherNotices(ctx, store, snap)
 	if err != nil {
 		return nil, err
 	}
-	out = append(out, hours...)
+	out = append(append(out, sun...), hours...)
 	idle, err := SettingNotices(ctx, StoreLoader(store), snap)
 	if err != nil {
 		return nil, err

@@ -246,6 +246,9 @@ func notUsed(in study.Import, r study.LayerRecord) []string {
 	for _, col := range r.Match {
 		used = append(used, col)
 	}
+	if in.At != nil {
+		used = append(used, in.At.X, in.At.Y)
+	}
 	for _, col := range in.Layer.Columns {
 		if !slices.Contains(used, col.Name) && !slices.Contains(r.Personal, col.Name) {
 			out = append(out, col.Name)
