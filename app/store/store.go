@@ -242,11 +242,8 @@ func (f *file) transaction(ctx context.Context, begin string, fn func(*sql.Conn)
 		return err
 	}
 	defer func() { err = errors.Join(err, c.Close()) }()
-	if _, err := c.ExecContext(ctx, begin); err != nil {
-		return err
-	}
-	// From here on a cancelled context must not leave the transaction open, nor leave it unknown
-	// whether it was committed.
+	// A cancelled context must not leave the transaction open, nor leave it unknown whether it was
+	// committed. It may also end the call that begins one after the transaction has begun.
 	always := context.WithoutCancel(ctx)
 	done := false
 	defer func() {
@@ -260,6 +257,9 @@ func (f *file) transaction(ctx context.Context, begin string, fn func(*sql.Conn)
 			_ = c.Raw(func(any) error { return driver.ErrBadConn })
 		}
 	}()
+	if _, err := c.ExecContext(ctx, begin); err != nil {
+		return err
+	}
 	if err := fn(c); err != nil {
 		return err
 	}

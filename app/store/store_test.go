@@ -14,6 +14,7 @@ import (
 	"os/exec"
 	"path/filepath"
 	"reflect"
+	"runtime"
 	"sort"
 	"strconv"
 	"strings"
@@ -744,4 +745,23 @@ func TestBusy(t *testing.T) {
 
 func path2uri(path string) string {
 	return "file:" + strings.NewReplacer("%", "%25", "?", "%3f", "#", "%23").Replace(filepath.ToSlash(path))
+}
+
+// A reader that is cancelled at any moment, also while its transaction begins, leaves the file to the next one.
+func TestCancelledReadsLeaveNoTransaction(t *testing.T) {
+	f, _ := newStudy(t)
+	for i := range 10_000 {
+		gone, cancel := context.WithCancel(ctx)
+		go func() {
+			for begin := time.Now(); time.Since(begin) < time.Duration(i%200)*time.Microsecond/2; {
+				runtime.Gosched()
+			}
+			cancel()
+		}()
+		_, _ = f.Load(gone) // whether it comes to an end does not matter
+		cancel()
+		if _, err := f.Load(ctx); err != nil {
+			t.Fatalf("after reader %d was cancelled: %v", i, err)
+		}
+	}
 }
