@@ -126,7 +126,7 @@ func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	}
 	centre := w.frame.Centre()
 	if _, err := f.climate(math.Round(centre.Lat/latStep)*latStep, f.sun); err != nil {
-		return nil, fmt.Errorf("sunlight of %s: %w", f.sun.source, err)
+		f.sunWhy, f.sun = fmt.Sprintf("what stands in %s is no sunlight for this latitude: %v", f.sun.source, err), nil
 	}
 	return f, nil
 }

@@ -187,7 +187,7 @@ func (s *siteWork) keep(step, key string, data []byte) {
 	s.fresh = append(s.fresh, study.Result{Step: step, Digest: key, Data: data})
 }
 
-// ready reports whether a candidate need not be computed.
+// there reports whether a candidate need not be computed.
 func (r *runner) there(b *batch, plan, site int) bool {
 	if _, ok := r.before[keyDigest(r.plans[plan].cand[site])]; ok {
 		return true

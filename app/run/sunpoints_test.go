@@ -397,3 +397,15 @@ func TestFoundDirection(t *testing.T) {
 		t.Errorf("a direction of %v that is set was turned to %v", p.Mount.AzimuthDeg, kept.azimuthDeg)
 	}
 }
+
+// Months with more light than can fall at the place leave the sun unknown; they do not stop the study.
+func TestTooMuchLightStopsNothing(t *testing.T) {
+	p := sunStudy(t)
+	for m := range 12 {
+		p.set(fmt.Sprintf("solar.typed_temperature_%d_degc", m+1), "9", fmt.Sprintf("solar.typed_ghi_%d_kwh_per_m2", m+1), "400")
+	}
+	x := p.leaf(p.computed(nil), "solar_p50_mwh")
+	if x.State != scoring.Unknown || !strings.Contains(x.Why, "is no sunlight for this latitude") {
+		t.Errorf("%+v", x)
+	}
+}
