@@ -120,7 +120,7 @@ func (rs *ruleset) key(w *world, s site) string {
 					near = true
 				}
 				k.num(src.distM)
-				k.h.Write(src.layer.hash[i][:])
+				k.bytes(src.layer.hash[i][:])
 			}
 		}
 	}
@@ -142,7 +142,7 @@ func (rs *ruleset) keyHeights(k *keyer, w *world, s site) {
 		k.text(heightRule)
 		k.num(rs.tipM)
 		k.num(rs.rotorM)
-		k.h.Write(h.layer.hash[i][:])
+		k.bytes(h.layer.hash[i][:])
 		if h.layer.aboveSea(i) {
 			k.text(w.terrain.rec.Digest)
 			k.text(w.terrain.rec.CRS)

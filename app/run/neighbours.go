@@ -45,7 +45,7 @@ func (w *world) neighbours() []neighbour {
 			hub, okH := l.number(i, "hub_height", "m")
 			rotor, okD := l.number(i, "rotor_diameter", "m")
 			k := newKey("neighbour", 1)
-			k.h.Write(l.hash[i][:])
+			k.bytes(l.hash[i][:])
 			for _, field := range sortedNames(l.rec.Match) {
 				k.texts([]string{field, l.rec.Match[field], l.rec.Units[l.rec.Match[field]]})
 			}

@@ -221,7 +221,7 @@ func (r *Results) digest(candidates []digest) string {
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
 		k.text(c.ID())
-		k.h.Write(candidates[i][:])
+		k.bytes(candidates[i][:])
 		for _, g := range sortedNames(c.Gates) {
 			k.text(g)
 			k.text(c.Gates[g].State)

@@ -84,9 +84,9 @@ func (w *world) variant(l *layer, from string) *layer {
 		}
 		k := newKey("variant", 1)
 		k.text(from)
-		k.h.Write(l.hash[i][:])
+		k.bytes(l.hash[i][:])
 		k.geometry(v.xy[i])
-		copy(v.hash[i][:], k.h.Sum(nil))
+		v.hash[i] = k.d.Raw()
 	}
 	v.tree = index.Of(v.xy, 0)
 	if l.variants == nil {
@@ -261,7 +261,7 @@ func newWorld(ctx context.Context, snap *study.Snapshot, p *Params, load Loader)
 					k.int(int(val.Kind))
 					k.text(val.String())
 				}
-				copy(l.hash[i][:], k.h.Sum(nil))
+				l.hash[i] = k.d.Raw()
 			}
 			l.tree = index.Of(l.xy, 0)
 			w.layers = append(w.layers, l)

@@ -1119,9 +1119,9 @@ func readied(ctx context.Context, in Import, layer *geo.Layer, role Role, forwar
 type shapeSum [sha256.Size]byte
 
 func shapeSumOf(g geo.LonLatGeometry) shapeSum {
-	d := newDigester()
-	d.geometry(g)
-	return d.raw()
+	d := NewDigester()
+	d.lonLats(g)
+	return d.Raw()
 }
 
 // shapeDigest is what a geometry is remembered by.
