@@ -371,12 +371,12 @@ func (f *fitter) sunDistribution(o option, s site, r fitResult) (kw, share []flo
 	if r.SolarKW == 0 {
 		return nil, nil, nil
 	}
-	y, here, _, err := f.yearAt(o, s)
+	y, here, _, err := f.yieldAt(o, s)
 	if err != nil || here.sunlight == nil {
 		return nil, nil, err
 	}
 	left := 1.0
-	for b, h := range y.PowerHours {
+	for b, h := range y.powerHours {
 		if h > 0 {
 			kw = append(kw, (float64(b)+0.5)/solar.PowerBins*r.SolarACKW)
 			share = append(share, h/units.HoursPerYear)

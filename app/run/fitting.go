@@ -5,7 +5,6 @@ import (
 	"errors"
 	"fmt"
 	"math"
-	"sort"
 	"strings"
 	"sync"
 
@@ -81,7 +80,7 @@ type fitter struct {
 
 	mu        sync.Mutex
 	climates  map[string]*solar.Climate
-	years     map[string]solarYear
+	years     *sunYears
 	lies      map[string]lie               // by site
 	stands    map[string]stand             // found, by option
 	nodes     map[geo.XY]betweenPoints     // of the lattice of sunlight
@@ -97,7 +96,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: map[string]solarYear{}, lies: map[string]lie{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), freshLies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: (*sunYears)(nil).after(), lies: map[string]lie{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}
@@ -149,18 +148,7 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 	k.text(f.w.p.Digest)
 	k.num(f.w.frame.Centre().Lon)
 	k.num(f.w.frame.Centre().Lat)
-	k.text(o.id)
-	names := make([]string, 0, len(o.settings))
-	for n := range o.settings {
-		if n != "title" {
-			names = append(names, n)
-		}
-	}
-	sort.Strings(names)
-	for _, n := range names {
-		k.text(n)
-		k.text(o.settings[n])
-	}
+	o.key(k)
 	if o.wind {
 		for _, n := range []string{"wind.shear_alpha", "wind.typed_elevation_m", "wind.data_kind"} {
 			v, _, _ := f.w.snap.Lookup(n)
@@ -235,6 +223,17 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 		k.text(f.gridKey)
 	}
 	return k.sum(), nil
+}
+
+// key writes an option but for its title.
+func (o option) key(k *keyer) {
+	k.text(o.id)
+	for _, n := range sortedNames(o.settings) {
+		if n != "title" {
+			k.text(n)
+			k.text(o.settings[n])
+		}
+	}
 }
 
 // said writes which grid served, or why none did; nothing in a study without grids.
@@ -627,7 +626,7 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 		limitKW = math.Min(limitKW, x)
 	}
 	var specific float64 // kWh per kW
-	y, here, bad, err := f.yearAt(o, s)
+	y, here, bad, err := f.yieldAt(o, s)
 	switch {
 	case err != nil:
 		return err
@@ -638,13 +637,7 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 		r.SolarMWh.Why = here.why
 	default:
 		r.SunSource = here.source
-		specific, r.PR = y.SpecificYieldKWhPerKWp, y.PerformanceRatio
-		var ground, open float64
-		for i := range 12 {
-			ground += y.GroundKWhPerM2[i]
-			open += y.GHIKWhPerM2[i]
-		}
-		r.CropLight = ground / open
+		specific, r.PR, r.CropLight = y.kWhPerKWp, y.performance, y.groundLight
 		if !math.IsInf(targetMWh, 1) {
 			limitKW = math.Min(limitKW, targetMWh*units.KWhPerMWh/specific)
 		}
@@ -682,10 +675,10 @@ func (f *fitter) fitSolar(e *overlay.Engine, o option, s site, g groundResult, l
 		return nil
 	}
 	r.SolarMWh.MWh = specific * r.SolarKW / units.KWhPerMWh
-	for _, st := range y.Chain {
+	for _, st := range y.chain {
 		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "kWh/kWp", Before: st.BeforeKWhPerKWp, Share: -st.Share, After: st.AfterKWhPerKWp})
 	}
-	doubt, err := f.doubt(o, here, y)
+	doubt, err := f.doubt(o, here, y.chain)
 	if err != nil {
 		return err
 	}
@@ -726,17 +719,12 @@ func firstHectares(e *overlay.Engine, g geo.XYGeometry, wantHa float64) (geo.XYG
 		// Bisection to a hundredth of a millimetre; the lower side never fences more than is wanted.
 		for hi-lo > 1e-5 {
 			mid := (lo + hi) / 2
-			cut, err := e.Clip(one, geo.Extent{MinX: box.MinX - 1, MinY: box.MinY - 1, MaxX: box.MaxX + 1, MaxY: mid})
-			if err != nil {
-				return out, 0, err
-			}
-			if measure.AreaM2(cut) <= left {
+			if measure.AreaBelowM2(one, mid) <= left {
 				lo = mid
 			} else {
 				hi = mid
 			}
 		}
-		// An exact overlay for the fence itself: clipping to a box may leave rings that touch themselves.
 		cut, err := e.Intersection(one, rectangle(geo.Extent{MinX: box.MinX - 1, MinY: box.MinY - 1, MaxX: box.MaxX + 1, MaxY: lo}))
 		if err != nil {
 			return out, 0, err

@@ -305,5 +305,6 @@ type Results struct {
 	contents []contentKeys // of what its last steps read
 	draws    *draws        // for the next results
 	terrain  *keptTerrain  // for the next results; nil when no step read it
+	years    *sunYears     // for the next results
 	reckoner *reckoner
 }

@@ -62,6 +62,9 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if r.f, err = w.newFitter(ctx, e.Cache); err != nil {
 		return nil, err
 	}
+	if e.Before != nil {
+		r.f.years = e.Before.years.after()
+	}
 	if r.k, err = w.newReckoner(); err != nil {
 		return nil, err
 	}
@@ -72,7 +75,7 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 	if err != nil {
 		return nil, err
 	}
-	out.terrain = w.kept.Load()
+	out.terrain, out.years = w.kept.Load(), r.f.years.settled()
 	out.Steps, out.Notices, out.made = r.counts(), w.notices, w.notices
 	if err := e.weigh(ctx, snap, out, e.Before, cores); err != nil {
 		return nil, err
@@ -88,7 +91,7 @@ func (e *Engine) Reweigh(ctx context.Context, snap *study.Snapshot, prev *Result
 	if cores <= 0 {
 		cores = runtime.NumCPU()
 	}
-	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, contents: prev.contents, terrain: prev.terrain, reckoner: prev.reckoner}
+	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, contents: prev.contents, terrain: prev.terrain, years: prev.years, reckoner: prev.reckoner}
 	for _, c := range prev.Steps {
 		if c.Step != orderStep {
 			out.Steps = append(out.Steps, StepCount{Step: c.Step, Valid: c.Computed + c.Valid})

@@ -382,7 +382,7 @@ func (here sunHere) dataKind() string {
 
 // doubts tells the spread of a yield by its causes.
 func (f *fitter) doubts(o option, here sunHere, y solar.YearResult) (*Doubt, error) {
-	by, err := f.doubt(o, here, y)
+	by, err := f.doubt(o, here, y.Chain)
 	if err != nil {
 		return nil, err
 	}
@@ -395,14 +395,14 @@ func (f *fitter) doubts(o option, here sunHere, y solar.YearResult) (*Doubt, err
 }
 
 // doubt says what the spread of a plant's energy depends on.
-func (f *fitter) doubt(o option, here sunHere, y solar.YearResult) (solar.Doubt, error) {
+func (f *fitter) doubt(o option, here sunHere, chain []solar.Step) (solar.Doubt, error) {
 	kind, _, _ := f.w.snap.Lookup(here.dataKind())
 	tilt, err := f.tiltDeg(o)
 	if err != nil {
 		return solar.Doubt{}, err
 	}
 	d := solar.Doubt{Source: sunSources[kind.Value], Hourly: here.hours != nil, Steep: o.technology == "solar_vertical" || o.technology != "solar_tracking" && tilt > steepDeg}
-	for _, st := range y.Chain {
+	for _, st := range chain {
 		d.Hilly = d.Hilly || st.Name == solar.StepHorizon && -st.Share > solar.HillyShare
 	}
 	return d, nil

@@ -3,6 +3,7 @@ package run
 import (
 	"fmt"
 	"math"
+	"sync"
 
 	"groundtally/geo/crs"
 	"groundtally/geo/terrain"
@@ -165,7 +166,7 @@ func spaced(m *solar.Mount) {
 
 // Solar years and climates that are kept at a time.
 const (
-	mostYears    = 4096
+	mostYears    = 16384
 	mostClimates = 512
 )
 
@@ -176,50 +177,136 @@ type solarYear struct {
 	why string // the numbers of grids are no sunlight
 }
 
-// yearAt gives the solar year of an option on a site with the sunlight that serves it. bad says that a setting of
-// the plant is out of range.
-func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad bool, err error) {
-	if here, err = f.sunAt(s); err != nil || here.sunlight == nil {
-		return y, here, false, err
+// yearYield is what fit and connection read of a year: small, so that the years of a district stay at hand.
+type yearYield struct {
+	kWhPerKWp, performance float64
+	groundLight            float64 // between the rows, as a share of that on open ground
+	chain                  []solar.Step
+	powerHours             [solar.PowerBins]float64
+	bad                    bool
+	why                    string
+}
+
+func (y *solarYear) yield() *yearYield {
+	out := &yearYield{kWhPerKWp: y.y.SpecificYieldKWhPerKWp, performance: y.y.PerformanceRatio, chain: y.y.Chain, powerHours: y.y.PowerHours, bad: y.bad, why: y.why}
+	var ground, open float64
+	for i := range 12 {
+		ground += y.y.GroundKWhPerM2[i]
+		open += y.y.GHIKWhPerM2[i]
 	}
-	lat, err := f.siteLat(s)
-	if err != nil {
-		return y, here, false, err
+	out.groundLight = ground / open
+	return out
+}
+
+// sunYears are the years of one computation, with those of the computation before.
+type sunYears struct {
+	mu          sync.Mutex
+	now, before map[digest]*yearYield
+}
+
+// after begins the years of the next computation.
+func (y *sunYears) after() *sunYears {
+	out := &sunYears{now: map[digest]*yearYield{}}
+	if y != nil {
+		out.before = y.now
 	}
-	l, err := f.lie(s)
-	if err != nil {
-		return y, here, false, err
+	return out
+}
+
+// settled gives the years for the results: those of the computation before that it did not meet as well, while there is
+// room, since it looked only at what had changed.
+func (y *sunYears) settled() *sunYears {
+	for k, one := range y.before {
+		if _, met := y.now[k]; !met && len(y.now) < mostYears {
+			y.now[k] = one
+		}
 	}
-	k := newKey("solar year", 3)
-	k.text(o.id)
+	y.before = nil
+	return y
+}
+
+// of gives a year, computed once.
+func (y *sunYears) of(key digest, find func() *yearYield) *yearYield {
+	y.mu.Lock()
+	one := y.now[key]
+	if one == nil {
+		one = y.before[key]
+	}
+	y.mu.Unlock()
+	if one == nil {
+		one = find()
+	}
+	y.mu.Lock()
+	defer y.mu.Unlock()
+	if len(y.now) < mostYears {
+		y.now[key] = one
+	}
+	return one
+}
+
+// yieldAt gives what a fit reads of the solar year of an option on a site with the sunlight that serves it. bad says
+// that a setting of the plant is out of range.
+func (f *fitter) yieldAt(o option, s site) (y *yearYield, here sunHere, bad bool, err error) {
+	here, lat, l, err := f.underSun(o, s)
+	if err != nil || here.sunlight == nil {
+		return nil, here, false, err
+	}
+	k := newKey("solar year", 4)
+	k.text(f.w.p.Digest)
+	k.num(f.w.frame.Centre().Lon)
+	o.key(k)
 	k.num(lat)
 	k.text(f.sunKey)
 	k.sunlight(here.sunlight)
 	if here.hours != nil {
 		k.text(here.hours.key)
 	}
+	if o.findsStand() {
+		found, err := f.found(o)
+		if err != nil {
+			return nil, here, false, err
+		}
+		k.num(found.tiltDeg)
+		k.num(found.azimuthDeg)
+	}
 	k.int(int(f.sky()))
 	k.int(int(l.slope))
 	k.int(int(l.aspect))
 	k.text(l.notice)
 	k.text(string(l.horizon[:]))
-	key := k.sum()
-	f.mu.Lock()
-	year, done := f.years[key]
-	f.mu.Unlock()
-	if !done {
-		year = f.year(o, lat, here, &l, f.sky())
-		f.mu.Lock()
-		if len(f.years) >= mostYears {
-			clear(f.years)
-		}
-		f.years[key] = year
-		f.mu.Unlock()
+	y = f.years.of(k.d.Raw(), func() *yearYield {
+		full := f.year(o, lat, here, &l, f.sky())
+		return full.yield()
+	})
+	if y.why != "" {
+		return nil, sunHere{why: y.why}, false, nil
 	}
-	if year.why != "" {
-		return y, sunHere{why: year.why}, false, nil
+	return y, here, y.bad, nil
+}
+
+// yearAt gives the whole year of which yieldAt gives a part.
+func (f *fitter) yearAt(o option, s site) (y solar.YearResult, here sunHere, bad bool, err error) {
+	here, lat, l, err := f.underSun(o, s)
+	if err != nil || here.sunlight == nil {
+		return y, here, false, err
 	}
-	return year.y, here, year.bad, nil
+	full := f.year(o, lat, here, &l, f.sky())
+	if full.why != "" {
+		return y, sunHere{why: full.why}, false, nil
+	}
+	return full.y, here, full.bad, nil
+}
+
+// underSun gives what a solar year depends on besides settings: the sunlight, the latitude, how the site lies.
+func (f *fitter) underSun(o option, s site) (here sunHere, latDeg float64, l lie, err error) {
+	if here, err = f.sunAt(s); err != nil || here.sunlight == nil {
+		return here, 0, l, err
+	}
+	if latDeg, err = f.siteLat(s); err != nil {
+		return here, 0, l, err
+	}
+	l, err = f.lie(s)
+	return here, latDeg, l, err
 }
 
 // skyModels are the ways to bring the sky's light onto the panels, by the words of the setting.

@@ -47,6 +47,44 @@ func AreaM2(g geo.XYGeometry) float64 {
 	return sum
 }
 
+// AreaBelowM2 is the area of what of g lies below a line from west to east at yM, in the square of the unit of the
+// positions; 0 for points and lines. Rings are taken as AreaM2 takes them. By Green's theorem it is the
+// integral of max(0, y - y(s)) dx along each ring.
+func AreaBelowM2(g geo.XYGeometry, yM float64) float64 {
+	if g.Kind != geo.Polygons {
+		return 0
+	}
+	var sum float64
+	for _, part := range g.Parts {
+		for i, ring := range part {
+			a := math.Abs(ringBelow(ring, yM))
+			if i > 0 {
+				a = -a
+			}
+			sum += a
+		}
+	}
+	return sum
+}
+
+func ringBelow(ring []geo.XY, y float64) float64 {
+	var sum float64
+	for i := 1; i < len(ring); i++ {
+		a, b := ring[i-1], ring[i]
+		low, high := y-a.Y, y-b.Y // depths below the line
+		dx := b.X - a.X
+		switch {
+		case low <= 0 && high <= 0:
+		case low >= 0 && high >= 0:
+			sum += float64(dx * (low + high) / 2)
+		default:
+			deep := math.Max(low, high)
+			sum += float64(dx * deep * deep / (2 * math.Abs(low-high)))
+		}
+	}
+	return sum
+}
+
 // LengthM gives the length of lines, or the length of all rings of polygons, in metres; 0 for points.
 func LengthM(g geo.XYGeometry) float64 {
 	if g.Kind != geo.Lines && g.Kind != geo.Polygons {

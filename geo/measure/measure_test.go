@@ -258,3 +258,30 @@ func BenchmarkInside(b *testing.B) {
 		Inside(geo.XY{X: 3, Y: 4}, g)
 	}
 }
+
+// A square of 10 by 10 with a hole of 4 by 4 in its middle, cut at heights whose areas are plain to see, and a star
+// beside the sum of its slices.
+func TestAreaBelow(t *testing.T) {
+	g := polygon(box(0, 0, 10, 10), box(3, 3, 4, 4))
+	for _, c := range [][2]float64{{-1, 0}, {0, 0}, {3, 30}, {5, 50 - 8}, {7, 70 - 16}, {10, 84}, {12, 84}} {
+		if got := AreaBelowM2(g, c[0]); math.Abs(got-c[1]) > 1e-12 {
+			t.Errorf("below %g lie %g, not %g", c[0], got, c[1])
+		}
+	}
+	r := rand.New(rand.NewPCG(1, 2))
+	for range 20 {
+		g := star(r, 30)
+		x, s := geo.ExtentOf(g), NewSlicer(g)
+		y := x.MinY + r.Float64()*(x.MaxY-x.MinY)
+		const n = 20000
+		var sum float64
+		for k := range n {
+			for _, span := range s.At(x.MinY+(y-x.MinY)*(float64(k)+0.5)/n, nil) {
+				sum += (span.Hi - span.Lo) * (y - x.MinY) / n
+			}
+		}
+		if got := AreaBelowM2(g, y); math.Abs(got-sum) > 1e-4*AreaM2(g) {
+			t.Errorf("below %g lie %g, by slices %g", y, got, sum)
+		}
+	}
+}
