@@ -46,7 +46,7 @@ func Load() (*Parts, error) {
 
 func engines() []string {
 	out := []string{"geometry: GEOS " + overlay.LibraryVersion()}
-	lib, err := crs.Open("")
+	lib, err := crs.Shared()
 	if err != nil {
 		return append(out, "projections: not available: "+err.Error())
 	}

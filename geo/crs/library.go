@@ -5,19 +5,19 @@ package crs
 #include <stdlib.h>
 #include <proj.h>
 
-// With a directory, only that directory is searched; without one, the library's own paths.
-static PJ_CONTEXT *gt_context(const char *dir) {
+// With directories, only those are searched; without any, the library's own paths.
+static PJ_CONTEXT *gt_context(int n, const char **dirs) {
 	PJ_CONTEXT *ctx = proj_context_create();
 	if (ctx == NULL) return NULL;
 	proj_log_level(ctx, PJ_LOG_NONE);
 	proj_context_set_enable_network(ctx, 0);
-	if (dir != NULL) proj_context_set_search_paths(ctx, 1, &dir);
+	if (n > 0) proj_context_set_search_paths(ctx, n, dirs);
 	return ctx;
 }
 
 // 1 when the name is a system with plane or geographic axes, 0 for anything else.
-static int gt_plane(const char *dir, const char *name) {
-	PJ_CONTEXT *ctx = gt_context(dir);
+static int gt_plane(int n, const char **dirs, const char *name) {
+	PJ_CONTEXT *ctx = gt_context(n, dirs);
 	if (ctx == NULL) return 0;
 	int plane = 0;
 	PJ *p = proj_create(ctx, name);
@@ -37,6 +37,9 @@ static int gt_plane(const char *dir, const char *name) {
 	proj_context_destroy(ctx);
 	return plane;
 }
+
+// Where the library looks by itself, as one text.
+static const char *gt_paths(void) { return proj_info().searchpath; }
 */
 import "C"
 
@@ -44,6 +47,8 @@ import (
 	"errors"
 	"fmt"
 	"os"
+	"path/filepath"
+	"strings"
 	"sync"
 	"unsafe"
 
@@ -61,7 +66,7 @@ type Library struct {
 	cache    map[string]*Transform
 	editions Editions
 	path     string
-	dir      string
+	dirs     []string // that are searched; the library's own when there is none
 }
 
 // Editions names what positions of foreign systems depend on, for the appendix.
@@ -77,6 +82,14 @@ var openMu sync.Mutex
 // is empty. The network is switched off first. Without a database it gives an error that wraps
 // ErrNoDatabase together with a Library that still reads WGS 84.
 func Open(dir string) (*Library, error) {
+	if dir == "" {
+		return open(nil)
+	}
+	return open([]string{dir})
+}
+
+// open opens the library with the database and the grids that are found in the directories, the first one first.
+func open(dirs []string) (*Library, error) {
 	openMu.Lock()
 	defer openMu.Unlock()
 	// The context that go-proj makes reads this when it first looks for the network; a variable of the
@@ -86,15 +99,12 @@ func Open(dir string) (*Library, error) {
 	}
 	l := &Library{
 		cache:    map[string]*Transform{},
-		dir:      dir,
+		dirs:     dirs,
 		editions: Editions{Library: fmt.Sprintf("%d.%d.%d", proj.VersionMajor, proj.VersionMinor, proj.VersionPatch)},
 	}
-	var cdir *C.char
-	if dir != "" {
-		cdir = C.CString(dir)
-		defer C.free(unsafe.Pointer(cdir))
-	}
-	ctx := C.gt_context(cdir)
+	n, list, free := cTexts(dirs)
+	defer free()
+	ctx := C.gt_context(n, list)
 	if ctx == nil {
 		return nil, errors.New("the projection library could not be started")
 	}
@@ -107,31 +117,53 @@ func Open(dir string) (*Library, error) {
 	version := meta("EPSG.VERSION")
 	if version == "" {
 		where := "the system's directories"
-		if dir != "" {
-			where = dir
+		if len(dirs) > 0 {
+			where = strings.Join(dirs, ", ")
 		}
 		return l, fmt.Errorf("%w in %s: data in longitude and latitude on WGS 84 can still be read, other coordinate systems cannot", ErrNoDatabase, where)
 	}
 	l.editions.Database = fmt.Sprintf("%s (%s)", version, meta("EPSG.DATE"))
 	l.path = C.GoString(C.proj_context_get_database_path(ctx))
 	l.ctx = proj.NewContext()
-	if dir != "" {
-		l.ctx.SetSearchPaths([]string{dir})
+	if len(dirs) > 0 {
+		l.ctx.SetSearchPaths(dirs)
 	}
 	return l, nil
+}
+
+// cTexts gives texts to C, until free is called.
+func cTexts(texts []string) (n C.int, list **C.char, free func()) {
+	if len(texts) == 0 {
+		return 0, nil, func() {}
+	}
+	list = (**C.char)(C.malloc(C.size_t(len(texts)) * C.size_t(unsafe.Sizeof(list))))
+	all := unsafe.Slice(list, len(texts))
+	for i, t := range texts {
+		all[i] = C.CString(t)
+	}
+	return C.int(len(texts)), list, func() {
+		for _, t := range all {
+			C.free(unsafe.Pointer(t))
+		}
+		C.free(unsafe.Pointer(list))
+	}
+}
+
+// ownPaths gives the directories in which the library looks by itself.
+func ownPaths() []string {
+	openMu.Lock()
+	defer openMu.Unlock()
+	return filepath.SplitList(C.GoString(C.gt_paths()))
 }
 
 // plane reports whether the name is a system whose coordinates are plane or geographic: geocentric,
 // vertical and local engineering systems are not.
 func (l *Library) plane(name string) bool {
-	var cdir *C.char
-	if l.dir != "" {
-		cdir = C.CString(l.dir)
-		defer C.free(unsafe.Pointer(cdir))
-	}
+	n, list, free := cTexts(l.dirs)
+	defer free()
 	cname := C.CString(name)
 	defer C.free(unsafe.Pointer(cname))
-	return C.gt_plane(cdir, cname) == 1
+	return C.gt_plane(n, list, cname) == 1
 }
 
 // Editions gives the editions of the library with its database.
@@ -139,14 +171,3 @@ func (l *Library) Editions() Editions { return l.editions }
 
 // DatabasePath gives the file of the projection database; empty without one.
 func (l *Library) DatabasePath() string { return l.path }
-
-var system = sync.OnceValues(func() (*Library, error) { return Open("") })
-
-// NewTransform makes a transform with the system's database. See Library.NewTransform.
-func NewTransform(code string) (*Transform, error) {
-	l, err := system()
-	if l == nil {
-		return nil, err
-	}
-	return l.NewTransform(code)
-}

@@ -302,3 +302,53 @@ func BenchmarkTransform(b *testing.B) {
 		}
 	}
 }
+
+// The shipped database is unpacked once, again when somebody changed it, into the next folder where the first takes
+// none, and the library reads it.
+func TestShippedDatabase(t *testing.T) {
+	folder := t.TempDir()
+	dir, err := unpackShipped(folder)
+	if err != nil {
+		t.Fatal(err)
+	}
+	path := filepath.Join(dir, databaseName)
+	before, err := os.Stat(path)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if again, err := unpackShipped(folder); err != nil || again != dir {
+		t.Errorf("a second time gave %s, %v", again, err)
+	}
+	if after, err := os.Stat(path); err != nil || !os.SameFile(before, after) {
+		t.Errorf("what was there was written again: %v", err)
+	}
+	if err := os.WriteFile(path, []byte("something else"), 0o600); err != nil {
+		t.Fatal(err)
+	}
+	if _, err := unpackShipped(folder); err != nil {
+		t.Fatal(err)
+	}
+	if data, err := os.ReadFile(path); err != nil || !isShipped(data) {
+		t.Errorf("a changed file stayed: %v", err)
+	}
+	file := filepath.Join(t.TempDir(), "file")
+	if err := os.WriteFile(file, nil, 0o600); err != nil {
+		t.Fatal(err)
+	}
+	if next, err := unpackShipped(file, folder); err != nil || next != dir {
+		t.Errorf("beside a folder that takes nothing: %s, %v", next, err)
+	}
+	if _, err := unpackShipped(file); err == nil {
+		t.Error("nowhere to write, and no error")
+	}
+	l, err := open(append([]string{dir}, ownPaths()...))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if l.DatabasePath() != path || l.Editions().Database != "v10.076 (2022-08-31)" {
+		t.Errorf("read is %s, %+v", l.DatabasePath(), l.Editions())
+	}
+	if shared, err := Shared(); err != nil || filepath.Base(filepath.Dir(shared.DatabasePath())) != filepath.Base(dir) {
+		t.Errorf("the shared library reads %s: %v", shared.DatabasePath(), err)
+	}
+}
