@@ -31,6 +31,7 @@ var sentences = map[string]string{
 	"median_differs":                 "the median of the trials differs from the central value by more than 2 %.",
 	"wakes_of_others":                "turbines of others within 10 km (existing, permitted, and applied for where wind.count_applied says so) take part in the wakes, by the generic curve for their power and rotor; masts keep the spacing across the wind from them.",
 	"wakes_of_others_unknown":        "existing or permitted wind plant within 10 km lacks hub height or rotor, has impossible ones, or is drawn as an area: its wakes are not counted.",
+	"between_resources":              "wind statistics are taken from several resource points, weighted by the inverse square of their distances.",
 	"nearest_resource":               "wind statistics are taken from the nearest resource point.",
 	"rayleigh":                       "an even spread of directions and a Rayleigh distribution are assumed from one typed mean speed.",
 	"terrain_missing":                "no ground heights: slope rules are not applied and sea level is assumed.",
@@ -181,6 +182,15 @@ var sentences = map[string]string{
 	"wind_blockage_not_modelled":     "blockage by the farm as a whole is not modelled.",
 	"wind_small_total_loss":          "one total loss stands for the loss categories of small machines.",
 	"wind_curve_exceeds_rated_power": "the published curve rises above rated power.",
+	"layout_idle":                    "turbines are placed by hand on {site} for the plant option {plant}, and the site or the option is gone. They are kept; place them anew, or take them out with gtally place and --own.",
+	"turbine_above_rated":            "the power curve of {turbine} reaches {kw} kW at {speed} m/s, above its rated power of {rated} kW. It is used as it stands.",
+	"turbine_below_rated":            "the power curve of {turbine} reaches no more than {kw} kW, and its rated power is {rated} kW. Check both.",
+	"turbine_power_falls":            "the power curve of {turbine} falls from {from} kW at {slower} m/s to {to} kW at {faster} m/s, before rated power is reached. Check these rows.",
+	"turbine_starts_late":            "the power curve of {turbine} begins at {speed} m/s with {kw} kW; in less wind the machine counts as standing still. Add the speeds down to cut-in.",
+	"turbine_ends_early":             "the power curve of {turbine} has power up to {speed} m/s; in more wind the machine counts as standing still. Add the speeds up to cut-out if it runs on.",
+	"turbine_no_thrust":              "the power curve of {turbine} has no thrust coefficients, so wakes rest on an estimate after Frandsen, which is on the safe side above rated power.",
+	"turbine_thrust_clipped":         "thrust coefficients of {turbine} above {most} ({count}, the first at {speed} m/s) are used as {most}: wake formulas have no solution above it.",
+	"turbine_uneven_steps":           "the steps between the speeds of the power curve of {turbine} are uneven, from {least} to {most} m/s; between the speeds power is taken as a straight line.",
 }
 
 // Notice writes a notice as: where, what, what the program did or what the user can do.

@@ -21,6 +21,7 @@ var reasons = map[string]string{
 	"eroi":                    "the inputs do not allow an energy return to be worked out",
 	"fit_machines_needs_wind": "a number of machines was asked for, and this plant option has no turbine",
 
+	"turbines_touch":          "rotors of turbines placed by hand could touch; move them apart",
 	"existing_turbines_near":  "turbines of others stand too near on all buildable ground",
 	"one_part_without_room":   "only one of the plant's two parts finds room here",
 	"no_row_fits":             "the ground that is left has no room for a row of panels inside its fence",

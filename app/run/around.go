@@ -217,7 +217,7 @@ func (s *Surveyor) rose(ctx context.Context, c *Candidate, here site) (*WindRose
 	if err != nil {
 		return nil, err
 	}
-	in, err := f.farm(o, machine, hub, p.windPoint, here)
+	in, err := f.farm(machine, hub, p.windPoint, here)
 	if err != nil {
 		return nil, err
 	}

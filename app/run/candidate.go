@@ -703,7 +703,7 @@ func noneFor(key KeyInfo, technology string) (string, bool) {
 }
 
 func (w *world) fitView(r fitResult, trackKm float64) (*Fit, error) {
-	f := &Fit{Mode: r.Mode, RatedKW: r.WindKW + r.SolarKW, WindKW: r.WindKW, SolarKW: r.SolarKW, ACKW: r.WindKW + r.SolarACKW, FencedHa: r.FenceHa, Modules: r.Modules, TiltDeg: r.TiltDeg, RowPitchM: r.PitchM, SpacingHa: r.SpacingHa, TrackKm: trackKm}
+	f := &Fit{Mode: r.Mode, RatedKW: r.WindKW + r.SolarKW, WindKW: r.WindKW, SolarKW: r.SolarKW, ACKW: r.WindKW + r.SolarACKW, FencedHa: r.FenceHa, Modules: r.Modules, TiltDeg: r.TiltDeg, RowPitchM: r.PitchM, Layout: r.Layout, SpacingHa: r.SpacingHa, TrackKm: trackKm}
 	for _, p := range r.Turbines {
 		ll, err := w.frame.Inverse(p)
 		if err != nil {

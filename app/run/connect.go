@@ -112,12 +112,12 @@ func (w *world) gridSettingsKey(k *keyer) {
 	}
 }
 
-// spareFor gives the spare capacity of the nearest line or substation with a known one, for fitting up
+// spare gives the spare capacity of the nearest line or substation with a known one, for fitting up
 // to it, cut to the agreed export limit.
-func (w *world) spareFor(s site) (kw float64, asset string, known bool) {
+func (f *fitter) spare(s site) (kw float64, asset string, known bool) {
 	c := s.box.Centre()
 	best := math.Inf(1)
-	for _, a := range w.assets() {
+	for _, a := range f.assets {
 		if !a.spare.Known || !a.kv.Known {
 			continue
 		}
@@ -125,7 +125,7 @@ func (w *world) spareFor(s site) (kw float64, asset string, known bool) {
 			best, kw, asset, known = d, a.spare.Value, a.id, true
 		}
 	}
-	if x, ok := w.snap.Number("grid.export_limit_kw"); ok {
+	if x, ok := f.w.snap.Number("grid.export_limit_kw"); ok {
 		kw = math.Min(kw, x)
 	}
 	return kw, asset, known

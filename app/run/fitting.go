@@ -2,13 +2,11 @@ package run
 
 import (
 	"context"
-	"errors"
 	"fmt"
 	"math"
 	"strings"
 	"sync"
 
-	"groundtally/app/study"
 	"groundtally/geo"
 	"groundtally/geo/fit"
 	"groundtally/geo/measure"
@@ -19,13 +17,14 @@ import (
 )
 
 // fitEdition is raised when the digits of the step change.
-const fitEdition = 4
+const fitEdition = 5
 
 // fitResult is the plant fitted on a site.
 type fitResult struct {
 	Status, Reason string
 	Mode           string
 	Turbines       []geo.XY
+	Layout         *Layout        `json:",omitempty"`
 	Fence          geo.XYGeometry // ground inside the fence
 	WindKW         float64
 	SolarKW        float64
@@ -73,6 +72,8 @@ type fitter struct {
 	sunWhy  string       // monthly sunlight that cannot be read
 	hours   *weatherFile // nil without a file of hours
 	hourly  *sunlight    // the months of hours
+	windKey string       // digest of the settings of wind
+	assets  []asset      // lines and substations
 	gridKey string       // digest of the settings that a connection reads
 
 	temps *sunlight // temperatures for grids of sunlight without such; nil without any
@@ -82,6 +83,8 @@ type fitter struct {
 	climates  map[string]*solar.Climate
 	years     *sunYears
 	lies      map[string]lie               // by site
+	roughs    map[string]rough             // by site
+	machines  map[string]wind.Turbine      // of the user, by name
 	stands    map[string]stand             // found, by option
 	nodes     map[geo.XY]betweenPoints     // of the lattice of sunlight
 	freshLies map[string]lie               // those that are not kept yet
@@ -96,7 +99,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: (*sunYears)(nil).after(), lies: map[string]lie{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), freshLies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: (*sunYears)(nil).after(), lies: map[string]lie{}, roughs: map[string]rough{}, machines: map[string]wind.Turbine{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), windKey: windSettings(w.snap), assets: w.assets(), freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}
@@ -150,9 +153,10 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 	k.num(f.w.frame.Centre().Lat)
 	o.key(k)
 	if o.wind {
-		for _, n := range []string{"wind.shear_alpha", "wind.typed_elevation_m", "wind.data_kind"} {
-			v, _, _ := f.w.snap.Lookup(n)
-			k.text(v.Value)
+		k.text(f.windKey)
+		f.keyOwn(k, o, s)
+		if f.byLog() {
+			k.num(f.roughness(s).z0M)
 		}
 		p, err := f.windAt(o, s)
 		if err != nil {
@@ -210,7 +214,7 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 			k.text(f.w.terrain.rec.CRS)
 		}
 	}
-	if o.fit == "spare_capacity" {
+	if _, said := o.num("fit_machines"); o.fit == "spare_capacity" || o.wind && o.fit == fitFill && !said {
 		for _, role := range []string{"grid_lines", "substations"} {
 			for _, l := range f.w.byRole[role] {
 				k.text(l.rec.Name) // stands in the asset's name
@@ -249,7 +253,7 @@ func (f *fitter) compute(e *overlay.Engine, o option, s site, ground map[string]
 	limit := math.Inf(1) // power that may be fitted
 	limitAC := false
 	if o.fit == "spare_capacity" {
-		spare, asset, known := f.w.spareFor(s)
+		spare, asset, known := f.spare(s)
 		if !known {
 			r.Status, r.Reason = NotComputed, "spare_unknown"
 			return r, nil
@@ -323,24 +327,29 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		r.Status, r.Reason = NotComputed, "turbine_does_not_fit" // the option is at fault, not the computation
 		return nil                                               //nolint:nilerr // said by the status
 	}
-	if g.BuildableM2 <= 0 {
+	hand, byHand := f.w.snap.Layout(s.id, o.id)
+	if g.BuildableM2 <= 0 && !byHand {
 		return nil
 	}
-	most := math.MaxInt32 // no limit but the room
+	most, askedBy := math.MaxInt32, "" // no limit but the room
 	if o.fit == "machines" {
 		n, ok := o.num("fit_machines")
 		if !ok {
 			r.Status, r.Reason = NotComputed, "not_set:plant."+o.id+".fit_machines"
 			return nil
 		}
-		most = int(n)
+		most, askedBy = int(n), askedSetting
 	} else if n, ok := o.num("fit_machines"); ok {
-		most = int(n)
+		most, askedBy = int(n), askedSetting
+	} else if o.fit == fitFill {
+		most, askedBy = f.carried(s, rated)
 	}
 	if !math.IsInf(limitKW, 1) {
-		most = min(most, int(math.Floor(limitKW/rated+1e-9)))
+		if n := int(math.Floor(limitKW/rated + 1e-9)); n < most {
+			most, askedBy = n, askedPower
+		}
 	}
-	if most <= 0 {
+	if most <= 0 && !byHand {
 		r.Reason = "limit_below_one_machine"
 		return nil
 	}
@@ -371,7 +380,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
 			return err
 		}
-		if in, err = f.farm(o, machine, hub, p.windPoint, s); err != nil {
+		if in, err = f.farm(machine, hub, p.windPoint, s); err != nil {
 			return err
 		}
 		in.Existing = f.machinesOf(s, near)
@@ -388,11 +397,23 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	if err != nil {
 		return siteError(s, err)
 	}
-	layout, err := fit.Machines(fit.Input{Buildable: room, Spacing: el, Max: capped(most), Gain: gain})
-	if err != nil {
-		return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+	var at []geo.XY
+	lay := &Layout{AskedBy: askedBy, Asked: capped(most)}
+	if byHand {
+		if at, err = f.placedByHand(hand, s, g.Area, el, near, across, d, lay); err != nil {
+			return err
+		}
+		if lay.touches() {
+			r.Status, r.Reason = NotComputed, "turbines_touch"
+			return nil
+		}
+	} else {
+		found, err := fit.Machines(fit.Input{Buildable: room, Spacing: el, Max: capped(most), Gain: gain})
+		if err != nil {
+			return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+		}
+		at, lay.How, lay.SpacingMet = found.At, found.How, math.Sqrt(found.MinMetric)
 	}
-	at := layout.At
 	if len(at) == 0 {
 		if len(near) > 0 && !g.Area.Empty() && room.Empty() {
 			r.Reason = "existing_turbines_near"
@@ -408,7 +429,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		if res, err = energy(at); err != nil {
 			return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 		}
-		if !math.IsInf(targetMWh, 1) {
+		if !math.IsInf(targetMWh, 1) && !byHand {
 			for n := 1; n <= len(at); n++ {
 				if res, err = energy(at[:n]); err != nil {
 					return err
@@ -420,8 +441,11 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 			}
 		}
 	}
-	r.Turbines = at
+	r.Turbines, r.Layout = at, lay
 	r.WindKW = rated * float64(len(at))
+	if known && lay.MostByRule > 0 {
+		lay.BoundMWh, lay.WakedMWh = res.GrossMWhPerYr/float64(len(at))*float64(lay.MostByRule), res.Chain[0].AfterMWh
+	}
 	if !known {
 		r.WindMWh.Why = p.why
 		return nil
@@ -439,7 +463,11 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	for _, n := range res.Notices {
 		r.Notices = append(r.Notices, string(n))
 	}
-	if !p.grid {
+	switch {
+	case p.grid:
+	case p.used > 1:
+		r.Notices = append(r.Notices, "between_resources")
+	default:
 		r.Notices = append(r.Notices, "nearest_resource")
 	}
 	if p.typed {
@@ -484,60 +512,6 @@ func (w *world) windSigmas() (model, yearSpeed float64, err error) {
 	}
 	y, err := w.p.Wind.Get("interannual_speed_sigma_frac")
 	return m.Central, y.Central, err
-}
-
-// turbine finds the machine of an option: a reference curve by name, else the generic curve for its
-// power and rotor.
-func (f *fitter) turbine(o option, ratedKW, rotorM float64) (wind.Turbine, error) {
-	id := o.settings["turbine"]
-	if id != "" && id != study.NotSetText {
-		t, err := wind.FindTurbine(f.w.p.Turbines, id)
-		if err != nil {
-			return t, fmt.Errorf("plant option %q: %w", o.id, err)
-		}
-		if math.Abs(t.RatedKW-ratedKW) > 0.02*t.RatedKW || math.Abs(t.RotorDiameterM-rotorM) > 0.02*t.RotorDiameterM {
-			return t, fmt.Errorf("plant option %q: the curve %s is for %g kW and a rotor of %g m, the option says %g kW and %g m; take a curve that fits or set plant.%s.turbine to \"not set\" for the generic curve",
-				o.id, id, t.RatedKW, t.RotorDiameterM, ratedKW, rotorM, o.id)
-		}
-		return t, nil
-	}
-	t, err := f.w.genericTurbine(ratedKW, rotorM)
-	if err != nil {
-		return t, fmt.Errorf("plant option %q: %w", o.id, err)
-	}
-	return t, nil
-}
-
-func (f *fitter) farm(o option, machine wind.Turbine, hubM float64, p windPoint, s site) (wind.FarmInput, error) {
-	alpha, ok := f.w.snap.Number("wind.shear_alpha")
-	if !ok {
-		return wind.FarmInput{}, errors.New("wind.shear_alpha is not set")
-	}
-	height, known, err := f.w.heightM(s.box.Centre())
-	if err != nil {
-		return wind.FarmInput{}, err
-	}
-	if !known {
-		// Sea level unless a height is typed, which the notices say.
-		height, _ = f.w.snap.Number("wind.typed_elevation_m")
-	}
-	set, err := f.w.p.Wind.Settings()
-	if err != nil {
-		return wind.FarmInput{}, err
-	}
-	losses, err := f.w.p.Wind.Losses(machine.RatedKW)
-	if err != nil {
-		return wind.FarmInput{}, err
-	}
-	for i := range losses {
-		if losses[i].Name == wind.LossCurtailment {
-			losses[i].Frac = 0 // what the grid does not take is reckoned at the connection
-		}
-	}
-	return wind.FarmInput{
-		Site:    wind.Site{Rose: p.sectors, RefHeightM: p.heightM, ShearAlpha: alpha, ElevationM: height},
-		Turbine: machine, HubHeightM: hubM, Settings: set, Losses: losses,
-	}, nil
 }
 
 // turn gives the way from the frame to true east and north around the middle of a site.

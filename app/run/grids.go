@@ -268,6 +268,7 @@ func (f found) void() string {
 type windHere struct {
 	windPoint
 	distM  float64 // to the resource point; the size of a cell where a grid serves
+	used   int     // points that have a say
 	known  bool
 	grid   bool
 	why    string // the wind is not known
@@ -338,18 +339,16 @@ func (f *fitter) windAt(o option, s site) (windHere, error) {
 		return windHere{why: voids}, nil
 	}
 	var out windHere
-	out.windPoint, out.distM, out.known = nearestWind(f.wind, s.box.Centre())
+	out.windPoint, out.distM, out.used = windBetween(f.wind, s.box.Centre())
+	out.known = out.used > 0
 	apart := trimmed(outside + unread)
 	switch {
 	case !out.known:
 		out.why = cmp.Or(apart, "no_layer:wind_resource")
-	case apart == "" && out.id != typedWind:
-		out.source = fmt.Sprintf("wind yield from the point of %s, %.0f m off", out.id, out.distM)
-	case apart == "":
-	case out.id == typedWind:
+	case out.id != typedWind:
+		out.source = strings.TrimSuffix(out.served(out.distM, out.used)+"; "+apart, "; ")
+	case apart != "":
 		out.source = "wind yield from the typed mean speed; " + apart
-	default:
-		out.source = fmt.Sprintf("wind yield from the point of %s, %.0f m off; %s", out.id, out.distM, apart)
 	}
 	return out, nil
 }

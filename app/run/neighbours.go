@@ -55,7 +55,7 @@ func (w *world) neighbours() []neighbour {
 				t, made := curves[kind{rated, rotor}]
 				if !made {
 					var err error
-					if t, err = w.genericTurbine(rated, rotor); err != nil {
+					if t, err = w.generic(rated, rotor); err != nil {
 						t = wind.Turbine{} // no machine has that power and rotor: it counts as one that lacks them
 					}
 					curves[kind{rated, rotor}] = t
@@ -69,8 +69,11 @@ func (w *world) neighbours() []neighbour {
 	return out
 }
 
-// genericTurbine gives the machine with the generic curve of a power and a rotor.
-func (w *world) genericTurbine(ratedKW, rotorM float64) (wind.Turbine, error) {
+// genericTurbine is the name of a machine with the generic curve.
+const genericTurbine = "generic"
+
+// generic gives the machine with the generic curve of a power and a rotor.
+func (w *world) generic(ratedKW, rotorM float64) (wind.Turbine, error) {
 	g, err := w.p.Wind.Generic(ratedKW, rotorM)
 	if err != nil {
 		return wind.Turbine{}, err
@@ -79,7 +82,7 @@ func (w *world) genericTurbine(ratedKW, rotorM float64) (wind.Turbine, error) {
 	if err != nil {
 		return wind.Turbine{}, err
 	}
-	return wind.Turbine{ID: "generic", Name: "generic curve", RatedKW: ratedKW, RotorDiameterM: rotorM, CutInMPerS: g.CutInMPerS, CutOutMPerS: g.CutOutMPerS, Curve: c, Source: "Saint-Drenan et al. 2020, Renewable Energy"}, nil
+	return wind.Turbine{ID: genericTurbine, Name: "generic curve", RatedKW: ratedKW, RotorDiameterM: rotorM, CutInMPerS: g.CutInMPerS, CutOutMPerS: g.CutOutMPerS, Curve: c, Source: "Saint-Drenan et al. 2020, Renewable Energy"}, nil
 }
 
 // near gives the neighbours whose wakes may reach a site, or its wakes them.

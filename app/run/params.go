@@ -30,10 +30,12 @@ type Params struct {
 	Turbines []wind.Turbine
 	Wind     wind.Defaults
 	Solar    *solar.Defaults
-	Grid     *grid.Model
-	Soil     *land.SoilTable
-	Graph    *reckon.Graph
-	Digest   string // of the shipped parameter files and keys; a new edition makes stored results stale
+
+	roughness []roughClass
+	Grid      *grid.Model
+	Soil      *land.SoilTable
+	Graph     *reckon.Graph
+	Digest    string // of the shipped parameter files and keys; a new edition makes stored results stale
 
 	keys    []criteria.Criterion
 	facts   []string         // leaf names given by fitting, connecting and measuring
@@ -212,6 +214,12 @@ func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 		if err := add(f); err != nil {
 			return nil, err
 		}
+	}
+	if t, err = table("roughness.csv"); err == nil {
+		p.roughness, err = roughnessOf(t)
+	}
+	if err != nil {
+		return nil, err
 	}
 	if t, err = table("solar_defaults.csv"); err == nil {
 		p.Solar, err = solar.ParseDefaults(t)

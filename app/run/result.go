@@ -44,7 +44,8 @@ type Fit struct {
 	SolarKW   float64            `json:"solar_kw,omitempty"` // direct current at test conditions
 	ACKW      float64            `json:"ac_kw"`
 	Turbines  []geo.LonLat       `json:"turbines,omitempty"`
-	Panels    geo.LonLatGeometry `json:"panels"` // ground inside the fence
+	Layout    *Layout            `json:"layout,omitempty"` // nil without turbines
+	Panels    geo.LonLatGeometry `json:"panels"`           // ground inside the fence
 	FencedHa  float64            `json:"fenced_ha,omitempty"`
 	Modules   int                `json:"modules,omitempty"`
 	TiltDeg   float64            `json:"tilt_deg,omitempty"`    // of fixed panels, found or set
@@ -259,6 +260,9 @@ func (c *Candidate) PublicJSON() map[string]any {
 			turbines[i] = map[string]float64{"lon": p.Lon, "lat": p.Lat}
 		}
 		fit["turbines"] = turbines
+		if c.Fit.Layout != nil {
+			fit["layout"] = c.Fit.Layout
+		}
 		m["fit"] = fit
 	}
 	if c.Miss != nil {

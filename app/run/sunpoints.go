@@ -353,17 +353,7 @@ var sunMatters = []string{"solar.", "weather.data_kind"}
 
 // sunSettings digests the settings that a fit reads of sunlight.
 func sunSettings(snap *study.Snapshot) string {
-	k := newKey("settings of sunlight", 1)
-	for _, key := range snap.Keys() {
-		if !slices.ContainsFunc(sunMatters, func(begin string) bool { return strings.HasPrefix(key, begin) }) {
-			continue
-		}
-		if s, _, ok := snap.Lookup(key); ok {
-			k.text(key)
-			k.text(s.Value)
-		}
-	}
-	return k.sum()
+	return settingsOf(snap, "settings of sunlight", sunMatters...)
 }
 
 // sunSources are the kinds of sunlight by the words of the settings.

@@ -198,6 +198,8 @@ func Check(ctx context.Context, store study.Store, snap *study.Snapshot, p *Para
 		return nil, err
 	}
 	out = append(append(out, sun...), hours...)
+	out = append(out, snap.TurbineNotices()...)
+	out = append(out, layoutNotices(snap, parcels)...)
 	idle, err := SettingNotices(ctx, StoreLoader(store), snap)
 	if err != nil {
 		return nil, err

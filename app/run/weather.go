@@ -83,107 +83,159 @@ func readWeather(l *geo.Layer, rec study.LayerRecord, snap *study.Snapshot, at g
 	return w
 }
 
+// hourTable reads the rows of a table of hours.
+type hourTable struct {
+	l     *geo.Layer
+	rec   study.LayerRecord
+	start []time.Time // of the intervals, in UTC
+	step  time.Duration
+	clock time.Duration // that the table's clock is ahead of UTC
+}
+
+// hoursOf reads the times of a table of hours.
+func hoursOf(l *geo.Layer, rec study.LayerRecord, snap *study.Snapshot) (*hourTable, error) {
+	h := &hourTable{l: l, rec: rec}
+	stamps := h.at("time")
+	if stamps < 0 {
+		return nil, errors.New("no column is matched to time")
+	}
+	stamp, _, _ := snap.Lookup(study.StampKey)
+	offset, hasOffset := snap.Number(study.OffsetKey)
+	if stamp.Value == "" {
+		return nil, errors.New("what its times mark is not said; set weather.stamp to start, centre or end (of the interval)")
+	}
+	h.clock = time.Duration(offset * float64(time.Hour))
+	clock := time.FixedZone("file", int(math.Round(offset*3600)))
+	for i := range l.Features {
+		t, hasZone, err := readStamp(l.Features[i].Values[stamps].String(), clock)
+		switch {
+		case err != nil:
+			return nil, fmt.Errorf("row %d: %w", i+1, err)
+		case !hasZone && !hasOffset:
+			return nil, errors.New("its times have no zone; set weather.utc_offset_h to the hours that its clock is ahead of UTC, without daylight saving time")
+		}
+		h.start = append(h.start, t.UTC())
+	}
+	var err error
+	if h.step, err = stepOf(h.start); err != nil {
+		return nil, err
+	}
+	shift := map[string]time.Duration{"centre": -h.step / 2, "end": -h.step}[stamp.Value]
+	for i := range h.start {
+		h.start[i] = h.start[i].Add(shift)
+	}
+	return h, nil
+}
+
+// at gives the column matched to a field; -1 without one.
+func (h *hourTable) at(field string) int {
+	if h.rec.Match[field] == "" {
+		return -1
+	}
+	return h.l.ColumnIndex(h.rec.Match[field])
+}
+
+// column gives a field row by row in a unit; not a number where it is empty or has no column.
+func (h *hourTable) column(field, unit string) ([]float64, error) {
+	at := h.at(field)
+	out := make([]float64, len(h.l.Features))
+	for i := range out {
+		out[i] = math.NaN()
+		if at < 0 {
+			continue
+		}
+		x, ok := h.l.Features[i].Values[at].Float()
+		if !ok {
+			continue
+		}
+		var err error
+		if out[i], err = units.Convert(x, unitOr(h.rec.Units[h.rec.Match[field]], unit), unit); err != nil {
+			return nil, fmt.Errorf("row %d: %w", i+1, err)
+		}
+	}
+	return out, nil
+}
+
 // weatherInput reads the rows.
 func weatherInput(l *geo.Layer, rec study.LayerRecord, snap *study.Snapshot) (in solar.WeatherInput, err error) {
-	column := func(field string) (at int, unit string) {
-		name := rec.Match[field]
-		if name == "" {
-			return -1, ""
-		}
-		return l.ColumnIndex(name), rec.Units[name]
-	}
-	stamps, _ := column("time")
-	ghi, ghiUnit := column("ghi")
-	dhi, dhiUnit := column("dhi")
-	dni, dniUnit := column("dni")
-	temp, tempUnit := column("temperature")
-	wind, windUnit := column("wind_speed")
-	height, heightUnit := column("wind_height")
+	has := func(field string) bool { return rec.Match[field] != "" && l.ColumnIndex(rec.Match[field]) >= 0 }
 	switch {
-	case stamps < 0:
+	case !has("time"):
 		return in, errors.New("no column is matched to time")
-	case ghi < 0 && (dhi < 0 || dni < 0):
+	case !has("ghi") && !(has("dhi") && has("dni")):
 		return in, errors.New("it has no column of sunlight on level ground (ghi), nor both of its parts (dhi, dni)")
-	case temp < 0:
+	case !has("temperature"):
 		return in, errors.New("no column is matched to temperature; the cells' loss by heat needs it")
 	}
-	stamp, _, _ := snap.Lookup("weather.stamp")
-	offset, hasOffset := snap.Number("weather.utc_offset_h")
-	if stamp.Value == "" {
-		return in, errors.New("what its times mark is not said; set weather.stamp to start, centre or end (of the interval)")
+	h, err := hoursOf(l, rec, snap)
+	if err != nil {
+		return in, err
 	}
 	split, _, _ := snap.Lookup("solar.split")
 	in.Split = splits[split.Value]
 	in.Albedo = solar.EveryMonth(defaultAlbedo)
-	in.ClockOffset = time.Duration(offset * float64(time.Hour))
-	clock := time.FixedZone("file", int(math.Round(offset*3600)))
-
-	number := func(f *geo.Feature, at int, unit, of string) (float64, error) {
-		if at < 0 {
-			return math.NaN(), nil
-		}
-		x, ok := f.Values[at].Float()
-		if !ok {
-			return math.NaN(), nil
-		}
-		return units.Convert(x, unitOr(unit, of), of)
+	in.ClockOffset, in.Step = h.clock, h.step
+	in.Rows = make([]solar.WeatherRow, len(h.start))
+	for i, t := range h.start {
+		in.Rows[i].Start = t
 	}
-	heights := map[float64]bool{}
-	for i := range l.Features {
-		f := &l.Features[i]
-		var r solar.WeatherRow
-		text := f.Values[stamps].String()
-		t, hasZone, err := readStamp(text, clock)
-		switch {
-		case err != nil:
-			return in, fmt.Errorf("row %d: %w", i+1, err)
-		case !hasZone && !hasOffset:
-			return in, errors.New("its times have no zone; set weather.utc_offset_h to the hours that its clock is ahead of UTC, without daylight saving time")
-		}
-		r.Start = t.UTC()
-		for _, c := range []struct {
-			to       *float64
-			at       int
-			unit, of string
-		}{{&r.GHI, ghi, ghiUnit, "W/m2"}, {&r.DHI, dhi, dhiUnit, "W/m2"}, {&r.DNI, dni, dniUnit, "W/m2"}, {&r.TempC, temp, tempUnit, "degC"}, {&r.WindMS, wind, windUnit, "m/s"}} {
-			if *c.to, err = number(f, c.at, c.unit, c.of); err != nil {
-				return in, fmt.Errorf("row %d: %w", i+1, err)
-			}
-		}
-		h, err := number(f, height, heightUnit, "m")
+	for _, c := range []struct {
+		field, unit string
+		to          func(*solar.WeatherRow) *float64
+	}{
+		{"ghi", "W/m2", func(r *solar.WeatherRow) *float64 { return &r.GHI }},
+		{"dhi", "W/m2", func(r *solar.WeatherRow) *float64 { return &r.DHI }},
+		{"dni", "W/m2", func(r *solar.WeatherRow) *float64 { return &r.DNI }},
+		{"temperature", "degC", func(r *solar.WeatherRow) *float64 { return &r.TempC }},
+		{"wind_speed", "m/s", func(r *solar.WeatherRow) *float64 { return &r.WindMS }},
+	} {
+		xs, err := h.column(c.field, c.unit)
 		if err != nil {
-			return in, fmt.Errorf("row %d: %w", i+1, err)
+			return in, err
 		}
-		if !math.IsNaN(h) {
-			heights[h] = true
+		for i, x := range xs {
+			*c.to(&in.Rows[i]) = x
 		}
-		in.Rows = append(in.Rows, r)
-	}
-	if in.Step, err = stepOf(in.Rows); err != nil {
-		return in, err
-	}
-	shift := map[string]time.Duration{"centre": -in.Step / 2, "end": -in.Step}[stamp.Value]
-	for i := range in.Rows {
-		in.Rows[i].Start = in.Rows[i].Start.Add(shift)
 	}
 	in.WindFactor = solar.WindAtPanelMS(1, panelWindM)
-	if len(heights) == 1 {
-		for h := range heights {
-			// The same power law from another height than 10 m.
-			in.WindFactor = math.Pow(panelWindM/min(max(h, panelWindM), 200), 0.2)
-		}
+	height, one, err := h.height()
+	if err != nil {
+		return in, err
+	}
+	if one {
+		// The same power law from another height than 10 m.
+		in.WindFactor = math.Pow(panelWindM/min(max(height, panelWindM), 200), 0.2)
 	}
 	return in, nil
+}
+
+// height gives the height at which the wind was measured; one is false where none or several stand in the table.
+func (h *hourTable) height() (m float64, one bool, err error) {
+	xs, err := h.column("wind_height", "m")
+	if err != nil {
+		return 0, false, err
+	}
+	m = math.NaN()
+	for _, x := range xs {
+		switch {
+		case math.IsNaN(x) || x == m:
+		case math.IsNaN(m):
+			m = x
+		default:
+			return 0, false, nil
+		}
+	}
+	return m, !math.IsNaN(m), nil
 }
 
 // panelWindM is the height at which wind cools panels. Source: common practice.
 const panelWindM = 2
 
 // stepOf gives the middle one of the times between rows.
-func stepOf(rows []solar.WeatherRow) (time.Duration, error) {
+func stepOf(starts []time.Time) (time.Duration, error) {
 	var steps []time.Duration
-	for i := 1; i < len(rows); i++ {
-		if d := rows[i].Start.Sub(rows[i-1].Start); d > 0 {
+	for i := 1; i < len(starts); i++ {
+		if d := starts[i].Sub(starts[i-1]); d > 0 {
 			steps = append(steps, d)
 		}
 	}

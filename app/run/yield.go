@@ -18,6 +18,7 @@ import (
 type windPoint struct {
 	at      geo.XY
 	id      string
+	layer   string
 	heightM float64
 	sectors []wind.Sector
 	typed   bool // one mean speed, even spread of directions, Rayleigh
@@ -70,7 +71,7 @@ func (w *world) windPoints() ([]windPoint, error) {
 		for _, p := range order {
 			rs := rows[p]
 			sort.SliceStable(rs, func(i, j int) bool { return rs[i].from < rs[j].from })
-			pt := windPoint{at: p, heightM: height[p], id: fmt.Sprintf("%s at %.0f, %.0f", l.rec.Name, p.X, p.Y)}
+			pt := windPoint{at: p, heightM: height[p], id: fmt.Sprintf("%s at %.0f, %.0f", l.rec.Name, p.X, p.Y), layer: l.rec.Name}
 			if len(rs) == 1 {
 				pt.sectors = evenSectors(rs[0].w)
 				pt.typed = true
@@ -115,20 +116,6 @@ func evenSectors(w wind.Weibull) []wind.Sector {
 		out[i] = wind.Sector{FrequencyFrac: 1.0 / n, Weibull: w}
 	}
 	return out
-}
-
-// nearestWind gives the resource point nearest to a place; equal distances go to the first.
-func nearestWind(points []windPoint, p geo.XY) (windPoint, float64, bool) {
-	best, at := math.Inf(1), -1
-	for i, q := range points {
-		if d := p.Dist(q.at); d < best {
-			best, at = d, i
-		}
-	}
-	if at < 0 {
-		return windPoint{}, 0, false
-	}
-	return points[at], best, true
 }
 
 // prevailingDeg gives the direction from which most energy comes, as the sum of sector vectors weighted

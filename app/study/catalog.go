@@ -21,6 +21,7 @@ type Catalog struct {
 	Definitions []Definition
 	Roles       []Role
 	Criteria    []criteria.Criterion
+	Turbines    []string // names of the machines that ship with the program
 	exact       map[string]int
 	patterns    []int // most literal first
 }
@@ -63,7 +64,7 @@ type RoleField struct {
 	Personal bool
 }
 
-// LoadCatalog reads words/keys.csv, words/roles.csv and params/settings.csv.
+// LoadCatalog reads words/keys.csv, words/roles.csv, params/settings.csv and the names in params/turbines.csv.
 func LoadCatalog(fsys fs.FS) (*Catalog, error) {
 	c := &Catalog{exact: map[string]int{}}
 	var err error
@@ -71,6 +72,9 @@ func LoadCatalog(fsys fs.FS) (*Catalog, error) {
 		return nil, err
 	}
 	if c.Roles, err = parseRoles(fsys, "words/roles.csv"); err != nil {
+		return nil, err
+	}
+	if c.Turbines, err = shippedTurbines(fsys); err != nil {
 		return nil, err
 	}
 	t, err := citedtable.ParseFS(fsys, "params/settings.csv")

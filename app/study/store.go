@@ -13,7 +13,7 @@ import (
 type RecordKind string
 
 // The kinds of record. Meta: name, frame centre, seed. Setting: one setting by its key. Layer: one
-// LayerRecord by the layer's name. Group: one site made of several parcels.
+// LayerRecord by the layer's name. Group: one site made of several parcels. TurbineRecord and LayoutRecord stand with what they hold.
 const (
 	MetaRecord    RecordKind = "meta"
 	SettingRecord RecordKind = "setting"

@@ -266,10 +266,10 @@ func (s *Study) Undoable() (undo, redo string) {
 	return undo, redo
 }
 
-// SameInputs reports whether two states hold the same settings, layers and groups, so that the same
-// results follow from both.
+// SameInputs reports whether two states hold the same settings, layers, groups, turbines of the user's own and
+// layouts by hand, so that the same results follow from both.
 func SameInputs(a, b *Snapshot) bool {
-	return a == b || reflect.DeepEqual(a.Explicit, b.Explicit) && reflect.DeepEqual(a.Layers, b.Layers) && reflect.DeepEqual(a.Groups, b.Groups) && reflect.DeepEqual(a.Frame, b.Frame)
+	return a == b || reflect.DeepEqual(a.Explicit, b.Explicit) && reflect.DeepEqual(a.Layers, b.Layers) && reflect.DeepEqual(a.Groups, b.Groups) && reflect.DeepEqual(a.Frame, b.Frame) && reflect.DeepEqual(a.turbines, b.turbines) && reflect.DeepEqual(a.layouts, b.layouts)
 }
 
 // stacks gives the entries in force and those taken back, last one last. An undo or redo moves the entry
@@ -366,6 +366,8 @@ type Snapshot struct {
 	Layers   []LayerRecord      // by name
 	Groups   []Group            // by site
 	Frame    *geo.LonLat        // centre of the local frame; nil before the first parcels
+	turbines []OwnTurbine       // by name
+	layouts  []HandLayout       // by site, then plant option
 }
 
 // FrameKey is the meta record that holds the centre of the local frame.
@@ -392,6 +394,16 @@ func NewSnapshot(cat *Catalog, records []Record) (*Snapshot, error) {
 			if err = json.Unmarshal(r.Value, &v); err == nil {
 				n.Groups = append(n.Groups, v)
 			}
+		case TurbineRecord:
+			var v OwnTurbine
+			if err = json.Unmarshal(r.Value, &v); err == nil {
+				n.turbines = append(n.turbines, v)
+			}
+		case LayoutRecord:
+			var v HandLayout
+			if err = json.Unmarshal(r.Value, &v); err == nil {
+				n.layouts = append(n.layouts, v)
+			}
 		case MetaRecord:
 			if r.Key == FrameKey {
 				var v geo.LonLat
@@ -406,6 +418,11 @@ func NewSnapshot(cat *Catalog, records []Record) (*Snapshot, error) {
 	}
 	sort.Slice(n.Layers, func(i, j int) bool { return n.Layers[i].Name < n.Layers[j].Name })
 	sort.Slice(n.Groups, func(i, j int) bool { return n.Groups[i].Site < n.Groups[j].Site })
+	sort.Slice(n.turbines, func(i, j int) bool { return n.turbines[i].ID < n.turbines[j].ID })
+	sort.Slice(n.layouts, func(i, j int) bool {
+		a, b := n.layouts[i], n.layouts[j]
+		return a.Site < b.Site || a.Site == b.Site && a.Plant < b.Plant
+	})
 	return n, nil
 }
 

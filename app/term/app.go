@@ -80,7 +80,7 @@ var (
 )
 
 func verbs() []verb {
-	return []verb{verbNew, verbAdd, verbJoin, verbRemove, verbGroup, verbDraw, verbPlace, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
+	return []verb{verbNew, verbAdd, verbJoin, verbRemove, verbGroup, verbDraw, verbPlace, verbTurbine, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
 		verbCheck, verbCompute, verbTable, verbWhy, verbRegister, verbLeft, verbTerrain, verbRequests, verbCoverage, verbOrder, verbAppendix, verbVerify, verbExport, verbConvert}
 }
 

@@ -103,10 +103,27 @@ var verbDraw = verb{
 }
 
 var verbPlace = verb{
-	name: "place", usage: "place STUDY.gpkg LAYER FEATURE (--shape 'LON,LAT ...' | --set FIELD=VALUE ... | --remove) --reason TEXT", summary: "moves, reclasses or takes out a feature by hand", places: [2]int{3, 3},
-	more:    "FEATURE is its identifier (a dwelling_id, a name) or its row in the file; where both fit, row=3 and\ndwelling_id=3 tell them apart. A measure may have its unit behind it, as --set 'voltage=20 kV'.",
-	options: []option{{name: "shape", value: "LON,LAT ...", help: "its new place in degrees"}, {name: "set", value: "FIELD=VALUE", many: true, help: "a field of the role, as class=farm"}, {name: "remove", help: "take it out"}, reasonOption},
+	name: "place", usage: "place STUDY.gpkg (LAYER FEATURE (--shape 'LON,LAT ...' | --set FIELD=VALUE ... | --remove) | SITE PLANT (--turbines 'LON,LAT ...' | --add LON,LAT | --move N=LON,LAT | --take N | --own)) --reason TEXT", summary: "moves, reclasses or takes out a feature, or places turbines, by hand", places: [2]int{1, 3 + study.MostHandTurbines},
+	more: `FEATURE is its identifier (a dwelling_id, a name) or its row in the file; where both fit, row=3 and
+dwelling_id=3 tell them apart. A measure may have its unit behind it, as --set 'voltage=20 kV'.
+Turbines of a plant option on a site: --turbines places all; --add, --move and --take change what is there, the layout
+by hand or else the program's own, which is computed first. Rules that a place breaks are shown with the results.
+Without an option the turbines placed by hand are listed with their numbers: gtally place STUDY.gpkg [SITE PLANT]`,
+	options: slices.Concat([]option{{name: "shape", value: "LON,LAT ...", help: "of a feature: its new place in degrees"}, {name: "set", value: "FIELD=VALUE", many: true, help: "a field of the role, as class=farm"}, {name: "remove", help: "take the feature out"}}, layoutOptions, []option{reasonOption}),
 	run: func(c *call) (int, error) {
+		way, err := c.layoutWay()
+		if err != nil {
+			return 0, err
+		}
+		feature := c.args.has("shape") || c.args.has("set") || c.args.has("remove")
+		switch n := len(c.args.places); {
+		case way != "":
+			return c.placeTurbines(way)
+		case !feature && !c.args.has("reason") && (n == 1 || n == 3):
+			return c.listLayouts()
+		case n != 3:
+			return 0, usagef("usage: gtally %s", c.verb.usage)
+		}
 		values, err := c.args.pairs("set")
 		if err != nil {
 			return 0, err

@@ -90,7 +90,7 @@ func (c *call) exitCode(err error) int {
 }
 
 // undone says of a verb that reads a file that it did nothing.
-var undone = map[string]string{"add": "nothing was added", "join": "nothing was joined", "convert": "nothing was written"}
+var undone = map[string]string{"add": "nothing was added", "join": "nothing was joined", "convert": "nothing was written", "turbine": "nothing was added"}
 
 // explain writes an error for people: what is wrong, and the cure.
 func (c *call) explain(err error, code int) string {

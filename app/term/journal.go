@@ -63,6 +63,8 @@ func changeWords(e study.Entry) string {
 			parts = append(parts, fmt.Sprintf("%s from %s to %s", ch.Key, settingWords(ch.Old), settingWords(ch.New)))
 		case ch.Kind == study.MetaRecord && ch.Key == study.FrameKey:
 			parts = append(parts, "centre of the local frame")
+		case study.ChangeTitle(ch) != "":
+			parts = append(parts, study.ChangeTitle(ch))
 		case ch.Kind == study.LayerRecKind && byHand(ch) != "":
 			parts = append(parts, byHand(ch))
 		case ch.New == nil:

@@ -53,7 +53,9 @@ func (c *call) askMachine(snap *study.Snapshot, id string, ask func(string, ...s
 	proposed := map[string]string{"hub_height_m": "NUMBER", "rotor_diameter_m": "NUMBER", "rated_kw": "NUMBER"}
 	if name != "" {
 		at := slices.Index(c.Params.TurbineIDs(), name)
-		if at < 0 {
+		if own, ok := snap.Turbine(name); ok {
+			proposed["rotor_diameter_m"], proposed["rated_kw"] = fmt.Sprintf("%g", own.RotorDiameterM), fmt.Sprintf("%g", own.RatedKW)
+		} else if at < 0 {
 			ask(fmt.Sprintf("the plant option %q names a reference curve %q that is not there; which one? They are: %s", id, name, strings.Join(c.Params.TurbineIDs(), ", ")),
 				"set STUDY "+key+"turbine NAME")
 		} else {

@@ -335,7 +335,7 @@ func TestEveryVerbInJSON(t *testing.T) {
 		"add": {small + "soil.geojson", "--as", "soil", "--name", "more"}, "remove": {"more"}, "group": {"--by", "farm"},
 		"set": {"run.seed", "7"}, "get": nil, "undo": nil, "redo": nil, "journal": nil, "freeze": {"now"}, "check": nil, "compute": nil, "table": {"--top", "1"},
 		"why": {"south", "sun"}, "register": nil, "requests": nil, "coverage": nil, "terrain": {"--site", "south"}, "left": {"--plant", "wind"}, "join": {"parcels", notes, "--key", "parcel"}, "draw": {"barns", "--as", "exclusion", "--shape", "-20.0,50.0", "--set", "reason=test", "--set", "setback=10", "--reason", "test"},
-		"place": {"barns", "hand-1", "--shape", "-20.001,50.0", "--reason", "test"}, "export": {"parcels", "--to", filepath.Join(t.TempDir(), "p.gpkg")}, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
+		"place": {"barns", "hand-1", "--shape", "-20.001,50.0", "--reason", "test"}, "turbine": nil, "export": {"parcels", "--to", filepath.Join(t.TempDir(), "p.gpkg")}, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
 	}
 	for _, v := range verbs()[1:] { // new comes first by itself
 		if v.name == "convert" { // it needs no study
