@@ -1,7 +1,6 @@
 package fit
 
 import (
-	"cmp"
 	"math"
 	"slices"
 
@@ -17,6 +16,8 @@ type cluster struct {
 	area   *measure.Slicer
 	buf    []measure.Span
 	points []geo.XY
+	turns  map[float64]*measure.Slicer // turned areas, by degrees
+	tied   []lattice                   // the lattices with the most nodes
 }
 
 func newCluster(j *job, parts [][][]geo.XY, before []geo.XY) *cluster {
@@ -25,22 +26,46 @@ func newCluster(j *job, parts [][][]geo.XY, before []geo.XY) *cluster {
 	return c
 }
 
+// found is what filling a cluster gave.
+type found struct {
+	at      []geo.XY
+	how     string
+	tried   map[string][]geo.XY // best layout of each producer
+	bound   int                 // machines that no layout exceeds; a rough one in jobs that only count
+	boundBy string
+
+	early    []geo.XY // best layout before walks and the greedy by energy
+	earlyHow string
+}
+
 // best gives the best layout of the cluster.
-func (c *cluster) best() (at []geo.XY, how string) {
+func (c *cluster) best() found {
+	f := found{tried: map[string][]geo.XY{}}
 	gain := math.Inf(-1)
+	gains := map[string]float64{} // of the best layout of each producer, where judged
 	take := func(got []geo.XY, by string) {
-		if len(got) < len(at) || len(got) == 0 {
+		if len(got) == 0 {
+			return
+		}
+		if len(got) > len(f.tried[by]) {
+			f.tried[by] = got
+			gains[by] = math.Inf(-1)
+		}
+		if len(got) < len(f.at) {
 			return
 		}
 		if c.in.Gain == nil {
-			if len(got) > len(at) {
-				at, how = got, by
+			if len(got) > len(f.at) {
+				f.at, f.how = got, by
 			}
 			return
 		}
 		t := c.total(c.with(got))
-		if len(got) > len(at) || t > gain+1e-9*math.Abs(gain) {
-			at, how, gain = got, by, t
+		if t > gains[by] {
+			f.tried[by], gains[by] = got, t
+		}
+		if len(got) > len(f.at) || t > gain+1e-9*math.Abs(gain) {
+			f.at, f.how, gain = got, by, t
 		}
 	}
 	for _, l := range c.lattices() {
@@ -53,14 +78,28 @@ func (c *cluster) best() (at []geo.XY, how string) {
 	for k := range 16 {
 		take(c.sweep(k), BySweep)
 	}
-	for len(at) <= searchUpTo {
-		got := c.search(len(at) + 1)
+	if c.counts {
+		f.bound = c.quickBound(c.parts)
+	} else {
+		f.bound, f.boundBy = c.bound(len(f.at))
+	}
+	for len(f.at) <= searchUpTo && len(f.at) < f.bound {
+		got := c.search(len(f.at) + 1)
 		if got == nil {
 			break
 		}
 		take(got, BySearch)
 	}
-	return at, how
+	f.early, f.earlyHow = f.at, f.how
+	if len(f.at) <= walkUpTo && (!c.counts || c.mayWalk && len(f.at)+len(c.before) < c.in.Max) {
+		for _, got := range c.walks(len(f.tried[ByBoundary])) {
+			take(got, ByBoundary)
+		}
+	}
+	if c.in.Gain != nil && len(f.at) <= greedyFill && (c.in.Max == 0 || len(f.at) <= c.in.Max) {
+		take(c.greedy(c.points, c.before, math.MaxInt), ByGreedy)
+	}
+	return f
 }
 
 func (c *cluster) with(at []geo.XY) []geo.XY {
@@ -91,6 +130,9 @@ func turned(p geo.XY, deg float64) geo.XY {
 // lattices gives the lattices with the most nodes in the cluster, in a fixed order: the first without a
 // Gain, else at most maxJudged, evenly drawn.
 func (c *cluster) lattices() []lattice {
+	if c.tied != nil {
+		return c.tied
+	}
 	var ties []lattice
 	most := 0
 	var buf []measure.Span
@@ -131,6 +173,7 @@ func (c *cluster) lattices() []lattice {
 		}
 		ties = drawn
 	}
+	c.tied = ties
 	return ties
 }
 
@@ -138,7 +181,15 @@ func (c *cluster) turnedArea(deg float64) *measure.Slicer {
 	if deg == 0 {
 		return c.area
 	}
-	return measure.NewSlicer(geo.Map(polygons(c.parts), func(p geo.XY) geo.XY { return turned(p, deg) }))
+	if s := c.turns[deg]; s != nil {
+		return s
+	}
+	s := measure.NewSlicer(geo.Map(polygons(c.parts), func(p geo.XY) geo.XY { return turned(p, deg) }))
+	if c.turns == nil {
+		c.turns = map[float64]*measure.Slicer{}
+	}
+	c.turns[deg] = s
+	return s
 }
 
 // rows calls f for every row of the lattice with the row's spans inside the area, its Y, the X of one of
@@ -253,22 +304,10 @@ func (c *cluster) filled(at []geo.XY) []geo.XY {
 
 // sweep fills the candidates greedily from one of 16 sides.
 func (c *cluster) sweep(side int) []geo.XY {
-	sin, cos := math.Sincos(float64(side) * math.Pi / 8)
-	type ranked struct {
-		p          geo.XY
-		key, cross float64
-	}
-	order := make([]ranked, len(c.points))
-	for i, p := range c.points {
-		order[i] = ranked{p, float64(p.X*cos) + float64(p.Y*sin), float64(p.Y*cos) - float64(p.X*sin)}
-	}
-	slices.SortStableFunc(order, func(a, b ranked) int {
-		return cmp.Or(cmp.Compare(a.key, b.key), cmp.Compare(a.cross, b.cross))
-	})
 	var at []geo.XY
-	for _, o := range order {
-		if free(o.p, at, -1) {
-			at = append(at, o.p)
+	for _, p := range c.fromSide(side) {
+		if free(p, at, -1) {
+			at = append(at, p)
 		}
 	}
 	return at
@@ -276,14 +315,7 @@ func (c *cluster) sweep(side int) []geo.XY {
 
 // search looks for n candidates that keep their distance from each other; nil when it finds none.
 func (c *cluster) search(n int) []geo.XY {
-	points := c.points
-	if len(points) > searchPoints {
-		// Interior points and the outline come first in the list and matter most; the rest is thinned.
-		points = make([]geo.XY, searchPoints)
-		for i := range points {
-			points[i] = c.points[i*len(c.points)/searchPoints]
-		}
-	}
+	points := thinned(c.points, searchPoints)
 	nodes := 0
 	var chosen []geo.XY
 	var deeper func(open []geo.XY) bool

@@ -37,6 +37,21 @@ type Result struct {
 	MinMetric float64 // least m(p, q) of all pairs; 0 with fewer than two machines
 	Total     float64 // of the Gain; 0 without one
 	Judged    int     // layouts that the Gain judged in full
+	Bound     int     // machines that no layout in the area exceeds, nor Max
+	BoundBy   string  // what shows it: see the constants; empty without an area
+	Tried     []Attempt
+}
+
+// Attempt is what one producer of layouts found.
+//
+// As long as Max is no limit or not reached: its best layout in each cluster, put together, before machines
+// move. A producer that was not tried in a cluster or found nothing there adds nothing, so that with several
+// clusters fewer machines need not mean a worse producer. When more machines fit than Max: the thinned layout
+// under the name of what found it and the greedy one, after machines moved.
+type Attempt struct {
+	How      string
+	Machines int
+	Total    float64 // of the Gain; 0 without one
 }
 
 // What found a layout. In a buildable area of several clusters it is what found most of the machines.
@@ -45,7 +60,12 @@ const (
 	ByHexagonalLattice = "hexagonal lattice"
 	BySweep            = "sweep"  // greedy from one side
 	BySearch           = "search" // all subsets of candidate positions
+	ByBoundary         = "walk along the boundary"
+	ByGreedy           = "greedy by energy"
 )
+
+// producers is the order in which they are tried.
+var producers = []string{BySquareLattice, ByHexagonalLattice, BySweep, BySearch, ByBoundary, ByGreedy}
 
 const (
 	toleranceM   = 1e-6  // positions this far outside count as on the edge
@@ -68,15 +88,22 @@ const (
 //     points on edges, a grid.
 //  3. The same candidates filled greedily from 16 sides.
 //  4. With 6 machines or fewer, a search for one more among at most 120 candidates; it is exhaustive for a
-//     handful of machines and gives up after 200,000 steps.
+//     handful of machines and gives up after 200,000 steps. It is left out where the bound says that no
+//     more fit.
+//  5. With 300 machines or fewer, walks along the boundary (the idea: Stanley, Ning 2019, Wind Energy
+//     Science 4): once around every ring, from 16 starting points both ways, a machine wherever the distance
+//     allows, then candidates from four sides or the nodes of the best lattice inside.
+//  6. With a Gain and 12 machines or fewer, a greedy choice among at most 300 candidates: always the one that
+//     the Gain wants most. A layout of 5 or 6 must beat the earlier ones after machines moved, too.
 //
-// With a Gain up to 24 tied lattices are judged, and at the end machines move, as long as the Gain rises,
-// by an eighth to a thirty-second of the spacing. With Max fewer machines than would fit, the spacing is
-// stretched as far as still holds Max, then surplus machines go: the one whose loss costs the Gain least,
-// without a Gain the most crowded one.
+// With a Gain up to 24 tied lattices and 8 walks are judged, and at the end machines move, as long as the
+// Gain rises, by an eighth to a thirty-second of the spacing. With Max fewer machines than would fit, the
+// spacing is stretched as far as still holds Max, then surplus machines go: the one whose loss costs the
+// Gain least, without a Gain the most crowded one. With Max of 30 or fewer the greedy choice over all
+// clusters stops at Max and wins where its Gain is higher.
 //
-// Lattices with unequal spacing or shear, walks along the boundary (Stanley, Ning 2019), random searches
-// are not tried. The result is a good layout, not a proven best.
+// Lattices with unequal spacing or shear, random searches are not tried. The result is a good layout, not a
+// proven best; Bound says how many more machines there might be.
 func Machines(in Input) (Result, error) {
 	if err := in.Spacing.check(); err != nil {
 		return Result{}, err
@@ -101,14 +128,18 @@ func Machines(in Input) (Result, error) {
 		return Result{}, fmt.Errorf("the spacing %v m by %v m is too small for so large an area", in.Spacing.AlongM, in.Spacing.AcrossM)
 	}
 	job := newJob(in, 1)
-	at, how := job.all()
+	all := job.all()
+	at, how, tried := all.at, all.how, all.tried
 	if in.Max > 0 && len(at) > in.Max {
-		at, how = job.spread(at, how)
+		at, how, tried = job.fewer(all)
+	} else if in.Gain != nil {
+		at, how = job.moved(all)
 	}
-	if in.Gain != nil {
-		at = job.refine(at)
+	out := Result{How: how, Tried: tried, Bound: all.bound, BoundBy: all.boundBy}
+	if in.Max > 0 && in.Max < out.Bound {
+		out.Bound, out.BoundBy = in.Max, BoundByMax
 	}
-	out := Result{How: how, Judged: job.judged}
+	out.Judged = job.judged
 	f := job.f
 	for _, u := range at {
 		out.At = append(out.At, f.metres(u))
@@ -136,6 +167,9 @@ type job struct {
 	parts  [][][]geo.XY // of the buildable area, stretched
 	tol    float64
 	judged int
+
+	counts  bool // only whether Max machines fit is asked for
+	mayWalk bool // for that, along the boundary too
 }
 
 // newJob stretches the plane; scale over 1 asks for more distance than the rule.
@@ -171,22 +205,113 @@ func (j *job) total(at []geo.XY) float64 {
 	return t
 }
 
+// layout is what filling all clusters gave.
+type layout struct {
+	at      []geo.XY
+	how     string
+	tried   []Attempt
+	bound   int
+	boundBy string
+	points  []geo.XY // candidates
+
+	early    []geo.XY // best layout before walks and the greedy by energy
+	earlyHow string
+}
+
 // all fills every cluster. Machines of earlier clusters count in the Gain of later ones.
-func (j *job) all() (at []geo.XY, how string) {
-	found := map[string]int{}
+func (j *job) all() (out layout) {
+	machines, early, bounded := map[string]int{}, map[string]int{}, map[string]int{}
+	tried := map[string][]geo.XY{}
 	for _, parts := range clusters(j.parts) {
-		c := newCluster(j, parts, at)
-		own, by := c.best()
-		at = append(at, own...)
-		found[by] += len(own)
-	}
-	most := 0
-	for _, by := range []string{BySquareLattice, ByHexagonalLattice, BySweep, BySearch} {
-		if found[by] > most {
-			how, most = by, found[by]
+		c := newCluster(j, parts, out.at)
+		f := c.best()
+		out.at = append(out.at, f.at...)
+		out.points = append(out.points, c.points...)
+		machines[f.how] += len(f.at)
+		out.early = append(out.early, f.early...)
+		early[f.earlyHow] += len(f.early)
+		out.bound += f.bound
+		bounded[f.boundBy] += f.bound
+		for by, at := range f.tried {
+			tried[by] = append(tried[by], at...)
 		}
 	}
-	return at, how
+	out.how = most(producers, machines)
+	out.earlyHow = most(producers, early)
+	out.boundBy = most(bounds, bounded)
+	if j.counts {
+		return out
+	}
+	for _, by := range producers {
+		at := tried[by]
+		if len(at) == 0 {
+			continue
+		}
+		a := Attempt{How: by, Machines: len(at)}
+		if j.in.Gain != nil {
+			a.Total = j.total(at)
+		}
+		out.tried = append(out.tried, a)
+	}
+	return out
+}
+
+// most gives the first name with the highest count; none when all are 0.
+func most(names []string, counts map[string]int) (name string) {
+	n := 0
+	for _, by := range names {
+		if counts[by] > n {
+			name, n = by, counts[by]
+		}
+	}
+	return name
+}
+
+// moved refines a layout. A walk or a greedy choice may be ahead of what was found before them only until
+// machines move; the earlier layout stays when it is as good then.
+func (j *job) moved(all layout) (at []geo.XY, how string) {
+	at = j.refine(all.at)
+	if len(all.early) < len(at) || slices.Equal(all.early, all.at) {
+		return at, all.how
+	}
+	old := j.refine(all.early)
+	if t := j.total(old); j.total(at) > t+1e-9*math.Abs(t) {
+		return at, all.how
+	}
+	return old, all.earlyHow
+}
+
+// fewer makes a layout of Max machines where more fit.
+func (j *job) fewer(all layout) (at []geo.XY, how string, tried []Attempt) {
+	if j.in.Gain == nil {
+		at, how = j.spread(all.at, all.how)
+		return at, how, []Attempt{{How: how, Machines: len(at)}}
+	}
+	at, how = all.at, all.how
+	if len(all.early) >= j.in.Max {
+		at, how = all.early, all.earlyHow
+	}
+	if len(at) > j.in.Max {
+		at, how = j.spread(at, how)
+	}
+	at = j.refine(at)
+	total := j.total(at)
+	tried = []Attempt{{How: how, Machines: len(at), Total: total}}
+	if j.in.Max > greedyUpTo {
+		return at, how, tried
+	}
+	got := j.refine(j.greedy(all.points, nil, j.in.Max))
+	t := j.total(got)
+	better := len(got) == len(at) && t > total+1e-9*math.Abs(total)
+	if other := (Attempt{How: ByGreedy, Machines: len(got), Total: t}); how != ByGreedy {
+		tried = append(tried, other)
+	} else if better {
+		tried[0] = other
+	}
+	if better {
+		at, how = got, ByGreedy
+	}
+	return at, how, tried
 }
 
 // clusters groups parts whose boxes are less than the spacing apart, in the order of their first part.
@@ -238,12 +363,23 @@ func (j *job) spread(at []geo.XY, how string) ([]geo.XY, string) {
 	for range 8 {
 		mid := (lo + hi) / 2
 		k := newJob(wide, mid)
-		got, by := k.all()
+		// With a Gain the greedy choice by energy does more for few machines than walks.
+		k.counts, k.mayWalk = true, j.in.Gain == nil
+		room := 0
+		for _, parts := range clusters(k.parts) {
+			room += k.quickBound(parts)
+		}
+		if room < j.in.Max { // saves the search for what cannot be
+			hi = mid
+			continue
+		}
+		wider := k.all()
+		got := wider.at
 		if len(got) < j.in.Max {
 			hi = mid
 			continue
 		}
-		lo, how = mid, by
+		lo, how = mid, wider.how
 		at = at[:0:0]
 		for _, u := range got {
 			at = append(at, j.f.unit(k.f.metres(u)))
