@@ -288,8 +288,23 @@ func TestCheckTable(t *testing.T) {
 				} else if err != nil {
 					t.Fatal(err)
 				}
+			case "correlation":
+				n, err := Correlation(vector(t, c.Text["a"]), vector(t, c.Text["b"]))
+				if err != nil || !n.Known {
+					t.Fatal(n, err)
+				}
+				got = n.Value
 			default:
-				t.Fatalf("unknown quantity %q", c.Quantity)
+				quantity, ok := strings.CutPrefix(c.Quantity, "joint_")
+				f := jointQuantities[quantity]
+				if !ok || f == nil {
+					t.Fatalf("unknown quantity %q", c.Quantity)
+				}
+				j, err := JointExport([][]float64{vector(t, c.Text["a"]), vector(t, c.Text["b"])}, in["limit"], 1)
+				if err != nil {
+					t.Fatal(err)
+				}
+				got = f(j)
 			}
 			if !c.OK(got) {
 				t.Errorf("got %v, want %v within %v (%s)", got, c.Expected, c.Tolerance, c.Source)

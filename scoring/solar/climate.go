@@ -127,6 +127,8 @@ type Climate struct {
 	// edges are the suns at the beginning and the end of the moments, two for each; none where moments have
 	// several suns.
 	edges []sunAt
+	hours Hours       // of the file, none where months were given
+	slots []int32     // hour of each moment, none where months were given
 	ghi   [12]float64 // kWh/m2 in use
 	dhi   [12]float64
 	notes []MonthNote

@@ -16,6 +16,11 @@ type Losses struct {
 	AvailabilityFrac float64 // time out of order
 }
 
+// behindInverter is the share of the inverters' energy that leaves the plant, snow not counted.
+func (l *Losses) behindInverter() float64 {
+	return (1 - l.ACWiringFrac) * (1 - l.TransformerFrac) * (1 - l.AuxiliaryFrac) * (1 - l.CurtailmentFrac) * (1 - l.AvailabilityFrac)
+}
+
 // The names of the steps of a loss chain, in their order.
 const (
 	StepHorizon     = "far_horizon" // only where a horizon is given

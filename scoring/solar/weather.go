@@ -162,6 +162,7 @@ type weather struct {
 	report WeatherReport
 	perDay int
 	slots  []slot
+	first  int     // number of the first slot, see index
 	all    []sunAt // of the slots, in their order
 	each   int     // suns of a slot
 }
@@ -170,6 +171,8 @@ type weather struct {
 type slot struct {
 	WeatherRow
 	there bool
+	row   int     // in the file's rows, negative where it has none
+	year  int     // of the row
 	sinE  float64 // mean of the geometric height, over the horizontal
 	gon   float64
 	top   float64 // greatest geometric height in degrees
@@ -200,21 +203,22 @@ const daysPerYear = 365
 
 // lay puts the rows on whole years.
 func (w *weather) lay() error {
-	rows := make([]WeatherRow, 0, len(w.in.Rows))
-	for _, r := range w.in.Rows {
+	rows := make([]placed, 0, len(w.in.Rows))
+	for i, r := range w.in.Rows {
 		r.Start = r.Start.UTC()
 		if r.Start.Month() == time.February && r.Start.Day() == 29 {
 			w.report.LeapDropped++
 			continue
 		}
-		rows = append(rows, r)
+		rows = append(rows, placed{r, i})
 	}
 	if len(rows) == 0 {
 		return &InputError{"Rows", 0, "at least a year of rows"}
 	}
 	sort.SliceStable(rows, func(i, j int) bool { return rows[i].Start.Before(rows[j].Start) })
 	perYear := daysPerYear * w.perDay
-	w.report.Typical = typical(rows, perYear)
+	var yearOf [12]int
+	yearOf, w.report.Typical = typical(rows, perYear)
 	if w.report.Typical {
 		w.report.Years = 1
 	} else {
@@ -226,15 +230,18 @@ func (w *weather) lay() error {
 		}
 	}
 	w.slots = make([]slot, w.report.Years*perYear)
-	first := 0
+	for i := range w.slots {
+		w.slots[i].row = -1
+	}
+	w.first = sun.TypicalYear * perYear
 	if !w.report.Typical {
-		first = w.index(rows[0].Start)
+		w.first = w.index(rows[0].Start)
 	}
 	for _, r := range rows {
 		i := w.index(r.Start)
 		if w.report.Typical {
 			i %= perYear
-		} else if i -= first; i >= len(w.slots) {
+		} else if i -= w.first; i >= len(w.slots) {
 			i -= len(w.slots) // the last of a file that runs over by some rows
 		}
 		s := &w.slots[i]
@@ -242,17 +249,19 @@ func (w *weather) lay() error {
 			w.report.Twice++
 			continue
 		}
-		s.WeatherRow, s.there = r, true
+		s.WeatherRow, s.there, s.row, s.year = r.WeatherRow, true, r.row, r.Start.Year()
 		if !finite(r.TempC) || !finite(r.GHI) && !(finite(r.DHI) && finite(r.DNI)) {
 			s.there = false
 		}
 	}
 	for i := range w.slots {
 		s := &w.slots[i]
-		if w.report.Typical {
-			s.Start = w.time(sun.TypicalYear*perYear + i)
-		} else {
-			s.Start = w.time(first + i)
+		s.Start = w.time(w.first + i)
+		if s.row < 0 {
+			s.year = s.Start.Year()
+			if y := yearOf[s.Start.Month()-1]; w.report.Typical && y > 0 {
+				s.year = y
+			}
 		}
 		if !s.there {
 			w.report.Missing++
@@ -264,10 +273,15 @@ func (w *weather) lay() error {
 	return nil
 }
 
+// placed is a row with its place in the file.
+type placed struct {
+	WeatherRow
+	row int
+}
+
 // typical reports that the rows are a year put together from months of different years: the years of its
-// months differ, and no month stands twice.
-func typical(rows []WeatherRow, perYear int) bool {
-	years := [12]int{}
+// months differ, and no month stands twice. It gives the years, 0 for a month without rows.
+func typical(rows []placed, perYear int) (years [12]int, ok bool) {
 	for _, r := range rows {
 		// The file's own zone may put some hours of a month over its border.
 		if d := r.Start.Day(); d < 3 || d > 26 {
@@ -278,7 +292,7 @@ func typical(rows []WeatherRow, perYear int) bool {
 			*y = r.Start.Year()
 		case r.Start.Year():
 		default:
-			return false
+			return years, false
 		}
 	}
 	// A year that begins within a year goes over one border of years; months from here and there go over more.
@@ -288,7 +302,7 @@ func typical(rows []WeatherRow, perYear int) bool {
 			borders++
 		}
 	}
-	return borders > 2 && len(rows) <= perYear+2*24
+	return years, borders > 2 && len(rows) <= perYear+2*24
 }
 
 // index numbers the intervals of years of 365 days.
@@ -302,13 +316,15 @@ func (w *weather) index(t time.Time) int {
 }
 
 // time is the beginning of an interval.
-func (w *weather) time(index int) time.Time {
-	day, part := index/w.perDay, index%w.perDay
+func (w *weather) time(index int) time.Time { return timeOf(index, w.perDay, w.in.Step) }
+
+func timeOf(index, perDay int, step time.Duration) time.Time {
+	day, part := index/perDay, index%perDay
 	year, day := day/daysPerYear, day%daysPerYear
 	if leap(year) && day > 58 {
 		day++
 	}
-	return time.Date(year, time.January, 1+day, 0, 0, 0, 0, time.UTC).Add(time.Duration(part) * w.in.Step)
+	return time.Date(year, time.January, 1+day, 0, 0, 0, 0, time.UTC).Add(time.Duration(part) * step)
 }
 
 func leap(year int) bool { return year%4 == 0 && (year%100 != 0 || year%400 == 0) }
@@ -527,10 +543,12 @@ const sinElevation15 = 0.25881904510252074
 func (w *weather) climate() *Climate {
 	in := w.in
 	c := &Climate{in: ClimateInput{LatDeg: in.LatDeg, LonDeg: in.LonDeg, Albedo: in.Albedo}, types: 1}
+	c.hours = Hours{step: in.Step, years: w.report.Years, perDay: w.perDay, first: w.first, of: make([]hourOf, len(w.slots))}
 	weight := in.Step.Hours() / float64(w.report.Years) / units.WPerKW
 	hours := [12]float64{}
 	for i := range w.slots {
 		s := &w.slots[i]
+		c.hours.of[i] = hourOf{row: int32(s.row), year: int16(s.year), filled: !s.there}
 		local := s.Start.Add(in.ClockOffset)
 		m := int(local.Month()) - 1
 		w.report.MeanTempC[m] += s.TempC
@@ -551,6 +569,7 @@ func (w *weather) climate() *Climate {
 			sinE: s.sinE, gon: s.gon, zenith: zenith, airMass: sun.AirMass(zenith / radPerDeg),
 			airC: s.TempC, windMS: wind, weight: weight,
 		})
+		c.slots = append(c.slots, int32(i))
 		c.lights = append(c.lights, l)
 		c.suns = append(c.suns, w.all[i*w.each:(i+1)*w.each]...)
 	}

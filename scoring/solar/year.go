@@ -219,7 +219,10 @@ const (
 // under them is darker than the mean; this is a simplification of this program. Of Rows the share
 // (Rows-1)/Rows stands behind another. All that the horizon hides of the sky counts as ground in the light of
 // the site's own ground, which is an upper bound.
-func (c *Climate) Yield(p Plant) (YearResult, error) {
+func (c *Climate) Yield(p Plant) (YearResult, error) { return c.yield(p, nil) }
+
+// yield is Yield. Where power is not nil it also gets the power of the hours, see PowerSeries.
+func (c *Climate) yield(p Plant, power []float64) (YearResult, error) {
 	if err := p.check(); err != nil {
 		return YearResult{}, err
 	}
@@ -233,6 +236,10 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 	var ground [12]float64
 	var hours [PowerBins]float64
 	var clock [12][24]float64
+	var kept [12]float64
+	for m := range kept {
+		kept[m] = (1 - p.Losses.SnowFrac[m]) * p.Losses.behindInverter()
+	}
 	for i := range c.moments {
 		mo := &c.moments[i]
 		suns := c.suns[mo.first : mo.first+mo.count]
@@ -327,6 +334,9 @@ func (c *Climate) Yield(p Plant) (YearResult, error) {
 			sum[sumClipped] += float64(w * out * units.WPerKW)
 			ground[mo.month] += float64(w * onGround)
 			clock[mo.month][mo.hour] += float64(w * out * units.WPerKW)
+			if power != nil {
+				power[c.slots[i]] = float64(out * kept[mo.month])
+			}
 			if out > 0 {
 				hours[min(PowerBins-1, int(out/rated*PowerBins))] += float64(w * units.WPerKW)
 			}
@@ -392,7 +402,7 @@ func (c *Climate) result(p *Plant, acc *[12][sums]float64, clock *[12][24]float6
 		GroundKWhPerM2:         ground,
 		Notes:                  c.Notes(),
 	}
-	after := (1 - l.ACWiringFrac) * (1 - l.TransformerFrac) * (1 - l.AuxiliaryFrac) * (1 - l.CurtailmentFrac) * (1 - l.AvailabilityFrac)
+	after := l.behindInverter()
 	ghi, dhi := 0.0, 0.0
 	for m := range acc {
 		r.PlaneMonthKWhPerM2[m] = acc[m][sumPlane]
