@@ -110,8 +110,11 @@ type monthsView struct {
 	Rows    []monthView
 	Why     string // what keeps months unknown
 	Hours   template.HTML
-	Sky     string
-	Spread  string
+	// Turbines are the curve over the wind and the wakes of a plant with turbines.
+	Turbines template.HTML
+	Models   string
+	Sky      string
+	Spread   string
 }
 
 type monthView struct{ Month, MWh string }
@@ -132,6 +135,11 @@ func (b *book) months(c *run.Candidate, title, id string) (*monthsView, error) {
 	}
 	if course.Rose != nil {
 		out.Hours = picture(chart.WindRose(pictures.Rose(course.Rose, "Rose: wind and energy of "+title+" by direction", id+"-rose"), draw.Light(), halfWidth))
+	}
+	if v := course.Turbines; v != nil {
+		out.Turbines = picture(chart.CurveOverWind(pictures.Curve(v.Curve, "Column chart: power of a turbine of "+title+" over the wind", id+"-curve"), draw.Light(), halfWidth)) +
+			picture(chart.WakeMap(pictures.Wakes(v.Wakes, "Map: wakes of "+title, id+"-wakes"), draw.Light(), halfWidth))
+		out.Models = pictures.WakeModels(v.Models)
 	}
 	out.Sky, out.Spread = pictures.SkySpread(course.Sky), pictures.Spread(course.Doubt)+pictures.WindSpread(course.Wind)
 	for m, v := range course.Months {

@@ -41,8 +41,8 @@ func newBar(w *Window) *bar {
 	b.find = widget.NewEntry()
 	b.find.SetPlaceHolder("Find parcel or site")
 	b.find.OnSubmitted = b.search
-	b.undo = widget.NewButtonWithIcon("", toolkit.ContentUndoIcon(), func() { w.core.Undo() })
-	b.redo = widget.NewButtonWithIcon("", toolkit.ContentRedoIcon(), func() { w.core.Redo() })
+	b.undo = widget.NewButtonWithIcon("", toolkit.ContentUndoIcon(), w.undo)
+	b.redo = widget.NewButtonWithIcon("", toolkit.ContentRedoIcon(), w.redo)
 	b.undo.Importance, b.redo.Importance = widget.LowImportance, widget.LowImportance
 	files := widget.NewButtonWithIcon("", toolkit.MenuIcon(), nil)
 	files.Importance = widget.LowImportance

@@ -2,6 +2,7 @@ package desk
 
 import (
 	"math"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -12,6 +13,8 @@ import (
 	"fyne.io/fyne/v2/widget"
 
 	"groundtally/app/desk/desktest"
+	"groundtally/app/desk/widgets"
+	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
 )
@@ -206,4 +209,103 @@ func TestDrawing(t *testing.T) {
 	if p := moved.Geometry.Parts[0][0][0]; moved.Verb != study.HandMove || math.Abs(p.Lat-to.Lat) > 6e-5 || math.Abs(p.Lon-to.Lon) > 1e-4 {
 		t.Errorf("moved to %v, want %v", moved, to)
 	}
+}
+
+// Turbines are dragged on the map with the parcels and the ground that it knows; taking back goes by moves while they
+// are, and Escape leaves all as it was.
+func TestTurbinesOnTheMap(t *testing.T) {
+	s := open(t, 20)
+	c := s.w.core
+	at := slices.IndexFunc(c.View().Results.Candidates, func(x run.Candidate) bool { return x.Plant == "wind" && x.Status == run.Fitted })
+	if at < 0 {
+		t.Fatal("the sample has no wind")
+	}
+	cand := &c.View().Results.Candidates[at]
+	c.ShowStage("Plant")
+	c.Choose(cand.ID())
+	s.settle()
+	in := func(is func(fyne.CanvasObject) bool) fyne.CanvasObject {
+		t.Helper()
+		for _, o := range test.LaidOutObjects(s.w.window.Canvas().Content()) {
+			if o.Visible() && is(o) {
+				return o
+			}
+		}
+		t.Fatal("the pane lacks something")
+		return nil
+	}
+	tap := func(text string) {
+		t.Helper()
+		switch o := in(func(o fyne.CanvasObject) bool {
+			b, ok := o.(*widget.Button)
+			p, pill := o.(*widgets.Pill)
+			return ok && b.Text == text || pill && p.Text == text
+		}).(type) {
+		case *widget.Button:
+			test.Tap(o)
+		case *widgets.Pill:
+			test.Tap(o)
+		}
+		s.Pump()
+	}
+	in(func(o fyne.CanvasObject) bool {
+		x, ok := o.(*widget.Select)
+		ok = ok && slices.Contains(x.Options, c.PlantTitle("wind"))
+		if ok {
+			x.SetSelected(c.PlantTitle("wind"))
+		}
+		return ok
+	})
+	tap("Fitted")
+	tap("Move turbines on the map")
+	m := s.w.picture.m
+	s.until("they can be moved", m.Sketching)
+	s.settle()
+	from := cand.Fit.Turbines[0]
+	plane := s.w.picture.ground.Plane()
+	position := func(p geo.LonLat) fyne.Position {
+		v := m.View()
+		d := plane.To(p).Sub(plane.To(v.Centre))
+		return fyne.NewPos(m.Size().Width/2+float32(d.X/v.MPerUnit), m.Size().Height/2-float32(d.Y/v.MPerUnit))
+	}
+	a := position(from)
+	press := &desktop.MouseEvent{PointEvent: fyne.PointEvent{Position: a}, Button: desktop.MouseButtonPrimary}
+	m.MouseDown(press)
+	for i := range 20 {
+		s.Call(func() {
+			m.Dragged(&fyne.DragEvent{PointEvent: fyne.PointEvent{Position: a.AddXY(float32(i)*4, -float32(i))}, Dragged: fyne.NewDelta(4, -1)})
+		})
+	}
+	m.DragEnd()
+	s.shoot("turbines-moved")
+	entries := len(c.View().Journal)
+	s.press(&fyne.ShortcutUndo{})
+	s.settle()
+	if len(c.View().Journal) != entries || !m.Sketching() {
+		t.Fatal("taking a move back takes an edit back")
+	}
+	s.press(&fyne.ShortcutRedo{})
+	tap("Done moving")
+	over(s, func(l *widget.Label) bool { return strings.Contains(l.Text, "moved") })
+	s.fillOver("needed; it goes", "further from the path")
+	s.tapOver("Keep these places")
+	s.until("it is in the study", func() bool { return len(c.View().Snap.Layouts()) == 1 })
+	got := c.View().Snap.Layouts()[0]
+	d := plane.To(got.At[0]).Sub(plane.To(from))
+	if unit := m.View().MPerUnit; math.Abs(d.X-76*unit) > unit || math.Abs(d.Y-19*unit) > unit || got.Reason != "further from the path" {
+		t.Errorf("moved by %v m, want %v, %v: %+v", d, 76*unit, 19*unit, got)
+	}
+	s.settle()
+	tap("Move turbines on the map")
+	s.until("they can be moved again", m.Sketching)
+	m.TypedKey(&fyne.KeyEvent{Name: fyne.KeyDelete})
+	m.TypedKey(&fyne.KeyEvent{Name: fyne.KeyEscape})
+	s.settle()
+	if m.Sketching() || s.w.window.Canvas().Overlays().Top() != nil || len(c.View().Snap.Layouts()) != 1 {
+		t.Error("giving up leaves something open")
+	}
+	tap("Back to the program's own places")
+	s.until("the program places them", func() bool { return len(c.View().Snap.Layouts()) == 0 })
+	s.press(&fyne.ShortcutUndo{})
+	s.until("those by hand are back", func() bool { return len(c.View().Snap.Layouts()) == 1 })
 }

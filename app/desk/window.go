@@ -128,6 +128,11 @@ func (w *Window) build() {
 	c.Sketch = func(kind geo.Kind, words string, from *geo.LonLat, done func([]geo.LonLat, float64)) {
 		w.picture.m.Sketch(mapview.Sketch{Kind: kind, Words: words, From: from, Done: done})
 	}
+	c.MovePoints = func(p mapview.Points) func(bool) {
+		w.picture.m.MovePoints(p)
+		return w.picture.m.EndPoints
+	}
+	c.ParcelAt = func(at geo.LonLat) string { return w.picture.m.ParcelAt(at) }
 	c.ShowParcels, c.ShowPlace, c.Boxed = w.picture.showParcels, w.picture.showPlace, func() []string { return w.picture.boxed }
 	w.strip = strip.New(c)
 	w.strip.OnTaller = func(taller bool) {
@@ -482,8 +487,8 @@ func (w *Window) keys() {
 	on := func(key fyne.KeyName, do func()) {
 		add(&desktop.CustomShortcut{KeyName: key, Modifier: fyne.KeyModifierShortcutDefault}, do)
 	}
-	add(&fyne.ShortcutUndo{}, w.core.Undo)
-	add(&fyne.ShortcutRedo{}, w.core.Redo)
+	add(&fyne.ShortcutUndo{}, w.undo)
+	add(&fyne.ShortcutRedo{}, w.redo)
 	for i, key := range []fyne.KeyName{fyne.Key1, fyne.Key2, fyne.Key3, fyne.Key4, fyne.Key5} {
 		on(key, func() { w.choose(i) })
 	}
@@ -501,6 +506,19 @@ func (w *Window) keys() {
 			w.showKeys()
 		}
 	})
+}
+
+// undo takes back the last edit; while points are moved on the map, the last move.
+func (w *Window) undo() {
+	if !w.picture.m.TakeBack() {
+		w.core.Undo()
+	}
+}
+
+func (w *Window) redo() {
+	if !w.picture.m.BringBack() {
+		w.core.Redo()
+	}
 }
 
 // switchLook goes from light to dark and back.

@@ -2,11 +2,13 @@ package pictures
 
 import (
 	"fmt"
+	"strconv"
 	"strings"
 
 	"groundtally/app/draw/chart"
 	"groundtally/app/present"
 	"groundtally/app/run"
+	"groundtally/geo"
 	"groundtally/scoring"
 )
 
@@ -68,4 +70,48 @@ func Months(months [12]scoring.Value, title, id string) (in chart.Months, why st
 		}
 	}
 	return in, why
+}
+
+// Curve gives a machine's power over the wind at hub height.
+func Curve(c *run.WindCurve, title, id string) chart.PowerCurve {
+	out := chart.PowerCurve{Title: title, ID: id, Machine: c.Machine, Published: c.Published, RatedKW: c.RatedKW, MeanSpeedMPerS: c.MeanSpeedMPerS, CutInMPerS: c.CutInMPerS, CutOutMPerS: c.CutOutMPerS}
+	for _, b := range c.Bins {
+		out.Bins = append(out.Bins, chart.SpeedBin(b))
+	}
+	return out
+}
+
+// Wakes gives what the wakes of a plant take of the wind around it.
+func Wakes(w *run.WakeField, title, id string) chart.Wakes {
+	out := chart.Wakes{Title: title, ID: id, Columns: w.Columns, Rows: w.Rows, StepM: w.StepM, X0M: w.X0M, Y0M: w.Y0M, Lost: w.Lost}
+	for i, t := range w.Turbines {
+		out.Turbines = append(out.Turbines, chart.WakeTurbine{X: t.X, Y: t.Y, RotorM: t.RotorM, Label: strconv.Itoa(i + 1), Loss: t.Loss})
+	}
+	for _, t := range w.Existing {
+		out.Existing = append(out.Existing, chart.Rotor{X: t.X, Y: t.Y, RotorM: t.RotorM})
+	}
+	rings := func(from [][]geo.XY) (to [][]chart.Metres) {
+		for _, r := range from {
+			one := make([]chart.Metres, len(r))
+			for i, p := range r {
+				one[i] = chart.Metres(p)
+			}
+			to = append(to, one)
+		}
+		return to
+	}
+	out.Site, out.Buildable = rings(w.Site), rings(w.Buildable)
+	return out
+}
+
+// WakeModels tells the yield under each model of wakes; empty without two.
+func WakeModels(list []run.WakeModelYield) string {
+	if len(list) < 2 {
+		return ""
+	}
+	var each []string
+	for _, m := range list {
+		each = append(each, fmt.Sprintf("%s %.1f %% (%.0f MWh/yr)", m.Model, 100*m.WakeLoss, m.NetMWh))
+	}
+	return "Loss in wakes by model: " + strings.Join(each, ", ") + "; the first one counts."
 }

@@ -169,6 +169,8 @@ type Course struct {
 	Doubt *Doubt           // why the yield may be another; nil as Hours
 	Wind  *WindDoubt       // the same of the wind part; nil without one
 	Rose  *WindRose        // the wind of a plant with turbines by direction; nil where it is not known
+	// Turbines are what is shown of a plant's turbines; nil as Rose.
+	Turbines *TurbineView
 }
 
 // Doubt is the spread of a solar yield by its causes, as shares of the energy.
@@ -195,47 +197,73 @@ type WindSector struct {
 	SpeedMPerS float64 // mean, at hub height
 }
 
-// rose computes the year of a fitted plant's turbines once more, by direction.
-func (s *Surveyor) rose(ctx context.Context, c *Candidate, here site) (*WindRose, error) {
+// turbines computes the year of a fitted plant's turbines once more, by direction and place.
+func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*WindRose, *TurbineView, error) {
 	f, err := s.fitted(ctx)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	i := slices.IndexFunc(s.world.options, func(o option) bool { return o.id == c.Plant })
 	if i < 0 {
-		return nil, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
+		return nil, nil, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
 	}
 	o := s.world.options[i]
 	p, err := f.windAt(o, here)
 	if err != nil || !p.known {
-		return nil, err
+		return nil, nil, err
 	}
 	hub, _ := o.num("hub_height_m")
 	rotor, _ := o.num("rotor_diameter_m")
 	rated, _ := o.num("rated_kw")
 	machine, err := f.turbine(o, rated, rotor)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	in, err := f.farm(machine, hub, p.windPoint, here)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	in.Existing = f.machinesOf(here, wholeOf(f.near(here)))
 	var at []geo.XY
 	for _, ll := range c.Fit.Turbines {
 		q, err := s.world.frame.Forward(ll)
 		if err != nil {
-			return nil, err
+			return nil, nil, err
 		}
 		at = append(at, q)
 	}
 	in.At = f.positions(here, at)
 	res, err := wind.FarmYear(in)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	return roseOf(p, res, hub, in.Site.ShearAlpha)
+	rose, err := roseOf(p, res, hub, in.Site.ShearAlpha)
+	if err != nil {
+		return nil, nil, err
+	}
+	atHub := make([]wind.Sector, len(p.sectors))
+	for i, sec := range p.sectors {
+		wb, err := sec.Weibull.AtHeight(p.heightM, hub, in.Site.ShearAlpha)
+		if err != nil {
+			return nil, nil, err
+		}
+		atHub[i] = wind.Sector{FrequencyFrac: rose.Sectors[i].Time, Weibull: wb}
+	}
+	view := &TurbineView{Curve: curveOver(in, res, atHub)}
+	if view.Models, err = bothModels(in, res); err != nil {
+		return nil, nil, err
+	}
+	rs, err := s.world.rulesFor(o, windPart)
+	if err != nil {
+		return nil, nil, err
+	}
+	g, err := s.ground(ctx, rs, here)
+	if err != nil {
+		return nil, nil, err
+	}
+	to := f.turn(here)
+	view.Wakes, err = wakesAround(in, res, ringsOf(here.geom, to), ringsOf(g.Area, to))
+	return rose, view, err
 }
 
 // roseOf brings the sectors of the data together with what they give.
@@ -325,7 +353,7 @@ func (s *Surveyor) Course(ctx context.Context, c *Candidate) (*Course, error) {
 		if out.Wind, err = s.world.windDoubt(c); err != nil {
 			return nil, err
 		}
-		if out.Rose, err = s.rose(ctx, c, here); err != nil {
+		if out.Rose, out.Turbines, err = s.turbines(ctx, c, here); err != nil {
 			return nil, err
 		}
 		return every(scoring.UnknownBecause("wind_by_year_alone")), nil

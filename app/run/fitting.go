@@ -413,6 +413,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 			return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 		}
 		at, lay.How, lay.SpacingMet = found.At, found.How, math.Sqrt(found.MinMetric)
+		lay.MostByRule, lay.MostBy = found.Bound, found.BoundBy
 	}
 	if len(at) == 0 {
 		if len(near) > 0 && !g.Area.Empty() && room.Empty() {

@@ -200,3 +200,81 @@ func curveOver(in wind.FarmInput, res wind.FarmResult, hub []wind.Sector) *WindC
 	}
 	return out
 }
+
+// The cells of a wake map, and the directions that it is summed over.
+const (
+	wakeColumns    = 100
+	wakeMarginD    = 10 // rotor diameters around the turbines
+	wakeDirections = 36
+	leastWakeCellM = 10
+)
+
+// wakesAround finds what the wakes of a plant take of the wind around it.
+func wakesAround(in wind.FarmInput, res wind.FarmResult, siteRings, groundRings [][]geo.XY) (*WakeField, error) {
+	out := &WakeField{Site: siteRings, Buildable: groundRings}
+	box := geo.EmptyExtent()
+	for i, p := range in.At {
+		out.Turbines = append(out.Turbines, WakeTurbine{X: p.X, Y: p.Y, RotorM: in.Turbine.RotorDiameterM, Loss: res.Turbines[i].WakeLossFrac})
+		box = box.Add(geo.XY(p))
+	}
+	for _, ring := range siteRings {
+		for _, p := range ring {
+			box = box.Add(p)
+		}
+	}
+	box = box.Grow(wakeMarginD * in.Turbine.RotorDiameterM)
+	for _, m := range in.Existing {
+		if box.Meets(geo.EmptyExtent().Add(geo.XY(m.At))) {
+			out.Existing = append(out.Existing, WakeTurbine{X: m.At.X, Y: m.At.Y, RotorM: m.Turbine.RotorDiameterM, Loss: math.NaN()})
+		}
+	}
+	w, h := box.MaxX-box.MinX, box.MaxY-box.MinY
+	out.StepM = math.Max(leastWakeCellM, math.Ceil(math.Max(w, h)/wakeColumns))
+	out.Columns, out.Rows = int(math.Ceil(w/out.StepM)), int(math.Ceil(h/out.StepM))
+	out.X0M, out.Y0M = box.MinX, box.MinY
+	at := make([]wind.Position, 0, out.Columns*out.Rows)
+	for y := range out.Rows {
+		for x := range out.Columns {
+			at = append(at, wind.Position{X: out.X0M + (float64(x)+0.5)*out.StepM, Y: out.Y0M + (float64(y)+0.5)*out.StepM})
+		}
+	}
+	in.Settings.Directions = wakeDirections
+	var err error
+	out.Lost, err = wind.WakeMap(in, at)
+	return out, err
+}
+
+// bothModels gives the yield under each model of wakes, the one of the results first.
+func bothModels(in wind.FarmInput, res wind.FarmResult) ([]WakeModelYield, error) {
+	words := map[wind.WakeModel]string{}
+	for name, m := range wakeModels {
+		words[m] = name
+	}
+	out := []WakeModelYield{{words[in.Settings.Wake], res.WakeLossFrac, res.NetMWhPerYr}}
+	for _, m := range []wind.WakeModel{wind.WakeGaussian, wind.WakeJensen} {
+		if m == in.Settings.Wake {
+			continue
+		}
+		in.Settings.Wake = m
+		other, err := wind.FarmYear(in)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, WakeModelYield{words[m], other.WakeLossFrac, other.NetMWhPerYr})
+	}
+	return out, nil
+}
+
+// ringsOf gives the rings of polygons through a change of coordinates.
+func ringsOf(g geo.XYGeometry, to func(geo.XY) wind.Position) (out [][]geo.XY) {
+	for _, part := range g.Parts {
+		for _, ring := range part {
+			r := make([]geo.XY, len(ring))
+			for i, p := range ring {
+				r[i] = geo.XY(to(p))
+			}
+			out = append(out, r)
+		}
+	}
+	return out
+}

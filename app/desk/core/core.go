@@ -12,6 +12,7 @@ import (
 	"fyne.io/fyne/v2"
 	"fyne.io/fyne/v2/dialog"
 
+	"groundtally/app/desk/mapview"
 	"groundtally/app/desk/theme"
 	"groundtally/app/draw"
 	"groundtally/app/live"
@@ -75,8 +76,11 @@ type Core struct {
 	// Sketch asks for places on the map; done is told none when the user gave up, else with how many metres are a
 	// hair's breadth there. From, which may be nil, is where a feature stood.
 	Sketch func(kind geo.Kind, words string, from *geo.LonLat, done func(at []geo.LonLat, nearM float64))
-	Ask    func(title, words, yes string, then func()) // asks before something that takes much away
-	Tell   func(words string)                          // a short word at the foot of the window, that something is done
+	// MovePoints has points moved about on the map; end ends it, with what was done or as if nothing had been.
+	MovePoints func(p mapview.Points) (end func(take bool))
+	ParcelAt   func(at geo.LonLat) string                  // names the parcel at a place; empty where there is none
+	Ask        func(title, words, yes string, then func()) // asks before something that takes much away
+	Tell       func(words string)                          // a short word at the foot of the window, that something is done
 
 	view      *live.View
 	voice     string
@@ -121,6 +125,8 @@ func New(a fyne.App, w fyne.Window, parts *program.Parts, th *theme.Theme) *Core
 	c.ShowParcels, c.ShowPlace, c.ShowStage = func([]string) {}, func(geo.LonLat) {}, func(string) {}
 	c.ShowZones = func([]geo.LonLatGeometry) {}
 	c.Sketch = func(_ geo.Kind, _ string, _ *geo.LonLat, done func([]geo.LonLat, float64)) { done(nil, 0) }
+	c.MovePoints = func(p mapview.Points) func(bool) { p.Done(nil); return func(bool) {} }
+	c.ParcelAt = func(geo.LonLat) string { return "" }
 	return c
 }
 

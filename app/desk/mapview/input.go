@@ -65,8 +65,11 @@ func (m *Map) MouseDown(e *desktop.MouseEvent) {
 		return
 	}
 	m.press.at, m.press.dragging, m.press.handled = e.Position, false, false
-	m.press.box = e.Modifier&fyne.KeyModifierShift != 0 && m.drawn.now == nil
+	m.press.box = e.Modifier&fyne.KeyModifierShift != 0 && !m.Sketching()
 	m.showCross(false)
+	if m.points.now != nil {
+		m.grabPoint(e.Position)
+	}
 	if c := fyne.CurrentApp().Driver().CanvasForObject(m); c != nil && c.Focused() != fyne.Focusable(m) {
 		c.Focus(m)
 	}
@@ -74,7 +77,13 @@ func (m *Map) MouseDown(e *desktop.MouseEvent) {
 
 // MouseUp ends a click. The toolkit's Tapped would come only after it has waited for a second click.
 func (m *Map) MouseUp(e *desktop.MouseEvent) {
-	if e.Button != desktop.MouseButtonPrimary || m.press.dragging || far(e.Position, m.press.at) {
+	if e.Button != desktop.MouseButtonPrimary {
+		return
+	}
+	if !m.press.dragging {
+		m.dropPoint()
+	}
+	if m.press.dragging || far(e.Position, m.press.at) {
 		return
 	}
 	again := time.Since(m.press.last) < fyne.CurrentApp().Driver().DoubleTapDelay() && !far(e.Position, m.press.lastAt)
@@ -84,6 +93,8 @@ func (m *Map) MouseUp(e *desktop.MouseEvent) {
 		m.click(e.Position, adds(e.Modifier))
 	case m.drawn.now != nil:
 		m.finishSketch()
+	case m.points.now != nil:
+		m.clickAgain()
 	}
 }
 
@@ -116,6 +127,10 @@ func (m *Map) click(at fyne.Position, add bool) {
 		m.setPoint(at)
 		return
 	}
+	if m.points.now != nil {
+		m.clickPoint(at)
+		return
+	}
 	if m.ground == nil || m.OnSelect == nil || m.furniture.covers(at) {
 		return
 	}
@@ -140,7 +155,7 @@ func (m *Map) parcelAt(at fyne.Position) string {
 // DoubleTapped shows the district whole.
 func (m *Map) DoubleTapped(*fyne.PointEvent) {
 	// The click that ends a line comes here too, a moment later.
-	if m.drawn.now == nil && time.Since(m.drawn.ended) > 3*fyne.CurrentApp().Driver().DoubleTapDelay() {
+	if !m.Sketching() && time.Since(m.drawn.ended) > 3*fyne.CurrentApp().Driver().DoubleTapDelay() {
 		m.FitAll()
 	}
 }
@@ -152,8 +167,11 @@ func (m *Map) TappedSecondary(e *fyne.PointEvent) {
 	}
 }
 
-// Dragged pans, or draws the box.
+// Dragged pans, draws the box, or moves a point.
 func (m *Map) Dragged(e *fyne.DragEvent) {
+	if m.dragPoint(e.Position) {
+		return
+	}
 	m.press.dragging = true
 	m.setHover(-1)
 	if !m.press.box {
@@ -171,6 +189,7 @@ func (m *Map) Dragged(e *fyne.DragEvent) {
 func (m *Map) DragEnd() {
 	boxed := m.press.box && m.press.dragging && m.box.Visible()
 	m.press.dragging, m.press.box = false, false
+	m.dropPoint()
 	m.box.Hide()
 	if !boxed || m.ground == nil || m.OnBox == nil {
 		return
@@ -200,6 +219,9 @@ func (m *Map) MouseOut() {
 	if m.drawn.now != nil {
 		m.showSketch()
 	}
+	if m.points.now != nil {
+		m.leavePoint()
+	}
 	m.setHover(-1)
 	m.furniture.setPlace("")
 	m.furniture.arrange(m.lens.size)
@@ -219,7 +241,10 @@ func (m *Map) point(at fyne.Position) {
 	if m.drawn.now != nil {
 		m.showSketch()
 	}
-	if !ok || m.press.dragging || m.drawn.now != nil || m.furniture.covers(at) {
+	if m.points.now != nil {
+		m.hoverPoint(at)
+	}
+	if !ok || m.press.dragging || m.Sketching() || m.furniture.covers(at) {
 		n = -1
 	}
 	m.setHover(n)
@@ -299,7 +324,7 @@ func (m *Map) TypedRune(r rune) {
 
 // TypedKey pans with the arrows, fits with Home, chooses with Enter, lets go with Escape.
 func (m *Map) TypedKey(e *fyne.KeyEvent) {
-	if m.sketchKey(e.Name) {
+	if m.sketchKey(e.Name) || m.pointsKey(e.Name) {
 		return
 	}
 	switch e.Name {

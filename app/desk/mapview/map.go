@@ -63,6 +63,7 @@ type Map struct {
 	badges     *badgeLayer
 	furniture  *furniture
 	drawn      *sketchLayer
+	points     *pointLayer
 	hover      *card
 	hoverOver  int // parcel that the words belong to, or -1
 	box        *canvas.Rectangle
@@ -96,6 +97,7 @@ var (
 	_ desktop.Hoverable      = (*Map)(nil)
 	_ desktop.Mouseable      = (*Map)(nil)
 	_ desktop.Keyable        = (*Map)(nil)
+	_ fyne.Tabbable          = (*Map)(nil)
 )
 
 // New makes a map without a district, in the light look. Close ends its workers.
@@ -120,7 +122,7 @@ func New(o Options) *Map {
 	m.names, m.badges = newNameLayer(), newBadgeLayer()
 	m.furniture = newFurniture(m)
 	m.hover = newCard(m.look)
-	m.drawn = newSketchLayer(m.look)
+	m.drawn, m.points = newSketchLayer(m.look), newPointLayer(m.look)
 	m.box = canvas.NewRectangle(nil)
 	m.box.StrokeWidth = 1.5
 	m.box.Hide()
@@ -130,12 +132,12 @@ func New(o Options) *Map {
 	m.ring = canvas.NewRectangle(nil)
 	m.ring.StrokeWidth = 2
 	m.ring.Hide()
-	objects := []fyne.CanvasObject{m.backdrop, m.back.box, m.front.box, m.names.box, m.badges.box, m.drawn.box, m.box}
+	objects := []fyne.CanvasObject{m.backdrop, m.back.box, m.front.box, m.names.box, m.badges.box, m.drawn.box, m.points.box, m.box}
 	for _, l := range m.cross {
 		l.Hide()
 		objects = append(objects, l)
 	}
-	objects = append(objects, m.furniture.box, m.drawn.card.box, m.hover.box, m.ring)
+	objects = append(objects, m.furniture.box, m.drawn.card.box, m.points.beside.box, m.hover.box, m.ring)
 	m.stage = container.NewWithoutLayout(objects...)
 	m.clip = container.NewClip(m.stage)
 	m.ExtendBaseWidget(m)
@@ -222,6 +224,16 @@ func (m *Map) Settled() bool {
 	}
 	m.place()
 	return true
+}
+
+// ParcelAt names the parcel at a place; empty where there is none.
+func (m *Map) ParcelAt(at geo.LonLat) string {
+	if m.ground != nil {
+		if n, ok := m.ground.Hit(m.ground.Plane().To(at)); ok {
+			return m.ground.ID(n)
+		}
+	}
+	return ""
 }
 
 // View gives what is shown.
@@ -354,6 +366,9 @@ func (m *Map) place() {
 	if m.drawn.now != nil {
 		m.showSketch()
 	}
+	if m.points.now != nil {
+		m.showPoints()
+	}
 	m.furniture.place(m.lens)
 	canvas.Refresh(m.backdrop) // objects that were only shown or hidden do not ask for a repaint
 }
@@ -388,6 +403,7 @@ func (m *Map) dress() {
 	m.furniture.dress(m.style())
 	m.hover.dress(m.look)
 	m.drawn.card.dress(m.look)
+	m.points.beside.dress(m.look)
 	m.box.StrokeColor, m.box.FillColor = m.look.Ink, faded(m.look.Ink, 30)
 	for i, l := range m.cross {
 		l.StrokeColor = m.look.Ink
@@ -439,7 +455,7 @@ func (r *renderer) Layout(size fyne.Size) {
 	m := r.m
 	m.clip.Resize(size)
 	m.backdrop.Resize(size)
-	for _, o := range []fyne.CanvasObject{m.front.box, m.back.box, m.names.box, m.badges.box, m.drawn.box, m.furniture.box} {
+	for _, o := range []fyne.CanvasObject{m.front.box, m.back.box, m.names.box, m.badges.box, m.drawn.box, m.points.box, m.furniture.box} {
 		o.Resize(size)
 	}
 	m.ring.Move(fyne.NewPos(1, 1))

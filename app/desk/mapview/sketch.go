@@ -65,11 +65,11 @@ func (m *Map) Sketch(s Sketch) {
 	m.showSketch()
 }
 
-// GiveUp ends the drawing without a shape; it tells whether there was one.
-func (m *Map) GiveUp() bool { return m.endSketch(false) }
+// GiveUp ends the drawing without a shape, or the moving of points; it tells whether there was any.
+func (m *Map) GiveUp() bool { return m.endSketch(false) || m.endPoints(false) }
 
-// Sketching tells whether the user is drawing.
-func (m *Map) Sketching() bool { return m.drawn.now != nil }
+// Sketching tells whether the user is drawing, or moving points.
+func (m *Map) Sketching() bool { return m.drawn.now != nil || m.points.now != nil }
 
 func (m *Map) endSketch(take bool) bool {
 	s := m.drawn.now
@@ -234,11 +234,7 @@ func (m *Map) showSketch() {
 		l.box.Objects = append(l.box.Objects, dot)
 	}
 	l.card.setLines(s.Words + "\n" + s.help())
-	top := float32(edgeUnits)
-	if f := m.furniture; f.ground.Visible() {
-		top += f.ground.Size().Height + 4
-	}
-	l.card.box.Move(fyne.NewPos(max(float32(edgeUnits), (m.lens.size.Width-l.card.size.Width)/2), top))
+	m.placeAsk()
 	m.hover.setLines(m.measured(next))
 	if beside := next; m.hover.box.Visible() {
 		if beside == nil {
@@ -246,6 +242,15 @@ func (m *Map) showSketch() {
 		}
 		m.hover.beside(*beside, m.lens.size)
 	}
+}
+
+// placeAsk puts the card that says what is asked for at the top of the map.
+func (m *Map) placeAsk() {
+	c, top := m.drawn.card, float32(edgeUnits)
+	if f := m.furniture; f.ground.Visible() {
+		top += f.ground.Size().Height + 4
+	}
+	c.box.Move(fyne.NewPos(max(float32(edgeUnits), (m.lens.size.Width-c.size.Width)/2), top))
 }
 
 // help says in a line or two which keys do what.

@@ -162,6 +162,8 @@ func each(name func(int) string, p draw.Palette, width float64) map[string]*draw
 		out[fmt.Sprintf("daymonths-%d", n)] = chart.DayByMonth(dayMonths(n), p, width)
 		out[fmt.Sprintf("rose-%d", n)] = chart.WindRose(rose(n), p, width)
 		out[fmt.Sprintf("horizon-%d", n)] = chart.HorizonStrip(horizon(n), p, width)
+		out[fmt.Sprintf("curve-%d", n)] = chart.CurveOverWind(curve(name, n), p, width)
+		out[fmt.Sprintf("wakes-%d", n)] = chart.WakeMap(wakes(name, n), p, width)
 		out[fmt.Sprintf("cloud-%d", n*n)] = chart.Scatter(cloud(name, n*n), p, width)
 	}
 	for i, s := range []chart.Span{{Low: 3, Central: 4, High: 6, Least: 0, Greatest: 10}, {Low: 3, Central: 3, High: 3, Least: 3, Greatest: 3}, {Unknown: true}, {Low: 9, Central: 10, High: 10, Least: 0, Greatest: 10, Over: true}} {
@@ -496,7 +498,8 @@ func TestRangeBarIsTrue(t *testing.T) {
 // Hatching means unknown, nothing else: no chart without an unknown value has any.
 func TestHatchingMeansUnknown(t *testing.T) {
 	known := map[string]*draw.Scene{"scatter": chart.Scatter(cloud(names["short"], 400), draw.Light(), 760), "chain": chart.Waterfall(chain(names["short"], 2), draw.Light(), 760),
-		"land": chart.TakenBars(land(names["short"], 2), draw.Light(), 760), "months": chart.Monthly(months(names["short"], 2), draw.Light(), 760), "pair": chart.PairBars(pair(names["short"], 3), draw.Light(), 760)}
+		"land": chart.TakenBars(land(names["short"], 2), draw.Light(), 760), "months": chart.Monthly(months(names["short"], 2), draw.Light(), 760), "pair": chart.PairBars(pair(names["short"], 3), draw.Light(), 760),
+		"curve": chart.CurveOverWind(curve(names["short"], 26), draw.Light(), 760), "wakes": chart.WakeMap(wakes(names["short"], 6), draw.Light(), 760)}
 	for what, s := range known {
 		for _, it := range s.Items {
 			if p, ok := it.(draw.Path); ok && p.Style.Hatch {

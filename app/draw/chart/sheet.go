@@ -112,10 +112,11 @@ func (s *sheet) flow(x, y, room float64, pieces []piece) int {
 
 // key is one entry of a legend.
 type key struct {
-	style draw.Style
-	line  bool // a line rather than a patch
-	dot   bool // a round mark rather than a patch
-	text  string
+	style   draw.Style
+	line    bool // a line rather than a patch
+	dot     bool // a round mark rather than a patch
+	diamond bool // a mark of four corners rather than a patch
+	text    string
 }
 
 const keyWidth = 26.0 // patch with the blank beside it
@@ -138,6 +139,8 @@ func (s *sheet) legend(y float64, keys []key) float64 {
 			s.Line(k.style, draw.Point{X: x, Y: mid}, draw.Point{X: x + 18, Y: mid})
 		case k.dot:
 			s.Path(draw.Path{Rings: [][]draw.Point{ringAround(draw.Point{X: x + 9, Y: mid}, dotRadius)}, Closed: true, Style: k.style})
+		case k.diamond:
+			s.Path(draw.Path{Rings: [][]draw.Point{diamond(draw.Point{X: x + 9, Y: mid}, 5.5)}, Closed: true, Style: k.style})
 		default:
 			s.Rect(x, mid-6, 18, 12, k.style, "")
 		}

@@ -41,3 +41,23 @@ func hoursOf(c *run.Candidate, course *run.Course) func(draw.Palette, float64) *
 	in := pictures.Hours(course, "Energy of "+c.Site+" by month and hour of the day", "hours")
 	return func(p draw.Palette, width float64) *draw.Scene { return chart.DayByMonth(in, p, width) }
 }
+
+// curveOf gives the picture of a machine's curve over the wind at a candidate; nil where it is not known.
+func curveOf(c *run.Candidate, course *run.Course) func(draw.Palette, float64) *draw.Scene {
+	v := viewOf(course)
+	if v == nil || v.Curve == nil {
+		return nil
+	}
+	in := pictures.Curve(v.Curve, "Power of a turbine of "+c.Site+" over the wind", "curve")
+	return func(p draw.Palette, width float64) *draw.Scene { return chart.CurveOverWind(in, p, width) }
+}
+
+// wakesOf gives the picture of what the wakes take of the wind around a candidate; nil where it is not known.
+func wakesOf(c *run.Candidate, course *run.Course) func(draw.Palette, float64) *draw.Scene {
+	v := viewOf(course)
+	if v == nil || v.Wakes == nil {
+		return nil
+	}
+	in := pictures.Wakes(v.Wakes, "Wakes of "+c.Site+" from above", "wakes")
+	return func(p draw.Palette, width float64) *draw.Scene { return chart.WakeMap(in, p, width) }
+}

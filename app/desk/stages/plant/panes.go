@@ -378,6 +378,8 @@ type fitted struct {
 	monthHead   *widgets.Line
 	monthWords  *widgets.Line
 	month, hour *chartview.Picture
+	turbines    *turbines
+	mover       *mover
 	sky         *widget.Label
 	months      *run.Candidate // whose months are shown or asked for
 }
@@ -390,7 +392,8 @@ func newFitted(s *stage) *fitted {
 	f.loss, f.taken = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
 	f.month, f.hour = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
 	f.sky = widgets.NewText("")
-	f.box = container.NewVBox(f.title, flush(f.words), f.lines, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, f.hour, flush(f.sky), space(6), flush(caption(caution)))
+	f.mover, f.turbines = newMover(s), newTurbines(f)
+	f.box = container.NewVBox(f.title, flush(f.words), f.mover.all, f.lines, f.turbines.words, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, f.hour, f.turbines.all, flush(f.sky), space(6), flush(caption(caution)))
 	f.body = container.NewVScroll(container.New(insets{2, 6, 16, 8}, f.box))
 	return f
 }
@@ -431,6 +434,8 @@ func (f *fitted) update() {
 	visible(f.monthWords, withPlant)
 	visible(f.month, withPlant)
 	visible(f.hour, withPlant)
+	f.mover.update(c)
+	f.turbines.update(c)
 	if c == nil {
 		f.title.Set("No candidate of this option is chosen")
 		f.words.SetText("Choose a site on the map or in the table of Accounts, then come back.")
@@ -466,6 +471,7 @@ func (f *fitted) askMonths(c *run.Candidate) {
 	f.months = c
 	f.month.Set(nil)
 	f.hour.Set(nil)
+	f.turbines.course(c, nil)
 	visible(f.sky, false)
 	f.monthWords.Set("")
 	if c.Status != run.Fitted {
@@ -491,6 +497,7 @@ func (f *fitted) askMonths(c *run.Candidate) {
 			}
 			f.month.Set(do)
 			f.hour.Set(hoursOf(c, course))
+			f.turbines.course(c, course)
 			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt) + pictures.WindSpread(course.Wind)))
 			visible(f.sky, f.sky.Text != "")
 			f.body.Refresh()

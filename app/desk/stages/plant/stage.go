@@ -10,6 +10,7 @@ import (
 	"fyne.io/fyne/v2/container"
 	"fyne.io/fyne/v2/widget"
 
+	"groundtally/app/desk/chartview"
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/widgets"
 	"groundtally/app/live"
@@ -114,6 +115,11 @@ func (s *stage) Changed(ch core.Change) {
 	}
 	if ch&(core.SelectionChanged|core.LookChanged) != 0 && s.tabs.Chosen() == tabFitted {
 		s.fitted.update()
+	}
+	if ch&core.LookChanged != 0 { // what is found once for a candidate has the colours of before, shown or not
+		for _, p := range []*chartview.Picture{s.fitted.month, s.fitted.hour, s.fitted.turbines.curve, s.fitted.turbines.lee} {
+			p.Repaint()
+		}
 	}
 }
 
