@@ -204,7 +204,7 @@ func curveOver(in wind.FarmInput, res wind.FarmResult, hub []wind.Sector) *WindC
 // The cells of a wake map, and the directions that it is summed over.
 const (
 	wakeColumns    = 100
-	wakeMarginD    = 10 // rotor diameters around the turbines
+	wakeMarginD    = 7 // rotor diameters around the turbines
 	wakeDirections = 36
 	leastWakeCellM = 10
 )

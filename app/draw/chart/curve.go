@@ -13,7 +13,7 @@ type PowerCurve struct {
 	Title     string // for readers who cannot see the picture
 	ID        string // tells its hatching from that of other pictures on one page
 	Machine   string
-	Published bool // the maker's own curve; otherwise a generic estimate
+	Published bool // a table of the machine; otherwise a generic estimate
 	Bins      []SpeedBin
 	RatedKW   float64
 	MeanSpeedMPerS,
@@ -96,7 +96,7 @@ func halfWords(from, to float64) string {
 // curveNote tells where the curve comes from; warn where that wants attention.
 func (in PowerCurve) curveNote() (words string, warn bool) {
 	if in.Published {
-		return "power curve as published by the maker", false
+		return "power curve from a table, not an estimate", false
 	}
 	return "generic estimate of the power curve, not the maker's own", true
 }

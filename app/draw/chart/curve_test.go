@@ -66,7 +66,7 @@ func TestCurveOverWindIsTrue(t *testing.T) {
 		}
 	}
 	in.Published = true
-	if s := chart.CurveOverWind(in, draw.Light(), 420); says(s, "generic") || !says(s, "as published by the maker") {
+	if s := chart.CurveOverWind(in, draw.Light(), 420); says(s, "generic") || !says(s, "from a table, not an estimate") {
 		t.Error("a published curve is not called so")
 	}
 }
