@@ -219,7 +219,7 @@ func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*Wind
 	if err != nil {
 		return nil, nil, err
 	}
-	in, err := f.farm(machine, hub, p.windPoint, here)
+	in, err := f.farm(machine, hub, p, here)
 	if err != nil {
 		return nil, nil, err
 	}

@@ -352,8 +352,7 @@ func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []fl
 	if err != nil {
 		return nil, nil, err
 	}
-	alpha, _ := f.w.snap.Number("wind.shear_alpha")
-	if all, err = all.AtHeight(p.heightM, hub, alpha); err != nil {
+	if all, err = all.AtHeight(p.heightM, hub, p.alpha); err != nil {
 		return nil, nil, err
 	}
 	const step = 0.25 // m/s

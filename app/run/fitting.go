@@ -380,7 +380,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
 			return err
 		}
-		if in, err = f.farm(machine, hub, p.windPoint, s); err != nil {
+		if in, err = f.farm(machine, hub, p, s); err != nil {
 			return err
 		}
 		in.Existing = f.machinesOf(s, near)

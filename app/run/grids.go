@@ -271,13 +271,24 @@ type windHere struct {
 	used   int     // points that have a say
 	known  bool
 	grid   bool
-	why    string // the wind is not known
-	source string // for people; empty where the study has no grids of wind
+	why    string  // the wind is not known
+	source string  // for people; empty where the study has no grids of wind
+	alpha  float64 // exponent from the height of the data to the hub
 }
 
-// windAt finds the wind for a part of an option on a site: of the grids that cover the site, the one at the height
-// nearest to the hub; without such a grid the nearest point, or the typed speed. A void of a grid is unknown.
+// windAt gives the wind that serves a part of an option on a site, with what carries it to hub height.
 func (f *fitter) windAt(o option, s site) (windHere, error) {
+	out, err := f.windFrom(o, s)
+	if err != nil || !out.known {
+		return out, err
+	}
+	hub, _ := o.num("hub_height_m")
+	return f.withShear(out, hub, s)
+}
+
+// windFrom finds the wind for a part of an option on a site: of the grids that cover the site, the one at the height
+// nearest to the hub; without such a grid the nearest point, or the typed speed. A void of a grid is unknown.
+func (f *fitter) windFrom(o option, s site) (windHere, error) {
 	grids, unread := f.w.gridsOf("wind_resource")
 	var voids, outside string
 	hub, _ := o.num("hub_height_m")

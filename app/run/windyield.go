@@ -44,11 +44,7 @@ func settingsOf(snap *study.Snapshot, name string, begin ...string) string {
 }
 
 // farm gives a plant's turbines to the wind engine, but for their places and neighbours.
-func (f *fitter) farm(machine wind.Turbine, hubM float64, p windPoint, s site) (wind.FarmInput, error) {
-	alpha, ok := f.w.snap.Number("wind.shear_alpha")
-	if !ok {
-		return wind.FarmInput{}, errors.New("wind.shear_alpha is not set")
-	}
+func (f *fitter) farm(machine wind.Turbine, hubM float64, p windHere, s site) (wind.FarmInput, error) {
 	height, known, err := f.w.heightM(s.box.Centre())
 	if err != nil {
 		return wind.FarmInput{}, err
@@ -66,7 +62,7 @@ func (f *fitter) farm(machine wind.Turbine, hubM float64, p windPoint, s site) (
 		return wind.FarmInput{}, err
 	}
 	return wind.FarmInput{
-		Site:    wind.Site{Rose: p.sectors, RefHeightM: p.heightM, ShearAlpha: alpha, ElevationM: height},
+		Site:    wind.Site{Rose: p.sectors, RefHeightM: p.heightM, ShearAlpha: p.alpha, ElevationM: height},
 		Turbine: machine, HubHeightM: hubM, Settings: set, Losses: losses,
 	}, nil
 }
@@ -288,6 +284,36 @@ func (w *world) coverAt(ls []*layer, p geo.XY, buf *[]int) float64 {
 		}
 	}
 	return 0
+}
+
+// withShear finds the exponent that carries the wind from its height to the hub: the one that is set, or the one that
+// does what the logarithmic law does between these heights over the ground around the site.
+func (f *fitter) withShear(p windHere, hubM float64, s site) (windHere, error) {
+	if !f.byLog() {
+		alpha, ok := f.w.snap.Number("wind.shear_alpha")
+		if !ok {
+			return p, errors.New("wind.shear_alpha is not set")
+		}
+		p.alpha = alpha
+		return p, nil
+	}
+	r := f.roughness(s)
+	if !r.known {
+		return windHere{why: "not_set:wind.roughness_m"}, nil
+	}
+	d, _ := f.w.snap.Number("wind.displacement_m")
+	up, err := wind.LogLaw(1, p.heightM, hubM, r.z0M, d)
+	if err != nil {
+		return windHere{why: fmt.Sprintf("the logarithmic law does not hold from %g m to %g m over %s: %v", p.heightM, hubM, r.source, err)}, nil
+	}
+	if p.alpha, err = wind.AlphaFromSpeeds(1, p.heightM, up, hubM); err != nil {
+		// At the height of the data only machines of others, on other hubs, are carried.
+		if p.alpha, err = wind.AlphaFromRoughness(p.heightM, hubM, r.z0M); err != nil {
+			return p, siteError(s, err)
+		}
+	}
+	p.source = strings.TrimPrefix(p.source+"; carried to hub height by the logarithmic law over "+r.source, "; ")
+	return p, nil
 }
 
 // byLog reports whether the study carries the wind to hub height by the logarithmic law.

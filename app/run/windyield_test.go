@@ -4,6 +4,8 @@ import (
 	"math"
 	"reflect"
 	"slices"
+	"strconv"
+	"strings"
 	"testing"
 
 	"groundtally/app/study"
@@ -188,5 +190,33 @@ func TestPlacedByHand(t *testing.T) {
 	}
 	if c = p.computed(cache); !reflect.DeepEqual(c.Fit, own.Fit) {
 		t.Errorf("back again: %+v, before %+v", c.Fit, own.Fit)
+	}
+}
+
+// The logarithmic law carries the wind over the roughness of the land cover around a site, else over the typed one.
+func TestWindByTheLogarithmicLaw(t *testing.T) {
+	p := windYield(t)
+	p.set("wind.typed_mean_speed_m_per_s", "6", "wind.typed_height_m", "50", "wind.profile", "log law")
+	if c := p.computed(nil); p.leaf(c, "wind_p50_mwh").Why != "not_set:wind.roughness_m" {
+		t.Errorf("without roughness: %+v", p.leaf(c, "wind_p50_mwh"))
+	}
+	energy := func() float64 { return p.leaf(p.computed(nil), "wind_p50_mwh").X }
+	p.set("wind.roughness_m", "0.4")
+	typed := energy()
+	// The same speed typed at the hub, 100 m up: 6 ln(100/0.4)/ln(50/0.4). Rounding may choose another of two equal layouts.
+	q := windYield(t)
+	q.set("wind.typed_mean_speed_m_per_s", strconv.FormatFloat(6*math.Log(250)/math.Log(125), 'g', -1, 64), "wind.typed_height_m", "100")
+	if want := q.leaf(q.computed(nil), "wind_p50_mwh").X; math.Abs(typed/want-1) > 1e-4 {
+		t.Errorf("over 0.4 m %v MWh, not %v", typed, want)
+	}
+	p.add("land_cover", []string{"class"}, thing{square(-5000, -5000, 10000), map[string]string{"class": "mixed forest"}})
+	p.set("wind.roughness_m", "0.0002")
+	c := p.computed(nil)
+	if l := p.leaf(c, "wind_p50_mwh"); math.Abs(l.X/typed-1) > 1e-4 || !strings.Contains(l.Source, "land cover") {
+		t.Errorf("over woods %+v, over 0.4 m %v MWh", l, typed)
+	}
+	p.set("wind.displacement_m", "50")
+	if l := p.leaf(p.computed(nil), "wind_p50_mwh"); !strings.Contains(l.Why, "logarithmic law") {
+		t.Errorf("data below the tops of the trees: %+v", l)
 	}
 }
