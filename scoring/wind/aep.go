@@ -67,6 +67,47 @@ func GrossExactMWhPerYr(c *PowerCurve, w Weibull) float64 {
 	return mwhPerKWYear * sum
 }
 
+// Nodes and weights of the Gauss-Legendre rule with 8 points on -1 to 1, the positive half. Source:
+// Abramowitz & Stegun 1964, table 25.4.
+var (
+	gaussNode   = [...]float64{0.183434642495650, 0.525532409916329, 0.796666477413627, 0.960289856497536}
+	gaussWeight = [...]float64{0.362683783378362, 0.313706645877887, 0.222381034453374, 0.101228536290376}
+)
+
+// Panels of the quadrature are no wider than a metre per second and an eighth of the scale A, so that
+// the density hardly bends within one; the number in a piece of the curve is held down because far
+// above A there is no energy to find.
+const (
+	panelMPerS    = 1.0
+	panelsPerA    = 8.0
+	mostPanels    = 256
+	panelRounding = 1e-12
+)
+
+// GrossQuadratureMWhPerYr is the same energy by numbers alone: 8760 h integral of P(v) f(v) dv, each
+// straight piece of the curve cut into panels, in each the Gauss-Legendre rule with 8 points. It shares
+// neither bins nor the incomplete gamma function with GrossMWhPerYr and GrossExactMWhPerYr and agrees
+// with the latter within 1e-6 for curves that begin above 0 and shapes from 1.5 to 3. For a curve that
+// gives power from speed 0 on and a shape below 1 the density has a pole there and it falls short.
+func GrossQuadratureMWhPerYr(c *PowerCurve, w Weibull) float64 {
+	widest := math.Min(panelMPerS, w.AMPerS/panelsPerA)
+	var sum float64
+	for i := range len(c.v) - 1 {
+		lo, hi := c.v[i], c.v[i+1]
+		n := math.Max(1, math.Min(mostPanels, math.Ceil((hi-lo)/widest*(1-panelRounding))))
+		half := (hi - lo) / n / 2
+		slope := (c.p[i+1] - c.p[i]) / (hi - lo)
+		at := func(v float64) float64 { return (c.p[i] + float64(slope*(v-lo))) * w.Density(v) }
+		for q := range int(n) {
+			mid := lo + float64(half*float64(2*q+1))
+			for g, x := range gaussNode {
+				sum += float64(half * gaussWeight[g] * (at(mid-float64(half*x)) + at(mid+float64(half*x))))
+			}
+		}
+	}
+	return mwhPerKWYear * sum
+}
+
 // lowerGamma is the lower incomplete gamma function, integral from 0 to x of t^(a-1) e^-t dt, for
 // a > 0 and x >= 0: the power series below a+1, the continued fraction of the upper function above
 // (Abramowitz & Stegun 1964, 6.5.29 and 6.5.31). Relative error about 1e-14.

@@ -169,6 +169,9 @@ func compute(t *testing.T, c citedtable.Check) (float64, error) {
 		return pick(w, err)
 	case "log_law":
 		return LogLaw(in("v"), in("zr"), in("z"), in("z0"), in("d"))
+	case "weibull_log_a":
+		w, err := Weibull{in("a"), in("k")}.AtHeightLog(in("zr"), in("z"), in("z0"), in("d"))
+		return w.AMPerS, err
 	case "power_law":
 		return PowerLaw(in("v"), in("zr"), in("z"), in("alpha"))
 	case "roughness_class":
@@ -194,6 +197,11 @@ func compute(t *testing.T, c citedtable.Check) (float64, error) {
 		return GrossBinsMWhPerYr(curve().Curve, rayleigh()), nil
 	case "gross_exact":
 		return GrossExactMWhPerYr(curve().Curve, rayleigh()), nil
+	case "gross_quadrature":
+		return GrossQuadratureMWhPerYr(curve().Curve, rayleigh()), nil
+	case "gross_quadrature_per_exact":
+		w, err := FromMeanAndK(in("mean"), in("k"))
+		return GrossQuadratureMWhPerYr(curve().Curve, w) / GrossExactMWhPerYr(curve().Curve, w), err
 	case "capacity_factor":
 		m := curve()
 		return CapacityFactor(GrossMWhPerYr(m.Curve, rayleigh()), m.RatedKW), nil
@@ -229,6 +237,21 @@ func compute(t *testing.T, c citedtable.Check) (float64, error) {
 		return gaussianEpsilon(in("ct")), nil
 	case "gaussian":
 		return GaussianDeficit(in("ct"), in("kstar"), in("x"), in("y")), nil
+	case "wake_along":
+		// A machine with one thrust at all speeds, wind from the north.
+		c, err := NewPowerCurve([]CurvePoint{{SpeedMPerS: 3, PowerKW: 1, Ct: in("ct"), HasCt: true}, {SpeedMPerS: 25, PowerKW: 1, Ct: in("ct"), HasCt: true}})
+		if err != nil {
+			return 0, err
+		}
+		set := settings(t)
+		set.AmbientTIFrac = in("ti")
+		out, err := WakeAlong(FarmInput{Site: Site{Rose: []Sector{{1, Weibull{8, 2}}}, RefHeightM: 100},
+			Turbine: Turbine{ID: "disc", RatedKW: 1, RotorDiameterM: 100, Curve: c}, HubHeightM: 100, At: []Position{{}}, Settings: set},
+			[]Position{{100 * in("y"), -100 * in("x")}}, 0, 8)
+		if err != nil {
+			return 0, err
+		}
+		return out[0], nil
 	case "wake_growth":
 		return WakeGrowth(in("ti")), nil
 	case "iea37_aep", "iea37_bin":
@@ -243,6 +266,35 @@ func compute(t *testing.T, c citedtable.Check) (float64, error) {
 		return sum, nil
 	case "exceedance":
 		return Exceedance(in("p50"), in("sigma"), in("p"))
+	case "exceedance_single_year":
+		ls, err := Exceedances(in("p50"), in("sigma"), in("sigma_year"))
+		for _, l := range ls {
+			if l.ProbabilityFrac == in("p") {
+				return l.SingleYearMWhPerYr, err
+			}
+		}
+		return 0, err
+	case "uncertainty_shared", "uncertainty_own", "uncertainty_total":
+		cs := Components{{Name: "shared", SpeedFrac: in("shared_speed"), Shared: true}, {Name: "shared too", EnergyFrac: in("shared_energy"), Shared: true},
+			{Name: "own", SpeedFrac: in("own_speed")}, {Name: "own too", EnergyFrac: in("own_energy")}}
+		shared, own, err := cs.Parts(in("sensitivity"))
+		switch c.Quantity {
+		case "uncertainty_shared":
+			return shared, err
+		case "uncertainty_own":
+			return own, err
+		}
+		return cs.Total(in("sensitivity"))
+	case "land_permanent", "land_temporary", "land_tracks":
+		l, err := Works{Turbines: int(in("n")), FoundationM2: in("foundation"), CranePadM2: in("pad"), LaydownM2: in("laydown"), CompoundM2: in("compound"),
+			TrackWidthM: in("track_width"), TrackLengthM: in("track_length"), SubstationM2: in("substation")}.Land()
+		switch c.Quantity {
+		case "land_permanent":
+			return l.PermanentHa, err
+		case "land_temporary":
+			return l.TemporaryHa, err
+		}
+		return l.TracksHa, err
 	case "root_sum_square":
 		return RootSumSquare(numbers(c.Text["values"])...), nil
 	case "chain":

@@ -4,6 +4,8 @@ import (
 	"errors"
 	"fmt"
 	"math"
+
+	"groundtally/scoring/units"
 )
 
 // FarmInput is all that the year of a farm depends on.
@@ -46,6 +48,15 @@ type SectorYear struct {
 	WakedMWhPerYr float64
 }
 
+// DirectionYear is what one computed direction gives in a typical first year, in MWh, before the losses
+// behind the wake.
+type DirectionYear struct {
+	FromDeg       float64 // clockwise from north
+	TimeFrac      float64 // of the year, all directions together 1
+	FreeMWhPerYr  float64 // all machines in the free stream
+	WakedMWhPerYr float64
+}
+
 // FarmResult is a typical first year of a farm.
 type FarmResult struct {
 	NetMWhPerYr      float64 // P50: even odds, by the inputs
@@ -55,9 +66,12 @@ type FarmResult struct {
 	Turbines         []TurbineYear
 	Chain            []Step       // gross to net; the first step is the wake
 	Sectors          []SectorYear // of the site's rose
-	SpeedSensitivity float64      // percent energy per percent speed, from runs at plus and minus 1 percent
-	MeanSpeedMPerS   float64      // at the hub, free stream
-	AirKgPerM3       float64      // density at the hub
+	Directions       []DirectionYear
+	SpeedSensitivity float64 // percent energy per percent speed, from runs at plus and minus 1 percent
+	MeanSpeedMPerS   float64 // at the hub, free stream
+	AirKgPerM3       float64 // density at the hub
+	// ExtrapolationRatio is the hub height per height of the rose: how far the shear law was relied upon.
+	ExtrapolationRatio float64
 	// ExistingLossMWhPerYr is what the existing machines lose because of the new ones, before their
 	// other losses.
 	ExistingLossMWhPerYr float64
@@ -66,7 +80,7 @@ type FarmResult struct {
 
 // FarmYear computes the energy of a farm in a typical first year of 8,760 hours.
 //
-// Each sector's Weibull scale is carried to the hub by the power law. Air density comes from the
+// Each sector's Weibull scale is carried to the hub by the site's shear law. Air density comes from the
 // standard atmosphere at ground plus hub height (with the site's temperature when known); machines with
 // pitch control read their curve at v (rho/1.225)^(1/3), stall machines have their power scaled by
 // rho/1.225. The rose is spread over Settings.Directions directions so that each sector keeps its time.
@@ -76,7 +90,11 @@ type FarmResult struct {
 // between nodes. Losses follow as Chain has it.
 //
 // Positions nearer to each other than the sum of their rotor radii are an error.
-func FarmYear(in FarmInput) (FarmResult, error) {
+func FarmYear(in FarmInput) (FarmResult, error) { return farmYear(in, nil) }
+
+// farmYear is FarmYear that also shows the solution of every direction; the flow is only good until the
+// next one. The farm's own machines follow the existing ones in it.
+func farmYear(in FarmInput, show func(f *field, d int, fl *flow)) (FarmResult, error) {
 	f, air, err := prepareFarm(in)
 	if err != nil {
 		return FarmResult{}, err
@@ -89,19 +107,24 @@ func FarmYear(in FarmInput) (FarmResult, error) {
 	if err != nil {
 		return FarmResult{}, err
 	}
-	w, wUp, wDown := f.weights(1), f.weights(1+sensitivityStep), f.weights(1-sensitivityStep)
+	bySector := f.bySector(1)
+	w, wUp, wDown := f.byDirection(bySector), f.weights(1+sensitivityStep), f.weights(1-sensitivityStep)
 
 	first := len(in.Existing)
 	own := make([]TurbineYear, len(in.At))
 	var alone, up, down, existing float64
 	sectors := make([]SectorYear, len(f.rose))
-	sectorFree := f.sectorEnergies()
+	sectorFree := f.sectorEnergies(bySector)
+	directions := make([]DirectionYear, len(f.shares))
 	for d := range f.shares {
 		alone += dot(w[0][d], f.kinds[0].ones)
 	}
 	fl := f.newFlow()
 	for d := range f.shares {
 		f.solve(fl, nil, d, ms, -1, w)
+		if show != nil {
+			show(f, d, fl)
+		}
 		waking := 0.0 // what the direction gives behind wakes, which its sectors share as they share its free energy
 		for i := range ms {
 			if i < first {
@@ -113,15 +136,20 @@ func FarmYear(in FarmInput) (FarmResult, error) {
 			up += dot(wUp[0][d], fl.ratio[i])
 			down += dot(wDown[0][d], fl.ratio[i])
 		}
+		one := dot(w[0][d], f.kinds[0].ones)
+		directions[d] = DirectionYear{
+			FromDeg:  units.DegreesPerCircle * float64(d) / float64(len(f.shares)),
+			TimeFrac: f.timeFrac(d), FreeMWhPerYr: one * float64(len(in.At)), WakedMWhPerYr: waking,
+		}
 		for _, sh := range f.shares[d] {
 			free := float64(sh.frac * sectorFree[sh.sector])
 			sectors[sh.sector].FreeMWhPerYr += float64(free * float64(len(in.At)))
-			if one := dot(w[0][d], f.kinds[0].ones); one > 0 {
+			if one > 0 {
 				sectors[sh.sector].WakedMWhPerYr += float64(waking * free / one)
 			}
 		}
 	}
-	r := FarmResult{Turbines: own, Sectors: sectors, AirKgPerM3: air}
+	r := FarmResult{Turbines: own, Sectors: sectors, Directions: directions, AirKgPerM3: air, ExtrapolationRatio: in.HubHeightM / in.Site.RefHeightM}
 	var waked float64
 	for i := range own {
 		own[i].GrossMWhPerYr = alone
@@ -247,4 +275,30 @@ func notices(in FarmInput, closest float64) []Notice {
 	say(small, NoticeSmallTotal)
 	say(in.Turbine.Curve.MaxKW() > in.Turbine.RatedKW*1.01, NoticeRatedExceeded)
 	return out
+}
+
+// WakeComparison is the farm's year by one wake model.
+type WakeComparison struct {
+	Wake          WakeModel
+	WakeLossFrac  float64
+	WakedMWhPerYr float64 // behind wakes, before the other losses
+	NetMWhPerYr   float64
+	Year          FarmResult
+}
+
+// CompareWakes computes the same farm by the Gaussian model and by the top hat of Jensen, in this order,
+// whatever Settings.Wake says: how far they lie apart is a measure of how little is known of wakes.
+// Errors are those of FarmYear.
+func CompareWakes(in FarmInput) ([]WakeComparison, error) {
+	models := []WakeModel{WakeGaussian, WakeJensen}
+	out := make([]WakeComparison, 0, len(models))
+	for _, m := range models {
+		in.Settings.Wake = m
+		r, err := FarmYear(in)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, WakeComparison{Wake: m, WakeLossFrac: r.WakeLossFrac, WakedMWhPerYr: r.Chain[0].AfterMWh, NetMWhPerYr: r.NetMWhPerYr, Year: r})
+	}
+	return out, nil
 }

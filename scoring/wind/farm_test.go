@@ -587,6 +587,39 @@ func TestCurves(t *testing.T) {
 	}
 }
 
+func TestQuadratureAgreesWithTheClosedForm(t *testing.T) {
+	worst := 0.0
+	for _, m := range turbines(t) {
+		for mean := 4.0; mean <= 11; mean += 0.5 {
+			for k := 1.5; k < 3.01; k += 0.25 {
+				w, err := FromMeanAndK(mean, k)
+				if err != nil {
+					t.Fatal(err)
+				}
+				a, b := GrossQuadratureMWhPerYr(m.Curve, w), GrossExactMWhPerYr(m.Curve, w)
+				if worst = math.Max(worst, math.Abs(a/b-1)); !near(a, b, 1e-6) {
+					t.Errorf("%s, mean %g, k %g: quadrature %g, closed form %g", m.ID, mean, k, a, b)
+				}
+			}
+		}
+	}
+	t.Logf("they differ by %.1e at most", worst)
+	// The rule is exact for polynomials to degree 15, on -1 to 1 2/(n+1) for even n.
+	for n := 0; n < 16; n += 2 {
+		var sum float64
+		for g, x := range gaussNode {
+			sum += 2 * gaussWeight[g] * math.Pow(x, float64(n))
+		}
+		if !near(sum, 2/float64(n+1), 1e-13) {
+			t.Errorf("degree %d: %.16g", n, sum)
+		}
+	}
+	// Hardly any wind at all costs neither memory nor hours.
+	if e := GrossQuadratureMWhPerYr(turbine(t, "iea_3_4mw_130").Curve, Weibull{1e-9, 2}); e != 0 {
+		t.Errorf("no wind gives %g MWh", e)
+	}
+}
+
 func TestThreeWaysToTheEnergyAgree(t *testing.T) {
 	for _, m := range turbines(t) {
 		for mean := 5.0; mean <= 9; mean++ {
@@ -676,6 +709,157 @@ func TestWeibullProperties(t *testing.T) {
 	}
 }
 
+func TestComponents(t *testing.T) {
+	cs := Components{
+		{Name: "measurement", SpeedFrac: .07, Shared: true}, {Name: "long_term", SpeedFrac: .03, Shared: true}, {Name: "vertical", SpeedFrac: .045, Shared: true},
+		{Name: "curve", EnergyFrac: .05, Shared: true}, {Name: "horizontal", SpeedFrac: .065}, {Name: "wakes", EnergyFrac: .03},
+	}
+	total, err1 := cs.Total(1.5)
+	shared, own, err2 := cs.Parts(1.5)
+	if err1 != nil || err2 != nil || !near(total*total, shared*shared+own*own, 1e-12) || !near(own, math.Hypot(1.5*.065, .03), 1e-12) {
+		t.Errorf("total %g, shared %g, own %g; %v %v", total, shared, own, err1, err2)
+	}
+	u := Uncertainty{MeasurementFrac: .03, LongTermFrac: .02, VerticalFrac: .03, HorizontalFrac: .04, PerformanceFrac: .05}
+	want, err1 := u.SigmaEnergy(1.4, 1)
+	got, err2 := u.Components().Total(1.4)
+	if err1 != nil || err2 != nil || !near(got, want, 1e-12) {
+		t.Errorf("the same components give %g and %g; %v %v", got, want, err1, err2)
+	}
+	if shared, own, err := (Components{}).Parts(1); shared != 0 || own != 0 || err != nil {
+		t.Errorf("nothing gives %g and %g, %v", shared, own, err)
+	}
+	for name, bad := range map[string]Components{
+		"nan": {{SpeedFrac: math.NaN()}}, "above 1": {{EnergyFrac: 1.5}}, "both": {{SpeedFrac: .1, EnergyFrac: .1}},
+	} {
+		if _, _, err := bad.Parts(1); err == nil {
+			t.Errorf("%s: accepted", name)
+		}
+	}
+	if _, err := cs.Total(6); err == nil {
+		t.Error("a sensitivity of 6 was accepted")
+	}
+}
+
+func TestExceedances(t *testing.T) {
+	ls, err := Exceedances(1000, .1, .06)
+	if err != nil || len(ls) != 5 || ls[0].LongTermMWhPerYr != 1000 || ls[0].SingleYearMWhPerYr != 1000 {
+		t.Fatalf("%v, %v", ls, err)
+	}
+	for i, l := range ls {
+		want, err := Exceedance(1000, .1, l.ProbabilityFrac)
+		single, err2 := Exceedance(1000, math.Hypot(.1, .06), l.ProbabilityFrac)
+		if err != nil || err2 != nil || l.LongTermMWhPerYr != want || !near(l.SingleYearMWhPerYr, single, 1e-12) {
+			t.Errorf("P%g: %+v", 100*l.ProbabilityFrac, l)
+		}
+		if i > 0 && !(l.LongTermMWhPerYr < ls[i-1].LongTermMWhPerYr && l.SingleYearMWhPerYr < l.LongTermMWhPerYr) {
+			t.Errorf("P%g is not less than the one before, or one year is not", 100*l.ProbabilityFrac)
+		}
+	}
+	if _, err := Exceedances(1000, math.NaN(), 0); err == nil {
+		t.Error("a sigma that is no number was accepted")
+	}
+	if _, err := Exceedances(-1, .1, 0); err == nil {
+		t.Error("an energy below 0 was accepted")
+	}
+}
+
+func TestLogLawCarriesTheWindToTheHub(t *testing.T) {
+	in := farm(t, "iea_3_4mw_130", scatter(4, 2, 700)...)
+	in.Site.RefHeightM = 60
+	power := year(t, in)
+	if !near(power.ExtrapolationRatio, in.HubHeightM/60, 1e-12) {
+		t.Errorf("extrapolated by %g", power.ExtrapolationRatio)
+	}
+	in.Site.DisplacementM = 7 // plays no part without a roughness
+	if r := year(t, in); r.NetMWhPerYr != power.NetMWhPerYr {
+		t.Errorf("power law: %g, with a displacement %g", power.NetMWhPerYr, r.NetMWhPerYr)
+	}
+	in.Site.RoughnessM, in.Site.DisplacementM = 0.4, 8
+	r := year(t, in)
+	factor, err := LogLaw(1, 60, in.HubHeightM, 0.4, 8)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var mean float64
+	for _, s := range in.Site.Rose {
+		mean += s.FrequencyFrac * s.Weibull.Mean() * factor
+	}
+	if !near(r.MeanSpeedMPerS, mean, 1e-9) {
+		t.Errorf("at the hub %g m/s, want %g", r.MeanSpeedMPerS, mean)
+	}
+	// The exponent that gives the same factor gives the same year.
+	same := in
+	same.Site.RoughnessM = 0
+	if same.Site.ShearAlpha, err = AlphaFromSpeeds(1, 60, factor, in.HubHeightM); err != nil {
+		t.Fatal(err)
+	}
+	if s := year(t, same); !near(s.NetMWhPerYr, r.NetMWhPerYr, 1e-9) {
+		t.Errorf("log law %g MWh, the same factor by the power law %g", r.NetMWhPerYr, s.NetMWhPerYr)
+	}
+	// Existing machines of another height follow the same law.
+	in.Existing = []Machine{{Position{0, -900}, turbine(t, "dw100_27_6"), 40}}
+	f, _, err := prepareFarm(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	down, err := LogLaw(1, in.HubHeightM, 40, 0.4, 8)
+	if err != nil || !near(f.kinds[1].s/f.kinds[0].s, down, 1e-12) {
+		t.Errorf("an existing machine at 40 m sees %g of the hub's speed, want %g; %v", f.kinds[1].s/f.kinds[0].s, down, err)
+	}
+	for _, bad := range []float64{-1, math.NaN(), 80} {
+		in.Site.RoughnessM = bad
+		if _, err := FarmYear(in); err == nil {
+			t.Errorf("roughness length %g m was accepted", bad)
+		}
+	}
+}
+
+func TestCompareWakes(t *testing.T) {
+	in := farm(t, "iea_3_4mw_130", scatter(6, 3, 700)...)
+	in.Settings.Wake = WakeIEA37
+	cs, err := CompareWakes(in)
+	if err != nil || len(cs) != 2 || cs[0].Wake != WakeGaussian || cs[1].Wake != WakeJensen {
+		t.Fatalf("%v, %v", cs, err)
+	}
+	for _, c := range cs {
+		in.Settings.Wake = c.Wake
+		if r := year(t, in); r.NetMWhPerYr != c.NetMWhPerYr || r.WakeLossFrac != c.WakeLossFrac || c.WakedMWhPerYr != r.Chain[0].AfterMWh {
+			t.Errorf("%v: %g MWh, alone %g", c.Wake, c.NetMWhPerYr, r.NetMWhPerYr)
+		}
+	}
+	if cs[0].WakeLossFrac == cs[1].WakeLossFrac || cs[0].Year.GrossMWhPerYr != cs[1].Year.GrossMWhPerYr {
+		t.Errorf("losses %g and %g of %g and %g", cs[0].WakeLossFrac, cs[1].WakeLossFrac, cs[0].Year.GrossMWhPerYr, cs[1].Year.GrossMWhPerYr)
+	}
+	in.At = nil
+	if _, err := CompareWakes(in); err == nil {
+		t.Error("no positions were accepted")
+	}
+}
+
+func TestDirectionsAddUp(t *testing.T) {
+	in := farm(t, "iea_3_4mw_130", Position{}, Position{X: 600})
+	r := year(t, in)
+	var free, waked, time float64
+	worst := 0
+	for i, d := range r.Directions {
+		free += d.FreeMWhPerYr
+		waked += d.WakedMWhPerYr
+		time += d.TimeFrac
+		if d.FromDeg != float64(i)*5 || d.WakedMWhPerYr > d.FreeMWhPerYr*(1+1e-12) {
+			t.Errorf("direction %d: %+v", i, d)
+		}
+		if 1-d.WakedMWhPerYr/d.FreeMWhPerYr > 1-r.Directions[worst].WakedMWhPerYr/r.Directions[worst].FreeMWhPerYr {
+			worst = i
+		}
+	}
+	if len(r.Directions) != 72 || !near(free, r.GrossMWhPerYr, 1e-12) || !near(waked, r.Chain[0].AfterMWh, 1e-9) || !near(time, 1, 1e-12) {
+		t.Errorf("%d directions with %g, %g MWh in %g of the time", len(r.Directions), free, waked, time)
+	}
+	if d := r.Directions[worst].FromDeg; d != 90 && d != 270 {
+		t.Errorf("machines in a line from west to east lose most from %g degrees", d)
+	}
+}
+
 func TestShearAgreesWithLogLaw(t *testing.T) {
 	alpha, err := AlphaFromRoughness(90, 110, 0.1)
 	if err != nil {
@@ -724,9 +908,15 @@ func BenchmarkFarmYear(b *testing.B) {
 	for _, n := range []int{1, 2, 3, 5, 10, 25, 50} {
 		b.Run(fmt.Sprint(n), func(b *testing.B) {
 			in := farm(b, "iea_3_4mw_130", scatter(n, 7, 300*math.Sqrt(float64(n))+300)...)
+			f, _, err := prepareFarm(in)
+			if err != nil {
+				b.Fatal(err)
+			}
 			for b.Loop() {
 				year(b, in)
 			}
+			b.ReportMetric(float64(len(f.shares)), "directions")
+			b.ReportMetric(float64(len(f.nodes)), "speeds")
 		})
 	}
 }

@@ -57,10 +57,14 @@ type Site struct {
 	// 2 percent and are divided by their sum.
 	Rose       []Sector
 	RefHeightM float64 // height above ground of the rose's distributions
-	ShearAlpha float64 // power law exponent from there to the hub
+	ShearAlpha float64 // power law exponent from there to the hub; plays no part when RoughnessM is given
 	ElevationM float64 // of the ground above sea level
 	TempC      float64 // mean air temperature at hub height, used when TempKnown
 	TempKnown  bool
+	// RoughnessM is the roughness length of the ground: above 0, speeds go from height to height by the
+	// log law over it and over the displacement height DisplacementM (0 over open land); 0 leaves it to
+	// the power law, and DisplacementM then plays no part.
+	RoughnessM, DisplacementM float64
 }
 
 // row is what one machine, at each speed node, does to those behind it.
@@ -105,7 +109,7 @@ type share struct {
 // newField prepares the kinds: kind 0 is the farm's own.
 func newField(site Site, own Turbine, hubM float64, existing []Machine, set Settings, density float64) (*field, error) {
 	f := &field{set: set, kStar: WakeGrowth(set.AmbientTIFrac)}
-	if err := f.addKind(own, hubM, hubM, site.ShearAlpha, density); err != nil {
+	if err := f.addKind(own, hubM, hubM, site, density); err != nil {
 		return nil, err
 	}
 	for i, m := range existing {
@@ -115,7 +119,7 @@ func newField(site Site, own Turbine, hubM float64, existing []Machine, set Sett
 		if f.kindOf(m) >= 0 {
 			continue
 		}
-		if err := f.addKind(m.Turbine, m.HubHeightM, hubM, site.ShearAlpha, density); err != nil {
+		if err := f.addKind(m.Turbine, m.HubHeightM, hubM, site, density); err != nil {
 			return nil, fmt.Errorf("existing machine %d: %w", i+1, err)
 		}
 	}
@@ -132,14 +136,14 @@ func newField(site Site, own Turbine, hubM float64, existing []Machine, set Sett
 	return f, nil
 }
 
-func (f *field) addKind(t Turbine, hub, refHub, alpha, density float64) error {
+func (f *field) addKind(t Turbine, hub, refHub float64, site Site, density float64) error {
 	if err := t.Check(); err != nil {
 		return err
 	}
 	if !(hub > t.RotorDiameterM/2 && hub <= 300) {
 		return fmt.Errorf("hub height %g m must exceed half the rotor diameter, %g m, and stay within 300 m", hub, t.RotorDiameterM/2)
 	}
-	shear, err := powerFactor(refHub, hub, alpha)
+	shear, err := site.speedFactor(refHub, hub)
 	if err != nil {
 		return err
 	}
@@ -182,7 +186,7 @@ func hubRose(site Site, hubM float64) ([]Sector, error) {
 		if err := s.Weibull.Check(); err != nil {
 			return nil, fmt.Errorf("sector %d: %w", i, err)
 		}
-		w, err := s.Weibull.AtHeight(site.RefHeightM, hubM, site.ShearAlpha)
+		w, err := site.atHeight(s.Weibull, site.RefHeightM, hubM)
 		if err != nil {
 			return nil, err
 		}
@@ -320,9 +324,9 @@ func (f *field) thrust(k *kind, i int, left float64, r row) {
 }
 
 // sectorEnergies gives the free-stream energy (MWh/yr) of one machine of the farm by sector of the rose.
-func (f *field) sectorEnergies() []float64 {
+func (f *field) sectorEnergies(bySector [][][]float64) []float64 {
 	out := make([]float64, len(f.rose))
-	for s, nodes := range f.bySector(1)[0] {
+	for s, nodes := range bySector[0] {
 		out[s] = dot(nodes, f.kinds[0].ones)
 	}
 	return out
@@ -331,8 +335,23 @@ func (f *field) sectorEnergies() []float64 {
 // bySector gives the free-stream energy (MWh/yr) of each kind by sector of the rose and speed node, when all
 // speeds are multiplied by speedFactor.
 func (f *field) bySector(speedFactor float64) [][][]float64 {
+	kw := make([][]float64, len(f.kinds))
+	for k := range f.kinds {
+		kd := &f.kinds[k]
+		kw[k] = make([]float64, len(f.edges)-1)
+		for b := range kw[k] {
+			v := (f.edges[b] + f.edges[b+1]) / 2
+			kw[k][b] = kd.p * kd.turbine.Curve.PowerKW(v*kd.s) * mwhPerKWYear
+		}
+	}
+	return f.overRose(speedFactor, kw)
+}
+
+// overRose takes the mean over the rose's time of each of several functions of speed, given at the
+// middles of the energy bins: by function, sector and speed node, linear between the nodes.
+func (f *field) overRose(speedFactor float64, value [][]float64) [][][]float64 {
 	n := len(f.nodes)
-	bySector := make([][][]float64, len(f.kinds)) // kind, sector, node
+	bySector := make([][][]float64, len(value)) // function, sector, node
 	for k := range bySector {
 		bySector[k] = make([][]float64, len(f.rose))
 		for s := range f.rose {
@@ -341,10 +360,6 @@ func (f *field) bySector(speedFactor float64) [][][]float64 {
 	}
 	bins := len(f.edges) - 1
 	node, t := make([]int, bins), make([]float64, bins)
-	kw := make([][]float64, len(f.kinds))
-	for k := range f.kinds {
-		kw[k] = make([]float64, bins)
-	}
 	for b := range bins {
 		v := (f.edges[b] + f.edges[b+1]) / 2
 		j := 0
@@ -355,10 +370,6 @@ func (f *field) bySector(speedFactor float64) [][][]float64 {
 			j++
 		}
 		node[b], t[b] = j, math.Max(0, math.Min(1, (v-f.nodes[j])/(f.nodes[j+1]-f.nodes[j])))
-		for k := range f.kinds {
-			kd := &f.kinds[k]
-			kw[k][b] = kd.p * kd.turbine.Curve.PowerKW(v*kd.s) * mwhPerKWYear
-		}
 	}
 	for s, sec := range f.rose {
 		if sec.FrequencyFrac == 0 {
@@ -371,8 +382,8 @@ func (f *field) bySector(speedFactor float64) [][][]float64 {
 			gLo := gHi
 			gHi = above(b + 1)
 			prob := sec.FrequencyFrac * (gLo - gHi)
-			for k := range f.kinds {
-				e := prob * kw[k][b]
+			for k := range value {
+				e := prob * value[k][b]
 				up := float64(e * t[b])
 				bySector[k][s][node[b]] += e - up
 				bySector[k][s][node[b]+1] += up
@@ -382,12 +393,25 @@ func (f *field) bySector(speedFactor float64) [][][]float64 {
 	return bySector
 }
 
+// timeFrac is the share of the year that belongs to the direction d.
+func (f *field) timeFrac(d int) float64 {
+	var sum float64
+	for _, sh := range f.shares[d] {
+		sum += float64(sh.frac * f.rose[sh.sector].FrequencyFrac)
+	}
+	return sum
+}
+
 // weights gives the free-stream energy (MWh/yr) of each kind by direction and speed node, when all
 // speeds are multiplied by speedFactor. Sum over a kind's weights is its energy alone.
 func (f *field) weights(speedFactor float64) [][][]float64 {
+	return f.byDirection(f.bySector(speedFactor))
+}
+
+// byDirection spreads what is given by sector over the directions.
+func (f *field) byDirection(bySector [][][]float64) [][][]float64 {
 	n := len(f.nodes)
-	bySector := f.bySector(speedFactor)
-	out := make([][][]float64, len(f.kinds))
+	out := make([][][]float64, len(bySector))
 	for k := range out {
 		out[k] = make([][]float64, len(f.shares))
 		for d, shares := range f.shares {
@@ -448,10 +472,15 @@ func (f *field) add(sum []float64, p pair, src row) {
 		}
 		return
 	}
+	// Below rated speed many machines keep their thrust, and with it the wake, from node to node.
+	var last, x2 float64
 	for i, ct := range src.ct {
 		if ct > 0 {
-			x := gaussian(ct, p.a+src.eps[i], p.b)
-			sum[i] += float64(x * x)
+			if ct != last {
+				x := gaussian(ct, p.a+src.eps[i], p.b)
+				last, x2 = ct, float64(x*x)
+			}
+			sum[i] += x2
 		}
 	}
 }
@@ -577,7 +606,7 @@ func WakeSpeeds(t Turbine, hubM float64, at []Position, set Settings, fromDeg, s
 		return nil, errors.New("no turbine positions")
 	}
 	f := &field{set: set, kStar: WakeGrowth(set.AmbientTIFrac), nodes: []float64{speedMPerS}}
-	if err := f.addKind(t, hubM, hubM, 0, ReferenceDensityKgPerM3); err != nil {
+	if err := f.addKind(t, hubM, hubM, Site{}, ReferenceDensityKgPerM3); err != nil {
 		return nil, err
 	}
 	s, c := math.Sincos(fromDeg * 2 * math.Pi / units.DegreesPerCircle)

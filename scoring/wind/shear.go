@@ -79,3 +79,26 @@ func (w Weibull) AtHeight(zrM, zM, alpha float64) (Weibull, error) {
 	a, err := PowerLaw(w.AMPerS, zrM, zM, alpha)
 	return Weibull{AMPerS: a, K: w.K}, err
 }
+
+// AtHeightLog carries the distribution from height zr to z (m) by the log law over a roughness length
+// z0 and a displacement d (m), see LogLaw: A scales as speed, k is kept.
+func (w Weibull) AtHeightLog(zrM, zM, z0M, dM float64) (Weibull, error) {
+	a, err := LogLaw(w.AMPerS, zrM, zM, z0M, dM)
+	return Weibull{AMPerS: a, K: w.K}, err
+}
+
+// atHeight carries a distribution from height zr to z by the site's law.
+func (s Site) atHeight(w Weibull, zrM, zM float64) (Weibull, error) {
+	if s.RoughnessM != 0 {
+		return w.AtHeightLog(zrM, zM, s.RoughnessM, s.DisplacementM)
+	}
+	return w.AtHeight(zrM, zM, s.ShearAlpha)
+}
+
+// speedFactor is the speed at height z per speed at height zr by the site's law.
+func (s Site) speedFactor(zrM, zM float64) (float64, error) {
+	if s.RoughnessM != 0 {
+		return LogLaw(1, zrM, zM, s.RoughnessM, s.DisplacementM)
+	}
+	return powerFactor(zrM, zM, s.ShearAlpha)
+}

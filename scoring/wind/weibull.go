@@ -171,18 +171,21 @@ func FitMaximumLikelihood(speedsMPerS []float64) (w Weibull, calmFrac float64, e
 		return Weibull{}, 0, err
 	}
 	var vMax, meanLn float64
-	for _, v := range vs {
+	ln := make([]float64, len(vs))
+	for i, v := range vs {
 		vMax = math.Max(vMax, v)
-		meanLn += math.Log(v)
+		ln[i] = math.Log(v)
+		meanLn += ln[i]
 	}
 	n := float64(len(vs))
 	meanLn /= n
 	// Speeds are scaled by the greatest so that v^k stays below 1 for every k searched.
+	lnMax := math.Log(vMax)
 	sums := func(k float64) (s0, s1 float64) {
-		for _, v := range vs {
-			p := math.Pow(v/vMax, k)
+		for _, l := range ln {
+			p := math.Exp(k * (l - lnMax))
 			s0 += p
-			s1 += float64(p * math.Log(v))
+			s1 += float64(p * l)
 		}
 		return s0, s1
 	}
