@@ -23,6 +23,12 @@ func (p XY) Finite() bool { return finite(p.X) && finite(p.Y) }
 // Finite reports whether both coordinates are finite numbers.
 func (p LonLat) Finite() bool { return finite(p.Lon) && finite(p.Lat) }
 
+// Rounded gives the position to seven decimals, about a centimetre, as RFC 7946 suggests for exchange; zeros have no sign.
+func (p LonLat) Rounded() LonLat {
+	const d = 1e7
+	return LonLat{Lon: math.Round(p.Lon*d)/d + 0, Lat: math.Round(p.Lat*d)/d + 0}
+}
+
 func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
 
 // Extent is an axis-parallel box in metres. The zero Extent is the point at the origin; start from

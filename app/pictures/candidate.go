@@ -104,14 +104,18 @@ func Wakes(w *run.WakeField, title, id string) chart.Wakes {
 	return out
 }
 
-// WakeModels tells the yield under each model of wakes; empty without two.
-func WakeModels(list []run.WakeModelYield) string {
-	if len(list) < 2 {
+// WakeModels sets the losses by the models of wakes side by side; empty without any.
+func WakeModels(models []run.WakeModelYield) string {
+	if len(models) == 0 {
 		return ""
 	}
-	var each []string
-	for _, m := range list {
-		each = append(each, fmt.Sprintf("%s %.1f %% (%.0f MWh/yr)", m.Model, 100*m.WakeLoss, m.NetMWh))
+	var losses []string
+	for _, m := range models {
+		losses = append(losses, fmt.Sprintf("%s %.1f %%", strings.ReplaceAll(m.Model, "_", " "), 100*m.WakeLoss))
 	}
-	return "Loss in wakes by model: " + strings.Join(each, ", ") + "; the first one counts."
+	words := "Wake loss: " + strings.Join(losses, ", ") + "."
+	if len(models) > 1 {
+		words += " The results use the first; how far the others lie from it shows how well wakes are known."
+	}
+	return words
 }

@@ -233,25 +233,28 @@ func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*Wind
 		at = append(at, q)
 	}
 	in.At = f.positions(here, at)
-	res, err := wind.FarmYear(in)
+	models, err := wind.CompareWakes(in)
 	if err != nil {
 		return nil, nil, err
 	}
-	rose, err := roseOf(p, res, hub, in.Site.ShearAlpha)
-	if err != nil {
-		return nil, nil, err
+	if models[0].Wake != in.Settings.Wake { // that of the results comes first
+		slices.Reverse(models)
 	}
-	atHub := make([]wind.Sector, len(p.sectors))
+	res := models[0].Year
+	time := 0.0
+	for _, sec := range p.sectors {
+		time += sec.FrequencyFrac
+	}
+	hubRose := make([]wind.Sector, len(p.sectors))
 	for i, sec := range p.sectors {
-		wb, err := sec.Weibull.AtHeight(p.heightM, hub, in.Site.ShearAlpha)
-		if err != nil {
+		hubRose[i].FrequencyFrac = sec.FrequencyFrac / time
+		if hubRose[i].Weibull, err = p.wind.AtHub(sec.Weibull, hub); err != nil {
 			return nil, nil, err
 		}
-		atHub[i] = wind.Sector{FrequencyFrac: rose.Sectors[i].Time, Weibull: wb}
 	}
-	view := &TurbineView{Curve: curveOver(in, res, atHub)}
-	if view.Models, err = bothModels(in, res); err != nil {
-		return nil, nil, err
+	view := &TurbineView{Curve: curveOver(in, res, hubRose)}
+	for _, m := range models {
+		view.Models = append(view.Models, WakeModelYield{wakeWords(m.Wake), m.WakeLossFrac, m.NetMWhPerYr})
 	}
 	rs, err := s.world.rulesFor(o, windPart)
 	if err != nil {
@@ -263,24 +266,19 @@ func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*Wind
 	}
 	to := f.turn(here)
 	view.Wakes, err = wakesAround(in, res, ringsOf(here.geom, to), ringsOf(g.Area, to))
-	return rose, view, err
+	return roseOf(p, res, hubRose), view, err
 }
 
-// roseOf brings the sectors of the data together with what they give.
-func roseOf(p windHere, res wind.FarmResult, hubM, alpha float64) (*WindRose, error) {
-	out := &WindRose{Sectors: make([]WindSector, len(p.sectors)), Even: p.typed || p.grid}
-	all, time := 0.0, 0.0
-	for i, x := range res.Sectors {
+// roseOf brings the sectors of the wind at hub height together with what they give.
+func roseOf(p windHere, res wind.FarmResult, hub []wind.Sector) *WindRose {
+	out := &WindRose{Sectors: make([]WindSector, len(hub)), Even: p.typed || p.grid}
+	all := 0.0
+	for _, x := range res.Sectors {
 		all += x.WakedMWhPerYr
-		time += p.sectors[i].FrequencyFrac
 	}
 	for i, x := range res.Sectors {
-		at, err := p.sectors[i].Weibull.AtHeight(p.heightM, hubM, alpha)
-		if err != nil {
-			return nil, err
-		}
 		o := &out.Sectors[i]
-		o.Time, o.SpeedMPerS = p.sectors[i].FrequencyFrac/time, at.Mean()
+		o.Time, o.SpeedMPerS = hub[i].FrequencyFrac, hub[i].Weibull.Mean()
 		if x.FreeMWhPerYr > 0 {
 			o.WakeLoss = math.Max(0, 1-x.WakedMWhPerYr/x.FreeMWhPerYr)
 		}
@@ -288,7 +286,7 @@ func roseOf(p windHere, res wind.FarmResult, hubM, alpha float64) (*WindRose, er
 			o.Energy = x.WakedMWhPerYr / all
 		}
 	}
-	return out, nil
+	return out
 }
 
 // WindDoubt is the spread of the wind part's yield, as shares of the energy.

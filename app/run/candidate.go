@@ -709,20 +709,14 @@ func (w *world) fitView(r fitResult, trackKm float64) (*Fit, error) {
 		if err != nil {
 			return nil, err
 		}
-		f.Turbines = append(f.Turbines, roundLL(ll))
+		f.Turbines = append(f.Turbines, ll.Rounded())
 	}
 	panels, err := w.frame.Unproject(r.Fence)
 	if err != nil {
 		return nil, err
 	}
-	f.Panels = geo.Map(panels, roundLL)
+	f.Panels = geo.Map(panels, geo.LonLat.Rounded)
 	return f, nil
-}
-
-// roundLL rounds to seven decimals, about a centimetre, as RFC 7946 suggests for exchange.
-func roundLL(p geo.LonLat) geo.LonLat {
-	const d = 1e7
-	return geo.LonLat{Lon: math.Round(p.Lon*d) / d, Lat: math.Round(p.Lat*d) / d}
 }
 
 // limit is a threshold that the user entered for a consequence.

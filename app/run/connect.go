@@ -352,7 +352,7 @@ func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []fl
 	if err != nil {
 		return nil, nil, err
 	}
-	if all, err = all.AtHeight(p.heightM, hub, p.alpha); err != nil {
+	if all, err = p.wind.AtHub(all, hub); err != nil {
 		return nil, nil, err
 	}
 	const step = 0.25 // m/s

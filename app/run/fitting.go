@@ -84,6 +84,7 @@ type fitter struct {
 	years     *sunYears
 	lies      map[string]lie               // by site
 	roughs    map[string]rough             // by site
+	winds     map[geo.XY]windHere          // between points
 	machines  map[string]wind.Turbine      // of the user, by name
 	stands    map[string]stand             // found, by option
 	nodes     map[geo.XY]betweenPoints     // of the lattice of sunlight
@@ -99,7 +100,7 @@ const latStep = 0.01
 func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	g := newKey("grid settings", 1)
 	w.gridSettingsKey(g)
-	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: (*sunYears)(nil).after(), lies: map[string]lie{}, roughs: map[string]rough{}, machines: map[string]wind.Turbine{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), windKey: windSettings(w.snap), assets: w.assets(), freshLies: map[string]lie{}}
+	f := &fitter{w: w, gridKey: g.sum(), climates: map[string]*solar.Climate{}, years: (*sunYears)(nil).after(), lies: map[string]lie{}, roughs: map[string]rough{}, winds: map[geo.XY]windHere{}, machines: map[string]wind.Turbine{}, stands: map[string]stand{}, nodes: map[geo.XY]betweenPoints{}, sunKey: sunSettings(w.snap), windKey: windSettings(w.snap), assets: w.assets(), freshLies: map[string]lie{}}
 	if w.terrain != nil {
 		f.wide = w.withHorizon(ctx, w.load).terrain
 	}
@@ -369,17 +370,13 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		r.Status, r.Reason = NotComputed, "plant_out_of_range"
 		return nil
 	}
-	el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
+	el, err := f.spacing(o, p, s)
+	if err != nil {
+		return err
+	}
 	near := wholeOf(f.near(s))
 	var in wind.FarmInput
 	if known {
-		from, even := prevailingDeg(p.sectors)
-		if even {
-			el = fit.Spacing{AlongM: 4 * d, AcrossM: 4 * d}
-		}
-		if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
-			return err
-		}
 		if in, err = f.farm(machine, hub, p, s); err != nil {
 			return err
 		}
@@ -486,6 +483,25 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	}
 	r.WindLong, err = f.windSigma(res.SpeedSensitivity, longTermYears)
 	return err
+}
+
+// spacing gives the distances that the turbines of an option keep from each other: along the wind that brings most
+// energy and across it, or evenly all round where no direction stands out.
+func (f *fitter) spacing(o option, p windHere, s site) (fit.Spacing, error) {
+	d, _ := o.num("rotor_diameter_m")
+	along, _ := o.num("spacing_along_d")
+	across, _ := o.num("spacing_across_d")
+	el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
+	if !p.known {
+		return el, nil
+	}
+	from, even := prevailingDeg(p.sectors)
+	if even {
+		el = fit.Spacing{AlongM: 4 * d, AcrossM: 4 * d}
+	}
+	var err error
+	el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from)
+	return el, err
 }
 
 // longTermYears is the span over which the long-term mean evens the variation between years out.
@@ -732,22 +748,13 @@ func rectangle(x geo.Extent) geo.XYGeometry {
 func (f *fitter) totals(e *overlay.Engine, o option, s site, r *fitResult) error {
 	var all []geo.XYGeometry
 	if len(r.Turbines) > 0 {
-		d, _ := o.num("rotor_diameter_m")
-		along, _ := o.num("spacing_along_d")
-		across, _ := o.num("spacing_across_d")
-		el := fit.Spacing{AlongM: along * d, AcrossM: across * d}
 		p, err := f.windAt(o, s)
 		if err != nil {
 			return err
 		}
-		if p.known {
-			from, even := prevailingDeg(p.sectors)
-			if even {
-				el = fit.Spacing{AlongM: 4 * d, AcrossM: 4 * d}
-			}
-			if el.AzimuthDeg, err = f.w.frame.GridAzimuthDeg(s.box.Centre(), from); err != nil {
-				return err
-			}
+		el, err := f.spacing(o, p, s)
+		if err != nil {
+			return err
 		}
 		var ellipses []geo.XYGeometry
 		for _, p := range r.Turbines {

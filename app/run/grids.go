@@ -271,9 +271,9 @@ type windHere struct {
 	used   int     // points that have a say
 	known  bool
 	grid   bool
-	why    string  // the wind is not known
-	source string  // for people; empty where the study has no grids of wind
-	alpha  float64 // exponent from the height of the data to the hub
+	why    string    // the wind is not known
+	source string    // for people; empty where the study has no grids of wind
+	wind   wind.Site // as the wind engine takes it, but for the height of the ground
 }
 
 // windAt gives the wind that serves a part of an option on a site, with what carries it to hub height.
@@ -350,7 +350,7 @@ func (f *fitter) windFrom(o option, s site) (windHere, error) {
 		return windHere{why: voids}, nil
 	}
 	var out windHere
-	out.windPoint, out.distM, out.used = windBetween(f.wind, s.box.Centre())
+	out.windPoint, out.distM, out.used = f.windNear(s.box.Centre())
 	out.known = out.used > 0
 	apart := trimmed(outside + unread)
 	switch {

@@ -7,7 +7,6 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
-	"reflect"
 	"runtime"
 	"slices"
 	"sort"
@@ -106,8 +105,7 @@ func (e *Engine) Reweigh(ctx context.Context, snap *study.Snapshot, prev *Result
 // OnlyWeighing reports whether two states of a study differ at most in what weighing alone reads: voices,
 // ends of value scales, weight mixes, gates, the study's own titles.
 func OnlyWeighing(a, b *study.Snapshot) bool {
-	if !reflect.DeepEqual(a.Layers, b.Layers) || !reflect.DeepEqual(a.Groups, b.Groups) || !reflect.DeepEqual(a.Frame, b.Frame) ||
-		!reflect.DeepEqual(a.Layouts(), b.Layouts()) || !reflect.DeepEqual(a.Turbines(), b.Turbines()) {
+	if !study.SameButSettings(a, b) {
 		return false
 	}
 	weighing := func(key string) bool {

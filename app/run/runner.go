@@ -27,7 +27,6 @@ type runner struct {
 	settled  map[digest]int // and by what their last steps read
 
 	plans    []plan
-	assets   []asset
 	machines string                    // what is known of machines, as a digest
 	layers   map[string]*overlay.Layer // widened once for all rulesets
 	ready    map[*ruleset]bool
@@ -76,7 +75,6 @@ func (r *runner) makePlans(ctx context.Context) error {
 	for _, k := range w.gridKeys {
 		r.wanted[gridStep][k] = true
 	}
-	r.assets = w.assets()
 	known := newKey("machines", 1)
 	for _, m := range w.machines() {
 		known.text(m.ID)
@@ -493,7 +491,7 @@ func (r *runner) site(ctx context.Context, e *overlay.Engine, b *batch, s int) (
 				return out, err
 			}
 		}
-		c, err := r.k.candidate(e, w, around, r.f, r.assets, p.o, here, parts, p.sets, fitted)
+		c, err := r.k.candidate(e, w, around, r.f, r.f.assets, p.o, here, parts, p.sets, fitted)
 		if err != nil {
 			return out, err
 		}

@@ -17,8 +17,8 @@ import (
 )
 
 // CheckSetting reports whether a study can mean a value of a setting: the key has a definition, the names
-// in it are there, the value is possible. An error is a *study.UnknownKeyError or a *study.ValueError.
-func CheckSetting(cat *study.Catalog, p *Params, key, value string) error {
+// in it are there, the value is possible; own are the study's own turbines. An error is a *study.UnknownKeyError or a *study.ValueError.
+func CheckSetting(cat *study.Catalog, p *Params, key, value string, own ...study.OwnTurbine) error {
 	def, ok := cat.Definition(key)
 	if !ok {
 		return &study.UnknownKeyError{Key: key, Nearest: cat.Nearest(key)}
@@ -33,7 +33,17 @@ func CheckSetting(cat *study.Catalog, p *Params, key, value string) error {
 		return nil
 	}
 	if strings.HasPrefix(key, "plant.") && strings.HasSuffix(key, ".turbine") && !slices.Contains(p.TurbineIDs(), value) {
-		return bad("there is no reference curve %q; the curves are: %s", value, strings.Join(p.TurbineIDs(), ", "))
+		var names []string
+		for _, t := range own {
+			names = append(names, t.ID)
+		}
+		switch {
+		case slices.Contains(names, value):
+		case len(names) > 0:
+			return bad("there is no reference curve %q; the curves are: %s; the study's own are: %s", value, strings.Join(p.TurbineIDs(), ", "), strings.Join(names, ", "))
+		default:
+			return bad("there is no reference curve %q; the curves are: %s", value, strings.Join(p.TurbineIDs(), ", "))
+		}
 	}
 	form := func() error {
 		if _, err := def.CheckValue(value); err != nil {

@@ -244,25 +244,14 @@ func wakesAround(in wind.FarmInput, res wind.FarmResult, siteRings, groundRings 
 	return out, err
 }
 
-// bothModels gives the yield under each model of wakes, the one of the results first.
-func bothModels(in wind.FarmInput, res wind.FarmResult) ([]WakeModelYield, error) {
-	words := map[wind.WakeModel]string{}
-	for name, m := range wakeModels {
-		words[m] = name
-	}
-	out := []WakeModelYield{{words[in.Settings.Wake], res.WakeLossFrac, res.NetMWhPerYr}}
-	for _, m := range []wind.WakeModel{wind.WakeGaussian, wind.WakeJensen} {
-		if m == in.Settings.Wake {
-			continue
+// wakeWords names a model of wakes as the setting does.
+func wakeWords(m wind.WakeModel) string {
+	for words, one := range wakeModels {
+		if one == m {
+			return words
 		}
-		in.Settings.Wake = m
-		other, err := wind.FarmYear(in)
-		if err != nil {
-			return nil, err
-		}
-		out = append(out, WakeModelYield{words[m], other.WakeLossFrac, other.NetMWhPerYr})
 	}
-	return out, nil
+	return m.String()
 }
 
 // ringsOf gives the rings of polygons through a change of coordinates.

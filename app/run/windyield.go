@@ -45,13 +45,15 @@ func settingsOf(snap *study.Snapshot, name string, begin ...string) string {
 
 // farm gives a plant's turbines to the wind engine, but for their places and neighbours.
 func (f *fitter) farm(machine wind.Turbine, hubM float64, p windHere, s site) (wind.FarmInput, error) {
-	height, known, err := f.w.heightM(s.box.Centre())
-	if err != nil {
+	in := p.wind
+	var known bool
+	var err error
+	if in.ElevationM, known, err = f.w.heightM(s.box.Centre()); err != nil {
 		return wind.FarmInput{}, err
 	}
 	if !known {
 		// Sea level unless a height is typed, which the notices say.
-		height, _ = f.w.snap.Number("wind.typed_elevation_m")
+		in.ElevationM, _ = f.w.snap.Number("wind.typed_elevation_m")
 	}
 	set, err := f.wakeSettings()
 	if err != nil {
@@ -62,7 +64,7 @@ func (f *fitter) farm(machine wind.Turbine, hubM float64, p windHere, s site) (w
 		return wind.FarmInput{}, err
 	}
 	return wind.FarmInput{
-		Site:    wind.Site{Rose: p.sectors, RefHeightM: p.heightM, ShearAlpha: p.alpha, ElevationM: height},
+		Site:    in,
 		Turbine: machine, HubHeightM: hubM, Settings: set, Losses: losses,
 	}, nil
 }
@@ -154,6 +156,20 @@ func windBetween(points []windPoint, at geo.XY) (p windPoint, distM float64, use
 		p.sectors[n] = wind.Sector{FrequencyFrac: time, Weibull: wb}
 	}
 	return p, distM, len(near)
+}
+
+// windNear is windBetween, found once for a place.
+func (f *fitter) windNear(at geo.XY) (p windPoint, distM float64, used int) {
+	f.mu.Lock()
+	one, done := f.winds[at]
+	f.mu.Unlock()
+	if !done {
+		one.windPoint, one.distM, one.used = windBetween(f.wind, at)
+		f.mu.Lock()
+		f.winds[at] = one
+		f.mu.Unlock()
+	}
+	return one.windPoint, one.distM, one.used
 }
 
 // served says in words which points serve a place.
@@ -286,31 +302,25 @@ func (w *world) coverAt(ls []*layer, p geo.XY, buf *[]int) float64 {
 	return 0
 }
 
-// withShear finds the exponent that carries the wind from its height to the hub: the one that is set, or the one that
-// does what the logarithmic law does between these heights over the ground around the site.
+// withShear adds the law that carries the wind from its height to the hub.
 func (f *fitter) withShear(p windHere, hubM float64, s site) (windHere, error) {
+	p.wind = wind.Site{Rose: p.sectors, RefHeightM: p.heightM}
 	if !f.byLog() {
 		alpha, ok := f.w.snap.Number("wind.shear_alpha")
 		if !ok {
 			return p, errors.New("wind.shear_alpha is not set")
 		}
-		p.alpha = alpha
+		p.wind.ShearAlpha = alpha
 		return p, nil
 	}
 	r := f.roughness(s)
 	if !r.known {
 		return windHere{why: "not_set:wind.roughness_m"}, nil
 	}
-	d, _ := f.w.snap.Number("wind.displacement_m")
-	up, err := wind.LogLaw(1, p.heightM, hubM, r.z0M, d)
-	if err != nil {
+	p.wind.RoughnessM = r.z0M
+	p.wind.DisplacementM, _ = f.w.snap.Number("wind.displacement_m")
+	if _, err := wind.LogLaw(1, p.heightM, hubM, r.z0M, p.wind.DisplacementM); err != nil {
 		return windHere{why: fmt.Sprintf("the logarithmic law does not hold from %g m to %g m over %s: %v", p.heightM, hubM, r.source, err)}, nil
-	}
-	if p.alpha, err = wind.AlphaFromSpeeds(1, p.heightM, up, hubM); err != nil {
-		// At the height of the data only machines of others, on other hubs, are carried.
-		if p.alpha, err = wind.AlphaFromRoughness(p.heightM, hubM, r.z0M); err != nil {
-			return p, siteError(s, err)
-		}
 	}
 	p.source = strings.TrimPrefix(p.source+"; carried to hub height by the logarithmic law over "+r.source, "; ")
 	return p, nil

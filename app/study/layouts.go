@@ -10,6 +10,7 @@ import (
 
 	"groundtally/geo"
 	"groundtally/geo/measure"
+	"groundtally/scoring/units"
 )
 
 // LayoutRecord is the kind of the records of turbines placed by hand.
@@ -130,8 +131,7 @@ func (h HandLayout) tidy(site []geo.LonLatGeometry) (HandLayout, error) {
 		if math.IsNaN(p.Lon+p.Lat) || math.IsInf(p.Lon+p.Lat, 0) || math.Abs(p.Lon) > 180 || math.Abs(p.Lat) > 90 {
 			return bad("turbine %d: %g,%g is no position in degrees; longitude comes first", i+1, p.Lon, p.Lat)
 		}
-		// Adding zero drops the sign of negative zero.
-		p = geo.LonLat{Lon: math.Round(p.Lon*1e7)/1e7 + 0, Lat: math.Round(p.Lat*1e7)/1e7 + 0}
+		p = p.Rounded()
 		if j, twice := seen[p]; twice {
 			return bad("turbines %d and %d stand at the same place, %.7f,%.7f", j, i+1, p.Lon, p.Lat)
 		}
@@ -148,20 +148,16 @@ func (h HandLayout) tidy(site []geo.LonLatGeometry) (HandLayout, error) {
 func kmFrom(p geo.LonLat, shapes []geo.LonLatGeometry) float64 {
 	lo, hi := geo.LonLat{Lon: math.Inf(1), Lat: math.Inf(1)}, geo.LonLat{Lon: math.Inf(-1), Lat: math.Inf(-1)}
 	for _, g := range shapes {
-		for _, part := range g.Parts {
-			for _, ring := range part {
-				for _, q := range ring {
-					lo = geo.LonLat{Lon: math.Min(lo.Lon, q.Lon), Lat: math.Min(lo.Lat, q.Lat)}
-					hi = geo.LonLat{Lon: math.Max(hi.Lon, q.Lon), Lat: math.Max(hi.Lat, q.Lat)}
-				}
-			}
-		}
+		g.Each(func(q geo.LonLat) {
+			lo = geo.LonLat{Lon: math.Min(lo.Lon, q.Lon), Lat: math.Min(lo.Lat, q.Lat)}
+			hi = geo.LonLat{Lon: math.Max(hi.Lon, q.Lon), Lat: math.Max(hi.Lat, q.Lat)}
+		})
 	}
 	if lo.Lon > hi.Lon {
 		return 0
 	}
 	near := geo.LonLat{Lon: math.Min(math.Max(p.Lon, lo.Lon), hi.Lon), Lat: math.Min(math.Max(p.Lat, lo.Lat), hi.Lat)}
-	return measure.RoughDistanceM(p, near) / 1000
+	return measure.RoughDistanceM(p, near) / units.MPerKm
 }
 
 // PutLayout places the turbines of a plant option on a site by hand, in the place of a layout by hand that was

@@ -269,7 +269,12 @@ func (s *Study) Undoable() (undo, redo string) {
 // SameInputs reports whether two states hold the same settings, layers, groups, turbines of the user's own and
 // layouts by hand, so that the same results follow from both.
 func SameInputs(a, b *Snapshot) bool {
-	return a == b || reflect.DeepEqual(a.Explicit, b.Explicit) && reflect.DeepEqual(a.Layers, b.Layers) && reflect.DeepEqual(a.Groups, b.Groups) && reflect.DeepEqual(a.Frame, b.Frame) && reflect.DeepEqual(a.turbines, b.turbines) && reflect.DeepEqual(a.layouts, b.layouts)
+	return a == b || reflect.DeepEqual(a.Explicit, b.Explicit) && SameButSettings(a, b)
+}
+
+// SameButSettings is SameInputs for all but the settings.
+func SameButSettings(a, b *Snapshot) bool {
+	return reflect.DeepEqual(a.Layers, b.Layers) && reflect.DeepEqual(a.Groups, b.Groups) && reflect.DeepEqual(a.Frame, b.Frame) && reflect.DeepEqual(a.turbines, b.turbines) && reflect.DeepEqual(a.layouts, b.layouts)
 }
 
 // stacks gives the entries in force and those taken back, last one last. An undo or redo moves the entry

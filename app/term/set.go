@@ -1,7 +1,6 @@
 package term
 
 import (
-	"errors"
 	"fmt"
 	"slices"
 	"strings"
@@ -46,29 +45,25 @@ var verbSet = verb{
 			return 0, usagef("usage: gtally %s, or gtally set STUDY.gpkg KEY --default", c.verb.usage)
 		}
 		e := study.SettingEdit{Key: c.args.places[1], Source: c.args.get("source"), Reason: c.args.get("reason"), AcceptedBy: c.args.get("accepted-by")}
-		var noCurve error // told once the study is open, since it may have a curve of its own
 		if len(c.args.places) == 3 {
 			if e.Value = strings.TrimSpace(c.args.places[2]); e.Value == "" {
 				return 0, usagef("an empty value is none; to take a setting out say gtally set STUDY.gpkg %s --default", e.Key)
 			}
-			if err := run.CheckSetting(c.Catalog, c.Params, e.Key, e.Value); err != nil && curveKey(e.Key) {
-				noCurve = err
-			} else if err != nil {
-				return 0, err
-			}
 		}
 		return c.with(func(s *study.Study) (int, error) {
 			load := run.StoreLoader(s.Store())
-			if e.Value != "" && e.Value != study.NotSetText {
+			if e.Value != "" {
 				now, err := s.Snapshot()
 				if err != nil {
 					return 0, err
 				}
-				if _, own := now.Turbine(e.Value); noCurve != nil && !own {
-					return 0, withOwn(noCurve, now)
-				}
-				if err := run.CheckException(c.ctx, load, now, e.Key); err != nil {
+				if err := run.CheckSetting(c.Catalog, c.Params, e.Key, e.Value, now.Turbines()...); err != nil {
 					return 0, err
+				}
+				if e.Value != study.NotSetText {
+					if err := run.CheckException(c.ctx, load, now, e.Key); err != nil {
+						return 0, err
+					}
 				}
 			}
 			entry, err := s.Set(c.ctx, "set", e.Reason, e)
@@ -99,24 +94,6 @@ var verbSet = verb{
 			return ExitDone, nil
 		})
 	},
-}
-
-// curveKey tells whether a setting names the power curve of a plant option.
-func curveKey(key string) bool {
-	return strings.HasPrefix(key, "plant.") && strings.HasSuffix(key, ".turbine")
-}
-
-// withOwn adds the study's own turbines to an error that lists the curves there are.
-func withOwn(err error, snap *study.Snapshot) error {
-	var value *study.ValueError
-	var names []string
-	for _, t := range snap.Turbines() {
-		names = append(names, t.ID)
-	}
-	if !errors.As(err, &value) || len(names) == 0 {
-		return err
-	}
-	return &study.ValueError{Key: value.Key, Err: fmt.Errorf("%w; the study's own are: %s", value.Err, strings.Join(names, ", "))}
 }
 
 // rulePlant gives the plant name at the end of a rule's key.

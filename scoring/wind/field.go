@@ -186,7 +186,7 @@ func hubRose(site Site, hubM float64) ([]Sector, error) {
 		if err := s.Weibull.Check(); err != nil {
 			return nil, fmt.Errorf("sector %d: %w", i, err)
 		}
-		w, err := site.atHeight(s.Weibull, site.RefHeightM, hubM)
+		w, err := site.AtHub(s.Weibull, hubM)
 		if err != nil {
 			return nil, err
 		}

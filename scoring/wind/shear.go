@@ -87,12 +87,13 @@ func (w Weibull) AtHeightLog(zrM, zM, z0M, dM float64) (Weibull, error) {
 	return Weibull{AMPerS: a, K: w.K}, err
 }
 
-// atHeight carries a distribution from height zr to z by the site's law.
-func (s Site) atHeight(w Weibull, zrM, zM float64) (Weibull, error) {
+// AtHub carries one of the rose's distributions to hub height (m) by the site's law. Errors are those of AtHeight, or
+// of AtHeightLog where the roughness is given.
+func (s Site) AtHub(w Weibull, hubM float64) (Weibull, error) {
 	if s.RoughnessM != 0 {
-		return w.AtHeightLog(zrM, zM, s.RoughnessM, s.DisplacementM)
+		return w.AtHeightLog(s.RefHeightM, hubM, s.RoughnessM, s.DisplacementM)
 	}
-	return w.AtHeight(zrM, zM, s.ShearAlpha)
+	return w.AtHeight(s.RefHeightM, hubM, s.ShearAlpha)
 }
 
 // speedFactor is the speed at height z per speed at height zr by the site's law.

@@ -480,7 +480,7 @@ func (c *Core) Set(what, reason string, edits ...study.SettingEdit) {
 		if e.Value == "" {
 			continue
 		}
-		if err := run.CheckSetting(c.Parts.Catalog, c.Parts.Params, e.Key, e.Value); err != nil {
+		if err := run.CheckSetting(c.Parts.Catalog, c.Parts.Params, e.Key, e.Value, c.view.Snap.Turbines()...); err != nil {
 			c.Fail(what, err)
 			return
 		}

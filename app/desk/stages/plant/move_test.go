@@ -12,6 +12,7 @@ import (
 	"groundtally/app/desk/desktest"
 	"groundtally/app/desk/mapview"
 	"groundtally/app/draw/tiles"
+	"groundtally/app/pictures"
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -284,7 +285,7 @@ func TestLayoutWords(t *testing.T) {
 			t.Errorf("%q, want %q", got, want)
 		}
 	}
-	if got := modelWords([]run.WakeModelYield{{Model: "Gaussian", WakeLoss: 0.0812}, {Model: "top hat", WakeLoss: 0.074}}); !strings.HasPrefix(got, "Wake loss: Gaussian 8.1 %, top hat 7.4 %.") {
+	if got := pictures.WakeModels([]run.WakeModelYield{{Model: "Gaussian", WakeLoss: 0.0812}, {Model: "top hat", WakeLoss: 0.074}}); !strings.HasPrefix(got, "Wake loss: Gaussian 8.1 %, top hat 7.4 %.") {
 		t.Errorf("%q", got)
 	}
 }

@@ -83,7 +83,7 @@ func (a *asking) commit() {
 	edits, err := a.edits()
 	for _, e := range edits {
 		if err == nil {
-			err = run.CheckSetting(a.s.core.Parts.Catalog, a.s.core.Parts.Params, e.Key, e.Value)
+			err = run.CheckSetting(a.s.core.Parts.Catalog, a.s.core.Parts.Params, e.Key, e.Value, a.s.core.View().Snap.Turbines()...)
 		}
 	}
 	if err != nil {

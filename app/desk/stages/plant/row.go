@@ -273,7 +273,7 @@ func (r *row) commit() {
 		r.s.grown()
 		return
 	}
-	if err := run.CheckSetting(r.s.core.Parts.Catalog, r.s.core.Parts.Params, r.key, text); err != nil {
+	if err := run.CheckSetting(r.s.core.Parts.Catalog, r.s.core.Parts.Params, r.key, text, r.s.core.View().Snap.Turbines()...); err != nil {
 		r.refuse(err)
 		r.s.grown()
 		return

@@ -511,6 +511,9 @@ func (f *settings) choices(name, technology string) []choice {
 		for _, t := range f.s.core.Parts.Params.Turbines {
 			out = append(out, choice{t.ID, t.Name})
 		}
+		for _, t := range f.s.core.View().Snap.Turbines() {
+			out = append(out, choice{t.ID, t.Called() + " (of this study)"})
+		}
 	}
 	return out
 }

@@ -4,7 +4,6 @@ import (
 	"cmp"
 	"fmt"
 	"math"
-	"strings"
 
 	"fyne.io/fyne/v2"
 	"fyne.io/fyne/v2/container"
@@ -12,6 +11,7 @@ import (
 
 	"groundtally/app/desk/chartview"
 	"groundtally/app/desk/widgets"
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 )
@@ -64,7 +64,7 @@ func (t *turbines) course(c *run.Candidate, course *run.Course) {
 	}
 	curve, lee, models := curveOf(c, course), wakesOf(c, course), ""
 	if v := viewOf(course); v != nil {
-		models = modelWords(v.Models)
+		models = pictures.WakeModels(v.Models)
 	}
 	t.models.SetText(models)
 	visible(t.room, models != "")
@@ -157,20 +157,4 @@ func brokenWords(b run.Broken) string {
 		return who + ": its rotor could touch that of " + another
 	}
 	return who + ": " + present.Rule(b.Rule) + " is not kept"
-}
-
-// modelWords sets the losses by the models of wakes side by side.
-func modelWords(models []run.WakeModelYield) string {
-	if len(models) == 0 {
-		return ""
-	}
-	var losses []string
-	for _, m := range models {
-		losses = append(losses, fmt.Sprintf("%s %.1f %%", strings.ReplaceAll(m.Model, "_", " "), 100*m.WakeLoss))
-	}
-	words := "Wake loss: " + strings.Join(losses, ", ") + "."
-	if len(models) > 1 {
-		words += " The results use the first; how far the others lie from it shows how well wakes are known."
-	}
-	return words
 }
