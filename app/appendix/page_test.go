@@ -534,3 +534,103 @@ func TestComparingPictures(t *testing.T) {
 		t.Errorf("%d clouds are drawn", got)
 	}
 }
+
+// section is what the page says of an unfolded candidate; empty where it is not unfolded.
+func section(html, id string) string {
+	for _, head := range []string{`<h3 id="`, `<details id="`} {
+		if _, rest, ok := strings.Cut(html, head+template.HTMLEscapeString(id)+`"`); ok {
+			end := len(rest)
+			for _, next := range []string{`<h3 id="`, `<details id="`, `<h2 `} {
+				if i := strings.Index(rest, next); i >= 0 {
+					end = min(end, i)
+				}
+			}
+			return rest[:end]
+		}
+	}
+	return ""
+}
+
+// Every unfolded candidate with turbines says how they came to stand where they stand, below the map of its
+// wakes where there is one; nothing else does.
+func TestLayoutsAreTold(t *testing.T) {
+	const heading, curve, wakes, month = "<p>Layout of the turbines:</p>", "Column chart: power of a turbine", "Map: wakes of ", "Column chart: energy of "
+	in := input(t)
+	html := page(t, in)
+	told, without := 0, 0
+	for i := range in.Results.Candidates {
+		c := &in.Results.Candidates[i]
+		part := section(html, c.ID())
+		switch {
+		case part == "":
+		case c.Fit == nil || len(c.Fit.Turbines) == 0:
+			without++
+			if strings.Contains(part, heading) {
+				t.Errorf("%s has no turbines and tells of their layout", c.ID())
+			}
+		default:
+			told++
+			if how := "<li>Found by: " + c.Fit.Layout.How + ".</li>"; c.Fit.Layout.How == "" || strings.Count(part, heading) != 1 || !strings.Contains(part, how) {
+				t.Errorf("%s does not say %q once", c.ID(), how)
+			}
+			if bound := strings.Contains(part, "below the bound of"); bound != (len(c.Fit.Turbines) > 1) {
+				t.Errorf("%s has %d turbines; bound told: %t", c.ID(), len(c.Fit.Turbines), bound)
+			}
+		}
+	}
+	if told == 0 || without == 0 || told != strings.Count(html, heading) {
+		t.Fatalf("%d unfolded candidates have turbines, %d have none, and %d layouts are told", told, without, strings.Count(html, heading))
+	}
+
+	results := *in.Results
+	results.Candidates = append([]run.Candidate(nil), results.Candidates...)
+	in.Results = &results
+	layouts := []struct {
+		layout run.Layout
+		want   []string
+	}{
+		{run.Layout{How: "square lattice", MostByRule: 8, MostBy: "cover by rectangles", SpacingMet: 1.02, BoundMWh: 80000, WakedMWh: 76000, Asked: 12, AskedBy: "usual limit"}, []string{
+			"<li>Found by: square lattice.</li>", "<li>Most that the spacing allows: 8 at most (cover by rectangles).</li>", "<li>Wanted at most: 12 (the usual limit).</li>",
+			"<li>The two nearest to each other stand at 1.02 times the distance of the spacing rule.</li>",
+			"<li>Energy behind wakes: 5.0 % below the bound of 80 000 MWh a year (8 turbines without any wake), before losses.</li>",
+		}},
+		{run.Layout{How: "by hand", Reason: markupText, SpacingMet: 0.9, Broken: []run.Broken{{Turbine: 2, Rule: "too_near", Other: 1, ByM: 12}, {Turbine: 2, Rule: "outside_site", ByM: 7}}}, []string{
+			"<li>Placed by hand: " + template.HTMLEscapeString(markupText) + "</li>", "<li>The two nearest to each other stand at 0.90 times the distance of the spacing rule.</li>",
+			`<li class="over">Turbine 2 stands 12 m nearer to turbine 1 than the spacing allows</li>`, `<li class="over">Turbine 2 stands 7 m outside the site</li>`,
+		}},
+	}
+	in.Course = func(*run.Candidate) (*run.Course, error) {
+		return &run.Course{Turbines: &run.TurbineView{Curve: &run.WindCurve{RatedKW: 3370}, Wakes: &run.WakeField{Columns: 1, Rows: 1, StepM: 50, Lost: []float64{0.1}}}}, nil
+	}
+	for _, l := range layouts {
+		for i := range results.Candidates {
+			if c := &results.Candidates[i]; c.Fit != nil && c.Fit.Layout != nil {
+				fit := *c.Fit
+				fit.Turbines, fit.Layout = make([]geo.LonLat, 2), &l.layout
+				c.Fit = &fit
+			}
+		}
+		html := page(t, in)
+		drawn, others := 0, 0
+		for i := range results.Candidates {
+			c := &results.Candidates[i]
+			part := section(html, c.ID())
+			if part == "" || c.Fit == nil || c.Fit.Layout == nil {
+				continue
+			}
+			before, list, _ := strings.Cut(part, heading)
+			list, _, _ = strings.Cut(list, "</ul>")
+			if got, want := strings.TrimPrefix(list, `<ul class="small">`), strings.Join(l.want, ""); got != want {
+				t.Errorf("%s tells of its layout\n%s\nwant\n%s", c.ID(), got, want)
+			}
+			if !strings.Contains(part, month) {
+				others++
+			} else if drawn++; !strings.Contains(before, wakes) || !strings.Contains(before, curve) || strings.Contains(list, "<svg") {
+				t.Errorf("the layout of %s does not stand below its wakes", c.ID())
+			}
+		}
+		if drawn == 0 || others == 0 {
+			t.Fatalf("%d layouts stand below wakes, %d without", drawn, others)
+		}
+	}
+}

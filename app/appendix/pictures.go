@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"html/template"
 	"strconv"
+	"strings"
 	"time"
 
 	"groundtally/app/draw"
@@ -141,7 +142,7 @@ func (b *book) months(c *run.Candidate, title, id string) (*monthsView, error) {
 			picture(chart.WakeMap(pictures.Wakes(v.Wakes, "Map: wakes of "+title, id+"-wakes"), draw.Light(), halfWidth))
 		out.Models = pictures.WakeModels(v.Models)
 	}
-	out.Sky, out.Spread = pictures.SkySpread(course.Sky), pictures.Spread(course.Doubt)+pictures.WindSpread(course.Wind)
+	out.Sky, out.Spread = pictures.SkySpread(course.Sky), strings.TrimSpace(pictures.Spread(course.Doubt)+pictures.WindSpread(course.Wind)+" "+pictures.Together(c.Connection))
 	for m, v := range course.Months {
 		row := monthView{Month: time.Month(m + 1).String(), MWh: v.State.String()}
 		if v.OK() {

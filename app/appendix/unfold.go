@@ -6,6 +6,7 @@ import (
 	"strconv"
 	"strings"
 
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/scoring"
@@ -15,6 +16,7 @@ import (
 type unfolded struct {
 	ID, Title, FirstFor string
 	Fit, Grid           string
+	Layout, Broken      []string // how its turbines came to stand, and the rules they break
 	Taken               []takenView
 	Chain               []chainView
 	ChainTitle          string
@@ -148,6 +150,7 @@ func (b *book) unfold(c *run.Candidate) unfolded {
 		}
 		u.Fit = strings.Join(append(parts, fmt.Sprintf("%.2f km of new track", f.TrackKm)), "; ")
 	}
+	u.Layout, u.Broken = pictures.Layout(c.Fit)
 	u.Grid = "unknown: " + present.Reason("no_connection")
 	if n := c.Connection; n != nil {
 		u.Grid = fmt.Sprintf("%s (%s, %g kV), %s", n.Asset, present.Named(n.Kind), n.VoltageKV, present.Named(n.Status))

@@ -684,6 +684,9 @@ func (p *picture) mark() {
 		m := tiles.Mark{Letter: core.Letter(i), Parcels: cand.Parcels}
 		if f := cand.Fit; f != nil {
 			m.Turbines = f.Turbines
+			if !f.Tracks.Empty() {
+				m.Tracks = []geo.LonLatGeometry{f.Tracks}
+			}
 			if !f.Panels.Empty() {
 				m.Panels = []geo.LonLatGeometry{f.Panels}
 			}

@@ -1,2 +1,3 @@
-// Package pictures turns candidates into the charts that window and appendix share.
+// Package pictures turns candidates into the charts, and the words on them, that window, appendix and terminal
+// share.
 package pictures

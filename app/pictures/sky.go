@@ -5,9 +5,9 @@ import (
 	"math"
 	"strings"
 
+	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/scoring/solar"
-	"groundtally/scoring/wind"
 )
 
 // SkySpread tells what each model of the sky gives, and how far they lie apart; empty without models.
@@ -84,11 +84,27 @@ func WindSpread(d *run.WindDoubt) string {
 	if !d.Said {
 		source += ", taken because its source is not stated"
 	}
-	var reached []string
-	for _, o := range odds {
-		if x, err := wind.Exceedance(100, d.OneYear, o.p); err == nil {
-			reached = append(reached, fmt.Sprintf("%s %.0f %%", o.name, x))
+	var each, long, single []string
+	for _, p := range d.Parts {
+		words := fmt.Sprintf("%s %.1f", p.Title, 100*p.Energy)
+		if !p.Shared {
+			words += " (of this site alone)"
 		}
+		each = append(each, words)
 	}
-	return fmt.Sprintf("How sure the wind yield is, standard deviations in %%: wind, flow over the land, wakes, curve and losses together %.1f (%s). From one year to another %.1f, apart from these: %.1f of the mean speed, and %.2f %% of energy for each per cent of speed. Of the middle value (P50) a single year reaches %s. In the long run plants gave %+.0f %% against such forecasts (Hammond et al. 2026, Wind Energy Science 11:1251); the yearly energy with that bias taken off stands beside.", 100*d.Model, source, 100*d.BetweenYears, 100*d.YearSpeed, d.Sensitivity, strings.Join(reached, ", "), 100*d.Bias)
+	for _, e := range d.Exceeded {
+		name := fmt.Sprintf("P%.0f", 100*e.ProbabilityFrac)
+		long = append(long, name+" "+mwh(e.LongTermMWhPerYr))
+		single = append(single, name+" "+mwh(e.SingleYearMWhPerYr))
+	}
+	text := fmt.Sprintf("How sure the wind yield is (%s), standard deviations in %% of the energy: %s; together %.1f, where %.0f to %.0f are usual for such data. From one year to another %.1f, apart from these: %.1f of the mean speed, and %.2f %% of energy for each per cent of speed. What is not of this site alone is common to all sites, and hardly changes their order. ",
+		source, strings.Join(each, ", "), 100*d.LongTerm, 100*d.Band[0], 100*d.Band[1], 100*d.BetweenYears, 100*d.YearSpeed, d.Sensitivity)
+	text += fmt.Sprintf("The mean of many years reaches, in MWh/yr: %s. A single year: %s; normal errors. In the long run plants gave %+.0f %% against such forecasts (Hammond et al. 2026, Wind Energy Science 11:1251); the yearly energy with that bias taken off stands beside.",
+		strings.Join(long, ", "), strings.Join(single, ", "), 100*d.Bias)
+	if d.HoursMWh > 0 {
+		text += fmt.Sprintf(" Behind wakes and before losses the hours give %s MWh/yr, the distributions fitted to them %s (%+.1f %%).", mwh(d.HoursMWh), mwh(d.FitMWh), 100*(d.FitMWh/d.HoursMWh-1))
+	}
+	return text
 }
+
+func mwh(x float64) string { return present.Figure(x, x, x) }

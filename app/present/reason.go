@@ -14,6 +14,7 @@ var reasons = map[string]string{
 	"not_assessed":            "this version does not look at it",
 	"wind_by_year_alone":      "the wind is known for the year and not for its months",
 	"no_soil_here":            "the soil layer has no value for this ground",
+	"no_way_for_tracks":       "no way for new tracks leads from the nearest road to the whole plant around water and buildings",
 	"no_connection":           "no line or substation that the study knows can take the power",
 	"energy_payback":          "the inputs do not allow a payback time to be worked out",
 	"carbon_payback":          "the inputs do not allow a payback time to be worked out",

@@ -160,17 +160,19 @@ func (s *Surveyor) site(ctx context.Context, c *Candidate) (site, error) {
 // Course is how the energy of a plant comes over the year that its solar yield rests on, before the bias of
 // forecasts and the losses of the connection.
 type Course struct {
-	Months [12]scoring.Value // MWh; wind is known by the year alone, so a plant with turbines has unknown months
+	Months [12]scoring.Value // MWh; without hours of wind a plant with turbines has unknown months
 	// Hours part the months by hour of the day, from 0 to 1 first, on the clock named. Nil where the months are
 	// unknown.
 	Hours *[12][24]float64 // MWh
 	Clock string           // "solar time" where the sunlight is given by month, the clock of the file where by hour
 	Sky   []SkyYield       // what each way to bring the sky's light onto the panels gives; nil as Hours
 	Doubt *Doubt           // why the yield may be another; nil as Hours
-	Wind  *WindDoubt       // the same of the wind part; nil without one
+	Wind  *WindDoubt       // the same of the wind part; nil where its energy is not known
 	Rose  *WindRose        // the wind of a plant with turbines by direction; nil where it is not known
 	// Turbines are what is shown of a plant's turbines; nil as Rose.
 	Turbines *TurbineView
+
+	windMonths *[12]float64 // MWh; nil where no hours of wind serve
 }
 
 // Doubt is the spread of a solar yield by its causes, as shares of the energy.
@@ -198,44 +200,51 @@ type WindSector struct {
 }
 
 // turbines computes the year of a fitted plant's turbines once more, by direction and place.
-func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*WindRose, *TurbineView, error) {
+func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site, out *Course) error {
 	f, err := s.fitted(ctx)
 	if err != nil {
-		return nil, nil, err
+		return err
 	}
 	i := slices.IndexFunc(s.world.options, func(o option) bool { return o.id == c.Plant })
 	if i < 0 {
-		return nil, nil, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
+		return fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
 	}
 	o := s.world.options[i]
-	p, err := f.windAt(o, here)
+	p, machine, hub, err := f.windAndMachine(o, here)
 	if err != nil || !p.known {
-		return nil, nil, err
-	}
-	hub, _ := o.num("hub_height_m")
-	rotor, _ := o.num("rotor_diameter_m")
-	rated, _ := o.num("rated_kw")
-	machine, err := f.turbine(o, rated, rotor)
-	if err != nil {
-		return nil, nil, err
+		return err
 	}
 	in, err := f.farm(machine, hub, p, here)
 	if err != nil {
-		return nil, nil, err
+		return err
 	}
 	in.Existing = f.machinesOf(here, wholeOf(f.near(here)))
 	var at []geo.XY
 	for _, ll := range c.Fit.Turbines {
 		q, err := s.world.frame.Forward(ll)
 		if err != nil {
-			return nil, nil, err
+			return err
 		}
 		at = append(at, q)
 	}
 	in.At = f.positions(here, at)
+	year, err := yearOf(in, p)
+	if err != nil {
+		return err
+	}
+	if out.Wind, err = f.windDoubt(p, hub, year); err != nil {
+		return err
+	}
+	if h := year.hours; h != nil && h.WakedMWhPerYr > 0 {
+		months := &[12]float64{}
+		for m, mwh := range h.MonthMWh {
+			months[m] = mwh * h.NetMWhPerYr / h.WakedMWhPerYr
+		}
+		out.windMonths = months
+	}
 	models, err := wind.CompareWakes(in)
 	if err != nil {
-		return nil, nil, err
+		return err
 	}
 	if models[0].Wake != in.Settings.Wake { // that of the results comes first
 		slices.Reverse(models)
@@ -249,7 +258,7 @@ func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*Wind
 	for i, sec := range p.sectors {
 		hubRose[i].FrequencyFrac = sec.FrequencyFrac / time
 		if hubRose[i].Weibull, err = p.wind.AtHub(sec.Weibull, hub); err != nil {
-			return nil, nil, err
+			return err
 		}
 	}
 	view := &TurbineView{Curve: curveOver(in, res, hubRose)}
@@ -258,15 +267,16 @@ func (s *Surveyor) turbines(ctx context.Context, c *Candidate, here site) (*Wind
 	}
 	rs, err := s.world.rulesFor(o, windPart)
 	if err != nil {
-		return nil, nil, err
+		return err
 	}
 	g, err := s.ground(ctx, rs, here)
 	if err != nil {
-		return nil, nil, err
+		return err
 	}
 	to := f.turn(here)
 	view.Wakes, err = wakesAround(in, res, ringsOf(here.geom, to), ringsOf(g.Area, to))
-	return roseOf(p, res, hubRose), view, err
+	out.Rose, out.Turbines = roseOf(p, res, hubRose), view
+	return err
 }
 
 // roseOf brings the sectors of the wind at hub height together with what they give.
@@ -291,35 +301,69 @@ func roseOf(p windHere, res wind.FarmResult, hub []wind.Sector) *WindRose {
 
 // WindDoubt is the spread of the wind part's yield, as shares of the energy.
 type WindDoubt struct {
-	Source       string  // of the wind: model or mast
-	Said         bool    // somebody said so; otherwise it counts as the least sure
-	Model        float64 // of the long-term energy, all causes together
-	YearSpeed    float64 // of a year's mean speed
-	Sensitivity  float64 // per cent energy per cent speed
-	BetweenYears float64 // of a year's energy
+	Source       string // of the wind: model or mast
+	Said         bool   // somebody said so; otherwise it counts as the least sure
+	Parts        []WindPart
+	LongTerm     float64    // of the long-term energy, all parts together
+	Band         [2]float64 // that is usual for such data
+	YearSpeed    float64    // of a year's mean speed
+	Sensitivity  float64    // per cent energy per cent speed
+	BetweenYears float64    // of a year's energy
 	OneYear      float64
 	Bias         float64 // what such forecasts gave in the long run, less one
+	Exceeded     []wind.ExceedanceLine
+	FitMWh       float64 // what the distributions fitted to the hours give behind wakes, before losses; 0 without hours
+	HoursMWh     float64 // and the hours themselves
 }
 
-// windDoubt tells the spread of a candidate's wind part; nil where its energy is not known.
-func (w *world) windDoubt(c *Candidate) (*WindDoubt, error) {
-	model, year, err := w.windSigmas()
+// WindPart is one cause of the spread.
+type WindPart struct {
+	Title  string
+	Energy float64 // share of the energy
+	Shared bool    // by all sites, so that it hardly changes their order
+}
+
+// windDoubt tells the spread of the yield of a plant's turbines.
+func (f *fitter) windDoubt(p windHere, hubM float64, y windYear) (*WindDoubt, error) {
+	parts, err := f.windParts(p, hubM, y.wakeLoss)
 	if err != nil {
 		return nil, err
 	}
-	bias, err := w.p.Wind.Get("long_run_bias_frac")
+	d := &WindDoubt{Sensitivity: y.farm.SpeedSensitivity}
+	kind, _, _ := f.w.snap.Lookup("wind.data_kind")
+	_, d.Said = f.w.snap.Explicit["wind.data_kind"]
+	d.Source = kind.Value
+	energy, err := parts.Energy(d.Sensitivity)
 	if err != nil {
 		return nil, err
 	}
-	for _, l := range c.Leaves() {
-		if l.Name == "wind_yield_sigma" && l.State == scoring.Number && l.X > 0 {
-			between := math.Sqrt(math.Max(0, float64(l.X*l.X)-float64(model*model)))
-			kind, _, _ := w.snap.Lookup("wind.data_kind")
-			_, said := w.snap.Explicit["wind.data_kind"]
-			return &WindDoubt{Source: kind.Value, Said: said, Model: model, YearSpeed: year, Sensitivity: between / year, BetweenYears: between, OneYear: l.X, Bias: bias.Central}, nil
+	for i, c := range parts {
+		d.Parts = append(d.Parts, WindPart{c.Title, energy[i], c.Shared})
+	}
+	if d.LongTerm, err = parts.Total(d.Sensitivity); err != nil {
+		return nil, err
+	}
+	if d.OneYear, _, _, err = f.windSpread(parts, d.Sensitivity); err != nil {
+		return nil, err
+	}
+	get := func(name string) (v wind.Default) {
+		if err == nil {
+			v, err = f.w.p.Wind.Get(name)
 		}
+		return v
 	}
-	return nil, nil
+	band := get(map[string]string{"mast": "sigma_one_year_mast_frac", "model": "sigma_no_mast_frac"}[d.Source])
+	d.Band = [2]float64{band.Low, band.High}
+	d.YearSpeed, d.Bias = get("interannual_speed_sigma_frac").Central, get("long_run_bias_frac").Central
+	if err != nil {
+		return nil, err
+	}
+	d.BetweenYears = d.YearSpeed * d.Sensitivity
+	if y.hours != nil {
+		d.FitMWh, d.HoursMWh = y.hours.FitMWhPerYr, y.hours.WakedMWhPerYr
+	}
+	d.Exceeded, err = wind.Exceedances(y.netMWh, d.LongTerm, d.BetweenYears)
+	return d, err
 }
 
 // SkyYield is the yield under one model of the sky.
@@ -348,11 +392,14 @@ func (s *Surveyor) Course(ctx context.Context, c *Candidate) (*Course, error) {
 		return nil, err
 	}
 	if c.Fit.WindKW > 0 {
-		if out.Wind, err = s.world.windDoubt(c); err != nil {
+		if err = s.turbines(ctx, c, here, out); err != nil {
 			return nil, err
 		}
-		if out.Rose, out.Turbines, err = s.turbines(ctx, c, here); err != nil {
-			return nil, err
+		if out.windMonths != nil && c.Fit.SolarKW == 0 {
+			for m, mwh := range out.windMonths {
+				out.Months[m] = scoring.Num(mwh)
+			}
+			return out, nil
 		}
 		return every(scoring.UnknownBecause("wind_by_year_alone")), nil
 	}

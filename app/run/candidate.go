@@ -20,7 +20,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 3
+const candidateEdition = 4
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {
@@ -288,23 +288,17 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	}
 
 	noted := map[string]bool{}
-	if err := w.measureFacts(e, around, o, s, r, f, noted); err != nil {
+	tracks, err := w.measureFacts(e, around, o, s, g.Area, r, f, noted)
+	if err != nil {
 		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 	}
 	if o.wind && !sets[windPart].excepts(s.id, heightRule) {
-		var err error
 		if c.Headroom, err = w.headroom(e, f["height_limit_m"].v, sets[windPart].tipM, false, s); err != nil {
 			return nil, err
 		}
 	}
 	fitFacts(o, r, f)
 	f.set("existing_loss_mwh", fr.lostNearby(o, around, s, r), "wind yield")
-	track, counted, err := w.tracks(r, f["road_m"].v)
-	if err != nil {
-		return nil, err
-	}
-	f.set("track_km", track, "rule of thumb: shortest tree × detour")
-	f.num("track_counted_km", counted, "rule of thumb")
 	l, err := w.connect(fr, o, s, r, assets)
 	if err != nil {
 		return nil, err
@@ -333,11 +327,11 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	if err != nil {
 		return nil, err
 	}
-	k.fill(c, v, spreads, k.leafNotices(r, l))
+	k.fill(c, v, spreads, k.leafNotices(r, l, tracks))
 	for _, name := range k.p.facts {
 		c.Facts = append(c.Facts, Leaf{Name: name, State: f[name].v.State, X: f[name].v.X, Why: f[name].v.Why, Source: f[name].source})
 	}
-	if c.Fit, err = w.fitView(r, counted); err != nil {
+	if c.Fit, err = w.fitView(r, tracks); err != nil {
 		return nil, err
 	}
 	return c, nil
@@ -438,7 +432,8 @@ func fitFacts(o option, r fitResult, f facts) {
 	f.set("solar_p50_mwh", energy(r.SolarMWh), cmp.Or(r.SunSource, "solar yield"))
 	f.num("wind_yield_sigma", r.WindSigma, "root sum of squares")
 	f.num("solar_yield_sigma", r.SolarSigma, "root sum of squares")
-	f.num("wind_yield_sigma_own", r.WindLong, "root sum of squares")
+	f.num("wind_yield_sigma_shared", r.WindShared, "root sum of squares")
+	f.num("wind_yield_sigma_own", r.WindOwn, "root sum of squares")
 	f.num("solar_yield_sigma_shared", r.SolarShared, "root sum of squares")
 	f.num("solar_yield_sigma_own", r.SolarOwn, "root sum of squares")
 	f.num("wind_yield_error", 1, "even odds")
@@ -540,7 +535,7 @@ func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
 		leaf        string
 		shared, own float64
 		on          bool
-	}{{"wind_yield_error", 0, r.WindLong, r.WindKW > 0}, {"solar_yield_error", r.SolarShared, r.SolarOwn, r.SolarKW > 0}} {
+	}{{"wind_yield_error", r.WindShared, r.WindOwn, r.WindKW > 0}, {"solar_yield_error", r.SolarShared, r.SolarOwn, r.SolarKW > 0}} {
 		if !d.on || d.shared == 0 && d.own == 0 {
 			continue
 		}
@@ -572,7 +567,7 @@ func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
 }
 
 // leafNotices gives the notices that a leaf brings to every consequence that depends on it.
-func (k *reckoner) leafNotices(r fitResult, l link) map[int][]string {
+func (k *reckoner) leafNotices(r fitResult, l link, t laid) map[int][]string {
 	out := map[int][]string{}
 	put := func(leaf string, codes ...string) {
 		if slot, ok := k.p.Graph.Slot(leaf); ok {
@@ -590,15 +585,19 @@ func (k *reckoner) leafNotices(r fitResult, l link) map[int][]string {
 			out[slot] = append(out[slot], "memory_parameter")
 		}
 	}
-	put("track_counted_km", "tracks_rule")
-	put("track_km", "tracks_rule")
+	code := "tracks_rule"
+	if t.km.OK() {
+		code = "tracks_laid"
+	}
+	put("track_counted_km", code)
+	put("track_km", code)
 	put("detour_ratio", "route_straight")
 	if l.ok && !l.asset.spare.Known {
 		put("curtailed_share", "spare_unknown")
 		put("connection_spare_kw", "spare_unknown")
 	}
 	if l.shareK && l.share > 0 {
-		put("curtailed_share", "export_limited", "curtailment_bound")
+		put("curtailed_share", "export_limited", map[bool]string{true: "curtailment_by_hours", false: "curtailment_bound"}[l.byHours])
 	}
 	for _, n := range r.Notices {
 		if strings.HasPrefix(n, "horizon_") {
@@ -702,8 +701,8 @@ func noneFor(key KeyInfo, technology string) (string, bool) {
 	return "", false
 }
 
-func (w *world) fitView(r fitResult, trackKm float64) (*Fit, error) {
-	f := &Fit{Mode: r.Mode, RatedKW: r.WindKW + r.SolarKW, WindKW: r.WindKW, SolarKW: r.SolarKW, ACKW: r.WindKW + r.SolarACKW, FencedHa: r.FenceHa, Modules: r.Modules, TiltDeg: r.TiltDeg, RowPitchM: r.PitchM, Layout: r.Layout, SpacingHa: r.SpacingHa, TrackKm: trackKm}
+func (w *world) fitView(r fitResult, tracks laid) (*Fit, error) {
+	f := &Fit{Mode: r.Mode, RatedKW: r.WindKW + r.SolarKW, WindKW: r.WindKW, SolarKW: r.SolarKW, ACKW: r.WindKW + r.SolarACKW, FencedHa: r.FenceHa, Modules: r.Modules, TiltDeg: r.TiltDeg, RowPitchM: r.PitchM, Layout: r.Layout, SpacingHa: r.SpacingHa, TrackKm: tracks.counted, TracksLaid: tracks.km.OK()}
 	for _, p := range r.Turbines {
 		ll, err := w.frame.Inverse(p)
 		if err != nil {
@@ -716,6 +715,11 @@ func (w *world) fitView(r fitResult, trackKm float64) (*Fit, error) {
 		return nil, err
 	}
 	f.Panels = geo.Map(panels, geo.LonLat.Rounded)
+	ways, err := w.frame.Unproject(tracks.ways)
+	if err != nil {
+		return nil, err
+	}
+	f.Tracks = geo.Map(ways, geo.LonLat.Rounded)
 	return f, nil
 }
 

@@ -156,6 +156,8 @@ type link struct {
 	share  float64 // of the energy above what may flow
 	shareK bool
 
+	byHours bool // the share comes from hours of wind and sun together
+
 	energyWhy string // why the yield, and with it the loss, is unknown; empty when it is known
 }
 
@@ -217,8 +219,17 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 	}
 	b, a := list[choice.Picked], assets[choice.Picked]
 	var err error
-	if out.share, out.shareK, err = w.aboveLimit(f, o, s, r, ac, a); err != nil {
+	limit, said := w.mayFlow(ac, a)
+	together, err := f.together(o, s, r, limit)
+	switch {
+	case err != nil:
 		return out, err
+	case together != nil:
+		out.share, out.shareK, out.byHours = together.share(), said, true
+	default:
+		if out.share, out.shareK, err = w.aboveLimit(f, o, s, r, ac, a); err != nil {
+			return out, err
+		}
 	}
 	if out.shareK && out.share > 0 && a.spare.Known && a.spare.Value < plant && a.spare.Value > 0 {
 		// What really flows is the spare capacity; the status stays that of the whole plant.
@@ -236,7 +247,7 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 	}
 	out.ok, out.best, out.asset, out.energyWhy = true, b, a, energyWhy
 	c := &Connection{Asset: a.name, Kind: string(a.kind), VoltageKV: b.VoltageKV, Assumed: b.VoltageAssumed, Status: string(b.Status), Reason: string(b.Reason), Conductor: b.Conductor.ID, Circuits: b.Circuits,
-		RouteKm: b.RouteKm.Central, ToldBy: a.toldBy, ToldOn: a.toldOn}
+		RouteKm: b.RouteKm.Central, ToldBy: a.toldBy, ToldOn: a.toldOn, Together: together}
 	to := a.nearest(from)
 	c.StraightKm = from.Dist(to) / units.MPerKm
 	if a.spare.Known {
@@ -290,17 +301,26 @@ func terminal(r fitResult) geo.XY {
 	return geo.ExtentOf(r.Fence).Centre()
 }
 
-// aboveLimit gives the share of the energy that lies above what may flow: spare capacity or agreed limit.
-// It follows from the distributions of the free wind and of the plant's solar hours; a plant of both takes
-// them as independent. There is no hourly file in it.
-func (w *world) aboveLimit(f *fitter, o option, s site, r fitResult, acKW float64, a asset) (share float64, known bool, err error) {
-	limit := acKW
+// mayFlow gives the power that may leave a plant of acKW through an asset: spare capacity or agreed limit. known is
+// false where nothing below acKW is said and the spare capacity is not known.
+func (w *world) mayFlow(acKW float64, a asset) (kw float64, known bool) {
+	kw = acKW
 	if x, ok := w.snap.Number("grid.export_limit_kw"); ok {
-		limit = math.Min(limit, x)
+		kw = math.Min(kw, x)
 	}
 	if a.spare.Known {
-		limit = math.Min(limit, a.spare.Value)
-	} else if limit >= acKW {
+		kw = math.Min(kw, a.spare.Value)
+	} else if kw >= acKW {
+		return kw, false
+	}
+	return kw, true
+}
+
+// aboveLimit gives the share of the energy that lies above what may flow. It follows from the distributions of the free
+// wind and of the plant's solar hours; a plant of both takes them as independent where no hours tell of both.
+func (w *world) aboveLimit(f *fitter, o option, s site, r fitResult, acKW float64, a asset) (share float64, known bool, err error) {
+	limit, known := w.mayFlow(acKW, a)
+	if !known {
 		return 0, false, nil
 	}
 	if limit >= acKW {
@@ -337,15 +357,11 @@ func (w *world) aboveLimit(f *fitter, o option, s site, r fitResult, acKW float6
 // windDistribution gives the farm's power over the speeds of the free wind, all machines alike; nil
 // without a resource.
 func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []float64, err error) {
-	p, err := f.windAt(o, s)
-	if err != nil || !p.known || r.WindKW == 0 {
-		return nil, nil, err
+	if r.WindKW == 0 {
+		return nil, nil, nil
 	}
-	d, _ := o.num("rotor_diameter_m")
-	hub, _ := o.num("hub_height_m")
-	rated, _ := o.num("rated_kw")
-	machine, err := f.turbine(o, rated, d)
-	if err != nil {
+	p, machine, hub, err := f.windAndMachine(o, s)
+	if err != nil || !p.known {
 		return nil, nil, err
 	}
 	all, err := wind.CombineSectors(p.sectors)
@@ -359,10 +375,22 @@ func (f *fitter) windDistribution(o option, s site, r fitResult) (kw, share []fl
 	left := 1.0
 	for v := step / 2; v < machine.Curve.Last(); v += step {
 		share = append(share, all.CDF(v+step/2)-all.CDF(v-step/2))
-		kw = append(kw, machine.Curve.PowerKW(v)*r.WindKW/rated)
+		kw = append(kw, machine.Curve.PowerKW(v)*float64(len(r.Turbines)))
 		left -= share[len(share)-1]
 	}
 	return append(kw, 0), append(share, math.Max(0, left)), nil
+}
+
+// windAndMachine gives the wind that serves an option on a site, its machine and the height of the hub.
+func (f *fitter) windAndMachine(o option, s site) (p windHere, machine wind.Turbine, hubM float64, err error) {
+	if p, err = f.windAt(o, s); err != nil || !p.known {
+		return p, machine, 0, err
+	}
+	hubM, _ = o.num("hub_height_m")
+	d, _ := o.num("rotor_diameter_m")
+	rated, _ := o.num("rated_kw")
+	machine, err = f.turbine(o, rated, d)
+	return p, machine, hubM, err
 }
 
 // sunDistribution gives the panels' power over the hours of the year; nil without a resource.

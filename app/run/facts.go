@@ -24,9 +24,12 @@ func (f facts) num(name string, x float64, source string) { f[name] = fact{scori
 func (f facts) set(name string, v scoring.Value, source string) { f[name] = fact{v, source} }
 
 // plantGround is the ground on which the plant itself stands: discs of pad and foundation around the
-// towers, and the fence. The true place of tracks is not known.
-func (w *world) plantGround(e *overlay.Engine, r fitResult) (geo.XYGeometry, error) {
+// towers, the fence, and the new tracks where a way is found.
+func (w *world) plantGround(e *overlay.Engine, r fitResult, tracks geo.XYGeometry) (geo.XYGeometry, error) {
 	var all []geo.XYGeometry
+	if !tracks.Empty() {
+		all = append(all, tracks)
+	}
 	if len(r.Turbines) > 0 {
 		area := w.p.Factors["crane_pad_m2"].Central + w.p.Factors["foundation_m2"].Central
 		for _, p := range r.Turbines {
@@ -312,26 +315,6 @@ func (p *pieces) touched(ha float64, onTrack bool, role, none string) scoring.Va
 // trackWidthM is the width of the strip in which a track along the straight way would lie.
 const trackWidthM = 20
 
-// way gives the straight ways that tracks would take: between towers by the shortest tree, and from the
-// nearest tower to the nearest road. The true ways are not known.
-func (w *world) way(r fitResult) [][2]geo.XY {
-	out := treeEdges(r.Turbines)
-	best, from, to := math.Inf(1), geo.XY{}, geo.XY{}
-	for _, t := range r.Turbines {
-		for _, l := range w.byRole["roads"] {
-			for _, g := range l.xy {
-				if p, d := measure.NearestOnOutline(t, g); d < best {
-					best, from, to = d, t, p
-				}
-			}
-		}
-	}
-	if !math.IsInf(best, 1) {
-		out = append(out, [2]geo.XY{from, to})
-	}
-	return out
-}
-
 func layerNames(ls []*layer) string {
 	names := make([]string, len(ls))
 	for i, l := range ls {
@@ -340,8 +323,10 @@ func layerNames(ls []*layer) string {
 	return strings.Join(names, ", ")
 }
 
-// measureFacts gives every fact of a fitted candidate that follows from the map.
-func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site, r fitResult, f facts, notices map[string]bool) error {
+// measureFacts gives every fact of a fitted candidate that follows from the map, and the tracks that it lays on the
+// buildable ground.
+func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site, buildable geo.XYGeometry, r fitResult, f facts, notices map[string]bool) (laid, error) {
+	var none laid
 	anyFeature := func(*layer, int) bool { return true }
 	for _, d := range []struct {
 		name, role string
@@ -358,7 +343,7 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		}
 		m, ok, err := w.nearestM(e, r, d.role, d.keep)
 		if err != nil {
-			return err
+			return none, err
 		}
 		if !ok {
 			f.set(d.name, scoring.UnknownBecause("nothing_found:"+d.role), "")
@@ -369,22 +354,28 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 
 	allowed, err := w.heightAllowed(e, around, o, s)
 	if err != nil {
-		return err
+		return none, err
 	}
 	f.set("height_limit_m", allowed, layerNames(w.byRole[heightRule]))
 
-	g, err := w.plantGround(e, r)
+	tracks, err := w.tracks(e, s, buildable, r, f["road_m"].v)
 	if err != nil {
-		return err
+		return none, err
+	}
+	f.set("track_km", tracks.km, tracks.source)
+	f.num("track_counted_km", tracks.counted, tracks.source)
+	g, err := w.plantGround(e, r, tracks.ground)
+	if err != nil {
+		return none, err
 	}
 	groundHa := measure.AreaM2(g) / units.M2PerHa
 	edge := g
 	if x, ok := w.snap.Number("land.habitat_edge_m"); ok && x > 0 {
 		if edge, err = e.Buffer(g, x); err != nil {
-			return err
+			return none, err
 		}
 	}
-	way := w.way(r)
+	way := tracks.guess
 	measured := func(name, role, none string, over geo.XYGeometry) (scoring.Value, error) {
 		t, err := around.overlap(e, over, role, nil)
 		if err != nil {
@@ -404,11 +395,11 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		{"sensitive_ha", "sensitive", "no sensitive area touched", g},
 	} {
 		if _, err := measured(d.name, d.role, d.none, d.over); err != nil {
-			return err
+			return none, err
 		}
 	}
 	if err := w.forestFacts(e, around, g, way, f); err != nil {
-		return err
+		return none, err
 	}
 
 	best, _ := w.snap.Number("land.farmland_best_grade")
@@ -426,7 +417,7 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		return quality01(grade, best, worst), true
 	})
 	if err != nil {
-		return err
+		return none, err
 	}
 	v := around.touched(farm.ha, false, "farmland", "no farmland touched")
 	src := layerNames(w.byRole["farmland"])
@@ -443,7 +434,7 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 	// Soil: the mean stock under the plant's ground, ploughland and grass under the fence.
 	soil, err := around.overlap(e, g, "soil", func(l *layer, i int) (float64, bool) { return l.number(i, "organic_carbon_stock", "t C/ha") })
 	if err != nil {
-		return err
+		return none, err
 	}
 	src = layerNames(w.byRole["soil"])
 	switch {
@@ -470,14 +461,14 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 				return 0, true
 			})
 			if err != nil {
-				return err
+				return none, err
 			}
 			arable := math.Min(cover.sum, r.FenceHa)
 			f.num("fence_arable_ha", arable, layerNames(w.byRole["land_cover"]))
 			f.num("fence_grass_ha", r.FenceHa-arable, layerNames(w.byRole["land_cover"]))
 		}
 	}
-	return w.peatFacts(e, around, g, way, groundHa, f, notices)
+	return tracks, w.peatFacts(e, around, g, way, groundHa, f, notices)
 }
 
 // quality01 turns a grade into a share from 0 to 1: the best grade is 1, and the worst still counts as
@@ -581,66 +572,4 @@ func (w *world) peatFacts(e *overlay.Engine, around *pieces, g geo.XYGeometry, w
 		f.set("peat_depth_m", v, src)
 	}
 	return nil
-}
-
-// tracks gives the new track: the shortest tree through the towers and from the nearest road to the first,
-// times a detour. Without roads it is unknown; what is counted for land and energy is then the usual share
-// of sealed ground per megawatt of wind (Denholm et al. 2009), nothing for solar.
-func (w *world) tracks(r fitResult, roadM scoring.Value) (km scoring.Value, countedKm float64, err error) {
-	detour, err := w.p.Wind.Get("track_detour")
-	if err != nil {
-		return scoring.Value{}, 0, err
-	}
-	if roadM.OK() {
-		x := detour.Central * (tree(r.Turbines) + roadM.X) / units.MPerKm
-		return scoring.Num(x), x, nil
-	}
-	perMW, err := w.p.Wind.Get("permanent_ha_per_mw")
-	if err != nil {
-		return scoring.Value{}, 0, err
-	}
-	ground := perMW.Central * r.WindKW / units.KWPerMW * units.M2PerHa
-	return roadM, ground / w.p.Factors["track_width_m"].Central / units.MPerKm, nil
-}
-
-// tree gives the length of the shortest tree through points.
-func tree(at []geo.XY) float64 {
-	sum := 0.0
-	for _, s := range treeEdges(at) {
-		sum += s[0].Dist(s[1])
-	}
-	return sum
-}
-
-// treeEdges gives the edges of the shortest tree through points (Prim 1957).
-func treeEdges(at []geo.XY) [][2]geo.XY {
-	if len(at) < 2 {
-		return nil
-	}
-	in := make([]bool, len(at))
-	dist := make([]float64, len(at))
-	from := make([]int, len(at))
-	for i := range dist {
-		dist[i] = math.Inf(1)
-	}
-	dist[0] = 0
-	var out [][2]geo.XY
-	for n := range at {
-		best := -1
-		for i := range at {
-			if !in[i] && (best < 0 || dist[i] < dist[best]) {
-				best = i
-			}
-		}
-		in[best] = true
-		if n > 0 {
-			out = append(out, [2]geo.XY{at[from[best]], at[best]})
-		}
-		for i := range at {
-			if d := at[best].Dist(at[i]); !in[i] && d < dist[i] {
-				dist[i], from[i] = d, best
-			}
-		}
-	}
-	return out
 }

@@ -17,7 +17,7 @@ import (
 )
 
 // fitEdition is raised when the digits of the step change.
-const fitEdition = 5
+const fitEdition = 6
 
 // fitResult is the plant fitted on a site.
 type fitResult struct {
@@ -43,7 +43,8 @@ type fitResult struct {
 	CropLight      float64
 	WindSigma      float64 // of one year's energy
 	SolarSigma     float64
-	WindLong       float64 // of the long-term mean
+	WindShared     float64 // of the long-term mean, alike on all sites
+	WindOwn        float64 // and of this site alone
 	SolarShared    float64 // of the long-term mean, alike on all sites
 	SolarOwn       float64 // and of this site alone
 	SpareAsset     string  // the line or substation that a fit to its spare capacity was made for
@@ -70,7 +71,8 @@ type fitter struct {
 	points  []sunPoint   // of monthly sunlight
 	sunKey  string       // digest of the settings that sunlight is read with
 	sunWhy  string       // monthly sunlight that cannot be read
-	hours   *weatherFile // nil without a file of hours
+	hours   *weatherFile // nil without a file of hours of sun
+	blowing *windHours   // nil without one of wind
 	hourly  *sunlight    // the months of hours
 	windKey string       // digest of the settings of wind
 	assets  []asset      // lines and substations
@@ -111,6 +113,7 @@ func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 	if f.wind, err = w.windPoints(); err != nil {
 		return nil, err
 	}
+	f.blowing = w.windHours()
 	f.others = w.neighbours()
 	// Sunlight that cannot be read leaves the sun unknown, and says why; wind goes on.
 	if f.sun, err = w.sunlight(); err != nil {
@@ -171,6 +174,9 @@ func (f *fitter) key(o option, s site, ground []string) (string, error) {
 				k.num(sec.FrequencyFrac)
 				k.num(sec.Weibull.AMPerS)
 				k.num(sec.Weibull.K)
+			}
+			if p.hours != nil {
+				k.text(p.hours.key)
 			}
 		}
 		k.said("wind", p.source, p.why)
@@ -418,11 +424,11 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 		}
 		return nil
 	}
-	energy := func(at []geo.XY) (wind.FarmResult, error) {
+	energy := func(at []geo.XY) (windYear, error) {
 		in.At = f.positions(s, at)
-		return wind.FarmYear(in)
+		return yearOf(in, p)
 	}
-	var res wind.FarmResult
+	var res windYear
 	if known {
 		if res, err = energy(at); err != nil {
 			return fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
@@ -432,7 +438,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 				if res, err = energy(at[:n]); err != nil {
 					return err
 				}
-				if res.NetMWhPerYr >= targetMWh || n == len(at) {
+				if res.netMWh >= targetMWh || n == len(at) {
 					at = at[:n]
 					break
 				}
@@ -442,27 +448,28 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	r.Turbines, r.Layout = at, lay
 	r.WindKW = rated * float64(len(at))
 	if known && lay.MostByRule > 0 {
-		lay.BoundMWh, lay.WakedMWh = res.GrossMWhPerYr/float64(len(at))*float64(lay.MostByRule), res.Chain[0].AfterMWh
+		lay.BoundMWh, lay.WakedMWh = res.grossMWh/float64(len(at))*float64(lay.MostByRule), res.chain[0].AfterMWh
 	}
 	if !known {
 		r.WindMWh.Why = p.why
 		return nil
 	}
-	r.WindMWh.MWh, r.WakeLoss, r.NearbyLossMWh = res.NetMWhPerYr, res.WakeLossFrac, res.ExistingLossMWhPerYr
+	r.WindMWh.MWh, r.WakeLoss, r.NearbyLossMWh = res.netMWh, res.wakeLoss, res.farm.ExistingLossMWhPerYr
 	if len(near) > 0 {
 		r.Notices = append(r.Notices, "wakes_of_others")
 	}
 	if len(near) < len(f.near(s)) {
 		r.Notices = append(r.Notices, "wakes_of_others_unknown")
 	}
-	for _, st := range res.Chain {
+	for _, st := range res.chain {
 		r.Chain = append(r.Chain, ChainStep{Name: st.Name, Unit: "MWh/yr", Before: st.BeforeMWh, Share: st.Share, After: st.AfterMWh})
 	}
-	for _, n := range res.Notices {
+	for _, n := range res.farm.Notices {
 		r.Notices = append(r.Notices, string(n))
 	}
+	r.Notices = append(r.Notices, p.notices(hub)...)
 	switch {
-	case p.grid:
+	case p.grid, p.hours != nil:
 	case p.used > 1:
 		r.Notices = append(r.Notices, "between_resources")
 	default:
@@ -478,11 +485,29 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 			r.Notices = append(r.Notices, "height_unknown")
 		}
 	}
-	if r.WindSigma, err = f.windSigma(res.SpeedSensitivity, 1); err != nil {
+	parts, err := f.windParts(p, hub, res.wakeLoss)
+	if err != nil {
 		return err
 	}
-	r.WindLong, err = f.windSigma(res.SpeedSensitivity, longTermYears)
+	r.WindSigma, r.WindShared, r.WindOwn, err = f.windSpread(parts, res.farm.SpeedSensitivity)
 	return err
+}
+
+// windYear is the year of a plant's turbines: by the hours where these serve, else by the distributions.
+type windYear struct {
+	netMWh, grossMWh, wakeLoss float64
+	chain                      []wind.Step
+	farm                       wind.FarmResult    // by the distributions
+	hours                      *wind.SeriesResult // nil where no hours serve
+}
+
+func yearOf(in wind.FarmInput, p windHere) (windYear, error) {
+	if p.hours == nil {
+		y, err := wind.FarmYear(in)
+		return windYear{netMWh: y.NetMWhPerYr, grossMWh: y.GrossMWhPerYr, wakeLoss: y.WakeLossFrac, chain: y.Chain, farm: y}, err
+	}
+	y, err := wind.SeriesYear(in, p.hours.hours, p.hours.fit)
+	return windYear{netMWh: y.NetMWhPerYr, grossMWh: y.GrossMWhPerYr, wakeLoss: y.WakeLossFrac, chain: y.Chain, farm: y.FitYear, hours: &y}, err
 }
 
 // spacing gives the distances that the turbines of an option keep from each other: along the wind that brings most
@@ -506,30 +531,6 @@ func (f *fitter) spacing(o option, p windHere, s site) (fit.Spacing, error) {
 
 // longTermYears is the span over which the long-term mean evens the variation between years out.
 const longTermYears = 20
-
-// windSigma joins the screening uncertainty with the variation between years.
-func (f *fitter) windSigma(sensitivity, years float64) (float64, error) {
-	model, year, err := f.w.windSigmas()
-	if err != nil {
-		return 0, err
-	}
-	return wind.SigmaOverYears(model, year*sensitivity, years)
-}
-
-// windSigmas gives the standard deviations of the long-term energy, by where the wind was taken from, and of a year's
-// mean speed.
-func (w *world) windSigmas() (model, yearSpeed float64, err error) {
-	name := "sigma_no_mast_frac"
-	if kind, _, _ := w.snap.Lookup("wind.data_kind"); kind.Value == "mast" {
-		name = "sigma_one_year_mast_frac"
-	}
-	m, err := w.p.Wind.Get(name)
-	if err != nil {
-		return 0, 0, err
-	}
-	y, err := w.p.Wind.Get("interannual_speed_sigma_frac")
-	return m.Central, y.Central, err
-}
 
 // turn gives the way from the frame to true east and north around the middle of a site.
 func (f *fitter) turn(s site) func(geo.XY) wind.Position {

@@ -267,13 +267,14 @@ func (f found) void() string {
 // windHere is the wind that serves a site.
 type windHere struct {
 	windPoint
-	distM  float64 // to the resource point; the size of a cell where a grid serves
+	distM  float64 // to the resource point; the size of a cell where a grid serves; below 0 where the place is not said
 	used   int     // points that have a say
 	known  bool
 	grid   bool
-	why    string    // the wind is not known
-	source string    // for people; empty where the study has no grids of wind
-	wind   wind.Site // as the wind engine takes it, but for the height of the ground
+	hours  *windHours // it comes from, else nil
+	why    string     // the wind is not known
+	source string     // for people; empty where the study has no grids of wind
+	wind   wind.Site  // as the wind engine takes it, but for the height of the ground
 }
 
 // windAt gives the wind that serves a part of an option on a site, with what carries it to hub height.
@@ -287,9 +288,13 @@ func (f *fitter) windAt(o option, s site) (windHere, error) {
 }
 
 // windFrom finds the wind for a part of an option on a site: of the grids that cover the site, the one at the height
-// nearest to the hub; without such a grid the nearest point, or the typed speed. A void of a grid is unknown.
+// nearest to the hub; without such a grid the points around, the hours, or the typed speed. A void of a grid is unknown.
+// The hours go before all where the study says so.
 func (f *fitter) windFrom(o option, s site) (windHere, error) {
 	grids, unread := f.w.gridsOf("wind_resource")
+	if f.hoursFirst() {
+		return f.windFromHours(s)
+	}
 	var voids, outside string
 	hub, _ := o.num("hub_height_m")
 	var best windHere
@@ -352,6 +357,12 @@ func (f *fitter) windFrom(o option, s site) (windHere, error) {
 	var out windHere
 	out.windPoint, out.distM, out.used = f.windNear(s.box.Centre())
 	out.known = out.used > 0
+	if f.blowing != nil && (!out.known || out.id == typedWind) {
+		if f.blowing.why == "" {
+			return f.windFromHours(s)
+		}
+		unread += fmt.Sprintf("; the hours of %s are not read for wind: %s", f.blowing.rec.Name, f.blowing.why)
+	}
 	apart := trimmed(outside + unread)
 	switch {
 	case !out.known:
@@ -362,6 +373,12 @@ func (f *fitter) windFrom(o option, s site) (windHere, error) {
 		out.source = "wind yield from the typed mean speed; " + apart
 	}
 	return out, nil
+}
+
+// hoursFirst reports whether the study takes the wind of its hours although it has others.
+func (f *fitter) hoursFirst() bool {
+	v, _, _ := f.w.snap.Lookup("wind.source")
+	return v.Value == "hours" && f.blowing != nil && f.blowing.why == ""
 }
 
 // trimmed takes the sign before the first of several notes away.

@@ -551,8 +551,10 @@ func sigmas(c *Candidate) fitResult {
 	var r fitResult
 	for _, l := range c.Leaves() {
 		switch l.Name {
+		case "wind_yield_sigma_shared":
+			r.WindShared = l.X
 		case "wind_yield_sigma_own":
-			r.WindLong = l.X
+			r.WindOwn = l.X
 		case "solar_yield_sigma_shared":
 			r.SolarShared = l.X
 		case "solar_yield_sigma_own":

@@ -52,6 +52,9 @@ type Fit struct {
 	RowPitchM float64            `json:"row_pitch_m,omitempty"` // between rows of panels, on the ground plan
 	SpacingHa float64            `json:"spacing_ha,omitempty"`
 	TrackKm   float64            `json:"track_km"`
+	// TracksLaid tells that a way was found for the new tracks; otherwise their length is a rule of thumb.
+	TracksLaid bool               `json:"tracks_laid"`
+	Tracks     geo.LonLatGeometry `json:"tracks"`
 }
 
 // Nearest is the nearest miss of a candidate without room.
@@ -80,7 +83,8 @@ type Connection struct {
 	SpareKW    *float64   `json:"spare_kw,omitempty"` // nil when unknown
 	ToldBy     string     `json:"told_by,omitempty"`
 	ToldOn     string     `json:"told_on,omitempty"`
-	Beside     string     `json:"beside,omitempty"` // an asset of unknown capacity that might be cheaper
+	Beside     string     `json:"beside,omitempty"`   // an asset of unknown capacity that might be cheaper
+	Together   *Together  `json:"together,omitempty"` // of a plant of wind and sun; nil where no hours tell of both
 }
 
 // Leaf is an input of the reckoning as it stood for one candidate.

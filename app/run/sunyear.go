@@ -340,21 +340,30 @@ func (f *fitter) skies(o option, s site, here sunHere) ([]SkyYield, error) {
 }
 
 func (f *fitter) year(o option, latDeg float64, s sunHere, l *lie, sky solar.SkyModel) solarYear {
+	c, p, why, ok := f.under(o, latDeg, s, l, sky)
+	if !ok {
+		return solarYear{why: why, bad: why == ""}
+	}
+	y, err := c.Yield(p)
+	return solarYear{y: y, bad: err != nil}
+}
+
+// under gives the climate of the sunlight that serves a site, and the plant as it lies there. Without them ok is false,
+// and why is empty where a setting of the plant is out of range.
+func (f *fitter) under(o option, latDeg float64, s sunHere, l *lie, sky solar.SkyModel) (c *solar.Climate, p solar.Plant, why string, ok bool) {
 	c, why, err := f.climateOf(latDeg, s)
 	if err != nil {
-		return solarYear{why: why}
+		return nil, p, why, false
 	}
-	p, err := f.plant(o, latDeg)
-	if err != nil {
-		return solarYear{bad: true}
+	if p, err = f.plant(o, latDeg); err != nil {
+		return nil, p, "", false
 	}
 	if err := l.on(&p.Mount); err != nil {
-		return solarYear{bad: true}
+		return nil, p, "", false
 	}
 	p.Sky = sky
 	f.monthlyLosses(s.sunlight, &p.Losses)
-	y, err := c.Yield(p)
-	return solarYear{y: y, bad: err != nil}
+	return c, p, "", true
 }
 
 // climateOf gives the climate of the sunlight that serves a site; why says in words what an error means.

@@ -258,6 +258,9 @@ func (w *world) weather() *weatherFile {
 	}
 	for _, rec := range w.snap.LayersOf(study.HourlyRole) {
 		if rec.Kind == "table" {
+			if !hasSun(t, rec) && hasWind(t, rec) {
+				return nil // hours of wind alone
+			}
 			f := readWeather(t, rec, w.snap, w.frame.Centre())
 			return &f
 		}
@@ -275,8 +278,16 @@ func weatherNotices(ctx context.Context, store study.Store, snap *study.Snapshot
 		if err != nil {
 			return nil, fmt.Errorf("read layer %q: %w", rec.Name, err)
 		}
-		f := readWeather(v.Layer, rec, snap, *snap.Frame)
-		return f.notices(), nil
+		var out []geo.Notice
+		wind := hasWind(v.Layer, rec)
+		if hasSun(v.Layer, rec) || !wind {
+			f := readWeather(v.Layer, rec, snap, *snap.Frame)
+			out = f.notices()
+		}
+		if wind {
+			out = append(out, readWindHours(v.Layer, rec, snap).notices()...)
+		}
+		return out, nil
 	}
 	return nil, nil
 }

@@ -16,6 +16,7 @@ import (
 	"time"
 
 	"groundtally/app/files"
+	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/store"
 	"groundtally/app/study"
@@ -286,6 +287,73 @@ func TestWhyCanBeRedone(t *testing.T) {
 	}
 	if p50 := number(t, cand["consequences"].(map[string]any)["energy_p50_mwh_per_yr"].(map[string]any), "central"); math.Abs(p50-after) > 1e-9*after {
 		t.Errorf("yield %v, chain ends with %v", p50, after)
+	}
+}
+
+// A candidate with turbines says how they came to stand where they stand, right below its fit; the figures are
+// those of the layout in JSON.
+func TestWhyTellsTheLayout(t *testing.T) {
+	b := newBench(t)
+	b.district()
+	b.run(0, "group", "four", "S-05", "S-06", "S-07", "S-08")
+	layoutOf := func(site, plant string) (layout map[string]any, turbines int) {
+		fit := object(t, b.run(0, "why", site, plant, "--json"))["candidate"].(map[string]any)["fit"].(map[string]any)
+		layout, _ = fit["layout"].(map[string]any)
+		return layout, len(fit["turbines"].([]any))
+	}
+	tells := func(site string, want ...string) {
+		t.Helper()
+		text := b.run(0, "why", site, "wind")
+		_, rest, _ := strings.Cut(text, "\n  fit (")
+		_, rest, _ = strings.Cut(rest, "\n")
+		got, _, ok := strings.Cut(rest, "  connection: ")
+		if said := "    " + strings.Join(want, "\n    ") + "\n"; !ok || got != said {
+			t.Errorf("%s tells of its layout\n%s\nwant\n%s\nin\n%s", site, got, said, text)
+		}
+	}
+	wanted := func(l map[string]any) string {
+		if l["asked_by"] != "spare capacity" {
+			t.Errorf("asked by %v", l["asked_by"])
+		}
+		return fmt.Sprintf("Wanted at most: %.0f (by the spare capacity of the network).", number(t, l, "asked"))
+	}
+	nearest := func(l map[string]any) string {
+		return fmt.Sprintf("The two nearest to each other stand at %.2f times the distance of the spacing rule.", number(t, l, "spacing_met"))
+	}
+
+	l, n := layoutOf("four", "wind")
+	if n < 2 {
+		t.Fatalf("%d turbines, so this test shows little", n)
+	}
+	bound := number(t, l, "bound_mwh")
+	tells("four", fmt.Sprintf("Found by: %s.", l["how"]), wanted(l), nearest(l),
+		fmt.Sprintf("Energy behind wakes: %.1f %% below the bound of %s MWh a year (%.0f turbines without any wake), before losses.", 100*(1-number(t, l, "waked_mwh")/bound), present.Figure(bound, bound, bound), number(t, l, "most_by_rule")))
+
+	// One turbine is as good as its bound, which says nothing.
+	if l, n = layoutOf("S-01", "wind"); n != 1 || number(t, l, "bound_mwh") != number(t, l, "waked_mwh") {
+		t.Fatalf("%d turbines, %v", n, l)
+	}
+	tells("S-01", fmt.Sprintf("Found by: %s.", l["how"]), fmt.Sprintf("Most that the spacing allows: 1 at most (%s).", l["most_by"]), wanted(l))
+
+	b.run(0, "place", "S-01", "wind", "--turbines", "-19.998,50.002 -19.996,50.003", "--reason", "off the path")
+	l, _ = layoutOf("S-01", "wind")
+	broken := l["broken"].([]any)
+	if l["how"] != "by hand" || l["reason"] != "off the path" || len(broken) != 3 {
+		t.Fatalf("%v", l)
+	}
+	by := func(i int) float64 { return math.Ceil(number(t, broken[i].(map[string]any), "by_m")) }
+	tells("S-01", "Placed by hand: off the path", wanted(l), nearest(l),
+		fmt.Sprintf("rule not kept: Turbine 1 stands %.0f m outside the buildable ground", by(0)),
+		fmt.Sprintf("rule not kept: Turbine 2 stands %.0f m outside the buildable ground", by(1)),
+		fmt.Sprintf("rule not kept: Turbine 2 stands %.0f m nearer to turbine 1 than the spacing allows", by(2)))
+
+	if l, n = layoutOf("S-01", "sun"); l != nil || n != 0 {
+		t.Errorf("%d turbines of panels, %v", n, l)
+	}
+	for _, args := range [][]string{{"S-01", "sun"}, {"S-01", "wind", "turbine_count"}} {
+		if text := b.run(0, "why", args...); strings.Contains(text, "Placed by hand") || strings.Contains(text, "Found by") || strings.Contains(text, "spacing") {
+			t.Errorf("%v: a layout in\n%s", args, text)
+		}
 	}
 }
 

@@ -5,6 +5,7 @@ import (
 	"slices"
 	"strings"
 
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
@@ -119,6 +120,13 @@ func (c *call) candidate(cand *run.Candidate) {
 		}
 		c.say("  %s", line)
 	}
+	words, broken := pictures.Layout(cand.Fit)
+	for _, line := range words {
+		c.say("    %s", line)
+	}
+	for _, line := range broken {
+		c.say("    rule not kept: %s", line)
+	}
 	if n := cand.Connection; n != nil {
 		kv := fmt.Sprintf("%g kV", n.VoltageKV)
 		if n.Reason == "voltage_unknown" {
@@ -135,6 +143,9 @@ func (c *call) candidate(cand *run.Candidate) {
 			line += fmt.Sprintf(", told by %s %s", n.ToldBy, n.ToldOn)
 		}
 		c.say("  %s", line)
+		if words := pictures.Together(n); words != "" {
+			c.say("  %s", words)
+		}
 	}
 	c.chain(cand, "", "  ")
 	for _, a := range scoring.Accounts() {

@@ -16,6 +16,7 @@ type Mark struct {
 	Panels    []geo.LonLatGeometry // fences, or areas of panels
 	Rows      []geo.LonLatGeometry // rows of panels, drawn where they are wide enough to tell apart
 	Turbines  []geo.LonLat
+	Tracks    []geo.LonLatGeometry // new tracks
 	Routes    []geo.LonLatGeometry // lines of the connection
 	Setbacks  []Setback
 }
@@ -50,6 +51,7 @@ const (
 	markPanels
 	markRows
 	markParcel
+	markTrack
 	markRoute
 	markTurbine
 	markKinds
@@ -87,6 +89,9 @@ func (g *Ground) Place(marks []Mark) *Placed {
 				one.Parts = r.Parts[i : i+1]
 				put(markRows, project(g.plane, one), 0)
 			}
+		}
+		for _, r := range m.Tracks {
+			put(markTrack, project(g.plane, r), 0)
 		}
 		for _, r := range m.Routes {
 			put(markRoute, project(g.plane, r), 0)
@@ -156,6 +161,8 @@ func (m *Placed) Draw(level int, rect image.Rectangle, style Style) []ink {
 	}
 	each(markParcel, casing, stroke(5))
 	each(markParcel, line, stroke(2.4))
+	each(markTrack, casing, stroke(3))
+	each(markTrack, line, stroke(1))
 	each(markRoute, casing, stroke(3.6))
 	each(markRoute, line, stroke(1.8, 3, 3.5))
 	up := func(s placed) geo.XYGeometry { return p.triangle(s.shape.Parts[0][0][0], k) }

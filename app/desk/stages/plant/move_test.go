@@ -12,7 +12,6 @@ import (
 	"groundtally/app/desk/desktest"
 	"groundtally/app/desk/mapview"
 	"groundtally/app/draw/tiles"
-	"groundtally/app/pictures"
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -257,35 +256,5 @@ func BenchmarkChecker(b *testing.B) {
 	for i := 0; b.Loop(); i++ {
 		at[7] = plane.From(geo.XY{X: 500 + float64(i%1000), Y: 77})
 		c.check(at)
-	}
-}
-
-func TestLayoutWords(t *testing.T) {
-	l := &run.Layout{How: "square lattice", MostByRule: 8, MostBy: "cover by rectangles", SpacingMet: 1.02, BoundMWh: 80000, WakedMWh: 76000, Asked: 12, AskedBy: "usual limit"}
-	want := []string{
-		"Found by: square lattice.", "Most that the spacing allows: 8 at most (cover by rectangles).", "Wanted at most: 12 (the usual limit).",
-		"The two nearest to each other stand at 1.02 times the distance of the spacing rule.",
-		"Energy behind wakes: 5.0 % below the bound of 80 000 MWh a year (8 turbines without any wake), before losses.",
-	}
-	if got := layoutWords(l, 7); !slices.Equal(got, want) {
-		t.Errorf("%q", got)
-	}
-	if got := layoutWords(&run.Layout{How: "by hand", Reason: "why"}, 1); len(got) != 0 {
-		t.Errorf("by hand, which is said elsewhere: %q", got)
-	}
-	for want, b := range map[string]run.Broken{
-		"Turbine 3 stands 41 m outside the buildable ground":                         {Turbine: 3, Rule: "outside_ground", ByM: 40.2},
-		"Turbine 3 stands outside the buildable ground":                              {Turbine: 3, Rule: "outside_ground"},
-		"Turbine 1 stands 7 m outside the site":                                      {Turbine: 1, Rule: "outside_site", ByM: 7},
-		"Turbine 2 stands 12 m nearer to turbine 1 than the spacing allows":          {Turbine: 2, Rule: "too_near", Other: 1, ByM: 12},
-		"Turbine 2 stands 5 m nearer to a turbine of others than the spacing allows": {Turbine: 2, Rule: "near_existing", ByM: 5},
-		"Turbine 2: its rotor could touch that of turbine 1":                         {Turbine: 2, Rule: "touching", Other: 1, ByM: 5},
-	} {
-		if got := brokenWords(b); got != want {
-			t.Errorf("%q, want %q", got, want)
-		}
-	}
-	if got := pictures.WakeModels([]run.WakeModelYield{{Model: "Gaussian", WakeLoss: 0.0812}, {Model: "top hat", WakeLoss: 0.074}}); !strings.HasPrefix(got, "Wake loss: Gaussian 8.1 %, top hat 7.4 %.") {
-		t.Errorf("%q", got)
 	}
 }

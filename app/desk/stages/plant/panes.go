@@ -492,13 +492,13 @@ func (f *fitted) askMonths(c *run.Candidate) {
 			} else {
 				f.monthWords.Set("Of the year that the yield rests on; before the bias of forecasts and the losses of the connection.")
 			}
-			if course.Rose != nil {
+			if course.Rose != nil && why != "" {
 				do = nil // the wind's months are all unknown, and its directions say more
 			}
 			f.month.Set(do)
 			f.hour.Set(hoursOf(c, course))
 			f.turbines.course(c, course)
-			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt) + pictures.WindSpread(course.Wind)))
+			f.sky.SetText(strings.TrimSpace(pictures.SkySpread(course.Sky) + "\n\n" + pictures.Spread(course.Doubt) + pictures.WindSpread(course.Wind) + "\n\n" + pictures.Together(c.Connection)))
 			visible(f.sky, f.sky.Text != "")
 			f.body.Refresh()
 		})
@@ -534,7 +534,7 @@ func (f *fitted) fill(c *run.Candidate) {
 			}
 		}
 		figure("Ground inside the spacing", c.Fit.SpacingHa, "ha")
-		figure("New track, by rule of thumb", c.Fit.TrackKm, "km")
+		figure(map[bool]string{true: "New track", false: "New track, by rule of thumb"}[c.Fit.TracksLaid], c.Fit.TrackKm, "km")
 	}
 	if m := c.Miss; m != nil {
 		line("Buildable", present.Figure(m.BuildableHa, m.BuildableHa, m.BuildableHa)+" ha")
