@@ -16,7 +16,7 @@ func Together(n *run.Connection) string {
 	t := n.Together
 	all := t.WindMWh + t.SolarMWh
 	first := t.Limits[0]
-	text := fmt.Sprintf("Wind and sun behind one connection, by the hours of the weather file: at most %s kW together and %s kW one by one, so that %s kW of connection (%.0f %%) are saved.", mwh(t.PeakKW), mwh(t.PeaksKW), mwh(t.SavedKW), 100*t.SavedKW/t.PeaksKW)
+	text := fmt.Sprintf("Wind and sun behind one connection, by the hours of the weather file: at most %s kW together and %s kW one by one. Where %.0f %% of the energy may be cut off they need %s kW together and %s kW one by one, so that %s kW of connection (%.0f %%) are saved.", mwh(t.PeakKW), mwh(t.PeaksKW), 100*t.LosingFrac, mwh(t.LosingKW), mwh(t.LosingEachKW), mwh(t.LosingEachKW-t.LosingKW), 100*(1-t.LosingKW/t.LosingEachKW))
 	if t.Correlation != nil {
 		text += fmt.Sprintf(" Their power goes together at %.2f, on a scale from -1 to 1.", *t.Correlation)
 	}

@@ -20,7 +20,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 4
+const candidateEdition = 5
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {

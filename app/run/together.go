@@ -16,6 +16,9 @@ type Together struct {
 	PeakKW       float64         `json:"peak_kw"`         // greatest hour of both
 	PeaksKW      float64         `json:"sum_of_peaks_kw"` // greatest hour of each, added
 	SavedKW      float64         `json:"saved_kw"`        // connection that the two need less than one by one
+	LosingFrac   float64         `json:"losing_frac"`     // of the energy, that a smaller connection may cut off
+	LosingKW     float64         `json:"losing_kw"`       // the connection that cuts off so much of both
+	LosingEachKW float64         `json:"losing_each_kw"`  // those that cut off so much of each, added
 	Correlation  *float64        `json:"correlation,omitempty"`
 	HoursKnown   float64         `json:"hours_known"`
 	HoursUnknown float64         `json:"hours_unknown,omitempty"`
@@ -81,10 +84,50 @@ func (f *fitter) together(o option, s site, r fitResult, limitKW float64) (*Toge
 	if j.Correlation.Known {
 		out.Correlation = &j.Correlation.Value
 	}
+	out.LosingFrac = losingFrac
+	if out.LosingKW, err = losing(parts, ac, hours.Step().Hours()); err != nil {
+		return nil, siteError(s, err)
+	}
+	for i, kw := range []float64{r.WindKW, r.SolarACKW} {
+		one, err := losing(parts[i:i+1], kw, hours.Step().Hours())
+		if err != nil {
+			return nil, siteError(s, err)
+		}
+		out.LosingEachKW += one
+	}
 	for _, j := range js {
 		out.Limits = append(out.Limits, TogetherLimit{LimitKW: j.LimitKW, CurtailedMWh: j.CurtailedMWh, WindCutMWh: j.Parts[0].CutMWh, SolarCutMWh: j.Parts[1].CutMWh, HoursAtLimit: j.HoursAtLimit, FullFrac: j.FullFrac, AloneFrac: j.Parts[0].AloneFullFrac})
 	}
 	return out, nil
+}
+
+// losingFrac is the share of the energy that a connection may cut off when the saved one is told. Source: assumption of
+// this program.
+const losingFrac = 0.01
+
+// losing gives the connection that cuts off losingFrac of what parts of ratedKW together give: linear between
+// hundredths of the rating.
+func losing(parts [][]float64, ratedKW, hoursPerValue float64) (float64, error) {
+	const steps = 100
+	limits := make([]float64, steps)
+	for i := range limits {
+		limits[i] = ratedKW * float64(i+1) / steps
+	}
+	js, err := grid.CurtailmentCurve(parts, limits, hoursPerValue)
+	if err != nil {
+		return 0, err
+	}
+	for i := steps - 1; i >= 0; i-- {
+		if js[i].CurtailedFrac <= losingFrac {
+			continue
+		}
+		if i == steps-1 {
+			return ratedKW, nil
+		}
+		a, b := js[i].CurtailedFrac, js[i+1].CurtailedFrac
+		return limits[i] + float64((limits[i+1]-limits[i])*(a-losingFrac))/(a-b), nil
+	}
+	return limits[0], nil
 }
 
 // share gives the part of the energy that is cut off by what may flow.

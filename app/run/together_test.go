@@ -44,6 +44,9 @@ func TestTogetherKeepsTheYields(t *testing.T) {
 		if j.PeakKW > j.PeaksKW+1e-9 || j.SavedKW != j.PeaksKW-j.PeakKW || j.PeaksKW > c.Fit.ACKW*1.0001 {
 			t.Errorf("%s: %+v of %v kW", c.ID(), j, c.Fit.ACKW)
 		}
+		if j.LosingKW > j.LosingEachKW+1e-9 || j.LosingKW > j.PeakKW || !(j.LosingKW > 0) {
+			t.Errorf("%s: %+v", c.ID(), j)
+		}
 		for n, l := range j.Limits {
 			if n > 1 && l.CurtailedMWh < j.Limits[n-1].CurtailedMWh || math.Abs(l.WindCutMWh+l.SolarCutMWh-l.CurtailedMWh) > 1e-6*(1+l.CurtailedMWh) {
 				t.Errorf("%s: %+v", c.ID(), j.Limits)
@@ -83,5 +86,22 @@ func TestCrossing(t *testing.T) {
 	// Of a hill the first place counts.
 	if x, ok := crossing(func(x float64) float64 { return math.Sin(x) }, 0.5, 0, 3); !ok || math.Abs(x-math.Pi/6) > 1e-6 {
 		t.Errorf("%v, %v", x, ok)
+	}
+}
+
+// Of one hour in a hundred at full power and the others at half, a hundredth of the energy is cut off by a limit
+// known by hand.
+func TestLosingAHundredth(t *testing.T) {
+	kw := make([]float64, 1000)
+	sum := 0.0
+	for i := range kw {
+		if kw[i] = 500; i%100 == 0 {
+			kw[i] = 1000
+		}
+		sum += kw[i]
+	}
+	got, err := losing([][]float64{kw}, 1000, 1)
+	if want := 500 - (losingFrac*sum-10*500)/1000; err != nil || math.Abs(got-want) > 1e-6 {
+		t.Errorf("%v, by hand %v; %v", got, want, err)
 	}
 }

@@ -329,6 +329,12 @@ func (w *world) readTerrain(ctx context.Context, rec study.LayerRecord, load Loa
 	nx, ny := int((box.MaxX-origin.X)/cell)+2, int((box.MaxY-origin.Y)/cell)+2
 	var bad error
 	g, err := terrain.Fill(origin, cell, nx, ny, func(p geo.XY) (float64, bool) {
+		if bad == nil {
+			bad = ctx.Err() // a large grid takes long, and nobody waits after an abort
+		}
+		if bad != nil {
+			return 0, false
+		}
 		ll, err := w.frame.Inverse(p)
 		if err != nil {
 			bad = err
