@@ -329,7 +329,7 @@ func (f *fitter) windDoubt(p windHere, hubM float64, y windYear) (*WindDoubt, er
 	if err != nil {
 		return nil, err
 	}
-	d := &WindDoubt{Sensitivity: y.farm.SpeedSensitivity}
+	d := &WindDoubt{Sensitivity: y.sensitivity()}
 	kind, _, _ := f.w.snap.Lookup("wind.data_kind")
 	_, d.Said = f.w.snap.Explicit["wind.data_kind"]
 	d.Source = kind.Value

@@ -20,7 +20,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 5
+const candidateEdition = 6
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {
@@ -221,7 +221,7 @@ func (k *reckoner) key(w *world) string {
 	h.int(k.trials)
 	h.int(int(k.seed))
 	for _, key := range w.snap.Keys() {
-		for _, prefix := range []string{"climate.", "land.", "grid.", "energy.", "inventory.", "wind.", "solar."} {
+		for _, prefix := range []string{"climate.", "land.", "grid.", "energy.", "inventory.", "wind.", "solar.", "weather."} {
 			if strings.HasPrefix(key, prefix) {
 				if s, _, in := w.snap.Lookup(key); in {
 					h.text(key)
@@ -304,6 +304,9 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		return nil, err
 	}
 	linkFacts(l, f)
+	if err := fr.matchFacts(o, s, r, l, f); err != nil {
+		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
+	}
 	c.Connection = l.conn
 	c.Chain = r.Chain
 	for _, n := range r.Notices {

@@ -73,6 +73,7 @@ type fitter struct {
 	sunWhy  string       // monthly sunlight that cannot be read
 	hours   *weatherFile // nil without a file of hours of sun
 	blowing *windHours   // nil without one of wind
+	used    *usedHours   // nil without hours of demand
 	hourly  *sunlight    // the months of hours
 	windKey string       // digest of the settings of wind
 	assets  []asset      // lines and substations
@@ -114,6 +115,7 @@ func (w *world) newFitter(ctx context.Context, cache Cache) (*fitter, error) {
 		return nil, err
 	}
 	f.blowing = w.windHours()
+	f.used = w.usedHours()
 	f.others = w.neighbours()
 	// Sunlight that cannot be read leaves the sun unknown, and says why; wind goes on.
 	if f.sun, err = w.sunlight(); err != nil {
@@ -489,7 +491,7 @@ func (f *fitter) fitWind(e *overlay.Engine, o option, s site, g groundResult, li
 	if err != nil {
 		return err
 	}
-	r.WindSigma, r.WindShared, r.WindOwn, err = f.windSpread(parts, res.farm.SpeedSensitivity)
+	r.WindSigma, r.WindShared, r.WindOwn, err = f.windSpread(parts, res.sensitivity())
 	return err
 }
 

@@ -102,6 +102,7 @@ var factLeaves = []scoring.Leaf{
 	{Name: "connection_route_loss_frac", Unit: "1", Title: "Loss in the connection at the central detour"},
 	{Name: "connection_route_rise_frac", Unit: "1", Title: "Voltage rise at the central detour"},
 	{Name: "connection_spare_kw", Unit: "kW", Title: "Spare capacity at connection"},
+	{Name: "used_at_once_share", Unit: "1", Title: "Share of the delivered energy that the district uses in the very hour"},
 	{Name: "curtailed_share", Unit: "1", Title: "Share of the energy above what may flow"},
 	{Name: "circuits_lv", Unit: "1", Title: "Low-voltage circuits"},
 	{Name: "circuits_mv", Unit: "1", Title: "Medium-voltage circuits"},
@@ -117,6 +118,7 @@ var settingLeaves = []struct{ leaf, setting, unit, title string }{
 	{"grid_decline_per_yr", "climate.grid_decline_per_yr", "1/yr", "Yearly decline of the grid factor"},
 	{"household_mwh_per_yr", "energy.household_mwh_per_yr", "MWh/yr", "Yearly use of a household"},
 	{"agreed_limit_kw", "grid.export_limit_kw", "kW", "Agreed export limit"},
+	{"unsold_share", "energy.unsold_surplus_share", "1", "Share of the surplus that nobody takes"},
 	{"demand_mwh_per_yr", "energy.demand_mwh_per_yr", "MWh/yr", "Yearly use of the district"},
 }
 

@@ -43,7 +43,7 @@ var togetherShares = []float64{0.8, 0.6, 0.4}
 // together gives what wind and sun give hour by hour, and reckons what comes through limitKW; nil where the hours of
 // the study do not tell both, or a yield is not known.
 func (f *fitter) together(o option, s site, r fitResult, limitKW float64) (*Together, error) {
-	if r.WindKW == 0 || r.SolarKW == 0 || r.WindMWh.Why != "" || r.SolarMWh.Why != "" || f.blowing == nil || f.blowing.why != "" || f.hours == nil || f.hours.climate == nil {
+	if r.WindKW == 0 || r.SolarKW == 0 || r.WindMWh.Why != "" || r.SolarMWh.Why != "" || !f.hoursOfWind() || !f.hoursOfSun() {
 		return nil, nil
 	}
 	hours, err := f.hours.climate.Hours()
@@ -129,6 +129,12 @@ func losing(parts [][]float64, ratedKW, hoursPerValue float64) (float64, error) 
 	}
 	return limits[0], nil
 }
+
+// hoursOfWind reports whether the study has hours of wind that can be read.
+func (f *fitter) hoursOfWind() bool { return f.blowing != nil && f.blowing.why == "" }
+
+// hoursOfSun reports the same of sunlight.
+func (f *fitter) hoursOfSun() bool { return f.hours != nil && f.hours.climate != nil }
 
 // share gives the part of the energy that is cut off by what may flow.
 func (t *Together) share() float64 {

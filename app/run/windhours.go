@@ -9,6 +9,7 @@ import (
 
 	"groundtally/app/study"
 	"groundtally/geo"
+	"groundtally/scoring/params"
 	"groundtally/scoring/units"
 	"groundtally/scoring/wind"
 )
@@ -353,7 +354,7 @@ func (f *fitter) windParts(p windHere, hubM, wakeLoss float64) (wind.Components,
 	out := wind.Components{
 		{Name: partMeasurement, Title: "measurement or model", SpeedFrac: measured, Shared: true},
 		{Name: partLongTerm, Title: "how well it stands for many years", SpeedFrac: long, Shared: true},
-		{Name: partVertical, Title: "from its height to the hub", SpeedFrac: math.Abs(math.Log(hubM/p.heightM)) * (alpha.High - alpha.Low) / (2 * z95), Shared: true},
+		{Name: partVertical, Title: "from its height to the hub", SpeedFrac: math.Abs(math.Log(hubM/p.heightM)) * (alpha.High - alpha.Low) / (2 * params.Z95), Shared: true},
 		{Name: partHorizontal, Title: "from its place to the site", SpeedFrac: across},
 		{Name: partCurve, Title: "power curve and losses", EnergyFrac: get("sigma_performance_frac").Central, Shared: true},
 		{Name: partWakes, Title: "wakes", EnergyFrac: get("sigma_of_wake_loss").Central * wakeLoss},
@@ -375,8 +376,15 @@ func (f *fitter) windParts(p windHere, hubM, wakeLoss float64) (wind.Components,
 	return out, failed
 }
 
-// z95 is the 95th percentile of the standard normal distribution.
-const z95 = 1.6448536269514722
+// mostSensitive bounds the per cent of energy for each per cent of speed: where machines hardly run, the quotient says
+// little.
+const mostSensitive = 5
+
+// sensitivity gives the per cent of energy for each per cent of speed, without its sign: where storms stop the machines,
+// more wind gives less.
+func (y windYear) sensitivity() float64 {
+	return math.Min(mostSensitive, math.Abs(y.farm.SpeedSensitivity))
+}
 
 // windSpread gives the standard deviations of a wind yield: of one year, and of the long-term mean what all sites share
 // and what is of this one. The weather of a year is shared.

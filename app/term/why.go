@@ -13,9 +13,9 @@ import (
 )
 
 var verbWhy = verb{
-	name: "why", usage: "why STUDY.gpkg SITE PLANT [KEY] [--frozen NAME]", summary: "unfolds a candidate, or one consequence", places: [2]int{3, 4},
+	name: "why", usage: "why STUDY.gpkg SITE PLANT [KEY] [--against SITE/PLANT] [--frozen NAME]", summary: "unfolds a candidate, or one consequence", places: [2]int{3, 4},
 	more:    "With a key: the figure, its formula, and indented below it the figures that go into it, down to the\nmeasured facts and cited factors, so that it can be done again by hand.",
-	options: []option{frozenOption, coresOption},
+	options: []option{againstOption, frozenOption, coresOption},
 	run: func(c *call) (int, error) {
 		if len(c.args.places) == 4 && !c.knownKey(c.args.places[3]) {
 			if _, inGraph := c.Params.Graph.Slot(c.args.places[3]); !inGraph {
@@ -62,8 +62,27 @@ var verbWhy = verb{
 			if err != nil {
 				return 0, err
 			}
+			var drivers []run.Driver
+			var trials int
+			var other *against
+			if _, inGraph := c.Params.Graph.Slot(key); inGraph && cand.Status == run.Fitted {
+				accounts, err := run.NewAccounts(c.Params, snap)
+				if err != nil {
+					return 0, err
+				}
+				if drivers, trials, err = accounts.Drivers(cand, key); err != nil {
+					return 0, err
+				}
+				if other, err = c.against(r, accounts, snap, cand, key); err != nil {
+					return 0, err
+				}
+			}
 			if c.json {
-				c.printJSON(map[string]any{"study": c.args.places[0], "site": cand.Site, "plant": cand.Plant, "key": key, "unfolding": u})
+				answer := map[string]any{"study": c.args.places[0], "site": cand.Site, "plant": cand.Plant, "key": key, "unfolding": u, "drivers": driversJSON(drivers), "trials": trials}
+				if other != nil {
+					answer["against"] = other
+				}
+				c.printJSON(answer)
 				return ExitDone, nil
 			}
 			c.say("%s of %s with %s. Each figure follows by its formula from the central values one step further in.", key, cand.Site, cand.Plant)
@@ -77,6 +96,11 @@ var verbWhy = verb{
 			p.unfold(u, 0)
 			if key == "buildable_area_ha" {
 				c.areas(cand)
+			}
+			c.sayDrivers(drivers, trials)
+			if other != nil {
+				c.say("")
+				c.say("%s", other.words)
 			}
 			for _, n := range p.notices {
 				c.say("notice: %s", present.Sentence(n, nil))

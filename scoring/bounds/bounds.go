@@ -4,7 +4,6 @@ package bounds
 import (
 	"errors"
 	"fmt"
-	"math"
 )
 
 // ErrInput is wrapped by every error about a number outside its range.
@@ -16,7 +15,7 @@ func Error(name string, v float64, want string) error {
 }
 
 // Finite reports whether v is neither NaN nor infinite.
-func Finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
+func Finite(v float64) bool { return v-v == 0 } // NaN and infinities less themselves are NaN
 
 // NonNegative asks for a finite number of 0 or more.
 func NonNegative(name string, v float64) error {

@@ -89,11 +89,8 @@ func (g Grid) check() error {
 // E_1 firstYearKWh delivered, kWh; d degradationPerYr, 0 to below 1; EF_0, δ in grid. Years that are not
 // whole are interpolated by the closed form.
 func DisplacedT(firstYearKWh, degradationPerYr, years float64, grid Grid) (float64, error) {
-	if err := errors.Join(bounds.NonNegative("energy delivered", firstYearKWh), bounds.NonNegative("years", years), grid.check()); err != nil {
+	if err := displacedInput(firstYearKWh, degradationPerYr, years, grid); err != nil {
 		return 0, err
-	}
-	if !(degradationPerYr >= 0 && degradationPerYr < 1) {
-		return 0, bounds.Error("degradation", degradationPerYr, "0 to below 1")
 	}
 	a := firstYearKWh * grid.KgPerKWh / units.KgPerT
 	lnq := math.Log1p(-degradationPerYr) + math.Log1p(-grid.DeclinePerYr)
@@ -101,6 +98,16 @@ func DisplacedT(firstYearKWh, degradationPerYr, years float64, grid Grid) (float
 		return a * years, nil
 	}
 	return a * math.Expm1(years*lnq) / math.Expm1(lnq), nil
+}
+
+func displacedInput(firstYearKWh, degradationPerYr, years float64, grid Grid) error {
+	if err := errors.Join(bounds.NonNegative("energy delivered", firstYearKWh), bounds.NonNegative("years", years), grid.check()); err != nil {
+		return err
+	}
+	if !(degradationPerYr >= 0 && degradationPerYr < 1) {
+		return bounds.Error("degradation", degradationPerYr, "0 to below 1")
+	}
+	return nil
 }
 
 // Payback is a time, or the statement that it never comes. Yr is zero when Never.
@@ -127,15 +134,19 @@ func PaybackYears(causedTCO2e, firstYearKWh, degradationPerYr float64, grid Grid
 	if err := bounds.NonNegative("life", lifeYr); err != nil {
 		return Payback{}, err
 	}
-	a, err := DisplacedT(firstYearKWh, degradationPerYr, 1, grid)
-	if err != nil {
+	if err := displacedInput(firstYearKWh, degradationPerYr, 1, grid); err != nil {
 		return Payback{}, err
 	}
 	if causedTCO2e <= 0 {
 		return Payback{}, nil
 	}
+	a := firstYearKWh * grid.KgPerKWh / units.KgPerT
 	lnq := math.Log1p(-degradationPerYr) + math.Log1p(-grid.DeclinePerYr)
-	left := -math.Expm1(lnq) * causedTCO2e // G·(1−q)
+	fall := math.Expm1(lnq)
+	if lnq != 0 {
+		a = a * fall / fall // DisplacedT of one year, to the digit
+	}
+	left := -fall * causedTCO2e // G·(1−q)
 	if a <= 0 || left >= a {
 		return Payback{Never: true}, nil
 	}

@@ -42,6 +42,16 @@ func TestCheckTable(t *testing.T) {
 					t.Fatalf("%+v, %v", p, err)
 				}
 				got = p.Yr
+			case "drained_gas":
+				got = ok(DrainedGas{CO2: in["co2"], CH4: in["ch4"], N2O: in["n2o"], Dissolved: in["dissolved"], DitchCH4: in["ditch"]}.TotalTCO2ePerHaYr())
+			case "line_crossing":
+				same := func(x float64) Span { return Span{x, x, x} }
+				lines, err := Lines(LineInput{CausedTCO2e: same(in["G"]), FirstYearKWh: same(in["kwh"]), LifeYr: in["life"], DisplacedShare: same(1)},
+					[]NamedGrid{{Name: "user", Grid: Grid{KgPerKWh: in["ef"], DeclinePerYr: in["decline"]}}})
+				if err != nil {
+					t.Fatal(err)
+				}
+				got = lines[0].Central.Yr
 			case "co2_from_carbon":
 				got = ok(CO2FromCarbonT(in["t"]))
 			case "rescaled_solar":

@@ -41,7 +41,10 @@ func Quantities() []scoring.Quantity {
 		{Name: "net_displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions spared, net", Formula: "displaced over life − ghg_life_tco2e", Source: "identity",
 			Inputs: []string{"displaced_tco2e_life", "ghg_life_tco2e"}, Eval: plain(func(x []float64) float64 { return x[0] - x[1] })},
 		{Name: "carbon_payback_yr", Unit: "yr", Title: "Carbon payback time", Formula: "years until the emissions displaced equal those caused, all booked at the start; never beyond the life", Source: "identity",
-			Inputs: []string{"ghg_life_tco2e", "delivered_mwh_per_yr", "ageing_per_yr", "grid_factor_g_per_kwh", "displacement_share", "grid_decline_per_yr", "life_yr"}, Eval: scoring.Custom(func(in []scoring.Value) scoring.Value {
+			Inputs: []string{"ghg_life_tco2e", "delivered_mwh_per_yr", "ageing_per_yr", "grid_factor_g_per_kwh", "displacement_share", "grid_decline_per_yr", "life_yr"}, Eval: scoring.Eval{Numbers: func(x []float64) (float64, bool) {
+				p, err := PaybackYears(x[0], x[1]*units.KWhPerMWh, x[2], Grid{KgPerKWh: x[3] * x[4] / units.GPerKg, DeclinePerYr: x[5]}, x[6])
+				return p.Yr, err == nil && !p.Never
+			}, Values: func(in []scoring.Value) scoring.Value {
 				if v, missing := scoring.FirstMissing(in); missing {
 					return v
 				}
@@ -53,6 +56,6 @@ func Quantities() []scoring.Quantity {
 					return scoring.NeverValue()
 				}
 				return scoring.Num(p.Yr)
-			})},
+			}}},
 	}
 }

@@ -2,6 +2,7 @@ package energy
 
 import (
 	"errors"
+	"maps"
 	"math"
 	"math/rand/v2"
 	"os"
@@ -9,7 +10,9 @@ import (
 	"testing"
 
 	"groundtally/assets/citedtable"
+	"groundtally/scoring"
 	"groundtally/scoring/params"
+	"groundtally/scoring/solar"
 	"groundtally/scoring/units"
 )
 
@@ -137,11 +140,59 @@ func exampleValue(t testing.TB, quantity, plant string) float64 {
 
 func crowding(step, w float64) (DensityOptima, error) {
 	var pts []DensityPoint
-	for i := 1; float64(i)*step <= 120; i++ {
-		n := float64(i) * step
-		pts = append(pts, DensityPoint{UnitsPerHa: n, EnergyMJPerHa: 100 * n / (1 + n/4), InputMJPerHa: 50 + 2*n})
+	for _, p := range crowdingPoints(step) {
+		pts = append(pts, DensityPoint{UnitsPerHa: p.UnitsPerHa, EnergyMJPerHa: p.EnergyMJPerHa, InputMJPerHa: p.InputMJPerHa})
 	}
 	return FindDensityOptima(pts, w)
+}
+
+// crowdingPoints samples E = 100n/(1+n/4), I = 50+2n.
+func crowdingPoints(step float64) []CrowdingPoint {
+	var pts []CrowdingPoint
+	for i := 1; float64(i)*step <= 120; i++ {
+		n := float64(i) * step
+		pts = append(pts, CrowdingPoint{UnitsPerHa: n, EnergyMJPerHa: 100 * n / (1 + n/4), InputMJPerHa: 50 + 2*n})
+	}
+	return pts
+}
+
+// inverse finds the input of a monotone function that gives the wanted value.
+func inverse(t testing.TB, want, low, high float64, f func(x float64) (float64, error)) float64 {
+	t.Helper()
+	x, found, err := SwapWithin(low, high, func(x float64) (float64, error) {
+		y, err := f(x)
+		return y - want, err
+	})
+	if err != nil || !found {
+		t.Fatalf("no input gives %v: %v", want, err)
+	}
+	return x
+}
+
+func without(in map[string]float64, name string) map[string]float64 {
+	out := maps.Clone(in)
+	delete(out, name)
+	return out
+}
+
+// quantityValue evaluates one quantity of the graph.
+func quantityValue(t testing.TB, name string, x ...float64) float64 {
+	t.Helper()
+	for _, q := range Quantities() {
+		if q.Name == name {
+			in := make([]scoring.Value, len(x))
+			for i := range x {
+				in[i] = scoring.Num(x[i])
+			}
+			v := q.Eval.Values(in)
+			if len(in) != len(q.Inputs) || !v.OK() {
+				t.Fatalf("%s of %v is %+v", name, x, v)
+			}
+			return v.X
+		}
+	}
+	t.Fatalf("no quantity %q", name)
+	return 0
 }
 
 func bill(t testing.TB, inv *params.Inventory, in map[string]float64) float64 {
@@ -220,6 +271,76 @@ func TestCheckTable(t *testing.T) {
 				got = map[string]float64{"density_return": o.Return, "density_best_return": o.BestReturn, "density_net": o.Net, "density_best_net": o.BestNetMJPerHa}[c.Quantity]
 			case "saving_equivalent":
 				got = ok(SavingEquivalent(in["mwh"], in["dist_loss"], in["rebound"]))
+			case "saving_span":
+				r, err := Saving{DeliveredMWhPerYr: in["mwh"], DistributionLossFrac: Same(in["dist_loss"]), DirectRebound: Same(in["rebound"]), EconomyRebound: Same(in["rebound"])}.Equal()
+				if err != nil || r.NetKnown {
+					t.Fatalf("%+v, %v", r, err)
+				}
+				got = r.Direct.Central.MWhPerYr
+			case "mj_of_kwh":
+				got = in["kwh"] * units.MJPerKWh / units.MJPerTJ
+			case "means_product":
+				got = ok(PublishedMeans{ReturnPrimary: in["eroi"], PaybackYr: in["epbt"], LifeYr: in["T"]}.Product())
+			case "means_sigma", "means_cv":
+				// Two means of the same studies: their product alone tells the spread.
+				sigma, cv, err := PublishedMeans{ReturnPrimary: in["eroi"], PaybackYr: in["epbt"], LifeYr: in["T"]}.Spread()
+				if err != nil {
+					t.Fatal(err)
+				}
+				if got = sigma; c.Quantity == "means_cv" {
+					got = cv
+				}
+			case "yearly_behind_payback":
+				got = inverse(t, in["epbt"], 1, 1e6, func(annual float64) (float64, error) {
+					p, err := PaybackYears(in["mj"], annual, 0, 1)
+					return p.Yr, err
+				})
+			case "conversion_behind_payback":
+				got = inverse(t, in["mj"], 1e-3, 10, func(x float64) (float64, error) {
+					gj, err := CapitalFromPayback(in["epbt"], in["H"], x, 1)
+					return gj * units.MJPerGJ, err
+				})
+			case "bill_mass":
+				var ms []Mass
+				for _, name := range strings.Split(c.Text["of"], "+") {
+					kg, there := in[name]
+					if !there {
+						t.Fatalf("no mass of %q", name)
+					}
+					ms = append(ms, Mass{Material: name, Kg: kg})
+				}
+				if len(ms) != len(in) {
+					t.Fatalf("%d of %d masses are summed", len(ms), len(in))
+				}
+				got = ok(MassKg(ms))
+			case "manufacture_share_gj_per_mw":
+				got = bill(t, inv, without(in, "share")) / in["share"]
+			case "conductor_kg_per_km":
+				got = ok(ConductorKgPerKm(int(in["cores"]), in["mm2"], in["density"]))
+			case "per_lane_km":
+				got = in["per_lane_mile"] / units.KmPerMile
+			case "mw_per_km2":
+				got = units.MPerKm * units.MPerKm / units.M2PerHa / in["ha_per_mw"]
+			case "specific_yield":
+				got = quantityValue(t, "specific_yield_kwh_per_kw", in["gwh_per_ha_yr"]*units.MWhPerGWh, in["mw_per_ha"]*units.KWPerMW)
+			case "matched_power":
+				got = ok(MatchedPowerShare(in["eta"]))
+			case "row_shade_limit_deg":
+				// The lowest sun in the plane across the rows that shades nothing, from the solar engine.
+				low := inverse(t, 0.5, 0, 89, func(height float64) (float64, error) {
+					if solar.ShadedShare(90-height, in["tilt"], 0, in["gcr"]) > 0 {
+						return 0, nil
+					}
+					return 1, nil
+				})
+				got = low
+			case "crowding_net", "crowding_return", "crowding_best_net":
+				cr, err := NewCrowding(crowdingPoints(in["step"]), in["eta"], false, false)
+				if err != nil {
+					t.Fatal(err)
+				}
+				o := map[string]DensityOptima{"mixed": cr.Mixed, "electric": cr.Electric}[c.Text["currency"]]
+				got = map[string]float64{"crowding_net": o.Net, "crowding_return": o.Return, "crowding_best_net": o.BestNetMJPerHa}[c.Quantity]
 			default:
 				q, isExample := strings.CutPrefix(c.Quantity, "example_")
 				if !isExample {

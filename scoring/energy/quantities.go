@@ -115,7 +115,10 @@ func Quantities() []scoring.Quantity {
 				return mj / units.MJPerGWh, err
 			})},
 		{Name: "energy_payback_yr", Unit: "yr", Title: "Energy payback time", Formula: "I_delivered / (E_first year/η_G − I_upkeep), primary equivalent", Source: "IEA-PVPS T12 methodology guidelines",
-			Inputs: []string{"input_delivered_mj", "delivered_mwh_per_yr", "input_upkeep_mj_per_yr", "grid_efficiency"}, Eval: scoring.Custom(func(in []scoring.Value) scoring.Value {
+			Inputs: []string{"input_delivered_mj", "delivered_mwh_per_yr", "input_upkeep_mj_per_yr", "grid_efficiency"}, Eval: scoring.Eval{Numbers: func(x []float64) (float64, bool) {
+				p, err := PaybackYears(x[0], x[1]*units.MJPerMWh, x[2], x[3])
+				return p.Yr, err == nil && !p.Never
+			}, Values: func(in []scoring.Value) scoring.Value {
 				if v, missing := scoring.FirstMissing(in); missing {
 					return v
 				}
@@ -127,13 +130,21 @@ func Quantities() []scoring.Quantity {
 					return scoring.NeverValue()
 				}
 				return scoring.Num(p.Yr)
-			})},
+			}}},
 		{Name: "power_density_w_per_m2", Unit: "W/m2", Title: "Power per square metre", Formula: "delivered_mwh_per_yr / 8760 h / footprint_total_ha", Source: "van Zalk & Behrens 2018 for the definition",
 			Inputs: []string{"delivered_mwh_per_yr", "footprint_total_ha"}, Eval: plain(func(x []float64) float64 {
 				return x[0] * units.KWhPerMWh * units.WPerKW / units.HoursPerYear / (x[1] * units.M2PerHa)
 			})},
 		{Name: "demand_share_frac", Unit: "1", Title: "Share of local demand", Formula: "delivered_mwh_per_yr / demand_mwh_per_yr", Source: "identity",
 			Inputs: []string{"delivered_mwh_per_yr", "demand_mwh_per_yr"}, Eval: plain(func(x []float64) float64 { return x[0] / x[1] })},
+		{Name: "demand_met_frac", Unit: "1", Title: "Demand met at once", Formula: "delivered_mwh_per_yr × used_at_once_share / demand_mwh_per_yr; never above one", Source: "identity over the hours of a typical year",
+			Inputs: []string{"delivered_mwh_per_yr", "used_at_once_share", "demand_mwh_per_yr"}, Eval: plain(func(x []float64) float64 { return math.Min(1, x[0]*x[1]/x[2]) })},
+		{Name: "surplus_mwh_per_yr", Unit: "MWh/yr", Title: "Energy beyond local demand", Formula: "delivered_mwh_per_yr × (1 − used_at_once_share)", Source: "identity over the hours of a typical year",
+			Inputs: []string{"delivered_mwh_per_yr", "used_at_once_share"}, Eval: plain(func(x []float64) float64 { return x[0] * (1 - x[1]) })},
+		{Name: "eroi_used", Unit: "1", Title: "Return on energy used", Formula: "E_del·(1 − unsold_share × (1 − used_at_once_share)) / I_extended, electricity out over primary energy in; what is cut off is not in E_del", Source: murphy,
+			Inputs: []string{"delivered_mj_life", "input_extended_mj", "used_at_once_share", "unsold_share"}, Eval: guarded("eroi", func(x []float64) (float64, error) {
+				return Balance{DeliveredMJ: x[0], Inputs: Inputs{B3MJ: x[1]}}.EROIUsed(Unused{SurplusMJ: x[0] * (1 - x[2]), UnsoldFrac: x[3]})
+			})},
 		{Name: "saving_equivalent_mwh_per_yr", Unit: "MWh/yr", Title: "Saving that equals it", Formula: "delivered × (1 − λ_dist)/(1 − ρ)", Source: "Sorrell, Dimitropoulos & Sommerville 2009 for the rebound",
 			Inputs: []string{"delivered_mwh_per_yr", "distribution_loss_frac", "rebound_frac"}, Eval: guarded("saving", func(x []float64) (float64, error) { return SavingEquivalent(x[0], x[1], x[2]) })},
 		{Name: "households_equiv", Unit: "1", Title: "Households supplied", Formula: "delivered_mwh_per_yr / household_mwh_per_yr", Source: "identity",

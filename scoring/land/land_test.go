@@ -58,6 +58,10 @@ func TestCheckTable(t *testing.T) {
 				got = ok(HeatGJPerHaYr(in["w"]))
 			case "kcal_per_g":
 				got = ok(FoodEnergyMJPerKg(in["v"] * 100))
+			case "carbon_of_fuel_mj_per_kg":
+				got = units.GPerKg / in["g_per_mj"]
+			case "carbon_floor_mj_per_kg":
+				got = in["kj_per_mol"] / in["g_per_mol"] // kJ/g is MJ/kg
 			case "co2_to_carbon":
 				got = in["t"] / units.CO2PerC
 			case "soc":

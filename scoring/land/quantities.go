@@ -78,18 +78,41 @@ func Quantities() []scoring.Quantity {
 			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1] })},
 		{Name: "soil_carbon_gain_tc", Unit: "t C", Title: "Soil carbon gained", Formula: "fenced ploughland × stock/F_LU × (1 − F_LU) × shade factor × min(1, T/20)", Source: "IPCC 2019 Refinement vol. 4, F_LU of long-term cropland",
 			Inputs: []string{"fence_arable_ha", "soil_stock_tc_per_ha", "cropland_use_factor", "gain_pv_shade_multiplier", "life_yr", "soc_transition_yr", "peat_share"},
-			Eval: scoring.Custom(func(in []scoring.Value) scoring.Value {
+			Eval: scoring.Eval{Numbers: func(x []float64) (float64, bool) {
+				if x[0] == 0 {
+					return 0, false
+				}
+				y, err := GrassGainTC(x[0]*(1-x[6]), x[1]/x[2], x[2], x[3], x[4], x[5])
+				return y, err == nil
+			}, Values: func(in []scoring.Value) scoring.Value {
 				if in[0].OK() && in[0].X == 0 {
 					return scoring.NoneBecause("no change of land use that gains")
 				}
 				return scoring.NoneIsZero(guarded("soil_gain", func(x []float64) (float64, error) {
 					return GrassGainTC(x[0]*(1-x[6]), x[1]/x[2], x[2], x[3], x[4], x[5])
 				})).Values(in)
-			})},
+			}}},
 		{Name: "biomass_carbon_loss_tc", Unit: "t C", Title: "Plant carbon lost", Formula: "forest cleared × dry matter × (1 + root share) × carbon share", Source: "IPCC 2006 Guidelines vol. 4 tables 4.4 and 4.7",
 			Inputs: []string{"forest_ha", "forest_biomass_tdm_per_ha", "forest_root_ratio", "biomass_carbon_frac"}, Eval: guarded("biomass", func(x []float64) (float64, error) { return ForestCarbonTC(x[0], x[1], x[2], x[3]) })},
 		{Name: "regrowth_yr", Unit: "yr", Title: "Years to grow back", Formula: "the longer of: peat carbon lost / ((peat dug + drained) × growth of a bog); 20 yr for mineral soil", Source: "Nayak et al. 2008 for the growth of a bog; IPCC 2006 for the 20 yr",
-			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc", "peat_dug_ha", "peat_drained_ha", "regrowth_peat_tc_per_ha_yr", "soc_transition_yr"}, Eval: scoring.NoneIsZero(scoring.Custom(func(in []scoring.Value) scoring.Value {
+			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc", "peat_dug_ha", "peat_drained_ha", "regrowth_peat_tc_per_ha_yr", "soc_transition_yr"}, Eval: scoring.NoneIsZero(scoring.Eval{Numbers: func(x []float64) (float64, bool) {
+				mineral, peat := x[0], x[1]
+				if mineral <= 0 && peat <= 0 {
+					return 0, false
+				}
+				yr := 0.0
+				if mineral > 0 {
+					yr = x[5]
+				}
+				if peat > 0 {
+					r, err := RegrowthYears(peat, x[2]+x[3], x[4])
+					if err != nil || r.Never {
+						return 0, false
+					}
+					yr = max(yr, r.Yr)
+				}
+				return yr, true
+			}, Values: func(in []scoring.Value) scoring.Value {
 				if v, missing := scoring.FirstMissing(in); missing {
 					return v
 				}
@@ -112,7 +135,7 @@ func Quantities() []scoring.Quantity {
 					yr = max(yr, r.Yr)
 				}
 				return scoring.Num(yr)
-			}))},
+			}})},
 	}
 }
 

@@ -131,25 +131,6 @@ func (g *Graph) eval(i int, v []scoring.Value, buf []scoring.Value) scoring.Valu
 	return g.quantities[i].Eval.Values(buf)
 }
 
-// dependents gives the quantities, in order, that depend on any of the leaf slots.
-func (g *Graph) dependents(leaf []int) []int {
-	hot := make([]bool, g.Size())
-	for _, s := range leaf {
-		hot[s] = true
-	}
-	var out []int
-	for i := range g.quantities {
-		for _, s := range g.inputs[i] {
-			if hot[s] {
-				hot[len(g.leaves)+i] = true
-				out = append(out, i)
-				break
-			}
-		}
-	}
-	return out
-}
-
 // Reaches gives the slots of the leaves that a quantity depends on, sorted; a leaf reaches itself, and
 // a name that is not in the graph reaches nothing.
 func (g *Graph) Reaches(name string) []int {

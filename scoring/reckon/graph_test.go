@@ -87,7 +87,7 @@ func TestTrialsGivePercentiles(t *testing.T) {
 	}
 }
 
-func BenchmarkTrials(b *testing.B) {
+func BenchmarkTrialsOfAChain(b *testing.B) {
 	var qs []scoring.Quantity
 	for i := range 40 {
 		in := "a"

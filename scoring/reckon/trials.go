@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"sync"
 
 	"groundtally/scoring"
 )
@@ -36,117 +37,462 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 		return out, nil
 	}
 	n := len(drawn[0].Values)
-	leafSlots := make([]int, len(drawn))
-	for i, d := range drawn {
+	for _, d := range drawn {
 		if len(d.Values) != n {
 			return nil, fmt.Errorf("trials: leaf %q has %d draws, want %d", g.leaves[d.Slot].Name, len(d.Values), n)
 		}
-		leafSlots[i] = d.Slot
 	}
-	hot := g.dependents(leafSlots)
-	moves := make([]bool, g.Size())
-	for _, i := range hot {
-		moves[len(g.leaves)+i] = true
-	}
-	for _, s := range leafSlots {
-		moves[s] = true
-	}
-	work := g.bench(v)
-	samples := make([][]float64, len(want))
+	b := benches.Get().(*bench)
+	defer benches.Put(b)
+	b.begin(g, v, drawn, want)
+	samples := b.samples(len(want), n)
 	for i, s := range want {
-		if moves[s] {
-			out[i].Moves = true
-			samples[i] = make([]float64, 0, n)
-		}
+		out[i].Moves = b.moves[s]
 	}
-	for t := range n {
-		work.trial(g, drawn, hot, t)
+	for from := 0; from < n; from += blockTrials {
+		to := min(from+blockTrials, n)
+		b.block(g, drawn, from, to)
 		for i, s := range want {
-			if !moves[s] {
-				continue
-			}
-			switch {
-			case !work.odd[s]:
-				samples[i] = append(samples[i], work.x[s])
-			case work.val[s].State == scoring.Never:
-				out[i].Nevers++
+			if out[i].Moves {
+				b.collect(s, to-from, samples[i], &out[i])
 			}
 		}
 	}
 	for i := range want {
-		if s := samples[i]; len(s) > 0 {
-			out[i].Numbers = len(s)
-			out[i].Low, out[i].Median, out[i].High = percentile(s, 0.1), percentile(s, 0.5), percentile(s, 0.9)
+		if s := samples[i][:out[i].Numbers]; len(s) > 0 {
+			p := b.pick.percentiles(s, [...]float64{0.1, 0.5, 0.9})
+			out[i].Low, out[i].Median, out[i].High = p[0], p[1], p[2]
 		}
 	}
 	return out, nil
 }
 
-// bench is a value vector for trials: numbers apart from the few that are none, so that the usual case
-// moves eight bytes a value.
-type bench struct {
-	x   []float64
-	odd []bool
-	val []scoring.Value // of those that are no number
-
-	in  []scoring.Value // room for the inputs of one quantity
-	buf [24]float64
-}
-
-func (g *Graph) bench(v []scoring.Value) *bench {
-	b := &bench{x: make([]float64, len(v)), odd: make([]bool, len(v)), val: make([]scoring.Value, len(v)), in: make([]scoring.Value, 0, 24)}
-	for i := range v {
-		b.put(i, v[i])
-	}
-	return b
-}
-
-func (b *bench) put(slot int, v scoring.Value) {
-	if v.OK() {
-		b.x[slot], b.odd[slot] = v.X, false
-		return
-	}
-	b.val[slot], b.odd[slot] = v, true
-}
-
-func (b *bench) value(slot int) scoring.Value {
-	if b.odd[slot] {
-		return b.val[slot]
-	}
-	return scoring.Value{X: b.x[slot]}
-}
-
-// trial sets the drawn leaves of trial t and evaluates what depends on them.
-func (b *bench) trial(g *Graph, drawn []Drawn, hot []int, t int) {
+// Samples evaluates the graph in the first n trials and gives the wanted slots' values, per trial. The
+// vector v is left as it was.
+func (g *Graph) Samples(v []scoring.Value, drawn []Drawn, want []int, n int) [][]scoring.Value {
 	for _, d := range drawn {
-		b.x[d.Slot], b.odd[d.Slot] = d.Values[t], false
+		n = min(n, len(d.Values))
 	}
-	in := b.in
-	buf := &b.buf
-	for _, i := range hot {
-		q := &g.quantities[i]
-		numbers := q.Eval.Numbers != nil
-		x := buf[:0]
+	b := benches.Get().(*bench)
+	defer benches.Put(b)
+	b.begin(g, v, drawn, want)
+	out := make([][]scoring.Value, n)
+	rows := make([]scoring.Value, n*len(want))
+	for from := 0; from < n; from += blockTrials {
+		to := min(from+blockTrials, n)
+		b.block(g, drawn, from, to)
+		for t := range to - from {
+			row := rows[(from+t)*len(want):][:len(want):len(want)]
+			for i, s := range want {
+				row[i] = b.value(s, t)
+			}
+			out[from+t] = row
+		}
+	}
+	return out
+}
+
+// blockTrials is how many trials are reckoned quantity by quantity: few enough for the columns to stay near
+// the processor, enough for the cost of preparing a quantity to vanish.
+const blockTrials = 256
+
+// form says how a slot's values are held for a block of trials.
+type form uint8
+
+const (
+	still   form = iota // the same value in every trial
+	numbers             // a number in every trial
+	mixed               // no number in some trials
+)
+
+// bench holds the columns of a block of trials. Quantities are pure, so that one whose inputs stand still is
+// evaluated once, and the order of evaluation changes no digit.
+type bench struct {
+	moves []bool // by slot: some drawn leaf reaches it
+	hot   []int  // quantities to evaluate, in order: those that move and that a wanted one needs
+	form  []form
+	one   []scoring.Value   // of those that stand still
+	x     [][]float64       // numbers; of mixed ones 0 where there is none
+	val   [][]scoring.Value // of mixed ones
+	own   [][]float64       // the room of x that belongs to the bench
+
+	need   []bool
+	in     []scoring.Value
+	arg    []float64
+	at     []int // inputs that do not stand still
+	room   [mostInputs]float64
+	sample [][]float64
+	pick   picker
+}
+
+var benches = sync.Pool{New: func() any { return &bench{} }}
+
+func sized[T any](a []T, n int) []T {
+	if cap(a) < n {
+		return make([]T, n)
+	}
+	return a[:n]
+}
+
+// samples gives room for k samples of n numbers.
+func (b *bench) samples(k, n int) [][]float64 {
+	b.sample = sized(b.sample, k)
+	for i := range b.sample {
+		b.sample[i] = sized(b.sample[i], n)
+	}
+	return b.sample
+}
+
+// begin takes the central vector and finds what must be evaluated.
+func (b *bench) begin(g *Graph, v []scoring.Value, drawn []Drawn, want []int) {
+	n, leaves := g.Size(), len(g.leaves)
+	b.moves, b.need = sized(b.moves, n), sized(b.need, n)
+	clear(b.moves)
+	clear(b.need)
+	b.form, b.one = sized(b.form, n), sized(b.one, n)
+	clear(b.form)
+	copy(b.one, v)
+	b.x, b.own, b.val = sized(b.x, n), sized(b.own, n), sized(b.val, n)
+	for _, d := range drawn {
+		b.moves[d.Slot] = true
+	}
+	for _, s := range want {
+		b.need[s] = true
+	}
+	for i := len(g.quantities) - 1; i >= 0; i-- {
+		if b.need[leaves+i] {
+			for _, s := range g.inputs[i] {
+				b.need[s] = true
+			}
+		}
+	}
+	b.hot = b.hot[:0]
+	for i := range g.quantities {
 		for _, s := range g.inputs[i] {
-			if b.odd[s] {
-				numbers = false
+			if b.moves[s] {
+				b.moves[leaves+i] = true
+				if b.need[leaves+i] {
+					b.hot = append(b.hot, i)
+				}
 				break
 			}
-			x = append(x, b.x[s])
 		}
-		slot := len(g.leaves) + i
-		if numbers {
-			if y, ok := q.Eval.Numbers(x); ok && !math.IsNaN(y) && !math.IsInf(y, 0) {
-				b.x[slot], b.odd[slot] = y, false
+	}
+}
+
+// block sets the drawn leaves to the trials from..to and evaluates what depends on them.
+func (b *bench) block(g *Graph, drawn []Drawn, from, to int) {
+	for _, d := range drawn {
+		b.form[d.Slot], b.x[d.Slot] = numbers, d.Values[from:to]
+	}
+	for _, i := range b.hot {
+		b.quantity(g, i, to-from)
+	}
+}
+
+// value gives a slot's value in trial t of the block.
+func (b *bench) value(slot, t int) scoring.Value {
+	switch b.form[slot] {
+	case numbers:
+		return scoring.Value{X: b.x[slot][t]}
+	case mixed:
+		return b.val[slot][t]
+	}
+	return b.one[slot]
+}
+
+// quantity evaluates quantity i in the n trials of the block.
+func (b *bench) quantity(g *Graph, i, n int) {
+	q, inputs, slot := &g.quantities[i], g.inputs[i], len(g.leaves)+i
+	b.in, b.arg, b.at = sized(b.in, len(inputs)), sized(b.arg, len(inputs)), b.at[:0]
+	plain, missing, none := q.Eval.Numbers != nil, false, false
+	for k, s := range inputs {
+		switch b.form[s] {
+		case still:
+			v := b.one[s]
+			b.in[k], b.arg[k] = v, v.X
+			switch v.State {
+			case scoring.Number:
+			case scoring.None:
+				none = true
+			default:
+				missing = true
+			}
+			continue
+		case mixed:
+			plain = false
+		}
+		b.in[k] = scoring.Value{}
+		b.at = append(b.at, k)
+	}
+	// What has Numbers is made by scoring.Plain, Guarded or NoneIsZero: missing data decide the answer
+	// whatever the numbers are, and an effect that does not arise either decides it too or counts as zero.
+	once := len(b.at) == 0 || plain && missing
+	if plain && none && !once {
+		once = q.Eval.Values(b.in).State == scoring.None
+	}
+	if once {
+		b.form[slot], b.one[slot] = still, q.Eval.Values(b.in)
+		return
+	}
+	b.own[slot] = sized(b.own[slot], blockTrials)
+	out := b.own[slot][:n]
+	b.x[slot] = out
+	first := 0
+	if plain {
+		first = b.fast(q.Eval.Numbers, inputs, out)
+	}
+	if first == n {
+		b.settle(slot, out)
+		return
+	}
+	b.slow(&q.Eval, inputs, slot, out, first)
+}
+
+// fast fills a column with numbers from functions of numbers and gives how many trials it did: all, or those
+// before the first that gives no finite number.
+func (b *bench) fast(f func(x []float64) (float64, bool), inputs []int, out []float64) int {
+	if len(inputs) > mostInputs {
+		return 0
+	}
+	room := &b.room
+	copy(room[:], b.arg)
+	x := room[:len(inputs)]
+	var cols [mostInputs][]float64
+	var at [mostInputs]int
+	for i, k := range b.at {
+		at[i], cols[i] = k, b.x[inputs[k]][:len(out)]
+	}
+	// Most quantities have few inputs that move; the cases differ in speed alone.
+	switch k0, k1, k2 := at[0], at[1], at[2]; len(b.at) {
+	case 1:
+		for t, x0 := range cols[0] {
+			room[k0%mostInputs] = x0
+			y, ok := f(x)
+			if !ok || y-y != 0 {
+				return t
+			}
+			out[t] = y
+		}
+	case 2:
+		c1 := cols[1][:len(out)]
+		for t, x0 := range cols[0][:len(out)] {
+			room[k0%mostInputs], room[k1%mostInputs] = x0, c1[t]
+			y, ok := f(x)
+			if !ok || y-y != 0 {
+				return t
+			}
+			out[t] = y
+		}
+	case 3:
+		c1, c2 := cols[1][:len(out)], cols[2][:len(out)]
+		for t, x0 := range cols[0][:len(out)] {
+			room[k0%mostInputs], room[k1%mostInputs], room[k2%mostInputs] = x0, c1[t], c2[t]
+			y, ok := f(x)
+			if !ok || y-y != 0 {
+				return t
+			}
+			out[t] = y
+		}
+	default:
+		moving, places := cols[:len(b.at)], at[:len(b.at)]
+		for t := range out {
+			for i, c := range moving {
+				room[places[i]%mostInputs] = c[t]
+			}
+			y, ok := f(x)
+			if !ok || y-y != 0 {
+				return t
+			}
+			out[t] = y
+		}
+	}
+	return len(out)
+}
+
+// mostInputs is how many inputs a quantity may have to be reckoned in the fast way.
+const mostInputs = 32
+
+// settle marks a column of numbers, as standing still where all are the same.
+func (b *bench) settle(slot int, x []float64) {
+	b.form[slot] = numbers
+	one := math.Float64bits(x[0])
+	for _, y := range x[1:] {
+		if math.Float64bits(y) != one {
+			return
+		}
+	}
+	b.form[slot], b.one[slot] = still, scoring.Value{X: x[0]}
+}
+
+// slow fills a column from the trial first on, whatever the states of inputs and answers.
+func (b *bench) slow(e *scoring.Eval, inputs []int, slot int, out []float64, first int) {
+	b.val[slot] = sized(b.val[slot], blockTrials)
+	val := b.val[slot][:len(out)]
+	for t := range first {
+		val[t] = scoring.Value{X: out[t]}
+	}
+	odd := false
+	for t := first; t < len(out); t++ {
+		all := e.Numbers != nil
+		for _, k := range b.at {
+			if v := b.value(inputs[k], t); v.OK() {
+				b.in[k], b.arg[k] = v, v.X
+			} else {
+				b.in[k], all = v, false
+			}
+		}
+		for _, v := range b.in {
+			all = all && v.OK()
+		}
+		if all {
+			if y, ok := e.Numbers(b.arg); ok && y-y == 0 {
+				out[t], val[t] = y, scoring.Value{X: y}
 				continue
 			}
 		}
-		in = in[:0]
-		for _, s := range g.inputs[i] {
-			in = append(in, b.value(s))
-		}
-		b.put(slot, q.Eval.Values(in))
+		v := e.Values(b.in)
+		out[t], val[t] = v.X, v
+		odd = odd || !v.OK()
 	}
+	if !odd {
+		b.settle(slot, out)
+		return
+	}
+	b.form[slot] = mixed
+	for _, v := range val[1:] {
+		if v != val[0] {
+			return
+		}
+	}
+	b.form[slot], b.one[slot] = still, val[0]
+}
+
+// collect adds a slot's numbers of a block of n trials to its sample and counts the rest.
+func (b *bench) collect(slot, n int, sample []float64, out *Spread) {
+	to := sample[out.Numbers:]
+	switch b.form[slot] {
+	case numbers:
+		copy(to, b.x[slot][:n])
+		out.Numbers += n
+	case still:
+		switch v := b.one[slot]; v.State {
+		case scoring.Number:
+			for t := range n {
+				to[t] = v.X
+			}
+			out.Numbers += n
+		case scoring.Never:
+			out.Nevers += n
+		}
+	case mixed:
+		for _, v := range b.val[slot][:n] {
+			switch v.State {
+			case scoring.Number:
+				sample[out.Numbers] = v.X
+				out.Numbers++
+			case scoring.Never:
+				out.Nevers++
+			}
+		}
+	}
+}
+
+// picker finds order statistics of large samples.
+type picker struct {
+	bucket []uint8
+	few    []float64
+}
+
+const pickBuckets = 256
+
+// percentiles gives the values at the positions (n-1)p of the sorted sample, linear between neighbours. The
+// sample is sorted into buckets of equal width, and only those that hold a position are sorted within. It may
+// reorder the sample.
+func (k *picker) percentiles(a []float64, p [3]float64) (out [3]float64) {
+	n := len(a)
+	lo, hi := a[0], a[0]
+	for _, v := range a {
+		if v < lo {
+			lo = v
+		}
+		if v > hi {
+			hi = v
+		}
+	}
+	scale := pickBuckets / (hi - lo)
+	if n < 4*pickBuckets || !(scale > 0) || math.IsInf(scale, 0) || !k.pick(a, p, lo, scale, &out) {
+		for i := range p {
+			out[i] = percentile(a, p[i])
+		}
+	}
+	return out
+}
+
+// pick reports whether the buckets parted the sample well enough to be worth while.
+func (k *picker) pick(a []float64, p [3]float64, lo, scale float64, out *[3]float64) bool {
+	n := len(a)
+	k.bucket = sized(k.bucket, n)
+	bucket := k.bucket
+	var count [pickBuckets]int
+	for i, v := range a {
+		// Rounding keeps the order of v, so that of the buckets is that of the values.
+		j := uint8(min(int((v-lo)*scale), pickBuckets-1))
+		bucket[i] = j
+		count[j]++
+	}
+	var start, skipped [pickBuckets]int // values in lower buckets, and how many of those are not picked
+	var wanted [pickBuckets]bool
+	sum := 0
+	for j, c := range count {
+		start[j] = sum
+		for i := range p {
+			at := int(math.Floor(float64(n-1) * p[i]))
+			for _, r := range [2]int{at, min(at+1, n-1)} {
+				wanted[j] = wanted[j] || r >= sum && r < sum+c
+			}
+		}
+		sum += c
+	}
+	total := 0
+	for j, c := range count {
+		skipped[j] = start[j] - total
+		if wanted[j] {
+			total += c
+		}
+	}
+	if total > n/4 {
+		return false
+	}
+	few := sized(k.few, total)
+	k.few = few
+	m := 0
+	for i, j := range bucket {
+		if wanted[j] {
+			few[m] = a[i]
+			m++
+		}
+	}
+	slices.Sort(few)
+	order := func(r int) float64 {
+		j := 0
+		for j+1 < pickBuckets && start[j+1] <= r {
+			j++
+		}
+		return few[r-skipped[j]]
+	}
+	for i := range p {
+		at := float64(n-1) * p[i]
+		r := int(math.Floor(at))
+		low := order(r)
+		if r+1 >= n {
+			out[i] = low
+			continue
+		}
+		high := order(r + 1)
+		out[i] = low + float64((at-float64(r))*(high-low))
+	}
+	return true
 }
 
 // percentile gives the value at position (n-1)p of the sorted sample, linear between neighbours. It
@@ -192,26 +538,4 @@ func nth(a []float64, k int) float64 {
 		}
 	}
 	return a[k]
-}
-
-// Samples evaluates the graph in the first n trials and gives the wanted slots' values, per trial. The
-// vector v is left as it was.
-func (g *Graph) Samples(v []scoring.Value, drawn []Drawn, want []int, n int) [][]scoring.Value {
-	leafSlots := make([]int, len(drawn))
-	for i, d := range drawn {
-		leafSlots[i] = d.Slot
-		n = min(n, len(d.Values))
-	}
-	hot := g.dependents(leafSlots)
-	work := g.bench(v)
-	out := make([][]scoring.Value, n)
-	for t := range n {
-		work.trial(g, drawn, hot, t)
-		row := make([]scoring.Value, len(want))
-		for i, s := range want {
-			row[i] = work.value(s)
-		}
-		out[t] = row
-	}
-	return out
 }

@@ -164,6 +164,12 @@ func each(name func(int) string, p draw.Palette, width float64) map[string]*draw
 		out[fmt.Sprintf("horizon-%d", n)] = chart.HorizonStrip(horizon(n), p, width)
 		out[fmt.Sprintf("curve-%d", n)] = chart.CurveOverWind(curve(name, n), p, width)
 		out[fmt.Sprintf("wakes-%d", n)] = chart.WakeMap(wakes(name, n), p, width)
+		out[fmt.Sprintf("ladder-%d", n)] = chart.Ladder(boundaries(name, n), p, width)
+		out[fmt.Sprintf("accounts-%d", n)] = chart.SideBySide(accounts(name, n), p, width)
+		out[fmt.Sprintf("ground-%d", n)] = chart.LandBars(ground7(name, n), p, width)
+		out[fmt.Sprintf("balances-%d", n)] = chart.PaybackLine(balances(name, n), p, width)
+		out[fmt.Sprintf("sweep-%d", n)] = chart.Crowding(sweep(name, n), p, width)
+		out[fmt.Sprintf("drivers-%d", n)] = chart.Tornado(drivers(name, n), p, width)
 		out[fmt.Sprintf("cloud-%d", n*n)] = chart.Scatter(cloud(name, n*n), p, width)
 	}
 	for i, s := range []chart.Span{{Low: 3, Central: 4, High: 6, Least: 0, Greatest: 10}, {Low: 3, Central: 3, High: 3, Least: 3, Greatest: 3}, {Unknown: true}, {Low: 9, Central: 10, High: 10, Least: 0, Greatest: 10, Over: true}} {
@@ -263,6 +269,22 @@ func holdShapes(t *testing.T, where string, s *draw.Scene) {
 				if !(q.X >= -0.5 && q.Y >= -0.5 && q.X <= s.Width+0.5 && q.Y <= s.Height+0.5) {
 					t.Errorf("%s: a shape (%q) reaches %v, outside the picture of %v × %v", where, p.Title, q, s.Width, s.Height)
 					return
+				}
+			}
+		}
+	}
+}
+
+// The pictures of the accounts hold at every width of a pane, on both sides of where their layout changes.
+func TestAccountsAtManyWidths(t *testing.T) {
+	for kind, name := range names {
+		for _, width := range []float64{300, 400, 540, 560, 580, 600, 620, 640, 900, 1200} {
+			for _, n := range []int{0, 1, 2, 3, 11, 40} {
+				for what, s := range map[string]*draw.Scene{"ladder": chart.Ladder(boundaries(name, n), draw.Light(), width), "accounts": chart.SideBySide(accounts(name, n), draw.Light(), width), "ground": chart.LandBars(ground7(name, n), draw.Light(), width),
+					"balances": chart.PaybackLine(balances(name, n), draw.Light(), width), "sweep": chart.Crowding(sweep(name, n), draw.Light(), width), "drivers": chart.Tornado(drivers(name, n), draw.Light(), width)} {
+					where := fmt.Sprintf("%s-%d, %s, %v", what, n, kind, width)
+					holdTexts(t, where, s)
+					holdShapes(t, where, s)
 				}
 			}
 		}
@@ -499,6 +521,8 @@ func TestRangeBarIsTrue(t *testing.T) {
 func TestHatchingMeansUnknown(t *testing.T) {
 	known := map[string]*draw.Scene{"scatter": chart.Scatter(cloud(names["short"], 400), draw.Light(), 760), "chain": chart.Waterfall(chain(names["short"], 2), draw.Light(), 760),
 		"land": chart.TakenBars(land(names["short"], 2), draw.Light(), 760), "months": chart.Monthly(months(names["short"], 2), draw.Light(), 760), "pair": chart.PairBars(pair(names["short"], 3), draw.Light(), 760),
+		"ladder": chart.Ladder(boundaries(names["short"], 6), draw.Light(), 760), "accounts": chart.SideBySide(accounts(names["short"], 1), draw.Light(), 760), "ground": chart.LandBars(ground7(names["short"], 6), draw.Light(), 760),
+		"balances": chart.PaybackLine(balances(names["short"], 6), draw.Light(), 760), "sweep": chart.Crowding(sweep(names["short"], 6), draw.Light(), 760), "drivers": chart.Tornado(drivers(names["short"], 6), draw.Light(), 760),
 		"curve": chart.CurveOverWind(curve(names["short"], 26), draw.Light(), 760), "wakes": chart.WakeMap(wakes(names["short"], 6), draw.Light(), 760)}
 	for what, s := range known {
 		for _, it := range s.Items {

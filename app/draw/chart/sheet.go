@@ -113,9 +113,10 @@ func (s *sheet) flow(x, y, room float64, pieces []piece) int {
 // key is one entry of a legend.
 type key struct {
 	style   draw.Style
-	line    bool // a line rather than a patch
-	dot     bool // a round mark rather than a patch
-	diamond bool // a mark of four corners rather than a patch
+	line    bool         // a line rather than a patch
+	dot     bool         // a round mark rather than a patch
+	diamond bool         // a mark of four corners rather than a patch
+	mark    []draw.Point // a mark of this outline around its middle rather than a patch
 	text    string
 }
 
@@ -141,6 +142,8 @@ func (s *sheet) legend(y float64, keys []key) float64 {
 			s.Path(draw.Path{Rings: [][]draw.Point{ringAround(draw.Point{X: x + 9, Y: mid}, dotRadius)}, Closed: true, Style: k.style})
 		case k.diamond:
 			s.Path(draw.Path{Rings: [][]draw.Point{diamond(draw.Point{X: x + 9, Y: mid}, 5.5)}, Closed: true, Style: k.style})
+		case len(k.mark) > 0:
+			s.Path(draw.Path{Rings: [][]draw.Point{moved(k.mark, draw.Point{X: x + 9, Y: mid}, 1)}, Closed: true, Style: k.style})
 		default:
 			s.Rect(x, mid-6, 18, 12, k.style, "")
 		}
@@ -148,6 +151,15 @@ func (s *sheet) legend(y float64, keys []key) float64 {
 		at += w + 2*gap
 	}
 	return row * float64(lines)
+}
+
+// moved gives an outline around 0 as one around a place, so many times as large.
+func moved(outline []draw.Point, c draw.Point, times float64) []draw.Point {
+	out := make([]draw.Point, len(outline))
+	for i, q := range outline {
+		out[i] = draw.Point{X: c.X + times*q.X, Y: c.Y + times*q.Y}
+	}
+	return out
 }
 
 // circle is a round mark of radius 1.

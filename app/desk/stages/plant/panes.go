@@ -379,6 +379,7 @@ type fitted struct {
 	monthWords  *widgets.Line
 	month, hour *chartview.Picture
 	turbines    *turbines
+	crowding    *crowding
 	mover       *mover
 	sky         *widget.Label
 	months      *run.Candidate // whose months are shown or asked for
@@ -392,8 +393,8 @@ func newFitted(s *stage) *fitted {
 	f.loss, f.taken = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
 	f.month, f.hour = chartview.New(s.core, background, grew), chartview.New(s.core, background, grew)
 	f.sky = widgets.NewText("")
-	f.mover, f.turbines = newMover(s), newTurbines(f)
-	f.box = container.NewVBox(f.title, flush(f.words), f.mover.all, f.lines, f.turbines.words, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, f.hour, f.turbines.all, flush(f.sky), space(6), flush(caption(caution)))
+	f.mover, f.turbines, f.crowding = newMover(s), newTurbines(f), newCrowding(f)
+	f.box = container.NewVBox(f.title, flush(f.words), f.mover.all, f.lines, f.turbines.words, space(6), f.takenHead, f.taken, space(6), f.lossHead, f.loss, space(6), f.monthHead, f.monthWords, f.month, f.hour, f.turbines.all, flush(f.sky), space(6), f.crowding.all, space(6), flush(caption(caution)))
 	f.body = container.NewVScroll(container.New(insets{2, 6, 16, 8}, f.box))
 	return f
 }
@@ -436,6 +437,7 @@ func (f *fitted) update() {
 	visible(f.hour, withPlant)
 	f.mover.update(c)
 	f.turbines.update(c)
+	f.crowding.update(c)
 	if c == nil {
 		f.title.Set("No candidate of this option is chosen")
 		f.words.SetText("Choose a site on the map or in the table of Accounts, then come back.")

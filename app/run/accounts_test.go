@@ -1,0 +1,144 @@
+package run
+
+import (
+	"math"
+	"testing"
+
+	"groundtally/app/study"
+	"groundtally/scoring"
+)
+
+func TestAccountsOfACandidate(t *testing.T) {
+	s := smallStudy(t, 120)
+	if _, err := s.Set(t.Context(), "set", "", study.SettingEdit{Key: "climate.grid_factor_g_per_kwh", Value: "300", Source: "test"},
+		study.SettingEdit{Key: "climate.grid_factor_marginal_g_per_kwh", Value: "600", Source: "test"}); err != nil {
+		t.Fatal(err)
+	}
+	r := compute(t, s, nil, 2)
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	a, err := NewAccounts(shipped(t), snap)
+	if err != nil {
+		t.Fatal(err)
+	}
+	lines, fitted := 0, 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		if c.Status != Fitted || fitted > 12 {
+			continue
+		}
+		fitted++
+		// The values behind are those of the consequences.
+		value := a.Values(c)
+		for _, key := range []string{"eroi_generation", "eroi_extended", "delivered_mwh_per_yr"} {
+			if q, _ := c.Consequence(key); q.State == scoring.Number && value(key).X != q.Central {
+				t.Errorf("%s: %s is %v, the consequence %v", c.ID(), key, value(key), q.Central)
+			}
+		}
+		drivers, used, err := a.Drivers(c, "eroi_extended")
+		if err != nil {
+			t.Fatal(err)
+		}
+		if q, _ := c.Consequence("eroi_extended"); q.State == scoring.Number {
+			if used < 100 || len(drivers) < 3 || !drivers[0].Known {
+				t.Fatalf("%s: %d trials, %+v", c.ID(), used, drivers)
+			}
+			for n := 1; n < len(drivers); n++ {
+				if drivers[n].Known && math.Abs(drivers[n].Rho) > math.Abs(drivers[n-1].Rho) {
+					t.Errorf("%s: %+v before %+v", c.ID(), drivers[n-1], drivers[n])
+				}
+			}
+			for _, d := range drivers {
+				// More energy brings a higher return, whatever else happens.
+				if (d.Name == "wind_yield_error" || d.Name == "solar_yield_error") && d.Known && d.Rho < 0.1 {
+					t.Errorf("%s: the return follows the yield by %v", c.ID(), d.Rho)
+				}
+				if d.Title == "" {
+					t.Errorf("%s: %+v has no title", c.ID(), d)
+				}
+			}
+		}
+		if d, err := a.Beats(c, c, "eroi_extended", true); err != nil || d.Known && d.Beats != 0.5 {
+			t.Errorf("%s against itself: %+v, %v", c.ID(), d, err)
+		}
+		got, why, err := a.PaybackLines(c)
+		if err != nil {
+			t.Fatal(err)
+		}
+		q, _ := c.Consequence("carbon_payback_yr")
+		if why != "" {
+			if q.State == scoring.Number {
+				t.Errorf("%s: %s, and yet a payback of %v", c.ID(), why, q.Central)
+			}
+			continue
+		}
+		lines++
+		if len(got) != 2 {
+			t.Fatalf("%s: %d grid factors", c.ID(), len(got))
+		}
+		if q.State == scoring.Number && math.Abs(got[0].Central.Yr/q.Central-1) > 1e-9 {
+			t.Errorf("%s: the line crosses after %v years, the consequence says %v", c.ID(), got[0].Central.Yr, q.Central)
+		}
+		if !got[1].Central.Never && !(got[1].Central.Yr < got[0].Central.Yr) {
+			t.Errorf("%s: twice the factor pays back after %v, once after %v", c.ID(), got[1].Central.Yr, got[0].Central.Yr)
+		}
+		if !got[0].Low.Never && got[0].Low.Yr < got[0].Central.Yr {
+			t.Errorf("%s: the careful corner is faster: %+v", c.ID(), got[0])
+		}
+	}
+	if lines == 0 {
+		t.Error("no candidate has a payback line")
+	}
+}
+
+// At the value that is found the two are equal, and on its two sides different ones are ahead.
+func TestSwapsAreWhereTheyChangePlaces(t *testing.T) {
+	s := smallStudy(t, 120)
+	r := compute(t, s, nil, 2)
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	a, err := NewAccounts(shipped(t), snap)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var fitted []*Candidate
+	for i := range r.Candidates {
+		if c := &r.Candidates[i]; c.Status == Fitted && len(fitted) < 14 {
+			fitted = append(fitted, c)
+		}
+	}
+	seen := 0
+	for i, one := range fitted {
+		for _, other := range fitted[i+1:] {
+			list, err := a.Swaps(one, other, "eroi_extended")
+			if err != nil {
+				t.Fatal(err)
+			}
+			for _, w := range list {
+				seen++
+				at := func(x float64) float64 {
+					slot, _ := shipped(t).Graph.Slot(w.Name)
+					key, _ := shipped(t).Graph.Slot("eroi_extended")
+					var got [2]float64
+					for n, c := range []*Candidate{one, other} {
+						v := a.k.vector(c)
+						v[slot] = scoring.Num(x)
+						shipped(t).Graph.Central(v)
+						got[n] = v[key].X
+					}
+					return got[0]/got[1] - 1
+				}
+				if math.Abs(at(w.At)) > 1e-9 || at(w.Low)*at(w.High) > 0 || w.At < w.Low || w.At > w.High {
+					t.Errorf("%s and %s at %+v: %v, %v at its ends", one.ID(), other.ID(), w, at(w.Low), at(w.High))
+				}
+			}
+		}
+	}
+	if seen == 0 {
+		t.Error("no factor changes the order of any two")
+	}
+}
