@@ -47,7 +47,7 @@ func (w *Window) problems() []problem {
 		switch n.Code {
 		case "legal_not_set", "no_plants":
 			p.stage = "Plant"
-		case "voice_unusable", "family_twice":
+		case "voice_unusable", "family_twice", "return_scale":
 			p.stage = "Weigh"
 		}
 		out = append(out, p)

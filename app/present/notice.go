@@ -175,6 +175,7 @@ var sentences = map[string]string{
 	"layer_empty":                    "the file has no feature.",
 	"coordinates_not_degrees":        "the coordinates are not degrees. Say in which coordinate system they are, with --crs.",
 	"peat_touched":                   "the plant stands on mapped peat. Peat raises a flag whatever the score.",
+	"return_scale":                   "{first} stands first because a ratio of energy return is weighed on a straight scale; with the share left after repayment (net_share) in its place {other} would be first.",
 	"family_twice":                   "this voice also weighs {other}, which counts the same event ({family}).",
 	"role_missing":                   "no such layer yet. Without it: {without}. Usual holder: {holder}.",
 	"legal_not_set":                  "not set. {what}",

@@ -323,6 +323,13 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 		return out, err
 	}
 	in.Items = items
+	told, err := returnScale(snap, p, voice, sc, items, at, cs)
+	if err != nil {
+		return out, err
+	}
+	if told != nil {
+		out.Notices = append(out.Notices, *told)
+	}
 	out.HeldBack = append(out.HeldBack, heldBack...)
 
 	contenders, err := weigh.Contenders(in)
