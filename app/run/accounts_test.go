@@ -1,6 +1,7 @@
 package run
 
 import (
+	"fmt"
 	"math"
 	"testing"
 
@@ -141,4 +142,48 @@ func TestSwapsAreWhereTheyChangePlaces(t *testing.T) {
 	if seen == 0 {
 		t.Error("no factor changes the order of any two")
 	}
+}
+
+// On a horizon of one life what is spent is what the whole-life return counts.
+func TestLedgerOfOneLifeIsTheReturn(t *testing.T) {
+	s := smallStudy(t, 120)
+	r := compute(t, s, nil, 2)
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	a, err := NewAccounts(shipped(t), snap)
+	if err != nil {
+		t.Fatal(err)
+	}
+	seen := 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		q, _ := c.Consequence("eroi_extended")
+		if c.Status != Fitted || q.State != scoring.Number || c.Technology == "wind_solar" { // of both parts the ageing is a mean
+			continue
+		}
+		life := a.Values(c)("life_yr").X
+		if _, err := s.Set(t.Context(), "set", "", study.SettingEdit{Key: "energy.horizon_yr", Value: fmt.Sprint(life), Source: "test"}); err != nil {
+			t.Fatal(err)
+		}
+		if snap, err = s.Snapshot(); err != nil {
+			t.Fatal(err)
+		}
+		one, err := NewAccounts(shipped(t), snap)
+		if err != nil {
+			t.Fatal(err)
+		}
+		l, why, err := one.Ledger(c)
+		if err != nil || l == nil {
+			t.Fatalf("%s: %s, %v", c.ID(), why, err)
+		}
+		if got, err := l.EROI(false); err != nil || math.Abs(got/q.Central-1) > 1e-9 {
+			t.Errorf("%s: %v over one life, the return is %v; %v", c.ID(), got, q.Central, err)
+		}
+		if seen++; seen == 6 {
+			return
+		}
+	}
+	t.Errorf("%d candidates", seen)
 }

@@ -35,17 +35,28 @@ var verbWhy = verb{
 			if err != nil {
 				return 0, err
 			}
+			snap, err := c.state(s)
+			if err != nil {
+				return 0, err
+			}
 			if len(c.args.places) == 3 {
 				if c.json {
 					c.printJSON(map[string]any{"study": c.args.places[0], "candidate": cand.PublicJSON()})
 					return ExitDone, nil
 				}
 				c.candidate(cand)
+				if cand.Status == run.Fitted {
+					accounts, err := run.NewAccounts(c.Params, snap)
+					if err != nil {
+						return 0, err
+					}
+					l, why, err := accounts.Ledger(cand)
+					if err != nil {
+						return 0, err
+					}
+					c.say("%s", pictures.Ledger(l, why))
+				}
 				return ExitDone, nil
-			}
-			snap, err := c.state(s)
-			if err != nil {
-				return 0, err
 			}
 			key := c.args.places[3]
 			if _, ok := cand.Consequence(key); !ok && cand.Status != run.Fitted { // nothing was fitted: no figure, and no zero
