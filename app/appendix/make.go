@@ -52,8 +52,12 @@ func Make(ctx context.Context, in Input, store study.Store, folder string, write
 			return err
 		}},
 		{"page", func() (err error) {
+			sv := run.NewSurveyor(in.Snapshot, in.Params, run.StoreLoader(store), store)
 			if in.Course == nil {
-				in.Course = CourseOf(ctx, in.Snapshot, in.Params, store)
+				in.Course = func(c *run.Candidate) (*run.Course, error) { return sv.Course(ctx, c) }
+			}
+			if in.Crowding == nil {
+				in.Crowding = func(c *run.Candidate) (*run.Crowded, error) { return sv.Crowding(ctx, c) }
 			}
 			page, err = Page(in)
 			return err
@@ -106,9 +110,3 @@ func Cautions() []string { return slices.Clone(cautions) }
 
 // NotAssessed gives what the program does not look at, whatever the data.
 func NotAssessed() []string { return slices.Clone(alwaysNotAssessed) }
-
-// CourseOf gives what Input.Course asks for, read from a store.
-func CourseOf(ctx context.Context, snap *study.Snapshot, p *run.Params, store study.Store) func(*run.Candidate) (*run.Course, error) {
-	sv := run.NewSurveyor(snap, p, run.StoreLoader(store), store)
-	return func(c *run.Candidate) (*run.Course, error) { return sv.Course(ctx, c) }
-}

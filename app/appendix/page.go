@@ -37,6 +37,8 @@ type Input struct {
 	Top      int // places of each voice shown in full; 0 takes 15
 	// Course gives how the energy of a candidate comes over the year; nil leaves that out.
 	Course func(*run.Candidate) (*run.Course, error)
+	// Crowding sweeps the spacing or ground cover of a candidate; nil leaves that out.
+	Crowding func(*run.Candidate) (*run.Crowded, error)
 }
 
 // MapLayers reads the layers that a map shows. Personal columns are never read.

@@ -517,6 +517,29 @@ func TestMonths(t *testing.T) {
 	}
 }
 
+// The first of each voice has its crowding curve, and says why where it has none.
+func TestCrowdingCurve(t *testing.T) {
+	in := input(t)
+	if html := page(t, in); strings.Contains(html, "Crowding curve") {
+		t.Error("a crowding curve stands on the page though nobody tells it")
+	}
+	asked := 0
+	in.Crowding = func(c *run.Candidate) (*run.Crowded, error) {
+		if asked++; asked > 1 {
+			return &run.Crowded{Why: "too small a site"}, nil
+		}
+		return &run.Crowded{Swept: "ground cover", GroundHa: 10, Points: []run.CrowdedPoint{{Swept: 0.3, KWPerHa: 500, MWhPerHaYr: 600, EROI: 9}, {Swept: 0.4, KWPerHa: 700, MWhPerHaYr: 800, EROI: 8}, {Swept: 0.5, KWPerHa: 900, MWhPerHaYr: 900, EROI: 7}},
+			BestReturn: run.CrowdedMark{Swept: 0.3, MWhPerHaYr: 600, EROI: 9, Known: true}}, nil
+	}
+	html := page(t, in)
+	if asked == 0 || strings.Count(html, "Crowding curve. ") != asked || strings.Count(html, "Line chart: energy from a hectare against energy return of ") == 0 || !strings.Contains(html, "On 10.00 ha of buildable ground") {
+		t.Errorf("asked %d times, told %d times", asked, strings.Count(html, "Crowding curve. "))
+	}
+	if asked > 1 && !strings.Contains(html, "No crowding curve: too small a site.") {
+		t.Error("why there is no curve is not said")
+	}
+}
+
 // Each voice has its first two places against each other as a picture; one cloud shows all candidates.
 func TestComparingPictures(t *testing.T) {
 	in := input(t)

@@ -105,6 +105,22 @@ func land(c *run.Candidate, title, id string) template.HTML {
 	return picture(chart.TakenBars(pictures.Land(c, "Bar chart: area of the site of "+title+", taken by each rule or buildable; the same figures stand in the table above it", id), draw.Light(), halfWidth))
 }
 
+// crowding draws what a hectare gives against what comes back, as spacing or ground cover changes; nothing where nobody
+// tells it.
+func (b *book) crowding(c *run.Candidate, title, id string) (drawn template.HTML, words string, err error) {
+	if b.in.Crowding == nil {
+		return "", "", nil
+	}
+	curve, err := b.in.Crowding(c)
+	if err != nil {
+		return "", "", err
+	}
+	if curve.Why == "" {
+		drawn = picture(chart.Crowding(pictures.Crowding(curve, "Line chart: energy from a hectare against energy return of "+title, id), draw.Light(), halfWidth))
+	}
+	return drawn, pictures.CrowdingWords(curve), nil
+}
+
 // monthsView is the energy of a candidate by month.
 type monthsView struct {
 	Picture template.HTML

@@ -26,6 +26,8 @@ type unfolded struct {
 	Months              *monthsView // of the first of each voice
 	Trace               *traceView
 	Losses, Land        template.HTML // pictures
+	Crowding            template.HTML // of the first of each voice
+	CrowdingWords       string
 }
 
 type takenView struct{ Rule, Alone, Shared, Word string }
@@ -85,6 +87,9 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 		}
 		u.FirstFor = strings.Join(voices, ", ")
 		if u.Months, err = b.months(c, u.Title, "-months-"+strconv.Itoa(len(leads)+1)); err != nil {
+			return nil, nil, err
+		}
+		if u.Crowding, u.CrowdingWords, err = b.crowding(c, u.Title, "-crowding-"+strconv.Itoa(len(leads)+1)); err != nil {
 			return nil, nil, err
 		}
 		if u.Trace, err = b.trace(c, "q"+strconv.Itoa(len(leads)+1)+"-"); err != nil {

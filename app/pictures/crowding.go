@@ -46,7 +46,11 @@ func CrowdingWords(c *run.Crowded) string {
 		}
 		return text
 	}
-	text := fmt.Sprintf("On %.2f ha of buildable ground, filled at each %s: the best return at %s; the most net energy, as electricity, at %s; the most energy from a hectare at %s.", c.GroundHa, c.Swept, at(c.BestReturn), at(c.MostNet), at(c.MostEnergy))
+	text := fmt.Sprintf("Fitted as the option says at each %s, for a hectare inside the fence", c.Swept)
+	if c.GroundHa > 0 {
+		text = fmt.Sprintf("On %.2f ha of buildable ground, filled at each %s", c.GroundHa, c.Swept)
+	}
+	text += fmt.Sprintf(": the best return at %s; the most net energy, as electricity, at %s; the most energy from a hectare at %s.", at(c.BestReturn), at(c.MostNet), at(c.MostEnergy))
 	if c.Chosen.Known {
 		text += fmt.Sprintf(" Your option stands at %s.", at(c.Chosen))
 	}

@@ -14,15 +14,16 @@ import (
 	"groundtally/scoring/units"
 )
 
-// Crowded is a plant on the whole buildable ground of its site at several spacings or ground covers: what a hectare
-// gives, and what comes back for what is spent.
+// Crowded is a plant at several spacings or ground covers: what a hectare gives, and what comes back for what is spent.
+// Turbines fill the buildable ground, and a hectare is one of that; panels are fitted as their option says, and a hectare
+// is one inside their fence.
 type Crowded struct {
 	Swept     string // what is varied
 	SweptUnit string
 	Points    []CrowdedPoint // the emptiest first
 	// Marks on the curve; none where Why says so.
 	BestReturn, MostNet, MostEnergy, Chosen CrowdedMark
-	GroundHa                                float64
+	GroundHa                                float64 // buildable, that turbines fill; 0 for panels
 	Beyond                                  string // why values that were tried are not on the curve; empty where all are
 	Why                                     string // a code or words
 }
@@ -30,7 +31,7 @@ type Crowded struct {
 // CrowdedPoint is one layout, computed as any candidate is.
 type CrowdedPoint struct {
 	Swept           float64
-	KWPerHa         float64 // rated power per hectare of buildable ground
+	KWPerHa         float64 // rated power per hectare
 	MWhPerHaYr      float64 // delivered in a year, mean of the life
 	EROI            float64 // whole life
 	WithStocks      scoring.Value
@@ -55,17 +56,17 @@ var (
 
 const mostCrowded = 60
 
-// at gives the option with one value of the sweep, filling the ground.
+// at gives the option with one value of the sweep; turbines fill the ground.
 func (o option) at(swept float64) option {
 	out := o
 	out.settings = maps.Clone(o.settings)
-	out.fit = fitFill
-	out.settings["fit"] = fitFill
-	delete(out.settings, "fit_power_kw")
 	if !o.wind {
 		out.settings["gcr"] = fmt.Sprint(swept)
 		return out
 	}
+	out.fit = fitFill
+	out.settings["fit"] = fitFill
+	delete(out.settings, "fit_power_kw")
 	out.settings["fit_machines"] = fmt.Sprint(mostCrowded)
 	along, _ := o.num("spacing_along_d")
 	across, _ := o.num("spacing_across_d")
@@ -116,7 +117,9 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 	if err != nil {
 		return nil, err
 	}
-	out.GroundHa = g.BuildableM2 / units.M2PerHa
+	if o.wind {
+		out.GroundHa = g.BuildableM2 / units.M2PerHa
+	}
 	k, err := w.newReckoner()
 	if err != nil {
 		return nil, err
@@ -144,7 +147,11 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 		if err != nil {
 			return CrowdedPoint{}, "", err
 		}
-		return k.crowded(cand, x, out.GroundHa)
+		ground := out.GroundHa
+		if !o.wind {
+			ground = r.FenceHa
+		}
+		return k.crowded(cand, x, ground)
 	}
 	why := ""
 	for _, x := range values {
