@@ -9,13 +9,9 @@ import (
 	"groundtally/scoring"
 )
 
-func TestAccountsOfACandidate(t *testing.T) {
-	s := smallStudy(t, 120)
-	if _, err := s.Set(t.Context(), "set", "", study.SettingEdit{Key: "climate.grid_factor_g_per_kwh", Value: "300", Source: "test"},
-		study.SettingEdit{Key: "climate.grid_factor_marginal_g_per_kwh", Value: "600", Source: "test"}); err != nil {
-		t.Fatal(err)
-	}
-	r := compute(t, s, nil, 2)
+// accountsOf computes a study and prepares its accounts.
+func accountsOf(t *testing.T, s *study.Study) (*Results, *Accounts) {
+	t.Helper()
 	snap, err := s.Snapshot()
 	if err != nil {
 		t.Fatal(err)
@@ -24,6 +20,16 @@ func TestAccountsOfACandidate(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	return compute(t, s, nil, 2), a
+}
+
+func TestAccountsOfACandidate(t *testing.T) {
+	s := smallStudy(t, 120)
+	if _, err := s.Set(t.Context(), "set", "", study.SettingEdit{Key: "climate.grid_factor_g_per_kwh", Value: "300", Source: "test"},
+		study.SettingEdit{Key: "climate.grid_factor_marginal_g_per_kwh", Value: "600", Source: "test"}); err != nil {
+		t.Fatal(err)
+	}
+	r, a := accountsOf(t, s)
 	lines, fitted := 0, 0
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
@@ -97,15 +103,7 @@ func TestAccountsOfACandidate(t *testing.T) {
 // At the value that is found the two are equal, and on its two sides different ones are ahead.
 func TestSwapsAreWhereTheyChangePlaces(t *testing.T) {
 	s := smallStudy(t, 120)
-	r := compute(t, s, nil, 2)
-	snap, err := s.Snapshot()
-	if err != nil {
-		t.Fatal(err)
-	}
-	a, err := NewAccounts(shipped(t), snap)
-	if err != nil {
-		t.Fatal(err)
-	}
+	r, a := accountsOf(t, s)
 	var fitted []*Candidate
 	for i := range r.Candidates {
 		if c := &r.Candidates[i]; c.Status == Fitted && len(fitted) < 14 {
@@ -147,15 +145,7 @@ func TestSwapsAreWhereTheyChangePlaces(t *testing.T) {
 // On a horizon of one life what is spent is what the whole-life return counts.
 func TestLedgerOfOneLifeIsTheReturn(t *testing.T) {
 	s := smallStudy(t, 120)
-	r := compute(t, s, nil, 2)
-	snap, err := s.Snapshot()
-	if err != nil {
-		t.Fatal(err)
-	}
-	a, err := NewAccounts(shipped(t), snap)
-	if err != nil {
-		t.Fatal(err)
-	}
+	r, a := accountsOf(t, s)
 	seen := 0
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
@@ -167,7 +157,8 @@ func TestLedgerOfOneLifeIsTheReturn(t *testing.T) {
 		if _, err := s.Set(t.Context(), "set", "", study.SettingEdit{Key: "energy.horizon_yr", Value: fmt.Sprint(life), Source: "test"}); err != nil {
 			t.Fatal(err)
 		}
-		if snap, err = s.Snapshot(); err != nil {
+		snap, err := s.Snapshot()
+		if err != nil {
 			t.Fatal(err)
 		}
 		one, err := NewAccounts(shipped(t), snap)

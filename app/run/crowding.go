@@ -24,8 +24,8 @@ type Crowded struct {
 	// Marks on the curve; none where Why says so.
 	BestReturn, MostNet, MostEnergy, Chosen CrowdedMark
 	GroundHa                                float64 // buildable, that turbines fill; 0 for panels
-	Beyond                                  string // why values that were tried are not on the curve; empty where all are
-	Why                                     string // a code or words
+	Beyond                                  string  // why values that were tried are not on the curve; empty where all are
+	Why                                     string  // a code or words
 }
 
 // CrowdedPoint is one layout, computed as any candidate is.

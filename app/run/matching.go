@@ -87,7 +87,7 @@ func (f *fitter) matching(o option, s site, r fitResult, limitKW, lossFrac float
 	case r.SolarMWh.Why != "":
 		return scoring.UnknownBecause(r.SolarMWh.Why), "", nil
 	}
-	kw, at, ok, err := f.byHours(o, s, r)
+	parts, at, _, ok, err := f.byHours(o, s, r)
 	if err != nil {
 		return scoring.Value{}, "", err
 	}
@@ -95,8 +95,11 @@ func (f *fitter) matching(o option, s site, r fitResult, limitKW, lossFrac float
 		return scoring.UnknownBecause("no_hours_of_plant"), "", nil
 	}
 	met, all, known := 0.0, 0.0, 0
-	for i, x := range kw {
-		n := at(i)
+	for i := range parts[0] {
+		n, x := at(i), 0.0
+		for _, p := range parts {
+			x += p[i]
+		}
 		if n < 0 || math.IsNaN(x) || math.IsNaN(u.kw[n]) {
 			continue
 		}
@@ -105,7 +108,7 @@ func (f *fitter) matching(o option, s site, r fitResult, limitKW, lossFrac float
 		all += x
 		met += math.Min(x, u.kw[n])
 	}
-	if float64(known) < leastMatched*float64(len(kw)) || !(all > 0) {
+	if float64(known) < leastMatched*float64(len(parts[0])) || !(all > 0) {
 		return scoring.UnknownBecause("too_few_hours"), "", nil
 	}
 	return scoring.Num(met / all), "hours of " + u.source + " and of " + f.hourNames(r), nil
@@ -121,50 +124,49 @@ func (f *fitter) hourNames(r fitResult) string {
 	}
 }
 
-// byHours gives a plant's power by the intervals of a file of hours, and where each lies in the year. ok is false where
-// the study has no hours of a part.
-func (f *fitter) byHours(o option, s site, r fitResult) (kw []float64, at func(i int) int, ok bool, err error) {
+// byHours gives the power of a plant's parts, wind first, by the intervals of a file of hours, not a number where it is
+// not known; where each interval lies in the year, and how many hours it lasts. ok is false where the study has no hours
+// of a part.
+func (f *fitter) byHours(o option, s site, r fitResult) (parts [][]float64, at func(i int) int, stepH float64, ok bool, err error) {
 	wind := r.WindKW > 0
 	if wind && !f.hoursOfWind() || r.SolarKW > 0 && !f.hoursOfSun() {
-		return nil, nil, false, nil
+		return nil, nil, 0, false, nil
 	}
 	var blown []float64
 	if wind {
 		if blown, ok, err = f.windByHours(o, s, r); err != nil || !ok {
-			return nil, nil, false, err
+			return nil, nil, 0, false, err
 		}
 	}
 	if r.SolarKW == 0 {
 		hours := f.blowing.hours
-		return blown, func(i int) int {
+		return [][]float64{blown}, func(i int) int {
 			return hourOfYear(time.Unix(hours[i].Hour*int64(units.SecondsPerHour), 0).UTC())
-		}, true, nil
+		}, 1, true, nil
 	}
 	sun, ok, err := f.sunByHours(o, s)
 	if err != nil || !ok {
-		return nil, nil, false, err
+		return nil, nil, 0, false, err
 	}
 	hours, err := f.hours.climate.Hours()
 	if err != nil {
-		return nil, nil, false, err
+		return nil, nil, 0, false, err
 	}
-	kw = make([]float64, hours.Len())
-	for i := range kw {
-		kw[i] = sun[i] * r.SolarKW
-		if !wind {
-			continue
-		}
-		n := int32(-1)
-		if row := hours.At(i).Row; row >= 0 {
-			n = f.blowing.byRow[row]
-		}
-		if n < 0 {
-			kw[i] = math.NaN()
-		} else {
-			kw[i] += blown[n]
-		}
+	for i := range sun {
+		sun[i] *= r.SolarKW
 	}
-	return kw, func(i int) int { return hourOfYear(hours.At(i).Start) }, true, nil
+	parts = [][]float64{sun}
+	if wind {
+		there := make([]float64, hours.Len())
+		for i := range there {
+			there[i] = math.NaN()
+			if row := hours.At(i).Row; row >= 0 && f.blowing.byRow[row] >= 0 {
+				there[i] = blown[f.blowing.byRow[row]]
+			}
+		}
+		parts = [][]float64{there, sun}
+	}
+	return parts, func(i int) int { return hourOfYear(hours.At(i).Start) }, hours.Step().Hours(), true, nil
 }
 
 // matchFacts gives how the plant meets the use of the district.

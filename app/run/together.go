@@ -46,26 +46,9 @@ func (f *fitter) together(o option, s site, r fitResult, limitKW float64) (*Toge
 	if r.WindKW == 0 || r.SolarKW == 0 || r.WindMWh.Why != "" || r.SolarMWh.Why != "" || !f.hoursOfWind() || !f.hoursOfSun() {
 		return nil, nil
 	}
-	hours, err := f.hours.climate.Hours()
-	if err != nil {
-		return nil, err
-	}
-	sun, ok, err := f.sunByHours(o, s)
+	parts, _, step, ok, err := f.byHours(o, s, r)
 	if err != nil || !ok {
 		return nil, err
-	}
-	blown, ok, err := f.windByHours(o, s, r)
-	if err != nil || !ok {
-		return nil, err
-	}
-	parts := [][]float64{make([]float64, hours.Len()), make([]float64, hours.Len())}
-	for i := range hours.Len() {
-		parts[0][i], parts[1][i] = math.NaN(), sun[i]*r.SolarKW
-		if row := hours.At(i).Row; row >= 0 {
-			if at := f.blowing.byRow[row]; at >= 0 {
-				parts[0][i] = blown[at]
-			}
-		}
 	}
 	ac := r.WindKW + r.SolarACKW
 	limits := []float64{math.Min(limitKW, ac)}
@@ -75,7 +58,7 @@ func (f *fitter) together(o option, s site, r fitResult, limitKW float64) (*Toge
 	if !(limits[0] > 0) {
 		return nil, nil
 	}
-	js, err := grid.CurtailmentCurve(parts, limits, hours.Step().Hours())
+	js, err := grid.CurtailmentCurve(parts, limits, step)
 	if err != nil {
 		return nil, siteError(s, err)
 	}
@@ -85,11 +68,11 @@ func (f *fitter) together(o option, s site, r fitResult, limitKW float64) (*Toge
 		out.Correlation = &j.Correlation.Value
 	}
 	out.LosingFrac = losingFrac
-	if out.LosingKW, err = losing(parts, ac, hours.Step().Hours()); err != nil {
+	if out.LosingKW, err = losing(parts, ac, step); err != nil {
 		return nil, siteError(s, err)
 	}
 	for i, kw := range []float64{r.WindKW, r.SolarACKW} {
-		one, err := losing(parts[i:i+1], kw, hours.Step().Hours())
+		one, err := losing(parts[i:i+1], kw, step)
 		if err != nil {
 			return nil, siteError(s, err)
 		}
