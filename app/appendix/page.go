@@ -96,14 +96,15 @@ var alwaysNotAssessed = []string{
 
 // book is what the parts of a page share while it is written.
 type book struct {
-	in    Input
-	info  map[string]run.KeyInfo
-	plant map[string]string         // title by id
-	by    map[string]*run.Candidate // fitted and other candidates by id
-	shown map[string]bool           // candidates among the places shown
-	told  bool                      // who told a spare capacity may be named
-	notes map[string]int            // number of each notice on consequences
-	list  []string                  // their codes, by number
+	in       Input
+	info     map[string]run.KeyInfo
+	plant    map[string]string         // title by id
+	by       map[string]*run.Candidate // fitted and other candidates by id
+	shown    map[string]bool           // candidates among the places shown
+	accounts *run.Accounts             // behind the pictures; nil before the first
+	told     bool                      // who told a spare capacity may be named
+	notes    map[string]int            // number of each notice on consequences
+	list     []string                  // their codes, by number
 }
 
 func newBook(in Input) *book {

@@ -657,3 +657,43 @@ func TestLayoutsAreTold(t *testing.T) {
 		}
 	}
 }
+
+// Every unfolded candidate has its accounts in pictures, each with a caption in words; the pictures do not swell the page.
+func TestUnfoldedCandidatesHaveTheirAccountsInPictures(t *testing.T) {
+	in := input(t)
+	html := page(t, in)
+	unfolded := strings.Count(html, "Land taken from the site")
+	seen := 0
+	for i := range in.Results.Candidates {
+		c := &in.Results.Candidates[i]
+		title := template.HTMLEscapeString(c.Site + ", " + in.Snapshot.Text("plant."+c.Plant+".title"))
+		if !strings.Contains(html, `aria-label="Bar chart: area of the site of `+title+`, taken`) {
+			continue
+		}
+		seen++
+		for _, want := range []string{"Bar chart: energy return by boundary of " + title, "Bar chart: ground taken by " + title, "Line chart: carbon payback of " + title, "Bar chart: what moves the energy return of " + title} {
+			// A title goes on with words of the figures, or ends.
+			if strings.Count(html, `aria-label="`+want) == 0 {
+				t.Errorf("%s has no picture %q", c.ID(), want)
+			}
+		}
+	}
+	if seen < 3 || seen != unfolded {
+		t.Fatalf("%d candidates with pictures, %d unfolded", seen, unfolded)
+	}
+	for _, words := range []string{"<figcaption>Energy return, electricity out over primary energy spent: ", "<figcaption>Ground taken, kinds that may lie over each other: ", "<figcaption>Carbon payback under each grid factor: ", "<figcaption>What moves "} {
+		if n := strings.Count(html, words); n != seen {
+			t.Errorf("%d captions begin with %q, want %d", n, words, seen)
+		}
+	}
+	size := 0
+	for _, part := range strings.Split(html, "<figcaption>Energy return, electricity out over primary energy spent: ")[1:] {
+		four, _, _ := strings.Cut(part, "<caption>Account: ")
+		size += len(four)
+	}
+	if size > 120_000*seen {
+		t.Errorf("the pictures of accounts take %d bytes of each of %d candidates", size/seen, seen)
+	} else {
+		t.Logf("%d bytes for each of %d candidates", size/seen, seen)
+	}
+}

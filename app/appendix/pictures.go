@@ -168,3 +168,52 @@ func (b *book) months(c *run.Candidate, title, id string) (*monthsView, error) {
 	}
 	return out, nil
 }
+
+// accountPicture is one of the accounts of a candidate, with its caption as text for readers who cannot see it.
+type accountPicture struct {
+	Caption string
+	Label   string
+	Picture template.HTML
+}
+
+// accountPictures draws the energy return by boundary, the ground taken, the carbon payback and what moves the energy
+// return; without numbers the caption says why. id tells them from those of other candidates on the page.
+func (b *book) accountPictures(c *run.Candidate, title, id string) ([]accountPicture, error) {
+	if c.Status != run.Fitted {
+		return nil, nil
+	}
+	if b.accounts == nil {
+		a, err := run.NewAccounts(b.in.Params, b.in.Snapshot)
+		if err != nil {
+			return nil, fmt.Errorf("prepare the accounts: %w", err)
+		}
+		b.accounts = a
+	}
+	value := b.accounts.Values(c)
+	lines, why, err := b.accounts.PaybackLines(c)
+	if err != nil {
+		return nil, fmt.Errorf("payback of %s: %w", c.ID(), err)
+	}
+	const moved = "eroi_extended"
+	drivers, trials, err := b.accounts.Drivers(c, moved)
+	if err != nil {
+		return nil, fmt.Errorf("what moves %s: %w", c.ID(), err)
+	}
+	light := draw.Light()
+	rungs := pictures.Boundaries(c, value, "Bar chart: energy return by boundary of "+title, id+"-ladder")
+	taken := pictures.GroundTaken(c, value, "Bar chart: ground taken by "+title, id+"-ground")
+	paid := pictures.Paybacks(c, lines, why, value, "Line chart: carbon payback of "+title, id+"-payback")
+	moving := pictures.DriversOf(drivers, trials, b.title(moved), "Bar chart: what moves the energy return of "+title, id+"-moving")
+	out := []accountPicture{
+		{Caption: pictures.BoundariesWords(rungs), Label: "Energy return by boundary", Picture: picture(chart.Ladder(rungs, light, halfWidth))},
+		{Caption: pictures.GroundWords(taken), Label: "Ground taken", Picture: picture(chart.LandBars(taken, light, halfWidth))},
+		{Caption: pictures.PaybackWords(paid), Label: "Carbon payback", Picture: picture(chart.PaybackLine(paid, light, halfWidth))},
+	}
+	last := accountPicture{Label: "What moves " + b.title(moved)}
+	if q, _ := c.Consequence(moved); trials == 0 {
+		last.Caption = first(present.WhyNot(q), "unknown: no trials")
+	} else {
+		last.Caption, last.Picture = pictures.DriversWords(moving), picture(chart.Tornado(moving, light, halfWidth))
+	}
+	return append(out, last), nil
+}

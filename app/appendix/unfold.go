@@ -26,6 +26,7 @@ type unfolded struct {
 	Months              *monthsView // of the first of each voice
 	Trace               *traceView
 	Losses, Land        template.HTML // pictures
+	Pictured            []accountPicture
 	Crowding            template.HTML // of the first of each voice
 	CrowdingWords       string
 }
@@ -80,6 +81,9 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 		}
 		u := b.unfold(c)
 		u.Losses, u.Land = losses(c, u.Title), land(c, u.Title, "-land-"+strconv.Itoa(i))
+		if u.Pictured, err = b.accountPictures(c, u.Title, "-accounts-"+strconv.Itoa(i)); err != nil {
+			return nil, nil, err
+		}
 		voices := firstFor[c.ID()]
 		if len(voices) == 0 {
 			others = append(others, u)

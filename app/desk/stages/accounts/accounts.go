@@ -39,7 +39,8 @@ type stage struct {
 	plant, status, key, bounds *widget.Select
 	bound                      *fyne.Container // the row of the numeric filter
 	returns                    *returns
-	ground                     *groundHere // nil before its tab is shown
+	pictured                   *pictured   // nil before its tab is shown
+	ground                     *groundHere // as pictured
 	syncing                    bool        // controls are set by the program
 }
 
@@ -101,7 +102,13 @@ func (s *stage) Changed(ch core.Change) {
 	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.ground != nil {
 		s.ground.update()
 	}
+	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.pictured != nil {
+		s.pictured.update()
+	}
 	if ch&core.LookChanged != 0 {
+		if s.pictured != nil {
+			s.pictured.repaint()
+		}
 		s.grid.setLook()
 		if s.ground != nil {
 			s.ground.picture.Repaint()
@@ -129,6 +136,7 @@ func (s *stage) Content() fyne.CanvasObject {
 	s.tabs = widgets.NewTabs(
 		widgets.Tab{Text: "Table", Make: s.table},
 		widgets.Tab{Text: "Energy return", Make: func() fyne.CanvasObject { return s.returns.body }},
+		widgets.Tab{Text: "Pictures", Make: func() fyne.CanvasObject { s.pictured = newPictured(s.core); return s.pictured.body }},
 		widgets.Tab{Text: "The ground here", Make: func() fyne.CanvasObject { s.ground = newGroundHere(s.core); return s.ground.body }},
 		widgets.Tab{Text: "Not assessed", Make: s.notAssessed},
 	)
