@@ -36,7 +36,7 @@ type runner struct {
 }
 
 // batchSites is the number of sites in a batch.
-const batchSites = 200
+const batchSites = 100
 
 // The steps whose results are kept. Grounds are kept by their inputs. Fits and candidates are kept by what
 // they read, the content of the grounds among it: a rule that is changed near a site and takes no other
