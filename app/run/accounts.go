@@ -234,12 +234,15 @@ func (a *Accounts) PaybackLines(c *Candidate) (lines []climate.Line, why string,
 		}
 		*v.to = climate.Span{Low: q.Low * v.scale, Central: q.Central * v.scale, High: q.High * v.scale}
 	}
-	for name, to := range map[string]*float64{"ageing_per_yr": &in.DegradationPerYr, "life_yr": &in.LifeYr} {
-		v := value(name)
-		if !v.OK() {
-			return nil, v.Why, nil
+	for _, v := range []struct {
+		name string
+		to   *float64
+	}{{"ageing_per_yr", &in.DegradationPerYr}, {"life_yr", &in.LifeYr}} {
+		x := value(v.name)
+		if !x.OK() {
+			return nil, x.Why, nil
 		}
-		*to = v.X
+		*v.to = x.X
 	}
 	share, _ := a.snap.Number("climate.displacement_share")
 	in.DisplacedShare = climate.Span{Low: share, Central: share, High: share}

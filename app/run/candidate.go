@@ -299,14 +299,16 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	}
 	fitFacts(o, r, f)
 	f.set("existing_loss_mwh", fr.lostNearby(o, around, s, r), "wind yield")
-	l, err := w.connect(fr, o, s, r, assets)
+	power, err := fr.byHours(o, s, r)
+	if err != nil {
+		return nil, err
+	}
+	l, err := w.connect(fr, o, s, r, power, assets)
 	if err != nil {
 		return nil, err
 	}
 	linkFacts(l, f)
-	if err := fr.matchFacts(o, s, r, l, f); err != nil {
-		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
-	}
+	fr.matchFacts(power, r, l, f)
 	c.Connection = l.conn
 	c.Chain = r.Chain
 	for _, n := range r.Notices {

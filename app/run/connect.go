@@ -162,7 +162,7 @@ type link struct {
 }
 
 // connect assesses every line and substation and chooses one.
-func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset) (link, error) {
+func (w *world) connect(f *fitter, o option, s site, r fitResult, power *powerHours, assets []asset) (link, error) {
 	out := link{}
 	if len(assets) == 0 {
 		out.why = "no_layer:grid_lines|substations"
@@ -220,7 +220,7 @@ func (w *world) connect(f *fitter, o option, s site, r fitResult, assets []asset
 	b, a := list[choice.Picked], assets[choice.Picked]
 	var err error
 	limit, said := w.mayFlow(ac, a)
-	together, err := f.together(o, s, r, limit)
+	together, err := together(power, s, r, limit)
 	switch {
 	case err != nil:
 		return out, err

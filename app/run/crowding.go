@@ -1,6 +1,7 @@
 package run
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"maps"
@@ -141,7 +142,7 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 		one := o.at(x)
 		r, err := f.compute(e, one, here, grounds)
 		if err != nil || r.Status != Fitted {
-			return CrowdedPoint{}, cmpWhy(r.Reason, r.Status), err
+			return CrowdedPoint{}, cmp.Or(r.Reason, r.Status), err
 		}
 		cand, err := k.candidate(e, w, around, f, f.assets, one, here, grounds, sets, r)
 		if err != nil {
@@ -187,13 +188,6 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 	return out, nil
 }
 
-func cmpWhy(reason, status string) string {
-	if reason != "" {
-		return reason
-	}
-	return status
-}
-
 // gridEfficiency gives the electricity that a unit of primary energy stands for.
 func (k *reckoner) gridEfficiency() float64 {
 	slot, _ := k.p.Graph.Slot("grid_efficiency")
@@ -210,7 +204,7 @@ func (k *reckoner) crowded(c *Candidate, swept, groundHa float64) (p CrowdedPoin
 	num := func(name string) float64 {
 		x := get(name)
 		if !x.OK() && missing == "" {
-			missing = cmpWhy(x.Why, x.State.String())
+			missing = cmp.Or(x.Why, x.State.String())
 		}
 		return x.X
 	}

@@ -20,14 +20,8 @@ func hourOfYear(t time.Time) int {
 	if t.Month() == time.February && t.Day() == 29 {
 		return -1
 	}
-	day := t.YearDay() - 1
-	if t.Month() > time.February && isLeap(t.Year()) {
-		day--
-	}
-	return 24*day + t.Hour()
+	return 24*(time.Date(typicalIn, t.Month(), t.Day(), 0, 0, 0, 0, time.UTC).YearDay()-1) + t.Hour()
 }
-
-func isLeap(year int) bool { return year%4 == 0 && (year%100 != 0 || year%400 == 0) }
 
 // usedHours reads the demand table by the hour; nil without one that has times and loads. Several years are averaged.
 func (w *world) usedHours() *usedHours {
@@ -75,29 +69,25 @@ const leastMatched = 0.8
 // matching gives the share of a plant's delivered energy that the district uses in the very hour; and why it is not
 // known. What comes beyond limitKW is cut off before; the loss of the connection lowers every hour alike, so that the
 // energy is that of deliveredMWh.
-func (f *fitter) matching(o option, s site, r fitResult, limitKW, lossFrac float64) (share scoring.Value, source string, err error) {
+func (f *fitter) matching(power *powerHours, r fitResult, limitKW, lossFrac float64) (share scoring.Value, source string) {
 	u := f.used
 	switch {
 	case u == nil:
-		return scoring.UnknownBecause("no_hours_of_demand"), "", nil
+		return scoring.UnknownBecause("no_hours_of_demand"), ""
 	case u.why != "":
-		return scoring.UnknownBecause("the hours of demand are not read: " + u.why), u.source, nil
+		return scoring.UnknownBecause("the hours of demand are not read: " + u.why), u.source
 	case r.WindMWh.Why != "":
-		return scoring.UnknownBecause(r.WindMWh.Why), "", nil
+		return scoring.UnknownBecause(r.WindMWh.Why), ""
 	case r.SolarMWh.Why != "":
-		return scoring.UnknownBecause(r.SolarMWh.Why), "", nil
+		return scoring.UnknownBecause(r.SolarMWh.Why), ""
 	}
-	parts, at, _, ok, err := f.byHours(o, s, r)
-	if err != nil {
-		return scoring.Value{}, "", err
-	}
-	if !ok {
-		return scoring.UnknownBecause("no_hours_of_plant"), "", nil
+	if power == nil {
+		return scoring.UnknownBecause("no_hours_of_plant"), ""
 	}
 	met, all, known := 0.0, 0.0, 0
-	for i := range parts[0] {
-		n, x := at(i), 0.0
-		for _, p := range parts {
+	for i := range power.parts[0] {
+		n, x := power.at(i), 0.0
+		for _, p := range power.parts {
 			x += p[i]
 		}
 		if n < 0 || math.IsNaN(x) || math.IsNaN(u.kw[n]) {
@@ -108,10 +98,10 @@ func (f *fitter) matching(o option, s site, r fitResult, limitKW, lossFrac float
 		all += x
 		met += math.Min(x, u.kw[n])
 	}
-	if float64(known) < leastMatched*float64(len(parts[0])) || !(all > 0) {
-		return scoring.UnknownBecause("too_few_hours"), "", nil
+	if float64(known) < leastMatched*float64(len(power.parts[0])) || !(all > 0) {
+		return scoring.UnknownBecause("too_few_hours"), ""
 	}
-	return scoring.Num(met / all), "hours of " + u.source + " and of " + f.hourNames(r), nil
+	return scoring.Num(met / all), "hours of " + u.source + " and of " + f.hourNames(r)
 }
 
 // hourNames names the files of hours that a plant's power follows.
@@ -124,38 +114,47 @@ func (f *fitter) hourNames(r fitResult) string {
 	}
 }
 
-// byHours gives the power of a plant's parts, wind first, by the intervals of a file of hours, not a number where it is
-// not known; where each interval lies in the year, and how many hours it lasts. ok is false where the study has no hours
-// of a part.
-func (f *fitter) byHours(o option, s site, r fitResult) (parts [][]float64, at func(i int) int, stepH float64, ok bool, err error) {
+// powerHours is the power of a plant by the intervals of a file of hours.
+type powerHours struct {
+	parts [][]float64     // kW, wind first; not a number where it is not known
+	at    func(i int) int // where an interval lies in the year
+	stepH float64         // how many hours it lasts
+}
+
+// byHours gives a plant's power by the hour; nil where a yield is not known, where the study has no hours of a part, or
+// where nobody asks for them.
+func (f *fitter) byHours(o option, s site, r fitResult) (*powerHours, error) {
 	wind := r.WindKW > 0
-	if wind && !f.hoursOfWind() || r.SolarKW > 0 && !f.hoursOfSun() {
-		return nil, nil, 0, false, nil
+	switch {
+	case f.used == nil && !(wind && r.SolarKW > 0), r.WindMWh.Why != "", r.SolarMWh.Why != "", wind && !f.hoursOfWind(), r.SolarKW > 0 && !f.hoursOfSun():
+		return nil, nil
 	}
 	var blown []float64
 	if wind {
+		var ok bool
+		var err error
 		if blown, ok, err = f.windByHours(o, s, r); err != nil || !ok {
-			return nil, nil, 0, false, err
+			return nil, err
 		}
 	}
 	if r.SolarKW == 0 {
 		hours := f.blowing.hours
-		return [][]float64{blown}, func(i int) int {
+		return &powerHours{parts: [][]float64{blown}, at: func(i int) int {
 			return hourOfYear(time.Unix(hours[i].Hour*int64(units.SecondsPerHour), 0).UTC())
-		}, 1, true, nil
+		}, stepH: 1}, nil
 	}
 	sun, ok, err := f.sunByHours(o, s)
 	if err != nil || !ok {
-		return nil, nil, 0, false, err
+		return nil, err
 	}
 	hours, err := f.hours.climate.Hours()
 	if err != nil {
-		return nil, nil, 0, false, err
+		return nil, err
 	}
 	for i := range sun {
 		sun[i] *= r.SolarKW
 	}
-	parts = [][]float64{sun}
+	parts := [][]float64{sun}
 	if wind {
 		there := make([]float64, hours.Len())
 		for i := range there {
@@ -166,20 +165,16 @@ func (f *fitter) byHours(o option, s site, r fitResult) (parts [][]float64, at f
 		}
 		parts = [][]float64{there, sun}
 	}
-	return parts, func(i int) int { return hourOfYear(hours.At(i).Start) }, hours.Step().Hours(), true, nil
+	return &powerHours{parts, func(i int) int { return hourOfYear(hours.At(i).Start) }, hours.Step().Hours()}, nil
 }
 
 // matchFacts gives how the plant meets the use of the district.
-func (f *fitter) matchFacts(o option, s site, r fitResult, l link, facts facts) error {
+func (f *fitter) matchFacts(power *powerHours, r fitResult, l link, facts facts) {
 	if !l.ok {
 		facts.set("used_at_once_share", scoring.UnknownBecause(l.why), "")
-		return nil
+		return
 	}
 	limit, _ := f.w.mayFlow(r.WindKW+r.SolarACKW, l.asset)
-	share, source, err := f.matching(o, s, r, limit, l.best.LossFrac.Central)
-	if err != nil {
-		return err
-	}
+	share, source := f.matching(power, r, limit, l.best.LossFrac.Central)
 	facts.set("used_at_once_share", share, source)
-	return nil
 }

@@ -2,7 +2,6 @@ package run
 
 import (
 	"math"
-	"time"
 
 	"groundtally/scoring/grid"
 	"groundtally/scoring/units"
@@ -40,16 +39,12 @@ type TogetherLimit struct {
 // terminals.
 var togetherShares = []float64{0.8, 0.6, 0.4}
 
-// together gives what wind and sun give hour by hour, and reckons what comes through limitKW; nil where the hours of
-// the study do not tell both, or a yield is not known.
-func (f *fitter) together(o option, s site, r fitResult, limitKW float64) (*Together, error) {
-	if r.WindKW == 0 || r.SolarKW == 0 || r.WindMWh.Why != "" || r.SolarMWh.Why != "" || !f.hoursOfWind() || !f.hoursOfSun() {
+// together reckons what comes of wind and sun through limitKW; nil where there are no hours of both.
+func together(power *powerHours, s site, r fitResult, limitKW float64) (*Together, error) {
+	if power == nil || len(power.parts) < 2 {
 		return nil, nil
 	}
-	parts, _, step, ok, err := f.byHours(o, s, r)
-	if err != nil || !ok {
-		return nil, err
-	}
+	parts, step := power.parts, power.stepH
 	ac := r.WindKW + r.SolarACKW
 	limits := []float64{math.Min(limitKW, ac)}
 	for _, share := range togetherShares {
@@ -227,13 +222,4 @@ func crossing(of func(float64) float64, want, low, high float64) (x float64, ok 
 		b, fb = x, fx
 	}
 	return x, true
-}
-
-// rowsToHours says of each row of a table into which of the hours it went; -1 for none.
-type rowsToHours []int32
-
-// hourNumber gives the hour since 1970 to which an interval belongs: that of its middle, so that clocks of half hours
-// find their place.
-func hourNumber(start time.Time, step time.Duration) int64 {
-	return int64(math.Floor(float64(start.Add(step/2).Unix()) / units.SecondsPerHour))
 }

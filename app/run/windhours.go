@@ -102,6 +102,15 @@ func (w *windHours) read(l *geo.Layer, snap *study.Snapshot) error {
 	return err
 }
 
+// rowsToHours says of each row of a table into which of the hours it went; -1 for none.
+type rowsToHours []int32
+
+// hourNumber gives the hour since 1970 to which an interval belongs: that of its middle, so that clocks of half hours
+// find their place.
+func hourNumber(start time.Time, step time.Duration) int64 {
+	return int64(math.Floor(float64(start.Add(step/2).Unix()) / units.SecondsPerHour))
+}
+
 // step is what the rows of one hour give together.
 type step struct {
 	hour                        int64
