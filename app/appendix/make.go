@@ -57,7 +57,7 @@ func Make(ctx context.Context, in Input, store study.Store, folder string, write
 				in.Course = func(c *run.Candidate) (*run.Course, error) { return sv.Course(ctx, c) }
 			}
 			if in.Crowding == nil {
-				in.Crowding = func(c *run.Candidate) (*run.Crowded, error) { return sv.Crowding(ctx, c) }
+				in.Crowding = func(c *run.Candidate, part string) (*run.Crowded, error) { return sv.Crowding(ctx, c, part) }
 			}
 			page, err = Page(in)
 			return err

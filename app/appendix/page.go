@@ -37,8 +37,8 @@ type Input struct {
 	Top      int // places of each voice shown in full; 0 takes 15
 	// Course gives how the energy of a candidate comes over the year; nil leaves that out.
 	Course func(*run.Candidate) (*run.Course, error)
-	// Crowding sweeps the spacing or ground cover of a candidate; nil leaves that out.
-	Crowding func(*run.Candidate) (*run.Crowded, error)
+	// Crowding sweeps the spacing or ground cover of a candidate, or of a part of it; nil leaves that out.
+	Crowding func(c *run.Candidate, part string) (*run.Crowded, error)
 }
 
 // MapLayers reads the layers that a map shows. Personal columns are never read.
@@ -248,7 +248,11 @@ func Page(in Input) ([]byte, error) {
 	}
 	var voices []voiceView
 	for i := range in.Results.Voices {
-		voices = append(voices, b.voice(i))
+		v, err := b.voice(i)
+		if err != nil {
+			return nil, fmt.Errorf("voice %s: %w", in.Results.Voices[i].Voice, err)
+		}
+		voices = append(voices, v)
 	}
 	data["Voices"] = voices
 	data["Maps"] = b.maps()

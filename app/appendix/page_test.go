@@ -524,7 +524,7 @@ func TestCrowdingCurve(t *testing.T) {
 		t.Error("a crowding curve stands on the page though nobody tells it")
 	}
 	asked := 0
-	in.Crowding = func(c *run.Candidate) (*run.Crowded, error) {
+	in.Crowding = func(c *run.Candidate, part string) (*run.Crowded, error) {
 		if asked++; asked > 1 {
 			return &run.Crowded{Why: "too small a site"}, nil
 		}

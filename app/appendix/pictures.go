@@ -107,18 +107,29 @@ func land(c *run.Candidate, title, id string) template.HTML {
 
 // crowding draws what a hectare gives against what comes back, as spacing or ground cover changes; nothing where nobody
 // tells it.
-func (b *book) crowding(c *run.Candidate, title, id string) (drawn template.HTML, words string, err error) {
+func (b *book) crowding(c *run.Candidate, title, id string) ([]crowdingView, error) {
 	if b.in.Crowding == nil {
-		return "", "", nil
+		return nil, nil
 	}
-	curve, err := b.in.Crowding(c)
-	if err != nil {
-		return "", "", err
+	var out []crowdingView
+	for _, part := range run.CrowdingParts(c) {
+		curve, err := b.in.Crowding(c, part)
+		if err != nil {
+			return nil, err
+		}
+		v := crowdingView{Words: pictures.CrowdingWords(curve)}
+		if curve.Why == "" {
+			v.Picture = picture(chart.Crowding(pictures.Crowding(curve, "Line chart: energy from a hectare against energy return of "+title, id+part), draw.Light(), halfWidth))
+		}
+		out = append(out, v)
 	}
-	if curve.Why == "" {
-		drawn = picture(chart.Crowding(pictures.Crowding(curve, "Line chart: energy from a hectare against energy return of "+title, id), draw.Light(), halfWidth))
-	}
-	return drawn, pictures.CrowdingWords(curve), nil
+	return out, nil
+}
+
+// crowdingView is a crowding curve; without a picture the words say why there is none.
+type crowdingView struct {
+	Words   string
+	Picture template.HTML
 }
 
 // monthsView is the energy of a candidate by month.
@@ -176,18 +187,47 @@ type accountPicture struct {
 	Picture template.HTML
 }
 
-// accountPictures draws the energy return by boundary, the ground taken, the carbon payback and what moves the energy
-// return; without numbers the caption says why. id tells them from those of other candidates on the page.
-func (b *book) accountPictures(c *run.Candidate, title, id string) ([]accountPicture, error) {
-	if c.Status != run.Fitted {
-		return nil, nil
-	}
+// openAccounts prepares the accounts when they are first asked for.
+func (b *book) openAccounts() (*run.Accounts, error) {
 	if b.accounts == nil {
 		a, err := run.NewAccounts(b.in.Params, b.in.Snapshot)
 		if err != nil {
 			return nil, fmt.Errorf("prepare the accounts: %w", err)
 		}
 		b.accounts = a
+	}
+	return b.accounts, nil
+}
+
+// said tells a candidate's saving, its account on a common horizon, and the habitat that it touches.
+func (b *book) said(c *run.Candidate) (words, habitat []string, err error) {
+	if c.Status != run.Fitted {
+		return nil, nil, nil
+	}
+	a, err := b.openAccounts()
+	if err != nil {
+		return nil, nil, err
+	}
+	l, why, err := a.Ledger(c)
+	if err != nil {
+		return nil, nil, fmt.Errorf("account on a common horizon of %s: %w", c.ID(), err)
+	}
+	words = append(words, pictures.Ledger(l, why))
+	s, why, err := a.Saving(c)
+	if err != nil {
+		return nil, nil, fmt.Errorf("saving that equals %s: %w", c.ID(), err)
+	}
+	return append(words, pictures.Saving(s, why)), pictures.Habitat(c.Habitat, a.Values(c)("life_yr").X), nil
+}
+
+// accountPictures draws the energy return by boundary, the ground taken, the carbon payback and what moves the energy
+// return; without numbers the caption says why. id tells them from those of other candidates on the page.
+func (b *book) accountPictures(c *run.Candidate, title, id string) ([]accountPicture, error) {
+	if c.Status != run.Fitted {
+		return nil, nil
+	}
+	if _, err := b.openAccounts(); err != nil {
+		return nil, err
 	}
 	value := b.accounts.Values(c)
 	lines, why, err := b.accounts.PaybackLines(c)

@@ -119,6 +119,26 @@ func (b *book) group(keys []string, candidates []*run.Candidate) groupView {
 		}
 		g.Rows = append(g.Rows, r)
 	}
+	nothing := groupRow{Site: "Doing nothing", Plant: "nothing is built"}
+	for range keys {
+		nothing.Cells = append(nothing.Cells, cellView{Text: "none", Class: "s"})
+	}
+	g.Rows = append(g.Rows, nothing)
+	for i := range b.in.Results.Alternatives {
+		a := &b.in.Results.Alternatives[i]
+		r := groupRow{Site: a.Title, Plant: "beside the candidates"}
+		for _, k := range keys {
+			q, ok := a.Consequence(k)
+			if !ok {
+				q = scoring.Consequence{State: scoring.Unknown, Why: a.Unknown}
+			}
+			r.Cells = append(r.Cells, cellOf(q))
+			if q.State != scoring.Number {
+				words[a.Title+": "+b.title(k)+", "+present.WhyNot(q)] = true
+			}
+		}
+		g.Rows = append(g.Rows, r)
+	}
 	g.Words = sorted(words)
 	return g
 }
@@ -271,6 +291,9 @@ func (b *book) marks(c *run.Candidate) string {
 	}
 	if contains(c.Notices, "peat_touched") {
 		m = append(m, "peat")
+	}
+	if contains(c.Notices, "old_habitat_touched") {
+		m = append(m, "irreplaceable habitat")
 	}
 	return strings.Join(m, "; ")
 }

@@ -27,8 +27,8 @@ type unfolded struct {
 	Trace               *traceView
 	Losses, Land        template.HTML // pictures
 	Pictured            []accountPicture
-	Crowding            template.HTML // of the first of each voice
-	CrowdingWords       string
+	Said, Habitat       []string
+	Crowding            []crowdingView // of the first of each voice
 }
 
 type takenView struct{ Rule, Alone, Shared, Word string }
@@ -84,6 +84,9 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 		if u.Pictured, err = b.accountPictures(c, u.Title, "-accounts-"+strconv.Itoa(i)); err != nil {
 			return nil, nil, err
 		}
+		if u.Said, u.Habitat, err = b.said(c); err != nil {
+			return nil, nil, err
+		}
 		voices := firstFor[c.ID()]
 		if len(voices) == 0 {
 			others = append(others, u)
@@ -93,7 +96,7 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 		if u.Months, err = b.months(c, u.Title, "-months-"+strconv.Itoa(len(leads)+1)); err != nil {
 			return nil, nil, err
 		}
-		if u.Crowding, u.CrowdingWords, err = b.crowding(c, u.Title, "-crowding-"+strconv.Itoa(len(leads)+1)); err != nil {
+		if u.Crowding, err = b.crowding(c, u.Title, "-crowding-"+strconv.Itoa(len(leads)+1)); err != nil {
 			return nil, nil, err
 		}
 		if u.Trace, err = b.trace(c, "q"+strconv.Itoa(len(leads)+1)+"-"); err != nil {

@@ -7,12 +7,16 @@ import (
 	"slices"
 	"sort"
 	"strconv"
+	"strings"
 
 	"groundtally/app/draw"
+	"groundtally/app/draw/chart"
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/geo"
 	"groundtally/scoring"
+	"groundtally/scoring/criteria"
 )
 
 type voiceView struct {
@@ -25,9 +29,20 @@ type voiceView struct {
 	Accounts      []string
 	Rows          []rowView
 	More, Held    int
-	Same          string // what is unknown in every row shown
+	HeldRows      []string // the first of those held back, with the place that each would take without gates
+	Beside        []string // what stands beside the candidates
+	Sparing       string   // which sites the order would build
+	Spared        []sparedView
+	Two           template.HTML // the accounts of the first two candidates side by side
+	Same          string        // what is unknown in every row shown
 	Tipping       []tippingView
 	Notices       []string
+}
+
+// sparedView is what a saved share of the energy makes needless.
+type sparedView struct {
+	Share, Sites, Built, Direct, Total, HaYr, Stock, Saved, Economy string
+	Own                                                             bool // the share that the study has set
 }
 
 type weightView struct {
@@ -65,14 +80,14 @@ func keysOf(v run.VoiceOrder) []string {
 func three(x float64) string { return strconv.FormatFloat(x, 'f', 3, 64) }
 
 // voice writes the order of a voice and remembers the candidates that it shows.
-func (b *book) voice(i int) voiceView {
+func (b *book) voice(i int) (voiceView, error) {
 	v := b.in.Results.Voices[i]
 	out := voiceView{Title: first(v.Title, v.Voice), Anchor: "voice-" + strconv.Itoa(i+1), Held: len(v.HeldBack)}
 	for _, n := range v.Notices {
 		out.Notices = append(out.Notices, present.Notice(n))
 	}
 	if len(v.Order) == 0 {
-		return out
+		return out, nil
 	}
 	keys := keysOf(v)
 	for j, k := range keys {
@@ -101,6 +116,20 @@ func (b *book) voice(i int) voiceView {
 		out.Rows = append(out.Rows, b.row(r, accounts, same))
 	}
 	out.More = len(v.Order) - len(rows)
+	for _, a := range v.Beside {
+		out.Beside = append(out.Beside, pictures.Beside(a, b.title))
+	}
+	for j, h := range v.HeldBack {
+		if j == heldShown {
+			out.HeldRows = append(out.HeldRows, fmt.Sprintf("%d more", len(v.HeldBack)-j))
+			break
+		}
+		var by []string
+		for _, g := range h.Gates {
+			by = append(by, run.GateTitle(g))
+		}
+		out.HeldRows = append(out.HeldRows, fmt.Sprintf("%s would stand at place %d (held back: %s)", b.candidateName(h.ID()), h.Place, strings.Join(by, ", ")))
+	}
 	out.Lead = b.lead(v)
 	for _, t := range v.Tipping {
 		row := tippingView{Title: b.title(t.Key), Weight: three(t.Weight), Below: "no lower weight changes first place", Above: "no higher weight changes first place"}
@@ -116,7 +145,82 @@ func (b *book) voice(i int) voiceView {
 	if out.Pair = b.pair(v, keys, out.Title, i); out.Pair != "" {
 		out.First, out.Second = b.candidateName(rowID(v.Order[0])), b.candidateName(rowID(v.Order[1]))
 	}
-	return out
+	out.Two = b.sideBySide(v, i)
+	return out, b.sparing(v, &out)
+}
+
+// heldShown is how many candidates that a gate holds back are named.
+const heldShown = 10
+
+// sparing tells which sites an order would build, and what saved shares of their energy would make needless.
+func (b *book) sparing(v run.VoiceOrder, out *voiceView) error {
+	accounts, err := b.openAccounts()
+	if err != nil {
+		return err
+	}
+	order, err := b.in.Results.Ordered(&v)
+	if err != nil || len(order) == 0 {
+		return err
+	}
+	plan, err := accounts.SparePlan(b.in.Results, order)
+	if err != nil {
+		return err
+	}
+	own, _ := b.in.Snapshot.Number("saving.share")
+	shares := []float64{0.1, 0.2, 0.3, 0.4, 0.5}
+	if own > 0 && !slices.Contains(shares, own) {
+		shares = append(shares, own)
+		slices.Sort(shares)
+	}
+	for _, share := range shares {
+		s, e, err := plan.At(share)
+		if err != nil {
+			return err
+		}
+		figure := func(x float64) string { return present.Figure(x, x, x) }
+		row := sparedView{Share: figure(100*share) + " %", Sites: strconv.Itoa(len(s.Sites)), Built: strconv.Itoa(s.StillBuilt), Direct: figure(s.DirectHa), Total: figure(s.TotalHa), HaYr: figure(s.OccupationHaYr), Stock: figure(s.StockTC),
+			Saved: pictures.SavedSpan(e.Direct), Economy: pictures.SavedSpan(e.Economy), Own: share == own}
+		if s.StockUnknown > 0 {
+			row.Stock += fmt.Sprintf(", unknown for %d", s.StockUnknown)
+		}
+		out.Spared = append(out.Spared, row)
+	}
+	s, e, err := plan.At(0)
+	if err != nil {
+		return err
+	}
+	out.Sparing = pictures.Spared(plan, 0, s, e)
+	return nil
+}
+
+// sideBySide draws the accounts of the first two candidates of an order; nothing where there is only one.
+func (b *book) sideBySide(v run.VoiceOrder, index int) template.HTML {
+	var pair [2]*run.Candidate
+	n := 0
+	for _, r := range v.Order {
+		if c := b.by[rowID(r)]; c != nil && n < 2 {
+			pair[n] = c
+			n++
+		}
+	}
+	if n < 2 {
+		return ""
+	}
+	title := [2]string{b.candidateName(pair[0].ID()), b.candidateName(pair[1].ID())}
+	in := pictures.Accounts(pair, title, func(key string) run.KeyInfo { return b.info[key] }, b.better, "Bar chart: energy, land and climate of "+title[0]+" and "+title[1]+" side by side", "-accounts-two-"+strconv.Itoa(index+1))
+	return picture(chart.SideBySide(in, draw.Light(), fullWidth))
+}
+
+// better tells which way a consequence is better; either where there is no such way.
+func (b *book) better(key string) chart.Better {
+	c, ok := b.in.Snapshot.Catalog().Criterion(key)
+	switch {
+	case ok && c.Better == criteria.Less:
+		return chart.Less
+	case ok && c.Better == criteria.More:
+		return chart.More
+	}
+	return chart.Either
 }
 
 // candidateName writes a candidate's id in words.
@@ -212,13 +316,19 @@ func (b *book) row(r run.Row, accounts []scoring.Account, same []string) rowView
 	add("very low: ", b.titles(r.Alerts))
 	if c, ok := b.by[out.ID]; ok {
 		for _, n := range c.Notices {
-			if n == "peat_touched" {
+			switch n {
+			case "peat_touched":
 				add("", "stands on mapped peat")
+			case "old_habitat_touched":
+				add("", "touches irreplaceable habitat")
 			}
 		}
 	}
 	if g, ok := r.Gates["owner_consent"]; ok {
 		add("owner's consent: ", g.State)
+	}
+	if r.PlaceWithout > 0 && r.PlaceWithout != r.Place {
+		add("without gates at place ", strconv.Itoa(r.PlaceWithout))
 	}
 	return out
 }

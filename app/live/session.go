@@ -488,9 +488,9 @@ func (s *Session) Course(c *run.Candidate, done func(*run.Course, error)) {
 	survey(s, func(sv *run.Surveyor) (*run.Course, error) { return sv.Course(s.ctx, c) }, done)
 }
 
-// Crowding sweeps the spacing or ground cover of a candidate, as Around does; see run.Surveyor.
-func (s *Session) Crowding(c *run.Candidate, done func(*run.Crowded, error)) {
-	survey(s, func(sv *run.Surveyor) (*run.Crowded, error) { return sv.Crowding(s.ctx, c) }, done)
+// Crowding sweeps the spacing or ground cover of a candidate, or of a part of it, as Around does; see run.Surveyor.
+func (s *Session) Crowding(c *run.Candidate, part string, done func(*run.Crowded, error)) {
+	survey(s, func(sv *run.Surveyor) (*run.Crowded, error) { return sv.Crowding(s.ctx, c, part) }, done)
 }
 
 // Relief finds the terrain of a candidate's site and of its buildable patches, as Around does; see run.Surveyor.

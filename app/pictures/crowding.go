@@ -36,6 +36,9 @@ func Crowding(c *run.Crowded, title, id string) chart.Sweep {
 // CrowdingWords tells the crowding curve, for those who cannot see it and for whom one number is not enough.
 func CrowdingWords(c *run.Crowded) string {
 	if c.Why != "" {
+		if c.Part != "" {
+			return fmt.Sprintf("No crowding curve of the %s part: %s.", map[string]string{"wind": "wind", "solar": "sun"}[c.Part], present.Reason(c.Why))
+		}
 		return "No crowding curve: " + present.Reason(c.Why) + "."
 	}
 	unit := strings.TrimSuffix(" "+c.SweptUnit, " ")
@@ -47,8 +50,14 @@ func CrowdingWords(c *run.Crowded) string {
 		return text
 	}
 	text := fmt.Sprintf("Fitted as the option says at each %s, for a hectare inside the fence", c.Swept)
+	if c.Part != "" {
+		text = fmt.Sprintf("With the turbines and the power of the panels as they are, at each %s, for a hectare of the plant's whole ground", c.Swept)
+	}
 	if c.GroundHa > 0 {
 		text = fmt.Sprintf("On %.2f ha of buildable ground, filled at each %s", c.GroundHa, c.Swept)
+		if c.Part != "" {
+			text = fmt.Sprintf("On %.2f ha of buildable ground, filled with turbines at each %s, the power of the panels as it is", c.GroundHa, c.Swept)
+		}
 	}
 	text += fmt.Sprintf(": the best return at %s; the most net energy, as electricity, at %s; the most energy from a hectare at %s.", at(c.BestReturn), at(c.MostNet), at(c.MostEnergy))
 	if c.Chosen.Known {

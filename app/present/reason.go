@@ -53,6 +53,8 @@ var reasons = map[string]string{
 	"upstream_unknown":           "it is not known what the network behind it can take; ask the network operator",
 	"below_level_band":           "the plant is small for this voltage",
 	"above_usual_power":          "the power is above what is usual at this voltage; expect a study by the network operator",
+	"no_such_candidate":          "the study has no such candidate",
+	"no_energy_known":            "no candidate's energy is known",
 	"short_circuit_weak":         "the network is weak here for this power",
 	"short_circuit_low":          "the network is rather weak here for this power",
 	"short_circuit_noted":        "the strength of the network here should be looked at",

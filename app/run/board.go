@@ -25,9 +25,11 @@ type Board struct {
 	IDs     []string         // by item: Candidate.ID, or NoSite for doing nothing
 	At      []int            // by item: candidate in the results, -1 for doing nothing
 	ItemOf  []int32          // by candidate: its item, -1 for one that is not ordered
-	Held    []string         // candidates that a gate holds back
+	Held    []Held           // candidates that a gate holds back; their places are those of a saved order alone
 
-	board *weigh.Board
+	board        *weigh.Board
+	scales       []scale
+	alternatives []Alternative
 }
 
 // NewBoard lays out results for the voices of a state of the study. A study whose voices weigh nothing
@@ -42,11 +44,12 @@ func NewBoard(snap *study.Snapshot, p *Params, r *Results) (*Board, error) {
 	if len(sc) == 0 {
 		return b, nil
 	}
-	items, at, held, err := weighed(snap, sc, r.Candidates)
+	f, err := weighed(snap, sc, r.Candidates)
 	if err != nil {
 		return nil, err
 	}
-	b.At, b.Held = at, held
+	items, at := f.items, f.at
+	b.At, b.Held, b.scales, b.alternatives = at, f.held, sc, r.Alternatives
 	b.ItemOf = make([]int32, len(r.Candidates))
 	for i := range b.ItemOf {
 		b.ItemOf[i] = -1
@@ -134,4 +137,9 @@ func (b *Board) Part(item, key int) weigh.Part { return b.board.Part(item, key) 
 // Share gives what a key adds to the score of an item under a standing, with the ends of its interval.
 func (b *Board) Share(s *weigh.Standing, item, key int) (low, mid, high float64) {
 	return b.board.Share(s, item, key)
+}
+
+// Beside gives the alternatives under raw weights and the standing that came of them.
+func (b *Board) Beside(raw []float64, s *weigh.Standing) ([]Beside, error) {
+	return besides(b.alternatives, b.scales, raw, s.Score)
 }

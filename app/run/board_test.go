@@ -27,6 +27,7 @@ func TestReweighAndBoardEqualCompute(t *testing.T) {
 		{{Key: "voice.farmers.weight.net_share", Value: "70"}},
 		{{Key: "voice.farmers.weight.habitat_ha_per_gwh", Value: "15"}, {Key: "anchor.connection_km.worst", Value: "9"}},
 		{{Key: "voice.elders.weight.connection_km", Value: "3"}, {Key: "weigh.mixes", Value: "40"}, {Key: "gate.owner_consent", Value: "not_no"}},
+		{{Key: "gate.critical.farmland", Value: "not_no"}, {Key: "saving.investment_g_per_kwh", Value: "12"}},
 		{{Key: "voice.broken.weight.rated_kw", Value: "3"}},
 	} {
 		if _, err := s.Set(ctx, "set", "", edits...); err != nil {

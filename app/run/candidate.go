@@ -20,7 +20,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 6
+const candidateEdition = 7
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {
@@ -288,7 +288,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	}
 
 	noted := map[string]bool{}
-	tracks, err := w.measureFacts(e, around, o, s, g.Area, r, f, noted)
+	tracks, habitat, err := w.measureFacts(e, around, o, s, g.Area, r, f, noted)
 	if err != nil {
 		return nil, fmt.Errorf("site %s, option %s: %w", s.id, o.id, err)
 	}
@@ -309,7 +309,7 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 	}
 	linkFacts(l, f)
 	fr.matchFacts(power, r, l, f)
-	c.Connection = l.conn
+	c.Connection, c.Habitat = l.conn, habitat
 	c.Chain = r.Chain
 	for _, n := range r.Notices {
 		noted[n] = true

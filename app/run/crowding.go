@@ -17,8 +17,9 @@ import (
 
 // Crowded is a plant at several spacings or ground covers: what a hectare gives, and what comes back for what is spent.
 // Turbines fill the buildable ground, and a hectare is one of that; panels are fitted as their option says, and a hectare
-// is one inside their fence.
+// is one inside their fence. Where the panels of a plant of both are swept, a hectare is one of the ground of the whole plant.
 type Crowded struct {
+	Part      string // wind or solar: what is swept of a plant of both; empty for others
 	Swept     string // what is varied
 	SweptUnit string
 	Points    []CrowdedPoint // the emptiest first
@@ -57,18 +58,27 @@ var (
 
 const mostCrowded = 60
 
-// at gives the option with one value of the sweep; turbines fill the ground.
-func (o option) at(swept float64) option {
+// at gives the option with one value of the sweep; turbines fill the ground. Of a plant of both, fitted as was, the
+// other part stays: as many turbines, as much power of panels.
+func (o option) at(part string, swept float64, was *Fit) option {
 	out := o
 	out.settings = maps.Clone(o.settings)
-	if !o.wind {
+	if o.wind {
+		out.fit = fitFill
+		out.settings["fit"] = fitFill
+		delete(out.settings, "fit_power_kw")
+		out.settings["fit_machines"] = fmt.Sprint(mostCrowded)
+	}
+	if o.wind && o.solar {
+		out.settings["fit_power_kw"] = fmt.Sprint(was.SolarKW * (1 + 1e-9))
+	}
+	if part == solarPart {
 		out.settings["gcr"] = fmt.Sprint(swept)
+		if o.wind {
+			out.settings["fit_machines"] = fmt.Sprint(len(was.Turbines))
+		}
 		return out
 	}
-	out.fit = fitFill
-	out.settings["fit"] = fitFill
-	delete(out.settings, "fit_power_kw")
-	out.settings["fit_machines"] = fmt.Sprint(mostCrowded)
 	along, _ := o.num("spacing_along_d")
 	across, _ := o.num("spacing_across_d")
 	out.settings["spacing_along_d"] = fmt.Sprint(swept)
@@ -76,9 +86,18 @@ func (o option) at(swept float64) option {
 	return out
 }
 
+// CrowdingParts gives what can be swept of a candidate: both parts of a plant of wind and sun, else one without a name.
+func CrowdingParts(c *Candidate) []string {
+	if c.Technology == "wind_solar" {
+		return []string{windPart, solarPart}
+	}
+	return []string{""}
+}
+
 // Crowding sweeps the spacing or the ground cover of a fitted candidate, by fitting and reckoning it anew at each value.
-func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error) {
-	out := &Crowded{}
+// The part, one of CrowdingParts, says what is swept of a plant of both.
+func (s *Surveyor) Crowding(ctx context.Context, c *Candidate, part string) (*Crowded, error) {
+	out := &Crowded{Part: part}
 	if c.Status != Fitted {
 		out.Why = c.Status
 		return out, nil
@@ -99,27 +118,26 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 		return nil, fmt.Errorf("plant option %q: %w", c.Plant, study.ErrNotThere)
 	}
 	o := w.options[i]
-	if o.wind && o.solar {
-		out.Why = "wind and sun of one plant crowd each other in two ways; look at the options of one of them"
-		return out, nil
+	if part == "" {
+		part = o.parts()[0]
 	}
 	values, now := crowdedCovers, "gcr"
 	out.Swept = "ground cover"
-	main := solarPart
-	if o.wind {
-		values, now, main = crowdedSpacings, "spacing_along_d", windPart
+	if part == windPart {
+		values, now = crowdedSpacings, "spacing_along_d"
 		out.Swept, out.SweptUnit = "spacing along the wind", "rotor diameters"
 	}
-	rs, err := w.rulesFor(o, main)
-	if err != nil {
-		return nil, err
+	grounds, sets := map[string]groundResult{}, map[string]*ruleset{}
+	for _, p := range o.parts() {
+		if sets[p], err = w.rulesFor(o, p); err != nil {
+			return nil, err
+		}
+		if grounds[p], err = s.ground(ctx, sets[p], here); err != nil {
+			return nil, err
+		}
 	}
-	g, err := s.ground(ctx, rs, here)
-	if err != nil {
-		return nil, err
-	}
-	if o.wind {
-		out.GroundHa = g.BuildableM2 / units.M2PerHa
+	if part == windPart {
+		out.GroundHa = grounds[windPart].BuildableM2 / units.M2PerHa
 	}
 	k, err := w.newReckoner()
 	if err != nil {
@@ -127,19 +145,20 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 	}
 	e := overlay.New()
 	defer closeEngine(e)
-	if err := rs.prepare(ctx, e, runtime.NumCPU(), map[string]*widened{}); err != nil {
-		return nil, err
+	for _, p := range o.parts() {
+		if err := sets[p].prepare(ctx, e, runtime.NumCPU(), map[string]*widened{}); err != nil {
+			return nil, err
+		}
 	}
 	around, err := w.newPieces(e, here)
 	if err != nil {
 		return nil, err
 	}
-	grounds, sets := map[string]groundResult{main: g}, map[string]*ruleset{main: rs}
 	sample := func(x float64) (CrowdedPoint, string, error) {
 		if err := ctx.Err(); err != nil {
 			return CrowdedPoint{}, "", err
 		}
-		one := o.at(x)
+		one := o.at(part, x, c.Fit)
 		r, err := f.compute(e, one, here, grounds)
 		if err != nil || r.Status != Fitted {
 			return CrowdedPoint{}, cmp.Or(r.Reason, r.Status), err
@@ -149,7 +168,10 @@ func (s *Surveyor) Crowding(ctx context.Context, c *Candidate) (*Crowded, error)
 			return CrowdedPoint{}, "", err
 		}
 		ground := out.GroundHa
-		if !o.wind {
+		switch {
+		case o.wind && part == solarPart:
+			ground = r.TotalHa
+		case !o.wind:
 			ground = r.FenceHa
 		}
 		return k.crowded(cand, x, ground)

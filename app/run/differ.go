@@ -3,6 +3,7 @@ package run
 import (
 	"fmt"
 	"math"
+	"reflect"
 
 	"groundtally/scoring"
 )
@@ -46,6 +47,26 @@ func differ(a, b *Results) *Difference {
 				return &Difference{Where: fmt.Sprintf("voice %s, %s with %s, score", v.Voice, r.Site, r.Plant), Old: fmt.Sprint(r.Score), New: fmt.Sprint(other.Score)}
 			}
 		}
+		if d := differHeld(v, u); d != nil {
+			return d
+		}
+		for j, b := range v.Beside {
+			if c := u.Beside[j]; b.Why != c.Why || !near(b.Score, c.Score) || b.Place != c.Place {
+				return &Difference{Where: fmt.Sprintf("voice %s, %s", v.Voice, b.Title), Old: fmt.Sprint(b.Why, " ", b.Score, ", place ", b.Place), New: fmt.Sprint(c.Why, " ", c.Score, ", place ", c.Place)}
+			}
+		}
+	}
+	return nil
+}
+
+func differHeld(a, b VoiceOrder) *Difference {
+	if len(a.HeldBack) != len(b.HeldBack) {
+		return &Difference{Where: "voice " + a.Voice + ", held back", Old: fmt.Sprint(len(a.HeldBack)), New: fmt.Sprint(len(b.HeldBack))}
+	}
+	for i, h := range a.HeldBack {
+		if g := b.HeldBack[i]; h.ID() != g.ID() || h.Place != g.Place {
+			return &Difference{Where: fmt.Sprintf("voice %s, held back, number %d", a.Voice, i+1), Old: fmt.Sprint(h.ID(), ", place ", h.Place), New: fmt.Sprint(g.ID(), ", place ", g.Place)}
+		}
 	}
 	return nil
 }
@@ -60,6 +81,9 @@ func differCandidate(a, b *Candidate) *Difference {
 	}
 	if a.Fit != nil && b.Fit != nil && len(a.Fit.Turbines) != len(b.Fit.Turbines) {
 		return &Difference{Where: at + ", number of turbines", Old: fmt.Sprint(len(a.Fit.Turbines)), New: fmt.Sprint(len(b.Fit.Turbines))}
+	}
+	if !reflect.DeepEqual(a.Habitat, b.Habitat) {
+		return &Difference{Where: at + ", habitat", Old: fmt.Sprintf("%+v", a.Habitat), New: fmt.Sprintf("%+v", b.Habitat)}
 	}
 	as, bs := a.All(), b.All()
 	if len(as) != len(bs) {

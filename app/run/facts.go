@@ -323,9 +323,9 @@ func layerNames(ls []*layer) string {
 	return strings.Join(names, ", ")
 }
 
-// measureFacts gives every fact of a fitted candidate that follows from the map, and the tracks that it lays on the
-// buildable ground.
-func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site, buildable geo.XYGeometry, r fitResult, f facts, notices map[string]bool) (laid, error) {
+// measureFacts gives every fact of a fitted candidate that follows from the map, the tracks that it lays on the
+// buildable ground, and the habitat that it touches (nil for none).
+func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site, buildable geo.XYGeometry, r fitResult, f facts, notices map[string]bool) (laid, *Habitat, error) {
 	var none laid
 	anyFeature := func(*layer, int) bool { return true }
 	for _, d := range []struct {
@@ -343,7 +343,7 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		}
 		m, ok, err := w.nearestM(e, r, d.role, d.keep)
 		if err != nil {
-			return none, err
+			return none, nil, err
 		}
 		if !ok {
 			f.set(d.name, scoring.UnknownBecause("nothing_found:"+d.role), "")
@@ -354,25 +354,25 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 
 	allowed, err := w.heightAllowed(e, around, o, s)
 	if err != nil {
-		return none, err
+		return none, nil, err
 	}
 	f.set("height_limit_m", allowed, layerNames(w.byRole[heightRule]))
 
 	tracks, err := w.tracks(e, s, buildable, r, f["road_m"].v)
 	if err != nil {
-		return none, err
+		return none, nil, err
 	}
 	f.set("track_km", tracks.km, tracks.source)
 	f.num("track_counted_km", tracks.counted, tracks.source)
 	g, err := w.plantGround(e, r, tracks.ground)
 	if err != nil {
-		return none, err
+		return none, nil, err
 	}
 	groundHa := measure.AreaM2(g) / units.M2PerHa
 	edge := g
 	if x, ok := w.snap.Number("land.habitat_edge_m"); ok && x > 0 {
 		if edge, err = e.Buffer(g, x); err != nil {
-			return none, err
+			return none, nil, err
 		}
 	}
 	way := tracks.guess
@@ -395,11 +395,15 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		{"sensitive_ha", "sensitive", "no sensitive area touched", g},
 	} {
 		if _, err := measured(d.name, d.role, d.none, d.over); err != nil {
-			return none, err
+			return none, nil, err
 		}
 	}
+	habitat, err := w.habitat(e, around, g, edge, way, f["habitat_ha"].v, f, notices)
+	if err != nil {
+		return none, nil, err
+	}
 	if err := w.forestFacts(e, around, g, way, f); err != nil {
-		return none, err
+		return none, nil, err
 	}
 
 	best, _ := w.snap.Number("land.farmland_best_grade")
@@ -417,7 +421,7 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		return quality01(grade, best, worst), true
 	})
 	if err != nil {
-		return none, err
+		return none, nil, err
 	}
 	v := around.touched(farm.ha, false, "farmland", "no farmland touched")
 	src := layerNames(w.byRole["farmland"])
@@ -434,7 +438,7 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 	// Soil: the mean stock under the plant's ground, ploughland and grass under the fence.
 	soil, err := around.overlap(e, g, "soil", func(l *layer, i int) (float64, bool) { return l.number(i, "organic_carbon_stock", "t C/ha") })
 	if err != nil {
-		return none, err
+		return none, nil, err
 	}
 	src = layerNames(w.byRole["soil"])
 	switch {
@@ -461,14 +465,14 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 				return 0, true
 			})
 			if err != nil {
-				return none, err
+				return none, nil, err
 			}
 			arable := math.Min(cover.sum, r.FenceHa)
 			f.num("fence_arable_ha", arable, layerNames(w.byRole["land_cover"]))
 			f.num("fence_grass_ha", r.FenceHa-arable, layerNames(w.byRole["land_cover"]))
 		}
 	}
-	return tracks, w.peatFacts(e, around, g, way, groundHa, f, notices)
+	return tracks, habitat, w.peatFacts(e, around, g, way, groundHa, f, notices)
 }
 
 // quality01 turns a grade into a share from 0 to 1: the best grade is 1, and the worst still counts as

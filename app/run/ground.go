@@ -12,7 +12,7 @@ import (
 )
 
 // groundEdition is raised when the digits of the step change.
-const groundEdition = 2
+const groundEdition = 3
 
 // widened are a source's features, widened by its distance for one bound of the tolerance.
 type widened = overlay.Layer
@@ -224,10 +224,9 @@ func (rs *ruleset) compute(e *overlay.Engine, w *world, s site, known terrainCel
 		}
 		g.LargestM2 = max(g.LargestM2, a)
 	}
-	if !rs.tolerant {
+	if g.Tolerant = rs.tolerantOn(s); !g.Tolerant {
 		return g, nil
 	}
-	g.Tolerant = true
 	for b, m2 := range map[bound]*float64{leastLand: &g.LeastM2, mostLand: &g.MostM2} {
 		if in, err = rs.input(e, w, s, known, b); err != nil {
 			return groundResult{}, err
@@ -239,6 +238,23 @@ func (rs *ruleset) compute(e *overlay.Engine, w *world, s site, known terrainCel
 	}
 	g.LeastM2, g.MostM2 = math.Min(g.LeastM2, g.BuildableM2), math.Max(g.MostM2, g.BuildableM2)
 	return g, nil
+}
+
+// tolerantOn reports whether a rule whose layer has a position tolerance has anything near a site. Elsewhere the
+// tolerance changes nothing, not even what is said of the area.
+func (rs *ruleset) tolerantOn(s site) bool {
+	if !rs.tolerant {
+		return false
+	}
+	for _, r := range rs.rules {
+		if r.toleranceM == 0 || r.gone || rs.excepts(s.id, r.name) {
+			continue
+		}
+		if r.boundary || len(r.on(s.box, asDrawn).Features) > 0 || len(r.on(s.box, leastLand).Features) > 0 {
+			return true
+		}
+	}
+	return false
 }
 
 func siteError(s site, err error) error { return fmt.Errorf("site %s: %w", s.id, err) }

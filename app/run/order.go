@@ -1,6 +1,7 @@
 package run
 
 import (
+	"cmp"
 	"context"
 	"encoding/json"
 	"fmt"
@@ -108,6 +109,8 @@ type Row struct {
 	DominanceAll bool            `json:"dominance_known"`
 	Alerts       []string        `json:"alerts,omitempty"`
 	Gates        map[string]Gate `json:"gates"`
+	// PlaceWithout is the place that it would take if no gate held anything back; 0 where none does.
+	PlaceWithout int `json:"place_without_gates,omitempty"`
 }
 
 // TippingSide is where first place changes hands.
@@ -130,7 +133,8 @@ type VoiceOrder struct {
 	Title    string       `json:"title"`
 	Order    []Row        `json:"order"`
 	Tipping  []TippingRow `json:"tipping"`
-	HeldBack []string     `json:"held_back"` // by a gate
+	HeldBack []Held       `json:"held_back"`
+	Beside   []Beside     `json:"beside"`
 	Mixes    int          `json:"mixes"`
 	Notices  []geo.Notice `json:"notices"`
 }
@@ -140,6 +144,13 @@ type AnchorError struct{ Voice, Key string }
 
 func (e *AnchorError) Error() string {
 	return fmt.Sprintf("voice %q weighs %s, whose value scale has no fixed ends; set anchor.%s.worst and anchor.%s.best first", e.Voice, e.Key, e.Key, e.Key)
+}
+
+// FamilyError says that a voice weighs two consequences that count one event, without a reason.
+type FamilyError struct{ Voice, Family, Key, Other string }
+
+func (e *FamilyError) Error() string {
+	return fmt.Sprintf("voice %q weighs both %s and %s, which count the same event (%s); take the weight off one, or give the reason in voice.%s.both.%s", e.Voice, e.Other, e.Key, e.Family, e.Voice, e.Family)
 }
 
 // VoiceError says why a voice cannot order anything yet.
@@ -180,7 +191,11 @@ func scales(snap *study.Snapshot, p *Params, voice string) ([]scale, []geo.Notic
 		}
 		for _, f := range c.Families {
 			if other, twice := families[f]; twice {
-				notices = append(notices, geo.Notice{Code: "family_twice", Severity: geo.Warning, Field: k.Key, Args: map[string]string{"family": f, "other": other}})
+				reason := strings.TrimSpace(snap.Text("voice." + voice + ".both." + f))
+				if reason == "" {
+					return nil, nil, &FamilyError{Voice: voice, Family: f, Key: k.Key, Other: other}
+				}
+				notices = append(notices, geo.Notice{Code: "family_twice", Severity: geo.Warning, Field: k.Key, Args: map[string]string{"family": f, "other": other, "reason": reason}})
 			}
 			families[f] = k.Key
 		}
@@ -267,27 +282,36 @@ func (s scale) trial(v scoring.Value) (float64, error) {
 	return 0.5, nil // not used for an unknown part
 }
 
-// weighed gives the fitted candidates and the row of doing nothing as items to weigh, with the candidate
-// behind each item (-1 for doing nothing), and the candidates that a gate holds back.
-func weighed(snap *study.Snapshot, sc []scale, cs []Candidate) (items []weigh.Item, at []int, heldBack []string, err error) {
-	gate := snap.Text("gate.owner_consent")
+// contest is what is put in order: the fitted candidates that no gate holds back, and doing nothing as the last.
+type contest struct {
+	items    []weigh.Item
+	at       []int // by item: the candidate, -1 for doing nothing
+	held     []Held
+	heldBack []weigh.Item // the items of those held
+}
+
+// weighed lays out what is put in order.
+func weighed(snap *study.Snapshot, sc []scale, cs []Candidate) (*contest, error) {
+	gates := gatesOf(snap)
+	f := &contest{}
 	for i := range cs {
 		c := &cs[i]
 		if c.Status != Fitted {
 			continue
 		}
-		if held(gate, c.Gates["owner_consent"].State) {
-			heldBack = append(heldBack, c.ID())
-			continue
-		}
 		item := weigh.Item{ID: c.ID(), Values: make([]weigh.Part, len(sc))}
 		for k, s := range sc {
 			q, _ := c.Consequence(s.key)
+			var err error
 			if item.Values[k], err = s.part(q, slices.Contains(c.OverLimit, s.key)); err != nil {
-				return nil, nil, nil, fmt.Errorf("candidate %s, %s: %w", c.ID(), s.key, err)
+				return nil, fmt.Errorf("candidate %s, %s: %w", c.ID(), s.key, err)
 			}
 		}
-		items, at = append(items, item), append(at, i)
+		if by := heldBy(gates, c); len(by) > 0 {
+			f.held, f.heldBack = append(f.held, Held{Site: c.Site, Plant: c.Plant, Gates: by}), append(f.heldBack, item)
+			continue
+		}
+		f.items, f.at = append(f.items, item), append(f.at, i)
 	}
 	nothing := weigh.Item{ID: NoSite}
 	for _, s := range sc {
@@ -298,12 +322,39 @@ func weighed(snap *study.Snapshot, sc []scale, cs []Candidate) (items []weigh.It
 			nothing.Values = append(nothing.Values, weigh.Part{Known: true})
 		}
 	}
-	return append(items, nothing), append(at, -1), heldBack, nil
+	f.items, f.at = append(f.items, nothing), append(f.at, -1)
+	return f, nil
+}
+
+// without puts everything in order as if no gate held anything back, and notes the places. It gives them by id.
+func (f *contest) without(keys []weigh.Key, raw []float64) (map[string]int, error) {
+	if len(f.held) == 0 {
+		return nil, nil
+	}
+	b, err := weigh.NewBoard(keys, slices.Concat(f.items, f.heldBack))
+	if err != nil {
+		return nil, err
+	}
+	var s weigh.Standing
+	if err := b.Weigh(raw, &s); err != nil {
+		return nil, err
+	}
+	places := make(map[string]int, len(f.items))
+	for i, item := range f.items {
+		places[item.ID] = s.Place[i]
+	}
+	for i := range f.held {
+		at := len(f.items) + i
+		f.held[i].Place, f.held[i].Tier, f.held[i].Score = s.Place[at], s.Tier[at], s.Score[at]
+	}
+	slices.SortFunc(f.held, func(a, b Held) int { return cmp.Compare(a.Place, b.Place) })
+	return places, nil
 }
 
 // order weighs the fitted candidates under one voice.
-func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, draw *draws, voice string, cs []Candidate) (VoiceOrder, error) {
-	out := VoiceOrder{Voice: voice, Title: snap.Text("voice." + voice + ".title"), Order: []Row{}, Tipping: []TippingRow{}, HeldBack: []string{}}
+func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, draw *draws, voice string, r *Results) (VoiceOrder, error) {
+	cs := r.Candidates
+	out := VoiceOrder{Voice: voice, Title: snap.Text("voice." + voice + ".title"), Order: []Row{}, Tipping: []TippingRow{}, HeldBack: []Held{}}
 	sc, notices, err := scales(snap, p, voice)
 	if err != nil {
 		return out, &VoiceError{err}
@@ -318,11 +369,20 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	for _, s := range sc {
 		in.Keys = append(in.Keys, weigh.Key{Name: s.key, Account: string(s.info.Account), RawWeight: s.raw})
 	}
-	items, at, heldBack, err := weighed(snap, sc, cs)
+	f, err := weighed(snap, sc, cs)
 	if err != nil {
 		return out, err
 	}
+	items, at := f.items, f.at
 	in.Items = items
+	raw := make([]float64, len(sc))
+	for i, s := range sc {
+		raw[i] = s.raw
+	}
+	places, err := f.without(in.Keys, raw)
+	if err != nil {
+		return out, fmt.Errorf("voice %q: %w", voice, err)
+	}
 	told, err := returnScale(snap, p, voice, sc, items, at, cs)
 	if err != nil {
 		return out, err
@@ -330,7 +390,7 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	if told != nil {
 		out.Notices = append(out.Notices, *told)
 	}
-	out.HeldBack = append(out.HeldBack, heldBack...)
+	out.HeldBack = append(out.HeldBack, f.held...)
 
 	contenders, err := weigh.Contenders(in)
 	if err != nil {
@@ -385,7 +445,7 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 	slices.Sort(accounts)
 	out.Order = make([]Row, 0, len(res.Lines))
 	for _, l := range res.Lines {
-		r := Row{Place: l.Place, Tier: l.Tier, Site: NoSite, Score: l.Score, ScoreLow: l.ScoreLow, ScoreHigh: l.ScoreHigh, RankBest: l.RankBest, RankWorst: l.RankWorst,
+		r := Row{PlaceWithout: places[l.ID], Place: l.Place, Tier: l.Tier, Site: NoSite, Score: l.Score, ScoreLow: l.ScoreLow, ScoreHigh: l.ScoreHigh, RankBest: l.RankBest, RankWorst: l.RankWorst,
 			CanBeFirst: canBeFirst(l.CanBeFirst), Parts: Named[Part]{keys, make([]Part, len(keys))}, Accounts: Named[float64]{accounts, make([]float64, len(accounts))}, OverLimit: orEmpty(l.OverLimit), Unknown: orEmpty(l.Unknown), Incomplete: []string{},
 			FirstIn100: res.FirstInHundred(l), DominatedBy: []string{}, DominanceAll: l.DominanceKnown, Alerts: l.Alerts, Gates: map[string]Gate{}}
 		for _, s := range res.Parts(l) {
@@ -408,6 +468,18 @@ func order(ctx context.Context, snap *study.Snapshot, p *Params, k *reckoner, dr
 		}
 		out.Order = append(out.Order, r)
 	}
+	scores := make([]float64, len(res.Lines))
+	for i, l := range res.Lines {
+		scores[i] = l.Score
+	}
+	if out.Beside, err = besides(r.Alternatives, sc, raw, scores); err != nil {
+		return out, fmt.Errorf("voice %q: %w", voice, err)
+	}
+	decided, err := k.decidedByDefault(sc, res.Lines, at, cs)
+	if err != nil {
+		return out, err
+	}
+	out.Notices = append(out.Notices, decided...)
 	for _, t := range res.Tipping {
 		row := TippingRow{Key: t.Key, Weight: t.Weight}
 		if t.Below != nil {
@@ -429,16 +501,6 @@ func canBeFirst(s weigh.Status) string {
 		return "no"
 	}
 	return "unknown"
-}
-
-func held(gate, state string) bool {
-	switch gate {
-	case "not_no":
-		return state == "no"
-	case "yes":
-		return state != "yes"
-	}
-	return false
 }
 
 // draws are the trials of all weighed keys, made for a candidate when a voice first needs it.

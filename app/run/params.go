@@ -87,6 +87,8 @@ var factLeaves = []scoring.Leaf{
 	{Name: "height_limit_m", Unit: "m", Title: "Height that the mapped limits allow"},
 	{Name: "road_m", Unit: "m", Title: "Distance to a road"},
 	{Name: "habitat_ha", Unit: "ha", Title: "Habitat touched"},
+	{Name: "habitat_irreplaceable_ha", Unit: "ha", Title: "Irreplaceable habitat touched"},
+	{Name: "habitat_fragments", Unit: "1", Title: "Habitat pieces added"},
 	{Name: "forest_ha", Unit: "ha", Title: "Forest cleared"},
 	{Name: "flood_ha", Unit: "ha", Title: "Ground that floods"},
 	{Name: "water_protection_ha", Unit: "ha", Title: "Water protection area touched"},

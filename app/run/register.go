@@ -43,7 +43,7 @@ type OutRule struct {
 // Register lists every candidate that is out, by which rules and by how much, with the editions of the data
 // behind them.
 func Register(snap *study.Snapshot, r *Results) []Out {
-	gate := snap.Text("gate.owner_consent")
+	gates := gatesOf(snap)
 	data := map[string][]string{}
 	for _, l := range snap.Layers {
 		words := l.Name
@@ -60,10 +60,15 @@ func Register(snap *study.Snapshot, r *Results) []Out {
 		c := &r.Candidates[i]
 		o := Out{Site: c.Site, Plant: c.Plant, Status: c.Status, Reason: c.Reason, ShapeHa: c.ShapeHa, Headroom: c.Headroom}
 		if c.Status == Fitted {
-			if !held(gate, c.Gates["owner_consent"].State) {
+			by := heldBy(gates, c)
+			if len(by) == 0 {
 				continue
 			}
-			o.Status, o.Reason = HeldBack, "owner_consent: "+c.Gates["owner_consent"].State
+			o.Status = HeldBack
+			for i, g := range by {
+				by[i] = GateTitle(g) + ": " + c.Gate(g).State
+			}
+			o.Reason = strings.Join(by, "; ")
 		}
 		for key, x := range map[string]*float64{"gross_area_ha": &o.GrossHa, "buildable_area_ha": &o.BuildableHa, "largest_patch_ha": &o.LargestPatchHa} {
 			if q, ok := c.Consequence(key); ok && q.State == scoring.Number {

@@ -118,6 +118,7 @@ type Candidate struct {
 	Headroom      *Headroom             `json:"headroom,omitempty"` // of a plant with turbines where height limits hold
 	Connection    *Connection           `json:"connection,omitempty"`
 	Chain         []ChainStep           `json:"chain,omitempty"`
+	Habitat       *Habitat              `json:"habitat,omitempty"` // nil where none is touched or known
 	Facts         []Leaf                `json:"leaves,omitempty"`
 	OverLimit     []string              `json:"over_limit,omitempty"`
 	Excepted      []string              `json:"excepted,omitempty"` // rules that do not hold here by the user's word
@@ -245,7 +246,7 @@ func (c *Candidate) PublicJSON() map[string]any {
 	}
 	m := map[string]any{
 		"site": c.Site, "parcels": c.Parcels, "plant": c.Plant, "technology": c.Technology, "status": c.Status,
-		"consequences": cons, "gates": c.Gates, "incomplete": orEmpty(c.Incomplete), "taken": c.Taken,
+		"consequences": cons, "gates": c.AllGates(), "incomplete": orEmpty(c.Incomplete), "taken": c.Taken,
 		"taken_shared_ha": c.TakenSharedHa, "shape_ha": c.ShapeHa, "notices": orEmpty(c.Notices), "over_limit": orEmpty(c.OverLimit),
 	}
 	if c.Taken == nil {
@@ -281,6 +282,9 @@ func (c *Candidate) PublicJSON() map[string]any {
 	if c.Chain != nil {
 		m["chain"] = c.Chain
 	}
+	if c.Habitat != nil {
+		m["habitat"] = c.Habitat
+	}
 	return m
 }
 
@@ -300,12 +304,13 @@ type StepCount struct {
 
 // Results is all that follows from a study.
 type Results struct {
-	Candidates []Candidate
-	Voices     []VoiceOrder
-	Unready    map[string]error // voices that cannot order anything yet, with the reason
-	Steps      []StepCount
-	Notices    []geo.Notice
-	Code       Code
+	Candidates   []Candidate
+	Alternatives []Alternative // saving the same, and sealed ground
+	Voices       []VoiceOrder
+	Unready      map[string]error // voices that cannot order anything yet, with the reason
+	Steps        []StepCount
+	Notices      []geo.Notice
+	Code         Code
 
 	made     []geo.Notice  // notices of the steps before weighing
 	digests  []digest      // of the candidates
@@ -314,5 +319,6 @@ type Results struct {
 	draws    *draws        // for the next results
 	terrain  *keptTerrain  // for the next results; nil when no step read it
 	years    *sunYears     // for the next results
+	sealed   Alternative
 	reckoner *reckoner
 }

@@ -27,17 +27,17 @@ func TestReturnScaleIsTold(t *testing.T) {
 				sc = append(sc, one)
 			}
 		}
-		items, at, _, err := weighed(snap, sc, r.Candidates)
+		f, err := weighed(snap, sc, r.Candidates)
 		if err != nil {
 			t.Fatal(err)
 		}
-		n, err := returnScale(snap, shipped(t), "operator", sc, items, at, r.Candidates)
+		n, err := returnScale(snap, shipped(t), "operator", sc, f.items, f.at, r.Candidates)
 		if err != nil {
 			t.Fatal(err)
 		}
 		first := func() string {
 			best, id := -1.0, ""
-			for _, it := range items {
+			for _, it := range f.items {
 				sum := 0.0
 				for k := range sc {
 					v := weigh.Part{Mid: 0.5}

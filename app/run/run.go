@@ -33,7 +33,7 @@ func Editions() map[string]int {
 	return map[string]int{"ground": groundEdition, "fit": fitEdition, "candidate": candidateEdition, "order": orderEdition, "lie": lieEdition}
 }
 
-const orderEdition = 2
+const orderEdition = 3
 
 // Code is the check code of results: what went in, what came out, and both together.
 type Code struct {
@@ -75,6 +75,9 @@ func (e *Engine) Compute(ctx context.Context, snap *study.Snapshot) (*Results, e
 		return nil, err
 	}
 	out.terrain, out.years = w.kept.Load(), r.f.years.settled()
+	if out.sealed, err = w.sealedGround(r.k, out); err != nil {
+		return nil, err
+	}
 	out.Steps, out.Notices, out.made = r.counts(), w.notices, w.notices
 	if err := e.weigh(ctx, snap, out, e.Before, cores); err != nil {
 		return nil, err
@@ -90,7 +93,7 @@ func (e *Engine) Reweigh(ctx context.Context, snap *study.Snapshot, prev *Result
 	if cores <= 0 {
 		cores = runtime.NumCPU()
 	}
-	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, contents: prev.contents, terrain: prev.terrain, years: prev.years, reckoner: prev.reckoner}
+	out := &Results{Candidates: prev.Candidates, Notices: prev.made, made: prev.made, digests: prev.digests, keys: prev.keys, contents: prev.contents, terrain: prev.terrain, years: prev.years, reckoner: prev.reckoner, sealed: prev.sealed}
 	for _, c := range prev.Steps {
 		if c.Step != orderStep {
 			out.Steps = append(out.Steps, StepCount{Step: c.Step, Valid: c.Computed + c.Valid})
@@ -109,7 +112,7 @@ func OnlyWeighing(a, b *study.Snapshot) bool {
 		return false
 	}
 	weighing := func(key string) bool {
-		for _, prefix := range []string{"voice.", "anchor.", "weigh.", "gate.", "study."} {
+		for _, prefix := range []string{"voice.", "anchor.", "weigh.", "gate.", "saving.", "study."} {
 			if strings.HasPrefix(key, prefix) {
 				return true
 			}
@@ -131,7 +134,9 @@ const orderStep = "order"
 
 // weigh fills in the orders of all voices with what belongs to them, and the check code.
 func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out, before *Results, cores int) error {
-	cs := out.Candidates
+	if err := out.alternatives(snap, e.Params); err != nil {
+		return err
+	}
 	draw := newDraws(snap, e.Params, cores, out, before)
 	out.draws = draw
 	voices := snap.Voices()
@@ -146,7 +151,7 @@ func (e *Engine) weigh(ctx context.Context, snap *study.Snapshot, out, before *R
 	}
 	err := forEach(ctx, cores, len(voices), noResource, func(struct{}) {}, func(_ struct{}, i int) error {
 		var err error
-		orders[i], err = order(ctx, snap, e.Params, out.reckoner, draw, voices[i], cs)
+		orders[i], err = order(ctx, snap, e.Params, out.reckoner, draw, voices[i], out)
 		if errors.As(err, &unready[i]) {
 			return nil // one unfinished voice does not keep the others from theirs
 		}
@@ -232,7 +237,19 @@ func (r *Results) digest(candidates []digest) string {
 	}
 	for _, v := range r.Voices {
 		k.text(v.Voice)
-		k.texts(v.HeldBack)
+		for _, h := range v.HeldBack {
+			k.text(h.ID())
+			k.texts(h.Gates)
+			k.int(h.Place)
+		}
+		for _, b := range v.Beside {
+			k.text(b.ID)
+			k.text(b.Why)
+			k.int(b.Place)
+			for _, x := range []float64{b.Score, b.ScoreLow, b.ScoreHigh} {
+				k.num(x)
+			}
+		}
 		for _, row := range v.Order {
 			k.text(row.Site)
 			k.text(row.Plant)

@@ -112,6 +112,15 @@ func CheckKey(cat *study.Catalog, p *Params, key string) error {
 		if cr.Better == criteria.Neither {
 			return bad("%s is not scored, since neither more nor less of it is better", parts[3])
 		}
+	case parts[0] == "voice" && len(parts) == 4 && parts[2] == "both":
+		var names []string
+		for _, c := range cat.Criteria {
+			names = append(names, c.Families...)
+		}
+		slices.Sort(names)
+		if names = slices.Compact(names); !slices.Contains(names, parts[3]) {
+			return bad("there is no family %q; the families are: %s", parts[3], strings.Join(names, ", "))
+		}
 	case parts[0] == "inventory" && len(parts) >= 3:
 		row := strings.TrimPrefix(key[:strings.LastIndexByte(key, '.')], "inventory.")
 		if _, ok := p.Factors[row]; !ok {

@@ -6,6 +6,7 @@ import (
 	"strconv"
 	"strings"
 
+	"groundtally/app/pictures"
 	"groundtally/app/run"
 	"groundtally/app/study"
 	"groundtally/geo"
@@ -68,8 +69,15 @@ var verbOrder = verb{
 				c.printJSON(map[string]any{"study": c.args.places[0], "voices": voices, "code": r.Code})
 				return ExitDone, nil
 			}
+			accounts, err := run.NewAccounts(c.Params, snap)
+			if err != nil {
+				return 0, err
+			}
 			for _, v := range voices {
 				c.voice(v, top)
+				if err := c.spared(snap, r, accounts, &v); err != nil {
+					return 0, err
+				}
 			}
 			return ExitDone, nil
 		})
@@ -147,12 +155,40 @@ func (c *call) voice(v run.VoiceOrder, top int) {
 		}
 		c.say("  tipping weight of %s (now %.3f): %s", t.Key, t.Weight, strings.Join(ends, "; "))
 	}
-	if len(v.HeldBack) > 0 {
-		c.say("  held back by a gate: %d candidates", len(v.HeldBack))
+	for _, b := range v.Beside {
+		c.say("  %s", pictures.Beside(b, func(key string) string { return key }))
+	}
+	if n := len(v.HeldBack); n > 0 {
+		c.say("  held back by a gate: %d candidates. Without gates their places would be:", n)
+		for i, h := range v.HeldBack {
+			if i == heldShown {
+				c.say("    and %d more, in the JSON", n-i)
+				break
+			}
+			var by []string
+			for _, g := range h.Gates {
+				by = append(by, run.GateTitle(g))
+			}
+			c.say("    %d  %s with %s (%s)", h.Place, h.Site, h.Plant, strings.Join(by, ", "))
+		}
+		for _, r := range v.Order {
+			if r.Place == 1 && r.PlaceWithout > 1 {
+				c.say("    %s, first now, would be at place %d", leader(rowID(r)), r.PlaceWithout)
+			}
+		}
 	}
 	c.notices(v.Notices)
 	c.say("  Candidates of one tier cannot be told apart. \"places\": best and worst place within the intervals.\n  \"first in 100\": of 100 weight mixes near the voice's weights. \"?\": an unknown part counts half its weight and widens the interval.")
-	c.say("")
+}
+
+// heldShown is how many candidates that a gate holds back are printed.
+const heldShown = 5
+
+func rowID(r run.Row) string {
+	if r.Site == run.NoSite {
+		return run.NoSite
+	}
+	return r.Site + "/" + r.Plant
 }
 
 func leader(id string) string {
@@ -160,6 +196,26 @@ func leader(id string) string {
 		return "doing nothing"
 	}
 	return id
+}
+
+// spared prints which sites the order would build, and what the saved share of the study spares.
+func (c *call) spared(snap *study.Snapshot, r *run.Results, accounts *run.Accounts, v *run.VoiceOrder) error {
+	order, err := r.Ordered(v)
+	if err != nil || len(order) == 0 {
+		return err
+	}
+	plan, err := accounts.SparePlan(r, order)
+	if err != nil {
+		return err
+	}
+	share, _ := snap.Number("saving.share")
+	s, e, err := plan.At(share)
+	if err != nil {
+		return err
+	}
+	c.say("  %s", pictures.Spared(plan, share, s, e))
+	c.say("")
+	return nil
 }
 
 func orderRow(r run.Row, keys []string, m *marks) []string {

@@ -64,7 +64,11 @@ var verbTable = verb{
 				for i, cand := range list {
 					out[i] = cand.PublicJSON()
 				}
-				c.printJSON(map[string]any{"study": c.args.places[0], "candidates": out, "of": all, "code": r.Code, "hours_per_year": 8760})
+				beside := make([]map[string]any, len(r.Alternatives))
+				for i := range r.Alternatives {
+					beside[i] = r.Alternatives[i].PublicJSON()
+				}
+				c.printJSON(map[string]any{"study": c.args.places[0], "candidates": out, "alternatives": beside, "of": all, "code": r.Code, "hours_per_year": 8760})
 				return ExitDone, nil
 			}
 			rows := [][]string{}
@@ -95,10 +99,58 @@ var verbTable = verb{
 				rows = append(rows, row)
 			}
 			columns(c.out, rows, right)
+			c.say("")
+			columns(c.out, c.beside(r, keys), besideRight(keys))
+			for _, a := range r.Alternatives {
+				if a.Unknown != "" {
+					c.say("%s: unknown, %s.", a.Title, present.Reason(a.Unknown))
+				} else {
+					c.say("%s: %s.", a.Title, a.About)
+				}
+			}
 			c.say("%d of %d candidates. %d of %d consequences are shown; the JSON holds all. A typical year has 8,760 hours.\nCentral values; low and high are in gtally why and in the JSON. \".\" stands where no plant was fitted.", len(list), all, len(keys), len(c.Params.Keys()))
 			return ExitDone, nil
 		})
 	},
+}
+
+// beside gives what stands beside the candidates: doing nothing, saving the same, sealed ground.
+func (c *call) beside(r *run.Results, keys []string) [][]string {
+	var out [][]string
+	heads := stacked(keys, 12)
+	for i, head := range heads {
+		first := ""
+		if i == len(heads)-1 {
+			first = "beside the candidates"
+		}
+		out = append(out, append([]string{first}, head...))
+	}
+	nothing := []string{"doing nothing"}
+	for range keys {
+		nothing = append(nothing, "none")
+	}
+	out = append(out, nothing)
+	for i := range r.Alternatives {
+		a := &r.Alternatives[i]
+		row := []string{strings.ToLower(a.Title)}
+		for _, k := range keys {
+			cell := "unknown"
+			if q, ok := a.Consequence(k); ok {
+				cell = present.Cell(q)
+			}
+			row = append(row, cell)
+		}
+		out = append(out, row)
+	}
+	return out
+}
+
+func besideRight(keys []string) map[int]bool {
+	right := map[int]bool{}
+	for i := range keys {
+		right[i+1] = true
+	}
+	return right
 }
 
 // knownNames reports a site or a plant option that no candidate has; empty names are not asked about.

@@ -83,7 +83,7 @@ func (b *bench) district() {
 	}
 	set := map[string]string{"wind.typed_mean_speed_m_per_s": "7.2", "plant.wind.technology": "wind", "plant.wind.hub_height_m": "110", "plant.wind.rotor_diameter_m": "130", "plant.wind.rated_kw": "3370",
 		"plant.sun.technology": "solar_fixed", "rule.setback.dwellings.wind_m": "500", "rule.exclude.habitat": "yes", "run.trials": "50",
-		"voice.a.weight.nearest_dwelling_m": "100", "voice.a.weight.net_share": "50", "voice.a.weight.noise_dba": "50"}
+		"voice.a.weight.nearest_dwelling_m": "100", "voice.a.weight.net_share": "50", "voice.a.weight.noise_dba": "50", "voice.a.both.noise": "test"}
 	for i, sun := range []int{22, 40, 80, 118, 150, 155, 152, 130, 90, 52, 27, 17} {
 		set[fmt.Sprintf("solar.typed_ghi_%d_kwh_per_m2", i+1)] = fmt.Sprint(sun)
 		set[fmt.Sprintf("solar.typed_temperature_%d_degc", i+1)] = "9"

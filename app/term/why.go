@@ -55,6 +55,15 @@ var verbWhy = verb{
 						return 0, err
 					}
 					c.say("%s", pictures.Ledger(l, why))
+					saving, why, err := accounts.Saving(cand)
+					if err != nil {
+						return 0, err
+					}
+					c.say("%s", pictures.Saving(saving, why))
+					life := accounts.Values(cand)("life_yr")
+					for _, line := range pictures.Habitat(cand.Habitat, life.X) {
+						c.say("habitat: %s", line)
+					}
 				}
 				return ExitDone, nil
 			}

@@ -136,6 +136,9 @@ func describe(flaws parcelFlaws) manifest.Manifest {
 			}),
 			with(f("water_protection.geojson", "water_protection", "Spring protection", council), whole),
 			with(f("exclusion.geojson", "exclusion", "Excluded ground", council), whole),
+			with(f("sealed_ground.geojson", "sealed_ground", "Roofs and car parks", council), func(m *manifest.File) {
+				m.Complete, m.Personal, m.Note = true, []string{"owner"}, "large roofs, a car park and the closed landfill"
+			}),
 			with(f("height_limit.geojson", "height_limit", "Airstrip height limits", council), func(m *manifest.File) {
 				m.Complete, m.Units = true, map[string]string{"limit_value": "m"}
 			}),

@@ -512,6 +512,23 @@ func (s *isle) ruleLayers(out map[string][]byte) {
 	out["exclusion.geojson"] = c.bytes()
 
 	c = &collection{}
+	for _, r := range []struct {
+		kind         string
+		usable       any
+		from, to     geo.XY
+		sideM, endsM float64
+	}{
+		{"roof", 0.6, km(0.30, -5.42), km(0.42, -5.42), 22, 4},
+		{"roof", 0.6, km(0.30, -5.52), km(0.40, -5.52), 18, 2},
+		{"roof", 0.5, km(0.48, -5.30), km(0.55, -5.30), 14, 0},
+		{"car park", nil, km(0.52, -5.47), km(0.62, -5.47), 25, 0},
+		{"landfill", 0.7, km(-3.22, -4.75), km(-3.08, -4.75), 60, 0},
+	} {
+		c.polygon(box(r.from, r.to, r.sideM, r.endsM), nil, prop{"kind", r.kind}, prop{"usable_share", r.usable}, prop{"owner", nil})
+	}
+	out["sealed_ground.geojson"] = c.bytes()
+
+	c = &collection{}
 	c.polygon(box(airstrip[0], airstrip[1], 300, 1600), nil, prop{"limit_value", 45}, prop{"limit_kind", "above ground"}, prop{"citation", ordinance + ", section 11: approach"}, prop{"applies_to", "all"})
 	c.polygon(disc(along(airstrip[0], airstrip[1], 0.5), 2500, 48), nil, prop{"limit_value", 120}, prop{"limit_kind", "above ground"}, prop{"citation", ordinance + ", section 11: circuit"}, prop{"applies_to", "all"})
 	out["height_limit.geojson"] = c.bytes()

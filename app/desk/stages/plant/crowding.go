@@ -24,6 +24,7 @@ import (
 type crowding struct {
 	f       *fitted
 	all     *fyne.Container
+	part    *widget.Select // of a plant of both
 	ask     *widget.Button
 	words   *widget.Label
 	picture *chartview.Picture
@@ -38,12 +39,19 @@ func newCrowding(f *fitted) *crowding {
 	c := &crowding{f: f, words: widgets.NewText(""), at: widgets.NewLine("")}
 	background := func(do func()) { f.s.background(do) }
 	c.picture = chartview.New(f.s.core, background, func() { f.body.Refresh() })
+	c.part = widget.NewSelect([]string{"spacing of turbines", "ground cover of panels"}, nil)
+	c.part.SetSelectedIndex(0)
+	c.part.OnChanged = func(string) {
+		c.of, c.curve = nil, nil
+		c.show()
+		c.f.body.Refresh()
+	}
 	c.ask = widget.NewButton("Work out the crowding curve", c.find)
 	c.handle = widget.NewSlider(0, 1)
 	c.handle.OnChanged = func(float64) { c.moved() }
 	c.take = widget.NewButton("Use this value for the option", c.use)
 	head := widgets.Part("Crowding curve").Hinted("Energy from a hectare against the energy return over the life, as the spacing of turbines or the ground cover of panels changes on the buildable ground of this site. Each layout is fitted and reckoned as any candidate is.")
-	c.all = container.NewVBox(head, container.NewHBox(c.ask), flush(c.words), c.picture, c.at, c.handle, container.NewHBox(c.take))
+	c.all = container.NewVBox(head, container.NewHBox(c.part, c.ask), flush(c.words), c.picture, c.at, c.handle, container.NewHBox(c.take))
 	c.update(nil)
 	return c
 }
@@ -55,6 +63,7 @@ func (c *crowding) update(cand *run.Candidate) {
 		return
 	}
 	c.of, c.curve = nil, nil
+	visible(c.part, cand != nil && len(run.CrowdingParts(cand)) > 1)
 	c.show()
 }
 
@@ -65,13 +74,17 @@ func (c *crowding) find() {
 		return
 	}
 	c.of, c.curve = cand, nil
+	part := run.CrowdingParts(cand)[0]
+	if part != "" {
+		part = run.CrowdingParts(cand)[c.part.SelectedIndex()]
+	}
 	c.show()
 	c.words.SetText("Fitting the plant at each value …")
 	visible(c.words, true)
-	c.f.s.core.Session.Crowding(cand, func(curve *run.Crowded, err error) {
+	c.f.s.core.Session.Crowding(cand, part, func(curve *run.Crowded, err error) {
 		c.f.s.core.Do(func() {
 			switch {
-			case c.of != cand:
+			case c.of != cand || curve != nil && curve.Part != "" && curve.Part != run.CrowdingParts(cand)[c.part.SelectedIndex()]:
 				return
 			case err != nil:
 				c.of = nil
@@ -149,7 +162,7 @@ func (c *crowding) use() {
 	write := func(x float64) string { return strconv.FormatFloat(x, 'g', 6, 64) }
 	const why = "chosen on the crowding curve"
 	key := "plant." + c.of.Plant + "."
-	if c.of.Technology != "wind" {
+	if c.of.Technology != "wind" && c.curve.Part != "wind" {
 		c.f.s.core.Set("use the ground cover", why, study.SettingEdit{Key: key + "gcr", Value: write(x), Source: "crowding curve of " + c.of.Site, Reason: why})
 		return
 	}
