@@ -79,7 +79,7 @@ var cautions = []string{
 	"This is a screening. It sorts candidates; it replaces no permit, no survey, no measurement on site and no licensed engineer. Local codes prevail over every default shown here.",
 	"Grid: only the network operator's study can offer a connection, its point, date, limit and charge. Lines and substations are live: never approach, measure, dig or fly near them on the strength of this page; call the operator and the buried-services enquiry first.",
 	"Wind: setbacks for topple and ice throw are screening distances; ice throw, noise, shadow and structural safety need their own assessments by qualified people under local law.",
-	"Yields rest on climatology without a mast or a year of measurements: the odds stated are those of the model, and realised yields have on average come out lower than forecast.",
+	"Unless hours measured at the place serve, yields rest on climatology: the odds stated are those of the model, and realised yields have on average come out lower than forecast.",
 	"Figures marked default, unverified rest on values that were not checked against their source.",
 }
 
@@ -87,7 +87,7 @@ var cautions = []string{
 var alwaysNotAssessed = []string{
 	"noise, shadow flicker, visibility and glare, in this version of the program: where a voice weighs them they are unknown",
 	"a routed grid connection: the length is the straight distance times a detour factor",
-	"terrain horizon, slope and orientation of the ground in the solar yield; hill speed-up, blockage and far wakes in the wind yield",
+	"speed-up of the wind over hills, and blockage by a group of turbines as a whole, in the wind yield",
 	"birds and bats, aviation and radar, telecommunication links, archaeology below ground",
 	"storage and backup, labour, finance, insurance; money only where the user enters it",
 	"foundations, geology, loads, access for cranes, strength of bridges and roofs",

@@ -217,7 +217,7 @@ func (b *book) said(c *run.Candidate) (words, habitat []string, err error) {
 	if err != nil {
 		return nil, nil, fmt.Errorf("saving that equals %s: %w", c.ID(), err)
 	}
-	return append(words, pictures.Saving(s, why)), pictures.Habitat(c.Habitat, a.Values(c)("life_yr").X), nil
+	return append(words, pictures.Saving(s, why), pictures.Densities(a.Values(c))), pictures.Habitat(c.Habitat, a.Values(c)("life_yr").X), nil
 }
 
 // accountPictures draws the energy return by boundary, the ground taken, the carbon payback and what moves the energy

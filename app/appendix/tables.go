@@ -133,7 +133,7 @@ func (b *book) group(keys []string, candidates []*run.Candidate) groupView {
 				q = scoring.Consequence{State: scoring.Unknown, Why: a.Unknown}
 			}
 			r.Cells = append(r.Cells, cellOf(q))
-			if q.State != scoring.Number {
+			if q.State != scoring.Number && q.State != scoring.None {
 				words[a.Title+": "+b.title(k)+", "+present.WhyNot(q)] = true
 			}
 		}

@@ -53,6 +53,7 @@ var reasons = map[string]string{
 	"upstream_unknown":           "it is not known what the network behind it can take; ask the network operator",
 	"below_level_band":           "the plant is small for this voltage",
 	"above_usual_power":          "the power is above what is usual at this voltage; expect a study by the network operator",
+	"inventory_size":             "the inventory covers no machine of this size (wind_inventory_size_kw); enter a row of your own under inventory.wind_turbine-mj and inventory.wind_turbine-kgco2e",
 	"no_such_candidate":          "the study has no such candidate",
 	"no_energy_known":            "no candidate's energy is known",
 	"short_circuit_weak":         "the network is weak here for this power",

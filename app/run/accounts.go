@@ -83,7 +83,7 @@ func (a *Accounts) trials(c *Candidate, key string) (result []scoring.Value, gro
 	}
 	reach := g.Reaches(key)
 	central := a.k.vector(c)
-	drawn := append(slices.Clone(a.k.drawn), a.k.siteDraws(c.Site, sigmas(c))...)
+	drawn := a.k.draws(c.Site, sigmas(c), central)
 	titles = map[string]string{}
 	for _, d := range drawn {
 		// Of what a plant has none of, the price does not matter, and a chance correlation would mislead.
@@ -173,7 +173,7 @@ func (a *Accounts) Swaps(one, other *Candidate, key string) ([]Swapped, error) {
 		if err != nil {
 			return nil, err
 		}
-		if !(f.Low < f.High) {
+		if !(f.Low < f.High) || !x[at].OK() || !y[at].OK() {
 			continue
 		}
 		v := [2][]scoring.Value{slices.Clone(x), slices.Clone(y)}

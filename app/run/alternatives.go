@@ -275,7 +275,7 @@ func (w *world) sealedGround(k *reckoner, r *Results) (Alternative, error) {
 	set("solar_yield_error", scoring.Num(1))
 	set("solar_yield_sigma", scoring.Num(math.Hypot(fit.SolarShared, fit.SolarOwn)))
 	k.p.Graph.Central(v)
-	spreads, err := k.p.Graph.Trials(v, append(slices.Clone(k.drawn), k.siteDraws(SealedGround, fit)...), k.want)
+	spreads, err := k.p.Graph.Trials(v, k.draws(SealedGround, fit, v), k.want)
 	if err != nil {
 		return out, fmt.Errorf("roofs and sealed ground: %w", err)
 	}

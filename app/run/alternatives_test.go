@@ -138,7 +138,7 @@ func TestADefaultThatDecidesAPlaceIsTold(t *testing.T) {
 				if beyond {
 					x = at + 0.05*(at-central)
 				}
-				key := "inventory." + strings.ReplaceAll(n.Field, ".", "-")
+				key := "inventory." + strings.ReplaceAll(n.Args["factor"], ".", "-")
 				own := func(level string, from float64) { // the range moves along
 					setAll(t, s, key+level, strconv.FormatFloat(from*x/central, 'g', -1, 64))
 				}

@@ -325,8 +325,8 @@ func (k *reckoner) candidate(e *overlay.Engine, w *world, around *pieces, fr *fi
 		}
 		v[slot] = got.v
 	}
-	drawn := slices.Clone(k.drawn)
-	drawn = append(drawn, k.siteDraws(s.id, r)...)
+	k.cover(v)
+	drawn := k.draws(s.id, r, v)
 	k.p.Graph.Central(v)
 	spreads, err := k.p.Graph.Trials(v, drawn, k.want)
 	if err != nil {
@@ -569,6 +569,46 @@ func (k *reckoner) siteDraws(site string, r fitResult) []reckon.Drawn {
 		out = append(out, reckon.Drawn{Slot: slot, Values: v})
 	}
 	return out
+}
+
+// turbineRows are what the inventory says of turbines, and sizeFactor the sizes of one machine that it stands for.
+var turbineRows = []string{"wind_turbine.mj", "wind_turbine.kgco2e"}
+
+const sizeFactor = "wind_inventory_size_kw"
+
+// cover makes a row of the inventory unknown where the machines of a candidate are of a size that nothing cited
+// covers. A row that the user entered covers what the user says.
+func (k *reckoner) cover(v []scoring.Value) {
+	at := func(name string) float64 {
+		slot, _ := k.p.Graph.Slot(name)
+		return v[slot].X
+	}
+	n := at("turbines")
+	if n == 0 {
+		return
+	}
+	size, _, err := k.factor(sizeFactor)
+	one := at("wind_kw") / n
+	const rounding = 1e-9
+	if err == nil && one >= size.Low*(1-rounding) && one <= size.High*(1+rounding) {
+		return
+	}
+	for _, row := range turbineRows {
+		if slot, ok := k.p.Graph.Slot(row); ok && !k.user[row] {
+			v[slot] = scoring.UnknownBecause("inventory_size")
+		}
+	}
+}
+
+// draws gives what varies in the trials of a site: the factors that have a value there, and the errors of its yields.
+func (k *reckoner) draws(site string, r fitResult, v []scoring.Value) []reckon.Drawn {
+	out := make([]reckon.Drawn, 0, len(k.drawn)+2)
+	for _, d := range k.drawn {
+		if v[d.Slot].OK() {
+			out = append(out, d)
+		}
+	}
+	return append(out, k.siteDraws(site, r)...)
 }
 
 // leafNotices gives the notices that a leaf brings to every consequence that depends on it.

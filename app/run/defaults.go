@@ -76,7 +76,7 @@ func (k *reckoner) decidedByDefault(sc []scale, lines []weigh.Line, at []int, cs
 				continue
 			}
 			l := leaves[one.leaf]
-			out = append(out, geo.Notice{Code: "default_decides", Severity: geo.Warning, Field: l.Name, Args: map[string]string{
+			out = append(out, geo.Notice{Code: "default_decides", Severity: geo.Warning, Args: map[string]string{"factor": l.Name,
 				"place": fmt.Sprint(i), "above": above.c.ID(), "below": below.c.ID(), "row": factorWords.Replace(l.Title), "unit": l.Unit,
 				"at": present.Exact(x), "central": present.Exact(one.f.Central), "low": present.Exact(one.f.Low), "high": present.Exact(one.f.High)}})
 			break
@@ -108,7 +108,7 @@ func (d *decider) guess(above, below *deciding) ([]decided, error) {
 		if err != nil {
 			return nil, err
 		}
-		if !(f.Low < f.High) {
+		if !(f.Low < f.High) || !above.v[leaf].OK() || !below.v[leaf].OK() {
 			continue
 		}
 		pair := [2][]scoring.Value{slices.Clone(above.v), slices.Clone(below.v)}
@@ -205,7 +205,7 @@ func (d *decider) score(one *deciding, leaf int, times float64) (float64, error)
 	v := slices.Clone(one.v)
 	v[leaf] = scoring.Num(v[leaf].X * times)
 	k.p.Graph.Central(v)
-	drawn := append(slices.Clone(k.drawn), k.siteDraws(one.c.Site, sigmas(one.c))...)
+	drawn := k.draws(one.c.Site, sigmas(one.c), v)
 	for i := range drawn {
 		if drawn[i].Slot == leaf {
 			scaled := make([]float64, len(drawn[i].Values))

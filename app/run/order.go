@@ -591,9 +591,10 @@ func (d *draws) ready(ctx context.Context, k *reckoner, cs []Candidate, which []
 		if len(d.samples[c].x) >= n*len(d.keys) && d.samples[c].x != nil {
 			return nil
 		}
-		drawn := append(slices.Clone(k.drawn), k.siteDraws(cs[c].Site, sigmas(&cs[c]))...)
+		v := k.vector(&cs[c])
+		drawn := k.draws(cs[c].Site, sigmas(&cs[c]), v)
 		s := sample{x: make([]float64, 0, n*len(d.keys))}
-		for _, row := range k.p.Graph.Samples(k.vector(&cs[c]), drawn, d.slots, n) {
+		for _, row := range k.p.Graph.Samples(v, drawn, d.slots, n) {
 			for _, v := range row {
 				s.add(v)
 			}
@@ -611,6 +612,7 @@ func (k *reckoner) vector(c *Candidate) []scoring.Value {
 			v[slot] = scoring.Value{State: l.State, X: l.X, Why: l.Why}
 		}
 	}
+	k.cover(v)
 	k.p.Graph.Central(v)
 	return v
 }

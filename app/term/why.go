@@ -60,6 +60,7 @@ var verbWhy = verb{
 						return 0, err
 					}
 					c.say("%s", pictures.Saving(saving, why))
+					c.say("%s", pictures.Densities(accounts.Values(cand)))
 					life := accounts.Values(cand)("life_yr")
 					for _, line := range pictures.Habitat(cand.Habitat, life.X) {
 						c.say("habitat: %s", line)

@@ -132,9 +132,9 @@ func Quantities() []scoring.Quantity {
 				return scoring.Num(p.Yr)
 			}}},
 		{Name: "power_density_w_per_m2", Unit: "W/m2", Title: "Power per square metre", Formula: "delivered_mwh_per_yr / 8760 h / footprint_total_ha", Source: "van Zalk & Behrens 2018 for the definition",
-			Inputs: []string{"delivered_mwh_per_yr", "footprint_total_ha"}, Eval: plain(func(x []float64) float64 {
-				return x[0] * units.KWhPerMWh * units.WPerKW / units.HoursPerYear / (x[1] * units.M2PerHa)
-			})},
+			Inputs: []string{"delivered_mwh_per_yr", "footprint_total_ha"}, Eval: plain(wattsPerM2)},
+		{Name: "power_density_direct_w_per_m2", Unit: "W/m2", Title: "Power per square metre of ground taken directly", Formula: "delivered_mwh_per_yr / 8760 h / footprint_direct_ha", Source: "van Zalk & Behrens 2018 for the definition",
+			Inputs: []string{"delivered_mwh_per_yr", "footprint_direct_ha"}, Eval: plain(wattsPerM2)},
 		{Name: "demand_share_frac", Unit: "1", Title: "Share of local demand", Formula: "delivered_mwh_per_yr / demand_mwh_per_yr", Source: "identity",
 			Inputs: []string{"delivered_mwh_per_yr", "demand_mwh_per_yr"}, Eval: plain(func(x []float64) float64 { return x[0] / x[1] })},
 		{Name: "demand_met_frac", Unit: "1", Title: "Demand met at once", Formula: "delivered_mwh_per_yr × used_at_once_share / demand_mwh_per_yr; never above one", Source: "identity over the hours of a typical year",
@@ -155,6 +155,11 @@ func Quantities() []scoring.Quantity {
 }
 
 var upkeepInputs = []string{"wind_kw", "solar_kw", "wind_turbine.mj", "pv_system_mono.mj", "wind_upkeep.mj", "pv_upkeep.mj"}
+
+// wattsPerM2 is a year's energy in MWh as mean power on an area in hectares.
+func wattsPerM2(x []float64) float64 {
+	return x[0] * units.KWhPerMWh * units.WPerKW / units.HoursPerYear / (x[1] * units.M2PerHa)
+}
 
 func product(x []float64) float64 { return x[0] * x[1] }
 

@@ -146,7 +146,7 @@ func (o *order) leadWords(sh *shown) string {
 		words += fmt.Sprintf("; %d others share its tier and cannot be told apart.", others)
 	}
 	if n := len(sh.Board.Held); n > 0 {
-		words += fmt.Sprintf(" The gate of the owner's consent holds %s back.", plural(n, "candidate"))
+		words += fmt.Sprintf(" Gates hold %s back.", plural(n, "candidate"))
 	}
 	return words
 }

@@ -1,6 +1,7 @@
 package weigh
 
 import (
+	"errors"
 	"fmt"
 	"strings"
 
@@ -27,6 +28,7 @@ const (
 	pairTab
 	voicesTab
 	scatterTab
+	besidesTab
 	tabCount
 )
 
@@ -165,6 +167,7 @@ func (s *stage) Content() fyne.CanvasObject {
 		pairTab:    {"A against B", func() pane { return newPair(s) }},
 		voicesTab:  {"Voices", func() pane { return newVoices(s) }},
 		scatterTab: {"Scatter", func() pane { return newScatter(s) }},
+		besidesTab: {"Saving, gates", func() pane { return newBesides(s) }},
 	}
 	tabs := make([]widgets.Tab, tabCount)
 	for i, m := range makers {
@@ -313,6 +316,10 @@ func (s *stage) back() {
 
 func unreadyWords(err error) string {
 	words, _, _ := strings.Cut(err.Error(), ": anchor.")
+	var family *run.FamilyError
+	if errors.As(err, &family) {
+		return "it weighs one event (" + family.Family + ") twice, without a reason"
+	}
 	if strings.Contains(words, "no fixed ends") {
 		return "the ends of a value scale are not set"
 	}

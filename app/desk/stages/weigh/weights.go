@@ -1,6 +1,7 @@
 package weigh
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -31,9 +32,11 @@ type weights struct {
 	list    *fyne.Container
 	cautions,
 	problem *widget.Label
-	order []*shortRow
-	lead  *widgets.Line
-	all   *fyne.Container
+	reason *fyne.Container // where one event is weighed twice
+	twice  *run.FamilyError
+	order  []*shortRow
+	lead   *widgets.Line
+	all    *fyne.Container
 }
 
 func newWeights(s *stage) *weights {
@@ -43,7 +46,9 @@ func newWeights(s *stage) *weights {
 	w.cautions.Importance, w.problem.Importance = widget.WarningImportance, widget.WarningImportance
 	w.cautions.Hide()
 	w.problem.Hide()
-	top := container.NewVBox(question, w.problem)
+	w.reason = container.NewHBox(widget.NewButton("Say why both count…", func() { askReason(s, w.twice) }))
+	w.reason.Hide()
+	top := container.NewVBox(question, w.problem, w.reason)
 	limits := widgets.NewText("Weights put in order what was computed. They stand in for no study by the network operator, who alone can offer a connection, and for no qualified assessment of noise, ice throw or structure under local law.")
 	limits.SizeName = toolkit.SizeNameCaptionText
 	foot := container.NewVBox(w.cautions, container.NewHBox(add), flush(limits))
@@ -156,6 +161,14 @@ func (w *weights) updateCautions() {
 
 func (w *weights) updateOrder() {
 	sh := w.s.shown
+	w.twice = nil
+	if v := w.s.c.View(); v != nil && v.Results != nil && !w.s.c.Trying() {
+		errors.As(v.Results.Unready[w.s.c.Voice()], &w.twice)
+	}
+	if twice := w.twice != nil; twice != w.reason.Visible() {
+		show(w.reason, twice)
+		w.all.Refresh()
+	}
 	switch {
 	case w.s.c.Voice() == "":
 		w.say("There is no voice yet. Add one above, then choose what it weighs.")
@@ -163,6 +176,8 @@ func (w *weights) updateOrder() {
 		w.say("No voice weighs anything yet. Begin with one consequence, then add others.")
 	case sh != nil && sh.Err != nil:
 		w.say("Give at least one consequence a weight above 0; there is no order without one.")
+	case w.twice != nil:
+		w.say(fmt.Sprintf("%s and %s count the same event (%s). The voice has no saved order until a reason is given or one of them loses its weight.", w.s.c.Info(w.twice.Other).Title, w.s.c.Info(w.twice.Key).Title, w.twice.Family))
 	default:
 		w.say("")
 	}
