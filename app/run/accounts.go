@@ -92,7 +92,7 @@ func (a *Accounts) trials(c *Candidate, key string) (result []scoring.Value, gro
 		}
 		leaf := g.Leaves()[d.Slot]
 		name := leaf.Name
-		if f, ok := a.k.p.Factors[leaf.Name]; ok && f.Group != "" {
+		if f, ok := a.k.p.Factor(a.snap, leaf.Name); ok && f.Group != "" {
 			name = f.Group
 		}
 		title := factorWords.Replace(leaf.Title)

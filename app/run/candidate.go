@@ -131,7 +131,7 @@ func (k *reckoner) factor(id string) (params.Factor, bool, error) {
 // UserFactor gives a factor with the user's values in place of the shipped ones; changed tells whether
 // there are any. Settings are inventory.<row>.low, .central and .high.
 func UserFactor(p *Params, snap *study.Snapshot, id string) (f params.Factor, changed bool, err error) {
-	f, ok := p.Factors[id]
+	f, ok := p.Factor(snap, id)
 	if !ok {
 		return f, false, fmt.Errorf("no factor %q", id)
 	}
@@ -220,6 +220,7 @@ func (k *reckoner) key(w *world) string {
 	}
 	h.int(k.trials)
 	h.int(int(k.seed))
+	h.text(w.snap.Text(factorsEdition))
 	for _, key := range w.snap.Keys() {
 		for _, prefix := range []string{"climate.", "land.", "grid.", "energy.", "inventory.", "wind.", "solar.", "weather."} {
 			if strings.HasPrefix(key, prefix) {
@@ -626,7 +627,7 @@ func (k *reckoner) leafNotices(r fitResult, l link, t laid) map[int][]string {
 		if strings.HasSuffix(leaf.Name, ".mj") || strings.HasSuffix(leaf.Name, ".kgco2e") {
 			out[slot] = append(out[slot], "inventory_default")
 		}
-		if k.p.Factors[leaf.Name].Provenance == citedtable.Memory {
+		if f, _ := k.p.Factor(k.snap, leaf.Name); f.Provenance == citedtable.Memory {
 			out[slot] = append(out[slot], "memory_parameter")
 		}
 	}

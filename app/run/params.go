@@ -3,7 +3,9 @@ package run
 import (
 	"fmt"
 	"io/fs"
+	"maps"
 	"regexp"
+	"slices"
 	"sort"
 	"strings"
 
@@ -25,8 +27,8 @@ import (
 // Params is everything the program ships that takes part in results: cited factors, curves, tables,
 // and the graph of quantities.
 type Params struct {
-	Factors  map[string]params.Factor // by leaf name
-	Dates    map[string]string        // parameter family to edition date
+	Factors  map[string]params.Factor // by leaf name, of the newest editions
+	Dates    map[string]string        // parameter family to the date of its newest edition
 	Turbines []wind.Turbine
 	Wind     wind.Defaults
 	Solar    *solar.Defaults
@@ -37,6 +39,7 @@ type Params struct {
 	Graph     *reckon.Graph
 	Digest    string // of the shipped parameter files and keys; a new edition makes stored results stale
 
+	older   []edition // the oldest first
 	keys    []criteria.Criterion
 	facts   []string         // leaf names given by fitting, connecting and measuring
 	reaches map[string][]int // key to the leaf slots it depends on
@@ -155,6 +158,9 @@ func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 		return nil, err
 	}
 	p.Dates["inventory"] = inventory.Date
+	if p.older, err = olderEditions(fsys); err != nil {
+		return nil, err
+	}
 	var leaves []scoring.Leaf
 	add := func(f params.Factor) error {
 		if _, dup := p.Factors[f.ID]; dup {
@@ -266,6 +272,119 @@ func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 		p.reaches[k.Key] = p.Graph.Reaches(k.Key)
 	}
 	return p, nil
+}
+
+// edition is the state of the dated tables of factors at a date.
+type edition struct {
+	date    string
+	factors map[string]params.Factor
+	dates   map[string]string // by family
+}
+
+// olderEditions reads every state of the dated tables before the newest, so that what was computed with one can be
+// computed again.
+func olderEditions(fsys fs.FS) ([]edition, error) {
+	byFamily := map[string][]string{}
+	var all []string
+	for _, family := range append([]string{"inventory"}, families...) {
+		dates, err := params.Dates(fsys, "params", family)
+		if err != nil {
+			return nil, err
+		}
+		byFamily[family] = dates
+		all = append(all, dates...)
+	}
+	slices.Sort(all)
+	all = slices.Compact(all)
+	var out []edition
+	for _, date := range all[:max(0, len(all)-1)] {
+		e := edition{date: date, factors: map[string]params.Factor{}, dates: map[string]string{}}
+		for family, dates := range byFamily {
+			at := ""
+			for _, d := range dates {
+				if d <= date {
+					at = d
+				}
+			}
+			if at == "" {
+				continue // the family is younger
+			}
+			t, err := params.OpenTable(fsys, "params", family, at)
+			if err != nil {
+				return nil, err
+			}
+			e.dates[family] = at
+			if family == "inventory" {
+				inv, err := params.ParseInventory(t)
+				if err != nil {
+					return nil, err
+				}
+				for _, it := range inv.Items {
+					e.factors[it.Energy.ID], e.factors[it.Climate.ID] = it.Energy, it.Climate
+				}
+				continue
+			}
+			parsed, err := params.ParseEdition(t)
+			if err != nil {
+				return nil, err
+			}
+			for _, f := range parsed.Factors {
+				e.factors[f.ID] = f
+			}
+		}
+		out = append(out, e)
+	}
+	return out, nil
+}
+
+// factorsEdition is the setting that holds a study to an older edition of the cited factors.
+const factorsEdition = "run.factors_edition"
+
+// EditionDates lists the editions that a study can be held to, the oldest first; the last is the newest.
+func (p *Params) EditionDates() []string {
+	var out []string
+	for _, e := range p.older {
+		out = append(out, e.date)
+	}
+	newest := ""
+	for _, d := range p.Dates {
+		newest = max(newest, d)
+	}
+	return append(out, newest)
+}
+
+// at gives the factor and the editions in force for a study. What an older edition does not have yet is that of the
+// newest.
+func (p *Params) at(snap *study.Snapshot) *edition {
+	date := snap.Text(factorsEdition)
+	for i := range p.older {
+		if p.older[i].date == date {
+			return &p.older[i]
+		}
+	}
+	return nil
+}
+
+// Factor gives a factor as shipped, in the edition that a study is held to.
+func (p *Params) Factor(snap *study.Snapshot, id string) (params.Factor, bool) {
+	if e := p.at(snap); e != nil {
+		if f, ok := e.factors[id]; ok {
+			return f, true
+		}
+	}
+	f, ok := p.Factors[id]
+	return f, ok
+}
+
+// DatesOf gives the dates of the editions in force for a study, by family.
+func (p *Params) DatesOf(snap *study.Snapshot) map[string]string {
+	e := p.at(snap)
+	if e == nil {
+		return p.Dates
+	}
+	out := maps.Clone(p.Dates)
+	maps.Copy(out, e.dates)
+	return out
 }
 
 // fileDigest gives the digest of all shipped parameter files and of the keys with their anchors. The

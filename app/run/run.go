@@ -201,7 +201,7 @@ func (r *Results) code(snap *study.Snapshot, p *Params, digests []digest) error 
 		Params   map[string]string
 		Factors  string
 		Editions map[string]int
-	}{Groups: snap.Groups, Frame: snap.Frame, Params: p.Dates, Factors: p.Digest, Editions: Editions()}
+	}{Groups: snap.Groups, Frame: snap.Frame, Params: p.DatesOf(snap), Factors: p.Digest, Editions: Editions()}
 	for _, key := range snap.Keys() {
 		if s, _, ok := snap.Lookup(key); ok {
 			in.Settings = append(in.Settings, setting{key, s.Value, s.Unit})

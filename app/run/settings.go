@@ -45,6 +45,9 @@ func CheckSetting(cat *study.Catalog, p *Params, key, value string, own ...study
 			return bad("there is no reference curve %q; the curves are: %s", value, strings.Join(p.TurbineIDs(), ", "))
 		}
 	}
+	if key == factorsEdition && value != study.NotSetText && !slices.Contains(p.EditionDates(), value) {
+		return bad("the program has no edition %q of the factors; it has: %s", value, strings.Join(p.EditionDates(), ", "))
+	}
 	form := func() error {
 		if _, err := def.CheckValue(value); err != nil {
 			return &study.ValueError{Key: key, Err: err}
