@@ -89,6 +89,39 @@ func Boundaries(c *run.Candidate, value func(name string) scoring.Value, title, 
 	return in
 }
 
+// PrimaryEquivalent is the value of energy.primary_equivalent under which PrimaryBoundaries is shown.
+const PrimaryEquivalent = "on"
+
+// PrimaryBoundaries shows the same with the electricity counted as the primary energy that the grid would spend for it,
+// EROI_PE-eq = EROI / η_G of IEA-PVPS Task 12, without stocks and without ranges. It has a picture of its own: on one
+// axis with the electric return it would mislead.
+func PrimaryBoundaries(c *run.Candidate, value func(name string) scoring.Value, title, id string) chart.Boundaries {
+	in := Boundaries(c, value, title, id)
+	in.NoStocks = true
+	in.Parts = slices.DeleteFunc(in.Parts, func(p chart.EnergyPart) bool { return p.At == chart.WithStocks })
+	η := value("grid_efficiency")
+	primary := func(a chart.Amount) chart.Amount {
+		switch {
+		case a.State != chart.Number:
+			return a
+		case !η.OK():
+			return central(η, 1)
+		}
+		return chart.Num(a.X / η.X)
+	}
+	for b := range in.Rungs {
+		in.Rungs[b].Out, in.Rungs[b].Return = primary(in.Rungs[b].Out), primary(in.Rungs[b].Return)
+	}
+	in.Rungs[chart.WithStocks] = chart.Rung{}
+	efficiency := "unknown"
+	if η.OK() {
+		efficiency = present.Exact(η.X)
+	}
+	in.Kind = "primary equivalent out, at a grid efficiency of " + efficiency + ", over primary energy spent"
+	in.Caption = "Central values only. EROI_PE-eq in the words of IEA-PVPS Task 12: electricity over the grid efficiency " + efficiency + ", MJ of electricity for each MJ of primary energy.\nNot to be set beside the electric return."
+	return in
+}
+
 // GroundTaken shows the land that a candidate takes, by kind, and for how long.
 func GroundTaken(c *run.Candidate, value func(name string) scoring.Value, title, id string) chart.Ground {
 	kind := func(key, years, remark string) chart.LandKind {

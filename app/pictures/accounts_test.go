@@ -75,6 +75,59 @@ func TestLadderPartsAddUpToTheReturns(t *testing.T) {
 	}
 }
 
+// Example A of the accounts' methods: 502.617 TJ generated over 90.4 TJ at the plant, 492.565 delivered over 92.2725 and
+// 111.5725. With a grid efficiency of 0.35 the returns 5.560, 5.338 and 4.415 become 15.886, 15.252 and 12.613.
+func TestPrimaryEquivalentOfTheExample(t *testing.T) {
+	m := map[string]scoring.Value{"generated_mj_life": scoring.Num(502.617e6), "delivered_mj_life": scoring.Num(502.617e6 * 0.98), "input_generator_mj": scoring.Num(90e6), "input_works_mj": scoring.Num(0.4e6),
+		"input_connection_mj": scoring.Num(1.8725e6), "input_upkeep_mj_per_yr": scoring.Num(0.45e6), "life_yr": scoring.Num(30), "input_end_mj": scoring.Num(5.8e6), "stock_mj": scoring.Num(0.1206e6), "grid_efficiency": scoring.Num(0.35)}
+	c := &run.Candidate{Status: run.Fitted}
+	for i, key := range []string{"eroi_generation", "eroi_delivered", "eroi_extended", "eroi_stock"} {
+		x := 502.617 * []float64{1, 0.98, 0.98, 0.98}[i] / []float64{90.4, 92.2725, 111.5725, 111.6931}[i]
+		c.Consequences = append(c.Consequences, scoring.Consequence{Key: key, Low: x / 2, Central: x, High: 2 * x})
+	}
+	in := PrimaryBoundaries(c, valuesOf(m), "", "")
+	spent := 0.0
+	for b, want := range []float64{15.886, 15.252, 12.613} {
+		for _, p := range in.Parts {
+			if p.At == chart.Boundary(b) {
+				spent += p.Spent.X
+			}
+		}
+		r := in.Rungs[b]
+		if math.Abs(r.Return.X/want-1) > 1e-3 || math.Abs(r.Out.X/spent/want-1) > 1e-3 || r.Return.High != 0 || r.Return.Low != 0 {
+			t.Errorf("boundary %d: %+v, %v spent, want a return of %v", b, r, spent, want)
+		}
+	}
+	if math.Abs(in.Rungs[0].Out.X-502.617/0.35) > 1e-6 || !in.NoStocks || in.Rungs[3] != (chart.Rung{}) || len(in.Parts) != 5 {
+		t.Errorf("%+v", in)
+	}
+	if !strings.Contains(in.Kind, "primary equivalent") || !strings.Contains(in.Kind, "0.35") || !strings.Contains(in.Caption, "EROI_PE-eq") || !strings.Contains(in.Caption, "0.35") || !strings.Contains(in.Caption, "Central values only") || !strings.Contains(in.Caption, "Not to be set beside the electric return") {
+		t.Errorf("%q, %q", in.Kind, in.Caption)
+	}
+	words := BoundariesWords(in)
+	for _, want := range []string{"primary equivalent out", "at plant 15.9", "whole life 12.6", "Not to be set beside"} {
+		if !strings.Contains(words, want) {
+			t.Errorf("%q is not in %q", want, words)
+		}
+	}
+	if strings.Contains(words, "stocks") || strings.Contains(words, "electricity out over") || strings.Contains(words, "\n") {
+		t.Errorf("%q", words)
+	}
+	// The electric ladder is untouched, and what is unknown stays so.
+	if e := Boundaries(c, valuesOf(m), "", ""); math.Abs(e.Rungs[0].Return.X-5.560) > 1e-3 || e.NoStocks || len(e.Parts) != 6 {
+		t.Errorf("%+v", e)
+	}
+	delete(m, "grid_efficiency")
+	if got := PrimaryBoundaries(c, valuesOf(m), "", ""); got.Rungs[0].Return.State != chart.Unknown || got.Rungs[0].Out.State != chart.Unknown || !strings.Contains(got.Kind, "unknown") {
+		t.Errorf("without a grid efficiency %+v", got.Rungs[0])
+	}
+	c.Consequences[0] = scoring.Consequence{Key: "eroi_generation", State: scoring.Unknown, Why: "no_layer:soil"}
+	m["grid_efficiency"] = scoring.Num(0.35)
+	if got := PrimaryBoundaries(c, valuesOf(m), "", "").Rungs[0].Return; got.State != chart.Unknown || got.Why == "" {
+		t.Errorf("an unknown return becomes %+v", got)
+	}
+}
+
 func TestGroundKeepsWhatIsUnknown(t *testing.T) {
 	c := &run.Candidate{Status: run.Fitted, Consequences: []scoring.Consequence{{Key: "footprint_total_ha", Low: 8, Central: 10, High: 12}, {Key: "forest_ha", State: scoring.None, Why: "no forest touched"}}}
 	in := GroundTaken(c, valuesOf(map[string]scoring.Value{"life_yr": scoring.Num(25), "farmland_lost_ha": scoring.Num(3)}), "", "")

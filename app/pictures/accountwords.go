@@ -31,14 +31,22 @@ func amountWords(a chart.Amount, unit string) string {
 
 // BoundariesWords tells the energy return by boundary for readers who cannot see the picture.
 func BoundariesWords(in chart.Boundaries) string {
+	names := []string{"at plant", "at grid", "whole life", "with stocks"}
+	if in.NoStocks {
+		names = names[:chart.WithStocks]
+	}
+	kind, more := in.Kind, " "+strings.ReplaceAll(in.Caption, "\n", " ")
+	if kind == "" {
+		kind, more = chart.ElectricOverPrimary, ""
+	}
 	var out, spent []string
-	for b, name := range []string{"at plant", "at grid", "whole life", "with stocks"} {
+	for b, name := range names {
 		out = append(out, name+" "+amountWords(in.Rungs[b].Return, ""))
 	}
 	for _, p := range in.Parts {
 		spent = append(spent, p.Name+" "+amountWords(p.Spent, in.Unit))
 	}
-	return "Energy return, electricity out over primary energy spent: " + strings.Join(out, "; ") + ". Out " + amountWords(in.Rungs[chart.AtPlant].Out, in.Unit) + " at the plant, " + amountWords(in.Rungs[chart.AtGrid].Out, in.Unit) + " at the grid. Spent: " + strings.Join(spent, "; ") + "."
+	return "Energy return, " + kind + ": " + strings.Join(out, "; ") + ". Out " + amountWords(in.Rungs[chart.AtPlant].Out, in.Unit) + " at the plant, " + amountWords(in.Rungs[chart.AtGrid].Out, in.Unit) + " at the grid. Spent: " + strings.Join(spent, "; ") + "." + more
 }
 
 // GroundWords tells the ground taken.

@@ -105,25 +105,10 @@ func (r *Results) equalled(snap *study.Snapshot) (c *Candidate, about, why strin
 		}
 		return c, fmt.Sprintf("as much energy as %s with %s", c.Site, c.Plant), ""
 	}
-	type one struct {
-		at  int
-		mwh float64
+	if c := r.middle("delivered_mwh_per_yr", ""); c != nil {
+		return c, fmt.Sprintf("as much energy as %s with %s, the middle candidate by energy", c.Site, c.Plant), ""
 	}
-	var all []one
-	for i := range r.Candidates {
-		if r.Candidates[i].Status != Fitted {
-			continue
-		}
-		if q, ok := r.Candidates[i].Consequence("delivered_mwh_per_yr"); ok && q.State == scoring.Number {
-			all = append(all, one{i, q.Central})
-		}
-	}
-	if len(all) == 0 {
-		return nil, "", "no_energy_known"
-	}
-	slices.SortFunc(all, func(a, b one) int { return cmp.Or(cmp.Compare(a.mwh, b.mwh), cmp.Compare(a.at, b.at)) })
-	c = &r.Candidates[all[(len(all)-1)/2].at]
-	return c, fmt.Sprintf("as much energy as %s with %s, the middle candidate by energy", c.Site, c.Plant), ""
+	return nil, "", "no_energy_known"
 }
 
 // savingTheSame gives the consequences of using so much less that a plant is not needed.
@@ -229,7 +214,7 @@ func (w *world) sealedGround(k *reckoner, r *Results) (Alternative, error) {
 		out.Unknown = "nothing_found:" + SealedGround
 		return out, nil
 	}
-	sun := r.middleSun()
+	sun := r.middle("specific_yield_kwh_per_kw", "solar")
 	perKW, typed := w.snap.Number("sealed.kwh_per_kw")
 	fit := fitResult{SolarKW: kw, SolarACKW: kw}
 	switch {
@@ -300,8 +285,9 @@ func (w *world) sealedGround(k *reckoner, r *Results) (Alternative, error) {
 	return out, nil
 }
 
-// middleSun gives the solar candidate with the median energy per kilowatt, the lower of two; nil without any.
-func (r *Results) middleSun() *Candidate {
+// middle gives the fitted candidate with the median of a consequence, the lower of two, among those whose technology
+// begins as given; nil without any.
+func (r *Results) middle(key, technology string) *Candidate {
 	type one struct {
 		at int
 		x  float64
@@ -309,10 +295,10 @@ func (r *Results) middleSun() *Candidate {
 	var all []one
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
-		if c.Status != Fitted || !strings.HasPrefix(c.Technology, "solar") {
+		if c.Status != Fitted || !strings.HasPrefix(c.Technology, technology) {
 			continue
 		}
-		if q, ok := c.Consequence("specific_yield_kwh_per_kw"); ok && q.State == scoring.Number {
+		if q, ok := c.Consequence(key); ok && q.State == scoring.Number {
 			all = append(all, one{i, q.Central})
 		}
 	}

@@ -257,7 +257,7 @@ func TestAlternativesStandBeside(t *testing.T) {
 		t.Errorf("panels of %v kW on sealed ground, by hand %v", q.Central, usable*1000)
 	}
 	energy, _ := sealed.Consequence("energy_p50_mwh_per_yr")
-	sun := r.middleSun()
+	sun := r.middle("specific_yield_kwh_per_kw", "solar")
 	perKW, _ := sun.Consequence("specific_yield_kwh_per_kw")
 	if math.Abs(energy.Central/(q.Central*perKW.Central/1000)-1) > 1e-9 {
 		t.Errorf("energy %v", energy.Central)

@@ -168,6 +168,7 @@ func each(name func(int) string, p draw.Palette, width float64) map[string]*draw
 		out[fmt.Sprintf("accounts-%d", n)] = chart.SideBySide(accounts(name, n), p, width)
 		out[fmt.Sprintf("ground-%d", n)] = chart.LandBars(ground7(name, n), p, width)
 		out[fmt.Sprintf("balances-%d", n)] = chart.PaybackLine(balances(name, n), p, width)
+		out[fmt.Sprintf("years-%d", n)] = chart.YearLine(yearSum(name, n), p, width)
 		out[fmt.Sprintf("sweep-%d", n)] = chart.Crowding(sweep(name, n), p, width)
 		out[fmt.Sprintf("drivers-%d", n)] = chart.Tornado(drivers(name, n), p, width)
 		out[fmt.Sprintf("cloud-%d", n*n)] = chart.Scatter(cloud(name, n*n), p, width)
@@ -281,7 +282,7 @@ func TestAccountsAtManyWidths(t *testing.T) {
 		for _, width := range []float64{300, 400, 540, 560, 580, 600, 620, 640, 900, 1200} {
 			for _, n := range []int{0, 1, 2, 3, 11, 40} {
 				for what, s := range map[string]*draw.Scene{"ladder": chart.Ladder(boundaries(name, n), draw.Light(), width), "accounts": chart.SideBySide(accounts(name, n), draw.Light(), width), "ground": chart.LandBars(ground7(name, n), draw.Light(), width),
-					"balances": chart.PaybackLine(balances(name, n), draw.Light(), width), "sweep": chart.Crowding(sweep(name, n), draw.Light(), width), "drivers": chart.Tornado(drivers(name, n), draw.Light(), width)} {
+					"years": chart.YearLine(yearSum(name, n), draw.Light(), width), "balances": chart.PaybackLine(balances(name, n), draw.Light(), width), "sweep": chart.Crowding(sweep(name, n), draw.Light(), width), "drivers": chart.Tornado(drivers(name, n), draw.Light(), width)} {
 					where := fmt.Sprintf("%s-%d, %s, %v", what, n, kind, width)
 					holdTexts(t, where, s)
 					holdShapes(t, where, s)

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"groundtally/app/draw"
 )
@@ -35,9 +36,10 @@ type Boundaries struct {
 	Kind  string // how the return is counted; ElectricOverPrimary where it is empty. Each kind has a picture of its own
 	Unit  string // of all energies: "TJ"
 
-	Rungs   [4]Rung // by Boundary
-	Parts   []EnergyPart
-	Caption string
+	Rungs    [4]Rung // by Boundary
+	Parts    []EnergyPart
+	NoStocks bool   // leaves the last rung out, with its parts
+	Caption  string // in as many parts as it has lines
 }
 
 // Rung is one boundary. Its return is given and not reckoned here, so that it is the same number everywhere.
@@ -67,6 +69,14 @@ func (in Boundaries) kind() string {
 		return ElectricOverPrimary
 	}
 	return in.Kind
+}
+
+// shown are the rungs that are drawn.
+func (in Boundaries) shown() []Rung {
+	if in.NoStocks {
+		return in.Rungs[:WithStocks]
+	}
+	return in.Rungs[:]
 }
 
 func (in Boundaries) partsAt(b Boundary) (out []EnergyPart) {
@@ -130,7 +140,7 @@ func Ladder(in Boundaries, p draw.Palette, width float64) *draw.Scene {
 	y = s.notes(y, p.Ink, "Energy return: "+in.kind()) - 6
 	y, a, room := s.rungs(in, y)
 	y, anyUnknown := s.energyParts(in, y+6, a, room)
-	for _, r := range in.Rungs {
+	for _, r := range in.shown() {
 		anyUnknown = anyUnknown || r.Out.unknown()
 	}
 	keys := []key{{style: draw.Style{Fill: p.Accent}, text: "out"}, {style: draw.Style{Fill: p.Ramp(spentShade)}, text: "spent"}, {style: draw.Style{Stroke: p.Ink, Width: 1.2}, text: "spent up to a boundary"}}
@@ -138,7 +148,8 @@ func Ladder(in Boundaries, p draw.Palette, width float64) *draw.Scene {
 		keys = append(keys, key{style: s.unknown(), text: "unknown"})
 	}
 	y += s.legend(y-4, keys) + 8
-	return s.done(s.notes(y, p.Faint, "Only returns that are counted in the same way may be compared.", in.Caption) - 4)
+	notes := append([]string{"Only returns that are counted in the same way may be compared."}, strings.Split(in.Caption, "\n")...)
+	return s.done(s.notes(y, p.Faint, notes...) - 4)
 }
 
 // spentShade is the place on the ramp of energy spent.
@@ -147,7 +158,7 @@ const spentShade = 0.45
 // words is the picture in one sentence, for readers who cannot see it.
 func (in Boundaries) words() string {
 	out := in.kind()
-	for b, r := range in.Rungs {
+	for b, r := range in.shown() {
 		out += "; " + boundaryNames[b] + " " + r.Return.value(figure, "")
 	}
 	return out
@@ -156,7 +167,7 @@ func (in Boundaries) words() string {
 // rungs draws out against spent for each boundary, and gives where they end, the scale and its length.
 func (s *sheet) rungs(in Boundaries, y float64) (end float64, a axis, room float64) {
 	hi, margin := 0.0, draw.TextWidth("unknown", small, false)
-	for b, r := range in.Rungs {
+	for b, r := range in.shown() {
 		if r.Out.ok() {
 			hi = math.Max(hi, r.Out.most())
 		}
@@ -174,7 +185,7 @@ func (s *sheet) rungs(in Boundaries, y float64) (end float64, a axis, room float
 	var bars sheet // drawn after the guide lines, whose length is not known yet
 	bars.Scene, bars.p = &draw.Scene{Width: s.Width}, s.p
 	var bands []band
-	for b, r := range in.Rungs {
+	for b, r := range in.shown() {
 		v := in.spentTo(Boundary(b))
 		at := len(bars.Items)
 		top := y
@@ -238,7 +249,7 @@ func (s *sheet) spentBar(in Boundaries, b Boundary, a axis, left, right, y, bar 
 func (s *sheet) energyParts(in Boundaries, y float64, above axis, roomAbove float64) (end float64, anyUnknown bool) {
 	lo, hi, longest := 0.0, 0.0, draw.TextWidth("spent, with stocks", body, true)
 	margin, sum := draw.TextWidth("unknown", small, false), 0.0
-	for b := range in.Rungs {
+	for b := range in.shown() {
 		for _, q := range in.partsAt(Boundary(b)) {
 			longest = math.Max(longest, draw.TextWidth(q.Name, body, false))
 			margin = math.Max(margin, draw.TextWidth(q.Spent.value(figure, in.Unit), small, false))
@@ -287,7 +298,7 @@ func (s *sheet) energyParts(in Boundaries, y float64, above axis, roomAbove floa
 		height = 37
 	}
 	from := 0.0
-	for b := range in.Rungs {
+	for b := range in.shown() {
 		parts := in.partsAt(Boundary(b))
 		for _, q := range parts {
 			words := fmt.Sprintf("%s: %s, counted from %s on", q.Name, q.Spent.both(figure, in.Unit), boundaryNames[b])
@@ -330,7 +341,7 @@ func (s *sheet) energyParts(in Boundaries, y float64, above axis, roomAbove floa
 		if len(below) > 0 {
 			y += lineHeight*float64(bars.flow(pad, y+8, s.Width-2*pad, below)) + 2
 		}
-		if b < len(in.Rungs)-1 {
+		if b < len(in.shown())-1 {
 			bars.line(s.p.Rule, 1, pad, y+1, s.Width-pad, y+1)
 			y += 3
 		}

@@ -3,6 +3,7 @@ package chart_test
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -40,6 +41,9 @@ func boundaries(name func(int) string, n int) chart.Boundaries {
 	}
 	if n == 40 {
 		in.Rungs[0].Out = chart.Amount{}
+	}
+	if in.NoStocks = n == 3 || n == 11; in.NoStocks {
+		in.Caption = name(1) + "\n" + name(4)
 	}
 	return in
 }
@@ -118,6 +122,27 @@ func TestLadderOfAnotherKind(t *testing.T) {
 	s := chart.Ladder(in, draw.Light(), 760)
 	if !says(s, "Energy return: "+in.Kind) || !says(s, "energy over the life, TJ; "+in.Kind) || says(s, chart.ElectricOverPrimary) || !strings.Contains(s.Title, in.Kind) {
 		t.Error("the kind is not said everywhere, or another is")
+	}
+}
+
+// Without stocks their rung and what is spent on them are nowhere; the rest is as before.
+func TestLadderWithoutStocks(t *testing.T) {
+	in := exampleB()
+	in.NoStocks, in.Caption = true, "one thing\nand another"
+	s := chart.Ladder(in, draw.Light(), 760)
+	for _, not := range []string{"with stocks", "peat", "this program's own ratio"} {
+		if says(s, not) || len(find(s, not)) > 0 || strings.Contains(s.Title, not) {
+			t.Errorf("%q is still there", not)
+		}
+	}
+	bars := filled(find(s, "whole life: energy return"))
+	if len(bars) != 2 || math.Abs(long(bars[0])/long(bars[1])/30.87-1) > 0.001 || !says(s, "energy return 30.9") {
+		t.Error("the last rung is not that of the whole life")
+	}
+	for _, want := range []string{"one thing", "and another"} {
+		if !slices.ContainsFunc(textsOf(s), func(x draw.Text) bool { return x.Text == want }) {
+			t.Errorf("%q has no line of its own", want)
+		}
 	}
 }
 

@@ -39,9 +39,10 @@ type stage struct {
 	plant, status, key, bounds *widget.Select
 	bound                      *fyne.Container // the row of the numeric filter
 	returns                    *returns
-	pictured                   *pictured   // nil before its tab is shown
-	ground                     *groundHere // as pictured
-	syncing                    bool        // controls are set by the program
+	pictured                   *pictured    // nil before its tab is shown
+	methods                    *methodsPane // as pictured
+	ground                     *groundHere  // as pictured
+	syncing                    bool         // controls are set by the program
 }
 
 // New makes the stage.
@@ -105,7 +106,13 @@ func (s *stage) Changed(ch core.Change) {
 	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.pictured != nil {
 		s.pictured.update()
 	}
+	if ch&core.StudyChanged != 0 && s.methods != nil {
+		s.methods.update()
+	}
 	if ch&core.LookChanged != 0 {
+		if s.methods != nil {
+			s.methods.repaint()
+		}
 		if s.pictured != nil {
 			s.pictured.repaint()
 		}
@@ -137,6 +144,7 @@ func (s *stage) Content() fyne.CanvasObject {
 		widgets.Tab{Text: "Table", Make: s.table},
 		widgets.Tab{Text: "Energy return", Make: func() fyne.CanvasObject { return s.returns.body }},
 		widgets.Tab{Text: "Pictures", Make: func() fyne.CanvasObject { s.pictured = newPictured(s.core); return s.pictured.body }},
+		widgets.Tab{Text: "Methods", Make: func() fyne.CanvasObject { s.methods = newMethodsPane(s.core); return s.methods.body }},
 		widgets.Tab{Text: "The ground here", Make: func() fyne.CanvasObject { s.ground = newGroundHere(s.core); return s.ground.body }},
 		widgets.Tab{Text: "Not assessed", Make: s.notAssessed},
 	)

@@ -22,6 +22,9 @@ import (
 // movedKeys are the consequences of which it is shown what moves them.
 var movedKeys = []string{"eroi_extended", "ghg_g_per_kwh", "energy_p50_mwh_per_yr", "carbon_payback_yr"}
 
+// primaryKey is the setting that shows the energy return as primary equivalent too.
+const primaryKey = "energy.primary_equivalent"
+
 // part is a picture with its heading, and words in its place.
 type part struct {
 	picture *chartview.Picture
@@ -38,23 +41,30 @@ func (p *part) set(words string, do func(p draw.Palette, width float64) *draw.Sc
 
 // pictured shows the accounts of the first chosen candidate in pictures, and the first two side by side.
 type pictured struct {
-	core                                *core.Core
-	who                                 *widgets.Line
-	said                                *widget.Label
-	saidBox                             fyne.CanvasObject
-	ladder, land, payback, moving, pair *part
-	key                                 *widget.Select
-	all                                 *fyne.Container
-	body                                fyne.CanvasObject
-	ids                                 []string // of the shown candidates
-	of                                  *run.Results
-	round                               int // of the newest question; older answers are dropped
-	running                             bool
+	core    *core.Core
+	who     *widgets.Line
+	said    *widget.Label
+	saidBox fyne.CanvasObject
+
+	ladder, primary, horizon, land, payback, moving, pair *part
+
+	also    *widget.Check // whether the return is shown as primary equivalent too
+	key     *widget.Select
+	all     *fyne.Container
+	body    fyne.CanvasObject
+	ids     []string // of the shown candidates
+	of      *run.Results
+	round   int // of the newest question; older answers are dropped
+	running bool
+	syncing bool // controls are set by the program
 }
 
 // found is what is behind the pictures of a candidate.
 type found struct {
 	ladder   chart.Boundaries
+	primary  *chart.Boundaries // nil while it is switched off
+	horizon  chart.YearSum
+	account  string // on the common horizon, in words
 	ground   chart.Ground
 	balances chart.Balances
 	drivers  chart.Drivers
@@ -88,6 +98,18 @@ func newPictured(c *core.Core) *pictured {
 	}
 	p.all = container.NewVBox(p.who, p.saidBox)
 	p.ladder = newPart("Energy return by boundary", "What is given and what is spent, at each boundary, as electricity out over primary energy in. Each part of what is spent is counted once.")
+	p.also = widget.NewCheck("Also as primary equivalent, on an axis of its own", func(on bool) {
+		if !p.syncing {
+			value := "off"
+			if on {
+				value = pictures.PrimaryEquivalent
+			}
+			c.Set("energy return as primary equivalent "+value, "", study.SettingEdit{Key: primaryKey, Value: value})
+		}
+	})
+	p.ladder.all.Add(p.also)
+	p.primary = newPart("Energy return as primary equivalent", "The same with the electricity counted as the primary energy that the grid would spend for it. It is not to be set beside the return above.")
+	p.horizon = newPart("On a common horizon", "What comes back less what is spent, over years that all candidates share: what wears out before is built again.")
 	p.land = newPart("Ground taken", "The ground that the plant takes, by kind, in hectares.")
 	p.payback = newPart("Carbon payback", "Greenhouse gas displaced less that caused, year by year, under each grid factor that was entered.")
 	p.moving = newPart("What moves it", "How strongly a consequence follows each group of factors over all trials, by rank.", p.key)
@@ -101,7 +123,7 @@ func newPictured(c *core.Core) *pictured {
 }
 
 func (p *pictured) parts() []*part {
-	return []*part{p.ladder, p.land, p.payback, p.moving, p.pair}
+	return []*part{p.ladder, p.primary, p.horizon, p.land, p.payback, p.moving, p.pair}
 }
 
 func (p *pictured) repaint() {
@@ -188,7 +210,18 @@ func (p *pictured) answered(c *run.Candidate, key string, f *found) {
 	p.said.SetText("")
 	shown(false, p.saidBox)
 	for _, one := range p.parts() {
-		shown(one != p.pair, one.all)
+		shown(one != p.pair && (one != p.primary || f.primary != nil), one.all)
+	}
+	p.syncing = true
+	p.also.SetChecked(f.primary != nil)
+	p.syncing = false
+	if f.primary != nil {
+		p.primary.set("", func(pal draw.Palette, width float64) *draw.Scene { return chart.Ladder(*f.primary, pal, width) })
+	}
+	if len(f.horizon.Points) > 0 {
+		p.horizon.set(f.account, func(pal draw.Palette, width float64) *draw.Scene { return chart.YearLine(f.horizon, pal, width) })
+	} else {
+		p.horizon.set(f.account, nil)
 	}
 	p.ladder.set("", func(pal draw.Palette, width float64) *draw.Scene { return chart.Ladder(f.ladder, pal, width) })
 	p.land.set("", func(pal draw.Palette, width float64) *draw.Scene { return chart.LandBars(f.ground, pal, width) })
@@ -231,6 +264,15 @@ func find(params *run.Params, c *run.Candidate, snap *study.Snapshot, key, what 
 		ladder: pictures.Boundaries(c, value, "Energy return by boundary of "+c.Site, "accounts-ladder"),
 		ground: pictures.GroundTaken(c, value, "Ground taken by "+c.Site, "accounts-land"),
 	}
+	if snap.Text(primaryKey) == pictures.PrimaryEquivalent {
+		in := pictures.PrimaryBoundaries(c, value, "Energy return as primary equivalent of "+c.Site, "accounts-primary")
+		out.primary = &in
+	}
+	l, why, err := a.Ledger(c)
+	if err != nil {
+		return nil, err
+	}
+	out.horizon, out.account = pictures.HorizonSum(l, why, value, "Net energy on a common horizon of "+c.Site, "accounts-horizon"), pictures.Ledger(l, why)
 	lines, why, err := a.PaybackLines(c)
 	if err != nil {
 		return nil, err

@@ -62,7 +62,7 @@ func BenchmarkSliderStep(b *testing.B) {
 					window += time.Since(began)
 					r := <-ranked
 					began = time.Now()
-					s.shown, s.facts = &shown{r, s.c.View().Snap, results, itemOf}, nil
+					s.shown, s.facts = &shown{r, s.c.View().Snap, results, itemOf, s.c.View().Of}, nil
 					s.tell(core.RankingChanged)
 					window += time.Since(began)
 				}

@@ -215,7 +215,7 @@ func (p *besides) find(sh *shown) {
 	}
 	params := p.s.c.Parts.Params
 	p.work.ask(p.s.c, sh, func() func() {
-		a, err := run.NewAccounts(params, sh.snap)
+		a, err := run.NewAccounts(params, sh.of)
 		var plan *run.SparePlan
 		if err == nil {
 			plan, err = a.SparePlan(sh.results, order)

@@ -148,6 +148,19 @@ func (o *order) leadWords(sh *shown) string {
 	if n := len(sh.Board.Held); n > 0 {
 		words += fmt.Sprintf(" Gates hold %s back.", plural(n, "candidate"))
 	}
+	beside, err := sh.Board.Beside(sh.Raw, st)
+	if err != nil {
+		return words
+	}
+	var would []string
+	for _, b := range beside {
+		if b.Why == "" {
+			would = append(would, fmt.Sprintf("%s at place %d", strings.ToLower(b.Title), b.Place))
+		}
+	}
+	if len(would) > 0 {
+		words += " Beside the candidates would stand " + strings.Join(would, ", ") + "."
+	}
 	return words
 }
 

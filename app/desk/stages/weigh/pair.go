@@ -149,6 +149,7 @@ type pairPane struct {
 	take    *widget.Button
 	picture *picture
 	needs   *fyne.Container
+	duel    *duel
 	body    *fyne.Container
 	all     *container.Scroll
 }
@@ -162,14 +163,21 @@ func newPair(s *stage) *pairPane {
 		}
 	})
 	p.take = widget.NewButton("Take the first two of the order", p.firstTwo)
-	p.picture = newPicture(s.c, func() { p.all.Refresh() })
+	p.picture = newPicture(s.c, p.grown)
 	p.needs = container.NewVBox()
-	p.body = container.NewVBox(flush(p.words), container.NewHBox(p.swap, p.take), p.picture, p.needs)
+	p.duel = newDuel(s, p.grown)
+	p.body = container.NewVBox(flush(p.words), container.NewHBox(p.swap, p.take), p.picture, p.duel.all, p.needs)
 	p.all = container.NewVScroll(container.New(inset{right: 12, bottom: 8}, p.body))
 	return p
 }
 
 func (p *pairPane) object() fyne.CanvasObject { return p.all }
+
+// grown lays the pane out anew after something in it took another height.
+func (p *pairPane) grown() {
+	p.body.Refresh() // in a high window the whole keeps its height
+	p.all.Refresh()
+}
 
 // firstTwo chooses the first two candidates of the order.
 func (p *pairPane) firstTwo() {
@@ -189,6 +197,7 @@ func (p *pairPane) changed(core.Change) {
 	two := sh != nil && sh.Err == nil && len(ids) > 1
 	show(p.swap, len(ids) > 1)
 	show(p.take, len(ids) < 2 && sh != nil && sh.Err == nil)
+	p.duel.update()
 	if !two {
 		words := "Two candidates are set against each other here. Choose one by a click in the order or on the map, then the other by a click with Ctrl or Shift held (or + in the order)."
 		if sh == nil || sh.Err != nil {
@@ -229,7 +238,7 @@ func (p *pairPane) show(found pair) {
 			p.needs.Add(flush(widgets.NewText(found.factor)))
 		}
 	}
-	p.all.Refresh()
+	p.grown()
 }
 
 // needRow sets weight and value side by side where there is room, else one under the other.

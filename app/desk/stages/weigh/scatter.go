@@ -93,12 +93,7 @@ func (p *scatterPane) offer() {
 			keys = append(keys, k)
 		}
 	}
-	titles := make([]string, len(keys))
-	for i, k := range keys {
-		if titles[i] = k.Title; slices.Contains(titles[:i], k.Title) {
-			titles[i] += " (" + present.UnitWords(k.Unit) + ")"
-		}
-	}
+	titles := keyTitles(keys)
 	if !slices.Equal(titles, p.x.Options) {
 		at := func(s *widget.Select, otherwise int) string {
 			if slices.Contains(titles, s.Selected) {
@@ -124,6 +119,17 @@ func (p *scatterPane) offer() {
 		}
 		p.plant.Refresh()
 	}
+}
+
+// keyTitles names consequences to choose from; of two with one title the later says its unit.
+func keyTitles(keys []run.KeyInfo) []string {
+	titles := make([]string, len(keys))
+	for i, k := range keys {
+		if titles[i] = k.Title; slices.Contains(titles[:i], k.Title) {
+			titles[i] += " (" + present.UnitWords(k.Unit) + ")"
+		}
+	}
+	return titles
 }
 
 func (p *scatterPane) draw() {

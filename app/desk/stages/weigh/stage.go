@@ -56,7 +56,8 @@ type shown struct {
 	*live.Ranking
 	snap    *study.Snapshot
 	results *run.Results
-	itemOf  []int32 // by candidate: its item, -1 for one that is not ordered
+	itemOf  []int32         // by candidate: its item, -1 for one that is not ordered
+	of      *study.Snapshot // that the results are of; snap may be ahead of it
 }
 
 func (s *shown) candidate(item int) *run.Candidate {
@@ -235,7 +236,7 @@ func (s *stage) take() {
 	case r.Board != v.Board || v.Results == nil:
 		return // the order of the newest results is on its way
 	case s.shown != nil && s.shown.Board == r.Board:
-		s.shown = &shown{r, v.Snap, v.Results, s.shown.itemOf}
+		s.shown = &shown{r, v.Snap, v.Results, s.shown.itemOf, v.Of}
 	default:
 		itemOf := make([]int32, len(v.Results.Candidates))
 		for i := range itemOf {
@@ -246,7 +247,7 @@ func (s *stage) take() {
 				itemOf[at] = int32(item)
 			}
 		}
-		s.shown = &shown{r, v.Snap, v.Results, itemOf}
+		s.shown = &shown{r, v.Snap, v.Results, itemOf, v.Of}
 	}
 	o := s.c.Order()
 	switch {
