@@ -12,6 +12,7 @@ import (
 	"strings"
 
 	"groundtally/app/draw"
+	"groundtally/app/methods"
 	"groundtally/app/draw/svg"
 	"groundtally/app/present"
 	"groundtally/app/run"
@@ -127,6 +128,25 @@ func newBook(in Input) *book {
 		}
 	}
 	return b
+}
+
+// disputeView is a question on which the literature disagrees.
+type disputeView struct{ Topic, Account, Disputed, Here, Now, Source string }
+
+func (b *book) disputes() ([]disputeView, error) {
+	list, err := methods.Shipped()
+	if err != nil {
+		return nil, fmt.Errorf("what the literature disputes: %w", err)
+	}
+	var out []disputeView
+	for _, d := range list {
+		now, err := methods.InForce(b.in.Params, b.in.Snapshot, d)
+		if err != nil {
+			return nil, fmt.Errorf("what the literature disputes, %s: %w", d.Topic, err)
+		}
+		out = append(out, disputeView{d.Topic, string(d.Account), d.Disputed, d.HereWords(b.in.Params), now, d.SourceWords()})
+	}
+	return out, nil
 }
 
 // title gives the words for a key; a key without any is shown as it is.
@@ -263,6 +283,11 @@ func Page(in Input) ([]byte, error) {
 	bulk, fitted, noRoom := b.bulk()
 	data["Bulk"], data["FittedCount"], data["NoRoomCount"] = bulk, fitted, noRoom
 	data["KeyCount"], data["PageKeyCount"] = len(b.info), len(pageKeys)
+	disputes, err := b.disputes()
+	if err != nil {
+		return nil, err
+	}
+	data["Disputes"] = disputes
 	leads, others, err := b.unfoldings()
 	if err != nil {
 		return nil, err

@@ -199,7 +199,7 @@ func (b *book) openAccounts() (*run.Accounts, error) {
 	return b.accounts, nil
 }
 
-// said tells a candidate's saving, its account on a common horizon, and the habitat that it touches.
+// said tells a candidate's saving, its power on the ground, and the habitat that it touches.
 func (b *book) said(c *run.Candidate) (words, habitat []string, err error) {
 	if c.Status != run.Fitted {
 		return nil, nil, nil
@@ -208,16 +208,11 @@ func (b *book) said(c *run.Candidate) (words, habitat []string, err error) {
 	if err != nil {
 		return nil, nil, err
 	}
-	l, why, err := a.Ledger(c)
-	if err != nil {
-		return nil, nil, fmt.Errorf("account on a common horizon of %s: %w", c.ID(), err)
-	}
-	words = append(words, pictures.Ledger(l, why))
 	s, why, err := a.Saving(c)
 	if err != nil {
 		return nil, nil, fmt.Errorf("saving that equals %s: %w", c.ID(), err)
 	}
-	return append(words, pictures.Saving(s, why), pictures.Densities(a.Values(c))), pictures.Habitat(c.Habitat, a.Values(c)("life_yr").X), nil
+	return []string{pictures.Saving(s, why), pictures.Densities(a.Values(c))}, pictures.Habitat(c.Habitat, a.Values(c)("life_yr").X), nil
 }
 
 // accountPictures draws the energy return by boundary, the ground taken, the carbon payback and what moves the energy
@@ -244,11 +239,20 @@ func (b *book) accountPictures(c *run.Candidate, title, id string) ([]accountPic
 	taken := pictures.GroundTaken(c, value, "Bar chart: ground taken by "+title, id+"-ground")
 	paid := pictures.Paybacks(c, lines, why, value, "Line chart: carbon payback of "+title, id+"-payback")
 	moving := pictures.DriversOf(drivers, trials, b.title(moved), "Bar chart: what moves the energy return of "+title, id+"-moving")
-	out := []accountPicture{
-		{Caption: pictures.BoundariesWords(rungs), Label: "Energy return by boundary", Picture: picture(chart.Ladder(rungs, light, halfWidth))},
-		{Caption: pictures.GroundWords(taken), Label: "Ground taken", Picture: picture(chart.LandBars(taken, light, halfWidth))},
-		{Caption: pictures.PaybackWords(paid), Label: "Carbon payback", Picture: picture(chart.PaybackLine(paid, light, halfWidth))},
+	out := []accountPicture{{Caption: pictures.BoundariesWords(rungs), Label: "Energy return by boundary", Picture: picture(chart.Ladder(rungs, light, halfWidth))}}
+	if b.in.Snapshot.Text("energy.primary_equivalent") == pictures.PrimaryEquivalent {
+		as := pictures.PrimaryBoundaries(c, value, "Bar chart: energy return as primary equivalent of "+title, id+"-primary")
+		out = append(out, accountPicture{Caption: pictures.BoundariesWords(as), Label: "Energy return as primary equivalent", Picture: picture(chart.Ladder(as, light, halfWidth))})
 	}
+	ledger, why, err := b.accounts.Ledger(c)
+	if err != nil {
+		return nil, fmt.Errorf("account on a common horizon of %s: %w", c.ID(), err)
+	}
+	sum := pictures.HorizonSum(ledger, why, value, "Line chart: account on a common horizon of "+title, id+"-horizon")
+	out = append(out,
+		accountPicture{Caption: pictures.Ledger(ledger, why), Label: "Account on a common horizon", Picture: picture(chart.YearLine(sum, light, halfWidth))},
+		accountPicture{Caption: pictures.GroundWords(taken), Label: "Ground taken", Picture: picture(chart.LandBars(taken, light, halfWidth))},
+		accountPicture{Caption: pictures.PaybackWords(paid), Label: "Carbon payback", Picture: picture(chart.PaybackLine(paid, light, halfWidth))})
 	last := accountPicture{Label: "What moves " + b.title(moved)}
 	if q, _ := c.Consequence(moved); trials == 0 {
 		last.Caption = first(present.WhyNot(q), "unknown: no trials")

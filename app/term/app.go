@@ -81,7 +81,7 @@ var (
 
 func verbs() []verb {
 	return []verb{verbNew, verbAdd, verbJoin, verbRemove, verbGroup, verbDraw, verbPlace, verbTurbine, verbSet, verbGet, verbUndo, verbRedo, verbJournal, verbFreeze,
-		verbCheck, verbCompute, verbTable, verbWhy, verbRegister, verbLeft, verbTerrain, verbRequests, verbCoverage, verbOrder, verbAppendix, verbVerify, verbExport, verbConvert}
+		verbCheck, verbCompute, verbTable, verbWhy, verbMethods, verbRegister, verbLeft, verbTerrain, verbRequests, verbCoverage, verbOrder, verbAppendix, verbVerify, verbExport, verbConvert}
 }
 
 func findVerb(name string) (verb, bool) {

@@ -381,6 +381,31 @@ func TestWhyWithoutRoom(t *testing.T) {
 	}
 }
 
+// What is disputed and the formulas are told account by account.
+func TestMethods(t *testing.T) {
+	b := newBench(t)
+	b.district()
+	text := b.run(0, "methods", "--account", "land")
+	for _, want := range []string{"LAND", "Soil under panels", "Here: ", "Source: ", "Formulas in force", "footprint_direct_ha: "} {
+		if !strings.Contains(text, want) {
+			t.Errorf("no %q in\n%s", want, text)
+		}
+	}
+	if strings.Contains(text, "Average or marginal grid") {
+		t.Error("climate is told under land")
+	}
+	accounts := object(t, b.run(0, "methods", "--json"))["accounts"].([]any)
+	if len(accounts) != 3 {
+		t.Fatalf("%d accounts", len(accounts))
+	}
+	for _, a := range accounts {
+		if m := a.(map[string]any); len(m["disputed"].([]any)) == 0 || len(m["formulas"].([]any)) == 0 {
+			t.Errorf("nothing of %v", m["account"])
+		}
+	}
+	b.run(2, "methods", "--account", "money")
+}
+
 // Every verb answers in JSON and in text, with nothing else on standard output.
 func TestEveryVerbInJSON(t *testing.T) {
 	b := newBench(t)
@@ -402,7 +427,7 @@ func TestEveryVerbInJSON(t *testing.T) {
 	runs := map[string][]string{
 		"add": {small + "soil.geojson", "--as", "soil", "--name", "more"}, "remove": {"more"}, "group": {"--by", "farm"},
 		"set": {"run.seed", "7"}, "get": nil, "undo": nil, "redo": nil, "journal": nil, "freeze": {"now"}, "check": nil, "compute": nil, "table": {"--top", "1"},
-		"why": {"south", "sun"}, "register": nil, "requests": nil, "coverage": nil, "terrain": {"--site", "south"}, "left": {"--plant", "wind"}, "join": {"parcels", notes, "--key", "parcel"}, "draw": {"barns", "--as", "exclusion", "--shape", "-20.0,50.0", "--set", "reason=test", "--set", "setback=10", "--reason", "test"},
+		"why": {"south", "sun"}, "register": nil, "requests": nil, "coverage": nil, "methods": nil, "terrain": {"--site", "south"}, "left": {"--plant", "wind"}, "join": {"parcels", notes, "--key", "parcel"}, "draw": {"barns", "--as", "exclusion", "--shape", "-20.0,50.0", "--set", "reason=test", "--set", "setback=10", "--reason", "test"},
 		"place": {"barns", "hand-1", "--shape", "-20.001,50.0", "--reason", "test"}, "turbine": nil, "export": {"parcels", "--to", filepath.Join(t.TempDir(), "p.gpkg")}, "order": nil, "appendix": {"--to", out}, "verify": {"--appendix", out},
 	}
 	for _, v := range verbs()[1:] { // new comes first by itself
