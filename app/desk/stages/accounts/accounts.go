@@ -42,6 +42,7 @@ type stage struct {
 	pictured                   *pictured    // nil before its tab is shown
 	methods                    *methodsPane // as pictured
 	ground                     *groundHere  // as pictured
+	beside                     *besideTable // as pictured
 	syncing                    bool         // controls are set by the program
 }
 
@@ -106,6 +107,9 @@ func (s *stage) Changed(ch core.Change) {
 	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.pictured != nil {
 		s.pictured.update()
 	}
+	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.beside != nil {
+		s.beside.update()
+	}
 	if ch&core.StudyChanged != 0 && s.methods != nil {
 		s.methods.update()
 	}
@@ -144,6 +148,7 @@ func (s *stage) Content() fyne.CanvasObject {
 		widgets.Tab{Text: "Table", Make: s.table},
 		widgets.Tab{Text: "Energy return", Make: func() fyne.CanvasObject { return s.returns.body }},
 		widgets.Tab{Text: "Pictures", Make: func() fyne.CanvasObject { s.pictured = newPictured(s.core); return s.pictured.body }},
+		widgets.Tab{Text: "Beside", Make: func() fyne.CanvasObject { s.beside = newBesideTable(s.core); return s.beside.body }},
 		widgets.Tab{Text: "Methods", Make: func() fyne.CanvasObject { s.methods = newMethodsPane(s.core); return s.methods.body }},
 		widgets.Tab{Text: "The ground here", Make: func() fyne.CanvasObject { s.ground = newGroundHere(s.core); return s.ground.body }},
 		widgets.Tab{Text: "Not assessed", Make: s.notAssessed},
