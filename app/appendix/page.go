@@ -12,8 +12,8 @@ import (
 	"strings"
 
 	"groundtally/app/draw"
-	"groundtally/app/methods"
 	"groundtally/app/draw/svg"
+	"groundtally/app/methods"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"

@@ -3,7 +3,6 @@ package run
 import (
 	"fmt"
 	"math"
-	"reflect"
 
 	"groundtally/scoring"
 )
@@ -82,9 +81,6 @@ func differCandidate(a, b *Candidate) *Difference {
 	if a.Fit != nil && b.Fit != nil && len(a.Fit.Turbines) != len(b.Fit.Turbines) {
 		return &Difference{Where: at + ", number of turbines", Old: fmt.Sprint(len(a.Fit.Turbines)), New: fmt.Sprint(len(b.Fit.Turbines))}
 	}
-	if !reflect.DeepEqual(a.Habitat, b.Habitat) {
-		return &Difference{Where: at + ", habitat", Old: fmt.Sprintf("%+v", a.Habitat), New: fmt.Sprintf("%+v", b.Habitat)}
-	}
 	as, bs := a.All(), b.All()
 	if len(as) != len(bs) {
 		return &Difference{Where: at + ", number of consequences", Old: fmt.Sprint(len(as)), New: fmt.Sprint(len(bs))}
@@ -98,5 +94,23 @@ func differCandidate(a, b *Candidate) *Difference {
 			return &Difference{Where: at + ", " + q.Key, Old: fmt.Sprint(q.Low, " ", q.Central, " ", q.High), New: fmt.Sprint(p.Low, " ", p.Central, " ", p.High)}
 		}
 	}
+	if x, y := a.Habitat.roughly(), b.Habitat.roughly(); x != y {
+		return &Difference{Where: at + ", habitat", Old: x, New: y}
+	}
 	return nil
+}
+
+// roughly writes the habitat touched, to a square metre.
+func (h *Habitat) roughly() string {
+	if h == nil {
+		return "none"
+	}
+	text := ""
+	for _, k := range h.Kinds {
+		text += fmt.Sprintf("%s %s %s %.4f ha lost, %.4f ha in the edge; ", k.Class, k.Condition, k.Irreplaceable, k.LostHa, k.EdgeHa)
+	}
+	if h.Pieces != nil {
+		text += fmt.Sprintf("%d pieces before, %d after", h.Pieces.Before, h.Pieces.After)
+	}
+	return text
 }

@@ -4,6 +4,7 @@ package bounds
 import (
 	"errors"
 	"fmt"
+	"math"
 )
 
 // ErrInput is wrapped by every error about a number outside its range.
@@ -19,16 +20,27 @@ func Finite(v float64) bool { return v-v == 0 } // NaN and infinities less thems
 
 // NonNegative asks for a finite number of 0 or more.
 func NonNegative(name string, v float64) error {
-	if !(v >= 0) || !Finite(v) {
-		return Error(name, v, "0 or more")
+	if v >= 0 && v <= math.MaxFloat64 {
+		return nil
 	}
-	return nil
+	return Error(name, v, "0 or more")
+}
+
+// AllNonNegative reports whether all are finite numbers of 0 or more: a quick question before each is asked for a
+// fault of its own.
+func AllNonNegative(v ...float64) bool {
+	for _, x := range v {
+		if !(x >= 0 && x <= math.MaxFloat64) {
+			return false
+		}
+	}
+	return true
 }
 
 // Positive asks for a finite number above 0.
 func Positive(name string, v float64) error {
-	if !(v > 0) || !Finite(v) {
-		return Error(name, v, "above 0")
+	if v > 0 && v <= math.MaxFloat64 {
+		return nil
 	}
-	return nil
+	return Error(name, v, "above 0")
 }

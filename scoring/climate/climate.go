@@ -92,17 +92,30 @@ func DisplacedT(firstYearKWh, degradationPerYr, years float64, grid Grid) (float
 	if err := displacedInput(firstYearKWh, degradationPerYr, years, grid); err != nil {
 		return 0, err
 	}
-	a := firstYearKWh * grid.KgPerKWh / units.KgPerT
-	lnq := math.Log1p(-degradationPerYr) + math.Log1p(-grid.DeclinePerYr)
-	if lnq == 0 {
-		return a * years, nil
+	return declineOf(degradationPerYr, grid.DeclinePerYr).displacedT(firstYearT(firstYearKWh, grid.KgPerKWh), years), nil
+}
+
+// firstYearT is what the first year displaces, t CO2e.
+func firstYearT(kWh, kgPerKWh float64) float64 { return kWh * kgPerKWh / units.KgPerT }
+
+// decline is how what a plant displaces falls from year to year: the logarithm of q = (1−d)(1−δ), and q − 1.
+type decline struct{ ln, fall float64 }
+
+func declineOf(degradationPerYr, gridDeclinePerYr float64) decline {
+	ln := math.Log1p(-degradationPerYr) + math.Log1p(-gridDeclinePerYr)
+	return decline{ln, math.Expm1(ln)}
+}
+
+func (d decline) displacedT(firstYearT, years float64) float64 {
+	if d.ln == 0 {
+		return firstYearT * years
 	}
-	return a * math.Expm1(years*lnq) / math.Expm1(lnq), nil
+	return firstYearT * math.Expm1(years*d.ln) / d.fall
 }
 
 func displacedInput(firstYearKWh, degradationPerYr, years float64, grid Grid) error {
-	if err := errors.Join(bounds.NonNegative("energy delivered", firstYearKWh), bounds.NonNegative("years", years), grid.check()); err != nil {
-		return err
+	if !bounds.AllNonNegative(firstYearKWh, years, grid.KgPerKWh) || !(grid.DeclinePerYr >= 0 && grid.DeclinePerYr < 1) {
+		return errors.Join(bounds.NonNegative("energy delivered", firstYearKWh), bounds.NonNegative("years", years), grid.check())
 	}
 	if !(degradationPerYr >= 0 && degradationPerYr < 1) {
 		return bounds.Error("degradation", degradationPerYr, "0 to below 1")
@@ -137,25 +150,28 @@ func PaybackYears(causedTCO2e, firstYearKWh, degradationPerYr float64, grid Grid
 	if err := displacedInput(firstYearKWh, degradationPerYr, 1, grid); err != nil {
 		return Payback{}, err
 	}
+	return declineOf(degradationPerYr, grid.DeclinePerYr).payback(causedTCO2e, firstYearT(firstYearKWh, grid.KgPerKWh), lifeYr), nil
+}
+
+// payback is PaybackYears of what was checked.
+func (d decline) payback(causedTCO2e, firstYearT, lifeYr float64) Payback {
 	if causedTCO2e <= 0 {
-		return Payback{}, nil
+		return Payback{}
 	}
-	a := firstYearKWh * grid.KgPerKWh / units.KgPerT
-	lnq := math.Log1p(-degradationPerYr) + math.Log1p(-grid.DeclinePerYr)
-	fall := math.Expm1(lnq)
-	if lnq != 0 {
-		a = a * fall / fall // DisplacedT of one year, to the digit
+	a := firstYearT
+	if d.ln != 0 {
+		a = a * d.fall / d.fall // displacedT of one year, to the digit
 	}
-	left := -fall * causedTCO2e // G·(1−q)
+	left := -d.fall * causedTCO2e // G·(1−q)
 	if a <= 0 || left >= a {
-		return Payback{Never: true}, nil
+		return Payback{Never: true}
 	}
 	n := causedTCO2e / a
-	if lnq != 0 {
-		n = math.Log1p(-left/a) / lnq
+	if d.ln != 0 {
+		n = math.Log1p(-left/a) / d.ln
 	}
 	if !bounds.Finite(n) || (lifeYr > 0 && n > lifeYr) {
-		return Payback{Never: true}, nil
+		return Payback{Never: true}
 	}
-	return Payback{Yr: n}, nil
+	return Payback{Yr: n}
 }

@@ -1,7 +1,10 @@
 package climate
 
 import (
+	"math"
+
 	"groundtally/scoring"
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/units"
 )
 
@@ -34,21 +37,34 @@ func Quantities() []scoring.Quantity {
 			Inputs: []string{"wind_degradation_per_yr", "pv_degradation_per_yr", "wind_first_year_mwh", "solar_first_year_mwh"}, Eval: plain(func(x []float64) float64 { return (x[0]*x[2] + x[1]*x[3]) / (x[2] + x[3]) })},
 		{Name: "displaced_tco2e_per_yr", Unit: "t CO2e/yr", Title: "Emissions displaced per year", Formula: "delivered_mwh_per_yr × grid factor × displacement share; a scenario", Source: "identity",
 			Inputs: []string{"delivered_mwh_per_yr", "grid_factor_g_per_kwh", "displacement_share"}, Eval: plain(func(x []float64) float64 { return x[0] * units.KWhPerMWh * x[1] * x[2] / units.GPerKg / units.KgPerT })},
-		{Name: "displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions displaced over life", Formula: "Σ E_1·(1−d)^(t−1)·EF·(1−δ)^(t−1)", Source: "identity",
-			Inputs: []string{"delivered_mwh_per_yr", "ageing_per_yr", "life_yr", "grid_factor_g_per_kwh", "displacement_share", "grid_decline_per_yr"}, Eval: guarded("displaced", func(x []float64) (float64, error) {
-				return DisplacedT(x[0]*units.KWhPerMWh, x[1], x[2], Grid{KgPerKWh: x[3] * x[4] / units.GPerKg, DeclinePerYr: x[5]})
+		{Name: "displacing_ln_per_yr", Unit: "1/yr", Title: "Decline of what is displaced, as a logarithm", Formula: "ln((1 − ageing_per_yr)·(1 − grid_decline_per_yr))", Source: "identity",
+			Inputs: []string{"ageing_per_yr", "grid_decline_per_yr"}, Eval: guarded("displaced", func(x []float64) (float64, error) {
+				if err := displacedInput(0, x[0], 0, Grid{DeclinePerYr: x[1]}); err != nil {
+					return 0, err
+				}
+				return declineOf(x[0], x[1]).ln, nil
+			})},
+		{Name: "displacing_fall_per_yr", Unit: "1/yr", Title: "Change of what is displaced from year to year", Formula: "exp(displacing_ln_per_yr) − 1", Source: "identity",
+			Inputs: []string{"displacing_ln_per_yr"}, Eval: plain(func(x []float64) float64 { return math.Expm1(x[0]) })},
+		{Name: "displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions displaced over life", Formula: "Σ E_1·(1−d)^(t−1)·EF·(1−δ)^(t−1), by the closed form of the sum", Source: "identity",
+			Inputs: []string{"delivered_mwh_per_yr", "displacing_ln_per_yr", "displacing_fall_per_yr", "life_yr", "grid_factor_g_per_kwh", "displacement_share"}, Eval: guarded("displaced", func(x []float64) (float64, error) {
+				kWh, kg := x[0]*units.KWhPerMWh, x[4]*x[5]/units.GPerKg
+				if !bounds.AllNonNegative(kWh, x[3], kg) {
+					return 0, displacedInput(kWh, 0, x[3], Grid{KgPerKWh: kg})
+				}
+				return decline{x[1], x[2]}.displacedT(firstYearT(kWh, kg), x[3]), nil
 			})},
 		{Name: "net_displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions spared, net", Formula: "displaced over life − ghg_life_tco2e", Source: "identity",
 			Inputs: []string{"displaced_tco2e_life", "ghg_life_tco2e"}, Eval: plain(func(x []float64) float64 { return x[0] - x[1] })},
 		{Name: "carbon_payback_yr", Unit: "yr", Title: "Carbon payback time", Formula: "years until the emissions displaced equal those caused, all booked at the start; never beyond the life", Source: "identity",
-			Inputs: []string{"ghg_life_tco2e", "delivered_mwh_per_yr", "ageing_per_yr", "grid_factor_g_per_kwh", "displacement_share", "grid_decline_per_yr", "life_yr"}, Eval: scoring.Eval{Numbers: func(x []float64) (float64, bool) {
-				p, err := PaybackYears(x[0], x[1]*units.KWhPerMWh, x[2], Grid{KgPerKWh: x[3] * x[4] / units.GPerKg, DeclinePerYr: x[5]}, x[6])
+			Inputs: []string{"ghg_life_tco2e", "delivered_mwh_per_yr", "displacing_ln_per_yr", "displacing_fall_per_yr", "grid_factor_g_per_kwh", "displacement_share", "life_yr"}, Eval: scoring.Eval{Numbers: func(x []float64) (float64, bool) {
+				p, err := paybackOf(x)
 				return p.Yr, err == nil && !p.Never
 			}, Values: func(in []scoring.Value) scoring.Value {
 				if v, missing := scoring.FirstMissing(in); missing {
 					return v
 				}
-				p, err := PaybackYears(in[0].X, in[1].X*units.KWhPerMWh, in[2].X, Grid{KgPerKWh: in[3].X * in[4].X / units.GPerKg, DeclinePerYr: in[5].X}, in[6].X)
+				p, err := paybackOf([]float64{in[0].X, in[1].X, in[2].X, in[3].X, in[4].X, in[5].X, in[6].X})
 				switch {
 				case err != nil:
 					return scoring.UnknownBecause("carbon_payback")
@@ -58,4 +74,13 @@ func Quantities() []scoring.Quantity {
 				return scoring.Num(p.Yr)
 			}}},
 	}
+}
+
+// paybackOf reads the inputs of carbon_payback_yr.
+func paybackOf(x []float64) (Payback, error) {
+	kWh, kg := x[1]*units.KWhPerMWh, x[4]*x[5]/units.GPerKg
+	if !bounds.Finite(x[0]) || !bounds.AllNonNegative(kWh, kg, x[6]) {
+		return PaybackYears(x[0], kWh, 0, Grid{KgPerKWh: kg}, x[6])
+	}
+	return decline{x[2], x[3]}.payback(x[0], firstYearT(kWh, kg), x[6]), nil
 }

@@ -4,6 +4,7 @@ import (
 	"math"
 
 	"groundtally/scoring"
+	"groundtally/scoring/bounds"
 	"groundtally/scoring/params"
 	"groundtally/scoring/units"
 )
@@ -59,6 +60,9 @@ func Quantities() []scoring.Quantity {
 			Eval: guarded("life_energy", func(x []float64) (float64, error) {
 				sum := 0.0
 				for i := range 2 {
+					if x[i] == 0 { // a plant without that part
+						continue
+					}
 					d, err := EffectiveYears(x[2+i], x[4])
 					if err != nil {
 						return 0, err
@@ -103,14 +107,25 @@ func Quantities() []scoring.Quantity {
 			Eval:   scoring.NoneIsZero(plain(func(x []float64) float64 { return (x[0] + x[1]) * units.KgPerT * x[2] }))},
 		{Name: "eroi_stock", Unit: "1", Title: "Energy return with stocks", Formula: "E_del / (I_extended + E_stocks)", Source: "this program's own ratio; relatives in Guzmán & González de Molina 2015",
 			Inputs: []string{"delivered_mj_life", "input_extended_mj", "stock_mj"}, Eval: guarded("eroi", func(x []float64) (float64, error) {
+				if x[2] >= 0 {
+					if r, ok := quotient(x[0], x[1]+x[2]); ok {
+						return r, nil
+					}
+				}
 				return Balance{DeliveredMJ: x[0], Inputs: Inputs{B1MJ: x[1], B2MJ: x[1], B3MJ: x[1]}}.EROIStock(x[2], 0)
 			})},
 		{Name: "net_share", Unit: "1", Title: "Share left after repayment", Formula: "1 − η_G·I_extended / E_del, both as electricity", Source: murphy,
 			Inputs: []string{"delivered_mj_life", "input_extended_mj", "grid_efficiency"}, Eval: guarded("net_share", func(x []float64) (float64, error) {
+				if in := x[2] * x[1]; x[2] > 0 && x[2] <= 1 && x[0] > 0 && bounds.Finite(x[0]) && bounds.Finite(x[1]) {
+					return 1 - in/x[0], nil
+				}
 				return Balance{DeliveredMJ: x[0], Inputs: Inputs{B3MJ: x[1]}}.NetShare(params.Extended, Electric, x[2])
 			})},
 		{Name: "net_energy_gwh_life", Unit: "GWh", Title: "Net energy over life", Formula: "(E_del − η_G·I_extended) / 3.6, as electricity", Source: murphy,
 			Inputs: []string{"delivered_mj_life", "input_extended_mj", "grid_efficiency"}, Eval: guarded("net_energy", func(x []float64) (float64, error) {
+				if in := float64(x[2] * x[1]); x[2] > 0 && x[2] <= 1 && bounds.Finite(x[0]) && bounds.Finite(x[1]) {
+					return (x[0] - in) / units.MJPerGWh, nil
+				}
 				mj, err := Balance{DeliveredMJ: x[0], Inputs: Inputs{B3MJ: x[1]}}.NetMJ(params.Extended, Electric, x[2])
 				return mj / units.MJPerGWh, err
 			})},
@@ -143,6 +158,11 @@ func Quantities() []scoring.Quantity {
 			Inputs: []string{"delivered_mwh_per_yr", "used_at_once_share"}, Eval: plain(func(x []float64) float64 { return x[0] * (1 - x[1]) })},
 		{Name: "eroi_used", Unit: "1", Title: "Return on energy used", Formula: "E_del·(1 − unsold_share × (1 − used_at_once_share)) / I_extended, electricity out over primary energy in; what is cut off is not in E_del", Source: murphy,
 			Inputs: []string{"delivered_mj_life", "input_extended_mj", "used_at_once_share", "unsold_share"}, Eval: guarded("eroi", func(x []float64) (float64, error) {
+				if surplus := x[0] * (1 - x[2]); surplus >= 0 && surplus <= x[0] && x[3] >= 0 && x[3] <= 1 {
+					if r, ok := quotient(x[0]-float64(x[3]*surplus), x[1]); ok {
+						return r, nil
+					}
+				}
 				return Balance{DeliveredMJ: x[0], Inputs: Inputs{B3MJ: x[1]}}.EROIUsed(Unused{SurplusMJ: x[0] * (1 - x[2]), UnsoldFrac: x[3]})
 			})},
 		{Name: "saving_equivalent_mwh_per_yr", Unit: "MWh/yr", Title: "Saving that equals it", Formula: "delivered × (1 − λ_dist)/(1 − ρ)", Source: "Sorrell, Dimitropoulos & Sommerville 2009 for the rebound",
@@ -174,6 +194,15 @@ func exceedance(name, title string, p float64) scoring.Quantity {
 func eroi(name, title, formula string, at params.Boundary, out, in string) scoring.Quantity {
 	return scoring.Quantity{Name: name, Unit: "1", Title: title, Formula: formula + ", electricity out over primary energy in", Source: murphy,
 		Inputs: []string{out, in}, Eval: scoring.Guarded("eroi", func(x []float64) (float64, error) {
+			if r, ok := quotient(x[0], x[1]); ok {
+				return r, nil
+			}
 			return Balance{GeneratedMJ: x[0], DeliveredMJ: x[0], Inputs: Inputs{B1MJ: x[1], B2MJ: x[1], B3MJ: x[1]}}.EROI(at)
 		})}
+}
+
+// quotient is what Balance.EROI gives where nothing is wrong with its input, without the way there: trials ask for it
+// many million times. ok is false where EROI must be asked for the fault.
+func quotient(out, in float64) (r float64, ok bool) {
+	return out / in, in > 0 && in <= math.MaxFloat64 && bounds.Finite(out)
 }

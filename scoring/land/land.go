@@ -30,8 +30,8 @@ type Use struct {
 func OccupationHaYr(uses []Use) (float64, error) {
 	var o float64
 	for _, u := range uses {
-		if err := errors.Join(bounds.NonNegative("area", u.AreaHa), bounds.NonNegative("years", u.Years)); err != nil {
-			return 0, err
+		if !bounds.AllNonNegative(u.AreaHa, u.Years) {
+			return 0, errors.Join(bounds.NonNegative("area", u.AreaHa), bounds.NonNegative("years", u.Years))
 		}
 		o += float64(u.AreaHa * u.Years)
 	}
@@ -57,8 +57,8 @@ func QualityHectares(uses []Use) (float64, error) {
 // A areaHa; co coUseFrac, 0 to 1; y yieldTPerHa, t/(ha yr); e energyMJPerKg, MJ/kg, which is numerically
 // GJ/t. Food energy and gross heat differ: label which e was taken. A flow: never add it to a stock loss.
 func CropEnergyGJPerYr(areaHa, coUseFrac, yieldTPerHa, energyMJPerKg float64) (float64, error) {
-	if err := errors.Join(bounds.NonNegative("area", areaHa), share("co-use", coUseFrac), bounds.NonNegative("yield", yieldTPerHa), bounds.NonNegative("energy content", energyMJPerKg)); err != nil {
-		return 0, err
+	if !bounds.AllNonNegative(areaHa, yieldTPerHa, energyMJPerKg) || !(coUseFrac >= 0 && coUseFrac <= 1) {
+		return 0, errors.Join(bounds.NonNegative("area", areaHa), share("co-use", coUseFrac), bounds.NonNegative("yield", yieldTPerHa), bounds.NonNegative("energy content", energyMJPerKg))
 	}
 	return areaHa * (1 - coUseFrac) * yieldTPerHa * units.KgPerT * energyMJPerKg / units.MJPerGJ, nil
 }

@@ -13,8 +13,8 @@ import (
 // depth depthM, m; c_v carbonKgPerM3, kg C per cubic metre (37 to 80; 53 is a bulk density of 0.1 t/m3
 // with a carbon share of 0.53).
 func PeatStockTCPerHa(depthM, carbonKgPerM3 float64) (float64, error) {
-	if err := errors.Join(bounds.NonNegative("depth", depthM), bounds.NonNegative("carbon density", carbonKgPerM3)); err != nil {
-		return 0, err
+	if !bounds.AllNonNegative(depthM, carbonKgPerM3) {
+		return 0, errors.Join(bounds.NonNegative("depth", depthM), bounds.NonNegative("carbon density", carbonKgPerM3))
 	}
 	return depthM * units.M2PerHa * carbonKgPerM3 / units.KgPerT, nil
 }
@@ -23,8 +23,8 @@ func PeatStockTCPerHa(depthM, carbonKgPerM3 float64) (float64, error) {
 //
 // V volumeM3; c_v carbonKgPerM3; s oxidisedFrac, 0 to 1, the share that oxidises (1 unless restored wet).
 func ExcavatedPeatTC(volumeM3, carbonKgPerM3, oxidisedFrac float64) (float64, error) {
-	if err := errors.Join(bounds.NonNegative("volume", volumeM3), bounds.NonNegative("carbon density", carbonKgPerM3), share("oxidised share", oxidisedFrac)); err != nil {
-		return 0, err
+	if !bounds.AllNonNegative(volumeM3, carbonKgPerM3) || !(oxidisedFrac >= 0 && oxidisedFrac <= 1) {
+		return 0, errors.Join(bounds.NonNegative("volume", volumeM3), bounds.NonNegative("carbon density", carbonKgPerM3), share("oxidised share", oxidisedFrac))
 	}
 	return volumeM3 * carbonKgPerM3 / units.KgPerT * oxidisedFrac, nil
 }
@@ -34,10 +34,10 @@ func ExcavatedPeatTC(volumeM3, carbonKgPerM3, oxidisedFrac float64) (float64, er
 // EF emissionTCPerHaYr, t C/(ha yr), IPCC 2013 Wetlands Supplement Table 2.1; A areaHa; t years, life plus
 // restoration; stock stockTC, carbon down to the drains. The loss never exceeds the stock.
 func DrainedPeatTC(emissionTCPerHaYr, areaHa, years, stockTC float64) (float64, error) {
-	if err := errors.Join(bounds.NonNegative("emission factor", emissionTCPerHaYr), bounds.NonNegative("area", areaHa), bounds.NonNegative("years", years), bounds.NonNegative("stock", stockTC)); err != nil {
-		return 0, err
+	if !bounds.AllNonNegative(emissionTCPerHaYr, areaHa, years, stockTC) {
+		return 0, errors.Join(bounds.NonNegative("emission factor", emissionTCPerHaYr), bounds.NonNegative("area", areaHa), bounds.NonNegative("years", years), bounds.NonNegative("stock", stockTC))
 	}
-	return math.Min(emissionTCPerHaYr*areaHa*years, stockTC), nil
+	return min(emissionTCPerHaYr*areaHa*years, stockTC), nil
 }
 
 // DrainedAreaHa is the ground drained along tracks and around pits, Σ 2·L·w + Σ (p·w + π·w²), ha.
@@ -46,8 +46,8 @@ func DrainedPeatTC(emissionTCPerHaYr, areaHa, years, stockTC float64) (float64, 
 // whose corners are taken round. Crossings and overlaps are counted twice: an upper bound. After Nayak et
 // al. 2008.
 func DrainedAreaHa(trackM float64, pitPerimetersM []float64, widthM float64) (float64, error) {
-	if err := errors.Join(bounds.NonNegative("track", trackM), bounds.NonNegative("width", widthM)); err != nil {
-		return 0, err
+	if !bounds.AllNonNegative(trackM, widthM) {
+		return 0, errors.Join(bounds.NonNegative("track", trackM), bounds.NonNegative("width", widthM))
 	}
 	a := 2 * trackM * widthM
 	for _, p := range pitPerimetersM {
@@ -77,12 +77,14 @@ type PeatLoss struct {
 
 // Loss gives the carbon lost; no part exceeds the stock it comes from.
 func (p Peat) Loss() (PeatLoss, error) {
-	for _, v := range []float64{p.DepthM, p.ExcavatedHa, p.ExcavatedDepthM, p.DrainedHa, p.DrainDepthM} {
-		if err := bounds.NonNegative("peat area or depth", v); err != nil {
-			return PeatLoss{}, err
+	if !bounds.AllNonNegative(p.DepthM, p.ExcavatedHa, p.ExcavatedDepthM, p.DrainedHa, p.DrainDepthM) {
+		for _, v := range []float64{p.DepthM, p.ExcavatedHa, p.ExcavatedDepthM, p.DrainedHa, p.DrainDepthM} {
+			if err := bounds.NonNegative("peat area or depth", v); err != nil {
+				return PeatLoss{}, err
+			}
 		}
 	}
-	dug := math.Min(p.ExcavatedDepthM, p.DepthM)
+	dug := min(p.ExcavatedDepthM, p.DepthM)
 	perM, err := PeatStockTCPerHa(1, p.CarbonKgPerM3)
 	if err != nil {
 		return PeatLoss{}, err
@@ -90,7 +92,7 @@ func (p Peat) Loss() (PeatLoss, error) {
 	var l PeatLoss
 	l.ExcavationCutShort = dug < p.ExcavatedDepthM
 	l.ExcavatedStockTC = p.ExcavatedHa * dug * perM
-	l.DrainableTC = p.DrainedHa * math.Min(p.DrainDepthM, p.DepthM) * perM
+	l.DrainableTC = p.DrainedHa * min(p.DrainDepthM, p.DepthM) * perM
 	if l.DirectTC, err = ExcavatedPeatTC(p.ExcavatedHa*units.M2PerHa*dug, p.CarbonKgPerM3, p.OxidisedFrac); err != nil {
 		return PeatLoss{}, err
 	}

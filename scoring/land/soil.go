@@ -85,8 +85,8 @@ func SOCTCPerHa(referenceTCPerHa, landUse, management, input float64) (float64, 
 //
 // years is how long the new use lasts; the change is linear over transitionYr and then complete.
 func UseChange(areaHa, beforeTCPerHa, afterTCPerHa, years, transitionYr float64) (Change, error) {
-	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("stock before", beforeTCPerHa), bounds.NonNegative("stock after", afterTCPerHa), bounds.NonNegative("years", years)); err != nil {
-		return Change{}, err
+	if !bounds.AllNonNegative(areaHa, beforeTCPerHa, afterTCPerHa, years) {
+		return Change{}, errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("stock before", beforeTCPerHa), bounds.NonNegative("stock after", afterTCPerHa), bounds.NonNegative("years", years))
 	}
 	if !(transitionYr > 0) || !bounds.Finite(transitionYr) {
 		return Change{}, bounds.Error("transition time", transitionYr, "above 0")
@@ -108,8 +108,8 @@ func Relaxed(ratePerYr, years float64) (float64, error) {
 // f lossFrac is at most 1 and may be negative, down to −1, where the works bring a gain (panels over
 // grass). The loss never exceeds the stock.
 func DisturbanceChange(areaHa, stockTCPerHa, lossFrac float64) (Change, error) {
-	if err := errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("stock", stockTCPerHa)); err != nil {
-		return Change{}, err
+	if !bounds.AllNonNegative(areaHa, stockTCPerHa) {
+		return Change{}, errors.Join(bounds.NonNegative("area", areaHa), bounds.NonNegative("stock", stockTCPerHa))
 	}
 	if !(lossFrac >= -1 && lossFrac <= 1) {
 		return Change{}, bounds.Error("loss share", lossFrac, "-1 to 1")
@@ -123,8 +123,8 @@ func DisturbanceChange(areaHa, stockTCPerHa, lossFrac float64) (Change, error) {
 // F_LU landUse of the cropland, 0 to 1; m multiplier, 0 to 1, for shade and disturbance (an assumption);
 // T years. Field measurements disagree about the sign: show that.
 func GrassGainTC(areaHa, referenceTCPerHa, landUse, multiplier, years, transitionYr float64) (float64, error) {
-	if err := errors.Join(share("land use factor", landUse), share("multiplier", multiplier)); err != nil {
-		return 0, err
+	if !(landUse >= 0 && landUse <= 1 && multiplier >= 0 && multiplier <= 1) {
+		return 0, errors.Join(share("land use factor", landUse), share("multiplier", multiplier))
 	}
 	c, err := UseChange(areaHa, referenceTCPerHa*landUse, referenceTCPerHa, years, transitionYr)
 	return c.GainTC * multiplier, err

@@ -574,7 +574,7 @@ func TestEnergyReturnsStandTogether(t *testing.T) {
 	b.Shoot("accounts-returns-760")
 	b.Window.Resize(fyne.NewSize(430, 470))
 	b.Shoot("accounts-returns-430")
-	tabs.Choose(5)
+	tabs.Choose(6)
 	b.Shoot("accounts-notassessed-430")
 }
 

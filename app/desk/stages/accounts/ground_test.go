@@ -28,7 +28,7 @@ func TestGroundHere(t *testing.T) {
 	s.Content()
 	b.Show(s.content, 560, 520)
 	tabs := s.tabs
-	tabs.Choose(4)
+	tabs.Choose(5)
 	g := s.ground
 	if g == nil {
 		t.Fatal("the tab makes nothing")

@@ -20,7 +20,7 @@ func TestMethodsAreTold(t *testing.T) {
 	if s.methods != nil {
 		t.Error("made before it is shown")
 	}
-	s.tabs.Choose(3)
+	s.tabs.Choose(4)
 	m := s.methods
 	if m == nil || len(m.pages) != 1 {
 		t.Fatal("it is not made, or more than the first page is")

@@ -451,12 +451,12 @@ func TestState(t *testing.T) {
 	for _, l := range b.s.layers.shown {
 		n += l.warm
 	}
-	if first != "27 layers" || warn != (n > 0) || n > 0 && !strings.HasPrefix(second, fmt.Sprint(n)+" thing") {
+	if first != "28 layers" || warn != (n > 0) || n > 0 && !strings.HasPrefix(second, fmt.Sprint(n)+" thing") {
 		t.Errorf("%q, %q, %v with %d notices", first, second, warn, n)
 	}
 	b.Core.Edit("take out", func(ctx context.Context, s *study.Study) error { return s.RemoveLayer(ctx, "Parcels", "test") }, nil)
 	b.Settle()
-	if first, second, warn := b.s.State(); first != "26 layers" || !warn || second == "" {
+	if first, second, warn := b.s.State(); first != "27 layers" || !warn || second == "" {
 		t.Errorf("without parcels: %q, %q, %v", first, second, warn)
 	}
 	last := b.s.layers.shown[len(b.s.layers.shown)-1]
@@ -474,7 +474,7 @@ func TestMissing(t *testing.T) {
 	b.Settle()
 	b.s.tabs.Choose(1)
 	p := b.s.missing
-	b.Until("the roles are there", func() bool { return len(p.roles) == 8 })
+	b.Until("the roles are there", func() bool { return len(p.roles) == 7 })
 	if r := p.roles[0]; r.role.Name != "dwellings" || r.waiting == 0 || strings.Contains(r.without, "noise_dba") {
 		t.Errorf("first is %s with %d waiting: %s", r.role.Name, r.waiting, r.without)
 	}
