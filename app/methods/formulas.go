@@ -103,7 +103,7 @@ var signs = []Sign{
 	{Sign: "z", Words: "Standard normal value of the odds"},
 	{Sign: "σ", Words: "Standard deviation of the yearly energy"},
 	{Sign: "Y1", Words: "Energy of the first year of a technology, kWh"},
-	{Sign: "D", Words: "Years of life, counted in years of the first year's output"},
+	{Sign: "D", Words: "Years of life, counted in years of the first year's output: (1 − (1−d)^T)/d"},
 	{Sign: "d", Words: "Ageing in a year"},
 	{Sign: "T", Words: "Life of the plant"},
 	{Sign: "e_C", Words: "Energy content of carbon"},

@@ -135,7 +135,7 @@ func TestEveryReasonHasWords(t *testing.T) {
 			switch v := n.(type) {
 			case *ast.CallExpr:
 				switch name(v.Fun) {
-				case "UnknownBecause", "NoneBecause", "Guarded":
+				case "UnknownBecause", "NoneBecause", "Guarded", "guarded":
 					if len(v.Args) > 0 {
 						found[text(v.Args[0])] = true
 					}

@@ -20,7 +20,7 @@ import (
 )
 
 // candidateEdition is raised when the digits of connection, facts or consequences change.
-const candidateEdition = 7
+const candidateEdition = 8
 
 // reckoner evaluates the graph for candidates with one set of factors and draws.
 type reckoner struct {
@@ -72,7 +72,7 @@ func (w *world) newReckoner() (*reckoner, error) {
 		if f.Dist == params.Fixed || f.Low == f.High || !needed[slot] {
 			continue
 		}
-		d := reckon.Drawn{Slot: slot, Values: make([]float64, k.trials)}
+		d := reckon.Drawn{Slot: slot, Values: make([]float64, k.trials), Shared: true}
 		group := f.Group
 		if group == "" {
 			group = f.ID
@@ -223,7 +223,7 @@ func (k *reckoner) key(w *world) string {
 	h.text(w.snap.Text(factorsEdition))
 	for _, key := range w.snap.Keys() {
 		for _, prefix := range []string{"climate.", "land.", "grid.", "energy.", "inventory.", "wind.", "solar.", "weather."} {
-			if strings.HasPrefix(key, prefix) {
+			if strings.HasPrefix(key, prefix) && key != "energy.primary_equivalent" { // it only draws what is there
 				if s, _, in := w.snap.Lookup(key); in {
 					h.text(key)
 					h.text(s.Value)

@@ -39,6 +39,14 @@ func TestInventoryOfASizeThatNothingCovers(t *testing.T) {
 			t.Errorf("%s kW: greenhouse gas %+v", kw, q)
 		}
 	}
+	for _, key := range []string{"inventory.wind_turbine-mj.central", "inventory.wind_turbine-kgco2e.high", "inventory.rebound_frac.low"} {
+		if err := CheckSetting(catalog, shipped(t), key, "9000"); err != nil {
+			t.Errorf("%s is refused: %v", key, err)
+		}
+	}
+	if err := CheckSetting(catalog, shipped(t), "inventory.wind_turbin-mj.central", "9000"); err == nil {
+		t.Error("a row that there is not is taken")
+	}
 	if got := states(make("300", "inventory.wind_turbine-mj.central", "9000"), energy); got != len(energy) {
 		t.Errorf("with a row of one's own %d of %d figures are known", got, len(energy))
 	}

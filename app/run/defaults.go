@@ -212,7 +212,7 @@ func (d *decider) score(one *deciding, leaf int, times float64) (float64, error)
 			for t, x := range drawn[i].Values {
 				scaled[t] = x * times
 			}
-			drawn[i].Values = scaled
+			drawn[i].Values, drawn[i].Shared = scaled, false
 		}
 	}
 	var want, of []int

@@ -125,7 +125,7 @@ func CheckKey(cat *study.Catalog, p *Params, key string) error {
 			return bad("there is no family %q; the families are: %s", parts[3], strings.Join(names, ", "))
 		}
 	case parts[0] == "inventory" && len(parts) >= 3:
-		row := strings.TrimPrefix(key[:strings.LastIndexByte(key, '.')], "inventory.")
+		row := strings.ReplaceAll(strings.TrimPrefix(key[:strings.LastIndexByte(key, '.')], "inventory."), "-", ".") // as UserFactor reads it
 		if _, ok := p.Factors[row]; !ok {
 			return bad("there is no factor %q%s", row, LikeThis(row, sortedNames(p.Factors)))
 		}

@@ -33,8 +33,10 @@ func Quantities() []scoring.Quantity {
 			Inputs: []string{"ghg_plant_tco2e", "ghg_land_tco2e"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1] })},
 		{Name: "ghg_g_per_kwh", Unit: "g CO2e/kWh", Title: "Greenhouse gas per kilowatt-hour", Formula: "ghg_life_tco2e / energy delivered over the life", Source: "identity",
 			Inputs: []string{"ghg_life_tco2e", "delivered_mj_life"}, Eval: guarded("ghg", func(x []float64) (float64, error) { return GPerKWh(x[0], x[1]) })},
-		{Name: "ageing_per_yr", Unit: "1/yr", Title: "Ageing of the plant", Formula: "(d_wind·E_wind + d_solar·E_solar) / E", Source: "identity",
-			Inputs: []string{"wind_degradation_per_yr", "pv_degradation_per_yr", "wind_first_year_mwh", "solar_first_year_mwh"}, Eval: plain(func(x []float64) float64 { return (x[0]*x[2] + x[1]*x[3]) / (x[2] + x[3]) })},
+		{Name: "wind_energy_share", Unit: "1", Title: "Share of the wind in the energy of the first year", Formula: "E_wind / (E_wind + E_solar), even odds", Source: "identity",
+			Inputs: []string{"wind_p50_mwh", "solar_p50_mwh"}, Eval: plain(func(x []float64) float64 { return x[0] / (x[0] + x[1]) })},
+		{Name: "ageing_per_yr", Unit: "1/yr", Title: "Ageing of the plant", Formula: "d_wind × share of the wind + d_solar × share of the sun", Source: "identity",
+			Inputs: []string{"wind_degradation_per_yr", "pv_degradation_per_yr", "wind_energy_share"}, Eval: plain(func(x []float64) float64 { return float64(x[0]*x[2]) + float64(x[1]*(1-x[2])) })},
 		{Name: "displaced_tco2e_per_yr", Unit: "t CO2e/yr", Title: "Emissions displaced per year", Formula: "delivered_mwh_per_yr × grid factor × displacement share; a scenario", Source: "identity",
 			Inputs: []string{"delivered_mwh_per_yr", "grid_factor_g_per_kwh", "displacement_share"}, Eval: plain(func(x []float64) float64 { return x[0] * units.KWhPerMWh * x[1] * x[2] / units.GPerKg / units.KgPerT })},
 		{Name: "displacing_ln_per_yr", Unit: "1/yr", Title: "Decline of what is displaced, as a logarithm", Formula: "ln((1 − ageing_per_yr)·(1 − grid_decline_per_yr))", Source: "identity",
@@ -46,13 +48,15 @@ func Quantities() []scoring.Quantity {
 			})},
 		{Name: "displacing_fall_per_yr", Unit: "1/yr", Title: "Change of what is displaced from year to year", Formula: "exp(displacing_ln_per_yr) − 1", Source: "identity",
 			Inputs: []string{"displacing_ln_per_yr"}, Eval: plain(func(x []float64) float64 { return math.Expm1(x[0]) })},
-		{Name: "displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions displaced over life", Formula: "Σ E_1·(1−d)^(t−1)·EF·(1−δ)^(t−1), by the closed form of the sum", Source: "identity",
-			Inputs: []string{"delivered_mwh_per_yr", "displacing_ln_per_yr", "displacing_fall_per_yr", "life_yr", "grid_factor_g_per_kwh", "displacement_share"}, Eval: guarded("displaced", func(x []float64) (float64, error) {
-				kWh, kg := x[0]*units.KWhPerMWh, x[4]*x[5]/units.GPerKg
-				if !bounds.AllNonNegative(kWh, x[3], kg) {
-					return 0, displacedInput(kWh, 0, x[3], Grid{KgPerKWh: kg})
+		{Name: "displacing_yr", Unit: "yr", Title: "Years of the first year's displacement in the life", Formula: "(1 − q^T)/(1 − q), q = exp(displacing_ln_per_yr); T where q is 1", Source: "identity",
+			Inputs: []string{"displacing_ln_per_yr", "displacing_fall_per_yr", "life_yr"}, Eval: plain(func(x []float64) float64 { return decline{x[0], x[1]}.displacedT(1, x[2]) })},
+		{Name: "displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions displaced over life", Formula: "E_1·EF × displacing_yr", Source: "identity",
+			Inputs: []string{"delivered_mwh_per_yr", "displacing_yr", "grid_factor_g_per_kwh", "displacement_share"}, Eval: guarded("displaced", func(x []float64) (float64, error) {
+				kWh, kg := x[0]*units.KWhPerMWh, x[2]*x[3]/units.GPerKg
+				if !bounds.AllNonNegative(kWh, x[1], kg) {
+					return 0, displacedInput(kWh, 0, x[1], Grid{KgPerKWh: kg})
 				}
-				return decline{x[1], x[2]}.displacedT(firstYearT(kWh, kg), x[3]), nil
+				return firstYearT(kWh, kg) * x[1], nil
 			})},
 		{Name: "net_displaced_tco2e_life", Unit: "t CO2e", Title: "Emissions spared, net", Formula: "displaced over life − ghg_life_tco2e", Source: "identity",
 			Inputs: []string{"displaced_tco2e_life", "ghg_life_tco2e"}, Eval: plain(func(x []float64) float64 { return x[0] - x[1] })},

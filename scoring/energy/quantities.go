@@ -18,8 +18,10 @@ func Quantities() []scoring.Quantity {
 	return []scoring.Quantity{
 		{Name: "rated_kw", Unit: "kW", Title: "Rated power", Formula: "wind_kw + solar_kw", Source: "identity",
 			Inputs: []string{"wind_kw", "solar_kw"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1] })},
+		{Name: "wind_part", Unit: "1", Title: "Whether there are turbines", Formula: "1 where wind_kw is above 0, else 0", Source: "identity", Inputs: []string{"wind_kw"}, Eval: plain(above0)},
+		{Name: "solar_part", Unit: "1", Title: "Whether there are panels", Formula: "1 where solar_kw is above 0, else 0", Source: "identity", Inputs: []string{"solar_kw"}, Eval: plain(above0)},
 		{Name: "life_yr", Unit: "yr", Title: "Life of the plant", Formula: "life of its technology; of both, the shorter", Source: "choice of this program",
-			Inputs: []string{"wind_kw", "solar_kw", "wind_life_yr", "pv_life_yr"}, Eval: plain(func(x []float64) float64 {
+			Inputs: []string{"wind_part", "solar_part", "wind_life_yr", "pv_life_yr"}, Eval: plain(func(x []float64) float64 {
 				switch {
 				case x[0] > 0 && x[1] > 0:
 					return math.Min(x[2], x[3])
@@ -55,25 +57,23 @@ func Quantities() []scoring.Quantity {
 		{Name: "capacity_factor", Unit: "1", Title: "Share of full output", Formula: "energy_p50 / (rated_kw × 8760 h)", Source: "identity",
 			Inputs: []string{"energy_p50_mwh_per_yr", "rated_kw"}, Eval: plain(func(x []float64) float64 { return x[0] * units.KWhPerMWh / (x[1] * units.HoursPerYear) })},
 
-		{Name: "generated_mj_life", Unit: "MJ", Title: "Electricity of the life at the plant", Formula: "3.6·Y1·D(T) of each technology, less what is cut off; D(T) = (1 − (1−d)^T)/d", Source: "Jordan & Kurtz 2013 for geometric ageing",
-			Inputs: []string{"wind_first_year_mwh", "solar_first_year_mwh", "wind_degradation_per_yr", "pv_degradation_per_yr", "life_yr", "curtailed_frac"},
+		effectiveYears("wind_effective_yr", "Life of turbines in years of first-year output", "wind_degradation_per_yr"),
+		effectiveYears("solar_effective_yr", "Life of panels in years of first-year output", "pv_degradation_per_yr"),
+		{Name: "generated_mj_life", Unit: "MJ", Title: "Electricity of the life at the plant", Formula: "3.6·Y1·D(T) of each technology, less what is cut off", Source: "Jordan & Kurtz 2013 for geometric ageing",
+			Inputs: []string{"wind_first_year_mwh", "solar_first_year_mwh", "wind_effective_yr", "solar_effective_yr", "curtailed_frac"},
 			Eval: guarded("life_energy", func(x []float64) (float64, error) {
 				sum := 0.0
 				for i := range 2 {
 					if x[i] == 0 { // a plant without that part
 						continue
 					}
-					d, err := EffectiveYears(x[2+i], x[4])
-					if err != nil {
-						return 0, err
-					}
-					e, err := GeneratedMJ(x[i]*units.KWhPerMWh, d)
+					e, err := GeneratedMJ(x[i]*units.KWhPerMWh, x[2+i])
 					if err != nil {
 						return 0, err
 					}
 					sum += e
 				}
-				return sum * (1 - x[5]), nil
+				return sum * (1 - x[4]), nil
 			})},
 		{Name: "delivered_mj_life", Unit: "MJ", Title: "Electricity of the life at the grid", Formula: "(1 − λ)·E_gen", Source: "Raugei et al., IEA-PVPS T12 methodology guidelines",
 			Inputs: []string{"generated_mj_life", "connection_loss_frac"}, Eval: guarded("life_energy", func(x []float64) (float64, error) { return DeliveredMJ(x[0], x[1], 0) })},
@@ -179,6 +179,18 @@ var upkeepInputs = []string{"wind_kw", "solar_kw", "wind_turbine.mj", "pv_system
 // wattsPerM2 is a year's energy in MWh as mean power on an area in hectares.
 func wattsPerM2(x []float64) float64 {
 	return x[0] * units.KWhPerMWh * units.WPerKW / units.HoursPerYear / (x[1] * units.M2PerHa)
+}
+
+func above0(x []float64) float64 {
+	if x[0] > 0 {
+		return 1
+	}
+	return 0
+}
+
+func effectiveYears(name, title, degradation string) scoring.Quantity {
+	return scoring.Quantity{Name: name, Unit: "yr", Title: title, Formula: "D(T) = (1 − (1−d)^T)/d", Source: "Jordan & Kurtz 2013 for geometric ageing",
+		Inputs: []string{degradation, "life_yr"}, Eval: scoring.Guarded("life_energy", func(x []float64) (float64, error) { return EffectiveYears(x[0], x[1]) })}
 }
 
 func product(x []float64) float64 { return x[0] * x[1] }

@@ -70,6 +70,9 @@ func Quantities() []scoring.Quantity {
 		{Name: "soil_loss_peat_tc", Unit: "t C", Title: "Carbon lost from peat", Formula: "dug: area × depth × carbon × share oxidised; drained: area × emission × life; never more than the stock", Source: "IPCC 2013 Wetlands Supplement",
 			Inputs: []string{"peat_dug_ha", "peat_drained_ha", "peat_depth_m", "peat_carbon_kg_per_m3", "peat_oxidised_share", "peat_drained_tc_per_ha_yr", "life_yr"},
 			Eval: scoring.NoneIsZero(guarded("peat", func(x []float64) (float64, error) {
+				if x[0] == 0 && x[1] == 0 { // no peat is touched
+					return 0, nil
+				}
 				loss, err := Peat{DepthM: x[2], CarbonKgPerM3: x[3], ExcavatedHa: x[0], ExcavatedDepthM: x[2], OxidisedFrac: x[4],
 					DrainedHa: x[1], DrainDepthM: x[2], EmissionTCPerHaYr: x[5], DrainYears: x[6]}.Loss()
 				return loss.TotalTC, err

@@ -143,7 +143,7 @@ func newAccounts(t testing.TB, trials int) *accounts {
 			}
 			groups[group] = u
 		}
-		d := reckon.Drawn{Slot: slot, Values: make([]float64, trials)}
+		d := reckon.Drawn{Slot: slot, Values: make([]float64, trials), Shared: true}
 		for i, u := range groups[group] {
 			d.Values[i] = f.Quantile(u)
 		}

@@ -9,10 +9,14 @@ import (
 	"groundtally/scoring"
 )
 
-// Drawn is a leaf that the trials vary: its slot and its value in each trial.
+// Drawn is a leaf that the trials vary: its slot and its value in each trial. Values do not change any more once they
+// were used.
 type Drawn struct {
 	Slot   int
 	Values []float64
+	// Shared says that the same Values serve many candidates: what follows from such leaves alone is kept from one to
+	// the next.
+	Shared bool
 }
 
 // Spread is what the trials say of one quantity.
@@ -45,6 +49,7 @@ func (g *Graph) Trials(v []scoring.Value, drawn []Drawn, want []int) ([]Spread, 
 	b := benches.Get().(*bench)
 	defer benches.Put(b)
 	b.begin(g, v, drawn, want)
+	b.recall(g, drawn, n)
 	samples := b.samples(len(want), n)
 	for i, s := range want {
 		out[i].Moves = b.moves[s]
@@ -76,6 +81,7 @@ func (g *Graph) Samples(v []scoring.Value, drawn []Drawn, want []int, n int) [][
 	b := benches.Get().(*bench)
 	defer benches.Put(b)
 	b.begin(g, v, drawn, want)
+	b.recall(g, drawn, n)
 	out := make([][]scoring.Value, n)
 	rows := make([]scoring.Value, n*len(want))
 	for from := 0; from < n; from += blockTrials {
@@ -115,6 +121,10 @@ type bench struct {
 	x     [][]float64       // numbers; of mixed ones 0 where there is none
 	val   [][]scoring.Value // of mixed ones
 	own   [][]float64       // the room of x that belongs to the bench
+	of    *Graph            // whose memories these are
+	kept  []memories        // by quantity
+	calls int
+	here  []origin // by slot: where a column that candidates share comes from
 
 	need   []bool
 	in     []scoring.Value
@@ -186,7 +196,118 @@ func (b *bench) block(g *Graph, drawn []Drawn, from, to int) {
 		b.form[d.Slot], b.x[d.Slot] = numbers, d.Values[from:to]
 	}
 	for _, i := range b.hot {
-		b.quantity(g, i, to-from)
+		m := b.kept[i].now
+		slot := len(g.leaves) + i
+		switch {
+		case m != nil && m.full:
+			b.form[slot], b.x[slot] = numbers, m.col[from:to]
+		case m != nil:
+			b.quantity(g, i, to-from)
+			m.keep(b, slot, from, to)
+		default:
+			b.quantity(g, i, to-from)
+		}
+	}
+}
+
+// origin is where the column of a slot comes from: drawn values that candidates share, or a memory in one of its
+// states. The zero origin is a column of this candidate alone.
+type origin struct {
+	values *float64
+	state  int
+}
+
+// memory keeps the column of a quantity that follows from shared leaves alone, with what it was reckoned from.
+type memory struct {
+	from  []origin
+	still []scoring.Value
+	col   []float64
+	state int  // tells the columns apart that lay in the same room
+	full  bool // the column is whole
+	odd   bool // some trial gave no number
+	made  int  // call in which it was made, and the last one in which it was of use again; 0 for never
+	hit   int
+}
+
+// memories are what is kept of a quantity: neighbouring candidates are of different technologies.
+type memories struct {
+	all [3]memory
+	now *memory // for this candidate; nil where not all moving inputs are shared
+}
+
+// find gives the memory of the same inputs, else the room of the one that was of least use.
+func (ms *memories) find(b *bench, inputs []int, n int) *memory {
+	least := &ms.all[0]
+	for i := range ms.all {
+		m := &ms.all[i]
+		same := m.full && len(m.col) == n
+		for k, s := range inputs {
+			same = same && m.from[k] == b.here[s] && (b.moves[s] || alike(m.still[k], b.one[s]))
+		}
+		if same {
+			m.hit = b.calls
+			return m
+		}
+		if m.hit < least.hit || m.hit == least.hit && m.made < least.made {
+			least = m
+		}
+	}
+	m := least
+	m.from, m.still, m.col = m.from[:0], m.still[:0], sized(m.col, n)
+	for _, s := range inputs {
+		m.from, m.still = append(m.from, b.here[s]), append(m.still, b.one[s])
+	}
+	m.state++
+	m.full, m.odd, m.made, m.hit = false, false, b.calls, 0
+	return m
+}
+
+// keep takes a block into the column.
+func (m *memory) keep(b *bench, slot, from, to int) {
+	switch col := m.col[from:to]; b.form[slot] {
+	case numbers:
+		copy(col, b.x[slot][:to-from])
+	case still:
+		if m.odd = m.odd || !b.one[slot].OK(); !m.odd {
+			for t := range col {
+				col[t] = b.one[slot].X
+			}
+		}
+	default:
+		m.odd = true
+	}
+	if to == len(m.col) && !m.odd {
+		m.full = true
+	}
+}
+
+// alike compares values to the bit.
+func alike(a, b scoring.Value) bool {
+	return a.State == b.State && a.Why == b.Why && math.Float64bits(a.X) == math.Float64bits(b.X)
+}
+
+// recall finds which quantities of the candidate follow from shared leaves alone, and which of them were reckoned from
+// the same before.
+func (b *bench) recall(g *Graph, drawn []Drawn, n int) {
+	if b.of != g {
+		b.of, b.kept = g, make([]memories, len(g.quantities))
+	}
+	b.calls++
+	b.here = sized(b.here, g.Size())
+	clear(b.here)
+	for _, d := range drawn {
+		if d.Shared && n > 0 {
+			b.here[d.Slot] = origin{values: &d.Values[0]}
+		}
+	}
+	for _, i := range b.hot {
+		ms, inputs := &b.kept[i], g.inputs[i]
+		ms.now = nil
+		if slices.ContainsFunc(inputs, func(s int) bool { return b.moves[s] && b.here[s] == origin{} }) {
+			continue
+		}
+		ms.now = ms.find(b, inputs, n)
+		b.here[len(g.leaves)+i] = origin{values: &ms.now.col[0], state: ms.now.state}
 	}
 }
 
