@@ -178,3 +178,40 @@ func TestLedgerOfOneLifeIsTheReturn(t *testing.T) {
 	}
 	t.Errorf("%d candidates", seen)
 }
+
+// What is unfolded of a candidate, and what its accounts tell, is what stands in the table, for the share of demand too,
+// which rests on a table of the study.
+func TestUnfoldingAgreesWithTheTable(t *testing.T) {
+	s := smallStudy(t, 60)
+	r, a := accountsOf(t, s)
+	snap, err := s.Snapshot()
+	if err != nil {
+		t.Fatal(err)
+	}
+	told := 0
+	for i := range r.Candidates {
+		c := &r.Candidates[i]
+		if c.Status != Fitted {
+			continue
+		}
+		for _, q := range c.All() {
+			if _, inGraph := a.k.p.Graph.Slot(q.Key); !inGraph || q.State != scoring.Number {
+				continue
+			}
+			u, err := Unfold(shipped(t), snap, c, q.Key)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if u.State != scoring.Number.String() || u.Value != q.Central || a.Values(c)(q.Key).X != q.Central {
+				t.Errorf("%s, %s: the table has %v, the unfolding %s %v, the accounts %v", c.ID(), q.Key, q.Central, u.State, u.Value, a.Values(c)(q.Key))
+			}
+			if q.Key == "demand_share_frac" {
+				told++
+			}
+		}
+		if told == 3 {
+			return
+		}
+	}
+	t.Errorf("the share of demand was compared %d times", told)
+}

@@ -17,6 +17,7 @@ type Columns struct {
 	blocks []*block
 	forms  []form // by number; the first stands for no entry
 	known  map[form]uint32
+	demand fact // yearly use of the district, as a table tells it; of use to what reckons a candidate anew
 }
 
 // blockRows is the number of rows of a block.

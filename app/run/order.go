@@ -612,6 +612,9 @@ func (k *reckoner) vector(c *Candidate) []scoring.Value {
 			v[slot] = scoring.Value{State: l.State, X: l.X, Why: l.Why}
 		}
 	}
+	if slot, ok := k.p.Graph.Slot("demand_mwh_per_yr"); ok && c.columns != nil && c.columns.demand.source != "" {
+		v[slot] = c.columns.demand.v // which a reckoner without the study's tables does not know
+	}
 	k.cover(v)
 	k.p.Graph.Central(v)
 	return v

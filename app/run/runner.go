@@ -515,6 +515,7 @@ func (r *runner) run(ctx context.Context) (*Results, error) {
 	columns := make([]map[bool]*Columns, len(r.plans)) // a plant without room has few of the keys
 	for i := range columns {
 		columns[i] = map[bool]*Columns{true: newColumns(r.k.keys, r.k.p.facts), false: newColumns(r.k.keys, r.k.p.facts)}
+		columns[i][true].demand = r.k.demand
 	}
 	limits := limitsOf(w.snap, r.k.keys)
 	var writing background

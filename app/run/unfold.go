@@ -115,8 +115,8 @@ func Unfold(p *Params, snap *study.Snapshot, c *Candidate, key string) (*Unfoldi
 					}
 				}
 			}
-			if name == "demand_mwh_per_yr" && k.demand.source != "" {
-				u.Source = k.demand.source
+			if name == "demand_mwh_per_yr" && c.columns != nil && c.columns.demand.source != "" {
+				u.Source = c.columns.demand.source
 			}
 		}
 		return u, nil

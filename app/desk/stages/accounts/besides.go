@@ -55,7 +55,7 @@ func (t *besideTable) update() {
 		}
 		t.rows.Add(widgets.NewText(words))
 	}
-	heads := []string{"", "Nothing", "Saving", "Roofs"}
+	heads := []string{"", "", "Nothing", "Saving", "Roofs"}
 	if chosen != nil {
 		heads = append(heads, core.Letter(0)+" "+chosen.Site)
 	}
@@ -74,11 +74,7 @@ func (t *besideTable) update() {
 				t.rows.Add(widgets.Part(accountTitle(a)))
 				first = false
 			}
-			title := k.Title
-			if u := present.Unit(k.Unit); u != "" {
-				title += ", " + u
-			}
-			t.rows.Add(besideRow(append([]string{title}, cells...), false, k.Sentence))
+			t.rows.Add(besideRow(append([]string{k.Title, present.Unit(k.Unit)}, cells...), false, k.Sentence))
 		}
 	}
 	t.rows.Refresh()
@@ -108,16 +104,16 @@ func (t *besideTable) cells(all []run.Alternative, chosen *run.Candidate, key st
 	return out, told
 }
 
-// besideRow lays a title and figures out in columns.
+// besideRow lays a title, its unit and figures out in columns.
 func besideRow(texts []string, bold bool, hint string) fyne.CanvasObject {
-	widths := []float32{0}
+	widths := []float32{0, 78}
 	title := widgets.NewLine(texts[0])
 	title.Hint = hint
-	objects := []fyne.CanvasObject{title}
-	for _, text := range texts[1:] {
+	objects := []fyne.CanvasObject{title, widgets.Faint(texts[1])}
+	for _, text := range texts[2:] {
 		l := widgets.NewLine(text)
 		l.Align, l.Bold = fyne.TextAlignTrailing, bold
-		widths, objects = append(widths, 92), append(objects, l)
+		widths, objects = append(widths, 76), append(objects, l)
 	}
 	return widgets.Fields(6, widths, objects...)
 }

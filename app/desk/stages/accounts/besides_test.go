@@ -29,8 +29,8 @@ func TestBesideTable(t *testing.T) {
 					texts = append(texts, l.Text)
 				}
 			}
-			if len(texts) > 1 {
-				out[texts[0]] = texts[1:]
+			if len(texts) > 2 {
+				out[texts[0]] = texts[2:]
 			}
 		}
 		return out
@@ -38,7 +38,7 @@ func TestBesideTable(t *testing.T) {
 	r := b.Core.View().Results
 	saving, _ := r.Alternatives[0].Consequence("delivered_mwh_per_yr")
 	sealed, _ := r.Alternatives[1].Consequence("delivered_mwh_per_yr")
-	title := b.Core.Info("delivered_mwh_per_yr").Title + ", MWh/yr"
+	title := b.Core.Info("delivered_mwh_per_yr").Title
 	if got := rows()[title]; len(got) < 3 || got[0] != "none" || got[1] != present.Cell(saving) || got[2] != present.Cell(sealed) {
 		t.Fatalf("%s: %v, want %s and %s", title, got, present.Cell(saving), present.Cell(sealed))
 	}

@@ -162,6 +162,12 @@ func TestWhyNothingIsCompared(t *testing.T) {
 	}
 	b.Core.Choose(run.NoSite, ids[0])
 	says("A is doing nothing")
+	b.Core.Choose(ids...)
+	if !p.duel.work.running {
+		t.Fatal("the pair is not compared anew")
+	}
+	b.Core.Choose(ids[0], run.NoSite) // an answer that comes too late is dropped
+	says("B is doing nothing")
 	cands := b.Core.View().Results.Candidates
 	at := slices.IndexFunc(cands, func(c run.Candidate) bool { return c.Status != run.Fitted })
 	if at < 0 {
