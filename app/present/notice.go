@@ -175,6 +175,7 @@ var sentences = map[string]string{
 	"layer_empty":                    "the file has no feature.",
 	"coordinates_not_degrees":        "the coordinates are not degrees. Say in which coordinate system they are, with --crs.",
 	"peat_touched":                   "the plant stands on mapped peat. Peat raises a flag whatever the score.",
+	"soil_by_class":                  "soil carbon is the guidelines' reference stock for the climate zone and soil class (climate.zone, climate.soil_method), as the soil layer gives no stock; such stocks are off by up to 90 %.",
 	"old_habitat_touched":            "the plant touches habitat that the layer calls irreplaceable. It raises a flag whatever the score.",
 	"default_decides":                "place {place} hangs on a row of the shipped inventory: with {row} at about {at} {unit} in place of {central} (its range is {low} to {high}), all else the same, {below} would come before {above}. Enter a value of your own if you have one.",
 	"return_scale":                   "{first} stands first because a ratio of energy return is weighed on a straight scale; with the share left after repayment (net_share) in its place {other} would be first.",

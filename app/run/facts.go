@@ -436,9 +436,25 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 	}
 
 	// Soil: the mean stock under the plant's ground, ploughland and grass under the fence.
-	soil, err := around.overlap(e, g, "soil", func(l *layer, i int) (float64, bool) { return l.number(i, "organic_carbon_stock", "t C/ha") })
+	byClass := false
+	soil, err := around.overlap(e, g, "soil", func(l *layer, i int) (float64, bool) {
+		if x, ok := l.number(i, "organic_carbon_stock", "t C/ha"); ok {
+			return x, true
+		}
+		x, ok := w.referenceStock(l.text(i, "soil_class"))
+		if use, said := l.number(i, "land_use_factor", "1"); said {
+			x *= use
+		}
+		byClass = byClass || ok
+		return x, ok
+	})
 	if err != nil {
 		return none, nil, err
+	}
+	f.num("soil_by_class", 0, "soil layer")
+	if byClass {
+		f.num("soil_by_class", 1, "soil layer")
+		notices["soil_by_class"] = true
 	}
 	src = layerNames(w.byRole["soil"])
 	switch {
@@ -473,6 +489,18 @@ func (w *world) measureFacts(e *overlay.Engine, around *pieces, o option, s site
 		}
 	}
 	return tracks, habitat, w.peatFacts(e, around, g, way, groundHa, f, notices)
+}
+
+// soilClasses are the classes of the guidelines by the words that a soil layer may use for them: their own names and
+// the reference soil groups that belong to one class alone.
+var soilClasses = map[string]string{"hac": "hac", "high-activity clay": "hac", "lac": "lac", "low-activity clay": "lac", "sandy": "sandy", "arenosol": "sandy", "spodic": "spodic", "podzol": "spodic",
+	"volcanic": "volcanic", "andosol": "volcanic", "wetland": "wetland", "gleysol": "wetland"}
+
+// referenceStock gives the reference stock of the guidelines for the study's climate zone and a soil class, t C/ha; ok
+// is false for a class that is none of theirs and for a pair that they leave out.
+func (w *world) referenceStock(class string) (float64, bool) {
+	v, err := w.p.Soil.Lookup("reference", w.snap.Text("climate.soil_method"), strings.ReplaceAll(w.snap.Text("climate.zone"), " ", "_"), soilClasses[strings.ToLower(strings.TrimSpace(class))])
+	return v.Value, err == nil
 }
 
 // quality01 turns a grade into a share from 0 to 1: the best grade is 1, and the worst still counts as

@@ -99,6 +99,7 @@ var factLeaves = []scoring.Leaf{
 	{Name: "farmland_quality_ha", Unit: "ha", Title: "Farmland, weighted by quality"},
 	{Name: "farmland_lost_ha", Unit: "ha", Title: "Farmland out of use"},
 	{Name: "soil_stock_tc_per_ha", Unit: "t C/ha", Title: "Soil carbon under the plant's ground"},
+	{Name: "soil_by_class", Unit: "1", Title: "Whether soil carbon goes by soil class, as the layer gives no stock"},
 	{Name: "peat_ha", Unit: "ha", Title: "Peat touched"},
 	{Name: "peat_share", Unit: "1", Title: "Share of the plant's ground on peat"},
 	{Name: "peat_depth_m", Unit: "m", Title: "Mean depth of the peat touched"},

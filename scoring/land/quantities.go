@@ -35,8 +35,15 @@ func Quantities() []scoring.Quantity {
 		{Name: "crop_energy_forgone_gj_per_yr", Unit: "GJ/yr", Title: "Harvest given up", Formula: "farmland out of use × yield × energy of wheat, as long as no crop is given", Source: "yield: FAO statistics, order of magnitude; energy 334 kcal/100 g",
 			Inputs: []string{"farmland_lost_ha", "crop_wheat_yield_t_per_ha", "crop_wheat_energy_mj_per_kg"}, Eval: guarded("crop", func(x []float64) (float64, error) { return CropEnergyGJPerYr(x[0], 0, x[1], x[2]) })},
 
+		{Name: "soil_counted_tc_per_ha", Unit: "t C/ha", Title: "Soil carbon counted", Formula: "stock, times soil_reference_ratio where it goes by soil class", Source: "IPCC 2006 Guidelines vol. 4, Tier 1",
+			Inputs: []string{"soil_stock_tc_per_ha", "soil_by_class", "soil_reference_ratio"}, Eval: plain(func(x []float64) float64 {
+				if x[1] == 0 {
+					return x[0]
+				}
+				return x[0] * x[2]
+			})},
 		{Name: "soil_loss_mineral_tc", Unit: "t C", Title: "Carbon lost from mineral soil", Formula: "stock × (sealed ground × f_sealed + disturbed ground × f_restored + fenced grassland × f_panels), off peat", Source: "stock: soil layer; loss shares: assumptions of this program",
-			Inputs: []string{"soil_stock_tc_per_ha", "footprint_permanent_ha", "footprint_temporary_ha", "fence_grass_ha", "peat_share", "loss_sealed_kept_frac", "loss_restored_frac", "loss_pv_grassland_frac", "pv_sealed_frac"},
+			Inputs: []string{"soil_counted_tc_per_ha", "footprint_permanent_ha", "footprint_temporary_ha", "fence_grass_ha", "peat_share", "loss_sealed_kept_frac", "loss_restored_frac", "loss_pv_grassland_frac", "pv_sealed_frac"},
 			Eval: scoring.NoneIsZero(guarded("soil", func(x []float64) (float64, error) {
 				off := 1 - x[4]
 				sum := Change{}
@@ -80,7 +87,7 @@ func Quantities() []scoring.Quantity {
 		{Name: "soil_carbon_loss_tc", Unit: "t C", Title: "Soil carbon lost", Formula: "mineral soil + peat", Source: "IPCC 2006 Guidelines vol. 4, Tier 1 form",
 			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1] })},
 		{Name: "soil_carbon_gain_tc", Unit: "t C", Title: "Soil carbon gained", Formula: "fenced ploughland × stock/F_LU × (1 − F_LU) × shade factor × min(1, T/20)", Source: "IPCC 2019 Refinement vol. 4, F_LU of long-term cropland",
-			Inputs: []string{"fence_arable_ha", "soil_stock_tc_per_ha", "cropland_use_factor", "gain_pv_shade_multiplier", "life_yr", "soc_transition_yr", "peat_share"},
+			Inputs: []string{"fence_arable_ha", "soil_counted_tc_per_ha", "cropland_use_factor", "gain_pv_shade_multiplier", "life_yr", "soc_transition_yr", "peat_share"},
 			Eval: scoring.Eval{Numbers: func(x []float64) (float64, bool) {
 				if x[0] == 0 {
 					return 0, false

@@ -199,7 +199,7 @@ func facts(i int) map[string]scoring.Value {
 		"plant_ground_ha": num(fence + 20*n), "fence_grass_ha": num(fence * 0.3), "fence_arable_ha": num(fence * 0.7),
 		"wind_p50_mwh": num(windKW * (2 + r.Float64())), "solar_p50_mwh": num(solarKW * (0.9 + 0.3*r.Float64())),
 		"wind_yield_sigma": num(0.11), "solar_yield_sigma": num(0.06), "wind_yield_error": num(1), "solar_yield_error": num(1),
-		"track_counted_km": num(0.2 + 0.4*n), "farmland_lost_ha": num(fence * 0.7), "soil_stock_tc_per_ha": num(50 + 40*r.Float64()),
+		"track_counted_km": num(0.2 + 0.4*n), "farmland_lost_ha": num(fence * 0.7), "soil_stock_tc_per_ha": num(50 + 40*r.Float64()), "soil_by_class": num(0),
 		"peat_share": num(0), "peat_depth_m": num(0), "forest_ha": num(r.Float64()),
 		"connection_route_km": num(1 + 9*r.Float64()), "connection_route_loss_frac": num(0.005 + 0.03*r.Float64()), "connection_route_rise_frac": num(0.01),
 		"connection_spare_kw": num(5000 + 20000*r.Float64()), "curtailed_share": num(0), "circuits_lv": num(0), "circuits_mv": num(1), "circuits_hv": num(0),
