@@ -15,9 +15,27 @@ type Quantity struct {
 
 // Eval is a pure function of a quantity's inputs. Values serves any states; Numbers, where there is one,
 // gives the same when all inputs are numbers, and ok false where Values must be asked.
+//
+// Pairs and Zero say where inputs do not matter, so that trials need not vary them: with Pairs above 0 input Pairs+i is
+// only ever a factor of input i, and where all inputs in Zero are zero the value is zero whatever the others are.
 type Eval struct {
 	Values  func(in []Value) Value
 	Numbers func(x []float64) (y float64, ok bool)
+	Pairs   int
+	Zero    []int
+}
+
+// Where gives an evaluation that is zero where the given inputs are.
+func (e Eval) Where(zero ...int) Eval {
+	e.Zero = zero
+	return e
+}
+
+// Sum is the evaluation of Dot.
+func Sum(n int) Eval {
+	e := Plain(Dot(n))
+	e.Pairs = n
+	return e
 }
 
 // Custom makes an Eval of a function that looks at the states itself.
@@ -126,7 +144,7 @@ func Guarded(code string, f func(x []float64) (float64, error)) Eval {
 
 // NoneIsZero wraps an evaluation in which an effect that does not arise adds nothing.
 func NoneIsZero(e Eval) Eval {
-	return Eval{Numbers: e.Numbers, Values: func(in []Value) Value {
+	return Eval{Numbers: e.Numbers, Pairs: e.Pairs, Zero: e.Zero, Values: func(in []Value) Value {
 		var buf [24]Value
 		y := buf[:0]
 		for _, v := range in {

@@ -14,10 +14,10 @@ func Quantities() []scoring.Quantity {
 	plain, guarded := scoring.Plain, scoring.Guarded
 	return []scoring.Quantity{
 		{Name: "ghg_generator_kg", Unit: "kg CO2e", Title: "Greenhouse gas of machines and panels", Formula: "Σ row × kW: wind_turbine, pv_system_mono, and what tracking, vertical or elevated rows add", Source: "inventory",
-			Inputs: []string{"wind_kw", "solar_kw", "tracking_kw", "vertical_kw", "elevated_kw", "wind_turbine.kgco2e", "pv_system_mono.kgco2e", "pv_tracker_surcharge.kgco2e", "pv_vertical_surcharge.kgco2e", "pv_elevated_surcharge.kgco2e"}, Eval: plain(scoring.Dot(5))},
+			Inputs: []string{"wind_kw", "solar_kw", "tracking_kw", "vertical_kw", "elevated_kw", "wind_turbine.kgco2e", "pv_system_mono.kgco2e", "pv_tracker_surcharge.kgco2e", "pv_vertical_surcharge.kgco2e", "pv_elevated_surcharge.kgco2e"}, Eval: scoring.Sum(5)},
 		{Name: "ghg_works_kg", Unit: "kg CO2e", Title: "Greenhouse gas of pads, tracks, fence and connection", Formula: "Σ row × amount", Source: "inventory",
 			Inputs: []string{"turbines", "track_counted_km", "solar_kw", "cable_lv_km", "cable_mv_km", "cable_hv_km", "transformer_kva", "switchgear_count",
-				"wind_crane_pad.kgco2e", "track.kgco2e", "pv_fence.kgco2e", "cable_lv.kgco2e", "cable_mv.kgco2e", "cable_hv.kgco2e", "transformer.kgco2e", "switchgear.kgco2e"}, Eval: plain(scoring.Dot(8))},
+				"wind_crane_pad.kgco2e", "track.kgco2e", "pv_fence.kgco2e", "cable_lv.kgco2e", "cable_mv.kgco2e", "cable_hv.kgco2e", "transformer.kgco2e", "switchgear.kgco2e"}, Eval: scoring.Sum(8)},
 		{Name: "ghg_running_kg", Unit: "kg CO2e", Title: "Greenhouse gas of upkeep and end of life", Formula: "upkeep share × machines × life + dismantling share × machines + inverter change × kW_ac + restoration × ha", Source: "inventory",
 			Inputs: []string{"wind_kw", "solar_kw", "wind_turbine.kgco2e", "pv_system_mono.kgco2e", "wind_upkeep.kgco2e", "pv_upkeep.kgco2e", "life_yr", "wind_decommissioning.kgco2e", "pv_decommissioning.kgco2e",
 				"solar_ac_kw", "pv_inverter_replacement.kgco2e", "footprint_direct_ha", "restoration.kgco2e"},

@@ -33,7 +33,7 @@ func Quantities() []scoring.Quantity {
 				return OccupationHaYr([]Use{{AreaHa: x[0], Years: x[1]}, {AreaHa: x[2], Years: x[3]}})
 			})},
 		{Name: "crop_energy_forgone_gj_per_yr", Unit: "GJ/yr", Title: "Harvest given up", Formula: "farmland out of use × yield × energy of wheat, as long as no crop is given", Source: "yield: FAO statistics, order of magnitude; energy 334 kcal/100 g",
-			Inputs: []string{"farmland_lost_ha", "crop_wheat_yield_t_per_ha", "crop_wheat_energy_mj_per_kg"}, Eval: guarded("crop", func(x []float64) (float64, error) { return CropEnergyGJPerYr(x[0], 0, x[1], x[2]) })},
+			Inputs: []string{"farmland_lost_ha", "crop_wheat_yield_t_per_ha", "crop_wheat_energy_mj_per_kg"}, Eval: guarded("crop", func(x []float64) (float64, error) { return CropEnergyGJPerYr(x[0], 0, x[1], x[2]) }).Where(0)},
 
 		{Name: "soil_counted_tc_per_ha", Unit: "t C/ha", Title: "Soil carbon counted", Formula: "stock, times soil_reference_ratio where it goes by soil class", Source: "IPCC 2006 Guidelines vol. 4, Tier 1",
 			Inputs: []string{"soil_stock_tc_per_ha", "soil_by_class", "soil_reference_ratio"}, Eval: plain(func(x []float64) float64 {
@@ -47,8 +47,11 @@ func Quantities() []scoring.Quantity {
 			Eval: scoring.NoneIsZero(guarded("soil", func(x []float64) (float64, error) {
 				off := 1 - x[4]
 				sum := Change{}
-				for _, p := range []struct{ ha, frac float64 }{{x[1] * off, x[5]}, {x[2] * off, x[6]}, {x[3] * off * (1 - x[8]), x[7]}} {
-					c, err := DisturbanceChange(p.ha, x[0], p.frac)
+				for _, p := range [3][2]float64{{x[1] * off, x[5]}, {x[2] * off, x[6]}, {x[3] * off * (1 - x[8]), x[7]}} {
+					if p[0] == 0 {
+						continue
+					}
+					c, err := DisturbanceChange(p[0], x[0], p[1])
 					if err != nil {
 						return 0, err
 					}
@@ -73,7 +76,7 @@ func Quantities() []scoring.Quantity {
 					return 0, err
 				}
 				return strips + float64(x[2]*x[0]*ring) + float64(x[3]*x[0]*(1-x[5])), nil
-			}))},
+			})).Where(0)},
 		{Name: "soil_loss_peat_tc", Unit: "t C", Title: "Carbon lost from peat", Formula: "dug: area × depth × carbon × share oxidised; drained: area × emission × life; never more than the stock", Source: "IPCC 2013 Wetlands Supplement",
 			Inputs: []string{"peat_dug_ha", "peat_drained_ha", "peat_depth_m", "peat_carbon_kg_per_m3", "peat_oxidised_share", "peat_drained_tc_per_ha_yr", "life_yr"},
 			Eval: scoring.NoneIsZero(guarded("peat", func(x []float64) (float64, error) {
@@ -83,7 +86,7 @@ func Quantities() []scoring.Quantity {
 				loss, err := Peat{DepthM: x[2], CarbonKgPerM3: x[3], ExcavatedHa: x[0], ExcavatedDepthM: x[2], OxidisedFrac: x[4],
 					DrainedHa: x[1], DrainDepthM: x[2], EmissionTCPerHaYr: x[5], DrainYears: x[6]}.Loss()
 				return loss.TotalTC, err
-			}))},
+			})).Where(0, 1)},
 		{Name: "soil_carbon_loss_tc", Unit: "t C", Title: "Soil carbon lost", Formula: "mineral soil + peat", Source: "IPCC 2006 Guidelines vol. 4, Tier 1 form",
 			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc"}, Eval: plain(func(x []float64) float64 { return x[0] + x[1] })},
 		{Name: "soil_carbon_gain_tc", Unit: "t C", Title: "Soil carbon gained", Formula: "fenced ploughland × stock/F_LU × (1 − F_LU) × shade factor × min(1, T/20)", Source: "IPCC 2019 Refinement vol. 4, F_LU of long-term cropland",
@@ -103,7 +106,7 @@ func Quantities() []scoring.Quantity {
 				})).Values(in)
 			}}},
 		{Name: "biomass_carbon_loss_tc", Unit: "t C", Title: "Plant carbon lost", Formula: "forest cleared × dry matter × (1 + root share) × carbon share", Source: "IPCC 2006 Guidelines vol. 4 tables 4.4 and 4.7",
-			Inputs: []string{"forest_ha", "forest_biomass_tdm_per_ha", "forest_root_ratio", "biomass_carbon_frac"}, Eval: guarded("biomass", func(x []float64) (float64, error) { return ForestCarbonTC(x[0], x[1], x[2], x[3]) })},
+			Inputs: []string{"forest_ha", "forest_biomass_tdm_per_ha", "forest_root_ratio", "biomass_carbon_frac"}, Eval: guarded("biomass", func(x []float64) (float64, error) { return ForestCarbonTC(x[0], x[1], x[2], x[3]) }).Where(0)},
 		{Name: "regrowth_yr", Unit: "yr", Title: "Years to grow back", Formula: "the longer of: peat carbon lost / ((peat dug + drained) × growth of a bog); 20 yr for mineral soil", Source: "Nayak et al. 2008 for the growth of a bog; IPCC 2006 for the 20 yr",
 			Inputs: []string{"soil_loss_mineral_tc", "soil_loss_peat_tc", "peat_dug_ha", "peat_drained_ha", "regrowth_peat_tc_per_ha_yr", "soc_transition_yr"}, Eval: scoring.NoneIsZero(scoring.Eval{Numbers: func(x []float64) (float64, bool) {
 				mineral, peat := x[0], x[1]

@@ -303,7 +303,11 @@ func (b *bench) recall(g *Graph, drawn []Drawn, n int) {
 	for _, i := range b.hot {
 		ms, inputs := &b.kept[i], g.inputs[i]
 		ms.now = nil
-		if slices.ContainsFunc(inputs, func(s int) bool { return b.moves[s] && b.here[s] == origin{} }) {
+		shared := true
+		for _, s := range inputs {
+			shared = shared && (!b.moves[s] || b.here[s] != origin{})
+		}
+		if !shared {
 			continue
 		}
 		ms.now = ms.find(b, inputs, n)
@@ -343,8 +347,19 @@ func (b *bench) quantity(g *Graph, i, n int) {
 		case mixed:
 			plain = false
 		}
-		b.in[k] = scoring.Value{}
+		b.in[k], b.arg[k] = scoring.Value{}, 0
+		if n := q.Eval.Pairs; k >= n && n > 0 && b.nought(inputs[k-n]) && b.form[s] == numbers {
+			continue // a factor of nothing
+		}
 		b.at = append(b.at, k)
+	}
+	if zero := len(q.Eval.Zero) > 0 && plain && !missing; zero {
+		for _, k := range q.Eval.Zero {
+			zero = zero && b.nought(inputs[k])
+		}
+		if zero {
+			b.at = b.at[:0]
+		}
 	}
 	// What has Numbers is made by scoring.Plain, Guarded or NoneIsZero: missing data decide the answer
 	// whatever the numbers are, and an effect that does not arise either decides it too or counts as zero.
@@ -368,6 +383,12 @@ func (b *bench) quantity(g *Graph, i, n int) {
 		return
 	}
 	b.slow(&q.Eval, inputs, slot, out, first)
+}
+
+// nought reports whether a slot is zero in every trial.
+func (b *bench) nought(slot int) bool {
+	v := b.one[slot]
+	return b.form[slot] == still && v.State == scoring.Number && v.X == 0
 }
 
 // fast fills a column with numbers from functions of numbers and gives how many trials it did: all, or those
