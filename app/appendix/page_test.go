@@ -9,6 +9,7 @@ import (
 	"os"
 	"path/filepath"
 	"regexp"
+	"slices"
 	"strconv"
 	"strings"
 	"sync"
@@ -412,6 +413,49 @@ func TestStampCompares(t *testing.T) {
 	inputs.Code.Inputs, inputs.Code.Check = "other", "check three"
 	if _, diff := stamp.Compare(inputs, "v"); diff == nil || !strings.Contains(diff.Where, "inputs or settings") {
 		t.Errorf("other inputs with the same results: %+v", diff)
+	}
+}
+
+// What stands beside the candidates, what gates hold back and the habitat touched are part of the stamp.
+func TestStampHoldsAllThatIsCompared(t *testing.T) {
+	in := input(t)
+	with := func(change func(r *run.Results)) *run.Results {
+		r := *in.Results
+		r.Candidates, r.Voices = slices.Clone(r.Candidates), slices.Clone(r.Voices)
+		r.Candidates[0].Habitat = &run.Habitat{Kinds: []run.HabitatKind{{Class: "heath", Irreplaceable: "no", LostHa: 0.123456789012}}, Pieces: &run.HabitatPieces{Before: 1, After: 2, LargestBeforeHa: 3, LargestAfterHa: 2}}
+		r.Voices[0].HeldBack = []run.Held{{Site: "Z", Plant: "wind", Gates: []string{"peat"}, Place: 4}}
+		r.Voices[0].Beside = slices.Clone(r.Voices[0].Beside)
+		r.Code.Results, r.Code.Check = "other", "other"
+		change(&r)
+		return &r
+	}
+	s := appendix.NewStamp(with(func(*run.Results) {}), in.Version)
+	fresh := with(func(r *run.Results) { r.Candidates[0].Habitat.Kinds[0].LostHa *= 1 + 1e-9 })
+	fresh.Code.Results, fresh.Code.Check = "another", "another"
+	if verdict, diff := s.Compare(fresh, in.Version); verdict != "agrees" || diff != nil {
+		t.Errorf("results a billionth off: %q, %+v", verdict, diff)
+	}
+	if len(in.Results.Voices[0].Beside) == 0 {
+		t.Fatal("nothing stands beside the candidates")
+	}
+	for _, c := range []struct {
+		name, where string
+		change      func(r *run.Results)
+	}{
+		{"an area of habitat", "habitat", func(r *run.Results) { r.Candidates[0].Habitat.Kinds[0].LostHa *= 1.001 }},
+		{"a class of habitat", "habitat", func(r *run.Results) { r.Candidates[0].Habitat.Kinds[0].Class = "bog" }},
+		{"a piece of habitat", "habitat", func(r *run.Results) { r.Candidates[0].Habitat.Pieces.After = 3 }},
+		{"no habitat", "habitat", func(r *run.Results) { r.Candidates[0].Habitat = nil }},
+		{"a place without gates", "held back", func(r *run.Results) { r.Voices[0].HeldBack[0].Place = 5 }},
+		{"nothing held back", "held back", func(r *run.Results) { r.Voices[0].HeldBack = nil }},
+		{"a score beside", "alternative", func(r *run.Results) { r.Voices[0].Beside[0].Score += 0.01 }},
+		{"nothing beside", "alternative", func(r *run.Results) { r.Voices[0].Beside = nil }},
+	} {
+		fresh := with(c.change)
+		fresh.Code.Results, fresh.Code.Check = "another", "another"
+		if verdict, diff := s.Compare(fresh, in.Version); diff == nil || !strings.Contains(diff.Where, c.where) || diff.Old == diff.New {
+			t.Errorf("%s: %q, %+v", c.name, verdict, diff)
+		}
 	}
 }
 

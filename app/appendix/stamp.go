@@ -39,11 +39,12 @@ type values struct {
 }
 
 type stampedOne struct {
-	Site         string   `json:"s"`
-	Plant        string   `json:"p"`
-	Status       string   `json:"st"`
-	Turbines     *int     `json:"t,omitempty"` // nil without a fit
-	Consequences []figure `json:"c"`
+	Site         string       `json:"s"`
+	Plant        string       `json:"p"`
+	Status       string       `json:"st"`
+	Turbines     *int         `json:"t,omitempty"` // nil without a fit
+	Consequences []figure     `json:"c"`
+	Habitat      *run.Habitat `json:"h,omitempty"`
 }
 
 // figure is one consequence: which key, its state, and its numbers or the reason in their place.
@@ -57,8 +58,17 @@ type figure struct {
 }
 
 type stampedVoices struct {
-	Voice string       `json:"voice"`
-	Order []stampedRow `json:"order"`
+	Voice  string          `json:"voice"`
+	Order  []stampedRow    `json:"order"`
+	Held   []run.Held      `json:"held,omitempty"`
+	Beside []stampedBeside `json:"beside,omitempty"`
+}
+
+type stampedBeside struct {
+	ID    string      `json:"i"`
+	Why   string      `json:"w,omitempty"`
+	Place int         `json:"p,omitempty"`
+	Score json.Number `json:"x"`
 }
 
 type stampedRow struct {
@@ -86,7 +96,7 @@ func stampedValues(r *run.Results) values {
 	at := map[string]int{}
 	for i := range r.Candidates {
 		c := &r.Candidates[i]
-		one := stampedOne{Site: c.Site, Plant: c.Plant, Status: c.Status}
+		one := stampedOne{Site: c.Site, Plant: c.Plant, Status: c.Status, Habitat: c.Habitat}
 		if c.Fit != nil {
 			n := len(c.Fit.Turbines)
 			one.Turbines = &n
@@ -112,7 +122,10 @@ func stampedValues(r *run.Results) values {
 		v.Candidates = append(v.Candidates, one)
 	}
 	for _, o := range r.Voices {
-		s := stampedVoices{Voice: o.Voice}
+		s := stampedVoices{Voice: o.Voice, Held: o.HeldBack}
+		for _, b := range o.Beside {
+			s.Beside = append(s.Beside, stampedBeside{ID: b.ID, Why: b.Why, Place: b.Place, Score: nine(b.Score)})
+		}
 		for _, row := range o.Order {
 			s.Order = append(s.Order, stampedRow{Site: row.Site, Plant: row.Plant, Tier: row.Tier, Score: nine(row.Score)})
 		}
@@ -185,7 +198,7 @@ func (s *Stamp) Results() (*run.Results, error) {
 func (v values) results(code run.Code) (*run.Results, error) {
 	out := &run.Results{Code: code}
 	for _, one := range v.Candidates {
-		c := run.Candidate{Site: one.Site, Plant: one.Plant, Status: one.Status}
+		c := run.Candidate{Site: one.Site, Plant: one.Plant, Status: one.Status, Habitat: one.Habitat}
 		if one.Turbines != nil {
 			if *one.Turbines < 0 || *one.Turbines > 1_000_000 {
 				return nil, fmt.Errorf("%s: %d turbines", c.ID(), *one.Turbines)
@@ -220,7 +233,14 @@ func (v values) results(code run.Code) (*run.Results, error) {
 		out.Candidates = append(out.Candidates, c)
 	}
 	for _, s := range v.Voices {
-		o := run.VoiceOrder{Voice: s.Voice}
+		o := run.VoiceOrder{Voice: s.Voice, HeldBack: s.Held}
+		for _, b := range s.Beside {
+			score, err := b.Score.Float64()
+			if err != nil {
+				return nil, fmt.Errorf("voice %s, %s: %w", s.Voice, b.ID, err)
+			}
+			o.Beside = append(o.Beside, run.Beside{ID: b.ID, Why: b.Why, Place: b.Place, Score: score})
+		}
 		for _, r := range s.Order {
 			score, err := r.Score.Float64()
 			if err != nil {

@@ -3,6 +3,8 @@ package run
 import (
 	"fmt"
 	"math"
+	"slices"
+	"strings"
 
 	"groundtally/scoring"
 )
@@ -49,10 +51,8 @@ func differ(a, b *Results) *Difference {
 		if d := differHeld(v, u); d != nil {
 			return d
 		}
-		for j, b := range v.Beside {
-			if c := u.Beside[j]; b.Why != c.Why || !near(b.Score, c.Score) || b.Place != c.Place {
-				return &Difference{Where: fmt.Sprintf("voice %s, %s", v.Voice, b.Title), Old: fmt.Sprint(b.Why, " ", b.Score, ", place ", b.Place), New: fmt.Sprint(c.Why, " ", c.Score, ", place ", c.Place)}
-			}
+		if d := differBeside(v, u); d != nil {
+			return d
 		}
 	}
 	return nil
@@ -65,6 +65,18 @@ func differHeld(a, b VoiceOrder) *Difference {
 	for i, h := range a.HeldBack {
 		if g := b.HeldBack[i]; h.ID() != g.ID() || h.Place != g.Place {
 			return &Difference{Where: fmt.Sprintf("voice %s, held back, number %d", a.Voice, i+1), Old: fmt.Sprint(h.ID(), ", place ", h.Place), New: fmt.Sprint(g.ID(), ", place ", g.Place)}
+		}
+	}
+	return nil
+}
+
+func differBeside(a, b VoiceOrder) *Difference {
+	if len(a.Beside) != len(b.Beside) {
+		return &Difference{Where: "voice " + a.Voice + ", alternatives", Old: fmt.Sprint(len(a.Beside)), New: fmt.Sprint(len(b.Beside))}
+	}
+	for i, x := range a.Beside {
+		if y := b.Beside[i]; x.ID != y.ID || x.Why != y.Why || !near(x.Score, y.Score) || x.Place != y.Place {
+			return &Difference{Where: fmt.Sprintf("voice %s, alternative %s", a.Voice, x.ID), Old: fmt.Sprint(x.Why, " ", x.Score, ", place ", x.Place), New: fmt.Sprint(y.ID, " ", y.Why, " ", y.Score, ", place ", y.Place)}
 		}
 	}
 	return nil
@@ -94,23 +106,40 @@ func differCandidate(a, b *Candidate) *Difference {
 			return &Difference{Where: at + ", " + q.Key, Old: fmt.Sprint(q.Low, " ", q.Central, " ", q.High), New: fmt.Sprint(p.Low, " ", p.Central, " ", p.High)}
 		}
 	}
-	if x, y := a.Habitat.roughly(), b.Habitat.roughly(); x != y {
-		return &Difference{Where: at + ", habitat", Old: x, New: y}
+	if !sameHabitat(a.Habitat, b.Habitat) {
+		return &Difference{Where: at + ", habitat", Old: a.Habitat.String(), New: b.Habitat.String()}
 	}
 	return nil
 }
 
-// roughly writes the habitat touched, to a square metre.
-func (h *Habitat) roughly() string {
+// sameHabitat compares the habitat touched, which may be nil for none.
+func sameHabitat(a, b *Habitat) bool {
+	if a == nil || b == nil {
+		return a == b
+	}
+	same := func(x, y HabitatKind) bool {
+		ok := near(x.LostHa, y.LostHa) && near(x.EdgeHa, y.EdgeHa)
+		x.LostHa, x.EdgeHa, y.LostHa, y.EdgeHa = 0, 0, 0, 0
+		return ok && x == y
+	}
+	if !slices.EqualFunc(a.Kinds, b.Kinds, same) || (a.Pieces == nil) != (b.Pieces == nil) {
+		return false
+	}
+	p, q := a.Pieces, b.Pieces
+	return p == nil || p.Before == q.Before && p.After == q.After && near(p.LargestBeforeHa, q.LargestBeforeHa) && near(p.LargestAfterHa, q.LargestAfterHa)
+}
+
+// String writes the habitat touched for one who compares it.
+func (h *Habitat) String() string {
 	if h == nil {
 		return "none"
 	}
-	text := ""
+	var parts []string
 	for _, k := range h.Kinds {
-		text += fmt.Sprintf("%s %s %s %.4f ha lost, %.4f ha in the edge; ", k.Class, k.Condition, k.Irreplaceable, k.LostHa, k.EdgeHa)
+		parts = append(parts, fmt.Sprintf("%s %s %s %v ha lost, %v ha in the edge", k.Class, k.Condition, k.Irreplaceable, k.LostHa, k.EdgeHa))
 	}
-	if h.Pieces != nil {
-		text += fmt.Sprintf("%d pieces before, %d after", h.Pieces.Before, h.Pieces.After)
+	if p := h.Pieces; p != nil {
+		parts = append(parts, fmt.Sprintf("%d pieces before, %d after, the largest %v and %v ha", p.Before, p.After, p.LargestBeforeHa, p.LargestAfterHa))
 	}
-	return text
+	return strings.Join(parts, "; ")
 }
