@@ -29,7 +29,7 @@ func (b *book) bars(rows []run.Row, keys []string, title string, index int) *dra
 		in.Keys = append(in.Keys, chart.ScoreKey{Category: colours[k], Title: b.title(k), Weight: rows[0].Parts.Of(k).Weight})
 	}
 	for _, r := range rows {
-		row := chart.ScoreRow{Name: fmt.Sprintf("%d. %s", r.Place, b.candidateName(rowID(r))), Score: r.Score, Low: r.ScoreLow, High: r.ScoreHigh}
+		row := chart.ScoreRow{Name: fmt.Sprintf("%d. %s", r.Place, b.candidateName(r.ID())), Score: r.Score, Low: r.ScoreLow, High: r.ScoreHigh}
 		if len(r.OverLimit) > 0 {
 			row.Over = "over the limit: " + b.titles(r.OverLimit)
 		}
@@ -52,8 +52,8 @@ func (b *book) pair(v run.VoiceOrder, keys []string, title string, index int) te
 	var names [2]string
 	for i := range rows {
 		rows[i] = v.Order[i]
-		cands[i] = b.by[rowID(rows[i])]
-		names[i] = b.candidateName(rowID(rows[i]))
+		cands[i] = b.by[rows[i].ID()]
+		names[i] = b.candidateName(rows[i].ID())
 	}
 	infos := make([]run.KeyInfo, len(keys))
 	for i, k := range keys {
@@ -74,10 +74,10 @@ func (b *book) cloud() template.HTML {
 	for i, v := range b.in.Results.Voices {
 		for _, r := range v.Order {
 			if r.Site != run.NoSite {
-				if marks[rowID(r)] != "" {
-					marks[rowID(r)] += ", "
+				if marks[r.ID()] != "" {
+					marks[r.ID()] += ", "
 				}
-				marks[rowID(r)] += strconv.Itoa(i + 1)
+				marks[r.ID()] += strconv.Itoa(i + 1)
 				break
 			}
 		}

@@ -128,10 +128,7 @@ func (b *book) group(keys []string, candidates []*run.Candidate) groupView {
 		a := &b.in.Results.Alternatives[i]
 		r := groupRow{Site: a.Title, Plant: "beside the candidates"}
 		for _, k := range keys {
-			q, ok := a.Consequence(k)
-			if !ok {
-				q = scoring.Consequence{State: scoring.Unknown, Why: a.Unknown}
-			}
+			q := a.Consequence(k)
 			r.Cells = append(r.Cells, cellOf(q))
 			if q.State != scoring.Number && q.State != scoring.None {
 				words[a.Title+": "+b.title(k)+", "+present.WhyNot(q)] = true

@@ -69,7 +69,7 @@ func (b *book) unfoldings() (leads, others []unfolded, err error) {
 	for _, v := range b.in.Results.Voices {
 		for _, r := range v.Order {
 			if r.Site != run.NoSite {
-				firstFor[rowID(r)] = append(firstFor[rowID(r)], first(v.Title, v.Voice))
+				firstFor[r.ID()] = append(firstFor[r.ID()], first(v.Title, v.Voice))
 				break
 			}
 		}

@@ -7,7 +7,6 @@ import (
 	"slices"
 	"sort"
 	"strconv"
-	"strings"
 
 	"groundtally/app/draw"
 	"groundtally/app/draw/chart"
@@ -16,7 +15,6 @@ import (
 	"groundtally/app/run"
 	"groundtally/geo"
 	"groundtally/scoring"
-	"groundtally/scoring/criteria"
 )
 
 type voiceView struct {
@@ -124,11 +122,7 @@ func (b *book) voice(i int) (voiceView, error) {
 			out.HeldRows = append(out.HeldRows, fmt.Sprintf("%d more", len(v.HeldBack)-j))
 			break
 		}
-		var by []string
-		for _, g := range h.Gates {
-			by = append(by, run.GateTitle(g))
-		}
-		out.HeldRows = append(out.HeldRows, fmt.Sprintf("%s would stand at place %d (held back: %s)", b.candidateName(h.ID()), h.Place, strings.Join(by, ", ")))
+		out.HeldRows = append(out.HeldRows, fmt.Sprintf("%s would stand at place %d (held back: %s)", b.candidateName(h.ID()), h.Place, h.By()))
 	}
 	out.Lead = b.lead(v)
 	for _, t := range v.Tipping {
@@ -143,7 +137,7 @@ func (b *book) voice(i int) (voiceView, error) {
 	}
 	out.Chart = picture(b.bars(rows, keys, out.Title, i))
 	if out.Pair = b.pair(v, keys, out.Title, i); out.Pair != "" {
-		out.First, out.Second = b.candidateName(rowID(v.Order[0])), b.candidateName(rowID(v.Order[1]))
+		out.First, out.Second = b.candidateName(v.Order[0].ID()), b.candidateName(v.Order[1].ID())
 	}
 	out.Two = b.sideBySide(v, i)
 	return out, b.sparing(v, &out)
@@ -198,7 +192,7 @@ func (b *book) sideBySide(v run.VoiceOrder, index int) template.HTML {
 	var pair [2]*run.Candidate
 	n := 0
 	for _, r := range v.Order {
-		if c := b.by[rowID(r)]; c != nil && n < 2 {
+		if c := b.by[r.ID()]; c != nil && n < 2 {
 			pair[n] = c
 			n++
 		}
@@ -207,20 +201,8 @@ func (b *book) sideBySide(v run.VoiceOrder, index int) template.HTML {
 		return ""
 	}
 	title := [2]string{b.candidateName(pair[0].ID()), b.candidateName(pair[1].ID())}
-	in := pictures.Accounts(pair, title, func(key string) run.KeyInfo { return b.info[key] }, b.better, "Bar chart: energy, land and climate of "+title[0]+" and "+title[1]+" side by side", "-accounts-two-"+strconv.Itoa(index+1))
+	in := pictures.Accounts(pair, title, func(key string) run.KeyInfo { return b.info[key] }, pictures.Better(b.in.Snapshot.Catalog()), "Bar chart: energy, land and climate of "+title[0]+" and "+title[1]+" side by side", "-accounts-two-"+strconv.Itoa(index+1))
 	return picture(chart.SideBySide(in, draw.Light(), fullWidth))
-}
-
-// better tells which way a consequence is better; either where there is no such way.
-func (b *book) better(key string) chart.Better {
-	c, ok := b.in.Snapshot.Catalog().Criterion(key)
-	switch {
-	case ok && c.Better == criteria.Less:
-		return chart.Less
-	case ok && c.Better == criteria.More:
-		return chart.More
-	}
-	return chart.Either
 }
 
 // candidateName writes a candidate's id in words.
@@ -232,13 +214,6 @@ func (b *book) candidateName(id string) string {
 		return c.Site + ", " + b.plantTitle(c.Plant)
 	}
 	return id
-}
-
-func rowID(r run.Row) string {
-	if r.Site == run.NoSite {
-		return run.NoSite
-	}
-	return r.Site + "/" + r.Plant
 }
 
 // lead says in one or two sentences what an order amounts to.
@@ -253,7 +228,7 @@ func (b *book) lead(v run.VoiceOrder) string {
 		}
 	}
 	r := v.Order[0]
-	name := b.candidateName(rowID(r))
+	name := b.candidateName(r.ID())
 	if r.Site == run.NoSite {
 		name = "Doing nothing"
 	}
@@ -289,7 +264,7 @@ func unknownInAll(rows []run.Row) []string {
 }
 
 func (b *book) row(r run.Row, accounts []scoring.Account, same []string) rowView {
-	out := rowView{Place: strconv.Itoa(r.Place), Tier: strconv.Itoa(r.Tier), Site: r.Site, Plant: b.plantTitle(r.Plant), ID: rowID(r), Score: three(r.Score), Span: three(r.ScoreLow) + " to " + three(r.ScoreHigh),
+	out := rowView{Place: strconv.Itoa(r.Place), Tier: strconv.Itoa(r.Tier), Site: r.Site, Plant: b.plantTitle(r.Plant), ID: r.ID(), Score: three(r.Score), Span: three(r.ScoreLow) + " to " + three(r.ScoreHigh),
 		Ranks: fmt.Sprintf("%d to %d", r.RankBest, r.RankWorst), First: fmt.Sprintf("%.0f", r.FirstIn100), CanBe: r.CanBeFirst, Nothing: r.Site == run.NoSite, Unknown: len(r.Unknown) > 0}
 	for _, a := range accounts {
 		out.Accounts = append(out.Accounts, three(r.Accounts.Of(string(a))))
@@ -351,7 +326,7 @@ func (b *book) maps() []mapView {
 	for i, v := range vs {
 		best[i] = map[string]run.Row{}
 		for _, r := range v.Order {
-			c, ok := b.by[rowID(r)]
+			c, ok := b.by[r.ID()]
 			if !ok {
 				continue
 			}
@@ -444,7 +419,7 @@ func (b *book) mapOf(v *run.VoiceOrder, best map[string]run.Row, lo, hi float64,
 // mark collects the plant of the first three places of a voice.
 func (b *book) mark(v *run.VoiceOrder, m *draw.Marks, plant bool) {
 	for _, r := range v.Order {
-		c, ok := b.by[rowID(r)]
+		c, ok := b.by[r.ID()]
 		if !ok || len(m.Numbers) == 3 {
 			continue
 		}

@@ -8,8 +8,10 @@ import (
 	"groundtally/app/draw/chart"
 	"groundtally/app/present"
 	"groundtally/app/run"
+	"groundtally/app/study"
 	"groundtally/scoring"
 	"groundtally/scoring/climate"
+	"groundtally/scoring/criteria"
 	"groundtally/scoring/units"
 )
 
@@ -207,6 +209,20 @@ func DriversOf(drivers []run.Driver, trials int, what, title, id string) chart.D
 		in.Groups = append(in.Groups, chart.Driver{Item: d.Name, Name: d.Title, Rank: rank})
 	}
 	return in
+}
+
+// Better gives a function that tells which way a consequence is better; either where there is no such way.
+func Better(cat *study.Catalog) func(key string) chart.Better {
+	return func(key string) chart.Better {
+		c, ok := cat.Criterion(key)
+		switch {
+		case ok && c.Better == criteria.Less:
+			return chart.Less
+		case ok && c.Better == criteria.More:
+			return chart.More
+		}
+		return chart.Either
+	}
 }
 
 // AccountKeys are the consequences that Accounts sets side by side, by account.

@@ -38,6 +38,14 @@ func Saving(s *run.Saving, why string) string {
 	return text + fmt.Sprintf(" Net of what is spent on each: %s, and %s.", SavedSpan(s.Equal.NetDirect), SavedSpan(s.Equal.NetEconomy))
 }
 
+// About tells what an alternative stands for, or why it is not known.
+func About(a *run.Alternative) string {
+	if a.Unknown != "" {
+		return a.Title + ": unknown, " + present.Reason(a.Unknown) + "."
+	}
+	return a.Title + ": " + a.About + "."
+}
+
 // Beside tells where an alternative would stand in an order of n places.
 func Beside(b run.Beside, titles func(key string) string) string {
 	if b.Why != "" {

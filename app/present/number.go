@@ -4,6 +4,8 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"groundtally/scoring"
 )
@@ -123,6 +125,15 @@ func Span(c scoring.Consequence) string {
 		return ""
 	}
 	return Figure(c.Low, c.Low, c.High) + " to " + Figure(c.High, c.Low, c.High) + " (" + RangeWords(c.Range) + ")"
+}
+
+// Upper begins a text with a capital.
+func Upper(text string) string {
+	r, n := utf8.DecodeRuneInString(text)
+	if n == 0 {
+		return ""
+	}
+	return string(unicode.ToUpper(r)) + text[n:]
 }
 
 // RangeWords says what a range means.

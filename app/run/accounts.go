@@ -3,7 +3,6 @@ package run
 import (
 	"cmp"
 	"fmt"
-	"math"
 	"slices"
 	"strings"
 
@@ -195,12 +194,7 @@ func (a *Accounts) Swaps(one, other *Candidate, key string) ([]Swapped, error) {
 			out = append(out, Swapped{Name: leaf.Name, Title: factorWords.Replace(leaf.Title), Unit: leaf.Unit, At: found, Low: f.Low, Central: f.Central, High: f.High})
 		}
 	}
-	far := func(s Swapped) float64 {
-		if s.At < s.Central {
-			return (s.Central - s.At) / (s.Central - s.Low)
-		}
-		return (s.At - s.Central) / max(s.High-s.Central, math.SmallestNonzeroFloat64)
-	}
+	far := func(s Swapped) float64 { return awayFrom(s.Central, s.Low, s.High, s.At) }
 	slices.SortStableFunc(out, func(p, q Swapped) int { return cmp.Compare(far(p), far(q)) })
 	return out, nil
 }

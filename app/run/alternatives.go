@@ -33,14 +33,14 @@ type Alternative struct {
 	Consequences []scoring.Consequence `json:"-"`
 }
 
-// Consequence finds a consequence by key.
-func (a *Alternative) Consequence(key string) (scoring.Consequence, bool) {
+// Consequence finds a consequence by key; of an alternative that is not known it is unknown for the same reason.
+func (a *Alternative) Consequence(key string) scoring.Consequence {
 	for _, q := range a.Consequences {
 		if q.Key == key {
-			return q, true
+			return q
 		}
 	}
-	return scoring.Consequence{}, false
+	return scoring.Consequence{Key: key, State: scoring.Unknown, Why: a.Unknown}
 }
 
 // PublicJSON gives the alternative as terminal and appendix write it.
@@ -137,9 +137,9 @@ func (r *Results) savingTheSame(snap *study.Snapshot, p *Params) (Alternative, e
 		case k.Key == "saving_equivalent_mwh_per_yr":
 			q = corners(q, s.Equal.Direct.Low.MWhPerYr, s.Equal.Direct.Central.MWhPerYr, s.Equal.Direct.High.MWhPerYr)
 		case k.Key == "eroi_extended" || k.Key == netShareKey:
-			if !s.known {
+			if !s.in.InvestmentKnown {
 				q.State, q.Why = notSet("saving.investment_mj_per_mwh")
-			} else if s.invest > 0 {
+			} else if s.in.InvestmentMJPerMWh.Central > 0 {
 				ends := s.returns(k.Key)
 				q = corners(q, ends[0], ends[1], ends[2])
 			}
@@ -324,8 +324,7 @@ func besides(all []Alternative, sc []scale, raw []float64, scores []float64) ([]
 				if w[k] == 0 {
 					continue
 				}
-				q, _ := a.Consequence(s.key)
-				part, err := s.part(q, false)
+				part, err := s.part(a.Consequence(s.key), false)
 				if err != nil {
 					return nil, fmt.Errorf("%s, %s: %w", a.Title, s.key, err)
 				}
@@ -357,19 +356,16 @@ func besides(all []Alternative, sc []scale, raw []float64, scores []float64) ([]
 
 // Saving is what saving would equal a candidate.
 type Saving struct {
-	Equal  energy.SavingEquals
-	loss   energy.Span
-	direct energy.Span
-	invest float64 // MJ per MWh saved; unused where it is not known
-	known  bool
-	eta    float64
+	Equal energy.SavingEquals
+	in    energy.Saving
 }
 
 // perDelivered gives how much is saved at the place of use for each unit that the plant would deliver, at the friendly
 // (0), central (1) and unfriendly (2) end.
 func (s *Saving) perDelivered(end int) float64 {
-	λ := [3]float64{s.loss.High, s.loss.Central, s.loss.Low}[end]
-	ρ := [3]float64{s.direct.Low, s.direct.Central, s.direct.High}[end]
+	loss, direct := s.in.DistributionLossFrac, s.in.DirectRebound
+	λ := [3]float64{loss.High, loss.Central, loss.Low}[end]
+	ρ := [3]float64{direct.Low, direct.Central, direct.High}[end]
 	return (1 - λ) / (1 - ρ)
 }
 
@@ -377,9 +373,9 @@ func (s *Saving) perDelivered(end int) float64 {
 // must be known and above zero.
 func (s *Saving) returns(key string) (out [3]float64) {
 	for end := range out {
-		spent := s.invest * s.perDelivered(end) / units.MJPerMWh // primary, for each unit of electricity
+		spent := s.in.InvestmentMJPerMWh.Central * s.perDelivered(end) / units.MJPerMWh // primary, for each unit of electricity
 		if out[end] = 1 / spent; key == netShareKey {
-			out[end] = 1 - float64(s.eta*spent)
+			out[end] = 1 - float64(s.in.GridEfficiency*spent)
 		}
 	}
 	return out
@@ -395,30 +391,34 @@ func (a *Accounts) Saving(c *Candidate) (out *Saving, why string, err error) {
 	if !ok || delivered.State != scoring.Number {
 		return nil, cmp.Or(delivered.Why, "no_energy_known"), nil
 	}
-	span := func(id string) (energy.Span, error) {
-		f, _, err := a.k.factor(id)
-		return energy.Span{Low: f.Low, Central: f.Central, High: f.High}, err
-	}
-	out = &Saving{eta: a.k.gridEfficiency()}
-	if out.loss, err = span("distribution_loss_frac"); err != nil {
-		return nil, "", err
-	}
-	if out.direct, err = span("rebound_frac"); err != nil {
-		return nil, "", err
-	}
-	economy, err := span("rebound_economy_frac")
+	in, err := a.savingOf(delivered.Central)
 	if err != nil {
 		return nil, "", err
 	}
-	in := energy.Saving{DeliveredMWhPerYr: delivered.Central, DistributionLossFrac: out.loss, DirectRebound: out.direct, EconomyRebound: economy, GridEfficiency: out.eta}
+	out = &Saving{in: in}
 	if x, ok := a.snap.Number("saving.investment_mj_per_mwh"); ok {
 		net, life := a.Values(c)("net_energy_gwh_life"), a.Values(c)("life_yr")
 		if net.OK() && life.OK() && life.X > 0 {
-			out.invest, out.known = x, true
-			in.InvestmentKnown, in.InvestmentMJPerMWh = true, energy.Span{Low: x, Central: x, High: x}
-			in.NetMWhPerYr = net.X * units.MJPerGWh / units.MJPerMWh / life.X
+			out.in.InvestmentKnown, out.in.InvestmentMJPerMWh = true, energy.Span{Low: x, Central: x, High: x}
+			out.in.NetMWhPerYr = net.X * units.MJPerGWh / units.MJPerMWh / life.X
 		}
 	}
-	out.Equal, err = in.Equal()
+	out.Equal, err = out.in.Equal()
 	return out, "", err
+}
+
+// savingOf describes the saving of some delivered energy a year under the study's factors, its own investment left out.
+func (a *Accounts) savingOf(deliveredMWhPerYr float64) (energy.Saving, error) {
+	out := energy.Saving{DeliveredMWhPerYr: deliveredMWhPerYr, GridEfficiency: a.k.gridEfficiency()}
+	for _, s := range []struct {
+		id string
+		to *energy.Span
+	}{{"distribution_loss_frac", &out.DistributionLossFrac}, {"rebound_frac", &out.DirectRebound}, {"rebound_economy_frac", &out.EconomyRebound}} {
+		f, _, err := a.k.factor(s.id)
+		if err != nil {
+			return out, err
+		}
+		*s.to = energy.Span{Low: f.Low, Central: f.Central, High: f.High}
+	}
+	return out, nil
 }

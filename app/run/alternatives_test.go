@@ -234,17 +234,17 @@ func TestAlternativesStandBeside(t *testing.T) {
 	if more != all/2 {
 		t.Errorf("%d of %d candidates give more than the middle one", more, all)
 	}
-	if q, _ := saving.Consequence("delivered_mwh_per_yr"); q.Central != want.Central {
+	if q := saving.Consequence("delivered_mwh_per_yr"); q.Central != want.Central {
 		t.Errorf("delivered %v, want %v", q.Central, want.Central)
 	}
 	// 3.6 GJ for every MWh that a plant would deliver; (1 - 0.05)/(1 - 0.2) MWh are saved for it at 300 MJ each.
-	if q, _ := saving.Consequence("eroi_extended"); math.Abs(q.Central-3600/(300*0.95/0.8)) > 1e-9 || q.Range != scoring.Corners || !(q.Low < q.Central && q.Central < q.High) {
+	if q := saving.Consequence("eroi_extended"); math.Abs(q.Central-3600/(300*0.95/0.8)) > 1e-9 || q.Range != scoring.Corners || !(q.Low < q.Central && q.Central < q.High) {
 		t.Errorf("return on a saving %+v", q)
 	}
-	if q, _ := saving.Consequence("ghg_g_per_kwh"); math.Abs(q.Central-10*0.95/0.8) > 1e-9 {
+	if q := saving.Consequence("ghg_g_per_kwh"); math.Abs(q.Central-10*0.95/0.8) > 1e-9 {
 		t.Errorf("greenhouse gas of a saving %+v", q)
 	}
-	if q, _ := saving.Consequence("habitat_ha"); q.State != scoring.None {
+	if q := saving.Consequence("habitat_ha"); q.State != scoring.None {
 		t.Errorf("a saving touches %+v", q)
 	}
 
@@ -252,18 +252,18 @@ func TestAlternativesStandBeside(t *testing.T) {
 	// layer says none), at 1 MW a hectare.
 	usable := 0.6*(128*44)/1e4 + 0.6*(104*36)/1e4 + 0.5*(70*28)/1e4 + 0.5*(100*50)/1e4 + 0.7*(140*120)/1e4
 	sealed := r.Alternatives[1]
-	q, _ := sealed.Consequence("rated_kw")
+	q := sealed.Consequence("rated_kw")
 	if math.Abs(q.Central/(usable*1000)-1) > 0.005 {
 		t.Errorf("panels of %v kW on sealed ground, by hand %v", q.Central, usable*1000)
 	}
-	energy, _ := sealed.Consequence("energy_p50_mwh_per_yr")
+	energy := sealed.Consequence("energy_p50_mwh_per_yr")
 	sun := r.middle("specific_yield_kwh_per_kw", "solar")
 	perKW, _ := sun.Consequence("specific_yield_kwh_per_kw")
 	if math.Abs(energy.Central/(q.Central*perKW.Central/1000)-1) > 1e-9 {
 		t.Errorf("energy %v", energy.Central)
 	}
 	for key, state := range map[string]scoring.State{"footprint_direct_ha": scoring.None, "soil_carbon_loss_tc": scoring.None, "eroi_extended": scoring.Number, "ghg_g_per_kwh": scoring.Number, "glare_min_per_yr": scoring.NotAssessed, "connection_spare_kw": scoring.NotAssessed} {
-		if q, _ := sealed.Consequence(key); q.State != state {
+		if q := sealed.Consequence(key); q.State != state {
 			t.Errorf("%s of sealed ground: %+v", key, q)
 		}
 	}

@@ -3,6 +3,7 @@ package run
 import (
 	"cmp"
 	"fmt"
+	"maps"
 	"math"
 	"slices"
 	"sort"
@@ -35,11 +36,13 @@ type reckoner struct {
 	want    []int // slots of the keys that the graph gives
 	wantKey []int // their place in keys
 	demand  fact
-	inputs  string // what every candidate depends on
+	size    params.Factor    // of one machine, that the rows of turbines stand for
+	shipped map[int][]string // notices of factors that the user did not change, by slot
+	inputs  string           // what every candidate depends on
 }
 
 func (w *world) newReckoner() (*reckoner, error) {
-	k := &reckoner{p: w.p, snap: w.snap, user: map[string]bool{}, keys: w.p.Keys()}
+	k := &reckoner{p: w.p, snap: w.snap, user: map[string]bool{}, keys: w.p.Keys(), shipped: map[int][]string{}}
 	seed, ok := w.snap.Number("run.seed")
 	if !ok || seed < 0 || seed != math.Floor(seed) || seed > 1<<53 {
 		return nil, fmt.Errorf("run.seed must be a whole number from 0")
@@ -68,6 +71,15 @@ func (w *world) newReckoner() (*reckoner, error) {
 			return nil, err
 		}
 		k.user[l.Name] = changed
+		if !changed && inventoryRow(l.Name) {
+			k.shipped[slot] = append(k.shipped[slot], "inventory_default")
+		}
+		if !changed && f.Provenance == citedtable.Memory {
+			k.shipped[slot] = append(k.shipped[slot], "memory_parameter")
+		}
+		if l.Name == sizeFactor {
+			k.size = f
+		}
 		k.central[slot] = scoring.Num(f.Central)
 		if f.Dist == params.Fixed || f.Low == f.High || !needed[slot] {
 			continue
@@ -588,10 +600,9 @@ func (k *reckoner) cover(v []scoring.Value) {
 	if n == 0 {
 		return
 	}
-	size, _, err := k.factor(sizeFactor)
 	one := at("wind_kw") / n
 	const rounding = 1e-9
-	if err == nil && one >= size.Low*(1-rounding) && one <= size.High*(1+rounding) {
+	if one >= k.size.Low*(1-rounding) && one <= k.size.High*(1+rounding) {
 		return
 	}
 	for _, row := range turbineRows {
@@ -614,21 +625,10 @@ func (k *reckoner) draws(site string, r fitResult, v []scoring.Value) []reckon.D
 
 // leafNotices gives the notices that a leaf brings to every consequence that depends on it.
 func (k *reckoner) leafNotices(r fitResult, l link, t laid) map[int][]string {
-	out := map[int][]string{}
+	out := maps.Clone(k.shipped)
 	put := func(leaf string, codes ...string) {
 		if slot, ok := k.p.Graph.Slot(leaf); ok {
-			out[slot] = append(out[slot], codes...)
-		}
-	}
-	for slot, leaf := range k.p.Graph.Leaves() {
-		if leaf.Kind != scoring.FactorLeaf || k.user[leaf.Name] {
-			continue
-		}
-		if strings.HasSuffix(leaf.Name, ".mj") || strings.HasSuffix(leaf.Name, ".kgco2e") {
-			out[slot] = append(out[slot], "inventory_default")
-		}
-		if f, _ := k.p.Factor(k.snap, leaf.Name); f.Provenance == citedtable.Memory {
-			out[slot] = append(out[slot], "memory_parameter")
+			out[slot] = append(slices.Clip(out[slot]), codes...) // the notices of factors serve all candidates
 		}
 	}
 	code := "tracks_rule"

@@ -3,6 +3,7 @@ package run
 import (
 	"cmp"
 	"fmt"
+	"math"
 	"slices"
 	"strings"
 
@@ -11,6 +12,7 @@ import (
 	"groundtally/scoring"
 	"groundtally/scoring/energy"
 	"groundtally/scoring/params"
+	"groundtally/scoring/reckon"
 	"groundtally/scoring/weigh"
 )
 
@@ -26,11 +28,24 @@ func inventoryRow(name string) bool {
 	return strings.HasSuffix(name, ".mj") || strings.HasSuffix(name, ".kgco2e")
 }
 
-// decided is a row of the inventory at one value of which two candidates change places.
+// inventoryFactor is a row of the inventory as shipped, in the graph.
+type inventoryFactor struct {
+	leaf int
+	params.Factor
+}
+
+// decided is a row at one value of which two candidates change places.
 type decided struct {
-	leaf    int
-	f       params.Factor
+	inventoryFactor
 	at, far float64 // the value, and how far it lies from the central one, of the way to the end of the range
+}
+
+// awayFrom gives how far a value lies from the central one of a factor, as a share of the way to that end of its range.
+func awayFrom(central, low, high, x float64) float64 {
+	if x < central {
+		return (central - x) / (central - low)
+	}
+	return (x - central) / max(high-central, math.SmallestNonzeroFloat64)
 }
 
 // decidedByDefault tells of places near the top that hang on a row of the inventory as shipped: within the range that
@@ -40,24 +55,33 @@ type decided struct {
 func (k *reckoner) decidedByDefault(sc []scale, lines []weigh.Line, at []int, cs []Candidate) ([]geo.Notice, error) {
 	d := &decider{k: k, sc: sc, slots: make([]int, len(sc))}
 	leaves := k.p.Graph.Leaves()
+	var reached []int
 	for i, s := range sc {
 		d.total += s.raw
-		slot, ok := k.p.Graph.Slot(s.key)
-		if d.slots[i] = slot; !ok {
-			d.slots[i] = -1
-			continue
+		d.slots[i] = -1
+		if slot, ok := k.p.Graph.Slot(s.key); ok {
+			d.slots[i] = slot
+			reached = append(reached, k.p.reaches[s.key]...)
 		}
-		for _, leaf := range k.p.Graph.Reaches(s.key) {
-			if l := leaves[leaf]; l.Kind == scoring.FactorLeaf && inventoryRow(l.Name) && !k.user[l.Name] && !slices.Contains(d.rows, leaf) {
-				d.rows = append(d.rows, leaf)
+	}
+	slices.Sort(reached)
+	for _, leaf := range slices.Compact(reached) {
+		if name := leaves[leaf].Name; inventoryRow(name) && !k.user[name] {
+			f, _, err := k.factor(name)
+			if err != nil {
+				return nil, err
+			}
+			if f.Low < f.High {
+				d.rows = append(d.rows, inventoryFactor{leaf, f})
 			}
 		}
 	}
-	slices.Sort(d.rows)
 	var top []*deciding
 	for _, l := range lines {
 		if c := at[l.Item]; c >= 0 && len(top) < decidingPlaces {
-			top = append(top, &deciding{c: &cs[c], score: l.Score, v: k.vector(&cs[c])})
+			one := &deciding{c: &cs[c], score: l.Score, v: k.vector(&cs[c])}
+			one.drawn = k.draws(one.c.Site, sigmas(one.c), one.v)
+			top = append(top, one)
 		}
 	}
 	var out []geo.Notice
@@ -78,7 +102,7 @@ func (k *reckoner) decidedByDefault(sc []scale, lines []weigh.Line, at []int, cs
 			l := leaves[one.leaf]
 			out = append(out, geo.Notice{Code: "default_decides", Severity: geo.Warning, Args: map[string]string{"factor": l.Name,
 				"place": fmt.Sprint(i), "above": above.c.ID(), "below": below.c.ID(), "row": factorWords.Replace(l.Title), "unit": l.Unit,
-				"at": present.Exact(x), "central": present.Exact(one.f.Central), "low": present.Exact(one.f.Low), "high": present.Exact(one.f.High)}})
+				"at": present.Exact(x), "central": present.Exact(one.Central), "low": present.Exact(one.Low), "high": present.Exact(one.High)}})
 			break
 		}
 	}
@@ -89,7 +113,7 @@ type decider struct {
 	k     *reckoner
 	sc    []scale
 	slots []int // of each key; -1 outside the graph
-	rows  []int
+	rows  []inventoryFactor
 	total float64 // of the raw weights
 }
 
@@ -97,27 +121,23 @@ type deciding struct {
 	c     *Candidate
 	score float64
 	v     []scoring.Value
+	drawn []reckon.Drawn
 }
 
 // guess lists the rows that may turn two candidates round, the nearest to its central value first.
 func (d *decider) guess(above, below *deciding) ([]decided, error) {
 	var out []decided
-	for _, leaf := range d.rows {
-		name := d.k.p.Graph.Leaves()[leaf].Name
-		f, _, err := d.k.factor(name)
-		if err != nil {
-			return nil, err
-		}
-		if !(f.Low < f.High) || !above.v[leaf].OK() || !below.v[leaf].OK() {
+	for _, f := range d.rows {
+		if !above.v[f.leaf].OK() || !below.v[f.leaf].OK() {
 			continue
 		}
 		pair := [2][]scoring.Value{slices.Clone(above.v), slices.Clone(below.v)}
 		advantage := func(x float64) (float64, error) {
-			a, err := d.central(pair[0], leaf, x)
+			a, err := d.central(pair[0], f.leaf, x)
 			if err != nil {
 				return 0, err
 			}
-			b, err := d.central(pair[1], leaf, x)
+			b, err := d.central(pair[1], f.leaf, x)
 			return a - b, err
 		}
 		now, err := advantage(f.Central)
@@ -129,16 +149,11 @@ func (d *decider) guess(above, below *deciding) ([]decided, error) {
 			return above.score - below.score + then - now, err
 		})
 		if err != nil {
-			return nil, fmt.Errorf("%s: %w", name, err)
+			return nil, fmt.Errorf("%s: %w", f.ID, err)
 		}
-		if !found {
-			continue
+		if found {
+			out = append(out, decided{f, x, awayFrom(f.Central, f.Low, f.High, x)})
 		}
-		one := decided{leaf: leaf, f: f, at: x, far: (x - f.Central) / (f.High - f.Central)}
-		if x < f.Central {
-			one.far = (f.Central - x) / (f.Central - f.Low)
-		}
-		out = append(out, one)
 	}
 	slices.SortStableFunc(out, func(a, b decided) int { return cmp.Compare(a.far, b.far) })
 	return out, nil
@@ -168,19 +183,19 @@ func (d *decider) central(v []scoring.Value, leaf int, x float64) (float64, erro
 // try finds by trials at which value of a row two candidates change places, between the central value and that end of
 // its range to which the guess points.
 func (d *decider) try(above, below *deciding, one decided) (x float64, found bool, err error) {
-	end := one.f.High
-	if one.at < one.f.Central {
-		end = one.f.Low
+	end := one.High
+	if one.at < one.Central {
+		end = one.Low
 	}
 	lead := func(x float64) (float64, error) {
-		a, err := d.score(above, one.leaf, x/one.f.Central)
+		a, err := d.score(above, one.leaf, x/one.Central)
 		if err != nil {
 			return 0, err
 		}
-		b, err := d.score(below, one.leaf, x/one.f.Central)
+		b, err := d.score(below, one.leaf, x/one.Central)
 		return a - b, err
 	}
-	lo, hi, yl := one.f.Central, end, above.score-below.score
+	lo, hi, yl := one.Central, end, above.score-below.score
 	yh, err := lead(hi)
 	if err != nil || yh >= 0 || yl < 0 {
 		return 0, false, err
@@ -205,54 +220,41 @@ func (d *decider) score(one *deciding, leaf int, times float64) (float64, error)
 	v := slices.Clone(one.v)
 	v[leaf] = scoring.Num(v[leaf].X * times)
 	k.p.Graph.Central(v)
-	drawn := k.draws(one.c.Site, sigmas(one.c), v)
+	drawn := slices.Clone(one.drawn)
 	for i := range drawn {
 		if drawn[i].Slot == leaf {
 			scaled := make([]float64, len(drawn[i].Values))
 			for t, x := range drawn[i].Values {
 				scaled[t] = x * times
 			}
-			drawn[i].Values, drawn[i].Shared = scaled, false
+			drawn[i] = reckon.Drawn{Slot: leaf, Values: scaled}
 		}
 	}
-	var want, of []int
-	for i, slot := range d.slots {
-		if slot >= 0 {
-			want, of = append(want, slot), append(of, i)
-		}
-	}
-	spreads, err := k.p.Graph.Trials(v, drawn, want)
+	spreads, err := k.p.Graph.Trials(v, drawn, slices.DeleteFunc(slices.Clone(d.slots), func(slot int) bool { return slot < 0 }))
 	if err != nil {
 		return 0, err
 	}
-	mids := make([]float64, len(d.sc))
-	for i, s := range d.sc { // what the row does not reach keeps its value
-		q, _ := one.c.Consequence(s.key)
+	sum := 0.0
+	for i, s := range d.sc {
+		q, _ := one.c.Consequence(s.key) // what the graph does not give keeps its value
+		if slot := d.slots[i]; slot >= 0 {
+			if x := v[slot]; x.State == scoring.Number {
+				q.State, q.Low, q.High = x.State, x.X, x.X
+				if spread := spreads[0]; spread.Moves && spread.Numbers > 0 {
+					q.Low, q.High = min(spread.Low, x.X), max(spread.High, x.X)
+				}
+			}
+			spreads = spreads[1:]
+		}
 		part, err := s.part(q, false)
 		if err != nil {
 			return 0, err
 		}
-		if mids[i] = 0.5; part.Known {
-			mids[i] = part.Mid
+		mid := 0.5 // as the order counts what is not known
+		if part.Known {
+			mid = part.Mid
 		}
-	}
-	for j, i := range of {
-		q := scoring.Consequence{State: v[want[j]].State, Low: v[want[j]].X, High: v[want[j]].X}
-		if spread := spreads[j]; spread.Moves && spread.Numbers > 0 {
-			q.Low, q.High = min(spread.Low, q.Low), max(spread.High, q.High)
-		}
-		if q.State != scoring.Number {
-			continue
-		}
-		part, err := d.sc[i].part(q, false)
-		if err != nil {
-			return 0, err
-		}
-		mids[i] = part.Mid
-	}
-	sum := 0.0
-	for i, s := range d.sc {
-		sum += float64(s.raw * mids[i])
+		sum += float64(s.raw * mid)
 	}
 	return sum / d.total, nil
 }

@@ -2,6 +2,7 @@ package run
 
 import (
 	"slices"
+	"strings"
 
 	"groundtally/app/study"
 	"groundtally/scoring"
@@ -142,6 +143,15 @@ type Held struct {
 	Place int      `json:"place_without_gates"`
 	Tier  int      `json:"tier_without_gates"`
 	Score float64  `json:"score"`
+}
+
+// By names the gates that hold it back, for people.
+func (h Held) By() string {
+	titles := make([]string, len(h.Gates))
+	for i, g := range h.Gates {
+		titles[i] = GateTitle(g)
+	}
+	return strings.Join(titles, ", ")
 }
 
 // ID names the candidate.

@@ -71,7 +71,7 @@ func (w *world) habitat(e *overlay.Engine, around *pieces, g, edge geo.XYGeometr
 	}
 	type parts struct{ lost, touched []geo.XYGeometry }
 	kinds := map[HabitatKind]*parts{}
-	var built, whole, precious []geo.XYGeometry
+	var whole, precious []geo.XYGeometry
 	unsaid := false
 	box := geo.ExtentOf(edge)
 	for _, q := range list {
@@ -103,7 +103,7 @@ func (w *world) habitat(e *overlay.Engine, around *pieces, g, edge geo.XYGeometr
 		}
 		if lost.Kind == geo.Polygons && measure.AreaM2(lost)/units.M2PerHa >= sliverHa {
 			kinds[k].lost = append(kinds[k].lost, lost)
-			built, whole = append(built, lost), append(whole, l.xy[i])
+			whole = append(whole, l.xy[i])
 		}
 	}
 	area := func(gs []geo.XYGeometry) (float64, error) {
@@ -147,7 +147,7 @@ func (w *world) habitat(e *overlay.Engine, around *pieces, g, edge geo.XYGeometr
 	slices.SortFunc(out.Kinds, func(a, b HabitatKind) int {
 		return cmp.Or(cmp.Compare(b.LostHa+b.EdgeHa, a.LostHa+a.EdgeHa), cmp.Compare(a.Class, b.Class), cmp.Compare(a.Condition, b.Condition), cmp.Compare(a.Protection, b.Protection), cmp.Compare(a.Irreplaceable, b.Irreplaceable))
 	})
-	if len(built) == 0 { // an edge disturbs, and parts nothing
+	if len(whole) == 0 { // an edge disturbs, and parts nothing
 		f.num(fragments, 0, src)
 	} else {
 		before, err := e.Union(whole...)

@@ -113,6 +113,14 @@ type Row struct {
 	PlaceWithout int `json:"place_without_gates,omitempty"`
 }
 
+// ID names the candidate of a row, or NoSite for doing nothing.
+func (r *Row) ID() string {
+	if r.Site == NoSite {
+		return NoSite
+	}
+	return r.Site + "/" + r.Plant
+}
+
 // TippingSide is where first place changes hands.
 type TippingSide struct {
 	At       float64 `json:"at"`

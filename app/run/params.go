@@ -39,7 +39,7 @@ type Params struct {
 	Graph     *reckon.Graph
 	Digest    string // of the shipped parameter files and keys; a new edition makes stored results stale
 
-	older   []edition // the oldest first
+	older   []*edition // the oldest first
 	keys    []criteria.Criterion
 	facts   []string         // leaf names given by fitting, connecting and measuring
 	reaches map[string][]int // key to the leaf slots it depends on
@@ -144,21 +144,16 @@ func Quantities() []scoring.Quantity {
 
 // LoadParams reads the shipped parameters and builds the graph.
 func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
-	p := &Params{Factors: map[string]params.Factor{}, Dates: map[string]string{}, keys: cat.Criteria}
+	p := &Params{Factors: map[string]params.Factor{}, keys: cat.Criteria}
 	var err error
 	if p.Digest, err = fileDigest(fsys); err != nil {
 		return nil, err
 	}
-	var inv *citedtable.Table
-	inv, err = params.OpenTable(fsys, "params", "inventory", "")
+	shipped, err := editionAt(fsys, "")
 	if err != nil {
 		return nil, err
 	}
-	inventory, err := params.ParseInventory(inv)
-	if err != nil {
-		return nil, err
-	}
-	p.Dates["inventory"] = inventory.Date
+	p.Dates = shipped.dates
 	if p.older, err = olderEditions(fsys); err != nil {
 		return nil, err
 	}
@@ -171,31 +166,9 @@ func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 		leaves = append(leaves, scoring.Leaf{Name: f.ID, Unit: f.Unit, Title: strings.ReplaceAll(f.ID, "_", " "), Kind: scoring.FactorLeaf})
 		return nil
 	}
-	for _, it := range inventory.Items {
-		if err := add(it.Energy); err != nil {
+	for _, f := range shipped.list {
+		if err := add(f); err != nil {
 			return nil, err
-		}
-		if err := add(it.Climate); err != nil {
-			return nil, err
-		}
-	}
-	for _, family := range families {
-		t, err := params.OpenTable(fsys, "params", family, "")
-		if err != nil {
-			return nil, err
-		}
-		e, err := params.ParseEdition(t)
-		if err != nil {
-			return nil, err
-		}
-		p.Dates[family] = e.Date
-		for _, f := range e.Factors {
-			if f.ID == "connection_loss_frac" {
-				continue // a default for plants without a connection; here the connection is computed
-			}
-			if err := add(f); err != nil {
-				return nil, err
-			}
 		}
 	}
 	table := func(name string) (*citedtable.Table, error) { return citedtable.ParseFS(fsys, "params/"+name) }
@@ -278,60 +251,84 @@ func LoadParams(fsys fs.FS, cat *study.Catalog) (*Params, error) {
 // edition is the state of the dated tables of factors at a date.
 type edition struct {
 	date    string
-	factors map[string]params.Factor
-	dates   map[string]string // by family
+	list    []params.Factor          // in the order of the tables
+	factors map[string]params.Factor // the same by id
+	dates   map[string]string        // by family
 }
 
-// olderEditions reads every state of the dated tables before the newest, so that what was computed with one can be
-// computed again.
-func olderEditions(fsys fs.FS) ([]edition, error) {
-	byFamily := map[string][]string{}
-	var all []string
-	for _, family := range append([]string{"inventory"}, families...) {
+// inventoryFamily is the dated table whose rows count in energy and in greenhouse gas.
+const inventoryFamily = "inventory"
+
+// editionAt reads the newest editions that are no younger than a date; an empty date takes the newest of all. A family
+// that is younger as a whole is left out.
+func editionAt(fsys fs.FS, date string) (*edition, error) {
+	e := &edition{date: date, factors: map[string]params.Factor{}, dates: map[string]string{}}
+	for _, family := range append([]string{inventoryFamily}, families...) {
 		dates, err := params.Dates(fsys, "params", family)
 		if err != nil {
 			return nil, err
 		}
-		byFamily[family] = dates
+		at := ""
+		for _, d := range dates {
+			if date == "" || d <= date {
+				at = d
+			}
+		}
+		switch {
+		case at == "" && date == "":
+			return nil, fmt.Errorf("there is no table of the family %q", family)
+		case at == "":
+			continue
+		}
+		t, err := params.OpenTable(fsys, "params", family, at)
+		if err != nil {
+			return nil, err
+		}
+		e.dates[family] = at
+		if family == inventoryFamily {
+			inventory, err := params.ParseInventory(t)
+			if err != nil {
+				return nil, err
+			}
+			for _, it := range inventory.Items {
+				e.list = append(e.list, it.Energy, it.Climate)
+			}
+			continue
+		}
+		parsed, err := params.ParseEdition(t)
+		if err != nil {
+			return nil, err
+		}
+		for _, f := range parsed.Factors {
+			if f.ID != "connection_loss_frac" { // a default for plants without a connection; here the connection is computed
+				e.list = append(e.list, f)
+			}
+		}
+	}
+	for _, f := range e.list {
+		e.factors[f.ID] = f
+	}
+	return e, nil
+}
+
+// olderEditions reads every state of the dated tables before the newest, so that what was computed with one can be
+// computed again.
+func olderEditions(fsys fs.FS) ([]*edition, error) {
+	var all []string
+	for _, family := range append([]string{inventoryFamily}, families...) {
+		dates, err := params.Dates(fsys, "params", family)
+		if err != nil {
+			return nil, err
+		}
 		all = append(all, dates...)
 	}
 	slices.Sort(all)
 	all = slices.Compact(all)
-	var out []edition
+	var out []*edition
 	for _, date := range all[:max(0, len(all)-1)] {
-		e := edition{date: date, factors: map[string]params.Factor{}, dates: map[string]string{}}
-		for family, dates := range byFamily {
-			at := ""
-			for _, d := range dates {
-				if d <= date {
-					at = d
-				}
-			}
-			if at == "" {
-				continue // the family is younger
-			}
-			t, err := params.OpenTable(fsys, "params", family, at)
-			if err != nil {
-				return nil, err
-			}
-			e.dates[family] = at
-			if family == "inventory" {
-				inv, err := params.ParseInventory(t)
-				if err != nil {
-					return nil, err
-				}
-				for _, it := range inv.Items {
-					e.factors[it.Energy.ID], e.factors[it.Climate.ID] = it.Energy, it.Climate
-				}
-				continue
-			}
-			parsed, err := params.ParseEdition(t)
-			if err != nil {
-				return nil, err
-			}
-			for _, f := range parsed.Factors {
-				e.factors[f.ID] = f
-			}
+		e, err := editionAt(fsys, date)
+		if err != nil {
+			return nil, err
 		}
 		out = append(out, e)
 	}
@@ -354,21 +351,23 @@ func (p *Params) EditionDates() []string {
 	return append(out, newest)
 }
 
-// at gives the factor and the editions in force for a study. What an older edition does not have yet is that of the
-// newest.
-func (p *Params) at(snap *study.Snapshot) *edition {
+// heldTo gives the older edition that a study is held to; nil for the newest.
+func (p *Params) heldTo(snap *study.Snapshot) *edition {
+	if len(p.older) == 0 {
+		return nil
+	}
 	date := snap.Text(factorsEdition)
-	for i := range p.older {
-		if p.older[i].date == date {
-			return &p.older[i]
+	for _, e := range p.older {
+		if e.date == date {
+			return e
 		}
 	}
 	return nil
 }
 
-// Factor gives a factor as shipped, in the edition that a study is held to.
+// Factor gives a factor as shipped, in the edition that a study is held to. What that does not have yet is of the newest.
 func (p *Params) Factor(snap *study.Snapshot, id string) (params.Factor, bool) {
-	if e := p.at(snap); e != nil {
+	if e := p.heldTo(snap); e != nil {
 		if f, ok := e.factors[id]; ok {
 			return f, true
 		}
@@ -379,7 +378,7 @@ func (p *Params) Factor(snap *study.Snapshot, id string) (params.Factor, bool) {
 
 // DatesOf gives the dates of the editions in force for a study, by family.
 func (p *Params) DatesOf(snap *study.Snapshot) map[string]string {
-	e := p.at(snap)
+	e := p.heldTo(snap)
 	if e == nil {
 		return p.Dates
 	}

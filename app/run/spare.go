@@ -1,7 +1,6 @@
 package run
 
 import (
-	"errors"
 	"fmt"
 
 	"groundtally/scoring"
@@ -16,7 +15,7 @@ type SparePlan struct {
 	LeftOut   int     // sites whose energy or ground is not known
 	Short     bool    // all sites together give less than is wanted
 
-	loss, direct, economy energy.Span
+	saving energy.Saving // of the whole; At puts the energy in
 }
 
 // SparePlan takes the best candidate of each site in an order (candidates of the results, the first first), until they
@@ -25,15 +24,7 @@ type SparePlan struct {
 func (a *Accounts) SparePlan(r *Results, order []int) (*SparePlan, error) {
 	p := &SparePlan{Basis: "all"}
 	var err error
-	for _, f := range []struct {
-		id string
-		to *energy.Span
-	}{{"distribution_loss_frac", &p.loss}, {"rebound_frac", &p.direct}, {"rebound_economy_frac", &p.economy}} {
-		one, _, ferr := a.k.factor(f.id)
-		err = errors.Join(err, ferr)
-		*f.to = energy.Span{Low: one.Low, Central: one.Central, High: one.High}
-	}
-	if err != nil {
+	if p.saving, err = a.savingOf(0); err != nil {
 		return nil, err
 	}
 	if x, ok := a.snap.Number("energy.target_mwh_per_yr"); ok && x > 0 {
@@ -92,7 +83,9 @@ func (p *SparePlan) At(share float64) (energy.Spared, energy.SavingEquals, error
 	if err != nil {
 		return s, energy.SavingEquals{}, fmt.Errorf("saved share: %w", err)
 	}
-	e, err := energy.Saving{DeliveredMWhPerYr: s.SavedAtGridMWhPerYr, DistributionLossFrac: p.loss, DirectRebound: p.direct, EconomyRebound: p.economy}.Equal()
+	saving := p.saving
+	saving.DeliveredMWhPerYr = s.SavedAtGridMWhPerYr
+	e, err := saving.Equal()
 	return s, e, err
 }
 
@@ -104,12 +97,13 @@ func (r *Results) Ordered(v *VoiceOrder) ([]int, error) {
 	}
 	var out []int
 	for _, row := range v.Order {
-		if row.Site == NoSite && row.Plant == "" {
+		id := row.ID()
+		if id == NoSite {
 			continue
 		}
-		i, ok := at[row.Site+"/"+row.Plant]
+		i, ok := at[id]
 		if !ok {
-			return nil, fmt.Errorf("candidate %s/%s stands in the order and not among the results", row.Site, row.Plant)
+			return nil, fmt.Errorf("candidate %s stands in the order and not among the results", id)
 		}
 		out = append(out, i)
 	}

@@ -7,6 +7,7 @@ import (
 	"strconv"
 	"strings"
 
+	"groundtally/app/present"
 	"groundtally/app/study"
 	"groundtally/geo"
 )
@@ -167,7 +168,7 @@ func (c *call) byHand(h study.HandEdit) (int, error) {
 			return 0, &inputError{c.noLayer(s, err)}
 		}
 		h = rec.Hand[len(rec.Hand)-1]
-		c.answer(map[string]any{"study": c.args.places[0], "layer": rec}, "%s, %s. %s; the change is kept for the next edition.", rec.Name, handWords(h), upper(counted(rec.Count, "feature")))
+		c.answer(map[string]any{"study": c.args.places[0], "layer": rec}, "%s, %s. %s; the change is kept for the next edition.", rec.Name, handWords(h), present.Upper(counted(rec.Count, "feature")))
 		c.notices(slices.DeleteFunc(slices.Clone(rec.Notices), func(n geo.Notice) bool {
 			_, now := h.Values[n.Field]
 			return n.Feature != h.Feature || !(strings.HasPrefix(n.Code, "drawn_repaired") && h.Geometry != nil || n.Code == "hand_value_new" && now)

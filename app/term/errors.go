@@ -7,9 +7,8 @@ import (
 	"os"
 	"regexp"
 	"strings"
-	"unicode"
-	"unicode/utf8"
 
+	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
 )
@@ -135,10 +134,10 @@ func (c *call) explained(err error, code int) string {
 		}
 		text += ": " + strings.TrimSuffix(file.What, ".") + "."
 		if file.Cure != "" {
-			text += " " + upper(strings.TrimSuffix(file.Cure, ".")) + "."
+			text += " " + present.Upper(strings.TrimSuffix(file.Cure, ".")) + "."
 		}
 		if words := undone[c.verb.name]; words != "" {
-			text += " " + upper(words) + "."
+			text += " " + present.Upper(words) + "."
 		}
 		return text
 	case errors.Is(err, study.ErrNameInUse) && c.verb.name == "new":
@@ -223,11 +222,6 @@ func (c *call) finish(code int, err error) int {
 	}
 	fmt.Fprintf(c.Err, "%s: %s\n", name, text)
 	return code
-}
-
-func upper(s string) string {
-	r, n := utf8.DecodeRuneInString(s)
-	return string(unicode.ToUpper(r)) + s[n:]
 }
 
 // shellWord quotes a word where a shell would part it.

@@ -165,15 +165,11 @@ func (c *call) voice(v run.VoiceOrder, top int) {
 				c.say("    and %d more, in the JSON", n-i)
 				break
 			}
-			var by []string
-			for _, g := range h.Gates {
-				by = append(by, run.GateTitle(g))
-			}
-			c.say("    %d  %s with %s (%s)", h.Place, h.Site, h.Plant, strings.Join(by, ", "))
+			c.say("    %d  %s with %s (%s)", h.Place, h.Site, h.Plant, h.By())
 		}
 		for _, r := range v.Order {
 			if r.Place == 1 && r.PlaceWithout > 1 {
-				c.say("    %s, first now, would be at place %d", leader(rowID(r)), r.PlaceWithout)
+				c.say("    %s, first now, would be at place %d", leader(r.ID()), r.PlaceWithout)
 			}
 		}
 	}
@@ -183,13 +179,6 @@ func (c *call) voice(v run.VoiceOrder, top int) {
 
 // heldShown is how many candidates that a gate holds back are printed.
 const heldShown = 5
-
-func rowID(r run.Row) string {
-	if r.Site == run.NoSite {
-		return run.NoSite
-	}
-	return r.Site + "/" + r.Plant
-}
 
 func leader(id string) string {
 	if id == run.NoSite {

@@ -4,6 +4,7 @@ import (
 	"slices"
 	"strings"
 
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
@@ -101,12 +102,8 @@ var verbTable = verb{
 			columns(c.out, rows, right)
 			c.say("")
 			columns(c.out, c.beside(r, keys), besideRight(keys))
-			for _, a := range r.Alternatives {
-				if a.Unknown != "" {
-					c.say("%s: unknown, %s.", a.Title, present.Reason(a.Unknown))
-				} else {
-					c.say("%s: %s.", a.Title, a.About)
-				}
+			for i := range r.Alternatives {
+				c.say("%s", pictures.About(&r.Alternatives[i]))
 			}
 			c.say("%d of %d candidates. %d of %d consequences are shown; the JSON holds all. A typical year has 8,760 hours.\nCentral values; low and high are in gtally why and in the JSON. \".\" stands where no plant was fitted.", len(list), all, len(keys), len(c.Params.Keys()))
 			return ExitDone, nil
@@ -134,11 +131,7 @@ func (c *call) beside(r *run.Results, keys []string) [][]string {
 		a := &r.Alternatives[i]
 		row := []string{strings.ToLower(a.Title)}
 		for _, k := range keys {
-			cell := "unknown"
-			if q, ok := a.Consequence(k); ok {
-				cell = present.Cell(q)
-			}
-			row = append(row, cell)
+			row = append(row, present.Cell(a.Consequence(k)))
 		}
 		out = append(out, row)
 	}

@@ -198,14 +198,13 @@ func (b *bench) block(g *Graph, drawn []Drawn, from, to int) {
 	for _, i := range b.hot {
 		m := b.kept[i].now
 		slot := len(g.leaves) + i
-		switch {
-		case m != nil && m.full:
+		if m != nil && m.full {
 			b.form[slot], b.x[slot] = numbers, m.col[from:to]
-		case m != nil:
-			b.quantity(g, i, to-from)
+			continue
+		}
+		b.quantity(g, i, to-from)
+		if m != nil {
 			m.keep(b, slot, from, to)
-		default:
-			b.quantity(g, i, to-from)
 		}
 	}
 }

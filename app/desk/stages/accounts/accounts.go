@@ -107,8 +107,8 @@ func (s *stage) Changed(ch core.Change) {
 	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.pictured != nil {
 		s.pictured.update()
 	}
-	if ch&(core.StudyChanged|core.SelectionChanged) != 0 && s.beside != nil {
-		s.beside.update()
+	if ch&(core.StudyChanged|core.SelectionChanged) != 0 {
+		s.showBeside(s.tabs.Chosen())
 	}
 	if ch&core.StudyChanged != 0 && s.methods != nil {
 		s.methods.update()
@@ -153,6 +153,7 @@ func (s *stage) Content() fyne.CanvasObject {
 		widgets.Tab{Text: "The ground here", Make: func() fyne.CanvasObject { s.ground = newGroundHere(s.core); return s.ground.body }},
 		widgets.Tab{Text: "Not assessed", Make: s.notAssessed},
 	)
+	s.tabs.OnChosen = s.showBeside
 	s.content = container.New(insets{12, 8, 12, 4}, container.NewBorder(container.NewVBox(widgets.Heading("Accounts"), space(0)), nil, nil, nil, s.tabs))
 	s.fillPlants()
 	s.showColumns()
@@ -164,6 +165,15 @@ func (s *stage) Content() fyne.CanvasObject {
 		s.returns.update(nil)
 	}
 	return s.content
+}
+
+// besideTab is the place of the tab Beside, whose many rows are only made anew where they are looked at.
+const besideTab = 3
+
+func (s *stage) showBeside(tab int) {
+	if tab == besideTab && s.beside != nil {
+		s.beside.update()
+	}
 }
 
 // table lays the first tab out.

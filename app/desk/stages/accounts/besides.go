@@ -7,6 +7,7 @@ import (
 
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/widgets"
+	"groundtally/app/pictures"
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/scoring"
@@ -49,11 +50,7 @@ func (t *besideTable) update() {
 	t.rows.Objects = nil
 	all := v.Results.Alternatives
 	for i := range all {
-		words := all[i].Title + ": " + all[i].About + "."
-		if all[i].Unknown != "" {
-			words = all[i].Title + ": unknown, " + present.Reason(all[i].Unknown) + "."
-		}
-		t.rows.Add(widgets.NewText(words))
+		t.rows.Add(widgets.NewText(pictures.About(&all[i])))
 	}
 	heads := []string{"", "", "Nothing", "Saving", "Roofs"}
 	if chosen != nil {
@@ -84,14 +81,8 @@ func (t *besideTable) update() {
 func (t *besideTable) cells(all []run.Alternative, chosen *run.Candidate, key string) (out []string, told bool) {
 	out = []string{"none"} // doing nothing has no consequence
 	for i := range all {
-		q, ok := all[i].Consequence(key)
-		switch {
-		case !ok:
-			out = append(out, "unknown")
-			continue
-		case q.State == scoring.Number:
-			told = true
-		}
+		q := all[i].Consequence(key)
+		told = told || q.State == scoring.Number
 		out = append(out, present.Cell(q))
 	}
 	if chosen != nil {

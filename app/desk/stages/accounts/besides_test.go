@@ -14,7 +14,7 @@ import (
 // The table holds what the results say of what stands beside, and the chosen candidate next to it.
 func TestBesideTable(t *testing.T) {
 	b, s := open(t, 60, 640, 480)
-	s.tabs.Choose(3)
+	s.tabs.Choose(besideTab)
 	b.Settle()
 	rows := func() map[string][]string {
 		out := map[string][]string{}
@@ -36,8 +36,8 @@ func TestBesideTable(t *testing.T) {
 		return out
 	}
 	r := b.Core.View().Results
-	saving, _ := r.Alternatives[0].Consequence("delivered_mwh_per_yr")
-	sealed, _ := r.Alternatives[1].Consequence("delivered_mwh_per_yr")
+	saving := r.Alternatives[0].Consequence("delivered_mwh_per_yr")
+	sealed := r.Alternatives[1].Consequence("delivered_mwh_per_yr")
 	title := b.Core.Info("delivered_mwh_per_yr").Title
 	if got := rows()[title]; len(got) < 3 || got[0] != "none" || got[1] != present.Cell(saving) || got[2] != present.Cell(sealed) {
 		t.Fatalf("%s: %v, want %s and %s", title, got, present.Cell(saving), present.Cell(sealed))

@@ -16,7 +16,6 @@ import (
 	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
-	"groundtally/scoring/criteria"
 )
 
 // movedKeys are the consequences of which it is shown what moves them.
@@ -235,22 +234,10 @@ func (p *pictured) answered(c *run.Candidate, key string, f *found) {
 	}
 	if chosen := p.core.Chosen(); len(chosen) > 1 {
 		shown(true, p.pair.all)
-		in := pictures.Accounts([2]*run.Candidate{chosen[0], chosen[1]}, [2]string{p.core.CandidateTitle(chosen[0]), p.core.CandidateTitle(chosen[1])}, p.core.Info, p.better, "Side by side", "accounts-pair")
+		in := pictures.Accounts([2]*run.Candidate{chosen[0], chosen[1]}, [2]string{p.core.CandidateTitle(chosen[0]), p.core.CandidateTitle(chosen[1])}, p.core.Info, pictures.Better(p.core.Parts.Catalog), "Side by side", "accounts-pair")
 		p.pair.set("", func(pal draw.Palette, width float64) *draw.Scene { return chart.SideBySide(in, pal, width) })
 	}
 	p.all.Refresh()
-}
-
-// better tells which way a consequence is better; either where there is no such way.
-func (p *pictured) better(key string) chart.Better {
-	c, ok := p.core.Parts.Catalog.Criterion(key)
-	switch {
-	case ok && c.Better == criteria.Less:
-		return chart.Less
-	case ok && c.Better == criteria.More:
-		return chart.More
-	}
-	return chart.Either
 }
 
 // find reckons what the pictures of a fitted candidate show, off the window's goroutine.

@@ -144,7 +144,7 @@ func (c *crowding) moved() {
 	if c.curve.SweptUnit != "" {
 		unit = " " + c.curve.SweptUnit
 	}
-	text := fmt.Sprintf("%s %g%s", upper(c.curve.Swept), c.held(), unit)
+	text := fmt.Sprintf("%s %g%s", present.Upper(c.curve.Swept), c.held(), unit)
 	if m := shown.Chosen; m.Known {
 		text += fmt.Sprintf(": %s MWh a year from a hectare, return %.3g", present.Figure(m.MWhPerHaYr, m.MWhPerHaYr, m.MWhPerHaYr), m.EROI)
 	}

@@ -159,9 +159,9 @@ func (o *out) detail(x *run.Out) {
 		return
 	}
 	o.title.Set(x.Site)
-	words := fmt.Sprintf("%s. Of %s ha, %s ha are buildable; the largest patch has %s ha.", upper(outWords(*x)), short(x.GrossHa), short(x.BuildableHa), short(x.LargestPatchHa))
+	words := fmt.Sprintf("%s. Of %s ha, %s ha are buildable; the largest patch has %s ha.", present.Upper(outWords(*x)), short(x.GrossHa), short(x.BuildableHa), short(x.LargestPatchHa))
 	for _, t := range x.Rules {
-		words += fmt.Sprintf("\n%s: %s ha, %s of it alone.", upper(present.Rule(t.Rule)), short(t.AloneHa+t.SharedHa), short(t.AloneHa))
+		words += fmt.Sprintf("\n%s: %s ha, %s of it alone.", present.Upper(present.Rule(t.Rule)), short(t.AloneHa+t.SharedHa), short(t.AloneHa))
 		if len(t.Data) > 0 {
 			words += " " + strings.Join(t.Data, "; ") + "."
 		}

@@ -73,7 +73,7 @@ func (r *rules) update() {
 		if p.words != "" {
 			head = p.words + ": "
 		}
-		add(widgets.Part(upper(head + "distances kept")))
+		add(widgets.Part(present.Upper(head + "distances kept")))
 		tip, rotor := reach(snap, s.id, p)
 		for _, d := range distances(snap, p) {
 			x := r.rows[d.prefix+p.names[0]+d.suffix]
@@ -93,7 +93,7 @@ func (r *rules) update() {
 			r.adds[p.names[0]] = newAdding(s, p)
 		}
 		add(r.adds[p.names[0]].all)
-		add(widgets.Part(upper(head + "slope and shape")))
+		add(widgets.Part(present.Upper(head + "slope and shape")))
 		for _, d := range shapes(snap, p) {
 			put(d.prefix+p.names[0]+d.suffix, d.label, "Take out", nil, d.held)
 		}
@@ -249,8 +249,6 @@ func (r *rules) addExclusion() {
 		r.s.core.Set("exclude ground", "excluded "+title, study.SettingEdit{Key: "rule.exclude." + r.others[i], Value: "true"})
 	}
 }
-
-func upper(s string) string { return strings.ToUpper(s[:1]) + s[1:] }
 
 func limitTitle(key string) string {
 	switch key {
@@ -447,7 +445,7 @@ func (f *fitted) update() {
 		return
 	}
 	f.title.Set(s.core.CandidateTitle(c))
-	text := upper(present.Named(c.Status))
+	text := present.Upper(present.Named(c.Status))
 	if c.Reason != "" {
 		text += ": " + present.Reason(c.Reason)
 	}

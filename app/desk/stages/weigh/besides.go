@@ -15,6 +15,7 @@ import (
 	"groundtally/app/desk/core"
 	"groundtally/app/desk/widgets"
 	"groundtally/app/pictures"
+	"groundtally/app/present"
 	"groundtally/app/run"
 	"groundtally/app/study"
 )
@@ -86,14 +87,12 @@ func newBesides(s *stage) *besides {
 	}
 	add("Owner's consent", "gate.owner_consent", ownWords)
 	for _, st := range run.Stocks {
-		add(upper(st.Title), "gate.critical."+st.Name, gateWords)
+		add(present.Upper(st.Title), "gate.critical."+st.Name, gateWords)
 	}
 	p.parts.Add(flush(p.held))
 	p.all = container.NewVScroll(container.New(inset{right: 12, bottom: 8}, p.parts))
 	return p
 }
-
-func upper(text string) string { return strings.ToUpper(text[:1]) + text[1:] }
 
 func (p *besides) object() fyne.CanvasObject { return p.all }
 
@@ -182,27 +181,16 @@ func (p *besides) tellHeld() {
 				lines = append(lines, fmt.Sprintf("and %d more", len(o.HeldBack)-i))
 				break
 			}
-			var by []string
-			for _, g := range h.Gates {
-				by = append(by, run.GateTitle(g))
-			}
-			lines = append(lines, fmt.Sprintf("place %d: %s (%s)", h.Place, p.s.c.IDTitle(h.ID()), strings.Join(by, ", ")))
+			lines = append(lines, fmt.Sprintf("place %d: %s (%s)", h.Place, p.s.c.IDTitle(h.ID()), h.By()))
 		}
 		if len(o.Order) > 0 {
 			if first := o.Order[0]; first.PlaceWithout > 1 {
-				lines = append(lines, fmt.Sprintf("%s, first now, would be at place %d.", p.s.c.IDTitle(rowID(first)), first.PlaceWithout))
+				lines = append(lines, fmt.Sprintf("%s, first now, would be at place %d.", p.s.c.IDTitle(first.ID()), first.PlaceWithout))
 			}
 		}
 		words = strings.Join(lines, "\n")
 	}
 	setText(p.held, words)
-}
-
-func rowID(r run.Row) string {
-	if r.Site == run.NoSite {
-		return run.NoSite
-	}
-	return r.Site + "/" + r.Plant
 }
 
 // find has the sites found that the order shown would build.

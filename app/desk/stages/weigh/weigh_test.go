@@ -52,13 +52,6 @@ func saved(b *desktest.Bench, key string) float64 {
 	return x
 }
 
-func idOf(r run.Row) string {
-	if r.Site == run.NoSite {
-		return run.NoSite
-	}
-	return r.Site + "/" + r.Plant
-}
-
 // dragTo drags a slider in steps, as a hand does.
 func dragTo(b *desktest.Bench, s *slider, points float64, steps int, between func()) {
 	from := s.points
@@ -139,7 +132,7 @@ func TestDragChangesTheOrderAndSavesOnce(t *testing.T) {
 	if saved(b, "connection_km") != 100 || s.head.state.Text != "saved" || s.head.keep.Visible() {
 		t.Errorf("saved %g, state %q", saved(b, "connection_km"), s.head.state.Text)
 	}
-	if got := w.order[0].title.Text; got != b.Core.IDTitle(idOf(b.Core.Order().Order[0])) {
+	if got := w.order[0].title.Text; got != b.Core.IDTitle(b.Core.Order().Order[0].ID()) {
 		t.Errorf("the short order begins with %q, the saved order does not", got)
 	}
 	sum := 0.0
@@ -294,7 +287,7 @@ func TestTippingPointsHold(t *testing.T) {
 		b.Core.SetVoice(voice)
 		settle(b, s)
 		o := b.Core.Order()
-		leader := idOf(o.Order[0])
+		leader := o.Order[0].ID()
 		raw := b.Core.Raw()
 		for k, key := range b.Core.View().Board.Keys {
 			i := slices.IndexFunc(o.Tipping, func(x run.TippingRow) bool { return x.Key == key.Info.Key })
@@ -535,7 +528,7 @@ func TestOrderListsEverything(t *testing.T) {
 		id, row := o.filtered.Board.IDs[item], s.facts.row(item)
 		want := &saved.Order[i]
 		nothing = nothing || id == run.NoSite
-		if row != want || id != idOf(*want) || o.filtered.Standing.Tier[item] != want.Tier {
+		if row != want || id != want.ID() || o.filtered.Standing.Tier[item] != want.Tier {
 			t.Fatalf("row %d is %s, the order has %s/%s", i, id, want.Site, want.Plant)
 		}
 	}
